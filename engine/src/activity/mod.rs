@@ -1,0 +1,1 @@
+//! Activity coefficients of dissolved species: one equation family a file.

@@ -1,0 +1,1 @@
+//! What a constant is and how constants combine.

@@ -1,0 +1,1 @@
+//! From a sample and a ledger to a state: names become indices and come back.

@@ -1,0 +1,1 @@
+//! A set of constants one can calculate with.

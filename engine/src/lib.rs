@@ -1,0 +1,14 @@
+//! The engine of lysocline: everything between text and tables.
+
+pub mod activity;
+pub mod chem;
+pub mod equilibrium;
+pub mod ledger;
+pub mod physics;
+pub mod present;
+pub mod process;
+pub mod quantity;
+pub mod script;
+pub mod solve;
+pub mod units;
+pub mod water;

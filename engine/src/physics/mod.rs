@@ -1,0 +1,1 @@
+//! Physical constants and properties of pure water.

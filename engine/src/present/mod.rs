@@ -1,0 +1,1 @@
+//! Titled columns with units: what every result is shown as.

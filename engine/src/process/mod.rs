@@ -1,0 +1,1 @@
+//! Many equilibria: runs, sweeps, paths.

@@ -1,0 +1,1 @@
+//! The scripting language: the only room that imports rhai.

@@ -1,0 +1,1 @@
+//! The equilibrium solver: numbers and indices, no names.

@@ -1,0 +1,1 @@
+//! Units of measurement, and quantities read from text with them.

@@ -1,0 +1,1 @@
+//! What was measured in a water, and what is done to it.

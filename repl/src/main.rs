@@ -1,0 +1,3 @@
+//! The program: prompt and subcommands.
+
+fn main() {}

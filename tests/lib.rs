@@ -1,0 +1,1 @@
+//! The project against the outside; each module names what it is compared with.
