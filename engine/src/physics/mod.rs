@@ -1,1 +1,4 @@
 //! Physical constants and properties of pure water.
+
+pub mod constants;
+pub mod water;
