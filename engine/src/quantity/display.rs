@@ -1,0 +1,93 @@
+//! Quantities as text: the uncertainty to two significant digits, the value to match.
+
+use std::fmt;
+
+use super::Quantity;
+use crate::units::{Style, Unit};
+
+pub(super) fn quantity(quantity: &Quantity, style: Style) -> String {
+    let number = match quantity.sigma() {
+        Some(sigma) if sigma > 0.0 => with_sigma(quantity.value, sigma, style),
+        _ => plain(quantity.value),
+    };
+    if *quantity.unit() == Unit::one() {
+        number
+    } else {
+        format!("{number} {}", quantity.unit().display(style))
+    }
+}
+
+impl fmt::Display for Quantity {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.write_str(&self.display(Style::Unicode))
+    }
+}
+
+/// Six significant digits show all that a laboratory value carries, and hide what binary fractions add.
+const N_DIGITS: i32 = 6;
+/// Exponents outside these are written in powers of ten.
+const PLAIN_EXPONENTS: std::ops::Range<i32> = -4..7;
+
+fn plain(value: f64) -> String {
+    if value == 0.0 || !value.is_finite() {
+        return format!("{}", value + 0.0);
+    }
+    let exponent = exponent_of(value, N_DIGITS);
+    if PLAIN_EXPONENTS.contains(&exponent) {
+        trim_zeros(&fixed(value, N_DIGITS - 1 - exponent)).to_owned()
+    } else {
+        let mantissa = scale_down(value, exponent);
+        format!("{}e{exponent}", trim_zeros(&fixed(mantissa, N_DIGITS - 1)))
+    }
+}
+
+fn with_sigma(value: f64, sigma: f64, style: Style) -> String {
+    let sign = match style {
+        Style::Unicode => "±",
+        Style::Ascii => "+/-",
+    };
+    let last_digit = exponent_of(sigma, 2) - 1;
+    let leading = exponent_of(value, N_DIGITS).max(last_digit + 1);
+    let is_plain = PLAIN_EXPONENTS.contains(&leading) && last_digit <= 0;
+    let exponent = if is_plain { 0 } else { leading };
+    let decimals = exponent - last_digit;
+    let (mut value, mut sigma) =
+        (fixed(scale_down(value, exponent), decimals), fixed(scale_down(sigma, exponent), decimals));
+    // 41.20 ± 0.80 says no more than 41.2 ± 0.8.
+    if value.contains('.') && value.ends_with('0') && sigma.ends_with('0') {
+        value.pop();
+        sigma.pop();
+    }
+    let (value, sigma) = (value.trim_end_matches('.'), sigma.trim_end_matches('.'));
+    if is_plain {
+        format!("{value} {sign} {sigma}")
+    } else {
+        format!("{value}e{exponent} {sign} {sigma}e{exponent}")
+    }
+}
+
+/// The decimal exponent of a number once rounded to so many digits: 0.0996 to two digits is 0.10, so -1.
+fn exponent_of(number: f64, n_digits: i32) -> i32 {
+    let written = format!("{:.*e}", usize::try_from(n_digits - 1).unwrap_or(0), number);
+    written.split_once('e').and_then(|(_, exponent)| exponent.parse().ok()).unwrap_or(0)
+}
+
+/// Through decimal text, so that no digit is spoilt.
+fn scale_down(number: f64, exponent: i32) -> f64 {
+    let written = format!("{number:e}");
+    match written.split_once('e') {
+        Some((mantissa, power)) => {
+            let power = power.parse::<i32>().unwrap_or(0) - exponent;
+            format!("{mantissa}e{power}").parse().unwrap_or(number)
+        }
+        None => number,
+    }
+}
+
+fn fixed(number: f64, decimals: i32) -> String {
+    format!("{:.*}", usize::try_from(decimals).unwrap_or(0), number)
+}
+
+fn trim_zeros(number: &str) -> &str {
+    if number.contains('.') { number.trim_end_matches('0').trim_end_matches('.') } else { number }
+}

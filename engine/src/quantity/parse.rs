@@ -1,0 +1,179 @@
+//! Quantities from text, with or without a unit and an uncertainty.
+//!
+//! ```text
+//! 41.2 mg/L      41.2 +/- 0.8 mg/L      (41.2 ± 0.8) mg/L      41.2 mg/L +/- 2 %      41.2
+//! ```
+
+use super::{Quantity, QuantityError};
+use crate::units::{Kind, Unit, UnitError};
+
+impl Quantity {
+    /// Reads a value of a kind; a bare number is in the kind's default unit. `label` names the input in budgets.
+    ///
+    /// # Errors
+    ///
+    /// [`QuantityError::Text`] saying what to write, [`QuantityError::Sigma`] for a negative uncertainty,
+    /// [`QuantityError::Unit`] listing the units of the kind.
+    pub fn parse(text: &str, kind: Kind, label: &str) -> Result<Self, QuantityError> {
+        read(text, &kind.default_unit(), label, |unit| kind.parse_unit(unit))
+    }
+
+    /// Reads a value in any unit; a bare number is in `default_unit`.
+    ///
+    /// # Errors
+    ///
+    /// As [`Quantity::parse`].
+    pub fn parse_any(text: &str, default_unit: &Unit, label: &str) -> Result<Self, QuantityError> {
+        read(text, default_unit, label, Unit::parse)
+    }
+}
+
+fn read(
+    text: &str,
+    default_unit: &Unit,
+    label: &str,
+    parse_unit: impl Fn(&str) -> Result<Unit, UnitError>,
+) -> Result<Quantity, QuantityError> {
+    let written = Written::split(text)?;
+    let unit = written.unit.map_or(Ok(default_unit.clone()), parse_unit)?;
+    let sigma = match &written.sigma {
+        Some(sigma) => Some(sigma.in_unit(written.value, &unit)?),
+        None => None,
+    };
+    Quantity::measured(written.value, unit, sigma, label)
+}
+
+/// The pieces of the text.
+struct Written<'a> {
+    value: f64,
+    unit: Option<&'a str>,
+    sigma: Option<WrittenSigma<'a>>,
+}
+
+struct WrittenSigma<'a> {
+    number: f64,
+    unit: Option<&'a str>,
+}
+
+impl<'a> Written<'a> {
+    fn split(text: &'a str) -> Result<Self, QuantityError> {
+        let (inside, unit_outside) = split_brackets(text)?;
+        let Some((left, right)) = split_sigma(inside) else {
+            let (value, unit) = number_and_unit(inside, text)?;
+            let unit = one_unit(unit, unit_outside, text)?;
+            return Ok(Self { value, unit, sigma: None });
+        };
+        let (value, unit) = number_and_unit(left, text)?;
+        let (number, sigma_unit) = number_and_unit(right, text)?;
+        let sigma = |unit| Some(WrittenSigma { number, unit });
+        if unit_outside.is_none() && sigma_unit == Some("%") && matches!(unit, None | Some("%")) {
+            return Err(refused(
+                text,
+                "the `%` may mean two things; write `(5.0 +/- 0.2) %` or `5.0 +/- 0.2`",
+            ));
+        }
+        if unit_outside.is_some() {
+            let unit = one_unit(unit.or(sigma_unit), unit_outside, text)?;
+            return Ok(Self { value, unit, sigma: sigma(None) });
+        }
+        Ok(match unit {
+            Some(_) => Self { value, unit, sigma: sigma(sigma_unit) },
+            None => Self { value, unit: sigma_unit, sigma: sigma(None) },
+        })
+    }
+}
+
+impl WrittenSigma<'_> {
+    /// The uncertainty in the unit of the value.
+    fn in_unit(&self, value: f64, unit: &Unit) -> Result<f64, QuantityError> {
+        match self.unit {
+            None => Ok(self.number),
+            Some("%") => {
+                let absolute = unit.counted_from_absolute_zero();
+                let from_zero = unit.convert(value, &absolute)?;
+                Ok(self.number / 100.0 * from_zero.abs() * absolute.interval_in(unit)?)
+            }
+            Some(symbol) => Ok(self.number * Unit::parse(symbol)?.interval_in(unit)?),
+        }
+    }
+}
+
+/// `(41.2 ± 0.8) mg/L` into what is inside the brackets and the unit behind them.
+fn split_brackets(text: &str) -> Result<(&str, Option<&str>), QuantityError> {
+    let trimmed = text.trim();
+    let Some(opened) = trimmed.strip_prefix('(') else { return Ok((trimmed, None)) };
+    let (inside, unit) = opened.split_once(')').ok_or_else(|| refused(text, "a `)` is missing"))?;
+    let unit = unit.trim();
+    Ok((inside.trim(), (!unit.is_empty()).then_some(unit)))
+}
+
+fn split_sigma(text: &str) -> Option<(&str, &str)> {
+    ["+/-", "±", "+-"].iter().find_map(|sign| text.split_once(sign)).map(|(l, r)| (l.trim(), r.trim()))
+}
+
+fn one_unit<'a>(
+    inside: Option<&'a str>,
+    outside: Option<&'a str>,
+    text: &str,
+) -> Result<Option<&'a str>, QuantityError> {
+    match (inside, outside) {
+        (Some(_), Some(_)) => Err(refused(text, "it has two units; write `(41.2 +/- 0.8) mg/L`")),
+        (inside, outside) => Ok(inside.or(outside)),
+    }
+}
+
+fn number_and_unit<'a>(piece: &'a str, text: &str) -> Result<(f64, Option<&'a str>), QuantityError> {
+    let end = number_end(piece);
+    let (number, rest) = piece.split_at(end);
+    refuse_decimal_comma(number, rest, text)?;
+    let number: f64 = number.replace('−', "-").parse().map_err(|_| refused(text, &expected_number(piece)))?;
+    if !number.is_finite() {
+        return Err(refused(text, "the number is too large"));
+    }
+    let unit = rest.trim();
+    Ok((number, (!unit.is_empty()).then_some(unit)))
+}
+
+/// Where the number at the front ends: sign, digits, point, and an exponent only if digits follow it.
+fn number_end(text: &str) -> usize {
+    let signed = |at: usize| {
+        text[at..].chars().next().filter(|c| "+-−".contains(*c)).map_or(at, |c| at + c.len_utf8())
+    };
+    let digits = |at: usize| text[at..].find(|c: char| !c.is_ascii_digit()).map_or(text.len(), |n| at + n);
+    let mut end = digits(signed(0));
+    if text[end..].starts_with('.') {
+        end = digits(end + 1);
+    }
+    if text[end..].starts_with(['e', 'E']) {
+        let exponent = signed(end + 1);
+        if digits(exponent) > exponent {
+            end = digits(exponent);
+        }
+    }
+    end
+}
+
+fn refuse_decimal_comma(number: &str, rest: &str, text: &str) -> Result<(), QuantityError> {
+    let Some(after) = rest.strip_prefix(',') else { return Ok(()) };
+    let n_digits = after.find(|c: char| !c.is_ascii_digit()).unwrap_or(after.len());
+    if n_digits == 0 {
+        return Ok(());
+    }
+    let digits = &after[..n_digits];
+    let advice = match n_digits {
+        3 => format!("write `{number}.{digits}` for a decimal point, `{number}{digits}` for thousands"),
+        _ => format!("write `{number}.{digits}` with a decimal point"),
+    };
+    Err(refused(text, &advice))
+}
+
+fn expected_number(piece: &str) -> String {
+    match piece {
+        "" => "a number is missing; write, say, `41.2 mg/L` or `41.2 +/- 0.8 mg/L`".to_owned(),
+        _ => format!("a number was expected where `{piece}` stands"),
+    }
+}
+
+fn refused(text: &str, reason: &str) -> QuantityError {
+    QuantityError::Text { text: text.trim().to_owned(), reason: reason.to_owned() }
+}

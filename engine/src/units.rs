@@ -1,1 +1,0 @@
-//! Units of measurement, and quantities read from text with them.
