@@ -8,6 +8,7 @@
 pub const CONSTANTS: &[(&str, &str)] = &[
     ("busenberg1984", include_str!("../constants/busenberg1984.toml")),
     ("busenberg1986", include_str!("../constants/busenberg1986.toml")),
+    ("felmy1990", include_str!("../constants/felmy1990.toml")),
     ("nordstrom1990", include_str!("../constants/nordstrom1990.toml")),
     ("olofsson1975", include_str!("../constants/olofsson1975.toml")),
     ("plummer1982", include_str!("../constants/plummer1982.toml")),
