@@ -8,6 +8,7 @@
 pub const CONSTANTS: &[(&str, &str)] = &[
     ("busenberg1984", include_str!("../constants/busenberg1984.toml")),
     ("busenberg1986", include_str!("../constants/busenberg1986.toml")),
+    ("felmy1990", include_str!("../constants/felmy1990.toml")),
     ("nordstrom1990", include_str!("../constants/nordstrom1990.toml")),
     ("olofsson1975", include_str!("../constants/olofsson1975.toml")),
     ("plummer1982", include_str!("../constants/plummer1982.toml")),
@@ -16,3 +17,39 @@ pub const CONSTANTS: &[(&str, &str)] = &[
 
 /// `(file name without extension, TOML text)` of every file in `ledgers/`, in alphabetical order.
 pub const LEDGERS: &[(&str, &str)] = &[("freshwater", include_str!("../ledgers/freshwater.toml"))];
+
+#[cfg(test)]
+mod tests {
+    use super::{CONSTANTS, LEDGERS};
+    use std::path::Path;
+
+    /// Names of the TOML files in a folder of this crate, in alphabetical order.
+    fn toml_files(folder: &str) -> Vec<String> {
+        let path = Path::new(env!("CARGO_MANIFEST_DIR")).join(folder);
+        let mut names: Vec<String> = std::fs::read_dir(&path)
+            .expect("the folder is part of the crate")
+            .map(|entry| entry.expect("a readable entry").path())
+            .filter(|path| path.extension().is_some_and(|extension| extension == "toml"))
+            .map(|path| path.file_stem().expect("a file name").to_string_lossy().into_owned())
+            .collect();
+        names.sort();
+        names
+    }
+
+    #[test]
+    fn every_file_is_embedded_in_alphabetical_order() {
+        let listed =
+            |files: &[(&str, &str)]| files.iter().map(|(name, _)| (*name).to_owned()).collect::<Vec<_>>();
+        assert_eq!(listed(CONSTANTS), toml_files("constants"));
+        assert_eq!(listed(LEDGERS), toml_files("ledgers"));
+    }
+
+    #[test]
+    fn every_file_of_constants_names_itself_and_is_in_the_bibliography() {
+        let bibliography = include_str!("../references.bib");
+        for (name, text) in CONSTANTS {
+            assert!(text.contains(&format!("key = \"{name}\"")), "`{name}` carries another key");
+            assert!(bibliography.contains(&format!("{{{name},")), "`{name}` is not in references.bib");
+        }
+    }
+}
