@@ -1,1 +1,24 @@
 //! What a constant is and how constants combine.
+//!
+//! Reading order: an [`Element`] and its atomic mass; a [`Species`] read from a formula; an [`Equation`], balanced
+//! when it is made; a [`LogK`], log10 K as a vector of temperature terms; the [`Conditions`] in which it holds and the
+//! [`History`] of where it came from; and a [`Reaction`], which is an equation with its constant and adds up as
+//! chemistry does: written backwards K becomes 1/K, taken n times Kⁿ, and constants of added reactions multiply.
+
+pub mod conditions;
+pub mod element;
+pub mod equation;
+pub mod formula;
+pub mod history;
+pub mod log_k;
+pub mod rational;
+pub mod reaction;
+
+pub use conditions::{Conditions, GasStandard};
+pub use element::Element;
+pub use equation::{Equation, EquationError, Imbalance};
+pub use formula::{FormulaError, Species, State};
+pub use history::{History, Origin, Provenance};
+pub use log_k::{LogK, Range, Term};
+pub use rational::Rational;
+pub use reaction::{Reaction, ReactionError};

@@ -56,12 +56,20 @@ pub struct Quantity {
 }
 
 /// One input of a quantity and the quantity's sensitivity to it.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Part {
     /// The independent input x.
     pub input: Input,
     /// ∂y/∂x, in units of y per unit of x.
     pub sensitivity: f64,
+}
+
+impl Part {
+    /// The part of `factor` times the quantity.
+    #[must_use]
+    pub fn scaled(&self, factor: f64) -> Self {
+        Self { input: self.input.clone(), sensitivity: self.sensitivity * factor }
+    }
 }
 
 impl Quantity {
