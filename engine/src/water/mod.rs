@@ -1,1 +1,16 @@
 //! What was measured in a water, and what is done to it.
+//!
+//! A [`Sample`] has two parts. Its *analysis* fixes the conserved totals at the sample's own temperature: pH,
+//! alkalinity and dissolved inorganic carbon are evidence there. Its *treatments* act on those totals: pH and the rest
+//! become results. Nothing is computed in this room; the equilibrium room does both with one ledger.
+
+pub mod analysis;
+pub mod analyte;
+pub mod concentration;
+pub mod sample;
+pub mod treatment;
+
+pub use analysis::{Analysis, Evidence, Measured, Ph};
+pub use analyte::Analyte;
+pub use sample::{Sample, SampleError};
+pub use treatment::Treatment;

@@ -1,0 +1,326 @@
+//! The analysis of a water: what was measured, and what of it fixes the proton total.
+
+use std::collections::BTreeMap;
+
+use super::analyte::Analyte;
+use super::concentration::{self, Amount};
+use crate::chem::{Species, reaction};
+use crate::named::{KeyFault, Named, Value};
+use crate::nearest::nearest;
+use crate::quantity::Quantity;
+use crate::text::list;
+use crate::units::{Kind, Pressure, Temperature};
+
+/// Totals to start from: those of a laboratory analysis, or those an earlier equilibrium left dissolved.
+#[derive(Debug, Clone)]
+pub enum Analysis {
+    /// Measured amounts and what fixes the proton total.
+    Measured(Box<Measured>),
+    /// Moles of species per kilogram of water whose elements and charge are the water's totals.
+    Dissolved(Vec<(Species, f64)>),
+}
+
+/// A laboratory analysis, read and in range, not yet converted to one basis.
+#[derive(Debug, Clone, Default)]
+pub struct Measured {
+    /// Amounts by analyte, with the key each was given under.
+    pub amounts: Vec<(Analyte, String, Amount)>,
+    /// pH, alkalinity, inorganic carbon and CO2, as measured.
+    pub evidence: Evidence,
+    /// The key whose total absorbs the charge misfit.
+    pub make_up: Option<String>,
+    /// Density of the solution in kg/L, if it was measured.
+    pub density: Option<f64>,
+    /// The temperature at which volumes were measured.
+    pub volume_temperature: Option<Temperature>,
+}
+
+/// What was measured of the acid-base state.
+#[derive(Debug, Clone, Default)]
+pub struct Evidence {
+    /// -log10 a(H⁺), or the demand for electroneutrality.
+    pub ph: Option<Ph>,
+    /// Alkalinity in equivalents.
+    pub alkalinity: Option<Amount>,
+    /// Dissolved inorganic carbon in moles.
+    pub dic: Option<Amount>,
+    /// Fugacity of CO2 in bar.
+    pub co2: Option<Quantity>,
+    /// Which two to use where three or more were measured.
+    pub from: Option<Vec<String>>,
+}
+
+/// What is said of pH.
+#[derive(Debug, Clone)]
+pub enum Ph {
+    /// A measured value.
+    Measured(Quantity),
+    /// Whatever makes the charges add up.
+    Electroneutral,
+}
+
+/// Conditions of a sample, split off the analysis since treatments change them.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Setting {
+    /// Temperature.
+    pub temperature: Temperature,
+    /// Pressure.
+    pub pressure: Pressure,
+    /// Kilograms of water.
+    pub water: f64,
+}
+
+/// Everything read from the keys of a sample.
+#[derive(Debug, Clone)]
+pub struct Read {
+    /// What the sample is called.
+    pub name: Option<String>,
+    /// Temperature, pressure and amount of water.
+    pub setting: Setting,
+    /// The analysis.
+    pub measured: Measured,
+    /// Defaults that were used, in words.
+    pub defaults: Vec<String>,
+}
+
+/// The keys of a sample besides amounts.
+pub const KEYS: [&str; 16] = [
+    "name", "temperature", "pressure", "volume_temperature", "density", "water", "pH", "alkalinity", "DIC", "fCO2",
+    "pCO2", "xCO2", "from", "make_up", "labels", "ledger",
+];
+
+/// Keys of later landings, refused with a word rather than as misspelt.
+const NOT_YET: [(&str, &str); 8] = [
+    ("pe", "redox equilibria are not computed yet"),
+    ("Eh", "redox equilibria are not computed yet"),
+    ("ORP", "redox equilibria are not computed yet"),
+    ("electrode", "redox equilibria are not computed yet"),
+    ("couples", "redox equilibria are not computed yet"),
+    ("salinity", "it belongs to `seawater`, which is not there yet"),
+    ("ph_scale", "outside seawater pH is -log10 of the activity of H^+"),
+    ("pH_temperature", "give pH as it is at the sample's temperature"),
+];
+
+/// A bare total above this, mol/kg(water), is taken for a forgotten unit.
+const LARGEST_BARE_TOTAL: f64 = 20.0;
+
+/// Reads the keys of a sample.
+///
+/// # Errors
+///
+/// Returns the first fault with its key.
+pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
+    let mut named = Named::new(entries);
+    let mut defaults = Vec::new();
+    let name = named.text("name")?;
+    let setting = read_setting(&mut named, &mut defaults)?;
+    let density = read_density(&mut named)?;
+    let volume_temperature = named.take("volume_temperature").map(|v| reaction::temperature("volume_temperature", v));
+    let mut measured = Measured {
+        evidence: read_evidence(&mut named, setting.pressure)?,
+        make_up: named.text("make_up")?,
+        density,
+        volume_temperature: volume_temperature.transpose()?,
+        ..Measured::default()
+    };
+    for (key, value) in named.rest() {
+        measured.amounts.push(read_amount(key, value)?);
+    }
+    check_make_up(&measured)?;
+    if measured.evidence.dic.is_some() && measured.amounts.iter().any(|(analyte, ..)| analyte.element().symbol() == "C") {
+        return Err(KeyFault::new("DIC", "`DIC` and `C` state the same carbon: keep one"));
+    }
+    Ok(Read { name, setting, measured, defaults })
+}
+
+fn read_setting(named: &mut Named, defaults: &mut Vec<String>) -> Result<Setting, KeyFault> {
+    let temperature = match named.take("temperature") {
+        Some(value) => reaction::temperature("temperature", value)?,
+        None => {
+            defaults.push("temperature 25 degC".into());
+            Temperature::REFERENCE
+        }
+    };
+    let pressure = named.quantity("pressure", Kind::Pressure)?;
+    let pressure = match pressure {
+        Some(quantity) => pressure_of("pressure", &quantity)?,
+        None => Pressure::ATMOSPHERE,
+    };
+    let water = named.quantity("water", Kind::Mass)?.map(|quantity| {
+        let kilogram = crate::units::Unit::parse("kg").expect("a known unit");
+        quantity.to(&kilogram).map(|mass| mass.value()).map_err(|error| KeyFault::new("water", error.to_string()))
+    });
+    let water = water.transpose()?.unwrap_or(1.0);
+    if water <= 0.0 {
+        return Err(KeyFault::new("water", "`water` must be above zero"));
+    }
+    Ok(Setting { temperature, pressure, water })
+}
+
+/// A pressure in bar, above zero.
+///
+/// # Errors
+///
+/// A fault of `key`.
+pub fn pressure_of(key: &str, quantity: &Quantity) -> Result<Pressure, KeyFault> {
+    let bar = quantity.to(&Kind::Pressure.default_unit());
+    let pressure = bar.map_err(|e| e.to_string()).and_then(|bar| Pressure::from_bar(bar.value()).map_err(|e| e.to_string()));
+    pressure.map_err(|message| KeyFault::new(key, format!("`{key}`: {message}")))
+}
+
+fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
+    let Some(quantity) = named.quantity("density", Kind::Density)? else { return Ok(None) };
+    let unit = crate::units::Unit::parse("kg/L").expect("a known unit");
+    let density = quantity.to(&unit).map_err(|error| KeyFault::new("density", error.to_string()))?.value();
+    if (0.5..=3.0).contains(&density) {
+        Ok(Some(density))
+    } else {
+        Err(KeyFault::new("density", format!("`density` is {density} kg/L, which no water has")))
+    }
+}
+
+fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyFault> {
+    let ph = match named.take("pH") {
+        None => None,
+        Some(Value::Text(text)) if text == "electroneutral" => Some(Ph::Electroneutral),
+        Some(value) => {
+            let ph = crate::named::quantity("pH", value, Kind::Fraction)?;
+            if !(-2.0..=17.0).contains(&ph.value()) {
+                return Err(KeyFault::new("pH", format!("pH {} lies outside -2 to 17", ph.value())));
+            }
+            Some(Ph::Measured(ph))
+        }
+    };
+    let amount = |key: &str, given: Option<Quantity>, read: fn(&Quantity) -> Result<Amount, String>| {
+        given.map(|given| read(&given).map_err(|message| KeyFault::new(key, format!("`{key}`: {message}")))).transpose()
+    };
+    let alkalinity = named.quantity("alkalinity", Kind::Alkalinity)?;
+    let alkalinity = amount("alkalinity", alkalinity, concentration::alkalinity)?;
+    let dic = named.quantity("DIC", Kind::Amount)?;
+    let dic = amount("DIC", dic, |given| {
+        concentration::amount(&Analyte::parse("C").expect("carbon is an element"), given)
+    })?;
+    if let Some(dic) = &dic {
+        not_negative("DIC", dic)?;
+    }
+    let evidence = Evidence { ph, alkalinity, dic, co2: read_co2(named, pressure)?, from: named.texts("from")? };
+    check_pair(&evidence)?;
+    Ok(evidence)
+}
+
+/// Fugacity in bar; an ideal gas's partial pressure is its fugacity, and a mole fraction that of the total pressure.
+fn read_co2(named: &mut Named, pressure: Pressure) -> Result<Option<Quantity>, KeyFault> {
+    let mut found: Option<(&str, Quantity)> = None;
+    for (key, kind) in [("fCO2", Kind::Pressure), ("pCO2", Kind::Pressure), ("xCO2", Kind::Fraction)] {
+        let Some(given) = named.quantity(key, kind)? else { continue };
+        if let Some((other, _)) = &found {
+            return Err(KeyFault::new(key, format!("`{other}` and `{key}` state the same CO2: keep one")));
+        }
+        let bar = Kind::Pressure.default_unit();
+        let fugacity = if kind == Kind::Pressure {
+            given.to(&bar)
+        } else {
+            Quantity::from_partials(given.value() * pressure.bar(), bar, &[(&given, pressure.bar())])
+        };
+        let fugacity = fugacity.map_err(|error| KeyFault::new(key, error.to_string()))?;
+        if fugacity.value() <= 0.0 {
+            return Err(KeyFault::new(key, format!("`{key}` must be above zero")));
+        }
+        found = Some((key, fugacity));
+    }
+    Ok(found.map(|(_, fugacity)| fugacity))
+}
+
+impl Evidence {
+    /// The keys that were given, of `pH`, `alkalinity`, `DIC` and `fCO2`.
+    #[must_use]
+    pub fn given(&self) -> Vec<&'static str> {
+        [
+            ("pH", self.ph.is_some()),
+            ("alkalinity", self.alkalinity.is_some()),
+            ("DIC", self.dic.is_some()),
+            ("fCO2", self.co2.is_some()),
+        ]
+        .into_iter()
+        .filter_map(|(key, given)| given.then_some(key))
+        .collect()
+    }
+
+    /// The keys that fix the proton total: those in `from`, else all that were given.
+    #[must_use]
+    pub fn used(&self) -> Vec<&'static str> {
+        let chosen = |key: &&str| self.from.as_ref().is_none_or(|from| from.iter().any(|name| name == key));
+        self.given().into_iter().filter(chosen).collect()
+    }
+
+    /// Whether `key` is among [`Evidence::used`].
+    #[must_use]
+    pub fn uses(&self, key: &str) -> bool {
+        self.used().contains(&key)
+    }
+}
+
+fn check_pair(evidence: &Evidence) -> Result<(), KeyFault> {
+    let given = evidence.given();
+    if let Some(from) = &evidence.from {
+        for name in from {
+            if !given.contains(&name.as_str()) {
+                let message = format!("`from` names `{name}`, which was not given: {} were", list(&given));
+                return Err(KeyFault::new("from", message));
+            }
+        }
+        if from.len() != 2 {
+            return Err(KeyFault::new("from", "`from` names two of `pH`, `alkalinity`, `DIC` and `fCO2`"));
+        }
+    }
+    if evidence.used().len() > 2 {
+        let message = format!(
+            "{} are more than fix the water: name two, as in `from: [\"pH\", \"alkalinity\"]`; the others become misfits",
+            list(&given)
+        );
+        return Err(KeyFault::new(given[2], message));
+    }
+    Ok(())
+}
+
+fn read_amount(key: String, value: Value) -> Result<(Analyte, String, Amount), KeyFault> {
+    if let Some((_, why)) = NOT_YET.iter().find(|(later, _)| *later == key) {
+        return Err(KeyFault::new(key.clone(), format!("`{key}` is not read here: {why}")));
+    }
+    let analyte = Analyte::parse(&key).map_err(|error| {
+        let message = match nearest(&key, KEYS) {
+            Some(close) if !matches!(error, super::analyte::AnalyteError::Carbonate(_)) => {
+                format!("unknown key `{key}`; did you mean `{close}`?")
+            }
+            _ => error.to_string(),
+        };
+        KeyFault::new(key.clone(), message)
+    })?;
+    if let Value::Number(number) = value
+        && number.abs() > LARGEST_BARE_TOTAL
+    {
+        let message = format!("`{key}`: {number} mol/kg? write \"{number} mg/L\"");
+        return Err(KeyFault::new(key, message));
+    }
+    let given = crate::named::quantity(&key, value, Kind::Amount)?;
+    let amount = concentration::amount(&analyte, &given);
+    let amount = amount.map_err(|message| KeyFault::new(key.clone(), format!("`{key}`: {message}")))?;
+    not_negative(&key, &amount)?;
+    Ok((analyte, key, amount))
+}
+
+fn not_negative(key: &str, amount: &Amount) -> Result<(), KeyFault> {
+    if amount.moles.value() < 0.0 {
+        return Err(KeyFault::new(key, format!("`{key}` is negative: an amount is zero or more")));
+    }
+    Ok(())
+}
+
+fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
+    let Some(key) = &measured.make_up else { return Ok(()) };
+    if measured.amounts.iter().any(|(_, own, _)| own == key) {
+        return Ok(());
+    }
+    let keys: Vec<&str> = measured.amounts.iter().map(|(_, own, _)| own.as_str()).collect();
+    Err(KeyFault::new("make_up", format!("`make_up` names `{key}`, which was not given: {} were", list(&keys))))
+}
