@@ -4,6 +4,7 @@ pub mod activity;
 pub mod chem;
 pub mod equilibrium;
 pub mod ledger;
+pub mod nearest;
 pub mod physics;
 pub mod present;
 pub mod process;
