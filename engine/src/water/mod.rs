@@ -7,6 +7,7 @@
 pub mod analysis;
 pub mod analyte;
 pub mod concentration;
+pub mod csv_text;
 pub mod sample;
 pub mod treatment;
 
