@@ -1,1 +1,44 @@
 //! From a sample and a ledger to a state: names become indices and come back.
+//!
+//! [`equilibrate`] reads as the work is done: [`System`] assembles rows of numbers for the species that can occur,
+//! [`analysis`] fixes the conserved totals from what was measured, [`treatment`] acts on them, and a [`State`] answers
+//! questions in the user's names and units.
+
+pub mod acid_base;
+pub mod analysis;
+pub mod assemble;
+mod error;
+pub mod observable;
+pub mod state;
+pub mod treatment;
+
+pub use assemble::System;
+pub use error::EquilibriumError;
+pub use observable::{Asked, Observable, ObservableError};
+pub use state::State;
+
+use crate::ledger::{Ledger, shipped};
+use crate::solve::Settings;
+use crate::water::{Analysis, Sample};
+
+/// The equilibrium of a sample, with the ledger given, else the one that travels with it, else `freshwater`.
+///
+/// # Errors
+///
+/// Returns what the ledger does not know, what the analysis leaves open, or why there is no equilibrium.
+pub fn equilibrate(sample: &Sample, ledger: Option<&Ledger>, settings: &Settings) -> Result<State, EquilibriumError> {
+    let ledger = match ledger.or(sample.ledger()) {
+        Some(ledger) => ledger.clone(),
+        None => shipped::ledger("freshwater", None)?,
+    };
+    let analysed = match sample.analysis() {
+        Analysis::Measured(measured) => analysis::analyse(sample, measured, &ledger, settings)?,
+        Analysis::Dissolved(totals) => analysis::restore(sample, totals, &ledger)?,
+    };
+    let outcome = if sample.treatments().is_empty() && analysed.outcome.is_some() {
+        analysed.outcome.clone().expect("just checked")
+    } else {
+        treatment::treat(sample, &analysed, settings)?
+    };
+    Ok(State::new(sample.clone(), analysed, outcome))
+}

@@ -1,0 +1,544 @@
+//! The first stage: conserved totals from what was measured, at the sample's own temperature.
+//!
+//! Every total but those of hydrogen and carbon is an amount that was given. These two follow from the acid-base
+//! evidence. A fixed pH and a fixed fugacity are reservoirs of the convex problem, an alkalinity is a total of hydrogen
+//! (see [`super::acid_base`]), and electroneutrality is one too:
+//!
+//! ```text
+//! T_H = Σ_j h_j T_j - alkalinity             T_H = -(Σ_{j≠H} z_j T_j) / z_H
+//! ```
+//!
+//! Where the evidence fixes neither total, one unknown is left and found as the root of one equation outside the convex
+//! problem: total carbon from alkalinity at a given pH, pH from total carbon at a given fugacity.
+
+use std::collections::BTreeSet;
+
+use super::acid_base::{ALKALINITY_PH, ZeroLevel};
+use super::assemble::{System, carriers};
+use super::error::{EquilibriumError, proton_total_open};
+use crate::chem::{Element, Rational, Species, rational};
+use crate::ledger::{Formations, Ledger};
+use crate::physics::water;
+use crate::solve::scalar::{self, Tolerance, root_between};
+use crate::solve::{Converged, Problem, Reservoir, Row, Settings, Total, Warm, solve};
+use crate::water::analysis::{Evidence, Measured, Ph};
+use crate::water::analyte::{Analyte, oxidation_state, to_roman};
+use crate::water::concentration::Solution;
+use crate::water::{Sample, Treatment};
+
+const LN_10: f64 = std::f64::consts::LN_10;
+/// Oxidation states an element given whole is taken in where a ledger knows several; common in aerated water.
+const COMMON_STATES: [(&str, i64); 5] = [("Fe", 3), ("S", 6), ("N", 5), ("C", 4), ("Mn", 2)];
+/// The smallest total carbon looked at, mol/kg(water).
+const LEAST_CARBON: f64 = 1e-15;
+/// The largest.
+const MOST_CARBON: f64 = 30.0;
+/// pH between which a pH is looked for.
+const PH_RANGE: (f64, f64) = (-2.0, 17.0);
+/// Roots are found to this in ln total or in pH: the last digits of a double.
+const ROOT: Tolerance = Tolerance { x: 1e-15, f: 0.0 };
+const ROOT_INTERVALS: usize = 24;
+
+/// The conserved totals and what was found on the way to them.
+#[derive(Debug, Clone)]
+pub struct Analysed {
+    /// The system at the sample's own temperature.
+    pub system: System,
+    /// Total of each component of `system`, mol/kg(water).
+    pub totals: Vec<f64>,
+    /// The equilibrium the evidence itself implied, if there was any.
+    pub outcome: Option<Outcome>,
+    /// Measured values that were not used, with their key and how far they lie above the computed ones.
+    pub misfits: Vec<(&'static str, f64)>,
+    /// What was assumed, in words.
+    pub notes: Vec<String>,
+}
+
+/// A solved problem with the names of its surroundings and solids.
+#[derive(Debug, Clone)]
+pub struct Outcome {
+    /// The system it was solved in.
+    pub system: System,
+    /// The numbers.
+    pub converged: Converged,
+    /// Total of each component over the water and its solids, mol/kg(water).
+    pub totals: Vec<f64>,
+    /// What delivered or took each amount: the gas, solid or reagent, with mol/kg(water) taken up by the water.
+    pub exchanged: Vec<(String, f64)>,
+    /// Amount of each solid that may form or is there without limit, mol/kg(water).
+    pub solids: Vec<(Species, f64)>,
+}
+
+/// Fixes the totals of a laboratory analysis.
+///
+/// # Errors
+///
+/// Returns what the ledger does not know, or what the evidence leaves open or cannot mean.
+pub fn analyse(
+    sample: &Sample,
+    measured: &Measured,
+    ledger: &Ledger,
+    settings: &Settings,
+) -> Result<Analysed, EquilibriumError> {
+    let mut notes = sample.notes().to_vec();
+    let solution = solution(measured, sample);
+    let given = amounts(measured, ledger, &solution, &mut notes)?;
+    let present = present_components(sample, measured, ledger, &given)?;
+    let system = System::new(ledger, &present, sample.setting().temperature)?;
+    let mut totals = vec![0.0; system.n_components()];
+    for (j, moles) in &given {
+        totals[position(&system, *j)] += moles;
+    }
+    let analysis = Analysis::new(&system, measured, &solution, settings, sample);
+    let (totals, converged) = match &measured.make_up {
+        None => analysis.solve(&totals)?,
+        Some(key) => {
+            let carrier = given[measured.amounts.iter().position(|(_, own, _)| own == key).expect("checked on entry")].0;
+            analysis.made_up(&totals, position(&system, carrier), key, &mut notes)?
+        }
+    };
+    let misfits = analysis.misfits(&converged);
+    let outcome = Outcome {
+        system: system.clone(),
+        converged,
+        totals: totals.clone(),
+        exchanged: vec![],
+        solids: vec![],
+    };
+    Ok(Analysed { system, totals, outcome: Some(outcome), misfits, notes })
+}
+
+/// Takes up totals that an earlier equilibrium left.
+///
+/// # Errors
+///
+/// Returns a species that the ledger does not know.
+pub fn restore(sample: &Sample, dissolved: &[(Species, f64)], ledger: &Ledger) -> Result<Analysed, EquilibriumError> {
+    let formations = ledger.formations();
+    let mut present = treatment_components(sample, ledger)?;
+    let mut given: Vec<(usize, f64)> = Vec::new();
+    for (species, moles) in dissolved {
+        ledger.find_species(species.key())?;
+        let formed = formations.formation(species).expect("just found");
+        given.extend(formed.stoichiometry.iter().map(|(j, nu)| (*j, rational::to_f64(*nu) * moles)));
+    }
+    present.extend(given.iter().map(|(j, _)| *j));
+    present.extend(formations.component(&Species::proton()));
+    let system = System::new(ledger, &present, sample.setting().temperature)?;
+    let mut totals = vec![0.0; system.n_components()];
+    for (j, moles) in given {
+        if let Some(k) = system.components().iter().position(|own| *own == j) {
+            totals[k] += moles;
+        }
+    }
+    Ok(Analysed { system, totals, outcome: None, misfits: vec![], notes: sample.notes().to_vec() })
+}
+
+fn position(system: &System, component: usize) -> usize {
+    system.components().iter().position(|own| *own == component).expect("present by construction")
+}
+
+/// Density and dissolved mass of the sample as its volumes were measured.
+fn solution(measured: &Measured, sample: &Sample) -> Solution {
+    let at = measured.volume_temperature.unwrap_or_else(|| laboratory(sample));
+    let water_density = water::density(at.kelvin()) / 1000.0;
+    let grams = measured.amounts.iter().map(|(analyte, _, amount)| {
+        analyte.molar_mass().unwrap_or(0.0) * amount.moles.value() * amount.per.to_litre(water_density)
+    });
+    // Alkalinity and carbon are counted as hydrogencarbonate, 61 g/mol, which most of either is.
+    let evidence = measured.evidence.alkalinity.iter().chain(&measured.evidence.dic).next();
+    let carbonate = evidence.map_or(0.0, |amount| 61.017 * amount.moles.value() * amount.per.to_litre(water_density));
+    let dissolved = (grams.sum::<f64>() + carbonate).max(0.0) / 1000.0;
+    match measured.density {
+        Some(density) => Solution { density, dissolved },
+        None => Solution::with_salts(water_density, dissolved),
+    }
+}
+
+/// Laboratories measure volumes at 20 degC, whatever the water had in the field.
+fn laboratory(_: &Sample) -> crate::units::Temperature {
+    crate::units::Temperature::from_celsius(20.0).expect("above absolute zero")
+}
+
+/// Moles per kilogram of water of the component that carries each analyte.
+fn amounts(
+    measured: &Measured,
+    ledger: &Ledger,
+    solution: &Solution,
+    notes: &mut Vec<String>,
+) -> Result<Vec<(usize, f64)>, EquilibriumError> {
+    let formations = ledger.formations();
+    let convert = |(analyte, key, amount): &(Analyte, String, _)| {
+        let amount: &crate::water::concentration::Amount = amount;
+        let carrier = carrier(formations, analyte, key, notes)?;
+        let atoms = formations.components[carrier].count(analyte.element());
+        let ratio = rational::to_f64(analyte.atoms() / atoms);
+        Ok((carrier, amount.moles.value() * amount.per.to_water(solution) * ratio))
+    };
+    measured.amounts.iter().map(convert).collect()
+}
+
+/// The component that carries an analyte in its oxidation state.
+fn carrier(
+    formations: &Formations,
+    analyte: &Analyte,
+    key: &str,
+    notes: &mut Vec<String>,
+) -> Result<usize, EquilibriumError> {
+    let element = analyte.element();
+    let fault = |why: String| EquilibriumError::Analyte { key: key.into(), why };
+    let candidates = carriers(formations, element);
+    let state_of = |j: usize| oxidation_state(&formations.components[j], element);
+    match (candidates.as_slice(), analyte.oxidation_state()) {
+        ([], _) => Err(fault(format!("the ledger has no species of {element}; give it one with `.with_reaction`"))),
+        ([one], None) => Ok(*one),
+        (several, None) => {
+            let common = COMMON_STATES.iter().find(|(symbol, _)| *symbol == element.symbol());
+            let wanted = common.map(|(_, state)| Rational::from_integer(*state));
+            let found = several.iter().find(|j| wanted.is_some() && state_of(**j) == wanted);
+            let found = found.ok_or_else(|| fault(format!("{element} occurs in several oxidation states: name one, as in `{element}(II)`")))?;
+            notes.push(format!("{key} is taken as {element}({})", to_roman(common.map_or(0, |(_, state)| *state as i32))));
+            Ok(*found)
+        }
+        (several, wanted) => several.iter().copied().find(|j| state_of(*j) == wanted || state_of(*j).is_none()).ok_or_else(|| {
+            fault(format!("the ledger has no species of {element} in this oxidation state"))
+        }),
+    }
+}
+
+/// Components of what was measured and of what the treatments bring.
+fn present_components(
+    sample: &Sample,
+    measured: &Measured,
+    ledger: &Ledger,
+    given: &[(usize, f64)],
+) -> Result<BTreeSet<usize>, EquilibriumError> {
+    let formations = ledger.formations();
+    let mut present: BTreeSet<usize> = given.iter().filter(|(_, moles)| *moles > 0.0).map(|(j, _)| *j).collect();
+    present.extend(given.iter().map(|(j, _)| *j));
+    present.extend(formations.component(&Species::proton()));
+    let evidence = &measured.evidence;
+    if evidence.alkalinity.is_some() || evidence.dic.is_some() || evidence.co2.is_some() {
+        let carbon = carriers(formations, Element::C);
+        if carbon.is_empty() {
+            let why = "the ledger has no species of C: alkalinity, DIC and CO2 mean nothing in it".to_string();
+            return Err(EquilibriumError::Analyte { key: evidence.given().last().copied().unwrap_or("C").into(), why });
+        }
+        present.extend(carbon.first());
+    }
+    present.extend(treatment_components(sample, ledger)?);
+    Ok(present)
+}
+
+/// Components of the gases and solids that the treatments bring, and of their reagents.
+fn treatment_components(sample: &Sample, ledger: &Ledger) -> Result<BTreeSet<usize>, EquilibriumError> {
+    let formations = ledger.formations();
+    let mut present = BTreeSet::new();
+    for treatment in sample.treatments() {
+        match treatment {
+            Treatment::OpenTo { gas: name, .. } | Treatment::Saturate { solid: name, .. } => {
+                let phase = ledger.find_phase(name)?;
+                let formed = formations.formation(phase).expect("phases are formed");
+                present.extend(formed.stoichiometry.iter().map(|(j, _)| *j));
+            }
+            Treatment::HoldPh { reagent: Some(reagent), .. } => {
+                present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
+            }
+            // A solid that may form brings nothing with it: it needs what is there already.
+            Treatment::Allow { solid, .. } => drop(ledger.find_phase(solid)?),
+            Treatment::HoldPh { .. } | Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
+        }
+    }
+    Ok(present)
+}
+
+/// The evidence of one sample in numbers, and the ways to use it.
+struct Analysis<'a> {
+    system: &'a System,
+    settings: &'a Settings,
+    name: String,
+    evidence: &'a Evidence,
+    proton: usize,
+    carbon: Option<usize>,
+    /// Protons each component of the system carries in its zero-level species.
+    protons: Vec<f64>,
+    charges: Vec<f64>,
+    alkalinity: Option<f64>,
+    dic: Option<f64>,
+    ph: Option<f64>,
+    /// Fugacity of CO2 in bar.
+    co2: Option<f64>,
+    carbon_given: bool,
+}
+
+/// Totals with the equilibrium they belong to.
+type Solved = (Vec<f64>, Converged);
+
+impl<'a> Analysis<'a> {
+    fn new(system: &'a System, measured: &'a Measured, solution: &Solution, settings: &'a Settings, sample: &Sample) -> Self {
+        let evidence = &measured.evidence;
+        let level = ZeroLevel::at(system.ledger(), ALKALINITY_PH);
+        let moles = |amount: &crate::water::concentration::Amount| amount.moles.value() * amount.per.to_water(solution);
+        let carbon = carriers(system.ledger().formations(), Element::C);
+        Self {
+            system,
+            settings,
+            name: sample.name().map_or_else(|| "the sample".into(), |name| format!("`{name}`")),
+            evidence,
+            proton: system.proton(),
+            carbon: carbon.first().and_then(|j| system.components().iter().position(|own| own == j)),
+            protons: system.components().iter().map(|j| rational::to_f64(level.of_component(*j))).collect(),
+            charges: (0..system.n_components()).map(|k| f64::from(system.component_species(k).charge())).collect(),
+            alkalinity: evidence.alkalinity.as_ref().map(moles),
+            dic: evidence.dic.as_ref().map(moles),
+            ph: match &evidence.ph {
+                Some(Ph::Measured(ph)) => Some(ph.value()),
+                _ => None,
+            },
+            co2: evidence.co2.as_ref().map(|fugacity| fugacity.value()),
+            carbon_given: measured.amounts.iter().any(|(analyte, ..)| analyte.element() == Element::C),
+        }
+    }
+
+    /// Totals of all components from the evidence; `given` are those of everything but hydrogen and carbon.
+    fn solve(&self, given: &[f64]) -> Result<Solved, EquilibriumError> {
+        let mut totals = given.to_vec();
+        if let (Some(carbon), Some(dic), true) = (self.carbon, self.dic, self.evidence.uses("DIC")) {
+            totals[carbon] = dic;
+        }
+        let uses = |key| self.evidence.uses(key);
+        let carbon_known = uses("DIC") || self.carbon_given || self.carbon.is_none();
+        let electroneutral = matches!(self.evidence.ph, Some(Ph::Electroneutral)) && uses("pH");
+        match (uses("pH"), uses("alkalinity"), uses("fCO2"), carbon_known) {
+            (true, true, _, false) => self.carbon_from_alkalinity(&totals, electroneutral),
+            (true, true, _, true) => Err(self.too_much()),
+            (true, false, co2, _) => {
+                if electroneutral {
+                    totals[self.proton] = self.neutral_protons(&totals);
+                }
+                self.solve_with(&totals, (!electroneutral).then_some(self.ph).flatten(), self.co2_if(co2), None)
+            }
+            (false, true, false, true) if self.carbon.is_some() => {
+                totals[self.proton] = self.protons_from_alkalinity(&totals);
+                self.solve_with(&totals, None, None, None)
+            }
+            (false, true, true, _) => {
+                totals[self.proton] = self.protons_from_alkalinity(&totals);
+                self.solve_with(&totals, None, self.co2, None)
+            }
+            (false, false, true, true) if uses("DIC") => self.ph_from_carbon(&totals),
+            _ => Err(proton_total_open(&self.name, &self.evidence.used())),
+        }
+    }
+
+    fn too_much(&self) -> EquilibriumError {
+        EquilibriumError::ProtonTotal(format!(
+            "pH, alkalinity and total carbon of {} are more than fix the water: take `C` out, or name two with `from`",
+            self.name
+        ))
+    }
+
+    fn co2_if(&self, used: bool) -> Option<f64> {
+        self.co2.filter(|_| used)
+    }
+
+    /// T_H that gives the measured alkalinity.
+    fn protons_from_alkalinity(&self, totals: &[f64]) -> f64 {
+        let carried: f64 = self.others().map(|k| self.protons[k] * totals[k]).sum();
+        carried - self.alkalinity.unwrap_or(0.0)
+    }
+
+    /// T_H that makes the charges add up.
+    fn neutral_protons(&self, totals: &[f64]) -> f64 {
+        -self.others().map(|k| self.charges[k] * totals[k]).sum::<f64>() / self.charges[self.proton]
+    }
+
+    fn others(&self) -> impl Iterator<Item = usize> + '_ {
+        (0..self.protons.len()).filter(|k| *k != self.proton)
+    }
+
+    /// Alkalinity that totals amount to.
+    fn alkalinity_of(&self, totals: &[f64]) -> f64 {
+        self.others().map(|k| self.protons[k] * totals[k]).sum::<f64>() - totals[self.proton]
+    }
+
+    /// Solves with pH or CO2 held, and returns the totals with what was delivered.
+    fn solve_with(
+        &self,
+        totals: &[f64],
+        ph: Option<f64>,
+        co2: Option<f64>,
+        warm: Option<&Warm>,
+    ) -> Result<Solved, EquilibriumError> {
+        let mut problem = self.system.problem(totals);
+        let mut held = Vec::new();
+        if let Some(ph) = ph {
+            problem.reservoirs.push(fixed_ph(self.proton, ph));
+            held.push("pH".to_string());
+        }
+        if let Some(fugacity) = co2 {
+            problem.reservoirs.push(self.fixed_co2(fugacity)?);
+            held.push("CO2(g)".to_string());
+        }
+        let converged = solve(&problem, self.system.model(), self.settings, warm);
+        let converged = converged.map_err(|error| EquilibriumError::named(error, self.system, &held, &[]))?;
+        Ok((delivered(&problem, &converged), converged))
+    }
+
+    fn fixed_co2(&self, fugacity: f64) -> Result<Reservoir, EquilibriumError> {
+        let gas = self.system.ledger().find_phase("CO2(g)")?;
+        let (_, row) = self.system.phase(gas).expect("its components are present with carbon");
+        Ok(Reservoir { row: row.clone(), ln_value: fugacity.ln() })
+    }
+
+    /// Total carbon from alkalinity, at the measured pH or at electroneutrality.
+    fn carbon_from_alkalinity(&self, totals: &[f64], electroneutral: bool) -> Result<Solved, EquilibriumError> {
+        let carbon = self.carbon.expect("an alkalinity brings carbon in");
+        let target = self.alkalinity.expect("alkalinity is used");
+        let mut last: Option<Solved> = None;
+        let mut misses = |ln_total: f64| {
+            let mut totals = totals.to_vec();
+            totals[carbon] = ln_total.exp();
+            if electroneutral {
+                totals[self.proton] = self.neutral_protons(&totals);
+            }
+            let warm = last.as_ref().map(|(_, converged)| converged.warm.clone());
+            let solved = self.solve_with(&totals, (!electroneutral).then_some(self.ph).flatten(), None, warm.as_ref())?;
+            let miss = self.alkalinity_of(&solved.0) - target;
+            last = Some(solved);
+            Ok::<f64, EquilibriumError>(miss)
+        };
+        let low = scalar::Sample { x: LEAST_CARBON.ln(), f: misses(LEAST_CARBON.ln())? };
+        if low.f >= 0.0 {
+            return Err(EquilibriumError::ProtonTotal(format!(
+                "pH and alkalinity of {} contradict each other: without any carbon its alkalinity would be {:.4e} eq/kg(water), \
+                 and it is given as {target:.4e}",
+                self.name,
+                low.f + target
+            )));
+        }
+        let mut high = scalar::Sample { x: target.abs().max(1e-6).ln(), f: -1.0 };
+        loop {
+            high.f = misses(high.x)?;
+            if high.f > 0.0 {
+                break;
+            }
+            high.x += 4.0_f64.ln();
+            if high.x > MOST_CARBON.ln() {
+                return Err(EquilibriumError::ProtonTotal(format!(
+                    "pH and alkalinity of {} contradict each other: at this pH no amount of carbon gives an alkalinity of {target:.4e} eq/kg(water)",
+                    self.name
+                )));
+            }
+        }
+        let root = root_between(&mut misses, low, high, ROOT)?;
+        misses(root.x)?;
+        Ok(last.expect("solved at the root"))
+    }
+
+    /// pH from total carbon at the fugacity of CO2.
+    fn ph_from_carbon(&self, totals: &[f64]) -> Result<Solved, EquilibriumError> {
+        let carbon = self.carbon.expect("DIC brings carbon in");
+        let target = self.dic.expect("DIC is used");
+        let mut totals = totals.to_vec();
+        totals[carbon] = 0.0;
+        let mut misses = |ph: f64| {
+            let (totals, _) = self.solve_with(&totals, Some(ph), self.co2, None)?;
+            Ok::<f64, EquilibriumError>((totals[carbon] / target).ln())
+        };
+        let unreachable = || {
+            EquilibriumError::ProtonTotal(format!(
+                "DIC and fCO2 of {} contradict each other: at this fugacity CO2 alone holds more carbon than that",
+                self.name
+            ))
+        };
+        let low = scalar::Sample { x: PH_RANGE.0, f: misses(PH_RANGE.0)? };
+        if low.f > 0.0 {
+            return Err(unreachable());
+        }
+        // The fugacity cannot be held at every pH: carbonate would run to millions of moles.
+        let mut high = scalar::Sample { x: 7.0, f: misses(7.0)? };
+        while high.f < 0.0 && high.x < PH_RANGE.1 {
+            high.x += 0.5;
+            high.f = misses(high.x)?;
+        }
+        let root = root_between(&mut misses, low, high, ROOT)?;
+        self.solve_with(&totals, Some(root.x), self.co2, None)
+    }
+
+    /// Lets one total absorb the charge misfit.
+    fn made_up(&self, totals: &[f64], k: usize, key: &str, notes: &mut Vec<String>) -> Result<Solved, EquilibriumError> {
+        let mut last: Option<Solved> = None;
+        let mut misfit = |total: f64| {
+            let mut totals = totals.to_vec();
+            totals[k] = total;
+            let solved = self.solve(&totals)?;
+            let charge = (0..totals.len()).map(|k| self.charges[k] * solved.0[k]).sum::<f64>();
+            last = Some(solved);
+            Ok::<f64, EquilibriumError>(charge)
+        };
+        let largest = 2.0 * totals.iter().map(|total| total.abs()).sum::<f64>();
+        let tolerance = Tolerance { x: 1e-16, f: 1e-17 };
+        let roots = scalar::all_roots(&mut misfit, (0.0, largest), ROOT_INTERVALS, tolerance)?.roots;
+        let Some(root) = roots.first() else {
+            return Err(EquilibriumError::Unreachable(format!(
+                "`make_up`: no amount of `{key}` from zero up makes the charges of {} add up",
+                self.name
+            )));
+        };
+        misfit(root.x)?;
+        notes.push(format!("{key} was changed by {:+.4e} mol/kg(water) to make the charges add up", root.x - totals[k]));
+        Ok(last.expect("solved at the root"))
+    }
+
+    /// Measured values beyond those used, less the computed ones.
+    fn misfits(&self, converged: &Converged) -> Vec<(&'static str, f64)> {
+        let unused = self.evidence.given().into_iter().filter(|key| !self.evidence.uses(key));
+        let computed = |key: &str| -> Option<f64> {
+            let totals = self.dissolved(converged);
+            match key {
+                "pH" => Some(self.ph? + converged.ln_a[self.proton] / LN_10),
+                "alkalinity" => Some(self.alkalinity? - self.alkalinity_of(&totals)),
+                "DIC" => Some(self.dic? - totals[self.carbon?]),
+                _ => {
+                    let reservoir = self.fixed_co2(1.0).ok()?;
+                    Some(self.co2? - ln_saturation(&reservoir.row, converged).exp())
+                }
+            }
+        };
+        unused.filter_map(|key| Some((key, computed(key)?))).collect()
+    }
+
+    fn dissolved(&self, converged: &Converged) -> Vec<f64> {
+        let problem = self.system.problem(&vec![0.0; self.system.n_components()]);
+        let mut totals = vec![0.0; self.system.n_components()];
+        for (row, ln_c) in problem.species.iter().zip(&converged.ln_c) {
+            for (k, nu) in &row.stoichiometry {
+                totals[*k] += rational::to_f64(*nu) * ln_c.exp();
+            }
+        }
+        totals
+    }
+}
+
+/// A reservoir of hydrogen ions at a pH.
+pub(super) fn fixed_ph(proton: usize, ph: f64) -> Reservoir {
+    Reservoir { row: Row::new(&[(proton, 1)], 0.0), ln_value: -ph * LN_10 }
+}
+
+/// Totals with what the reservoirs delivered.
+pub(super) fn delivered(problem: &Problem, converged: &Converged) -> Vec<f64> {
+    let mut totals = problem.totals.clone();
+    for (reservoir, amount) in problem.reservoirs.iter().zip(&converged.reservoir_amount) {
+        for (k, nu) in &reservoir.row.stoichiometry {
+            totals[*k] = totals[*k] + Total::from(rational::to_f64(*nu) * amount);
+        }
+    }
+    totals.into_iter().map(Total::to_f64).collect()
+}
+
+/// ln of the activity product of a row over its constant.
+pub(super) fn ln_saturation(row: &Row, converged: &Converged) -> f64 {
+    let components: f64 = row.stoichiometry.iter().map(|(k, nu)| rational::to_f64(*nu) * converged.ln_a[*k]).sum();
+    row.ln_k + components + row.water * converged.ln_water_activity
+}

@@ -1,0 +1,234 @@
+//! Names become indices: the species that can occur in a water, as rows of numbers at one temperature.
+
+use std::collections::BTreeSet;
+
+use crate::activity::{Davies, Model};
+use crate::chem::{Element, Rational, Species, rational};
+use crate::ledger::{ActivityChoice, Formation, Formations, Ledger};
+use crate::physics::water;
+use crate::solve::{Problem, Row, Total};
+use crate::units::Temperature;
+
+use super::error::EquilibriumError;
+
+const LN_10: f64 = std::f64::consts::LN_10;
+
+/// A misclosure above this many standard deviations is an error.
+const MISCLOSURE_SIGMAS: f64 = 3.0;
+/// A misclosure above this is an error where uncertainties are not stated, log10 units.
+const MISCLOSURE_UNSTATED: f64 = 0.1;
+
+/// The species, gases and solids that can occur with the components present, at one temperature.
+#[derive(Debug, Clone)]
+pub struct System {
+    ledger: Ledger,
+    temperature: Temperature,
+    /// Positions in the ledger's components, water left out: the solver's component k is `components[k]`.
+    components: Vec<usize>,
+    /// Positions in [`Formations::species`], with their rows.
+    solutes: Vec<(usize, Row)>,
+    phases: Vec<(usize, Row)>,
+    model: Model,
+    doubts: Vec<Option<Doubt>>,
+}
+
+/// Why a reaction's log K is uncertain at this temperature.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Doubt {
+    /// Known at one temperature only, so many kelvin away; used as it stands.
+    OneTemperature(f64),
+    /// So many kelvin outside its stated range.
+    OutsideRange(f64),
+}
+
+impl System {
+    /// Assembles the species formed of `present` components (positions in the ledger's components).
+    ///
+    /// # Errors
+    ///
+    /// [`EquilibriumError::Misclosure`] if two routes to one constant disagree.
+    pub fn new(ledger: &Ledger, present: &BTreeSet<usize>, temperature: Temperature) -> Result<Self, EquilibriumError> {
+        let formations = ledger.formations();
+        let water = formations.component(&Species::water());
+        let components: Vec<usize> = present.iter().copied().filter(|j| Some(*j) != water).collect();
+        let (log_k, doubts) = constants(ledger, temperature);
+        check_closure(ledger, formations, &log_k)?;
+        let is_present = |formed: &Formation| {
+            formed.stoichiometry.iter().all(|(j, _)| Some(*j) == water || components.contains(j))
+        };
+        let row_of = |formed: &Formation| row(formed, &components, water, &log_k);
+        let formed = formations.species.iter().enumerate().filter(|(_, formed)| is_present(formed));
+        let (solutes, others): (Vec<_>, Vec<_>) =
+            formed.map(|(index, formed)| (index, row_of(formed))).partition(|(i, _)| formations.species[*i].species.is_solute());
+        let phases = others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
+        let model = model(ledger.activity(), temperature);
+        Ok(Self { ledger: ledger.clone(), temperature, components, solutes, phases, model, doubts })
+    }
+
+    /// The ledger.
+    #[must_use]
+    pub fn ledger(&self) -> &Ledger {
+        &self.ledger
+    }
+
+    /// The temperature its constants hold for.
+    #[must_use]
+    pub fn temperature(&self) -> Temperature {
+        self.temperature
+    }
+
+    /// The activity model.
+    #[must_use]
+    pub fn model(&self) -> &Model {
+        &self.model
+    }
+
+    /// Number of components present, water not counted.
+    #[must_use]
+    pub fn n_components(&self) -> usize {
+        self.components.len()
+    }
+
+    /// Positions of its components in the ledger's components.
+    #[must_use]
+    pub fn components(&self) -> &[usize] {
+        &self.components
+    }
+
+    /// The species that is component `k`.
+    #[must_use]
+    pub fn component_species(&self, k: usize) -> &Species {
+        &self.formations().components[self.components[k]]
+    }
+
+    /// Position of a component among those present.
+    #[must_use]
+    pub fn component(&self, species: &Species) -> Option<usize> {
+        self.components.iter().position(|j| self.formations().components[*j] == *species)
+    }
+
+    /// Position of the hydrogen ion, which is always present.
+    #[must_use]
+    pub fn proton(&self) -> usize {
+        self.component(&Species::proton()).expect("every water has hydrogen ions")
+    }
+
+    /// Solutes, in the order of the solver's species.
+    pub fn solutes(&self) -> impl ExactSizeIterator<Item = &Formation> {
+        self.solutes.iter().map(|(index, _)| &self.formations().species[*index])
+    }
+
+    /// Position of a solute.
+    #[must_use]
+    pub fn solute(&self, species: &Species) -> Option<usize> {
+        self.solutes().position(|formed| formed.species == *species)
+    }
+
+    /// Gases and solids that the components present can form.
+    pub fn phases(&self) -> impl ExactSizeIterator<Item = (&Formation, &Row)> {
+        self.phases.iter().map(|(index, row)| (&self.formations().species[*index], row))
+    }
+
+    /// A gas or solid by its species.
+    #[must_use]
+    pub fn phase(&self, species: &Species) -> Option<(&Formation, &Row)> {
+        self.phases().find(|(formed, _)| formed.species == *species)
+    }
+
+    /// Why the constants behind a species are uncertain at this temperature, with the reactions concerned.
+    pub fn doubts<'a>(&'a self, formed: &'a Formation) -> impl Iterator<Item = (&'a str, Doubt)> {
+        let names: Vec<&str> = self.ledger.names().collect();
+        formed.multiples.iter().filter_map(move |(k, _)| self.doubts[*k].map(|doubt| (names[*k], doubt)))
+    }
+
+    /// The solver's problem without surroundings and solids.
+    #[must_use]
+    pub fn problem(&self, totals: &[f64]) -> Problem {
+        Problem {
+            n_components: self.n_components(),
+            species: self.solutes.iter().map(|(_, row)| row.clone()).collect(),
+            reservoirs: vec![],
+            minerals: vec![],
+            totals: totals.iter().map(|total| Total::from(*total)).collect(),
+        }
+    }
+
+    fn formations(&self) -> &Formations {
+        self.ledger.formations()
+    }
+}
+
+/// log10 K of every reaction at a temperature, and what is doubtful about it.
+fn constants(ledger: &Ledger, temperature: Temperature) -> (Vec<f64>, Vec<Option<Doubt>>) {
+    let read = ledger.reactions().map(|(_, reaction)| {
+        let Ok(constant) = reaction.constant() else { return (0.0, None) };
+        let (log_k, away) = constant.log_k.nearest_to(temperature);
+        let outside = constant.log_k.outside(temperature);
+        // A tenth of a kelvin is what 298 K and 25 degC differ by, and well below what matters.
+        let doubt = match () {
+            () if away > 0.2 => Some(Doubt::OneTemperature(away)),
+            () if outside > 0.0 => Some(Doubt::OutsideRange(outside)),
+            () => None,
+        };
+        (log_k, doubt)
+    });
+    read.unzip()
+}
+
+/// The cycles that leftover reactions close must close.
+fn check_closure(ledger: &Ledger, formations: &Formations, log_k: &[f64]) -> Result<(), EquilibriumError> {
+    for leftover in &formations.leftovers {
+        let misclosure: f64 = leftover.cycle.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum();
+        let reactions: Vec<_> = ledger.reactions().collect();
+        let variance: Option<f64> = leftover
+            .cycle
+            .iter()
+            .map(|(k, n)| {
+                let sigma = reactions[*k].1.log_k().ok()?.sigma()?;
+                Some((rational::to_f64(*n) * sigma).powi(2))
+            })
+            .sum();
+        let limit = variance.map_or(MISCLOSURE_UNSTATED, |variance| MISCLOSURE_SIGMAS * variance.sqrt());
+        if misclosure.abs() > limit {
+            let reaction = reactions[leftover.reaction].0.to_string();
+            return Err(EquilibriumError::Misclosure { reaction, misclosure });
+        }
+    }
+    Ok(())
+}
+
+fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[f64]) -> Row {
+    let position = |j: usize| components.iter().position(|own| *own == j);
+    let stoichiometry: Vec<(usize, Rational)> =
+        formed.stoichiometry.iter().filter_map(|(j, nu)| position(*j).map(|k| (k, *nu))).collect();
+    let log_k: f64 = formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum();
+    Row {
+        stoichiometry,
+        ln_k: log_k * LN_10,
+        charge: f64::from(formed.species.charge()),
+        water: water.map_or(0.0, |water| rational::to_f64(formed.coefficient(water))),
+    }
+}
+
+fn model(choice: ActivityChoice, temperature: Temperature) -> Model {
+    match choice {
+        ActivityChoice::Ideal => Model::IDEAL,
+        ActivityChoice::Davies { a, b, water: stated } => {
+            let a = a.unwrap_or_else(|| debye_huckel_a(temperature));
+            let model = Model::davies(Davies::new(a).with_b(b));
+            stated.map_or(model, |activity| model.with_ln_water_activity(activity.ln()))
+        }
+    }
+}
+
+fn debye_huckel_a(temperature: Temperature) -> f64 {
+    let t = temperature.kelvin();
+    let density = water::density(t);
+    water::debye_huckel_a(t, density, water::relative_permittivity(t, density))
+}
+
+/// The components that carry an element, water and the hydrogen ion left out.
+pub(super) fn carriers(formations: &Formations, element: Element) -> Vec<usize> {
+    let carries = |species: &Species| species.count(element) != 0.into() && *species != Species::water();
+    (0..formations.components.len()).filter(|j| carries(&formations.components[*j])).collect()
+}

@@ -1,0 +1,102 @@
+//! Why there is no state.
+
+use super::assemble::System;
+use crate::ledger::{LedgerError, shipped::ShippedError};
+use crate::solve::SolveError;
+use crate::text::list;
+
+/// Why no equilibrium could be given.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[non_exhaustive]
+pub enum EquilibriumError {
+    /// The ledger does not know something the sample names.
+    #[error(transparent)]
+    Ledger(#[from] LedgerError),
+    /// The ledger itself cannot be had.
+    #[error(transparent)]
+    Shipped(#[from] ShippedError),
+    /// An analyte the ledger has no species for.
+    #[error("`{key}`: {why}")]
+    Analyte {
+        /// The key of the sample.
+        key: String,
+        /// What the ledger lacks, and what would help.
+        why: String,
+    },
+    /// What was measured leaves the proton total open.
+    #[error("{0}")]
+    ProtonTotal(String),
+    /// Two routes to one constant disagree.
+    #[error(
+        "the ledger contradicts itself: `{reaction}` misses the sum of the others by {misclosure:.2} in log K; \
+         take one out with `.without(\"{reaction}\")`, or adjust them"
+    )]
+    Misclosure {
+        /// The reaction that was not needed.
+        reaction: String,
+        /// The misclosure in log10 units.
+        misclosure: f64,
+    },
+    /// No composition has these totals.
+    #[error("no composition has these totals: {combination} is {value:.3e} mol/kg(water), which no species and no solid can give it")]
+    Infeasible {
+        /// The combination of totals.
+        combination: String,
+        /// Its value.
+        value: f64,
+    },
+    /// A solid would form without end.
+    #[error("`{solid}` would form without end: its surroundings supply all it is made of and keep it supersaturated")]
+    Unbounded {
+        /// The solid.
+        solid: String,
+    },
+    /// Two fixed values contradict or repeat each other.
+    #[error("`{0}` is fixed already by the surroundings before it")]
+    Overdetermined(String),
+    /// A target no amount of reagent reaches.
+    #[error("{0}")]
+    Unreachable(String),
+    /// Interrupted.
+    #[error("interrupted")]
+    Stopped,
+    /// The solver did not reach its tolerances: a defect worth reporting.
+    #[error("{0}")]
+    Solver(String),
+}
+
+impl EquilibriumError {
+    /// The solver's failure, with names in place of indices. `held` names the reservoirs, `solids` the minerals.
+    #[must_use]
+    pub fn named(error: SolveError, system: &System, held: &[String], solids: &[String]) -> Self {
+        let name = |names: &[String], index: usize| names.get(index).cloned().unwrap_or_else(|| "?".into());
+        match error {
+            SolveError::Infeasible { combination, value } => {
+                let term = |(component, factor): &(usize, f64)| {
+                    let species = &system.component_species(*component);
+                    let total = format!("total({species})");
+                    match factor {
+                        1.0 => total,
+                        -1.0 => format!("-{total}"),
+                        factor => format!("{factor} {total}"),
+                    }
+                };
+                let combination = combination.iter().map(term).collect::<Vec<_>>().join(" + ").replace("+ -", "- ");
+                Self::Infeasible { combination, value }
+            }
+            SolveError::Unbounded { mineral_idx } => Self::Unbounded { solid: name(solids, mineral_idx) },
+            SolveError::Overdetermined { reservoir_idx } => Self::Overdetermined(name(held, reservoir_idx)),
+            SolveError::Stopped => Self::Stopped,
+            other => Self::Solver(other.to_string()),
+        }
+    }
+}
+
+/// The words for a water whose acid-base state is not fixed.
+pub(super) fn proton_total_open(name: &str, given: &[&str]) -> EquilibriumError {
+    let given = if given.is_empty() { "nothing".to_string() } else { list(given) };
+    EquilibriumError::ProtonTotal(format!(
+        "{given} of {name} does not fix its acid-base state: give pH, or two of `pH`, `alkalinity`, `DIC` and `fCO2`, \
+         or `pH: \"electroneutral\"`"
+    ))
+}

@@ -1,0 +1,294 @@
+//! What can be asked of a state, in one grammar everywhere: tables, sweeps, records.
+//!
+//! ```text
+//! observable := name [ "(" subject ")" ] [ "[" unit "]" ]         pH, m(Ca^2+) [mmol/kg], SI(calcite)
+//! ```
+
+use std::fmt;
+
+use crate::nearest::nearest;
+use crate::text::list;
+use crate::units::{Unit, UnitError};
+
+/// Something that can be asked of a state; names are resolved by the state's ledger.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub enum Observable {
+    /// -log10 a(H⁺).
+    Ph,
+    /// Temperature.
+    Temperature,
+    /// Pressure.
+    Pressure,
+    /// Density of the solution.
+    Density,
+    /// Ionic strength.
+    IonicStrength,
+    /// Alkalinity.
+    Alkalinity,
+    /// Acidity, to pH 8.3.
+    Acidity,
+    /// Dissolved inorganic carbon.
+    Dic,
+    /// Ca and Mg together.
+    Hardness,
+    /// 100 (C - A)/(C + A), percent.
+    ChargeError,
+    /// C - A.
+    ChargeMisfit,
+    /// Calcium carbonate that would form (positive) or dissolve until calcite is at equilibrium.
+    CarbonatePotential,
+    /// Molality of a species.
+    Molality(String),
+    /// Concentration of a species per litre of solution.
+    Molarity(String),
+    /// Activity of a species.
+    Activity(String),
+    /// log10 of an activity.
+    LogActivity(String),
+    /// Activity coefficient.
+    Gamma(String),
+    /// Total of an element or oxidation state in solution.
+    Total(String),
+    /// The same with solids.
+    All(String),
+    /// Saturation index.
+    SaturationIndex(String),
+    /// Saturation ratio.
+    Omega(String),
+    /// Fugacity of a gas.
+    Fugacity(String),
+    /// Partial pressure of a gas.
+    PartialPressure(String),
+    /// Mole fraction of a gas in dry air at the total pressure.
+    MoleFraction(String),
+    /// Amount of a solid that is there.
+    Amount(String),
+    /// Amount of something a treatment added.
+    Added(String),
+    /// Amount of something a treatment took away.
+    Removed(String),
+    /// A measured value that was not used, less the computed one.
+    Misfit(String),
+}
+
+/// An observable with the unit it is wanted in.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Asked {
+    /// What is asked.
+    pub observable: Observable,
+    /// The unit it is wanted in, if one was named.
+    pub unit: Option<Unit>,
+}
+
+/// Why an observable cannot be read or answered.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[non_exhaustive]
+pub enum ObservableError {
+    /// No observable of this name.
+    #[error("no observable `{name}`{}", help(.nearest.as_deref()))]
+    Unknown {
+        /// The name asked for.
+        name: String,
+        /// The nearest one.
+        nearest: Option<String>,
+    },
+    /// Brackets where none belong, or none where they do.
+    #[error("`{0}` is asked as `{1}`")]
+    Form(String, &'static str),
+    /// A unit at fault.
+    #[error("`{asked}`: {error}")]
+    Unit {
+        /// The observable as asked.
+        asked: String,
+        /// What is wrong with the unit.
+        error: UnitError,
+    },
+    /// The subject is not known or has no answer here.
+    #[error("`{asked}`: {why}")]
+    NoAnswer {
+        /// The observable as asked.
+        asked: String,
+        /// Why there is no answer.
+        why: String,
+    },
+}
+
+fn help(nearest: Option<&str>) -> String {
+    match nearest {
+        Some(name) => format!("; did you mean `{name}`?"),
+        None => format!("; there are {}", list(&NAMES.map(|(_, form, _)| form))),
+    }
+}
+
+/// Name, form as it is written, and what it is, in order of listing.
+pub const NAMES: [(&str, &str, &str); 28] = [
+    ("pH", "pH", "-log10 of the activity of H^+"),
+    ("temperature", "temperature", "temperature, degC"),
+    ("pressure", "pressure", "pressure, bar"),
+    ("density", "density", "density of the solution, kg/L"),
+    ("ionic_strength", "ionic_strength", "ionic strength, mol/kg(water)"),
+    ("alkalinity", "alkalinity", "alkalinity, eq/kg(water)"),
+    ("acidity", "acidity", "acidity to pH 8.3, eq/kg(water)"),
+    ("DIC", "DIC", "dissolved inorganic carbon, mol/kg(water)"),
+    ("hardness", "hardness", "calcium and magnesium, mol/kg(water)"),
+    ("charge_error", "charge_error", "100 (C - A)/(C + A), %"),
+    ("charge_misfit", "charge_misfit", "cations less anions, eq/kg(water)"),
+    ("CCPP", "CCPP", "calcium carbonate precipitation potential, mol/kg(water)"),
+    ("m", "m(Ca^2+)", "molality, mol/kg(water)"),
+    ("c", "c(Ca^2+)", "concentration, mol/L"),
+    ("a", "a(Ca^2+)", "activity"),
+    ("log_a", "log_a(Ca^2+)", "log10 of the activity"),
+    ("gamma", "gamma(Ca^2+)", "activity coefficient"),
+    ("total", "total(Ca)", "total dissolved, mol/kg(water)"),
+    ("all", "all(Ca)", "total with solids, mol/kg(water)"),
+    ("SI", "SI(calcite)", "saturation index, log10 of the ratio below"),
+    ("Omega", "Omega(calcite)", "activity product over solubility product"),
+    ("f", "f(CO2(g))", "fugacity, bar"),
+    ("p", "p(CO2(g))", "partial pressure, bar"),
+    ("x", "x(CO2(g))", "mole fraction in dry air at the total pressure"),
+    ("n", "n(calcite)", "amount of a solid, mol"),
+    ("added", "added(NaOH)", "amount a treatment added, mol/kg(water)"),
+    ("removed", "removed(CO2(g))", "amount a treatment took away, mol/kg(water)"),
+    ("misfit", "misfit(DIC)", "a measured value not used, less the computed one"),
+];
+
+impl Asked {
+    /// Reads an observable.
+    ///
+    /// # Errors
+    ///
+    /// Returns an unknown name with the nearest one, or a unit that cannot be read.
+    pub fn parse(text: &str) -> Result<Self, ObservableError> {
+        let text = text.trim();
+        let (body, unit) = match text.strip_suffix(']').and_then(|text| text.rsplit_once('[')) {
+            Some((body, unit)) => {
+                let unit = Unit::parse(unit.trim());
+                (body.trim(), Some(unit.map_err(|error| ObservableError::Unit { asked: text.into(), error })?))
+            }
+            None => (text, None),
+        };
+        let (name, subject) = match body.split_once('(') {
+            Some((name, rest)) => {
+                let subject = rest.strip_suffix(')').map(|subject| subject.trim().to_string());
+                (name.trim(), Some(subject.unwrap_or_default()))
+            }
+            None => (body, None),
+        };
+        let Some((_, form, _)) = NAMES.iter().find(|(known, ..)| *known == name) else {
+            let nearest = nearest(name, NAMES.map(|(known, ..)| known)).map(|name| form_of(name).to_string());
+            return Err(ObservableError::Unknown { name: body.into(), nearest });
+        };
+        let observable = match (subject, form.contains('(')) {
+            (None, false) => plain(name),
+            (Some(subject), true) if !subject.is_empty() => about(name, subject),
+            _ => return Err(ObservableError::Form(body.into(), form)),
+        };
+        Ok(Self { observable, unit })
+    }
+}
+
+fn form_of(name: &str) -> &'static str {
+    NAMES.iter().find(|(known, ..)| *known == name).map_or("", |(_, form, _)| form)
+}
+
+fn plain(name: &str) -> Observable {
+    match name {
+        "pH" => Observable::Ph,
+        "temperature" => Observable::Temperature,
+        "pressure" => Observable::Pressure,
+        "density" => Observable::Density,
+        "ionic_strength" => Observable::IonicStrength,
+        "alkalinity" => Observable::Alkalinity,
+        "acidity" => Observable::Acidity,
+        "DIC" => Observable::Dic,
+        "hardness" => Observable::Hardness,
+        "charge_error" => Observable::ChargeError,
+        "charge_misfit" => Observable::ChargeMisfit,
+        _ => Observable::CarbonatePotential,
+    }
+}
+
+fn about(name: &str, subject: String) -> Observable {
+    match name {
+        "m" => Observable::Molality(subject),
+        "c" => Observable::Molarity(subject),
+        "a" => Observable::Activity(subject),
+        "log_a" => Observable::LogActivity(subject),
+        "gamma" => Observable::Gamma(subject),
+        "total" => Observable::Total(subject),
+        "all" => Observable::All(subject),
+        "SI" => Observable::SaturationIndex(subject),
+        "Omega" => Observable::Omega(subject),
+        "f" => Observable::Fugacity(subject),
+        "p" => Observable::PartialPressure(subject),
+        "x" => Observable::MoleFraction(subject),
+        "n" => Observable::Amount(subject),
+        "added" => Observable::Added(subject),
+        "removed" => Observable::Removed(subject),
+        _ => Observable::Misfit(subject),
+    }
+}
+
+impl fmt::Display for Observable {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        let (name, subject) = match self {
+            Self::Ph => ("pH", None),
+            Self::Temperature => ("temperature", None),
+            Self::Pressure => ("pressure", None),
+            Self::Density => ("density", None),
+            Self::IonicStrength => ("ionic_strength", None),
+            Self::Alkalinity => ("alkalinity", None),
+            Self::Acidity => ("acidity", None),
+            Self::Dic => ("DIC", None),
+            Self::Hardness => ("hardness", None),
+            Self::ChargeError => ("charge_error", None),
+            Self::ChargeMisfit => ("charge_misfit", None),
+            Self::CarbonatePotential => ("CCPP", None),
+            Self::Molality(subject) => ("m", Some(subject)),
+            Self::Molarity(subject) => ("c", Some(subject)),
+            Self::Activity(subject) => ("a", Some(subject)),
+            Self::LogActivity(subject) => ("log_a", Some(subject)),
+            Self::Gamma(subject) => ("gamma", Some(subject)),
+            Self::Total(subject) => ("total", Some(subject)),
+            Self::All(subject) => ("all", Some(subject)),
+            Self::SaturationIndex(subject) => ("SI", Some(subject)),
+            Self::Omega(subject) => ("Omega", Some(subject)),
+            Self::Fugacity(subject) => ("f", Some(subject)),
+            Self::PartialPressure(subject) => ("p", Some(subject)),
+            Self::MoleFraction(subject) => ("x", Some(subject)),
+            Self::Amount(subject) => ("n", Some(subject)),
+            Self::Added(subject) => ("added", Some(subject)),
+            Self::Removed(subject) => ("removed", Some(subject)),
+            Self::Misfit(subject) => ("misfit", Some(subject)),
+        };
+        match subject {
+            None => f.write_str(name),
+            Some(subject) => write!(f, "{name}({subject})"),
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn observables_are_read_and_written_back() {
+        for (_, form, _) in NAMES {
+            assert_eq!(Asked::parse(form).unwrap().observable.to_string(), form);
+        }
+        let asked = Asked::parse("m(Ca^2+) [mmol/kg]").unwrap();
+        assert_eq!(asked.observable, Observable::Molality("Ca^2+".into()));
+        assert_eq!(asked.unit.unwrap().symbol(), "mmol/kg");
+        assert_eq!(Asked::parse("f(CO2(g))").unwrap().observable, Observable::Fugacity("CO2(g)".into()));
+    }
+
+    #[test]
+    fn faults_name_the_right_form() {
+        let message = |text: &str| Asked::parse(text).unwrap_err().to_string();
+        assert_eq!(message("ph"), "no observable `ph`; did you mean `pH`?");
+        assert_eq!(message("SI"), "`SI` is asked as `SI(calcite)`");
+        assert_eq!(message("pH(free)"), "`pH(free)` is asked as `pH`");
+        assert!(message("m(Ca^2+) [mmol/kgg]").starts_with("`m(Ca^2+) [mmol/kgg]`: unknown unit"));
+    }
+}

@@ -1,0 +1,598 @@
+//! A state: what is there at equilibrium, in the user's names and units.
+
+use std::collections::BTreeMap;
+use std::sync::Arc;
+
+use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
+use super::analysis::{Analysed, Outcome, ln_saturation};
+use super::assemble::{Doubt, System};
+use super::error::EquilibriumError;
+use super::observable::{Asked, NAMES, Observable, ObservableError};
+use crate::chem::{Element, Species, rational};
+use crate::ledger::Formation;
+use crate::nearest::nearest;
+use crate::physics::water;
+use crate::present::{Cell, Column, Table};
+use crate::quantity::Quantity;
+use crate::solve::{Certificate, Settings};
+use crate::text::list;
+use crate::units::{KgOf, Kind, Pressure, Temperature, Unit};
+use crate::water::analysis::Setting;
+use crate::water::analyte::{Analyte, oxidation_state};
+use crate::water::concentration::{SALT_TERM, Solution};
+use crate::water::{Sample, Treatment};
+
+const LN_10: f64 = std::f64::consts::LN_10;
+/// A doubtful constant is worth a warning where its species holds more than this part of a total.
+const WORTH_A_WARNING: f64 = 0.01;
+
+/// What is there at equilibrium; cheap to clone.
+#[derive(Clone, Debug)]
+pub struct State(Arc<Inner>);
+
+#[derive(Debug)]
+struct Inner {
+    sample: Sample,
+    outcome: Outcome,
+    pressure: Pressure,
+    misfits: Vec<(&'static str, f64)>,
+    notes: Vec<String>,
+    /// Molalities in the order of the system's solutes.
+    molalities: Vec<f64>,
+    /// Dissolved total of each component.
+    dissolved: Vec<f64>,
+    solution: Solution,
+}
+
+/// A number with the unit it is in and, for amounts, what it is an amount of.
+struct Answer {
+    value: f64,
+    unit: &'static str,
+    /// Molar mass in g/mol and formula text, where grams may be asked for.
+    molar_mass: Option<f64>,
+    element: Option<(Element, f64)>,
+}
+
+impl State {
+    pub(super) fn new(sample: Sample, analysed: Analysed, outcome: Outcome) -> Self {
+        let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+            Treatment::CompressTo(pressure) => Some(*pressure),
+            _ => None,
+        });
+        let pressure = compressed.unwrap_or(sample.setting().pressure);
+        let molalities: Vec<f64> = outcome.converged.ln_c.iter().map(|ln_c| ln_c.exp()).collect();
+        let dissolved = dissolved(&outcome.system, &molalities);
+        let solution = solution(&outcome.system, &molalities);
+        let Analysed { misfits, notes, .. } = analysed;
+        Self(Arc::new(Inner { sample, outcome, pressure, misfits, notes, molalities, dissolved, solution }))
+    }
+
+    /// The sample it is the equilibrium of.
+    #[must_use]
+    pub fn of(&self) -> &Sample {
+        &self.0.sample
+    }
+
+    /// The species, constants and activity model it was computed with.
+    #[must_use]
+    pub fn system(&self) -> &System {
+        &self.0.outcome.system
+    }
+
+    /// Temperature.
+    #[must_use]
+    pub fn temperature(&self) -> Temperature {
+        self.system().temperature()
+    }
+
+    /// Pressure.
+    #[must_use]
+    pub fn pressure(&self) -> Pressure {
+        self.0.pressure
+    }
+
+    /// What was checked of the answer.
+    #[must_use]
+    pub fn certificate(&self) -> &Certificate {
+        &self.0.outcome.converged.certificate
+    }
+
+    /// Newton iterations and the like.
+    #[must_use]
+    pub fn converged(&self) -> &crate::solve::Converged {
+        &self.0.outcome.converged
+    }
+
+    /// The dissolved totals at this temperature and pressure as a sample, without surroundings; `keep` names solids
+    /// whose amounts go along.
+    ///
+    /// # Errors
+    ///
+    /// A solid in `keep` that is not there.
+    pub fn sample(&self, keep: &[&str]) -> Result<Sample, EquilibriumError> {
+        let system = self.system();
+        let mut totals: Vec<(Species, f64)> =
+            self.0.dissolved.iter().enumerate().map(|(k, total)| (system.component_species(k).clone(), *total)).collect();
+        for name in keep {
+            let solid = system.ledger().find_phase(name)?;
+            let found = self.0.outcome.solids.iter().find(|(species, _)| species == solid);
+            let (_, amount) = found.ok_or_else(|| EquilibriumError::Unreachable(format!("`{name}` is not there to keep")))?;
+            totals.push((solid.clone(), amount.max(0.0)));
+        }
+        let setting = Setting { temperature: self.temperature(), pressure: self.pressure(), ..self.0.sample.setting() };
+        let name = self.0.sample.name().map(str::to_string);
+        Ok(Sample::dissolved(name, setting, totals, system.ledger().clone()))
+    }
+
+    /// Answers an observable, in the unit asked for or its own.
+    ///
+    /// # Errors
+    ///
+    /// Returns what is unknown, or why there is no answer: a saturation index of an element that is not there is
+    /// `absent`.
+    pub fn get(&self, asked: &str) -> Result<Quantity, ObservableError> {
+        self.answer(&Asked::parse(asked)?)
+    }
+
+    /// Answers an observable that was read before.
+    ///
+    /// # Errors
+    ///
+    /// As [`State::get`].
+    pub fn answer(&self, asked: &Asked) -> Result<Quantity, ObservableError> {
+        let name = asked.observable.to_string();
+        let answer = self.value(&asked.observable, &name)?;
+        let own = Unit::parse(answer.unit).expect("a known unit");
+        let (value, unit) = match &asked.unit {
+            None => (answer.value, own),
+            Some(unit) => (self.in_unit(&answer, &own, unit, &name)?, unit.per_kg_of(KgOf::Water)),
+        };
+        // Until sensitivities are computed, the uncertainty of a result is not stated, which is not zero.
+        Quantity::measured(value, unit, None, &name)
+            .map_err(|error| ObservableError::NoAnswer { asked: name, why: error.to_string() })
+    }
+
+    fn value(&self, observable: &Observable, asked: &str) -> Result<Answer, ObservableError> {
+        let inner = &*self.0;
+        let system = self.system();
+        let converged = &inner.outcome.converged;
+        let plain = |value: f64, unit: &'static str| Ok(Answer { value, unit, molar_mass: None, element: None });
+        match observable {
+            Observable::Ph => plain(-converged.ln_a[system.proton()] / LN_10, "1"),
+            Observable::Temperature => plain(self.temperature().celsius(), "degC"),
+            Observable::Pressure => plain(inner.pressure.bar(), "bar"),
+            Observable::Density => plain(inner.solution.density, "kg/L"),
+            Observable::IonicStrength => plain(converged.ionic_strength, "mol/kg(water)"),
+            Observable::Alkalinity => plain(self.acid_base(ALKALINITY_PH), "eq/kg(water)"),
+            Observable::Acidity => plain(-self.acid_base(ACIDITY_PH), "eq/kg(water)"),
+            Observable::Dic => self.total("C", asked),
+            Observable::Hardness => {
+                let (calcium, magnesium) = (self.element_total("Ca"), self.element_total("Mg"));
+                Ok(Answer { value: calcium + magnesium, unit: "mol/kg(water)", molar_mass: None, element: None })
+            }
+            Observable::ChargeError => {
+                let (cations, anions) = self.charges();
+                plain(100.0 * (cations - anions) / (cations + anions), "%")
+            }
+            Observable::ChargeMisfit => {
+                let (cations, anions) = self.charges();
+                plain(cations - anions, "eq/kg(water)")
+            }
+            Observable::CarbonatePotential => {
+                let potential = self.carbonate_potential().map_err(|why| no_answer(asked, why.to_string()))?;
+                Ok(Answer { value: potential, unit: "mol/kg(water)", molar_mass: Some(100.086), element: None })
+            }
+            Observable::Molality(name) => {
+                let (k, formed) = self.solute(name, asked)?;
+                let value = k.map_or(0.0, |k| inner.molalities[k]);
+                Ok(amount(value, "mol/kg(water)", &formed.species))
+            }
+            Observable::Molarity(name) => {
+                let (k, formed) = self.solute(name, asked)?;
+                let value = k.map_or(0.0, |k| inner.molalities[k] * inner.solution.water_per_litre());
+                Ok(amount(value, "mol/L", &formed.species))
+            }
+            Observable::Activity(name) => plain(self.ln_activity(name, asked)?.exp(), "1"),
+            Observable::LogActivity(name) => plain(self.ln_activity(name, asked)? / LN_10, "1"),
+            Observable::Gamma(name) => {
+                let (k, _) = self.solute(name, asked)?;
+                let k = k.ok_or_else(|| no_answer(asked, absent(name)))?;
+                plain(converged.ln_gamma[k].exp(), "1")
+            }
+            Observable::Total(name) => self.total(name, asked),
+            Observable::All(name) => {
+                let mut total = self.total(name, asked)?;
+                let analyte = Analyte::parse(name).map_err(|error| no_answer(asked, error.to_string()))?;
+                for (solid, amount) in &inner.outcome.solids {
+                    if counts(&analyte, solid) {
+                        total.value += amount * rational::to_f64(solid.count(analyte.element()));
+                    }
+                }
+                Ok(total)
+            }
+            Observable::SaturationIndex(name) => plain(self.ln_omega(name, asked)? / LN_10, "1"),
+            Observable::Omega(name) => plain(self.ln_omega(name, asked)?.exp(), "1"),
+            Observable::Fugacity(name) | Observable::PartialPressure(name) => plain(self.fugacity(name, asked)?, "bar"),
+            Observable::MoleFraction(name) => plain(self.fugacity(name, asked)? / self.dry_pressure(), "1"),
+            Observable::Amount(name) => {
+                let solid = self.phase(name, asked)?;
+                let found = inner.outcome.solids.iter().find(|(species, _)| *species == solid);
+                let moles = found.map_or(0.0, |(_, amount)| amount * inner.sample.setting().water);
+                Ok(amount(moles, "mol", &solid))
+            }
+            Observable::Added(name) => self.exchanged(name, asked, 1.0),
+            Observable::Removed(name) => self.exchanged(name, asked, -1.0),
+            Observable::Misfit(key) => {
+                let found = inner.misfits.iter().find(|(own, _)| own == key);
+                let (_, value) = found.ok_or_else(|| {
+                    let keys: Vec<&str> = inner.misfits.iter().map(|(own, _)| *own).collect();
+                    no_answer(asked, format!("it was not measured beside what was used; misfits are known of {}", list(&keys)))
+                })?;
+                let unit = match key.as_str() {
+                    "pH" => "1",
+                    "alkalinity" => "eq/kg(water)",
+                    "fCO2" => "bar",
+                    _ => "mol/kg(water)",
+                };
+                plain(*value, unit)
+            }
+        }
+    }
+
+    /// A number in another unit; amounts go between moles and grams and between kilograms and litres.
+    fn in_unit(&self, answer: &Answer, own: &Unit, wanted: &Unit, asked: &str) -> Result<f64, ObservableError> {
+        let wrong = |error| ObservableError::Unit { asked: asked.to_string(), error };
+        let plain = wanted.per_kg_of(KgOf::Water).with_expressed_as(None);
+        let value = match wanted.expressed_as() {
+            None => answer.value,
+            Some(formula) => {
+                let species = Species::parse(formula).map_err(|error| no_answer(asked, error.to_string()))?;
+                return self.expressed(answer, own, &plain, &species, asked);
+            }
+        };
+        if let Ok(value) = own.convert(value, &plain) {
+            return Ok(value);
+        }
+        self.across(value, answer.molar_mass, own, &plain, asked).ok_or_else(|| {
+            let kind = if answer.unit.starts_with("eq") { Kind::Alkalinity } else { Kind::Amount };
+            wrong(kind.check(wanted).err().unwrap_or_else(|| own.convert(1.0, wanted).expect_err("tried above")))
+        })
+    }
+
+    /// `mg/L as CaCO3`: grams of what an equivalent, or an atom, is counted as.
+    fn expressed(
+        &self,
+        answer: &Answer,
+        own: &Unit,
+        plain: &Unit,
+        species: &Species,
+        asked: &str,
+    ) -> Result<f64, ObservableError> {
+        let per_unit = if answer.unit.starts_with("eq") {
+            if species.key() == "HCO3^-" { 1.0 } else { 2.0 }
+        } else {
+            match answer.element {
+                Some((element, atoms)) => rational::to_f64(species.count(element)) / atoms,
+                None => 1.0,
+            }
+        };
+        let mass = species.molar_mass().filter(|_| per_unit > 0.0);
+        let mass = mass.ok_or_else(|| no_answer(asked, format!("it cannot be expressed as {species}")))?;
+        let value = answer.value / per_unit;
+        let own = Unit::parse(&own.symbol().replacen("eq", "mol", 1)).expect("a known unit");
+        self.across(value, Some(mass), &own, plain, asked)
+            .ok_or_else(|| no_answer(asked, format!("`{}` is no unit of it", plain.symbol())))
+    }
+
+    /// Between moles and grams, and between kilograms of water, kilograms of solution and litres.
+    fn across(&self, value: f64, molar_mass: Option<f64>, own: &Unit, wanted: &Unit, _: &str) -> Option<f64> {
+        let solution = &self.0.solution;
+        let numerators = [("mol", 1.0), ("eq", 1.0), ("g", molar_mass.unwrap_or(f64::NAN))];
+        let denominators =
+            [("/kg(water)", 1.0), ("/L", solution.water_per_litre()), ("/kg(solution)", solution.water_per_kilogram()), ("", 1.0)];
+        let base = |text: &str| Unit::parse(text).expect("a known unit");
+        for (from, from_factor) in denominators {
+            let Some(start) = ["mol", "eq"].iter().find_map(|n| own.convert(value, &base(&format!("{n}{from}"))).ok()) else {
+                continue;
+            };
+            for (numerator, grams) in numerators {
+                for (to, to_factor) in denominators {
+                    if (to.is_empty()) != (from.is_empty()) {
+                        continue;
+                    }
+                    let converted = start * grams * to_factor / from_factor;
+                    if let Ok(found) = base(&format!("{numerator}{to}")).convert(converted, wanted)
+                        && found.is_finite()
+                    {
+                        return Some(found);
+                    }
+                }
+            }
+        }
+        None
+    }
+
+    /// Sums charge over cations and over anions, eq/kg(water).
+    fn charges(&self) -> (f64, f64) {
+        let charge = |formed: &Formation, m: f64| f64::from(formed.species.charge()) * m;
+        let charges = self.system().solutes().zip(&self.0.molalities).map(|(formed, m)| charge(formed, *m));
+        charges.fold((0.0, 0.0), |(c, a), z| if z > 0.0 { (c + z, a) } else { (c, a - z) })
+    }
+
+    fn acid_base(&self, ph: f64) -> f64 {
+        let level = ZeroLevel::at(self.system().ledger(), ph);
+        let weight = |formed: &Formation| rational::to_f64(level.weight(formed));
+        self.system().solutes().zip(&self.0.molalities).map(|(formed, m)| weight(formed) * m).sum()
+    }
+
+    /// Calcite that forms until it is at equilibrium with the dissolved totals.
+    fn carbonate_potential(&self) -> Result<f64, EquilibriumError> {
+        let water = self.sample(&[])?.treated(Treatment::Saturate { solid: "calcite".into(), index: 0.0 });
+        let water = water.map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
+        let saturated = super::equilibrate(&water, None, &Settings::default())?;
+        Ok(saturated.0.outcome.solids.first().map_or(0.0, |(_, amount)| *amount))
+    }
+
+    fn element_total(&self, symbol: &str) -> f64 {
+        let element = Element::from_symbol(symbol).expect("a known element");
+        let count = |formed: &Formation| rational::to_f64(formed.species.count(element));
+        self.system().solutes().zip(&self.0.molalities).map(|(formed, m)| count(formed) * m).sum()
+    }
+
+    fn total(&self, name: &str, asked: &str) -> Result<Answer, ObservableError> {
+        let analyte = Analyte::parse(name).map_err(|error| no_answer(asked, error.to_string()))?;
+        let element = analyte.element();
+        let known = self.system().ledger().species().any(|species| species.count(element) != 0.into());
+        if !known {
+            return Err(no_answer(asked, format!("the ledger has no species of {element}")));
+        }
+        let atoms: f64 = self
+            .system()
+            .solutes()
+            .zip(&self.0.molalities)
+            .filter(|(formed, _)| counts(&analyte, &formed.species))
+            .map(|(formed, m)| rational::to_f64(formed.species.count(element)) * m)
+            .sum();
+        let per_analyte = rational::to_f64(analyte.atoms());
+        Ok(Answer {
+            value: atoms / per_analyte,
+            unit: "mol/kg(water)",
+            molar_mass: analyte.molar_mass(),
+            element: Some((element, per_analyte)),
+        })
+    }
+
+    /// A solute with its position, if the elements it is made of are there.
+    fn solute(&self, name: &str, asked: &str) -> Result<(Option<usize>, &Formation), ObservableError> {
+        let ledger = self.system().ledger();
+        let species = ledger.find_species(name).map_err(|error| no_answer(asked, error.to_string()))?;
+        if !species.is_solute() {
+            return Err(no_answer(asked, format!("{species} is no solute")));
+        }
+        let formed = ledger.formations().formation(species).expect("just found");
+        Ok((self.system().solute(species), formed))
+    }
+
+    fn phase(&self, name: &str, asked: &str) -> Result<Species, ObservableError> {
+        let found = self.system().ledger().find_phase(name);
+        found.cloned().map_err(|error| no_answer(asked, error.to_string()))
+    }
+
+    fn ln_activity(&self, name: &str, asked: &str) -> Result<f64, ObservableError> {
+        let converged = &self.0.outcome.converged;
+        if Species::parse(name).is_ok_and(|species| species == Species::water()) {
+            return Ok(converged.ln_water_activity);
+        }
+        match self.solute(name, asked) {
+            Ok((Some(k), _)) => Ok(converged.ln_c[k] + converged.ln_gamma[k]),
+            Ok((None, _)) => Err(no_answer(asked, absent(name))),
+            Err(error) => Err(error),
+        }
+    }
+
+    fn ln_omega(&self, name: &str, asked: &str) -> Result<f64, ObservableError> {
+        let phase = self.phase(name, asked)?;
+        let (_, row) = self.system().phase(&phase).ok_or_else(|| no_answer(asked, absent(name)))?;
+        let ln_omega = ln_saturation(row, &self.0.outcome.converged);
+        if ln_omega.is_finite() { Ok(ln_omega) } else { Err(no_answer(asked, absent(name))) }
+    }
+
+    fn fugacity(&self, name: &str, asked: &str) -> Result<f64, ObservableError> {
+        let phase = self.phase(name, asked)?;
+        if !phase.is_gas() {
+            return Err(no_answer(asked, format!("{phase} is no gas")));
+        }
+        Ok(self.ln_omega(name, asked)?.exp())
+    }
+
+    /// Total pressure less that of water vapour over pure water, bar.
+    fn dry_pressure(&self) -> f64 {
+        // Antoine-type fit of the saturation pressure (Buck, A.L. (1981) J. Appl. Meteorol. 20, 1527-1532; recalled),
+        // good to 0.1 % between 0 and 50 degC.
+        let t = self.temperature().celsius();
+        let vapour = 6.1121e-3 * ((18.678 - t / 234.5) * t / (257.14 + t)).exp();
+        self.pressure().bar() - vapour
+    }
+
+    fn exchanged(&self, name: &str, asked: &str, sign: f64) -> Result<Answer, ObservableError> {
+        let found = self.0.outcome.exchanged.iter().find(|(own, _)| own == name);
+        let (_, amount) = found.ok_or_else(|| {
+            let names: Vec<&str> = self.0.outcome.exchanged.iter().map(|(own, _)| own.as_str()).collect();
+            no_answer(asked, format!("nothing of this name was exchanged; there are {}", list(&names)))
+        })?;
+        let molar_mass = Species::parse(name).ok().and_then(|species| species.molar_mass());
+        Ok(Answer { value: sign * amount, unit: "mol/kg(water)", molar_mass, element: None })
+    }
+
+    /// Everything that can be asked, as a table of forms and meanings.
+    #[must_use]
+    pub fn observables() -> Table {
+        Table::new([
+            Column::chemistry("observable", NAMES.iter().map(|(_, form, _)| *form)),
+            Column::texts("meaning", NAMES.iter().map(|(.., meaning)| *meaning)),
+        ])
+        .expect("columns of one length")
+    }
+
+    /// Solutes from the most to the least abundant.
+    #[must_use]
+    pub fn species(&self) -> Table {
+        let converged = &self.0.outcome.converged;
+        let mut order: Vec<usize> = (0..self.0.molalities.len()).collect();
+        order.sort_by(|a, b| converged.ln_c[*b].total_cmp(&converged.ln_c[*a]));
+        let solutes: Vec<&Formation> = self.system().solutes().collect();
+        let numbers = |title: &str, value: &dyn Fn(usize) -> f64| Column::numbers(title, order.iter().map(|k| value(*k)));
+        Table::new([
+            Column::chemistry("species", order.iter().map(|k| solutes[*k].species.key())),
+            numbers("molality [mol/kg(water)]", &|k| self.0.molalities[k]),
+            numbers("activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]).exp()),
+            numbers("log activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]) / LN_10),
+            numbers("gamma", &|k| converged.ln_gamma[k].exp()),
+        ])
+        .expect("columns of one length")
+    }
+
+    /// Gases and solids that the water's components can form, from the most to the least saturated.
+    #[must_use]
+    pub fn phases(&self) -> Table {
+        let converged = &self.0.outcome.converged;
+        let ledger = self.system().ledger();
+        let mut phases: Vec<(&Formation, f64)> =
+            self.system().phases().map(|(formed, row)| (formed, ln_saturation(row, converged) / LN_10)).collect();
+        phases.sort_by(|a, b| (a.0.species.is_gas(), b.1).partial_cmp(&(b.0.species.is_gas(), a.1)).expect("no NaN"));
+        let amount = |formed: &Formation| {
+            let found = self.0.outcome.solids.iter().find(|(species, _)| *species == formed.species);
+            found.map_or_else(Cell::missing, |(_, amount)| Cell::number(*amount))
+        };
+        let index = |(formed, index): &(&Formation, f64)| if formed.species.is_gas() { Cell::missing() } else { Cell::number(*index) };
+        let fugacity = |(formed, index): &(&Formation, f64)| {
+            if formed.species.is_gas() { Cell::number(10_f64.powf(*index)) } else { Cell::missing() }
+        };
+        let notes: Vec<String> = phases.iter().map(|(formed, _)| self.doubt_words(formed).unwrap_or_default()).collect();
+        Table::new([
+            Column::texts("phase", phases.iter().map(|(formed, _)| ledger.phase_name(&formed.species))),
+            Column::chemistry("formula", phases.iter().map(|(formed, _)| formed.species.key())),
+            Column::new("SI", phases.iter().map(index)),
+            Column::new("fugacity [bar]", phases.iter().map(fugacity)),
+            Column::new("amount [mol/kg(water)]", phases.iter().map(|(formed, _)| amount(formed))),
+            Column::texts("note", notes.iter().map(String::as_str)),
+        ])
+        .expect("columns of one length")
+    }
+
+    /// What a reader of the numbers should know: assumptions, constants used outside their range, the activity model
+    /// beyond its own.
+    #[must_use]
+    pub fn warnings(&self) -> Vec<String> {
+        let mut warnings = self.0.notes.clone();
+        let certificate = self.certificate();
+        if certificate.outside_validity {
+            warnings.push(format!(
+                "ionic strength {:.2} mol/kg(water) is beyond the range of the activity model",
+                self.0.outcome.converged.ionic_strength
+            ));
+        }
+        let mut doubts: BTreeMap<String, Vec<String>> = BTreeMap::new();
+        for (formed, molality) in self.system().solutes().zip(&self.0.molalities) {
+            if self.matters(formed, *molality) {
+                self.add_doubts(formed, &mut doubts);
+            }
+        }
+        for (solid, amount) in &self.0.outcome.solids {
+            if *amount != 0.0
+                && let Some((formed, _)) = self.system().phase(solid)
+            {
+                self.add_doubts(formed, &mut doubts);
+            }
+        }
+        warnings.extend(doubts.into_iter().map(|(why, names)| format!("{} {why}", list(&names))));
+        let leftovers = &self.system().ledger().formations().leftovers;
+        let names: Vec<&str> = self.system().ledger().names().collect();
+        warnings.extend(leftovers.iter().map(|leftover| {
+            format!("`{}` was left out: other constants of the ledger imply it", names[leftover.reaction])
+        }));
+        warnings
+    }
+
+    fn add_doubts(&self, formed: &Formation, doubts: &mut BTreeMap<String, Vec<String>>) {
+        for (reaction, doubt) in self.system().doubts(formed) {
+            let names = doubts.entry(words(doubt)).or_default();
+            if !names.iter().any(|name| name == reaction) {
+                names.push(reaction.to_string());
+            }
+        }
+    }
+
+    fn doubt_words(&self, formed: &Formation) -> Option<String> {
+        self.system().doubts(formed).next().map(|(reaction, doubt)| format!("`{reaction}` {}", words(doubt)))
+    }
+
+    /// Whether a species holds more than a hundredth of one of its components.
+    fn matters(&self, formed: &Formation, molality: f64) -> bool {
+        let system = self.system();
+        formed.stoichiometry.iter().any(|(j, nu)| {
+            let k = system.components().iter().position(|own| own == j);
+            k.is_some_and(|k| k != system.proton() && rational::to_f64(*nu).abs() * molality > WORTH_A_WARNING * self.0.dissolved[k].abs())
+        })
+    }
+}
+
+fn words(doubt: Doubt) -> String {
+    match doubt {
+        Doubt::OneTemperature(away) => format!("is known at one temperature only, {away:.0} K away, and used as it stands"),
+        Doubt::OutsideRange(by) => format!("is used {by:.1} K outside its stated range"),
+    }
+}
+
+fn absent(name: &str) -> String {
+    format!("absent: what `{name}` is made of is not in the water")
+}
+
+fn no_answer(asked: &str, why: String) -> ObservableError {
+    ObservableError::NoAnswer { asked: asked.into(), why }
+}
+
+fn amount(value: f64, unit: &'static str, species: &Species) -> Answer {
+    let element = species.elements_beside_water().next();
+    let element = element.map(|element| (element, rational::to_f64(species.count(element))));
+    Answer { value, unit, molar_mass: species.molar_mass(), element }
+}
+
+/// Whether a species holds an analyte's element, in its oxidation state if that can be told.
+fn counts(analyte: &Analyte, species: &Species) -> bool {
+    if species.count(analyte.element()) == 0.into() {
+        return false;
+    }
+    match (analyte.oxidation_state(), oxidation_state(species, analyte.element())) {
+        (Some(wanted), Some(own)) => wanted == own,
+        _ => true,
+    }
+}
+
+fn dissolved(system: &System, molalities: &[f64]) -> Vec<f64> {
+    let mut totals = vec![0.0; system.n_components()];
+    for (formed, molality) in system.solutes().zip(molalities) {
+        for (j, nu) in &formed.stoichiometry {
+            if let Some(k) = system.components().iter().position(|own| own == j) {
+                totals[k] += rational::to_f64(*nu) * molality;
+            }
+        }
+    }
+    totals
+}
+
+/// Density and dissolved mass of a computed water: with S kg of solutes per kg of water, a litre holds
+/// `ρ_w / (1 + (1 - SALT_TERM) S)` kg of water.
+fn solution(system: &System, molalities: &[f64]) -> Solution {
+    let grams = system.solutes().zip(molalities).map(|(formed, m)| formed.species.molar_mass().unwrap_or(0.0) * m);
+    let per_water = grams.sum::<f64>() / 1000.0;
+    let water_density = water::density(system.temperature().kelvin()) / 1000.0;
+    let water_per_litre = water_density / (1.0 + (1.0 - SALT_TERM) * per_water);
+    Solution { density: water_per_litre * (1.0 + per_water), dissolved: water_per_litre * per_water }
+}
+
+/// The nearest observable to a misspelt one, for completion and messages.
+#[must_use]
+pub fn nearest_observable(name: &str) -> Option<&'static str> {
+    nearest(name, NAMES.map(|(known, ..)| known))
+}

@@ -1,0 +1,214 @@
+//! The second stage: treatments act on the conserved totals.
+//!
+//! Gases at a fixed fugacity and unlimited solids are reservoirs, solids that may form are minerals, and one convex
+//! problem at the final temperature holds them all. A pH held by a reagent is one equation outside it: so much of the
+//! reagent that the pH is met.
+
+use super::analysis::{Analysed, Outcome, delivered, fixed_ph};
+use super::assemble::{System, carriers};
+use super::error::EquilibriumError;
+use crate::chem::{Element, Rational, Species, rational};
+use crate::ledger::{Ledger, LedgerError};
+use crate::solve::scalar::{self, Tolerance, root_between};
+use crate::solve::{Converged, Mineral, Problem, Reservoir, Row, Settings, solve};
+use crate::water::{Sample, Treatment};
+
+const LN_10: f64 = std::f64::consts::LN_10;
+/// The largest amount of a reagent looked at, mol/kg(water).
+const MOST_REAGENT: f64 = 20.0;
+
+/// Applies the treatments of a sample to its totals.
+///
+/// # Errors
+///
+/// Returns what the ledger does not know, and why there is no equilibrium.
+pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Result<Outcome, EquilibriumError> {
+    let temperature = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::WarmTo(temperature) => Some(*temperature),
+        _ => None,
+    });
+    let temperature = temperature.unwrap_or(sample.setting().temperature);
+    let present = analysed.system.components().iter().copied().collect();
+    let system = System::new(analysed.system.ledger(), &present, temperature)?;
+    let surroundings = Surroundings::read(sample, &system)?;
+    match &surroundings.held_by_reagent {
+        None => surroundings.solve(&system, &analysed.totals, settings, vec![]),
+        Some((ph, reagent)) => surroundings.hold_ph(&system, &analysed.totals, *ph, reagent, settings),
+    }
+}
+
+/// What the water is in contact with, in indices.
+struct Surroundings {
+    reservoirs: Vec<(String, Reservoir)>,
+    /// Solids without limit among the reservoirs, with the reservoir's position.
+    unlimited: Vec<(usize, Species)>,
+    minerals: Vec<(String, Species, Mineral)>,
+    held_by_reagent: Option<(f64, String)>,
+}
+
+impl Surroundings {
+    fn read(sample: &Sample, system: &System) -> Result<Self, EquilibriumError> {
+        let mut surroundings = Self { reservoirs: vec![], unlimited: vec![], minerals: vec![], held_by_reagent: None };
+        for treatment in sample.treatments() {
+            surroundings.add(treatment, system)?;
+        }
+        Ok(surroundings)
+    }
+
+    fn add(&mut self, treatment: &Treatment, system: &System) -> Result<(), EquilibriumError> {
+        match treatment {
+            Treatment::OpenTo { gas, fugacity } => {
+                let (_, row) = formed(system, gas)?;
+                self.hold(gas, Reservoir { row, ln_value: fugacity.ln() });
+            }
+            Treatment::Saturate { solid, index } => {
+                let (species, row) = formed(system, solid)?;
+                self.hold(solid, Reservoir { row, ln_value: index * LN_10 });
+                let position = self.reservoirs.iter().position(|(name, _)| name == solid).expect("just added");
+                self.unlimited.retain(|(_, other)| *other != species);
+                self.unlimited.push((position, species));
+            }
+            Treatment::Allow { solid, above } => {
+                let species = system.ledger().find_phase(solid)?.clone();
+                // A solid whose elements are not there cannot form.
+                if let Some((_, row)) = system.phase(&species) {
+                    self.minerals.retain(|(name, ..)| name != solid);
+                    let mineral = Mineral { row: row.clone(), ln_target: above * LN_10 };
+                    self.minerals.push((solid.clone(), species, mineral));
+                }
+            }
+            Treatment::HoldPh { ph, reagent: None } => self.hold("pH", fixed_ph(system.proton(), *ph)),
+            Treatment::HoldPh { ph, reagent: Some(reagent) } => self.held_by_reagent = Some((*ph, reagent.clone())),
+            Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
+        }
+        Ok(())
+    }
+
+    /// Holds a value; the last word on one gas, solid or pH counts.
+    fn hold(&mut self, name: &str, reservoir: Reservoir) {
+        match self.reservoirs.iter_mut().find(|(own, _)| own == name) {
+            Some((_, own)) => *own = reservoir,
+            None => self.reservoirs.push((name.into(), reservoir)),
+        }
+    }
+
+    fn problem(&self, system: &System, totals: &[f64]) -> Problem {
+        Problem {
+            reservoirs: self.reservoirs.iter().map(|(_, reservoir)| reservoir.clone()).collect(),
+            minerals: self.minerals.iter().map(|(_, _, mineral)| mineral.clone()).collect(),
+            ..system.problem(totals)
+        }
+    }
+
+    fn converge(&self, system: &System, totals: &[f64], settings: &Settings) -> Result<Converged, EquilibriumError> {
+        let held: Vec<String> = self.reservoirs.iter().map(|(name, _)| name.clone()).collect();
+        let solids: Vec<String> = self.minerals.iter().map(|(name, ..)| name.clone()).collect();
+        let converged = solve(&self.problem(system, totals), system.model(), settings, None);
+        converged.map_err(|error| EquilibriumError::named(error, system, &held, &solids))
+    }
+
+    fn solve(
+        &self,
+        system: &System,
+        totals: &[f64],
+        settings: &Settings,
+        added: Vec<(String, f64)>,
+    ) -> Result<Outcome, EquilibriumError> {
+        let converged = self.converge(system, totals, settings)?;
+        let mut exchanged = added;
+        let taken = self.reservoirs.iter().zip(&converged.reservoir_amount);
+        exchanged.extend(taken.map(|((name, _), amount)| (name.clone(), *amount)));
+        // An unlimited solid that gave `amount` to the water has so much less; what is there is its negative.
+        let unlimited = self.unlimited.iter().map(|(k, species)| (species.clone(), -converged.reservoir_amount[*k]));
+        let formed = self.minerals.iter().zip(&converged.mineral_amount);
+        let solids = unlimited.chain(formed.map(|((_, species, _), amount)| (species.clone(), *amount))).collect();
+        let totals = delivered(&self.problem(system, totals), &converged);
+        Ok(Outcome { system: system.clone(), converged, totals, exchanged, solids })
+    }
+
+    /// So much of a reagent that the pH is met.
+    fn hold_ph(
+        &self,
+        system: &System,
+        totals: &[f64],
+        ph: f64,
+        reagent_name: &str,
+        settings: &Settings,
+    ) -> Result<Outcome, EquilibriumError> {
+        let reagent = reagent(system.ledger(), reagent_name)?;
+        let with = |amount: f64| {
+            let mut totals = totals.to_vec();
+            for (j, nu) in &reagent {
+                if let Some(k) = system.components().iter().position(|own| own == j) {
+                    totals[k] += rational::to_f64(*nu) * amount;
+                }
+            }
+            totals
+        };
+        let mut misses = |amount: f64| {
+            let converged = self.converge(system, &with(amount), settings)?;
+            Ok::<f64, EquilibriumError>(-converged.ln_a[system.proton()] / LN_10 - ph)
+        };
+        let start = scalar::Sample { x: 0.0, f: misses(0.0)? };
+        let mut nearest = start;
+        let mut end = scalar::Sample { x: 1e-9, f: start.f };
+        while start.f != 0.0 && end.f * start.f > 0.0 && end.x < MOST_REAGENT {
+            end.x *= 4.0;
+            end.f = misses(end.x)?;
+            nearest = if end.f.abs() < nearest.f.abs() { end } else { nearest };
+        }
+        if end.f * start.f > 0.0 {
+            return Err(EquilibriumError::Unreachable(format!(
+                "no amount of `{reagent_name}` up to {MOST_REAGENT} mol/kg(water) brings the water to pH {ph}: \
+                 the nearest is pH {:.2}",
+                nearest.f + ph
+            )));
+        }
+        let amount = if start.f == 0.0 {
+            0.0
+        } else {
+            root_between(&mut misses, start, end, Tolerance { x: 1e-18, f: 1e-14 })?.x
+        };
+        self.solve(system, &with(amount), settings, vec![(reagent_name.to_string(), amount)])
+    }
+}
+
+fn formed(system: &System, name: &str) -> Result<(Species, Row), EquilibriumError> {
+    let species = system.ledger().find_phase(name)?.clone();
+    let (_, row) = system.phase(&species).expect("its components were brought in");
+    Ok((species, row.clone()))
+}
+
+/// A neutral substance in moles of the ledger's components, water left out.
+///
+/// # Errors
+///
+/// Returns why it is not made of them: an element the ledger lacks, or oxidation states that do not add up.
+pub fn reagent(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, EquilibriumError> {
+    let fault = |why: String| EquilibriumError::Analyte { key: text.into(), why };
+    let species = Species::parse(text).map_err(|error| fault(error.to_string()))?;
+    if species.charge() != 0 {
+        return Err(fault(format!("a reagent is a neutral substance, and this has charge {}", species.charge())));
+    }
+    let formations = ledger.formations();
+    let mut parts: Vec<(usize, Rational)> = Vec::new();
+    for element in species.elements_beside_water() {
+        let carriers = carriers(formations, element);
+        let Some(carrier) = carriers.first() else {
+            let why = format!("the ledger has no species of {element}");
+            return Err(LedgerError::Unknown { what: "reagent", name: text.into(), nearest: None }).map_err(|_| fault(why));
+        };
+        parts.push((*carrier, species.count(element) / formations.components[*carrier].count(element)));
+    }
+    let remainder = |element: Element| -> Rational {
+        species.count(element) - parts.iter().map(|(j, n)| formations.components[*j].count(element) * n).sum::<Rational>()
+    };
+    let protons = remainder(Element::H) - remainder(Element::O) * 2;
+    let charge: Rational = parts.iter().map(|(j, n)| n * i64::from(formations.components[*j].charge())).sum();
+    if charge + protons != 0.into() {
+        return Err(fault("its oxidation states are not those of the ledger's species: dissolving it would be a redox reaction".into()));
+    }
+    let proton = formations.component(&Species::proton()).expect("every ledger has hydrogen ions");
+    parts.push((proton, protons));
+    Ok(parts)
+}
