@@ -1,3 +1,15 @@
-//! The program: prompt and subcommands.
+//! The program: a prompt without a subcommand, and one file for each subcommand.
 
-fn main() {}
+mod cli;
+mod command;
+mod editor;
+mod journal;
+mod progress;
+mod prompt;
+mod render;
+
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    command::dispatch(cli::parse())
+}

@@ -1,1 +1,36 @@
 //! The scripting language: the only room that imports rhai.
+//!
+//! A script is read by rhai's parser under our rules (`syntax`, `check`), runs with our functions (`vocabulary`, one
+//! file for each native type), and fails in our words (`diagnostic`, `translate`). A native type joins in
+//! [`vocabulary`] by one line.
+
+pub mod diagnostic;
+pub mod docs;
+pub mod host;
+pub mod input;
+pub mod numbers;
+pub mod sandbox;
+pub mod show;
+pub mod stop;
+pub mod vocabulary;
+pub mod words;
+
+mod check;
+mod engine;
+mod general;
+mod modules;
+mod session;
+mod syntax;
+mod translate;
+
+pub use diagnostic::{Diagnostic, Fail, ScriptResult, fail};
+pub use engine::{Options, ScriptEngine};
+pub use host::{Host, Progress};
+pub use rhai::Dynamic;
+pub use session::{SESSION, Session};
+pub use show::{Shows, Style};
+pub use stop::{Halt, Stop};
+pub use vocabulary::Vocabulary;
+
+#[cfg(test)]
+mod tests;

@@ -1,0 +1,132 @@
+//! What a running script can reach outside itself: the output, the files, the signal to stop, the progress display.
+//!
+//! A native function gets it by `Host::of(&ctx)`.
+
+use std::io::{ErrorKind, Write};
+use std::sync::{Arc, Mutex, MutexGuard, PoisonError, RwLock};
+
+use rhai::{Dynamic, NativeCallContext};
+
+use super::sandbox::Sandbox;
+use super::show::{Shows, Style};
+use super::stop::Stop;
+
+/// A stream to write to.
+pub type Out = Box<dyn Write + Send>;
+
+/// How far a long calculation has come.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Progress<'a> {
+    /// What is being done: "sweep".
+    pub what: &'a str,
+    /// Steps done.
+    pub done: u64,
+    /// Steps in all.
+    pub total: u64,
+}
+
+/// Called with each [`Progress`], from any thread.
+pub type OnProgress = Arc<dyn Fn(Progress<'_>) + Send + Sync>;
+
+/// The outside of a script; a clone is the same outside.
+#[derive(Clone)]
+pub struct Host(Arc<Parts>);
+
+struct Parts {
+    stop: Stop,
+    style: Style,
+    arguments: Vec<String>,
+    shows: RwLock<Shows>,
+    files: Mutex<Sandbox>,
+    output: Mutex<Out>,
+    messages: Mutex<Out>,
+    progress: Option<OnProgress>,
+}
+
+impl Host {
+    pub(super) fn new(options: super::Options) -> Self {
+        Self(Arc::new(Parts {
+            stop: Stop::default(),
+            style: options.style,
+            arguments: options.arguments,
+            shows: RwLock::default(),
+            files: Mutex::new(options.files),
+            output: Mutex::new(options.output),
+            messages: Mutex::new(options.messages),
+            progress: options.progress,
+        }))
+    }
+
+    /// The outside of the script that is calling.
+    ///
+    /// # Panics
+    ///
+    /// Panics in an engine that was not made by [`super::ScriptEngine`], which sets it.
+    #[must_use]
+    pub fn of(context: &NativeCallContext) -> Self {
+        let host = context.tag().and_then(|tag| tag.clone().try_cast::<Self>());
+        host.expect("every script engine carries its host")
+    }
+
+    /// The signal that long native loops must poll.
+    #[must_use]
+    pub fn stop(&self) -> &Stop {
+        &self.0.stop
+    }
+
+    /// What the output can show.
+    #[must_use]
+    pub fn style(&self) -> &Style {
+        &self.0.style
+    }
+
+    /// The words after the script's name on the command line.
+    #[must_use]
+    pub fn arguments(&self) -> &[String] {
+        &self.0.arguments
+    }
+
+    /// The files a script may read and write.
+    #[must_use]
+    pub fn files(&self) -> MutexGuard<'_, Sandbox> {
+        self.0.files.lock().unwrap_or_else(PoisonError::into_inner)
+    }
+
+    /// The value as it is echoed.
+    #[must_use]
+    pub fn show(&self, value: &Dynamic) -> String {
+        self.0.shows.read().unwrap_or_else(PoisonError::into_inner).show(value, self.style())
+    }
+
+    /// The value as `print` writes it.
+    #[must_use]
+    pub fn printed(&self, value: &Dynamic) -> String {
+        self.0.shows.read().unwrap_or_else(PoisonError::into_inner).print(value, self.style())
+    }
+
+    pub(super) fn shows(&self, change: impl FnOnce(&mut Shows)) {
+        change(&mut self.0.shows.write().unwrap_or_else(PoisonError::into_inner));
+    }
+
+    /// Writes one line of results. If nobody reads them any more, the calculation is told to stop.
+    pub fn print(&self, text: &str) {
+        let mut output = self.0.output.lock().unwrap_or_else(PoisonError::into_inner);
+        let written = writeln!(output, "{text}").and_then(|()| output.flush());
+        if written.is_err_and(|error| error.kind() == ErrorKind::BrokenPipe) {
+            self.0.stop.close_output();
+        }
+    }
+
+    /// Writes one line beside the results. A message that cannot be written is lost, not fatal.
+    pub fn message(&self, text: &str) {
+        let mut messages = self.0.messages.lock().unwrap_or_else(PoisonError::into_inner);
+        let _ = writeln!(messages, "{text}").and_then(|()| messages.flush());
+    }
+
+    /// Reports how far a native loop has come.
+    pub fn progress(&self, what: &str, done: u64, total: u64) {
+        if let Some(report) = &self.0.progress {
+            report(Progress { what, done, total });
+        }
+    }
+}

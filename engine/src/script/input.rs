@@ -1,0 +1,138 @@
+//! Entries as a person types them: is this one finished, and does it ask for its value?
+
+use rhai::{LexError, ParseErrorType, Position};
+
+use super::ScriptEngine;
+
+/// Whether an entry can be submitted.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Status {
+    /// More must follow: a bracket, a string or an expression is open.
+    Incomplete,
+    /// Complete, rightly or wrongly.
+    Complete,
+}
+
+/// Whether `text` is a finished entry.
+#[must_use]
+pub fn status(engine: &ScriptEngine, text: &str) -> Status {
+    let Some((error, position)) = engine.parse_error(text) else { return Status::Complete };
+    if asks_for_more(&error, text) || beyond_end(position, text) { Status::Incomplete } else { Status::Complete }
+}
+
+fn asks_for_more(error: &ParseErrorType, text: &str) -> bool {
+    match error {
+        ParseErrorType::UnexpectedEOF => true,
+        // Only back-tick and raw strings may span lines.
+        ParseErrorType::BadInput(LexError::UnterminatedString) => !open_quote_is_plain(text),
+        ParseErrorType::WrongDocComment => text.lines().next_back().is_some_and(|line| line.trim_start().starts_with("///")),
+        _ => false,
+    }
+}
+
+fn beyond_end(position: Position, text: &str) -> bool {
+    let last = text.lines().count().max(1);
+    let Some(line) = position.line() else { return false };
+    let length = text.lines().next_back().map_or(0, |line| line.chars().count());
+    line > last || (line == last && position.position().unwrap_or(0) > length)
+}
+
+fn open_quote_is_plain(text: &str) -> bool {
+    matches!(Scan::of(text).open, Open::Quote)
+}
+
+/// Whether the last thing of `text` that is no comment is a semicolon: then its value is not shown.
+#[must_use]
+pub fn ends_with_semicolon(text: &str) -> bool {
+    Scan::of(text).last == Some(';')
+}
+
+/// The last character of code, and what is still open at the end.
+struct Scan {
+    last: Option<char>,
+    open: Open,
+}
+
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Open {
+    Code,
+    Quote,
+    Character,
+    BackTick,
+    Line,
+    /// Block comments nest.
+    Block(u32),
+}
+
+impl Scan {
+    fn of(text: &str) -> Self {
+        let mut scan = Self { last: None, open: Open::Code };
+        let mut characters = text.chars().peekable();
+        while let Some(c) = characters.next() {
+            let next = characters.peek().copied();
+            if scan.step(c, next) {
+                characters.next();
+            }
+        }
+        scan
+    }
+
+    /// Returns whether `next` was used up as well.
+    fn step(&mut self, c: char, next: Option<char>) -> bool {
+        match (self.open, c, next) {
+            (Open::Code, '/', Some('/')) => self.open = Open::Line,
+            (Open::Code, '/', Some('*')) => self.open = Open::Block(1),
+            (Open::Block(depth), '/', Some('*')) => self.open = Open::Block(depth + 1),
+            (Open::Block(depth), '*', Some('/')) => self.open = if depth == 1 { Open::Code } else { Open::Block(depth - 1) },
+            (Open::Quote | Open::Character, '\\', Some(_)) => {}
+            (Open::Line, '\n', _) => return self.now(Open::Code),
+            (Open::Quote, '"', _) | (Open::Character, '\'', _) | (Open::BackTick, '`', _) => return self.now(Open::Code),
+            (Open::Code, _, _) => return self.code(c),
+            _ => return false,
+        }
+        true
+    }
+
+    fn now(&mut self, open: Open) -> bool {
+        self.open = open;
+        false
+    }
+
+    fn code(&mut self, c: char) -> bool {
+        if !c.is_whitespace() {
+            self.last = Some(c);
+        }
+        match c {
+            '"' => self.now(Open::Quote),
+            '\'' => self.now(Open::Character),
+            '`' => self.now(Open::BackTick),
+            _ => false,
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn finished_and_unfinished_entries() {
+        let engine = ScriptEngine::default();
+        for open in ["let x = [1,", "fn f(a) {", "if true {", "f(1,", "1 +", "let s = `two", "#{ a: 1,", "x.map(|v| {", "let"] {
+            assert_eq!(status(&engine, open), Status::Incomplete, "{open}");
+        }
+        for done in ["1 + 1", "let x = 2;", "fn f(a) { a }", "\"open", "1 + ) 2", "", "// note", "`a ${1} b`", "let x = 10^2"] {
+            assert_eq!(status(&engine, done), Status::Complete, "{done}");
+        }
+    }
+
+    #[test]
+    fn a_semicolon_outside_strings_and_comments() {
+        for yes in ["a;", "a; // note", "a; /* /* x */ */\n", "\"x\";", "`;`;", "a;  \n\n"] {
+            assert!(ends_with_semicolon(yes), "{yes}");
+        }
+        for no in ["a", "\"a;\"", "a // ;", "a /* ; */", "`b;`", "a; b", "'\\'';x"] {
+            assert!(!ends_with_semicolon(no), "{no}");
+        }
+    }
+}

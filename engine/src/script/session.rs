@@ -1,0 +1,150 @@
+//! A growing script: entries share variables and functions, and a failed one leaves no trace.
+//!
+//! Every entry is read as the next lines of one text, so that a place in a message is a line of what `:save` writes.
+
+use std::sync::Arc;
+
+use rhai::{AST, Dynamic, Scope};
+
+use super::diagnostic::Diagnostic;
+use super::engine::{clean, on_deep_stack};
+use super::modules::Source;
+use super::{ScriptEngine, docs::Entry};
+
+/// The name under which messages speak of the session's text.
+pub const SESSION: &str = "session";
+
+/// Entries that can be taken back.
+const UNDO_DEPTH: usize = 50;
+
+/// The state after all accepted entries.
+pub struct Session {
+    engine: Arc<ScriptEngine>,
+    scope: Scope<'static>,
+    functions: AST,
+    entries: Vec<String>,
+    earlier: Vec<Snapshot>,
+}
+
+struct Snapshot {
+    scope: Scope<'static>,
+    functions: AST,
+    /// A variable that a closure captured is a shared cell: the cell, and what it held.
+    cells: Vec<(Dynamic, Dynamic)>,
+}
+
+impl Session {
+    /// An empty session.
+    #[must_use]
+    pub fn new(engine: Arc<ScriptEngine>) -> Self {
+        Self { engine, scope: Scope::new(), functions: AST::empty(), entries: Vec::new(), earlier: Vec::new() }
+    }
+
+    /// The engine the session runs on.
+    #[must_use]
+    pub fn engine(&self) -> &ScriptEngine {
+        &self.engine
+    }
+
+    /// Runs one entry. The value is returned where it should be echoed: not after a semicolon, not for a definition.
+    ///
+    /// # Errors
+    ///
+    /// Returns what went wrong; variables and functions are then as they were before.
+    pub fn enter(&mut self, entry: &str) -> Result<Option<Dynamic>, Diagnostic> {
+        let entry = clean(entry);
+        let entry = entry.trim_end();
+        let before = self.snapshot();
+        let engine = Arc::clone(&self.engine);
+        let text = self.padding() + entry;
+        let (scope, functions) = (&mut self.scope, &self.functions);
+        let outcome = on_deep_stack(|| {
+            let read = engine.compile(SESSION, &text, scope, Some(functions))?;
+            let whole = Arc::new(Source { text: self.entries.iter().map(|entry| format!("{entry}\n")).collect::<String>() + entry, ast: read.ast.clone() });
+            let value = engine.evaluate(SESSION, &whole, scope)?;
+            Ok((read, value))
+        });
+        match outcome {
+            Ok((read, value)) => {
+                self.functions = read.ast.clone_functions_only();
+                self.scope = self.scope.clone_visible();
+                self.entries.push(entry.to_owned());
+                self.earlier.push(before);
+                if self.earlier.len() > UNDO_DEPTH {
+                    self.earlier.remove(0);
+                }
+                Ok(value)
+            }
+            Err(diagnostic) => {
+                self.restore(before);
+                Err(diagnostic)
+            }
+        }
+    }
+
+    /// Takes the last accepted entry back and returns it; `None` when there is none to take back.
+    pub fn undo(&mut self) -> Option<String> {
+        let before = self.earlier.pop()?;
+        self.restore(before);
+        self.entries.pop()
+    }
+
+    /// The accepted entries, oldest first.
+    #[must_use]
+    pub fn entries(&self) -> &[String] {
+        &self.entries
+    }
+
+    /// The session as a script.
+    #[must_use]
+    pub fn script(&self) -> String {
+        self.entries.iter().map(|entry| format!("{entry}\n")).collect()
+    }
+
+    /// Variables in scope, in the order they were defined.
+    #[must_use]
+    pub fn variables(&self) -> Vec<(String, Dynamic)> {
+        self.scope.iter_raw().map(|(name, _, value)| (name.to_owned(), value.flatten_clone())).collect()
+    }
+
+    /// Functions defined in the session, as signatures.
+    #[must_use]
+    pub fn functions(&self) -> Vec<String> {
+        let named = self.functions.iter_functions().filter(|function| !function.name.starts_with("anon$"));
+        let mut signatures: Vec<String> = named.map(|function| format!("{}({})", function.name, function.params.join(", "))).collect();
+        signatures.sort();
+        signatures
+    }
+
+    /// Everything callable, for help.
+    #[must_use]
+    pub fn documentation(&self) -> Vec<Entry> {
+        self.engine.entries()
+    }
+
+    /// One line for each line so far. Imports are kept: they do not outlive the entry they stand in.
+    fn padding(&self) -> String {
+        let lines = self.entries.iter().flat_map(|entry| entry.split('\n'));
+        lines.map(|line| if is_import(line) { format!("{line}\n") } else { "\n".to_owned() }).collect()
+    }
+
+    fn snapshot(&self) -> Snapshot {
+        let shared = self.scope.iter_raw().filter(|(.., value)| value.is_shared());
+        let cells = shared.map(|(.., cell)| (cell.clone(), cell.flatten_clone())).collect();
+        Snapshot { scope: self.scope.clone(), functions: self.functions.clone(), cells }
+    }
+
+    fn restore(&mut self, snapshot: Snapshot) {
+        for (mut cell, held) in snapshot.cells {
+            if let Some(mut inside) = cell.write_lock::<Dynamic>() {
+                *inside = held;
+            }
+        }
+        self.scope = snapshot.scope;
+        self.functions = snapshot.functions;
+    }
+}
+
+fn is_import(line: &str) -> bool {
+    line.trim_start().starts_with("import ") && line.trim_end().ends_with(';')
+}

@@ -1,0 +1,118 @@
+//! The command line.
+
+use std::ffi::OsString;
+use std::io::IsTerminal;
+use std::path::PathBuf;
+use std::time::Duration;
+
+use clap::{Args, Parser, Subcommand, ValueEnum};
+use lysocline_engine::script::Style;
+
+/// A scripting prompt for aqueous equilibrium chemistry.
+///
+/// Without a command it starts the prompt, or runs what is piped in.
+#[derive(Debug, Parser)]
+#[command(name = "lysocline", version)]
+pub struct Cli {
+    #[command(subcommand)]
+    pub command: Option<Command>,
+
+    #[command(flatten)]
+    pub look: Look,
+
+    #[command(flatten)]
+    pub limits: Limits,
+}
+
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// Run a script file
+    Run(Run),
+}
+
+/// Run a script file.
+#[derive(Debug, Args)]
+pub struct Run {
+    /// The script
+    pub file: PathBuf,
+
+    /// Words the script reads with `args()`
+    #[arg(trailing_var_arg = true, allow_hyphen_values = true)]
+    pub arguments: Vec<OsString>,
+
+    /// Write files below this folder
+    #[arg(long, value_name = "DIR", default_value = "out")]
+    pub write: PathBuf,
+}
+
+/// How output looks.
+#[derive(Debug, Args)]
+pub struct Look {
+    /// Plain ASCII: `Ca^2+` for `Ca²⁺`, `+/-` for `±`
+    #[arg(long, global = true)]
+    pub plain: bool,
+
+    /// Colours
+    #[arg(long, global = true, value_enum, default_value_t = When::Auto, value_name = "WHEN")]
+    pub color: When,
+}
+
+/// What a script may do.
+#[derive(Debug, Args)]
+pub struct Limits {
+    /// Replace files that this script did not write
+    #[arg(long, global = true)]
+    pub overwrite: bool,
+
+    /// Stop a script, or one entry at the prompt, after this long
+    #[arg(long, global = true, value_name = "SECONDS", value_parser = seconds)]
+    pub time_limit: Option<Duration>,
+}
+
+/// When to use colours.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub enum When {
+    /// On a terminal, unless NO_COLOR is set
+    Auto,
+    Always,
+    Never,
+}
+
+/// The command line, or the end of the program with exit code 2.
+pub fn parse() -> Cli {
+    Cli::parse()
+}
+
+impl Look {
+    /// For results, on standard output.
+    pub fn style(&self) -> Style {
+        let stdout = std::io::stdout();
+        Style { ascii: self.plain, color: self.colored(stdout.is_terminal()), width: width() }
+    }
+
+    /// Whether messages on standard error are coloured.
+    pub fn messages_colored(&self) -> bool {
+        self.colored(std::io::stderr().is_terminal())
+    }
+
+    fn colored(&self, is_terminal: bool) -> bool {
+        let wanted = || is_terminal && std::env::var_os("NO_COLOR").is_none_or(|value| value.is_empty());
+        match self.color {
+            When::Always => true,
+            When::Never => false,
+            When::Auto => wanted() && std::env::var_os("TERM").is_none_or(|term| term != "dumb"),
+        }
+    }
+}
+
+/// Characters in a line of the terminal; a fixed number where the output is no terminal, so that files do not depend
+/// on the window.
+fn width() -> usize {
+    terminal_size::terminal_size_of(std::io::stdout()).map_or(Style::default().width, |(columns, _)| usize::from(columns.0.max(40)))
+}
+
+fn seconds(text: &str) -> Result<Duration, String> {
+    let seconds: f64 = text.parse().map_err(|_| "a number of seconds is needed, such as `60` or `0.5`".to_owned())?;
+    let positive = if seconds > 0.0 { Duration::try_from_secs_f64(seconds).ok() } else { None };
+    positive.ok_or_else(|| "a number of seconds above zero is needed".to_owned())
+}

@@ -1,0 +1,3 @@
+//! Values and messages as characters.
+
+pub mod diagnostic;
