@@ -36,7 +36,7 @@ impl ZeroLevel {
         let log_k: Vec<f64> =
             ledger.reactions().map(|(_, r)| r.constant().map_or(0.0, |c| c.log_k.nearest_to(Temperature::REFERENCE).0)).collect();
         let proton = formations.component(&Species::proton());
-        let protons = (0..formations.components.len());
+        let protons = 0..formations.components.len();
         let protons = protons.map(|component| carried(formations, component, proton, &log_k, ph)).collect();
         Self { protons, proton }
     }

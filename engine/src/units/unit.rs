@@ -439,5 +439,5 @@ fn with_unicode_prefixes(symbol: &str) -> String {
         }
         rest = tail;
     }
-    written + &formula
+    written + formula.as_str()
 }
