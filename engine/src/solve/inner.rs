@@ -469,7 +469,12 @@ impl<'s, 'p> Newton<'s, 'p> {
 
     /// Sweeps over all balances at once, kept while they help: cheap progress from a far start.
     fn relax(&mut self) {
-        while self.here.worst > 4.0 {
+        const MOST_SWEEPS: usize = 30;
+
+        for _ in 0..MOST_SWEEPS {
+            if self.here.worst <= 4.0 {
+                return;
+            }
             let change = |k: usize| self.here.residual[k] / self.reduced.column_max[k];
             self.trial.y.clear();
             self.trial.y.extend((0..self.reduced.n()).map(|k| self.here.y[k] - change(k)));
