@@ -1,1 +1,6 @@
 //! The project against the outside; each module names what it is compared with.
+
+#[cfg(test)]
+mod properties;
+#[cfg(test)]
+mod random_systems;

@@ -1,0 +1,151 @@
+//! What is checked about an answer, however it was found.
+
+use super::dense::Lu;
+use super::exact::ExactSum;
+use super::ionic_strength::Settled;
+use super::settings::Settings;
+use super::system::System;
+use super::Phases;
+use crate::activity::Model;
+
+/// How well an answer satisfies its equations, and how far it can be trusted.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Certificate {
+    /// Largest error of a balance of the components, summed without rounding, relative to the sum of its absolute terms.
+    pub balance: f64,
+    /// Component of that balance.
+    pub balance_idx: usize,
+    /// Largest `|ln P - ln N|` of a balance in the dominant basis, which also sees traces.
+    pub residual: f64,
+    /// Bound on the error of ln c of any species at the given activity coefficients, from a contraction argument; `None`
+    /// where it does not apply.
+    pub ln_c_error: Option<f64>,
+    /// Largest ln saturation of an absent mineral: the distance to its formation, as a negative number. Minus infinity
+    /// without one.
+    pub saturation: f64,
+    /// Largest |ln saturation| of a mineral that is present.
+    pub present_saturation: f64,
+    /// Smallest amount of a mineral that is present, mol/kg(water): the distance to its disappearance. Infinite without one.
+    pub smallest_amount: f64,
+    /// Error of the ionic strength, relative.
+    pub ionic_strength: f64,
+    /// Number of ionic strengths seen that agree with their composition; the answer belongs to the lowest.
+    pub ionic_strength_roots: usize,
+    /// Whether the ionic strength is beyond the range of the activity model.
+    pub outside_validity: bool,
+    /// Relative change of a basis concentration per relative change of the totals, `max_j Σ_k |∂ln c_j/∂T_k| |T_k|`, at
+    /// constant activity coefficients. Totals known to a relative u give concentrations known to `condition · u`.
+    pub condition: f64,
+}
+
+impl Certificate {
+    /// Whether every tolerance is met.
+    #[must_use]
+    pub fn meets(&self, settings: &Settings) -> bool {
+        self.balance <= settings.balance
+            && self.residual <= settings.stalled_residual
+            && self.saturation <= settings.saturation
+            && self.present_saturation <= settings.saturation
+            && self.smallest_amount >= 0.0
+            && self.ionic_strength <= settings.ionic_strength
+    }
+}
+
+/// Checks a settled system together with what was read out of it.
+pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: &Phases, model: &Model) -> Certificate {
+    let (balance, balance_idx) = worst_balance(system, ln_c, phases);
+    let (ln_c_error, condition) = error_and_condition(system, settled);
+    let minerals = || phases.mineral_ln_saturation.iter().zip(&phases.mineral_present);
+    let absent = minerals().filter(|(_, present)| !**present).map(|(saturation, _)| *saturation);
+    let present = minerals().filter(|(_, present)| **present).map(|(saturation, _)| saturation.abs());
+    let amounts = phases.mineral_amount.iter().zip(&phases.mineral_present);
+    Certificate {
+        balance,
+        balance_idx,
+        residual: settled.point.worst,
+        ln_c_error,
+        saturation: absent.fold(f64::NEG_INFINITY, f64::max),
+        present_saturation: present.fold(0.0, f64::max),
+        smallest_amount: amounts.filter(|(_, present)| **present).map(|(n, _)| *n).fold(f64::INFINITY, f64::min),
+        ionic_strength: relative(settled.ionic_strength_residual, settled.ionic_strength),
+        ionic_strength_roots: settled.roots,
+        outside_validity: model.valid_to().is_some_and(|limit| settled.ionic_strength > limit),
+        condition,
+    }
+}
+
+fn relative(error: f64, size: f64) -> f64 {
+    if error == 0.0 { 0.0 } else { error.abs() / size }
+}
+
+/// Largest relative error of a balance in the components as given, with its index.
+fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize) {
+    let basis = &system.basis;
+    let first_reservoir = system.problem.species.len();
+    let first_mineral = system.mineral_row(0);
+    let amounts = (0..).zip(ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
+    let delivered = (first_reservoir..).zip(&phases.reservoir_amount).map(|(row, amount)| (row, -amount));
+    let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
+    let terms: Vec<(usize, f64)> = amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
+    let mut worst = (0.0, 0);
+    let mut sum = ExactSum::default();
+    for k in 0..basis.n {
+        let mut magnitude = 0.0;
+        for &(row, amount) in &terms {
+            let coefficient = basis.input_row(row)[k];
+            if coefficient != 0.0 {
+                sum.add_product(coefficient, amount);
+                magnitude += (coefficient * amount).abs();
+            }
+        }
+        for part in system.problem.totals[k].parts() {
+            sum.add_product(-basis.scale(k), part);
+            magnitude += (basis.scale(k) * part).abs();
+        }
+        let error = relative(sum.take(), magnitude);
+        if !(error <= worst.0) {
+            worst = (error, k);
+        }
+    }
+    worst
+}
+
+/// Bound on the error of ln c, and condition with respect to the totals.
+///
+/// With `δ = max |J⁻¹F| + max |J⁻¹| dF`, C the largest Σ|ν'| of a species and κ the largest row sum of |J⁻¹| |J|: if
+/// `(exp(4 C δ) - 1) κ <= 1/2`, then `y - J⁻¹F(y)` contracts the box of radius 2δ into itself, so the solution is in it.
+fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64) {
+    let (reduced, point) = (&settled.reduced, &settled.point);
+    let n = reduced.n();
+    let (mut jacobian, mut lu) = (Vec::new(), Lu::default());
+    point.jacobian(reduced, &mut jacobian);
+    if !lu.factor(&jacobian, n) {
+        return (None, f64::INFINITY);
+    }
+    let inverse = lu.inverse();
+    let (absolute, rounding) = point.absolute_jacobian(reduced);
+    let (mut delta, mut kappa, mut condition) = ((0.0_f64, 0.0_f64), 0.0_f64, 0.0_f64);
+    for j in 0..n {
+        let row = &inverse[j * n..(j + 1) * n];
+        delta.0 = delta.0.max(row.iter().zip(&point.residual).map(|(a, f)| a * f).sum::<f64>().abs());
+        delta.1 = delta.1.max(row.iter().zip(&rounding).map(|(a, f)| a.abs() * f).sum());
+        let row_sum: f64 = (0..n).map(|k| row[k].abs() * absolute[k * n..(k + 1) * n].iter().sum::<f64>()).sum();
+        kappa = kappa.max(row_sum);
+        condition = condition.max(sensitivity_to_totals(system, settled, row));
+    }
+    let delta = delta.0 + delta.1;
+    let applies = (4.0 * reduced.row_max * delta).exp_m1() * kappa <= 0.5;
+    (applies.then_some(2.0 * delta * reduced.row_max), condition)
+}
+
+/// `Σ_k |∂y/∂T_k| |T_k|` of one basis level, given its row of J⁻¹.
+fn sensitivity_to_totals(system: &System, settled: &Settled, inverse_row: &[f64]) -> f64 {
+    let per_total: Vec<f64> =
+        inverse_row.iter().enumerate().map(|(l, a)| a * settled.point.per_supply(l)).collect();
+    let change = |k: usize| {
+        let columns = settled.reduced.columns.iter().zip(&per_total);
+        columns.map(|(&column, a)| a * system.basis.total_factor(k, column)).sum::<f64>()
+    };
+    let totals = system.problem.totals.iter().enumerate();
+    totals.map(|(k, total)| if total.to_f64() == 0.0 { 0.0 } else { (change(k) * total.to_f64()).abs() }).sum()
+}

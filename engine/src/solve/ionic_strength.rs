@@ -1,0 +1,149 @@
+//! The coupling through activity coefficients: one scalar, the ionic strength, and around it the activity of water.
+//!
+//! At a given I the problem is convex. The root of `r(I) = ½ Σ z² c(I) - I` is bracketed, since r(0) is not negative and
+//! the totals bound the charge from above, and then closed in on by interpolation. ln a_w changes the constants of rows
+//! that involve the solvent by a few percent of the total molality, so a fixed point around it contracts quickly.
+
+use super::inner::{Point, Reduced};
+use super::phases;
+use super::scalar::{self, Sample, Tolerance};
+use super::settings::{Settings, SolveError};
+use super::system::System;
+use crate::activity::Model;
+
+/// A composition with the activity coefficients that belong to it.
+pub(super) struct Settled {
+    pub(super) reduced: Reduced,
+    pub(super) point: Point,
+    pub(super) ionic_strength: f64,
+    /// `½ Σ z² c - I`.
+    pub(super) ionic_strength_residual: f64,
+    /// Number of ionic strengths seen that agree with their composition.
+    pub(super) roots: usize,
+    pub(super) ln_water_activity: f64,
+}
+
+/// Solves with consistent activity coefficients and activity of water, starting from the values given.
+pub(super) fn settle(
+    system: &mut System,
+    model: &Model,
+    settings: &Settings,
+    start: (f64, f64),
+) -> Result<Settled, SolveError> {
+    const MOST_PASSES: usize = 60;
+
+    let (mut guess, mut ln_water_activity) = start;
+    let solvent_matters = system.problem.rows().any(|row| row.water != 0.0);
+    let mut change = f64::INFINITY;
+    for _ in 0..MOST_PASSES {
+        let mut settled = Coupling { system, model, settings, ln_water_activity, last: None }.root(guess)?;
+        let updated = model.ln_water_activity(settled.point.c.iter().sum(), settled.ionic_strength);
+        change = (updated - ln_water_activity).abs();
+        if !solvent_matters || change <= settings.ln_water_activity {
+            settled.ln_water_activity = if solvent_matters { ln_water_activity } else { updated };
+            return Ok(settled);
+        }
+        ln_water_activity = updated;
+        guess = settled.ionic_strength;
+    }
+    Err(SolveError::WaterActivityNotConverged { change })
+}
+
+/// Solves as a function of the ionic strength, at one activity of water.
+struct Coupling<'a, 'p> {
+    system: &'a mut System<'p>,
+    model: &'a Model,
+    settings: &'a Settings,
+    ln_water_activity: f64,
+    /// The latest solve.
+    last: Option<(Sample, Reduced, Point)>,
+}
+
+impl Coupling<'_, '_> {
+    fn root(mut self, guess: f64) -> Result<Settled, SolveError> {
+        if !self.model.depends_on_ionic_strength() {
+            return self.without_coupling();
+        }
+        let start = self.sample(guess)?;
+        let mut root = if self.agrees(start) { start } else { self.search(start)? };
+        let mut roots = 1;
+        if root.x > 1.0 {
+            let all = self.scan(root)?;
+            roots = all.len().max(1);
+            root = all.first().copied().unwrap_or(root);
+        }
+        self.settled(root, roots)
+    }
+
+    /// γ does not depend on I: one solve gives both.
+    fn without_coupling(mut self) -> Result<Settled, SolveError> {
+        let at_zero = self.sample(0.0)?;
+        let mut settled = self.settled(at_zero, 1)?;
+        settled.ionic_strength = at_zero.f;
+        settled.ionic_strength_residual = 0.0;
+        Ok(settled)
+    }
+
+    /// r(I).
+    fn sample(&mut self, ionic_strength: f64) -> Result<Sample, SolveError> {
+        self.system.effort.ionic_strengths += 1;
+        self.system.set_activities(self.model, ionic_strength, self.ln_water_activity);
+        let (reduced, point) = phases::settle(self.system, self.settings)?;
+        let charge_squared = |i: &usize| self.system.problem.species[*i].charge.powi(2);
+        let implied: f64 = 0.5 * reduced.species.iter().map(charge_squared).zip(&point.c).map(|(z2, c)| z2 * c).sum::<f64>();
+        let sample = Sample { x: ionic_strength, f: implied - ionic_strength };
+        self.last = Some((sample, reduced, point));
+        Ok(sample)
+    }
+
+    fn agrees(&self, sample: Sample) -> bool {
+        sample.f.abs() <= 0.1 * self.settings.ionic_strength * sample.x
+    }
+
+    /// Walks from the start, by growing multiples of r, until r changes sign; then closes in.
+    fn search(&mut self, start: Sample) -> Result<Sample, SolveError> {
+        const FARTHEST: f64 = 1e3;
+
+        let (mut here, mut factor) = (start, 1.0);
+        loop {
+            // r(I) + I is not negative, so the first step, the plain fixed point, stays at I >= 0.
+            let x = (here.x + factor * here.f).max(0.0);
+            if !(x <= FARTHEST) {
+                return Err(SolveError::NoIonicStrength { searched_to: FARTHEST });
+            }
+            let next = self.sample(x)?;
+            if self.agrees(next) || next.f == 0.0 {
+                return Ok(next);
+            }
+            if (next.f > 0.0) != (here.f > 0.0) {
+                let tolerance = Tolerance { x: 0.0, f: 0.1 * self.settings.ionic_strength * here.x.min(next.x) };
+                let (low, high) = if here.x < next.x { (here, next) } else { (next, here) };
+                return scalar::root_between(&mut |x| Ok(self.sample(x)?.f), low, high, tolerance);
+            }
+            here = next;
+            factor *= 2.0;
+        }
+    }
+
+    /// All roots up to well above one of them, ascending: beyond I of 1 there may be several.
+    fn scan(&mut self, root: Sample) -> Result<Vec<Sample>, SolveError> {
+        let tolerance = Tolerance { x: 0.0, f: 0.1 * self.settings.ionic_strength * root.x };
+        Ok(scalar::all_roots(|x| Ok(self.sample(x)?.f), (0.0, 4.0 * root.x), 32, tolerance)?.roots)
+    }
+
+    /// The solve at `root`, which is repeated if it was not the latest.
+    fn settled(mut self, root: Sample, roots: usize) -> Result<Settled, SolveError> {
+        if self.last.as_ref().is_none_or(|(sample, ..)| sample.x != root.x) {
+            self.sample(root.x)?;
+        }
+        let (sample, reduced, point) = self.last.ok_or(SolveError::NoIonicStrength { searched_to: root.x })?;
+        Ok(Settled {
+            reduced,
+            point,
+            ionic_strength: sample.x,
+            ionic_strength_residual: sample.f,
+            roots,
+            ln_water_activity: self.ln_water_activity,
+        })
+    }
+}

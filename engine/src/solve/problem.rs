@@ -1,0 +1,127 @@
+//! What is to be solved: rows of stoichiometric coefficients with their constants, and totals. Numbers and indices only.
+
+use super::exact::Total;
+use super::settings::{Input, SolveError};
+use num_rational::Ratio;
+
+/// A stoichiometric coefficient: an integer or a small fraction, exact.
+pub type Coefficient = Ratio<i64>;
+
+/// Formation of one species or phase from the components: `Σ ν_j component_j + w H2O = species`.
+///
+/// ```text
+/// ln a = ln K + Σ ν_j λ_j + w ln a_w,    λ_j = ln of the activity of component j
+/// ```
+#[derive(Debug, Clone, PartialEq)]
+pub struct Row {
+    /// (component index, coefficient ν); an index may occur once.
+    pub stoichiometry: Vec<(usize, Coefficient)>,
+    /// ln of the formation constant.
+    pub ln_k: f64,
+    /// Charge number; used for the ionic strength and for γ of a species.
+    pub charge: f64,
+    /// Coefficient w of the solvent.
+    pub water: f64,
+}
+
+impl Row {
+    /// An uncharged row with integer coefficients that does not involve the solvent.
+    #[must_use]
+    pub fn new(stoichiometry: &[(usize, i64)], ln_k: f64) -> Self {
+        let stoichiometry = stoichiometry.iter().map(|&(j, nu)| (j, Coefficient::from_integer(nu))).collect();
+        Self { stoichiometry, ln_k, charge: 0.0, water: 0.0 }
+    }
+
+    /// The same row with another charge number.
+    #[must_use]
+    pub fn with_charge(self, charge: f64) -> Self {
+        Self { charge, ..self }
+    }
+
+    /// The same row with another coefficient of the solvent.
+    #[must_use]
+    pub fn with_water(self, water: f64) -> Self {
+        Self { water, ..self }
+    }
+}
+
+/// An unlimited source or sink that holds `ln K + Σ ν_j λ_j + w ln a_w` at a value: a fixed pH, a gas at fixed fugacity,
+/// an unlimited solid held at a saturation.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Reservoir {
+    /// What is exchanged, formed from the components.
+    pub row: Row,
+    /// The value held, natural logarithm.
+    pub ln_value: f64,
+}
+
+/// A pure phase that may form: it is present at `G = 0` or absent at `G < 0`, with
+/// `G = ln K + Σ ν_j λ_j + w ln a_w - ln_target`.
+///
+/// What is present at the start is already contained in the totals.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Mineral {
+    /// Formation from the components; `ln_k` is minus ln of the solubility product.
+    pub row: Row,
+    /// ln of the saturation ratio at which the phase is held; 0 for equilibrium.
+    pub ln_target: f64,
+}
+
+/// An equilibrium problem of `n_components` components.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct Problem {
+    /// Number of components; a component is a species only if a row says so.
+    pub n_components: usize,
+    /// Dissolved species; their `ln a` is `ln γ + ln c`.
+    pub species: Vec<Row>,
+    /// Equalities.
+    pub reservoirs: Vec<Reservoir>,
+    /// Phases that may form.
+    pub minerals: Vec<Mineral>,
+    /// Total of each component over species and minerals, mol/kg(water); zero and negative totals are legal. Shape
+    /// `(n_components,)`.
+    pub totals: Vec<Total>,
+}
+
+impl Problem {
+    /// All rows in the order species, reservoirs, minerals: the row order of the tableau.
+    pub(super) fn rows(&self) -> impl Iterator<Item = &Row> {
+        let reservoirs = self.reservoirs.iter().map(|reservoir| &reservoir.row);
+        let minerals = self.minerals.iter().map(|mineral| &mineral.row);
+        self.species.iter().chain(reservoirs).chain(minerals)
+    }
+
+    /// Checks that every index is in range and every number finite.
+    pub(super) fn validate(&self) -> Result<(), SolveError> {
+        if self.totals.len() != self.n_components {
+            return Err(SolveError::BadInput { input: Input::Totals, idx: self.totals.len() });
+        }
+        if let Some(idx) = self.totals.iter().position(|total| !total.to_f64().is_finite()) {
+            return Err(SolveError::BadInput { input: Input::Totals, idx });
+        }
+        let (n_species, n_held) = (self.species.len(), self.species.len() + self.reservoirs.len());
+        let values = self.reservoirs.iter().map(|reservoir| reservoir.ln_value);
+        let targets = self.minerals.iter().map(|mineral| mineral.ln_target);
+        let values = std::iter::repeat_n(0.0, n_species).chain(values).chain(targets);
+        for (row_idx, (row, value)) in self.rows().zip(values).enumerate() {
+            if !self.is_sound(row) || !value.is_finite() {
+                let (input, idx) = match row_idx {
+                    i if i < n_species => (Input::Species, i),
+                    i if i < n_held => (Input::Reservoir, i - n_species),
+                    i => (Input::Mineral, i - n_held),
+                };
+                return Err(SolveError::BadInput { input, idx });
+            }
+        }
+        Ok(())
+    }
+
+    fn is_sound(&self, row: &Row) -> bool {
+        let numbers_finite = [row.ln_k, row.charge, row.water].into_iter().all(f64::is_finite);
+        let mut seen = vec![false; self.n_components];
+        let indices_sound = row.stoichiometry.iter().all(|&(j, nu)| {
+            j < self.n_components && *nu.denom() != 0 && !std::mem::replace(&mut seen[j], true)
+        });
+        numbers_finite && indices_sound && row.stoichiometry.iter().any(|(_, nu)| *nu.numer() != 0)
+    }
+}

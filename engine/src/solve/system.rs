@@ -1,0 +1,247 @@
+//! The state of a solve: the tableau in the current basis, the level of every basis row, and which phases are present.
+//!
+//! Every row has a *level* `g + ν·λ`: ln c of a species, ln of the saturation of a phase or reservoir (zero when it is
+//! present), λ of a component. The levels of the basis rows are the unknowns.
+
+use super::basis::Basis;
+use super::exact::ExactSum;
+use super::problem::Problem;
+use super::settings::{Input, SolveError};
+use crate::activity::Model;
+
+/// What the level of a column's basis row is.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Column {
+    /// An unknown.
+    Free,
+    /// Held at zero by a reservoir or a phase that is present.
+    Held,
+    /// Minus infinity: nothing that is left contains the basis row.
+    Absent,
+}
+
+/// Where an earlier solve ended, as a start for a problem with the same rows.
+#[derive(Debug, Clone)]
+pub struct Warm {
+    basis: Basis,
+    level: Vec<f64>,
+    column: Vec<Column>,
+    mineral_amount: Vec<f64>,
+    pub(super) ionic_strength: f64,
+    pub(super) ln_water_activity: f64,
+}
+
+#[derive(Debug)]
+pub(super) struct System<'p> {
+    pub(super) problem: &'p Problem,
+    pub(super) basis: Basis,
+    /// Constant part of each row's level; 0 for unit rows.
+    pub(super) g: Vec<f64>,
+    /// ln γ of each species.
+    pub(super) ln_gamma: Vec<f64>,
+    /// Level of each column's basis row.
+    pub(super) level: Vec<f64>,
+    pub(super) column: Vec<Column>,
+    /// Rows that a total of zero excludes.
+    pub(super) absent: Vec<bool>,
+    /// Amount of each mineral, mol/kg(water).
+    pub(super) mineral_amount: Vec<f64>,
+    pub(super) sum: ExactSum,
+    pub(super) effort: Effort,
+}
+
+/// What a solve took.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub struct Effort {
+    /// Steps of the inner solver: Newton steps and rounds of sweeps.
+    pub iterations: usize,
+    /// Evaluations of all concentrations.
+    pub evaluations: usize,
+    /// Changes of basis.
+    pub pivots: usize,
+    /// Entries and exits of phases.
+    pub phase_changes: usize,
+    /// Values of the ionic strength tried.
+    pub ionic_strengths: usize,
+}
+
+impl<'p> System<'p> {
+    /// The system at its starting point.
+    pub(super) fn new(problem: &'p Problem, warm: Option<&Warm>) -> Result<Self, SolveError> {
+        let basis = Basis::new(problem.rows(), problem.n_components)
+            .ok_or(SolveError::BadInput { input: Input::Species, idx: 0 })?;
+        let mut system = Self {
+            problem,
+            g: vec![0.0; basis.unit_row(0) + problem.n_components],
+            ln_gamma: vec![0.0; problem.species.len()],
+            level: vec![0.0; problem.n_components],
+            column: vec![Column::Free; problem.n_components],
+            absent: vec![false; problem.species.len() + problem.reservoirs.len() + problem.minerals.len()],
+            mineral_amount: vec![0.0; problem.minerals.len()],
+            sum: ExactSum::default(),
+            effort: Effort::default(),
+            basis,
+        };
+        match warm.filter(|warm| warm.basis.same_rows(&system.basis)) {
+            Some(warm) => system.start_from(warm),
+            None => system.start_cold()?,
+        }
+        Ok(system)
+    }
+
+    /// Where this solve ended.
+    pub(super) fn warm(self, ionic_strength: f64, ln_water_activity: f64) -> Warm {
+        Warm {
+            basis: self.basis,
+            level: self.level,
+            column: self.column,
+            mineral_amount: self.mineral_amount,
+            ionic_strength,
+            ln_water_activity,
+        }
+    }
+
+    fn start_from(&mut self, warm: &Warm) {
+        self.basis.clone_from(&warm.basis);
+        self.basis.pivots = 0;
+        self.level.copy_from_slice(&warm.level);
+        self.column.copy_from_slice(&warm.column);
+        self.mineral_amount.copy_from_slice(&warm.mineral_amount);
+        for column in 0..self.basis.n {
+            if self.column[column] == Column::Absent {
+                // The total may have changed since; if it is still zero the reduction finds it again.
+                self.column[column] = Column::Free;
+                let total = self.total(column);
+                self.level[column] = starting_level(total);
+            }
+        }
+    }
+
+    /// Each component near its total, then the reservoirs into the basis.
+    fn start_cold(&mut self) -> Result<(), SolveError> {
+        for (k, total) in self.problem.totals.iter().enumerate() {
+            self.level[k] = starting_level(total.to_f64()) / self.basis.scale(k);
+        }
+        let n_species = self.problem.species.len();
+        for reservoir_idx in 0..self.problem.reservoirs.len() {
+            let row = n_species + reservoir_idx;
+            let column = (0..self.basis.n)
+                .find(|&j| self.column[j] == Column::Free && self.basis.pivot(row, j))
+                .ok_or(SolveError::Overdetermined { reservoir_idx })?;
+            self.column[column] = Column::Held;
+            self.level[column] = 0.0;
+        }
+        Ok(())
+    }
+
+    pub(super) fn mineral_row(&self, mineral_idx: usize) -> usize {
+        self.problem.species.len() + self.problem.reservoirs.len() + mineral_idx
+    }
+
+    /// The mineral that is the basis row of a column.
+    pub(super) fn mineral_of(&self, column: usize) -> Option<usize> {
+        let minerals = self.mineral_row(0)..self.mineral_row(self.problem.minerals.len());
+        let row = self.basis.row_of(column);
+        minerals.contains(&row).then(|| row - minerals.start)
+    }
+
+    /// Recomputes the constant part of every level for a new ionic strength and activity of water.
+    pub(super) fn set_activities(&mut self, model: &Model, ionic_strength: f64, ln_water_activity: f64) {
+        let problem = self.problem;
+        for (ln_gamma, row) in self.ln_gamma.iter_mut().zip(&problem.species) {
+            *ln_gamma = model.ln_gamma(row.charge, ionic_strength);
+        }
+        let solvent = |water: f64| if water == 0.0 { 0.0 } else { water * ln_water_activity };
+        let species = problem.species.iter().zip(&self.ln_gamma).map(|(row, gamma)| (row, *gamma));
+        let reservoirs = problem.reservoirs.iter().map(|held| (&held.row, held.ln_value));
+        let minerals = problem.minerals.iter().map(|mineral| (&mineral.row, mineral.ln_target));
+        for (g, (row, offset)) in self.g.iter_mut().zip(species.chain(reservoirs).chain(minerals)) {
+            *g = row.ln_k + solvent(row.water) - offset;
+        }
+    }
+
+    /// Total of a column's basis row, exact in sign.
+    pub(super) fn total(&mut self, column: usize) -> f64 {
+        self.basis.total(column, &self.problem.totals, &mut self.sum)
+    }
+
+    /// Level of any row from the levels of the basis rows; minus infinity if it contains something absent.
+    pub(super) fn level_of(&self, row: usize) -> f64 {
+        let scaled = self.basis.scaled_row(row);
+        let mut level = self.g[row];
+        for (column, entry) in scaled.iter().enumerate() {
+            if *entry != 0.0 {
+                let basis_row = self.basis.row_of(column);
+                level += entry / self.basis.determinant() * (self.level[column] - self.g[basis_row]);
+            }
+        }
+        level
+    }
+
+    /// Puts a mineral into the basis in place of the least concentrated species that it is made of.
+    ///
+    /// Returns false when it is made of held rows only.
+    pub(super) fn enter(&mut self, mineral_idx: usize) -> bool {
+        let row = self.mineral_row(mineral_idx);
+        let mut columns: Vec<usize> = (0..self.basis.n)
+            .filter(|&j| self.column[j] == Column::Free && self.basis.scaled_row(row)[j] != 0.0)
+            .collect();
+        columns.sort_by(|a, b| self.level[*a].total_cmp(&self.level[*b]));
+        let Some(column) = columns.into_iter().find(|&j| self.basis.pivot(row, j)) else { return false };
+        self.hold(column)
+    }
+
+    /// Marks a column whose basis row is a phase as held.
+    pub(super) fn hold(&mut self, column: usize) -> bool {
+        self.column[column] = Column::Held;
+        self.level[column] = 0.0;
+        self.effort.phase_changes += 1;
+        true
+    }
+
+    /// Takes the mineral of a column out of the basis, in favour of the most concentrated species that can replace it.
+    pub(super) fn leave(&mut self, column: usize) {
+        self.effort.phase_changes += 1;
+        self.column[column] = Column::Free;
+        let mut species: Vec<(f64, usize)> = (0..self.problem.species.len())
+            .filter(|&i| !self.absent[i] && self.basis.scaled_row(i)[column] != 0.0)
+            .map(|i| (self.level_of(i), i))
+            .collect();
+        species.sort_by(|a, b| b.0.total_cmp(&a.0));
+        for (level, row) in species {
+            if self.basis.pivot(row, column) {
+                self.level[column] = level;
+                return;
+            }
+        }
+        // No species contains it: the unit row of some component takes its place and the reduction deals with it.
+        let unit = (0..self.basis.n).map(|k| self.basis.unit_row(k));
+        for row in unit.collect::<Vec<_>>() {
+            if self.basis.column_of(row).is_none() && self.basis.pivot(row, column) {
+                return;
+            }
+        }
+    }
+
+    /// Amount of the held row of a column that balances the dissolved species, and the sum of its absolute terms.
+    pub(super) fn held_amount(&mut self, column: usize) -> (f64, f64) {
+        let total = self.total(column);
+        let (mut amount, mut magnitude) = (total, total.abs());
+        for species_idx in 0..self.problem.species.len() {
+            let coefficient = self.basis.coefficient(species_idx, column);
+            if coefficient != 0.0 && !self.absent[species_idx] {
+                let term = coefficient * self.level_of(species_idx).exp();
+                amount -= term;
+                magnitude += term.abs();
+            }
+        }
+        (amount, magnitude)
+    }
+}
+
+/// ln of a concentration to begin with for a component of this total.
+fn starting_level(total: f64) -> f64 {
+    /// Where nothing is known, the hydrogen ion of neutral water.
+    const UNKNOWN: f64 = -16.0;
+    if total > 0.0 { total.ln() - 1.0 } else { UNKNOWN }
+}
