@@ -73,7 +73,7 @@ pub fn correlation(a: &Quantity, b: &Quantity) -> Result<Option<f64>, QuantityEr
 
 /// The covariance of two quantities, over the inputs that state their uncertainty.
 ///
-/// The terms are added in order of size, so that the order in which inputs came into being leaves no trace.
+/// The order in which inputs came into being leaves no trace.
 pub(super) fn covariance(a: &Quantity, b: &Quantity, table: &Correlations) -> f64 {
     let deviations_b: BTreeMap<&Key, f64> = deviations(b).collect();
     let mut terms = Vec::new();
@@ -82,6 +82,11 @@ pub(super) fn covariance(a: &Quantity, b: &Quantity, table: &Correlations) -> f6
         let correlated = table.partners(key_a).filter_map(|(key_b, r)| Some((deviations_b.get(key_b)?, r)));
         terms.extend(correlated.map(|(deviation_b, r)| r * deviation_a * deviation_b));
     }
+    sum_by_size(terms)
+}
+
+/// The sum in one order whatever the order given, so that it is the same to the last bit.
+pub(super) fn sum_by_size(mut terms: Vec<f64>) -> f64 {
     terms.sort_by(f64::total_cmp);
     terms.iter().sum()
 }
@@ -137,6 +142,11 @@ impl Correlations {
         Ok(union)
     }
 
+    /// The coefficient declared for two different inputs, 0 where none was.
+    pub fn coefficient(&self, a: &Key, b: &Key) -> f64 {
+        self.0.as_ref().and_then(|table| table.get(&(a.clone(), b.clone()))).copied().unwrap_or(0.0)
+    }
+
     /// The inputs correlated with one, each with its coefficient.
     pub fn partners<'a>(&'a self, key: &'a Key) -> impl Iterator<Item = (&'a Key, f64)> {
         let lowest = (key.clone(), Key::Named(String::new()));
@@ -148,10 +158,7 @@ impl Correlations {
     fn check_possible(&self) -> Result<(), QuantityError> {
         let Some(table) = &self.0 else { return Ok(()) };
         let keys: BTreeSet<&Key> = table.keys().map(|(a, _)| a).collect();
-        let coefficient = |a: &Key, b: &Key| match a == b {
-            true => 1.0,
-            false => table.get(&(a.clone(), b.clone())).copied().unwrap_or(0.0),
-        };
+        let coefficient = |a: &Key, b: &Key| if a == b { 1.0 } else { self.coefficient(a, b) };
         let matrix = keys.iter().map(|a| keys.iter().map(|b| coefficient(a, b)).collect()).collect();
         if is_positive_semidefinite(matrix) { Ok(()) } else { Err(QuantityError::Impossible) }
     }

@@ -1,6 +1,7 @@
 //! The independent inputs that uncertainty comes from.
 
 use std::cmp::Ordering;
+use std::hash::{Hash, Hasher};
 use std::sync::Arc;
 use std::sync::atomic::{self, AtomicU64};
 
@@ -97,6 +98,12 @@ impl PartialEq for Input {
 }
 
 impl Eq for Input {}
+
+impl Hash for Input {
+    fn hash<H: Hasher>(&self, state: &mut H) {
+        self.0.key.hash(state);
+    }
+}
 
 impl PartialOrd for Input {
     fn partial_cmp(&self, other: &Self) -> Option<Ordering> {

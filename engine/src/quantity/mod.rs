@@ -22,7 +22,7 @@
 use std::cmp::Ordering;
 use std::sync::Arc;
 
-use crate::units::{Style, Unit};
+use crate::units::{KgOf, Pressure, Style, Temperature, Unit};
 
 mod arithmetic;
 mod budget;
@@ -34,6 +34,8 @@ mod parse;
 
 #[cfg(test)]
 mod gum_examples;
+#[cfg(test)]
+mod propagation_tests;
 #[cfg(test)]
 mod tests;
 
@@ -205,6 +207,18 @@ impl Quantity {
         if self.unit == Unit::one() { Ok(Self { unit: unit.clone(), ..self.clone() }) } else { self.to(unit) }
     }
 
+    /// The same quantity with every bare `/kg` made plain; see [`Unit::per_kg_of`].
+    #[must_use]
+    pub fn per_kg_of(&self, what: KgOf) -> Self {
+        Self { unit: self.unit.per_kg_of(what), ..self.clone() }
+    }
+
+    /// The correlation coefficient declared for two of the inputs; 0 where none was, 1 for an input and itself.
+    #[must_use]
+    pub fn input_correlation(&self, a: &Input, b: &Input) -> f64 {
+        if a == b { 1.0 } else { self.correlations.coefficient(a.key(), b.key()) }
+    }
+
     /// Which of two quantities is larger, by value alone; units of the same dimension are converted.
     ///
     /// # Errors
@@ -233,6 +247,24 @@ impl Quantity {
 impl From<f64> for Quantity {
     fn from(value: f64) -> Self {
         Self::exact(value, Unit::one())
+    }
+}
+
+impl TryFrom<&Quantity> for Temperature {
+    type Error = QuantityError;
+
+    /// The value alone, without its uncertainty.
+    fn try_from(quantity: &Quantity) -> Result<Self, QuantityError> {
+        Ok(Self::from_kelvin(quantity.to(&Unit::known("K"))?.value)?)
+    }
+}
+
+impl TryFrom<&Quantity> for Pressure {
+    type Error = QuantityError;
+
+    /// The value alone, without its uncertainty.
+    fn try_from(quantity: &Quantity) -> Result<Self, QuantityError> {
+        Ok(Self::from_bar(quantity.to(&Unit::known("bar"))?.value)?)
     }
 }
 

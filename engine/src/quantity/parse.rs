@@ -66,20 +66,24 @@ impl<'a> Written<'a> {
         let (value, unit) = number_and_unit(left, text)?;
         let (number, sigma_unit) = number_and_unit(right, text)?;
         let sigma = |unit| Some(WrittenSigma { number, unit });
-        if unit_outside.is_none() && sigma_unit == Some("%") && matches!(unit, None | Some("%")) {
-            return Err(refused(
+        match (unit, sigma_unit.map(percent_first)) {
+            (None | Some("%"), Some((true, None))) if unit_outside.is_none() => Err(refused(
                 text,
-                "the `%` may mean two things; write `(5.0 +/- 0.2) %` or `5.0 +/- 0.2`",
-            ));
+                "the `%` may belong to the value or not; write `(5.0 +/- 0.2) %` or `5.0 +/- 0.2`",
+            )),
+            // 41.2 +/- 2 % mg/L, (41.2 +/- 2 %) mg/L
+            (None, Some((true, behind))) => {
+                Ok(Self { value, unit: one_unit(behind, unit_outside, text)?, sigma: sigma(Some("%")) })
+            }
+            // 41.2 +/- 0.8 mg/L, (41.2 +/- 0.8) mg/L
+            (None, _) => {
+                Ok(Self { value, unit: one_unit(sigma_unit, unit_outside, text)?, sigma: sigma(None) })
+            }
+            // 41.2 mg/L +/- 0.8, 41.2 mg/L +/- 2 %, 41.2 mg/L +/- 800 ug/L
+            (Some(_), _) => {
+                Ok(Self { value, unit: one_unit(unit, unit_outside, text)?, sigma: sigma(sigma_unit) })
+            }
         }
-        if unit_outside.is_some() {
-            let unit = one_unit(unit.or(sigma_unit), unit_outside, text)?;
-            return Ok(Self { value, unit, sigma: sigma(None) });
-        }
-        Ok(match unit {
-            Some(_) => Self { value, unit, sigma: sigma(sigma_unit) },
-            None => Self { value, unit: sigma_unit, sigma: sigma(None) },
-        })
     }
 }
 
@@ -111,6 +115,14 @@ fn split_sigma(text: &str) -> Option<(&str, &str)> {
     ["+/-", "±", "+-"].iter().find_map(|sign| text.split_once(sign)).map(|(l, r)| (l.trim(), r.trim()))
 }
 
+/// Whether a text begins with `%`, and the unit behind it.
+fn percent_first(unit: &str) -> (bool, Option<&str>) {
+    match unit.strip_prefix('%').map(str::trim) {
+        None => (false, Some(unit)),
+        Some(behind) => (true, (!behind.is_empty()).then_some(behind)),
+    }
+}
+
 fn one_unit<'a>(
     inside: Option<&'a str>,
     outside: Option<&'a str>,
@@ -126,6 +138,9 @@ fn number_and_unit<'a>(piece: &'a str, text: &str) -> Result<(f64, Option<&'a st
     let end = number_end(piece);
     let (number, rest) = piece.split_at(end);
     refuse_decimal_comma(number, rest, text)?;
+    if rest.trim_start().starts_with(['×', '·', '*']) || rest.trim_start().starts_with("x ") {
+        return Err(refused(text, &format!("write a power of ten as `{number}e-3`")));
+    }
     let number: f64 = number.replace('−', "-").parse().map_err(|_| refused(text, &expected_number(piece)))?;
     if !number.is_finite() {
         return Err(refused(text, "the number is too large"));

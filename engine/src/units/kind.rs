@@ -28,7 +28,7 @@ pub enum Kind {
     MolarCompressibility,
     /// Mass per mole.
     MolarMass,
-    /// Interaction coefficient between ions: log units per molality.
+    /// Interaction coefficient between ions: log units per molality, so `kg/mol` means `kg(water)/mol`.
     InteractionCoefficient,
     /// Volume.
     Volume,
@@ -174,9 +174,7 @@ impl Kind {
             Self::MolarVolume => ("molar volume", &["cm3/mol", "mL/mol", "L/mol", "m3/mol"]),
             Self::MolarCompressibility => ("molar compressibility", &["cm3/(mol bar)", "cm3/(mol MPa)"]),
             Self::MolarMass => ("molar mass", &["g/mol", "kg/mol"]),
-            Self::InteractionCoefficient => {
-                ("interaction coefficient", &["kg/mol", "kg(water)/mol", "kg(solution)/mol", "L/mol"])
-            }
+            Self::InteractionCoefficient => ("interaction coefficient", &["kg/mol", "kg(water)/mol"]),
             Self::Volume => ("volume", &["L", "mL", "uL", "cm3", "m3"]),
             Self::Mass => ("mass", &["kg", "g", "mg", "ug", "kg(water)", "kg(solution)"]),
             Self::Density => ("density", &["kg/L", "g/mL", "g/cm3", "kg/m3", "g/L"]),

@@ -21,6 +21,9 @@ mod kind;
 mod parse;
 mod unit;
 
+#[cfg(test)]
+mod tests;
+
 pub use condition::{Pressure, Temperature};
 pub use dimension::{Base, Dimension, Exponent};
 pub use error::UnitError;

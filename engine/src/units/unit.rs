@@ -251,15 +251,12 @@ impl Unit {
         Self { factors: gather(factors), expressed_as: self.expressed_as.clone() }.checked()
     }
 
-    /// Refuses exponents that no quantity has, long before their arithmetic could overflow.
+    /// Refuses exponents that no quantity has.
     fn checked(self) -> Result<Self, UnitError> {
-        let outgrown = |exponent: Exponent| {
-            *exponent.denom() > MAX_DENOMINATOR || exponent.numer().abs() > MAX_EXPONENT * exponent.denom()
-        };
-        match self.factors.iter().find(|factor| outgrown(factor.exponent)) {
-            Some(factor) => Err(UnitError::Power {
-                unit: factor.atom.symbol.to_owned(),
-                power: f64::from(*factor.exponent.numer()) / f64::from(*factor.exponent.denom()),
+        match self.factors.iter().find(|factor| !factor.is_plausible()) {
+            Some(Factor { atom, exponent }) => Err(UnitError::Power {
+                unit: atom.symbol.to_owned(),
+                power: f64::from(*exponent.numer()) / f64::from(*exponent.denom()),
             }),
             None => Ok(self),
         }
@@ -323,12 +320,16 @@ impl Unit {
 
     /// The size of this unit in the other, as a number times a power of ten.
     fn scale_to(&self, to: &Self) -> (f64, i32) {
-        let sizes =
-            self.factors.iter().map(|factor| (factor, 1)).chain(to.factors.iter().map(|factor| (factor, -1)));
-        sizes.fold((1.0, 0), |(mantissa, power_of_ten), (factor, sign)| {
-            let (m, p) = factor.size(sign);
-            (mantissa * m, power_of_ten + p)
-        })
+        let ((above, power_above), (below, power_below)) = (self.size(), to.size());
+        (above / below, power_above - power_below)
+    }
+
+    /// The size in SI base units. Equal factors meet the same arithmetic, so that a ratio of equal sizes is exactly 1.
+    fn size(&self) -> (f64, i32) {
+        self.factors
+            .iter()
+            .map(Factor::size)
+            .fold((1.0, 0), |(mantissa, power_of_ten), (m, p)| (mantissa * m, power_of_ten + p))
     }
 }
 
@@ -345,15 +346,19 @@ impl Factor {
         self.atom.symbol == other.atom.symbol
     }
 
-    /// Size in SI base units, or its inverse for `sign` -1.
-    fn size(&self, sign: i32) -> (f64, i32) {
-        let exponent = self.exponent * sign;
-        if exponent.is_integer() {
-            let power = *exponent.numer();
+    fn size(&self) -> (f64, i32) {
+        if self.exponent.is_integer() {
+            let power = *self.exponent.numer();
             return (self.atom.mantissa.powi(power), self.atom.power_of_ten * power);
         }
-        let power = f64::from(*exponent.numer()) / f64::from(*exponent.denom());
+        let power = f64::from(*self.exponent.numer()) / f64::from(*self.exponent.denom());
         (self.atom.mantissa.powf(power) * 10f64.powf(f64::from(self.atom.power_of_ten) * power), 0)
+    }
+
+    /// Whether the exponent is one that some quantity has; the bounds keep its arithmetic from overflowing.
+    pub fn is_plausible(&self) -> bool {
+        let (numerator, denominator) = (self.exponent.numer().abs(), *self.exponent.denom());
+        denominator <= MAX_DENOMINATOR && numerator <= MAX_EXPONENT * denominator
     }
 
     /// The atom with its power, as written on its side of the fraction line.
