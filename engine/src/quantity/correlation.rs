@@ -75,14 +75,33 @@ pub fn correlation(a: &Quantity, b: &Quantity) -> Result<Option<f64>, QuantityEr
 ///
 /// The order in which inputs came into being leaves no trace.
 pub(super) fn covariance(a: &Quantity, b: &Quantity, table: &Correlations) -> f64 {
-    let deviations_b: BTreeMap<&Key, f64> = deviations(b).collect();
-    let mut terms = Vec::new();
-    for (key_a, deviation_a) in deviations(a) {
-        terms.extend(deviations_b.get(key_a).map(|deviation_b| deviation_a * deviation_b));
-        let correlated = table.partners(key_a).filter_map(|(key_b, r)| Some((deviations_b.get(key_b)?, r)));
-        terms.extend(correlated.map(|(deviation_b, r)| r * deviation_a * deviation_b));
+    let mut terms = shared_terms(a, b);
+    if table.0.is_some() {
+        terms.extend(declared_terms(a, b, table));
     }
     sum_by_size(terms)
+}
+
+/// The terms of the inputs that both depend on. Parts are sorted by input, so one walk along both finds them.
+fn shared_terms(a: &Quantity, b: &Quantity) -> Vec<f64> {
+    let mut deviations_b = deviations(b).peekable();
+    let term = |(key, deviation): (&Key, f64)| {
+        while deviations_b.next_if(|(other, _)| *other < key).is_some() {}
+        let (_, other) = deviations_b.next_if(|(other, _)| *other == key)?;
+        Some(deviation * other)
+    };
+    deviations(a).filter_map(term).collect()
+}
+
+/// The terms of different inputs declared to be correlated.
+fn declared_terms(a: &Quantity, b: &Quantity, table: &Correlations) -> Vec<f64> {
+    let deviations_b: BTreeMap<&Key, f64> = deviations(b).collect();
+    let mut terms = Vec::new();
+    for (key, deviation) in deviations(a) {
+        let partners = table.partners(key).filter_map(|(partner, r)| Some(r * deviations_b.get(partner)?));
+        terms.extend(partners.map(|other| deviation * other));
+    }
+    terms
 }
 
 /// The sum in one order whatever the order given, so that it is the same to the last bit.
@@ -137,6 +156,9 @@ impl Correlations {
         if both.len() == one.len() {
             return Ok(self.clone());
         }
+        if both.len() == two.len() {
+            return Ok(other.clone());
+        }
         let union = Self(Some(Arc::new(both)));
         union.check_possible()?;
         Ok(union)
@@ -149,9 +171,9 @@ impl Correlations {
 
     /// The inputs correlated with one, each with its coefficient.
     pub fn partners<'a>(&'a self, key: &'a Key) -> impl Iterator<Item = (&'a Key, f64)> {
-        let lowest = (key.clone(), Key::Named(String::new()));
         self.0.iter().flat_map(move |table| {
-            table.range(lowest.clone()..).take_while(move |((a, _), _)| a == key).map(|((_, b), r)| (b, *r))
+            let lowest = (key.clone(), Key::Named(String::new()));
+            table.range(lowest..).take_while(move |((a, _), _)| a == key).map(|((_, b), r)| (b, *r))
         })
     }
 

@@ -42,7 +42,8 @@ impl Input {
         Self::new(Key::Written(N_WRITTEN.fetch_add(1, atomic::Ordering::Relaxed)), label, sigma)
     }
 
-    /// The input with this name, the same each time it is made.
+    /// The input with this name, the same each time it is made. The name has to stand for one published value, so it
+    /// says which edition or source, too.
     ///
     /// # Errors
     ///

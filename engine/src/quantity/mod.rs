@@ -204,7 +204,31 @@ impl Quantity {
     ///
     /// As [`Quantity::to`].
     pub fn given_in(&self, unit: &Unit) -> Result<Self, QuantityError> {
-        if self.unit == Unit::one() { Ok(Self { unit: unit.clone(), ..self.clone() }) } else { self.to(unit) }
+        if self.unit.is_dimensionless() {
+            Ok(Self { unit: unit.clone(), ..self.to(&Unit::one())? })
+        } else {
+            self.to(unit)
+        }
+    }
+
+    /// The same value as a published one: the input of this name, wherever it is read. See [`Input::named`].
+    ///
+    /// # Errors
+    ///
+    /// [`QuantityError::Sigma`] when the uncertainty has outgrown what a number can hold.
+    pub fn published_as(&self, name: &str, label: &str) -> Result<Self, QuantityError> {
+        Ok(Self::of_input(self.value, self.unit.clone(), Input::named(name, label, self.sigma())?))
+    }
+
+    /// The value with every input moved by `z` of its standard uncertainties, to first order: one random draw when `z`
+    /// gives a standard normal number for each input. Inputs that state no uncertainty stay.
+    #[must_use]
+    pub fn value_moved(&self, z: impl Fn(&Input) -> f64) -> f64 {
+        let moves = self
+            .parts
+            .iter()
+            .filter_map(|part| Some(part.sensitivity * part.input.sigma()? * z(&part.input)));
+        self.value + correlation::sum_by_size(moves.collect())
     }
 
     /// The same quantity with every bare `/kg` made plain; see [`Unit::per_kg_of`].

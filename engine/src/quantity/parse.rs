@@ -37,7 +37,7 @@ fn read(
     let written = Written::split(text)?;
     let unit = written.unit.map_or(Ok(default_unit.clone()), parse_unit)?;
     let sigma = match &written.sigma {
-        Some(sigma) => Some(sigma.in_unit(written.value, &unit)?),
+        Some(sigma) => Some(sigma.in_unit(written.value, &unit, text)?),
         None => None,
     };
     Quantity::measured(written.value, unit, sigma, label)
@@ -89,15 +89,19 @@ impl<'a> Written<'a> {
 
 impl WrittenSigma<'_> {
     /// The uncertainty in the unit of the value.
-    fn in_unit(&self, value: f64, unit: &Unit) -> Result<f64, QuantityError> {
+    fn in_unit(&self, value: f64, unit: &Unit, text: &str) -> Result<f64, QuantityError> {
         match self.unit {
             None => Ok(self.number),
-            Some("%") => {
-                let absolute = unit.counted_from_absolute_zero();
-                let from_zero = unit.convert(value, &absolute)?;
-                Ok(self.number / 100.0 * from_zero.abs() * absolute.interval_in(unit)?)
+            Some("%") if unit.has_own_zero() => {
+                let reason = format!("a percentage of `{unit}` is unclear; write, say, `+/- 0.2 {unit}`");
+                Err(refused(text, &reason))
             }
-            Some(symbol) => Ok(self.number * Unit::parse(symbol)?.interval_in(unit)?),
+            Some("%") => Ok(self.number / 100.0 * value.abs()),
+            Some(symbol) => {
+                let own = Unit::parse(symbol)?;
+                let substance = own.expressed_as().or(unit.expressed_as());
+                Ok(self.number * own.with_expressed_as(substance).interval_in(unit)?)
+            }
         }
     }
 }
@@ -112,7 +116,7 @@ fn split_brackets(text: &str) -> Result<(&str, Option<&str>), QuantityError> {
 }
 
 fn split_sigma(text: &str) -> Option<(&str, &str)> {
-    ["+/-", "±", "+-"].iter().find_map(|sign| text.split_once(sign)).map(|(l, r)| (l.trim(), r.trim()))
+    ["+/-", "±"].iter().find_map(|sign| text.split_once(sign)).map(|(l, r)| (l.trim(), r.trim()))
 }
 
 /// Whether a text begins with `%`, and the unit behind it.

@@ -38,7 +38,7 @@ fn reads() {
     case("2.35", Kind::Alkalinity, "2.35 eq/kg", 2.35, None);
     case("(5 +/- 0.2) %", Kind::Fraction, "5.0 +/- 0.2 %", 5.0, Some(0.2));
     case("8.5 degC +/- 0.1 K", Kind::Temperature, "8.5 +/- 0.1 degC", 8.5, Some(0.1));
-    case("25 degC +/- 1 %", Kind::Temperature, "25 +/- 3 degC", 25.0, Some(2.9815));
+    case("2 mg/L as NH4^+-N ± 0.5 mg/L", Kind::Amount, "2.0 +/- 0.5 mg/L as NH4^+-N", 2.0, Some(0.5));
     case("7", Kind::Temperature, "7 degC", 7.0, None);
 }
 
@@ -54,6 +54,11 @@ fn refuses() {
     case("41.2 +/- -0.8 mg/L", Kind::Amount, "standard uncertainty of `x` is -0.8");
     case("8.15 +/- 2 %", Kind::Fraction, "the `%` may belong to the value or not");
     case("5 % +/- 2 %", Kind::Fraction, "the `%` may belong to the value or not");
+    case(
+        "25 degC +/- 1 %",
+        Kind::Temperature,
+        "a percentage of `degC` is unclear; write, say, `+/- 0.2 degC`",
+    );
     case("41.2 mg/L +/- 0.8 degC", Kind::Amount, "cannot be turned into `mg/L`");
     case("(41.2 mg/L +/- 0.8) mg/L", Kind::Amount, "two units");
     case("(41.2 +/- 0.8 mg/L", Kind::Amount, "a `)` is missing");
@@ -285,6 +290,31 @@ fn declared_correlation() -> Result<(), QuantityError> {
     assert_eq!(correlation(&all[0], &all[2])?, Some(0.9));
     assert!((&all[2] + &ab[0]).is_ok());
     assert!(matches!(&ab[0] + &pair[0], Err(QuantityError::AlreadyCorrelated { .. })));
+    Ok(())
+}
+
+#[test]
+fn published_values_and_draws() -> Result<(), QuantityError> {
+    let read =
+        || Quantity::parse("-6.352 +/- 0.01", Kind::Fraction, "line 3")?.published_as("K1, edition 2", "K1");
+    let (one, again) = (read()?, read()?);
+    assert_eq!((&one - &again)?.sigma(), Some(0.0));
+    assert_eq!(one.budget().rows[0].label, "K1");
+    let twice = (&one * 2.0)?;
+    assert_eq!(twice.value_moved(|_| 1.5), -12.704 + 0.03);
+    assert_eq!(amount("3 mmol/L").value_moved(|_| 1.5), 3.0);
+    // Of two copies of one input, the one that states its uncertainty counts.
+    let silent = Quantity::of_input(-6.352, Unit::one(), Input::named("K1, edition 2", "K1", None)?);
+    assert_eq!((&silent + &one)?.sigma(), Some(0.02));
+    Ok(())
+}
+
+#[test]
+fn numbers_get_units() -> Result<(), QuantityError> {
+    let ratio = (amount("2.0 +/- 0.1 mg/L") / amount("4 mg/L"))?;
+    assert_eq!(ratio.given_in(&unit("mol/kg"))?.display(Style::Ascii), "0.500 +/- 0.025 mol/kg");
+    assert_eq!(Quantity::exact(50.0, unit("%")).given_in(&unit("bar"))?.display(Style::Ascii), "0.5 bar");
+    assert_eq!(amount("2 mg/L").given_in(&unit("g/L"))?.display(Style::Ascii), "0.002 g/L");
     Ok(())
 }
 

@@ -1,6 +1,8 @@
 //! The kinds of value a person gives, each with its default unit and the units it may be given in.
 
-use super::{Unit, UnitError};
+use std::sync::LazyLock;
+
+use super::{Dimension, Unit, UnitError};
 use crate::nearest::nearest;
 
 /// What is being measured.
@@ -117,8 +119,7 @@ impl Kind {
     /// By dimension, so that units not listed (`mmol/m3`) pass too.
     #[must_use]
     pub fn accepts(self, unit: &Unit) -> bool {
-        let dimension = unit.dimension();
-        self.units().iter().any(|listed| Unit::known(listed).dimension() == dimension)
+        ACCEPTED[self as usize].contains(&unit.dimension())
             && (unit.expressed_as().is_none() || self.is_of_a_substance())
     }
 
@@ -186,6 +187,19 @@ impl Kind {
         }
     }
 }
+
+/// The dimensions of the listed units, by position in [`Kind::ALL`]: worked out once, since surveys ask for every cell.
+static ACCEPTED: LazyLock<[Vec<Dimension>; Kind::ALL.len()]> = LazyLock::new(|| {
+    Kind::ALL.map(|kind| {
+        let mut dimensions: Vec<Dimension> = Vec::new();
+        for dimension in kind.units().iter().map(|listed| Unit::known(listed).dimension()) {
+            if !dimensions.contains(&dimension) {
+                dimensions.push(dimension);
+            }
+        }
+        dimensions
+    })
+});
 
 const AMOUNT: &[&str] = &[
     "mol/kg",

@@ -15,6 +15,7 @@
 
 mod atom;
 mod condition;
+mod convert;
 mod dimension;
 mod error;
 mod kind;

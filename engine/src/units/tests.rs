@@ -114,6 +114,7 @@ fn keeps_apart() {
     case("mg/L", "mol/L", "molar mass");
     case("PSU", "g/kg", "conductivity ratio");
     case("mg/L as N", "mg/L as NO3^-", "different substances");
+    case("mg/L", "meq/L", "molar mass");
     case("mg/L", "degC", "different things");
 }
 
@@ -141,7 +142,8 @@ fn styles() {
 
 #[test]
 fn every_listed_unit_reads_and_belongs() {
-    for kind in Kind::ALL {
+    for (position, kind) in Kind::ALL.into_iter().enumerate() {
+        assert_eq!(kind as usize, position);
         for listed in kind.units() {
             let read = unit(listed);
             assert_eq!(read.symbol(), *listed);
@@ -166,6 +168,8 @@ fn kinds() {
         message.starts_with("unknown kind of unit `temprature` (did you mean `temperature`?)"),
         "{message}"
     );
+    let message = Kind::Salinity.parse_unit("PPU").unwrap_err().to_string();
+    assert!(message.contains("did you mean `PSU`?"), "{message}");
     let message = Kind::Pressure.parse_unit("atmm").unwrap_err().to_string();
     assert!(message.contains("`atm`") && message.contains("units of pressure: bar, mbar"), "{message}");
 }
