@@ -144,6 +144,9 @@ impl Neg for Quantity {
 
 /// The value of a quantity in a unit of exactly the same dimension and substance.
 pub(super) fn value_in(quantity: &Quantity, unit: &Unit) -> Option<f64> {
+    if quantity.unit == *unit {
+        return Some(quantity.value);
+    }
     let alike =
         quantity.unit.dimension() == unit.dimension() && quantity.unit.expressed_as() == unit.expressed_as();
     alike.then(|| quantity.unit.convert(quantity.value, unit).ok()).flatten()

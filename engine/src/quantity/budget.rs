@@ -1,6 +1,6 @@
 //! Where the uncertainty of a quantity comes from.
 
-use super::correlation::deviations;
+use super::correlation::{covariance, deviations, sum_by_size};
 use super::{Part, Quantity};
 
 /// The shares of the variance by input.
@@ -56,7 +56,7 @@ fn rows(quantity: &Quantity) -> Vec<BudgetRow> {
         .iter()
         .filter_map(|part| Some((part, part.input.sigma()?, covariance_with(quantity, part)?)))
         .collect();
-    let variance: f64 = covariances.iter().map(|(_, _, covariance)| covariance).sum();
+    let variance = covariance(quantity, quantity, &quantity.correlations);
     let mut rows: Vec<BudgetRow> = covariances
         .into_iter()
         .map(|(part, sigma, covariance)| BudgetRow {
@@ -74,12 +74,12 @@ fn rows(quantity: &Quantity) -> Vec<BudgetRow> {
 /// What one input brings to the variance: its own square, and half of each cross term it takes part in.
 fn covariance_with(quantity: &Quantity, part: &Part) -> Option<f64> {
     let deviation = part.sensitivity * part.input.sigma()?;
-    let partners: f64 = quantity
+    let partners = quantity
         .correlations
         .partners(part.input.key())
         .filter_map(|(key, r)| Some(r * deviations(quantity).find(|(other, _)| *other == key)?.1))
-        .sum();
-    Some(deviation * (deviation + partners))
+        .collect();
+    Some(deviation * (deviation + sum_by_size(partners)))
 }
 
 fn unstated(quantity: &Quantity) -> Vec<UnstatedInput> {

@@ -73,15 +73,39 @@ pub fn correlation(a: &Quantity, b: &Quantity) -> Result<Option<f64>, QuantityEr
 
 /// The covariance of two quantities, over the inputs that state their uncertainty.
 ///
-/// The terms are added in order of size, so that the order in which inputs came into being leaves no trace.
+/// The order in which inputs came into being leaves no trace.
 pub(super) fn covariance(a: &Quantity, b: &Quantity, table: &Correlations) -> f64 {
+    let mut terms = shared_terms(a, b);
+    if table.0.is_some() {
+        terms.extend(declared_terms(a, b, table));
+    }
+    sum_by_size(terms)
+}
+
+/// The terms of the inputs that both depend on. Parts are sorted by input, so one walk along both finds them.
+fn shared_terms(a: &Quantity, b: &Quantity) -> Vec<f64> {
+    let mut deviations_b = deviations(b).peekable();
+    let term = |(key, deviation): (&Key, f64)| {
+        while deviations_b.next_if(|(other, _)| *other < key).is_some() {}
+        let (_, other) = deviations_b.next_if(|(other, _)| *other == key)?;
+        Some(deviation * other)
+    };
+    deviations(a).filter_map(term).collect()
+}
+
+/// The terms of different inputs declared to be correlated.
+fn declared_terms(a: &Quantity, b: &Quantity, table: &Correlations) -> Vec<f64> {
     let deviations_b: BTreeMap<&Key, f64> = deviations(b).collect();
     let mut terms = Vec::new();
-    for (key_a, deviation_a) in deviations(a) {
-        terms.extend(deviations_b.get(key_a).map(|deviation_b| deviation_a * deviation_b));
-        let correlated = table.partners(key_a).filter_map(|(key_b, r)| Some((deviations_b.get(key_b)?, r)));
-        terms.extend(correlated.map(|(deviation_b, r)| r * deviation_a * deviation_b));
+    for (key, deviation) in deviations(a) {
+        let partners = table.partners(key).filter_map(|(partner, r)| Some(r * deviations_b.get(partner)?));
+        terms.extend(partners.map(|other| deviation * other));
     }
+    terms
+}
+
+/// The sum in one order whatever the order given, so that it is the same to the last bit.
+pub(super) fn sum_by_size(mut terms: Vec<f64>) -> f64 {
     terms.sort_by(f64::total_cmp);
     terms.iter().sum()
 }
@@ -132,26 +156,31 @@ impl Correlations {
         if both.len() == one.len() {
             return Ok(self.clone());
         }
+        if both.len() == two.len() {
+            return Ok(other.clone());
+        }
         let union = Self(Some(Arc::new(both)));
         union.check_possible()?;
         Ok(union)
     }
 
+    /// The coefficient declared for two different inputs, 0 where none was.
+    pub fn coefficient(&self, a: &Key, b: &Key) -> f64 {
+        self.0.as_ref().and_then(|table| table.get(&(a.clone(), b.clone()))).copied().unwrap_or(0.0)
+    }
+
     /// The inputs correlated with one, each with its coefficient.
     pub fn partners<'a>(&'a self, key: &'a Key) -> impl Iterator<Item = (&'a Key, f64)> {
-        let lowest = (key.clone(), Key::Named(String::new()));
         self.0.iter().flat_map(move |table| {
-            table.range(lowest.clone()..).take_while(move |((a, _), _)| a == key).map(|((_, b), r)| (b, *r))
+            let lowest = (key.clone(), Key::Named(String::new()));
+            table.range(lowest..).take_while(move |((a, _), _)| a == key).map(|((_, b), r)| (b, *r))
         })
     }
 
     fn check_possible(&self) -> Result<(), QuantityError> {
         let Some(table) = &self.0 else { return Ok(()) };
         let keys: BTreeSet<&Key> = table.keys().map(|(a, _)| a).collect();
-        let coefficient = |a: &Key, b: &Key| match a == b {
-            true => 1.0,
-            false => table.get(&(a.clone(), b.clone())).copied().unwrap_or(0.0),
-        };
+        let coefficient = |a: &Key, b: &Key| if a == b { 1.0 } else { self.coefficient(a, b) };
         let matrix = keys.iter().map(|a| keys.iter().map(|b| coefficient(a, b)).collect()).collect();
         if is_positive_semidefinite(matrix) { Ok(()) } else { Err(QuantityError::Impossible) }
     }

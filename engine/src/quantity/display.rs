@@ -36,7 +36,7 @@ fn plain(value: f64) -> String {
     if PLAIN_EXPONENTS.contains(&exponent) {
         trim_zeros(&fixed(value, N_DIGITS - 1 - exponent)).to_owned()
     } else {
-        let mantissa = scale_down(value, exponent);
+        let mantissa = shifted(value, -exponent);
         format!("{}e{exponent}", trim_zeros(&fixed(mantissa, N_DIGITS - 1)))
     }
 }
@@ -48,22 +48,30 @@ fn with_sigma(value: f64, sigma: f64, style: Style) -> String {
     };
     let last_digit = exponent_of(sigma, 2) - 1;
     let leading = exponent_of(value, N_DIGITS).max(last_digit + 1);
-    let is_plain = PLAIN_EXPONENTS.contains(&leading) && last_digit <= 0;
-    let exponent = if is_plain { 0 } else { leading };
-    let decimals = exponent - last_digit;
-    let (mut value, mut sigma) =
-        (fixed(scale_down(value, exponent), decimals), fixed(scale_down(sigma, exponent), decimals));
-    // 41.20 ± 0.80 says no more than 41.2 ± 0.8.
+    if value != 0.0 && leading - last_digit > MAX_DIGITS {
+        return format!("{} {sign} {}", plain(value), plain(sigma));
+    }
+    let exponent = if PLAIN_EXPONENTS.contains(&leading) { 0 } else { leading };
+    let (value, sigma) = without_shared_zero(
+        rounded(shifted(value, -exponent), last_digit - exponent),
+        rounded(shifted(sigma, -exponent), last_digit - exponent),
+    );
+    match exponent {
+        0 => format!("{value} {sign} {sigma}"),
+        _ => format!("{value}e{exponent} {sign} {sigma}e{exponent}"),
+    }
+}
+
+/// More digits than a double carries are noise.
+const MAX_DIGITS: i32 = 15;
+
+/// 41.20 ± 0.80 says no more than 41.2 ± 0.8.
+fn without_shared_zero(mut value: String, mut sigma: String) -> (String, String) {
     if value.contains('.') && value.ends_with('0') && sigma.ends_with('0') {
         value.pop();
         sigma.pop();
     }
-    let (value, sigma) = (value.trim_end_matches('.'), sigma.trim_end_matches('.'));
-    if is_plain {
-        format!("{value} {sign} {sigma}")
-    } else {
-        format!("{value}e{exponent} {sign} {sigma}e{exponent}")
-    }
+    (value.trim_end_matches('.').to_owned(), sigma.trim_end_matches('.').to_owned())
 }
 
 /// The decimal exponent of a number once rounded to so many digits: 0.0996 to two digits is 0.10, so -1.
@@ -72,20 +80,29 @@ fn exponent_of(number: f64, n_digits: i32) -> i32 {
     written.split_once('e').and_then(|(_, exponent)| exponent.parse().ok()).unwrap_or(0)
 }
 
-/// Through decimal text, so that no digit is spoilt.
-fn scale_down(number: f64, exponent: i32) -> f64 {
+/// The number times ten to a power, through decimal text so that no digit is spoilt.
+fn shifted(number: f64, power: i32) -> f64 {
     let written = format!("{number:e}");
-    match written.split_once('e') {
-        Some((mantissa, power)) => {
-            let power = power.parse::<i32>().unwrap_or(0) - exponent;
-            format!("{mantissa}e{power}").parse().unwrap_or(number)
-        }
-        None => number,
+    let shifted = written.split_once('e').and_then(|(mantissa, exponent)| {
+        format!("{mantissa}e{}", exponent.parse::<i32>().ok()? + power).parse().ok()
+    });
+    shifted.unwrap_or(number)
+}
+
+/// Written without exponent, up to the digit that stands for ten to `last_digit`: 52345 to the hundreds is 52300.
+fn rounded(number: f64, last_digit: i32) -> String {
+    if last_digit > 0 {
+        return fixed(shifted(shifted(number, -last_digit).round(), last_digit), 0);
     }
+    fixed(number, -last_digit)
 }
 
 fn fixed(number: f64, decimals: i32) -> String {
-    format!("{:.*}", usize::try_from(decimals).unwrap_or(0), number)
+    let written = format!("{:.*}", usize::try_from(decimals).unwrap_or(0), number);
+    match written.strip_prefix('-') {
+        Some(zero) if zero.chars().all(|c| c == '0' || c == '.') => zero.to_owned(),
+        _ => written,
+    }
 }
 
 fn trim_zeros(number: &str) -> &str {

@@ -1,6 +1,7 @@
 //! The independent inputs that uncertainty comes from.
 
 use std::cmp::Ordering;
+use std::hash::{Hash, Hasher};
 use std::sync::Arc;
 use std::sync::atomic::{self, AtomicU64};
 
@@ -41,7 +42,8 @@ impl Input {
         Self::new(Key::Written(N_WRITTEN.fetch_add(1, atomic::Ordering::Relaxed)), label, sigma)
     }
 
-    /// The input with this name, the same each time it is made.
+    /// The input with this name, the same each time it is made. The name has to stand for one published value, so it
+    /// says which edition or source, too.
     ///
     /// # Errors
     ///
@@ -97,6 +99,12 @@ impl PartialEq for Input {
 }
 
 impl Eq for Input {}
+
+impl Hash for Input {
+    fn hash<H: Hasher>(&self, state: &mut H) {
+        self.0.key.hash(state);
+    }
+}
 
 impl PartialOrd for Input {
     fn partial_cmp(&self, other: &Self) -> Option<Ordering> {

@@ -22,7 +22,7 @@
 use std::cmp::Ordering;
 use std::sync::Arc;
 
-use crate::units::{Style, Unit};
+use crate::units::{KgOf, Pressure, Style, Temperature, Unit};
 
 mod arithmetic;
 mod budget;
@@ -34,6 +34,8 @@ mod parse;
 
 #[cfg(test)]
 mod gum_examples;
+#[cfg(test)]
+mod propagation_tests;
 #[cfg(test)]
 mod tests;
 
@@ -210,7 +212,43 @@ impl Quantity {
     ///
     /// As [`Quantity::to`].
     pub fn given_in(&self, unit: &Unit) -> Result<Self, QuantityError> {
-        if self.unit == Unit::one() { Ok(Self { unit: unit.clone(), ..self.clone() }) } else { self.to(unit) }
+        if self.unit.is_dimensionless() {
+            Ok(Self { unit: unit.clone(), ..self.to(&Unit::one())? })
+        } else {
+            self.to(unit)
+        }
+    }
+
+    /// The same value as a published one: the input of this name, wherever it is read. See [`Input::named`].
+    ///
+    /// # Errors
+    ///
+    /// [`QuantityError::Sigma`] when the uncertainty has outgrown what a number can hold.
+    pub fn published_as(&self, name: &str, label: &str) -> Result<Self, QuantityError> {
+        Ok(Self::of_input(self.value, self.unit.clone(), Input::named(name, label, self.sigma())?))
+    }
+
+    /// The value with every input moved by `z` of its standard uncertainties, to first order: one random draw when `z`
+    /// gives a standard normal number for each input. Inputs that state no uncertainty stay.
+    #[must_use]
+    pub fn value_moved(&self, z: impl Fn(&Input) -> f64) -> f64 {
+        let moves = self
+            .parts
+            .iter()
+            .filter_map(|part| Some(part.sensitivity * part.input.sigma()? * z(&part.input)));
+        self.value + correlation::sum_by_size(moves.collect())
+    }
+
+    /// The same quantity with every bare `/kg` made plain; see [`Unit::per_kg_of`].
+    #[must_use]
+    pub fn per_kg_of(&self, what: KgOf) -> Self {
+        Self { unit: self.unit.per_kg_of(what), ..self.clone() }
+    }
+
+    /// The correlation coefficient declared for two of the inputs; 0 where none was, 1 for an input and itself.
+    #[must_use]
+    pub fn input_correlation(&self, a: &Input, b: &Input) -> f64 {
+        if a == b { 1.0 } else { self.correlations.coefficient(a.key(), b.key()) }
     }
 
     /// Which of two quantities is larger, by value alone; units of the same dimension are converted.
@@ -241,6 +279,24 @@ impl Quantity {
 impl From<f64> for Quantity {
     fn from(value: f64) -> Self {
         Self::exact(value, Unit::one())
+    }
+}
+
+impl TryFrom<&Quantity> for Temperature {
+    type Error = QuantityError;
+
+    /// The value alone, without its uncertainty.
+    fn try_from(quantity: &Quantity) -> Result<Self, QuantityError> {
+        Ok(Self::from_kelvin(quantity.to(&Unit::known("K"))?.value)?)
+    }
+}
+
+impl TryFrom<&Quantity> for Pressure {
+    type Error = QuantityError;
+
+    /// The value alone, without its uncertainty.
+    fn try_from(quantity: &Quantity) -> Result<Self, QuantityError> {
+        Ok(Self::from_bar(quantity.to(&Unit::known("bar"))?.value)?)
     }
 }
 

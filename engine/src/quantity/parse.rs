@@ -37,7 +37,7 @@ fn read(
     let written = Written::split(text)?;
     let unit = written.unit.map_or(Ok(default_unit.clone()), parse_unit)?;
     let sigma = match &written.sigma {
-        Some(sigma) => Some(sigma.in_unit(written.value, &unit)?),
+        Some(sigma) => Some(sigma.in_unit(written.value, &unit, text)?),
         None => None,
     };
     Quantity::measured(written.value, unit, sigma, label)
@@ -66,34 +66,42 @@ impl<'a> Written<'a> {
         let (value, unit) = number_and_unit(left, text)?;
         let (number, sigma_unit) = number_and_unit(right, text)?;
         let sigma = |unit| Some(WrittenSigma { number, unit });
-        if unit_outside.is_none() && sigma_unit == Some("%") && matches!(unit, None | Some("%")) {
-            return Err(refused(
+        match (unit, sigma_unit.map(percent_first)) {
+            (None | Some("%"), Some((true, None))) if unit_outside.is_none() => Err(refused(
                 text,
-                "the `%` may mean two things; write `(5.0 +/- 0.2) %` or `5.0 +/- 0.2`",
-            ));
+                "the `%` may belong to the value or not; write `(5.0 +/- 0.2) %` or `5.0 +/- 0.2`",
+            )),
+            // 41.2 +/- 2 % mg/L, (41.2 +/- 2 %) mg/L
+            (None, Some((true, behind))) => {
+                Ok(Self { value, unit: one_unit(behind, unit_outside, text)?, sigma: sigma(Some("%")) })
+            }
+            // 41.2 +/- 0.8 mg/L, (41.2 +/- 0.8) mg/L
+            (None, _) => {
+                Ok(Self { value, unit: one_unit(sigma_unit, unit_outside, text)?, sigma: sigma(None) })
+            }
+            // 41.2 mg/L +/- 0.8, 41.2 mg/L +/- 2 %, 41.2 mg/L +/- 800 ug/L
+            (Some(_), _) => {
+                Ok(Self { value, unit: one_unit(unit, unit_outside, text)?, sigma: sigma(sigma_unit) })
+            }
         }
-        if unit_outside.is_some() {
-            let unit = one_unit(unit.or(sigma_unit), unit_outside, text)?;
-            return Ok(Self { value, unit, sigma: sigma(None) });
-        }
-        Ok(match unit {
-            Some(_) => Self { value, unit, sigma: sigma(sigma_unit) },
-            None => Self { value, unit: sigma_unit, sigma: sigma(None) },
-        })
     }
 }
 
 impl WrittenSigma<'_> {
     /// The uncertainty in the unit of the value.
-    fn in_unit(&self, value: f64, unit: &Unit) -> Result<f64, QuantityError> {
+    fn in_unit(&self, value: f64, unit: &Unit, text: &str) -> Result<f64, QuantityError> {
         match self.unit {
             None => Ok(self.number),
-            Some("%") => {
-                let absolute = unit.counted_from_absolute_zero();
-                let from_zero = unit.convert(value, &absolute)?;
-                Ok(self.number / 100.0 * from_zero.abs() * absolute.interval_in(unit)?)
+            Some("%") if unit.has_own_zero() => {
+                let reason = format!("a percentage of `{unit}` is unclear; write, say, `+/- 0.2 {unit}`");
+                Err(refused(text, &reason))
             }
-            Some(symbol) => Ok(self.number * Unit::parse(symbol)?.interval_in(unit)?),
+            Some("%") => Ok(self.number / 100.0 * value.abs()),
+            Some(symbol) => {
+                let own = Unit::parse(symbol)?;
+                let substance = own.expressed_as().or(unit.expressed_as());
+                Ok(self.number * own.with_expressed_as(substance).interval_in(unit)?)
+            }
         }
     }
 }
@@ -108,7 +116,15 @@ fn split_brackets(text: &str) -> Result<(&str, Option<&str>), QuantityError> {
 }
 
 fn split_sigma(text: &str) -> Option<(&str, &str)> {
-    ["+/-", "±", "+-"].iter().find_map(|sign| text.split_once(sign)).map(|(l, r)| (l.trim(), r.trim()))
+    ["+/-", "±"].iter().find_map(|sign| text.split_once(sign)).map(|(l, r)| (l.trim(), r.trim()))
+}
+
+/// Whether a text begins with `%`, and the unit behind it.
+fn percent_first(unit: &str) -> (bool, Option<&str>) {
+    match unit.strip_prefix('%').map(str::trim) {
+        None => (false, Some(unit)),
+        Some(behind) => (true, (!behind.is_empty()).then_some(behind)),
+    }
 }
 
 fn one_unit<'a>(
@@ -126,6 +142,9 @@ fn number_and_unit<'a>(piece: &'a str, text: &str) -> Result<(f64, Option<&'a st
     let end = number_end(piece);
     let (number, rest) = piece.split_at(end);
     refuse_decimal_comma(number, rest, text)?;
+    if rest.trim_start().starts_with(['×', '·', '*']) || rest.trim_start().starts_with("x ") {
+        return Err(refused(text, &format!("write a power of ten as `{number}e-3`")));
+    }
     let number: f64 = number.replace('−', "-").parse().map_err(|_| refused(text, &expected_number(piece)))?;
     if !number.is_finite() {
         return Err(refused(text, "the number is too large"));

@@ -12,6 +12,8 @@ impl Temperature {
     /// 25 degC, the reference temperature of most tables.
     pub const REFERENCE: Self = Self { kelvin: 298.15 };
 
+    /// From degrees Celsius.
+    ///
     /// # Errors
     ///
     /// [`UnitError::BelowAbsoluteZero`] below -273.15 degC or for a value that is no finite number.
@@ -19,6 +21,8 @@ impl Temperature {
         Self::from_kelvin(celsius + ZERO_CELSIUS)
     }
 
+    /// From kelvin.
+    ///
     /// # Errors
     ///
     /// [`UnitError::BelowAbsoluteZero`] below 0 K or for a value that is no finite number.
@@ -53,6 +57,8 @@ impl Pressure {
     /// One standard atmosphere, 1.01325 bar.
     pub const ATMOSPHERE: Self = Self { bar: BAR_PER_ATM };
 
+    /// From bar, absolute.
+    ///
     /// # Errors
     ///
     /// [`UnitError::NegativePressure`] below 0 bar or for a value that is no finite number.
@@ -64,6 +70,8 @@ impl Pressure {
         }
     }
 
+    /// From standard atmospheres, absolute.
+    ///
     /// # Errors
     ///
     /// As [`Pressure::from_bar`].
@@ -71,6 +79,8 @@ impl Pressure {
         Self::from_bar(atm * BAR_PER_ATM)
     }
 
+    /// From pascal, absolute.
+    ///
     /// # Errors
     ///
     /// As [`Pressure::from_bar`].

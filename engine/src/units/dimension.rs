@@ -1,6 +1,7 @@
 //! Dimensions as rational exponents over a few base quantities.
 
 use num_rational::Ratio;
+use num_traits::Zero;
 
 /// An exponent of a unit or dimension; rational, so that `kg^(1/2)` can be said exactly.
 pub type Exponent = Ratio<i32>;
@@ -59,7 +60,9 @@ impl Dimension {
     /// This dimension times `other` raised to `power`.
     #[must_use]
     pub fn times(&self, other: &Self, power: Exponent) -> Self {
-        Self(std::array::from_fn(|i| self.0[i] + other.0[i] * power))
+        // Most exponents are zero, and fractions are slow to add.
+        let sum = |i: usize| if other.0[i].is_zero() { self.0[i] } else { self.0[i] + other.0[i] * power };
+        Self(std::array::from_fn(sum))
     }
 
     /// The same with `from` counted as `into`, for conversions that the caller has allowed.

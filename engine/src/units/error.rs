@@ -1,6 +1,7 @@
 //! What can be wrong with a unit or a number given in one.
 
 use super::Kind;
+use crate::nearest;
 
 /// Why a unit was refused.
 #[derive(Clone, Debug, PartialEq, thiserror::Error)]
@@ -75,10 +76,14 @@ pub enum UnitError {
 }
 
 impl UnitError {
-    /// The same error, saying what kind was being asked for.
+    /// The same error, saying what kind was being asked for and suggesting a unit of that kind if one is near.
     pub(crate) fn asked_for(self, asked: Kind) -> Self {
         match self {
-            Self::Unknown { unit, nearest, .. } => Self::Unknown { unit, nearest, kind: Some(asked) },
+            Self::Unknown { unit, nearest, .. } => {
+                let of_that_kind = nearest::nearest(&unit, asked.units().iter().copied());
+                let nearest = of_that_kind.map(str::to_owned).or(nearest);
+                Self::Unknown { unit, nearest, kind: Some(asked) }
+            }
             other => other,
         }
     }

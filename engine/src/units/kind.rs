@@ -1,6 +1,8 @@
 //! The kinds of value a person gives, each with its default unit and the units it may be given in.
 
-use super::{Unit, UnitError};
+use std::sync::LazyLock;
+
+use super::{Dimension, Unit, UnitError};
 use crate::nearest::nearest;
 
 /// What is being measured.
@@ -28,7 +30,7 @@ pub enum Kind {
     MolarCompressibility,
     /// Mass per mole.
     MolarMass,
-    /// Interaction coefficient between ions: log units per molality.
+    /// Interaction coefficient between ions: log units per molality, so `kg/mol` means `kg(water)/mol`.
     InteractionCoefficient,
     /// Volume.
     Volume,
@@ -117,8 +119,7 @@ impl Kind {
     /// By dimension, so that units not listed (`mmol/m3`) pass too.
     #[must_use]
     pub fn accepts(self, unit: &Unit) -> bool {
-        let dimension = unit.dimension();
-        self.units().iter().any(|listed| Unit::known(listed).dimension() == dimension)
+        ACCEPTED[self as usize].contains(&unit.dimension())
             && (unit.expressed_as().is_none() || self.is_of_a_substance())
     }
 
@@ -174,9 +175,7 @@ impl Kind {
             Self::MolarVolume => ("molar volume", &["cm3/mol", "mL/mol", "L/mol", "m3/mol"]),
             Self::MolarCompressibility => ("molar compressibility", &["cm3/(mol bar)", "cm3/(mol MPa)"]),
             Self::MolarMass => ("molar mass", &["g/mol", "kg/mol"]),
-            Self::InteractionCoefficient => {
-                ("interaction coefficient", &["kg/mol", "kg(water)/mol", "kg(solution)/mol", "L/mol"])
-            }
+            Self::InteractionCoefficient => ("interaction coefficient", &["kg/mol", "kg(water)/mol"]),
             Self::Volume => ("volume", &["L", "mL", "uL", "cm3", "m3"]),
             Self::Mass => ("mass", &["kg", "g", "mg", "ug", "kg(water)", "kg(solution)"]),
             Self::Density => ("density", &["kg/L", "g/mL", "g/cm3", "kg/m3", "g/L"]),
@@ -188,6 +187,19 @@ impl Kind {
         }
     }
 }
+
+/// The dimensions of the listed units, by position in [`Kind::ALL`]: worked out once, since surveys ask for every cell.
+static ACCEPTED: LazyLock<[Vec<Dimension>; Kind::ALL.len()]> = LazyLock::new(|| {
+    Kind::ALL.map(|kind| {
+        let mut dimensions: Vec<Dimension> = Vec::new();
+        for dimension in kind.units().iter().map(|listed| Unit::known(listed).dimension()) {
+            if !dimensions.contains(&dimension) {
+                dimensions.push(dimension);
+            }
+        }
+        dimensions
+    })
+});
 
 const AMOUNT: &[&str] = &[
     "mol/kg",

@@ -15,11 +15,15 @@
 
 mod atom;
 mod condition;
+mod convert;
 mod dimension;
 mod error;
 mod kind;
 mod parse;
 mod unit;
+
+#[cfg(test)]
+mod tests;
 
 pub use condition::{Pressure, Temperature};
 pub use dimension::{Base, Dimension, Exponent};

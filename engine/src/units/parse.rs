@@ -20,13 +20,20 @@ pub(super) fn unit(text: &str) -> Result<Unit, UnitError> {
     if formula == Some("") {
         return Err(malformed(text, "name the substance after `as`, such as `mg/L as N`"));
     }
-    let mut reader = Reader { text, rest: unit };
+    if unit.len() > MAX_LENGTH {
+        return Err(malformed(&text.chars().take(20).collect::<String>(), "no unit is that long"));
+    }
+    let mut reader = Reader { text, rest: unit, depth: 0 };
     let factors = reader.unit()?;
     if !reader.rest.is_empty() {
         return Err(malformed(text, &format!("`{}` is left over", reader.rest)));
     }
     Unit::of(factors, formula)
 }
+
+/// Bounds the work and the nesting that one text can ask for.
+const MAX_LENGTH: usize = 100;
+const MAX_DEPTH: usize = 4;
 
 /// Splits `mg/L as NO3^-` at the word `as`.
 fn split_formula(text: &str) -> (&str, Option<&str>) {
@@ -42,6 +49,7 @@ fn split_formula(text: &str) -> (&str, Option<&str>) {
 struct Reader<'a> {
     text: &'a str,
     rest: &'a str,
+    depth: usize,
 }
 
 impl Reader<'_> {
@@ -56,24 +64,33 @@ impl Reader<'_> {
             divided = true;
         }
         if divided && self.at_product() {
-            return Err(malformed(self.text, "after `/` put a product in brackets, such as `J/(mol K)`"));
+            let reason = "after `/` a product takes brackets, such as `J/(mol K)`, and a substance takes `as`, such as `mg/L as N`";
+            return Err(malformed(self.text, reason));
         }
         Ok(factors)
     }
 
     fn factor(&mut self) -> Result<Vec<Factor>, UnitError> {
         self.rest = self.rest.trim_start();
-        let factors = if self.take("(") {
-            let inner = self.unit()?;
-            if !self.take(")") {
-                return Err(malformed(self.text, "a `)` is missing"));
-            }
-            inner
-        } else {
-            vec![self.atom()?]
-        };
+        let factors = if self.take("(") { self.bracket()? } else { vec![self.atom()?] };
         let power = self.power()?;
-        Ok(factors.into_iter().map(|factor| Factor { exponent: factor.exponent * power, ..factor }).collect())
+        let raised = |factor: Factor| Factor { exponent: factor.exponent * power, ..factor };
+        let factors: Vec<Factor> = factors.into_iter().map(raised).collect();
+        if factors.iter().all(Factor::is_plausible) {
+            Ok(factors)
+        } else {
+            Err(malformed(self.text, "no quantity has such a power"))
+        }
+    }
+
+    fn bracket(&mut self) -> Result<Vec<Factor>, UnitError> {
+        self.depth += 1;
+        if self.depth > MAX_DEPTH {
+            return Err(malformed(self.text, "the brackets are nested too deeply"));
+        }
+        let inside = self.unit()?;
+        self.depth -= 1;
+        if self.take(")") { Ok(inside) } else { Err(malformed(self.text, "a `)` is missing")) }
     }
 
     fn atom(&mut self) -> Result<Factor, UnitError> {
@@ -93,11 +110,17 @@ impl Reader<'_> {
         if self.rest.starts_with("kg(") {
             return self.rest.find(')').map_or(self.rest.len(), |bracket| bracket + 1);
         }
-        if self.rest.starts_with(['1', '%']) {
+        if self.rest.starts_with('%') || self.at_one() {
             return 1;
         }
         let is_letter = |c: char| c.is_alphabetic() || c == '°' || c == '_' || c == '℃' || c == '℉';
         self.rest.find(|c| !is_letter(c)).unwrap_or(self.rest.len())
+    }
+
+    /// Whether a `1` stands at the front, not the beginning of a number such as 100.
+    fn at_one(&self) -> bool {
+        let behind = self.rest.strip_prefix('1');
+        behind.is_some_and(|rest| !rest.starts_with(|c: char| c.is_ascii_digit() || c == '.'))
     }
 
     fn expected_unit(&self) -> String {

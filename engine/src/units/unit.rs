@@ -1,10 +1,10 @@
-//! A unit composed of atoms, and conversion between units.
+//! A unit composed of atoms, and how units compose.
 
 use std::fmt;
 use std::sync::Arc;
 
 use super::atom::{self, Atom};
-use super::dimension::{Base, Dimension, Exponent};
+use super::dimension::{Dimension, Exponent};
 use super::{UnitError, parse};
 
 /// A unit of measurement as written: `mg/L as NO3^-`, `J/(mol K)`, `degC`.
@@ -12,8 +12,8 @@ use super::{UnitError, parse};
 /// Cheap to clone. Two units are equal when they are written alike; [`Unit::is_same_size`] compares what they mean.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Unit {
-    factors: Arc<[Factor]>,
-    expressed_as: Option<Arc<str>>,
+    pub(super) factors: Arc<[Factor]>,
+    pub(super) expressed_as: Option<Arc<str>>,
 }
 
 /// Which kilogram a bare `/kg` stands for.
@@ -108,42 +108,6 @@ impl Unit {
         Self { factors: gather(factors), expressed_as: self.expressed_as.clone() }
     }
 
-    /// Whether one of this unit is exactly one of the other, however they are written.
-    #[must_use]
-    pub fn is_same_size(&self, other: &Self) -> bool {
-        self.dimension() == other.dimension()
-            && self.expressed_as == other.expressed_as
-            && self.scale_to(other) == (1.0, 0)
-            && self.zero() == other.zero()
-    }
-
-    /// A value given in this unit, in another unit.
-    ///
-    /// degC, degF and dbar count from their own zero: 25 degC is 298.15 K, 0 dbar is 1.01325 bar. Two exchanges are
-    /// made silently because the numbers are the same: mol for eq (1 mol of charge is 1 eq), and a bare `/kg` for a
-    /// mass.
-    ///
-    /// # Errors
-    ///
-    /// [`UnitError::NotConvertible`] when the units measure different things or hold for different substances.
-    pub fn convert(&self, value: f64, to: &Self) -> Result<f64, UnitError> {
-        self.check_convertible(to)?;
-        if self == to {
-            return Ok(value);
-        }
-        Ok(rescale(value + self.zero(), self.scale_to(to)) - to.zero())
-    }
-
-    /// What one step of this unit is in steps of another: 1 degF is 5/9 K, whatever their zeros.
-    ///
-    /// # Errors
-    ///
-    /// As [`Unit::convert`].
-    pub fn interval_in(&self, to: &Self) -> Result<f64, UnitError> {
-        self.check_convertible(to)?;
-        Ok(rescale(1.0, self.scale_to(to)))
-    }
-
     /// The unit of a product.
     ///
     /// # Errors
@@ -186,22 +150,6 @@ impl Unit {
             Some(fraction) => self.to_power(fraction),
             None => Err(UnitError::Power { unit: self.symbol(), power }),
         }
-    }
-
-    /// The unit in which a product with this one is taken: `K` for degC and degF, `bar` for dbar.
-    #[must_use]
-    pub fn counted_from_absolute_zero(&self) -> Self {
-        match self.own_zero() {
-            None => self.clone(),
-            Some(_) if self.dimension().exponent(Base::Temperature) != Exponent::ZERO => Self::known("K"),
-            Some(_) => Self::known("bar"),
-        }
-    }
-
-    /// Whether the unit counts from a zero of its own, as degC does; `J/degC` does not.
-    #[must_use]
-    pub fn has_own_zero(&self) -> bool {
-        self.own_zero().is_some()
     }
 
     /// The unit in plain text, readable by [`Unit::parse`].
@@ -251,84 +199,15 @@ impl Unit {
         Self { factors: gather(factors), expressed_as: self.expressed_as.clone() }.checked()
     }
 
-    /// Refuses exponents that no quantity has, long before their arithmetic could overflow.
+    /// Refuses exponents that no quantity has.
     fn checked(self) -> Result<Self, UnitError> {
-        let outgrown = |exponent: Exponent| {
-            *exponent.denom() > MAX_DENOMINATOR || exponent.numer().abs() > MAX_EXPONENT * exponent.denom()
-        };
-        match self.factors.iter().find(|factor| outgrown(factor.exponent)) {
-            Some(factor) => Err(UnitError::Power {
-                unit: factor.atom.symbol.to_owned(),
-                power: f64::from(*factor.exponent.numer()) / f64::from(*factor.exponent.denom()),
+        match self.factors.iter().find(|factor| !factor.is_plausible()) {
+            Some(Factor { atom, exponent }) => Err(UnitError::Power {
+                unit: atom.symbol.to_owned(),
+                power: f64::from(*exponent.numer()) / f64::from(*exponent.denom()),
             }),
             None => Ok(self),
         }
-    }
-
-    fn own_zero(&self) -> Option<f64> {
-        match &*self.factors {
-            [Factor { atom, exponent }] if atom.has_own_zero() && *exponent == Exponent::ONE => {
-                Some(atom.zero)
-            }
-            _ => None,
-        }
-    }
-
-    fn zero(&self) -> f64 {
-        self.own_zero().unwrap_or(0.0)
-    }
-
-    fn check_convertible(&self, to: &Self) -> Result<(), UnitError> {
-        if self.expressed_as != to.expressed_as {
-            return Err(self.different_substances(to));
-        }
-        let loosely = |unit: &Self| {
-            unit.dimension().counting(Base::Equivalents, Base::Amount).counting(Base::BareKg, Base::Mass)
-        };
-        if loosely(self) == loosely(to) {
-            return Ok(());
-        }
-        Err(UnitError::NotConvertible {
-            from: self.symbol(),
-            to: to.symbol(),
-            reason: self.difference_in_words(to),
-        })
-    }
-
-    fn difference_in_words(&self, to: &Self) -> String {
-        let (from, to) = (self.dimension(), to.dimension());
-        let differ = |base| from.exponent(base) != to.exponent(base);
-        let kilograms =
-            [Base::WaterMass, Base::SolutionMass, Base::BareKg].into_iter().filter(|&b| differ(b)).count();
-        if differ(Base::PracticalSalinity) {
-            "practical salinity is a conductivity ratio, no mass fraction".to_owned()
-        } else if kilograms > 1 {
-            "water and solution weigh differently; say `kg(water)` or `kg(solution)` on both sides".to_owned()
-        } else if kilograms == 1 && differ(Base::Length) {
-            "the density is needed".to_owned()
-        } else if differ(Base::Amount) && differ(Base::Mass) {
-            "the molar mass is needed".to_owned()
-        } else {
-            "they measure different things".to_owned()
-        }
-    }
-
-    fn different_substances(&self, other: &Self) -> UnitError {
-        UnitError::NotConvertible {
-            from: self.symbol(),
-            to: other.symbol(),
-            reason: "they are expressed as different substances".to_owned(),
-        }
-    }
-
-    /// The size of this unit in the other, as a number times a power of ten.
-    fn scale_to(&self, to: &Self) -> (f64, i32) {
-        let sizes =
-            self.factors.iter().map(|factor| (factor, 1)).chain(to.factors.iter().map(|factor| (factor, -1)));
-        sizes.fold((1.0, 0), |(mantissa, power_of_ten), (factor, sign)| {
-            let (m, p) = factor.size(sign);
-            (mantissa * m, power_of_ten + p)
-        })
     }
 }
 
@@ -345,15 +224,10 @@ impl Factor {
         self.atom.symbol == other.atom.symbol
     }
 
-    /// Size in SI base units, or its inverse for `sign` -1.
-    fn size(&self, sign: i32) -> (f64, i32) {
-        let exponent = self.exponent * sign;
-        if exponent.is_integer() {
-            let power = *exponent.numer();
-            return (self.atom.mantissa.powi(power), self.atom.power_of_ten * power);
-        }
-        let power = f64::from(*exponent.numer()) / f64::from(*exponent.denom());
-        (self.atom.mantissa.powf(power) * 10f64.powf(f64::from(self.atom.power_of_ten) * power), 0)
+    /// Whether the exponent is one that some quantity has; the bounds keep its arithmetic from overflowing.
+    pub fn is_plausible(&self) -> bool {
+        let (numerator, denominator) = (self.exponent.numer().abs(), *self.exponent.denom());
+        denominator <= MAX_DENOMINATOR && numerator <= MAX_EXPONENT * denominator
     }
 
     /// The atom with its power, as written on its side of the fraction line.
@@ -401,16 +275,6 @@ fn gather(factors: impl IntoIterator<Item = Factor>) -> Arc<[Factor]> {
 
 fn mass_kg() -> &'static Atom {
     atom::find("kg").expect("kg is in the table")
-}
-
-/// Multiplies by an exact power of ten, or divides by one, so that a decimal shift rounds once.
-fn rescale(value: f64, (mantissa, power_of_ten): (f64, i32)) -> f64 {
-    let value = value * mantissa;
-    match power_of_ten {
-        0 => value,
-        1.. => value * 10f64.powi(power_of_ten),
-        _ => value / 10f64.powi(-power_of_ten),
-    }
 }
 
 fn is_whole(x: f64) -> bool {
