@@ -581,8 +581,7 @@ fn read_provenance(options: &mut Named) -> Result<Provenance, KeyFault> {
 /// Returns a fault of `key` if it is no temperature.
 pub fn temperature(key: &str, value: Value) -> Result<Temperature, KeyFault> {
     let quantity = named::quantity(key, value, Kind::Temperature)?;
-    let celsius = quantity.to(&Kind::Temperature.default_unit()).expect("checked to be a temperature").value();
-    Temperature::from_celsius(celsius).map_err(|error| KeyFault::new(key, format!("`{key}`: {error}")))
+    Temperature::try_from(&quantity).map_err(|error| KeyFault::new(key, format!("`{key}`: {error}")))
 }
 
 /// Reads a multiple given as a float: exact if it has few digits.

@@ -163,9 +163,7 @@ fn read_setting(named: &mut Named, defaults: &mut Vec<String>) -> Result<Setting
 ///
 /// A fault of `key`.
 pub fn pressure_of(key: &str, quantity: &Quantity) -> Result<Pressure, KeyFault> {
-    let bar = quantity.to(&Kind::Pressure.default_unit());
-    let pressure = bar.map_err(|e| e.to_string()).and_then(|bar| Pressure::from_bar(bar.value()).map_err(|e| e.to_string()));
-    pressure.map_err(|message| KeyFault::new(key, format!("`{key}`: {message}")))
+    Pressure::try_from(quantity).map_err(|error| KeyFault::new(key, format!("`{key}`: {error}")))
 }
 
 fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
