@@ -15,6 +15,9 @@ pub enum EquilibriumError {
     /// The ledger itself cannot be had.
     #[error(transparent)]
     Shipped(#[from] ShippedError),
+    /// A row of a survey that could not be read.
+    #[error("{0}")]
+    Spoilt(String),
     /// An analyte the ledger has no species for.
     #[error("`{key}`: {why}")]
     Analyte {

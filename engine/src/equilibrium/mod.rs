@@ -33,6 +33,7 @@ pub fn equilibrate(sample: &Sample, ledger: Option<&Ledger>, settings: &Settings
     };
     let analysed = match sample.analysis() {
         Analysis::Measured(measured) => analysis::analyse(sample, measured, &ledger, settings)?,
+        Analysis::Spoilt(reason) => return Err(EquilibriumError::Spoilt(reason.clone())),
         Analysis::Dissolved(totals) => analysis::restore(sample, totals, &ledger)?,
     };
     let outcome = if sample.treatments().is_empty() && analysed.outcome.is_some() {

@@ -18,6 +18,8 @@ pub enum Analysis {
     Measured(Box<Measured>),
     /// Moles of species per kilogram of water whose elements and charge are the water's totals.
     Dissolved(Vec<(Species, f64)>),
+    /// A row of a survey that could not be read, with the reason.
+    Spoilt(String),
 }
 
 /// A laboratory analysis, read and in range, not yet converted to one basis.

@@ -9,9 +9,11 @@ pub mod analyte;
 pub mod concentration;
 pub mod csv_text;
 pub mod sample;
+pub mod survey;
 pub mod treatment;
 
 pub use analysis::{Analysis, Evidence, Measured, Ph};
 pub use analyte::Analyte;
 pub use sample::{Sample, SampleError};
+pub use survey::{Survey, SurveyError};
 pub use treatment::Treatment;

@@ -9,6 +9,7 @@ use super::treatment::Treatment;
 use crate::chem::Species;
 use crate::ledger::{Ledger, LedgerError};
 use crate::named::{KeyFault, Value};
+use crate::units::{Pressure, Temperature};
 
 /// A water sample; cheap to clone.
 #[derive(Clone, Debug)]
@@ -39,7 +40,7 @@ pub enum SampleError {
     #[error(transparent)]
     Ledger(#[from] LedgerError),
     /// An analysis cannot be edited where there is none.
-    #[error("this water is what an equilibrium left dissolved: it has no analysis to edit; treat it instead")]
+    #[error("this water has no analysis to edit, only what an equilibrium left dissolved: treat it instead")]
     NoAnalysis,
     /// A number out of its range.
     #[error("{0}")]
@@ -80,6 +81,15 @@ impl Sample {
         }))
     }
 
+    /// A row of a survey that could not be read: it keeps its place, and its equilibrium fails with the reason.
+    #[must_use]
+    pub fn spoilt(name: Option<String>, labels: BTreeMap<String, String>, reason: String) -> Self {
+        let setting = Setting { temperature: Temperature::REFERENCE, pressure: Pressure::ATMOSPHERE, water: 1.0 };
+        let dissolved = Self::dissolved(name, setting, vec![], Ledger::default());
+        let inner = (*dissolved.0).clone();
+        Self(Arc::new(Inner { analysis: Analysis::Spoilt(reason), ledger: None, labels, ..inner }))
+    }
+
     /// What it is called.
     #[must_use]
     pub fn name(&self) -> Option<&str> {
@@ -103,7 +113,7 @@ impl Sample {
     pub fn measured(&self) -> Option<&Measured> {
         match &self.0.analysis {
             Analysis::Measured(measured) => Some(measured),
-            Analysis::Dissolved(_) => None,
+            Analysis::Dissolved(_) | Analysis::Spoilt(_) => None,
         }
     }
 
