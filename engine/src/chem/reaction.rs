@@ -288,6 +288,24 @@ impl Reaction {
         Ok(Self { equation: self.equation.clone(), constant: Some(constant) })
     }
 
+    /// The same with an enthalpy of reaction assumed; its constant, known at one temperature, becomes a function.
+    ///
+    /// # Errors
+    ///
+    /// As [`Reaction::constant`], or that `enthalpy` is no energy per mole.
+    pub fn assume_enthalpy(&self, enthalpy: &Quantity) -> Result<Self, ReactionError> {
+        let constant = self.constant()?;
+        let kilojoules = enthalpy.to(&Kind::Energy.default_unit());
+        let kilojoules = kilojoules.map_err(|error| KeyFault::new("enthalpy", error.to_string()))?.value();
+        let (value, at) = (constant.log_k.nearest_to(constant.temperature).0, constant.temperature);
+        let mut log_k = LogK::van_t_hoff(value, at, kilojoules, 0.0);
+        if let Some(range) = constant.log_k.range() {
+            log_k = log_k.within(range);
+        }
+        let history = constant.history.converted(format!("enthalpy of reaction assumed: {kilojoules} kJ/mol"));
+        Ok(Self::of(self.equation.clone(), Constant { log_k, history, ..constant.clone() }))
+    }
+
     /// The same with gases counted from another standard pressure.
     ///
     /// # Errors

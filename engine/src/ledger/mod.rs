@@ -12,4 +12,4 @@ mod ledger;
 pub mod shipped;
 
 pub use formation::{Formation, Formations, Leftover};
-pub use ledger::{ActivityChoice, Ledger, LedgerError};
+pub use ledger::{ActivityChoice, Ledger, LedgerError, combine};

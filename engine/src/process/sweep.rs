@@ -82,6 +82,18 @@ impl Axis {
         Ok(Self { title: title.trim().to_string(), meaning, values })
     }
 
+    /// Number of values.
+    #[must_use]
+    pub fn len(&self) -> usize {
+        self.values.len()
+    }
+
+    /// Whether it has no values.
+    #[must_use]
+    pub fn is_empty(&self) -> bool {
+        self.values.is_empty()
+    }
+
     /// The water at one value of the axis.
     fn at(&self, sample: &Sample, value: f64) -> Result<Sample, SweepError> {
         let unit_error = |error| SweepError::Unit { axis: self.title.clone(), error };

@@ -17,9 +17,16 @@ pub mod words;
 
 mod check;
 mod engine;
+mod expect;
 mod general;
+mod ledger;
 mod modules;
+mod named;
+mod quantity;
+mod reaction;
+mod sample;
 mod session;
+mod state;
 mod syntax;
 mod translate;
 

@@ -1,0 +1,339 @@
+//! `Sample` in scripts: waters, surveys and treatments.
+
+use std::collections::BTreeMap;
+
+use rhai::plugin::*;
+use rhai::{Array, Dynamic, Map};
+
+use super::named::{named, one_or_many, value};
+use super::reaction::{plain, quantity, temperature};
+use super::show::Style;
+use super::{Fail, Host, ScriptResult, Vocabulary, fail};
+use crate::ledger::{Ledger, shipped};
+use crate::named::{KeyFault, Value};
+use crate::nearest::nearest;
+use crate::text::{count, list};
+use crate::units::{Kind, Pressure};
+use crate::water::csv_text::{Below, CsvOptions};
+use crate::water::{Sample, SampleError, Survey, SurveyError, Treatment};
+
+/// Registers the type.
+pub(super) fn register(vocabulary: &mut Vocabulary) {
+    vocabulary
+        .module(rhai::exported_module!(sample_functions))
+        .pure(&["sample", "but", "with_ledger", "open_to", "saturate", "allow", "hold", "warm_to", "compress_to"])
+        .native::<Sample>("Sample", show);
+}
+
+fn show(sample: &Sample, style: &Style) -> String {
+    let name = sample.name().map_or_else(|| "water".to_string(), |name| format!("water \"{name}\""));
+    let degree = if style.ascii { "degC" } else { "°C" };
+    let keys: Vec<&str> =
+        sample.entries().keys().map(String::as_str).filter(|key| !["name", "temperature", "pressure"].contains(key)).collect();
+    let measured = if keys.is_empty() { String::new() } else { format!(": {}", keys.join(", ")) };
+    let treatments: Vec<String> = sample.treatments().iter().map(words).collect();
+    let treated = if treatments.is_empty() { String::new() } else { format!("; {}", treatments.join(", ")) };
+    format!("{name}, {} {degree}{measured}{treated}", trimmed(sample.setting().temperature.celsius()))
+}
+
+fn trimmed(number: f64) -> String {
+    super::numbers::general(number, 6)
+}
+
+fn words(treatment: &Treatment) -> String {
+    match treatment {
+        Treatment::OpenTo { gas, fugacity } => format!("open to {gas} at {} bar", trimmed(*fugacity)),
+        Treatment::Saturate { solid, index } if *index == 0.0 => format!("saturated with {solid}"),
+        Treatment::Saturate { solid, index } => format!("saturated with {solid} at SI {}", trimmed(*index)),
+        Treatment::Allow { solid, above } if *above == 0.0 => format!("{solid} may form"),
+        Treatment::Allow { solid, above } => format!("{solid} may form above SI {}", trimmed(*above)),
+        Treatment::HoldPh { ph, reagent: None } => format!("held at pH {}", trimmed(*ph)),
+        Treatment::HoldPh { ph, reagent: Some(reagent) } => format!("held at pH {} with {reagent}", trimmed(*ph)),
+        Treatment::WarmTo(temperature) => format!("brought to {} degC", trimmed(temperature.celsius())),
+        Treatment::CompressTo(pressure) => format!("brought to {} bar", trimmed(pressure.bar())),
+    }
+}
+
+impl From<SampleError> for Fail {
+    fn from(error: SampleError) -> Self {
+        match error {
+            SampleError::Key(fault) => key_fault(fault),
+            SampleError::Ledger(error) => error.into(),
+            other => fail(other.to_string()),
+        }
+    }
+}
+
+/// The fault of a key, its advice on a line of its own.
+fn key_fault(fault: KeyFault) -> Fail {
+    match fault.message.split_once("; did you mean ") {
+        Some((message, name)) => fail(message).help(format!("did you mean {name}")).key(fault.key),
+        None => fault.into(),
+    }
+}
+
+impl From<SurveyError> for Fail {
+    fn from(error: SurveyError) -> Self {
+        fail(error.to_string()).argument(0)
+    }
+}
+
+/// A mineral or gas must be known to some shipped ledger, or to the sample's own; whether the ledger finally used knows
+/// it is checked at equilibrium.
+fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
+    let shipped: Vec<Ledger> = shipped::names().iter().filter_map(|name| shipped::ledger(name, None).ok()).collect();
+    if sample.ledger().is_some() || shipped.iter().any(|ledger| ledger.find_phase(name).is_ok()) {
+        return Ok(());
+    }
+    let names: Vec<&str> = shipped.iter().flat_map(|ledger| ledger.phases_by_name()).map(|(name, _)| name).collect();
+    let help = nearest(name, names.iter().copied()).map(|near| format!("did you mean `{near}`?"));
+    let advice = "a mineral or gas of your own belongs to a ledger: use `.with_ledger(book)` first";
+    Err(fail(format!("no shipped ledger knows a mineral or gas `{name}`")).help(help.unwrap_or_else(|| advice.into())).argument(0))
+}
+
+fn treated(sample: &Sample, treatment: Treatment) -> ScriptResult<Sample> {
+    Ok(sample.treated(treatment).map_err(Fail::from)?)
+}
+
+fn fugacity(given: &Dynamic) -> Result<f64, Fail> {
+    let value = value(given)?;
+    if let Value::Text(text) = &value
+        && (text.ends_with("ppm") || text.ends_with("ppb"))
+    {
+        return Err(fail("a gas is given by its fugacity, not in ppm").help("write `\"420 uatm\"`, or the mole fraction times the pressure").argument(1));
+    }
+    let bar = crate::named::quantity("fugacity", value, Kind::Pressure).map_err(|fault| fail(fault.message).argument(1))?;
+    let bar = Pressure::try_from(&bar).map_err(|error| fail(error.to_string()).argument(1))?;
+    Ok(bar.bar())
+}
+
+fn entries(map: &Map) -> Result<BTreeMap<String, Value>, Fail> {
+    let mut entries = BTreeMap::new();
+    for (key, given) in map {
+        let read = value(given).map_err(|error| error.key(key.to_string()))?;
+        entries.insert(key.to_string(), read);
+    }
+    Ok(entries)
+}
+
+fn csv_options(options: &Map) -> Result<CsvOptions, Fail> {
+    let mut options = named(options)?;
+    let missing = options.texts("missing").map_err(Fail::from)?.unwrap_or_default();
+    let below = match options.text("below").map_err(Fail::from)?.as_deref() {
+        None | Some("half") => Below::Half,
+        Some("zero") => Below::Zero,
+        Some("limit") => Below::Limit,
+        Some("skip") => Below::Skip,
+        Some(other) => {
+            let words = ["half", "zero", "limit", "skip"];
+            return Err(fail(format!("`below` is one of {}, not `{other}`", list(&words))).key("below"));
+        }
+    };
+    let mut renames = |key: &str| -> Result<BTreeMap<String, String>, Fail> {
+        match options.take(key) {
+            None => Ok(BTreeMap::new()),
+            Some(Value::Map(map)) => map
+                .into_iter()
+                .map(|(from, to)| match to {
+                    Value::Text(to) => Ok((from, to)),
+                    other => Err(fail(format!("`{key}` takes a map of texts, not {}", other.kind())).key(from)),
+                })
+                .collect(),
+            Some(other) => Err(fail(format!("`{key}` takes a map of texts, not {}", other.kind())).key(key)),
+        }
+    };
+    let (columns, units) = (renames("columns")?, renames("units")?);
+    options.finish().map_err(Fail::from)?;
+    Ok(CsvOptions { missing, below, columns, units })
+}
+
+fn survey(context: &NativeCallContext, name: &str, options: &CsvOptions) -> ScriptResult<Array> {
+    let host = Host::of(context);
+    let path = host.files().path_to_read(name).map_err(|error| Fail::from(error).argument(0))?;
+    let bytes = std::fs::read(&path).map_err(|error| fail(format!("cannot read `{name}`: {error}")).argument(0))?;
+    let survey = Survey::read(&bytes, options).map_err(|error| match error {
+        SurveyError::Csv(error) => fail(format!("{name}: {error}")).argument(0),
+        other => fail(format!("{name}: {other}")).argument(0),
+    })?;
+    let mut told = vec![count(survey.samples.len(), "row")];
+    if !survey.replacements.is_empty() {
+        told.push(format!("{} below the detection limit replaced", count(survey.replacements.len(), "value")));
+    }
+    host.message(&format!("{name}: {}", told.join(", ")));
+    for fault in &survey.faults {
+        host.message(&format!("{name}: row left out of the results: {fault}"));
+    }
+    Ok(survey.samples.into_iter().map(Dynamic::from).collect())
+}
+
+/// Waters and what is done to them.
+#[export_module]
+mod sample_functions {
+    use super::*;
+
+    /// A water sample from its analysis. Keys: `name`, `temperature` (degC), `pressure` (bar), `pH`, `alkalinity`, `DIC`,
+    /// `fCO2`, `pCO2`, `xCO2`, `from`, `make_up`, `density`, `volume_temperature`, `water`, and amounts of elements,
+    /// oxidation states or species with their units. A bare number is mol/kg(water).
+    ///
+    /// ```rhai
+    /// let lake = sample(#{ temperature: "8.5 degC", pH: 8.15, alkalinity: "2.35 meq/L", Ca: "41.2 mg/L" });
+    /// fmt(lake.equilibrate().SI("calcite").value, ".1f")   // "0.0"
+    /// ```
+    #[rhai_fn(name = "sample", return_raw)]
+    pub fn sample(keys: Map) -> ScriptResult<Sample> {
+        let mut entries = keys.clone();
+        let ledger = entries.remove("ledger").map(|ledger| {
+            ledger.try_cast::<Ledger>().ok_or_else(|| fail("`ledger` takes a ledger").key("ledger"))
+        });
+        let ledger = ledger.transpose()?;
+        let sample = Sample::read(super::entries(&entries)?).map_err(Fail::from)?;
+        Ok(ledger.map_or(sample.clone(), |ledger| sample.with_ledger(&ledger)))
+    }
+
+    /// Samples from a CSV file beside the script, with units in its header: `Ca [mg/L]`, `alkalinity [mg/L as CaCO3]`.
+    #[rhai_fn(name = "read_samples", return_raw)]
+    pub fn read_samples(context: NativeCallContext, file: &str) -> ScriptResult<Array> {
+        survey(&context, file, &CsvOptions::default())
+    }
+    /// The same with options: `missing` (texts that mean no value), `below` (`"half"`, `"zero"`, `"limit"`, `"skip"`),
+    /// `columns` and `units` (new headers and units by the file's).
+    #[rhai_fn(name = "read_samples", return_raw)]
+    pub fn read_samples_with(context: NativeCallContext, file: &str, options: Map) -> ScriptResult<Array> {
+        survey(&context, file, &csv_options(&options)?)
+    }
+
+    /// What the sample is called, or `()`.
+    #[rhai_fn(name = "name", get = "name", pure)]
+    pub fn sample_name(sample: &mut Sample) -> Dynamic {
+        sample.name().map_or(Dynamic::UNIT, |name| name.to_string().into())
+    }
+    /// Defaults used and detection limits replaced, as texts.
+    #[rhai_fn(name = "warnings", get = "warnings", pure)]
+    pub fn sample_warnings(sample: &mut Sample) -> Array {
+        sample.notes().iter().map(|note| note.clone().into()).collect()
+    }
+
+    /// The same analysis with some keys changed; nothing is simulated. A key set to `()` is taken out.
+    ///
+    /// ```rhai
+    /// let lake = sample(#{ pH: 8.0, Ca: "40 mg/L" });
+    /// lake.but(#{ pH: 7.0 }).equilibrate().pH.value   // 7
+    /// ```
+    #[rhai_fn(pure, return_raw)]
+    pub fn but(sample: &mut Sample, changes: Map) -> ScriptResult<Sample> {
+        let mut read = BTreeMap::new();
+        for (key, given) in changes {
+            let change = if given.is_unit() { None } else { Some(value(&given).map_err(|error| error.key(key.to_string()))?) };
+            read.insert(key.to_string(), change);
+        }
+        Ok(sample.but(read).map_err(Fail::from)?)
+    }
+    /// The same water, computed with this ledger unless another is named.
+    #[rhai_fn(pure)]
+    pub fn with_ledger(sample: &mut Sample, ledger: Ledger) -> Sample {
+        sample.with_ledger(&ledger)
+    }
+
+    /// The water in contact with so much of a gas that its fugacity stays fixed (bar, or text with a unit).
+    ///
+    /// ```rhai
+    /// let rain = sample(#{ pH: "electroneutral" }).open_to("CO2(g)", "420 uatm");
+    /// fmt(rain.equilibrate().pH.value, ".2f")   // "5.60"
+    /// ```
+    #[rhai_fn(pure, return_raw)]
+    pub fn open_to(sample: &mut Sample, gas: &str, fugacity: Dynamic) -> ScriptResult<Sample> {
+        known(sample, gas)?;
+        treated(sample, Treatment::OpenTo { gas: gas.into(), fugacity: super::fugacity(&fugacity)? })
+    }
+    /// The water in contact with as much of a solid as it will dissolve or deposit: SI 0.
+    #[rhai_fn(name = "saturate", pure, return_raw)]
+    pub fn saturate(sample: &mut Sample, solid: &str) -> ScriptResult<Sample> {
+        known(sample, solid)?;
+        treated(sample, Treatment::Saturate { solid: solid.into(), index: 0.0 })
+    }
+    /// The same, kept at another saturation index.
+    #[rhai_fn(name = "saturate", pure, return_raw)]
+    pub fn saturate_at(sample: &mut Sample, solid: &str, index: Dynamic) -> ScriptResult<Sample> {
+        known(sample, solid)?;
+        treated(sample, Treatment::Saturate { solid: solid.into(), index: plain("a saturation index", &index)? })
+    }
+    /// Solids that may form where the water is supersaturated: a name or a list of names.
+    ///
+    /// ```rhai
+    /// let water = sample(#{ pH: 9, alkalinity: "3 meq/L", Ca: "80 mg/L" }).allow("calcite");
+    /// water.equilibrate().amount("calcite").value > 0   // true
+    /// ```
+    #[rhai_fn(name = "allow", pure, return_raw)]
+    pub fn allow(sample: &mut Sample, solids: Dynamic) -> ScriptResult<Sample> {
+        allow_above(sample, solids, Dynamic::from(0.0))
+    }
+    /// The same, forming only above a saturation index.
+    #[rhai_fn(name = "allow", pure, return_raw)]
+    pub fn allow_above(sample: &mut Sample, solids: Dynamic, above: Dynamic) -> ScriptResult<Sample> {
+        let above = plain("a saturation index", &above)?;
+        let mut water = sample.clone();
+        for solid in one_or_many(&solids)? {
+            known(sample, &solid)?;
+            water = treated(&water, Treatment::Allow { solid, above })?;
+        }
+        Ok(water)
+    }
+    /// A value kept through all treatments: `.hold("pH", 7)`, by hydrogen ions against inert charge.
+    #[rhai_fn(name = "hold", pure, return_raw)]
+    pub fn hold(context: NativeCallContext, sample: &mut Sample, what: &str, value: Dynamic) -> ScriptResult<Sample> {
+        Host::of(&context).message("warning: pH is held by hydrogen ions against inert charge; name a reagent, such as `\"NaOH\"`, to hold it by one");
+        hold_with(sample, what, value, None)
+    }
+    /// The same, brought about by a reagent: `.hold("pH", 7, "NaOH")`. How much of it is `added(NaOH)`. Dosing of acids
+    /// and bases in practice follows local codes and licensed judgement.
+    #[rhai_fn(name = "hold", pure, return_raw)]
+    pub fn hold_by(sample: &mut Sample, what: &str, value: Dynamic, reagent: &str) -> ScriptResult<Sample> {
+        hold_with(sample, what, value, Some(reagent.to_string()))
+    }
+    /// The same totals at another temperature (degC, or text with a unit).
+    ///
+    /// ```rhai
+    /// let warm = sample(#{ temperature: 5, pH: 8, alkalinity: "2 meq/L" }).warm_to("25 degC");
+    /// warm.equilibrate().temperature.value   // 25
+    /// ```
+    #[rhai_fn(pure, return_raw)]
+    pub fn warm_to(sample: &mut Sample, to: Dynamic) -> ScriptResult<Sample> {
+        treated(sample, Treatment::WarmTo(temperature(&to)?))
+    }
+    /// The same totals at another pressure (bar, or text with a unit). Constants are not corrected for pressure yet.
+    #[rhai_fn(pure, return_raw)]
+    pub fn compress_to(sample: &mut Sample, to: Dynamic) -> ScriptResult<Sample> {
+        let pressure = quantity("pressure", &to, Kind::Pressure)?;
+        let pressure = Pressure::try_from(&pressure).map_err(|error| fail(error.to_string()).argument(0))?;
+        treated(sample, Treatment::CompressTo(pressure))
+    }
+    /// Whether two samples are made of the same values.
+    #[rhai_fn(name = "==")]
+    pub fn same_sample(left: Sample, right: Sample) -> bool {
+        format!("{:?} {:?}", left.entries(), left) == format!("{:?} {:?}", right.entries(), right)
+    }
+    #[rhai_fn(name = "!=")]
+    pub fn other_sample(left: Sample, right: Sample) -> bool {
+        !same_sample(left, right)
+    }
+}
+
+fn hold_with(sample: &Sample, what: &str, value: Dynamic, reagent: Option<String>) -> ScriptResult<Sample> {
+    if what != "pH" {
+        return fail(format!("`{what}` cannot be held")).help("only `pH` can; a gas is held by `.open_to`, a solid by `.saturate`").argument(0).raise();
+    }
+    if let Some(reagent) = &reagent {
+        let ledger = match sample.ledger() {
+            Some(ledger) => ledger.clone(),
+            None => shipped::ledger("freshwater", None).map_err(Fail::from)?,
+        };
+        crate::equilibrium::treatment::reagent(&ledger, reagent).map_err(|error| fail(error.to_string()).argument(2))?;
+    }
+    treated(sample, Treatment::HoldPh { ph: plain("a pH", &value)?, reagent })
+}
+
+/// Numbers of an axis: a list of numbers.
+pub(super) fn numbers(what: &str, values: &Array) -> Result<Vec<f64>, Fail> {
+    values.iter().map(|value| plain(what, value)).collect()
+}
+
