@@ -1,3 +1,5 @@
 //! The program: prompt and subcommands.
 
+mod render;
+
 fn main() {}

@@ -4,11 +4,14 @@
 //! (JCGM 100:2008, 7.2.6). One without is shown with [`SIGNIFICANT_DIGITS`], never with digits it does not have:
 //! a pH entered as 8.15 stays 8.15. Files get every digit instead (see [`write`](super::write)).
 
-use super::column::Writing;
-use super::{Cell, Column, Style, notation};
+use super::column::Content;
+use super::{Cell, Column, Style, Title, notation};
 
 /// Digits of a number of which nothing says how well it is known.
 pub const SIGNIFICANT_DIGITS: usize = 4;
+
+/// The relative uncertainty below which a number is shown as if it had none: its digits would fill the line.
+const NEGLIGIBLE: f64 = 1e-9;
 
 /// The powers of ten of the leading digit between which numbers are written without one: 0.001 to below 1e6.
 const PLAIN_EXPONENTS: std::ops::RangeInclusive<i32> = -3..=5;
@@ -44,20 +47,26 @@ pub fn shown_with_sigma(value: f64, sigma: f64, style: Style) -> String {
 }
 
 /// The cells of a column as text, set so that decimal points and `±` stand below one another when the texts are
-/// aligned on the right. Missing values are shown as their reason, or as a dash.
+/// aligned on the right; those of different quantities are set each on its own. Missing values are shown as their reason, or as a dash.
 #[must_use]
 pub fn shown_column(column: &Column, style: Style) -> Vec<String> {
-    let form = ColumnForm::of(column.cells());
+    let unlike = column.content() == Content::Unlike;
+    let form = if unlike { ColumnForm::Each } else { ColumnForm::of(column.cells()) };
     let pieces: Vec<Option<Pieces>> =
         column.cells().iter().map(|cell| Pieces::of_cell(cell, form, style)).collect();
     let longest = |part: fn(&Pieces) -> &str| {
         pieces.iter().flatten().map(|pieces| part(pieces).chars().count()).max().unwrap_or(0)
     };
     let widths = (longest(|pieces| &pieces.fraction), longest(|pieces| &pieces.sigma));
+    let word = |text: &str| match column.content() {
+        Content::Chemistry => notation::shown(text, style),
+        Content::Titles => notation::shown_title(&Title::parse(text), style),
+        Content::Ordinary | Content::Unlike => text.to_owned(),
+    };
     let texts = column.cells().iter().zip(&pieces).map(|(cell, pieces)| match (cell, pieces) {
+        (_, Some(pieces)) if unlike => pieces.join(),
         (_, Some(pieces)) => pieces.padded(widths),
-        (Cell::Text(text), None) if column.writing() == Writing::Chemistry => notation::shown(text, style),
-        (Cell::Text(text), None) => text.to_string(),
+        (Cell::Text(text), None) => word(text),
         (Cell::Missing { reason: Some(reason) }, None) => reason.to_string(),
         _ => if style.plain { "-" } else { "–" }.to_owned(),
     });
@@ -171,7 +180,7 @@ impl Pieces {
     /// `form` says whether to write a power of ten; the digits are those of `sigma`.
     fn uncertain(value: f64, sigma: f64, form: Form, style: Style) -> Self {
         let sign = if style.plain { "+/-" } else { "±" };
-        let known = value.is_finite() && sigma.is_finite() && sigma > 0.0;
+        let known = value.is_finite() && sigma.is_finite() && sigma > value.abs() * NEGLIGIBLE;
         let (text, sigma, power) = match form {
             _ if !known => (form.write(value), shown(sigma), String::new()),
             Form::Decimals(_) => (rounded(value, sigma), rounded(sigma, sigma), String::new()),
@@ -296,6 +305,7 @@ mod tests {
         with_sigma(1.234_56e-5, 2e-7, "(1.235 ± 0.020)e-5");
         with_sigma(1e-9, 2e-7, "(0.0 ± 2.0)e-7");
         with_sigma(8.15, 0.0, "8.15 ± 0");
+        with_sigma(8.15, 2e-12, "8.15 ± 2e-12");
         with_sigma(8.15, f64::INFINITY, "8.15 ± inf");
         let plain = Style { plain: true, width: None };
         assert_eq!(shown_with_sigma(41.2, 0.8, plain), "41.20 +/- 0.80");

@@ -4,7 +4,7 @@ use std::cmp::Ordering;
 use std::collections::HashMap;
 use std::sync::Arc;
 
-use super::column::Writing;
+use super::column::Content;
 use super::title::SIGMA_MARK;
 use super::{Cell, Column, TableError, Title, statistics};
 use crate::nearest::nearest;
@@ -322,11 +322,11 @@ impl Table {
             .collect();
         let names = numeric.iter().map(|(column, _)| Cell::text(&column.title().to_string()));
         let row = |title: &str, of: &dyn Fn(&[f64]) -> Option<f64>| {
-            Column::new(title, numeric.iter().map(|(_, numbers)| of(numbers)))
+            Column::new(title, numeric.iter().map(|(_, numbers)| of(numbers))).showing(Content::Unlike)
         };
         let at = |probability| move |numbers: &[f64]| statistics::quantile(numbers, probability);
         let columns = [
-            Column::new("column", names).written(Writing::Chemistry),
+            Column::new("column", names).showing(Content::Titles),
             row("n", &|numbers| Some(numbers.len() as f64)),
             row("mean", &statistics::mean),
             row("sd", &statistics::standard_deviation),

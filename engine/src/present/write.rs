@@ -51,10 +51,7 @@ impl Table {
     /// The table in Markdown, numbers on the right.
     #[must_use]
     pub fn to_markdown(&self, style: Style) -> String {
-        let titles = self.titles().map(|title| {
-            let name = notation::shown_name(title, style);
-            notation::shown_unit(title, style).map_or(name.clone(), |unit| format!("{name} [{unit}]"))
-        });
+        let titles = self.titles().map(|title| notation::shown_title(title, style));
         let rules = self.columns().iter().map(|c| if c.is_numeric() { "---:" } else { "---" }.to_owned());
         let columns: Vec<Vec<String>> =
             self.columns().iter().map(|column| number::shown_column(column, style)).collect();

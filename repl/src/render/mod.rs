@@ -1,0 +1,5 @@
+//! Values as characters on a terminal. Every function returns text; who called it writes it.
+#![allow(dead_code, reason = "the commands that draw are wired up elsewhere")]
+
+pub mod number;
+pub mod table;
