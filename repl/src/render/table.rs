@@ -7,6 +7,8 @@
 use comfy_table::{Attribute, Cell, CellAlignment, Color, ColumnConstraint, LineStyle, TableStyle, Width};
 use lysocline_engine::present::{Column, Style, Table, notation, number, table::FAILURE};
 
+use super::notes;
+
 /// How a table is to be drawn.
 #[derive(Debug, Clone, Copy)]
 pub struct Look {
@@ -38,11 +40,10 @@ pub fn draw(table: &Table, look: &Look) -> String {
     let fit = Fit::of(&index, &columns, look.style.width);
     let drawn: Vec<&Drawn> = [&index].into_iter().chain(&columns[..fit.widths.len()]).collect();
 
-    let mut text = if columns.is_empty() { String::new() } else { grid(&drawn, &fit, &excerpt, table, look) };
-    for note in notes(table, &excerpt, &columns[fit.widths.len()..], look.style) {
-        text.push_str(&wrapped(&note, look.style.width));
-    }
-    text
+    let grid = if columns.is_empty() { String::new() } else { grid(&drawn, &fit, &excerpt, table, look) };
+    let hidden_rows = table.n_rows() - excerpt.rows.len();
+    let left_out: Vec<&str> = columns[fit.widths.len()..].iter().map(|c| c.title.as_str()).collect();
+    grid + &notes::below(table, hidden_rows, &left_out, look.style)
 }
 
 /// The rows that are drawn.
@@ -243,77 +244,9 @@ fn gap(style: Style) -> &'static str {
     if style.plain { ":" } else { "⋮" }
 }
 
-/// What is not in the grid: rows, columns, reasons of failure.
-fn notes(table: &Table, excerpt: &Excerpt, left_out: &[Drawn], style: Style) -> Vec<String> {
-    let dots = if style.plain { "..." } else { "…" };
-    let mut notes = Vec::new();
-    if table.columns().is_empty() {
-        notes.push("a table without columns".to_owned());
-    } else if table.n_rows() == 0 {
-        notes.push("no rows".to_owned());
-    }
-    if excerpt.gap.is_some() {
-        let (all, hidden) = (table.n_rows(), table.n_rows() - excerpt.rows.len());
-        notes.push(format!("{dots} {} not shown: `.show({all})` shows all {all}", counted(hidden, "row")));
-    }
-    if !left_out.is_empty() {
-        notes.push(left_out_note(left_out, dots));
-    }
-    notes.extend(failure_notes(table, dots));
-    notes
-}
-
-fn left_out_note(columns: &[Drawn], dots: &str) -> String {
-    const NAMED: usize = 6;
-    let names: Vec<String> = columns.iter().take(NAMED).map(|column| format!("`{}`", column.title)).collect();
-    let more = if columns.len() > NAMED { format!(" {dots}") } else { String::new() };
-    let example = columns.first().map_or("", |column| &column.title);
-    format!(
-        "{dots} {} to the right: {}{more}; widen the terminal, or choose with `.select([\"{example}\"])`",
-        counted(columns.len(), "more column"),
-        names.join(", "),
-    )
-}
-
-fn failure_notes(table: &Table, dots: &str) -> Vec<String> {
-    const NAMED: usize = 5;
-    let failed: Vec<(usize, &str)> =
-        (0..table.n_rows()).filter_map(|row| Some((row, table.failure(row)?))).collect();
-    if failed.is_empty() {
-        return Vec::new();
-    }
-    let heading = format!("{} failed:", counted(failed.len(), "row"));
-    let reasons = failed.iter().take(NAMED).map(|(row, reason)| format!("  row {row}: {}", one_line(reason)));
-    let more = (failed.len() > NAMED).then(|| {
-        format!("  {dots} {} more: `.column(\"{FAILURE}\")` has every reason", failed.len() - NAMED)
-    });
-    [heading].into_iter().chain(reasons).chain(more).collect()
-}
-
-fn counted(n: usize, noun: &str) -> String {
-    if n == 1 { format!("1 {noun}") } else { format!("{n} {noun}s") }
-}
-
 /// Text from a file may hold line ends, or escape sequences meant for the terminal: neither is drawn.
-fn one_line(text: &str) -> String {
+pub fn one_line(text: &str) -> String {
     text.chars().map(|c| if c.is_control() { ' ' } else { c }).collect()
-}
-
-/// A note of one blank in front, broken between words where the terminal ends.
-fn wrapped(note: &str, width: Option<usize>) -> String {
-    let indent = " ".repeat(1 + note.len() - note.trim_start().len());
-    let mut lines = vec![indent.clone()];
-    for word in note.split_whitespace() {
-        let line = lines.last().map_or(0, |line| line.chars().count());
-        let is_first = line == indent.len();
-        if !is_first && width.is_some_and(|width| line + 1 + word.chars().count() > width) {
-            lines.push(format!("{indent}  {word}"));
-        } else if let Some(line) = lines.last_mut() {
-            line.push_str(if is_first { "" } else { " " });
-            line.push_str(word);
-        }
-    }
-    lines.iter().map(|line| format!("{line}\n")).collect()
 }
 
 #[cfg(test)]
@@ -421,13 +354,17 @@ mod tests {
     fn a_long_table() {
         let volumes = Column::numbers("added(HCl) [mL]", (0..41).map(|i| f64::from(i) * 0.125));
         let ph = Column::numbers("pH", (0..41).map(|i| 9.1 - f64::from(i) * 0.137));
-        let failures = (0..41).map(|row| (row > 25 && row != 40).then(|| format!("step {row}")));
+        let failures = (0..41).map(|row| match row {
+            0 | 26..=38 => Some("the water is supersaturated with `calcite`".to_owned()),
+            39 => Some("no equilibrium".to_owned()),
+            _ => None,
+        });
         let titration = Table::new([volumes, ph]).unwrap().with_failures(failures).unwrap();
         let expected = "
        added(HCl)     pH
              [mL]
 ─────────────────────────
-  0         0.000  9.100
+  0 ✗       0.000  9.100
   1         0.125  8.963
   2         0.250  8.826
   3         0.375  8.689
@@ -435,13 +372,9 @@ mod tests {
  39 ✗       4.875  3.757
  40         5.000  3.620
  … 35 rows not shown: `.show(41)` shows all 41
- 14 rows failed:
-   row 26: step 26
-   row 27: step 27
-   row 28: step 28
-   row 29: step 29
-   row 30: step 30
-   … 9 more: `.column(\"failure\")` has every reason
+ 15 rows failed:
+   rows 0, 26 to 38: the water is supersaturated with `calcite`
+   row 39: no equilibrium
 ";
         case(&titration, &Look { rows: 6, ..Look::default() }, expected);
     }
