@@ -344,4 +344,42 @@ mod tests {
         let texts = shown_column(&Column::new("Ca [mg/L]", cells), Style::default());
         assert_eq!(texts, ["41.20 ± 0.80", "8.5        ", "120    ± 11  ", "–"]);
     }
+
+    fn error_of(text: &str, value: f64) -> f64 {
+        (text.trim().parse::<f64>().unwrap() - value).abs()
+    }
+
+    proptest::proptest! {
+        /// Four digits: half a unit of the fourth is at most 1/2000 of the number.
+        #[test]
+        fn a_number_is_shown_to_four_digits(value in proptest::num::f64::NORMAL) {
+            let shown = shown(value);
+            proptest::prop_assert!(error_of(&shown, value) <= value.abs() / 1999.0, "{value:e} as {shown}");
+        }
+
+        /// Whatever stands beside it, a positive number keeps three digits.
+        #[test]
+        fn positive_numbers_of_a_column_keep_three_digits(
+            exponents in proptest::collection::vec(-12.0..9.0_f64, 1..8),
+        ) {
+            let numbers: Vec<f64> = exponents.iter().map(|exponent| 10_f64.powf(*exponent)).collect();
+            let texts = shown_column(&Column::numbers("x", numbers.iter().copied()), Style::default());
+            for (text, number) in texts.iter().zip(&numbers) {
+                proptest::prop_assert!(error_of(text, *number) <= number / 199.0, "{texts:?}");
+            }
+        }
+
+        /// Rounding takes away at most half a unit of the second digit of sigma, a twentieth of sigma.
+        #[test]
+        fn a_number_is_rounded_where_its_uncertainty_is(value in -1e5..1e5_f64, log_sigma in -4.0..4.0_f64) {
+            let sigma = 10_f64.powf(log_sigma);
+            let shown = shown_with_sigma(value, sigma, Style::default());
+            // A power of ten belongs to both: `(1.2 ± 0.3)e-4`.
+            let (numbers, power) = shown.split_once(")e").unwrap_or((&shown, "0"));
+            let (text, sigma_text) = numbers.trim_start_matches('(').split_once(" ± ").unwrap();
+            let unit = 10_f64.powi(power.parse().unwrap());
+            proptest::prop_assert!(error_of(text, value / unit) * unit <= sigma * 0.0501, "{value} ± {sigma} as {shown}");
+            proptest::prop_assert!(error_of(sigma_text, sigma / unit) * unit <= sigma * 0.0501, "{value} ± {sigma} as {shown}");
+        }
+    }
 }
