@@ -24,16 +24,20 @@ use super::{Cell, TableError, Title, statistics};
 pub struct Column {
     title: Title,
     cells: Arc<[Cell]>,
-    writing: Writing,
+    content: Content,
 }
 
-/// What the texts of a column are.
+/// What stands in a column, as far as it decides how cells are shown.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Writing {
-    /// Words, shown as they are.
-    Words,
+pub enum Content {
+    /// Numbers of one quantity, or words.
+    Ordinary,
     /// Formulas or equations, shown with raised charges and lowered subscripts.
     Chemistry,
+    /// Titles of columns of another table.
+    Titles,
+    /// Numbers of different quantities, which share no decimals.
+    Unlike,
 }
 
 /// Arithmetic between the rows of two columns, or between a column and a number.
@@ -56,7 +60,7 @@ impl Column {
         Self {
             title: title.into(),
             cells: cells.into_iter().map(Into::into).collect(),
-            writing: Writing::Words,
+            content: Content::Ordinary,
         }
     }
 
@@ -75,13 +79,13 @@ impl Column {
     /// A column of formulas or equations.
     #[must_use]
     pub fn chemistry<'a>(title: impl Into<Title>, texts: impl IntoIterator<Item = &'a str>) -> Self {
-        Self::texts(title, texts).written(Writing::Chemistry)
+        Self::texts(title, texts).showing(Content::Chemistry)
     }
 
-    /// The same cells, their texts being words or chemistry.
+    /// The same cells, shown as this content is.
     #[must_use]
-    pub fn written(&self, writing: Writing) -> Self {
-        Self { writing, ..self.clone() }
+    pub fn showing(&self, content: Content) -> Self {
+        Self { content, ..self.clone() }
     }
 
     /// The same cells under another title.
@@ -102,10 +106,10 @@ impl Column {
         &self.cells
     }
 
-    /// What its texts are.
+    /// What stands in it.
     #[must_use]
-    pub fn writing(&self) -> Writing {
-        self.writing
+    pub fn content(&self) -> Content {
+        self.content
     }
 
     /// The number of rows.
@@ -285,7 +289,7 @@ impl Column {
         Self { cells: rows.iter().map(|row| self.cells[*row].clone()).collect(), ..self.clone() }
     }
 
-    /// The same title and writing above other cells.
+    /// Other cells under the same title.
     pub(super) fn holding(&self, cells: impl IntoIterator<Item = Cell>) -> Self {
         Self { cells: cells.into_iter().collect(), ..self.clone() }
     }

@@ -3,7 +3,7 @@
 use std::path::PathBuf;
 
 /// A fault in the use of a table. Titles are full titles, rows are counted from 0.
-#[derive(Debug, thiserror::Error)]
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
 #[non_exhaustive]
 pub enum TableError {
     /// No column has this title.
@@ -131,12 +131,12 @@ pub enum TableError {
         path: PathBuf,
     },
     /// The system did not write the file.
-    #[error("`{}` could not be written: {source}", .path.display())]
+    #[error("`{}` could not be written: {reason}", .path.display())]
     Io {
         /// The file in question.
         path: PathBuf,
         /// What the system said.
-        source: std::io::Error,
+        reason: String,
     },
 }
 

@@ -1,7 +1,7 @@
 //! Titled columns with units: what every result is shown as.
 //!
 //! A [`Table`] is made of [`Column`]s, a column of [`Cell`]s under a [`Title`]. Everything here is an immutable value:
-//! an operation returns a new table and shares the cells it did not change. [`write`] turns a table into a file,
+//! an operation returns a new table and shares the cells it did not change. [`write`](mod@write) turns a table into a file,
 //! [`number`] and [`notation`] into text for people; drawing it on a terminal is the program's business.
 
 pub mod cell;

@@ -37,6 +37,13 @@ pub fn shown(text: &str, style: Style) -> String {
     out
 }
 
+/// A title as shown, on one line: `m(Ca²⁺) [µmol/kg]`.
+#[must_use]
+pub fn shown_title(title: &Title, style: Style) -> String {
+    let unit = title.unit().map(|unit| format!(" [{}]", shown_unit(unit, style)));
+    shown_name(title, style) + &unit.unwrap_or_default()
+}
+
 /// The name of a column as shown. Only what is written as chemistry is set as chemistry: `m(CO2)` and `SO4^2-`
 /// are, `site A1` is not.
 #[must_use]
@@ -45,12 +52,11 @@ pub fn shown_name(title: &Title, style: Style) -> String {
     if is_observable_of_formula(name) || has_charge(name) { shown(name, style) } else { name.to_owned() }
 }
 
-/// The unit of a column as shown, without brackets: `µmol/kg`, `mg/L as NO₃⁻`.
+/// A unit as shown: `µmol/kg`, `mg/L as NO₃⁻`.
 #[must_use]
-pub fn shown_unit(title: &Title, style: Style) -> Option<String> {
-    let unit = title.unit()?;
+pub fn shown_unit(unit: &str, style: Style) -> String {
     if style.plain {
-        return Some(unit.to_owned());
+        return unit.to_owned();
     }
     let (measure, formula) = unit.split_once(" as ").map_or((unit, None), |(m, f)| (m, Some(f)));
     let measure = match measure.strip_prefix('u') {
@@ -59,7 +65,7 @@ pub fn shown_unit(title: &Title, style: Style) -> Option<String> {
         }
         _ => measure.to_owned(),
     };
-    Some(formula.map_or(measure.clone(), |formula| format!("{measure} as {}", shown(formula, style))))
+    formula.map_or(measure.clone(), |formula| format!("{measure} as {}", shown(formula, style)))
 }
 
 /// The typed form of a text that may hold shown characters.
@@ -189,7 +195,7 @@ mod tests {
     fn title(text: &str, name: &str, unit: Option<&str>) {
         let title = Title::parse(text);
         assert_eq!(shown_name(&title, Style::default()), name);
-        assert_eq!(shown_unit(&title, Style::default()).as_deref(), unit);
+        assert_eq!(title.unit().map(|unit| shown_unit(unit, Style::default())).as_deref(), unit);
     }
 
     #[test]

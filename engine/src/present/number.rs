@@ -4,11 +4,14 @@
 //! (JCGM 100:2008, 7.2.6). One without is shown with [`SIGNIFICANT_DIGITS`], never with digits it does not have:
 //! a pH entered as 8.15 stays 8.15. Files get every digit instead (see [`write`](super::write)).
 
-use super::column::Writing;
-use super::{Cell, Column, Style, notation};
+use super::column::Content;
+use super::{Cell, Column, Style, Title, notation};
 
 /// Digits of a number of which nothing says how well it is known.
 pub const SIGNIFICANT_DIGITS: usize = 4;
+
+/// The relative uncertainty below which a number is shown as if it had none: its digits would fill the line.
+const NEGLIGIBLE: f64 = 1e-9;
 
 /// The powers of ten of the leading digit between which numbers are written without one: 0.001 to below 1e6.
 const PLAIN_EXPONENTS: std::ops::RangeInclusive<i32> = -3..=5;
@@ -44,20 +47,26 @@ pub fn shown_with_sigma(value: f64, sigma: f64, style: Style) -> String {
 }
 
 /// The cells of a column as text, set so that decimal points and `±` stand below one another when the texts are
-/// aligned on the right. Missing values are shown as their reason, or as a dash.
+/// aligned on the right; those of different quantities are set each on its own. Missing values are shown as their reason, or as a dash.
 #[must_use]
 pub fn shown_column(column: &Column, style: Style) -> Vec<String> {
-    let form = ColumnForm::of(column.cells());
+    let unlike = column.content() == Content::Unlike;
+    let form = if unlike { ColumnForm::Each } else { ColumnForm::of(column.cells()) };
     let pieces: Vec<Option<Pieces>> =
         column.cells().iter().map(|cell| Pieces::of_cell(cell, form, style)).collect();
     let longest = |part: fn(&Pieces) -> &str| {
         pieces.iter().flatten().map(|pieces| part(pieces).chars().count()).max().unwrap_or(0)
     };
     let widths = (longest(|pieces| &pieces.fraction), longest(|pieces| &pieces.sigma));
+    let word = |text: &str| match column.content() {
+        Content::Chemistry => notation::shown(text, style),
+        Content::Titles => notation::shown_title(&Title::parse(text), style),
+        Content::Ordinary | Content::Unlike => text.to_owned(),
+    };
     let texts = column.cells().iter().zip(&pieces).map(|(cell, pieces)| match (cell, pieces) {
+        (_, Some(pieces)) if unlike => pieces.join(),
         (_, Some(pieces)) => pieces.padded(widths),
-        (Cell::Text(text), None) if column.writing() == Writing::Chemistry => notation::shown(text, style),
-        (Cell::Text(text), None) => text.to_string(),
+        (Cell::Text(text), None) => word(text),
         (Cell::Missing { reason: Some(reason) }, None) => reason.to_string(),
         _ => if style.plain { "-" } else { "–" }.to_owned(),
     });
@@ -171,7 +180,7 @@ impl Pieces {
     /// `form` says whether to write a power of ten; the digits are those of `sigma`.
     fn uncertain(value: f64, sigma: f64, form: Form, style: Style) -> Self {
         let sign = if style.plain { "+/-" } else { "±" };
-        let known = value.is_finite() && sigma.is_finite() && sigma > 0.0;
+        let known = value.is_finite() && sigma.is_finite() && sigma > value.abs() * NEGLIGIBLE;
         let (text, sigma, power) = match form {
             _ if !known => (form.write(value), shown(sigma), String::new()),
             Form::Decimals(_) => (rounded(value, sigma), rounded(sigma, sigma), String::new()),
@@ -296,6 +305,7 @@ mod tests {
         with_sigma(1.234_56e-5, 2e-7, "(1.235 ± 0.020)e-5");
         with_sigma(1e-9, 2e-7, "(0.0 ± 2.0)e-7");
         with_sigma(8.15, 0.0, "8.15 ± 0");
+        with_sigma(8.15, 2e-12, "8.15 ± 2e-12");
         with_sigma(8.15, f64::INFINITY, "8.15 ± inf");
         let plain = Style { plain: true, width: None };
         assert_eq!(shown_with_sigma(41.2, 0.8, plain), "41.20 +/- 0.80");
@@ -333,5 +343,43 @@ mod tests {
             [Cell::uncertain(41.2, 0.8), Cell::number(8.5), Cell::uncertain(120.0, 11.0), Cell::missing()];
         let texts = shown_column(&Column::new("Ca [mg/L]", cells), Style::default());
         assert_eq!(texts, ["41.20 ± 0.80", "8.5        ", "120    ± 11  ", "–"]);
+    }
+
+    fn error_of(text: &str, value: f64) -> f64 {
+        (text.trim().parse::<f64>().unwrap() - value).abs()
+    }
+
+    proptest::proptest! {
+        /// Four digits: half a unit of the fourth is at most 1/2000 of the number.
+        #[test]
+        fn a_number_is_shown_to_four_digits(value in proptest::num::f64::NORMAL) {
+            let shown = shown(value);
+            proptest::prop_assert!(error_of(&shown, value) <= value.abs() / 1999.0, "{value:e} as {shown}");
+        }
+
+        /// Whatever stands beside it, a positive number keeps three digits.
+        #[test]
+        fn positive_numbers_of_a_column_keep_three_digits(
+            exponents in proptest::collection::vec(-12.0..9.0_f64, 1..8),
+        ) {
+            let numbers: Vec<f64> = exponents.iter().map(|exponent| 10_f64.powf(*exponent)).collect();
+            let texts = shown_column(&Column::numbers("x", numbers.iter().copied()), Style::default());
+            for (text, number) in texts.iter().zip(&numbers) {
+                proptest::prop_assert!(error_of(text, *number) <= number / 199.0, "{texts:?}");
+            }
+        }
+
+        /// Rounding takes away at most half a unit of the second digit of sigma, a twentieth of sigma.
+        #[test]
+        fn a_number_is_rounded_where_its_uncertainty_is(value in -1e5..1e5_f64, log_sigma in -4.0..4.0_f64) {
+            let sigma = 10_f64.powf(log_sigma);
+            let shown = shown_with_sigma(value, sigma, Style::default());
+            // A power of ten belongs to both: `(1.2 ± 0.3)e-4`.
+            let (numbers, power) = shown.split_once(")e").unwrap_or((&shown, "0"));
+            let (text, sigma_text) = numbers.trim_start_matches('(').split_once(" ± ").unwrap();
+            let unit = 10_f64.powi(power.parse().unwrap());
+            proptest::prop_assert!(error_of(text, value / unit) * unit <= sigma * 0.0501, "{value} ± {sigma} as {shown}");
+            proptest::prop_assert!(error_of(sigma_text, sigma / unit) * unit <= sigma * 0.0501, "{value} ± {sigma} as {shown}");
+        }
     }
 }

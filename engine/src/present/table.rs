@@ -4,7 +4,7 @@ use std::cmp::Ordering;
 use std::collections::HashMap;
 use std::sync::Arc;
 
-use super::column::Writing;
+use super::column::Content;
 use super::title::SIGMA_MARK;
 use super::{Cell, Column, TableError, Title, statistics};
 use crate::nearest::nearest;
@@ -322,11 +322,11 @@ impl Table {
             .collect();
         let names = numeric.iter().map(|(column, _)| Cell::text(&column.title().to_string()));
         let row = |title: &str, of: &dyn Fn(&[f64]) -> Option<f64>| {
-            Column::new(title, numeric.iter().map(|(_, numbers)| of(numbers)))
+            Column::new(title, numeric.iter().map(|(_, numbers)| of(numbers))).showing(Content::Unlike)
         };
         let at = |probability| move |numbers: &[f64]| statistics::quantile(numbers, probability);
         let columns = [
-            Column::new("column", names).written(Writing::Chemistry),
+            Column::new("column", names).showing(Content::Titles),
             row("n", &|numbers| Some(numbers.len() as f64)),
             row("mean", &statistics::mean),
             row("sd", &statistics::standard_deviation),
@@ -424,6 +424,12 @@ impl Row {
     /// The titles and cells, from left to right.
     pub fn cells(&self) -> impl Iterator<Item = (&Title, &Cell)> {
         self.table.columns.iter().map(|column| (column.title(), &column.cells()[self.idx]))
+    }
+
+    /// A table of this row alone.
+    #[must_use]
+    pub fn to_table(&self) -> Table {
+        self.table.taken(&[self.idx])
     }
 
     /// Why this row failed, if it did.
@@ -532,6 +538,12 @@ mod tests {
     }
 
     #[test]
+    fn tables_go_between_threads() {
+        fn shared<T: Clone + Send + Sync + 'static>() {}
+        shared::<(Table, super::Row, Column, Cell, TableError)>();
+    }
+
+    #[test]
     fn looking_up_columns() {
         let two_units = lakes().with(Column::numbers("Ca [mmol/L]", [1.03, 0.99, 1.25])).unwrap();
         assert_eq!(lakes().column("Ca").unwrap().title().to_string(), "Ca [mg/L]");
@@ -562,6 +574,7 @@ mod tests {
     fn rows() {
         let row = lakes().row(2).unwrap();
         assert_eq!(row.get("Ca").unwrap().value(), Some(50.0));
+        assert_eq!(row.to_table().to_csv(), "name,pH,Ca [mg/L]\nEast,7.5,50\n");
         assert!(matches!(row.get("ca"), Err(TableError::UnknownColumn { .. })));
         message(lakes().row(3), "no row 3: the table has rows 0 to 2");
         message(Table::new([]).unwrap().row(0), "no row 0: the table has none");

@@ -29,11 +29,9 @@ impl Table {
     #[must_use]
     pub fn to_csv(&self) -> String {
         let columns: Vec<CsvColumn> = self.columns().iter().flat_map(CsvColumn::of).collect();
-        let mut lines = vec![columns.iter().map(|column| column.title.clone()).collect::<Vec<_>>()];
-        lines.extend(
-            (0..self.n_rows()).map(|row| columns.iter().map(|column| column.cell(row)).collect::<Vec<_>>()),
-        );
-        lines.iter().map(|line| csv_line(line)).collect()
+        let titles = columns.iter().map(|column| column.title.clone()).collect();
+        let rows = (0..self.n_rows()).map(|row| columns.iter().map(|column| column.cell(row)).collect());
+        if columns.is_empty() { String::new() } else { csv_text([titles].into_iter().chain(rows)) }
     }
 
     /// The table as JSON: `{"columns": [{"title": "Ca", "unit": "mg/L", "values": […], "sigma": […]}]}`.
@@ -51,10 +49,7 @@ impl Table {
     /// The table in Markdown, numbers on the right.
     #[must_use]
     pub fn to_markdown(&self, style: Style) -> String {
-        let titles = self.titles().map(|title| {
-            let name = notation::shown_name(title, style);
-            notation::shown_unit(title, style).map_or(name.clone(), |unit| format!("{name} [{unit}]"))
-        });
+        let titles = self.titles().map(|title| notation::shown_title(title, style));
         let rules = self.columns().iter().map(|c| if c.is_numeric() { "---:" } else { "---" }.to_owned());
         let columns: Vec<Vec<String>> =
             self.columns().iter().map(|column| number::shown_column(column, style)).collect();
@@ -82,7 +77,8 @@ impl Table {
         if overwrite == Overwrite::Refuse && path.exists() {
             return Err(TableError::FileExists { path: path.to_owned() });
         }
-        write_whole(path, &text).map_err(|source| TableError::Io { path: path.to_owned(), source })
+        write_whole(path, &text)
+            .map_err(|error| TableError::Io { path: path.to_owned(), reason: error.to_string() })
     }
 }
 
@@ -130,11 +126,13 @@ fn csv_value(cell: &Cell) -> String {
     }
 }
 
-fn csv_line(cells: &[String]) -> String {
+fn csv_text(lines: impl Iterator<Item = Vec<String>>) -> String {
     let mut writer = csv::Writer::from_writer(Vec::new());
-    // Writing to memory cannot fail, and what was text stays text.
-    let line = writer.write_record(cells).ok().and_then(|()| writer.into_inner().ok()).unwrap_or_default();
-    String::from_utf8_lossy(&line).into_owned()
+    for line in lines {
+        writer.write_record(&line).expect("lines of equal length are written to memory");
+    }
+    let text = writer.into_inner().expect("memory needs no flushing");
+    String::from_utf8(text).expect("cells are text")
 }
 
 fn json_column(column: &Column) -> Value {
@@ -194,6 +192,7 @@ mod tests {
             \"the \"\"hole\"\"|\",,0.3333333333333333,,1e-300,\"no\nequilibrium\"\n";
         assert_eq!(lakes().to_csv(), expected);
         assert_eq!(Table::new([Column::new("x", [None::<f64>])]).unwrap().to_csv(), "x\n\"\"\n");
+        assert_eq!(Table::new([]).unwrap().to_csv(), "");
     }
 
     #[test]

@@ -6,15 +6,19 @@
 
 use std::collections::BTreeMap;
 use std::fmt;
+use std::str::FromStr;
 
 use crate::nearest::nearest;
 
+mod error;
+mod headers;
 mod layout;
 mod number;
+mod rows;
 #[cfg(test)]
 mod tests;
 
-pub use layout::CsvError;
+pub use error::{CsvError, UnknownBelow};
 pub use number::CellFault;
 
 /// The texts that mark a missing value unless [`CsvOptions::missing`] adds to them. An empty cell is one of them.
@@ -180,13 +184,16 @@ impl CsvText {
         kind: impl Fn(&str) -> ColumnKind,
     ) -> Result<Self, CsvError> {
         let lines = layout::Lines::read(layout::decoded(bytes)?)?;
-        let headers = headers(&lines, options)?;
-        let plan = plan(&lines, headers, options, kind)?;
+        let headers = headers::of(&lines, options)?;
+        let plan = headers::plan(&lines, headers, options, kind)?;
         let mut replacements = Vec::new();
         let width = lines.header.len();
-        let rows =
-            lines.rows.iter().map(|row| read_row(row, width, &plan, options, &mut replacements)).collect();
-        Ok(Self { columns: plan.into_iter().map(|column| column.header).collect(), rows, replacements })
+        let rows = lines.rows.iter().map(|row| rows::read(row, width, &plan, options, &mut replacements));
+        Ok(Self {
+            rows: rows.collect(),
+            columns: plan.into_iter().map(|column| column.header).collect(),
+            replacements,
+        })
     }
 }
 
@@ -214,258 +221,32 @@ impl fmt::Display for Replacement {
     }
 }
 
-/// A header as it stands in the file or in the options, in its parts.
-#[derive(Debug, Clone, PartialEq)]
-struct RawHeader {
-    title: String,
-    unit: Option<String>,
-    is_sigma: bool,
-}
-
-impl RawHeader {
-    /// `name`, `name [unit]`, `name +/- [unit]` or `name [unit] +/-`; `±` for `+/-`.
-    fn parse(text: &str) -> Self {
-        let text = text.split_whitespace().collect::<Vec<_>>().join(" ").replace('±', "+/-");
-        let (text, mark_last) = without_mark(&text);
-        let (name, unit) = match text.strip_suffix(']').and_then(|rest| rest.rsplit_once('[')) {
-            Some((name, unit)) if !name.trim().is_empty() && !unit.trim().is_empty() => (name, Some(unit)),
-            _ => (text, None),
-        };
-        let (name, mark_first) = without_mark(name);
-        Self {
-            title: name.to_owned(),
-            unit: unit.map(|unit| unit.trim().to_owned()),
-            is_sigma: mark_first || mark_last,
-        }
+impl Header {
+    /// The header as it should read, where its last word looks like a unit: `Ca (mg/L)` and `Ca mg/L` give
+    /// `Ca [mg/L]`. For the message about a title that means nothing.
+    #[must_use]
+    pub fn suggestion(&self) -> Option<String> {
+        let (name, last) = self.title.rsplit_once([' ', ','])?;
+        let unit = last.trim_start_matches('(').trim_end_matches(')');
+        let like_a_unit = unit.contains('/') || ["%", "°C", "degC", "ppm", "ppb"].contains(&unit);
+        (self.unit.is_none() && like_a_unit)
+            .then(|| format!("{} [{unit}]", name.trim_end_matches([',', ' '])))
     }
 }
 
-impl fmt::Display for RawHeader {
-    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let mark = if self.is_sigma { " +/-" } else { "" };
-        match &self.unit {
-            Some(unit) => write!(f, "{}{mark} [{unit}]", self.title),
-            None => write!(f, "{}{mark}", self.title),
-        }
+impl FromStr for Below {
+    type Err = UnknownBelow;
+
+    /// `half`, `zero`, `limit` or `skip`.
+    fn from_str(text: &str) -> Result<Self, UnknownBelow> {
+        let policies =
+            [("half", Self::Half), ("zero", Self::Zero), ("limit", Self::Limit), ("skip", Self::Skip)];
+        let found = policies.iter().find(|(name, _)| *name == text);
+        found.map(|(_, policy)| *policy).ok_or_else(|| UnknownBelow {
+            asked: text.to_owned(),
+            nearest: nearest(text, policies.iter().map(|(name, _)| *name)).map(str::to_owned),
+        })
     }
-}
-
-fn without_mark(text: &str) -> (&str, bool) {
-    let text = text.trim();
-    text.strip_suffix("+/-").map_or((text, false), |rest| (rest.trim(), true))
-}
-
-/// A column to be read: where its values and their uncertainties stand.
-struct PlannedColumn {
-    header: Header,
-    /// Position of the values in the file.
-    values: usize,
-    /// Position, header and meaning of the uncertainties.
-    sigmas: Option<PlannedSigma>,
-}
-
-struct PlannedSigma {
-    position: usize,
-    header: String,
-    is_percent: bool,
-}
-
-/// The headers of the file after `columns` and `units` have been applied, one a position.
-fn headers(lines: &layout::Lines, options: &CsvOptions) -> Result<Vec<RawHeader>, CsvError> {
-    let mut in_file: Vec<String> = lines.header.clone();
-    for (from, to) in &options.columns {
-        let position = position_of(from, &in_file, &lines.header, "columns")?;
-        in_file[position].clone_from(to);
-    }
-    let mut headers: Vec<RawHeader> = in_file.iter().map(|text| RawHeader::parse(text)).collect();
-    for (name, unit) in &options.units {
-        let position = position_of(name, &in_file, &lines.header, "units")?;
-        let header = &mut headers[position];
-        if header.unit.is_some() {
-            return Err(CsvError::UnitTwice { header: header.to_string(), unit: unit.clone() });
-        }
-        header.unit = Some(unit.clone());
-    }
-    for (position, header) in headers.iter().enumerate() {
-        if let Some(first) = headers[..position].iter().position(|other| other == header) {
-            return Err(CsvError::DuplicateHeader {
-                header: header.to_string(),
-                first: first + 1,
-                second: position + 1,
-            });
-        }
-    }
-    Ok(headers)
-}
-
-/// The position of the header an option names, by its present text or by that in the file.
-fn position_of(
-    asked: &str,
-    headers: &[String],
-    in_file: &[String],
-    option: &'static str,
-) -> Result<usize, CsvError> {
-    let asked = asked.trim();
-    let found = [headers, in_file].iter().find_map(|texts| texts.iter().position(|text| text == asked));
-    found.ok_or_else(|| CsvError::NoSuchHeader {
-        option,
-        asked: asked.to_owned(),
-        nearest: nearest(asked, headers.iter().map(String::as_str)).map(str::to_owned),
-        headers: headers.to_vec(),
-    })
-}
-
-fn plan(
-    lines: &layout::Lines,
-    headers: Vec<RawHeader>,
-    options: &CsvOptions,
-    kind: impl Fn(&str) -> ColumnKind,
-) -> Result<Vec<PlannedColumn>, CsvError> {
-    let mut columns: Vec<PlannedColumn> = Vec::new();
-    for (position, header) in headers.iter().enumerate().filter(|(_, header)| !header.is_sigma) {
-        let is_numeric = match kind(&header.title) {
-            ColumnKind::Numbers => true,
-            ColumnKind::Texts => false,
-            ColumnKind::ByContent => header.unit.is_some() || reads_as_numbers(lines, position, options),
-        };
-        let header = Header { title: header.title.clone(), unit: header.unit.clone(), is_numeric };
-        columns.push(PlannedColumn { header, values: position, sigmas: None });
-    }
-    for (position, header) in headers.iter().enumerate().filter(|(_, header)| header.is_sigma) {
-        let column = column_of_sigma(header, &mut columns)?;
-        let is_percent = header.unit.as_deref() == Some("%") && column.header.unit.as_deref() != Some("%");
-        column.header.is_numeric = true;
-        column.sigmas = Some(PlannedSigma { position, header: header.to_string(), is_percent });
-    }
-    Ok(columns)
-}
-
-/// The column whose uncertainties stand under `header`: of the same name, and of the same unit if it states one.
-fn column_of_sigma<'a>(
-    header: &RawHeader,
-    columns: &'a mut [PlannedColumn],
-) -> Result<&'a mut PlannedColumn, CsvError> {
-    let namesakes: Vec<usize> =
-        (0..columns.len()).filter(|idx| columns[*idx].header.title == header.title).collect();
-    let Some(first) = namesakes.first() else {
-        return Err(CsvError::SigmaWithoutColumn { header: header.to_string(), title: header.title.clone() });
-    };
-    let same_unit = |idx: &&usize| columns[**idx].header.unit == header.unit;
-    let by_unit = namesakes.iter().find(same_unit).copied();
-    let only_one = namesakes.len() == 1 && matches!(header.unit.as_deref(), None | Some("%"));
-    let idx = by_unit.or_else(|| only_one.then_some(*first)).ok_or_else(|| CsvError::SigmaUnit {
-        header: header.to_string(),
-        column: columns[*first].header.to_string(),
-    })?;
-    let column = &mut columns[idx];
-    if let Some(other) = &column.sigmas {
-        return Err(CsvError::SigmaTwice {
-            first: other.header.clone(),
-            second: header.to_string(),
-            column: column.header.to_string(),
-        });
-    }
-    Ok(column)
-}
-
-/// Whether there is a number in this column, and nothing but numbers and missing values.
-fn reads_as_numbers(lines: &layout::Lines, position: usize, options: &CsvOptions) -> bool {
-    let texts = lines.rows.iter().filter_map(|row| row.cells.get(position));
-    let mut present = texts.filter(|text| !is_missing(text, options)).peekable();
-    present.peek().is_some() && present.all(|text| number::Reading::of(text).is_ok())
-}
-
-fn is_missing(text: &str, options: &CsvOptions) -> bool {
-    let added = options.missing.iter().map(|marker| marker.trim());
-    let same_number =
-        |marker: &str| number::plain(marker).zip(number::plain(text)).is_some_and(|(a, b)| a == b);
-    MISSING.into_iter().chain(added).any(|marker| marker == text || same_number(marker))
-}
-
-fn read_row(
-    row: &layout::Line,
-    width: usize,
-    columns: &[PlannedColumn],
-    options: &CsvOptions,
-    replacements: &mut Vec<Replacement>,
-) -> CsvRow {
-    let mut faults = Vec::new();
-    if row.cells.len() != width {
-        // The cells may have moved, so none of them is read as a number.
-        faults.push(RowFault::Ragged { line: row.line, found: row.cells.len(), expected: width });
-        let cells = columns.iter().map(|column| text_cell(row.cells.get(column.values))).collect();
-        return CsvRow { line: row.line, cells, faults };
-    }
-    let mut cells = Vec::with_capacity(columns.len());
-    for column in columns {
-        if !column.header.is_numeric {
-            cells.push(text_cell(row.cells.get(column.values)));
-            continue;
-        }
-        let text = &row.cells[column.values];
-        let cell = number_cell(text, options).map_err(|fault| (column.header.to_string(), fault));
-        let cell = cell.and_then(|cell| with_sigma(cell, row, column, options));
-        match cell {
-            Ok((cell, is_replaced)) => {
-                if is_replaced {
-                    replacements.push(Replacement {
-                        line: row.line,
-                        column: column.header.to_string(),
-                        original: text.clone(),
-                        used: cell.clone(),
-                    });
-                }
-                cells.push(cell);
-            }
-            Err((column, fault)) => {
-                faults.push(RowFault::Cell { line: row.line, column, fault });
-                cells.push(text_cell(Some(text)));
-            }
-        }
-    }
-    CsvRow { line: row.line, cells, faults }
-}
-
-/// In a column of texts only an empty cell is missing: `ND` may be a name.
-fn text_cell(text: Option<&String>) -> CsvCell {
-    text.filter(|text| !text.is_empty()).map_or(CsvCell::Missing, |text| CsvCell::Text(text.clone()))
-}
-
-/// The cell, and whether it stands in for a value below its detection limit.
-fn number_cell(text: &str, options: &CsvOptions) -> Result<(CsvCell, bool), CellFault> {
-    if is_missing(text, options) {
-        return Ok((CsvCell::Missing, false));
-    }
-    Ok(match number::Reading::of(text)? {
-        number::Reading::Value { value, sigma } => (CsvCell::Number { value, sigma }, false),
-        number::Reading::Below { limit } => (options.below.stand_in(limit), true),
-    })
-}
-
-/// The cell with the uncertainty that stands in its own column; what stands in for a value keeps its own.
-fn with_sigma(
-    (cell, is_replaced): (CsvCell, bool),
-    row: &layout::Line,
-    column: &PlannedColumn,
-    options: &CsvOptions,
-) -> Result<(CsvCell, bool), (String, CellFault)> {
-    let Some(planned) = &column.sigmas else { return Ok((cell, is_replaced)) };
-    let text = &row.cells[planned.position];
-    if is_missing(text, options) {
-        return Ok((cell, is_replaced));
-    }
-    let stated = number::sigma(text).map_err(|fault| (planned.header.clone(), fault))?;
-    let cell = match cell {
-        CsvCell::Number { value, sigma: None } if !is_replaced => {
-            let sigma = if planned.is_percent { value.abs() * stated / 100.0 } else { stated };
-            CsvCell::Number { value, sigma: Some(sigma) }
-        }
-        CsvCell::Number { sigma: Some(_), .. } if !is_replaced => {
-            return Err((planned.header.clone(), CellFault::SigmaTwice { text: text.clone() }));
-        }
-        other => other,
-    };
-    Ok((cell, is_replaced))
 }
 
 impl Below {

@@ -239,8 +239,44 @@ fn renaming_columns_and_giving_units() {
         "`units` gives `mmol/L` for `Calcium [mg/L]`, which states its unit: rename it in `columns` if the header is wrong",
     );
     refused(
+        CsvOptions { columns: map("pH", " "), ..CsvOptions::default() },
+        "`columns` gives `pH` no new header: write one, or leave the column as it is",
+    );
+    refused(
         CsvOptions { columns: map("Calcium [mg/L]", "pH"), ..CsvOptions::default() },
         "columns 1 and 2 are both called `pH`",
+    );
+}
+
+#[test]
+fn columns_may_swap_their_names() {
+    let swapped: std::collections::BTreeMap<String, String> =
+        map("a", "b").into_iter().chain(map("b", "a")).collect();
+    let options = CsvOptions { columns: swapped, ..CsvOptions::default() };
+    assert_eq!(columns(&read_with("a,b\n1,2\n", &options).unwrap()), ["b", "a"]);
+}
+
+#[test]
+fn suggestions_for_headers_that_mean_nothing() {
+    #[track_caller]
+    fn case(header: &str, expected: Option<&str>) {
+        let file = read(&format!("\"{header}\"\n1\n"));
+        assert_eq!(file.columns[0].suggestion().as_deref(), expected);
+    }
+    case("Ca (mg/L)", Some("Ca [mg/L]"));
+    case("Calcium, dissolved, mg/L", Some("Calcium, dissolved [mg/L]"));
+    case("temperature °C", Some("temperature [°C]"));
+    case("Fe(II)", None);
+    case("sampling date", None);
+    case("Ca [mg/L]", None);
+}
+
+#[test]
+fn policies_below_detection() {
+    assert_eq!("skip".parse(), Ok(Below::Skip));
+    assert_eq!(
+        "haf".parse::<Below>().unwrap_err().to_string(),
+        "`below` is `haf`: did you mean `half`? `half`, `zero`, `limit` and `skip` are understood"
     );
 }
 
