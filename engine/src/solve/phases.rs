@@ -61,8 +61,12 @@ fn move_to_new_amounts(system: &mut System) -> Option<usize> {
     }
     let share = first.map_or(1.0, |(share, _)| share);
     for (mineral_idx, old, amount) in moved {
-        let step = if share > 0.0 { share * (amount - old) } else { 0.0 };
-        system.mineral_amount[mineral_idx] = (old + step).max(0.0);
+        let moved = match share {
+            0.0 => old,
+            1.0 => amount,
+            share => old + share * (amount - old),
+        };
+        system.mineral_amount[mineral_idx] = moved.max(0.0);
     }
     let (_, column) = first?;
     if let Some(mineral_idx) = system.mineral_of(column) {
