@@ -1,7 +1,7 @@
 //! Properties of the solver that need no reference value, on thousands of random problems.
 
 use crate::random_systems::{self, HARD, Random};
-use lysocline_engine::activity::Model;
+use lysocline_engine::activity::{Davies, Model};
 use lysocline_engine::solve::{Converged, Problem, Settings, SolveError, solve};
 use rayon::prelude::*;
 
@@ -63,47 +63,97 @@ fn sweep(name: &str, count: u64, model: Model, make: impl Fn(&mut Random) -> Opt
     assert!(iterations.len() as u64 >= count * 9 / 10, "{name}: only {} of {count} posed", iterations.len());
 }
 
+fn plain(random: &mut Random) -> Option<Problem> {
+    Some(random_systems::tableau(random, HARD))
+}
+
+fn with_fixed_component(random: &mut Random) -> Option<Problem> {
+    let mut problem = random_systems::tableau(random, HARD);
+    random_systems::hold_component(&mut problem, 0, -random.uniform(0.0, 14.0) * random_systems::LN_10);
+    Some(problem)
+}
+
+/// Up to `most` minerals around the saturation of the mineral-free solution.
+fn with_minerals(random: &mut Random, mut problem: Problem, most: i64) -> Option<Problem> {
+    let ln_a = solve(&problem, &Model::IDEAL, &Settings::default(), None).ok()?.ln_a;
+    let count = random.integer(1, most) as usize;
+    random_systems::add_minerals(random, &mut problem, &ln_a, count);
+    Some(problem)
+}
+
+fn davies() -> Model {
+    Model::davies(Davies::new(0.509))
+}
+
 #[test]
 fn random_tableaux_are_solved() {
-    sweep("tableaux", 10_000, Model::IDEAL, |random| Some(random_systems::tableau(random, HARD)));
+    sweep("tableaux", 10_000, Model::IDEAL, plain);
 }
 
 #[test]
 fn random_tableaux_with_a_fixed_component_are_solved() {
-    sweep("fixed component", 4000, Model::IDEAL, |random| {
-        let mut problem = random_systems::tableau(random, HARD);
-        random_systems::hold_component(&mut problem, 0, -random.uniform(0.0, 14.0) * random_systems::LN_10);
-        Some(problem)
-    });
+    sweep("fixed component", 4000, Model::IDEAL, with_fixed_component);
 }
 
 #[test]
 fn random_tableaux_with_minerals_are_solved() {
     sweep("minerals", 5000, Model::IDEAL, |random| {
-        let mut problem = random_systems::tableau(random, HARD);
-        let ln_a = solve(&problem, &Model::IDEAL, &Settings::default(), None).ok()?.ln_a;
-        let count = random.integer(1, 8) as usize;
-        random_systems::add_minerals(random, &mut problem, &ln_a, count);
-        Some(problem)
+        let problem = plain(random)?;
+        with_minerals(random, problem, 8)
     });
 }
+
 #[test]
 fn random_tableaux_with_minerals_and_a_fixed_component_are_solved() {
     sweep("minerals, fixed component", 5000, Model::IDEAL, |random| {
-        let mut problem = random_systems::tableau(random, HARD);
-        random_systems::hold_component(&mut problem, 0, -random.uniform(0.0, 14.0) * random_systems::LN_10);
-        let ln_a = solve(&problem, &Model::IDEAL, &Settings::default(), None).ok()?.ln_a;
-        let count = random.integer(1, 8) as usize;
-        random_systems::add_minerals(random, &mut problem, &ln_a, count);
-        Some(problem)
+        let problem = with_fixed_component(random)?;
+        with_minerals(random, problem, 8)
     });
 }
 
 #[test]
 fn random_tableaux_with_davies_are_solved() {
-    let davies = Model::davies(lysocline_engine::activity::Davies::new(0.509));
-    sweep("davies", 4000, davies, |random| {
-        let mut problem = random_systems::tableau(random, HARD);
+    sweep("davies", 4000, davies(), |random| {
+        let mut problem = plain(random)?;
+        random_systems::add_charges(random, &mut problem);
+        Some(problem)
+    });
+}
+
+#[test]
+fn random_tableaux_with_davies_and_minerals_are_solved() {
+    sweep("davies, minerals", 3000, davies(), |random| {
+        let problem = plain(random)?;
+        let mut problem = with_minerals(random, problem, 5)?;
+        random_systems::add_charges(random, &mut problem);
+        Some(problem)
+    });
+}
+
+/// The same families at ten times the size and with many minerals; some minutes.
+#[test]
+#[ignore = "a long campaign"]
+fn a_long_campaign_of_random_systems_is_solved() {
+    sweep("tableaux", 100_000, Model::IDEAL, plain);
+    sweep("fixed component", 100_000, Model::IDEAL, with_fixed_component);
+    for (name, count, most) in [("1 to 8 minerals", 100_000, 8), ("1 to 40 minerals", 20_000, 40)] {
+        sweep(name, count, Model::IDEAL, |random| {
+            let problem = plain(random)?;
+            with_minerals(random, problem, most)
+        });
+    }
+    sweep("minerals, fixed component", 100_000, Model::IDEAL, |random| {
+        let problem = with_fixed_component(random)?;
+        with_minerals(random, problem, 8)
+    });
+    sweep("davies", 100_000, davies(), |random| {
+        let mut problem = plain(random)?;
+        random_systems::add_charges(random, &mut problem);
+        Some(problem)
+    });
+    sweep("davies, minerals", 50_000, davies(), |random| {
+        let problem = plain(random)?;
+        let mut problem = with_minerals(random, problem, 5)?;
         random_systems::add_charges(random, &mut problem);
         Some(problem)
     });
