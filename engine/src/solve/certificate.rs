@@ -121,6 +121,7 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
 ///
 /// With `δ = max |J⁻¹F| + max |J⁻¹| dF`, C the largest Σ|ν'| of a species and κ the largest row sum of |J⁻¹| |J|: if
 /// `(exp(4 C δ) - 1) κ <= 1/2`, then `y - J⁻¹F(y)` contracts the box of radius 2δ into itself, so the solution is in it.
+/// The rounding of ln c itself comes on top.
 fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64) {
     let (reduced, point) = (&settled.reduced, &settled.point);
     let n = reduced.n();
@@ -142,7 +143,8 @@ fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64)
     }
     let delta = delta.0 + delta.1;
     let applies = (4.0 * reduced.row_max * delta).exp_m1() * kappa <= 0.5;
-    (applies.then_some(2.0 * delta * reduced.row_max), condition)
+    let evaluation = (0..reduced.species.len()).map(|i| reduced.rounding(i, &point.y)).fold(0.0, f64::max);
+    (applies.then_some(2.0 * delta * reduced.row_max + evaluation), condition)
 }
 
 /// `Σ_k |∂y/∂T_k| |T_k|` of one basis level, given its row of J⁻¹.
