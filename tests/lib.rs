@@ -4,3 +4,5 @@
 mod properties;
 #[cfg(test)]
 mod random_systems;
+#[cfg(test)]
+mod two_routes;

@@ -57,7 +57,7 @@ pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: 
     let (ln_c_error, condition) = error_and_condition(system, settled);
     let minerals = || phases.mineral_ln_saturation.iter().zip(&phases.mineral_present);
     let absent = minerals().filter(|(_, present)| !**present).map(|(saturation, _)| *saturation);
-    let present = minerals().filter(|(_, present)| **present).map(|(saturation, _)| saturation.abs());
+    let present = (0..).zip(&phases.mineral_present).filter(|(_, present)| **present).map(|(p, _)| p);
     let amounts = phases.mineral_amount.iter().zip(&phases.mineral_present);
     Certificate {
         balance,
@@ -65,13 +65,20 @@ pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: 
         residual: settled.point.worst,
         ln_c_error,
         saturation: absent.fold(f64::NEG_INFINITY, f64::max),
-        present_saturation: present.fold(0.0, f64::max),
+        present_saturation: present.map(|p| saturation_from_components(system, p).abs()).fold(0.0, f64::max),
         smallest_amount: amounts.filter(|(_, present)| **present).map(|(n, _)| *n).fold(f64::INFINITY, f64::min),
         ionic_strength: relative(settled.ionic_strength_residual, settled.ionic_strength),
         ionic_strength_roots: settled.roots,
         outside_validity: model.valid_to().is_some_and(|limit| settled.ionic_strength > limit),
         condition,
     }
+}
+
+/// ln saturation of a mineral from the activities of the components, independent of the basis it is part of.
+fn saturation_from_components(system: &System, mineral_idx: usize) -> f64 {
+    let row = system.mineral_row(mineral_idx);
+    let made_of = system.basis.input_row(row).iter().enumerate().filter(|(_, nu)| **nu != 0.0);
+    system.g[row] + made_of.map(|(k, nu)| nu * system.level_of(system.basis.unit_row(k))).sum::<f64>()
 }
 
 fn relative(error: f64, size: f64) -> f64 {
@@ -114,6 +121,7 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
 ///
 /// With `δ = max |J⁻¹F| + max |J⁻¹| dF`, C the largest Σ|ν'| of a species and κ the largest row sum of |J⁻¹| |J|: if
 /// `(exp(4 C δ) - 1) κ <= 1/2`, then `y - J⁻¹F(y)` contracts the box of radius 2δ into itself, so the solution is in it.
+/// The rounding of ln c itself comes on top.
 fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64) {
     let (reduced, point) = (&settled.reduced, &settled.point);
     let n = reduced.n();
@@ -135,7 +143,8 @@ fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64)
     }
     let delta = delta.0 + delta.1;
     let applies = (4.0 * reduced.row_max * delta).exp_m1() * kappa <= 0.5;
-    (applies.then_some(2.0 * delta * reduced.row_max), condition)
+    let evaluation = (0..reduced.species.len()).map(|i| reduced.rounding(i, &point.y)).fold(0.0, f64::max);
+    (applies.then_some(2.0 * delta * reduced.row_max + evaluation), condition)
 }
 
 /// `Σ_k |∂y/∂T_k| |T_k|` of one basis level, given its row of J⁻¹.

@@ -107,8 +107,8 @@ impl Coupling<'_, '_> {
         let (mut here, mut factor) = (start, 1.0);
         loop {
             // r(I) + I is not negative, so the first step, the plain fixed point, stays at I >= 0.
-            let x = (here.x + factor * here.f).max(0.0);
-            if !(x <= FARTHEST) {
+            let x = (here.x + factor * here.f).clamp(0.0, FARTHEST);
+            if here.x == FARTHEST && here.f > 0.0 {
                 return Err(SolveError::NoIonicStrength { searched_to: FARTHEST });
             }
             let next = self.sample(x)?;

@@ -75,6 +75,9 @@ pub enum SolveError {
         /// Which entry.
         idx: usize,
     },
+    /// The stoichiometric coefficients, brought to integers, do not fit the exact arithmetic of the tableau.
+    #[error("the stoichiometric coefficients of a component need a common denominator below 2^20 and integers below 2^30")]
+    CoefficientsTooLarge,
     /// A linear combination of the totals has a sign that no species and no phase can give it.
     #[error("no composition has these totals: the combination {combination:?} of them is {value:e}, and every species and phase contributes to it with the other sign or not at all")]
     Infeasible {
