@@ -404,7 +404,7 @@ fn missing_token(token: &str, purpose: &str) -> (String, Option<String>) {
         "," if purpose.contains("array") => list("]", "an array `[…`"),
         "," if purpose.contains("map") => list("}", "a map `#{ …`"),
         "," if purpose.contains("argument") => list(")", "a call `f(…`"),
-        "}" => ("`}` is missing at the end".to_owned(), Some("a block `{ …` is still open".to_owned())),
+        "}" => ("`}` is missing at the end".to_owned(), Some("a block `{ …` or a map `#{ …` is still open".to_owned())),
         _ => (format!("`{token}` is missing {}", lowercase_start(purpose).trim()), None),
     }
 }
