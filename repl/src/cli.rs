@@ -36,7 +36,7 @@ pub struct Run {
     /// The script
     pub file: PathBuf,
 
-    /// Words the script reads with `args()`
+    /// Words the script reads with `args()`; `--` before them keeps options from being read by the program
     #[arg(trailing_var_arg = true, allow_hyphen_values = true)]
     pub arguments: Vec<OsString>,
 

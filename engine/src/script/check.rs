@@ -5,7 +5,7 @@ use std::collections::BTreeSet;
 use rhai::{AST, ASTNode, Expr, FnCallExpr, Position, Stmt};
 
 use super::diagnostic::At;
-use super::{Fail, fail, numbers, words};
+use super::{Fail, fail, words};
 
 /// Names of functions and methods whose only effect is their result. A statement that drops such a result is a
 /// mistake: values here never change in place.
@@ -26,7 +26,9 @@ pub(super) fn check(ast: &AST, own: &BTreeSet<String>, pure: &Pure, ends_with_se
     checker.block(ast.statements(), !ends_with_semicolon);
     for function in ast.iter_functions() {
         let (name, arity) = (function.name, function.params.len());
-        checker.function_body(&ast.clone_functions_only_filtered(|_, _, _, n, a| n == name && a == arity));
+        let mut alone = ast.clone_functions_only();
+        alone.retain_functions(|_, _, n, a| n == name && a == arity);
+        checker.function_body(&alone);
     }
     ast.walk(&mut |path| {
         if let Some(node) = path.last() {
@@ -108,7 +110,7 @@ impl Checker<'_> {
 
     fn result_of(&self, call: &FnCallExpr, position: Position) -> Option<(String, Position)> {
         let name = call.name.as_str();
-        if call.op_token.is_some() || name == numbers::DIVIDE || name == numbers::PLUS_MINUS {
+        if call.op_token.is_some() || words::deed(name).is_some() {
             return Some((format!("`{}`", words::sign(name)), position));
         }
         (self.pure.0.contains(name) && !self.own.contains(name)).then(|| (format!("`{name}`"), position))
@@ -151,6 +153,29 @@ pub(super) enum Spot {
     Token(Position),
     /// Characters within the text literal that begins here.
     Within { literal: Position, content: String, start: usize, length: usize },
+}
+
+/// The place of the one call of `method`; none if there are several.
+pub(super) fn only_call(ast: &AST, method: &str) -> Position {
+    let mut places = BTreeSet::new();
+    ast.walk(&mut |path| {
+        if let Some(ASTNode::Expr(Expr::MethodCall(call, position))) = path.last()
+            && call.name == method
+        {
+            places.insert((position.line(), position.position()));
+        }
+        true
+    });
+    match places.first() {
+        Some((Some(line), column)) if places.len() == 1 => place_of(*line, column.unwrap_or(1)),
+        _ => Position::NONE,
+    }
+}
+
+/// Lines and columns come from the interpreter's own positions, which are two bytes wide.
+fn place_of(line: usize, column: usize) -> Position {
+    let small = |number: usize| u16::try_from(number).unwrap_or(u16::MAX);
+    Position::new(small(line).max(1), small(column))
 }
 
 fn part(ast: &AST, call: &FnCallExpr, at: &At) -> Option<Spot> {

@@ -206,10 +206,15 @@ fn token_length(rest: &[char]) -> usize {
         Some('"' | '`') => quoted_length(rest),
         Some(c) if c.is_alphabetic() || *c == '_' => run(|c| c.is_alphanumeric() || *c == '_'),
         Some(c) if c.is_ascii_digit() => run(|c| c.is_ascii_alphanumeric() || matches!(c, '.' | '_')),
-        Some(c) if "+-*/=<>!&|^%?:".contains(*c) => run(|c| "+-*/=<>!&|^%?:".contains(*c)),
-        Some('#') => 2.min(rest.len()),
+        Some(_) if is_double_sign(rest) => 2,
         Some(_) => 1,
     }
+}
+
+fn is_double_sign(rest: &[char]) -> bool {
+    const SIGNS: [&str; 17] =
+        ["==", "!=", "<=", ">=", "&&", "||", "**", "+=", "-=", "*=", "/=", "%=", "??", "..", "::", "=>", "#{"];
+    rest.get(..2).is_some_and(|two| SIGNS.iter().any(|sign| sign.chars().eq(two.iter().copied())))
 }
 
 fn quoted_length(rest: &[char]) -> usize {

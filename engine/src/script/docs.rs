@@ -15,6 +15,8 @@ pub struct Entry {
     pub name: String,
     /// `pow(x: number, y: number) -> number`.
     pub signature: String,
+    /// Number of parameters, the receiver of a method included.
+    pub parameters: usize,
     /// The doc comment without its marks; empty when there is none.
     pub text: String,
     /// Read without brackets, after a dot.
@@ -100,6 +102,7 @@ fn entry(info: &FuncInfo) -> Option<Entry> {
     let name = property.unwrap_or(&data.name).to_owned();
     Some(Entry {
         signature: signature(&name, info, property.is_some()),
+        parameters: data.num_params,
         name,
         text: comment(&data.comments),
         is_property: property.is_some(),

@@ -197,6 +197,7 @@ impl ScriptEngine {
         entries.extend(own.map(|function| Entry {
             name: function.name.to_owned(),
             signature: format!("{}({})", function.name, function.params.join(", ")),
+            parameters: function.params.len(),
             text: String::new(),
             is_property: false,
             receiver: None,
@@ -210,7 +211,7 @@ impl ScriptEngine {
 /// The text without a byte-order mark, and with a `#!` line made blank so that lines keep their numbers.
 pub(super) fn clean(text: &str) -> String {
     let text = text.strip_prefix('\u{feff}').unwrap_or(text);
-    if text.starts_with("#!") { format!("//{}", &text[2..]) } else { text.to_owned() }
+    text.strip_prefix("#!").map_or_else(|| text.to_owned(), |rest| format!("// {rest}"))
 }
 
 fn set_limits(engine: &mut Engine) {

@@ -16,6 +16,7 @@ pub mod vocabulary;
 pub mod words;
 
 mod check;
+mod compare;
 mod engine;
 mod expect;
 mod general;

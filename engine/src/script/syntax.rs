@@ -4,10 +4,12 @@
 
 use rhai::{Engine, LexError, Position, Token};
 
+use super::compare::ORDERINGS;
 use super::numbers::{DIVIDE, PLUS_MINUS};
 
-/// As tight as `*`.
+/// As tight as the signs they stand for.
 const DIVIDE_PRECEDENCE: u8 = 180;
+const ORDERING_PRECEDENCE: u8 = 130;
 /// Tighter than `*` and looser than a sign: `2 * 1.5 ± 0.1` is two times the uncertain number.
 const PLUS_MINUS_PRECEDENCE: u8 = 185;
 
@@ -19,7 +21,9 @@ const TOO_LARGE: &str = "this number is too large: the largest is about 1.8e308"
 
 /// Installs the reading rules.
 pub(super) fn install(engine: &mut Engine) {
-    for (operator, precedence) in [(DIVIDE, DIVIDE_PRECEDENCE), (PLUS_MINUS, PLUS_MINUS_PRECEDENCE)] {
+    let orderings = ORDERINGS.map(|(operator, _)| (operator, ORDERING_PRECEDENCE));
+    let others = [(DIVIDE, DIVIDE_PRECEDENCE), (PLUS_MINUS, PLUS_MINUS_PRECEDENCE)];
+    for (operator, precedence) in orderings.into_iter().chain(others) {
         // The names are no identifiers, so nothing in a script can clash with them and this cannot fail.
         let registered = engine.register_custom_operator(operator, precedence);
         debug_assert!(registered.is_ok(), "{registered:?}");
@@ -30,14 +34,24 @@ pub(super) fn install(engine: &mut Engine) {
 
 fn read(token: Token) -> Token {
     match token {
-        Token::Divide => Token::Custom(Box::new(DIVIDE.into())),
-        Token::LexError(error) if is_plus_minus(&error) => Token::Custom(Box::new(PLUS_MINUS.into())),
+        Token::Divide => operator(DIVIDE),
+        Token::LexError(error) if is_plus_minus(&error) => operator(PLUS_MINUS),
+        Token::LessThan | Token::LessThanEqualsTo | Token::GreaterThan | Token::GreaterThanEqualsTo => ordering(&token),
         Token::DivideAssign => refused(NO_DIVIDE_ASSIGN),
         Token::XOr | Token::XOrAssign => refused(NO_POWER),
         Token::PowerOf | Token::PowerOfAssign => refused(NO_DOUBLE_STAR),
         Token::FloatConstant(ref x) if x.0.is_infinite() => refused(TOO_LARGE),
         other => other,
     }
+}
+
+fn operator(name: &str) -> Token {
+    Token::Custom(Box::new(name.into()))
+}
+
+fn ordering(token: &Token) -> Token {
+    let sign = token.literal_syntax();
+    ORDERINGS.iter().find(|(_, plain)| *plain == sign).map_or_else(|| token.clone(), |(name, _)| operator(name))
 }
 
 fn is_plus_minus(error: &LexError) -> bool {

@@ -83,6 +83,10 @@ impl Translator<'_> {
             },
             EvalAltResult::ErrorTerminated(token, _) => self.halted(token.try_cast::<Halt>(), position, source),
             EvalAltResult::ErrorParsing(error, _) => self.syntax(&error, position, source),
+            EvalAltResult::ErrorDataRace(ref what, _) => {
+                let (message, help) = self.message(&error);
+                Diagnostic { help, ..self.at(source, self.racing_call(what, source), Kind::Failure, message) }
+            }
             other => {
                 let (message, help) = self.message(&other);
                 Diagnostic { help, ..self.at(source, position, Kind::Failure, message) }
@@ -115,6 +119,12 @@ impl Translator<'_> {
                 Some(place)
             }
         }
+    }
+
+    /// The interpreter gives no place, only `argument #1 of function 'map'`: found if there is one such call.
+    fn racing_call(&self, what: &str, source: &str) -> Position {
+        let method = what.split('\'').nth(1).unwrap_or("");
+        self.text_of(source).map_or(Position::NONE, |text| super::check::only_call(&text.ast, method))
     }
 
     fn halted(&self, halt: Option<Halt>, position: Position, source: &str) -> Diagnostic {
@@ -154,10 +164,7 @@ impl Translator<'_> {
                 "this value is being read and changed at the same time".to_owned(),
                 "a closure may not use the array it is called on: copy it first, `let copy = a;`, or compute what you need before",
             ),
-            EvalAltResult::ErrorAssignmentToConstant(name, _) => advised(
-                if name.is_empty() { "a constant cannot be changed".to_owned() } else { format!("`{name}` is a constant and cannot be changed") },
-                "define it with `let` if it must change",
-            ),
+            EvalAltResult::ErrorAssignmentToConstant(name, _) => advised(constant(name), "define it with `let` if it must change"),
             EvalAltResult::ErrorNonPureMethodCallOnConstant(name, _) => plain(format!("`{name}` would change a constant")),
             EvalAltResult::ErrorArithmetic(text, _) => arithmetic(text),
             EvalAltResult::ErrorStackOverflow(_) => advised(
@@ -202,8 +209,7 @@ impl Translator<'_> {
         let given = types.iter().map(|rust| words::a_type(rust)).collect::<Vec<_>>().join(", ");
         let same: Vec<&Entry> = self.entries.iter().filter(|entry| entry.name == name).collect();
         if !same.is_empty() {
-            let given = if given.is_empty() { "no arguments".to_owned() } else { given };
-            return (format!("`{name}` does not take {given}"), forms(&same));
+            return (misfit(name, &given, types.len(), &same), forms(&same));
         }
         if self.variables.iter().any(|variable| variable == name) {
             return (format!("there is no function `{name}`"), vec![format!("`{name}` is a variable; if it holds a closure, write `{name}.call(x)`")]);
@@ -216,7 +222,7 @@ impl Translator<'_> {
         if owner == Some("()") {
             return (
                 format!("there is nothing `()` before `.{name}`"),
-                vec!["a key that a map does not have gives `()`: check its spelling".to_owned()],
+                vec![words::MISSING_KEY.to_owned()],
             );
         }
         let names = self.entries.iter().filter(|entry| !entry.is_standard || entry.is_property);
@@ -239,14 +245,23 @@ impl Translator<'_> {
 
     fn syntax(&self, error: &ParseErrorType, position: Position, source: &str) -> Diagnostic {
         let text = self.text_of(source).map(|source| source.text.clone()).unwrap_or_default();
-        let (position, begins_line) = end_of_code(&text, position);
+        let begins_line = begins_line(&text, position);
         let (message, help) = syntax_message(error, begins_line);
-        let place = match begins_line.then(|| previous_code_line(&text, position)).flatten() {
-            Some((line, column)) if is_missing_semicolon(error) => Some(Place::of_token(source, &text, line, column)),
-            _ => self.place(source, position),
+        let looks_back = (begins_line && is_missing_semicolon(error)) || is_beyond(&text, position);
+        let place = match looks_back.then(|| last_code_before(&text, position)).flatten() {
+            Some((line, column)) => Some(Place::of_token(source, &text, line, column)),
+            None => self.place(source, position),
         };
         Diagnostic { place, help: help.into_iter().collect(), ..Diagnostic::new(Kind::Syntax, message) }
     }
+}
+
+fn constant(name: &str) -> String {
+    if name.is_empty() { "a fixed value cannot be set".to_owned() } else { format!("`{name}` is a constant and cannot be changed") }
+}
+
+fn counted(count: usize, noun: &str) -> String {
+    format!("{count} {noun}{}", if count == 1 { "" } else { "s" })
 }
 
 fn called(name: &str) -> String {
@@ -298,10 +313,25 @@ fn cannot(operator: &str, deed: &str, types: &[&str]) -> String {
                 "compare" => "with",
                 _ => "and",
             };
+            if sign == super::numbers::PLUS_MINUS {
+                return "`±` stands between a number and its standard uncertainty".to_owned();
+            }
             format!("cannot {deed} {} {between} {}", words::a_type(left), words::a_type(right))
         }
         _ => format!("cannot {deed} these"),
     }
+}
+
+fn misfit(name: &str, given: &str, count: usize, same: &[&Entry]) -> String {
+    if same.iter().any(|entry| entry.parameters == count) {
+        return format!("`{name}` does not take ({given})");
+    }
+    let mut counts: Vec<usize> = same.iter().map(|entry| entry.parameters).collect();
+    counts.sort_unstable();
+    counts.dedup();
+    let wanted = counts.iter().map(ToString::to_string).collect::<Vec<_>>().join(" or ");
+    let noun = if counts == [1] { "argument" } else { "arguments" };
+    format!("`{name}` takes {wanted} {noun}, not {count}")
 }
 
 fn forms(same: &[&Entry]) -> Vec<String> {
@@ -337,21 +367,23 @@ fn syntax_message(error: &ParseErrorType, begins_line: bool) -> (String, Option<
         ParseErrorType::MissingToken(token, _) if token == ";" => {
             advised("`;` or an operator is missing here", "every statement but the last ends with `;`")
         }
-        ParseErrorType::MissingToken(token, purpose) => plain(format!("`{token}` is missing {}", lowercase_start(purpose).trim())),
+        ParseErrorType::MissingToken(token, purpose) => missing_token(token, purpose),
         ParseErrorType::MissingSymbol(text) => plain(lowercase_start(text)),
         ParseErrorType::UnknownOperator(operator) => plain(format!("there is no operator `{operator}`")),
         ParseErrorType::DuplicatedProperty(key) => plain(format!("the key `{key}` appears twice")),
         ParseErrorType::DuplicatedVariable(name) | ParseErrorType::VariableExists(name) => plain(format!("the variable `{name}` is defined twice")),
         ParseErrorType::VariableUndefined(name) => plain(format!("there is no variable `{name}`")),
         ParseErrorType::ModuleUndefined(name) => plain(format!("there is no module `{name}`")),
-        ParseErrorType::FnDuplicatedDefinition(name, count) => plain(format!("the function `{name}` with {count} parameters is defined twice")),
+        ParseErrorType::FnDuplicatedDefinition(name, count) => {
+            plain(format!("the function `{name}` is defined twice for {}", counted(*count, "parameter")))
+        }
         ParseErrorType::FnDuplicatedParam(function, name) => plain(format!("the parameter `{name}` of `{function}` appears twice")),
         ParseErrorType::Reserved(word) => (
             format!("`{word}` is a word of the language and cannot be a name"),
             Some(format!("as a key, quote it: `\"{word}\"`")),
         ),
         ParseErrorType::ExprTooDeep => advised("this expression is nested too deeply", "split it up with `let`"),
-        ParseErrorType::AssignmentToConstant(name) => plain(format!("`{name}` is a constant and cannot be changed")),
+        ParseErrorType::AssignmentToConstant(name) => (constant(name), None),
         ParseErrorType::AssignmentToInvalidLHS(_) => advised("only a variable or a member of one can be set", "to compare, write `==`"),
         ParseErrorType::PropertyExpected => advised("a key or a property name is missing here", "a key with other characters than letters and digits is quoted: `\"Ca^2+\": …`"),
         ParseErrorType::VariableExpected => plain("a variable name is missing here".to_owned()),
@@ -364,13 +396,30 @@ fn syntax_message(error: &ParseErrorType, begins_line: bool) -> (String, Option<
     }
 }
 
+fn missing_token(token: &str, purpose: &str) -> (String, Option<String>) {
+    let list = |close: &str, what: &str| {
+        (format!("`,` or `{close}` is missing here"), Some(format!("{what} is still open")))
+    };
+    match token {
+        "," if purpose.contains("array") => list("]", "an array `[…`"),
+        "," if purpose.contains("map") => list("}", "a map `#{ …`"),
+        "," if purpose.contains("argument") => list(")", "a call `f(…`"),
+        "}" => ("`}` is missing at the end".to_owned(), Some("a block `{ …` or a map `#{ …` is still open".to_owned())),
+        _ => (format!("`{token}` is missing {}", lowercase_start(purpose).trim()), None),
+    }
+}
+
 fn lexical(error: &LexError) -> (String, Option<String>) {
     match error {
         LexError::UnterminatedString => ("this text has no closing quote".to_owned(), Some("text over several lines stands in back-ticks".to_owned())),
+        LexError::UnexpectedInput(text) if matches!(text.as_str(), ";" | "," | ")" | "]" | "}") => {
+            (format!("`{text}` does not fit here"), Some("is an expression missing before it?".to_owned()))
+        }
         LexError::UnexpectedInput(text) => (
             format!("`{text}` has no meaning here"),
             (!text.is_ascii()).then(|| "outside of quotes only plain letters, digits and signs are read".to_owned()),
         ),
+        LexError::ImproperSymbol(sign, _) if sign == "=" => ("`=` sets a variable".to_owned(), Some("to compare, write `==`".to_owned())),
         LexError::MalformedNumber(text) => (format!("`{text}` is not a number"), None),
         LexError::MalformedEscapeSequence(text) => (format!("`{text}` is not an escape"), Some("a backslash itself is written `\\\\`".to_owned())),
         LexError::MalformedIdentifier(text) => (format!("`{text}` is not a name"), None),
@@ -383,16 +432,21 @@ fn lexical(error: &LexError) -> (String, Option<String>) {
     }
 }
 
-/// The position, moved back into the text if it lies beyond its end, and whether it is the first of its line.
-fn end_of_code(text: &str, position: Position) -> (Position, bool) {
-    let Some(line) = position.line() else { return (position, false) };
-    let column = position.position().unwrap_or(1);
-    let before = text.lines().nth(line - 1).unwrap_or("").chars().take(column.saturating_sub(1)).collect::<String>();
-    (position, before.trim().is_empty() && line > 1)
+/// Whether nothing but space stands before the position in its line.
+fn begins_line(text: &str, position: Position) -> bool {
+    let Some(line) = position.line().filter(|line| *line > 1) else { return false };
+    let before = position.position().unwrap_or(1).saturating_sub(1);
+    text.lines().nth(line - 1).unwrap_or("").chars().take(before).all(char::is_whitespace)
+}
+
+/// Whether the text ends before the position: then its last code is shown instead.
+fn is_beyond(text: &str, position: Position) -> bool {
+    let Some(line) = position.line() else { return false };
+    text.lines().nth(line - 1).is_none_or(|text| text.trim().is_empty())
 }
 
 /// Line and column of the last character of code before the line of `position`.
-fn previous_code_line(text: &str, position: Position) -> Option<(usize, usize)> {
+fn last_code_before(text: &str, position: Position) -> Option<(usize, usize)> {
     let lines: Vec<&str> = text.lines().take(position.line()? - 1).collect();
     let (index, line) = lines.iter().enumerate().rev().find(|(_, line)| {
         let code = line.trim();

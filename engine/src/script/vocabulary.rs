@@ -1,11 +1,13 @@
 //! The words of the language: what is registered with the interpreter, and how each native type joins.
 
+use std::cmp::Ordering;
+
 use rhai::plugin::*;
-use rhai::{Engine, Module, Shared, Variant};
+use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 
 use super::check::Pure;
 use super::show::{Shows, Style};
-use super::{Fail, Host, expect, general, ledger, numbers, quantity, reaction, sample, state};
+use super::{Fail, Host, ScriptResult, compare, expect, general, ledger, numbers, quantity, reaction, sample, state};
 
 /// Gathers everything a script can name.
 pub struct Vocabulary {
@@ -29,6 +31,7 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
 pub(super) fn base(vocabulary: &mut Vocabulary) {
     vocabulary
         .module(rhai::exported_module!(numbers::number_functions))
+        .module(rhai::exported_module!(compare::comparisons))
         .module(rhai::exported_module!(general::general_functions))
         .pure(&["pow", "exp10", "exp", "ln", "log10", "sqrt", "abs", "min", "max", "idiv", "fmt"])
         .pure(&["linspace", "logspace", "steps", "args"])
@@ -71,12 +74,51 @@ impl Vocabulary {
     ) -> &mut Self {
         self.shows.set(show);
         let shown = |context: NativeCallContext, value: &mut T| {
-            Host::of(&context).show(&rhai::Dynamic::from(value.clone()))
+            Host::of(&context).show(&Dynamic::from(value.clone()))
         };
         self.engine()
             .register_type_with_name::<T>(name)
             .register_fn(rhai::FUNC_TO_STRING, shown)
             .register_fn(rhai::FUNC_TO_DEBUG, shown);
+        self
+    }
+
+    /// Adds an operator with `T` on the left, on the right, or on both sides: whatever stands beside it arrives as it is,
+    /// so that `f` can take numbers too and refuse the rest. (Rhai converts no whole number by itself.)
+    pub fn operator<T: Variant + Clone, R: Variant + Clone>(
+        &mut self,
+        sign: &str,
+        f: fn(&Dynamic, &Dynamic) -> ScriptResult<R>,
+    ) -> &mut Self {
+        let name = if sign == "/" { numbers::DIVIDE } else { sign };
+        self.engine()
+            .register_fn(name, move |a: T, b: Dynamic| f(&Dynamic::from(a), &b))
+            .register_fn(name, move |a: Dynamic, b: T| f(&a, &Dynamic::from(b)));
+        self
+    }
+
+    /// Adds `==` and `!=`. `equal` must refuse what cannot be compared: the interpreter would answer `false`.
+    pub fn equality<T: Variant + Clone>(&mut self, equal: fn(&Dynamic, &Dynamic) -> ScriptResult<bool>) -> &mut Self {
+        let signs: [(&str, bool); 2] = [("==", true), ("!=", false)];
+        for (sign, wanted) in signs {
+            self.engine()
+                .register_fn(sign, move |a: T, b: Dynamic| Ok::<_, Box<EvalAltResult>>(equal(&Dynamic::from(a), &b)? == wanted))
+                .register_fn(sign, move |a: Dynamic, b: T| Ok::<_, Box<EvalAltResult>>(equal(&a, &Dynamic::from(b))? == wanted));
+        }
+        self
+    }
+
+    /// Adds `<`, `<=`, `>`, `>=`. `order` gives `None` where neither is above the other, and refuses what has no order.
+    pub fn ordered<T: Variant + Clone>(
+        &mut self,
+        order: fn(&Dynamic, &Dynamic) -> ScriptResult<Option<Ordering>>,
+    ) -> &mut Self {
+        for ((name, _), holds) in compare::ORDERINGS.into_iter().zip(compare::HOLDS) {
+            let holds = move |order: Option<Ordering>| order.is_some_and(holds);
+            self.engine()
+                .register_fn(name, move |a: T, b: Dynamic| order(&Dynamic::from(a), &b).map(holds))
+                .register_fn(name, move |a: Dynamic, b: T| order(&a, &Dynamic::from(b)).map(holds));
+        }
         self
     }
 

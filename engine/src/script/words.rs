@@ -1,12 +1,18 @@
 //! The words messages are made of: names of types, of operators, and the nearest name to a misspelt one.
 
+/// Advice where `()` turns up, which is what a map gives for a key it does not have.
+pub const MISSING_KEY: &str = "a map gives `()` for a key it does not have: check the spelling";
+
 /// The registered name a script user knows a type by; the rest keep the name they were registered with.
 #[must_use]
 pub fn type_name(rust: &str) -> &str {
+    // The reader of the language names some with an article.
+    let rust = rust.strip_prefix("an ").or_else(|| rust.strip_prefix("a ")).unwrap_or(rust);
     match rust {
-        "i64" => "whole number",
-        "f64" => "number",
-        "bool" => "truth value",
+        "i64" | "INT" => "whole number",
+        "f64" | "FLOAT" => "number",
+        "bool" | "boolean" | "boolean expression" => "truth value (`true` or `false`)",
+        "iterable value" => "array or a range",
         "char" => "character",
         "()" => "nothing `()`",
         "string" | "&str | ImmutableString | String" | "ImmutableString" | "String" | "&str" => "text",
@@ -33,17 +39,20 @@ pub fn a_type(rust: &str) -> String {
 /// The sign a person wrote for the operator of this name.
 #[must_use]
 pub fn sign(operator: &str) -> &str {
-    if operator == super::numbers::DIVIDE { "/" } else { operator }
+    if operator == super::numbers::DIVIDE {
+        return "/";
+    }
+    super::compare::ORDERINGS.iter().find(|(name, _)| *name == operator).map_or(operator, |(_, sign)| sign)
 }
 
 /// What an operator does, to say what cannot be done.
 #[must_use]
 pub fn deed(operator: &str) -> Option<&'static str> {
-    Some(match operator {
+    Some(match sign(operator) {
         "+" | "+=" => "add",
         "-" | "-=" => "subtract",
         "*" | "*=" => "multiply",
-        "÷" | "/" | "%" => "divide",
+        "/" | "%" => "divide",
         "==" | "!=" | "<" | "<=" | ">" | ">=" => "compare",
         "±" => "put an uncertainty on",
         _ => return None,
@@ -58,7 +67,7 @@ pub fn nearest<'a>(wrong: &str, candidates: impl IntoIterator<Item = &'a str>) -
         true => 0,
         false => strsim::damerau_levenshtein(wrong, name),
     };
-    let allowed = (wrong.chars().count() / 3).clamp(1, 3);
+    let allowed = (wrong.chars().count() / 3).min(3);
     let near = |name: &&str| *name != wrong && distance(name) <= allowed;
     candidates.into_iter().filter(near).min_by_key(|name| (distance(name), *name))
 }
