@@ -1,11 +1,11 @@
 //! What is checked about an answer, however it was found.
 
+use super::Phases;
 use super::dense::Lu;
 use super::exact::ExactSum;
 use super::ionic_strength::Settled;
 use super::settings::Settings;
 use super::system::System;
-use super::Phases;
 use crate::activity::Model;
 
 /// How well an answer satisfies its equations, and how far it can be trusted.
@@ -52,7 +52,13 @@ impl Certificate {
 }
 
 /// Checks a settled system together with what was read out of it.
-pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: &Phases, model: &Model) -> Certificate {
+pub(super) fn certify(
+    system: &System,
+    settled: &Settled,
+    ln_c: &[f64],
+    phases: &Phases,
+    model: &Model,
+) -> Certificate {
     let (balance, balance_idx) = worst_balance(system, ln_c, phases);
     let (ln_c_error, condition) = error_and_condition(system, settled);
     let minerals = || phases.mineral_ln_saturation.iter().zip(&phases.mineral_present);
@@ -66,7 +72,10 @@ pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: 
         ln_c_error,
         saturation: absent.fold(f64::NEG_INFINITY, f64::max),
         present_saturation: present.map(|p| saturation_from_components(system, p).abs()).fold(0.0, f64::max),
-        smallest_amount: amounts.filter(|(_, present)| **present).map(|(n, _)| *n).fold(f64::INFINITY, f64::min),
+        smallest_amount: amounts
+            .filter(|(_, present)| **present)
+            .map(|(n, _)| *n)
+            .fold(f64::INFINITY, f64::min),
         ionic_strength: relative(settled.ionic_strength_residual, settled.ionic_strength),
         ionic_strength_roots: settled.roots,
         outside_validity: model.valid_to().is_some_and(|limit| settled.ionic_strength > limit),
@@ -93,7 +102,8 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
     let amounts = (0..).zip(ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
     let delivered = (first_reservoir..).zip(&phases.reservoir_amount).map(|(row, amount)| (row, -amount));
     let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
-    let terms: Vec<(usize, f64)> = amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
+    let terms: Vec<(usize, f64)> =
+        amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
     let mut worst = (0.0, 0);
     let mut sum = ExactSum::default();
     for k in 0..basis.n {
@@ -110,7 +120,7 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
             magnitude += (basis.scale(k) * part).abs();
         }
         let error = relative(sum.take(), magnitude);
-        if !(error <= worst.0) {
+        if error > worst.0 || error.is_nan() {
             worst = (error, k);
         }
     }
@@ -137,7 +147,8 @@ fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64)
         let row = &inverse[j * n..(j + 1) * n];
         delta.0 = delta.0.max(row.iter().zip(&point.residual).map(|(a, f)| a * f).sum::<f64>().abs());
         delta.1 = delta.1.max(row.iter().zip(&rounding).map(|(a, f)| a.abs() * f).sum());
-        let row_sum: f64 = (0..n).map(|k| row[k].abs() * absolute[k * n..(k + 1) * n].iter().sum::<f64>()).sum();
+        let row_sum: f64 =
+            (0..n).map(|k| row[k].abs() * absolute[k * n..(k + 1) * n].iter().sum::<f64>()).sum();
         kappa = kappa.max(row_sum);
         condition = condition.max(sensitivity_to_totals(system, settled, row));
     }
@@ -156,5 +167,7 @@ fn sensitivity_to_totals(system: &System, settled: &Settled, inverse_row: &[f64]
         columns.map(|(&column, a)| a * system.basis.total_factor(k, column)).sum::<f64>()
     };
     let totals = system.problem.totals.iter().enumerate();
-    totals.map(|(k, total)| if total.to_f64() == 0.0 { 0.0 } else { (change(k) * total.to_f64()).abs() }).sum()
+    totals
+        .map(|(k, total)| if total.to_f64() == 0.0 { 0.0 } else { (change(k) * total.to_f64()).abs() })
+        .sum()
 }

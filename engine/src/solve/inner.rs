@@ -218,7 +218,8 @@ impl Point {
         self.worst = 0.0;
         for k in 0..reduced.n() {
             let (b, (up, down)) = (reduced.b[k], self.shift[k]);
-            let with = |sum: f64, b: f64, shift: f64| sum + if b > 0.0 { (b.ln() - shift).exp() } else { 0.0 };
+            let with =
+                |sum: f64, b: f64, shift: f64| sum + if b > 0.0 { (b.ln() - shift).exp() } else { 0.0 };
             self.ln_p[k] = up + with(self.supply[k], -b, up).ln();
             self.ln_n[k] = down + with(self.demand[k], b, down).ln();
             self.finish(k);
@@ -229,7 +230,7 @@ impl Point {
     fn finish(&mut self, k: usize) {
         self.residual[k] = self.ln_p[k] - self.ln_n[k];
         let size = self.residual[k].abs();
-        if !(size <= self.worst) {
+        if size > self.worst || size.is_nan() {
             self.worst = if size.is_finite() { size } else { f64::INFINITY };
         }
     }
@@ -301,7 +302,8 @@ impl Point {
         } else {
             self.ln_c.iter().zip(&from.ln_c).map(|(new, old)| (new - shift).exp() - (old - shift).exp()).sum()
         };
-        let totals: f64 = self.y.iter().zip(&from.y).zip(&reduced.b).map(|((new, old), b)| b * (new - old)).sum();
+        let totals: f64 =
+            self.y.iter().zip(&from.y).zip(&reduced.b).map(|((new, old), b)| b * (new - old)).sum();
         species - totals * (-shift).exp()
     }
 
@@ -484,7 +486,7 @@ impl<'s, 'p> Newton<'s, 'p> {
             self.trial.y.clear();
             self.trial.y.extend((0..self.reduced.n()).map(|k| self.here.y[k] - change(k)));
             self.evaluate_trial();
-            if !(self.trial.worst < self.here.worst) {
+            if self.trial.worst >= self.here.worst {
                 return;
             }
             std::mem::swap(&mut self.here, &mut self.trial);
@@ -521,7 +523,7 @@ impl<'s, 'p> Newton<'s, 'p> {
         self.lu.solve(&self.here.residual, &mut self.direction);
         self.direction.iter_mut().for_each(|d| *d = -*d);
         let longest = self.reduced.largest_change(&self.direction);
-        if !(longest <= GARBAGE) {
+        if longest > GARBAGE || !self.direction.iter().all(|d| d.is_finite()) {
             return false;
         }
         if self.here.worst <= NEAR {
@@ -544,7 +546,7 @@ impl<'s, 'p> Newton<'s, 'p> {
 
         let shift = self.here.phi_shift();
         let slope = self.here.slope(&self.direction, shift);
-        if !(slope < 0.0) {
+        if slope.is_nan() || slope >= 0.0 {
             return false;
         }
         for fraction in [1.0, 0.5, 0.125] {
@@ -621,8 +623,8 @@ impl<'s, 'p> Newton<'s, 'p> {
         self.direction.resize(n, 0.0);
         self.lu.solve(&gradient, &mut self.direction);
         self.direction.iter_mut().zip(&scale).for_each(|(d, s)| *d = -*d / s);
-        let longest = self.reduced.largest_change(&self.direction);
-        if longest.is_finite() {
+        if self.direction.iter().all(|d| d.is_finite()) {
+            let longest = self.reduced.largest_change(&self.direction);
             self.descend((BOX / longest).min(1.0));
         }
     }
