@@ -112,14 +112,15 @@ fn sweep_time(problems: &[Problem], settings: &Settings) -> (f64, f64) {
         let last = problem.n_components - 1;
         let first = problem.totals[last].to_f64();
         let mut warm = run(&problem, settings, None).warm;
-        let start = Instant::now();
+        let mut points = Vec::with_capacity(POINTS);
         for point in 0..POINTS {
             problem.totals[last] = Total::from(first * 10_f64.powf(point as f64 / POINTS as f64));
+            points.push(time(|| run(&problem, settings, Some(&warm))));
             let converged = run(&problem, settings, Some(&warm));
             iterations += converged.effort.iterations;
             warm = converged.warm;
         }
-        times.push(start.elapsed().as_secs_f64() / POINTS as f64);
+        times.push(quantile(&mut points, 0.5));
     }
     let per_point = iterations as f64 / (POINTS * times.len()) as f64;
     (quantile(&mut times, 0.5), per_point)

@@ -131,6 +131,9 @@ pub(super) struct Point {
     /// ln P_j and ln N_j with b'.
     ln_p: Vec<f64>,
     ln_n: Vec<f64>,
+    /// 1/P_j and 1/N_j, where nothing is shifted.
+    per_p: Vec<f64>,
+    per_n: Vec<f64>,
     pub(super) residual: Vec<f64>,
     /// Largest |F_j|; not finite if any is.
     pub(super) worst: f64,
@@ -153,7 +156,8 @@ impl Point {
         }
         self.c.clear();
         self.c.extend(self.ln_c.iter().map(|ln_c| ln_c.exp()));
-        for sums in [&mut self.supply, &mut self.demand, &mut self.ln_p, &mut self.ln_n, &mut self.residual] {
+        let Self { supply, demand, ln_p, ln_n, per_p, per_n, residual, .. } = self;
+        for sums in [supply, demand, ln_p, ln_n, per_p, per_n, residual] {
             sums.clear();
             sums.resize(n, 0.0);
         }
@@ -182,8 +186,9 @@ impl Point {
         self.worst = 0.0;
         for k in 0..reduced.n() {
             let b = reduced.b[k];
-            self.ln_p[k] = (self.supply[k] + (-b).max(0.0)).ln();
-            self.ln_n[k] = (self.demand[k] + b.max(0.0)).ln();
+            let (p, n) = (self.supply[k] + (-b).max(0.0), self.demand[k] + b.max(0.0));
+            (self.ln_p[k], self.ln_n[k]) = (p.ln(), n.ln());
+            (self.per_p[k], self.per_n[k]) = (1.0 / p, 1.0 / n);
             self.finish(k);
         }
     }
@@ -237,6 +242,9 @@ impl Point {
 
     /// `ν c` over the side of the balance that it belongs to.
     fn weight(&self, i: usize, k: usize, nu: f64) -> f64 {
+        if !self.shifted {
+            return nu * self.c[i] * if nu > 0.0 { self.per_p[k] } else { self.per_n[k] };
+        }
         let ln_side = if nu > 0.0 { self.ln_p[k] } else { self.ln_n[k] };
         nu * (self.ln_c[i] - ln_side).exp()
     }
@@ -246,18 +254,11 @@ impl Point {
         let n = reduced.n();
         jacobian.clear();
         jacobian.resize(n * n, 0.0);
-        let reciprocal = |ln_sum: &[f64]| ln_sum.iter().map(|ln| (-ln).exp()).collect::<Vec<f64>>();
-        let (per_p, per_n) =
-            if self.shifted { Default::default() } else { (reciprocal(&self.ln_p), reciprocal(&self.ln_n)) };
         for i in 0..reduced.species.len() {
             let row = reduced.row(i);
             for &(j, nu) in row {
                 let j = j as usize;
-                let weight = if self.shifted {
-                    self.weight(i, j, nu)
-                } else {
-                    nu * self.c[i] * if nu > 0.0 { per_p[j] } else { per_n[j] }
-                };
+                let weight = self.weight(i, j, nu);
                 let target = &mut jacobian[j * n..(j + 1) * n];
                 for &(k, other) in row {
                     target[k as usize] += weight * other;
@@ -381,10 +382,11 @@ impl<'s, 'p> Newton<'s, 'p> {
             lu: Lu::default(),
             system,
         };
-        feasibility::reduce(newton.system)?;
-        newton.choose_basis(&newton.levels_from_system());
-        while feasibility::reduce(newton.system)? {
-            newton.choose_basis(&newton.levels_from_system());
+        loop {
+            feasibility::reduce(newton.system)?;
+            if !newton.choose_basis(&newton.levels_from_system()) {
+                break;
+            }
         }
         newton.reload();
         Ok(newton)
