@@ -129,7 +129,8 @@ pub fn hold_component(problem: &mut Problem, component: usize, ln_value: f64) {
 
 /// Gives every species the charge that balances it from random charges of the components.
 pub fn add_charges(random: &mut Random, problem: &mut Problem) {
-    let charges: Vec<i64> = (0..problem.n_components).map(|j| if j == 0 { 1 } else { random.integer(-3, 3) }).collect();
+    let charges: Vec<i64> =
+        (0..problem.n_components).map(|j| if j == 0 { 1 } else { random.integer(-3, 3) }).collect();
     for row in &mut problem.species {
         row.charge = row.stoichiometry.iter().map(|(j, nu)| (charges[*j] * nu.numer()) as f64).sum();
     }

@@ -6,7 +6,7 @@
 
 use crate::random_systems::{self, Random, SMALL};
 use lysocline_engine::activity::{Davies, Model};
-use lysocline_engine::solve::{Problem, Settings, solve};
+use lysocline_engine::solve::{Problem, Row, Settings, solve};
 use rayon::prelude::*;
 
 /// Plain numbers of a problem with integer stoichiometry, γ folded into the constants.
@@ -18,12 +18,15 @@ struct Route {
 
 impl Route {
     fn new(problem: &Problem) -> Self {
-        let coefficient = |row: &lysocline_engine::solve::Row, j: usize| {
+        let coefficient = |row: &Row, j: usize| {
             row.stoichiometry.iter().filter(|(k, _)| *k == j).map(|(_, nu)| *nu.numer() as f64).sum()
         };
         let rows = &problem.species;
         Self {
-            nu: rows.iter().map(|row| (0..problem.n_components).map(|j| coefficient(row, j)).collect()).collect(),
+            nu: rows
+                .iter()
+                .map(|row| (0..problem.n_components).map(|j| coefficient(row, j)).collect())
+                .collect(),
             ln_k: rows.iter().map(|row| row.ln_k).collect(),
             totals: problem.totals.iter().map(|total| total.to_f64()).collect(),
         }
@@ -71,7 +74,8 @@ fn problem(seed: u64) -> Problem {
     loop_until(seed, |random| {
         let problem = random_systems::tableau(random, SMALL);
         let smallest = problem.totals.iter().map(|total| total.to_f64().abs()).fold(f64::INFINITY, f64::min);
-        let has_electron = problem.species.iter().any(|row| row.stoichiometry.iter().any(|(_, nu)| *nu.numer() < -1));
+        let has_electron =
+            problem.species.iter().any(|row| row.stoichiometry.iter().any(|(_, nu)| *nu.numer() < -1));
         (smallest > 1e-6 && !has_electron).then_some(problem)
     })
 }
@@ -104,7 +108,8 @@ fn nested_bisection_finds_the_same_ionic_strength() {
     let davies = Davies::new(0.509);
     let compared = (0..60_u64).into_par_iter().filter(|seed| {
         let problem = loop_until(*seed, |random| {
-            let mut problem = random_systems::tableau(random, random_systems::Family { components: (1, 2), ..SMALL });
+            let mut problem =
+                random_systems::tableau(random, random_systems::Family { components: (1, 2), ..SMALL });
             random_systems::add_charges(random, &mut problem);
             problem.totals.iter().all(|total| total.to_f64().abs() > 1e-6).then_some(problem)
         });

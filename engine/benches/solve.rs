@@ -33,15 +33,29 @@ fn main() {
 
     println!("{COMPONENTS} components, {SPECIES} species, {} random tableaux", problems.len());
     println!("{SPECIES} exp                    {:8.2} µs", exponentials * 1e6);
-    println!("one iteration             {:8.2} µs   {:6.1} x exp       (target 6)", iteration * 1e6, iteration / exponentials);
+    println!(
+        "one iteration             {:8.2} µs   {:6.1} x exp       (target 6)",
+        iteration * 1e6,
+        iteration / exponentials
+    );
     for (name, share, target) in [("median", 0.5, 60), ("p99", 0.99, 160)] {
         let time = quantile(&mut cold, share);
-        println!("cold solve, {name:<8}      {:8.2} µs   {:6.1} x iteration (target {target})", time * 1e6, time / iteration);
+        println!(
+            "cold solve, {name:<8}      {:8.2} µs   {:6.1} x iteration (target {target})",
+            time * 1e6,
+            time / iteration
+        );
     }
-    println!("warm point of a sweep     {:8.2} µs   {:6.1} x iteration (target 4)", warm.0 * 1e6, warm.0 / iteration);
+    println!(
+        "warm point of a sweep     {:8.2} µs   {:6.1} x iteration (target 4)",
+        warm.0 * 1e6,
+        warm.0 / iteration
+    );
     println!("   iterations a point     {:8.2}", warm.1);
     println!("warm, all constants moved {:8.2} µs   {:6.1} x iteration", near * 1e6, near / iteration);
-    for (name, counts) in [("iterations", &mut iterations), ("evaluations", &mut evaluations), ("pivots", &mut pivots)] {
+    for (name, counts) in
+        [("iterations", &mut iterations), ("evaluations", &mut evaluations), ("pivots", &mut pivots)]
+    {
         println!("cold {name:<12} median {:4.0}, p99 {:4.0}", quantile(counts, 0.5), quantile(counts, 0.99));
     }
 }
@@ -66,7 +80,8 @@ fn iteration_time(problem: &Problem, settings: &Settings) -> f64 {
     let mut moved = problem.clone();
     moved.totals.iter_mut().for_each(|total| *total = *total * 1.05);
     let away = run(&moved, settings, Some(&here.warm));
-    let (with, iterations) = (time(|| run(&moved, settings, Some(&here.warm))), away.effort.iterations as f64);
+    let (with, iterations) =
+        (time(|| run(&moved, settings, Some(&here.warm))), away.effort.iterations as f64);
     let again = run(&moved, settings, Some(&away.warm));
     let without = time(|| run(&moved, settings, Some(&away.warm)));
     (with - without) / (iterations - again.effort.iterations as f64)
@@ -97,14 +112,15 @@ fn sweep_time(problems: &[Problem], settings: &Settings) -> (f64, f64) {
         let last = problem.n_components - 1;
         let first = problem.totals[last].to_f64();
         let mut warm = run(&problem, settings, None).warm;
-        let start = Instant::now();
+        let mut points = Vec::with_capacity(POINTS);
         for point in 0..POINTS {
             problem.totals[last] = Total::from(first * 10_f64.powf(point as f64 / POINTS as f64));
+            points.push(time(|| run(&problem, settings, Some(&warm))));
             let converged = run(&problem, settings, Some(&warm));
             iterations += converged.effort.iterations;
             warm = converged.warm;
         }
-        times.push(start.elapsed().as_secs_f64() / POINTS as f64);
+        times.push(quantile(&mut points, 0.5));
     }
     let per_point = iterations as f64 / (POINTS * times.len()) as f64;
     (quantile(&mut times, 0.5), per_point)

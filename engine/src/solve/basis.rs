@@ -52,7 +52,17 @@ impl Basis {
         }
         let scale = scale.into_iter().map(|s| s as f64).collect();
         let row_of_column = (rows.len()..n_rows).collect();
-        Some(Self { n, n_rows, scale, tableau: input.clone(), input, determinant: 1.0, row_of_column, column_of_row, pivots: 0 })
+        Some(Self {
+            n,
+            n_rows,
+            scale,
+            tableau: input.clone(),
+            input,
+            determinant: 1.0,
+            row_of_column,
+            column_of_row,
+            pivots: 0,
+        })
     }
 
     /// Whether the tableau is that of the same rows, so that its basis can be taken over.
@@ -116,7 +126,7 @@ impl Basis {
                 continue;
             }
             let (factor, rest) = two_product(integer, self.scale[k]);
-            for part in total.parts() {
+            for part in total.parts().into_iter().filter(|part| *part != 0.0) {
                 sum.add_product(factor, part);
                 if rest != 0.0 {
                     sum.add_product(rest, part);
@@ -174,7 +184,8 @@ impl Basis {
 fn common_denominators(rows: &[&Row], n: usize) -> Option<Vec<i64>> {
     const LIMIT: i64 = 1 << 20;
     let mut scale = vec![1_i64; n];
-    for (j, nu) in rows.iter().flat_map(|row| &row.stoichiometry) {
+    let fractions = rows.iter().flat_map(|row| &row.stoichiometry).filter(|(_, nu)| *nu.denom() != 1);
+    for (j, nu) in fractions {
         let denominator = *nu.denom();
         let missing = *Coefficient::new(denominator, scale[*j]).reduced().numer();
         scale[*j] = scale[*j].checked_mul(missing).filter(|s| (1..=LIMIT).contains(s))?;
@@ -183,6 +194,6 @@ fn common_denominators(rows: &[&Row], n: usize) -> Option<Vec<i64>> {
 }
 
 fn scaled(nu: Coefficient, scale: i64) -> Option<f64> {
-    let numerator = nu.numer().checked_mul(scale / nu.denom())?;
+    let numerator = if scale == 1 { *nu.numer() } else { nu.numer().checked_mul(scale / nu.denom())? };
     numerator.to_f64().filter(|value| value.abs() < f64::from(1 << 30))
 }

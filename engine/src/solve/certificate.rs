@@ -1,11 +1,11 @@
 //! What is checked about an answer, however it was found.
 
+use super::Phases;
 use super::dense::Lu;
 use super::exact::ExactSum;
 use super::ionic_strength::Settled;
 use super::settings::Settings;
 use super::system::System;
-use super::Phases;
 use crate::activity::Model;
 
 /// How well an answer satisfies its equations, and how far it can be trusted.
@@ -17,6 +17,8 @@ pub struct Certificate {
     pub balance_idx: usize,
     /// Largest `|ln P - ln N|` of a balance in the dominant basis, which also sees traces.
     pub residual: f64,
+    /// Bound on the rounding of ln c of any species: the unit roundoff times the terms that it is a sum of.
+    pub ln_c_rounding: f64,
     /// Bound on the error of ln c of any species at the given activity coefficients, from a contraction argument; `None`
     /// where it does not apply.
     pub ln_c_error: Option<f64>,
@@ -40,9 +42,11 @@ pub struct Certificate {
 
 impl Certificate {
     /// Whether every tolerance is met.
+    ///
+    /// A balance of concentrations that are themselves rounded by more than its tolerance is held to that rounding.
     #[must_use]
     pub fn meets(&self, settings: &Settings) -> bool {
-        self.balance <= settings.balance
+        self.balance <= settings.balance.max(self.ln_c_rounding)
             && self.residual <= settings.stalled_residual
             && self.saturation <= settings.saturation
             && self.present_saturation <= settings.saturation
@@ -52,9 +56,18 @@ impl Certificate {
 }
 
 /// Checks a settled system together with what was read out of it.
-pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: &Phases, model: &Model) -> Certificate {
+pub(super) fn certify(
+    system: &System,
+    settled: &Settled,
+    ln_c: &[f64],
+    phases: &Phases,
+    model: &Model,
+) -> Certificate {
     let (balance, balance_idx) = worst_balance(system, ln_c, phases);
-    let (ln_c_error, condition) = error_and_condition(system, settled);
+    let reduced = &settled.reduced;
+    let roundings = (0..reduced.species.len()).map(|i| reduced.rounding(i, &settled.point.y));
+    let ln_c_rounding = roundings.fold(0.0, f64::max);
+    let (ln_c_error, condition) = error_and_condition(system, settled, ln_c_rounding);
     let minerals = || phases.mineral_ln_saturation.iter().zip(&phases.mineral_present);
     let absent = minerals().filter(|(_, present)| !**present).map(|(saturation, _)| *saturation);
     let present = (0..).zip(&phases.mineral_present).filter(|(_, present)| **present).map(|(p, _)| p);
@@ -63,10 +76,14 @@ pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: 
         balance,
         balance_idx,
         residual: settled.point.worst,
+        ln_c_rounding,
         ln_c_error,
         saturation: absent.fold(f64::NEG_INFINITY, f64::max),
         present_saturation: present.map(|p| saturation_from_components(system, p).abs()).fold(0.0, f64::max),
-        smallest_amount: amounts.filter(|(_, present)| **present).map(|(n, _)| *n).fold(f64::INFINITY, f64::min),
+        smallest_amount: amounts
+            .filter(|(_, present)| **present)
+            .map(|(n, _)| *n)
+            .fold(f64::INFINITY, f64::min),
         ionic_strength: relative(settled.ionic_strength_residual, settled.ionic_strength),
         ionic_strength_roots: settled.roots,
         outside_validity: model.valid_to().is_some_and(|limit| settled.ionic_strength > limit),
@@ -93,7 +110,8 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
     let amounts = (0..).zip(ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
     let delivered = (first_reservoir..).zip(&phases.reservoir_amount).map(|(row, amount)| (row, -amount));
     let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
-    let terms: Vec<(usize, f64)> = amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
+    let terms: Vec<(usize, f64)> =
+        amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
     let mut worst = (0.0, 0);
     let mut sum = ExactSum::default();
     for k in 0..basis.n {
@@ -110,7 +128,7 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
             magnitude += (basis.scale(k) * part).abs();
         }
         let error = relative(sum.take(), magnitude);
-        if !(error <= worst.0) {
+        if error > worst.0 || error.is_nan() {
             worst = (error, k);
         }
     }
@@ -122,7 +140,7 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
 /// With `δ = max |J⁻¹F| + max |J⁻¹| dF`, C the largest Σ|ν'| of a species and κ the largest row sum of |J⁻¹| |J|: if
 /// `(exp(4 C δ) - 1) κ <= 1/2`, then `y - J⁻¹F(y)` contracts the box of radius 2δ into itself, so the solution is in it.
 /// The rounding of ln c itself comes on top.
-fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64) {
+fn error_and_condition(system: &System, settled: &Settled, ln_c_rounding: f64) -> (Option<f64>, f64) {
     let (reduced, point) = (&settled.reduced, &settled.point);
     let n = reduced.n();
     let (mut jacobian, mut lu) = (Vec::new(), Lu::default());
@@ -132,29 +150,32 @@ fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64)
     }
     let inverse = lu.inverse();
     let (absolute, rounding) = point.absolute_jacobian(reduced);
-    let (mut delta, mut kappa, mut condition) = ((0.0_f64, 0.0_f64), 0.0_f64, 0.0_f64);
-    for j in 0..n {
-        let row = &inverse[j * n..(j + 1) * n];
-        delta.0 = delta.0.max(row.iter().zip(&point.residual).map(|(a, f)| a * f).sum::<f64>().abs());
-        delta.1 = delta.1.max(row.iter().zip(&rounding).map(|(a, f)| a.abs() * f).sum());
-        let row_sum: f64 = (0..n).map(|k| row[k].abs() * absolute[k * n..(k + 1) * n].iter().sum::<f64>()).sum();
-        kappa = kappa.max(row_sum);
-        condition = condition.max(sensitivity_to_totals(system, settled, row));
+    let absolute_sums: Vec<f64> = absolute.chunks_exact(n.max(1)).map(|row| row.iter().sum()).collect();
+    let totals = relative_totals(system, settled);
+    let (mut shift, mut noise, mut kappa, mut condition) = (0.0_f64, 0.0_f64, 0.0_f64, 0.0_f64);
+    for row in inverse.chunks_exact(n.max(1)) {
+        let weighted = |values: &[f64]| row.iter().zip(values).map(|(a, f)| a.abs() * f).sum::<f64>();
+        shift = shift.max(row.iter().zip(&point.residual).map(|(a, f)| a * f).sum::<f64>().abs());
+        noise = noise.max(weighted(&rounding));
+        kappa = kappa.max(weighted(&absolute_sums));
+        let change = |per_total: &[f64]| row.iter().zip(per_total).map(|(a, t)| a * t).sum::<f64>().abs();
+        condition = condition.max(totals.chunks_exact(n.max(1)).map(change).sum());
     }
-    let delta = delta.0 + delta.1;
+    let delta = shift + noise;
     let applies = (4.0 * reduced.row_max * delta).exp_m1() * kappa <= 0.5;
-    let evaluation = (0..reduced.species.len()).map(|i| reduced.rounding(i, &point.y)).fold(0.0, f64::max);
-    (applies.then_some(2.0 * delta * reduced.row_max + evaluation), condition)
+    (applies.then_some(2.0 * delta * reduced.row_max + ln_c_rounding), condition)
 }
 
-/// `Σ_k |∂y/∂T_k| |T_k|` of one basis level, given its row of J⁻¹.
-fn sensitivity_to_totals(system: &System, settled: &Settled, inverse_row: &[f64]) -> f64 {
-    let per_total: Vec<f64> =
-        inverse_row.iter().enumerate().map(|(l, a)| a * settled.point.per_supply(l)).collect();
-    let change = |k: usize| {
-        let columns = settled.reduced.columns.iter().zip(&per_total);
-        columns.map(|(&column, a)| a * system.basis.total_factor(k, column)).sum::<f64>()
-    };
-    let totals = system.problem.totals.iter().enumerate();
-    totals.map(|(k, total)| if total.to_f64() == 0.0 { 0.0 } else { (change(k) * total.to_f64()).abs() }).sum()
+/// Change of each F per relative change of each total, `T_k (B⁻¹)_kj / P_j`; by totals.
+fn relative_totals(system: &System, settled: &Settled) -> Vec<f64> {
+    let columns = &settled.reduced.columns;
+    let per_supply: Vec<f64> = (0..columns.len()).map(|j| settled.point.per_supply(j)).collect();
+    let mut changes = Vec::with_capacity(system.basis.n * columns.len());
+    for (k, total) in system.problem.totals.iter().enumerate() {
+        let change = |(&column, per_supply): (&usize, &f64)| {
+            total.to_f64() * system.basis.total_factor(k, column) * per_supply
+        };
+        changes.extend(columns.iter().zip(&per_supply).map(change));
+    }
+    changes
 }

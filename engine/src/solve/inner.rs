@@ -131,6 +131,9 @@ pub(super) struct Point {
     /// ln P_j and ln N_j with b'.
     ln_p: Vec<f64>,
     ln_n: Vec<f64>,
+    /// 1/P_j and 1/N_j, where nothing is shifted.
+    per_p: Vec<f64>,
+    per_n: Vec<f64>,
     pub(super) residual: Vec<f64>,
     /// Largest |F_j|; not finite if any is.
     pub(super) worst: f64,
@@ -153,7 +156,8 @@ impl Point {
         }
         self.c.clear();
         self.c.extend(self.ln_c.iter().map(|ln_c| ln_c.exp()));
-        for sums in [&mut self.supply, &mut self.demand, &mut self.ln_p, &mut self.ln_n, &mut self.residual] {
+        let Self { supply, demand, ln_p, ln_n, per_p, per_n, residual, .. } = self;
+        for sums in [supply, demand, ln_p, ln_n, per_p, per_n, residual] {
             sums.clear();
             sums.resize(n, 0.0);
         }
@@ -182,8 +186,9 @@ impl Point {
         self.worst = 0.0;
         for k in 0..reduced.n() {
             let b = reduced.b[k];
-            self.ln_p[k] = (self.supply[k] + (-b).max(0.0)).ln();
-            self.ln_n[k] = (self.demand[k] + b.max(0.0)).ln();
+            let (p, n) = (self.supply[k] + (-b).max(0.0), self.demand[k] + b.max(0.0));
+            (self.ln_p[k], self.ln_n[k]) = (p.ln(), n.ln());
+            (self.per_p[k], self.per_n[k]) = (1.0 / p, 1.0 / n);
             self.finish(k);
         }
     }
@@ -218,7 +223,8 @@ impl Point {
         self.worst = 0.0;
         for k in 0..reduced.n() {
             let (b, (up, down)) = (reduced.b[k], self.shift[k]);
-            let with = |sum: f64, b: f64, shift: f64| sum + if b > 0.0 { (b.ln() - shift).exp() } else { 0.0 };
+            let with =
+                |sum: f64, b: f64, shift: f64| sum + if b > 0.0 { (b.ln() - shift).exp() } else { 0.0 };
             self.ln_p[k] = up + with(self.supply[k], -b, up).ln();
             self.ln_n[k] = down + with(self.demand[k], b, down).ln();
             self.finish(k);
@@ -229,13 +235,16 @@ impl Point {
     fn finish(&mut self, k: usize) {
         self.residual[k] = self.ln_p[k] - self.ln_n[k];
         let size = self.residual[k].abs();
-        if !(size <= self.worst) {
+        if size > self.worst || size.is_nan() {
             self.worst = if size.is_finite() { size } else { f64::INFINITY };
         }
     }
 
     /// `ν c` over the side of the balance that it belongs to.
     fn weight(&self, i: usize, k: usize, nu: f64) -> f64 {
+        if !self.shifted {
+            return nu * self.c[i] * if nu > 0.0 { self.per_p[k] } else { self.per_n[k] };
+        }
         let ln_side = if nu > 0.0 { self.ln_p[k] } else { self.ln_n[k] };
         nu * (self.ln_c[i] - ln_side).exp()
     }
@@ -245,18 +254,11 @@ impl Point {
         let n = reduced.n();
         jacobian.clear();
         jacobian.resize(n * n, 0.0);
-        let reciprocal = |ln_sum: &[f64]| ln_sum.iter().map(|ln| (-ln).exp()).collect::<Vec<f64>>();
-        let (per_p, per_n) =
-            if self.shifted { Default::default() } else { (reciprocal(&self.ln_p), reciprocal(&self.ln_n)) };
         for i in 0..reduced.species.len() {
             let row = reduced.row(i);
             for &(j, nu) in row {
                 let j = j as usize;
-                let weight = if self.shifted {
-                    self.weight(i, j, nu)
-                } else {
-                    nu * self.c[i] * if nu > 0.0 { per_p[j] } else { per_n[j] }
-                };
+                let weight = self.weight(i, j, nu);
                 let target = &mut jacobian[j * n..(j + 1) * n];
                 for &(k, other) in row {
                     target[k as usize] += weight * other;
@@ -301,7 +303,8 @@ impl Point {
         } else {
             self.ln_c.iter().zip(&from.ln_c).map(|(new, old)| (new - shift).exp() - (old - shift).exp()).sum()
         };
-        let totals: f64 = self.y.iter().zip(&from.y).zip(&reduced.b).map(|((new, old), b)| b * (new - old)).sum();
+        let totals: f64 =
+            self.y.iter().zip(&from.y).zip(&reduced.b).map(|((new, old), b)| b * (new - old)).sum();
         species - totals * (-shift).exp()
     }
 
@@ -379,10 +382,11 @@ impl<'s, 'p> Newton<'s, 'p> {
             lu: Lu::default(),
             system,
         };
-        feasibility::reduce(newton.system)?;
-        newton.choose_basis(&newton.levels_from_system());
-        while feasibility::reduce(newton.system)? {
-            newton.choose_basis(&newton.levels_from_system());
+        loop {
+            feasibility::reduce(newton.system)?;
+            if !newton.choose_basis(&newton.levels_from_system()) {
+                break;
+            }
         }
         newton.reload();
         Ok(newton)
@@ -484,7 +488,7 @@ impl<'s, 'p> Newton<'s, 'p> {
             self.trial.y.clear();
             self.trial.y.extend((0..self.reduced.n()).map(|k| self.here.y[k] - change(k)));
             self.evaluate_trial();
-            if !(self.trial.worst < self.here.worst) {
+            if self.trial.worst >= self.here.worst {
                 return;
             }
             std::mem::swap(&mut self.here, &mut self.trial);
@@ -521,7 +525,7 @@ impl<'s, 'p> Newton<'s, 'p> {
         self.lu.solve(&self.here.residual, &mut self.direction);
         self.direction.iter_mut().for_each(|d| *d = -*d);
         let longest = self.reduced.largest_change(&self.direction);
-        if !(longest <= GARBAGE) {
+        if longest > GARBAGE || !self.direction.iter().all(|d| d.is_finite()) {
             return false;
         }
         if self.here.worst <= NEAR {
@@ -544,7 +548,7 @@ impl<'s, 'p> Newton<'s, 'p> {
 
         let shift = self.here.phi_shift();
         let slope = self.here.slope(&self.direction, shift);
-        if !(slope < 0.0) {
+        if slope.is_nan() || slope >= 0.0 {
             return false;
         }
         for fraction in [1.0, 0.5, 0.125] {
@@ -621,8 +625,8 @@ impl<'s, 'p> Newton<'s, 'p> {
         self.direction.resize(n, 0.0);
         self.lu.solve(&gradient, &mut self.direction);
         self.direction.iter_mut().zip(&scale).for_each(|(d, s)| *d = -*d / s);
-        let longest = self.reduced.largest_change(&self.direction);
-        if longest.is_finite() {
+        if self.direction.iter().all(|d| d.is_finite()) {
+            let longest = self.reduced.largest_change(&self.direction);
             self.descend((BOX / longest).min(1.0));
         }
     }

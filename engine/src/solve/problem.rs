@@ -118,10 +118,10 @@ impl Problem {
 
     fn is_sound(&self, row: &Row) -> bool {
         let numbers_finite = [row.ln_k, row.charge, row.water].into_iter().all(f64::is_finite);
-        let mut seen = vec![false; self.n_components];
-        let indices_sound = row.stoichiometry.iter().all(|&(j, nu)| {
-            j < self.n_components && *nu.denom() != 0 && !std::mem::replace(&mut seen[j], true)
-        });
+        let repeated = |at: usize, j: usize| row.stoichiometry[..at].iter().any(|(earlier, _)| *earlier == j);
+        let mut entries = row.stoichiometry.iter().enumerate();
+        let indices_sound =
+            entries.all(|(at, &(j, nu))| j < self.n_components && *nu.denom() != 0 && !repeated(at, j));
         numbers_finite && indices_sound && row.stoichiometry.iter().any(|(_, nu)| *nu.numer() != 0)
     }
 }

@@ -68,7 +68,8 @@ pub struct Effort {
 impl<'p> System<'p> {
     /// The system at its starting point.
     pub(super) fn new(problem: &'p Problem, warm: Option<&Warm>) -> Result<Self, SolveError> {
-        let basis = Basis::new(problem.rows(), problem.n_components).ok_or(SolveError::CoefficientsTooLarge)?;
+        let basis =
+            Basis::new(problem.rows(), problem.n_components).ok_or(SolveError::CoefficientsTooLarge)?;
         let mut system = Self {
             problem,
             g: vec![0.0; basis.unit_row(0) + problem.n_components],

@@ -114,11 +114,12 @@ fn a_carbonate_titration_meets_every_phase_but_the_unstable_one() {
             let cold = ideal(&problem).unwrap();
             most = most.max(cold.effort.iterations);
             assert_eq!(cold.mineral_present, converged.mineral_present, "point {point}");
-            assert!(cold.ln_c.iter().zip(&converged.ln_c).all(|(a, b)| (a - b).abs() < 1e-11), "point {point}");
+            assert!(
+                cold.ln_c.iter().zip(&converged.ln_c).all(|(a, b)| (a - b).abs() < 1e-11),
+                "point {point}"
+            );
         }
-        for phase in 0..4 {
-            seen[phase] |= converged.mineral_present[phase];
-        }
+        seen.iter_mut().zip(&converged.mineral_present).for_each(|(seen, present)| *seen |= *present);
         ph.push(-converged.ln_a[0] / LN_10);
         present.push(converged.mineral_present);
         warm = Some(converged.warm);
@@ -160,7 +161,8 @@ fn a_redox_titration_crosses_the_whole_range_of_water() {
     let mut pe = Vec::new();
     for point in 0..=600 {
         let electrons = Total::from_ratio(f64::from(point) - 200.0, 20_000.0);
-        problem.totals = vec![electrons + Total::from(0.001), electrons, Total::from(1e-3), Total::from(2e-3)];
+        problem.totals =
+            vec![electrons + Total::from(0.001), electrons, Total::from(1e-3), Total::from(2e-3)];
         let converged = ideal(&problem).unwrap_or_else(|error| panic!("point {point}: {error}"));
         pe.push(-converged.ln_a[e] / LN_10);
     }
@@ -172,7 +174,8 @@ fn a_redox_titration_crosses_the_whole_range_of_water() {
 /// after Munhoven 2021, Geosci. Model Dev.; values by the quadratic in [H]: 2 [CO3] + [CO3][H]/K2 + Kw/[H] - [H] = Alk).
 #[test]
 fn alkalinity_beside_carbonate_has_two_ph_values() {
-    let species = vec![row(&[(0, 1)], 0.0), row(&[(0, -1)], -14.0), row(&[(1, 1)], 0.0), row(&[(0, 1), (1, 1)], 10.33)];
+    let species =
+        vec![row(&[(0, 1)], 0.0), row(&[(0, -1)], -14.0), row(&[(1, 1)], 0.0), row(&[(0, 1), (1, 1)], 10.33)];
     let mut problem = Problem { n_components: 2, species, totals: totals(&[0.0, 0.0]), ..Problem::default() };
     problem.reservoirs = vec![
         Reservoir { row: row(&[(0, 1)], 0.0), ln_value: 0.0 },
@@ -249,7 +252,9 @@ fn precipitation_without_end_is_recognised() {
 fn impossible_totals_come_with_the_combination_that_proves_it() {
     let species = vec![row(&[(0, 1)], 0.0), row(&[(0, 1), (1, 1)], 5.0)];
     let problem = Problem { n_components: 2, species, totals: totals(&[1.0, 2.0]), ..Problem::default() };
-    let SolveError::Infeasible { combination, value } = ideal(&problem).unwrap_err() else { panic!("not infeasible") };
+    let SolveError::Infeasible { combination, value } = ideal(&problem).unwrap_err() else {
+        panic!("not infeasible")
+    };
     assert_eq!((combination, value), (vec![(0, 1.0), (1, -1.0)], -1.0));
     let boundary = Problem { totals: totals(&[2.0, 2.0]), ..problem };
     assert_eq!(ideal(&boundary).unwrap().ln_c[0], f64::NEG_INFINITY);
@@ -258,10 +263,12 @@ fn impossible_totals_come_with_the_combination_that_proves_it() {
 /// T_e - 2 T_X = 1e-11 between totals of 0.2: half an ulp of an input would change O2 by 1e-6 relative, decimals do not.
 #[test]
 fn totals_given_as_decimals_are_not_rounded() {
-    let species = vec![row(&[(1, 1), (0, 2)], 30.0), row(&[(1, 1)], 0.0), row(&[(0, 4)], -5.0), row(&[(0, -1)], -40.0)];
+    let species =
+        vec![row(&[(1, 1), (0, 2)], 30.0), row(&[(1, 1)], 0.0), row(&[(0, 4)], -5.0), row(&[(0, -1)], -40.0)];
     let excess = Total::from_ratio(1.0, 1e11);
     let x = Total::from_ratio(1.0, 10.0);
-    let problem = Problem { n_components: 2, species, totals: vec![x * 2.0 + excess, x], ..Problem::default() };
+    let problem =
+        Problem { n_components: 2, species, totals: vec![x * 2.0 + excess, x], ..Problem::default() };
     let converged = ideal(&problem).unwrap();
     let trace = 4.0 * converged.ln_c[2].exp() - converged.ln_c[3].exp() - 2.0 * converged.ln_c[1].exp();
     assert!((trace / 1e-11 - 1.0).abs() < 1e-12, "{trace:e}");
@@ -271,7 +278,10 @@ fn totals_given_as_decimals_are_not_rounded() {
 /// Fractions in the stoichiometry: halving a species' formula squares its constant.
 #[test]
 fn fractional_coefficients_are_exact() {
-    let half = Row { stoichiometry: vec![(0, Coefficient::new(1, 2)), (1, Coefficient::new(-2, 3))], ..row(&[(0, 1)], 1.0) };
+    let half = Row {
+        stoichiometry: vec![(0, Coefficient::new(1, 2)), (1, Coefficient::new(-2, 3))],
+        ..row(&[(0, 1)], 1.0)
+    };
     let species = vec![row(&[(0, 1)], 0.0), row(&[(1, 1)], 0.0), half, row(&[(1, -1)], -9.0)];
     let problem = Problem { n_components: 2, species, totals: totals(&[0.01, -0.002]), ..Problem::default() };
     let c: Vec<f64> = ideal(&problem).unwrap().ln_c.iter().map(|ln_c| ln_c.exp()).collect();
