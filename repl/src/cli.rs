@@ -87,7 +87,7 @@ impl Look {
     /// For results, on standard output.
     pub fn style(&self) -> Style {
         let stdout = std::io::stdout();
-        Style { ascii: self.plain, color: self.colored(stdout.is_terminal()), width: width() }
+        Style { ascii: self.plain, color: self.colored(stdout.is_terminal()), width: width(), ..Style::default() }
     }
 
     /// Whether messages on standard error are coloured.

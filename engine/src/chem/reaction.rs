@@ -408,8 +408,9 @@ impl Statement {
                     let message = "`log_k_terms` already fix the enthalpy: leave `enthalpy` and `heat_capacity` out";
                     return Err(KeyFault::new("log_k_terms", message).into());
                 }
-                let stated = terms.iter().map(|(term, c)| format!("{c} {}", term.written())).collect::<Vec<_>>();
-                (LogK::function(&terms), vec![], format!("log K = {}", stated.join(" + ").replace(" 1 +", " +")))
+                let log_k = LogK::function(&terms);
+                let stated = format!("log K = {}", written(&log_k.terms().unwrap_or_default()));
+                (log_k, vec![], stated)
             }
             Stated::LogK(key, quantity) => {
                 let (value, parts) = (quantity.value(), quantity.parts().to_vec());
@@ -479,6 +480,26 @@ impl Statement {
         .into_iter()
         .find_map(|(key, given)| given.then_some(key))
     }
+}
+
+/// `14.8435 - 3404.71/T - 0.032786 T`.
+fn written(terms: &[(Term, f64)]) -> String {
+    let mut text = String::new();
+    for (term, coefficient) in terms {
+        let sign = match (text.is_empty(), *coefficient < 0.0) {
+            (true, true) => "-",
+            (true, false) => "",
+            (false, true) => " - ",
+            (false, false) => " + ",
+        };
+        let size = coefficient.abs();
+        text.push_str(&match term.written() {
+            "1" => format!("{sign}{size}"),
+            inverse if inverse.starts_with("1/") => format!("{sign}{size}{}", &inverse[1..]),
+            other => format!("{sign}{size} {other}"),
+        });
+    }
+    text
 }
 
 /// The standard uncertainty of a value as it was written.

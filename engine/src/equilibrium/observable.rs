@@ -103,6 +103,12 @@ pub enum ObservableError {
         /// What is wrong with the unit.
         error: UnitError,
     },
+    /// What the subject is made of is not in the water.
+    #[error("`{asked}`: absent, since what it is made of is not in the water")]
+    Absent {
+        /// The observable as asked.
+        asked: String,
+    },
     /// The subject is not known or has no answer here.
     #[error("`{asked}`: {why}")]
     NoAnswer {

@@ -23,6 +23,8 @@ use crate::water::concentration::{SALT_TERM, Solution};
 use crate::water::{Sample, Treatment};
 
 const LN_10: f64 = std::f64::consts::LN_10;
+/// A sum smaller than this part of its terms is what rounding left of a zero.
+const ROUNDING: f64 = 1e-12;
 /// A doubtful constant is worth a warning where its species holds more than this part of a total.
 const WORTH_A_WARNING: f64 = 0.01;
 
@@ -196,7 +198,7 @@ impl State {
             Observable::LogActivity(name) => plain(self.ln_activity(name, asked)? / LN_10, "1"),
             Observable::Gamma(name) => {
                 let (k, _) = self.solute(name, asked)?;
-                let k = k.ok_or_else(|| no_answer(asked, absent(name)))?;
+                let k = k.ok_or_else(|| absent(asked))?;
                 plain(converged.ln_gamma[k].exp(), "1")
             }
             Observable::Total(name) => self.total(name, asked),
@@ -322,7 +324,10 @@ impl State {
     fn acid_base(&self, ph: f64) -> f64 {
         let level = ZeroLevel::at(self.system().ledger(), ph);
         let weight = |formed: &Formation| rational::to_f64(level.weight(formed));
-        self.system().solutes().zip(&self.0.molalities).map(|(formed, m)| weight(formed) * m).sum()
+        let terms: Vec<f64> = self.system().solutes().zip(&self.0.molalities).map(|(f, m)| weight(f) * m).collect();
+        let (sum, size) = terms.iter().fold((0.0, 0.0), |(sum, size), term| (sum + term, size + term.abs()));
+        // What rounding leaves of terms that cancel is the zero it stands for.
+        if f64::abs(sum) <= ROUNDING * size { 0.0 } else { sum }
     }
 
     /// Calcite that forms until it is at equilibrium with the dissolved totals.
@@ -385,16 +390,16 @@ impl State {
         }
         match self.solute(name, asked) {
             Ok((Some(k), _)) => Ok(converged.ln_c[k] + converged.ln_gamma[k]),
-            Ok((None, _)) => Err(no_answer(asked, absent(name))),
+            Ok((None, _)) => Err(absent(asked)),
             Err(error) => Err(error),
         }
     }
 
     fn ln_omega(&self, name: &str, asked: &str) -> Result<f64, ObservableError> {
         let phase = self.phase(name, asked)?;
-        let (_, row) = self.system().phase(&phase).ok_or_else(|| no_answer(asked, absent(name)))?;
+        let (_, row) = self.system().phase(&phase).ok_or_else(|| absent(asked))?;
         let ln_omega = ln_saturation(row, &self.0.outcome.converged);
-        if ln_omega.is_finite() { Ok(ln_omega) } else { Err(no_answer(asked, absent(name))) }
+        if ln_omega.is_finite() { Ok(ln_omega) } else { Err(absent(asked)) }
     }
 
     fn fugacity(&self, name: &str, asked: &str) -> Result<f64, ObservableError> {
@@ -544,8 +549,8 @@ fn words(doubt: Doubt) -> String {
     }
 }
 
-fn absent(name: &str) -> String {
-    format!("absent: what `{name}` is made of is not in the water")
+fn absent(asked: &str) -> ObservableError {
+    ObservableError::Absent { asked: asked.into() }
 }
 
 fn no_answer(asked: &str, why: String) -> ObservableError {

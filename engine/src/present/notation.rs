@@ -41,7 +41,7 @@ pub fn shown(text: &str, style: Style) -> String {
 #[must_use]
 pub fn shown_title(title: &Title, style: Style) -> String {
     let unit = title.unit().map(|unit| format!(" [{}]", shown_unit(unit, style)));
-    shown_name(title, style) + &unit.unwrap_or_default()
+    shown_name(title, style) + unit.unwrap_or_default().as_str()
 }
 
 /// The name of a column as shown. Only what is written as chemistry is set as chemistry: `m(CO2)` and `SO4^2-`

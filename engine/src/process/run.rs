@@ -132,7 +132,7 @@ impl Run {
         let unit = match (found.next(), answers.iter().find_map(|answer| answer.as_ref().err())) {
             (Some(first), _) => first.unit().clone(),
             // An element that is in no row is absent from all of them; anything else no row answers is a fault.
-            (None, Some(ObservableError::NoAnswer { why, .. })) if why.starts_with("absent") => Unit::one(),
+            (None, Some(ObservableError::Absent { .. })) => Unit::one(),
             (None, Some(error)) => return Err(error.clone().into()),
             (None, None) => asked.unit.clone().map_or_else(Unit::one, |unit| unit.per_kg_of(KgOf::Water)),
         };
@@ -141,6 +141,7 @@ impl Run {
             Err(_) => Cell::missing_because("no equilibrium"),
             Ok(_) => match answers.next() {
                 Some(Ok(answer)) => cell(&answer),
+                Some(Err(ObservableError::Absent { .. })) => Cell::missing_because("absent"),
                 Some(Err(error)) => Cell::missing_because(&error.to_string()),
                 None => Cell::missing(),
             },

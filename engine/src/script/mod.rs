@@ -4,10 +4,13 @@
 //! file for each native type), and fails in our words (`diagnostic`, `translate`). A native type joins in
 //! [`vocabulary`] by one line.
 
+pub mod closure;
 pub mod diagnostic;
 pub mod docs;
+pub mod faults;
 pub mod host;
 pub mod input;
+pub mod named;
 pub mod numbers;
 pub mod sandbox;
 pub mod show;
@@ -16,19 +19,20 @@ pub mod vocabulary;
 pub mod words;
 
 mod check;
+mod column;
 mod compare;
 mod engine;
 mod expect;
 mod general;
 mod ledger;
 mod modules;
-mod named;
 mod quantity;
 mod reaction;
 mod sample;
 mod session;
 mod state;
 mod syntax;
+mod table;
 mod translate;
 
 pub use diagnostic::{Diagnostic, Fail, ScriptResult, fail};

@@ -3,6 +3,7 @@
 use rhai::plugin::*;
 use rhai::{Array, Dynamic, FLOAT, INT, Map};
 
+use super::faults::advised;
 use super::named::{named, value};
 use super::numbers::real;
 use super::show::Style;
@@ -36,28 +37,22 @@ impl From<ReactionError> for Fail {
         match error {
             ReactionError::Option(fault) => fault.into(),
             ReactionError::Equation(error) => error.into(),
-            other => fail(other.to_string()),
+            other => advised(&other.to_string()),
         }
     }
 }
 
 impl From<EquationError> for Fail {
     fn from(error: EquationError) -> Self {
-        let text = error.to_string();
-        match (&error, text.split_once("; add ")) {
-            (EquationError::Unbalanced { .. }, Some((fault, cure))) => fail(fault).help(format!("add {cure}")).argument(0),
-            _ => fail(text).argument(0),
-        }
+        advised(&error.to_string()).argument(0)
     }
 }
 
 impl From<LedgerError> for Fail {
     fn from(error: LedgerError) -> Self {
-        let text = error.to_string();
-        match (error, text.split_once("; did you mean ")) {
-            (LedgerError::Reaction(error), _) => error.into(),
-            (_, Some((message, name))) => fail(message).help(format!("did you mean {name}")),
-            _ => fail(text),
+        match error {
+            LedgerError::Reaction(error) => error.into(),
+            other => advised(&other.to_string()),
         }
     }
 }

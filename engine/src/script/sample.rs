@@ -5,12 +5,13 @@ use std::collections::BTreeMap;
 use rhai::plugin::*;
 use rhai::{Array, Dynamic, Map};
 
+use super::faults::advised;
 use super::named::{named, one_or_many, value};
 use super::reaction::{plain, quantity, temperature};
 use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::ledger::{Ledger, shipped};
-use crate::named::{KeyFault, Value};
+use crate::named::Value;
 use crate::nearest::nearest;
 use crate::text::{count, list};
 use crate::units::{Kind, Pressure};
@@ -57,24 +58,16 @@ fn words(treatment: &Treatment) -> String {
 impl From<SampleError> for Fail {
     fn from(error: SampleError) -> Self {
         match error {
-            SampleError::Key(fault) => key_fault(fault),
+            SampleError::Key(fault) => fault.into(),
             SampleError::Ledger(error) => error.into(),
             other => fail(other.to_string()),
         }
     }
 }
 
-/// The fault of a key, its advice on a line of its own.
-fn key_fault(fault: KeyFault) -> Fail {
-    match fault.message.split_once("; did you mean ") {
-        Some((message, name)) => fail(message).help(format!("did you mean {name}")).key(fault.key),
-        None => fault.into(),
-    }
-}
-
 impl From<SurveyError> for Fail {
     fn from(error: SurveyError) -> Self {
-        fail(error.to_string()).argument(0)
+        advised(&error.to_string()).argument(0)
     }
 }
 

@@ -17,11 +17,13 @@ pub struct Style {
     pub color: bool,
     /// Characters in a line.
     pub width: usize,
+    /// Rows of a table that are shown at most.
+    pub rows: usize,
 }
 
 impl Default for Style {
     fn default() -> Self {
-        Self { ascii: false, color: false, width: 100 }
+        Self { ascii: false, color: false, width: 100, rows: 40 }
     }
 }
 

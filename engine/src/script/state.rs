@@ -3,6 +3,8 @@
 use rhai::plugin::*;
 use rhai::{Array, Dynamic, FnPtr, INT, Map};
 
+use super::closure::Closure;
+use super::faults::advised;
 use super::named::named;
 use super::sample::numbers;
 use super::show::Style;
@@ -62,21 +64,14 @@ impl From<EquilibriumError> for Fail {
     fn from(error: EquilibriumError) -> Self {
         match error {
             EquilibriumError::Ledger(error) => error.into(),
-            other => fail(other.to_string()),
+            other => advised(&other.to_string()),
         }
     }
 }
 
 impl From<ObservableError> for Fail {
     fn from(error: ObservableError) -> Self {
-        let text = error.to_string();
-        match text.split_once("; did you mean ") {
-            Some((message, name)) => fail(message).help(format!("did you mean {name}")).argument(0),
-            None => match text.split_once("; there are ") {
-                Some((message, names)) => fail(message).help(format!("there are {names}")).argument(0),
-                None => fail(text).argument(0),
-            },
-        }
+        advised(&error.to_string()).argument(0)
     }
 }
 
@@ -84,7 +79,7 @@ impl From<RunError> for Fail {
     fn from(error: RunError) -> Self {
         match error {
             RunError::Observable(error) => error.into(),
-            RunError::Table(error) => fail(error.to_string()),
+            RunError::Table(error) => error.into(),
         }
     }
 }
@@ -94,7 +89,7 @@ impl From<SweepError> for Fail {
         match error {
             SweepError::Observable(error) => error.into(),
             SweepError::Sample(error) => error.into(),
-            other => fail(other.to_string()),
+            other => advised(&other.to_string()),
         }
     }
 }
@@ -180,15 +175,12 @@ fn over_closure(
 ) -> ScriptResult<Run> {
     let host = Host::of(context);
     let given = numbers("a sweep", values)?;
+    #[allow(deprecated, reason = "volatile upstream, and pinned")]
     let (store, engine, total) = (context.store_data(), context.engine(), given.len() as u64);
     let outcome = |value: &Dynamic| -> ScriptResult<Result<State, String>> {
+        #[allow(deprecated, reason = "volatile upstream, and pinned")]
         let context = store.create_context(engine);
-        // Captured variables are shared cells: a copy a call keeps the points independent of one another.
-        let mut water = water.clone();
-        for captured in water.iter_curry_mut() {
-            *captured = captured.flatten_clone();
-        }
-        let made = water.call_within_context::<Dynamic>(&context, (value.clone(),))?;
+        let made = Closure::new(water).call(&context, (value.clone(),))?;
         host.stop().check()?;
         if let Some(state) = made.read_lock::<State>() {
             return Ok(Ok(state.clone()));
@@ -492,6 +484,6 @@ mod run_functions {
         let Some(state) = run.states().next() else {
             return fail("no state was found, so no constant was used").raise();
         };
-        super::super::ledger::sources_table(state.system().ledger()).map_err(Into::into)
+        Ok(super::super::ledger::sources_table(state.system().ledger())?)
     }
 }

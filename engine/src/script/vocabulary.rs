@@ -7,7 +7,9 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 
 use super::check::Pure;
 use super::show::{Shows, Style};
-use super::{Fail, Host, ScriptResult, compare, expect, general, ledger, numbers, quantity, reaction, sample, state};
+use super::{
+    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, quantity, reaction, sample, state, table,
+};
 
 /// Gathers everything a script can name.
 pub struct Vocabulary {
@@ -20,6 +22,8 @@ pub struct Vocabulary {
 /// Every native type of the language, in the order a newcomer meets them: one line each.
 pub(super) fn everything(vocabulary: &mut Vocabulary) {
     quantity::register(vocabulary);
+    column::register(vocabulary);
+    table::register(vocabulary);
     reaction::register(vocabulary);
     ledger::register(vocabulary);
     sample::register(vocabulary);

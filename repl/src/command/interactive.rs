@@ -24,6 +24,7 @@ pub fn run(look: &Look, limits: &Limits) -> bool {
         time_limit: limits.time_limit,
         ..Options::default()
     }));
+    crate::render::draw_with(&engine);
     super::stop_on_interrupt(engine.stop());
     let data = data_folder();
     let history = data.as_ref().map(|folder| folder.join("history"));

@@ -33,6 +33,7 @@ pub fn run(run: &Run, look: &Look, limits: &Limits) -> bool {
         time_limit: limits.time_limit,
         ..Options::default()
     });
+    crate::render::draw_with(&engine);
     // First the check for a flag already set, then the setting.
     super::end_on_second_interrupt(engine.stop());
     super::stop_on_interrupt(engine.stop());

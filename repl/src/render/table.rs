@@ -43,7 +43,7 @@ pub fn draw(table: &Table, look: &Look) -> String {
     let grid = if columns.is_empty() { String::new() } else { grid(&drawn, &fit, &excerpt, table, look) };
     let hidden_rows = table.n_rows() - excerpt.rows.len();
     let left_out: Vec<&str> = columns[fit.widths.len()..].iter().map(|c| c.title.as_str()).collect();
-    grid + &notes::below(table, hidden_rows, &left_out, look.style)
+    grid + notes::below(table, hidden_rows, &left_out, look.style).as_str()
 }
 
 /// The rows that are drawn.
