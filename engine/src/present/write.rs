@@ -63,22 +63,31 @@ impl Table {
         lines.map(|cells: Vec<String>| markdown_line(&cells)).collect()
     }
 
+    /// The table in the form that the ending of a file name asks for: `.csv`, `.json` or `.md`.
+    ///
+    /// # Errors
+    ///
+    /// Returns [`TableError::UnknownExtension`] when the ending is none of the three.
+    pub fn to_text_for(&self, path: &Path) -> Result<String, TableError> {
+        let extension = path.extension().and_then(|e| e.to_str()).map(str::to_ascii_lowercase);
+        match extension.as_deref() {
+            Some("csv") => Ok(self.to_csv()),
+            Some("json") => Ok(self.to_json()),
+            Some("md") => Ok(self.to_markdown(Style::default())),
+            _ => Err(TableError::UnknownExtension { path: path.to_owned() }),
+        }
+    }
+
     /// Writes the table to `path`, in the form its ending names: `.csv`, `.json` or `.md`.
     ///
     /// The file is complete or untouched: it is written beside its place and moved there.
     ///
     /// # Errors
     ///
-    /// Returns [`TableError::UnknownExtension`] when the ending is none of the three, [`TableError::FileExists`]
-    /// when the file exists and `overwrite` refuses to replace it, [`TableError::Io`] when it cannot be written.
+    /// As [`to_text_for`](Self::to_text_for); [`TableError::FileExists`] when the file exists and `overwrite` refuses
+    /// to replace it, [`TableError::Io`] when it cannot be written.
     pub fn save(&self, path: &Path, overwrite: Overwrite) -> Result<(), TableError> {
-        let extension = path.extension().and_then(|e| e.to_str()).map(str::to_ascii_lowercase);
-        let text = match extension.as_deref() {
-            Some("csv") => self.to_csv(),
-            Some("json") => self.to_json(),
-            Some("md") => self.to_markdown(Style::default()),
-            _ => return Err(TableError::UnknownExtension { path: path.to_owned() }),
-        };
+        let text = self.to_text_for(path)?;
         if overwrite == Overwrite::Refuse && path.exists() {
             return Err(TableError::FileExists { path: path.to_owned() });
         }

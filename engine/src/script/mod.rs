@@ -4,10 +4,13 @@
 //! file for each native type), and fails in our words (`diagnostic`, `translate`). A native type joins in
 //! [`vocabulary`] by one line.
 
+pub mod closure;
 pub mod diagnostic;
 pub mod docs;
+pub mod faults;
 pub mod host;
 pub mod input;
+pub mod named;
 pub mod numbers;
 pub mod sandbox;
 pub mod show;
@@ -16,11 +19,14 @@ pub mod vocabulary;
 pub mod words;
 
 mod check;
+mod column;
 mod engine;
 mod general;
 mod modules;
+mod quantity;
 mod session;
 mod syntax;
+mod table;
 mod translate;
 
 pub use diagnostic::{Diagnostic, Fail, ScriptResult, fail};

@@ -5,7 +5,7 @@ use rhai::{Engine, Module, Shared, Variant};
 
 use super::check::Pure;
 use super::show::{Shows, Style};
-use super::{Fail, Host, general, numbers};
+use super::{Fail, Host, column, general, numbers, quantity, table};
 
 /// Gathers everything a script can name.
 pub struct Vocabulary {
@@ -16,7 +16,11 @@ pub struct Vocabulary {
 }
 
 /// Every native type of the language, in the order a newcomer meets them: one line each.
-pub(super) fn everything(_vocabulary: &mut Vocabulary) {}
+pub(super) fn everything(vocabulary: &mut Vocabulary) {
+    quantity::register(vocabulary);
+    column::register(vocabulary);
+    table::register(vocabulary);
+}
 
 /// The language without chemistry.
 pub(super) fn base(vocabulary: &mut Vocabulary) {
