@@ -5,6 +5,7 @@ use std::any::TypeId;
 use rhai::plugin::*;
 use rhai::{Array, Dynamic, Engine, FLOAT, INT, ImmutableString, Variant};
 
+use super::compare::ORDERINGS;
 use super::numbers::{DIVIDE, real};
 use super::{Fail, ScriptResult, Style, Vocabulary, docs, fail, named};
 use crate::present::{self, Cell, Column, Operation, Table, TableError, Title};
@@ -115,7 +116,7 @@ pub(super) fn register_comparison<T: Variant + Clone>(engine: &mut Engine, same:
     engine.register_fn("==", move |a: Dynamic, b: T| equal(&a, &Dynamic::from(b)));
     engine.register_fn("!=", move |a: T, b: Dynamic| equal(&Dynamic::from(a), &b).map(|same| !same));
     engine.register_fn("!=", move |a: Dynamic, b: T| equal(&a, &Dynamic::from(b)).map(|same| !same));
-    for name in ["<", "<=", ">", ">="] {
+    for (name, _) in ORDERINGS {
         let refused = |a: Dynamic, b: Dynamic| no_comparison(&a, &b).raise::<bool>();
         engine.register_fn(name, move |a: T, b: Dynamic| refused(Dynamic::from(a), b));
         engine.register_fn(name, move |a: Dynamic, b: T| refused(a, Dynamic::from(b)));

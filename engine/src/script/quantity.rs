@@ -19,7 +19,9 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
         .pure(&["uncertain", "quantity", "value", "sigma", "relative", "unit", "to", "budget"])
         .pure(&["correlate", "correlation", "units"]);
     register_arithmetic(vocabulary.engine());
-    register_comparison(vocabulary.engine());
+    vocabulary
+        .equality::<Quantity>(|a, b| compare(a, b).map(Ordering::is_eq))
+        .ordered::<Quantity>(|a, b| compare(a, b).map(Some));
 }
 
 /// A script value as a quantity; a plain number is exact and has no unit.
@@ -90,19 +92,6 @@ fn raised(result: Result<Quantity, quantity::QuantityError>) -> ScriptResult<Qua
 }
 
 /// Comparison by value. Without these the interpreter would answer `false` to a comparison it does not know.
-fn register_comparison(engine: &mut Engine) {
-    macro_rules! comparisons {
-        ($($name:expr => $holds:expr),*) => {$(
-            engine.register_fn($name, |a: Quantity, b: Dynamic| compare(&Dynamic::from(a), &b).map($holds));
-            engine.register_fn($name, |a: Dynamic, b: Quantity| compare(&a, &Dynamic::from(b)).map($holds));
-        )*};
-    }
-    comparisons!(
-        "==" => Ordering::is_eq, "!=" => Ordering::is_ne, "<" => Ordering::is_lt,
-        "<=" => Ordering::is_le, ">" => Ordering::is_gt, ">=" => Ordering::is_ge
-    );
-}
-
 fn compare(a: &Dynamic, b: &Dynamic) -> ScriptResult<Ordering> {
     let (Some(left), Some(right)) = (of(a), of(b)) else {
         let failure = fail(format!("cannot compare {} with {}", docs::described(a), docs::described(b)));
