@@ -3,4 +3,6 @@
 #[cfg(test)]
 mod properties;
 #[cfg(test)]
+mod published;
+#[cfg(test)]
 mod random_systems;
