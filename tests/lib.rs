@@ -6,3 +6,5 @@ mod properties;
 mod published;
 #[cfg(test)]
 mod random_systems;
+#[cfg(test)]
+mod two_routes;

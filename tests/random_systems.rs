@@ -44,6 +44,9 @@ pub struct Family {
     pub log_k: f64,
 }
 
+/// Small systems with moderate constants, for methods that are not made for more.
+pub const SMALL: Family = Family { components: (1, 3), species: 10, log_k: 15.0 };
+
 /// Components 2 to 10, species to 60, log10 K within ±60.
 pub const HARD: Family = Family { components: (2, 10), species: 60, log_k: 60.0 };
 
@@ -107,12 +110,11 @@ fn complex(random: &mut Random, m: usize, electron: bool) -> Row {
 /// Adds minerals whose ln saturation at `ln_a` lies between -10 and 25 log10 units; 30 % repeat the stoichiometry of an
 /// earlier one.
 pub fn add_minerals(random: &mut Random, problem: &mut Problem, ln_a: &[f64], count: usize) {
-    let electron = false;
     for _ in 0..count {
         let row = match problem.minerals.len() {
-            0 => complex(random, problem.n_components, electron),
+            0 => complex(random, problem.n_components, false),
             n if random.chance(0.3) => problem.minerals[random.integer(0, n as i64 - 1) as usize].row.clone(),
-            _ => complex(random, problem.n_components, electron),
+            _ => complex(random, problem.n_components, false),
         };
         let saturation = random.uniform(-10.0, 25.0) * LN_10;
         let ln_iap: f64 = row.stoichiometry.iter().map(|(j, nu)| *nu.numer() as f64 * ln_a[*j]).sum();
@@ -127,7 +129,8 @@ pub fn hold_component(problem: &mut Problem, component: usize, ln_value: f64) {
 
 /// Gives every species the charge that balances it from random charges of the components.
 pub fn add_charges(random: &mut Random, problem: &mut Problem) {
-    let charges: Vec<i64> = (0..problem.n_components).map(|j| if j == 0 { 1 } else { random.integer(-3, 3) }).collect();
+    let charges: Vec<i64> =
+        (0..problem.n_components).map(|j| if j == 0 { 1 } else { random.integer(-3, 3) }).collect();
     for row in &mut problem.species {
         row.charge = row.stoichiometry.iter().map(|(j, nu)| (charges[*j] * nu.numer()) as f64).sum();
     }

@@ -75,7 +75,9 @@ impl Model {
         match (self.water, &self.solutes) {
             (Water::Stated(ln_water_activity), _) => ln_water_activity,
             (Water::Consistent, Solutes::Ideal) => 0.0,
-            (Water::Consistent, Solutes::Davies(davies)) => davies.ln_water_activity(total_molality, ionic_strength),
+            (Water::Consistent, Solutes::Davies(davies)) => {
+                davies.ln_water_activity(total_molality, ionic_strength)
+            }
         }
     }
 

@@ -52,7 +52,17 @@ impl Basis {
         }
         let scale = scale.into_iter().map(|s| s as f64).collect();
         let row_of_column = (rows.len()..n_rows).collect();
-        Some(Self { n, n_rows, scale, tableau: input.clone(), input, determinant: 1.0, row_of_column, column_of_row, pivots: 0 })
+        Some(Self {
+            n,
+            n_rows,
+            scale,
+            tableau: input.clone(),
+            input,
+            determinant: 1.0,
+            row_of_column,
+            column_of_row,
+            pivots: 0,
+        })
     }
 
     /// Whether the tableau is that of the same rows, so that its basis can be taken over.

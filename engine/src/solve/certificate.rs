@@ -1,11 +1,11 @@
 //! What is checked about an answer, however it was found.
 
+use super::Phases;
 use super::dense::Lu;
 use super::exact::ExactSum;
 use super::ionic_strength::Settled;
 use super::settings::Settings;
 use super::system::System;
-use super::Phases;
 use crate::activity::Model;
 
 /// How well an answer satisfies its equations, and how far it can be trusted.
@@ -52,12 +52,18 @@ impl Certificate {
 }
 
 /// Checks a settled system together with what was read out of it.
-pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: &Phases, model: &Model) -> Certificate {
+pub(super) fn certify(
+    system: &System,
+    settled: &Settled,
+    ln_c: &[f64],
+    phases: &Phases,
+    model: &Model,
+) -> Certificate {
     let (balance, balance_idx) = worst_balance(system, ln_c, phases);
     let (ln_c_error, condition) = error_and_condition(system, settled);
     let minerals = || phases.mineral_ln_saturation.iter().zip(&phases.mineral_present);
     let absent = minerals().filter(|(_, present)| !**present).map(|(saturation, _)| *saturation);
-    let present = minerals().filter(|(_, present)| **present).map(|(saturation, _)| saturation.abs());
+    let present = (0..).zip(&phases.mineral_present).filter(|(_, present)| **present).map(|(p, _)| p);
     let amounts = phases.mineral_amount.iter().zip(&phases.mineral_present);
     Certificate {
         balance,
@@ -65,13 +71,23 @@ pub(super) fn certify(system: &System, settled: &Settled, ln_c: &[f64], phases: 
         residual: settled.point.worst,
         ln_c_error,
         saturation: absent.fold(f64::NEG_INFINITY, f64::max),
-        present_saturation: present.fold(0.0, f64::max),
-        smallest_amount: amounts.filter(|(_, present)| **present).map(|(n, _)| *n).fold(f64::INFINITY, f64::min),
+        present_saturation: present.map(|p| saturation_from_components(system, p).abs()).fold(0.0, f64::max),
+        smallest_amount: amounts
+            .filter(|(_, present)| **present)
+            .map(|(n, _)| *n)
+            .fold(f64::INFINITY, f64::min),
         ionic_strength: relative(settled.ionic_strength_residual, settled.ionic_strength),
         ionic_strength_roots: settled.roots,
         outside_validity: model.valid_to().is_some_and(|limit| settled.ionic_strength > limit),
         condition,
     }
+}
+
+/// ln saturation of a mineral from the activities of the components, independent of the basis it is part of.
+fn saturation_from_components(system: &System, mineral_idx: usize) -> f64 {
+    let row = system.mineral_row(mineral_idx);
+    let made_of = system.basis.input_row(row).iter().enumerate().filter(|(_, nu)| **nu != 0.0);
+    system.g[row] + made_of.map(|(k, nu)| nu * system.level_of(system.basis.unit_row(k))).sum::<f64>()
 }
 
 fn relative(error: f64, size: f64) -> f64 {
@@ -86,7 +102,8 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
     let amounts = (0..).zip(ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
     let delivered = (first_reservoir..).zip(&phases.reservoir_amount).map(|(row, amount)| (row, -amount));
     let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
-    let terms: Vec<(usize, f64)> = amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
+    let terms: Vec<(usize, f64)> =
+        amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
     let mut worst = (0.0, 0);
     let mut sum = ExactSum::default();
     for k in 0..basis.n {
@@ -103,7 +120,7 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
             magnitude += (basis.scale(k) * part).abs();
         }
         let error = relative(sum.take(), magnitude);
-        if !(error <= worst.0) {
+        if error > worst.0 || error.is_nan() {
             worst = (error, k);
         }
     }
@@ -114,6 +131,7 @@ fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize)
 ///
 /// With `δ = max |J⁻¹F| + max |J⁻¹| dF`, C the largest Σ|ν'| of a species and κ the largest row sum of |J⁻¹| |J|: if
 /// `(exp(4 C δ) - 1) κ <= 1/2`, then `y - J⁻¹F(y)` contracts the box of radius 2δ into itself, so the solution is in it.
+/// The rounding of ln c itself comes on top.
 fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64) {
     let (reduced, point) = (&settled.reduced, &settled.point);
     let n = reduced.n();
@@ -129,13 +147,15 @@ fn error_and_condition(system: &System, settled: &Settled) -> (Option<f64>, f64)
         let row = &inverse[j * n..(j + 1) * n];
         delta.0 = delta.0.max(row.iter().zip(&point.residual).map(|(a, f)| a * f).sum::<f64>().abs());
         delta.1 = delta.1.max(row.iter().zip(&rounding).map(|(a, f)| a.abs() * f).sum());
-        let row_sum: f64 = (0..n).map(|k| row[k].abs() * absolute[k * n..(k + 1) * n].iter().sum::<f64>()).sum();
+        let row_sum: f64 =
+            (0..n).map(|k| row[k].abs() * absolute[k * n..(k + 1) * n].iter().sum::<f64>()).sum();
         kappa = kappa.max(row_sum);
         condition = condition.max(sensitivity_to_totals(system, settled, row));
     }
     let delta = delta.0 + delta.1;
     let applies = (4.0 * reduced.row_max * delta).exp_m1() * kappa <= 0.5;
-    (applies.then_some(2.0 * delta * reduced.row_max), condition)
+    let evaluation = (0..reduced.species.len()).map(|i| reduced.rounding(i, &point.y)).fold(0.0, f64::max);
+    (applies.then_some(2.0 * delta * reduced.row_max + evaluation), condition)
 }
 
 /// `Σ_k |∂y/∂T_k| |T_k|` of one basis level, given its row of J⁻¹.
@@ -147,5 +167,7 @@ fn sensitivity_to_totals(system: &System, settled: &Settled, inverse_row: &[f64]
         columns.map(|(&column, a)| a * system.basis.total_factor(k, column)).sum::<f64>()
     };
     let totals = system.problem.totals.iter().enumerate();
-    totals.map(|(k, total)| if total.to_f64() == 0.0 { 0.0 } else { (change(k) * total.to_f64()).abs() }).sum()
+    totals
+        .map(|(k, total)| if total.to_f64() == 0.0 { 0.0 } else { (change(k) * total.to_f64()).abs() })
+        .sum()
 }

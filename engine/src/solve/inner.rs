@@ -32,6 +32,8 @@ pub(super) struct Reduced {
     entries: Vec<(u32, f64)>,
     /// ln c of each species where all free levels are zero.
     g: Vec<f64>,
+    /// Sum of the absolute terms of each g, which bounds its rounding.
+    g_size: Vec<f64>,
     /// Total of each free basis row.
     pub(super) b: Vec<f64>,
     /// Largest Σ_j |ν'_ij| of any species.
@@ -52,6 +54,7 @@ impl Reduced {
         self.start.push(0);
         self.entries.clear();
         self.g.clear();
+        self.g_size.clear();
         self.column_max.clear();
         self.column_max.resize(self.columns.len(), 0.0);
         self.row_max = 0.0;
@@ -62,9 +65,12 @@ impl Reduced {
             let coefficient =
                 |j: usize| if unimodular { scaled[j] * reciprocal } else { scaled[j] / basis.determinant() };
             let mut g = system.g[row];
+            let mut g_size = g.abs();
             for (j, _) in scaled.iter().enumerate().filter(|(_, entry)| **entry != 0.0) {
                 let held = if system.column[j] == Column::Held { system.level[j] } else { 0.0 };
-                g += coefficient(j) * (held - system.g[basis.row_of(j)]);
+                let term = coefficient(j) * (held - system.g[basis.row_of(j)]);
+                g += term;
+                g_size += term.abs();
             }
             let mut row_sum = 0.0;
             for (k, &j) in self.columns.iter().enumerate() {
@@ -77,6 +83,7 @@ impl Reduced {
             }
             self.row_max = self.row_max.max(row_sum);
             self.g.push(g);
+            self.g_size.push(g_size);
             self.start.push(self.entries.len());
         }
         self.b.clear();
@@ -104,9 +111,10 @@ impl Reduced {
         self.row(i).iter().map(|&(k, nu)| nu * step[k as usize]).sum()
     }
 
-    /// Magnitude of the terms that ln c of a species is summed from, which bounds its rounding.
-    pub(super) fn magnitude(&self, i: usize, y: &[f64]) -> f64 {
-        self.row(i).iter().fold(self.g[i].abs(), |sum, &(k, nu)| sum + (nu * y[k as usize]).abs())
+    /// Bound on the rounding of ln c of a species, from the absolute terms that it is summed from.
+    pub(super) fn rounding(&self, i: usize, y: &[f64]) -> f64 {
+        let size = self.row(i).iter().fold(self.g_size[i], |sum, &(k, nu)| sum + (nu * y[k as usize]).abs());
+        f64::EPSILON * (4.0 + size)
     }
 }
 
@@ -210,7 +218,8 @@ impl Point {
         self.worst = 0.0;
         for k in 0..reduced.n() {
             let (b, (up, down)) = (reduced.b[k], self.shift[k]);
-            let with = |sum: f64, b: f64, shift: f64| sum + if b > 0.0 { (b.ln() - shift).exp() } else { 0.0 };
+            let with =
+                |sum: f64, b: f64, shift: f64| sum + if b > 0.0 { (b.ln() - shift).exp() } else { 0.0 };
             self.ln_p[k] = up + with(self.supply[k], -b, up).ln();
             self.ln_n[k] = down + with(self.demand[k], b, down).ln();
             self.finish(k);
@@ -221,7 +230,7 @@ impl Point {
     fn finish(&mut self, k: usize) {
         self.residual[k] = self.ln_p[k] - self.ln_n[k];
         let size = self.residual[k].abs();
-        if !(size <= self.worst) {
+        if size > self.worst || size.is_nan() {
             self.worst = if size.is_finite() { size } else { f64::INFINITY };
         }
     }
@@ -267,7 +276,7 @@ impl Point {
         let n = reduced.n();
         let (mut absolute, mut rounding) = (vec![0.0; n * n], vec![4.0 * f64::EPSILON; n]);
         for i in 0..reduced.species.len() {
-            let ln_c_rounding = f64::EPSILON * (4.0 + reduced.magnitude(i, &self.y));
+            let ln_c_rounding = reduced.rounding(i, &self.y);
             for &(j, nu) in reduced.row(i) {
                 let j = j as usize;
                 let weight = self.weight(i, j, nu).abs();
@@ -293,7 +302,8 @@ impl Point {
         } else {
             self.ln_c.iter().zip(&from.ln_c).map(|(new, old)| (new - shift).exp() - (old - shift).exp()).sum()
         };
-        let totals: f64 = self.y.iter().zip(&from.y).zip(&reduced.b).map(|((new, old), b)| b * (new - old)).sum();
+        let totals: f64 =
+            self.y.iter().zip(&from.y).zip(&reduced.b).map(|((new, old), b)| b * (new - old)).sum();
         species - totals * (-shift).exp()
     }
 
@@ -326,7 +336,7 @@ impl Point {
 pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<(Reduced, Point), SolveError> {
     let mut newton = Newton::new(system)?;
     newton.relax();
-    for iteration in 0..settings.max_iterations {
+    for _ in 0..settings.max_iterations {
         settings.check_stop()?;
         newton.rebase()?;
         if newton.here.worst <= settings.residual {
@@ -337,15 +347,12 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<(Redu
         if newton.step() {
             continue;
         }
-        if before <= settings.stalled_residual {
+        if before <= settings.stalled_residual || newton.is_rounding() {
             return Ok(newton.finish());
         }
         let swept = newton.sweep();
         if !swept && newton.here.worst < 4.0 {
             newton.convex_step();
-        }
-        if iteration + 1 == settings.max_iterations {
-            break;
         }
     }
     let (iterations, residual) = (newton.system.effort.iterations, newton.here.worst);
@@ -479,7 +486,7 @@ impl<'s, 'p> Newton<'s, 'p> {
             self.trial.y.clear();
             self.trial.y.extend((0..self.reduced.n()).map(|k| self.here.y[k] - change(k)));
             self.evaluate_trial();
-            if !(self.trial.worst < self.here.worst) {
+            if self.trial.worst >= self.here.worst {
                 return;
             }
             std::mem::swap(&mut self.here, &mut self.trial);
@@ -516,7 +523,7 @@ impl<'s, 'p> Newton<'s, 'p> {
         self.lu.solve(&self.here.residual, &mut self.direction);
         self.direction.iter_mut().for_each(|d| *d = -*d);
         let longest = self.reduced.largest_change(&self.direction);
-        if !(longest <= GARBAGE) {
+        if longest > GARBAGE || !self.direction.iter().all(|d| d.is_finite()) {
             return false;
         }
         if self.here.worst <= NEAR {
@@ -539,7 +546,7 @@ impl<'s, 'p> Newton<'s, 'p> {
 
         let shift = self.here.phi_shift();
         let slope = self.here.slope(&self.direction, shift);
-        if !(slope < 0.0) {
+        if slope.is_nan() || slope >= 0.0 {
             return false;
         }
         for fraction in [1.0, 0.5, 0.125] {
@@ -576,6 +583,15 @@ impl<'s, 'p> Newton<'s, 'p> {
         false
     }
 
+    /// Whether the residual is no larger than its own rounding, as it may be far from the final ionic strength, where
+    /// logarithms of concentrations run into the thousands. The certificate is not so lenient.
+    fn is_rounding(&self) -> bool {
+        self.here.worst < 1e-8 && {
+            let (_, rounding) = self.here.absolute_jacobian(&self.reduced);
+            self.here.residual.iter().zip(&rounding).all(|(f, bound)| f.abs() <= *bound)
+        }
+    }
+
     /// A Newton step on Φ itself, short enough that its Hessian changes by a known factor.
     fn convex_step(&mut self) {
         const BOX: f64 = 2.0;
@@ -607,8 +623,8 @@ impl<'s, 'p> Newton<'s, 'p> {
         self.direction.resize(n, 0.0);
         self.lu.solve(&gradient, &mut self.direction);
         self.direction.iter_mut().zip(&scale).for_each(|(d, s)| *d = -*d / s);
-        let longest = self.reduced.largest_change(&self.direction);
-        if longest.is_finite() {
+        if self.direction.iter().all(|d| d.is_finite()) {
+            let longest = self.reduced.largest_change(&self.direction);
             self.descend((BOX / longest).min(1.0));
         }
     }

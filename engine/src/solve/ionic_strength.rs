@@ -90,7 +90,8 @@ impl Coupling<'_, '_> {
         self.system.set_activities(self.model, ionic_strength, self.ln_water_activity);
         let (reduced, point) = phases::settle(self.system, self.settings)?;
         let charge_squared = |i: &usize| self.system.problem.species[*i].charge.powi(2);
-        let implied: f64 = 0.5 * reduced.species.iter().map(charge_squared).zip(&point.c).map(|(z2, c)| z2 * c).sum::<f64>();
+        let implied: f64 =
+            0.5 * reduced.species.iter().map(charge_squared).zip(&point.c).map(|(z2, c)| z2 * c).sum::<f64>();
         let sample = Sample { x: ionic_strength, f: implied - ionic_strength };
         self.last = Some((sample, reduced, point));
         Ok(sample)
@@ -107,8 +108,8 @@ impl Coupling<'_, '_> {
         let (mut here, mut factor) = (start, 1.0);
         loop {
             // r(I) + I is not negative, so the first step, the plain fixed point, stays at I >= 0.
-            let x = (here.x + factor * here.f).max(0.0);
-            if !(x <= FARTHEST) {
+            let x = (here.x + factor * here.f).clamp(0.0, FARTHEST);
+            if here.x == FARTHEST && here.f > 0.0 {
                 return Err(SolveError::NoIonicStrength { searched_to: FARTHEST });
             }
             let next = self.sample(x)?;
@@ -116,7 +117,8 @@ impl Coupling<'_, '_> {
                 return Ok(next);
             }
             if (next.f > 0.0) != (here.f > 0.0) {
-                let tolerance = Tolerance { x: 0.0, f: 0.1 * self.settings.ionic_strength * here.x.min(next.x) };
+                let tolerance =
+                    Tolerance { x: 0.0, f: 0.1 * self.settings.ionic_strength * here.x.min(next.x) };
                 let (low, high) = if here.x < next.x { (here, next) } else { (next, here) };
                 return scalar::root_between(&mut |x| Ok(self.sample(x)?.f), low, high, tolerance);
             }
@@ -136,7 +138,8 @@ impl Coupling<'_, '_> {
         if self.last.as_ref().is_none_or(|(sample, ..)| sample.x != root.x) {
             self.sample(root.x)?;
         }
-        let (sample, reduced, point) = self.last.ok_or(SolveError::NoIonicStrength { searched_to: root.x })?;
+        let (sample, reduced, point) =
+            self.last.ok_or(SolveError::NoIonicStrength { searched_to: root.x })?;
         Ok(Settled {
             reduced,
             point,

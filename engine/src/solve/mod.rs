@@ -39,6 +39,8 @@ mod problem;
 pub mod scalar;
 mod settings;
 mod system;
+#[cfg(test)]
+mod tests;
 
 pub use certificate::Certificate;
 pub use exact::Total;

@@ -43,17 +43,18 @@ pub(super) fn present(system: &System) -> Vec<(usize, usize)> {
 fn move_to_new_amounts(system: &mut System) -> Option<usize> {
     /// Amounts smaller than this share of their balance are rounding.
     const ROUNDING: f64 = 1e-15;
+    const LARGEST: f64 = 1e300;
 
     let mut first: Option<(f64, usize)> = None;
     let mut moved = Vec::new();
     for (column, mineral_idx) in present(system) {
         let (amount, magnitude) = system.held_amount(column);
+        // A phase far from its place may ask for e^700; an infinite amount would spoil the proportions.
+        let amount = if amount.is_nan() { -LARGEST } else { amount.clamp(-LARGEST, LARGEST) };
         let old = system.mineral_amount[mineral_idx];
-        if !(amount >= -ROUNDING * magnitude) {
-            let share = if amount.is_finite() { old / (old - amount) } else { 0.0 };
-            // Of several that are gone at once, the most negative leaves.
-            let earlier = first.is_none_or(|(least, _)| share < least);
-            if earlier {
+        if amount < -ROUNDING * magnitude.min(LARGEST) {
+            let share = old / (old - amount);
+            if first.is_none_or(|(least, _)| share < least) {
                 first = Some((share, column));
             }
         }
@@ -61,8 +62,12 @@ fn move_to_new_amounts(system: &mut System) -> Option<usize> {
     }
     let share = first.map_or(1.0, |(share, _)| share);
     for (mineral_idx, old, amount) in moved {
-        let step = if share > 0.0 { share * (amount - old) } else { 0.0 };
-        system.mineral_amount[mineral_idx] = (old + step).max(0.0);
+        let moved = match share {
+            0.0 => old,
+            1.0 => amount,
+            share => old + share * (amount - old),
+        };
+        system.mineral_amount[mineral_idx] = moved.max(0.0);
     }
     let (_, column) = first?;
     if let Some(mineral_idx) = system.mineral_of(column) {

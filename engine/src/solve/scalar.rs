@@ -190,7 +190,8 @@ mod tests {
 
     #[test]
     fn brent_finds_hard_roots_in_few_evaluations() {
-        let cases: [(fn(f64) -> f64, f64, f64, f64); 4] = [
+        type Case = (fn(f64) -> f64, f64, f64, f64);
+        let cases: [Case; 4] = [
             (|x| x.cos() - x, 0.0, 1.0, 0.739_085_133_215_160_6),
             (|x| (x - 1.0).powi(3), 0.0, 3.0, 1.0),
             (|x| x.exp() - 1e-8, -30.0, 30.0, -18.420_680_743_952_367),
@@ -211,7 +212,8 @@ mod tests {
 
     #[test]
     fn all_roots_are_reported_in_order() {
-        let roots = all_roots(ok(|x| (x - 0.1) * (x - 0.45) * (x - 0.8)), (0.0, 1.0), 10, TIGHT).unwrap().roots;
+        let roots =
+            all_roots(ok(|x| (x - 0.1) * (x - 0.45) * (x - 0.8)), (0.0, 1.0), 10, TIGHT).unwrap().roots;
         let x: Vec<f64> = roots.iter().map(|root| root.x).collect();
         assert_eq!(x.len(), 3);
         assert!((x[0] - 0.1).abs() < 1e-12 && (x[1] - 0.45).abs() < 1e-12 && (x[2] - 0.8).abs() < 1e-12);
@@ -221,6 +223,8 @@ mod tests {
     fn a_pair_of_roots_between_two_samples_is_seen() {
         let roots = all_roots(ok(|x| (x - 0.5312) * (x - 0.5313)), (0.0, 1.0), 10, TIGHT).unwrap().roots;
         assert_eq!(roots.len(), 2);
-        assert!(all_roots(ok(|x| (x - 0.53).powi(2) + 1e-3), (0.0, 1.0), 10, TIGHT).unwrap().roots.is_empty());
+        assert!(
+            all_roots(ok(|x| (x - 0.53).powi(2) + 1e-3), (0.0, 1.0), 10, TIGHT).unwrap().roots.is_empty()
+        );
     }
 }

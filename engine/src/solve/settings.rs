@@ -68,15 +68,24 @@ pub enum Input {
 #[non_exhaustive]
 pub enum SolveError {
     /// A number is not finite, an index out of range or repeated, a row empty, or the number of totals wrong.
-    #[error("entry {idx} of the {input:?} input is malformed: a finite number, a component index in range, or a total for every component is missing")]
+    #[error(
+        "entry {idx} of the {input:?} input is malformed: a finite number, a component index in range, or a total for every component is missing"
+    )]
     BadInput {
         /// Where.
         input: Input,
         /// Which entry.
         idx: usize,
     },
+    /// The stoichiometric coefficients, brought to integers, do not fit the exact arithmetic of the tableau.
+    #[error(
+        "the stoichiometric coefficients of a component need a common denominator below 2^20 and integers below 2^30"
+    )]
+    CoefficientsTooLarge,
     /// A linear combination of the totals has a sign that no species and no phase can give it.
-    #[error("no composition has these totals: the combination {combination:?} of them is {value:e}, and every species and phase contributes to it with the other sign or not at all")]
+    #[error(
+        "no composition has these totals: the combination {combination:?} of them is {value:e}, and every species and phase contributes to it with the other sign or not at all"
+    )]
     Infeasible {
         /// (component index, factor) of the combination.
         combination: Vec<(usize, f64)>,
@@ -84,7 +93,9 @@ pub enum SolveError {
         value: f64,
     },
     /// A phase stays supersaturated however much of it forms, since reservoirs supply all it is made of.
-    #[error("mineral {mineral_idx} would precipitate without end: reservoirs and phases that it does not consume hold all of its components")]
+    #[error(
+        "mineral {mineral_idx} would precipitate without end: reservoirs and phases that it does not consume hold all of its components"
+    )]
     Unbounded {
         /// The phase.
         mineral_idx: usize,
@@ -96,7 +107,9 @@ pub enum SolveError {
         reservoir_idx: usize,
     },
     /// The iteration limit was reached; a defect of the solver unless the problem has no interior solution.
-    #[error("no equilibrium after {iterations} iterations: the largest logarithmic residual is still {residual:.3e}")]
+    #[error(
+        "no equilibrium after {iterations} iterations: the largest logarithmic residual is still {residual:.3e}"
+    )]
     NotConverged {
         /// Newton iterations done.
         iterations: usize,
@@ -110,7 +123,9 @@ pub enum SolveError {
         changes: usize,
     },
     /// No ionic strength agrees with the composition it implies.
-    #[error("no ionic strength up to {searched_to} mol/kg(water) agrees with the composition that it implies")]
+    #[error(
+        "no ionic strength up to {searched_to} mol/kg(water) agrees with the composition that it implies"
+    )]
     NoIonicStrength {
         /// Upper end of the search, mol/kg(water).
         searched_to: f64,

@@ -6,7 +6,7 @@
 use super::basis::Basis;
 use super::exact::ExactSum;
 use super::problem::Problem;
-use super::settings::{Input, SolveError};
+use super::settings::SolveError;
 use crate::activity::Model;
 
 /// What the level of a column's basis row is.
@@ -68,8 +68,8 @@ pub struct Effort {
 impl<'p> System<'p> {
     /// The system at its starting point.
     pub(super) fn new(problem: &'p Problem, warm: Option<&Warm>) -> Result<Self, SolveError> {
-        let basis = Basis::new(problem.rows(), problem.n_components)
-            .ok_or(SolveError::BadInput { input: Input::Species, idx: 0 })?;
+        let basis =
+            Basis::new(problem.rows(), problem.n_components).ok_or(SolveError::CoefficientsTooLarge)?;
         let mut system = Self {
             problem,
             g: vec![0.0; basis.unit_row(0) + problem.n_components],
