@@ -285,8 +285,9 @@ fn state(file: &File, check: &Check, given: &mut Given) -> Result<State, String>
             ["saturate", solid] => {
                 sample.treated(Treatment::Saturate { solid: (*solid).into(), index: 0.0 }).map_err(text)?
             }
-            ["hold_ph", column] => {
-                sample.treated(Treatment::HoldPh { ph: given.take(column)?, reagent: None }).map_err(text)?
+            ["hold_ph", column, reagent] => {
+                let reagent = Some((*reagent).into());
+                sample.treated(Treatment::HoldPh { ph: given.take(column)?, reagent }).map_err(text)?
             }
             ["close"] => equilibrium(&sample)?.sample(&[]).map_err(text)?,
             other => return Err(format!("no step {other:?}")),
