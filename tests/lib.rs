@@ -3,6 +3,16 @@
 #[cfg(test)]
 mod properties;
 #[cfg(test)]
+mod published;
+#[cfg(test)]
 mod random_systems;
 #[cfg(test)]
+mod reproducible;
+#[cfg(test)]
+mod round_trips;
+#[cfg(test)]
+mod tidy;
+#[cfg(test)]
 mod two_routes;
+#[cfg(test)]
+mod waters;

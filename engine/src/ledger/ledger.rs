@@ -158,14 +158,20 @@ impl Ledger {
         self.changed(|inner| Ok(inner.reactions.insert(name.into(), in_bar(reaction)?)))
     }
 
-    /// The same without a reaction.
+    /// The same without a reaction. An ion that others are formed from stays known, even where this was the only
+    /// reaction it took part in: without halite there is still chloride.
     ///
     /// # Errors
     ///
     /// [`LedgerError::Unknown`] if there is none.
     pub fn without(&self, name: &str) -> Result<Self, LedgerError> {
-        self.reaction(name)?;
-        self.changed(|inner| Ok(inner.reactions.remove(name)))
+        let terms = self.reaction(name)?.equation().terms();
+        let components = &self.formations().components;
+        let ions = terms.iter().map(|(species, _)| species).filter(|species| species.is_solute() && components.contains(species));
+        self.changed(|inner| {
+            inner.solutes.extend(ions.cloned());
+            Ok(inner.reactions.remove(name))
+        })
     }
 
     /// The reactions of both. Where a name is in both with different reactions, `prefer_other` says which to keep.
@@ -282,7 +288,9 @@ impl Ledger {
     pub fn digest(&self) -> String {
         // FNV-1a (Fowler, Noll & Vo), 64 bits: a fingerprint for telling ledgers apart, not a signature.
         let constants = self.reactions().map(|(name, r)| (name, r.equation(), r.constant().ok().map(|c| &c.log_k)));
-        let text = format!("{:?} {:?} {:?}", constants.collect::<Vec<_>>(), self.0.solutes, self.0.activity);
+        let reacts = |ion: &&Species| self.reactions().any(|(_, r)| r.equation().coefficient(ion) != 0.into());
+        let solutes: Vec<&Species> = self.0.solutes.iter().filter(|ion| !reacts(ion)).collect();
+        let text = format!("{:?} {:?} {:?}", constants.collect::<Vec<_>>(), solutes, self.0.activity);
         let fold = |hash: u64, byte: u8| (hash ^ u64::from(byte)).wrapping_mul(0x0100_0000_01b3);
         format!("{:016x}", text.bytes().fold(0xcbf2_9ce4_8422_2325, fold))
     }
