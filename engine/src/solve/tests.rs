@@ -309,3 +309,84 @@ fn a_solve_can_be_interrupted() {
     let outcome = solve(&carbonate(Total::from(0.0)), &Model::IDEAL, &settings, None);
     assert_eq!(outcome.unwrap_err(), SolveError::Stopped);
 }
+
+/// A component that only a mineral contains, and a balance that only a mineral can close.
+#[test]
+fn minerals_without_which_no_balance_closes_are_present() {
+    let species = vec![row(&[(0, 1)], 0.0), row(&[(2, 1)], 0.0)];
+    let minerals = vec![mineral(&[(1, 2)], -3.0), mineral(&[(0, -2), (2, 1)], -22.8)];
+    let problem = Problem {
+        n_components: 3,
+        species,
+        minerals,
+        totals: totals(&[-0.1, 3.0, 0.2]),
+        ..Problem::default()
+    };
+    let converged = ideal(&problem).unwrap();
+    assert_eq!(converged.mineral_present, [true, true]);
+    assert!((converged.mineral_amount[0] - 1.5).abs() < 1e-15);
+    assert!((converged.ln_c[0].exp() - 2.0 * converged.mineral_amount[1] + 0.1).abs() < 1e-15);
+    let impossible = Problem { totals: totals(&[-0.1, -3.0, 0.2]), ..problem };
+    assert!(matches!(ideal(&impossible), Err(SolveError::Infeasible { value: -3.0, .. })));
+}
+
+/// Two identical minerals, and one exactly at saturation: the composition is unique, the amounts are one choice.
+#[test]
+fn ties_between_minerals_leave_the_composition_alone() {
+    let free = carbonate(Total::from(0.0));
+    let mut twins = free.clone();
+    twins.minerals.push(twins.minerals[0].clone());
+    let (free, twins) = (ideal(&free).unwrap(), ideal(&twins).unwrap());
+    assert_eq!(free.ln_c, twins.ln_c);
+    assert_eq!(free.mineral_amount[0], twins.mineral_amount[0] + twins.mineral_amount[4]);
+
+    let species = vec![row(&[(0, 1)], 0.0)];
+    let minerals = vec![mineral(&[(0, 1)], 2.0)];
+    let saturated =
+        Problem { n_components: 1, species, minerals, totals: totals(&[0.01]), ..Problem::default() };
+    let converged = ideal(&saturated).unwrap();
+    assert!((converged.ln_c[0].exp() - 0.01).abs() < 1e-16 && converged.mineral_amount[0] < 1e-16);
+}
+
+#[test]
+fn components_that_nothing_contains_may_have_no_total() {
+    assert!(ideal(&Problem::default()).unwrap().ln_c.is_empty());
+    let species = vec![row(&[(0, 1)], 0.0)];
+    let mut problem =
+        Problem { n_components: 2, species, totals: totals(&[0.01, 0.0]), ..Problem::default() };
+    assert!((ideal(&problem).unwrap().ln_c[0] - 0.01_f64.ln()).abs() < 1e-14);
+    problem.totals[1] = Total::from(1e-9);
+    assert!(matches!(ideal(&problem), Err(SolveError::Infeasible { .. })));
+}
+
+/// X and Y only together: the composition is determined, the two activities are not.
+#[test]
+fn components_that_only_occur_together_leave_their_activities_open() {
+    let species = vec![row(&[(0, 1), (1, 1)], 0.0)];
+    let mut problem =
+        Problem { n_components: 2, species, totals: totals(&[0.01, 0.01]), ..Problem::default() };
+    let converged = ideal(&problem).unwrap();
+    assert!(
+        (converged.ln_c[0] - 0.01_f64.ln()).abs() < 1e-14
+            && converged.ln_a.iter().all(|ln_a| !ln_a.is_finite())
+    );
+    problem.totals[1] = Total::from(0.02);
+    assert!(matches!(ideal(&problem), Err(SolveError::Infeasible { .. })));
+}
+
+/// The stated condition is the sum of difference quotients.
+#[test]
+fn the_condition_is_that_of_the_totals() {
+    let condition = |problem: &Problem| ideal(problem).unwrap().certificate.condition;
+    let species = vec![row(&[(0, 1)], 0.0), row(&[(0, -1)], -14.0)];
+    let water = |total: f64| Problem {
+        n_components: 1,
+        species: species.clone(),
+        totals: totals(&[total]),
+        ..Problem::default()
+    };
+    let (total, step) = (3e-8, 1e-5);
+    let ln_c = |total: f64| ideal(&water(total)).unwrap().ln_c[0];
+    let quotient = (ln_c(total * (1.0 + step)) - ln_c(total * (1.0 - step))) / (2.0 * step);
+    assert!((condition(&water(total)) / quotient - 1.0).abs() < 1e-8);
+}
