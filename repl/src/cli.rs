@@ -52,8 +52,8 @@ pub struct Look {
     #[arg(long, global = true)]
     pub plain: bool,
 
-    /// Colours
-    #[arg(long, global = true, value_enum, default_value_t = When::Auto, value_name = "WHEN")]
+    /// Colours: auto (on a terminal, unless NO_COLOR is set), always or never
+    #[arg(long, global = true, value_enum, default_value_t = When::Auto, value_name = "WHEN", hide_possible_values = true)]
     pub color: When,
 }
 
@@ -72,7 +72,6 @@ pub struct Limits {
 /// When to use colours.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
 pub enum When {
-    /// On a terminal, unless NO_COLOR is set
     Auto,
     Always,
     Never,
@@ -108,11 +107,13 @@ impl Look {
 /// Characters in a line of the terminal; a fixed number where the output is no terminal, so that files do not depend
 /// on the window.
 fn width() -> usize {
-    terminal_size::terminal_size_of(std::io::stdout()).map_or(Style::default().width, |(columns, _)| usize::from(columns.0.max(40)))
+    terminal_size::terminal_size_of(std::io::stdout())
+        .map_or(Style::default().width, |(columns, _)| usize::from(columns.0.max(40)))
 }
 
 fn seconds(text: &str) -> Result<Duration, String> {
-    let seconds: f64 = text.parse().map_err(|_| "a number of seconds is needed, such as `60` or `0.5`".to_owned())?;
+    let seconds: f64 =
+        text.parse().map_err(|_| "a number of seconds is needed, such as `60` or `0.5`".to_owned())?;
     let positive = if seconds > 0.0 { Duration::try_from_secs_f64(seconds).ok() } else { None };
     positive.ok_or_else(|| "a number of seconds above zero is needed".to_owned())
 }

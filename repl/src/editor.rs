@@ -5,7 +5,7 @@ use std::collections::BTreeSet;
 use std::path::PathBuf;
 use std::sync::{Arc, PoisonError, RwLock};
 
-use lysocline_engine::script::docs::Entry;
+use lysocline_engine::script::docs::{self, Entry};
 use lysocline_engine::script::input::{Status, status};
 use lysocline_engine::script::{Dynamic, ScriptEngine, Session};
 use rustyline::completion::{Completer, FilenameCompleter, Pair};
@@ -21,7 +21,8 @@ const GREEN_PROMPT: &str = "\u{1b}[32mlysocline>\u{1b}[0m ";
 
 /// Words of the language that a person may want completed.
 const KEYWORDS: [&str; 15] = [
-    "break", "catch", "const", "continue", "else", "false", "for", "if", "import", "let", "loop", "return", "true", "try", "while",
+    "break", "catch", "const", "continue", "else", "false", "for", "if", "import", "let", "loop", "return",
+    "true", "try", "while",
 ];
 
 /// One line as it was read.
@@ -43,7 +44,11 @@ pub struct Editor {
 
 impl Editor {
     /// An editor that completes from `engine` and keeps its history in `history`.
-    pub fn new(engine: Arc<ScriptEngine>, history: Option<PathBuf>, color: bool) -> Result<Self, ReadlineError> {
+    pub fn new(
+        engine: Arc<ScriptEngine>,
+        history: Option<PathBuf>,
+        color: bool,
+    ) -> Result<Self, ReadlineError> {
         let config = Config::builder()
             .completion_type(CompletionType::List)
             .auto_add_history(false)
@@ -142,12 +147,20 @@ impl Highlighter for Assistant {
 impl Completer for Assistant {
     type Candidate = Pair;
 
-    fn complete(&self, line: &str, position: usize, context: &Context<'_>) -> rustyline::Result<(usize, Vec<Pair>)> {
+    fn complete(
+        &self,
+        line: &str,
+        position: usize,
+        context: &Context<'_>,
+    ) -> rustyline::Result<(usize, Vec<Pair>)> {
         let before = &line[..position];
         let names = self.names.read().unwrap_or_else(PoisonError::into_inner);
         match Place::of(before) {
             Place::File => self.files.complete(line, position, context),
-            Place::Command(word) => Ok((position - word.len(), plain(super::prompt::COMMANDS.iter().map(|(name, ..)| *name), word))),
+            Place::Command(word) => Ok((
+                position - word.len(),
+                plain(super::prompt::COMMANDS.iter().map(|(name, ..)| *name), word),
+            )),
             Place::Topic(word) => Ok((position - word.len(), plain(names.topics(), word))),
             Place::Quoted(word) => {
                 let words = self.engine.quoted_words();
@@ -224,19 +237,27 @@ fn open_quote(before: &str) -> Option<usize> {
 
 fn trailing_name(text: &str) -> &str {
     let name = |c: char| c.is_alphanumeric() || c == '_';
-    &text[text.rfind(|c| !name(c)).map_or(0, |index| index + text[index..].chars().next().map_or(1, char::len_utf8))..]
+    &text[text
+        .rfind(|c| !name(c))
+        .map_or(0, |index| index + text[index..].chars().next().map_or(1, char::len_utf8))..]
 }
 
 impl Names {
     fn topics(&self) -> impl Iterator<Item = &str> {
-        self.documented.iter().filter(|entry| !entry.is_standard && !entry.text.is_empty()).map(|entry| entry.name.as_str())
+        self.documented
+            .iter()
+            .filter(|entry| !entry.is_standard && !entry.text.is_empty())
+            .map(|entry| entry.name.as_str())
     }
 
     /// Variables, functions, words of the language.
     fn free(&self, start: &str) -> Vec<Pair> {
         let variables = self.variables.iter().map(|(name, _)| (name.clone(), name.clone()));
         let own = self.functions.iter().map(|signature| (call(signature), signature.clone()));
-        let callable = self.documented.iter().filter(|entry| !entry.is_standard && !entry.is_property && !entry.text.is_empty());
+        let callable = self
+            .documented
+            .iter()
+            .filter(|entry| !entry.is_standard && !entry.is_property && !entry.text.is_empty());
         let functions = callable.map(|entry| (call(&entry.signature), entry.signature.clone()));
         let keywords = KEYWORDS.iter().map(|word| ((*word).to_owned(), (*word).to_owned()));
         pairs(variables.chain(own).chain(functions).chain(keywords), start)
@@ -249,8 +270,20 @@ impl Names {
             Some((_, value)) => entry.receiver == Some(value.type_id()),
             None => !entry.is_standard && !entry.text.is_empty() && entry.receiver.is_some(),
         };
-        pairs(self.documented.iter().filter(fits).map(member), start)
+        let keys = value.map(|(_, value)| keys_of(value)).unwrap_or_default();
+        let members =
+            self.documented.iter().filter(fits).filter(|entry| !HIDDEN.contains(&entry.name.as_str()));
+        pairs(keys.into_iter().map(|key| (key.clone(), key)).chain(members.map(member)), start)
     }
+}
+
+/// Methods of every type that no one calls at a prompt.
+const HIDDEN: [&str; 4] = ["debug", "print", "to_debug", "to_string"];
+
+/// The keys of a map that can stand after a dot.
+fn keys_of(value: &Dynamic) -> Vec<String> {
+    let is_name = |key: &String| key.chars().all(|c| c.is_ascii_alphanumeric() || c == '_');
+    docs::map_keys(value).into_iter().filter(is_name).collect()
 }
 
 fn member(entry: &Entry) -> (String, String) {
@@ -279,7 +312,8 @@ fn plain<'a>(words: impl Iterator<Item = &'a str>, start: &str) -> Vec<Pair> {
 fn pairs(candidates: impl Iterator<Item = (String, String)>, start: &str) -> Vec<Pair> {
     let mut seen = BTreeSet::new();
     let is_name = |word: &str| word.starts_with(|c: char| c.is_alphanumeric() || matches!(c, '_' | ':'));
-    let fitting = candidates.filter(|(word, _)| word.starts_with(start) && is_name(word) && seen.insert(word.clone()));
+    let fitting =
+        candidates.filter(|(word, _)| word.starts_with(start) && is_name(word) && seen.insert(word.clone()));
     let mut pairs: Vec<Pair> = fitting.map(|(replacement, display)| Pair { display, replacement }).collect();
     pairs.sort_by(|a, b| a.replacement.cmp(&b.replacement));
     pairs
@@ -306,7 +340,11 @@ mod tests {
     #[test]
     fn members_leave_the_receiver_out() {
         let engine = ScriptEngine::default();
-        let names = Names { documented: engine.entries(), variables: vec![("a".to_owned(), Dynamic::from_array(vec![]))], functions: vec![] };
+        let names = Names {
+            documented: engine.entries(),
+            variables: vec![("a".to_owned(), Dynamic::from_array(vec![]))],
+            functions: vec![],
+        };
         let members = names.members(Some("a"), "pus");
         assert_eq!(members.len(), 1);
         assert_eq!(members[0].replacement, "push(");

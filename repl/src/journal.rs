@@ -80,7 +80,8 @@ fn create(folder: &Path) -> Option<(PathBuf, File)> {
 
 /// Whether no running session holds the journal.
 fn is_left(path: &Path) -> bool {
-    path.extension().is_some_and(|extension| extension == "rhai") && File::open(path).is_ok_and(|file| file.try_lock().is_ok())
+    path.extension().is_some_and(|extension| extension == "rhai")
+        && File::open(path).is_ok_and(|file| file.try_lock().is_ok())
 }
 
 #[cfg(test)]

@@ -62,7 +62,11 @@ impl Prompt {
     }
 
     fn greet(&self) {
-        self.say(concat!("lysocline ", env!("CARGO_PKG_VERSION"), ": `:help` explains, Tab completes, `:quit` leaves"));
+        self.say(concat!(
+            "lysocline ",
+            env!("CARGO_PKG_VERSION"),
+            ": `:help` explains, Tab completes, `:quit` leaves"
+        ));
         if let Some(path) = self.abandoned.first() {
             let count = std::fs::read_to_string(path).map_or(0, |text| text.lines().count());
             self.say(&format!("an earlier session broke off: `:load` alone brings its {count} lines back"));
@@ -88,7 +92,7 @@ impl Prompt {
     fn enter(&mut self, entry: &str) {
         match self.session.enter(entry) {
             Ok(value) => {
-                self.journal.append(entry);
+                self.journal.append(self.session.last_written().unwrap_or(entry));
                 if let Some(value) = value {
                     self.say(&self.session.engine().show(&value));
                 }
@@ -103,13 +107,17 @@ impl Prompt {
             (":help", topic) => self.help(topic),
             (":names", _) => self.names(),
             (":undo", _) => self.undo(),
-            (":save", "") => self.complain(Diagnostic::new(Kind::Failure, "`:save` needs a file name").help("write `:save lake.rhai`")),
+            (":save", "") => self.complain(
+                Diagnostic::new(Kind::Failure, "`:save` needs a file name").help("write `:save lake.rhai`"),
+            ),
             (":save", file) => self.save(file),
             (":load", file) => self.load(file),
             (other, _) => {
                 let nearest = words::did_you_mean(other, COMMANDS.iter().map(|(name, ..)| *name));
                 let message = Diagnostic::new(Kind::Failure, format!("there is no command `{other}`"));
-                self.complain(message.help(nearest.unwrap_or_else(|| "`:help` lists the commands".to_owned())));
+                self.complain(
+                    message.help(nearest.unwrap_or_else(|| "`:help` lists the commands".to_owned())),
+                );
             }
         }
     }
@@ -124,11 +132,11 @@ impl Prompt {
             for (name, argument, deed) in COMMANDS {
                 self.say(&format!("  {:<18}{deed}", format!("{name} {argument}")));
             }
-            self.say("  Ctrl-C stops a calculation or discards the line; a final `;` keeps a value from being shown");
-            self.say("  `help()` lists what can be called");
+            self.say("  help()            list what can be called");
+            self.say("  Ctrl-C            stop a calculation, or discard the line");
             return;
         }
-        match docs::help(&entries, topic) {
+        match docs::help(&entries, topic, self.session.engine().host().style().width) {
             Ok(text) => self.say(&text),
             Err(fail) => self.complain(without_place(fail)),
         }
@@ -160,10 +168,13 @@ impl Prompt {
     }
 
     fn save(&self, file: &str) {
-        let name = if Path::new(file).extension().is_none() { format!("{file}.rhai") } else { file.to_owned() };
+        let name =
+            if Path::new(file).extension().is_none() { format!("{file}.rhai") } else { file.to_owned() };
         let written = self.session.engine().host().files().write(&name, self.session.script().as_bytes());
         match written {
-            Ok(_) => self.say(&format!("saved {} in `{name}`", counted(self.session.entries().len(), "entry", "entries"))),
+            Ok(_) => {
+                self.say(&format!("saved {} in `{name}`", counted(self.session.len(), "entry", "entries")))
+            }
             Err(error) => self.complain(without_place(error.into())),
         }
     }
@@ -171,17 +182,22 @@ impl Prompt {
     /// Without a name: what the newest broken session left.
     fn load(&mut self, file: &str) {
         let path = match (file, self.abandoned.first()) {
-            ("", None) => return self.complain(Diagnostic::new(Kind::Failure, "`:load` needs a file name").help("write `:load lake.rhai`")),
+            ("", None) => {
+                return self.complain(
+                    Diagnostic::new(Kind::Failure, "`:load` needs a file name")
+                        .help("write `:load lake.rhai`"),
+                );
+            }
             ("", Some(path)) => path.clone(),
             (file, _) => PathBuf::from(file),
         };
         let text = match read_script(&path) {
             Ok(text) => text,
-            Err(diagnostic) => return self.complain(diagnostic),
+            Err(diagnostic) => return self.complain(*diagnostic),
         };
-        let before = self.session.entries().len();
+        let before = self.session.len();
         self.enter(text.trim_end());
-        if file.is_empty() && self.session.entries().len() > before {
+        if file.is_empty() && self.session.len() > before {
             let _ = std::fs::remove_file(self.abandoned.remove(0));
         }
     }

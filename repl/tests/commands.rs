@@ -10,13 +10,21 @@ use common::{Test, streams};
 
 #[test]
 fn results_go_to_standard_output_and_messages_to_standard_error() {
-    let test = Test::new().file("a.rhai", "print(1/2);\nprint(\"pH\");\nsqrt(4)\n").file("b.rhai", "print(1);\nmissing\n");
+    let test = Test::new()
+        .file("a.rhai", "print(1/2);\nprint(\"pH\");\nsqrt(4)\n")
+        .file("b.rhai", "print(1);\nmissing\n");
     let output = test.lysocline(&["run", "a.rhai"]).output().expect("it starts");
-    assert_eq!((output.status.code(), streams(&output)), (Some(0), ("0.5\npH\n2\n".to_owned(), String::new())));
+    assert_eq!(
+        (output.status.code(), streams(&output)),
+        (Some(0), ("0.5\npH\n2\n".to_owned(), String::new()))
+    );
     let output = test.lysocline(&["run", "b.rhai"]).output().expect("it starts");
     let (results, messages) = streams(&output);
     assert_eq!((output.status.code(), results.as_str()), (Some(1), "1\n"));
-    assert_eq!(messages, "error: there is no variable `missing`\n  b.rhai:2:1\n  2 | missing\n    | ^^^^^^^\n");
+    assert_eq!(
+        messages,
+        "error: there is no variable `missing`\n  b.rhai:2:1\n  2 | missing\n    | ^^^^^^^\n"
+    );
 }
 
 #[test]
@@ -30,10 +38,18 @@ fn exit_codes() {
     assert_eq!(code(&["run"]), Some(2));
     assert_eq!(code(&["rum", "a.rhai"]), Some(2));
     assert_eq!(code(&["run", "a.rhai", "--time-limit", "-1"]), Some(2));
-    assert_eq!(code(&["run", "a.rhai", "--", "--time-limit", "-1"]), Some(0), "after `--` all words are the script's");
+    assert_eq!(
+        code(&["run", "a.rhai", "--", "--time-limit", "-1"]),
+        Some(0),
+        "after `--` all words are the script's"
+    );
     assert_eq!(code(&["run", "--time-limit", "0", "a.rhai"]), Some(2));
     assert_eq!(code(&["--color", "maybe"]), Some(2));
-    for (file, reason) in [("none.rhai", "there is no such file"), ("d", "it is a folder"), ("latin.rhai", "it is not UTF-8 text")] {
+    for (file, reason) in [
+        ("none.rhai", "there is no such file"),
+        ("d", "it is a folder"),
+        ("latin.rhai", "it is not UTF-8 text"),
+    ] {
         let output = test.lysocline(&["run", file]).output().expect("it starts");
         let message = format!("error: cannot read the script `{file}`: {reason}\n");
         assert_eq!((output.status.code(), streams(&output)), (Some(1), (String::new(), message)));
@@ -43,7 +59,8 @@ fn exit_codes() {
 #[test]
 fn a_script_reads_its_arguments() {
     let test = Test::new().file("a.rhai", "for word in args() { print(word); }");
-    let output = test.lysocline(&["run", "a.rhai", "north basin", "--depth", "5"]).output().expect("it starts");
+    let output =
+        test.lysocline(&["run", "a.rhai", "north basin", "--depth", "5"]).output().expect("it starts");
     assert_eq!(streams(&output).0, "north basin\n--depth\n5\n");
 }
 
@@ -79,12 +96,19 @@ fn an_endless_loop_ends_at_the_time_limit() {
 fn an_interrupt_stops_a_script() {
     let test = Test::new().file("a.rhai", "print(\"go\");\nloop {}\n");
     let mut command = std::process::Command::new(test.lysocline(&[]).get_program());
-    let command = command.args(["run", "a.rhai"]).current_dir(test.path()).stdout(Stdio::piped()).stderr(Stdio::piped());
+    let command = command
+        .args(["run", "a.rhai"])
+        .current_dir(test.path())
+        .stdout(Stdio::piped())
+        .stderr(Stdio::piped());
     let mut child = command.spawn().expect("it starts");
     let mut line = String::new();
     let mut results = BufReader::new(child.stdout.take().expect("a pipe"));
     results.read_line(&mut line).expect("a line");
-    let killed = std::process::Command::new("kill").args(["-INT", &child.id().to_string()]).status().expect("kill exists");
+    let killed = std::process::Command::new("kill")
+        .args(["-INT", &child.id().to_string()])
+        .status()
+        .expect("kill exists");
     assert!(killed.success());
     assert_eq!(child.wait().expect("it ends").code(), Some(1));
     let mut messages = String::new();
@@ -96,7 +120,11 @@ fn an_interrupt_stops_a_script() {
 fn a_closed_pipe_is_quiet() {
     let test = Test::new().file("a.rhai", "for i in 0..100000 { print(i); }");
     let mut command = std::process::Command::new(test.lysocline(&[]).get_program());
-    let command = command.args(["run", "a.rhai"]).current_dir(test.path()).stdout(Stdio::piped()).stderr(Stdio::piped());
+    let command = command
+        .args(["run", "a.rhai"])
+        .current_dir(test.path())
+        .stdout(Stdio::piped())
+        .stderr(Stdio::piped());
     let mut child = command.spawn().expect("it starts");
     let mut line = String::new();
     BufReader::new(child.stdout.take().expect("a pipe")).read_line(&mut line).expect("a line");
@@ -109,7 +137,10 @@ fn piped(input: &str, code: i32, results: &str, messages: &str) {
     let output = Test::new().lysocline(&[]).write_stdin(input).output().expect("it starts");
     let (found_results, found_messages) = streams(&output);
     assert_eq!((found_results.as_str(), output.status.code()), (results, Some(code)), "{found_messages}");
-    assert!(found_messages.starts_with(messages) && found_messages.is_empty() == messages.is_empty(), "{found_messages}");
+    assert!(
+        found_messages.starts_with(messages) && found_messages.is_empty() == messages.is_empty(),
+        "{found_messages}"
+    );
 }
 
 #[test]
@@ -125,7 +156,9 @@ fn entries_from_a_pipe() {
 
 #[test]
 fn a_script_imports_from_its_own_folder() {
-    let test = Test::new().file("lab/a.rhai", "import \"h\" as h;\nprint(h::half(3));").file("lab/h.rhai", "fn half(x) { x/2 }");
+    let test = Test::new()
+        .file("lab/a.rhai", "import \"h\" as h;\nprint(h::half(3));")
+        .file("lab/h.rhai", "fn half(x) { x/2 }");
     let output = test.lysocline(&["run", "lab/a.rhai"]).output().expect("it starts");
     assert_eq!(streams(&output), ("1.5\n".to_owned(), String::new()));
 }

@@ -10,7 +10,12 @@ use assert_cmd::Command;
 fn message_of(script: &Path) -> String {
     let name = script.file_name().expect("a file");
     let mut command = Command::cargo_bin("lysocline").expect("it is built");
-    let output = command.current_dir(script.parent().expect("a folder")).arg("run").arg(name).output().expect("it starts");
+    let output = command
+        .current_dir(script.parent().expect("a folder"))
+        .arg("run")
+        .arg(name)
+        .output()
+        .expect("it starts");
     assert_eq!(output.status.code(), Some(1), "{}", script.display());
     assert!(output.stdout.is_empty(), "{} printed something", script.display());
     String::from_utf8(output.stderr).expect("text")
@@ -18,8 +23,11 @@ fn message_of(script: &Path) -> String {
 
 fn scripts() -> Vec<PathBuf> {
     let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/faulty");
-    let entries = std::fs::read_dir(folder).expect("the folder of faulty scripts").map(|entry| entry.expect("an entry").path());
-    let mut scripts: Vec<PathBuf> = entries.filter(|path| path.extension().is_some_and(|extension| extension == "rhai")).collect();
+    let entries = std::fs::read_dir(folder)
+        .expect("the folder of faulty scripts")
+        .map(|entry| entry.expect("an entry").path());
+    let mut scripts: Vec<PathBuf> =
+        entries.filter(|path| path.extension().is_some_and(|extension| extension == "rhai")).collect();
     scripts.sort();
     scripts
 }
@@ -45,8 +53,15 @@ fn messages_follow_the_house_rules() {
     for script in scripts() {
         let message = message_of(&script);
         let first = message.lines().next().expect("a message").trim_start_matches("error: ");
-        assert!(!first.ends_with('.') && !first.starts_with(char::is_uppercase), "{}: {first}", script.display());
-        assert!(!message.contains("::") && !message.contains("i64") && !message.contains("ImmutableString"), "{message}");
+        assert!(
+            !first.ends_with('.') && !first.starts_with(char::is_uppercase),
+            "{}: {first}",
+            script.display()
+        );
+        assert!(
+            !message.contains("::") && !message.contains("i64") && !message.contains("ImmutableString"),
+            "{message}"
+        );
         assert!(message.contains('^'), "{} has no place", script.display());
     }
 }

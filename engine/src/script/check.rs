@@ -21,7 +21,12 @@ impl Pure {
 /// The first fault that needs no run to be seen. `ends_with_semicolon` says that the value of the last statement is
 /// dropped too.
 /// `own` are the functions the script defines, which may reuse any name.
-pub(super) fn check(ast: &AST, own: &BTreeSet<String>, pure: &Pure, ends_with_semicolon: bool) -> Result<(), (Fail, Position)> {
+pub(super) fn check(
+    ast: &AST,
+    own: &BTreeSet<String>,
+    pure: &Pure,
+    ends_with_semicolon: bool,
+) -> Result<(), (Fail, Position)> {
     let mut checker = Checker { pure, own, faults: Vec::new() };
     checker.block(ast.statements(), !ends_with_semicolon);
     for function in ast.iter_functions() {
@@ -36,7 +41,11 @@ pub(super) fn check(ast: &AST, own: &BTreeSet<String>, pure: &Pure, ends_with_se
         }
         true
     });
-    checker.faults.into_iter().min_by_key(|(_, position)| (position.line(), position.position())).map_or(Ok(()), Err)
+    checker
+        .faults
+        .into_iter()
+        .min_by_key(|(_, position)| (position.line(), position.position()))
+        .map_or(Ok(()), Err)
 }
 
 /// Names of the functions that `ast` defines.
@@ -57,7 +66,9 @@ impl Checker<'_> {
                 self.block(flow.body.statements(), true);
                 self.block(flow.branch.statements(), true);
             }
-            ASTNode::Stmt(Stmt::While(flow, _) | Stmt::Do(flow, ..)) => self.block(flow.body.statements(), false),
+            ASTNode::Stmt(Stmt::While(flow, _) | Stmt::Do(flow, ..)) => {
+                self.block(flow.body.statements(), false)
+            }
             ASTNode::Stmt(Stmt::For(parts, _)) => self.block(parts.2.body.statements(), false),
             ASTNode::Stmt(Stmt::Block(block)) | ASTNode::Expr(Expr::Stmt(block)) => {
                 self.block(block.statements(), true);
@@ -95,13 +106,19 @@ impl Checker<'_> {
             Stmt::Expr(expression) => self.result(expression)?,
             _ => return None,
         };
-        let advice = if what.contains("==") { "to set a variable write one `=`" } else { "write `let name = …` to keep it" };
+        let advice = if what.contains("==") {
+            "to set a variable write one `=`"
+        } else {
+            "write `let name = …` to keep it"
+        };
         Some((fail(format!("the result of {what} is not used")).help(advice), position))
     }
 
     fn result(&self, expression: &Expr) -> Option<(String, Position)> {
         match expression {
-            Expr::FnCall(call, position) | Expr::MethodCall(call, position) => self.result_of(call, *position),
+            Expr::FnCall(call, position) | Expr::MethodCall(call, position) => {
+                self.result_of(call, *position)
+            }
             Expr::Dot(parts, ..) => self.result(&parts.rhs),
             Expr::Property(names, position) => Some((format!("`.{}`", names.2), *position)),
             _ => None,
@@ -138,7 +155,11 @@ pub(super) fn locate(ast: &AST, position: Position, at: &At) -> Option<Spot> {
     ast.walk(&mut |path| {
         let call = match path.last() {
             Some(ASTNode::Stmt(Stmt::FnCall(call, here))) if *here == position => call,
-            Some(ASTNode::Expr(Expr::FnCall(call, here) | Expr::MethodCall(call, here))) if *here == position => call,
+            Some(ASTNode::Expr(Expr::FnCall(call, here) | Expr::MethodCall(call, here)))
+                if *here == position =>
+            {
+                call
+            }
             _ => return true,
         };
         found = part(ast, call, at);
@@ -182,11 +203,16 @@ fn part(ast: &AST, call: &FnCallExpr, at: &At) -> Option<Spot> {
     match at {
         At::Call => None,
         At::Argument(index) => call.args.get(*index).map(|argument| Spot::Token(argument.start_position())),
-        At::Key(key) => call.args.iter().find_map(|argument| key_position(ast, argument, key)).map(Spot::Token),
+        At::Key(key) => {
+            call.args.iter().find_map(|argument| key_position(ast, argument, key)).map(Spot::Token)
+        }
         At::Text { argument, start, length } => match call.args.get(*argument)? {
-            Expr::StringConstant(content, literal) => {
-                Some(Spot::Within { literal: *literal, content: content.to_string(), start: *start, length: *length })
-            }
+            Expr::StringConstant(content, literal) => Some(Spot::Within {
+                literal: *literal,
+                content: content.to_string(),
+                start: *start,
+                length: *length,
+            }),
             other => Some(Spot::Token(other.start_position())),
         },
     }

@@ -212,8 +212,9 @@ fn token_length(rest: &[char]) -> usize {
 }
 
 fn is_double_sign(rest: &[char]) -> bool {
-    const SIGNS: [&str; 17] =
-        ["==", "!=", "<=", ">=", "&&", "||", "**", "+=", "-=", "*=", "/=", "%=", "??", "..", "::", "=>", "#{"];
+    const SIGNS: [&str; 17] = [
+        "==", "!=", "<=", ">=", "&&", "||", "**", "+=", "-=", "*=", "/=", "%=", "??", "..", "::", "=>", "#{",
+    ];
     rest.get(..2).is_some_and(|two| SIGNS.iter().any(|sign| sign.chars().eq(two.iter().copied())))
 }
 

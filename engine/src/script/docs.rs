@@ -40,7 +40,9 @@ pub fn entries(engine: &Engine, context: Option<&NativeCallContext>) -> Vec<Entr
             own.push(entry);
         }
     }
-    own.sort_by(|a, b| (&a.name, a.is_standard, a.text.is_empty()).cmp(&(&b.name, b.is_standard, b.text.is_empty())));
+    own.sort_by(|a, b| {
+        (&a.name, a.is_standard, a.text.is_empty()).cmp(&(&b.name, b.is_standard, b.text.is_empty()))
+    });
     own.dedup_by(|a, b| a.signature == b.signature);
     own
 }
@@ -49,20 +51,24 @@ pub fn entries(engine: &Engine, context: Option<&NativeCallContext>) -> Vec<Entr
 #[must_use]
 pub fn examples(entries: &[Entry]) -> Vec<(String, String)> {
     let own = entries.iter().filter(|entry| !entry.is_standard);
-    own.flat_map(|entry| fenced(&entry.text).into_iter().map(|example| (entry.name.clone(), example))).collect()
+    own.flat_map(|entry| fenced(&entry.text).into_iter().map(|example| (entry.name.clone(), example)))
+        .collect()
 }
 
-/// What `help(topic)` prints.
+/// What `help(topic)` prints, in lines of at most `width` characters where words allow.
 ///
 /// # Errors
 ///
 /// Fails when nothing is called `topic`, offering the nearest name.
-pub fn help(entries: &[Entry], topic: &str) -> Result<String, Fail> {
+pub fn help(entries: &[Entry], topic: &str, width: usize) -> Result<String, Fail> {
     let topic = topic.trim().trim_start_matches('.').trim_end_matches("()");
-    let found: Vec<&Entry> = entries.iter().filter(|entry| entry.name == topic && !is_operator(&entry.name)).collect();
+    let found: Vec<&Entry> =
+        entries.iter().filter(|entry| entry.name == topic && !is_operator(&entry.name)).collect();
     if found.is_empty() {
         let names = entries.iter().map(|entry| entry.name.as_str());
-        return Err(fail(format!("there is no help on `{topic}`")).maybe_help(words::did_you_mean(topic, names)).argument(0));
+        return Err(fail(format!("there is no help on `{topic}`"))
+            .maybe_help(words::did_you_mean(topic, names))
+            .argument(0));
     }
     // Overloads share the one comment; only a name without any comment shows bare signatures.
     let documented: Vec<&&Entry> = found.iter().filter(|entry| !entry.text.is_empty()).collect();
@@ -71,13 +77,19 @@ pub fn help(entries: &[Entry], topic: &str) -> Result<String, Fail> {
     }
     let own: Vec<&&Entry> = documented.iter().copied().filter(|entry| !entry.is_standard).collect();
     let shown = if own.is_empty() { documented } else { own };
-    Ok(shown.iter().map(|entry| format!("{}\n{}", entry.signature, indented(&entry.text))).collect::<Vec<_>>().join("\n\n"))
+    Ok(shown
+        .iter()
+        .map(|entry| format!("{}\n{}", entry.signature, indented(&entry.text, width)))
+        .collect::<Vec<_>>()
+        .join("\n\n"))
 }
 
 /// The names that have documentation, for `help()`.
 #[must_use]
 pub fn topics(entries: &[Entry]) -> Vec<&str> {
-    let documented = entries.iter().filter(|entry| !entry.is_standard && !entry.text.is_empty() && !is_operator(&entry.name));
+    let documented = entries
+        .iter()
+        .filter(|entry| !entry.is_standard && !entry.text.is_empty() && !is_operator(&entry.name));
     let mut names: Vec<&str> = documented.map(|entry| entry.name.as_str()).collect();
     names.dedup();
     names
@@ -87,6 +99,12 @@ pub fn topics(entries: &[Entry]) -> Vec<&str> {
 #[must_use]
 pub fn described(value: &Dynamic) -> String {
     words::a_type(value.type_name())
+}
+
+/// The keys of a map; none of anything else.
+#[must_use]
+pub fn map_keys(value: &Dynamic) -> Vec<String> {
+    value.read_lock::<rhai::Map>().map_or_else(Vec::new, |map| map.keys().map(ToString::to_string).collect())
 }
 
 fn is_operator(name: &str) -> bool {
@@ -113,7 +131,8 @@ fn entry(info: &FuncInfo) -> Option<Entry> {
 
 fn signature(name: &str, info: &FuncInfo, is_property: bool) -> String {
     let data = info.metadata;
-    let parameters: Vec<String> = data.params_info.iter().map(|parameter| parameter_text(parameter)).collect();
+    let parameters: Vec<String> =
+        data.params_info.iter().map(|parameter| parameter_text(parameter)).collect();
     let result = match result_type(&data.return_type) {
         "" | "()" | "nothing `()`" => String::new(),
         result => format!(" -> {result}"),
@@ -138,8 +157,11 @@ fn plain_type(rust: &str) -> &str {
 
 /// `Result<Quantity, …>` is a quantity for a script.
 fn result_type(rust: &str) -> &str {
-    let inner = ["Result<", "ScriptResult<", "RhaiResultOf<"].iter().find_map(|start| rust.trim().strip_prefix(start));
-    let inner = inner.map_or(rust, |inner| inner.trim_end_matches('>').split(", Box").next().unwrap_or(inner));
+    let inner = ["Result<", "ScriptResult<", "RhaiResultOf<"]
+        .iter()
+        .find_map(|start| rust.trim().strip_prefix(start));
+    let inner =
+        inner.map_or(rust, |inner| inner.trim_end_matches('>').split(", Box").next().unwrap_or(inner));
     match plain_type(inner) {
         "RhaiResult" => "value",
         other => words::type_name(other),
@@ -158,10 +180,40 @@ fn uncommented(line: &str) -> &str {
     line.strip_prefix(' ').unwrap_or(line)
 }
 
-/// The text for a terminal: examples lose their fences.
-fn indented(text: &str) -> String {
-    let lines = text.lines().filter(|line| !line.trim_start().starts_with("```"));
-    lines.map(|line| if line.is_empty() { String::new() } else { format!("    {line}") }).collect::<Vec<_>>().join("\n").trim_end().to_owned()
+/// The text for a terminal: prose is wrapped, examples lose their fences and keep their lines.
+fn indented(text: &str, width: usize) -> String {
+    const INDENT: usize = 4;
+    let mut lines = Vec::new();
+    for (index, part) in text.split("```").enumerate() {
+        let is_example = index % 2 == 1;
+        let part_lines = part.trim_matches('\n').lines().skip(usize::from(is_example));
+        for line in part_lines {
+            lines.extend(if is_example {
+                vec![line.to_owned()]
+            } else {
+                wrapped(line, width.saturating_sub(INDENT))
+            });
+        }
+        if !part.trim().is_empty() {
+            lines.push(String::new());
+        }
+    }
+    let indented = lines.iter().map(|line| format!("{:INDENT$}{line}", "").trim_end().to_owned());
+    indented.collect::<Vec<_>>().join("\n").trim_end().to_owned()
+}
+
+fn wrapped(line: &str, width: usize) -> Vec<String> {
+    let mut lines = vec![String::new()];
+    for word in line.split(' ') {
+        let last = lines.last_mut().expect("there is always a last line");
+        if !last.is_empty() && last.chars().count() + 1 + word.chars().count() > width {
+            lines.push(word.to_owned());
+        } else {
+            last.push_str(if last.is_empty() { "" } else { " " });
+            last.push_str(word);
+        }
+    }
+    lines
 }
 
 fn fenced(text: &str) -> Vec<String> {

@@ -140,7 +140,7 @@ impl ScriptEngine {
     /// # Errors
     ///
     /// Returns the first fault that can be seen without running.
-    pub fn check(&self, name: &str, text: &str) -> Result<(), Diagnostic> {
+    pub fn check(&self, name: &str, text: &str) -> Result<(), Box<Diagnostic>> {
         let text = clean(text);
         on_deep_stack(|| self.compile(name, &text, &Scope::new(), None).map(drop))
     }
@@ -150,7 +150,7 @@ impl ScriptEngine {
     /// # Errors
     ///
     /// Returns what went wrong, with its place.
-    pub fn run(&self, name: &str, text: &str) -> Result<Option<Dynamic>, Diagnostic> {
+    pub fn run(&self, name: &str, text: &str) -> Result<Option<Dynamic>, Box<Diagnostic>> {
         let text = clean(text);
         let mut scope = Scope::new();
         on_deep_stack(|| {
@@ -165,11 +165,19 @@ impl ScriptEngine {
     }
 
     /// Reads `text`; `earlier` holds the functions of a session so far.
-    pub(super) fn compile(&self, name: &str, text: &str, scope: &Scope, earlier: Option<&AST>) -> Result<Arc<Source>, Diagnostic> {
+    pub(super) fn compile(
+        &self,
+        name: &str,
+        text: &str,
+        scope: &Scope,
+        earlier: Option<&AST>,
+    ) -> Result<Arc<Source>, Box<Diagnostic>> {
         let source = |ast| Arc::new(Source { text: text.to_owned(), ast });
         let parsed = self.engine.compile_with_scope(scope, text);
-        let ast = parsed.map_err(|error| self.translator(name, source(AST::empty()), scope).diagnose(error.into()))?;
-        let refused = |fail, position| self.translator(name, source(ast.clone()), scope).refused(fail, position);
+        let ast = parsed
+            .map_err(|error| self.translator(name, source(AST::empty()), scope).diagnose(error.into()))?;
+        let refused =
+            |fail, position| self.translator(name, source(ast.clone()), scope).refused(fail, position);
         let mut whole = earlier.cloned().unwrap_or_else(AST::empty);
         whole.combine(ast.clone());
         whole.set_source(name);
@@ -180,10 +188,18 @@ impl ScriptEngine {
     }
 
     /// Runs what was read. Must be called on a deep stack.
-    pub(super) fn evaluate(&self, name: &str, source: &Arc<Source>, scope: &mut Scope) -> Result<Option<Dynamic>, Diagnostic> {
+    pub(super) fn evaluate(
+        &self,
+        name: &str,
+        source: &Arc<Source>,
+        scope: &mut Scope,
+    ) -> Result<Option<Dynamic>, Box<Diagnostic>> {
         self.stop().arm(self.time_limit);
+        self.modules.begin();
         let shown = !ends_with_semicolon(&source.text);
         let result = quietly(|| self.engine.eval_ast_with_scope::<Dynamic>(scope, &source.ast));
+        // A calculation that broke off has not reported its end.
+        self.host.progress("", 0, 0);
         match result {
             Ok(Ok(value)) => Ok((shown && !value.is_unit()).then(|| value.flatten())),
             Ok(Err(error)) => Err(self.translator(name, Arc::clone(source), scope).diagnose(error)),
@@ -264,9 +280,9 @@ fn quietly<T>(work: impl FnOnce() -> T) -> Result<T, Box<dyn Any + Send>> {
     result
 }
 
-fn bug(panic: &(dyn Any + Send)) -> Diagnostic {
-    let text = panic.downcast_ref::<String>().map(String::as_str).or_else(|| panic.downcast_ref::<&str>().copied());
-    Diagnostic::new(Kind::Bug, format!("a fault of lysocline, not of the script: {}", text.unwrap_or("no details")))
-        .help("please report it together with the script")
+fn bug(panic: &(dyn Any + Send)) -> Box<Diagnostic> {
+    let text =
+        panic.downcast_ref::<String>().map(String::as_str).or_else(|| panic.downcast_ref::<&str>().copied());
+    let message = format!("a fault of lysocline, not of the script: {}", text.unwrap_or("no details"));
+    Box::new(Diagnostic::new(Kind::Bug, message).help("please report it together with the script"))
 }
-

@@ -26,7 +26,8 @@ pub(super) mod general_functions {
     #[rhai_fn(return_raw)]
     pub fn help(context: NativeCallContext, name: &str) -> ScriptResult<()> {
         let entries = docs::entries(context.engine(), Some(&context));
-        Host::of(&context).print(&docs::help(&entries, name)?);
+        let host = Host::of(&context);
+        host.print(&docs::help(&entries, name, host.style().width)?);
         Ok(())
     }
 

@@ -87,7 +87,6 @@ impl Host {
     }
 
     /// The files a script may read and write.
-    #[must_use]
     pub fn files(&self) -> MutexGuard<'_, Sandbox> {
         self.0.files.lock().unwrap_or_else(PoisonError::into_inner)
     }

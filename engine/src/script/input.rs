@@ -17,7 +17,11 @@ pub enum Status {
 #[must_use]
 pub fn status(engine: &ScriptEngine, text: &str) -> Status {
     let Some((error, position)) = engine.parse_error(text) else { return Status::Complete };
-    if asks_for_more(&error, text) || beyond_end(position, text) { Status::Incomplete } else { Status::Complete }
+    if asks_for_more(&error, text) || beyond_end(position, text) {
+        Status::Incomplete
+    } else {
+        Status::Complete
+    }
 }
 
 fn asks_for_more(error: &ParseErrorType, text: &str) -> bool {
@@ -25,7 +29,9 @@ fn asks_for_more(error: &ParseErrorType, text: &str) -> bool {
         ParseErrorType::UnexpectedEOF => true,
         // Only back-tick and raw strings may span lines.
         ParseErrorType::BadInput(LexError::UnterminatedString) => !open_quote_is_plain(text),
-        ParseErrorType::WrongDocComment => text.lines().next_back().is_some_and(|line| line.trim_start().starts_with("///")),
+        ParseErrorType::WrongDocComment => {
+            text.lines().next_back().is_some_and(|line| line.trim_start().starts_with("///"))
+        }
         _ => false,
     }
 }
@@ -47,10 +53,21 @@ pub fn ends_with_semicolon(text: &str) -> bool {
     Scan::of(text).last == Some(';')
 }
 
+/// Byte range of what follows the last semicolon that stands outside of brackets, up to the last character of code.
+pub(super) fn last_statement(text: &str) -> (usize, usize) {
+    let scan = Scan::of(text);
+    (scan.statement_start.min(scan.code_end), scan.code_end)
+}
+
 /// The last character of code, and what is still open at the end.
 struct Scan {
     last: Option<char>,
     open: Open,
+    brackets: i32,
+    /// Where the last statement begins.
+    statement_start: usize,
+    /// Where the last character of code or of a quotation ends.
+    code_end: usize,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq)]
@@ -66,12 +83,17 @@ enum Open {
 
 impl Scan {
     fn of(text: &str) -> Self {
-        let mut scan = Self { last: None, open: Open::Code };
-        let mut characters = text.chars().peekable();
-        while let Some(c) = characters.next() {
-            let next = characters.peek().copied();
+        let mut scan = Self { last: None, open: Open::Code, brackets: 0, statement_start: 0, code_end: 0 };
+        let mut characters = text.char_indices().peekable();
+        while let Some((index, c)) = characters.next() {
+            let next = characters.peek().map(|(_, next)| *next);
             if scan.step(c, next) {
                 characters.next();
+            } else if !c.is_whitespace() && !matches!(scan.open, Open::Line | Open::Block(_)) {
+                scan.code_end = index + c.len_utf8();
+            }
+            if c == ';' && scan.open == Open::Code && scan.brackets == 0 && scan.code_end == index + 1 {
+                scan.statement_start = index + 1;
             }
         }
         scan
@@ -83,10 +105,14 @@ impl Scan {
             (Open::Code, '/', Some('/')) => self.open = Open::Line,
             (Open::Code, '/', Some('*')) => self.open = Open::Block(1),
             (Open::Block(depth), '/', Some('*')) => self.open = Open::Block(depth + 1),
-            (Open::Block(depth), '*', Some('/')) => self.open = if depth == 1 { Open::Code } else { Open::Block(depth - 1) },
+            (Open::Block(depth), '*', Some('/')) => {
+                self.open = if depth == 1 { Open::Code } else { Open::Block(depth - 1) }
+            }
             (Open::Quote | Open::Character, '\\', Some(_)) => {}
             (Open::Line, '\n', _) => return self.now(Open::Code),
-            (Open::Quote, '"', _) | (Open::Character, '\'', _) | (Open::BackTick, '`', _) => return self.now(Open::Code),
+            (Open::Quote, '"', _) | (Open::Character, '\'', _) | (Open::BackTick, '`', _) => {
+                return self.now(Open::Code);
+            }
             (Open::Code, _, _) => return self.code(c),
             _ => return false,
         }
@@ -102,6 +128,11 @@ impl Scan {
         if !c.is_whitespace() {
             self.last = Some(c);
         }
+        self.brackets += match c {
+            '(' | '[' | '{' => 1,
+            ')' | ']' | '}' => -1,
+            _ => 0,
+        };
         match c {
             '"' => self.now(Open::Quote),
             '\'' => self.now(Open::Character),
@@ -118,12 +149,45 @@ mod tests {
     #[test]
     fn finished_and_unfinished_entries() {
         let engine = ScriptEngine::default();
-        for open in ["let x = [1,", "fn f(a) {", "if true {", "f(1,", "1 +", "let s = `two", "#{ a: 1,", "x.map(|v| {", "let"] {
+        for open in [
+            "let x = [1,",
+            "fn f(a) {",
+            "if true {",
+            "f(1,",
+            "1 +",
+            "let s = `two",
+            "#{ a: 1,",
+            "x.map(|v| {",
+            "let",
+        ] {
             assert_eq!(status(&engine, open), Status::Incomplete, "{open}");
         }
-        for done in ["1 + 1", "let x = 2;", "fn f(a) { a }", "\"open", "1 + ) 2", "", "// note", "`a ${1} b`", "let x = 10^2"] {
+        for done in [
+            "1 + 1",
+            "let x = 2;",
+            "fn f(a) { a }",
+            "\"open",
+            "1 + ) 2",
+            "",
+            "// note",
+            "`a ${1} b`",
+            "let x = 10^2",
+        ] {
             assert_eq!(status(&engine, done), Status::Complete, "{done}");
         }
+    }
+
+    #[test]
+    fn the_last_statement() {
+        let of = |text: &'static str| {
+            let (start, end) = last_statement(text);
+            &text[start..end]
+        };
+        assert_eq!(of("let a = 1; a/2 // half"), " a/2");
+        assert_eq!(of("a.map(|v| { let b = v; b })"), "a.map(|v| { let b = v; b })");
+        assert_eq!(of("\";\" + 'x'  /* ; */"), "\";\" + 'x'");
+        assert_eq!(of("a; // x"), "");
+        assert_eq!(of(""), "");
     }
 
     #[test]

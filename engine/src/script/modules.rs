@@ -50,6 +50,11 @@ impl Modules {
         self.0.lock().unwrap_or_else(PoisonError::into_inner)
     }
 
+    /// Forgets imports that a fault broke off.
+    pub(super) fn begin(&self) {
+        self.state().loading.clear();
+    }
+
     /// The text a source name stands for, if it is a module.
     pub(super) fn source(&self, name: &str) -> Option<Arc<Source>> {
         self.state().sources.get(name).cloned()
@@ -62,8 +67,11 @@ impl Modules {
         for function in own() {
             let key = (function.name.to_owned(), function.params.len());
             if let Some(other) = state.defined.get(&key).filter(|other| *other != source) {
-                return Err(fail(format!("the function `{}` is defined in `{source}` and in `{other}`", key.0))
-                    .help("rename one: a function passed by name could be the wrong one"));
+                return Err(fail(format!(
+                    "the function `{}` is defined in `{source}` and in `{other}`",
+                    key.0
+                ))
+                .help("rename one: a function passed by name could be the wrong one"));
             }
         }
         state.defined.retain(|_, owner| owner != source);
@@ -81,8 +89,13 @@ impl Modules {
         if relative.extension().is_none() {
             relative.set_extension("rhai");
         }
-        let outside = || fail(format!("`{name}` is outside the script's folder")).help("copy the module beside the script");
-        if !relative.components().all(|part| matches!(part, Component::Normal(_) | Component::CurDir | Component::ParentDir)) {
+        let outside = || {
+            fail(format!("`{name}` is outside the script's folder")).help("copy the module beside the script")
+        };
+        if !relative
+            .components()
+            .all(|part| matches!(part, Component::Normal(_) | Component::CurDir | Component::ParentDir))
+        {
             return Err(outside());
         }
         let folder = state.folder.canonicalize().map_err(|error| fail(error.to_string()))?;
@@ -100,7 +113,8 @@ impl Modules {
 
     fn enter(&self, path: &Path) -> Result<(), Fail> {
         let mut state = self.state();
-        let chain = || state.loading.iter().map(|path| file_name(path)).chain([file_name(path)]).collect::<Vec<_>>();
+        let chain =
+            || state.loading.iter().map(|path| file_name(path)).chain([file_name(path)]).collect::<Vec<_>>();
         if state.loading.iter().any(|other| other == path) {
             return Err(fail(format!("modules import each other: {}", chain().join(" -> ")))
                 .help("move what they share into a third module"));
@@ -110,7 +124,8 @@ impl Modules {
     }
 
     fn load(&self, engine: &Engine, path: &Path, shown: &str) -> ScriptResult<Shared<Module>> {
-        let text = std::fs::read_to_string(path).map_err(|error| fail(format!("cannot read `{shown}`: {error}")))?;
+        let text =
+            std::fs::read_to_string(path).map_err(|error| fail(format!("cannot read `{shown}`: {error}")))?;
         let text = clean(&text);
         let within = |error| Box::new(EvalAltResult::ErrorInModule(shown.to_owned(), error, Position::NONE));
         let parsed = engine.compile(&text);
@@ -135,9 +150,17 @@ impl Modules {
 }
 
 impl ModuleResolver for Modules {
-    fn resolve(&self, engine: &Engine, source: Option<&str>, name: &str, position: Position) -> ScriptResult<Shared<Module>> {
+    fn resolve(
+        &self,
+        engine: &Engine,
+        source: Option<&str>,
+        name: &str,
+        position: Position,
+    ) -> ScriptResult<Shared<Module>> {
         let placed = |mut error: Box<EvalAltResult>| match *error {
-            EvalAltResult::ErrorInModule(name, inner, _) => Box::new(EvalAltResult::ErrorInModule(name, inner, position)),
+            EvalAltResult::ErrorInModule(name, inner, _) => {
+                Box::new(EvalAltResult::ErrorInModule(name, inner, position))
+            }
             _ => {
                 error.set_position(position);
                 error
@@ -160,7 +183,8 @@ impl ModuleResolver for Modules {
 fn absent(name: &str, folder: &Path) -> Fail {
     let entries = std::fs::read_dir(folder).into_iter().flatten().flatten().map(|entry| entry.path());
     let scripts = entries.filter(|path| path.extension().is_some_and(|extension| extension == "rhai"));
-    let names: Vec<String> = scripts.filter_map(|path| Some(path.file_stem()?.to_string_lossy().into_owned())).collect();
+    let names: Vec<String> =
+        scripts.filter_map(|path| Some(path.file_stem()?.to_string_lossy().into_owned())).collect();
     fail(format!("there is no module `{name}` beside the script"))
         .maybe_help(words::did_you_mean(name, names.iter().map(String::as_str)))
 }

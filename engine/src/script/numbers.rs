@@ -24,7 +24,10 @@ pub fn format_number(x: FLOAT, spec: &str) -> Result<String, Fail> {
             .help("write `.3f` (decimals), `.3e` (scientific) or `.3g` (significant digits)")
             .argument(1)
     };
-    let (digits, kind) = spec.strip_prefix('.').and_then(|rest| rest.split_at_checked(rest.len().checked_sub(1)?)).ok_or_else(wrong)?;
+    let (digits, kind) = spec
+        .strip_prefix('.')
+        .and_then(|rest| rest.split_at_checked(rest.len().checked_sub(1)?))
+        .ok_or_else(wrong)?;
     let digits = digits.parse::<usize>().ok().filter(|&digits| digits <= 40).ok_or_else(wrong)?;
     match kind {
         "f" => Ok(format!("{x:.digits$}")),
@@ -90,14 +93,16 @@ fn power_of(x: FLOAT, y: FLOAT) -> ScriptResult<FLOAT> {
 
 fn logarithm(name: &str, x: FLOAT, f: impl Fn(FLOAT) -> FLOAT) -> ScriptResult<FLOAT> {
     if x <= 0.0 {
-        return fail(format!("`{name}` of {} does not exist: it takes numbers above zero", general(x, 6))).raise();
+        return fail(format!("`{name}` of {} does not exist: it takes numbers above zero", general(x, 6)))
+            .raise();
     }
     Ok(f(x))
 }
 
 fn square_root(x: FLOAT) -> ScriptResult<FLOAT> {
     if x < 0.0 {
-        return fail(format!("`sqrt` of {} does not exist: it takes zero and numbers above", general(x, 6))).raise();
+        return fail(format!("`sqrt` of {} does not exist: it takes zero and numbers above", general(x, 6)))
+            .raise();
     }
     Ok(x.sqrt())
 }
@@ -306,9 +311,14 @@ pub(super) mod number_functions {
         let (a, b, step) = (real("steps", &a)?, real("steps", &b)?, real("steps", &step)?);
         let turns = (b - a) / step;
         if !turns.is_finite() || turns < 0.0 {
-            return fail(format!("steps of {} do not lead from {} to {}", general(step, 6), general(a, 6), general(b, 6)))
-                .argument(2)
-                .raise();
+            return fail(format!(
+                "steps of {} do not lead from {} to {}",
+                general(step, 6),
+                general(a, 6),
+                general(b, 6)
+            ))
+            .argument(2)
+            .raise();
         }
         // A step such as 0.1 has no exact binary form: b counts as reached within a millionth of a step.
         let whole = (turns + 1e-6).floor();

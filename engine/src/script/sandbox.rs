@@ -35,9 +35,15 @@ impl From<SandboxError> for Fail {
     fn from(error: SandboxError) -> Self {
         let message = fail(error.to_string());
         match error {
-            SandboxError::Outside { .. } => message.help("a script reads files beside it and writes files in one folder (`--write DIR`)"),
-            SandboxError::Missing { nearest, .. } => message.maybe_help(nearest.map(|name| format!("did you mean `{name}`?"))),
-            SandboxError::NotOurs { .. } => message.help("choose another name, move the file away, or allow it with `--overwrite`"),
+            SandboxError::Outside { .. } => {
+                message.help("a script reads files beside it and writes files in one folder (`--write DIR`)")
+            }
+            SandboxError::Missing { nearest, .. } => {
+                message.maybe_help(nearest.map(|name| format!("did you mean `{name}`?")))
+            }
+            SandboxError::NotOurs { .. } => {
+                message.help("choose another name, move the file away, or allow it with `--overwrite`")
+            }
             SandboxError::Refused { .. } => message,
         }
     }
@@ -80,7 +86,14 @@ impl Sandbox {
     }
 
     fn new(read_folder: PathBuf, write_folder: PathBuf, overwrite: bool) -> Self {
-        Self { read_folder, write_folder, script: None, overwrite, written: BTreeSet::new(), read: BTreeSet::new() }
+        Self {
+            read_folder,
+            write_folder,
+            script: None,
+            overwrite,
+            written: BTreeSet::new(),
+            read: BTreeSet::new(),
+        }
     }
 
     /// The folder a script reads in.

@@ -8,6 +8,7 @@ use rhai::{AST, Dynamic, Scope};
 
 use super::diagnostic::Diagnostic;
 use super::engine::{clean, on_deep_stack};
+use super::input::last_statement;
 use super::modules::Source;
 use super::{ScriptEngine, docs::Entry};
 
@@ -22,8 +23,14 @@ pub struct Session {
     engine: Arc<ScriptEngine>,
     scope: Scope<'static>,
     functions: AST,
-    entries: Vec<String>,
+    entries: Vec<Accepted>,
     earlier: Vec<Snapshot>,
+}
+
+struct Accepted {
+    typed: String,
+    /// As a script needs it: ended with a semicolon, an echoed value printed. It has as many lines as were typed.
+    written: String,
 }
 
 struct Snapshot {
@@ -37,7 +44,13 @@ impl Session {
     /// An empty session.
     #[must_use]
     pub fn new(engine: Arc<ScriptEngine>) -> Self {
-        Self { engine, scope: Scope::new(), functions: AST::empty(), entries: Vec::new(), earlier: Vec::new() }
+        Self {
+            engine,
+            scope: Scope::new(),
+            functions: AST::empty(),
+            entries: Vec::new(),
+            earlier: Vec::new(),
+        }
     }
 
     /// The engine the session runs on.
@@ -51,16 +64,17 @@ impl Session {
     /// # Errors
     ///
     /// Returns what went wrong; variables and functions are then as they were before.
-    pub fn enter(&mut self, entry: &str) -> Result<Option<Dynamic>, Diagnostic> {
+    pub fn enter(&mut self, entry: &str) -> Result<Option<Dynamic>, Box<Diagnostic>> {
         let entry = clean(entry);
         let entry = entry.trim_end();
         let before = self.snapshot();
         let engine = Arc::clone(&self.engine);
         let text = self.padding() + entry;
+        let typed: String = self.entries.iter().map(|entry| format!("{}\n", entry.typed)).collect();
         let (scope, functions) = (&mut self.scope, &self.functions);
         let outcome = on_deep_stack(|| {
             let read = engine.compile(SESSION, &text, scope, Some(functions))?;
-            let whole = Arc::new(Source { text: self.entries.iter().map(|entry| format!("{entry}\n")).collect::<String>() + entry, ast: read.ast.clone() });
+            let whole = Arc::new(Source { text: typed + entry, ast: read.ast.clone() });
             let value = engine.evaluate(SESSION, &whole, scope)?;
             Ok((read, value))
         });
@@ -68,7 +82,8 @@ impl Session {
             Ok((read, value)) => {
                 self.functions = read.ast.clone_functions_only();
                 self.scope = self.scope.clone_visible();
-                self.entries.push(entry.to_owned());
+                let written = self.written(entry, value.is_some());
+                self.entries.push(Accepted { typed: entry.to_owned(), written });
                 self.earlier.push(before);
                 if self.earlier.len() > UNDO_DEPTH {
                     self.earlier.remove(0);
@@ -86,19 +101,31 @@ impl Session {
     pub fn undo(&mut self) -> Option<String> {
         let before = self.earlier.pop()?;
         self.restore(before);
-        self.entries.pop()
+        self.entries.pop().map(|entry| entry.typed)
     }
 
-    /// The accepted entries, oldest first.
+    /// How many entries were accepted.
     #[must_use]
-    pub fn entries(&self) -> &[String] {
-        &self.entries
+    pub fn len(&self) -> usize {
+        self.entries.len()
     }
 
-    /// The session as a script.
+    /// Whether nothing was accepted yet.
+    #[must_use]
+    pub fn is_empty(&self) -> bool {
+        self.entries.is_empty()
+    }
+
+    /// The last accepted entry as a script needs it.
+    #[must_use]
+    pub fn last_written(&self) -> Option<&str> {
+        self.entries.last().map(|entry| entry.written.as_str())
+    }
+
+    /// The session as a script that gives what was shown at the prompt.
     #[must_use]
     pub fn script(&self) -> String {
-        self.entries.iter().map(|entry| format!("{entry}\n")).collect()
+        self.entries.iter().map(|entry| format!("{}\n", entry.written)).collect()
     }
 
     /// Variables in scope, in the order they were defined.
@@ -111,7 +138,8 @@ impl Session {
     #[must_use]
     pub fn functions(&self) -> Vec<String> {
         let named = self.functions.iter_functions().filter(|function| !function.name.starts_with("anon$"));
-        let mut signatures: Vec<String> = named.map(|function| format!("{}({})", function.name, function.params.join(", "))).collect();
+        let mut signatures: Vec<String> =
+            named.map(|function| format!("{}({})", function.name, function.params.join(", "))).collect();
         signatures.sort();
         signatures
     }
@@ -124,8 +152,24 @@ impl Session {
 
     /// One line for each line so far. Imports are kept: they do not outlive the entry they stand in.
     fn padding(&self) -> String {
-        let lines = self.entries.iter().flat_map(|entry| entry.split('\n'));
+        let lines = self.entries.iter().flat_map(|entry| entry.typed.split('\n'));
         lines.map(|line| if is_import(line) { format!("{line}\n") } else { "\n".to_owned() }).collect()
+    }
+
+    /// The entry as part of a script. Whatever is added must be readable, or it is left out.
+    fn written(&self, entry: &str, shown: bool) -> String {
+        let (start, end) = last_statement(entry);
+        let (before, last, after) = (&entry[..start], &entry[start..end], &entry[end..]);
+        let lead = last.len() - last.trim_start().len();
+        let printed = format!("{before}{}print({});{after}", &last[..lead], &last[lead..]);
+        if shown && self.engine.parse_error(&printed).is_none() {
+            return printed;
+        }
+        // What needs no semicolon before a next statement, such as a `fn`, gets none.
+        if last.trim().is_empty() || self.engine.parse_error(&format!("{entry}\n1")).is_none() {
+            return entry.to_owned();
+        }
+        format!("{before}{last};{after}")
     }
 
     fn snapshot(&self) -> Snapshot {

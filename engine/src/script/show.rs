@@ -59,7 +59,8 @@ impl Shows {
             return bracketed("[", items, "]", style);
         }
         if let Some(map) = value.read_lock::<rhai::Map>() {
-            let members = map.iter().map(|(key, value)| format!("{}: {}", quoted_key(key), self.show(value, style)));
+            let members =
+                map.iter().map(|(key, value)| format!("{}: {}", quoted_key(key), self.show(value, style)));
             return bracketed("#{ ", members.collect(), " }", style);
         }
         if let Some(function) = value.read_lock::<rhai::FnPtr>() {

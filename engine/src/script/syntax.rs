@@ -36,7 +36,9 @@ fn read(token: Token) -> Token {
     match token {
         Token::Divide => operator(DIVIDE),
         Token::LexError(error) if is_plus_minus(&error) => operator(PLUS_MINUS),
-        Token::LessThan | Token::LessThanEqualsTo | Token::GreaterThan | Token::GreaterThanEqualsTo => ordering(&token),
+        Token::LessThan | Token::LessThanEqualsTo | Token::GreaterThan | Token::GreaterThanEqualsTo => {
+            ordering(&token)
+        }
         Token::DivideAssign => refused(NO_DIVIDE_ASSIGN),
         Token::XOr | Token::XOrAssign => refused(NO_POWER),
         Token::PowerOf | Token::PowerOfAssign => refused(NO_DOUBLE_STAR),
@@ -51,7 +53,10 @@ fn operator(name: &str) -> Token {
 
 fn ordering(token: &Token) -> Token {
     let sign = token.literal_syntax();
-    ORDERINGS.iter().find(|(_, plain)| *plain == sign).map_or_else(|| token.clone(), |(name, _)| operator(name))
+    ORDERINGS
+        .iter()
+        .find(|(_, plain)| *plain == sign)
+        .map_or_else(|| token.clone(), |(name, _)| operator(name))
 }
 
 fn is_plus_minus(error: &LexError) -> bool {

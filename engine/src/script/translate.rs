@@ -25,7 +25,7 @@ pub(super) struct Translator<'a> {
 
 impl Translator<'_> {
     /// The error as a diagnostic.
-    pub(super) fn diagnose(&self, error: Box<EvalAltResult>) -> Diagnostic {
+    pub(super) fn diagnose(&self, error: Box<EvalAltResult>) -> Box<Diagnostic> {
         let mut trace = Vec::new();
         let mut source = self.main.to_owned();
         let mut error = error;
@@ -49,12 +49,12 @@ impl Translator<'_> {
         trace.reverse();
         let mut diagnostic = self.innermost(*error, &source);
         diagnostic.trace = trace;
-        diagnostic
+        Box::new(diagnostic)
     }
 
     /// A fault found before running.
-    pub(super) fn refused(&self, fail: Fail, position: Position) -> Diagnostic {
-        Diagnostic { kind: Kind::Syntax, ..self.failure(fail, position, self.main) }
+    pub(super) fn refused(&self, fail: Fail, position: Position) -> Box<Diagnostic> {
+        Box::new(Diagnostic { kind: Kind::Syntax, ..self.failure(fail, position, self.main) })
     }
 
     /// Closures called by native functions appear twice, at the same position: the second adds nothing.
@@ -81,7 +81,9 @@ impl Translator<'_> {
                 Some(fail) => self.failure(fail, position, source),
                 None => self.at(source, position, Kind::Failure, thrown(&token)),
             },
-            EvalAltResult::ErrorTerminated(token, _) => self.halted(token.try_cast::<Halt>(), position, source),
+            EvalAltResult::ErrorTerminated(token, _) => {
+                self.halted(token.try_cast::<Halt>(), position, source)
+            }
             EvalAltResult::ErrorParsing(error, _) => self.syntax(&error, position, source),
             EvalAltResult::ErrorDataRace(ref what, _) => {
                 let (message, help) = self.message(&error);
@@ -100,7 +102,12 @@ impl Translator<'_> {
 
     fn failure(&self, fail: Fail, position: Position, source: &str) -> Diagnostic {
         let place = self.part(&fail.at, position, source).or_else(|| self.place(source, position));
-        Diagnostic { help: fail.help, label: fail.label, place, ..Diagnostic::new(Kind::Failure, fail.message) }
+        Diagnostic {
+            help: fail.help,
+            label: fail.label,
+            place,
+            ..Diagnostic::new(Kind::Failure, fail.message)
+        }
     }
 
     /// The place of a key, an argument, or a part of a text argument.
@@ -110,7 +117,8 @@ impl Translator<'_> {
             Spot::Token(position) => self.place(source, position),
             Spot::Within { literal, content, start, length } => {
                 let mut place = self.place(source, literal)?;
-                let written: String = place.text.chars().skip(place.column).take(content.chars().count()).collect();
+                let written: String =
+                    place.text.chars().skip(place.column).take(content.chars().count()).collect();
                 // An escape or a line end inside the literal shifts the characters: then the whole literal is shown.
                 if written == content {
                     place.column += 1 + start;
@@ -151,11 +159,14 @@ impl Translator<'_> {
                 let rust = text.split(" [").next().unwrap_or(text);
                 plain(format!("{} has no members to index with `[…]`", words::a_type(rust)))
             }
-            EvalAltResult::ErrorArrayBounds(length, index, _) => out_of_bounds("array", "members", *length, *index),
-            EvalAltResult::ErrorStringBounds(length, index, _) => out_of_bounds("text", "characters", *length, *index),
-            EvalAltResult::ErrorMismatchDataType(wanted, found, _) | EvalAltResult::ErrorMismatchOutputType(wanted, found, _) => {
-                plain(mismatch(wanted, found))
+            EvalAltResult::ErrorArrayBounds(length, index, _) => {
+                out_of_bounds("array", "members", *length, *index)
             }
+            EvalAltResult::ErrorStringBounds(length, index, _) => {
+                out_of_bounds("text", "characters", *length, *index)
+            }
+            EvalAltResult::ErrorMismatchDataType(wanted, found, _)
+            | EvalAltResult::ErrorMismatchOutputType(wanted, found, _) => plain(mismatch(wanted, found)),
             EvalAltResult::ErrorFor(_) => advised(
                 "this value cannot be stepped through".to_owned(),
                 "`for` takes an array, a range such as `0..10`, or a column",
@@ -164,14 +175,20 @@ impl Translator<'_> {
                 "this value is being read and changed at the same time".to_owned(),
                 "a closure may not use the array it is called on: copy it first, `let copy = a;`, or compute what you need before",
             ),
-            EvalAltResult::ErrorAssignmentToConstant(name, _) => advised(constant(name), "define it with `let` if it must change"),
-            EvalAltResult::ErrorNonPureMethodCallOnConstant(name, _) => plain(format!("`{name}` would change a constant")),
+            EvalAltResult::ErrorAssignmentToConstant(name, _) => {
+                advised(constant(name), "define it with `let` if it must change")
+            }
+            EvalAltResult::ErrorNonPureMethodCallOnConstant(name, _) => {
+                plain(format!("`{name}` would change a constant"))
+            }
             EvalAltResult::ErrorArithmetic(text, _) => arithmetic(text),
             EvalAltResult::ErrorStackOverflow(_) => advised(
                 "functions call each other too deeply (more than 64 calls)".to_owned(),
                 "does a function call itself without an end? otherwise use a loop",
             ),
-            EvalAltResult::ErrorUnboundThis(_) => plain("`this` has a meaning only in a function called as a method".to_owned()),
+            EvalAltResult::ErrorUnboundThis(_) => {
+                plain("`this` has a meaning only in a function called as a method".to_owned())
+            }
             EvalAltResult::ErrorDataTooLarge(what, _) => plain(format!("{what} is too large")),
             other => plain(lowercase_start(&bare(other))),
         }
@@ -181,11 +198,14 @@ impl Translator<'_> {
         let is_function = self.entries.iter().any(|entry| entry.name == name);
         let mut help = Vec::new();
         if self.variables.iter().any(|variable| variable == name) {
-            help.push(format!("a `fn` sees only its parameters: pass `{name}` as one, or write a closure `|x| …`"));
+            help.push(format!(
+                "a `fn` sees only its parameters: pass `{name}` as one, or write a closure `|x| …`"
+            ));
         } else if is_function {
             help.push(format!("`{name}` is a function: call it, or write a closure such as `|x| {name}(x)`"));
         } else {
-            let callable = self.entries.iter().filter(|entry| !entry.is_standard).map(|entry| entry.name.as_str());
+            let callable =
+                self.entries.iter().filter(|entry| !entry.is_standard).map(|entry| entry.name.as_str());
             let names = self.variables.iter().map(String::as_str).chain(callable);
             help.extend(words::did_you_mean(name, names));
         }
@@ -195,7 +215,8 @@ impl Translator<'_> {
     /// `call` is the name and the types of the arguments, `pow (i64, map)`.
     fn unknown_function(&self, call: &str) -> (String, Vec<String>) {
         let (name, types) = call.rsplit_once(" (").unwrap_or((call, ""));
-        let types: Vec<&str> = types.trim_end_matches(')').split(", ").filter(|name| !name.is_empty()).collect();
+        let types: Vec<&str> =
+            types.trim_end_matches(')').split(", ").filter(|name| !name.is_empty()).collect();
         if let Some(property) = name.strip_prefix("get$") {
             return self.unknown_property(property, types.first().copied());
         }
@@ -212,7 +233,10 @@ impl Translator<'_> {
             return (misfit(name, &given, types.len(), &same), forms(&same));
         }
         if self.variables.iter().any(|variable| variable == name) {
-            return (format!("there is no function `{name}`"), vec![format!("`{name}` is a variable; if it holds a closure, write `{name}.call(x)`")]);
+            return (
+                format!("there is no function `{name}`"),
+                vec![format!("`{name}` is a variable; if it holds a closure, write `{name}.call(x)`")],
+            );
         }
         let names = self.entries.iter().map(|entry| entry.name.as_str());
         (format!("there is no function `{name}`"), words::did_you_mean(name, names).into_iter().collect())
@@ -220,10 +244,7 @@ impl Translator<'_> {
 
     fn unknown_property(&self, name: &str, owner: Option<&str>) -> (String, Vec<String>) {
         if owner == Some("()") {
-            return (
-                format!("there is nothing `()` before `.{name}`"),
-                vec![words::MISSING_KEY.to_owned()],
-            );
+            return (format!("there is nothing `()` before `.{name}`"), vec![words::MISSING_KEY.to_owned()]);
         }
         let names = self.entries.iter().filter(|entry| !entry.is_standard || entry.is_property);
         let message = match owner {
@@ -257,7 +278,11 @@ impl Translator<'_> {
 }
 
 fn constant(name: &str) -> String {
-    if name.is_empty() { "a fixed value cannot be set".to_owned() } else { format!("`{name}` is a constant and cannot be changed") }
+    if name.is_empty() {
+        "a fixed value cannot be set".to_owned()
+    } else {
+        format!("`{name}` is a constant and cannot be changed")
+    }
 }
 
 fn counted(count: usize, noun: &str) -> String {
@@ -288,6 +313,9 @@ fn mismatch(wanted: &str, found: &str) -> String {
     match (wanted, found) {
         ("", found) => format!("{} does not fit here", words::a_type(found)),
         (wanted, "") => format!("{} is needed here", words::a_type(wanted)),
+        (wanted, found) if words::type_name(wanted) == "truth value" => {
+            format!("`true` or `false` is needed here, not {}", words::a_type(found))
+        }
         (wanted, found) => format!("{} is needed here, not {}", words::a_type(wanted), words::a_type(found)),
     }
 }
@@ -308,7 +336,9 @@ fn cannot(operator: &str, deed: &str, types: &[&str]) -> String {
         [one] => format!("`{sign}` does not take {}", words::a_type(one)),
         [left, right] => {
             let between = match deed {
-                "subtract" => return format!("cannot subtract {} from {}", words::a_type(right), words::a_type(left)),
+                "subtract" => {
+                    return format!("cannot subtract {} from {}", words::a_type(right), words::a_type(left));
+                }
                 "divide" => "by",
                 "compare" => "with",
                 _ => "and",
@@ -337,7 +367,8 @@ fn misfit(name: &str, given: &str, count: usize, same: &[&Entry]) -> String {
 fn forms(same: &[&Entry]) -> Vec<String> {
     const SHOWN: usize = 4;
     let documented: Vec<&&Entry> = same.iter().filter(|entry| !entry.text.is_empty()).collect();
-    let shown: Vec<&Entry> = if documented.is_empty() { same.to_vec() } else { documented.into_iter().copied().collect() };
+    let shown: Vec<&Entry> =
+        if documented.is_empty() { same.to_vec() } else { documented.into_iter().copied().collect() };
     shown.iter().take(SHOWN).map(|entry| format!("it is `{}`", entry.signature)).collect()
 }
 
@@ -359,7 +390,9 @@ fn syntax_message(error: &ParseErrorType, begins_line: bool) -> (String, Option<
     let plain = |message: String| (message, None);
     let advised = |message: &str, help: &str| (message.to_owned(), Some(help.to_owned()));
     match error {
-        ParseErrorType::UnexpectedEOF => advised("the text ends too early", "is a bracket, a string or an expression still open?"),
+        ParseErrorType::UnexpectedEOF => {
+            advised("the text ends too early", "is a bracket, a string or an expression still open?")
+        }
         ParseErrorType::BadInput(error) => lexical(error),
         ParseErrorType::MissingToken(token, _) if token == ";" && begins_line => {
             advised("`;` is missing at the end of this line", "every statement but the last ends with `;`")
@@ -371,25 +404,40 @@ fn syntax_message(error: &ParseErrorType, begins_line: bool) -> (String, Option<
         ParseErrorType::MissingSymbol(text) => plain(lowercase_start(text)),
         ParseErrorType::UnknownOperator(operator) => plain(format!("there is no operator `{operator}`")),
         ParseErrorType::DuplicatedProperty(key) => plain(format!("the key `{key}` appears twice")),
-        ParseErrorType::DuplicatedVariable(name) | ParseErrorType::VariableExists(name) => plain(format!("the variable `{name}` is defined twice")),
+        ParseErrorType::DuplicatedVariable(name) | ParseErrorType::VariableExists(name) => {
+            plain(format!("the variable `{name}` is defined twice"))
+        }
         ParseErrorType::VariableUndefined(name) => plain(format!("there is no variable `{name}`")),
         ParseErrorType::ModuleUndefined(name) => plain(format!("there is no module `{name}`")),
         ParseErrorType::FnDuplicatedDefinition(name, count) => {
             plain(format!("the function `{name}` is defined twice for {}", counted(*count, "parameter")))
         }
-        ParseErrorType::FnDuplicatedParam(function, name) => plain(format!("the parameter `{name}` of `{function}` appears twice")),
+        ParseErrorType::FnDuplicatedParam(function, name) => {
+            plain(format!("the parameter `{name}` of `{function}` appears twice"))
+        }
         ParseErrorType::Reserved(word) => (
             format!("`{word}` is a word of the language and cannot be a name"),
             Some(format!("as a key, quote it: `\"{word}\"`")),
         ),
-        ParseErrorType::ExprTooDeep => advised("this expression is nested too deeply", "split it up with `let`"),
+        ParseErrorType::ExprTooDeep => {
+            advised("this expression is nested too deeply", "split it up with `let`")
+        }
         ParseErrorType::AssignmentToConstant(name) => (constant(name), None),
-        ParseErrorType::AssignmentToInvalidLHS(_) => advised("only a variable or a member of one can be set", "to compare, write `==`"),
-        ParseErrorType::PropertyExpected => advised("a key or a property name is missing here", "a key with other characters than letters and digits is quoted: `\"Ca^2+\": …`"),
+        ParseErrorType::AssignmentToInvalidLHS(_) => {
+            advised("only a variable or a member of one can be set", "to compare, write `==`")
+        }
+        ParseErrorType::PropertyExpected => advised(
+            "a key or a property name is missing here",
+            "a key with other characters than letters and digits is quoted: `\"Ca^2+\": …`",
+        ),
         ParseErrorType::VariableExpected => plain("a variable name is missing here".to_owned()),
         ParseErrorType::ExprExpected(_) => plain("an expression is missing here".to_owned()),
-        ParseErrorType::WrongFnDefinition => plain("functions are defined at the top level, outside of blocks".to_owned()),
-        ParseErrorType::WrongDocComment => plain("`///` may only stand before a function: write `//`".to_owned()),
+        ParseErrorType::WrongFnDefinition => {
+            plain("functions are defined at the top level, outside of blocks".to_owned())
+        }
+        ParseErrorType::WrongDocComment => {
+            plain("`///` may only stand before a function: write `//`".to_owned())
+        }
         ParseErrorType::LoopBreak => plain("`break` and `continue` belong inside a loop".to_owned()),
         ParseErrorType::MismatchedType(wanted, found) => plain(mismatch(wanted, found)),
         other => plain(lowercase_start(&other.to_string())),
@@ -404,24 +452,35 @@ fn missing_token(token: &str, purpose: &str) -> (String, Option<String>) {
         "," if purpose.contains("array") => list("]", "an array `[…`"),
         "," if purpose.contains("map") => list("}", "a map `#{ …`"),
         "," if purpose.contains("argument") => list(")", "a call `f(…`"),
-        "}" => ("`}` is missing at the end".to_owned(), Some("a block `{ …` or a map `#{ …` is still open".to_owned())),
+        "}" => (
+            "`}` is missing at the end".to_owned(),
+            Some("a block `{ …` or a map `#{ …` is still open".to_owned()),
+        ),
         _ => (format!("`{token}` is missing {}", lowercase_start(purpose).trim()), None),
     }
 }
 
 fn lexical(error: &LexError) -> (String, Option<String>) {
     match error {
-        LexError::UnterminatedString => ("this text has no closing quote".to_owned(), Some("text over several lines stands in back-ticks".to_owned())),
+        LexError::UnterminatedString => (
+            "this text has no closing quote".to_owned(),
+            Some("text over several lines stands in back-ticks".to_owned()),
+        ),
         LexError::UnexpectedInput(text) if matches!(text.as_str(), ";" | "," | ")" | "]" | "}") => {
             (format!("`{text}` does not fit here"), Some("is an expression missing before it?".to_owned()))
         }
         LexError::UnexpectedInput(text) => (
             format!("`{text}` has no meaning here"),
-            (!text.is_ascii()).then(|| "outside of quotes only plain letters, digits and signs are read".to_owned()),
+            (!text.is_ascii())
+                .then(|| "outside of quotes only plain letters, digits and signs are read".to_owned()),
         ),
-        LexError::ImproperSymbol(sign, _) if sign == "=" => ("`=` sets a variable".to_owned(), Some("to compare, write `==`".to_owned())),
+        LexError::ImproperSymbol(sign, _) if sign == "=" => {
+            ("`=` sets a variable".to_owned(), Some("to compare, write `==`".to_owned()))
+        }
         LexError::MalformedNumber(text) => (format!("`{text}` is not a number"), None),
-        LexError::MalformedEscapeSequence(text) => (format!("`{text}` is not an escape"), Some("a backslash itself is written `\\\\`".to_owned())),
+        LexError::MalformedEscapeSequence(text) => {
+            (format!("`{text}` is not an escape"), Some("a backslash itself is written `\\\\`".to_owned()))
+        }
         LexError::MalformedIdentifier(text) => (format!("`{text}` is not a name"), None),
         // Our own refusals (`syntax.rs`) are complete sentences with advice.
         LexError::Runtime(text) => match text.split_once(": ") {

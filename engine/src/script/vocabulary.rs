@@ -102,12 +102,19 @@ impl Vocabulary {
     }
 
     /// Adds `==` and `!=`. `equal` must refuse what cannot be compared: the interpreter would answer `false`.
-    pub fn equality<T: Variant + Clone>(&mut self, equal: fn(&Dynamic, &Dynamic) -> ScriptResult<bool>) -> &mut Self {
+    pub fn equality<T: Variant + Clone>(
+        &mut self,
+        equal: fn(&Dynamic, &Dynamic) -> ScriptResult<bool>,
+    ) -> &mut Self {
         let signs: [(&str, bool); 2] = [("==", true), ("!=", false)];
         for (sign, wanted) in signs {
             self.engine()
-                .register_fn(sign, move |a: T, b: Dynamic| Ok::<_, Box<EvalAltResult>>(equal(&Dynamic::from(a), &b)? == wanted))
-                .register_fn(sign, move |a: Dynamic, b: T| Ok::<_, Box<EvalAltResult>>(equal(&a, &Dynamic::from(b))? == wanted));
+                .register_fn(sign, move |a: T, b: Dynamic| {
+                    Ok::<_, Box<EvalAltResult>>(equal(&Dynamic::from(a), &b)? == wanted)
+                })
+                .register_fn(sign, move |a: Dynamic, b: T| {
+                    Ok::<_, Box<EvalAltResult>>(equal(&a, &Dynamic::from(b))? == wanted)
+                });
         }
         self
     }

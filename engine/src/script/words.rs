@@ -11,11 +11,13 @@ pub fn type_name(rust: &str) -> &str {
     match rust {
         "i64" | "INT" => "whole number",
         "f64" | "FLOAT" => "number",
-        "bool" | "boolean" | "boolean expression" => "truth value (`true` or `false`)",
+        "bool" | "boolean" | "boolean expression" => "truth value",
         "iterable value" => "array or a range",
         "char" => "character",
         "()" => "nothing `()`",
-        "string" | "&str | ImmutableString | String" | "ImmutableString" | "String" | "&str" => "text",
+        "string" | "&str | ImmutableString | String" | "ImmutableString" | "String" | "&str" | "str" => {
+            "text"
+        }
         "map" | "Map" => "map",
         "array" | "Array" => "array",
         "Fn" | "FnPtr" => "closure",

@@ -36,7 +36,7 @@ pub fn run(look: &Look, limits: &Limits) -> bool {
         match session.enter(&entry) {
             Ok(Some(value)) => engine.host().print(&engine.show(&value)),
             Ok(None) => {}
-            Err(Diagnostic { kind: Kind::Halted(Halt::OutputClosed), .. }) => return true,
+            Err(diagnostic) if diagnostic.kind == Kind::Halted(Halt::OutputClosed) => return true,
             Err(diagnostic) => {
                 report.print(&diagnostic);
                 return false;

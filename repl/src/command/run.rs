@@ -44,7 +44,7 @@ pub fn run(run: &Run, look: &Look, limits: &Limits) -> bool {
         Ok(Some(value)) => engine.host().print(&engine.show(&value)),
         Ok(None) => {}
         // The reader of our output left: nobody is there to be told.
-        Err(Diagnostic { kind: Kind::Halted(Halt::OutputClosed), .. }) => {}
+        Err(diagnostic) if diagnostic.kind == Kind::Halted(Halt::OutputClosed) => {}
         Err(diagnostic) => {
             report.print(&diagnostic);
             return false;
@@ -54,8 +54,11 @@ pub fn run(run: &Run, look: &Look, limits: &Limits) -> bool {
 }
 
 /// The text of a script file.
-pub fn read(file: &Path) -> Result<String, Diagnostic> {
-    let failed = |reason: &str| Diagnostic::new(Kind::Failure, format!("cannot read the script `{}`: {reason}", file.display()));
+pub fn read(file: &Path) -> Result<String, Box<Diagnostic>> {
+    let failed = |reason: &str| {
+        let message = format!("cannot read the script `{}`: {reason}", file.display());
+        Box::new(Diagnostic::new(Kind::Failure, message))
+    };
     if file.is_dir() {
         return Err(failed("it is a folder"));
     }

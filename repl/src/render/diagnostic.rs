@@ -62,7 +62,10 @@ impl Report {
 
     fn help(&self, help: &str) -> Vec<String> {
         let start = self.painted(GREEN, "help");
-        help.lines().enumerate().map(|(i, line)| if i == 0 { format!("  {start}: {line}") } else { format!("        {line}") }).collect()
+        help.lines()
+            .enumerate()
+            .map(|(i, line)| if i == 0 { format!("  {start}: {line}") } else { format!("        {line}") })
+            .collect()
     }
 
     fn painted(&self, style: &str, text: &str) -> String {
@@ -77,7 +80,12 @@ const DIM: &str = "2";
 
 fn calls(trace: &[Frame]) -> Vec<String> {
     const SHOWN: usize = 5;
-    let line = |frame: &Frame| format!("  {} was called at {}:{}:{}", frame.what, frame.place.source, frame.place.line, frame.place.column);
+    let line = |frame: &Frame| {
+        format!(
+            "  {} was called at {}:{}:{}",
+            frame.what, frame.place.source, frame.place.line, frame.place.column
+        )
+    };
     let mut lines: Vec<String> = trace.iter().take(SHOWN).map(line).collect();
     if trace.len() > SHOWN {
         lines.push(format!("  and {} calls more", trace.len() - SHOWN));

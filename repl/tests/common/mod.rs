@@ -29,7 +29,11 @@ impl Test {
     /// The program, without colours from the outside and with its data folder inside.
     pub fn lysocline(&self, arguments: &[&str]) -> Command {
         let mut command = Command::cargo_bin("lysocline").expect("it is built");
-        command.current_dir(self.path()).env("HOME", self.path()).env_remove("XDG_DATA_HOME").env_remove("NO_COLOR");
+        command
+            .current_dir(self.path())
+            .env("HOME", self.path())
+            .env_remove("XDG_DATA_HOME")
+            .env_remove("NO_COLOR");
         command.args(arguments);
         command
     }
