@@ -73,7 +73,8 @@ struct Outcome {
 }
 
 fn compare(file: &File, check: &Check) -> Vec<Outcome> {
-    let failed = |fault: String| Outcome { fault: Some(format!("{}: {fault}", check.id)), ..Outcome::default() };
+    let failed =
+        |fault: String| Outcome { fault: Some(format!("{}: {fault}", check.id)), ..Outcome::default() };
     let cases = match check.cases() {
         Ok(cases) => cases,
         Err(fault) => return vec![failed(fault)],
@@ -108,7 +109,10 @@ fn judge(check: &Check, case: &Case, expected: &Expected, got: f64) -> Outcome {
     let fault = || {
         let Expected { column, value, tolerance, .. } = expected;
         let off = got - value;
-        format!("{}, row {} {:?}: {column} is {got}, not {value} +/- {tolerance} (off by {off:.3e})", check.id, case.row, case.given)
+        format!(
+            "{}, row {} {:?}: {column} is {got}, not {value} +/- {tolerance} (off by {off:.3e})",
+            check.id, case.row, case.given
+        )
     };
     Outcome { share: Some(share), fault: (!met).then(fault) }
 }
@@ -171,10 +175,19 @@ fn checks_have_names_of_their_own_and_say_where_they_come_from() {
     for name in FILES {
         for check in File::read(name).unwrap().checks {
             assert!(ids.insert(check.id.clone()), "two checks are called `{}`", check.id);
-            for (key, text) in [("quantity", &check.quantity), ("citation", &check.citation), ("conditions", &check.conditions)] {
+            for (key, text) in [
+                ("quantity", &check.quantity),
+                ("citation", &check.citation),
+                ("conditions", &check.conditions),
+            ] {
                 assert!(!text.trim().is_empty(), "`{}` has no {key}", check.id);
             }
-            assert!(["read", "computed", "memory"].contains(&check.provenance.as_str()), "`{}`: {}", check.id, check.provenance);
+            assert!(
+                ["read", "computed", "memory"].contains(&check.provenance.as_str()),
+                "`{}`: {}",
+                check.id,
+                check.provenance
+            );
             assert_eq!(check.difference.is_some(), check.id.ends_with("-difference"), "`{}`", check.id);
             assert_eq!(check.difference.is_some(), check.agreement.is_some(), "`{}`", check.id);
             for text in [&check.note, &check.uncertainty].into_iter().flatten() {

@@ -13,11 +13,19 @@ use crate::waters::{freshwater, survey};
 /// Every bit of what the solver found, row by row.
 fn bits(samples: &[Sample], ledger: &Ledger, threads: usize) -> Vec<Vec<u64>> {
     let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().expect("a pool of threads");
-    let run = pool.install(|| Run::equilibrate(samples, Some(ledger), &Settings::default(), &|_| {})).expect("not interrupted");
+    let run = pool
+        .install(|| Run::equilibrate(samples, Some(ledger), &Settings::default(), &|_| {}))
+        .expect("not interrupted");
     let row = |outcome: &Result<_, String>| {
-        let state: &lysocline_engine::equilibrium::State = outcome.as_ref().unwrap_or_else(|reason| panic!("{reason}"));
+        let state: &lysocline_engine::equilibrium::State =
+            outcome.as_ref().unwrap_or_else(|reason| panic!("{reason}"));
         let found = state.converged();
-        let numbers = found.ln_c.iter().chain(&found.ln_gamma).chain(&found.ln_a).chain([&found.ionic_strength, &found.ln_water_activity]);
+        let numbers = found
+            .ln_c
+            .iter()
+            .chain(&found.ln_gamma)
+            .chain(&found.ln_a)
+            .chain([&found.ionic_strength, &found.ln_water_activity]);
         numbers.map(|number| number.to_bits()).collect()
     };
     run.outcomes().iter().map(row).collect()
@@ -38,7 +46,8 @@ fn the_order_of_samples_and_of_their_keys_changes_no_bit() {
         .map(|sample| {
             let mut keys: Vec<(&String, &Value)> = sample.entries().iter().collect();
             keys.reverse();
-            let entries: BTreeMap<String, Value> = keys.into_iter().map(|(key, value)| (key.clone(), value.clone())).collect();
+            let entries: BTreeMap<String, Value> =
+                keys.into_iter().map(|(key, value)| (key.clone(), value.clone())).collect();
             Sample::read(entries).expect("read before")
         })
         .collect();
@@ -54,14 +63,18 @@ fn the_order_in_which_a_ledger_was_put_together_changes_no_bit() {
     let built = |order: &mut dyn Iterator<Item = &&str>| {
         let empty = ["NO3^-", "Br^-", "Li^+", "Rb^+", "Cs^+"]
             .iter()
-            .fold(Ledger::empty("rebuilt", None), |ledger, ion| ledger.with_solute(lysocline_engine::chem::Species::parse(ion).unwrap()));
+            .fold(Ledger::empty("rebuilt", None), |ledger, ion| {
+                ledger.with_solute(lysocline_engine::chem::Species::parse(ion).unwrap())
+            });
         order.fold(empty, |built, name| built.with_reaction(name, ledger.reaction(name).unwrap()).unwrap())
     };
     let expected = bits(&samples, &ledger, 2);
     let (forwards, backwards) = (built(&mut names.iter()), built(&mut names.iter().rev()));
     // Every other reaction first, and the rest by a merger.
     let (even, odd) = (built(&mut names.iter().step_by(2)), built(&mut names.iter().skip(1).step_by(2)));
-    for (ledger, how) in [(forwards, "forwards"), (backwards, "backwards"), (odd.merge(&even, None).unwrap(), "merged")] {
+    for (ledger, how) in
+        [(forwards, "forwards"), (backwards, "backwards"), (odd.merge(&even, None).unwrap(), "merged")]
+    {
         assert_eq!(ledger.digest(), freshwater().digest(), "{how}");
         assert!(bits(&samples, &ledger, 2) == expected, "{how}");
     }

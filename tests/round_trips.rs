@@ -86,8 +86,20 @@ fn a_constant_written_backwards_or_doubled_is_the_same_constant() {
     let ledger = freshwater();
     let names: Vec<&str> = ledger.names().collect();
     let waters = [
-        sample(&[("pH", "7.9"), ("DIC", "3 mmol/kg"), ("Ca", "2 mmol/kg"), ("Mg", "1 mmol/kg"), ("Na", "9 mmol/kg"), ("K", "0.3 mmol/kg"),
-            ("Cl", "9 mmol/kg"), ("SO4^2-", "2 mmol/kg"), ("F", "0.1 mmol/kg"), ("Si", "0.5 mmol/kg"), ("Sr", "5 umol/kg"), ("Ba", "0.4 umol/kg")]),
+        sample(&[
+            ("pH", "7.9"),
+            ("DIC", "3 mmol/kg"),
+            ("Ca", "2 mmol/kg"),
+            ("Mg", "1 mmol/kg"),
+            ("Na", "9 mmol/kg"),
+            ("K", "0.3 mmol/kg"),
+            ("Cl", "9 mmol/kg"),
+            ("SO4^2-", "2 mmol/kg"),
+            ("F", "0.1 mmol/kg"),
+            ("Si", "0.5 mmol/kg"),
+            ("Sr", "5 umol/kg"),
+            ("Ba", "0.4 umol/kg"),
+        ]),
         sample(&[("pH", "electroneutral"), ("temperature", "10 degC")])
             .treated(Treatment::OpenTo { gas: "CO2(g)".into(), fugacity: 4.2e-4 })
             .and_then(|sample| sample.treated(Treatment::Saturate { solid: "calcite".into(), index: 0.0 }))
@@ -99,7 +111,8 @@ fn a_constant_written_backwards_or_doubled_is_the_same_constant() {
             for multiple in [-1, 2, -3] {
                 let rewritten = ledger.reaction(name).unwrap().times(multiple.into()).unwrap();
                 let ledger = ledger.replace(name, &rewritten).unwrap();
-                let other = equilibrate(water, Some(&ledger), &Settings::default()).unwrap_or_else(|error| panic!("{name} times {multiple}: {error}"));
+                let other = equilibrate(water, Some(&ledger), &Settings::default())
+                    .unwrap_or_else(|error| panic!("{name} times {multiple}: {error}"));
                 compare(&plain, &other, &format!("{name} times {multiple}"));
             }
         });

@@ -23,7 +23,8 @@ fn files(folder: &str) -> Vec<(String, String)> {
             if path.is_dir() {
                 folders.push(path);
             } else if let Ok(text) = std::fs::read_to_string(&path) {
-                let relative = path.strip_prefix(root()).expect("below the root").to_string_lossy().replace('\\', "/");
+                let relative =
+                    path.strip_prefix(root()).expect("below the root").to_string_lossy().replace('\\', "/");
                 found.push((relative, text));
             }
         }
@@ -62,7 +63,8 @@ fn only_the_script_room_imports_the_scripting_language() {
 
 #[test]
 fn only_the_prompt_depends_on_the_terminal() {
-    let terminal = ["clap", "comfy-table", "directories", "indicatif", "rustyline", "signal-hook", "terminal_size"];
+    let terminal =
+        ["clap", "comfy-table", "directories", "indicatif", "rustyline", "signal-hook", "terminal_size"];
     for member in ["engine", "stdlib", "tests"] {
         let manifest = std::fs::read_to_string(root().join(member).join("Cargo.toml")).expect("a manifest");
         let manifest: toml::Table = manifest.parse().expect("a manifest in TOML");
@@ -91,7 +93,10 @@ fn every_shipped_constant_says_where_it_comes_from() {
             let uses = reaction.constant().expect("a constant").history.uses();
             assert_eq!(uses.len(), 1, "{key}/{name}");
             let origin = &uses[0].0;
-            assert!(origin.source.as_ref().is_some_and(|source| source.len() > 10), "{key}/{name} has no source");
+            assert!(
+                origin.source.as_ref().is_some_and(|source| source.len() > 10),
+                "{key}/{name} has no source"
+            );
             assert_ne!(origin.provenance, Provenance::Stated, "{key}/{name} has no provenance");
             counted += 1;
         }
@@ -113,6 +118,7 @@ fn no_file_mentions_a_path_of_somebodys_machine() {
 #[test]
 fn no_source_is_left_unfinished() {
     let marks = ["to".to_string() + "do!(", "unimple".to_string() + "mented!(", "d".to_string() + "bg!("];
-    let all: Vec<(String, String)> = ["engine", "repl", "stdlib", "tests"].iter().flat_map(|folder| sources(folder)).collect();
+    let all: Vec<(String, String)> =
+        ["engine", "repl", "stdlib", "tests"].iter().flat_map(|folder| sources(folder)).collect();
     none(lines_with(&all, |line| marks.iter().any(|mark| line.contains(mark.as_str()))));
 }

@@ -27,7 +27,8 @@ pub fn sample(pairs: &[(&str, &str)]) -> Sample {
 
 /// The equilibrium of a sample that has one.
 pub fn state(sample: &Sample) -> State {
-    equilibrate(sample, None, &Settings::default()).unwrap_or_else(|error| panic!("{error}\n{:?}", sample.entries()))
+    equilibrate(sample, None, &Settings::default())
+        .unwrap_or_else(|error| panic!("{error}\n{:?}", sample.entries()))
 }
 
 /// A number a state answers.
@@ -40,7 +41,9 @@ pub fn survey() -> Vec<Sample> {
     (0..60)
         .map(|i| {
             let x = f64::from(i);
-            let of = |least: f64, most: f64, turn: f64| format!("{} mmol/kg", least * (most / least).powf((x * turn).fract()));
+            let of = |least: f64, most: f64, turn: f64| {
+                format!("{} mmol/kg", least * (most / least).powf((x * turn).fract()))
+            };
             let (temperature, ph) = (2.0 + (x * 7.3) % 35.0, 6.2 + (x * 0.77) % 3.0);
             sample(&[
                 ("name", &format!("station {i}")),
@@ -65,11 +68,19 @@ pub fn survey() -> Vec<Sample> {
 /// Any water between rain and brackish, its pH and inorganic carbon known; amounts in mol/kg.
 pub fn any_water() -> impl Strategy<Value = BTreeMap<String, Value>> {
     let analytes = ["Ca", "Mg", "Na", "K", "Cl", "SO4^2-", "NO3^-", "F", "Si", "Sr", "Ba"];
-    let amounts = proptest::collection::vec(prop_oneof![1 => Just(None), 4 => (-6.0..-2.0).prop_map(Some)], analytes.len());
-    (2.0..60.0, 5.5..10.5, -5.0..-1.8, amounts).prop_map(move |(temperature, ph, carbon, amounts): (f64, f64, f64, Vec<Option<f64>>)| {
-        let amounts = analytes.iter().zip(amounts).filter_map(|(key, log)| log.map(|log| ((*key).to_string(), 10_f64.powf(log))));
-        let known = [("temperature", temperature), ("pH", ph), ("DIC", 10_f64.powf(carbon))];
-        let known = known.map(|(key, value)| (key.to_string(), value));
-        known.into_iter().chain(amounts).map(|(key, value)| (key, Value::Number(value))).collect()
-    })
+    let amounts = proptest::collection::vec(
+        prop_oneof![1 => Just(None), 4 => (-6.0..-2.0).prop_map(Some)],
+        analytes.len(),
+    );
+    (2.0..60.0, 5.5..10.5, -5.0..-1.8, amounts).prop_map(
+        move |(temperature, ph, carbon, amounts): (f64, f64, f64, Vec<Option<f64>>)| {
+            let amounts = analytes
+                .iter()
+                .zip(amounts)
+                .filter_map(|(key, log)| log.map(|log| ((*key).to_string(), 10_f64.powf(log))));
+            let known = [("temperature", temperature), ("pH", ph), ("DIC", 10_f64.powf(carbon))];
+            let known = known.map(|(key, value)| (key.to_string(), value));
+            known.into_iter().chain(amounts).map(|(key, value)| (key, Value::Number(value))).collect()
+        },
+    )
 }

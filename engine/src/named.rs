@@ -119,7 +119,9 @@ impl Named {
     ///
     /// Returns a fault if something else is there.
     pub fn texts(&mut self, key: &str) -> Result<Option<Vec<String>>, KeyFault> {
-        let fault = |found: &Value| KeyFault::new(key, format!("`{key}` takes a list of texts, not {}", found.kind()));
+        let fault = |found: &Value| {
+            KeyFault::new(key, format!("`{key}` takes a list of texts, not {}", found.kind()))
+        };
         match self.take(key) {
             None => Ok(None),
             Some(Value::Text(text)) => Ok(Some(vec![text])),

@@ -86,7 +86,12 @@ impl Look {
     /// For results, on standard output.
     pub fn style(&self) -> Style {
         let stdout = std::io::stdout();
-        Style { ascii: self.plain, color: self.colored(stdout.is_terminal()), width: width(), ..Style::default() }
+        Style {
+            ascii: self.plain,
+            color: self.colored(stdout.is_terminal()),
+            width: width(),
+            ..Style::default()
+        }
     }
 
     /// Whether messages on standard error are coloured.

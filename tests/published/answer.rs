@@ -45,12 +45,15 @@ fn answer(file: &File, check: &Check, given: &mut Given) -> Result<Answer, Strin
             let log_k = derived(&ledger(file, check)?, check)?.log_k_at(t).map_err(text)?;
             only("sigma", log_k.sigma().ok_or("no uncertainty is stated")?)
         }
-        Kind::ConditionalLogK => only("log_k", conditional_log_k(check, given.take("ionic_strength [mol/kg]")?)?),
+        Kind::ConditionalLogK => {
+            only("log_k", conditional_log_k(check, given.take("ionic_strength [mol/kg]")?)?)
+        }
         Kind::ActivityCoefficient => {
             let (model, ionic_strength) = (davies(check)?, given.take("ionic_strength [mol/kg]")?);
             Ok(Box::new(move |column| {
                 let charge = column.strip_prefix("gamma(").and_then(|rest| rest.strip_suffix(')'));
-                let charge: f64 = charge.and_then(|charge| charge.parse().ok()).ok_or_else(|| unknown(column))?;
+                let charge: f64 =
+                    charge.and_then(|charge| charge.parse().ok()).ok_or_else(|| unknown(column))?;
                 Ok(model.ln_gamma(charge, ionic_strength).exp())
             }))
         }
@@ -105,7 +108,8 @@ fn ledger(file: &File, check: &Check) -> Result<Ledger, String> {
         for name in kept {
             ledger.reaction(name).map_err(text)?;
         }
-        let dropped: Vec<String> = ledger.names().filter(|name| !kept.iter().any(|own| own == name)).map(str::to_string).collect();
+        let dropped: Vec<String> =
+            ledger.names().filter(|name| !kept.iter().any(|own| own == name)).map(str::to_string).collect();
         ledger = without(ledger, &dropped)?;
     }
     ledger = without(ledger, check.model.without.as_deref().unwrap_or_default())?;
@@ -122,7 +126,8 @@ fn without(ledger: Ledger, names: &[String]) -> Result<Ledger, String> {
 /// A ledger of the `[[constant]]` entries of the file, with the ions its rows ask for that take part in no reaction.
 fn own_ledger(file: &File, check: &Check) -> Result<Ledger, String> {
     let source = format!("[publication]\ncitation = \"{}\"\n{}", check.citation, file.text);
-    let constants = file::read_constants(&file.name, &source).map_err(|faults| format!("{faults:?}"))?.constants;
+    let constants =
+        file::read_constants(&file.name, &source).map_err(|faults| format!("{faults:?}"))?.constants;
     let mut ledger = Ledger::empty(&file.name, None);
     for (name, reaction) in &constants {
         ledger = ledger.with_reaction(name, reaction).map_err(text)?;
@@ -165,7 +170,9 @@ fn activity(check: &Check) -> Result<Option<ActivityChoice>, String> {
 
 fn davies(check: &Check) -> Result<ActivityModel, String> {
     match activity(check)? {
-        Some(ActivityChoice::Davies { a: Some(a), b, .. }) => Ok(ActivityModel::davies(Davies::new(a).with_b(b))),
+        Some(ActivityChoice::Davies { a: Some(a), b, .. }) => {
+            Ok(ActivityModel::davies(Davies::new(a).with_b(b)))
+        }
         _ => Err("a Davies model with its `A` is needed".into()),
     }
 }
@@ -186,8 +193,10 @@ fn derived(ledger: &Ledger, check: &Check) -> Result<Reaction, String> {
     let derived = ledger.derive(reaction_of(check)?).map_err(text)?;
     if let Some(recipe) = &check.recipe {
         let uses = derived.constant().map_err(text)?.history.uses();
-        let found: BTreeMap<&str, Rational> = uses.iter().map(|(origin, n)| (origin.label.as_str(), *n)).collect();
-        let wanted: BTreeMap<&str, Rational> = recipe.iter().map(|(name, n)| (name.as_str(), (*n).into())).collect();
+        let found: BTreeMap<&str, Rational> =
+            uses.iter().map(|(origin, n)| (origin.label.as_str(), *n)).collect();
+        let wanted: BTreeMap<&str, Rational> =
+            recipe.iter().map(|(name, n)| (name.as_str(), (*n).into())).collect();
         if found != wanted {
             return Err(format!("the search found {found:?}, the recipe is {wanted:?}"));
         }
@@ -239,7 +248,8 @@ fn conditional_log_k(check: &Check, ionic_strength: f64) -> Result<f64, String> 
     let model = davies(check)?;
     let equation = Equation::parse(reaction_of(check)?).map_err(text)?;
     let ln_gamma = |species: &Species| model.ln_gamma(f64::from(species.charge()), ionic_strength);
-    let correction: f64 = equation.terms().iter().map(|(species, n)| rational::to_f64(*n) * ln_gamma(species)).sum();
+    let correction: f64 =
+        equation.terms().iter().map(|(species, n)| rational::to_f64(*n) * ln_gamma(species)).sum();
     if check.model.water_activity != Some(1.0) {
         return Err("the activity of water is held at 1 here".into());
     }
@@ -273,7 +283,8 @@ fn electron(given: &mut Given) -> Result<Answer, String> {
 /// The equilibrium of the sample after the steps.
 fn state(file: &File, check: &Check, given: &mut Given) -> Result<State, String> {
     let ledger = ledger(file, check)?;
-    let equilibrium = |sample: &Sample| equilibrate(sample, Some(&ledger), &Settings::default()).map_err(text);
+    let equilibrium =
+        |sample: &Sample| equilibrate(sample, Some(&ledger), &Settings::default()).map_err(text);
     let mut sample = Sample::read(entries(check, given)?).map_err(text)?;
     for step in &check.steps {
         let words: Vec<&str> = step.iter().map(String::as_str).collect();
@@ -321,7 +332,8 @@ fn entries(check: &Check, given: &mut Given) -> Result<BTreeMap<String, Value>, 
 
 /// A column such as `log10 f(CO2(g)) [atm]` in bar; `first` tells columns of one name apart.
 fn in_bar(column: &str, value: f64) -> Result<f64, String> {
-    let (name, unit) = column.strip_suffix(']').and_then(|column| column.split_once(" [")).ok_or_else(|| unknown(column))?;
+    let (name, unit) =
+        column.strip_suffix(']').and_then(|column| column.split_once(" [")).ok_or_else(|| unknown(column))?;
     let name = name.strip_prefix("first ").unwrap_or(name);
     let value = if name.starts_with("log10 f(") { 10_f64.powf(value) } else { value };
     let (unit, bar) = (Unit::parse(unit).map_err(text)?, Unit::parse("bar").map_err(text)?);

@@ -128,7 +128,11 @@ impl Check {
 
     fn case(&self, row: usize, entries: &[Entry]) -> Result<Case, String> {
         if entries.len() != self.columns.len() {
-            return Err(format!("row {row} has {} entries for {} columns", entries.len(), self.columns.len()));
+            return Err(format!(
+                "row {row} has {} entries for {} columns",
+                entries.len(),
+                self.columns.len()
+            ));
         }
         let mut case = Case { row, given: BTreeMap::new(), expected: vec![] };
         for (column, entry) in self.columns.iter().zip(entries) {
@@ -137,7 +141,8 @@ impl Check {
                 case.given.insert(column.clone(), value);
                 continue;
             }
-            let tolerance = self.tolerance.get(column).ok_or_else(|| format!("no tolerance for `{column}`"))?;
+            let tolerance =
+                self.tolerance.get(column).ok_or_else(|| format!("no tolerance for `{column}`"))?;
             let agreement = self.agreement.as_ref().and_then(|limits| limits.get(column));
             case.expected.push(Expected {
                 column: column.clone(),

@@ -223,7 +223,9 @@ impl Imbalance {
 impl fmt::Display for Imbalance {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let side = |difference: Rational| if difference > 0.into() { "left" } else { "right" };
-        let size = |difference: Rational| rational::text(if difference < 0.into() { -difference } else { difference });
+        let size = |difference: Rational| {
+            rational::text(if difference < 0.into() { -difference } else { difference })
+        };
         let mut faults: Vec<String> = self
             .elements
             .iter()
@@ -243,7 +245,10 @@ impl fmt::Display for Imbalance {
                     "1" => String::new(),
                     number => format!("{number} "),
                 };
-                format!("`{number}{species}` to the {} side", if *amount > 0.into() { "right" } else { "left" })
+                format!(
+                    "`{number}{species}` to the {} side",
+                    if *amount > 0.into() { "right" } else { "left" }
+                )
             })
             .collect();
         write!(f, "; add {}", additions.join(" and "))
@@ -315,7 +320,10 @@ mod tests {
     fn equations_are_read() {
         case("CO2(aq) + H2O <=> HCO3^- + H^+", "CO2(aq) + H2O <=> HCO3^- + H^+");
         case("CO2 + H2O = HCO3^- + H^+", "CO2(aq) + H2O <=> HCO3^- + H^+");
-        case("CaMg(CO3)2(dolomite) ⇌ Ca^2+ + Mg^2+ + 2CO3^2-", "CaMg(CO3)2(dolomite) <=> Ca^2+ + Mg^2+ + 2 CO3^2-");
+        case(
+            "CaMg(CO3)2(dolomite) ⇌ Ca^2+ + Mg^2+ + 2CO3^2-",
+            "CaMg(CO3)2(dolomite) <=> Ca^2+ + Mg^2+ + 2 CO3^2-",
+        );
         case("1/2 O2(g) + 2 H^+ + 2e^- <=> H2O", "0.5 O2(g) + 2 H^+ + 2 e^- <=> H2O");
         case("2 H2O <=> H2O + H^+ + OH^-", "H2O <=> H^+ + OH^-");
     }
@@ -342,9 +350,15 @@ mod tests {
             "`CaCO3(calcite) <=> Ca^2+` is not balanced: the right side is short of 1 C, the right side is short of 3 O, \
              the charges differ: the right side has +2 more",
         );
-        fault("CO2(aq)", "`CO2(aq)` needs one arrow between its sides: write `A + B <=> C` (`⇌` and `=` are read too)");
+        fault(
+            "CO2(aq)",
+            "`CO2(aq)` needs one arrow between its sides: write `A + B <=> C` (`⇌` and `=` are read too)",
+        );
         fault("H2O <=> ", "the right side of `H2O <=>` is empty");
-        fault("1/0 H2O <=> H^+ + OH^-", "`1/0` is no coefficient: write `2`, `0.5` or `1/2` before the formula");
+        fault(
+            "1/0 H2O <=> H^+ + OH^-",
+            "`1/0` is no coefficient: write `2`, `0.5` or `1/2` before the formula",
+        );
         fault("H^+ <=> H^+", "nothing is left of the equation: its species cancel");
     }
 

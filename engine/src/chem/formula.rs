@@ -166,7 +166,11 @@ impl Species {
     /// Molar mass in g/mol; `None` if an element has no standard atomic weight.
     #[must_use]
     pub fn molar_mass(&self) -> Option<f64> {
-        self.0.composition.iter().map(|(element, count)| Some(element.mass()? * rational::to_f64(*count))).sum()
+        self.0
+            .composition
+            .iter()
+            .map(|(element, count)| Some(element.mass()? * rational::to_f64(*count)))
+            .sum()
     }
 
     /// Whether it is dissolved: an ion or a neutral solute, not water and not the electron.
@@ -256,7 +260,11 @@ pub fn pretty(ascii: &str) -> String {
             }
             '*' => '·',
             '+' | '-' | '0'..='9' if charge => superscript(c),
-            '0'..='9' if previous.is_ascii_alphabetic() || previous == ')' || is_subscript(written.chars().last()) => {
+            '0'..='9'
+                if previous.is_ascii_alphabetic()
+                    || previous == ')'
+                    || is_subscript(written.chars().last()) =>
+            {
                 subscript(c)
             }
             _ => c,
@@ -350,13 +358,21 @@ impl<'a> Reader<'a> {
         let charge = self.charge(formula_end)?;
         let state = self.state()?;
         if !self.rest().is_empty() {
-            return Err(self.unreadable("an element, a charge such as `^2+`, or a state such as `(aq)` could stand here"));
+            return Err(self.unreadable(
+                "an element, a charge such as `^2+`, or a state such as `(aq)` could stand here",
+            ));
         }
         Ok(self.finish(composition, formula_end, charge, state))
     }
 
     /// Completes what the notation leaves unsaid: solutes are aqueous, water is liquid.
-    fn finish(&self, composition: Composition, formula_end: usize, charge: i32, state: Option<State>) -> Species {
+    fn finish(
+        &self,
+        composition: Composition,
+        formula_end: usize,
+        charge: i32,
+        state: Option<State>,
+    ) -> Species {
         let formula = &self.text[..formula_end];
         let is_water = formula == "H2O" && charge == 0;
         let state = match state {
@@ -532,7 +548,11 @@ mod tests {
         let species = Species::parse(text).unwrap();
         let counts: Vec<String> =
             species.composition().iter().map(|(e, n)| format!("{e}{}", rational::text(*n))).collect();
-        assert_eq!((species.key(), species.charge(), counts.join(" ").as_str()), (key, charge, composition), "{text}");
+        assert_eq!(
+            (species.key(), species.charge(), counts.join(" ").as_str()),
+            (key, charge, composition),
+            "{text}"
+        );
     }
 
     #[test]
@@ -550,7 +570,12 @@ mod tests {
         case("CaCO3(calcite)", "CaCO3(calcite)", 0, "C1 O3 Ca1");
         case("CaSO4·2H2O(gypsum)", "CaSO4*2H2O(gypsum)", 0, "H4 O6 S1 Ca1");
         case("CaMg(CO3)2(dolomite)", "CaMg(CO3)2(dolomite)", 0, "C2 O6 Mg1 Ca1");
-        case("Fe8O8(OH)4.5(SO4)1.75(schwertmannite)", "Fe8O8(OH)4.5(SO4)1.75(schwertmannite)", 0, "H4.5 O19.5 S1.75 Fe8");
+        case(
+            "Fe8O8(OH)4.5(SO4)1.75(schwertmannite)",
+            "Fe8O8(OH)4.5(SO4)1.75(schwertmannite)",
+            0,
+            "H4.5 O19.5 S1.75 Fe8",
+        );
         case("Fe2(OH)2^4+", "Fe2(OH)2^4+", 4, "H2 O2 Fe2");
         case("Mg2Si3O7.5(OH)*3H2O(sepiolite)", "Mg2Si3O7.5(OH)*3H2O(sepiolite)", 0, "H7 O11.5 Mg2 Si3");
         case("Fe(CN)6^3-", "Fe(CN)6^3-", -3, "C6 N6 Fe1");

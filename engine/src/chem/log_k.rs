@@ -405,9 +405,16 @@ mod tests {
     #[test]
     fn sums_hold_in_the_common_range() {
         let range = |a, b| Range { lowest: celsius(a), highest: celsius(b) };
-        let sum = calcite().within(range(0.0, 90.0)).plus(&calcite().times(2.into()).within(range(5.0, 80.0))).unwrap();
+        let sum = calcite()
+            .within(range(0.0, 90.0))
+            .plus(&calcite().times(2.into()).within(range(5.0, 80.0)))
+            .unwrap();
         assert_eq!(sum.range(), Some(range(5.0, 80.0)));
-        assert_abs_diff_eq!(sum.at(celsius(25.0)).unwrap(), 3.0 * calcite().at(celsius(25.0)).unwrap(), epsilon = 1e-10);
+        assert_abs_diff_eq!(
+            sum.at(celsius(25.0)).unwrap(),
+            3.0 * calcite().at(celsius(25.0)).unwrap(),
+            epsilon = 1e-10
+        );
         assert_abs_diff_eq!(sum.outside(celsius(90.0)), 10.0, epsilon = 1e-9);
         assert_abs_diff_eq!(sum.outside(celsius(80.0)), 0.0);
     }
@@ -416,7 +423,10 @@ mod tests {
     fn one_temperature_is_not_stretched() {
         let only = LogK::only(-0.25, celsius(25.0));
         assert_eq!(only.at(celsius(25.0)), Ok(-0.25));
-        assert_eq!(only.at(celsius(10.0)).unwrap_err().to_string(), "known at 25.00 degC only, not at 10.00 degC");
+        assert_eq!(
+            only.at(celsius(10.0)).unwrap_err().to_string(),
+            "known at 25.00 degC only, not at 10.00 degC"
+        );
         assert!(only.plus(&calcite()).is_err());
         assert!(only.plus(&calcite().frozen_at(celsius(25.0)).unwrap()).is_ok());
         assert_eq!(only.enthalpy(celsius(25.0)), None);

@@ -57,7 +57,9 @@ pub enum ReactionError {
     #[error("`{0}` has no constant: give it one, as in `reaction(\"{0}\", #{{ log_k: -6.35 }})`")]
     NoConstant(String),
     /// The constant says nothing at the temperature asked for.
-    #[error("log K of `{equation}` is {why}; give it an `enthalpy` or `log_k_terms`, or use `.at(\"25 degC\")`")]
+    #[error(
+        "log K of `{equation}` is {why}; give it an `enthalpy` or `log_k_terms`, or use `.at(\"25 degC\")`"
+    )]
     Temperature {
         /// The reaction.
         equation: String,
@@ -167,7 +169,8 @@ impl Reaction {
     pub fn log_k_at(&self, temperature: Temperature) -> Result<Quantity, ReactionError> {
         let constant = self.constant()?;
         let value = constant.log_k.at(temperature);
-        let value = value.map_err(|why| ReactionError::Temperature { equation: self.equation.to_string(), why })?;
+        let value =
+            value.map_err(|why| ReactionError::Temperature { equation: self.equation.to_string(), why })?;
         Ok(Quantity::from_parts(value, Unit::one(), constant.history.parts()))
     }
 
@@ -257,7 +260,12 @@ impl Reaction {
     }
 
     /// A reaction without gases goes with any gas standard.
-    fn common_conditions(&self, left: &Constant, other: &Self, right: &Constant) -> Result<Conditions, ReactionError> {
+    fn common_conditions(
+        &self,
+        left: &Constant,
+        other: &Self,
+        right: &Constant,
+    ) -> Result<Conditions, ReactionError> {
         let (a, b) = (left.conditions.gas_standard, right.conditions.gas_standard);
         match (self.has_gas(), other.has_gas()) {
             (true, true) if a != b => Err(ReactionError::GasStandards {
@@ -283,7 +291,8 @@ impl Reaction {
     pub fn at(&self, temperature: Temperature) -> Result<Self, ReactionError> {
         let constant = self.constant()?;
         let log_k = constant.log_k.frozen_at(temperature);
-        let log_k = log_k.map_err(|why| ReactionError::Temperature { equation: self.equation.to_string(), why })?;
+        let log_k =
+            log_k.map_err(|why| ReactionError::Temperature { equation: self.equation.to_string(), why })?;
         let constant = Constant { log_k, temperature, ..constant.clone() };
         Ok(Self { equation: self.equation.clone(), constant: Some(constant) })
     }
@@ -302,7 +311,8 @@ impl Reaction {
         if let Some(range) = constant.log_k.range() {
             log_k = log_k.within(range);
         }
-        let history = constant.history.converted(format!("enthalpy of reaction assumed: {kilojoules} kJ/mol"));
+        let history =
+            constant.history.converted(format!("enthalpy of reaction assumed: {kilojoules} kJ/mol"));
         Ok(Self::of(self.equation.clone(), Constant { log_k, history, ..constant.clone() }))
     }
 
@@ -372,7 +382,10 @@ impl Statement {
             value: read_value(&mut options)?,
             enthalpy: options.quantity("enthalpy", Kind::Energy)?,
             heat_capacity: options.quantity("heat_capacity", Kind::Entropy)?,
-            temperature: options.take("temperature").map(|value| temperature("temperature", value)).transpose()?,
+            temperature: options
+                .take("temperature")
+                .map(|value| temperature("temperature", value))
+                .transpose()?,
             value_at: options.take("value_at").map(read_value_at).transpose()?,
             sigma: read_sigma(&mut options)?,
             range: options.take("range").map(read_range).transpose()?,
@@ -396,7 +409,8 @@ impl Statement {
         let Some(value) = self.value.take() else {
             return match self.given_without_value() {
                 Some(key) => {
-                    let message = format!("`{key}` needs a constant beside it: give `log_k`, `log_k_terms` or `gibbs`");
+                    let message =
+                        format!("`{key}` needs a constant beside it: give `log_k`, `log_k_terms` or `gibbs`");
                     Err(KeyFault::new(key, message).into())
                 }
                 None => Ok(None),
@@ -405,7 +419,8 @@ impl Statement {
         let (mut log_k, parts, stated) = match value {
             Stated::Terms(terms) => {
                 if self.enthalpy.is_some() || self.heat_capacity.is_some() {
-                    let message = "`log_k_terms` already fix the enthalpy: leave `enthalpy` and `heat_capacity` out";
+                    let message =
+                        "`log_k_terms` already fix the enthalpy: leave `enthalpy` and `heat_capacity` out";
                     return Err(KeyFault::new("log_k_terms", message).into());
                 }
                 let log_k = LogK::function(&terms);
@@ -421,7 +436,8 @@ impl Statement {
                 let factor = -1.0 / (R_KJ * temperature.kelvin() * LN_10);
                 let gibbs = gibbs.to(&Kind::Energy.default_unit()).expect("checked to be an energy");
                 let parts = gibbs.parts().iter().map(|part| part.scaled(factor)).collect();
-                let stated = format!("Gibbs energy {} kJ/mol at {} degC", gibbs.value(), temperature.celsius());
+                let stated =
+                    format!("Gibbs energy {} kJ/mol at {} degC", gibbs.value(), temperature.celsius());
                 (self.at_temperature(gibbs.value() * factor, temperature), parts, stated)
             }
         };
@@ -463,7 +479,8 @@ impl Statement {
             (None, None) => LogK::only(value, temperature),
             (enthalpy, heat_capacity) => {
                 let enthalpy = enthalpy.as_ref().map_or(0.0, |q| kilojoule(q, Kind::Energy));
-                let heat_capacity = heat_capacity.as_ref().map_or(0.0, |q| kilojoule(q, Kind::Entropy) / 1000.0);
+                let heat_capacity =
+                    heat_capacity.as_ref().map_or(0.0, |q| kilojoule(q, Kind::Entropy) / 1000.0);
                 LogK::van_t_hoff(value, temperature, enthalpy, heat_capacity)
             }
         }
@@ -512,12 +529,13 @@ fn own_sigma(parts: &[Part]) -> Option<f64> {
 
 fn read_value(options: &mut Named) -> Result<Option<Stated>, KeyFault> {
     let mut given: Vec<(&'static str, Stated)> = Vec::new();
-    let mut log_k_of = |options: &mut Named, key: &'static str, log_k: fn(&Quantity) -> Result<Quantity, String>| {
-        let Some(quantity) = options.quantity(key, Kind::Fraction)? else { return Ok(()) };
-        let value = log_k(&quantity).map_err(|why| KeyFault::new(key, format!("`{key}` {why}")))?;
-        given.push((key, Stated::LogK(key, value)));
-        Ok::<(), KeyFault>(())
-    };
+    let mut log_k_of =
+        |options: &mut Named, key: &'static str, log_k: fn(&Quantity) -> Result<Quantity, String>| {
+            let Some(quantity) = options.quantity(key, Kind::Fraction)? else { return Ok(()) };
+            let value = log_k(&quantity).map_err(|why| KeyFault::new(key, format!("`{key}` {why}")))?;
+            given.push((key, Stated::LogK(key, value)));
+            Ok::<(), KeyFault>(())
+        };
     log_k_of(options, "log_k", |q| Ok(q.clone()))?;
     log_k_of(options, "pk", |q| Ok(-q))?;
     log_k_of(options, "ln_k", |q| (q / LN_10).map_err(|error| error.to_string()))?;
@@ -540,13 +558,21 @@ fn read_terms(value: Value) -> Result<Vec<(Term, f64)>, KeyFault> {
     let fault = |message: String| KeyFault::new("log_k_terms", message);
     let known = Term::ALL.map(Term::written);
     let Value::Map(map) = value else {
-        return Err(fault(format!("`log_k_terms` takes a map of terms, not {}: the terms are {}", value.kind(), list(&known))));
+        return Err(fault(format!(
+            "`log_k_terms` takes a map of terms, not {}: the terms are {}",
+            value.kind(),
+            list(&known)
+        )));
     };
     let mut terms = Vec::new();
     for (key, value) in map {
         let Some((term, factor)) = Term::parse(&key) else {
-            let help = nearest(&key, known).map(|close| format!("; did you mean `{close}`?")).unwrap_or_default();
-            return Err(fault(format!("`{key}` is no term of log K: the terms are {} and `ln(T)`{help}", list(&known))));
+            let help =
+                nearest(&key, known).map(|close| format!("; did you mean `{close}`?")).unwrap_or_default();
+            return Err(fault(format!(
+                "`{key}` is no term of log K: the terms are {} and `ln(T)`{help}",
+                list(&known)
+            )));
         };
         let Value::Number(coefficient) = value else {
             return Err(fault(format!("the coefficient of `{key}` must be a number, not {}", value.kind())));
@@ -557,7 +583,9 @@ fn read_terms(value: Value) -> Result<Vec<(Term, f64)>, KeyFault> {
 }
 
 fn read_value_at(value: Value) -> Result<(Temperature, f64), KeyFault> {
-    let fault = || KeyFault::new("value_at", "`value_at` takes a temperature and log K there: `[\"25 degC\", -8.48]`");
+    let fault = || {
+        KeyFault::new("value_at", "`value_at` takes a temperature and log K there: `[\"25 degC\", -8.48]`")
+    };
     let Value::List(values) = value else { return Err(fault()) };
     let Ok([at, Value::Number(expected)]) = <[Value; 2]>::try_from(values) else { return Err(fault()) };
     Ok((temperature("value_at", at)?, expected))
@@ -580,17 +608,22 @@ fn check_typing(log_k: &LogK, at: Temperature, expected: f64) -> Result<(), KeyF
 
 fn read_sigma(options: &mut Named) -> Result<Option<f64>, KeyFault> {
     match options.number("sigma")? {
-        Some(sigma) if sigma < 0.0 => {
-            Err(KeyFault::new("sigma", format!("`sigma` is a standard uncertainty and cannot be negative: {sigma}")))
-        }
+        Some(sigma) if sigma < 0.0 => Err(KeyFault::new(
+            "sigma",
+            format!("`sigma` is a standard uncertainty and cannot be negative: {sigma}"),
+        )),
         sigma => Ok(sigma),
     }
 }
 
 fn read_range(value: Value) -> Result<Range, KeyFault> {
-    let fault = |message: &str| KeyFault::new("range", format!("`range` {message}: write `[\"0 degC\", \"90 degC\"]`"));
+    let fault = |message: &str| {
+        KeyFault::new("range", format!("`range` {message}: write `[\"0 degC\", \"90 degC\"]`"))
+    };
     let Value::List(values) = value else { return Err(fault("takes two temperatures")) };
-    let Ok([lowest, highest]) = <[Value; 2]>::try_from(values) else { return Err(fault("takes two temperatures")) };
+    let Ok([lowest, highest]) = <[Value; 2]>::try_from(values) else {
+        return Err(fault("takes two temperatures"));
+    };
     let (lowest, highest) = (temperature("range", lowest)?, temperature("range", highest)?);
     if lowest.kelvin() > highest.kelvin() {
         return Err(fault("starts above its end"));
@@ -609,7 +642,10 @@ fn read_conditions(options: &mut Named) -> Result<Conditions, KeyFault> {
 fn read_provenance(options: &mut Named) -> Result<Provenance, KeyFault> {
     let Some(word) = options.text("provenance")? else { return Ok(Provenance::default()) };
     Provenance::parse(&word).ok_or_else(|| {
-        KeyFault::new("provenance", format!("`{word}` is no provenance: it is `read`, `computed`, `memory` or `stated`"))
+        KeyFault::new(
+            "provenance",
+            format!("`{word}` is no provenance: it is `read`, `computed`, `memory` or `stated`"),
+        )
     })
 }
 

@@ -33,8 +33,10 @@ impl ZeroLevel {
     #[must_use]
     pub fn at(ledger: &Ledger, ph: f64) -> Self {
         let formations = ledger.formations();
-        let log_k: Vec<f64> =
-            ledger.reactions().map(|(_, r)| r.constant().map_or(0.0, |c| c.log_k.nearest_to(Temperature::REFERENCE).0)).collect();
+        let log_k: Vec<f64> = ledger
+            .reactions()
+            .map(|(_, r)| r.constant().map_or(0.0, |c| c.log_k.nearest_to(Temperature::REFERENCE).0))
+            .collect();
         let proton = formations.component(&Species::proton());
         let protons = 0..formations.components.len();
         let protons = protons.map(|component| carried(formations, component, proton, &log_k, ph)).collect();
@@ -55,7 +57,13 @@ impl ZeroLevel {
     }
 }
 
-fn carried(formations: &Formations, component: usize, proton: Option<usize>, log_k: &[f64], ph: f64) -> Rational {
+fn carried(
+    formations: &Formations,
+    component: usize,
+    proton: Option<usize>,
+    log_k: &[f64],
+    ph: f64,
+) -> Rational {
     let Some(proton) = proton else { return 0.into() };
     let species = &formations.components[component];
     let is_metal_ion = species.charge() > 0 && species.count(Element::H) == 0.into();
@@ -72,7 +80,8 @@ fn carried(formations: &Formations, component: usize, proton: Option<usize>, log
         let formation: f64 = formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum();
         formation - ph * rational::to_f64(formed.coefficient(proton))
     };
-    let dominant = formations.species.iter().filter(of_this_alone).max_by(|a, b| abundance(a).total_cmp(&abundance(b)));
+    let dominant =
+        formations.species.iter().filter(of_this_alone).max_by(|a, b| abundance(a).total_cmp(&abundance(b)));
     dominant.map_or_else(|| 0.into(), |formed| formed.coefficient(proton))
 }
 

@@ -93,7 +93,9 @@ pub fn analyse(
     let (totals, converged) = match &measured.make_up {
         None => analysis.solve(&totals)?,
         Some(key) => {
-            let carrier = given[measured.amounts.iter().position(|(_, own, _)| own == key).expect("checked on entry")].0;
+            let carrier = given
+                [measured.amounts.iter().position(|(_, own, _)| own == key).expect("checked on entry")]
+            .0;
             analysis.made_up(&totals, position(&system, carrier), key, &mut notes)?
         }
     };
@@ -113,7 +115,11 @@ pub fn analyse(
 /// # Errors
 ///
 /// Returns a species that the ledger does not know.
-pub fn restore(sample: &Sample, dissolved: &[(Species, f64)], ledger: &Ledger) -> Result<Analysed, EquilibriumError> {
+pub fn restore(
+    sample: &Sample,
+    dissolved: &[(Species, f64)],
+    ledger: &Ledger,
+) -> Result<Analysed, EquilibriumError> {
     let formations = ledger.formations();
     let mut present = treatment_components(sample, ledger)?;
     let mut given: Vec<(usize, f64)> = Vec::new();
@@ -147,7 +153,8 @@ fn solution(measured: &Measured, sample: &Sample) -> Solution {
     });
     // Alkalinity and carbon are counted as hydrogencarbonate, 61 g/mol, which most of either is.
     let evidence = measured.evidence.alkalinity.iter().chain(&measured.evidence.dic).next();
-    let carbonate = evidence.map_or(0.0, |amount| 61.017 * amount.moles.value() * amount.per.to_litre(water_density));
+    let carbonate =
+        evidence.map_or(0.0, |amount| 61.017 * amount.moles.value() * amount.per.to_litre(water_density));
     let dissolved = (grams.sum::<f64>() + carbonate).max(0.0) / 1000.0;
     match measured.density {
         Some(density) => Solution { density, dissolved },
@@ -190,19 +197,30 @@ fn carrier(
     let candidates = carriers(formations, element);
     let state_of = |j: usize| oxidation_state(&formations.components[j], element);
     match (candidates.as_slice(), analyte.oxidation_state()) {
-        ([], _) => Err(fault(format!("the ledger has no species of {element}; give it one with `.with_reaction`"))),
+        ([], _) => {
+            Err(fault(format!("the ledger has no species of {element}; give it one with `.with_reaction`")))
+        }
         ([one], None) => Ok(*one),
         (several, None) => {
             let common = COMMON_STATES.iter().find(|(symbol, _)| *symbol == element.symbol());
             let wanted = common.map(|(_, state)| Rational::from_integer(*state));
             let found = several.iter().find(|j| wanted.is_some() && state_of(**j) == wanted);
-            let found = found.ok_or_else(|| fault(format!("{element} occurs in several oxidation states: name one, as in `{element}(II)`")))?;
-            notes.push(format!("{key} is taken as {element}({})", to_roman(common.map_or(0, |(_, state)| *state as i32))));
+            let found = found.ok_or_else(|| {
+                fault(format!(
+                    "{element} occurs in several oxidation states: name one, as in `{element}(II)`"
+                ))
+            })?;
+            notes.push(format!(
+                "{key} is taken as {element}({})",
+                to_roman(common.map_or(0, |(_, state)| *state as i32))
+            ));
             Ok(*found)
         }
-        (several, wanted) => several.iter().copied().find(|j| state_of(*j) == wanted || state_of(*j).is_none()).ok_or_else(|| {
-            fault(format!("the ledger has no species of {element} in this oxidation state"))
-        }),
+        (several, wanted) => {
+            several.iter().copied().find(|j| state_of(*j) == wanted || state_of(*j).is_none()).ok_or_else(
+                || fault(format!("the ledger has no species of {element} in this oxidation state")),
+            )
+        }
     }
 }
 
@@ -214,15 +232,20 @@ fn present_components(
     given: &[(usize, f64)],
 ) -> Result<BTreeSet<usize>, EquilibriumError> {
     let formations = ledger.formations();
-    let mut present: BTreeSet<usize> = given.iter().filter(|(_, moles)| *moles > 0.0).map(|(j, _)| *j).collect();
+    let mut present: BTreeSet<usize> =
+        given.iter().filter(|(_, moles)| *moles > 0.0).map(|(j, _)| *j).collect();
     present.extend(given.iter().map(|(j, _)| *j));
     present.extend(formations.component(&Species::proton()));
     let evidence = &measured.evidence;
     if evidence.alkalinity.is_some() || evidence.dic.is_some() || evidence.co2.is_some() {
         let carbon = carriers(formations, Element::C);
         if carbon.is_empty() {
-            let why = "the ledger has no species of C: alkalinity, DIC and CO2 mean nothing in it".to_string();
-            return Err(EquilibriumError::Analyte { key: evidence.given().last().copied().unwrap_or("C").into(), why });
+            let why =
+                "the ledger has no species of C: alkalinity, DIC and CO2 mean nothing in it".to_string();
+            return Err(EquilibriumError::Analyte {
+                key: evidence.given().last().copied().unwrap_or("C").into(),
+                why,
+            });
         }
         present.extend(carbon.first());
     }
@@ -275,10 +298,18 @@ struct Analysis<'a> {
 type Solved = (Vec<f64>, Converged);
 
 impl<'a> Analysis<'a> {
-    fn new(system: &'a System, measured: &'a Measured, solution: &Solution, settings: &'a Settings, sample: &Sample) -> Self {
+    fn new(
+        system: &'a System,
+        measured: &'a Measured,
+        solution: &Solution,
+        settings: &'a Settings,
+        sample: &Sample,
+    ) -> Self {
         let evidence = &measured.evidence;
         let level = ZeroLevel::at(system.ledger(), ALKALINITY_PH);
-        let moles = |amount: &crate::water::concentration::Amount| amount.moles.value() * amount.per.to_water(solution);
+        let moles = |amount: &crate::water::concentration::Amount| {
+            amount.moles.value() * amount.per.to_water(solution)
+        };
         let carbon = carriers(system.ledger().formations(), Element::C);
         Self {
             system,
@@ -288,7 +319,9 @@ impl<'a> Analysis<'a> {
             proton: system.proton(),
             carbon: carbon.first().and_then(|j| system.components().iter().position(|own| own == j)),
             protons: system.components().iter().map(|j| rational::to_f64(level.of_component(*j))).collect(),
-            charges: (0..system.n_components()).map(|k| f64::from(system.component_species(k).charge())).collect(),
+            charges: (0..system.n_components())
+                .map(|k| f64::from(system.component_species(k).charge()))
+                .collect(),
             alkalinity: evidence.alkalinity.as_ref().map(moles),
             dic: evidence.dic.as_ref().map(moles),
             ph: match &evidence.ph {
@@ -316,7 +349,12 @@ impl<'a> Analysis<'a> {
                 if electroneutral {
                     totals[self.proton] = self.neutral_protons(&totals);
                 }
-                self.solve_with(&totals, (!electroneutral).then_some(self.ph).flatten(), self.co2_if(co2), None)
+                self.solve_with(
+                    &totals,
+                    (!electroneutral).then_some(self.ph).flatten(),
+                    self.co2_if(co2),
+                    None,
+                )
             }
             (false, true, false, true) if self.carbon.is_some() => {
                 totals[self.proton] = self.protons_from_alkalinity(&totals);
@@ -392,7 +430,11 @@ impl<'a> Analysis<'a> {
     }
 
     /// Total carbon from alkalinity, at the measured pH or at electroneutrality.
-    fn carbon_from_alkalinity(&self, totals: &[f64], electroneutral: bool) -> Result<Solved, EquilibriumError> {
+    fn carbon_from_alkalinity(
+        &self,
+        totals: &[f64],
+        electroneutral: bool,
+    ) -> Result<Solved, EquilibriumError> {
         let carbon = self.carbon.expect("an alkalinity brings carbon in");
         let target = self.alkalinity.expect("alkalinity is used");
         let mut last: Option<Solved> = None;
@@ -403,7 +445,12 @@ impl<'a> Analysis<'a> {
                 totals[self.proton] = self.neutral_protons(&totals);
             }
             let warm = last.as_ref().map(|(_, converged)| converged.warm.clone());
-            let solved = self.solve_with(&totals, (!electroneutral).then_some(self.ph).flatten(), None, warm.as_ref())?;
+            let solved = self.solve_with(
+                &totals,
+                (!electroneutral).then_some(self.ph).flatten(),
+                None,
+                warm.as_ref(),
+            )?;
             let miss = self.alkalinity_of(&solved.0) - target;
             last = Some(solved);
             Ok::<f64, EquilibriumError>(miss)
@@ -467,7 +514,13 @@ impl<'a> Analysis<'a> {
     }
 
     /// Lets one total absorb the charge misfit.
-    fn made_up(&self, totals: &[f64], k: usize, key: &str, notes: &mut Vec<String>) -> Result<Solved, EquilibriumError> {
+    fn made_up(
+        &self,
+        totals: &[f64],
+        k: usize,
+        key: &str,
+        notes: &mut Vec<String>,
+    ) -> Result<Solved, EquilibriumError> {
         let mut last: Option<Solved> = None;
         let mut misfit = |total: f64| {
             let mut totals = totals.to_vec();
@@ -487,7 +540,10 @@ impl<'a> Analysis<'a> {
             )));
         };
         misfit(root.x)?;
-        notes.push(format!("{key} was changed by {:+.4e} mol/kg(water) to make the charges add up", root.x - totals[k]));
+        notes.push(format!(
+            "{key} was changed by {:+.4e} mol/kg(water) to make the charges add up",
+            root.x - totals[k]
+        ));
         Ok(last.expect("solved at the root"))
     }
 
@@ -539,6 +595,7 @@ pub(super) fn delivered(problem: &Problem, converged: &Converged) -> Vec<f64> {
 
 /// ln of the activity product of a row over its constant.
 pub(super) fn ln_saturation(row: &Row, converged: &Converged) -> f64 {
-    let components: f64 = row.stoichiometry.iter().map(|(k, nu)| rational::to_f64(*nu) * converged.ln_a[*k]).sum();
+    let components: f64 =
+        row.stoichiometry.iter().map(|(k, nu)| rational::to_f64(*nu) * converged.ln_a[*k]).sum();
     row.ln_k + components + row.water * converged.ln_water_activity
 }

@@ -47,7 +47,11 @@ impl System {
     /// # Errors
     ///
     /// [`EquilibriumError::Misclosure`] if two routes to one constant disagree.
-    pub fn new(ledger: &Ledger, present: &BTreeSet<usize>, temperature: Temperature) -> Result<Self, EquilibriumError> {
+    pub fn new(
+        ledger: &Ledger,
+        present: &BTreeSet<usize>,
+        temperature: Temperature,
+    ) -> Result<Self, EquilibriumError> {
         let formations = ledger.formations();
         let water = formations.component(&Species::water());
         let components: Vec<usize> = present.iter().copied().filter(|j| Some(*j) != water).collect();
@@ -58,9 +62,11 @@ impl System {
         };
         let row_of = |formed: &Formation| row(formed, &components, water, &log_k);
         let formed = formations.species.iter().enumerate().filter(|(_, formed)| is_present(formed));
-        let (solutes, others): (Vec<_>, Vec<_>) =
-            formed.map(|(index, formed)| (index, row_of(formed))).partition(|(i, _)| formations.species[*i].species.is_solute());
-        let phases = others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
+        let (solutes, others): (Vec<_>, Vec<_>) = formed
+            .map(|(index, formed)| (index, row_of(formed)))
+            .partition(|(i, _)| formations.species[*i].species.is_solute());
+        let phases =
+            others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
         let model = model(ledger.activity(), temperature);
         Ok(Self { ledger: ledger.clone(), temperature, components, solutes, phases, model, doubts })
     }

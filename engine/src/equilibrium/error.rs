@@ -41,7 +41,9 @@ pub enum EquilibriumError {
         misclosure: f64,
     },
     /// No composition has these totals.
-    #[error("no composition has these totals: {combination} is {value:.3e} mol/kg(water), which no species and no solid can give it")]
+    #[error(
+        "no composition has these totals: {combination} is {value:.3e} mol/kg(water), which no species and no solid can give it"
+    )]
     Infeasible {
         /// The combination of totals.
         combination: String,
@@ -49,7 +51,9 @@ pub enum EquilibriumError {
         value: f64,
     },
     /// A solid would form without end.
-    #[error("`{solid}` would form without end: its surroundings supply all it is made of and keep it supersaturated")]
+    #[error(
+        "`{solid}` would form without end: its surroundings supply all it is made of and keep it supersaturated"
+    )]
     Unbounded {
         /// The solid.
         solid: String,
@@ -84,7 +88,8 @@ impl EquilibriumError {
                         factor => format!("{factor} {total}"),
                     }
                 };
-                let combination = combination.iter().map(term).collect::<Vec<_>>().join(" + ").replace("+ -", "- ");
+                let combination =
+                    combination.iter().map(term).collect::<Vec<_>>().join(" + ").replace("+ -", "- ");
                 Self::Infeasible { combination, value }
             }
             SolveError::Unbounded { mineral_idx } => Self::Unbounded { solid: name(solids, mineral_idx) },

@@ -26,7 +26,11 @@ use crate::water::{Analysis, Sample};
 /// # Errors
 ///
 /// Returns what the ledger does not know, what the analysis leaves open, or why there is no equilibrium.
-pub fn equilibrate(sample: &Sample, ledger: Option<&Ledger>, settings: &Settings) -> Result<State, EquilibriumError> {
+pub fn equilibrate(
+    sample: &Sample,
+    ledger: Option<&Ledger>,
+    settings: &Settings,
+) -> Result<State, EquilibriumError> {
     let ledger = match ledger.or(sample.ledger()) {
         Some(ledger) => ledger.clone(),
         None => shipped::ledger("freshwater", None)?,

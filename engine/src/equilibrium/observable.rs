@@ -169,7 +169,10 @@ impl Asked {
         let (body, unit) = match text.strip_suffix(']').and_then(|text| text.rsplit_once('[')) {
             Some((body, unit)) => {
                 let unit = Unit::parse(unit.trim());
-                (body.trim(), Some(unit.map_err(|error| ObservableError::Unit { asked: text.into(), error })?))
+                (
+                    body.trim(),
+                    Some(unit.map_err(|error| ObservableError::Unit { asked: text.into(), error })?),
+                )
             }
             None => (text, None),
         };

@@ -113,15 +113,22 @@ impl State {
     /// A solid in `keep` that is not there.
     pub fn sample(&self, keep: &[&str]) -> Result<Sample, EquilibriumError> {
         let system = self.system();
-        let mut totals: Vec<(Species, f64)> =
-            self.0.dissolved.iter().enumerate().map(|(k, total)| (system.component_species(k).clone(), *total)).collect();
+        let mut totals: Vec<(Species, f64)> = self
+            .0
+            .dissolved
+            .iter()
+            .enumerate()
+            .map(|(k, total)| (system.component_species(k).clone(), *total))
+            .collect();
         for name in keep {
             let solid = system.ledger().find_phase(name)?;
             let found = self.0.outcome.solids.iter().find(|(species, _)| species == solid);
-            let (_, amount) = found.ok_or_else(|| EquilibriumError::Unreachable(format!("`{name}` is not there to keep")))?;
+            let (_, amount) = found
+                .ok_or_else(|| EquilibriumError::Unreachable(format!("`{name}` is not there to keep")))?;
             totals.push((solid.clone(), amount.max(0.0)));
         }
-        let setting = Setting { temperature: self.temperature(), pressure: self.pressure(), ..self.0.sample.setting() };
+        let setting =
+            Setting { temperature: self.temperature(), pressure: self.pressure(), ..self.0.sample.setting() };
         let name = self.0.sample.name().map(str::to_string);
         Ok(Sample::dissolved(name, setting, totals, system.ledger().clone()))
     }
@@ -158,7 +165,8 @@ impl State {
         let inner = &*self.0;
         let system = self.system();
         let converged = &inner.outcome.converged;
-        let plain = |value: f64, unit: &'static str| Ok(Answer { value, unit, molar_mass: None, element: None });
+        let plain =
+            |value: f64, unit: &'static str| Ok(Answer { value, unit, molar_mass: None, element: None });
         match observable {
             Observable::Ph => plain(-converged.ln_a[system.proton()] / LN_10, "1"),
             Observable::Temperature => plain(self.temperature().celsius(), "degC"),
@@ -170,7 +178,12 @@ impl State {
             Observable::Dic => self.total("C", asked),
             Observable::Hardness => {
                 let (calcium, magnesium) = (self.element_total("Ca"), self.element_total("Mg"));
-                Ok(Answer { value: calcium + magnesium, unit: "mol/kg(water)", molar_mass: None, element: None })
+                Ok(Answer {
+                    value: calcium + magnesium,
+                    unit: "mol/kg(water)",
+                    molar_mass: None,
+                    element: None,
+                })
             }
             Observable::ChargeError => {
                 let (cations, anions) = self.charges();
@@ -181,8 +194,14 @@ impl State {
                 plain(cations - anions, "eq/kg(water)")
             }
             Observable::CarbonatePotential => {
-                let potential = self.carbonate_potential().map_err(|why| no_answer(asked, why.to_string()))?;
-                Ok(Answer { value: potential, unit: "mol/kg(water)", molar_mass: Some(100.086), element: None })
+                let potential =
+                    self.carbonate_potential().map_err(|why| no_answer(asked, why.to_string()))?;
+                Ok(Answer {
+                    value: potential,
+                    unit: "mol/kg(water)",
+                    molar_mass: Some(100.086),
+                    element: None,
+                })
             }
             Observable::Molality(name) => {
                 let (k, formed) = self.solute(name, asked)?;
@@ -214,7 +233,9 @@ impl State {
             }
             Observable::SaturationIndex(name) => plain(self.ln_omega(name, asked)? / LN_10, "1"),
             Observable::Omega(name) => plain(self.ln_omega(name, asked)?.exp(), "1"),
-            Observable::Fugacity(name) | Observable::PartialPressure(name) => plain(self.fugacity(name, asked)?, "bar"),
+            Observable::Fugacity(name) | Observable::PartialPressure(name) => {
+                plain(self.fugacity(name, asked)?, "bar")
+            }
             Observable::MoleFraction(name) => plain(self.fugacity(name, asked)? / self.dry_pressure(), "1"),
             Observable::Amount(name) => {
                 let solid = self.phase(name, asked)?;
@@ -228,7 +249,13 @@ impl State {
                 let found = inner.misfits.iter().find(|(own, _)| own == key);
                 let (_, value) = found.ok_or_else(|| {
                     let keys: Vec<&str> = inner.misfits.iter().map(|(own, _)| *own).collect();
-                    no_answer(asked, format!("it was not measured beside what was used; misfits are known of {}", list(&keys)))
+                    no_answer(
+                        asked,
+                        format!(
+                            "it was not measured beside what was used; misfits are known of {}",
+                            list(&keys)
+                        ),
+                    )
                 })?;
                 let unit = match key.as_str() {
                     "pH" => "1",
@@ -242,7 +269,13 @@ impl State {
     }
 
     /// A number in another unit; amounts go between moles and grams and between kilograms and litres.
-    fn in_unit(&self, answer: &Answer, own: &Unit, wanted: &Unit, asked: &str) -> Result<f64, ObservableError> {
+    fn in_unit(
+        &self,
+        answer: &Answer,
+        own: &Unit,
+        wanted: &Unit,
+        asked: &str,
+    ) -> Result<f64, ObservableError> {
         let wrong = |error| ObservableError::Unit { asked: asked.to_string(), error };
         let plain = wanted.per_kg_of(KgOf::Water).with_expressed_as(None);
         let value = match wanted.expressed_as() {
@@ -257,7 +290,11 @@ impl State {
         }
         self.across(value, answer.molar_mass, own, &plain, asked).ok_or_else(|| {
             let kind = if answer.unit.starts_with("eq") { Kind::Alkalinity } else { Kind::Amount };
-            wrong(kind.check(wanted).err().unwrap_or_else(|| own.convert(1.0, wanted).expect_err("tried above")))
+            wrong(
+                kind.check(wanted)
+                    .err()
+                    .unwrap_or_else(|| own.convert(1.0, wanted).expect_err("tried above")),
+            )
         })
     }
 
@@ -290,11 +327,17 @@ impl State {
     fn across(&self, value: f64, molar_mass: Option<f64>, own: &Unit, wanted: &Unit, _: &str) -> Option<f64> {
         let solution = &self.0.solution;
         let numerators = [("mol", 1.0), ("eq", 1.0), ("g", molar_mass.unwrap_or(f64::NAN))];
-        let denominators =
-            [("/kg(water)", 1.0), ("/L", solution.water_per_litre()), ("/kg(solution)", solution.water_per_kilogram()), ("", 1.0)];
+        let denominators = [
+            ("/kg(water)", 1.0),
+            ("/L", solution.water_per_litre()),
+            ("/kg(solution)", solution.water_per_kilogram()),
+            ("", 1.0),
+        ];
         let base = |text: &str| Unit::parse(text).expect("a known unit");
         for (from, from_factor) in denominators {
-            let Some(start) = ["mol", "eq"].iter().find_map(|n| own.convert(value, &base(&format!("{n}{from}"))).ok()) else {
+            let Some(start) =
+                ["mol", "eq"].iter().find_map(|n| own.convert(value, &base(&format!("{n}{from}"))).ok())
+            else {
                 continue;
             };
             for (numerator, grams) in numerators {
@@ -324,7 +367,8 @@ impl State {
     fn acid_base(&self, ph: f64) -> f64 {
         let level = ZeroLevel::at(self.system().ledger(), ph);
         let weight = |formed: &Formation| rational::to_f64(level.weight(formed));
-        let terms: Vec<f64> = self.system().solutes().zip(&self.0.molalities).map(|(f, m)| weight(f) * m).collect();
+        let terms: Vec<f64> =
+            self.system().solutes().zip(&self.0.molalities).map(|(f, m)| weight(f) * m).collect();
         let (sum, size) = terms.iter().fold((0.0, 0.0), |(sum, size), term| (sum + term, size + term.abs()));
         // What rounding leaves of terms that cancel is the zero it stands for.
         if f64::abs(sum) <= ROUNDING * size { 0.0 } else { sum }
@@ -446,7 +490,9 @@ impl State {
         let mut order: Vec<usize> = (0..self.0.molalities.len()).collect();
         order.sort_by(|a, b| converged.ln_c[*b].total_cmp(&converged.ln_c[*a]));
         let solutes: Vec<&Formation> = self.system().solutes().collect();
-        let numbers = |title: &str, value: &dyn Fn(usize) -> f64| Column::numbers(title, order.iter().map(|k| value(*k)));
+        let numbers = |title: &str, value: &dyn Fn(usize) -> f64| {
+            Column::numbers(title, order.iter().map(|k| value(*k)))
+        };
         Table::new([
             Column::chemistry("species", order.iter().map(|k| solutes[*k].species.key())),
             numbers("molality [mol/kg(water)]", &|k| self.0.molalities[k]),
@@ -462,18 +508,26 @@ impl State {
     pub fn phases(&self) -> Table {
         let converged = &self.0.outcome.converged;
         let ledger = self.system().ledger();
-        let mut phases: Vec<(&Formation, f64)> =
-            self.system().phases().map(|(formed, row)| (formed, ln_saturation(row, converged) / LN_10)).collect();
-        phases.sort_by(|a, b| (a.0.species.is_gas(), b.1).partial_cmp(&(b.0.species.is_gas(), a.1)).expect("no NaN"));
+        let mut phases: Vec<(&Formation, f64)> = self
+            .system()
+            .phases()
+            .map(|(formed, row)| (formed, ln_saturation(row, converged) / LN_10))
+            .collect();
+        phases.sort_by(|a, b| {
+            (a.0.species.is_gas(), b.1).partial_cmp(&(b.0.species.is_gas(), a.1)).expect("no NaN")
+        });
         let amount = |formed: &Formation| {
             let found = self.0.outcome.solids.iter().find(|(species, _)| *species == formed.species);
             found.map_or_else(Cell::missing, |(_, amount)| Cell::number(*amount))
         };
-        let index = |(formed, index): &(&Formation, f64)| if formed.species.is_gas() { Cell::missing() } else { Cell::number(*index) };
+        let index = |(formed, index): &(&Formation, f64)| {
+            if formed.species.is_gas() { Cell::missing() } else { Cell::number(*index) }
+        };
         let fugacity = |(formed, index): &(&Formation, f64)| {
             if formed.species.is_gas() { Cell::number(10_f64.powf(*index)) } else { Cell::missing() }
         };
-        let notes: Vec<String> = phases.iter().map(|(formed, _)| self.doubt_words(formed).unwrap_or_default()).collect();
+        let notes: Vec<String> =
+            phases.iter().map(|(formed, _)| self.doubt_words(formed).unwrap_or_default()).collect();
         Table::new([
             Column::texts("phase", phases.iter().map(|(formed, _)| ledger.phase_name(&formed.species))),
             Column::chemistry("formula", phases.iter().map(|(formed, _)| formed.species.key())),
@@ -537,14 +591,19 @@ impl State {
         let system = self.system();
         formed.stoichiometry.iter().any(|(j, nu)| {
             let k = system.components().iter().position(|own| own == j);
-            k.is_some_and(|k| k != system.proton() && rational::to_f64(*nu).abs() * molality > WORTH_A_WARNING * self.0.dissolved[k].abs())
+            k.is_some_and(|k| {
+                k != system.proton()
+                    && rational::to_f64(*nu).abs() * molality > WORTH_A_WARNING * self.0.dissolved[k].abs()
+            })
         })
     }
 }
 
 fn words(doubt: Doubt) -> String {
     match doubt {
-        Doubt::OneTemperature(away) => format!("is known at one temperature only, {away:.0} K away, and used as it stands"),
+        Doubt::OneTemperature(away) => {
+            format!("is known at one temperature only, {away:.0} K away, and used as it stands")
+        }
         Doubt::OutsideRange(by) => format!("is used {by:.1} K outside its stated range"),
     }
 }
@@ -589,7 +648,8 @@ fn dissolved(system: &System, molalities: &[f64]) -> Vec<f64> {
 /// Density and dissolved mass of a computed water: with S kg of solutes per kg of water, a litre holds
 /// `ρ_w / (1 + (1 - SALT_TERM) S)` kg of water.
 fn solution(system: &System, molalities: &[f64]) -> Solution {
-    let grams = system.solutes().zip(molalities).map(|(formed, m)| formed.species.molar_mass().unwrap_or(0.0) * m);
+    let grams =
+        system.solutes().zip(molalities).map(|(formed, m)| formed.species.molar_mass().unwrap_or(0.0) * m);
     let per_water = grams.sum::<f64>() / 1000.0;
     let water_density = water::density(system.temperature().kelvin()) / 1000.0;
     let water_per_litre = water_density / (1.0 + (1.0 - SALT_TERM) * per_water);

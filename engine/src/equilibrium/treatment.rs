@@ -48,7 +48,8 @@ struct Surroundings {
 
 impl Surroundings {
     fn read(sample: &Sample, system: &System) -> Result<Self, EquilibriumError> {
-        let mut surroundings = Self { reservoirs: vec![], unlimited: vec![], minerals: vec![], held_by_reagent: None };
+        let mut surroundings =
+            Self { reservoirs: vec![], unlimited: vec![], minerals: vec![], held_by_reagent: None };
         for treatment in sample.treatments() {
             surroundings.add(treatment, system)?;
         }
@@ -64,7 +65,8 @@ impl Surroundings {
             Treatment::Saturate { solid, index } => {
                 let (species, row) = formed(system, solid)?;
                 self.hold(solid, Reservoir { row, ln_value: index * LN_10 });
-                let position = self.reservoirs.iter().position(|(name, _)| name == solid).expect("just added");
+                let position =
+                    self.reservoirs.iter().position(|(name, _)| name == solid).expect("just added");
                 self.unlimited.retain(|(_, other)| *other != species);
                 self.unlimited.push((position, species));
             }
@@ -78,7 +80,9 @@ impl Surroundings {
                 }
             }
             Treatment::HoldPh { ph, reagent: None } => self.hold("pH", fixed_ph(system.proton(), *ph)),
-            Treatment::HoldPh { ph, reagent: Some(reagent) } => self.held_by_reagent = Some((*ph, reagent.clone())),
+            Treatment::HoldPh { ph, reagent: Some(reagent) } => {
+                self.held_by_reagent = Some((*ph, reagent.clone()))
+            }
             Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
         }
         Ok(())
@@ -100,7 +104,12 @@ impl Surroundings {
         }
     }
 
-    fn converge(&self, system: &System, totals: &[f64], settings: &Settings) -> Result<Converged, EquilibriumError> {
+    fn converge(
+        &self,
+        system: &System,
+        totals: &[f64],
+        settings: &Settings,
+    ) -> Result<Converged, EquilibriumError> {
         let held: Vec<String> = self.reservoirs.iter().map(|(name, _)| name.clone()).collect();
         let solids: Vec<String> = self.minerals.iter().map(|(name, ..)| name.clone()).collect();
         let converged = solve(&self.problem(system, totals), system.model(), settings, None);
@@ -119,9 +128,11 @@ impl Surroundings {
         let taken = self.reservoirs.iter().zip(&converged.reservoir_amount);
         exchanged.extend(taken.map(|((name, _), amount)| (name.clone(), *amount)));
         // An unlimited solid that gave `amount` to the water has so much less; what is there is its negative.
-        let unlimited = self.unlimited.iter().map(|(k, species)| (species.clone(), -converged.reservoir_amount[*k]));
+        let unlimited =
+            self.unlimited.iter().map(|(k, species)| (species.clone(), -converged.reservoir_amount[*k]));
         let formed = self.minerals.iter().zip(&converged.mineral_amount);
-        let solids = unlimited.chain(formed.map(|((_, species, _), amount)| (species.clone(), *amount))).collect();
+        let solids =
+            unlimited.chain(formed.map(|((_, species, _), amount)| (species.clone(), *amount))).collect();
         let totals = delivered(&self.problem(system, totals), &converged);
         Ok(Outcome { system: system.clone(), converged, totals, exchanged, solids })
     }
@@ -188,7 +199,10 @@ pub fn reagent(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, Eq
     let fault = |why: String| EquilibriumError::Analyte { key: text.into(), why };
     let species = Species::parse(text).map_err(|error| fault(error.to_string()))?;
     if species.charge() != 0 {
-        return Err(fault(format!("a reagent is a neutral substance, and this has charge {}", species.charge())));
+        return Err(fault(format!(
+            "a reagent is a neutral substance, and this has charge {}",
+            species.charge()
+        )));
     }
     let formations = ledger.formations();
     let mut parts: Vec<(usize, Rational)> = Vec::new();
@@ -196,12 +210,14 @@ pub fn reagent(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, Eq
         let carriers = carriers(formations, element);
         let Some(carrier) = carriers.first() else {
             let why = format!("the ledger has no species of {element}");
-            return Err(LedgerError::Unknown { what: "reagent", name: text.into(), nearest: None }).map_err(|_| fault(why));
+            return Err(LedgerError::Unknown { what: "reagent", name: text.into(), nearest: None })
+                .map_err(|_| fault(why));
         };
         parts.push((*carrier, species.count(element) / formations.components[*carrier].count(element)));
     }
     let remainder = |element: Element| -> Rational {
-        species.count(element) - parts.iter().map(|(j, n)| formations.components[*j].count(element) * n).sum::<Rational>()
+        species.count(element)
+            - parts.iter().map(|(j, n)| formations.components[*j].count(element) * n).sum::<Rational>()
     };
     let protons = remainder(Element::H) - remainder(Element::O) * 2;
     let charge: Rational = parts.iter().map(|(j, n)| n * i64::from(formations.components[*j].charge())).sum();

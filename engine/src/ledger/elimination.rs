@@ -45,7 +45,8 @@ impl Echelon {
 
     /// Takes every pivot column out of a row.
     pub fn reduce(&self, combination: &mut Combination) {
-        let pivots: Vec<usize> = combination.row.keys().copied().filter(|c| self.rows.contains_key(c)).collect();
+        let pivots: Vec<usize> =
+            combination.row.keys().copied().filter(|c| self.rows.contains_key(c)).collect();
         for pivot in pivots {
             combination.eliminate(pivot, &self.rows[&pivot]);
         }

@@ -72,7 +72,8 @@ pub fn read_constants(file_key: &str, text: &str) -> Result<ConstantFile, Vec<Fi
         match read_constant(file_key, &citation, entry) {
             Err(message) => faults.push(fault(message)),
             Ok((name, _)) if constants.iter().any(|(taken, _)| *taken == name) => {
-                faults.push(fault(format!("there is a constant `{name}` already: names are unique in a file")));
+                faults
+                    .push(fault(format!("there is a constant `{name}` already: names are unique in a file")));
             }
             Ok(constant) => constants.push(constant),
         }
@@ -160,9 +161,10 @@ impl<'a> Lines<'a> {
     /// The tables of an array, each with its line.
     fn list(&self, key: &str) -> Vec<(usize, Value)> {
         match self.table.get_ref().get(key).map(Spanned::get_ref) {
-            Some(DeValue::Array(array)) => {
-                array.iter().map(|item| (line_at(self.text, item.span().start), to_value(item.get_ref()))).collect()
-            }
+            Some(DeValue::Array(array)) => array
+                .iter()
+                .map(|item| (line_at(self.text, item.span().start), to_value(item.get_ref())))
+                .collect(),
             _ => vec![],
         }
     }
@@ -191,7 +193,10 @@ fn to_value(value: &DeValue<'_>) -> Value {
         DeValue::Datetime(date) => Value::Text(date.to_string()),
         DeValue::Array(array) => Value::List(array.iter().map(|item| to_value(item.get_ref())).collect()),
         DeValue::Table(table) => Value::Map(
-            table.iter().map(|(key, value)| (key.get_ref().to_string(), to_value(value.get_ref()))).collect::<BTreeMap<_, _>>(),
+            table
+                .iter()
+                .map(|(key, value)| (key.get_ref().to_string(), to_value(value.get_ref())))
+                .collect::<BTreeMap<_, _>>(),
         ),
     }
 }
@@ -215,7 +220,10 @@ mod tests {
         assert_eq!(lines[0].0, 4);
         assert!(lines[0].1.contains("not balanced"), "{}", lines[0].1);
         assert_eq!(lines[1], (10, "`b`: unknown key `log_q`; did you mean `log_k`?"));
-        assert_eq!(lines[2], (16, "`c`: a constant needs `provenance`, one of `read`, `computed` and `memory`"));
+        assert_eq!(
+            lines[2],
+            (16, "`c`: a constant needs `provenance`, one of `read`, `computed` and `memory`")
+        );
     }
 
     #[test]

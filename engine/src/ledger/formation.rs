@@ -48,10 +48,13 @@ impl Formations {
         let electron = Species::electron();
         let takes_part = |reaction: &Reaction| reaction.equation().coefficient(&electron) == 0.into();
         let mut order: Vec<usize> = (0..reactions.len()).filter(|i| takes_part(reactions[*i].1)).collect();
-        order.sort_by(|a, b| preference(&reactions[*a]).partial_cmp(&preference(&reactions[*b])).expect("no NaN"));
+        order.sort_by(|a, b| {
+            preference(&reactions[*a]).partial_cmp(&preference(&reactions[*b])).expect("no NaN")
+        });
 
         let columns = columns(order.iter().map(|index| reactions[*index].1), solutes);
-        let column_of = |species: &Species| columns.iter().position(|known| known == species).expect("every species");
+        let column_of =
+            |species: &Species| columns.iter().position(|known| known == species).expect("every species");
         let mut echelon = Echelon::default();
         let mut leftovers = Vec::new();
         for index in order {
@@ -62,9 +65,12 @@ impl Formations {
             }
         }
 
-        let component_columns: Vec<usize> = (0..columns.len()).filter(|c| echelon.row_of(*c).is_none()).rev().collect();
+        let component_columns: Vec<usize> =
+            (0..columns.len()).filter(|c| echelon.row_of(*c).is_none()).rev().collect();
         let mut species: Vec<Formation> = (0..columns.len())
-            .map(|column| formation(columns[column].clone(), column, echelon.row_of(column), &component_columns))
+            .map(|column| {
+                formation(columns[column].clone(), column, echelon.row_of(column), &component_columns)
+            })
             .collect();
         species.sort_by_key(|formed| (!formed.species.is_solute(), formed.species.clone()));
         let components = component_columns.into_iter().map(|column| columns[column].clone()).collect();
@@ -95,7 +101,8 @@ impl Formation {
 
 /// A row `1 s + Σ aⱼ bⱼ = 0` reads `ln a_s = ln K - Σ aⱼ ln a_bⱼ`; a component is formed from itself.
 fn formation(species: Species, column: usize, made: Option<&Combination>, components: &[usize]) -> Formation {
-    let position = |column: usize| components.iter().position(|c| *c == column).expect("rows hold components only");
+    let position =
+        |column: usize| components.iter().position(|c| *c == column).expect("rows hold components only");
     let Some(made) = made else {
         return Formation { species, stoichiometry: vec![(position(column), 1.into())], multiples: vec![] };
     };

@@ -167,7 +167,10 @@ impl Ledger {
     pub fn without(&self, name: &str) -> Result<Self, LedgerError> {
         let terms = self.reaction(name)?.equation().terms();
         let components = &self.formations().components;
-        let ions = terms.iter().map(|(species, _)| species).filter(|species| species.is_solute() && components.contains(species));
+        let ions = terms
+            .iter()
+            .map(|(species, _)| species)
+            .filter(|species| species.is_solute() && components.contains(species));
         self.changed(|inner| {
             inner.solutes.extend(ions.cloned());
             Ok(inner.reactions.remove(name))
@@ -183,7 +186,8 @@ impl Ledger {
         let clash = |(name, reaction): &(&str, &Reaction)| {
             self.0.reactions.get(*name).is_some_and(|own| own != *reaction)
         };
-        let clashes: Vec<String> = other.reactions().filter(clash).map(|(name, _)| name.to_string()).collect();
+        let clashes: Vec<String> =
+            other.reactions().filter(clash).map(|(name, _)| name.to_string()).collect();
         if !clashes.is_empty() && prefer_other.is_none() {
             return Err(LedgerError::Clash(clashes));
         }
@@ -215,7 +219,9 @@ impl Ledger {
     /// Formation of every species from components the engine picks; worked out once.
     #[must_use]
     pub fn formations(&self) -> &Formations {
-        self.0.formations.get_or_init(|| Formations::of(&self.reactions().collect::<Vec<_>>(), &self.0.solutes))
+        self.0
+            .formations
+            .get_or_init(|| Formations::of(&self.reactions().collect::<Vec<_>>(), &self.0.solutes))
     }
 
     /// Every species it knows: solutes, then water, gases and solids.
@@ -287,8 +293,10 @@ impl Ledger {
     #[must_use]
     pub fn digest(&self) -> String {
         // FNV-1a (Fowler, Noll & Vo), 64 bits: a fingerprint for telling ledgers apart, not a signature.
-        let constants = self.reactions().map(|(name, r)| (name, r.equation(), r.constant().ok().map(|c| &c.log_k)));
-        let reacts = |ion: &&Species| self.reactions().any(|(_, r)| r.equation().coefficient(ion) != 0.into());
+        let constants =
+            self.reactions().map(|(name, r)| (name, r.equation(), r.constant().ok().map(|c| &c.log_k)));
+        let reacts =
+            |ion: &&Species| self.reactions().any(|(_, r)| r.equation().coefficient(ion) != 0.into());
         let solutes: Vec<&Species> = self.0.solutes.iter().filter(|ion| !reacts(ion)).collect();
         let text = format!("{:?} {:?} {:?}", constants.collect::<Vec<_>>(), solutes, self.0.activity);
         let fold = |hash: u64, byte: u8| (hash ^ u64::from(byte)).wrapping_mul(0x0100_0000_01b3);
@@ -301,10 +309,17 @@ impl Ledger {
         name: &str,
         candidates: impl Iterator<Item = &'a str>,
     ) -> LedgerError {
-        LedgerError::Unknown { what, name: name.into(), nearest: nearest(name, candidates).map(str::to_string) }
+        LedgerError::Unknown {
+            what,
+            name: name.into(),
+            nearest: nearest(name, candidates).map(str::to_string),
+        }
     }
 
-    fn changed<T>(&self, change: impl FnOnce(&mut Inner) -> Result<T, LedgerError>) -> Result<Self, LedgerError> {
+    fn changed<T>(
+        &self,
+        change: impl FnOnce(&mut Inner) -> Result<T, LedgerError>,
+    ) -> Result<Self, LedgerError> {
         let mut inner = self.copy();
         change(&mut inner)?;
         Ok(Self(Arc::new(inner)))
@@ -333,7 +348,8 @@ pub fn combine(target: &str, reactions: &[&Reaction]) -> Result<Reaction, Ledger
         }
     }
     let row = |equation: &Equation| -> Sparse {
-        let column = |formula: &Species| species.iter().position(|known| *known == formula).expect("listed above");
+        let column =
+            |formula: &Species| species.iter().position(|known| *known == formula).expect("listed above");
         equation.terms().iter().map(|(formula, coefficient)| (column(formula), *coefficient)).collect()
     };
     let mut echelon = Echelon::default();
@@ -354,7 +370,8 @@ pub fn combine(target: &str, reactions: &[&Reaction]) -> Result<Reaction, Ledger
             Some(sum) => sum.plus(&term)?,
         });
     }
-    let sum = sum.ok_or_else(|| LedgerError::Unreachable { target: target.to_string(), left_over: vec![] })?;
+    let sum =
+        sum.ok_or_else(|| LedgerError::Unreachable { target: target.to_string(), left_over: vec![] })?;
     // The sum has the target's species; write them in the target's order.
     Ok(Reaction::of(target, sum.constant()?.clone()))
 }
@@ -379,7 +396,11 @@ impl ActivityChoice {
             }
             other => {
                 let help = nearest(other, Self::NAMES).map(|close| format!("; did you mean `{close}`?"));
-                let message = format!("no activity model `{other}`{}; there are {}", help.unwrap_or_default(), list(&Self::NAMES));
+                let message = format!(
+                    "no activity model `{other}`{}; there are {}",
+                    help.unwrap_or_default(),
+                    list(&Self::NAMES)
+                );
                 return Err(KeyFault::new("activity_model", message));
             }
         };
@@ -390,7 +411,9 @@ impl ActivityChoice {
 
 fn positive(options: &mut Named, key: &str) -> Result<Option<f64>, KeyFault> {
     match options.number(key)? {
-        Some(number) if number <= 0.0 => Err(KeyFault::new(key, format!("`{key}` must be above zero, not {number}"))),
+        Some(number) if number <= 0.0 => {
+            Err(KeyFault::new(key, format!("`{key}` must be above zero, not {number}")))
+        }
         number => Ok(number),
     }
 }

@@ -59,7 +59,8 @@ pub fn names() -> Vec<&'static str> {
 /// [`ShippedError::Unknown`] or [`ShippedError::Edition`].
 pub fn ledger(name: &str, edition: Option<&str>) -> Result<Ledger, ShippedError> {
     static LEDGERS_READ: OnceLock<BTreeMap<&str, Result<Ledger, ShippedError>>> = OnceLock::new();
-    let ledgers = LEDGERS_READ.get_or_init(|| LEDGERS.iter().map(|(name, text)| (*name, build(name, text))).collect());
+    let ledgers =
+        LEDGERS_READ.get_or_init(|| LEDGERS.iter().map(|(name, text)| (*name, build(name, text))).collect());
     let Some(found) = ledgers.get(name) else {
         let nearest = nearest(name, names()).map(str::to_string);
         return Err(ShippedError::Unknown { name: name.into(), nearest });
@@ -103,12 +104,16 @@ fn build(name: &str, text: &str) -> Result<Ledger, ShippedError> {
         ledger = ledger.with_solute(species);
     }
     for (key, wanted) in listed.from {
-        let constants = &files.get(key.as_str()).ok_or_else(|| broken(vec![format!("no file `{key}`")]))?.constants;
+        let constants =
+            &files.get(key.as_str()).ok_or_else(|| broken(vec![format!("no file `{key}`")]))?.constants;
         let wanted = wanted.unwrap_or_else(|| constants.iter().map(|(name, _)| name.clone()).collect());
         for name in wanted {
             let found = constants.iter().find(|(own, _)| *own == name);
-            let (_, reaction) = found.ok_or_else(|| broken(vec![format!("`{key}` has no constant `{name}`")]))?;
-            ledger = ledger.with_reaction(&name, reaction).map_err(|error: LedgerError| broken(vec![error.to_string()]))?;
+            let (_, reaction) =
+                found.ok_or_else(|| broken(vec![format!("`{key}` has no constant `{name}`")]))?;
+            ledger = ledger
+                .with_reaction(&name, reaction)
+                .map_err(|error: LedgerError| broken(vec![error.to_string()]))?;
         }
     }
     Ok(ledger)

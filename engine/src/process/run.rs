@@ -127,7 +127,8 @@ impl Run {
             return Ok(axis.clone());
         }
         let asked = Asked::parse(observable)?;
-        let answers: Vec<Result<Quantity, ObservableError>> = self.states().map(|state| state.answer(&asked)).collect();
+        let answers: Vec<Result<Quantity, ObservableError>> =
+            self.states().map(|state| state.answer(&asked)).collect();
         let mut found = answers.iter().filter_map(|answer| answer.as_ref().ok());
         let unit = match (found.next(), answers.iter().find_map(|answer| answer.as_ref().err())) {
             (Some(first), _) => first.unit().clone(),
@@ -147,7 +148,8 @@ impl Run {
             },
         });
         let name = asked.observable.to_string();
-        let title = if unit == Unit::one() { name } else { format!("{name} [{}]", unit.display(Style::Ascii)) };
+        let title =
+            if unit == Unit::one() { name } else { format!("{name} [{}]", unit.display(Style::Ascii)) };
         Ok(Column::new(title.as_str(), cells.collect::<Vec<_>>()))
     }
 
@@ -156,11 +158,16 @@ impl Run {
     pub fn failures(&self) -> Table {
         let failed: Vec<usize> = (0..self.len()).filter(|row| self.0.outcomes[*row].is_err()).collect();
         let axes = self.0.axes.iter().map(|axis| {
-            Column::new(axis.title().clone(), failed.iter().map(|row| axis.cells()[*row].clone()).collect::<Vec<_>>())
+            Column::new(
+                axis.title().clone(),
+                failed.iter().map(|row| axis.cells()[*row].clone()).collect::<Vec<_>>(),
+            )
         });
-        let reasons = failed.iter().map(|row| self.0.outcomes[*row].as_ref().err().map_or("", String::as_str));
+        let reasons =
+            failed.iter().map(|row| self.0.outcomes[*row].as_ref().err().map_or("", String::as_str));
         let rows = Column::numbers("row", failed.iter().map(|row| *row as f64));
-        Table::new([rows].into_iter().chain(axes).chain([Column::texts("reason", reasons)])).expect("columns of one length")
+        Table::new([rows].into_iter().chain(axes).chain([Column::texts("reason", reasons)]))
+            .expect("columns of one length")
     }
 
     /// Warnings of all rows, each once, with the rows concerned.
@@ -189,7 +196,11 @@ fn which(rows: &[usize], all: usize) -> String {
         return "every row".into();
     }
     let shown: Vec<String> = rows.iter().take(8).map(usize::to_string).collect();
-    let more = if rows.len() > shown.len() { format!(" and {} more", count(rows.len() - shown.len(), "row")) } else { String::new() };
+    let more = if rows.len() > shown.len() {
+        format!(" and {} more", count(rows.len() - shown.len(), "row"))
+    } else {
+        String::new()
+    };
     format!("row{} {}{more}", if rows.len() == 1 { "" } else { "s" }, shown.join(", "))
 }
 

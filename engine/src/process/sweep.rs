@@ -99,8 +99,10 @@ impl Axis {
         let unit_error = |error| SweepError::Unit { axis: self.title.clone(), error };
         match &self.meaning {
             Meaning::Temperature(unit) => {
-                let kelvin = unit.convert(value, &Unit::parse("K").expect("a known unit")).map_err(unit_error)?;
-                Ok(sample.treated(Treatment::WarmTo(Temperature::from_kelvin(kelvin).map_err(unit_error)?))?)
+                let kelvin =
+                    unit.convert(value, &Unit::parse("K").expect("a known unit")).map_err(unit_error)?;
+                Ok(sample
+                    .treated(Treatment::WarmTo(Temperature::from_kelvin(kelvin).map_err(unit_error)?))?)
             }
             Meaning::Pressure(unit) => {
                 let bar = unit.convert(value, &Kind::Pressure.default_unit()).map_err(unit_error)?;
@@ -111,7 +113,9 @@ impl Axis {
                 let fugacity = unit.convert(value, &Kind::Pressure.default_unit()).map_err(unit_error)?;
                 Ok(sample.treated(Treatment::OpenTo { gas: gas.clone(), fugacity })?)
             }
-            Meaning::Saturation(solid) => Ok(sample.treated(Treatment::Saturate { solid: solid.clone(), index: value })?),
+            Meaning::Saturation(solid) => {
+                Ok(sample.treated(Treatment::Saturate { solid: solid.clone(), index: value })?)
+            }
             Meaning::Measured(key, unit) => {
                 let value = match unit {
                     None => Value::Number(value),
@@ -160,7 +164,10 @@ pub fn sweep(
     settings: &Settings,
     progress: OnProgress,
 ) -> Result<Run, SweepError> {
-    let points = axes.iter().try_fold(1_usize, |points, axis| points.checked_mul(axis.values.len())).unwrap_or(usize::MAX);
+    let points = axes
+        .iter()
+        .try_fold(1_usize, |points, axis| points.checked_mul(axis.values.len()))
+        .unwrap_or(usize::MAX);
     if points == 0 || points > MOST_POINTS || axes.is_empty() {
         return Err(SweepError::Points(if axes.is_empty() { 0 } else { points }));
     }
@@ -179,6 +186,7 @@ pub fn sweep(
     }
     let run = Run::equilibrate(&samples, ledger, settings, progress);
     let run = run.map_err(|_: EquilibriumError| SweepError::Stopped)?;
-    let column = |(k, axis): (usize, &Axis)| Column::numbers(axis.title.as_str(), values.iter().map(|point| point[k]));
+    let column =
+        |(k, axis): (usize, &Axis)| Column::numbers(axis.title.as_str(), values.iter().map(|point| point[k]));
     Ok(Run::new(axes.iter().enumerate().map(column).collect(), run.outcomes().to_vec()))
 }

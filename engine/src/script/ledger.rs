@@ -70,20 +70,24 @@ impl From<ShippedError> for Fail {
 fn reaction_table<'a>(reactions: impl Iterator<Item = (&'a str, &'a Reaction)>) -> Result<Table, Fail> {
     let rows: Vec<(&str, &Reaction)> = reactions.collect();
     let constants: Vec<_> = rows.iter().filter_map(|(_, reaction)| reaction.constant().ok()).collect();
-    let log_k = constants.iter().map(|constant| Cell::number(constant.log_k.nearest_to(Temperature::REFERENCE).0));
+    let log_k =
+        constants.iter().map(|constant| Cell::number(constant.log_k.nearest_to(Temperature::REFERENCE).0));
     let sigma = rows.iter().map(|(_, reaction)| {
         reaction.log_k().ok().and_then(|log_k| log_k.sigma()).map_or_else(Cell::missing, Cell::number)
     });
-    let enthalpy = constants
-        .iter()
-        .map(|constant| constant.log_k.enthalpy(Temperature::REFERENCE).map_or_else(Cell::missing, Cell::number));
+    let enthalpy = constants.iter().map(|constant| {
+        constant.log_k.enthalpy(Temperature::REFERENCE).map_or_else(Cell::missing, Cell::number)
+    });
     let range = constants.iter().map(|constant| match (constant.log_k.range(), constant.log_k.only_at()) {
         (Some(range), _) => format!("{:.0} to {:.0}", range.lowest.celsius(), range.highest.celsius()),
         (None, Some(at)) => format!("{:.0} only", at.celsius()),
         (None, None) => String::new(),
     });
     let origin = |text: &dyn Fn(&crate::chem::Origin) -> String| -> Vec<String> {
-        constants.iter().map(|constant| constant.history.uses().first().map_or_else(String::new, |(o, _)| text(o))).collect()
+        constants
+            .iter()
+            .map(|constant| constant.history.uses().first().map_or_else(String::new, |(o, _)| text(o)))
+            .collect()
     };
     let texts = |title: &str, texts: &[String]| Column::texts(title, texts.iter().map(String::as_str));
     let equations: Vec<String> = rows.iter().map(|(_, reaction)| reaction.equation().to_string()).collect();
@@ -232,7 +236,9 @@ mod ledger_functions {
             None => None,
             Some("own") => Some(false),
             Some("other") => Some(true),
-            Some(word) => return fail(format!("`prefer` is `own` or `other`, not `{word}`")).key("prefer").raise(),
+            Some(word) => {
+                return fail(format!("`prefer` is `own` or `other`, not `{word}`")).key("prefer").raise();
+            }
         };
         Ok(ledger.merge(&other, prefer).map_err(Fail::from)?)
     }
@@ -272,7 +278,8 @@ mod ledger_functions {
     #[rhai_fn(pure, return_raw)]
     pub fn species_of(ledger: &mut Ledger, element: &str) -> ScriptResult<Array> {
         let Some(element) = Element::from_symbol(element) else {
-            let help = nearest(element, Element::symbols().iter().copied()).map(|near| format!("did you mean `{near}`?"));
+            let help = nearest(element, Element::symbols().iter().copied())
+                .map(|near| format!("did you mean `{near}`?"));
             return fail(format!("`{element}` is no element")).maybe_help(help).argument(0).raise();
         };
         Ok(texts(ledger.species().filter(|species| species.count(element) != 0.into()).map(Species::key)))
@@ -289,9 +296,13 @@ mod ledger_functions {
         let concerns = |(name, reaction): &(&str, &Reaction)| {
             let sources = reaction.constant().map(|constant| &constant.history);
             let cited = sources.is_ok_and(|history| {
-                history.uses().iter().any(|(origin, _)| origin.source.as_deref().unwrap_or("").to_lowercase().contains(&wanted))
+                history.uses().iter().any(|(origin, _)| {
+                    origin.source.as_deref().unwrap_or("").to_lowercase().contains(&wanted)
+                })
             });
-            name.to_lowercase().contains(&wanted) || reaction.to_string().to_lowercase().contains(&wanted) || cited
+            name.to_lowercase().contains(&wanted)
+                || reaction.to_string().to_lowercase().contains(&wanted)
+                || cited
         };
         Ok(reaction_table(ledger.reactions().filter(concerns))?)
     }
@@ -299,12 +310,20 @@ mod ledger_functions {
     /// Names of its minerals.
     #[rhai_fn(name = "phases", get = "phases", pure)]
     pub fn ledger_phases(ledger: &mut Ledger) -> Array {
-        texts(ledger.phases_by_name().into_iter().filter(|(_, species)| species.is_solid()).map(|(name, _)| name))
+        texts(
+            ledger
+                .phases_by_name()
+                .into_iter()
+                .filter(|(_, species)| species.is_solid())
+                .map(|(name, _)| name),
+        )
     }
     /// Names of its gases.
     #[rhai_fn(name = "gases", get = "gases", pure)]
     pub fn ledger_gases(ledger: &mut Ledger) -> Array {
-        texts(ledger.phases_by_name().into_iter().filter(|(_, species)| species.is_gas()).map(|(name, _)| name))
+        texts(
+            ledger.phases_by_name().into_iter().filter(|(_, species)| species.is_gas()).map(|(name, _)| name),
+        )
     }
     /// Its reactions with log K at 25 degC, uncertainty, enthalpy, range, provenance and source.
     #[rhai_fn(name = "table", get = "table", pure, return_raw)]
@@ -320,7 +339,8 @@ mod ledger_functions {
     #[rhai_fn(name = "alkalinity_table", get = "alkalinity_table", pure, return_raw)]
     pub fn alkalinity_table(ledger: &mut Ledger) -> ScriptResult<Table> {
         let level = ZeroLevel::at(ledger, ALKALINITY_PH);
-        let solutes: Vec<_> = ledger.formations().species.iter().filter(|formed| formed.species.is_solute()).collect();
+        let solutes: Vec<_> =
+            ledger.formations().species.iter().filter(|formed| formed.species.is_solute()).collect();
         let weights = solutes.iter().map(|formed| rational::to_f64(level.weight(formed)));
         let table = Table::new([
             Column::chemistry("species", solutes.iter().map(|formed| formed.species.key())),

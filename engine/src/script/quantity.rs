@@ -96,7 +96,9 @@ fn compare(a: &Dynamic, b: &Dynamic) -> ScriptResult<Ordering> {
     let (Some(left), Some(right)) = (of(a), of(b)) else {
         let failure = fail(format!("cannot compare {} with {}", docs::described(a), docs::described(b)));
         let text = [a, b].into_iter().find(|value| value.is_string());
-        return failure.maybe_help(text.map(|text| format!("for a value in a unit write `quantity(\"{text}\")`"))).raise();
+        return failure
+            .maybe_help(text.map(|text| format!("for a value in a unit write `quantity(\"{text}\")`")))
+            .raise();
     };
     Ok(left.compare(&right)?)
 }
@@ -128,7 +130,10 @@ fn power(base: &Quantity, exponent: &Quantity) -> ScriptResult<Quantity> {
 
 fn all_quantities(items: &[Dynamic]) -> Result<Vec<Quantity>, Fail> {
     let quantity = |item: &Dynamic| {
-        let unfit = || fail(format!("`correlate` takes a list of quantities, but found {}", docs::described(item))).argument(0);
+        let unfit = || {
+            fail(format!("`correlate` takes a list of quantities, but found {}", docs::described(item)))
+                .argument(0)
+        };
         item.read_lock::<Quantity>().map(|quantity| quantity.clone()).ok_or_else(unfit)
     };
     items.iter().map(quantity).collect()
@@ -138,7 +143,10 @@ fn all_quantities(items: &[Dynamic]) -> Result<Vec<Quantity>, Fail> {
 fn matrix(function: &str, rows: &[Dynamic]) -> Result<Vec<Vec<FLOAT>>, Fail> {
     let row = |row: &Dynamic| match row.read_lock::<Array>() {
         Some(items) => items.iter().map(|item| real(function, item)).collect(),
-        None => Err(fail(format!("`{function}` takes a number, or a matrix written as a list of lists of numbers")).argument(1)),
+        None => Err(fail(format!(
+            "`{function}` takes a number, or a matrix written as a list of lists of numbers"
+        ))
+        .argument(1)),
     };
     rows.iter().map(row).collect()
 }
@@ -222,7 +230,9 @@ mod quantity_functions {
                 .help(format!("write `quantity(\"{value} {unit}\")`"))
                 .argument(0)
                 .raise(),
-            None => fail(format!("`quantity` takes a number and a unit, not {}", docs::described(&value))).argument(0).raise(),
+            None => fail(format!("`quantity` takes a number and a unit, not {}", docs::described(&value)))
+                .argument(0)
+                .raise(),
         }
     }
 
@@ -346,7 +356,11 @@ mod quantity_functions {
     /// fmt(quantity("41.2 +/- 0.8 mg/L"), ".2f")   // "41.20 ± 0.80 mg/L"
     /// ```
     #[rhai_fn(name = "fmt", return_raw)]
-    pub fn fmt_quantity(context: NativeCallContext, quantity: Quantity, format: &str) -> ScriptResult<String> {
+    pub fn fmt_quantity(
+        context: NativeCallContext,
+        quantity: Quantity,
+        format: &str,
+    ) -> ScriptResult<String> {
         let style = in_units(Host::of(&context).style());
         let mut text = format_number(quantity.value(), format)?;
         if let Some(sigma) = quantity.sigma().filter(|sigma| *sigma > 0.0) {
@@ -432,6 +446,8 @@ fn larger(a: &Dynamic, b: &Dynamic) -> ScriptResult<Quantity> {
 }
 
 fn both(function: &str, a: &Dynamic, b: &Dynamic) -> Result<(Quantity, Quantity), Fail> {
-    let one = |value: &Dynamic| of(value).ok_or_else(|| fail(format!("`{function}` takes numbers, not {}", docs::described(value))));
+    let one = |value: &Dynamic| {
+        of(value).ok_or_else(|| fail(format!("`{function}` takes numbers, not {}", docs::described(value))))
+    };
     Ok((one(a)?, one(b)?))
 }

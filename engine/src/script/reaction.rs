@@ -8,7 +8,9 @@ use super::named::{named, value};
 use super::numbers::real;
 use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
-use crate::chem::{EquationError, GasStandard, Rational, Reaction, ReactionError, Species, reaction as chemistry};
+use crate::chem::{
+    EquationError, GasStandard, Rational, Reaction, ReactionError, Species, reaction as chemistry,
+};
 use crate::ledger::{LedgerError, combine as combine_reactions};
 use crate::named::{Named, Value};
 use crate::present::{Cell, Column, Table};
@@ -19,7 +21,16 @@ use crate::units::{Kind, Style as Alphabet, Temperature, Unit};
 pub(super) fn register(vocabulary: &mut Vocabulary) {
     vocabulary
         .module(rhai::exported_module!(reaction_functions))
-        .pure(&["reaction", "combine", "log_k_at", "coefficient", "at", "assume_enthalpy", "to_gas_standard", "trail"])
+        .pure(&[
+            "reaction",
+            "combine",
+            "log_k_at",
+            "coefficient",
+            "at",
+            "assume_enthalpy",
+            "to_gas_standard",
+            "trail",
+        ])
         .native::<Reaction>("Reaction", show);
 }
 
@@ -82,7 +93,11 @@ fn optional(value: Option<f64>, kind: Kind) -> Dynamic {
 }
 
 /// Warns once a call where a constant is read outside the range it was stated for.
-fn warn_outside(context: &NativeCallContext, reaction: &Reaction, temperature: Temperature) -> ScriptResult<()> {
+fn warn_outside(
+    context: &NativeCallContext,
+    reaction: &Reaction,
+    temperature: Temperature,
+) -> ScriptResult<()> {
     let constant = reaction.constant().map_err(Fail::from)?;
     let outside = constant.log_k.outside(temperature);
     if let (true, Some(range)) = (outside > 0.0, constant.log_k.range()) {
@@ -105,7 +120,10 @@ pub(super) fn trail_table(reaction: &Reaction) -> Result<Table, Fail> {
     };
     let multiples = history.uses().iter().map(|(_, multiple)| crate::chem::rational::to_f64(*multiple));
     let sigmas = history.uses().iter().map(|(origin, _)| match origin.parts.as_slice() {
-        [part] => part.input.sigma().map_or_else(Cell::missing, |sigma| Cell::number(sigma * part.sensitivity.abs())),
+        [part] => part
+            .input
+            .sigma()
+            .map_or_else(Cell::missing, |sigma| Cell::number(sigma * part.sensitivity.abs())),
         _ => Cell::missing(),
     });
     let equations: Vec<&str> = history.uses().iter().map(|(origin, _)| origin.equation.as_str()).collect();
@@ -268,7 +286,8 @@ mod reaction_functions {
     #[rhai_fn(name = "source", get = "source", pure, return_raw)]
     pub fn source(reaction: &mut Reaction) -> ScriptResult<String> {
         let history = &reaction.constant().map_err(Fail::from)?.history;
-        let mut sources: Vec<&str> = history.uses().iter().filter_map(|(origin, _)| origin.source.as_deref()).collect();
+        let mut sources: Vec<&str> =
+            history.uses().iter().filter_map(|(origin, _)| origin.source.as_deref()).collect();
         sources.dedup();
         Ok(sources.join("\n"))
     }
@@ -276,9 +295,10 @@ mod reaction_functions {
     #[rhai_fn(name = "conditions", get = "conditions", pure, return_raw)]
     pub fn conditions(reaction: &mut Reaction) -> ScriptResult<String> {
         let constant = reaction.constant().map_err(Fail::from)?;
-        let range = constant.log_k.range().map(|range| {
-            format!(", {:.0} to {:.0} degC", range.lowest.celsius(), range.highest.celsius())
-        });
+        let range = constant
+            .log_k
+            .range()
+            .map(|range| format!(", {:.0} to {:.0} degC", range.lowest.celsius(), range.highest.celsius()));
         let fixed = constant.log_k.only_at().map(|at| format!(", known at {} degC only", at.celsius()));
         Ok(format!(
             "molal activities, gases counted from {}{}{}",
@@ -355,7 +375,9 @@ mod reaction_functions {
     #[rhai_fn(return_raw)]
     pub fn to_gas_standard(reaction: Reaction, standard: &str) -> ScriptResult<Reaction> {
         let read = GasStandard::parse(standard);
-        let standard = read.ok_or_else(|| fail(format!("`{standard}` is no gas standard")).help("write `\"1 bar\"` or `\"1 atm\"`"))?;
+        let standard = read.ok_or_else(|| {
+            fail(format!("`{standard}` is no gas standard")).help("write `\"1 bar\"` or `\"1 atm\"`")
+        })?;
         Ok(reaction.to_gas_standard(standard).map_err(Fail::from)?)
     }
 
@@ -380,7 +402,11 @@ mod reaction_functions {
     pub fn combine(target: &str, reactions: Array) -> ScriptResult<Reaction> {
         let read = reactions.iter().map(|item| {
             item.clone().try_cast::<Reaction>().ok_or_else(|| {
-                fail(format!("`combine` takes reactions, not {}", super::super::words::a_type(item.type_name()))).argument(1)
+                fail(format!(
+                    "`combine` takes reactions, not {}",
+                    super::super::words::a_type(item.type_name())
+                ))
+                .argument(1)
             })
         });
         let reactions = read.collect::<Result<Vec<_>, _>>()?;
@@ -391,7 +417,9 @@ mod reaction_functions {
 /// A plain number in a script.
 pub(super) fn plain(what: &str, given: &Dynamic) -> Result<f64, Fail> {
     match given.read_lock::<Quantity>() {
-        Some(quantity) => quantity.to(&Unit::one()).map(|q| q.value()).map_err(|error| fail(error.to_string())),
+        Some(quantity) => {
+            quantity.to(&Unit::one()).map(|q| q.value()).map_err(|error| fail(error.to_string()))
+        }
         None => real(what, given),
     }
 }

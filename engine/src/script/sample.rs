@@ -22,15 +22,29 @@ use crate::water::{Sample, SampleError, Survey, SurveyError, Treatment};
 pub(super) fn register(vocabulary: &mut Vocabulary) {
     vocabulary
         .module(rhai::exported_module!(sample_functions))
-        .pure(&["sample", "but", "with_ledger", "open_to", "saturate", "allow", "hold", "warm_to", "compress_to"])
+        .pure(&[
+            "sample",
+            "but",
+            "with_ledger",
+            "open_to",
+            "saturate",
+            "allow",
+            "hold",
+            "warm_to",
+            "compress_to",
+        ])
         .native::<Sample>("Sample", show);
 }
 
 fn show(sample: &Sample, style: &Style) -> String {
     let name = sample.name().map_or_else(|| "water".to_string(), |name| format!("water \"{name}\""));
     let degree = if style.ascii { "degC" } else { "°C" };
-    let keys: Vec<&str> =
-        sample.entries().keys().map(String::as_str).filter(|key| !["name", "temperature", "pressure"].contains(key)).collect();
+    let keys: Vec<&str> = sample
+        .entries()
+        .keys()
+        .map(String::as_str)
+        .filter(|key| !["name", "temperature", "pressure"].contains(key))
+        .collect();
     let measured = if keys.is_empty() { String::new() } else { format!(": {}", keys.join(", ")) };
     let treatments: Vec<String> = sample.treatments().iter().map(words).collect();
     let treated = if treatments.is_empty() { String::new() } else { format!("; {}", treatments.join(", ")) };
@@ -49,7 +63,9 @@ fn words(treatment: &Treatment) -> String {
         Treatment::Allow { solid, above } if *above == 0.0 => format!("{solid} may form"),
         Treatment::Allow { solid, above } => format!("{solid} may form above SI {}", trimmed(*above)),
         Treatment::HoldPh { ph, reagent: None } => format!("held at pH {}", trimmed(*ph)),
-        Treatment::HoldPh { ph, reagent: Some(reagent) } => format!("held at pH {} with {reagent}", trimmed(*ph)),
+        Treatment::HoldPh { ph, reagent: Some(reagent) } => {
+            format!("held at pH {} with {reagent}", trimmed(*ph))
+        }
         Treatment::WarmTo(temperature) => format!("brought to {} degC", trimmed(temperature.celsius())),
         Treatment::CompressTo(pressure) => format!("brought to {} bar", trimmed(pressure.bar())),
     }
@@ -74,14 +90,18 @@ impl From<SurveyError> for Fail {
 /// A mineral or gas must be known to some shipped ledger, or to the sample's own; whether the ledger finally used knows
 /// it is checked at equilibrium.
 fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
-    let shipped: Vec<Ledger> = shipped::names().iter().filter_map(|name| shipped::ledger(name, None).ok()).collect();
+    let shipped: Vec<Ledger> =
+        shipped::names().iter().filter_map(|name| shipped::ledger(name, None).ok()).collect();
     if sample.ledger().is_some() || shipped.iter().any(|ledger| ledger.find_phase(name).is_ok()) {
         return Ok(());
     }
-    let names: Vec<&str> = shipped.iter().flat_map(|ledger| ledger.phases_by_name()).map(|(name, _)| name).collect();
+    let names: Vec<&str> =
+        shipped.iter().flat_map(|ledger| ledger.phases_by_name()).map(|(name, _)| name).collect();
     let help = nearest(name, names.iter().copied()).map(|near| format!("did you mean `{near}`?"));
     let advice = "a mineral or gas of your own belongs to a ledger: use `.with_ledger(book)` first";
-    Err(fail(format!("no shipped ledger knows a mineral or gas `{name}`")).help(help.unwrap_or_else(|| advice.into())).argument(0))
+    Err(fail(format!("no shipped ledger knows a mineral or gas `{name}`"))
+        .help(help.unwrap_or_else(|| advice.into()))
+        .argument(0))
 }
 
 fn treated(sample: &Sample, treatment: Treatment) -> ScriptResult<Sample> {
@@ -93,9 +113,12 @@ fn fugacity(given: &Dynamic) -> Result<f64, Fail> {
     if let Value::Text(text) = &value
         && (text.ends_with("ppm") || text.ends_with("ppb"))
     {
-        return Err(fail("a gas is given by its fugacity, not in ppm").help("write `\"420 uatm\"`, or the mole fraction times the pressure").argument(1));
+        return Err(fail("a gas is given by its fugacity, not in ppm")
+            .help("write `\"420 uatm\"`, or the mole fraction times the pressure")
+            .argument(1));
     }
-    let bar = crate::named::quantity("fugacity", value, Kind::Pressure).map_err(|fault| fail(fault.message).argument(1))?;
+    let bar = crate::named::quantity("fugacity", value, Kind::Pressure)
+        .map_err(|fault| fail(fault.message).argument(1))?;
     let bar = Pressure::try_from(&bar).map_err(|error| fail(error.to_string()).argument(1))?;
     Ok(bar.bar())
 }
@@ -129,7 +152,9 @@ fn csv_options(options: &Map) -> Result<CsvOptions, Fail> {
                 .into_iter()
                 .map(|(from, to)| match to {
                     Value::Text(to) => Ok((from, to)),
-                    other => Err(fail(format!("`{key}` takes a map of texts, not {}", other.kind())).key(from)),
+                    other => {
+                        Err(fail(format!("`{key}` takes a map of texts, not {}", other.kind())).key(from))
+                    }
                 })
                 .collect(),
             Some(other) => Err(fail(format!("`{key}` takes a map of texts, not {}", other.kind())).key(key)),
@@ -143,14 +168,18 @@ fn csv_options(options: &Map) -> Result<CsvOptions, Fail> {
 fn survey(context: &NativeCallContext, name: &str, options: &CsvOptions) -> ScriptResult<Array> {
     let host = Host::of(context);
     let path = host.files().path_to_read(name).map_err(|error| Fail::from(error).argument(0))?;
-    let bytes = std::fs::read(&path).map_err(|error| fail(format!("cannot read `{name}`: {error}")).argument(0))?;
+    let bytes =
+        std::fs::read(&path).map_err(|error| fail(format!("cannot read `{name}`: {error}")).argument(0))?;
     let survey = Survey::read(&bytes, options).map_err(|error| match error {
         SurveyError::Csv(error) => fail(format!("{name}: {error}")).argument(0),
         other => fail(format!("{name}: {other}")).argument(0),
     })?;
     let mut told = vec![count(survey.samples.len(), "row")];
     if !survey.replacements.is_empty() {
-        told.push(format!("{} below the detection limit replaced", count(survey.replacements.len(), "value")));
+        told.push(format!(
+            "{} below the detection limit replaced",
+            count(survey.replacements.len(), "value")
+        ));
     }
     host.message(&format!("{name}: {}", told.join(", ")));
     for fault in &survey.faults {
@@ -216,7 +245,11 @@ mod sample_functions {
     pub fn but(sample: &mut Sample, changes: Map) -> ScriptResult<Sample> {
         let mut read = BTreeMap::new();
         for (key, given) in changes {
-            let change = if given.is_unit() { None } else { Some(value(&given).map_err(|error| error.key(key.to_string()))?) };
+            let change = if given.is_unit() {
+                None
+            } else {
+                Some(value(&given).map_err(|error| error.key(key.to_string()))?)
+            };
             read.insert(key.to_string(), change);
         }
         Ok(sample.but(read).map_err(Fail::from)?)
@@ -248,7 +281,10 @@ mod sample_functions {
     #[rhai_fn(name = "saturate", pure, return_raw)]
     pub fn saturate_at(sample: &mut Sample, solid: &str, index: Dynamic) -> ScriptResult<Sample> {
         known(sample, solid)?;
-        treated(sample, Treatment::Saturate { solid: solid.into(), index: plain("a saturation index", &index)? })
+        treated(
+            sample,
+            Treatment::Saturate { solid: solid.into(), index: plain("a saturation index", &index)? },
+        )
     }
     /// Solids that may form where the water is supersaturated: a name or a list of names.
     ///
@@ -273,7 +309,12 @@ mod sample_functions {
     }
     /// A value kept through all treatments: `.hold("pH", 7)`, by hydrogen ions against inert charge.
     #[rhai_fn(name = "hold", pure, return_raw)]
-    pub fn hold(context: NativeCallContext, sample: &mut Sample, what: &str, value: Dynamic) -> ScriptResult<Sample> {
+    pub fn hold(
+        context: NativeCallContext,
+        sample: &mut Sample,
+        what: &str,
+        value: Dynamic,
+    ) -> ScriptResult<Sample> {
         Host::of(&context).message("warning: pH is held by hydrogen ions against inert charge; name a reagent, such as `\"NaOH\"`, to hold it by one");
         hold_with(sample, what, value, None)
     }
@@ -313,14 +354,18 @@ mod sample_functions {
 
 fn hold_with(sample: &Sample, what: &str, value: Dynamic, reagent: Option<String>) -> ScriptResult<Sample> {
     if what != "pH" {
-        return fail(format!("`{what}` cannot be held")).help("only `pH` can; a gas is held by `.open_to`, a solid by `.saturate`").argument(0).raise();
+        return fail(format!("`{what}` cannot be held"))
+            .help("only `pH` can; a gas is held by `.open_to`, a solid by `.saturate`")
+            .argument(0)
+            .raise();
     }
     if let Some(reagent) = &reagent {
         let ledger = match sample.ledger() {
             Some(ledger) => ledger.clone(),
             None => shipped::ledger("freshwater", None).map_err(Fail::from)?,
         };
-        crate::equilibrium::treatment::reagent(&ledger, reagent).map_err(|error| fail(error.to_string()).argument(2))?;
+        crate::equilibrium::treatment::reagent(&ledger, reagent)
+            .map_err(|error| fail(error.to_string()).argument(2))?;
     }
     treated(sample, Treatment::HoldPh { ph: plain("a pH", &value)?, reagent })
 }
@@ -329,4 +374,3 @@ fn hold_with(sample: &Sample, what: &str, value: Dynamic, reagent: Option<String
 pub(super) fn numbers(what: &str, values: &Array) -> Result<Vec<f64>, Fail> {
     values.iter().map(|value| plain(what, value)).collect()
 }
-

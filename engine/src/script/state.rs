@@ -23,7 +23,18 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
     vocabulary
         .module(rhai::exported_module!(state_functions))
         .module(rhai::exported_module!(run_functions))
-        .pure(&["equilibrate", "sweep", "get", "SI", "Omega", "molality", "activity", "gamma", "total", "fugacity"])
+        .pure(&[
+            "equilibrate",
+            "sweep",
+            "get",
+            "SI",
+            "Omega",
+            "molality",
+            "activity",
+            "gamma",
+            "total",
+            "fugacity",
+        ])
         .pure(&["amount", "observables", "certificate", "warnings", "failures", "states", "table", "column"])
         .native::<State>("State", show_state)
         .native::<Run>("Run", show_run);
@@ -31,9 +42,13 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
 
 fn show_state(state: &State, style: &Style) -> String {
     let read = |asked: &str, decimals: usize| {
-        state.get(asked).map_or_else(|_| "absent".to_string(), |answer| format!("{:.decimals$}", answer.value()))
+        state
+            .get(asked)
+            .map_or_else(|_| "absent".to_string(), |answer| format!("{:.decimals$}", answer.value()))
     };
-    let number = |asked: &str| state.get(asked).map_or_else(|_| "absent".into(), |answer| super::numbers::general(answer.value(), 4));
+    let number = |asked: &str| {
+        state.get(asked).map_or_else(|_| "absent".into(), |answer| super::numbers::general(answer.value(), 4))
+    };
     let degree = if style.ascii { "degC" } else { "°C" };
     let name = state.of().name().map_or_else(|| "state".to_string(), |name| format!("state of \"{name}\""));
     let mut lines = vec![
@@ -56,8 +71,13 @@ fn show_run(run: &Run, _: &Style) -> String {
     let axes: Vec<String> = run.axes().iter().map(|axis| axis.title().to_string()).collect();
     let failures = if failed == 0 { String::new() } else { format!(", {failed} failed (`.failures()`)") };
     let notes = run.warnings().len();
-    let notes = if notes == 0 { String::new() } else { format!(", {} (`.warnings()`)", count(notes, "note")) };
-    format!("run of {} over {}{failures}{notes}; `.table([\"pH\", …])` shows it", count(run.len(), "state"), axes.join(", "))
+    let notes =
+        if notes == 0 { String::new() } else { format!(", {} (`.warnings()`)", count(notes, "note")) };
+    format!(
+        "run of {} over {}{failures}{notes}; `.table([\"pH\", …])` shows it",
+        count(run.len(), "state"),
+        axes.join(", ")
+    )
 }
 
 impl From<EquilibriumError> for Fail {
@@ -111,7 +131,9 @@ fn one(host: &Host, sample: &Sample, ledger: Option<&Ledger>) -> ScriptResult<St
 
 fn many(host: &Host, samples: &[Sample], ledger: Option<&Ledger>) -> ScriptResult<Run> {
     let total = samples.len() as u64;
-    let run = Run::equilibrate(samples, ledger, &settings(host), &|done| host.progress("equilibrate", done as u64, total));
+    let run = Run::equilibrate(samples, ledger, &settings(host), &|done| {
+        host.progress("equilibrate", done as u64, total)
+    });
     host.stop().check()?;
     Ok(run.map_err(Fail::from)?)
 }
@@ -128,7 +150,9 @@ fn samples(array: &Array) -> Result<Vec<Sample>, Fail> {
 /// The ledger in an options map, `#{ ledger: book }`.
 fn ledger_option(options: &Map) -> Result<Option<Ledger>, Fail> {
     if let Some(key) = options.keys().find(|key| key.as_str() != "ledger") {
-        return Err(fail(format!("unknown key `{key}`")).help("the only option is `ledger`").key(key.to_string()));
+        return Err(fail(format!("unknown key `{key}`"))
+            .help("the only option is `ledger`")
+            .key(key.to_string()));
     }
     let ledger = options.get("ledger").map(|ledger| {
         ledger.clone().try_cast::<Ledger>().ok_or_else(|| fail("`ledger` takes a ledger").key("ledger"))
@@ -138,7 +162,9 @@ fn ledger_option(options: &Map) -> Result<Option<Ledger>, Fail> {
 
 fn axis(title: &str, values: &Dynamic) -> Result<Axis, Fail> {
     let list = values.read_lock::<Array>();
-    let list = list.ok_or_else(|| fail(format!("the axis `{title}` takes a list of numbers, such as `linspace(6, 9, 31)`")).key(title))?;
+    let list = list.ok_or_else(|| {
+        fail(format!("the axis `{title}` takes a list of numbers, such as `linspace(6, 9, 31)`")).key(title)
+    })?;
     Axis::new(title, numbers("an axis", &list)?).map_err(|error| Fail::from(error).key(title))
 }
 
@@ -153,14 +179,23 @@ fn axes_of_list(axes: &Array) -> Result<Vec<Axis>, Fail> {
         let title = list.first()?.read_lock::<rhai::ImmutableString>()?.to_string();
         (list.len() == 2).then(|| axis(&title, &list[1]))
     };
-    let wrong = || fail("an ordered sweep takes a list of pairs: `[[\"pH\", [...]], [\"temperature\", [...]]]`").argument(1);
+    let wrong = || {
+        fail("an ordered sweep takes a list of pairs: `[[\"pH\", [...]], [\"temperature\", [...]]]`")
+            .argument(1)
+    };
     axes.iter().map(|item| pair(item).unwrap_or_else(|| Err(wrong()))).collect()
 }
 
-fn over_axes(context: &NativeCallContext, sample: &Sample, axes: &[Axis], ledger: Option<&Ledger>) -> ScriptResult<Run> {
+fn over_axes(
+    context: &NativeCallContext,
+    sample: &Sample,
+    axes: &[Axis],
+    ledger: Option<&Ledger>,
+) -> ScriptResult<Run> {
     let host = Host::of(context);
     let points: u64 = axes.iter().map(|axis| axis.len() as u64).product();
-    let run = sweep(sample, axes, ledger, &settings(&host), &|done| host.progress("sweep", done as u64, points));
+    let run =
+        sweep(sample, axes, ledger, &settings(&host), &|done| host.progress("sweep", done as u64, points));
     host.stop().check()?;
     Ok(run.map_err(Fail::from)?)
 }
@@ -188,7 +223,9 @@ fn over_closure(
         let type_name = made.type_name();
         let Some(sample) = made.clone().try_cast::<Sample>() else {
             let made = super::words::a_type(type_name);
-            return fail(format!("the closure of a sweep returns a sample or a state, not {made}")).argument(2).raise();
+            return fail(format!("the closure of a sweep returns a sample or a state, not {made}"))
+                .argument(2)
+                .raise();
         };
         match equilibrate(&sample, ledger, &settings(&host)) {
             Err(EquilibriumError::Stopped) => host.stop().check().map(|()| Err("interrupted".into())),
@@ -202,7 +239,9 @@ fn over_closure(
 fn texts(items: &Array, what: &str) -> Result<Vec<String>, Fail> {
     let text = |item: &Dynamic| {
         let text = item.read_lock::<rhai::ImmutableString>().map(|text| text.to_string());
-        text.ok_or_else(|| fail(format!("{what} are texts, not {}", super::words::a_type(item.type_name()))).argument(0))
+        text.ok_or_else(|| {
+            fail(format!("{what} are texts, not {}", super::words::a_type(item.type_name()))).argument(0)
+        })
     };
     items.iter().map(text).collect()
 }
@@ -210,17 +249,34 @@ fn texts(items: &Array, what: &str) -> Result<Vec<String>, Fail> {
 fn certificate_table(state: &State) -> Result<Table, Fail> {
     let certificate = state.certificate();
     let bound = certificate.ln_c_error.map(|error| error / std::f64::consts::LN_10);
-    let smallest = if certificate.smallest_amount.is_finite() { Some(certificate.smallest_amount) } else { None };
-    let saturation = if certificate.saturation.is_finite() { Some(certificate.saturation / std::f64::consts::LN_10) } else { None };
+    let smallest =
+        if certificate.smallest_amount.is_finite() { Some(certificate.smallest_amount) } else { None };
+    let saturation = if certificate.saturation.is_finite() {
+        Some(certificate.saturation / std::f64::consts::LN_10)
+    } else {
+        None
+    };
     let rows: [(&str, Option<f64>, &str); 8] = [
         ("mass balance", Some(certificate.balance), "largest error relative to the sum of its terms"),
-        ("mass action and balance", Some(certificate.residual), "largest logarithmic residual in the dominant basis"),
+        (
+            "mass action and balance",
+            Some(certificate.residual),
+            "largest logarithmic residual in the dominant basis",
+        ),
         ("error of log concentrations", bound, "proven bound, at the given activity coefficients"),
         ("ionic strength", Some(certificate.ionic_strength), "relative error"),
-        ("roots of ionic strength", Some(certificate.ionic_strength_roots as f64), "seen; the lowest is taken"),
+        (
+            "roots of ionic strength",
+            Some(certificate.ionic_strength_roots as f64),
+            "seen; the lowest is taken",
+        ),
         ("absent solids", saturation, "largest saturation index above target: below zero"),
         ("present solids", smallest, "smallest amount, mol/kg(water)"),
-        ("condition", Some(certificate.condition), "relative change of a concentration per relative change of the totals"),
+        (
+            "condition",
+            Some(certificate.condition),
+            "relative change of a concentration per relative change of the totals",
+        ),
     ];
     Table::new([
         Column::texts("check", rows.iter().map(|(check, ..)| *check)),
@@ -252,7 +308,11 @@ mod state_functions {
     }
     /// The equilibrium of a water with a given ledger.
     #[rhai_fn(name = "equilibrate", return_raw)]
-    pub fn equilibrate_with(context: NativeCallContext, sample: Sample, ledger: Ledger) -> ScriptResult<State> {
+    pub fn equilibrate_with(
+        context: NativeCallContext,
+        sample: Sample,
+        ledger: Ledger,
+    ) -> ScriptResult<State> {
         one(&Host::of(&context), &sample, Some(&ledger))
     }
     /// The equilibria of a list of waters, as a run; one that fails is a row with its reason.
@@ -261,7 +321,11 @@ mod state_functions {
         many(&Host::of(&context), &samples(&waters)?, None)
     }
     #[rhai_fn(name = "equilibrate", return_raw)]
-    pub fn equilibrate_list_with(context: NativeCallContext, waters: Array, ledger: Ledger) -> ScriptResult<Run> {
+    pub fn equilibrate_list_with(
+        context: NativeCallContext,
+        waters: Array,
+        ledger: Ledger,
+    ) -> ScriptResult<Run> {
         many(&Host::of(&context), &samples(&waters)?, Some(&ledger))
     }
 
@@ -413,7 +477,12 @@ mod run_functions {
     }
     /// The same with options: `#{ ledger: book }`.
     #[rhai_fn(name = "sweep", return_raw)]
-    pub fn sweep_map_with(context: NativeCallContext, sample: Sample, axes: Map, options: Map) -> ScriptResult<Run> {
+    pub fn sweep_map_with(
+        context: NativeCallContext,
+        sample: Sample,
+        axes: Map,
+        options: Map,
+    ) -> ScriptResult<Run> {
         over_axes(&context, &sample, &axes_of_map(&axes)?, ledger_option(&options)?.as_ref())
     }
     /// The same with axes in a given order: `[["pH", [...]], ["temperature", [...]]]`.
@@ -422,7 +491,12 @@ mod run_functions {
         over_axes(&context, &sample, &axes_of_list(&axes)?, None)
     }
     #[rhai_fn(name = "sweep", return_raw)]
-    pub fn sweep_list_with(context: NativeCallContext, sample: Sample, axes: Array, options: Map) -> ScriptResult<Run> {
+    pub fn sweep_list_with(
+        context: NativeCallContext,
+        sample: Sample,
+        axes: Array,
+        options: Map,
+    ) -> ScriptResult<Run> {
         over_axes(&context, &sample, &axes_of_list(&axes)?, ledger_option(&options)?.as_ref())
     }
     /// Any water a script can build from one number: the closure returns a sample or a state. It is called in parallel and
@@ -434,7 +508,12 @@ mod run_functions {
     /// run.table(["pH"]).len   // 2
     /// ```
     #[rhai_fn(name = "sweep", return_raw)]
-    pub fn sweep_closure(context: NativeCallContext, title: &str, values: Array, water: FnPtr) -> ScriptResult<Run> {
+    pub fn sweep_closure(
+        context: NativeCallContext,
+        title: &str,
+        values: Array,
+        water: FnPtr,
+    ) -> ScriptResult<Run> {
         over_closure(&context, title, &values, &water, None)
     }
     #[rhai_fn(name = "sweep", return_raw)]

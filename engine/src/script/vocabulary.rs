@@ -8,7 +8,8 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
-    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, quantity, reaction, sample, state, table,
+    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, quantity, reaction, sample,
+    state, table,
 };
 
 /// Gathers everything a script can name.

@@ -87,8 +87,22 @@ pub struct Read {
 
 /// The keys of a sample besides amounts.
 pub const KEYS: [&str; 16] = [
-    "name", "temperature", "pressure", "volume_temperature", "density", "water", "pH", "alkalinity", "DIC", "fCO2",
-    "pCO2", "xCO2", "from", "make_up", "labels", "ledger",
+    "name",
+    "temperature",
+    "pressure",
+    "volume_temperature",
+    "density",
+    "water",
+    "pH",
+    "alkalinity",
+    "DIC",
+    "fCO2",
+    "pCO2",
+    "xCO2",
+    "from",
+    "make_up",
+    "labels",
+    "ledger",
 ];
 
 /// Keys of later landings, refused with a word rather than as misspelt.
@@ -117,7 +131,8 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let name = named.text("name")?;
     let setting = read_setting(&mut named, &mut defaults)?;
     let density = read_density(&mut named)?;
-    let volume_temperature = named.take("volume_temperature").map(|v| reaction::temperature("volume_temperature", v));
+    let volume_temperature =
+        named.take("volume_temperature").map(|v| reaction::temperature("volume_temperature", v));
     let mut measured = Measured {
         evidence: read_evidence(&mut named, setting.pressure)?,
         make_up: named.text("make_up")?,
@@ -129,7 +144,9 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
         measured.amounts.push(read_amount(key, value)?);
     }
     check_make_up(&measured)?;
-    if measured.evidence.dic.is_some() && measured.amounts.iter().any(|(analyte, ..)| analyte.element().symbol() == "C") {
+    if measured.evidence.dic.is_some()
+        && measured.amounts.iter().any(|(analyte, ..)| analyte.element().symbol() == "C")
+    {
         return Err(KeyFault::new("DIC", "`DIC` and `C` state the same carbon: keep one"));
     }
     Ok(Read { name, setting, measured, defaults })
@@ -150,7 +167,10 @@ fn read_setting(named: &mut Named, defaults: &mut Vec<String>) -> Result<Setting
     };
     let water = named.quantity("water", Kind::Mass)?.map(|quantity| {
         let kilogram = crate::units::Unit::parse("kg").expect("a known unit");
-        quantity.to(&kilogram).map(|mass| mass.value()).map_err(|error| KeyFault::new("water", error.to_string()))
+        quantity
+            .to(&kilogram)
+            .map(|mass| mass.value())
+            .map_err(|error| KeyFault::new("water", error.to_string()))
     });
     let water = water.transpose()?.unwrap_or(1.0);
     if water <= 0.0 {
@@ -192,7 +212,9 @@ fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyF
         }
     };
     let amount = |key: &str, given: Option<Quantity>, read: fn(&Quantity) -> Result<Amount, String>| {
-        given.map(|given| read(&given).map_err(|message| KeyFault::new(key, format!("`{key}`: {message}")))).transpose()
+        given
+            .map(|given| read(&given).map_err(|message| KeyFault::new(key, format!("`{key}`: {message}"))))
+            .transpose()
     };
     let alkalinity = named.quantity("alkalinity", Kind::Alkalinity)?;
     let alkalinity = amount("alkalinity", alkalinity, concentration::alkalinity)?;
@@ -203,7 +225,8 @@ fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyF
     if let Some(dic) = &dic {
         not_negative("DIC", dic)?;
     }
-    let evidence = Evidence { ph, alkalinity, dic, co2: read_co2(named, pressure)?, from: named.texts("from")? };
+    let evidence =
+        Evidence { ph, alkalinity, dic, co2: read_co2(named, pressure)?, from: named.texts("from")? };
     check_pair(&evidence)?;
     Ok(evidence)
 }
@@ -322,5 +345,8 @@ fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
         return Ok(());
     }
     let keys: Vec<&str> = measured.amounts.iter().map(|(_, own, _)| own.as_str()).collect();
-    Err(KeyFault::new("make_up", format!("`make_up` names `{key}`, which was not given: {} were", list(&keys))))
+    Err(KeyFault::new(
+        "make_up",
+        format!("`make_up` names `{key}`, which was not given: {} were", list(&keys)),
+    ))
 }

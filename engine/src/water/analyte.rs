@@ -21,7 +21,9 @@ pub enum Analyte {
 #[non_exhaustive]
 pub enum AnalyteError {
     /// Hydrogen and oxygen are counted by water and pH.
-    #[error("`{0}` is not given as an amount: hydrogen and oxygen follow from the water, its pH and its alkalinity")]
+    #[error(
+        "`{0}` is not given as an amount: hydrogen and oxygen follow from the water, its pH and its alkalinity"
+    )]
     OfWater(String),
     /// A carbonate ion, which the analysis of a water does not measure.
     #[error("`{0}` is not measured as such: give `alkalinity` or `DIC`, and `pH`")]
@@ -84,7 +86,9 @@ impl Analyte {
         let elements: Vec<&str> = species.elements_beside_water().map(Element::symbol).collect();
         match elements.as_slice() {
             [] => Err(AnalyteError::OfWater(species.to_string())),
-            ["C"] if ["HCO3^-", "CO3^2-"].contains(&species.key()) => Err(AnalyteError::Carbonate(species.to_string())),
+            ["C"] if ["HCO3^-", "CO3^2-"].contains(&species.key()) => {
+                Err(AnalyteError::Carbonate(species.to_string()))
+            }
             [_] => Ok(Self::Species(species)),
             several => {
                 Err(AnalyteError::Several { species: species.to_string(), elements: several.join(" and ") })
@@ -97,7 +101,9 @@ impl Analyte {
     pub fn element(&self) -> Element {
         match self {
             Self::Element(element) | Self::State(element, _) => *element,
-            Self::Species(species) => species.elements_beside_water().next().expect("checked to hold one element"),
+            Self::Species(species) => {
+                species.elements_beside_water().next().expect("checked to hold one element")
+            }
         }
     }
 
@@ -201,11 +207,17 @@ mod tests {
     #[test]
     fn what_is_no_analyte_says_why() {
         let message = |key: &str| Analyte::parse(key).unwrap_err().to_string();
-        assert_eq!(message("HCO3^-"), "`HCO3^-` is not measured as such: give `alkalinity` or `DIC`, and `pH`");
+        assert_eq!(
+            message("HCO3^-"),
+            "`HCO3^-` is not measured as such: give `alkalinity` or `DIC`, and `pH`"
+        );
         assert!(message("H").contains("follow from the water"));
         assert!(message("OH^-").contains("follow from the water"));
         assert_eq!(message("NaCl"), "`NaCl(aq)` holds Na and Cl: give each of them as an amount of its own");
-        assert_eq!(message("Fe(2)"), "`Fe(2)` is no oxidation state: write it in Roman numerals, as in `Fe(II)`, `N(-III)` or `Fe(0)`");
+        assert_eq!(
+            message("Fe(2)"),
+            "`Fe(2)` is no oxidation state: write it in Roman numerals, as in `Fe(II)`, `N(-III)` or `Fe(0)`"
+        );
         assert!(message("alkalinty").contains("is no element"));
     }
 }

@@ -72,7 +72,8 @@ pub enum Per {
 }
 
 impl Per {
-    const ALL: [(Self, &'static str); 3] = [(Self::Litre, "L"), (Self::Water, "kg(water)"), (Self::Solution, "kg(solution)")];
+    const ALL: [(Self, &'static str); 3] =
+        [(Self::Litre, "L"), (Self::Water, "kg(water)"), (Self::Solution, "kg(solution)")];
 
     /// What an amount per this is multiplied by to be per kilogram of water.
     #[must_use]
@@ -106,7 +107,10 @@ pub fn amount(analyte: &Analyte, given: &Quantity) -> Result<Amount, String> {
             let species = Species::parse(text).map_err(|error| error.to_string())?;
             let atoms = species.count(analyte.element());
             if atoms == 0.into() {
-                return Err(format!("`as {text}` has no {}: write it as something that holds it", analyte.element()));
+                return Err(format!(
+                    "`as {text}` has no {}: write it as something that holds it",
+                    analyte.element()
+                ));
             }
             (species.molar_mass(), rational::to_f64(atoms / analyte.atoms()))
         }
@@ -124,7 +128,9 @@ fn equivalents_per_mole(analyte: &Analyte, given: &Quantity) -> Result<f64, Stri
     }
     match analyte {
         Analyte::Species(species) if species.charge() != 0 => Ok(f64::from(species.charge().abs())),
-        _ => Err(format!("equivalents of {analyte} need its charge: write the ion as the key, such as `Ca^2+`, or give moles")),
+        _ => Err(format!(
+            "equivalents of {analyte} need its charge: write the ion as the key, such as `Ca^2+`, or give moles"
+        )),
     }
 }
 
@@ -167,12 +173,14 @@ fn in_moles(
 ) -> Result<(Quantity, Per), String> {
     let given = relabelled(given, given.unit().per_kg_of(KgOf::Water))?;
     for (per, denominator) in Per::ALL {
-        let unit = |numerator: &str| Unit::parse(&format!("{numerator}/{denominator}")).expect("a known unit");
+        let unit =
+            |numerator: &str| Unit::parse(&format!("{numerator}/{denominator}")).expect("a known unit");
         if let Ok(moles) = given.to(&unit("mol")) {
             return Ok((moles, per));
         }
         if let Ok(grams) = given.to(&unit("g")) {
-            let molar_mass = grams_per_mole.ok_or_else(|| format!("the molar mass of {what} is not known: give moles"))?;
+            let molar_mass =
+                grams_per_mole.ok_or_else(|| format!("the molar mass of {what} is not known: give moles"))?;
             let moles = grams.value() / molar_mass;
             let moles = Quantity::from_partials(moles, unit("mol"), &[(&grams, 1.0 / molar_mass)]);
             return moles.map(|moles| (moles, per)).map_err(|error| error.to_string());
@@ -188,7 +196,8 @@ fn relabelled(quantity: &Quantity, unit: Unit) -> Result<Quantity, String> {
 
 fn scaled(quantity: Quantity, factor: f64) -> Result<Quantity, String> {
     let unit = quantity.unit().clone();
-    Quantity::from_partials(quantity.value() * factor, unit, &[(&quantity, factor)]).map_err(|error| error.to_string())
+    Quantity::from_partials(quantity.value() * factor, unit, &[(&quantity, factor)])
+        .map_err(|error| error.to_string())
 }
 
 #[cfg(test)]

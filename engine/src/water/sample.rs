@@ -63,12 +63,26 @@ impl Sample {
             defaults => vec![format!("not given, so taken: {}", defaults.join(", "))],
         };
         let analysis = Analysis::Measured(Box::new(measured));
-        Ok(Self(Arc::new(Inner { name, setting, analysis, treatments: vec![], ledger: None, labels, entries, notes })))
+        Ok(Self(Arc::new(Inner {
+            name,
+            setting,
+            analysis,
+            treatments: vec![],
+            ledger: None,
+            labels,
+            entries,
+            notes,
+        })))
     }
 
     /// A water of dissolved totals, mol/kg(water) of species, with no surroundings and no solids.
     #[must_use]
-    pub fn dissolved(name: Option<String>, setting: Setting, totals: Vec<(Species, f64)>, ledger: Ledger) -> Self {
+    pub fn dissolved(
+        name: Option<String>,
+        setting: Setting,
+        totals: Vec<(Species, f64)>,
+        ledger: Ledger,
+    ) -> Self {
         Self(Arc::new(Inner {
             name,
             setting,
@@ -84,7 +98,8 @@ impl Sample {
     /// A row of a survey that could not be read: it keeps its place, and its equilibrium fails with the reason.
     #[must_use]
     pub fn spoilt(name: Option<String>, labels: BTreeMap<String, String>, reason: String) -> Self {
-        let setting = Setting { temperature: Temperature::REFERENCE, pressure: Pressure::ATMOSPHERE, water: 1.0 };
+        let setting =
+            Setting { temperature: Temperature::REFERENCE, pressure: Pressure::ATMOSPHERE, water: 1.0 };
         let dissolved = Self::dissolved(name, setting, vec![], Ledger::default());
         let inner = (*dissolved.0).clone();
         Self(Arc::new(Inner { analysis: Analysis::Spoilt(reason), ledger: None, labels, ..inner }))
@@ -209,10 +224,14 @@ fn check(treatment: &Treatment) -> Result<(), SampleError> {
         Treatment::OpenTo { gas, fugacity } if !(fugacity.is_finite() && *fugacity > 0.0) => {
             refuse(format!("the fugacity of `{gas}` must be above zero, not {fugacity} bar"))
         }
-        Treatment::Saturate { solid, index: value } | Treatment::Allow { solid, above: value } if !value.is_finite() => {
+        Treatment::Saturate { solid, index: value } | Treatment::Allow { solid, above: value }
+            if !value.is_finite() =>
+        {
             refuse(format!("the saturation index of `{solid}` must be a finite number"))
         }
-        Treatment::HoldPh { ph, .. } if !(-2.0..=17.0).contains(ph) => refuse(format!("pH {ph} lies outside -2 to 17")),
+        Treatment::HoldPh { ph, .. } if !(-2.0..=17.0).contains(ph) => {
+            refuse(format!("pH {ph} lies outside -2 to 17"))
+        }
         _ => Ok(()),
     }
 }
@@ -224,9 +243,13 @@ fn take_labels(entries: &mut BTreeMap<String, Value>) -> Result<BTreeMap<String,
             .into_iter()
             .map(|(key, value)| match value {
                 Value::Text(text) => Ok((key, text)),
-                other => Err(KeyFault::new("labels", format!("the label `{key}` is a text, not {}", other.kind()))),
+                other => {
+                    Err(KeyFault::new("labels", format!("the label `{key}` is a text, not {}", other.kind())))
+                }
             })
             .collect(),
-        Some(other) => Err(KeyFault::new("labels", format!("`labels` takes a map of texts, not {}", other.kind()))),
+        Some(other) => {
+            Err(KeyFault::new("labels", format!("`labels` takes a map of texts, not {}", other.kind())))
+        }
     }
 }

@@ -2,8 +2,8 @@
 
 use std::collections::BTreeMap;
 
-use super::analyte::{Analyte, AnalyteError};
 use super::analysis::KEYS;
+use super::analyte::{Analyte, AnalyteError};
 use super::csv_text::{ColumnKind, CsvCell, CsvError, CsvOptions, CsvText, Header};
 use super::sample::Sample;
 use crate::named::Value;
@@ -79,7 +79,11 @@ impl Survey {
             }
         });
         let samples = samples.collect();
-        Ok(Self { samples, replacements: text.replacements.iter().map(ToString::to_string).collect(), faults })
+        Ok(Self {
+            samples,
+            replacements: text.replacements.iter().map(ToString::to_string).collect(),
+            faults,
+        })
     }
 }
 
@@ -158,7 +162,9 @@ fn read_row(columns: &[Column], cells: &[CsvCell]) -> Result<Sample, String> {
 fn number(value: f64, sigma: Option<f64>, unit: Option<&Unit>, label: &str) -> Result<Value, QuantityError> {
     match (unit, sigma, kind_of(label)) {
         (None, None, _) | (None, _, None) => Ok(Value::Number(value)),
-        (None, Some(_), Some(kind)) => Quantity::measured(value, kind.default_unit(), sigma, label).map(Value::Quantity),
+        (None, Some(_), Some(kind)) => {
+            Quantity::measured(value, kind.default_unit(), sigma, label).map(Value::Quantity)
+        }
         (Some(unit), sigma, _) => Quantity::measured(value, unit.clone(), sigma, label).map(Value::Quantity),
     }
 }
@@ -202,7 +208,8 @@ mod tests {
 
     #[test]
     fn a_misspelt_analyte_or_unit_stops_the_file() {
-        let error = |text: &str| Survey::read(text.as_bytes(), &CsvOptions::default()).unwrap_err().to_string();
+        let error =
+            |text: &str| Survey::read(text.as_bytes(), &CsvOptions::default()).unwrap_err().to_string();
         assert!(error("pH,Cq [mg/L]\n8,1\n").contains("column `Cq [mg/L]`: `Cq` is no element"));
         assert!(error("pH,Ca [mgg/L]\n8,1\n").contains("unknown unit"));
         assert!(error("pH,temperature [mg/L]\n8,1\n").contains("is no unit of temperature"));

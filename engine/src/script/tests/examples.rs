@@ -9,7 +9,9 @@ fn examples_hold() {
     assert!(examples.len() > 50, "only {} examples were found", examples.len());
     for (name, example) in examples {
         let shown = echo(&engine, &example);
-        if let Some((_, expected)) = example.trim_end().lines().last().and_then(|line| line.split_once("   // ")) {
+        if let Some((_, expected)) =
+            example.trim_end().lines().last().and_then(|line| line.split_once("   // "))
+        {
             assert_eq!(shown, expected, "the example of `{name}`:\n{example}");
         }
     }

@@ -555,8 +555,8 @@ mod modules {
 }
 
 mod files {
-    use crate::script::sandbox::SandboxError;
     use super::*;
+    use crate::script::sandbox::SandboxError;
 
     #[test]
     fn a_script_replaces_only_what_it_wrote() {

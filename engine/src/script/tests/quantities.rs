@@ -90,7 +90,8 @@ fn comparison_is_by_value_and_never_silent() {
 
 #[test]
 fn the_budget_ends_with_what_was_not_stated() {
-    let script = "let k = uncertain(2, 0.1, #{ name: \"k\" }); let m = quantity(\"3 mmol/L\"); (k * m).budget()";
+    let script =
+        "let k = uncertain(2, 0.1, #{ name: \"k\" }); let m = quantity(\"3 mmol/L\"); (k * m).budget()";
     shows(&format!("{script}.column(\"input\").values"), "[\"k\", \"not stated: 1 input\", \"3 mmol/L\"]");
     shows(&format!("{script}.column(\"sensitivity\").values"), "[3, (), 2]");
     shows(&format!("{script}.column(\"sigma\").values"), "[0.1, (), ()]");
@@ -99,12 +100,7 @@ fn the_budget_ends_with_what_was_not_stated() {
 
 #[test]
 fn messages() {
-    fails(
-        "quantity(\"41.2 mg/l\")",
-        "unknown unit `mg/l` (did you mean `mg/L`?)",
-        &[],
-        "\"41.2 mg/l\"",
-    );
+    fails("quantity(\"41.2 mg/l\")", "unknown unit `mg/l` (did you mean `mg/L`?)", &[], "\"41.2 mg/l\"");
     fails("quantity(3, \"mgL\")", "unknown unit `mgL` (did you mean `mg/L`?)", &[], "\"mgL\"");
     fails(
         "quantity(\"3\", \"mg/L\")",
@@ -119,7 +115,12 @@ fn messages() {
         &["leave it out when it is not known"],
         "uncertain",
     );
-    fails("uncertain(3, 0.1, #{ covrage: 2 })", "unknown key `covrage`", &["did you mean `coverage`?"], "covrage");
+    fails(
+        "uncertain(3, 0.1, #{ covrage: 2 })",
+        "unknown key `covrage`",
+        &["did you mean `coverage`?"],
+        "covrage",
+    );
     fails(
         "uncertain(3, 0.1, #{ coverage: 0 })",
         "the coverage factor is 0: it must be above 0, such as 2 for a 2-sigma interval",
@@ -133,9 +134,29 @@ fn messages() {
         "+",
     );
     fails("(3 ± 0.1) + ()", "cannot add a Quantity and nothing `()`", &[], "+");
-    fails("correlate([3 ± 0.1, 2], 0.5)", "`correlate` takes a list of quantities, but found a whole number", &[], "[");
-    fails("correlate([3 ± 0.1, 2 ± 0.1], 2)", "a correlation coefficient is 2: it must lie between -1 and 1", &[], "correlate");
+    fails(
+        "correlate([3 ± 0.1, 2], 0.5)",
+        "`correlate` takes a list of quantities, but found a whole number",
+        &[],
+        "[",
+    );
+    fails(
+        "correlate([3 ± 0.1, 2 ± 0.1], 2)",
+        "a correlation coefficient is 2: it must lie between -1 and 1",
+        &[],
+        "correlate",
+    );
     fails("(3 ± 0.1).valeu", "a Quantity has no `.valeu`", &["did you mean `value`?"], "valeu");
-    fails("let q = 3 ± 0.1;\nq.to(\"mg/L\");\n1", "the result of `to` is not used", &["write `let name = …` to keep it"], "to");
-    fails("ln(quantity(\"2 mg/L\"))", "`ln` takes a pure number, not a value in `mg/L`: divide by 1 mg/L first", &[], "ln");
+    fails(
+        "let q = 3 ± 0.1;\nq.to(\"mg/L\");\n1",
+        "the result of `to` is not used",
+        &["write `let name = …` to keep it"],
+        "to",
+    );
+    fails(
+        "ln(quantity(\"2 mg/L\"))",
+        "`ln` takes a pure number, not a value in `mg/L`: divide by 1 mg/L first",
+        &[],
+        "ln",
+    );
 }
