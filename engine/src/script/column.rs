@@ -14,7 +14,8 @@ use crate::units::Unit;
 /// The type, its operators and its functions.
 pub(super) fn register(vocabulary: &mut Vocabulary) {
     let mut steps = Module::new();
-    steps.set_iter(TypeId::of::<Column>(), |column| Box::new(values_of(&column.cast::<Column>()).into_iter()));
+    steps
+        .set_iter(TypeId::of::<Column>(), |column| Box::new(values_of(&column.cast::<Column>()).into_iter()));
     vocabulary
         .native::<Column>("Column", |column, style| {
             Table::new([column.clone()]).map_or_else(|error| error.to_string(), |table| drawn(&table, style))
@@ -97,10 +98,12 @@ pub fn index(what: &str, idx: INT, length: usize) -> Result<usize, Fail> {
     let from_start = if idx < 0 { idx.saturating_add(size) } else { idx };
     let found = usize::try_from(from_start).ok().filter(|idx| *idx < length);
     found.ok_or_else(|| {
-        fail(format!("there is no row {idx}: this {what} has {}", crate::text::count(length, "row"))).help(match length {
-            0 => "it is empty".to_owned(),
-            _ => format!("they are counted from 0 to {}, or from the end: -1 is the last", length - 1),
-        })
+        fail(format!("there is no row {idx}: this {what} has {}", crate::text::count(length, "row"))).help(
+            match length {
+                0 => "it is empty".to_owned(),
+                _ => format!("they are counted from 0 to {}, or from the end: -1 is the last", length - 1),
+            },
+        )
     })
 }
 

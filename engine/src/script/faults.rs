@@ -75,12 +75,19 @@ mod tests {
     #[track_caller]
     fn case(text: &str, message: &str, help: &[&str]) {
         let fail = advised(text);
-        assert_eq!((fail.message.as_str(), fail.help), (message, help.iter().map(|&line| line.to_owned()).collect()));
+        assert_eq!(
+            (fail.message.as_str(), fail.help),
+            (message, help.iter().map(|&line| line.to_owned()).collect())
+        );
     }
 
     #[test]
     fn advice_stands_behind_a_semicolon_outside_of_names() {
-        case("unknown unit `mgL`; units of amount: mol/kg", "unknown unit `mgL`", &["units of amount: mol/kg"]);
+        case(
+            "unknown unit `mgL`; units of amount: mol/kg",
+            "unknown unit `mgL`",
+            &["units of amount: mol/kg"],
+        );
         case("`1; 2` does not read as a quantity", "`1; 2` does not read as a quantity", &[]);
         case("plain", "plain", &[]);
     }

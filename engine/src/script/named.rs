@@ -50,7 +50,9 @@ pub fn named(map: &Map) -> Result<Named, Fail> {
 /// Fails for anything else.
 pub fn one_or_many(value: &Dynamic) -> Result<Vec<String>, Fail> {
     let text = |value: &Dynamic| value.read_lock::<ImmutableString>().map(|text| text.to_string());
-    let unfit = |found: &Dynamic| fail(format!("a text or a list of texts is needed here, not {}", docs::described(found)));
+    let unfit = |found: &Dynamic| {
+        fail(format!("a text or a list of texts is needed here, not {}", docs::described(found)))
+    };
     if let Some(items) = value.read_lock::<Array>() {
         return items.iter().map(|item| text(item).ok_or_else(|| unfit(item))).collect();
     }
@@ -102,7 +104,9 @@ mod tests {
         assert!(matches!(read.take("Alk"), Some(Value::Quantity(quantity)) if quantity.value() == 2.0));
         assert!(matches!(read.take("open"), Some(Value::Flag(true))));
         assert!(matches!(read.take("list"), Some(Value::List(items)) if items.len() == 2));
-        assert!(matches!(read.take("more"), Some(Value::Map(map)) if matches!(map["coverage"], Value::Number(2.0))));
+        assert!(
+            matches!(read.take("more"), Some(Value::Map(map)) if matches!(map["coverage"], Value::Number(2.0)))
+        );
         assert!(read.finish().is_ok());
     }
 
@@ -122,6 +126,9 @@ mod tests {
         assert_eq!(one_or_many(&two), Ok(vec!["calcite".to_owned(), "gypsum".to_owned()]));
         let message = |value: Dynamic| one_or_many(&value).expect_err("no text").message;
         assert_eq!(message(1_i64.into()), "a text or a list of texts is needed here, not a whole number");
-        assert_eq!(message(Dynamic::from_array(vec![true.into()])), "a text or a list of texts is needed here, not a truth value");
+        assert_eq!(
+            message(Dynamic::from_array(vec![true.into()])),
+            "a text or a list of texts is needed here, not a truth value"
+        );
     }
 }

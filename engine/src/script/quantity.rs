@@ -107,14 +107,21 @@ fn compare(a: &Dynamic, b: &Dynamic) -> ScriptResult<Ordering> {
     let (Some(left), Some(right)) = (of(a), of(b)) else {
         let failure = fail(format!("cannot compare {} with {}", docs::described(a), docs::described(b)));
         let text = [a, b].into_iter().find(|value| value.is_string());
-        return failure.maybe_help(text.map(|text| format!("for a value in a unit write `quantity(\"{text}\")`"))).raise();
+        return failure
+            .maybe_help(text.map(|text| format!("for a value in a unit write `quantity(\"{text}\")`")))
+            .raise();
     };
     Ok(left.compare(&right)?)
 }
 
 /// How an input written as numbers is called in budgets.
 fn as_written(value: FLOAT, sigma: FLOAT, unit: &Unit) -> String {
-    format!("{} +/- {} {}", general(value, 12), general(sigma, 12), unit.symbol()).trim_end().to_owned()
+    format!("{} +/- {} {}", general(value, 12), general(sigma, 12), symbol(unit)).trim_end().to_owned()
+}
+
+/// The unit as text; nothing for a pure number.
+fn symbol(unit: &Unit) -> String {
+    if *unit == Unit::one() { String::new() } else { unit.symbol() }
 }
 
 fn read_unit(unit: &str, argument: usize) -> Result<Unit, Fail> {
@@ -139,7 +146,10 @@ fn power(base: &Quantity, exponent: &Quantity) -> ScriptResult<Quantity> {
 
 fn all_quantities(items: &[Dynamic]) -> Result<Vec<Quantity>, Fail> {
     let quantity = |item: &Dynamic| {
-        let unfit = || fail(format!("`correlate` takes a list of quantities, but found {}", docs::described(item))).argument(0);
+        let unfit = || {
+            fail(format!("`correlate` takes a list of quantities, but found {}", docs::described(item)))
+                .argument(0)
+        };
         item.read_lock::<Quantity>().map(|quantity| quantity.clone()).ok_or_else(unfit)
     };
     items.iter().map(quantity).collect()
@@ -149,7 +159,10 @@ fn all_quantities(items: &[Dynamic]) -> Result<Vec<Quantity>, Fail> {
 fn matrix(function: &str, rows: &[Dynamic]) -> Result<Vec<Vec<FLOAT>>, Fail> {
     let row = |row: &Dynamic| match row.read_lock::<Array>() {
         Some(items) => items.iter().map(|item| real(function, item)).collect(),
-        None => Err(fail(format!("`{function}` takes a number, or a matrix written as a list of lists of numbers")).argument(1)),
+        None => Err(fail(format!(
+            "`{function}` takes a number, or a matrix written as a list of lists of numbers"
+        ))
+        .argument(1)),
     };
     rows.iter().map(row).collect()
 }
@@ -222,7 +235,7 @@ mod quantity_functions {
     /// its correlations; one with a unit is converted.
     ///
     /// ```rhai
-    /// quantity((40 ± 1) / 2, "mg/L")   // 20 ± 0.5 mg/L
+    /// quantity((40 ± 1) / 2, "mg/L")   // 20.0 ± 0.5 mg/L
     /// ```
     #[rhai_fn(name = "quantity", return_raw)]
     pub fn quantity_in(value: Dynamic, unit: &str) -> ScriptResult<Quantity> {
@@ -233,7 +246,9 @@ mod quantity_functions {
                 .help(format!("write `quantity(\"{value} {unit}\")`"))
                 .argument(0)
                 .raise(),
-            None => fail(format!("`quantity` takes a number and a unit, not {}", docs::described(&value))).argument(0).raise(),
+            None => fail(format!("`quantity` takes a number and a unit, not {}", docs::described(&value)))
+                .argument(0)
+                .raise(),
         }
     }
 
@@ -275,13 +290,13 @@ mod quantity_functions {
     /// ```
     #[rhai_fn(name = "unit", get = "unit", pure)]
     pub fn unit(quantity: &mut Quantity) -> String {
-        if *quantity.unit() == Unit::one() { String::new() } else { quantity.unit().symbol() }
+        symbol(quantity.unit())
     }
 
     /// The same quantity in another unit, with the same inputs.
     ///
     /// ```rhai
-    /// quantity("2.5 +/- 0.1 mmol/L").to("umol/L")   // 2500 ± 100 µmol/L
+    /// quantity("2500 +/- 100 umol/L").to("mmol/L")   // 2.5 ± 0.1 mmol/L
     /// ```
     #[rhai_fn(return_raw, pure)]
     pub fn to(quantity: &mut Quantity, unit: &str) -> ScriptResult<Quantity> {
@@ -357,7 +372,11 @@ mod quantity_functions {
     /// fmt(quantity("41.2 +/- 0.8 mg/L"), ".2f")   // "41.20 ± 0.80 mg/L"
     /// ```
     #[rhai_fn(name = "fmt", return_raw)]
-    pub fn fmt_quantity(context: NativeCallContext, quantity: Quantity, format: &str) -> ScriptResult<String> {
+    pub fn fmt_quantity(
+        context: NativeCallContext,
+        quantity: Quantity,
+        format: &str,
+    ) -> ScriptResult<String> {
         let style = in_units(Host::of(&context).style());
         let mut text = format_number(quantity.value(), format)?;
         if let Some(sigma) = quantity.sigma().filter(|sigma| *sigma > 0.0) {
@@ -443,6 +462,8 @@ fn larger(a: &Dynamic, b: &Dynamic) -> ScriptResult<Quantity> {
 }
 
 fn both(function: &str, a: &Dynamic, b: &Dynamic) -> Result<(Quantity, Quantity), Fail> {
-    let one = |value: &Dynamic| of(value).ok_or_else(|| fail(format!("`{function}` takes numbers, not {}", docs::described(value))));
+    let one = |value: &Dynamic| {
+        of(value).ok_or_else(|| fail(format!("`{function}` takes numbers, not {}", docs::described(value))))
+    };
     Ok((one(a)?, one(b)?))
 }

@@ -54,7 +54,8 @@ fn from_rows(rows: &[Dynamic]) -> Result<Table, Fail> {
         row.read_lock::<Map>().map(|map| map.clone()).ok_or_else(unfit)
     });
     let maps: Vec<Map> = maps.collect::<Result<_, _>>()?;
-    let titles: std::collections::BTreeSet<&str> = maps.iter().flat_map(|map| map.keys().map(|key| key.as_str())).collect();
+    let titles: std::collections::BTreeSet<&str> =
+        maps.iter().flat_map(|map| map.keys().map(|key| key.as_str())).collect();
     let columns = titles.into_iter().map(|title| {
         let values = maps.iter().map(|map| map.get(title).cloned().unwrap_or(Dynamic::UNIT));
         column_of(title, values).map_err(|fail| fail.key(title))
@@ -81,7 +82,10 @@ fn titled(title: &str, values: &Dynamic) -> Result<Column, Fail> {
     }
     match values.read_lock::<Array>() {
         Some(values) => column_of(title, values.iter().cloned()),
-        None => Err(fail(format!("the column `{title}` takes an array of values, not {}", docs::described(values)))),
+        None => Err(fail(format!(
+            "the column `{title}` takes an array of values, not {}",
+            docs::described(values)
+        ))),
     }
 }
 
@@ -100,7 +104,9 @@ fn order(word: &str) -> Result<Order, Fail> {
     match word {
         "ascending" => Ok(Order::Ascending),
         "descending" => Ok(Order::Descending),
-        _ => Err(fail(format!("unknown order `{word}`")).help("write \"ascending\" or \"descending\"").argument(1)),
+        _ => Err(fail(format!("unknown order `{word}`"))
+            .help("write \"ascending\" or \"descending\"")
+            .argument(1)),
     }
 }
 
@@ -134,7 +140,9 @@ mod table_functions {
     /// ```
     #[rhai_fn(name = "table", return_raw)]
     pub fn table_of_columns(columns: Map) -> ScriptResult<Table> {
-        let columns = columns.iter().map(|(title, values)| titled(title, values).map_err(|fail| fail.key(title.as_str())));
+        let columns = columns
+            .iter()
+            .map(|(title, values)| titled(title, values).map_err(|fail| fail.key(title.as_str())));
         Ok(Table::new(columns.collect::<Result<Vec<_>, _>>()?)?)
     }
 
@@ -225,7 +233,12 @@ mod table_functions {
         let keep = Closure::new(&keep);
         table.filter(|row| {
             let answer = keep.call(&context, (row,))?;
-            let unfit = || fail(format!("the closure of `where` must say true or false, not {}", docs::described(&answer)));
+            let unfit = || {
+                fail(format!(
+                    "the closure of `where` must say true or false, not {}",
+                    docs::described(&answer)
+                ))
+            };
             Ok(answer.as_bool().map_err(|_| unfit().argument(0))?)
         })
     }
@@ -258,7 +271,12 @@ mod table_functions {
     /// t.with_column("Ca [g/L]", |row| row["Ca"] / 1000).column("Ca [g/L]").values   // [0.0401]
     /// ```
     #[rhai_fn(return_raw, pure)]
-    pub fn with_column(context: NativeCallContext, table: &mut Table, title: &str, of: FnPtr) -> ScriptResult<Table> {
+    pub fn with_column(
+        context: NativeCallContext,
+        table: &mut Table,
+        title: &str,
+        of: FnPtr,
+    ) -> ScriptResult<Table> {
         let (of, parsed) = (Closure::new(&of), Title::parse(title));
         table.with_column(title, |row| Ok(cell(&parsed, &of.call(&context, (row,))?)?))
     }

@@ -14,7 +14,12 @@ fn engine() -> ScriptEngine {
     let folder = std::env::temp_dir().join(format!("lysocline-script-{}-{number}", std::process::id()));
     std::fs::create_dir_all(&folder).expect("the temporary folder can be written");
     let files = sandbox::Sandbox::for_script(&folder.join("test.rhai"), &folder, false);
-    ScriptEngine::new(Options { files, output: Box::new(std::io::sink()), messages: Box::new(std::io::sink()), ..Options::default() })
+    ScriptEngine::new(Options {
+        files,
+        output: Box::new(std::io::sink()),
+        messages: Box::new(std::io::sink()),
+        ..Options::default()
+    })
 }
 
 /// What the prompt echoes for a script; empty for no value.
@@ -38,6 +43,10 @@ fn fails(script: &str, message: &str, help: &[&str], underlined: &str) {
     let place = diagnostic.place.as_ref().map_or_else(String::new, |place| {
         place.text.chars().skip(place.column - 1).take(place.width).collect()
     });
-    let found = (diagnostic.message.as_str(), diagnostic.help.iter().map(String::as_str).collect::<Vec<_>>(), place.as_str());
+    let found = (
+        diagnostic.message.as_str(),
+        diagnostic.help.iter().map(String::as_str).collect::<Vec<_>>(),
+        place.as_str(),
+    );
     assert_eq!(found, (message, help.to_vec(), underlined), "{script}");
 }

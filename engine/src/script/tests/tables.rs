@@ -17,7 +17,7 @@ fn lakes(script: &str, expected: &str) {
 fn drawn() {
     lakes(
         "t",
-        "| Ca [mg/L] | name | pH |\n| ---: | --- | ---: |\n| 41.2 | north | 8.15 |\n| 39.8 | south | 7.92 |\n| 50 | east | – |",
+        "| Ca [mg/L] | name | pH |\n| ---: | --- | ---: |\n| 41.2 | north | 8.15 |\n| 39.8 | south | 7.92 |\n| 50.0 | east | – |",
     );
     lakes("t.row(1)", "| Ca [mg/L] | name | pH |\n| ---: | --- | ---: |\n| 39.8 | south | 7.92 |");
     lakes("t.column(\"pH\")", "| pH |\n| ---: |\n| 8.15 |\n| 7.92 |\n| – |");
@@ -95,7 +95,8 @@ fn saved_in_the_output_folder() {
     let text = std::fs::read_to_string(folder.join("lakes.csv")).expect("the file was written");
     assert_eq!(text, "Ca [mg/L],name,pH\n41.2,north,8.15\n39.8,south,7.92\n50,east,\n");
     assert!(folder.join("lakes.json").exists() && folder.join("lakes.md").exists());
-    let refused = |name: &str| engine.run("test", &format!("{LAKES}t.save(\"{name}\")")).expect_err(name).message;
+    let refused =
+        |name: &str| engine.run("test", &format!("{LAKES}t.save(\"{name}\")")).expect_err(name).message;
     assert_eq!(
         refused("lakes.xyz"),
         "`lakes.xyz` has no ending that says how to write a table: `.csv`, `.json` and `.md` are understood"
@@ -134,12 +135,37 @@ fn messages() {
         &["to choose rows write `table.where(|row| row[\"pH\"] < 8)`"],
         "<",
     );
-    of_lakes("t.column(\"name\").mean", "`name` holds text, `north` in row 0: numbers are needed here", &[], "mean");
-    of_lakes("t.column(\"Ca\") + t.column(\"pH\")", "`Ca [mg/L]` and `pH` have different units: convert one of them first", &[], "+");
-    of_lakes("t.row(3)", "there is no row 3: this table has 3 rows", &["they are counted from 0 to 2, or from the end: -1 is the last"], "3");
+    of_lakes(
+        "t.column(\"name\").mean",
+        "`name` holds text, `north` in row 0: numbers are needed here",
+        &[],
+        "mean",
+    );
+    of_lakes(
+        "t.column(\"Ca\") + t.column(\"pH\")",
+        "`Ca [mg/L]` and `pH` have different units: convert one of them first",
+        &[],
+        "+",
+    );
+    of_lakes(
+        "t.row(3)",
+        "there is no row 3: this table has 3 rows",
+        &["they are counted from 0 to 2, or from the end: -1 is the last"],
+        "3",
+    );
     of_lakes("t.head(-1)", "a number of rows cannot be -1", &[], "-");
-    of_lakes("t.sorted_by(\"pH\", \"down\")", "unknown order `down`", &["write \"ascending\" or \"descending\""], "\"down\"");
-    of_lakes("t.sorted_by(\"pH\");\n1", "the result of `sorted_by` is not used", &["write `let name = …` to keep it"], "sorted_by");
+    of_lakes(
+        "t.sorted_by(\"pH\", \"down\")",
+        "unknown order `down`",
+        &["write \"ascending\" or \"descending\""],
+        "\"down\"",
+    );
+    of_lakes(
+        "t.sorted_by(\"pH\");\n1",
+        "the result of `sorted_by` is not used",
+        &["write `let name = …` to keep it"],
+        "sorted_by",
+    );
     of_lakes(
         "t.with_column(\"x\", |row| #{})",
         "`x`: a map cannot stand in a table",
