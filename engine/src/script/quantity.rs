@@ -32,7 +32,6 @@ pub fn of(value: &Dynamic) -> Option<Quantity> {
 }
 
 /// A quantity with an unstated uncertainty is not known to be exact: `()`, not 0.
-#[must_use]
 pub fn or_nothing(value: Option<f64>) -> Dynamic {
     value.map_or(Dynamic::UNIT, Dynamic::from)
 }
