@@ -36,7 +36,6 @@ pub fn drawn(table: &Table, style: &Style) -> String {
 }
 
 /// A cell as a script value: a number, a text, or `()`.
-#[must_use]
 pub fn value_of(cell: &Cell) -> Dynamic {
     match cell {
         Cell::Number { value, .. } => (*value).into(),

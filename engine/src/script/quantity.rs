@@ -34,7 +34,6 @@ pub fn of(value: &Dynamic) -> Option<Quantity> {
 }
 
 /// A quantity with an unstated uncertainty is not known to be exact: `()`, not 0.
-#[must_use]
 pub fn or_nothing(value: Option<f64>) -> Dynamic {
     value.map_or(Dynamic::UNIT, Dynamic::from)
 }
@@ -105,7 +104,12 @@ fn compare(a: &Dynamic, b: &Dynamic) -> ScriptResult<Ordering> {
 
 /// How an input written as numbers is called in budgets.
 fn as_written(value: FLOAT, sigma: FLOAT, unit: &Unit) -> String {
-    format!("{} +/- {} {}", general(value, 12), general(sigma, 12), unit.symbol()).trim_end().to_owned()
+    format!("{} +/- {} {}", general(value, 12), general(sigma, 12), symbol(unit)).trim_end().to_owned()
+}
+
+/// The unit as text; nothing for a pure number.
+fn symbol(unit: &Unit) -> String {
+    if *unit == Unit::one() { String::new() } else { unit.symbol() }
 }
 
 fn read_unit(unit: &str, argument: usize) -> Result<Unit, Fail> {
@@ -219,7 +223,7 @@ mod quantity_functions {
     /// its correlations; one with a unit is converted.
     ///
     /// ```rhai
-    /// quantity((40 ± 1) / 2, "mg/L")   // 20 ± 0.5 mg/L
+    /// quantity((40 ± 1) / 2, "mg/L")   // 20.0 ± 0.5 mg/L
     /// ```
     #[rhai_fn(name = "quantity", return_raw)]
     pub fn quantity_in(value: Dynamic, unit: &str) -> ScriptResult<Quantity> {
@@ -274,13 +278,13 @@ mod quantity_functions {
     /// ```
     #[rhai_fn(name = "unit", get = "unit", pure)]
     pub fn unit(quantity: &mut Quantity) -> String {
-        if *quantity.unit() == Unit::one() { String::new() } else { quantity.unit().symbol() }
+        symbol(quantity.unit())
     }
 
     /// The same quantity in another unit, with the same inputs.
     ///
     /// ```rhai
-    /// quantity("2.5 +/- 0.1 mmol/L").to("umol/L")   // 2500 ± 100 µmol/L
+    /// quantity("2500 +/- 100 umol/L").to("mmol/L")   // 2.5 ± 0.1 mmol/L
     /// ```
     #[rhai_fn(return_raw, pure)]
     pub fn to(quantity: &mut Quantity, unit: &str) -> ScriptResult<Quantity> {

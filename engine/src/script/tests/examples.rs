@@ -7,14 +7,15 @@ fn examples_hold() {
     let engine = engine();
     let examples = docs::examples(&engine.entries());
     assert!(examples.len() > 50, "only {} examples were found", examples.len());
+    let mut wrong = Vec::new();
     for (name, example) in examples {
         let shown = echo(&engine, &example);
-        if let Some((_, expected)) =
-            example.trim_end().lines().last().and_then(|line| line.split_once("   // "))
-        {
-            assert_eq!(shown, expected, "the example of `{name}`:\n{example}");
+        let expected = example.trim_end().lines().last().and_then(|line| Some(line.split_once("   // ")?.1));
+        if expected.is_some_and(|expected| expected != shown) {
+            wrong.push(format!("`{name}`: {example}gives {shown}"));
         }
     }
+    assert!(wrong.is_empty(), "{}", wrong.join("\n"));
 }
 
 #[test]

@@ -17,7 +17,7 @@ fn lakes(script: &str, expected: &str) {
 fn drawn() {
     lakes(
         "t",
-        "| Ca [mg/L] | name | pH |\n| ---: | --- | ---: |\n| 41.2 | north | 8.15 |\n| 39.8 | south | 7.92 |\n| 50 | east | – |",
+        "| Ca [mg/L] | name | pH |\n| ---: | --- | ---: |\n| 41.2 | north | 8.15 |\n| 39.8 | south | 7.92 |\n| 50.0 | east | – |",
     );
     lakes("t.row(1)", "| Ca [mg/L] | name | pH |\n| ---: | --- | ---: |\n| 39.8 | south | 7.92 |");
     lakes("t.column(\"pH\")", "| pH |\n| ---: |\n| 8.15 |\n| 7.92 |\n| – |");
