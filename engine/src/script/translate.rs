@@ -215,7 +215,8 @@ impl Translator<'_> {
     /// `call` is the name and the types of the arguments, `pow (i64, map)`.
     fn unknown_function(&self, call: &str) -> (String, Vec<String>) {
         let (name, types) = call.split_once(" (").unwrap_or((call, ""));
-        let types: Vec<&str> = types.strip_suffix(')').unwrap_or(types).split(", ").filter(|name| !name.is_empty()).collect();
+        let types: Vec<&str> =
+            types.strip_suffix(')').unwrap_or(types).split(", ").filter(|name| !name.is_empty()).collect();
         if let Some(property) = name.strip_prefix("get$") {
             return self.unknown_property(property, types.first().copied());
         }
