@@ -421,6 +421,15 @@ impl Row {
         self.table.column(title).map(|column| &column.cells()[self.idx])
     }
 
+    /// The column with this title, of which the row is one cell.
+    ///
+    /// # Errors
+    ///
+    /// When the look-up fails (see [`Table`]).
+    pub fn column(&self, title: &str) -> Result<&Column, TableError> {
+        self.table.column(title)
+    }
+
     /// The titles and cells, from left to right.
     pub fn cells(&self) -> impl Iterator<Item = (&Title, &Cell)> {
         self.table.columns.iter().map(|column| (column.title(), &column.cells()[self.idx]))

@@ -223,7 +223,7 @@ mod table_functions {
         table.titles().map(|title| title.to_string().into()).collect()
     }
 
-    /// The rows for which the closure says true. A comparison with a missing value, `()`, is false.
+    /// The rows for which the closure says true. A comparison with a missing number is false.
     ///
     /// ```rhai
     /// table(#{ pH: [8.1, 7.9, ()] }).where(|row| row["pH"] < 8).len   // 1
@@ -384,14 +384,27 @@ mod table_functions {
 /// Members of rows.
 #[export_module]
 mod row_functions {
-    /// The value in the column with this title, in the unit of the column: a number, a text, or `()` when missing.
+    /// The value in the column with this title, in the unit of the column: a number or a text. A missing number is NaN, so
+    /// that no comparison with it is true and a sum with it is NaN too; a missing text is `()`.
     ///
     /// ```rhai
     /// table(#{ "Ca [mg/L]": [41.2] }).row(0).get("Ca")   // 41.2
     /// ```
     #[rhai_fn(name = "get", index_get, return_raw, pure)]
     pub fn get(row: &mut Row, title: &str) -> ScriptResult<Dynamic> {
-        Ok(value_of(row.get(title).map_err(at_first)?))
+        let cell = row.get(title).map_err(at_first)?;
+        let is_number = row.column(title).map_err(at_first)?.is_numeric();
+        Ok(if cell.is_missing() && is_number { f64::NAN.into() } else { value_of(cell) })
+    }
+
+    /// Whether the column with this title has no value in this row.
+    ///
+    /// ```rhai
+    /// table(#{ pH: [8.1, ()] }).where(|row| row.is_missing("pH")).len   // 1
+    /// ```
+    #[rhai_fn(return_raw, pure)]
+    pub fn is_missing(row: &mut Row, title: &str) -> ScriptResult<bool> {
+        Ok(row.get(title).map_err(at_first)?.is_missing())
     }
 
     /// The titles with their units, from left to right.
