@@ -2,8 +2,19 @@
 //!
 //! A script is read by rhai's parser under our rules (`syntax`, `check`), runs with our functions (`vocabulary`, one
 //! file for each native type), and fails in our words (`diagnostic`, `translate`). A native type joins in
-//! [`vocabulary`] by one line.
+//! [`vocabulary`] by one line:
+//!
+//! ```text
+//! vocabulary
+//!     .module(exported_module!(reaction_functions))            // documented functions, methods, getters
+//!     .native::<Reaction>("Reaction", |r, style| r.text(style)) // name in messages; how it is shown
+//!     .operator::<Reaction, Reaction>("+", add)                 // with a Reaction on either side
+//!     .equality::<Reaction>(same)                               // == and !=
+//!     .pure(&["reaction", "to_kc"])                             // dropping their result is refused
+//!     .quoted(species_names);                                   // completed inside quotes
+//! ```
 
+pub mod closure;
 pub mod diagnostic;
 pub mod docs;
 pub mod host;
@@ -24,6 +35,7 @@ mod session;
 mod syntax;
 mod translate;
 
+pub use closure::Closure;
 pub use diagnostic::{Diagnostic, Fail, ScriptResult, fail};
 pub use engine::{Options, ScriptEngine};
 pub use host::{Host, Progress};

@@ -50,6 +50,13 @@ impl Modules {
         self.0.lock().unwrap_or_else(PoisonError::into_inner)
     }
 
+    /// Forgets the functions of a main script that ran before.
+    pub(super) fn forget_main(&self) {
+        let mut state = self.state();
+        let State { defined, sources, .. } = &mut *state;
+        defined.retain(|_, owner| sources.contains_key(owner));
+    }
+
     /// Forgets imports that a fault broke off.
     pub(super) fn begin(&self) {
         self.state().loading.clear();
