@@ -253,6 +253,17 @@ fn an_unused_result_is_refused_before_anything_runs() {
         "filled",
     );
     case("jar(#{}).filled(1.0).volume;", "the result of `.volume` is not used", "volume");
+    case(
+        "let a = jar(#{});\nif true { a.filled(2.0) } else { a }\na",
+        "the result of `filled` is not used",
+        "filled",
+    );
+    case(
+        "fn g(a) { if true { a.filled(1.0) } a }\ng(jar(#{}))",
+        "the result of `filled` is not used",
+        "filled",
+    );
+    shows("fn g(a) { if true { a.filled(1.0) } else { a } }\ng(jar(#{}))", "jar of 2 ℓ");
     shows("let a = jar(#{});\na.filled(2.0)", "jar of 3 ℓ");
     shows("let a = jar(#{});\nlet b = if true { a.filled(2.0) } else { a };\nb", "jar of 3 ℓ");
     shows("fn g(a) { a.filled(1.0) }\ng(jar(#{}))", "jar of 2 ℓ");
