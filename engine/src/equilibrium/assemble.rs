@@ -35,8 +35,8 @@ pub struct System {
 /// Why a reaction's log K is uncertain at this temperature.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub enum Doubt {
-    /// Known at one temperature only, so many kelvin away; used as it stands.
-    OneTemperature(f64),
+    /// Known at another temperature only; used as it stands.
+    OneTemperature(Temperature),
     /// So many kelvin outside its stated range.
     OutsideRange(f64),
 }
@@ -171,10 +171,10 @@ fn constants(ledger: &Ledger, temperature: Temperature) -> (Vec<f64>, Vec<Option
         let (log_k, away) = constant.log_k.nearest_to(temperature);
         let outside = constant.log_k.outside(temperature);
         // A tenth of a kelvin is what 298 K and 25 degC differ by, and well below what matters.
-        let doubt = match () {
-            () if away > 0.2 => Some(Doubt::OneTemperature(away)),
-            () if outside > 0.0 => Some(Doubt::OutsideRange(outside)),
-            () => None,
+        let doubt = match constant.log_k.only_at() {
+            Some(known) if away > 0.2 => Some(Doubt::OneTemperature(known)),
+            _ if outside > 0.0 => Some(Doubt::OutsideRange(outside)),
+            _ => None,
         };
         (log_k, doubt)
     });

@@ -601,8 +601,8 @@ impl State {
 
 fn words(doubt: Doubt) -> String {
     match doubt {
-        Doubt::OneTemperature(away) => {
-            format!("is known at one temperature only, {away:.0} K away, and used as it stands")
+        Doubt::OneTemperature(known) => {
+            format!("is known at {} degC only, and used as it stands", known.celsius())
         }
         Doubt::OutsideRange(by) => format!("is used {by:.1} K outside its stated range"),
     }

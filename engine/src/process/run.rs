@@ -139,7 +139,7 @@ impl Run {
         };
         let mut answers = answers.into_iter();
         let cells = self.0.outcomes.iter().map(|outcome| match outcome {
-            Err(_) => Cell::missing_because("no equilibrium"),
+            Err(_) => Cell::missing(),
             Ok(_) => match answers.next() {
                 Some(Ok(answer)) => cell(&answer),
                 Some(Err(ObservableError::Absent { .. })) => Cell::missing_because("absent"),

@@ -2,7 +2,7 @@
 
 use std::collections::BTreeSet;
 
-use rhai::{AST, ASTNode, Expr, FnCallExpr, Position, Stmt};
+use rhai::{AST, ASTNode, Expr, FnCallExpr, Position, Stmt, StmtBlock};
 
 use super::diagnostic::At;
 use super::{Fail, fail, words};
@@ -62,9 +62,14 @@ struct Checker<'a> {
 impl Checker<'_> {
     fn node(&mut self, node: &ASTNode) {
         match node {
-            ASTNode::Stmt(Stmt::If(flow, _) | Stmt::TryCatch(flow, _)) => {
+            ASTNode::Stmt(Stmt::If(flow, _)) => {
                 self.block(flow.body.statements(), true);
                 self.block(flow.branch.statements(), true);
+            }
+            // The last of a `try` may be there only to see whether it fails.
+            ASTNode::Stmt(Stmt::TryCatch(flow, _)) => {
+                self.block(flow.body.statements(), true);
+                self.block(flow.branch.statements(), false);
             }
             ASTNode::Stmt(Stmt::While(flow, _) | Stmt::Do(flow, ..)) => {
                 self.block(flow.body.statements(), false)
@@ -84,17 +89,29 @@ impl Checker<'_> {
     fn block(&mut self, statements: &[Stmt], last_is_value: bool) {
         let dropped = statements.len().saturating_sub(usize::from(last_is_value));
         for statement in &statements[..dropped] {
-            self.faults.extend(self.unused(statement));
+            let faults = self.dropped(statement);
+            self.faults.extend(faults);
+        }
+    }
+
+    /// The faults of a statement whose value goes nowhere: then that of its blocks goes nowhere either.
+    fn dropped(&self, statement: &Stmt) -> Vec<(Fail, Position)> {
+        let last =
+            |block: &StmtBlock| block.statements().last().map(|last| self.dropped(last)).unwrap_or_default();
+        match statement {
+            Stmt::If(flow, _) => [last(&flow.body), last(&flow.branch)].concat(),
+            Stmt::Block(block) => last(block),
+            _ => self.unused(statement).into_iter().collect(),
         }
     }
 
     /// A function's statements can only be visited, so each is judged when the next one shows that it is not the last.
     fn function_body(&mut self, function: &AST) {
-        let mut previous = None;
+        let mut previous = Vec::new();
         function.walk(&mut |path| {
             if let [ASTNode::Stmt(statement)] = path {
-                self.faults.extend(previous.take());
-                previous = self.unused(statement);
+                self.faults.append(&mut previous);
+                previous = self.dropped(statement);
             }
             true
         });

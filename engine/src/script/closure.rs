@@ -1,32 +1,58 @@
-//! Closures of a script, called by native functions.
+//! Calling a script's closure from native code, also from several threads at once.
 
-use rhai::{Dynamic, FnPtr, FuncArgs, NativeCallContext};
+use rhai::{Dynamic, Engine, FnPtr, FuncArgs, NativeCallContext};
 
 use super::ScriptResult;
 
-/// A closure with its own copy of every variable it captured.
+/// A closure of the calling script, ready to be called by workers.
 ///
-/// What it writes to them is forgotten after each call, so that calls cannot influence one another and may run in any
-/// order or at once.
-pub struct Closure(FnPtr);
+/// ```text
+/// let closure = Closure::new(&context, &f);
+/// points.par_iter().map_init(|| closure.worker(), |worker, &x| worker.call((x,)))
+/// ```
+#[allow(deprecated, reason = "the stored state is marked volatile, not deprecated; the version is pinned")]
+pub struct Closure<'a> {
+    engine: &'a Engine,
+    state: rhai::NativeCallContextStore,
+    function: FnPtr,
+}
 
-impl Closure {
-    /// The closure, cut off from the variables around it.
+/// One thread's own copy.
+pub struct Worker<'a> {
+    closure: &'a Closure<'a>,
+    function: FnPtr,
+}
+
+impl<'a> Closure<'a> {
+    /// The closure `function`, which a script handed to the native function called in `context`.
     #[must_use]
-    pub fn new(function: &FnPtr) -> Self {
-        let mut function = function.clone();
+    pub fn new(context: &'a NativeCallContext, function: &FnPtr) -> Self {
+        #[allow(deprecated, reason = "marked volatile, not deprecated; the version is pinned")]
+        let state = context.store_data();
+        Self { engine: context.engine(), state, function: function.clone() }
+    }
+
+    /// A copy for one thread. Captured variables are copied with it: what the closure writes to them stays there, so
+    /// results do not depend on the number of threads, and no thread waits for another.
+    #[must_use]
+    pub fn worker(&self) -> Worker<'_> {
+        let mut function = self.function.clone();
         for captured in function.iter_curry_mut() {
             *captured = captured.flatten_clone();
         }
-        Self(function)
+        Worker { closure: self, function }
     }
+}
 
-    /// What it returns for `arguments`.
+impl Worker<'_> {
+    /// Calls the closure.
     ///
     /// # Errors
     ///
-    /// What the closure raises.
-    pub fn call(&self, context: &NativeCallContext, arguments: impl FuncArgs) -> ScriptResult<Dynamic> {
-        self.0.call_within_context(context, arguments)
+    /// Returns what failed inside, with its place.
+    pub fn call(&self, arguments: impl FuncArgs) -> ScriptResult<Dynamic> {
+        #[allow(deprecated, reason = "marked volatile, not deprecated; the version is pinned")]
+        let context = self.closure.state.create_context(self.closure.engine);
+        self.function.call_within_context(&context, arguments)
     }
 }

@@ -142,6 +142,7 @@ impl ScriptEngine {
     /// Returns the first fault that can be seen without running.
     pub fn check(&self, name: &str, text: &str) -> Result<(), Box<Diagnostic>> {
         let text = clean(text);
+        self.modules.forget_main();
         on_deep_stack(|| self.compile(name, &text, &Scope::new(), None).map(drop))
     }
 
@@ -152,6 +153,7 @@ impl ScriptEngine {
     /// Returns what went wrong, with its place.
     pub fn run(&self, name: &str, text: &str) -> Result<Option<Dynamic>, Box<Diagnostic>> {
         let text = clean(text);
+        self.modules.forget_main();
         let mut scope = Scope::new();
         on_deep_stack(|| {
             let source = self.compile(name, &text, &scope, None)?;

@@ -2,7 +2,17 @@
 //!
 //! A script is read by rhai's parser under our rules (`syntax`, `check`), runs with our functions (`vocabulary`, one
 //! file for each native type), and fails in our words (`diagnostic`, `translate`). A native type joins in
-//! [`vocabulary`] by one line.
+//! [`vocabulary`] by one line:
+//!
+//! ```text
+//! vocabulary
+//!     .module(exported_module!(reaction_functions))            // documented functions, methods, getters
+//!     .native::<Reaction>("Reaction", |r, style| r.text(style)) // name in messages; how it is shown
+//!     .operator::<Reaction, Reaction>("+", add)                 // with a Reaction on either side
+//!     .equality::<Reaction>(same)                               // == and !=
+//!     .pure(&["reaction", "to_kc"])                             // dropping their result is refused
+//!     .quoted(species_names);                                   // completed inside quotes
+//! ```
 
 pub mod closure;
 pub mod diagnostic;
@@ -35,6 +45,7 @@ mod syntax;
 mod table;
 mod translate;
 
+pub use closure::Closure;
 pub use diagnostic::{Diagnostic, Fail, ScriptResult, fail};
 pub use engine::{Options, ScriptEngine};
 pub use host::{Host, Progress};

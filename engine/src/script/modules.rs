@@ -50,6 +50,13 @@ impl Modules {
         self.0.lock().unwrap_or_else(PoisonError::into_inner)
     }
 
+    /// Forgets the functions of a main script that ran before.
+    pub(super) fn forget_main(&self) {
+        let mut state = self.state();
+        let State { defined, sources, .. } = &mut *state;
+        defined.retain(|_, owner| sources.contains_key(owner));
+    }
+
     /// Forgets imports that a fault broke off.
     pub(super) fn begin(&self) {
         self.state().loading.clear();
@@ -185,7 +192,7 @@ fn absent(name: &str, folder: &Path) -> Fail {
     let scripts = entries.filter(|path| path.extension().is_some_and(|extension| extension == "rhai"));
     let names: Vec<String> =
         scripts.filter_map(|path| Some(path.file_stem()?.to_string_lossy().into_owned())).collect();
-    fail(format!("there is no module `{name}` beside the script"))
+    fail(format!("there is no module `{name}`: no file `{name}.rhai` beside the script"))
         .maybe_help(words::did_you_mean(name, names.iter().map(String::as_str)))
 }
 

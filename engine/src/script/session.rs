@@ -68,26 +68,11 @@ impl Session {
         let entry = clean(entry);
         let entry = entry.trim_end();
         let before = self.snapshot();
-        let engine = Arc::clone(&self.engine);
-        let text = self.padding() + entry;
-        let typed: String = self.entries.iter().map(|entry| format!("{}\n", entry.typed)).collect();
-        let (scope, functions) = (&mut self.scope, &self.functions);
-        let outcome = on_deep_stack(|| {
-            let read = engine.compile(SESSION, &text, scope, Some(functions))?;
-            let whole = Arc::new(Source { text: typed + entry, ast: read.ast.clone() });
-            let value = engine.evaluate(SESSION, &whole, scope)?;
-            Ok((read, value))
-        });
-        match outcome {
-            Ok((read, value)) => {
-                self.functions = read.ast.clone_functions_only();
+        match self.evaluate(entry) {
+            Ok((functions, value)) => {
+                self.functions = functions;
                 self.scope = self.scope.clone_visible();
-                let written = self.written(entry, value.is_some());
-                self.entries.push(Accepted { typed: entry.to_owned(), written });
-                self.earlier.push(before);
-                if self.earlier.len() > UNDO_DEPTH {
-                    self.earlier.remove(0);
-                }
+                self.accept(entry, value.is_some(), before);
                 Ok(value)
             }
             Err(diagnostic) => {
@@ -154,6 +139,29 @@ impl Session {
     fn padding(&self) -> String {
         let lines = self.entries.iter().flat_map(|entry| entry.typed.split('\n'));
         lines.map(|line| if is_import(line) { format!("{line}\n") } else { "\n".to_owned() }).collect()
+    }
+
+    /// Reads and runs the entry; returns all functions of the session, old and new, beside the value.
+    fn evaluate(&mut self, entry: &str) -> Result<(AST, Option<Dynamic>), Box<Diagnostic>> {
+        let text = self.padding() + entry;
+        let typed: String = self.entries.iter().map(|entry| format!("{}\n", entry.typed)).collect();
+        let (engine, scope, functions) = (&self.engine, &mut self.scope, &self.functions);
+        on_deep_stack(|| {
+            let read = engine.compile(SESSION, &text, scope, Some(functions))?;
+            // Messages may point into earlier entries, which the padded text does not show.
+            let whole = Arc::new(Source { text: typed + entry, ast: read.ast.clone() });
+            let value = engine.evaluate(SESSION, &whole, scope)?;
+            Ok((read.ast.clone_functions_only(), value))
+        })
+    }
+
+    fn accept(&mut self, entry: &str, shown: bool, before: Snapshot) {
+        let written = self.written(entry, shown);
+        self.entries.push(Accepted { typed: entry.to_owned(), written });
+        self.earlier.push(before);
+        if self.earlier.len() > UNDO_DEPTH {
+            self.earlier.remove(0);
+        }
     }
 
     /// The entry as part of a script. Whatever is added must be readable, or it is left out.

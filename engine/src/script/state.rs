@@ -210,12 +210,10 @@ fn over_closure(
 ) -> ScriptResult<Run> {
     let host = Host::of(context);
     let given = numbers("a sweep", values)?;
-    #[allow(deprecated, reason = "volatile upstream, and pinned")]
-    let (store, engine, total) = (context.store_data(), context.engine(), given.len() as u64);
+    let (closure, total) = (Closure::new(context, water), given.len() as u64);
     let outcome = |value: &Dynamic| -> ScriptResult<Result<State, String>> {
-        #[allow(deprecated, reason = "volatile upstream, and pinned")]
-        let context = store.create_context(engine);
-        let made = Closure::new(water).call(&context, (value.clone(),))?;
+        // A worker a point: what a closure writes to the variables it captured reaches no other point.
+        let made = closure.worker().call((value.clone(),))?;
         host.stop().check()?;
         if let Some(state) = made.read_lock::<State>() {
             return Ok(Ok(state.clone()));

@@ -230,9 +230,10 @@ mod table_functions {
     /// ```
     #[rhai_fn(name = "where", return_raw, pure)]
     pub fn where_rows(context: NativeCallContext, table: &mut Table, keep: FnPtr) -> ScriptResult<Table> {
-        let keep = Closure::new(&keep);
+        let closure = Closure::new(&context, &keep);
+        let keep = closure.worker();
         table.filter(|row| {
-            let answer = keep.call(&context, (row,))?;
+            let answer = keep.call((row,))?;
             let unfit = || {
                 fail(format!(
                     "the closure of `where` must say true or false, not {}",
@@ -277,8 +278,9 @@ mod table_functions {
         title: &str,
         of: FnPtr,
     ) -> ScriptResult<Table> {
-        let (of, parsed) = (Closure::new(&of), Title::parse(title));
-        table.with_column(title, |row| Ok(cell(&parsed, &of.call(&context, (row,))?)?))
+        let (closure, parsed) = (Closure::new(&context, &of), Title::parse(title));
+        let of = closure.worker();
+        table.with_column(title, |row| Ok(cell(&parsed, &of.call((row,))?)?))
     }
 
     /// The table with one more column of given values, an array or a Column.

@@ -225,7 +225,8 @@ impl Translator<'_> {
             return (format!("{} has no members to index with `[…]`", words::a_type(owner)), Vec::new());
         }
         if let Some(deed) = words::deed(name) {
-            return (cannot(name, deed, &types), Vec::new());
+            let help = types.contains(&"()").then(|| words::MISSING_KEY.to_owned());
+            return (cannot(name, deed, &types), help.into_iter().collect());
         }
         let given = types.iter().map(|rust| words::a_type(rust)).collect::<Vec<_>>().join(", ");
         let same: Vec<&Entry> = self.entries.iter().filter(|entry| entry.name == name).collect();

@@ -4,16 +4,20 @@ pub mod diagnostic;
 mod notes;
 pub mod table;
 
+use std::io::IsTerminal;
+
 use lysocline_engine::present::{self, Table};
 use lysocline_engine::script::{ScriptEngine, Style};
 
 /// Replaces the engine's plain forms by those that know the terminal.
 pub fn draw_with(engine: &ScriptEngine) {
-    engine.show_with(|shows| shows.set::<Table>(table));
+    // A file is as wide as it needs to be; only a terminal has an edge.
+    let has_edge = std::io::stdout().is_terminal();
+    engine.show_with(|shows| shows.set::<Table>(move |drawn, style| table(drawn, style, has_edge)));
 }
 
-fn table(table: &Table, style: &Style) -> String {
-    let drawn = present::Style { plain: style.ascii, width: Some(style.width) };
+fn table(table: &Table, style: &Style, has_edge: bool) -> String {
+    let drawn = present::Style { plain: style.ascii, width: has_edge.then_some(style.width) };
     let look = table::Look { style: drawn, color: style.color, rows: style.rows };
     table::draw(table, &look).trim_end().to_owned()
 }

@@ -4,12 +4,15 @@ use std::io::Write;
 use std::sync::{Arc, Mutex};
 use std::time::{Duration, Instant};
 
+use proptest::prelude::*;
+use rayon::prelude::*;
 use rhai::plugin::*;
 use rhai::{Dynamic, Map};
 
+use super::closure::{Closure, Worker};
+use super::{Halt, Host, Options, ScriptEngine, ScriptResult, Session, Vocabulary, docs, fail};
 use crate::script::diagnostic::{Diagnostic, Kind};
 use crate::script::sandbox::Sandbox;
-use crate::script::{Halt, Host, Options, ScriptEngine, ScriptResult, Session, Vocabulary, docs, fail};
 
 /// A native type such as the chemistry has: a value, with methods that return new values.
 #[derive(Debug, Clone, PartialEq)]
@@ -59,6 +62,18 @@ mod jars {
             Some(start) => fail("`?` is no element").text(0, start, 1).raise(),
             None => Ok(()),
         }
+    }
+
+    /// The sum of `f(i)` for i below n, on several threads.
+    #[rhai_fn(return_raw)]
+    pub fn summed(context: NativeCallContext, n: i64, f: rhai::FnPtr) -> ScriptResult<i64> {
+        let closure = Closure::new(&context, &f);
+        let host = Host::of(&context);
+        let value = |worker: &mut Worker, i: i64| {
+            host.progress("sum", i.unsigned_abs(), n.unsigned_abs());
+            worker.call((i,))?.as_int().map_err(|other| fail(format!("not {other}")).into())
+        };
+        (0..n).into_par_iter().map_init(|| closure.worker(), value).sum()
     }
 
     pub fn break_down() {
@@ -238,6 +253,17 @@ fn an_unused_result_is_refused_before_anything_runs() {
         "filled",
     );
     case("jar(#{}).filled(1.0).volume;", "the result of `.volume` is not used", "volume");
+    case(
+        "let a = jar(#{});\nif true { a.filled(2.0) } else { a }\na",
+        "the result of `filled` is not used",
+        "filled",
+    );
+    case(
+        "fn g(a) { if true { a.filled(1.0) } a }\ng(jar(#{}))",
+        "the result of `filled` is not used",
+        "filled",
+    );
+    shows("fn g(a) { if true { a.filled(1.0) } else { a } }\ng(jar(#{}))", "jar of 2 ℓ");
     shows("let a = jar(#{});\na.filled(2.0)", "jar of 3 ℓ");
     shows("let a = jar(#{});\nlet b = if true { a.filled(2.0) } else { a };\nb", "jar of 3 ℓ");
     shows("fn g(a) { a.filled(1.0) }\ng(jar(#{}))", "jar of 2 ℓ");
@@ -283,6 +309,7 @@ fn deep_nesting_is_an_error_and_not_the_end() {
     assert_eq!(fails(&"(".repeat(5000)).kind, Kind::Syntax);
     assert_eq!(fails(&vec!["1"; 3000].join("+")).message, "this expression is nested too deeply");
     shows("fn f(n) { if n == 0 { 0 } else { 1 + f(n - 1) } }\nf(50)", "50");
+    assert_eq!(fails("fn f(n) { [n].map(|x| f(x + 1)) }\nf(0)").kind, Kind::Failure);
     case("fn f(n) { f(n + 1) }\nf(0)", "functions call each other too deeply (more than 64 calls)", "f");
 }
 
@@ -301,6 +328,113 @@ fn calls_on_the_way_to_a_failure_are_named_once() {
     assert_eq!(frames, ["`inner` 5", "`outer` 7"]);
     assert_eq!(diagnostic.place.map(|place| place.line), Some(2));
 }
+
+#[test]
+fn a_closure_runs_on_several_threads() {
+    shows("let k = 2; summed(1000, |i| i * k)", "999000");
+    shows("let k = 0; let s = summed(10, |i| { k += 1; i }); [s, k]", "[45, 0]");
+    case("summed(100, |i| if i < 50 { i } else { missing })", "there is no variable `missing`", "missing");
+    let limited = Options { time_limit: Some(Duration::from_millis(50)), ..Options::default() };
+    let stopped = ScriptEngine::with_vocabulary(limited, toys).run("a.rhai", "summed(4, |i| { loop {} })");
+    assert_eq!(stopped.expect_err("a stop").kind, Kind::Halted(Halt::TimeUp));
+}
+
+#[test]
+fn progress_reaches_the_program() {
+    let seen = Arc::new(Mutex::new(Vec::new()));
+    let record = Arc::clone(&seen);
+    let progress = move |progress: super::Progress<'_>| {
+        record.lock().expect("no panic").push((progress.done, progress.total))
+    };
+    let options = Options { progress: Some(Arc::new(progress)), ..Options::default() };
+    ScriptEngine::with_vocabulary(options, toys).run("a.rhai", "let s = summed(3, |i| i);").expect("it runs");
+    let mut seen = seen.lock().expect("no panic").clone();
+    assert_eq!(seen.pop(), Some((0, 0)), "the end is reported in any case");
+    seen.sort_unstable();
+    assert_eq!(seen, [(0, 3), (1, 3), (2, 3)]);
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig::with_cases(300))]
+
+    /// Whatever is typed gives a value or a message that can be drawn: never a panic, never a place outside its line.
+    #[test]
+    fn no_text_brings_the_engine_down(pieces in prop::collection::vec(prop::sample::select(PIECES), 0..12)) {
+        let text = pieces.concat();
+        let limited = Options { time_limit: Some(Duration::from_millis(200)), output: Box::new(std::io::sink()), messages: Box::new(std::io::sink()), ..Options::default() };
+        let engine = Arc::new(ScriptEngine::with_vocabulary(limited, |_| {}));
+        let mut session = Session::new(Arc::clone(&engine));
+        for result in [engine.run("a.rhai", &text), session.enter(&text), session.enter("1")] {
+            if let Err(diagnostic) = result {
+                prop_assert!(diagnostic.kind != Kind::Bug, "{}: {}", text, diagnostic);
+                if let Some(place) = diagnostic.place {
+                    prop_assert!(place.column <= place.text.chars().count() + 2, "{}: {:?}", text, place);
+                }
+            }
+        }
+    }
+}
+
+const PIECES: &[&str] = &[
+    "let a = ",
+    "1",
+    "1.5e3",
+    "a",
+    "f",
+    "(",
+    ")",
+    "[",
+    "]",
+    "#{",
+    "}",
+    "{",
+    ";",
+    "\n",
+    " + ",
+    " / ",
+    "^",
+    "±",
+    "\"x\"",
+    "\"",
+    "`",
+    "${",
+    "|x| ",
+    "fn f(x) { x }",
+    ".map(",
+    ".b",
+    "if ",
+    "else ",
+    "for i in ",
+    "0..3",
+    "=",
+    " == ",
+    " < ",
+    "sqrt(",
+    "é",
+    "水",
+    "\t",
+    "//",
+    "/*",
+    "*/",
+    "import \"m\" as m;",
+    "throw ",
+    "try {",
+    "catch (e) {",
+    ",",
+    ":",
+    "pH: ",
+    "help(",
+    "print(",
+    "fmt(1, \".2e\")",
+    "-",
+    "::",
+    "a.call(",
+    "\\",
+    "'",
+    "$",
+    "\u{feff}",
+    "#!",
+];
 
 #[test]
 fn every_documented_example_runs_and_gives_what_it_says() {
@@ -522,6 +656,28 @@ mod modules {
         let diagnostic = run(&[("h.rhai", "\nlet a = ;")], "import \"h\" as m;").expect_err("a fault");
         let place = diagnostic.place.expect("a place");
         assert_eq!((place.source.as_str(), place.line), ("h.rhai", 2));
+    }
+
+    #[test]
+    fn an_import_outlives_its_entry() {
+        let folder = tempfile::tempdir().expect("a temporary folder");
+        std::fs::write(folder.path().join("h.rhai"), "fn half(x) { x/2 }").expect("it can be written");
+        let files = Sandbox::for_script(&folder.path().join("main.rhai"), folder.path(), false);
+        let engine = ScriptEngine::with_vocabulary(Options { files, ..Options::default() }, toys);
+        let mut session = Session::new(Arc::new(engine));
+        session.enter("import \"h\" as h;").expect("it is there");
+        session.enter("let a = 1;").expect("it runs");
+        let value = session.enter("h::half(a)").expect("it runs").expect("a value");
+        assert_eq!(session.engine().show(&value), "0.5");
+        session.enter("fn half(x) { x }").expect_err("two of a name");
+        session.enter("fn third(x) { x/3 }").expect("another name");
+    }
+
+    #[test]
+    fn two_scripts_may_define_the_same_name() {
+        let engine = engine();
+        engine.run("a.rhai", "fn g() { 1 }\ng()").expect("it runs");
+        engine.run("b.rhai", "fn g() { 2 }\ng()").expect("it runs");
     }
 
     #[test]
