@@ -33,7 +33,7 @@ fn check(problem: &Problem, converged: &Converged) -> Result<(), String> {
         let terms: Vec<f64> =
             species.chain(minerals).chain(reservoirs).chain([-problem.totals[j].to_f64()]).collect();
         let (sum, magnitude) = (terms.iter().sum::<f64>(), terms.iter().map(|t| t.abs()).sum::<f64>());
-        let closed = sum.abs() <= 1e-12_f64.max(converged.certificate.ln_c_rounding) * magnitude;
+        let closed = sum.abs() <= 1e-12 * magnitude;
         if !closed {
             return Err(format!("balance {j} is off by {sum:e} of {magnitude:e}"));
         }
