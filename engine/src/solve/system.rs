@@ -27,10 +27,21 @@ pub struct Warm {
     level: Vec<f64>,
     column: Vec<Column>,
     mineral_amount: Vec<f64>,
+    n_species: usize,
     pub(super) ionic_strength: f64,
     pub(super) ln_water_activity: f64,
 }
 
+impl Warm {
+    /// Whether the same rows play the same parts in `system`.
+    fn fits(&self, system: &System) -> bool {
+        let parts = (self.n_species, self.mineral_amount.len());
+        parts == (system.problem.species.len(), system.problem.minerals.len())
+            && self.basis.same_rows(&system.basis)
+    }
+}
+
+/// The solver's working state.
 #[derive(Debug)]
 pub(super) struct System<'p> {
     pub(super) problem: &'p Problem,
@@ -85,7 +96,7 @@ impl<'p> System<'p> {
             effort: Effort::default(),
             basis,
         };
-        match warm.filter(|warm| warm.basis.same_rows(&system.basis)) {
+        match warm.filter(|warm| warm.fits(&system)) {
             Some(warm) => system.start_from(warm),
             None => system.start_cold()?,
         }
@@ -98,6 +109,7 @@ impl<'p> System<'p> {
             basis: self.basis,
             level: self.level,
             column: self.column,
+            n_species: self.problem.species.len(),
             mineral_amount: self.mineral_amount,
             ionic_strength,
             ln_water_activity,
