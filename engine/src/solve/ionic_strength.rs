@@ -128,9 +128,16 @@ impl Coupling<'_, '_> {
     }
 
     /// All roots up to well above one of them, ascending: beyond I of 1 there may be several.
+    ///
+    /// The answer is the lowest. Above the known root γ soon runs to hundreds of powers of ten; where that exhausts the
+    /// precision of the inner solve, r counts as negative, which is its sign at the far end.
     fn scan(&mut self, root: Sample) -> Result<Vec<Sample>, SolveError> {
         let tolerance = Tolerance { x: 0.0, f: 0.1 * self.settings.ionic_strength * root.x };
-        Ok(scalar::all_roots(|x| Ok(self.sample(x)?.f), (0.0, 4.0 * root.x), 32, tolerance)?.roots)
+        let residual = |x| match self.sample(x) {
+            Err(SolveError::NotConverged { .. }) if x > root.x => Ok(-f64::MAX),
+            sample => Ok(sample?.f),
+        };
+        Ok(scalar::all_roots(residual, (0.0, 4.0 * root.x), 32, tolerance)?.roots)
     }
 
     /// The solve at `root`, which is repeated if it was not the latest.
