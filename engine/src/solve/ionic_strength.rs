@@ -104,6 +104,7 @@ impl Coupling<'_, '_> {
     /// Walks from the start, by growing multiples of r, until r changes sign; then closes in.
     fn search(&mut self, start: Sample) -> Result<Sample, SolveError> {
         const FARTHEST: f64 = 1e3;
+        const SHORTEST: f64 = 1e-3;
 
         let (mut here, mut factor) = (start, 1.0);
         loop {
@@ -112,7 +113,14 @@ impl Coupling<'_, '_> {
             if here.x == FARTHEST && here.f > 0.0 {
                 return Err(SolveError::NoIonicStrength { searched_to: FARTHEST });
             }
-            let next = self.sample(x)?;
+            let next = match self.sample(x) {
+                // Overshot to where γ exhausts the precision of the inner solve: a shorter step will do.
+                Err(SolveError::NotConverged { .. }) if x > here.x && factor > SHORTEST => {
+                    factor /= 4.0;
+                    continue;
+                }
+                next => next?,
+            };
             if self.agrees(next) || next.f == 0.0 {
                 return Ok(next);
             }
