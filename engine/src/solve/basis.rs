@@ -197,3 +197,63 @@ fn scaled(nu: Coefficient, scale: i64) -> Option<f64> {
     let numerator = if scale == 1 { *nu.numer() } else { nu.numer().checked_mul(scale / nu.denom())? };
     numerator.to_f64().filter(|value| value.abs() < f64::from(1 << 30))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Four rows in three components, one with fractions.
+    fn rows() -> Vec<Row> {
+        let half = Row {
+            stoichiometry: vec![(0, Coefficient::new(1, 2)), (2, Coefficient::new(-2, 3))],
+            ..Row::new(&[], 0.0)
+        };
+        vec![
+            Row::new(&[(0, 2), (1, 1)], 0.0),
+            half,
+            Row::new(&[(0, -3), (1, 4), (2, 5)], 0.0),
+            Row::new(&[(1, 7)], 0.0),
+        ]
+    }
+
+    /// Every row, put together from the basis rows with its coefficients, is the row that was given.
+    #[test]
+    fn rows_are_recovered_from_any_basis() {
+        let rows = rows();
+        let mut basis = Basis::new(rows.iter(), 3).unwrap();
+        for (row, column) in [(0, 0), (1, 2), (2, 1), (3, 0), (0, 2)] {
+            assert!(basis.pivot(row, column), "pivot on row {row}");
+            for row in 0..rows.len() + 3 {
+                for component in 0..3 {
+                    let from_basis: f64 = (0..3)
+                        .map(|j| basis.coefficient(row, j) * basis.input_row(basis.row_of(j))[component])
+                        .sum();
+                    let given = basis.input_row(row)[component];
+                    assert!((from_basis - given).abs() < 1e-13, "row {row}, component {component}");
+                }
+            }
+        }
+        assert_eq!(basis.column_of(3), Some(0));
+    }
+
+    /// The small difference of two totals keeps what lies below the precision of either.
+    #[test]
+    fn transformed_totals_are_exact() {
+        let rows = [Row::new(&[(0, 1), (1, 1), (2, 1)], 0.0)];
+        let mut basis = Basis::new(rows.iter(), 3).unwrap();
+        let mut sum = ExactSum::default();
+        assert!(basis.pivot(0, 2));
+        let equal = [Total::from(0.5), Total::from(0.5), Total::from(0.5)];
+        assert_eq!(basis.total(0, &equal, &mut sum), 0.0);
+        let close = [Total::from(0.5) + Total::from(1e-25), Total::from(0.5), Total::from(0.5)];
+        assert!((basis.total(0, &close, &mut sum) / 1e-25 - 1.0).abs() < 1e-6);
+    }
+
+    #[test]
+    fn pivots_that_would_round_are_refused() {
+        let huge = [Row::new(&[(0, 1 << 29), (1, 1)], 0.0), Row::new(&[(0, 1), (1, 1 << 29)], 0.0)];
+        let mut basis = Basis::new(huge.iter(), 2).unwrap();
+        assert!(!basis.pivot(0, 0));
+        assert_eq!(basis.determinant(), 1.0);
+    }
+}

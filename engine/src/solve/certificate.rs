@@ -42,11 +42,9 @@ pub struct Certificate {
 
 impl Certificate {
     /// Whether every tolerance is met.
-    ///
-    /// A balance of concentrations that are themselves rounded by more than its tolerance is held to that rounding.
     #[must_use]
     pub fn meets(&self, settings: &Settings) -> bool {
-        self.balance <= settings.balance.max(self.ln_c_rounding)
+        self.balance <= settings.balance
             && self.residual <= settings.stalled_residual
             && self.saturation <= settings.saturation
             && self.present_saturation <= settings.saturation
@@ -56,14 +54,8 @@ impl Certificate {
 }
 
 /// Checks a settled system together with what was read out of it.
-pub(super) fn certify(
-    system: &System,
-    settled: &Settled,
-    ln_c: &[f64],
-    phases: &Phases,
-    model: &Model,
-) -> Certificate {
-    let (balance, balance_idx) = worst_balance(system, ln_c, phases);
+pub(super) fn certify(system: &System, settled: &Settled, phases: &Phases, model: &Model) -> Certificate {
+    let (balance, balance_idx) = worst_balance(system, phases);
     let reduced = &settled.reduced;
     let roundings = (0..reduced.species.len()).map(|i| reduced.rounding(i, &settled.point.y));
     let ln_c_rounding = roundings.fold(0.0, f64::max);
@@ -103,11 +95,11 @@ fn relative(error: f64, size: f64) -> f64 {
 }
 
 /// Largest relative error of a balance in the components as given, with its index.
-fn worst_balance(system: &System, ln_c: &[f64], phases: &Phases) -> (f64, usize) {
+fn worst_balance(system: &System, phases: &Phases) -> (f64, usize) {
     let basis = &system.basis;
     let first_reservoir = system.problem.species.len();
     let first_mineral = system.mineral_row(0);
-    let amounts = (0..).zip(ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
+    let amounts = (0..).zip(&system.ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
     let delivered = (first_reservoir..).zip(&phases.reservoir_amount).map(|(row, amount)| (row, -amount));
     let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
     let terms: Vec<(usize, f64)> =

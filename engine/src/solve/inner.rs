@@ -360,6 +360,36 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<(Redu
     Err(SolveError::NotConverged { iterations, residual })
 }
 
+/// The (species, column) where a species exceeds the basis row that it could replace by the largest factor.
+///
+/// A unit row is no species and gives way to any, the most concentrated first.
+fn best_exchange(system: &System, ln_c: &[f64], refused: &[(usize, usize)]) -> Option<(usize, usize)> {
+    const UNIT_ROW: f64 = -1e9;
+
+    let basis = &system.basis;
+    let floor = |column: usize| match basis.is_unit(basis.row_of(column)) {
+        true => UNIT_ROW,
+        false => system.level[column],
+    };
+    let floors: Vec<f64> = (0..basis.n)
+        .map(|column| if system.column[column] == Column::Free { floor(column) } else { f64::INFINITY })
+        .collect();
+    let mut best: Option<(f64, (usize, usize))> = None;
+    for (row, &level) in ln_c.iter().enumerate() {
+        if level == f64::NEG_INFINITY || basis.column_of(row).is_some() {
+            continue;
+        }
+        for (column, (entry, floor)) in basis.scaled_row(row).iter().zip(&floors).enumerate() {
+            let gain = level - floor;
+            if *entry != 0.0 && gain > best.map_or(REBASE, |best| best.0) && !refused.contains(&(row, column))
+            {
+                best = Some((gain, (row, column)));
+            }
+        }
+    }
+    best.map(|(_, exchange)| exchange)
+}
+
 /// State and storage of the iteration.
 struct Newton<'s, 'p> {
     system: &'s mut System<'p>,
@@ -396,6 +426,10 @@ impl<'s, 'p> Newton<'s, 'p> {
         for (k, &column) in self.reduced.columns.iter().enumerate() {
             self.system.level[column] = self.here.y[k];
         }
+        self.system.ln_c.fill(f64::NEG_INFINITY);
+        for (&row, &ln_c) in self.reduced.species.iter().zip(&self.here.ln_c) {
+            self.system.ln_c[row] = ln_c;
+        }
         (self.reduced, self.here)
     }
 
@@ -420,34 +454,17 @@ impl<'s, 'p> Newton<'s, 'p> {
 
     /// Pivots until no species exceeds by far a basis row that it could replace. Returns whether it did.
     fn choose_basis(&mut self, ln_c: &[f64]) -> bool {
-        let system = &mut *self.system;
         let mut changed = false;
         let mut refused: Vec<(usize, usize)> = Vec::new();
-        loop {
-            let mut best: Option<(f64, usize, usize)> = None;
-            for (row, &level) in ln_c.iter().enumerate() {
-                if level == f64::NEG_INFINITY || system.basis.column_of(row).is_some() {
-                    continue;
-                }
-                for (column, entry) in system.basis.scaled_row(row).iter().enumerate() {
-                    if *entry == 0.0 || system.column[column] != Column::Free {
-                        continue;
-                    }
-                    let unit = system.basis.is_unit(system.basis.row_of(column));
-                    let gain = if unit { f64::MAX / 2.0 + level } else { level - system.level[column] };
-                    if gain > best.map_or(REBASE, |best| best.0) && !refused.contains(&(row, column)) {
-                        best = Some((gain, row, column));
-                    }
-                }
-            }
-            let Some((_, row, column)) = best else { return changed };
-            if system.basis.pivot(row, column) {
-                system.level[column] = ln_c[row];
+        while let Some((row, column)) = best_exchange(self.system, ln_c, &refused) {
+            if self.system.basis.pivot(row, column) {
+                self.system.level[column] = ln_c[row];
                 changed = true;
             } else {
                 refused.push((row, column));
             }
         }
+        changed
     }
 
     /// Changes the basis if the concentrations ask for it.

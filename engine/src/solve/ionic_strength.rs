@@ -104,6 +104,7 @@ impl Coupling<'_, '_> {
     /// Walks from the start, by growing multiples of r, until r changes sign; then closes in.
     fn search(&mut self, start: Sample) -> Result<Sample, SolveError> {
         const FARTHEST: f64 = 1e3;
+        const SHORTEST: f64 = 1e-3;
 
         let (mut here, mut factor) = (start, 1.0);
         loop {
@@ -112,7 +113,14 @@ impl Coupling<'_, '_> {
             if here.x == FARTHEST && here.f > 0.0 {
                 return Err(SolveError::NoIonicStrength { searched_to: FARTHEST });
             }
-            let next = self.sample(x)?;
+            let next = match self.sample(x) {
+                // Overshot to where γ exhausts the precision of the inner solve: a shorter step will do.
+                Err(SolveError::NotConverged { .. }) if x > here.x && factor > SHORTEST => {
+                    factor /= 4.0;
+                    continue;
+                }
+                next => next?,
+            };
             if self.agrees(next) || next.f == 0.0 {
                 return Ok(next);
             }
@@ -128,9 +136,16 @@ impl Coupling<'_, '_> {
     }
 
     /// All roots up to well above one of them, ascending: beyond I of 1 there may be several.
+    ///
+    /// The answer is the lowest. Above the known root γ soon runs to hundreds of powers of ten; where that exhausts the
+    /// precision of the inner solve, r counts as negative, which is its sign at the far end.
     fn scan(&mut self, root: Sample) -> Result<Vec<Sample>, SolveError> {
         let tolerance = Tolerance { x: 0.0, f: 0.1 * self.settings.ionic_strength * root.x };
-        Ok(scalar::all_roots(|x| Ok(self.sample(x)?.f), (0.0, 4.0 * root.x), 32, tolerance)?.roots)
+        let residual = |x| match self.sample(x) {
+            Err(SolveError::NotConverged { .. }) if x > root.x => Ok(-f64::MAX),
+            sample => Ok(sample?.f),
+        };
+        Ok(scalar::all_roots(residual, (0.0, 4.0 * root.x), 32, tolerance)?.roots)
     }
 
     /// The solve at `root`, which is repeated if it was not the latest.

@@ -128,14 +128,13 @@ pub fn solve(
     let settled = ionic_strength::settle(&mut system, model, settings, start)?;
     let Settled { ionic_strength, ln_water_activity, .. } = settled;
     let phases = Phases::read(&mut system);
-    let ln_c = concentrations(&system, &settled);
-    let certificate = certificate::certify(&system, &settled, &ln_c, &phases, model);
+    let certificate = certificate::certify(&system, &settled, &phases, model);
     if !certificate.meets(settings) {
         return Err(SolveError::Uncertified { certificate: Box::new(certificate) });
     }
     Ok(Converged {
         ln_a: component_activities(&system),
-        ln_c,
+        ln_c: std::mem::take(&mut system.ln_c),
         ln_gamma: std::mem::take(&mut system.ln_gamma),
         ionic_strength,
         ln_water_activity,
@@ -147,15 +146,6 @@ pub fn solve(
         certificate,
         warm: system.warm(ionic_strength, ln_water_activity),
     })
-}
-
-/// ln c of all species, minus infinity for those that are absent.
-fn concentrations(system: &System, settled: &Settled) -> Vec<f64> {
-    let mut ln_c = vec![f64::NEG_INFINITY; system.problem.species.len()];
-    for (species_idx, value) in settled.reduced.species.iter().zip(&settled.point.ln_c) {
-        ln_c[*species_idx] = *value;
-    }
-    ln_c
 }
 
 fn component_activities(system: &System) -> Vec<f64> {

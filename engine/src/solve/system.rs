@@ -27,10 +27,21 @@ pub struct Warm {
     level: Vec<f64>,
     column: Vec<Column>,
     mineral_amount: Vec<f64>,
+    n_species: usize,
     pub(super) ionic_strength: f64,
     pub(super) ln_water_activity: f64,
 }
 
+impl Warm {
+    /// Whether the same rows play the same parts in `system`.
+    fn fits(&self, system: &System) -> bool {
+        let parts = (self.n_species, self.mineral_amount.len());
+        parts == (system.problem.species.len(), system.problem.minerals.len())
+            && self.basis.same_rows(&system.basis)
+    }
+}
+
+/// The solver's working state.
 #[derive(Debug)]
 pub(super) struct System<'p> {
     pub(super) problem: &'p Problem,
@@ -44,6 +55,8 @@ pub(super) struct System<'p> {
     pub(super) column: Vec<Column>,
     /// Rows that a total of zero excludes.
     pub(super) absent: Vec<bool>,
+    /// ln c of each species at the end of the latest inner solve; minus infinity for those absent.
+    pub(super) ln_c: Vec<f64>,
     /// Amount of each mineral, mol/kg(water).
     pub(super) mineral_amount: Vec<f64>,
     pub(super) sum: ExactSum,
@@ -74,6 +87,7 @@ impl<'p> System<'p> {
             problem,
             g: vec![0.0; basis.unit_row(0) + problem.n_components],
             ln_gamma: vec![0.0; problem.species.len()],
+            ln_c: vec![f64::NEG_INFINITY; problem.species.len()],
             level: vec![0.0; problem.n_components],
             column: vec![Column::Free; problem.n_components],
             absent: vec![false; problem.species.len() + problem.reservoirs.len() + problem.minerals.len()],
@@ -82,7 +96,7 @@ impl<'p> System<'p> {
             effort: Effort::default(),
             basis,
         };
-        match warm.filter(|warm| warm.basis.same_rows(&system.basis)) {
+        match warm.filter(|warm| warm.fits(&system)) {
             Some(warm) => system.start_from(warm),
             None => system.start_cold()?,
         }
@@ -95,6 +109,7 @@ impl<'p> System<'p> {
             basis: self.basis,
             level: self.level,
             column: self.column,
+            n_species: self.problem.species.len(),
             mineral_amount: self.mineral_amount,
             ionic_strength,
             ln_water_activity,
@@ -224,18 +239,25 @@ impl<'p> System<'p> {
     }
 
     /// Amount of the held row of a column that balances the dissolved species, and the sum of its absolute terms.
+    ///
+    /// Summed without rounding, over the very concentrations that are reported, so that the balances of the components
+    /// close even where the amount is a small difference.
     pub(super) fn held_amount(&mut self, column: usize) -> (f64, f64) {
         let total = self.total(column);
-        let (mut amount, mut magnitude) = (total, total.abs());
-        for species_idx in 0..self.problem.species.len() {
+        let (mut plain, mut magnitude) = (total, total.abs());
+        self.sum.add(total);
+        for (species_idx, ln_c) in self.ln_c.iter().enumerate() {
             let coefficient = self.basis.coefficient(species_idx, column);
-            if coefficient != 0.0 && !self.absent[species_idx] {
-                let term = coefficient * self.level_of(species_idx).exp();
-                amount -= term;
-                magnitude += term.abs();
+            if coefficient != 0.0 {
+                let c = ln_c.exp();
+                plain -= coefficient * c;
+                magnitude += (coefficient * c).abs();
+                self.sum.add_product(-coefficient, c);
             }
         }
-        (amount, magnitude)
+        let exact = self.sum.take();
+        // Error-free sums know no infinity; beyond it only the sign matters.
+        (if magnitude.is_finite() { exact } else { plain }, magnitude)
     }
 }
 

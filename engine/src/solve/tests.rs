@@ -390,3 +390,15 @@ fn the_condition_is_that_of_the_totals() {
     let quotient = (ln_c(total * (1.0 + step)) - ln_c(total * (1.0 - step))) / (2.0 * step);
     assert!((condition(&water(total)) / quotient - 1.0).abs() < 1e-8);
 }
+
+/// The same rows in other parts: a mineral becomes a reservoir, so an earlier end is no start.
+#[test]
+fn a_start_from_a_problem_with_other_parts_is_ignored() {
+    let mut problem = carbonate(Total::from(0.0));
+    let warm = ideal(&problem).unwrap().warm;
+    let first = problem.minerals.remove(0);
+    problem.reservoirs.push(Reservoir { row: first.row, ln_value: -1.0 });
+    let cold = ideal(&problem).unwrap();
+    let warm = solve(&problem, &Model::IDEAL, &Settings::default(), Some(&warm)).unwrap();
+    assert_eq!(cold.ln_c, warm.ln_c);
+}
