@@ -7,6 +7,8 @@ mod published;
 #[cfg(test)]
 mod random_systems;
 #[cfg(test)]
+mod refusals;
+#[cfg(test)]
 mod reproducible;
 #[cfg(test)]
 mod round_trips;

@@ -6,6 +6,8 @@
 use std::collections::BTreeMap;
 use std::fmt;
 
+use num_traits::CheckedMul;
+
 use super::element::Element;
 use super::formula::{FormulaError, Species};
 use super::rational::{self, Rational};
@@ -49,6 +51,9 @@ pub enum EquationError {
     /// Everything cancels.
     #[error("nothing is left of the equation: its species cancel")]
     Vanishes,
+    /// Coefficients beyond what is counted exactly.
+    #[error("its coefficients are too large, or have too many digits, to be counted exactly")]
+    TooLarge,
 }
 
 /// What an equation lacks: right side minus left side.
@@ -99,8 +104,11 @@ impl Equation {
     ///
     /// # Errors
     ///
-    /// Returns the imbalance, or [`EquationError::Vanishes`] if the terms cancel.
+    /// Returns the imbalance, [`EquationError::Vanishes`] if the terms cancel, or [`EquationError::TooLarge`].
     pub fn balanced(terms: Vec<(Species, Rational)>) -> Result<Self, EquationError> {
+        if !are_countable(&terms) {
+            return Err(EquationError::TooLarge);
+        }
         let equation = Self { terms: merge(terms) };
         if equation.terms.is_empty() {
             return Err(EquationError::Vanishes);
@@ -136,9 +144,13 @@ impl Equation {
     ///
     /// # Errors
     ///
-    /// [`EquationError::Vanishes`] if `multiple` is zero.
+    /// [`EquationError::Vanishes`] if `multiple` is zero, [`EquationError::TooLarge`] if it is not countable.
     pub fn times(&self, multiple: Rational) -> Result<Self, EquationError> {
-        let mut terms: Vec<_> = self.terms.iter().map(|(s, c)| (s.clone(), c * multiple)).collect();
+        let scaled = |(species, coefficient): &(Species, Rational)| {
+            Some((species.clone(), coefficient.checked_mul(&multiple)?))
+        };
+        let mut terms: Vec<_> =
+            self.terms.iter().map(scaled).collect::<Option<_>>().ok_or(EquationError::TooLarge)?;
         // Reactants come first, as they would be written.
         terms.sort_by_key(|(_, coefficient)| *coefficient > 0.into());
         Self::balanced(terms)
@@ -253,6 +265,30 @@ impl fmt::Display for Imbalance {
             .collect();
         write!(f, "; add {}", additions.join(" and "))
     }
+}
+
+/// Whether sums over atoms and charges stay within 64 bits when brought to one denominator.
+fn are_countable(terms: &[(Species, Rational)]) -> bool {
+    const LARGEST_DENOMINATOR: i64 = 1_000_000_000;
+    const LARGEST_SUM: f64 = 1e18;
+    let mut denominator = 1;
+    let mut sum = 0.0;
+    for (species, coefficient) in terms {
+        let counts = species.composition().iter().map(|(_, count)| *count);
+        for count in counts.chain([1.into(), i64::from(species.charge()).into()]) {
+            let Some(own) = coefficient.denom().checked_mul(count.denom()) else { return false };
+            if own > LARGEST_DENOMINATOR {
+                return false;
+            }
+            // The least common multiple: both factors are within bounds, so the product fits.
+            denominator *= *Rational::new(own, denominator).numer();
+            if denominator > LARGEST_DENOMINATOR {
+                return false;
+            }
+            sum += rational::to_f64(*coefficient).abs() * rational::to_f64(count).abs();
+        }
+    }
+    sum * (denominator as f64) < LARGEST_SUM
 }
 
 /// Adds equal species up and drops what cancels, keeping the order of first appearance.

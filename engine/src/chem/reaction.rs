@@ -214,12 +214,13 @@ impl Reaction {
     ///
     /// Returns that nothing is left if `multiple` is zero.
     pub fn times(&self, multiple: Rational) -> Result<Self, ReactionError> {
+        let equation = self.equation.times(multiple)?;
         let constant = self.constant.as_ref().map(|constant| Constant {
             log_k: constant.log_k.times(multiple),
             history: constant.history.times(multiple),
             ..constant.clone()
         });
-        Ok(Self { equation: self.equation.times(multiple)?, constant })
+        Ok(Self { equation, constant })
     }
 
     /// The sum of two reactions: K₁ K₂.

@@ -102,9 +102,12 @@ impl EquilibriumError {
 
 /// The words for a water whose acid-base state is not fixed.
 pub(super) fn proton_total_open(name: &str, given: &[&str]) -> EquilibriumError {
-    let given = if given.is_empty() { "nothing".to_string() } else { list(given) };
+    let fixed = match given {
+        [] => "nothing fixes".to_string(),
+        given => format!("{} alone does not fix", list(given)),
+    };
     EquilibriumError::ProtonTotal(format!(
-        "{given} of {name} does not fix its acid-base state: give pH, or two of `pH`, `alkalinity`, `DIC` and `fCO2`, \
+        "{fixed} the acid-base state of {name}: give pH, or two of `pH`, `alkalinity`, `DIC` and `fCO2`, \
          or `pH: \"electroneutral\"`"
     ))
 }

@@ -150,7 +150,9 @@ impl State {
     /// As [`State::get`].
     pub fn answer(&self, asked: &Asked) -> Result<Quantity, ObservableError> {
         let name = asked.observable.to_string();
-        let answer = self.value(&asked.observable, &name)?;
+        let mut answer = self.value(&asked.observable, &name)?;
+        // A sum over nothing is -0.
+        answer.value += 0.0;
         let own = Unit::parse(answer.unit).expect("a known unit");
         let (value, unit) = match &asked.unit {
             None => (answer.value, own),
@@ -289,12 +291,18 @@ impl State {
             return Ok(value);
         }
         self.across(value, answer.molar_mass, own, &plain, asked).ok_or_else(|| {
-            let kind = if answer.unit.starts_with("eq") { Kind::Alkalinity } else { Kind::Amount };
-            wrong(
-                kind.check(wanted)
-                    .err()
-                    .unwrap_or_else(|| own.convert(1.0, wanted).expect_err("tried above")),
-            )
+            let kind = match answer.unit {
+                unit if unit.starts_with("eq") => Some(Kind::Alkalinity),
+                unit if unit.starts_with("mol") => Some(Kind::Amount),
+                _ => None,
+            };
+            match kind.map(|kind| kind.check(wanted)) {
+                Some(Err(error)) => wrong(error),
+                Some(Ok(())) if kind == Some(Kind::Alkalinity) => {
+                    no_answer(asked, "a mass of it says not of what: ask for `mg/L as CaCO3`".into())
+                }
+                _ => wrong(own.convert(1.0, wanted).expect_err("tried above")),
+            }
         })
     }
 

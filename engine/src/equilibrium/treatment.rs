@@ -59,11 +59,11 @@ impl Surroundings {
     fn add(&mut self, treatment: &Treatment, system: &System) -> Result<(), EquilibriumError> {
         match treatment {
             Treatment::OpenTo { gas, fugacity } => {
-                let (_, row) = formed(system, gas)?;
+                let (_, row) = formed(system, gas, Species::is_gas, "gas")?;
                 self.hold(gas, Reservoir { row, ln_value: fugacity.ln() });
             }
             Treatment::Saturate { solid, index } => {
-                let (species, row) = formed(system, solid)?;
+                let (species, row) = formed(system, solid, Species::is_solid, "solid")?;
                 self.hold(solid, Reservoir { row, ln_value: index * LN_10 });
                 let position =
                     self.reservoirs.iter().position(|(name, _)| name == solid).expect("just added");
@@ -71,7 +71,7 @@ impl Surroundings {
                 self.unlimited.push((position, species));
             }
             Treatment::Allow { solid, above } => {
-                let species = system.ledger().find_phase(solid)?.clone();
+                let species = find(system.ledger(), solid, Species::is_solid, "solid")?.clone();
                 // A solid whose elements are not there cannot form.
                 if let Some((_, row)) = system.phase(&species) {
                     self.minerals.retain(|(name, ..)| name != solid);
@@ -184,8 +184,27 @@ impl Surroundings {
     }
 }
 
-fn formed(system: &System, name: &str) -> Result<(Species, Row), EquilibriumError> {
-    let species = system.ledger().find_phase(name)?.clone();
+/// A gas, or a solid, by its name.
+fn find<'a>(
+    ledger: &'a Ledger,
+    name: &str,
+    is_right: impl Fn(&Species) -> bool,
+    kind: &str,
+) -> Result<&'a Species, EquilibriumError> {
+    let species = ledger.find_phase(name)?;
+    if is_right(species) {
+        return Ok(species);
+    }
+    Err(EquilibriumError::Analyte { key: name.into(), why: format!("{species} is no {kind}") })
+}
+
+fn formed(
+    system: &System,
+    name: &str,
+    is_right: impl Fn(&Species) -> bool,
+    kind: &str,
+) -> Result<(Species, Row), EquilibriumError> {
+    let species = find(system.ledger(), name, is_right, kind)?.clone();
     let (_, row) = system.phase(&species).expect("its components were brought in");
     Ok((species, row.clone()))
 }

@@ -15,7 +15,7 @@ use crate::text::list;
 #[non_exhaustive]
 pub enum ShippedError {
     /// No ledger of this name is shipped.
-    #[error("no ledger `{name}` is shipped{}; there are {}", help(.nearest.as_deref()), list(&names()))]
+    #[error("no ledger `{name}` is shipped: there are {}{}", list(&names()), help(.nearest.as_deref()))]
     Unknown {
         /// The name asked for.
         name: String,

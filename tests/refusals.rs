@@ -1,0 +1,335 @@
+//! What the engine says to input that is wrong: the place, what is wrong, and what would have been right.
+
+use std::collections::BTreeMap;
+
+use lysocline_engine::chem::Reaction;
+use lysocline_engine::equilibrium::equilibrate;
+use lysocline_engine::ledger::shipped;
+use lysocline_engine::named::{Named, Value};
+use lysocline_engine::solve::Settings;
+use lysocline_engine::water::{Sample, Treatment};
+
+use crate::waters::{entries, freshwater, get, sample, state};
+
+#[track_caller]
+fn reaction(equation: &str, options: &[(&str, &str)], message: &str) {
+    let error = Reaction::read(equation, None, Named::new(entries(options)), None).unwrap_err();
+    assert_eq!(error.to_string(), message);
+}
+
+/// A reaction that is right but for one option.
+#[track_caller]
+fn option(key: &str, value: &str, message: &str) {
+    reaction("H2O <=> H^+ + OH^-", &[("log_k", "-14"), (key, value)], message);
+}
+
+#[track_caller]
+fn analysis(pairs: &[(&str, &str)], message: &str) {
+    assert_eq!(Sample::read(entries(pairs)).unwrap_err().to_string(), message);
+}
+
+/// A water that is right but for one key.
+#[track_caller]
+fn key(key: &str, value: &str, message: &str) {
+    analysis(&[("pH", "7"), (key, value)], message);
+}
+
+#[track_caller]
+fn water(pairs: &[(&str, &str)], treatments: &[Treatment], message: &str) {
+    let treated =
+        treatments.iter().try_fold(sample(pairs), |sample, treatment| sample.treated(treatment.clone()));
+    let refused = match treated {
+        Ok(sample) => equilibrate(&sample, None, &Settings::default()).unwrap_err().to_string(),
+        Err(error) => error.to_string(),
+    };
+    assert_eq!(refused, message);
+}
+
+const DILUTE: &[(&str, &str)] = &[("pH", "7"), ("DIC", "1 mmol/kg"), ("Ca", "1 mmol/kg")];
+
+#[track_caller]
+fn asked(observable: &str, message: &str) {
+    assert_eq!(state(&sample(DILUTE)).get(observable).unwrap_err().to_string(), message);
+}
+
+#[track_caller]
+fn warns(pairs: &[(&str, &str)], treatments: &[Treatment], warnings: &[&str]) {
+    let treated =
+        treatments.iter().try_fold(sample(pairs), |sample, treatment| sample.treated(treatment.clone()));
+    assert_eq!(state(&treated.unwrap()).warnings(), warnings);
+}
+
+fn open_to(gas: &str, fugacity: f64) -> Treatment {
+    Treatment::OpenTo { gas: gas.into(), fugacity }
+}
+
+fn saturate(solid: &str, index: f64) -> Treatment {
+    Treatment::Saturate { solid: solid.into(), index }
+}
+
+fn hold_ph(ph: f64, reagent: Option<&str>) -> Treatment {
+    Treatment::HoldPh { ph, reagent: reagent.map(str::to_string) }
+}
+
+#[test]
+fn equations() {
+    reaction(
+        "CO2(aq) <=> HCO3^- + H^+",
+        &[("log_k", "-6.35")],
+        "`CO2(aq) <=> HCO3^- + H^+` is not balanced: the left side is short of 2 H, the left side is short of 1 O; \
+         add `H2O` to the left side",
+    );
+    reaction("Xx^2+ + H2O <=> XxOH^+ + H^+", &[], "`Xx` in `Xx^2+` is no element; did you mean `Xe`?");
+    reaction("H2O <=> H+ + OH-", &[], "`H+`: write the charge as `H^+`");
+    reaction("H2O <=> H2O", &[], "nothing is left of the equation: its species cancel");
+    reaction(
+        "0 H2O <=> H^+ + OH^-",
+        &[],
+        "`0` is no coefficient: write `2`, `0.5` or `1/2` before the formula",
+    );
+}
+
+#[test]
+fn coefficients_beyond_counting() {
+    let message = "its coefficients are too large, or have too many digits, to be counted exactly";
+    let most = i64::MAX;
+    reaction(&format!("{most} H2O <=> {most} H^+ + {most} OH^-"), &[], message);
+    reaction("1/999999937 H2O + 1/999999893 H2O <=> 1/999999929 H^+ + OH^-", &[], message);
+    let doubled = Reaction::stoichiometry("H2O <=> H^+ + OH^-").unwrap();
+    let mut error = Ok(doubled);
+    for _ in 0..10 {
+        error = error.and_then(|reaction: Reaction| reaction.times(1_000_000.into()));
+    }
+    assert_eq!(error.unwrap_err().to_string(), message);
+}
+
+#[test]
+fn constants() {
+    option("log_q", "1", "unknown key `log_q`; did you mean `log_k`?");
+    option("pk", "14", "`log_k` and `pk` state the constant more than once: keep one");
+    option(
+        "enthalpy",
+        "13.3 kcal/mool",
+        "`enthalpy`: unknown unit `mool` (did you mean `kcal/mol`?); units of energy: kJ/mol, J/mol, kcal/mol, cal/mol",
+    );
+    option(
+        "enthalpy",
+        "13.3 mg/L",
+        "`enthalpy`: `mg/L` is no unit of energy; units of energy: kJ/mol, J/mol, kcal/mol, cal/mol",
+    );
+    option("sigma", "-0.1", "`sigma` is a standard uncertainty and cannot be negative: -0.1");
+    option(
+        "temperature",
+        "-300 degC",
+        "`temperature`: a temperature of -300 degC is below absolute zero, -273.15 degC",
+    );
+    option("gas_standard", "1 psi", "`1 psi` is no gas standard: it is `1 bar` or `1 atm`");
+    option(
+        "provenance",
+        "guessed",
+        "`guessed` is no provenance: it is `read`, `computed`, `memory` or `stated`",
+    );
+    reaction("H2O <=> H^+ + OH^-", &[("k", "0")], "`k` must be above zero");
+    reaction("H2O <=> H^+ + OH^-", &[("log_k", "1e400")], "`log_k`: is no finite number");
+}
+
+#[test]
+fn analyses() {
+    key("Ca", "-1 mg/L", "`Ca` is negative: an amount is zero or more");
+    key("DIC", "-2 mmol/L", "`DIC` is negative: an amount is zero or more");
+    key("Ca", "40", "`Ca`: 40 mol/kg? write \"40 mg/L\"");
+    key("Ca", "40 mg/L as Mg", "`Ca`: `as Mg` has no Ca: write it as something that holds it");
+    key(
+        "Ca",
+        "2 meq/L",
+        "`Ca`: equivalents of Ca need its charge: write the ion as the key, such as `Ca^2+`, or give moles",
+    );
+    key("Xx", "40 mg/L", "`Xx` is no element, oxidation state or species; did you mean `Xe`?");
+    key("NaCl", "40 mg/L", "`NaCl(aq)` holds Na and Cl: give each of them as an amount of its own");
+    key("HCO3^-", "100 mg/L", "`HCO3^-` is not measured as such: give `alkalinity` or `DIC`, and `pH`");
+    key("alkalinty", "2 meq/L", "unknown key `alkalinty`; did you mean `alkalinity`?");
+    key(
+        "alkalinity",
+        "100 mg/L",
+        "`alkalinity`: a mass of alkalinity says not of what: write `mg/L as CaCO3` or `mg/L as HCO3^-`",
+    );
+    key(
+        "temperature",
+        "20 bar",
+        "`temperature`: `bar` is no unit of temperature; units of temperature: degC, K, degF",
+    );
+    key(
+        "pressure",
+        "-1 bar",
+        "`pressure`: a pressure of -1 bar is not possible: pressures are absolute, 0 bar or more",
+    );
+    key("density", "10 kg/L", "`density` is 10 kg/L, which no water has");
+    key("pe", "4", "`pe` is not read here: redox equilibria are not computed yet");
+    key("make_up", "Na", "`make_up` names `Na`, which was not given: none were");
+    analysis(&[("pH", "27")], "pH 27 lies outside -2 to 17");
+    analysis(&[("pCO2", "0 uatm")], "`pCO2` must be above zero");
+    analysis(
+        &[("pH", "7"), ("alkalinity", "2 meq/L"), ("DIC", "2 mmol/L")],
+        "`pH`, `alkalinity` and `DIC` are more than fix the water: name two, as in `from: [\"pH\", \"alkalinity\"]`; \
+         the others become misfits",
+    );
+}
+
+#[test]
+fn units_of_another_kind_name_the_right_ones() {
+    for (value, start) in [
+        ("40 mg/LL", "`Ca`: unknown unit `LL` (did you mean `mg/L`?); units of amount: mol/kg, mmol/kg, "),
+        ("40 bar", "`Ca`: `bar` is no unit of amount; units of amount: mol/kg, mmol/kg, "),
+    ] {
+        let message = Sample::read(entries(&[("Ca", value)])).unwrap_err().to_string();
+        assert!(message.starts_with(start), "{message}");
+    }
+}
+
+#[test]
+fn values_that_are_no_numbers() {
+    for (value, message) in [
+        (Value::Number(f64::NAN), "`Ca`: is no finite number"),
+        (Value::Number(f64::INFINITY), "`Ca`: is no finite number"),
+        (Value::Flag(true), "`Ca`: takes amount, not true or false"),
+    ] {
+        let refused = Sample::read(BTreeMap::from([("Ca".to_string(), value)])).unwrap_err();
+        assert!(refused.to_string() == message || refused.to_string().contains("mol/kg?"), "{refused}");
+    }
+}
+
+#[test]
+fn waters_that_are_not_fixed_or_contradict_themselves() {
+    let give = "give pH, or two of `pH`, `alkalinity`, `DIC` and `fCO2`, or `pH: \"electroneutral\"`";
+    water(&[("Ca", "1 mmol/kg")], &[], &format!("nothing fixes the acid-base state of the sample: {give}"));
+    water(
+        &[("DIC", "1 mmol/kg")],
+        &[],
+        &format!("`DIC` alone does not fix the acid-base state of the sample: {give}"),
+    );
+    water(
+        &[("DIC", "1 mmol/kg"), ("fCO2", "1 bar")],
+        &[],
+        "DIC and fCO2 of the sample contradict each other: at this fugacity CO2 alone holds more carbon than that",
+    );
+    water(
+        &[("pH", "7"), ("Pb", "1 umol/kg")],
+        &[],
+        "`Pb`: the ledger has no species of Pb; give it one with `.with_reaction`",
+    );
+}
+
+#[test]
+fn treatments() {
+    water(DILUTE, &[open_to("CO2(g)", 0.0)], "the fugacity of `CO2(g)` must be above zero, not 0 bar");
+    water(
+        DILUTE,
+        &[open_to("O2(g)", 1.0)],
+        "the ledger has no mineral or gas `O2(g)`; did you mean `CO2(g)`?",
+    );
+    water(DILUTE, &[open_to("calcite", 1.0)], "`calcite`: CaCO3(calcite) is no gas");
+    water(DILUTE, &[saturate("CO2(g)", 0.0)], "`CO2(g)`: CO2(g) is no solid");
+    water(
+        DILUTE,
+        &[saturate("calcit", 0.0)],
+        "the ledger has no mineral or gas `calcit`; did you mean `calcite`?",
+    );
+    water(
+        DILUTE,
+        &[saturate("calcite", f64::NAN)],
+        "the saturation index of `calcite` must be a finite number",
+    );
+    water(
+        DILUTE,
+        &[saturate("calcite", 0.0), saturate("aragonite", 0.0)],
+        "`aragonite` is fixed already by the surroundings before it",
+    );
+    water(
+        DILUTE,
+        &[
+            open_to("CO2(g)", 1.0),
+            hold_ph(9.0, None),
+            saturate("portlandite", 0.0),
+            Treatment::Allow { solid: "calcite".into(), above: 0.0 },
+        ],
+        "`calcite` would form without end: its surroundings supply all it is made of and keep it supersaturated",
+    );
+    water(
+        DILUTE,
+        &[hold_ph(2.0, Some("NaOH"))],
+        "no amount of `NaOH` up to 20 mol/kg(water) brings the water to pH 2: the nearest is pH 7.00",
+    );
+    water(
+        DILUTE,
+        &[hold_ph(9.0, Some("Na^+"))],
+        "`Na^+`: a reagent is a neutral substance, and this has charge 1",
+    );
+    water(DILUTE, &[hold_ph(9.0, Some("PbO"))], "`PbO`: the ledger has no species of Pb");
+}
+
+#[test]
+fn observables() {
+    asked("ph", "no observable `ph`; did you mean `pH`?");
+    asked("SI", "`SI` is asked as `SI(calcite)`");
+    asked("SI(calcit)", "`SI(calcit)`: the ledger has no mineral or gas `calcit`; did you mean `calcite`?");
+    asked("SI(gypsum)", "`SI(gypsum)`: absent, since what it is made of is not in the water");
+    asked("m(calcite)", "`m(calcite)`: CaCO3(calcite) is no solute");
+    asked("f(calcite)", "`f(calcite)`: CaCO3(calcite) is no gas");
+    asked("m(Ca^2+) [mmol/kgg]", "`m(Ca^2+) [mmol/kgg]`: unknown unit `kgg` (did you mean `mmol/kg`?)");
+    asked("alkalinity [mg/L]", "`alkalinity`: a mass of it says not of what: ask for `mg/L as CaCO3`");
+    asked("pH [mV]", "`pH`: `1` cannot be turned into `mV`: they measure different things");
+}
+
+#[test]
+fn nothing_is_nothing_and_not_less() {
+    let total = get(&state(&sample(DILUTE)), "total(Mg)");
+    assert!(total == 0.0 && total.is_sign_positive());
+}
+
+#[test]
+fn ledgers() {
+    let ledger = freshwater();
+    let message = |changed: Result<_, lysocline_engine::ledger::LedgerError>| {
+        changed.map(|_: lysocline_engine::ledger::Ledger| ()).unwrap_err().to_string()
+    };
+    let aragonite = ledger.reaction("aragonite").unwrap();
+    assert_eq!(
+        message(ledger.without("calcit")),
+        "the ledger has no reaction `calcit`; did you mean `calcite`?"
+    );
+    assert_eq!(
+        message(ledger.with_reaction("calcite", aragonite)),
+        "the ledger has a reaction `calcite` already: use `.replace(\"calcite\", …)`, or another name"
+    );
+    assert_eq!(
+        ledger.derive("PbS(galena) <=> Pb^2+ + S^2-").unwrap_err().to_string(),
+        "`PbS(galena) <=> Pb^2+ + S^2-` cannot be reached: no combination of the constants accounts for \
+         `PbS(galena)`, `Pb^2+` and `S^2-`"
+    );
+    assert_eq!(
+        shipped::ledger("freshwatr", None).unwrap_err().to_string(),
+        "no ledger `freshwatr` is shipped: there are `freshwater`; did you mean `freshwater`?"
+    );
+}
+
+#[test]
+fn what_is_stretched_is_said() {
+    warns(
+        &[("pH", "7"), ("temperature", "95 degC"), ("Ca", "5 mmol/kg"), ("DIC", "5 mmol/kg")],
+        &[],
+        &[
+            "`CaCO3(aq)` is used 15.0 K outside its stated range",
+            "`CaHCO3^+` is used 5.0 K outside its stated range",
+        ],
+    );
+    warns(
+        &[("pH", "7"), ("temperature", "25 degC"), ("Na", "2 mol/kg"), ("Cl", "2 mol/kg")],
+        &[],
+        &["ionic strength 2.00 mol/kg(water) is beyond the range of the activity model"],
+    );
+    warns(
+        &[("pH", "7"), ("Na", "1 mmol/kg"), ("Cl", "1 mmol/kg")],
+        &[],
+        &["not given, so taken: temperature 25 degC"],
+    );
+}
