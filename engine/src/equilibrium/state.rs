@@ -572,7 +572,7 @@ impl State {
                 self.add_doubts(formed, &mut doubts);
             }
         }
-        warnings.extend(doubts.into_iter().map(|(why, names)| format!("{} {why}", list(&names))));
+        warnings.extend(doubts.into_iter().map(|(why, names)| format!("{why}: {}", list(&names))));
         let leftovers = &self.system().ledger().formations().leftovers;
         let names: Vec<&str> = self.system().ledger().names().collect();
         warnings.extend(leftovers.iter().map(|leftover| {
@@ -591,7 +591,7 @@ impl State {
     }
 
     fn doubt_words(&self, formed: &Formation) -> Option<String> {
-        self.system().doubts(formed).next().map(|(reaction, doubt)| format!("`{reaction}` {}", words(doubt)))
+        self.system().doubts(formed).next().map(|(_, doubt)| words(doubt))
     }
 
     /// Whether a species holds more than a hundredth of one of its components.
@@ -610,9 +610,9 @@ impl State {
 fn words(doubt: Doubt) -> String {
     match doubt {
         Doubt::OneTemperature(known) => {
-            format!("is known at {} degC only, and used as it stands", known.celsius())
+            format!("log K known at {} degC only, and used as it stands", known.celsius())
         }
-        Doubt::OutsideRange(by) => format!("is used {by:.1} K outside its stated range"),
+        Doubt::OutsideRange(by) => format!("log K used {by:.1} K outside its stated range"),
     }
 }
 
