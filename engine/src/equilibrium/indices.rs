@@ -3,13 +3,14 @@
 use super::analysis::ln_saturation;
 use super::error::EquilibriumError;
 use super::state::State;
-use crate::solve::scalar::{self, Tolerance, root_between};
+use crate::solve::scalar::{self, Tolerance};
 use crate::solve::{Reservoir, Settings, solve};
 use crate::water::Treatment;
 
 const LN_10: f64 = std::f64::consts::LN_10;
 /// ln of the fugacities of CO2, bar, between which the saturation pH is looked for.
-const FUGACITIES: (f64, f64) = (-36.0, 5.0);
+const FUGACITIES: (f64, f64) = (-30.0, 5.0);
+const FUGACITY_INTERVALS: usize = 20;
 
 /// Calcium carbonate that a water deposits until calcite is at equilibrium, mol/kg(water); negative if it dissolves some.
 ///
@@ -48,14 +49,14 @@ pub fn langelier(state: &State) -> Result<f64, EquilibriumError> {
         ph = -converged.ln_a[system.proton()] / LN_10;
         Ok::<f64, EquilibriumError>(ln_saturation(calcite, &converged))
     };
-    let (low, high) = FUGACITIES;
-    let low = scalar::Sample { x: low, f: saturation(low)? };
-    let high = scalar::Sample { x: high, f: saturation(high)? };
-    if !(low.f > 0.0 && high.f < 0.0) {
+    // With nearly all CO2 taken away carbonate vanishes too, and saturation falls again: of two roots the trade's is the
+    // one with more CO2.
+    let tolerance = Tolerance { x: 1e-12, f: 1e-12 };
+    let roots = scalar::all_roots(&mut saturation, FUGACITIES, FUGACITY_INTERVALS, tolerance)?.roots;
+    let Some(root) = roots.last() else {
         let why = "no amount of CO2 brings this water to equilibrium with calcite";
         return Err(EquilibriumError::Unreachable(why.into()));
-    }
-    let root = root_between(&mut saturation, low, high, Tolerance { x: 1e-12, f: 1e-12 })?;
+    };
     saturation(root.x)?;
     Ok(state.ph() - ph)
 }

@@ -189,7 +189,6 @@ impl State {
 
     fn value(&self, observable: &Observable, asked: &str) -> Result<Answer, ObservableError> {
         let inner = &*self.0;
-        let system = self.system();
         let converged = &inner.outcome.converged;
         let plain =
             |value: f64, unit: &'static str| Ok(Answer { value, unit, molar_mass: None, element: None });
