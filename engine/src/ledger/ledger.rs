@@ -254,7 +254,14 @@ impl Ledger {
         });
         match found {
             Some((_, species)) => Ok(species),
-            None => Err(self.unknown("mineral or gas", name, named.iter().map(|(name, _)| *name))),
+            None => {
+                // `CO2` is the solute: whoever asks for a gas means `CO2(g)`.
+                let gas = format!("{name}(g)");
+                match named.iter().find(|(own, _)| *own == gas) {
+                    Some((own, _)) => Err(self.unknown("mineral or gas", name, [*own].into_iter())),
+                    None => Err(self.unknown("mineral or gas", name, named.iter().map(|(name, _)| *name))),
+                }
+            }
         }
     }
 

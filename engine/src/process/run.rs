@@ -1,6 +1,5 @@
 //! A run: states in order, a failed one as a row with its reason.
 
-use std::collections::BTreeMap;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicUsize, Ordering};
 
@@ -172,10 +171,13 @@ impl Run {
     /// Warnings of all rows, each once, with the rows concerned.
     #[must_use]
     pub fn warnings(&self) -> Vec<String> {
-        let mut rows: BTreeMap<String, Vec<usize>> = BTreeMap::new();
+        let mut rows: Vec<(String, Vec<usize>)> = Vec::new();
         for (row, outcome) in self.0.outcomes.iter().enumerate() {
             for warning in outcome.as_ref().map(State::warnings).unwrap_or_default() {
-                rows.entry(warning).or_default().push(row);
+                match rows.iter_mut().find(|(known, _)| *known == warning) {
+                    Some((_, concerned)) => concerned.push(row),
+                    None => rows.push((warning, vec![row])),
+                }
             }
         }
         rows.into_iter().map(|(warning, rows)| format!("{warning} ({})", which(&rows, self.len()))).collect()

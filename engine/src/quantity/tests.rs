@@ -25,6 +25,8 @@ fn reads() {
     }
     case("41.2 mg/L", Kind::Amount, "41.2 mg/L", 41.2, None);
     case("41.2 +/- 0.8 mg/L", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
+    case("41.2(8) mg/L", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
+    case("-3.30(12)", Kind::Fraction, "-3.30 +/- 0.12", -3.3, Some(0.12));
     case("41.2±0.8 mg/L", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
     case("(41.2 +/- 0.8) mg/L", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
     case("41.2 mg/L +/- 0.8", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));

@@ -119,6 +119,8 @@ const NOT_YET: [(&str, &str); 8] = [
 
 /// A bare total above this, mol/kg(water), is taken for a forgotten unit.
 const LARGEST_BARE_TOTAL: f64 = 20.0;
+/// The same for alkalinity and inorganic carbon, of which waters hold less.
+const LARGEST_BARE_CARBON: f64 = 1.0;
 
 /// Reads the keys of a sample.
 ///
@@ -216,9 +218,12 @@ fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyF
             .map(|given| read(&given).map_err(|message| KeyFault::new(key, format!("`{key}`: {message}"))))
             .transpose()
     };
-    let alkalinity = named.quantity("alkalinity", Kind::Alkalinity)?;
+    let alkalinity = bare_below(named, "alkalinity", "meq/L")?;
+    let alkalinity =
+        alkalinity.map(|given| crate::named::quantity("alkalinity", given, Kind::Alkalinity)).transpose()?;
     let alkalinity = amount("alkalinity", alkalinity, concentration::alkalinity)?;
-    let dic = named.quantity("DIC", Kind::Amount)?;
+    let dic = bare_below(named, "DIC", "mmol/L")?;
+    let dic = dic.map(|given| crate::named::quantity("DIC", given, Kind::Amount)).transpose()?;
     let dic = amount("DIC", dic, |given| {
         concentration::amount(&Analyte::parse("C").expect("carbon is an element"), given)
     })?;
@@ -229,6 +234,16 @@ fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyF
         Evidence { ph, alkalinity, dic, co2: read_co2(named, pressure)?, from: named.texts("from")? };
     check_pair(&evidence)?;
     Ok(evidence)
+}
+
+/// Takes a value out, unless it is a bare number too large to be meant.
+fn bare_below(named: &mut Named, key: &str, unit: &str) -> Result<Option<Value>, KeyFault> {
+    match named.take(key) {
+        Some(Value::Number(number)) if number.abs() > LARGEST_BARE_CARBON => {
+            Err(KeyFault::new(key, format!("`{key}`: {number} mol/kg? write \"{number} {unit}\"")))
+        }
+        value => Ok(value),
+    }
 }
 
 /// Fugacity in bar; an ideal gas's partial pressure is its fugacity, and a mole fraction that of the total pressure.
