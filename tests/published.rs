@@ -31,6 +31,7 @@ files! {
     electron = "electron",
     felmy1990 = "felmy1990",
     four_waters = "four-waters",
+    formation_cycles = "formation-cycles",
     freeze1979 = "freeze1979",
     harned1941 = "harned1941",
     harned1943 = "harned1943",

@@ -198,8 +198,9 @@ fn read_entries(file_key: &str, citation: &str, lines: &Lines<'_>, faults: &mut 
         }
     };
     for entry in lines.entries("constant", faults) {
-        match read_constant(file_key, citation, &entry).and_then(|read| check_name(&read.0, &entry).map(|()| read)) {
-            Ok(read) => file.constants.push(read),
+        match read_constant(file_key, citation, &entry).and_then(|read| check_name(&read.1, &entry).map(|()| read)) {
+            Ok((false, name, reaction)) => file.constants.push((name, reaction)),
+            Ok((true, name, reaction)) => file.formations.push((name, reaction)),
             Err(fault) => faults.push(fault),
         }
     }
@@ -219,7 +220,12 @@ fn read_entries(file_key: &str, citation: &str, lines: &Lines<'_>, faults: &mut 
     file
 }
 
-fn read_constant(file_key: &str, citation: &str, entry: &Entry<'_>) -> Result<(String, Reaction), FileFault> {
+/// Whether it counts as formation data, its name, and the reaction.
+fn read_constant(
+    file_key: &str,
+    citation: &str,
+    entry: &Entry<'_>,
+) -> Result<(bool, String, Reaction), FileFault> {
     let mut keys = entry.keys();
     let mut text = |key: &str| match keys.remove(key) {
         Some(Value::Text(text)) => Ok(text),
@@ -245,6 +251,13 @@ fn read_constant(file_key: &str, citation: &str, entry: &Entry<'_>) -> Result<(S
             history.texts("history").map_err(|fault| named("history", fault.message))?.unwrap_or_default()
         }
     };
+    let is_formation = match keys.remove("formation") {
+        None => false,
+        Some(Value::Flag(flag)) => flag,
+        Some(other) => {
+            return Err(named("formation", format!("`formation` is true or false, not {}", other.kind())));
+        }
+    };
     let identity = match keys.remove("input") {
         None => format!("{file_key}/{name}"),
         Some(Value::Text(input)) => input,
@@ -265,7 +278,7 @@ fn read_constant(file_key: &str, citation: &str, entry: &Entry<'_>) -> Result<(S
     for conversion in history {
         constant.history = constant.history.converted(conversion);
     }
-    Ok((name, Reaction::of(reaction.equation().clone(), constant)))
+    Ok((is_formation, name, Reaction::of(reaction.equation().clone(), constant)))
 }
 
 fn read_formation(

@@ -4,6 +4,7 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::{Arc, OnceLock};
 
+use super::alternative::{self, Alternative};
 use super::audit::{self, Audit, Cycle};
 use super::combine::{Combined, combine_routes};
 use super::formation::{Formations, Leftover, in_bar};
@@ -90,6 +91,16 @@ pub enum LedgerError {
     /// An uncertainty that is none.
     #[error("`sigma` is a standard uncertainty of log K and has to be above zero, not {0}")]
     Sigma(f64),
+    /// No alternative of this description.
+    #[error("no shipped alternative to `{name}` is by `{author}`: {}", known_alternatives(.known))]
+    NoAlternative {
+        /// The reaction.
+        name: String,
+        /// Who was asked for.
+        author: String,
+        /// Authors and years of what there is.
+        known: Vec<String>,
+    },
     /// A cycle nothing can close.
     #[error(
         "the cycle of {} cannot be closed: it misses by {misclosure:.4} in log K, more than the uncertainties of its \
@@ -105,6 +116,10 @@ pub enum LedgerError {
 
 fn help(nearest: Option<&str>) -> String {
     nearest.map(|name| format!("; did you mean `{name}`?")).unwrap_or_default()
+}
+
+fn known_alternatives(known: &[String]) -> String {
+    if known.is_empty() { "there is none".into() } else { format!("there is {}", list(known)) }
 }
 
 impl Default for ActivityChoice {
@@ -359,6 +374,21 @@ impl Ledger {
         combine_routes(target, &all.map(|(_, reaction)| reaction).collect::<Vec<_>>())
     }
 
+    /// Shipped constants for the same reactions that it does not use, in order of name.
+    #[must_use]
+    pub fn alternatives(&self) -> Vec<Alternative> {
+        alternative::alternatives(self)
+    }
+
+    /// The same with a shipped alternative in place of a reaction, named by author and year: `Rimstidt 1980`.
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::Unknown`] or [`LedgerError::NoAlternative`].
+    pub fn choose(&self, name: &str, author: &str) -> Result<Self, LedgerError> {
+        self.replace(name, &alternative::find(self, name, author)?)
+    }
+
     /// Every independent cycle among its reactions and formation data, and how far each fails to close.
     #[must_use]
     pub fn audit(&self, temperature: Temperature) -> Audit {
@@ -489,6 +519,20 @@ impl ActivityChoice {
         };
         options.finish()?;
         Ok(choice)
+    }
+}
+
+impl ActivityChoice {
+    /// The name and options that [`ActivityChoice::read`] makes it from.
+    #[must_use]
+    pub fn written(self) -> (&'static str, Vec<(&'static str, f64)>) {
+        match self {
+            Self::Ideal => ("ideal", vec![]),
+            Self::Davies { a, b, water } => {
+                let options = [("A", a), ("b", Some(b)), ("water_activity", water)];
+                ("davies", options.into_iter().filter_map(|(key, value)| Some((key, value?))).collect())
+            }
+        }
     }
 }
 

@@ -4,8 +4,9 @@
 //! into a formation reaction of every species from components that it picks itself. Where constants imply each other,
 //! [`combine`] weighs the routes, an [`Audit`] tables how far cycles fail to close, and a [`Reconciliation`] closes them;
 //! [`standard_formation`] brings enthalpies and entropies of formation to bear on them. [`file`] reads and checks ledgers
-//! written as TOML; [`shipped`] knows those that come with the program.
+//! written as TOML, [`save`] writes them; [`shipped`] knows those that come with the program.
 
+mod alternative;
 mod audit;
 pub mod chi_square;
 mod combine;
@@ -17,9 +18,11 @@ mod ledger;
 mod least_squares;
 mod network;
 mod reconcile;
+pub mod save;
 pub mod shipped;
 pub mod standard_formation;
 
+pub use alternative::Alternative;
 pub use audit::{Audit, Cycle};
 pub use combine::{Combined, Routes, combine, combine_routes};
 pub use formation::{Formation, Formations, Leftover};
