@@ -15,6 +15,8 @@ use crate::quantity::Input;
 
 /// A pivot that is left with less than this share of its diagonal says nothing new.
 const DEPENDENT: f64 = 1e-9;
+/// A sum of sensitivities below this share of its largest term is a remainder of rounding.
+const CANCELS: f64 = 1e-9;
 
 /// Sensitivities of log10 K to its inputs, each times the input's standard uncertainty: one row a reaction.
 pub(super) struct Scatter {
@@ -44,16 +46,17 @@ impl Scatter {
         Self { inputs, rows }
     }
 
-    /// The row of a sum of reactions.
+    /// The row of a sum of reactions; what cancels but for rounding is zero.
     pub fn combined(&self, multiples: &Sparse) -> Vec<f64> {
-        let mut sum = vec![0.0; self.inputs.len()];
+        let mut sum = vec![(0.0_f64, 0.0_f64); self.inputs.len()];
         for (index, multiple) in multiples {
             let multiple = rational::to_f64(*multiple);
-            for (total, own) in sum.iter_mut().zip(&self.rows[*index]) {
+            for ((total, largest), own) in sum.iter_mut().zip(&self.rows[*index]) {
                 *total += multiple * own;
+                *largest = largest.max((multiple * own).abs());
             }
         }
-        sum
+        sum.into_iter().map(|(total, largest)| if total.abs() <= CANCELS * largest { 0.0 } else { total }).collect()
     }
 
     /// Standard uncertainty of a sum of reactions.

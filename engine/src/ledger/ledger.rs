@@ -84,8 +84,8 @@ pub enum LedgerError {
     },
     /// Constants that cannot be weighed.
     #[error(
-        "{} state no uncertainty, so they cannot be weighed: fill it in with `.assume_sigma(0.05)`, or reconcile with \
-         `#{{ sigma: 0.05 }}`", list(.0)
+        "no uncertainty is stated for {}, and what is not stated cannot be weighed: fill it in with \
+         `.assume_sigma(0.05)`, or reconcile with `#{{ sigma: 0.05 }}`", list(.0)
     )]
     Unstated(Vec<String>),
     /// An uncertainty that is none.
