@@ -1,7 +1,7 @@
 //! Why there is no state.
 
-use crate::ledger::Cycle;
 use super::assemble::System;
+use crate::ledger::Cycle;
 use crate::ledger::{LedgerError, shipped::ShippedError};
 use crate::solve::SolveError;
 use crate::text::list;

@@ -38,7 +38,8 @@ pub(super) fn alternatives(ledger: &Ledger) -> Vec<Alternative> {
 pub(super) fn find(ledger: &Ledger, name: &str, author: &str) -> Result<Reaction, LedgerError> {
     ledger.reaction(name)?;
     let plain = |text: &str| text.to_lowercase().replace([' ', ','], "");
-    let alternatives: Vec<Alternative> = alternatives(ledger).into_iter().filter(|a| a.name == name).collect();
+    let alternatives: Vec<Alternative> =
+        alternatives(ledger).into_iter().filter(|a| a.name == name).collect();
     let found = alternatives.iter().find(|alternative| plain(&alternative.author) == plain(author));
     found.map(|alternative| alternative.reaction.clone()).ok_or_else(|| LedgerError::NoAlternative {
         name: name.into(),
@@ -49,7 +50,10 @@ pub(super) fn find(ledger: &Ledger, name: &str, author: &str) -> Result<Reaction
 
 /// Whether two equations say the same, perhaps reversed or taken several times.
 fn is_same_equation(a: &Equation, b: &Equation) -> bool {
-    let (Some((species, own)), true) = (a.terms().first(), a.terms().len() == b.terms().len()) else { return false };
+    let (Some((species, own)), true) = (a.terms().first(), a.terms().len() == b.terms().len()) else {
+        return false;
+    };
     let factor = b.coefficient(species) / own;
-    factor != Rational::from_integer(0) && a.terms().iter().all(|(species, n)| b.coefficient(species) == n * factor)
+    factor != Rational::from_integer(0)
+        && a.terms().iter().all(|(species, n)| b.coefficient(species) == n * factor)
 }

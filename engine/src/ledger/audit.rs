@@ -37,6 +37,8 @@ pub struct Cycle {
     pub misclosure: f64,
     /// Its standard uncertainty; `None` unless every reaction states one.
     pub sigma: Option<f64>,
+    /// The standard uncertainty from those that do state one.
+    pub stated_sigma: f64,
 }
 
 impl Cycle {
@@ -47,7 +49,7 @@ impl Cycle {
         Some(if self.misclosure.abs() <= ROUNDING { 0.0 } else { self.misclosure.abs() / sigma })
     }
 
-    /// Whether it is beyond what its constants allow: above 3 standard deviations, or above 0.1 where not all state one.
+    /// Whether it is beyond what its constants allow: above 3 standard deviations, and above 0.1 where not all state one.
     #[must_use]
     pub fn contradicts(&self) -> bool {
         self.severity() > 1.0
@@ -64,7 +66,9 @@ impl Cycle {
     fn severity(&self) -> f64 {
         match self.sigmas() {
             Some(sigmas) => sigmas / CONTRADICTION_SIGMAS,
-            None => self.misclosure.abs() / CONTRADICTION_UNSTATED,
+            None => {
+                self.misclosure.abs() / CONTRADICTION_UNSTATED.max(CONTRADICTION_SIGMAS * self.stated_sigma)
+            }
         }
     }
 }
@@ -92,7 +96,8 @@ impl std::fmt::Display for Cycle {
 /// Every independent cycle among the reactions and formation data of a ledger.
 pub(super) fn audit(ledger: &Ledger, temperature: Temperature) -> Audit {
     let survey = Survey::of(ledger, temperature);
-    let described = survey.closing.iter().zip(&survey.cycles).map(|(closing, cycle)| survey.describe(*closing, cycle));
+    let described =
+        survey.closing.iter().zip(&survey.cycles).map(|(closing, cycle)| survey.describe(*closing, cycle));
     let mut cycles: Vec<Cycle> = described.collect();
     cycles.sort_by(|a, b| b.severity().total_cmp(&a.severity()).then_with(|| a.reactions.cmp(&b.reactions)));
     Audit { temperature, cycles, unknown: survey.unknown }
@@ -156,8 +161,10 @@ impl<'a> Survey<'a> {
         }
         let network = Network::new(survey.reactions.clone());
         let mut order: Vec<usize> = (0..survey.reactions.len()).collect();
-        let n_formation_data =
-            ledger.formation_data().filter(|(name, _)| !survey.unknown.iter().any(|other| other == name)).count();
+        let n_formation_data = ledger
+            .formation_data()
+            .filter(|(name, _)| !survey.unknown.iter().any(|other| other == name))
+            .count();
         order.sort_by_key(|index| {
             (*index >= n_formation_data, survey.reactions[*index].equation().terms().len(), *index)
         });
@@ -181,10 +188,12 @@ impl<'a> Survey<'a> {
         let mut reactions: Vec<_> = cycle.iter().collect();
         reactions.sort_by_key(|(index, _)| (**index != closing, **index));
         let named = |(index, multiple): (&usize, &Rational)| (self.names[*index].clone(), *multiple);
+        let stated_sigma = self.scatter.sigma(cycle);
         Cycle {
             reactions: reactions.into_iter().map(named).collect(),
             misclosure: self.misclosure(cycle),
-            sigma: stated.then(|| self.scatter.sigma(cycle)),
+            sigma: stated.then_some(stated_sigma),
+            stated_sigma,
         }
     }
 }

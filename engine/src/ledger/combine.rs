@@ -13,8 +13,8 @@
 use std::collections::{BTreeSet, VecDeque};
 
 use super::elimination::Sparse;
-use super::ledger::LedgerError;
 use super::least_squares::{Scatter, Weights};
+use super::ledger::LedgerError;
 use super::network::{Eliminated, Network};
 use crate::chem::{Constant, Equation, EquationError, Rational, Reaction, ReactionError, rational};
 use crate::units::Temperature;
@@ -93,7 +93,8 @@ pub fn combine_routes(target: &str, reactions: &[&Reaction]) -> Result<Combined,
 fn combine_over(target: &Equation, reactions: &[&Reaction], weighted: bool) -> Result<Combined, LedgerError> {
     let network = Network::new(reactions.to_vec());
     let eliminated = network.eliminate(0..reactions.len());
-    let unreachable = |left_over: Vec<String>| LedgerError::Unreachable { target: target.to_string(), left_over };
+    let unreachable =
+        |left_over: Vec<String>| LedgerError::Unreachable { target: target.to_string(), left_over };
     let first = network
         .reach(&eliminated.echelon, target)
         .map_err(|species| unreachable(species.iter().map(|s| s.key().to_string()).collect()))?;
@@ -102,7 +103,8 @@ fn combine_over(target: &Equation, reactions: &[&Reaction], weighted: bool) -> R
         return Ok(Combined { reaction: sum(target, &first, reactions)?, routes: None });
     }
     let scatter = Scatter::of(reactions);
-    let multiples = if weighted { least_variance(&first, &cycles, &scatter) } else { shortest(first.clone(), &cycles) };
+    let multiples =
+        if weighted { least_variance(&first, &cycles, &scatter) } else { shortest(first.clone(), &cycles) };
     let routes = compare(&first, &cycles, &network, weighted.then_some(&scatter));
     let reaction = sum(target, &multiples, reactions)?;
     let constant = reaction.constant()?;
@@ -134,7 +136,8 @@ fn connected(eliminated: &Eliminated, route: &Sparse) -> Vec<Sparse> {
 fn least_variance(route: &Sparse, cycles: &[Sparse], scatter: &Scatter) -> Sparse {
     let own = scatter.combined(route);
     let weights = Weights::of(cycles.iter().map(|cycle| scatter.combined(cycle)).collect());
-    let covariance: Vec<f64> = weights.cycles.iter().map(|cycle| super::least_squares::dot(cycle, &own)).collect();
+    let covariance: Vec<f64> =
+        weights.cycles.iter().map(|cycle| super::least_squares::dot(cycle, &own)).collect();
     let mut best = route.clone();
     for (cycle, share) in cycles.iter().zip(weights.times(&covariance)) {
         add(&mut best, cycle, Rational::new((-share * PARTS as f64).round() as i64, PARTS));
@@ -167,10 +170,12 @@ fn exchanges(route: &Sparse, cycles: &[Sparse]) -> impl Iterator<Item = Sparse> 
 
 fn compare(route: &Sparse, cycles: &[Sparse], network: &Network<'_>, scatter: Option<&Scatter>) -> Routes {
     let total = |multiples: &Sparse| -> f64 {
-        let terms = multiples.iter().map(|(k, n)| rational::to_f64(*n) * network.log_k(*k, Temperature::REFERENCE));
+        let terms =
+            multiples.iter().map(|(k, n)| rational::to_f64(*n) * network.log_k(*k, Temperature::REFERENCE));
         terms.sum()
     };
-    let values: Vec<f64> = exchanges(route, cycles).map(|other| total(&other)).chain([total(route)]).collect();
+    let values: Vec<f64> =
+        exchanges(route, cycles).map(|other| total(&other)).chain([total(route)]).collect();
     let sigmas = scatter.map(|scatter| {
         let in_sigmas = cycles.iter().map(|cycle| total(cycle).abs() / scatter.sigma(cycle));
         in_sigmas.filter(|sigmas| !sigmas.is_nan()).fold(0.0, f64::max)
@@ -221,7 +226,8 @@ impl Routes {
 
 impl std::fmt::Display for Routes {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        let chosen = if self.weighted { "weighted by least variance" } else { "the one with fewest constants taken" };
+        let chosen =
+            if self.weighted { "weighted by least variance" } else { "the one with fewest constants taken" };
         write!(
             f,
             "{} independent routes, {chosen}; singly they give log K {:.3} to {:.3} at 25 degC",
@@ -249,11 +255,19 @@ mod tests {
     #[test]
     fn two_routes_are_weighted_by_their_variance() {
         // Directly -16.60 +/- 0.2, in two steps -16.68 +/- 0.1: weights 1/0.04 and 1/0.01, so 0.2 and 0.8.
-        let steps = [reaction(K1, "-6.35 +/- 0.06"), reaction(K2, "-10.33 +/- 0.08"), reaction(BOTH, "-16.60 +/- 0.2")];
+        let steps = [
+            reaction(K1, "-6.35 +/- 0.06"),
+            reaction(K2, "-10.33 +/- 0.08"),
+            reaction(BOTH, "-16.60 +/- 0.2"),
+        ];
         let combined = combine_routes(BOTH, &steps.iter().collect::<Vec<_>>()).unwrap();
         let log_k = combined.reaction.log_k().unwrap();
         assert_abs_diff_eq!(log_k.value(), 0.8 * -16.68 + 0.2 * -16.60, epsilon = 1e-6);
-        assert_abs_diff_eq!(log_k.sigma().unwrap(), (1.0_f64 / (1.0 / 0.04 + 1.0 / 0.01)).sqrt(), epsilon = 1e-9);
+        assert_abs_diff_eq!(
+            log_k.sigma().unwrap(),
+            (1.0_f64 / (1.0 / 0.04 + 1.0 / 0.01)).sqrt(),
+            epsilon = 1e-9
+        );
         let routes = combined.routes.unwrap();
         assert_eq!(
             routes.to_string(),

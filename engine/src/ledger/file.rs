@@ -85,7 +85,8 @@ pub fn read_constants(file_key: &str, text: &str) -> Result<ConstantFile, Vec<Fi
 
 /// Reads the `[[element]]` entries of a file alone.
 pub(super) fn read_elements(file_key: &str, text: &str) -> Elements {
-    Lines::parse(text).map_or_else(|_| Elements::default(), |lines| elements_of(file_key, &lines, &mut vec![]))
+    Lines::parse(text)
+        .map_or_else(|_| Elements::default(), |lines| elements_of(file_key, &lines, &mut vec![]))
 }
 
 /// Reads a ledger with entries of its own and builds it. `file_key` is the file's name.
@@ -120,16 +121,17 @@ pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
             fault(format!("no file `{}` is shipped: there are {}", from.file, list(&known)));
             continue;
         };
-        let chosen = |entries: &[(String, Reaction)], wanted: &Option<Vec<String>>, of: &dyn Fn(&str) -> String| {
-            match wanted {
-                None => (entries.to_vec(), vec![]),
-                Some(names) => {
-                    let find = |name: &String| entries.iter().find(|(own, _)| *own == of(name)).cloned();
-                    let missing = names.iter().filter(|name| find(name).is_none()).cloned().collect();
-                    (names.iter().filter_map(find).collect(), missing)
+        let chosen =
+            |entries: &[(String, Reaction)], wanted: &Option<Vec<String>>, of: &dyn Fn(&str) -> String| {
+                match wanted {
+                    None => (entries.to_vec(), vec![]),
+                    Some(names) => {
+                        let find = |name: &String| entries.iter().find(|(own, _)| *own == of(name)).cloned();
+                        let missing = names.iter().filter(|name| find(name).is_none()).cloned().collect();
+                        (names.iter().filter_map(find).collect(), missing)
+                    }
                 }
-            }
-        };
+            };
         let formation_name =
             |species: &str| format!("formation of {species}{}", standard_formation::by(&from.file));
         let (constants, missing) = chosen(&found.constants, &from.constants, &str::to_string);
@@ -183,7 +185,12 @@ fn elements_of(file_key: &str, lines: &Lines<'_>, faults: &mut Vec<FileFault>) -
 }
 
 /// Constants and formation data of a file; a source of their own may stand in for the citation.
-fn read_entries(file_key: &str, citation: &str, lines: &Lines<'_>, faults: &mut Vec<FileFault>) -> ConstantFile {
+fn read_entries(
+    file_key: &str,
+    citation: &str,
+    lines: &Lines<'_>,
+    faults: &mut Vec<FileFault>,
+) -> ConstantFile {
     let mut file = ConstantFile { citation: citation.into(), ..ConstantFile::default() };
     let mut names: BTreeMap<String, usize> = BTreeMap::new();
     let mut check_name = |name: &str, entry: &Entry<'_>| match names.get(name) {
@@ -198,7 +205,9 @@ fn read_entries(file_key: &str, citation: &str, lines: &Lines<'_>, faults: &mut 
         }
     };
     for entry in lines.entries("constant", faults) {
-        match read_constant(file_key, citation, &entry).and_then(|read| check_name(&read.1, &entry).map(|()| read)) {
+        match read_constant(file_key, citation, &entry)
+            .and_then(|read| check_name(&read.1, &entry).map(|()| read))
+        {
             Ok((false, name, reaction)) => file.constants.push((name, reaction)),
             Ok((true, name, reaction)) => file.formations.push((name, reaction)),
             Err(fault) => faults.push(fault),
@@ -240,7 +249,10 @@ fn read_constant(
     }
     if !keys.contains_key("source") {
         if citation.is_empty() {
-            return Err(named("source", "a constant needs `source`: the publication, or who measured it".into()));
+            return Err(named(
+                "source",
+                "a constant needs `source`: the publication, or who measured it".into(),
+            ));
         }
         keys.insert("source".into(), Value::Text(citation.into()));
     }
@@ -416,7 +428,9 @@ impl<'a> Lines<'a> {
     fn entries(&self, key: &str, faults: &mut Vec<FileFault>) -> Vec<Entry<'_>> {
         let Some(value) = self.table.get_ref().get(key) else { return vec![] };
         let line = |value: &Spanned<DeValue<'_>>| line_at(self.text, value.span().start);
-        let mut fault = |line| faults.push(FileFault { line, message: format!("write each `{key}` as a table `[[{key}]]`") });
+        let mut fault = |line| {
+            faults.push(FileFault { line, message: format!("write each `{key}` as a table `[[{key}]]`") })
+        };
         let DeValue::Array(array) = value.get_ref() else {
             fault(line(value));
             return vec![];

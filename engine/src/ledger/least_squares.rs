@@ -31,8 +31,12 @@ impl Scatter {
             .iter()
             .map(|reaction| reaction.constant().map(|constant| constant.history.parts()).unwrap_or_default())
             .collect();
-        let mut inputs: Vec<Input> =
-            parts.iter().flatten().filter(|part| part.input.sigma().is_some()).map(|p| p.input.clone()).collect();
+        let mut inputs: Vec<Input> = parts
+            .iter()
+            .flatten()
+            .filter(|part| part.input.sigma().is_some())
+            .map(|p| p.input.clone())
+            .collect();
         inputs.sort();
         inputs.dedup();
         let mut rows = vec![vec![0.0; inputs.len()]; reactions.len()];
@@ -56,7 +60,9 @@ impl Scatter {
                 *largest = largest.max((multiple * own).abs());
             }
         }
-        sum.into_iter().map(|(total, largest)| if total.abs() <= CANCELS * largest { 0.0 } else { total }).collect()
+        sum.into_iter()
+            .map(|(total, largest)| if total.abs() <= CANCELS * largest { 0.0 } else { total })
+            .collect()
     }
 
     /// Standard uncertainty of a sum of reactions.
@@ -94,7 +100,11 @@ impl Weights {
     pub fn remainder(&self, misclosures: &[f64]) -> Vec<f64> {
         let weighted = self.times(misclosures);
         let inputs = self.to_inputs(&weighted);
-        self.cycles.iter().zip(misclosures).map(|(cycle, misclosure)| misclosure - dot(cycle, &inputs)).collect()
+        self.cycles
+            .iter()
+            .zip(misclosures)
+            .map(|(cycle, misclosure)| misclosure - dot(cycle, &inputs))
+            .collect()
     }
 
     /// (C A)ᵀ times a vector with one entry a cycle.
@@ -179,7 +189,9 @@ mod tests {
     fn a_cycle_that_repeats_another_is_left_out_and_its_contradiction_is_seen() {
         let weights = Weights::of(vec![vec![1.0, 2.0], vec![2.0, 4.0]]);
         assert_eq!(weights.independent.len(), 1);
-        let rest = |misclosures: [f64; 2]| weights.remainder(&misclosures).iter().map(|r| r.abs()).fold(0.0, f64::max);
+        let rest = |misclosures: [f64; 2]| {
+            weights.remainder(&misclosures).iter().map(|r| r.abs()).fold(0.0, f64::max)
+        };
         assert!(rest([0.1, 0.2]) < 1e-12);
         assert!(rest([0.1, 0.3]) > 0.01);
     }

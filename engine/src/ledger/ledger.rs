@@ -255,9 +255,8 @@ impl Ledger {
     ///
     /// [`LedgerError::Clash`] if names clash and `prefer_other` is `None`.
     pub fn merge(&self, other: &Self, prefer_other: Option<bool>) -> Result<Self, LedgerError> {
-        let clash = |(name, reaction): &(&str, &Reaction)| {
-            self.reaction(name).is_ok_and(|own| own != *reaction)
-        };
+        let clash =
+            |(name, reaction): &(&str, &Reaction)| self.reaction(name).is_ok_and(|own| own != *reaction);
         let both = other.reactions().chain(other.formation_data());
         let clashes: Vec<String> = both.filter(clash).map(|(name, _)| name.to_string()).collect();
         if !clashes.is_empty() && prefer_other.is_none() {
@@ -449,7 +448,10 @@ impl Ledger {
         let solutes: Vec<&Species> = self.0.solutes.iter().filter(|ion| !reacts(ion)).collect();
         let mut text = format!("{:?} {:?} {:?}", constants.collect::<Vec<_>>(), solutes, self.0.activity);
         for (name, reaction) in self.formation_data() {
-            text.push_str(&format!("{name:?} {reaction:?}", reaction = reaction.constant().ok().map(|c| &c.log_k)));
+            text.push_str(&format!(
+                "{name:?} {reaction:?}",
+                reaction = reaction.constant().ok().map(|c| &c.log_k)
+            ));
         }
         let fold = |hash: u64, byte: u8| (hash ^ u64::from(byte)).wrapping_mul(0x0100_0000_01b3);
         format!("{:016x}", text.bytes().fold(0xcbf2_9ce4_8422_2325, fold))

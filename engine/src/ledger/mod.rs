@@ -13,9 +13,9 @@ mod combine;
 pub mod elimination;
 pub mod file;
 mod formation;
+mod least_squares;
 #[allow(clippy::module_inception)]
 mod ledger;
-mod least_squares;
 mod network;
 mod reconcile;
 pub mod save;

@@ -60,7 +60,10 @@ impl Move {
     }
 }
 
-pub(super) fn reconcile(ledger: &Ledger, temperature: Temperature) -> Result<(Ledger, Reconciliation), LedgerError> {
+pub(super) fn reconcile(
+    ledger: &Ledger,
+    temperature: Temperature,
+) -> Result<(Ledger, Reconciliation), LedgerError> {
     let survey = Survey::of(ledger, temperature);
     check_stated(&survey)?;
     let misclosures: Vec<f64> = survey.cycles.iter().map(|cycle| survey.misclosure(cycle)).collect();
@@ -106,9 +109,12 @@ pub(super) fn reconcile(ledger: &Ledger, temperature: Temperature) -> Result<(Le
 }
 
 fn check_stated(survey: &Survey<'_>) -> Result<(), LedgerError> {
-    let in_cycles = (0..survey.reactions.len()).filter(|index| survey.cycles.iter().any(|c| c.contains_key(index)));
-    let unstated: Vec<String> =
-        in_cycles.filter(|index| !survey.states_sigma(*index)).map(|index| survey.names[index].clone()).collect();
+    let in_cycles =
+        (0..survey.reactions.len()).filter(|index| survey.cycles.iter().any(|c| c.contains_key(index)));
+    let unstated: Vec<String> = in_cycles
+        .filter(|index| !survey.states_sigma(*index))
+        .map(|index| survey.names[index].clone())
+        .collect();
     if unstated.is_empty() { Ok(()) } else { Err(LedgerError::Unstated(unstated)) }
 }
 
@@ -122,8 +128,10 @@ fn check_movable(survey: &Survey<'_>, remainders: &[f64]) -> Result<(), LedgerEr
 
 /// w = (Cᵀ W m)ᵢ / √(Cᵀ W C)ᵢᵢ, the test of one constant against all others.
 fn residual(index: usize, cycles: &[Sparse], weights: &Weights, weighted: &[f64]) -> f64 {
-    let multiples: Vec<f64> =
-        cycles.iter().map(|cycle| cycle.get(&index).map_or(0.0, |multiple| rational::to_f64(*multiple))).collect();
+    let multiples: Vec<f64> = cycles
+        .iter()
+        .map(|cycle| cycle.get(&index).map_or(0.0, |multiple| rational::to_f64(*multiple)))
+        .collect();
     let variance = dot(&multiples, &weights.times(&multiples));
     if variance > 0.0 { dot(&multiples, weighted) / variance.sqrt() } else { 0.0 }
 }
@@ -183,4 +191,3 @@ fn filled(origin: &Origin, sigma: f64) -> Result<Origin, LedgerError> {
     });
     Ok(Origin { parts: parts.collect::<Result<_, LedgerError>>()?, ..origin.clone() })
 }
-

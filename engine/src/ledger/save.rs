@@ -16,7 +16,9 @@ use crate::units::Temperature;
 /// The ledger in the layout of ledger files.
 #[must_use]
 pub fn to_text(ledger: &Ledger) -> String {
-    let mut text = String::from("# A ledger of equilibrium constants: molal, at zero ionic strength, gases counted from 1 bar.\n");
+    let mut text = String::from(
+        "# A ledger of equilibrium constants: molal, at zero ionic strength, gases counted from 1 bar.\n",
+    );
     head(&mut text, ledger);
     let mut named: BTreeMap<&str, Vec<String>> = BTreeMap::new();
     let mut own = Vec::new();
@@ -59,16 +61,24 @@ fn head(text: &mut String, ledger: &Ledger) {
 fn shipped_formation(name: &str, reaction: &Reaction) -> Option<(&'static str, String)> {
     let files = shipped::constant_files().ok()?;
     files.iter().find_map(|(key, file)| {
-        let same = |(own, other): &&(String, Reaction)| own == name && in_bar(other).is_ok_and(|other| other == *reaction);
+        let same = |(own, other): &&(String, Reaction)| {
+            own == name && in_bar(other).is_ok_and(|other| other == *reaction)
+        };
         file.formations.iter().find(same)?;
-        let species = name.strip_prefix("formation of ")?.rsplit_once(", ").map_or(name, |(species, _)| species);
+        let species =
+            name.strip_prefix("formation of ")?.rsplit_once(", ").map_or(name, |(species, _)| species);
         Some((*key, species.to_string()))
     })
 }
 
 fn entry(text: &mut String, name: &str, reaction: &Reaction, is_formation: bool) {
     let Ok(constant) = reaction.constant() else { return };
-    let _ = write!(text, "\n[[constant]]\nname = {}\nreaction = {}\n", quoted(name), quoted(&reaction.equation().to_string()));
+    let _ = write!(
+        text,
+        "\n[[constant]]\nname = {}\nreaction = {}\n",
+        quoted(name),
+        quoted(&reaction.equation().to_string())
+    );
     if is_formation {
         text.push_str("formation = true\n");
     }
@@ -111,13 +121,19 @@ fn value(text: &mut String, constant: &Constant) {
 
 fn origin(text: &mut String, constant: &Constant) {
     let uses = constant.history.uses();
-    let mut sources: Vec<&str> = uses.iter().map(|(origin, _)| origin.source.as_deref().unwrap_or("not stated")).collect();
+    let mut sources: Vec<&str> =
+        uses.iter().map(|(origin, _)| origin.source.as_deref().unwrap_or("not stated")).collect();
     sources.dedup();
     let provenance = match uses {
         [(origin, _)] => origin.provenance,
         _ => Provenance::Computed,
     };
-    let _ = write!(text, "source = {}\nprovenance = {}\n", quoted(&sources.join("; ")), quoted(&provenance.to_string()));
+    let _ = write!(
+        text,
+        "source = {}\nprovenance = {}\n",
+        quoted(&sources.join("; ")),
+        quoted(&provenance.to_string())
+    );
 }
 
 /// The name of the one input behind a constant, by which it stays the same value as where it was published.

@@ -97,7 +97,8 @@ pub fn constant_files() -> Result<&'static BTreeMap<&'static str, ConstantFile>,
 }
 
 fn build(name: &str, text: &str) -> Result<Ledger, ShippedError> {
-    let broken = |faults: Vec<FileFault>| ShippedError::Broken { name: name.into(), faults: in_file(name, &faults) };
+    let broken =
+        |faults: Vec<FileFault>| ShippedError::Broken { name: name.into(), faults: in_file(name, &faults) };
     file::build(&file::read_ledger(text).map_err(broken)?).map_err(broken)
 }
 

@@ -16,7 +16,8 @@ use std::collections::BTreeMap;
 
 use crate::chem::log_k::LogK;
 use crate::chem::{
-    Conditions, Constant, Element, Equation, History, Origin, Provenance, Rational, Reaction, Species, rational,
+    Conditions, Constant, Element, Equation, History, Origin, Provenance, Rational, Reaction, Species,
+    rational,
 };
 use crate::named::{KeyFault, Named};
 use crate::physics::constants::GAS_CONSTANT;
@@ -82,7 +83,9 @@ pub fn formation_equation(species: &Species) -> Result<Equation, String> {
     terms.push((Species::proton(), -charge));
     terms.push((species.clone(), 1.into()));
     Equation::balanced(terms).map_err(|_| {
-        format!("`{species}` needs no formation: it is the reference state of an element, or the hydrogen ion")
+        format!(
+            "`{species}` needs no formation: it is the reference state of an element, or the hydrogen ion"
+        )
     })
 }
 
@@ -98,12 +101,18 @@ impl Elements {
         let reference = element.map(reference_state);
         if reference.as_ref() != Some(&species) {
             let help = reference.map(|state| format!("; write `{state}`")).unwrap_or_default();
-            return Err(KeyFault::new("species", format!("`{species}` is no reference state of an element{help}")));
+            return Err(KeyFault::new(
+                "species",
+                format!("`{species}` is no reference state of an element{help}"),
+            ));
         }
         let coverage = read_coverage(&mut entry)?;
         let entropy = read_property(&mut entry, "entropy", Kind::Entropy, coverage, file_key, &species)?;
-        let entropy = entropy.ok_or_else(|| KeyFault::new("species", format!("`{species}`: an element needs `entropy`")))?;
-        let heat_capacity = entry.quantity("heat_capacity", Kind::Entropy)?.map(|quantity| in_default(&quantity, Kind::Entropy));
+        let entropy = entropy
+            .ok_or_else(|| KeyFault::new("species", format!("`{species}`: an element needs `entropy`")))?;
+        let heat_capacity = entry
+            .quantity("heat_capacity", Kind::Entropy)?
+            .map(|quantity| in_default(&quantity, Kind::Entropy));
         for key in ["provenance", "note", "source"] {
             entry.take(key);
         }
@@ -125,7 +134,10 @@ impl Elements {
 
     fn of(&self, species: &Species) -> Result<&Standard, KeyFault> {
         self.0.get(species).ok_or_else(|| {
-            KeyFault::new("entropy", format!("no entropy of `{species}` is known: give it as an `[[element]]`, or state `gibbs`"))
+            KeyFault::new(
+                "entropy",
+                format!("no entropy of `{species}` is known: give it as an `[[element]]`, or state `gibbs`"),
+            )
         })
     }
 }
@@ -136,25 +148,34 @@ impl Elements {
 /// # Errors
 ///
 /// A fault of a key.
-pub fn read(file_key: &str, citation: &str, elements: &Elements, mut entry: Named) -> Result<(String, Reaction), KeyFault> {
+pub fn read(
+    file_key: &str,
+    citation: &str,
+    elements: &Elements,
+    mut entry: Named,
+) -> Result<(String, Reaction), KeyFault> {
     let species = read_species(&mut entry)?;
     let equation = formation_equation(&species).map_err(|message| KeyFault::new("species", message))?;
     let coverage = read_coverage(&mut entry)?;
-    let mut property =
-        |key, kind| read_property(&mut entry, key, kind, coverage, file_key, &species);
+    let mut property = |key, kind| read_property(&mut entry, key, kind, coverage, file_key, &species);
     let (gibbs, enthalpy) = (property("gibbs", Kind::Energy)?, property("enthalpy", Kind::Energy)?);
     let entropy = property("entropy", Kind::Entropy)?;
     let heat_capacity = entry.quantity("heat_capacity", Kind::Entropy)?;
     let name = entry.text("name")?.unwrap_or_else(|| format!("formation of {species}{}", by(file_key)));
     let source = entry.text("source")?.unwrap_or_else(|| citation.to_string());
     let provenance = entry.text("provenance")?.as_deref().and_then(Provenance::parse).ok_or_else(|| {
-        KeyFault::new("provenance", format!("`{name}` needs `provenance`, one of `read`, `computed` and `memory`"))
+        KeyFault::new(
+            "provenance",
+            format!("`{name}` needs `provenance`, one of `read`, `computed` and `memory`"),
+        )
     })?;
     entry.take("note");
     entry.finish()?;
 
     let heat = match &heat_capacity {
-        Some(own) => Some(change_of_heat_capacity(in_default(own, Kind::Entropy), &species, &equation, elements)?),
+        Some(own) => {
+            Some(change_of_heat_capacity(in_default(own, Kind::Entropy), &species, &equation, elements)?)
+        }
         None => None,
     };
     let (log_k, stated, parts) = match (gibbs, enthalpy, entropy) {
@@ -163,7 +184,8 @@ pub fn read(file_key: &str, citation: &str, elements: &Elements, mut entry: Name
             of_enthalpy_and_entropy(&enthalpy, &entropy, heat, &species, &equation, elements)?
         }
         (Some(_), _, Some(_)) => {
-            let message = format!("`{name}` states its Gibbs energy twice: keep `gibbs`, or `enthalpy` with `entropy`");
+            let message =
+                format!("`{name}` states its Gibbs energy twice: keep `gibbs`, or `enthalpy` with `entropy`");
             return Err(KeyFault::new("gibbs", message));
         }
         _ => {
@@ -229,7 +251,8 @@ fn of_enthalpy_and_entropy(
     }
     let gibbs = enthalpy.value - at.kelvin() * change / 1000.0;
     let log_k = LogK::van_t_hoff(gibbs * per_kilojoule(), at, enthalpy.value, heat.unwrap_or(0.0));
-    let stated = format!("enthalpy of formation {} kJ/mol, entropy {} J/(mol K)", enthalpy.value, entropy.value);
+    let stated =
+        format!("enthalpy of formation {} kJ/mol, entropy {} J/(mol K)", enthalpy.value, entropy.value);
     Ok((log_k, stated, parts))
 }
 
@@ -243,7 +266,9 @@ fn change_of_heat_capacity(
     let mut change = own;
     for (element, coefficient) in from_elements(equation, species) {
         let known = elements.of(element)?.heat_capacity.ok_or_else(|| {
-            let message = format!("`heat_capacity` of `{species}` needs that of `{element}`: give it with the `[[element]]`");
+            let message = format!(
+                "`heat_capacity` of `{species}` needs that of `{element}`: give it with the `[[element]]`"
+            );
             KeyFault::new("heat_capacity", message)
         })?;
         change += coefficient * known;
@@ -252,8 +277,12 @@ fn change_of_heat_capacity(
 }
 
 /// The elements of a formation with their coefficients; the hydrogen ion, whose properties are zero, left out.
-fn from_elements<'a>(equation: &'a Equation, species: &'a Species) -> impl Iterator<Item = (&'a Species, f64)> {
-    let others = equation.terms().iter().filter(move |(other, _)| other != species && *other != Species::proton());
+fn from_elements<'a>(
+    equation: &'a Equation,
+    species: &'a Species,
+) -> impl Iterator<Item = (&'a Species, f64)> {
+    let others =
+        equation.terms().iter().filter(move |(other, _)| other != species && *other != Species::proton());
     others.map(|(element, coefficient)| (element, rational::to_f64(*coefficient)))
 }
 
@@ -281,7 +310,8 @@ fn read_property(
     species: &Species,
 ) -> Result<Option<Property>, KeyFault> {
     let Some(quantity) = entry.quantity(key, kind)? else { return Ok(None) };
-    let quantity = quantity.to(&kind.default_unit()).map_err(|error| KeyFault::new(key, error.to_string()))?;
+    let quantity =
+        quantity.to(&kind.default_unit()).map_err(|error| KeyFault::new(key, error.to_string()))?;
     let sigma = quantity.sigma().map(|expanded| expanded / coverage);
     let label = format!("{key} of {species}{}", by(file_key));
     let input = Input::named(&format!("{file_key}/{key} of {species}"), &label, sigma);
@@ -305,4 +335,3 @@ pub(super) fn by(file_key: &str) -> String {
         _ => String::new(),
     }
 }
-

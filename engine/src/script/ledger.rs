@@ -120,7 +120,7 @@ fn reconciled(reconciliation: &Reconciliation) -> String {
         reconciliation.temperature.celsius(),
         count(reconciliation.n_cycles, "cycle"),
         reconciliation.chi_square,
-        count(reconciliation.degrees_of_freedom, "degree").replace("degrees", "degrees of freedom").replace("degree", "degree of freedom"),
+        count(reconciliation.degrees_of_freedom, "degree") + " of freedom",
         reconciliation.probability
     )
 }
@@ -129,12 +129,16 @@ fn reconciled(reconciliation: &Reconciliation) -> String {
 fn audit_table(audit: &Audit) -> Result<Table, Fail> {
     let cycles: Vec<String> = audit.cycles.iter().map(Cycle::to_string).collect();
     let optional = |value: Option<f64>| value.map_or_else(Cell::missing, Cell::number);
-    let verdicts = audit.cycles.iter().map(|cycle| if cycle.contradicts() { "contradicts" } else { "agrees" });
+    let verdicts =
+        audit.cycles.iter().map(|cycle| if cycle.contradicts() { "contradicts" } else { "agrees" });
     Table::new([
         Column::texts("cycle", cycles.iter().map(String::as_str)),
         Column::numbers("misclosure of log K", audit.cycles.iter().map(|cycle| cycle.misclosure)),
         Column::new("sigma", audit.cycles.iter().map(|cycle| optional(cycle.sigma)).collect::<Vec<_>>()),
-        Column::new("in sigmas", audit.cycles.iter().map(|cycle| optional(cycle.sigmas())).collect::<Vec<_>>()),
+        Column::new(
+            "in sigmas",
+            audit.cycles.iter().map(|cycle| optional(cycle.sigmas())).collect::<Vec<_>>(),
+        ),
         Column::texts("verdict", verdicts),
     ])
     .map_err(|error| fail(error.to_string()))
@@ -145,11 +149,16 @@ fn moves_table(reconciliation: &Reconciliation) -> Result<Table, Fail> {
     let moves = &reconciliation.moves;
     Table::new([
         Column::chemistry("name", moves.iter().map(|moved| moved.name.as_str())),
-        Column::numbers("log K before", moves.iter().map(|moved| moved.before)),
-        Column::numbers("log K after", moves.iter().map(|moved| moved.after)),
+        Column::new(
+            "log K before",
+            moves.iter().map(|m| Cell::uncertain(m.before, m.sigma_before)).collect::<Vec<_>>(),
+        ),
+        Column::new(
+            "log K after",
+            moves.iter().map(|m| Cell::uncertain(m.after, m.sigma_after)).collect::<Vec<_>>(),
+        ),
+        Column::numbers("moved by", moves.iter().map(|moved| moved.after - moved.before)),
         Column::numbers("moved by sigmas", moves.iter().map(|moved| moved.in_sigmas())),
-        Column::numbers("sigma before", moves.iter().map(|moved| moved.sigma_before)),
-        Column::numbers("sigma after", moves.iter().map(|moved| moved.sigma_after)),
         Column::numbers("standardised residual", moves.iter().map(|moved| moved.residual)),
     ])
     .map_err(|error| fail(error.to_string()))
@@ -158,9 +167,13 @@ fn moves_table(reconciliation: &Reconciliation) -> Result<Table, Fail> {
 /// Shipped constants in the place of a ledger's own.
 fn alternatives_table(ledger: &Ledger, alternatives: &[Alternative]) -> Result<Table, Fail> {
     let log_k = |reaction: &Reaction| {
-        reaction.constant().map_or_else(|_| Cell::missing(), |c| Cell::number(c.log_k.nearest_to(Temperature::REFERENCE).0))
+        reaction
+            .constant()
+            .map_or_else(|_| Cell::missing(), |c| Cell::number(c.log_k.nearest_to(Temperature::REFERENCE).0))
     };
-    let own = |alternative: &Alternative| ledger.reaction(&alternative.name).map_or_else(|_| Cell::missing(), log_k);
+    let own = |alternative: &Alternative| {
+        ledger.reaction(&alternative.name).map_or_else(|_| Cell::missing(), log_k)
+    };
     let sigma = |reaction: &Reaction| {
         reaction.log_k().ok().and_then(|log_k| log_k.sigma()).map_or_else(Cell::missing, Cell::number)
     };
@@ -178,7 +191,9 @@ fn alternatives_table(ledger: &Ledger, alternatives: &[Alternative]) -> Result<T
 
 fn unreadable(file: &str, faults: &[FileFault]) -> Fail {
     let number = count(faults.len(), "fault");
-    faults.iter().fold(fail(format!("`{file}` has {number}, so nothing was loaded")), |fail, fault| fail.help(fault.to_string()))
+    faults.iter().fold(fail(format!("`{file}` has {number}, so nothing was loaded")), |fail, fault| {
+        fail.help(fault.to_string())
+    })
 }
 
 /// Authors and year of a citation: what stands before the closing bracket of the year.
@@ -207,7 +222,8 @@ pub(super) fn sources_table(ledger: &Ledger) -> Result<Table, Fail> {
 
 fn reconciliation_of(ledger: &Ledger) -> Result<&Reconciliation, Fail> {
     ledger.reconciliation().ok_or_else(|| {
-        fail("this ledger was not reconciled, or changed since").help("write `let closed = book.reconcile();` first")
+        fail("this ledger was not reconciled, or changed since")
+            .help("write `let closed = book.reconcile();` first")
     })
 }
 
@@ -355,8 +371,10 @@ mod ledger_functions {
     /// ```
     #[rhai_fn(return_raw)]
     pub fn load_ledger(context: NativeCallContext, file: &str) -> ScriptResult<Ledger> {
-        let text = Host::of(&context).files().read_text(file).map_err(|error| Fail::from(error).argument(0))?;
-        let stem = std::path::Path::new(file).file_stem().map_or(file.into(), std::ffi::OsStr::to_string_lossy);
+        let text =
+            Host::of(&context).files().read_text(file).map_err(|error| Fail::from(error).argument(0))?;
+        let stem =
+            std::path::Path::new(file).file_stem().map_or(file.into(), std::ffi::OsStr::to_string_lossy);
         Ok(file::load(&stem, &text).map_err(|faults| unreadable(file, &faults).argument(0))?)
     }
     /// Writes the ledger to a file that `load_ledger` reads: every constant with its source and uncertainty.
@@ -392,7 +410,7 @@ mod ledger_functions {
     }
 
     /// Every independent cycle among the ledger's constants and formation data at 25 degC: how far log K fails to close, in
-    /// log10 units and in standard deviations. Above 3, or above 0.1 log units where not all uncertainties are stated, the
+    /// log10 units and in standard deviations. Above 3, and above 0.1 log units where not all uncertainties are stated, the
     /// constants contradict each other.
     ///
     /// ```rhai
