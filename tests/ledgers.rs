@@ -41,12 +41,15 @@ fn cycle() -> Ledger {
 
 #[test]
 fn the_audit_of_the_shipped_ledgers() {
-    println!("{:>10} {:>7} {:>6}  cycle, log K at 25 degC", "misclosure", "sigma", "sigmas");
     let audit = with_formation_data().audit(ROOM);
+    println!("misclosure  sigma (of what is stated)  in sigmas  cycle, log K at 25 degC");
     for cycle in &audit.cycles {
-        let number = |value: Option<f64>| value.map_or("-".into(), |value| format!("{value:.2}"));
-        let sigma = cycle.sigma.map_or("-".into(), |sigma| format!("{sigma:.3}"));
-        println!("{:10.3} {sigma:>7} {:>6}  {cycle}", cycle.misclosure, number(cycle.sigmas()));
+        let sigma = match cycle.sigma {
+            Some(sigma) => format!("{sigma:.3}"),
+            None => format!("({:.3})", cycle.stated_sigma),
+        };
+        let sigmas = cycle.sigmas().map_or("-".into(), |sigmas| format!("{sigmas:.2}"));
+        println!("{:10.3}  {sigma:>24}  {sigmas:>9}  {cycle}", cycle.misclosure);
     }
     // Every constant whose species all have formation data closes one cycle.
     assert_eq!(audit.cycles.len(), 14);
@@ -298,7 +301,7 @@ fn all_faults_of_a_file_are_said_at_once() {
          [[constant]]\nname = \"F\"\nreaction = \"HF2^- <=> HF(aq) + F^-\"\nlog_k = -0.6\nsource = \"A (2020)\"\nprovenance = \"read\"\n\n\
          [[formation]]\nspecies = \"Ca^2+\"\nenthalpy = \"-543.0 +/- 1.0 kJ/mol\"\nsource = \"A (2020)\"\nprovenance = \"memory\"\n",
         &[
-            "line 2: no activity model `davis`; did you mean `davies`?; there are `ideal` and `davies`",
+            "line 2: no activity model `davis`: there are `ideal` and `davies`",
             "line 8: `Kw`: `sigma` is a standard uncertainty and cannot be negative: -0.01",
             "line 14: `K2`: `HCO3^- <=> CO3^2-` is not balanced: the right side is short of 1 H, the charges differ: the \
              right side has -1 more; add `H^+` to the right side",
