@@ -256,7 +256,7 @@ fn what_cannot_be_done_is_said() {
     let kw = "H2O <=> H^+ + OH^-";
     refused(
         self::book(&[("a", kw, "-14.00 +/- 0.01"), ("b", kw, "-13.97")]).reconcile(ROOM),
-        "no uncertainty is stated for `b`, and what is not stated cannot be weighed: fill it in with \
+        "no uncertainty is stated for `b`, and what is not stated cannot be weighed; fill it in with \
          `.assume_sigma(0.05)`, or reconcile with `#{ sigma: 0.05 }`",
     );
     refused(

@@ -84,7 +84,7 @@ pub enum LedgerError {
     },
     /// Constants that cannot be weighed.
     #[error(
-        "no uncertainty is stated for {}, and what is not stated cannot be weighed: fill it in with \
+        "no uncertainty is stated for {}, and what is not stated cannot be weighed; fill it in with \
          `.assume_sigma(0.05)`, or reconcile with `#{{ sigma: 0.05 }}`", list(.0)
     )]
     Unstated(Vec<String>),
