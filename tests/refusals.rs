@@ -318,8 +318,8 @@ fn what_is_stretched_is_said() {
         &[("pH", "7"), ("temperature", "95 degC"), ("Ca", "5 mmol/kg"), ("DIC", "5 mmol/kg")],
         &[],
         &[
-            "`CaCO3(aq)` is used 15.0 K outside its stated range",
-            "`CaHCO3^+` is used 5.0 K outside its stated range",
+            "log K used 15.0 K outside its stated range: `CaCO3(aq)`",
+            "log K used 5.0 K outside its stated range: `CaHCO3^+`",
         ],
     );
     warns(

@@ -460,43 +460,28 @@ impl<'a> Reader<'a> {
     }
 
     fn charge(&mut self, formula_end: usize) -> Result<i32, FormulaError> {
+        let formula = self.text[..formula_end].to_string();
         if !self.accept('^') {
             return match self.rest().chars().next() {
-                Some(sign @ ('+' | '-')) => {
-                    // `Ca2+` has its digit read as a subscript, `Ca+2` leaves it behind the sign.
-                    let formula = &self.text[..formula_end];
-                    let body = formula.trim_end_matches(|c: char| c.is_ascii_digit());
-                    let before = &formula[body.len()..];
-                    let after: String = self.rest()[1..].chars().take_while(char::is_ascii_digit).collect();
-                    let digits = if after.is_empty() { before } else { &after };
-                    let kept = if after.is_empty() && single_element(body) { body } else { formula };
-                    let digits = if after.is_empty() && kept == formula { "" } else { digits };
-                    let digits = if digits == "1" { "" } else { digits };
-                    Err(self.charge_error(&format!("{kept}^{digits}{sign}")))
-                }
+                Some(sign @ ('+' | '-')) => Err(self.charge_error(&meant(&formula, sign, &self.rest()[1..]))),
                 _ => Ok(0),
             };
         }
-        let digits: String = self.rest().chars().take_while(char::is_ascii_digit).collect();
+        let digits = leading_digits(self.rest()).to_string();
         self.position += digits.len();
-        let sign = if self.accept('+') {
-            1
-        } else if self.accept('-') {
-            -1
-        } else {
-            return Err(self.unreadable("a charge is written `^2+` or `^-`"));
+        let sign = match self.rest().chars().next() {
+            Some(sign @ ('+' | '-')) => sign,
+            _ => return Err(self.unreadable("a charge is written `^2+` or `^-`")),
         };
-        let behind: String = self.rest().chars().take_while(char::is_ascii_digit).collect();
+        self.position += 1;
+        let behind = leading_digits(self.rest());
         if !behind.is_empty() {
-            let sign = if sign > 0 { '+' } else { '-' };
-            return Err(self.charge_error(&format!("{}^{behind}{sign}", &self.text[..formula_end])));
+            return Err(self.charge_error(&format!("{formula}^{behind}{sign}")));
         }
-        match digits.as_str() {
-            "" => Ok(sign),
-            digits => match digits.parse::<i32>() {
-                Ok(z) if (1..=99).contains(&z) => Ok(sign * z),
-                _ => Err(self.unreadable("a charge lies between 1 and 99")),
-            },
+        let size = if digits.is_empty() { Ok(1) } else { digits.parse::<i32>() };
+        match size {
+            Ok(size @ 1..=99) => Ok(if sign == '+' { size } else { -size }),
+            _ => Err(self.unreadable("a charge lies between 1 and 99")),
         }
     }
 
@@ -535,8 +520,20 @@ impl<'a> Reader<'a> {
     }
 }
 
-fn single_element(body: &str) -> bool {
-    Element::from_symbol(body).is_some()
+fn leading_digits(text: &str) -> &str {
+    &text[..text.find(|c: char| !c.is_ascii_digit()).unwrap_or(text.len())]
+}
+
+/// The spelling meant by a charge without its caret: `Ca2+` and `Ca+2` are `Ca^2+`, `HCO3-` is `HCO3^-`.
+///
+/// Digits before the sign are the charge of a monatomic ion and a subscript of any other.
+fn meant(formula: &str, sign: char, behind: &str) -> String {
+    let body = formula.trim_end_matches(|c: char| c.is_ascii_digit());
+    let (formula, digits) = match leading_digits(behind) {
+        "" if Element::from_symbol(body).is_some() => (body, &formula[body.len()..]),
+        digits => (formula, digits),
+    };
+    format!("{formula}^{}{sign}", if digits == "1" { "" } else { digits })
 }
 
 #[cfg(test)]

@@ -557,7 +557,7 @@ fn read_value(options: &mut Named) -> Result<Option<Stated>, KeyFault> {
 
 fn read_terms(value: Value) -> Result<Vec<(Term, f64)>, KeyFault> {
     let fault = |message: String| KeyFault::new("log_k_terms", message);
-    let known = Term::ALL.map(Term::written);
+    let known: Vec<&str> = Term::ALL.map(Term::written).into_iter().chain(["ln(T)"]).collect();
     let Value::Map(map) = value else {
         return Err(fault(format!(
             "`log_k_terms` takes a map of terms, not {}: the terms are {}",
@@ -568,12 +568,10 @@ fn read_terms(value: Value) -> Result<Vec<(Term, f64)>, KeyFault> {
     let mut terms = Vec::new();
     for (key, value) in map {
         let Some((term, factor)) = Term::parse(&key) else {
-            let help =
-                nearest(&key, known).map(|close| format!("; did you mean `{close}`?")).unwrap_or_default();
-            return Err(fault(format!(
-                "`{key}` is no term of log K: the terms are {} and `ln(T)`{help}",
-                list(&known)
-            )));
+            let help = nearest(&key, known.iter().copied())
+                .map(|close| format!("; did you mean `{close}`?"))
+                .unwrap_or_default();
+            return Err(fault(format!("`{key}` is no term of log K: the terms are {}{help}", list(&known))));
         };
         let Value::Number(coefficient) = value else {
             return Err(fault(format!("the coefficient of `{key}` must be a number, not {}", value.kind())));

@@ -8,6 +8,7 @@ pub mod acid_base;
 pub mod analysis;
 pub mod assemble;
 mod error;
+mod indices;
 pub mod observable;
 pub mod state;
 pub mod treatment;

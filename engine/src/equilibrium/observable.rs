@@ -37,6 +37,8 @@ pub enum Observable {
     ChargeMisfit,
     /// Calcium carbonate that would form (positive) or dissolve until calcite is at equilibrium.
     CarbonatePotential,
+    /// pH less the pH of equilibrium with calcite.
+    Langelier,
     /// Molality of a species.
     Molality(String),
     /// Concentration of a species per litre of solution.
@@ -127,7 +129,7 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 /// Name, form as it is written, and what it is, in order of listing.
-pub const NAMES: [(&str, &str, &str); 28] = [
+pub const NAMES: [(&str, &str, &str); 29] = [
     ("pH", "pH", "-log10 of the activity of H^+"),
     ("temperature", "temperature", "temperature, degC"),
     ("pressure", "pressure", "pressure, bar"),
@@ -140,6 +142,7 @@ pub const NAMES: [(&str, &str, &str); 28] = [
     ("charge_error", "charge_error", "100 (C - A)/(C + A), %"),
     ("charge_misfit", "charge_misfit", "cations less anions, eq/kg(water)"),
     ("CCPP", "CCPP", "calcium carbonate precipitation potential, mol/kg(water)"),
+    ("Langelier", "Langelier", "pH less the pH at which calcite would be at equilibrium, alkalinity kept"),
     ("m", "m(Ca^2+)", "molality, mol/kg(water)"),
     ("c", "c(Ca^2+)", "concentration, mol/L"),
     ("a", "a(Ca^2+)", "activity"),
@@ -213,6 +216,7 @@ fn plain(name: &str) -> Observable {
         "hardness" => Observable::Hardness,
         "charge_error" => Observable::ChargeError,
         "charge_misfit" => Observable::ChargeMisfit,
+        "Langelier" => Observable::Langelier,
         _ => Observable::CarbonatePotential,
     }
 }
@@ -253,6 +257,7 @@ impl fmt::Display for Observable {
             Self::ChargeError => ("charge_error", None),
             Self::ChargeMisfit => ("charge_misfit", None),
             Self::CarbonatePotential => ("CCPP", None),
+            Self::Langelier => ("Langelier", None),
             Self::Molality(subject) => ("m", Some(subject)),
             Self::Molarity(subject) => ("c", Some(subject)),
             Self::Activity(subject) => ("a", Some(subject)),

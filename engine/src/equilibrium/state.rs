@@ -7,6 +7,7 @@ use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
 use super::analysis::{Analysed, Outcome, ln_saturation};
 use super::assemble::{Doubt, System};
 use super::error::EquilibriumError;
+use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
 use crate::chem::{Element, Species, rational};
 use crate::ledger::Formation;
@@ -14,7 +15,7 @@ use crate::nearest::nearest;
 use crate::physics::water;
 use crate::present::{Cell, Column, Table};
 use crate::quantity::Quantity;
-use crate::solve::{Certificate, Settings};
+use crate::solve::Certificate;
 use crate::text::list;
 use crate::units::{KgOf, Kind, Pressure, Temperature, Unit};
 use crate::water::analysis::Setting;
@@ -99,6 +100,29 @@ impl State {
         &self.0.outcome.converged.certificate
     }
 
+    /// pH: -log10 a(H⁺).
+    #[must_use]
+    pub fn ph(&self) -> f64 {
+        -self.0.outcome.converged.ln_a[self.system().proton()] / LN_10
+    }
+
+    /// Dissolved total of each component of [`State::system`], mol/kg(water).
+    #[must_use]
+    pub fn dissolved(&self) -> &[f64] {
+        &self.0.dissolved
+    }
+
+    /// Amount of a solid that is there, mol/kg(water); 0 of one that is not.
+    ///
+    /// # Errors
+    ///
+    /// A name the ledger does not know.
+    pub fn solid_amount(&self, name: &str) -> Result<f64, EquilibriumError> {
+        let solid = self.system().ledger().find_phase(name)?;
+        let found = self.0.outcome.solids.iter().find(|(species, _)| species == solid);
+        Ok(found.map_or(0.0, |(_, amount)| *amount))
+    }
+
     /// Newton iterations and the like.
     #[must_use]
     pub fn converged(&self) -> &crate::solve::Converged {
@@ -165,12 +189,11 @@ impl State {
 
     fn value(&self, observable: &Observable, asked: &str) -> Result<Answer, ObservableError> {
         let inner = &*self.0;
-        let system = self.system();
         let converged = &inner.outcome.converged;
         let plain =
             |value: f64, unit: &'static str| Ok(Answer { value, unit, molar_mass: None, element: None });
         match observable {
-            Observable::Ph => plain(-converged.ln_a[system.proton()] / LN_10, "1"),
+            Observable::Ph => plain(self.ph(), "1"),
             Observable::Temperature => plain(self.temperature().celsius(), "degC"),
             Observable::Pressure => plain(inner.pressure.bar(), "bar"),
             Observable::Density => plain(inner.solution.density, "kg/L"),
@@ -197,13 +220,16 @@ impl State {
             }
             Observable::CarbonatePotential => {
                 let potential =
-                    self.carbonate_potential().map_err(|why| no_answer(asked, why.to_string()))?;
+                    indices::carbonate_potential(self).map_err(|why| no_answer(asked, why.to_string()))?;
                 Ok(Answer {
                     value: potential,
                     unit: "mol/kg(water)",
                     molar_mass: Some(100.086),
                     element: None,
                 })
+            }
+            Observable::Langelier => {
+                plain(indices::langelier(self).map_err(|why| no_answer(asked, why.to_string()))?, "1")
             }
             Observable::Molality(name) => {
                 let (k, formed) = self.solute(name, asked)?;
@@ -380,14 +406,6 @@ impl State {
         let (sum, size) = terms.iter().fold((0.0, 0.0), |(sum, size), term| (sum + term, size + term.abs()));
         // What rounding leaves of terms that cancel is the zero it stands for.
         if f64::abs(sum) <= ROUNDING * size { 0.0 } else { sum }
-    }
-
-    /// Calcite that forms until it is at equilibrium with the dissolved totals.
-    fn carbonate_potential(&self) -> Result<f64, EquilibriumError> {
-        let water = self.sample(&[])?.treated(Treatment::Saturate { solid: "calcite".into(), index: 0.0 });
-        let water = water.map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
-        let saturated = super::equilibrate(&water, None, &Settings::default())?;
-        Ok(saturated.0.outcome.solids.first().map_or(0.0, |(_, amount)| *amount))
     }
 
     fn element_total(&self, symbol: &str) -> f64 {
@@ -572,7 +590,7 @@ impl State {
                 self.add_doubts(formed, &mut doubts);
             }
         }
-        warnings.extend(doubts.into_iter().map(|(why, names)| format!("{} {why}", list(&names))));
+        warnings.extend(doubts.into_iter().map(|(why, names)| format!("{why}: {}", list(&names))));
         let leftovers = &self.system().ledger().formations().leftovers;
         let names: Vec<&str> = self.system().ledger().names().collect();
         warnings.extend(leftovers.iter().map(|leftover| {
@@ -591,7 +609,7 @@ impl State {
     }
 
     fn doubt_words(&self, formed: &Formation) -> Option<String> {
-        self.system().doubts(formed).next().map(|(reaction, doubt)| format!("`{reaction}` {}", words(doubt)))
+        self.system().doubts(formed).next().map(|(_, doubt)| words(doubt))
     }
 
     /// Whether a species holds more than a hundredth of one of its components.
@@ -610,9 +628,9 @@ impl State {
 fn words(doubt: Doubt) -> String {
     match doubt {
         Doubt::OneTemperature(known) => {
-            format!("is known at {} degC only, and used as it stands", known.celsius())
+            format!("log K known at {} degC only, and used as it stands", known.celsius())
         }
-        Doubt::OutsideRange(by) => format!("is used {by:.1} K outside its stated range"),
+        Doubt::OutsideRange(by) => format!("log K used {by:.1} K outside its stated range"),
     }
 }
 

@@ -395,12 +395,7 @@ impl ActivityChoice {
                 Self::Davies { a, b, water }
             }
             other => {
-                let help = nearest(other, Self::NAMES).map(|close| format!("; did you mean `{close}`?"));
-                let message = format!(
-                    "no activity model `{other}`{}; there are {}",
-                    help.unwrap_or_default(),
-                    list(&Self::NAMES)
-                );
+                let message = format!("no activity model `{other}`: there are {}", list(&Self::NAMES));
                 return Err(KeyFault::new("activity_model", message));
             }
         };

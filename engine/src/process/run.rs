@@ -73,7 +73,6 @@ impl Run {
     }
 
     /// What became of each row.
-    #[must_use]
     pub fn outcomes(&self) -> &[Result<State, String>] {
         &self.0.outcomes
     }

@@ -190,3 +190,67 @@ pub fn sweep(
         |(k, axis): (usize, &Axis)| Column::numbers(axis.title.as_str(), values.iter().map(|point| point[k]));
     Ok(Run::new(axes.iter().enumerate().map(column).collect(), run.outcomes().to_vec()))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use approx::assert_abs_diff_eq;
+
+    fn lake() -> Sample {
+        let text = |key: &str, value: &str| (key.to_string(), Value::Text(value.to_string()));
+        let keys =
+            [text("pH", "8"), text("alkalinity", "2 meq/L"), text("Ca", "40 mg/L"), text("Cl", "3 mg/L")];
+        Sample::read(keys.into()).unwrap()
+    }
+
+    fn swept(axes: &[(&str, &[f64])]) -> Result<Run, SweepError> {
+        let axes = axes
+            .iter()
+            .map(|(title, values)| Axis::new(title, values.to_vec()))
+            .collect::<Result<Vec<_>, _>>()?;
+        sweep(&lake(), &axes, None, &Settings::default(), &|_| ())
+    }
+
+    #[test]
+    fn the_last_axis_varies_fastest() {
+        let run =
+            swept(&[("temperature", &[5.0, 25.0]), ("f(CO2(g)) [uatm]", &[300.0, 600.0, 900.0])]).unwrap();
+        let values = |axis: usize| run.axes()[axis].present().unwrap();
+        assert_eq!(values(0), [5.0, 5.0, 5.0, 25.0, 25.0, 25.0]);
+        assert_eq!(values(1), [300.0, 600.0, 900.0, 300.0, 600.0, 900.0]);
+        for (state, celsius) in run.states().zip(values(0)) {
+            assert_eq!(state.temperature().celsius(), celsius);
+        }
+        let fugacity = run.column("f(CO2(g)) [uatm]").unwrap().present().unwrap();
+        assert_eq!(fugacity, values(1));
+    }
+
+    #[test]
+    fn a_treatment_keeps_totals_and_an_edit_changes_the_analysis() {
+        let treated = swept(&[("pH", &[7.0])]).unwrap().column("DIC").unwrap().present().unwrap()[0];
+        let edited =
+            swept(&[("as measured: pH", &[7.0])]).unwrap().column("DIC").unwrap().present().unwrap()[0];
+        let before =
+            swept(&[("as measured: pH", &[8.0])]).unwrap().column("DIC").unwrap().present().unwrap()[0];
+        assert_abs_diff_eq!(treated, before, epsilon = 1e-15);
+        // At pH 7 the same alkalinity holds more CO2.
+        assert!(edited > 1.1 * before);
+    }
+
+    #[test]
+    fn a_point_without_equilibrium_is_a_failed_row() {
+        let run = swept(&[("as measured: pH", &[8.0, 11.9])]).unwrap();
+        assert!(run.outcomes()[0].is_ok());
+        assert!(run.outcomes()[1].as_ref().unwrap_err().contains("contradict each other"));
+        assert_eq!(run.failures().n_rows(), 1);
+        assert_eq!(run.table(&["pH".to_string()]).unwrap().ok().n_rows(), 1);
+    }
+
+    #[test]
+    fn what_cannot_be_swept_says_what_can() {
+        let message = |title: &str| swept(&[(title, &[1.0])]).unwrap_err().to_string();
+        assert!(message("charge_error").contains("an axis is `temperature`"));
+        assert!(message("temperature [mg/L]").contains("is no unit of temperature"));
+        assert_eq!(swept(&[("pH", &[])]).unwrap_err(), SweepError::Points(0));
+    }
+}

@@ -77,11 +77,18 @@ pub fn help(entries: &[Entry], topic: &str, width: usize) -> Result<String, Fail
     }
     let own: Vec<&&Entry> = documented.iter().copied().filter(|entry| !entry.is_standard).collect();
     let shown = if own.is_empty() { documented } else { own };
-    Ok(shown
+    // A method that is also a property has one text for both.
+    let mut texts: Vec<(&str, Vec<&str>)> = Vec::new();
+    for entry in shown {
+        match texts.iter_mut().find(|(text, _)| *text == entry.text) {
+            Some((_, signatures)) => signatures.push(&entry.signature),
+            None => texts.push((&entry.text, vec![&entry.signature])),
+        }
+    }
+    let explained = texts
         .iter()
-        .map(|entry| format!("{}\n{}", entry.signature, indented(&entry.text, width)))
-        .collect::<Vec<_>>()
-        .join("\n\n"))
+        .map(|(text, signatures)| format!("{}\n{}", signatures.join("\n"), indented(text, width)));
+    Ok(explained.collect::<Vec<_>>().join("\n\n"))
 }
 
 /// The names that have documentation, for `help()`.
@@ -180,21 +187,19 @@ fn uncommented(line: &str) -> &str {
     line.strip_prefix(' ').unwrap_or(line)
 }
 
-/// The text for a terminal: prose is wrapped, examples lose their fences and keep their lines.
+/// The text for a terminal: paragraphs are filled, examples lose their fences and keep their lines.
 fn indented(text: &str, width: usize) -> String {
     const INDENT: usize = 4;
     let mut lines = Vec::new();
     for (index, part) in text.split("```").enumerate() {
         let is_example = index % 2 == 1;
-        let part_lines = part.trim_matches('\n').lines().skip(usize::from(is_example));
-        for line in part_lines {
-            lines.extend(if is_example {
-                vec![line.to_owned()]
+        for block in part.trim_matches('\n').split("\n\n").filter(|block| !block.trim().is_empty()) {
+            if is_example {
+                lines.extend(block.lines().skip_while(|line| *line == "rhai").map(str::to_owned));
             } else {
-                wrapped(line, width.saturating_sub(INDENT))
-            });
-        }
-        if !part.trim().is_empty() {
+                let paragraph = block.split_whitespace().collect::<Vec<_>>().join(" ");
+                lines.extend(wrapped(&paragraph, width.saturating_sub(INDENT)));
+            }
             lines.push(String::new());
         }
     }

@@ -345,7 +345,7 @@ mod reaction_functions {
     /// The same reaction with its constant known at one temperature alone, so that it adds to others known there.
     ///
     /// ```rhai
-    /// ledger("freshwater").reaction("K1").at("10 degC").enthalpy   // ()
+    /// ledger("freshwater").reaction("K1").at("10 degC").enthalpy == ()   // true
     /// ```
     #[rhai_fn(return_raw)]
     pub fn at(context: NativeCallContext, reaction: Reaction, at: Dynamic) -> ScriptResult<Reaction> {

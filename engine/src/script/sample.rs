@@ -199,7 +199,7 @@ mod sample_functions {
     ///
     /// ```rhai
     /// let lake = sample(#{ temperature: "8.5 degC", pH: 8.15, alkalinity: "2.35 meq/L", Ca: "41.2 mg/L" });
-    /// fmt(lake.equilibrate().SI("calcite").value, ".1f")   // "0.0"
+    /// fmt(lake.equilibrate().SI("calcite").value, ".2f")   // "0.28"
     /// ```
     #[rhai_fn(name = "sample", return_raw)]
     pub fn sample(keys: Map) -> ScriptResult<Sample> {

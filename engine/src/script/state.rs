@@ -298,7 +298,7 @@ mod state_functions {
     ///
     /// ```rhai
     /// let lake = sample(#{ pH: 8.15, alkalinity: "2.35 meq/L", Ca: "41.2 mg/L" });
-    /// fmt(lake.equilibrate().DIC.to("mmol/kg(water)").value, ".2f")   // "2.37"
+    /// fmt(lake.equilibrate().DIC.to("mmol/kg(water)").value, ".2f")   // "2.35"
     /// ```
     #[rhai_fn(name = "equilibrate", return_raw)]
     pub fn equilibrate_sample(context: NativeCallContext, sample: Sample) -> ScriptResult<State> {

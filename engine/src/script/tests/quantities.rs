@@ -135,7 +135,8 @@ fn messages() {
         &[],
         "+",
     );
-    fails("(3 ± 0.1) + ()", "cannot add a Quantity and nothing `()`", &[], "+");
+    let spelling = "a map gives `()` for a key it does not have: check the spelling";
+    fails("(3 ± 0.1) + ()", "cannot add a Quantity and nothing `()`", &[spelling], "+");
     fails(
         "correlate([3 ± 0.1, 2], 0.5)",
         "`correlate` takes a list of quantities, but found a whole number",
