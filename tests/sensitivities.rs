@@ -6,7 +6,8 @@
 use std::collections::BTreeMap;
 
 use lysocline_engine::activity::{Davies, Model};
-use lysocline_engine::chem::{Constant, Reaction};
+use lysocline_engine::chem::Reaction;
+use lysocline_engine::chem::reaction::Constant;
 use lysocline_engine::equilibrium::{Asked, State, equilibrate};
 use lysocline_engine::ledger::{ActivityChoice, Ledger};
 use lysocline_engine::named::Value;
@@ -172,4 +173,269 @@ fn pull_is_the_transpose_of_push() {
         let (pushed, other) = product(flattened(&weight), flattened(&found));
         assert!((pulled - pushed).abs() < 1e-10 * (size + other), "seed {seed}: {pulled:e} {pushed:e}");
     }
+}
+
+/// A water as it is measured: key, value, unit and standard uncertainty.
+type Inputs = Vec<(&'static str, f64, &'static str, f64)>;
+
+struct Case {
+    name: &'static str,
+    inputs: Inputs,
+    texts: Vec<(&'static str, &'static str)>,
+    treatments: Vec<Treatment>,
+    ideal: bool,
+    /// Whether pH and DIC are to be used where alkalinity is given too.
+    from: bool,
+    observables: Vec<&'static str>,
+}
+
+impl Case {
+    fn new(name: &'static str, inputs: Inputs, treatments: Vec<Treatment>, more: &[&'static str]) -> Self {
+        let common = ["pH", "ionic_strength", "alkalinity", "DIC", "m(CO3^2-)", "c(Ca^2+)", "gamma(Ca^2+)"];
+        let more_common = ["SI(calcite)", "f(CO2(g))", "log_a(HCO3^-)", "charge_error", "density", "total(Ca)"];
+        let observables = common.iter().chain(&more_common).chain(more).copied().collect();
+        Self { name, inputs, texts: vec![], treatments, ideal: false, from: false, observables }
+    }
+
+    fn sample(&self, changed: &str, by: f64) -> Sample {
+        let value = |(key, value, unit, sigma): &(&str, f64, &str, f64)| {
+            let value = if *key == changed { value + by } else { *value };
+            let unit = Unit::parse(unit).unwrap();
+            let quantity = Quantity::measured(value, unit, Some(*sigma), key).unwrap();
+            ((*key).to_string(), Value::Quantity(quantity))
+        };
+        let texts = self.texts.iter().map(|(key, text)| ((*key).into(), Value::Text((*text).into())));
+        let pair = ["pH", "DIC"].map(|key| Value::Text(key.into())).to_vec();
+        let from = self.from.then(|| ("from".to_string(), Value::List(pair)));
+        let entries: BTreeMap<String, Value> =
+            self.inputs.iter().map(value).chain(texts).chain(from).collect();
+        let sample = Sample::read(entries).unwrap_or_else(|error| panic!("{}: {error}", self.name));
+        self.treatments.iter().fold(sample, |sample, treatment| sample.treated(treatment.clone()).unwrap())
+    }
+
+    fn ledger(&self) -> Ledger {
+        if self.ideal { freshwater().with_activity(ActivityChoice::Ideal) } else { freshwater() }
+    }
+
+    fn state(&self, sample: &Sample, ledger: &Ledger) -> State {
+        equilibrate(sample, Some(ledger), &Settings::default())
+            .unwrap_or_else(|error| panic!("{}: {error}", self.name))
+    }
+
+    fn numbers(&self, sample: &Sample, ledger: &Ledger) -> Vec<f64> {
+        let state = self.state(sample, ledger);
+        let number = |text: &&str| {
+            let asked = Asked::parse(text).unwrap();
+            state.number(&asked).unwrap_or_else(|error| panic!("{}: {error}", self.name)).0
+        };
+        self.observables.iter().map(number).collect()
+    }
+}
+
+/// The same ledger with log10 K of one reaction moved.
+fn shifted(ledger: &Ledger, name: &str, by: f64) -> Ledger {
+    let reaction = ledger.reaction(name).unwrap();
+    let constant = reaction.constant().unwrap();
+    let constant = Constant { log_k: constant.log_k.shifted(by), ..constant.clone() };
+    ledger.replace(name, &Reaction::of(reaction.equation().clone(), constant)).unwrap()
+}
+
+/// Derivatives of an observable by log10 K of each reaction, and by each measured value.
+fn slopes(state: &State, observable: &str) -> (BTreeMap<usize, f64>, BTreeMap<String, f64>) {
+    let influence = state.influence(&Asked::parse(observable).unwrap()).unwrap();
+    let mut measured = BTreeMap::new();
+    for (quantity, slope) in &influence.measured {
+        for part in quantity.parts() {
+            *measured.entry(part.input.label().to_string()).or_insert(0.0) += slope * part.sensitivity;
+        }
+    }
+    (influence.constants, measured)
+}
+
+fn lake() -> Inputs {
+    vec![
+        ("temperature", 8.5, "degC", 0.2),
+        ("pH", 8.15, "1", 0.02),
+        ("alkalinity", 2.35, "meq/L", 0.03),
+        ("Ca", 41.2, "mg/L", 0.8),
+        ("Mg", 8.1, "mg/L", 0.2),
+        ("Na", 6.0, "mg/L", 0.1),
+        ("Cl", 9.8, "mg/L", 0.2),
+        ("SO4^2-", 14.0, "mg/L", 0.5),
+    ]
+}
+
+fn lake_with(changes: &[(&'static str, f64, &'static str, f64)], without: &[&str]) -> Inputs {
+    let kept = lake().into_iter().filter(|(key, ..)| !without.contains(key));
+    kept.chain(changes.iter().copied()).collect()
+}
+
+fn open(fugacity: f64) -> Treatment {
+    Treatment::OpenTo { gas: "CO2(g)".into(), fugacity }
+}
+
+fn warm(celsius: f64) -> Treatment {
+    Treatment::WarmTo(Temperature::from_celsius(celsius).unwrap())
+}
+
+fn cases() -> Vec<Case> {
+    let dic = ("DIC", 2.4, "mmol/kg", 0.02);
+    let co2 = ("fCO2", 700.0, "uatm", 10.0);
+    let calcite = |index| Treatment::Saturate { solid: "calcite".into(), index };
+    let hold = |ph, reagent: Option<&str>| Treatment::HoldPh { ph, reagent: reagent.map(str::to_string) };
+    let mut cases = vec![
+        Case::new("alkalinity and pH", lake(), vec![], &["CCPP", "Langelier"]),
+        Case::new("pH and DIC", lake_with(&[dic], &["alkalinity"]), vec![], &[]),
+        Case::new("alkalinity and DIC", lake_with(&[dic], &["pH"]), vec![], &[]),
+        Case::new("DIC and fugacity", lake_with(&[dic, co2], &["pH", "alkalinity"]), vec![], &[]),
+        Case::new("alkalinity and fugacity", lake_with(&[co2], &["pH"]), vec![], &[]),
+        Case::new("pH and fugacity", lake_with(&[co2], &["alkalinity"]), vec![], &[]),
+        Case::new("a gas, and warmed", lake(), vec![open(4.2e-4), warm(25.0)], &["added(CO2(g))", "CCPP"]),
+        Case::new("a mineral", lake(), vec![
+            warm(40.0),
+            Treatment::Allow { solid: "calcite".into(), above: 0.0 },
+        ], &["n(calcite)", "all(Ca)"]),
+        Case::new("an unlimited mineral and a gas", lake(), vec![calcite(0.3), open(1e-3)], &["n(calcite)"]),
+        Case::new("a fixed pH", lake(), vec![hold(7.0, None)], &[]),
+        Case::new("a pH by reagent", lake(), vec![hold(9.0, Some("NaOH"))], &["added(NaOH)", "total(Na)"]),
+    ];
+    let mut ideal = Case::new("ideal", lake_with(&[dic], &["alkalinity"]), vec![], &[]);
+    ideal.ideal = true;
+    let mut made_up = Case::new("charges made up", lake(), vec![open(4.2e-4)], &["total(Cl)"]);
+    made_up.texts.push(("make_up", "Cl"));
+    let mut neutral = Case::new("electroneutral", lake_with(&[dic], &["pH", "alkalinity"]), vec![], &[]);
+    neutral.texts.push(("pH", "electroneutral"));
+    let three = lake_with(&[dic], &[]);
+    let mut misfit = Case::new("a misfit", three, vec![warm(20.0)], &["misfit(alkalinity)"]);
+    misfit.from = true;
+    cases.extend([ideal, made_up, neutral, misfit]);
+    cases
+}
+
+/// Every derivative that is not negligible is the difference quotient of whole solves to 1e-6, and those that are said to
+/// be zero are.
+#[test]
+fn sensitivities_of_states_are_difference_quotients() {
+    cases().par_iter().for_each(|case| {
+        let (ledger, sample) = (case.ledger(), case.sample("", 0.0));
+        let state = case.state(&sample, &ledger);
+        let slopes: Vec<_> = case.observables.iter().map(|observable| slopes(&state, observable)).collect();
+        let largest: Vec<f64> = slopes
+            .iter()
+            .map(|(constants, _)| constants.values().fold(0.0_f64, |largest, slope| largest.max(slope.abs())))
+            .collect();
+        let check = |what: &str, quotients: Vec<f64>, slope: &dyn Fn(usize) -> f64, scale: f64| {
+            for (k, quotient) in quotients.iter().enumerate() {
+                let allowed = 1e-6 * quotient.abs() + 1e-8 * largest[k] / scale;
+                let (slope, observable) = (slope(k), case.observables[k]);
+                assert!(
+                    (slope - quotient).abs() <= allowed,
+                    "{}: d {observable} / d {what}: {slope:e}, by difference {quotient:e}",
+                    case.name
+                );
+            }
+        };
+        let names: Vec<String> = ledger.names().map(str::to_string).collect();
+        for (r, name) in names.iter().enumerate() {
+            let is_used = slopes.iter().any(|(constants, _)| constants.contains_key(&r));
+            if is_used && !name.starts_with("water") || r % 16 == 0 {
+                let quotients =
+                    derivative(|step| case.numbers(&sample, &shifted(&ledger, name, step)), 2e-3);
+                check(name, quotients, &|k| slopes[k].0.get(&r).copied().unwrap_or(0.0), 1.0);
+            }
+        }
+        for (key, value, ..) in &case.inputs {
+            let step = if *key == "temperature" || *key == "pH" { 1e-2 } else { 1e-3 * value };
+            let quotients = derivative(|by| case.numbers(&case.sample(key, by), &ledger), step);
+            check(key, quotients, &|k| slopes[k].1.get(*key).copied().unwrap_or(0.0), value.abs());
+        }
+    });
+}
+
+#[test]
+fn a_fixed_ph_depends_on_itself_alone() {
+    let all = cases();
+    let case = |name: &str| all.iter().find(|case| case.name == name).unwrap();
+    for name in ["a fixed pH", "a pH by reagent"] {
+        let case = case(name);
+        let state = case.state(&case.sample("", 0.0), &case.ledger());
+        assert_eq!(state.get("pH").unwrap().parts(), [], "{name}");
+    }
+    for name in ["alkalinity and pH", "pH and DIC", "pH and fugacity", "ideal"] {
+        let case = case(name);
+        let ph = case.state(&case.sample("", 0.0), &case.ledger()).get("pH").unwrap();
+        let [part] = ph.parts() else { panic!("{name}: {:?}", ph.parts()) };
+        assert_eq!((part.input.label(), part.sensitivity), ("pH", 1.0), "{name}");
+        assert_eq!(ph.sigma(), Some(0.02), "{name}");
+    }
+}
+
+#[test]
+fn shares_of_a_budget_sum_to_one() {
+    for case in cases() {
+        let state = case.state(&case.sample("", 0.0), &case.ledger());
+        for observable in &case.observables {
+            let budget = state.get(observable).unwrap().budget();
+            let sum: f64 = budget.rows.iter().map(|row| row.share).sum();
+            let varies = budget.rows.iter().any(|row| row.contribution > 0.0);
+            assert!(!varies || (sum - 1.0).abs() < 1e-12, "{}, {observable}: {sum}", case.name);
+        }
+    }
+}
+
+/// Standard deviations of whole speciations with constants and inputs drawn at random, against first order. The spread of
+/// a standard deviation of N draws is 1/sqrt(2 N) of it; four of those are allowed, and 2 % for curvature.
+#[test]
+fn random_draws_agree_with_first_order() {
+    const DRAWS: usize = 400;
+    const SIGMA: f64 = 0.02;
+
+    let mut case = Case::new("alkalinity and DIC", lake_with(&[("DIC", 2.6, "mmol/kg", 0.02)], &["pH"]), vec![open(4.2e-4)], &[]);
+    case.observables = vec!["pH", "SI(calcite)", "m(CO3^2-)", "ionic_strength", "added(CO2(g))"];
+    let ledger = freshwater();
+    let names: Vec<String> = ledger.names().map(str::to_string).collect();
+    let state = case.state(&case.sample("", 0.0), &ledger);
+    let first_order: Vec<f64> = case
+        .observables
+        .iter()
+        .map(|observable| {
+            let (constants, measured) = slopes(&state, observable);
+            let by_inputs = case.inputs.iter().map(|(key, _, _, sigma)| {
+                (measured.get(*key).copied().unwrap_or(0.0) * sigma).powi(2)
+            });
+            let by_constants = constants.values().map(|slope| (slope * SIGMA).powi(2));
+            by_inputs.chain(by_constants).sum::<f64>().sqrt()
+        })
+        .collect();
+    let draws: Vec<Vec<f64>> = (0..DRAWS as u64)
+        .into_par_iter()
+        .map(|seed| {
+            let random = &mut Random(seed);
+            let used = state.influence(&Asked::parse("pH").unwrap()).unwrap().constants;
+            let other = state.influence(&Asked::parse("SI(calcite)").unwrap()).unwrap().constants;
+            let drawn = names.iter().enumerate().filter(|(r, _)| used.contains_key(r) || other.contains_key(r));
+            let ledger = drawn.fold(ledger.clone(), |ledger, (_, name)| {
+                shifted(&ledger, name, SIGMA * normal(random))
+            });
+            let mut drawn = Case::new("drawn", case.inputs.clone(), case.treatments.clone(), &[]);
+            drawn.observables.clone_from(&case.observables);
+            for (_, value, _, sigma) in &mut drawn.inputs {
+                *value += *sigma * normal(random);
+            }
+            drawn.numbers(&drawn.sample("", 0.0), &ledger)
+        })
+        .collect();
+    for (k, expected) in first_order.iter().enumerate() {
+        let mean = draws.iter().map(|draw| draw[k]).sum::<f64>() / DRAWS as f64;
+        let variance = draws.iter().map(|draw| (draw[k] - mean).powi(2)).sum::<f64>() / (DRAWS - 1) as f64;
+        let ratio = variance.sqrt() / expected;
+        println!("{}: random draws over first order {ratio:.3}", case.observables[k]);
+        let allowed = 4.0 / (2.0 * DRAWS as f64).sqrt() + 0.02;
+        assert!((ratio - 1.0).abs() < allowed, "{}: {ratio}", case.observables[k]);
+    }
+}
+
+/// A standard normal number as a sum of twelve uniform ones, whose tails end at six.
+fn normal(random: &mut Random) -> f64 {
+    (0..12).map(|_| random.uniform(-0.5, 0.5)).sum()
 }

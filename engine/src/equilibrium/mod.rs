@@ -11,6 +11,7 @@ mod error;
 mod indices;
 pub mod observable;
 pub mod state;
+mod trail;
 pub mod treatment;
 pub mod uncertainty;
 
@@ -18,6 +19,7 @@ pub use assemble::System;
 pub use error::EquilibriumError;
 pub use observable::{Asked, Observable, ObservableError};
 pub use state::State;
+pub use trail::trail;
 
 use crate::ledger::{Ledger, shipped};
 use crate::solve::Settings;
