@@ -15,6 +15,8 @@ mod reproducible;
 #[cfg(test)]
 mod round_trips;
 #[cfg(test)]
+mod sensitivities;
+#[cfg(test)]
 mod tidy;
 #[cfg(test)]
 mod two_routes;

@@ -142,6 +142,15 @@ impl System {
         formed.multiples.iter().filter_map(move |(k, _)| self.doubts[*k].map(|doubt| (names[*k], doubt)))
     }
 
+    /// The one temperature a reaction's constant is known at, where that is not the system's.
+    #[must_use]
+    pub fn known_only_at(&self, reaction: usize) -> Option<Temperature> {
+        match self.doubts[reaction] {
+            Some(Doubt::OneTemperature(known)) => Some(known),
+            _ => None,
+        }
+    }
+
     /// The solver's problem without surroundings and solids.
     #[must_use]
     pub fn problem(&self, totals: &[f64]) -> Problem {
