@@ -274,7 +274,12 @@ impl LogK {
     /// log10 of Kⁿ.
     #[must_use]
     pub fn times(&self, multiple: Rational) -> Self {
-        let n = rational::to_f64(multiple);
+        self.scaled(rational::to_f64(multiple))
+    }
+
+    /// The function times a number.
+    #[must_use]
+    pub fn scaled(&self, n: f64) -> Self {
         let dependence = match &self.dependence {
             Dependence::Function(vector) => Dependence::Function(vector.map(|coefficient| n * coefficient)),
             Dependence::Only { value, at } => Dependence::Only { value: n * value, at: *at },
@@ -314,6 +319,24 @@ impl LogK {
             Dependence::Only { value, .. } => *value += shift,
         }
         shifted
+    }
+
+    /// log10 K with terms added, as when gases are counted otherwise: a function everywhere, else at its one temperature.
+    #[must_use]
+    pub fn with_terms(&self, terms: &[(Term, f64)]) -> Self {
+        match self.only_at() {
+            None => self.plus(&Self::function(terms)).expect("functions of temperature add"),
+            Some(at) => self.shifted(terms.iter().map(|(term, c)| c * term.at(at.kelvin())).sum()),
+        }
+    }
+
+    /// Whether it is zero at all temperatures.
+    #[must_use]
+    pub fn is_zero(&self) -> bool {
+        match &self.dependence {
+            Dependence::Function(vector) => vector.iter().all(|coefficient| *coefficient == 0.0),
+            Dependence::Only { value, .. } => *value == 0.0,
+        }
     }
 
     fn vector(&self) -> Option<&[f64; Term::ALL.len()]> {

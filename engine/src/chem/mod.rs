@@ -6,19 +6,24 @@
 //! chemistry does: written backwards K becomes 1/K, taken n times Kⁿ, and constants of added reactions multiply.
 
 pub mod conditions;
+mod conversion;
 pub mod element;
 pub mod equation;
 pub mod formula;
 pub mod history;
 pub mod log_k;
+pub mod pressure;
 pub mod rational;
 pub mod reaction;
+pub mod salt;
+mod statement;
+mod stated_conditions;
 
-pub use conditions::{Conditions, GasStandard};
+pub use conditions::{Conditions, GasStandard, GasUnit, Medium, PhScale, SoluteUnit};
 pub use element::Element;
 pub use equation::{Equation, EquationError, Imbalance};
 pub use formula::{FormulaError, Species, State};
-pub use history::{History, Origin, Provenance};
+pub use history::{History, Influence, Origin, Provenance};
 pub use log_k::{LogK, Range, Term};
 pub use rational::Rational;
 pub use reaction::{Constant, Reaction, ReactionError};

@@ -5,23 +5,21 @@
 
 use std::fmt;
 
-use super::conditions::{Conditions, GasStandard};
+use super::conditions::{Conditions, Mismatch, Terms};
 use super::equation::{Equation, EquationError};
-use super::history::{History, Origin, Provenance};
-use super::log_k::{LogK, LogKError, Range, Term};
+use super::history::{History, Influence};
+use super::log_k::{LogK, LogKError};
+use super::pressure::Volume;
 use super::rational::{self, Rational};
-use crate::named::{self, KeyFault, Named, Value};
-use crate::nearest::nearest;
-use crate::physics::constants::GAS_CONSTANT;
-use crate::quantity::{Input, Part, Quantity};
-use crate::text::list;
+use super::statement::Statement;
+pub use super::statement::{multiple, temperature};
+use crate::named::{KeyFault, Named};
+use crate::physics::constants::{GAS_CONSTANT, LN_10};
+use crate::quantity::Quantity;
 use crate::units::{Kind, Temperature, Unit};
 
-const LN_10: f64 = std::f64::consts::LN_10;
 /// Gas constant in kJ/(mol K).
 const R_KJ: f64 = GAS_CONSTANT / 1000.0;
-/// How far a stated value may lie from the typed function: half a unit of its second decimal.
-const TYPING_TOLERANCE: f64 = 0.005;
 
 /// An equation with its constant; a value, never changed in place.
 #[derive(Clone, PartialEq)]
@@ -39,6 +37,8 @@ pub struct Constant {
     pub temperature: Temperature,
     /// The conditions in which it holds.
     pub conditions: Conditions,
+    /// Volume of reaction, from which it is taken to another pressure; `None` where it was not given.
+    pub volume: Option<Volume>,
     /// Where it came from.
     pub history: History,
 }
@@ -79,21 +79,30 @@ pub enum ReactionError {
         /// That temperature in degC.
         known: f64,
     },
-    /// Gas constants with different standard pressures.
-    #[error(
-        "`{left}` counts gases from {left_standard}, `{right}` from {right_standard}: \
-         convert one with `.to_gas_standard(\"{left_standard}\")`"
-    )]
-    GasStandards {
+    /// The constants hold in different conditions.
+    #[error("`{left}` holds for {}, `{right}` for {}: convert one with `{}`", mismatch.left, mismatch.right, mismatch.conversion)]
+    Conditions {
         /// The left reaction.
         left: String,
-        /// Its standard.
-        left_standard: GasStandard,
         /// The right reaction.
         right: String,
-        /// Its standard.
-        right_standard: GasStandard,
+        /// In what they differ, and the conversion to call.
+        mismatch: Box<Mismatch>,
     },
+    /// The constant holds in conditions that a ledger does not take.
+    #[error(
+        "`{reaction}` holds for {}, and a ledger takes {}: convert it with `{}`",
+        mismatch.right, mismatch.left, mismatch.conversion
+    )]
+    NotForLedger {
+        /// The reaction.
+        reaction: String,
+        /// In what it differs from a ledger's constants, and the conversion to call.
+        mismatch: Box<Mismatch>,
+    },
+    /// A conversion cannot be made, in words.
+    #[error("{0}")]
+    Conversion(String),
     /// One has a constant, the other none.
     #[error("`{0}` has no constant, so the sum has none either: give it one, or add the equations alone")]
     OneWithoutConstant(String),
@@ -110,8 +119,9 @@ impl Reaction {
     }
 
     /// A reaction with its constant from named options: one of `log_k`, `ln_k`, `k`, `pk`, `gibbs` (kJ/mol) or
-    /// `log_k_terms`; `enthalpy` (kJ/mol), `heat_capacity` (J/(mol K)), `temperature`, `value_at`, `sigma`, `range`,
-    /// `gas_standard`, `source`, `provenance`, `note`.
+    /// `log_k_terms`; `enthalpy` (kJ/mol), `heat_capacity` (J/(mol K)), `volume` (cm3/mol), `temperature`, `pressure`,
+    /// `value_at`, `sigma` with `sigma_of`, `range`, `source`, `provenance`, `note`; and the conditions `ionic_strength`,
+    /// `medium` with `salinity`, `ph_scale`, `basis` and `gas_standard`.
     ///
     /// `name` labels it in histories. `identity` is a text that is the same whenever the same published constant is
     /// read again, so that its uncertainty is counted once; values typed by a user have none.
@@ -126,7 +136,7 @@ impl Reaction {
         identity: Option<&str>,
     ) -> Result<Self, ReactionError> {
         let equation = Equation::parse(equation)?;
-        let constant = Statement::read(options)?.constant(&equation, name, identity)?;
+        let constant = Statement::read(options, &equation)?.constant(&equation, name, identity)?;
         Ok(Self { equation, constant })
     }
 
@@ -171,7 +181,7 @@ impl Reaction {
         let value = constant.log_k.at(temperature);
         let value =
             value.map_err(|why| ReactionError::Temperature { equation: self.equation.to_string(), why })?;
-        Ok(Quantity::from_parts(value, Unit::one(), constant.history.parts()))
+        Ok(Quantity::from_parts(value, Unit::one(), constant.history.parts_at(temperature)))
     }
 
     /// Standard Gibbs energy of reaction, kJ/mol: -RT ln K at the reaction's own temperature.
@@ -183,7 +193,8 @@ impl Reaction {
         let constant = self.constant()?;
         let factor = -R_KJ * constant.temperature.kelvin() * LN_10;
         let value = constant.log_k.nearest_to(constant.temperature).0 * factor;
-        let parts = constant.history.parts().iter().map(|part| part.scaled(factor)).collect();
+        let parts = constant.history.parts_at(constant.temperature);
+        let parts = parts.iter().map(|part| part.scaled(factor)).collect();
         Ok(Quantity::from_parts(value, Kind::Energy.default_unit(), parts))
     }
 
@@ -218,6 +229,7 @@ impl Reaction {
         let constant = self.constant.as_ref().map(|constant| Constant {
             log_k: constant.log_k.times(multiple),
             history: constant.history.times(multiple),
+            volume: constant.volume.as_ref().map(|volume| volume.times(rational::to_f64(multiple))),
             ..constant.clone()
         });
         Ok(Self { equation, constant })
@@ -255,33 +267,54 @@ impl Reaction {
         })?;
         let history = left.history.plus(&right.history);
         let conditions = self.common_conditions(left, other, right)?;
+        let volume = match (&left.volume, &right.volume) {
+            (Some(a), Some(b)) => Some(a.plus(b)),
+            _ => None,
+        };
         // A product of functions is quoted at the left one's temperature.
         let temperature = log_k.only_at().unwrap_or(left.temperature);
-        Ok(Constant { log_k, temperature, conditions, history })
+        Ok(Constant { log_k, temperature, conditions, volume, history })
     }
 
-    /// A reaction without gases goes with any gas standard.
+    /// A condition that does not concern one of them, such as the standard of gases, is the other's.
     fn common_conditions(
         &self,
         left: &Constant,
         other: &Self,
         right: &Constant,
     ) -> Result<Conditions, ReactionError> {
-        let (a, b) = (left.conditions.gas_standard, right.conditions.gas_standard);
-        match (self.has_gas(), other.has_gas()) {
-            (true, true) if a != b => Err(ReactionError::GasStandards {
-                left: self.equation.to_string(),
-                left_standard: a,
-                right: other.equation.to_string(),
-                right_standard: b,
-            }),
-            (false, true) => Ok(right.conditions),
-            _ => Ok(left.conditions),
-        }
+        let (own, others) =
+            (Terms::of(&self.equation, &left.conditions), Terms::of(&other.equation, &right.conditions));
+        left.conditions.common(own, &right.conditions, others).map_err(|mismatch| ReactionError::Conditions {
+            left: self.equation.to_string(),
+            right: other.equation.to_string(),
+            mismatch: Box::new(mismatch),
+        })
     }
 
-    fn has_gas(&self) -> bool {
-        self.equation.terms().iter().any(|(species, _)| species.is_gas())
+    /// Which of its conditions concern the reaction.
+    ///
+    /// # Errors
+    ///
+    /// As [`Reaction::constant`].
+    pub fn terms(&self) -> Result<Terms, ReactionError> {
+        Ok(Terms::of(&self.equation, &self.constant()?.conditions))
+    }
+
+    /// Refuses a constant that holds in other conditions than a ledger's: molal activities at zero ionic strength, gases
+    /// counted by pressure, 1 bar.
+    ///
+    /// # Errors
+    ///
+    /// [`ReactionError::NotForLedger`] naming the conversion to call, or as [`Reaction::constant`].
+    pub fn check_for_ledger(&self) -> Result<(), ReactionError> {
+        match self.constant()?.conditions.unfit_for_ledger(self.terms()?) {
+            None => Ok(()),
+            Some(mismatch) => Err(ReactionError::NotForLedger {
+                reaction: self.equation.to_string(),
+                mismatch: Box::new(mismatch),
+            }),
+        }
     }
 
     /// The same with its constant known at `temperature` alone, so that it adds to others known there.
@@ -294,7 +327,8 @@ impl Reaction {
         let log_k = constant.log_k.frozen_at(temperature);
         let log_k =
             log_k.map_err(|why| ReactionError::Temperature { equation: self.equation.to_string(), why })?;
-        let constant = Constant { log_k, temperature, ..constant.clone() };
+        let history = constant.history.frozen_at(temperature);
+        let constant = Constant { log_k, temperature, history, ..constant.clone() };
         Ok(Self { equation: self.equation.clone(), constant: Some(constant) })
     }
 
@@ -305,41 +339,19 @@ impl Reaction {
     /// As [`Reaction::constant`], or that `enthalpy` is no energy per mole.
     pub fn assume_enthalpy(&self, enthalpy: &Quantity) -> Result<Self, ReactionError> {
         let constant = self.constant()?;
-        let kilojoules = enthalpy.to(&Kind::Energy.default_unit());
-        let kilojoules = kilojoules.map_err(|error| KeyFault::new("enthalpy", error.to_string()))?.value();
+        let enthalpy = enthalpy.to(&Kind::Energy.default_unit());
+        let enthalpy = enthalpy.map_err(|error| KeyFault::new("enthalpy", error.to_string()))?;
         let (value, at) = (constant.log_k.nearest_to(constant.temperature).0, constant.temperature);
-        let mut log_k = LogK::van_t_hoff(value, at, kilojoules, 0.0);
+        let mut log_k = LogK::van_t_hoff(value, at, enthalpy.value(), 0.0);
         if let Some(range) = constant.log_k.range() {
             log_k = log_k.within(range);
         }
-        let history =
-            constant.history.converted(format!("enthalpy of reaction assumed: {kilojoules} kJ/mol"));
+        let history = constant
+            .history
+            .frozen_at(at)
+            .influenced(Influence::through(enthalpy.parts(), &LogK::van_t_hoff(0.0, at, 1.0, 0.0)))
+            .converted(format!("enthalpy of reaction assumed: {} at {} degC", enthalpy, at.celsius()));
         Ok(Self::of(self.equation.clone(), Constant { log_k, history, ..constant.clone() }))
-    }
-
-    /// The same with gases counted from another standard pressure.
-    ///
-    /// # Errors
-    ///
-    /// As [`Reaction::constant`].
-    pub fn to_gas_standard(&self, standard: GasStandard) -> Result<Self, ReactionError> {
-        let constant = self.constant()?;
-        let from = constant.conditions.gas_standard;
-        if from == standard {
-            return Ok(self.clone());
-        }
-        let shift = from.shift_to(standard, self.equation.gas_made());
-        let mut history = constant.history.clone();
-        if self.has_gas() {
-            history = history.converted(format!("gas standard {from} to {standard}: log K {shift:+.4}"));
-        }
-        let constant = Constant {
-            log_k: constant.log_k.shifted(shift),
-            conditions: Conditions { gas_standard: standard },
-            history,
-            ..constant.clone()
-        };
-        Ok(Self { equation: self.equation.clone(), constant: Some(constant) })
     }
 }
 
@@ -353,317 +365,4 @@ impl fmt::Debug for Reaction {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         write!(f, "{:?} {:?}", self.equation, self.constant)
     }
-}
-
-/// What was said of a constant, before it is made one.
-struct Statement {
-    value: Option<Stated>,
-    enthalpy: Option<Quantity>,
-    heat_capacity: Option<Quantity>,
-    temperature: Option<Temperature>,
-    value_at: Option<(Temperature, f64)>,
-    sigma: Option<f64>,
-    range: Option<Range>,
-    conditions: Conditions,
-    source: Option<String>,
-    provenance: Provenance,
-}
-
-enum Stated {
-    /// The key it was given under, and log10 K at the reaction's temperature.
-    LogK(&'static str, Quantity),
-    /// Gibbs energy of reaction, kJ/mol.
-    Gibbs(Quantity),
-    Terms(Vec<(Term, f64)>),
-}
-
-impl Statement {
-    fn read(mut options: Named) -> Result<Self, KeyFault> {
-        let statement = Self {
-            value: read_value(&mut options)?,
-            enthalpy: options.quantity("enthalpy", Kind::Energy)?,
-            heat_capacity: options.quantity("heat_capacity", Kind::Entropy)?,
-            temperature: options
-                .take("temperature")
-                .map(|value| temperature("temperature", value))
-                .transpose()?,
-            value_at: options.take("value_at").map(read_value_at).transpose()?,
-            sigma: read_sigma(&mut options)?,
-            range: options.take("range").map(read_range).transpose()?,
-            conditions: read_conditions(&mut options)?,
-            source: options.text("source")?,
-            provenance: read_provenance(&mut options)?,
-        };
-        options.take("note");
-        options.finish()?;
-        Ok(statement)
-    }
-
-    fn constant(
-        mut self,
-        equation: &Equation,
-        name: Option<&str>,
-        identity: Option<&str>,
-    ) -> Result<Option<Constant>, ReactionError> {
-        let temperature = self.temperature.unwrap_or(Temperature::REFERENCE);
-        let label = name.map_or_else(|| equation.to_string(), str::to_string);
-        let Some(value) = self.value.take() else {
-            return match self.given_without_value() {
-                Some(key) => {
-                    let message =
-                        format!("`{key}` needs a constant beside it: give `log_k`, `log_k_terms` or `gibbs`");
-                    Err(KeyFault::new(key, message).into())
-                }
-                None => Ok(None),
-            };
-        };
-        let (mut log_k, parts, stated) = match value {
-            Stated::Terms(terms) => {
-                if self.enthalpy.is_some() || self.heat_capacity.is_some() {
-                    let message =
-                        "`log_k_terms` already fix the enthalpy: leave `enthalpy` and `heat_capacity` out";
-                    return Err(KeyFault::new("log_k_terms", message).into());
-                }
-                let log_k = LogK::function(&terms);
-                let stated = format!("log K = {}", written(&log_k.terms().unwrap_or_default()));
-                (log_k, vec![], stated)
-            }
-            Stated::LogK(key, quantity) => {
-                let (value, parts) = (quantity.value(), quantity.parts().to_vec());
-                let stated = format!("{} = {value} at {} degC", key.replace('_', " "), temperature.celsius());
-                (self.at_temperature(value, temperature), parts, stated)
-            }
-            Stated::Gibbs(gibbs) => {
-                let factor = -1.0 / (R_KJ * temperature.kelvin() * LN_10);
-                let gibbs = gibbs.to(&Kind::Energy.default_unit()).expect("checked to be an energy");
-                let parts = gibbs.parts().iter().map(|part| part.scaled(factor)).collect();
-                let stated =
-                    format!("Gibbs energy {} kJ/mol at {} degC", gibbs.value(), temperature.celsius());
-                (self.at_temperature(gibbs.value() * factor, temperature), parts, stated)
-            }
-        };
-        if let Some((at, expected)) = self.value_at {
-            check_typing(&log_k, at, expected)?;
-        }
-        if let Some(range) = self.range {
-            log_k = log_k.within(range);
-        }
-        let parts = match (self.sigma, identity) {
-            // A typed value keeps its own inputs, so that copies of it stay correlated.
-            (None, None) if !parts.is_empty() => parts,
-            (sigma, identity) => {
-                let sigma = sigma.or_else(|| own_sigma(&parts));
-                let input = match identity {
-                    Some(identity) => Input::named(identity, &label, sigma),
-                    None => Input::written(&label, sigma),
-                };
-                let input = input.map_err(|error| KeyFault::new("sigma", error.to_string()))?;
-                vec![Part { input, sensitivity: 1.0 }]
-            }
-        };
-        let origin = Origin {
-            label,
-            equation: equation.to_string(),
-            stated,
-            source: self.source,
-            provenance: self.provenance,
-            parts,
-        };
-        Ok(Some(Constant { log_k, temperature, conditions: self.conditions, history: History::of(origin) }))
-    }
-
-    fn at_temperature(&self, value: f64, temperature: Temperature) -> LogK {
-        let kilojoule = |quantity: &Quantity, kind: Kind| {
-            quantity.to(&kind.default_unit()).expect("checked to be of its kind").value()
-        };
-        match (&self.enthalpy, &self.heat_capacity) {
-            (None, None) => LogK::only(value, temperature),
-            (enthalpy, heat_capacity) => {
-                let enthalpy = enthalpy.as_ref().map_or(0.0, |q| kilojoule(q, Kind::Energy));
-                let heat_capacity =
-                    heat_capacity.as_ref().map_or(0.0, |q| kilojoule(q, Kind::Entropy) / 1000.0);
-                LogK::van_t_hoff(value, temperature, enthalpy, heat_capacity)
-            }
-        }
-    }
-
-    fn given_without_value(&self) -> Option<&'static str> {
-        [
-            ("enthalpy", self.enthalpy.is_some()),
-            ("heat_capacity", self.heat_capacity.is_some()),
-            ("value_at", self.value_at.is_some()),
-            ("sigma", self.sigma.is_some()),
-            ("range", self.range.is_some()),
-        ]
-        .into_iter()
-        .find_map(|(key, given)| given.then_some(key))
-    }
-}
-
-/// `14.8435 - 3404.71/T - 0.032786 T`.
-fn written(terms: &[(Term, f64)]) -> String {
-    let mut text = String::new();
-    for (term, coefficient) in terms {
-        let sign = match (text.is_empty(), *coefficient < 0.0) {
-            (true, true) => "-",
-            (true, false) => "",
-            (false, true) => " - ",
-            (false, false) => " + ",
-        };
-        let size = coefficient.abs();
-        text.push_str(&match term.written() {
-            "1" => format!("{sign}{size}"),
-            inverse if inverse.starts_with("1/") => format!("{sign}{size}{}", &inverse[1..]),
-            other => format!("{sign}{size} {other}"),
-        });
-    }
-    text
-}
-
-/// The standard uncertainty of a value as it was written.
-fn own_sigma(parts: &[Part]) -> Option<f64> {
-    match parts {
-        [part] => part.input.sigma().map(|sigma| sigma * part.sensitivity.abs()),
-        _ => None,
-    }
-}
-
-fn read_value(options: &mut Named) -> Result<Option<Stated>, KeyFault> {
-    let mut given: Vec<(&'static str, Stated)> = Vec::new();
-    let mut log_k_of =
-        |options: &mut Named, key: &'static str, log_k: fn(&Quantity) -> Result<Quantity, String>| {
-            let Some(quantity) = options.quantity(key, Kind::Fraction)? else { return Ok(()) };
-            let value = log_k(&quantity).map_err(|why| KeyFault::new(key, format!("`{key}` {why}")))?;
-            given.push((key, Stated::LogK(key, value)));
-            Ok::<(), KeyFault>(())
-        };
-    log_k_of(options, "log_k", |q| Ok(q.clone()))?;
-    log_k_of(options, "pk", |q| Ok(-q))?;
-    log_k_of(options, "ln_k", |q| (q / LN_10).map_err(|error| error.to_string()))?;
-    log_k_of(options, "k", |q| q.log10().map_err(|_| "must be above zero".into()))?;
-    if let Some(gibbs) = options.quantity("gibbs", Kind::Energy)? {
-        given.push(("gibbs", Stated::Gibbs(gibbs)));
-    }
-    if let Some(value) = options.take("log_k_terms") {
-        given.push(("log_k_terms", Stated::Terms(read_terms(value)?)));
-    }
-    if given.len() > 1 {
-        let keys: Vec<&str> = given.iter().map(|(key, _)| *key).collect();
-        let message = format!("{} state the constant more than once: keep one", list(&keys));
-        return Err(KeyFault::new(keys[1], message));
-    }
-    Ok(given.pop().map(|(_, stated)| stated))
-}
-
-fn read_terms(value: Value) -> Result<Vec<(Term, f64)>, KeyFault> {
-    let fault = |message: String| KeyFault::new("log_k_terms", message);
-    let known: Vec<&str> = Term::ALL.map(Term::written).into_iter().chain(["ln(T)"]).collect();
-    let Value::Map(map) = value else {
-        return Err(fault(format!(
-            "`log_k_terms` takes a map of terms, not {}: the terms are {}",
-            value.kind(),
-            list(&known)
-        )));
-    };
-    let mut terms = Vec::new();
-    for (key, value) in map {
-        let Some((term, factor)) = Term::parse(&key) else {
-            let help = nearest(&key, known.iter().copied())
-                .map(|close| format!("; did you mean `{close}`?"))
-                .unwrap_or_default();
-            return Err(fault(format!("`{key}` is no term of log K: the terms are {}{help}", list(&known))));
-        };
-        let Value::Number(coefficient) = value else {
-            return Err(fault(format!("the coefficient of `{key}` must be a number, not {}", value.kind())));
-        };
-        terms.push((term, coefficient * factor));
-    }
-    if terms.is_empty() { Err(fault("`log_k_terms` is empty".into())) } else { Ok(terms) }
-}
-
-fn read_value_at(value: Value) -> Result<(Temperature, f64), KeyFault> {
-    let fault = || {
-        KeyFault::new("value_at", "`value_at` takes a temperature and log K there: `[\"25 degC\", -8.48]`")
-    };
-    let Value::List(values) = value else { return Err(fault()) };
-    let Ok([at, Value::Number(expected)]) = <[Value; 2]>::try_from(values) else { return Err(fault()) };
-    Ok((temperature("value_at", at)?, expected))
-}
-
-fn check_typing(log_k: &LogK, at: Temperature, expected: f64) -> Result<(), KeyFault> {
-    let value = log_k.at(at).map_err(|why| KeyFault::new("value_at", format!("log K is {why}")))?;
-    // A value printed to fewer decimals than that may differ by half its last one.
-    let decimals = expected.to_string().split_once('.').map_or(0, |(_, fraction)| fraction.len());
-    let tolerance = TYPING_TOLERANCE.max(0.5 * 10_f64.powi(-(decimals.min(9) as i32))) * (1.0 + 1e-9);
-    if (value - expected).abs() <= tolerance {
-        return Ok(());
-    }
-    let message = format!(
-        "the terms give log K = {value:.4} at {} degC, but `value_at` says {expected}: check the coefficients",
-        at.celsius()
-    );
-    Err(KeyFault::new("value_at", message))
-}
-
-fn read_sigma(options: &mut Named) -> Result<Option<f64>, KeyFault> {
-    match options.number("sigma")? {
-        Some(sigma) if sigma < 0.0 => Err(KeyFault::new(
-            "sigma",
-            format!("`sigma` is a standard uncertainty and cannot be negative: {sigma}"),
-        )),
-        sigma => Ok(sigma),
-    }
-}
-
-fn read_range(value: Value) -> Result<Range, KeyFault> {
-    let fault = |message: &str| {
-        KeyFault::new("range", format!("`range` {message}: write `[\"0 degC\", \"90 degC\"]`"))
-    };
-    let Value::List(values) = value else { return Err(fault("takes two temperatures")) };
-    let Ok([lowest, highest]) = <[Value; 2]>::try_from(values) else {
-        return Err(fault("takes two temperatures"));
-    };
-    let (lowest, highest) = (temperature("range", lowest)?, temperature("range", highest)?);
-    if lowest.kelvin() > highest.kelvin() {
-        return Err(fault("starts above its end"));
-    }
-    Ok(Range { lowest, highest })
-}
-
-fn read_conditions(options: &mut Named) -> Result<Conditions, KeyFault> {
-    let Some(text) = options.text("gas_standard")? else { return Ok(Conditions::default()) };
-    let gas_standard = GasStandard::parse(&text).ok_or_else(|| {
-        KeyFault::new("gas_standard", format!("`{text}` is no gas standard: it is `1 bar` or `1 atm`"))
-    })?;
-    Ok(Conditions { gas_standard })
-}
-
-fn read_provenance(options: &mut Named) -> Result<Provenance, KeyFault> {
-    let Some(word) = options.text("provenance")? else { return Ok(Provenance::default()) };
-    Provenance::parse(&word).ok_or_else(|| {
-        KeyFault::new(
-            "provenance",
-            format!("`{word}` is no provenance: it is `read`, `computed`, `memory` or `stated`"),
-        )
-    })
-}
-
-/// Reads a temperature given under `key`.
-///
-/// # Errors
-///
-/// Returns a fault of `key` if it is no temperature.
-pub fn temperature(key: &str, value: Value) -> Result<Temperature, KeyFault> {
-    let quantity = named::quantity(key, value, Kind::Temperature)?;
-    Temperature::try_from(&quantity).map_err(|error| KeyFault::new(key, format!("`{key}`: {error}")))
-}
-
-/// Reads a multiple given as a float: exact if it has few digits.
-///
-/// # Errors
-///
-/// Returns the words for a number that is no small fraction.
-pub fn multiple(value: f64) -> Result<Rational, String> {
-    let exact = rational::from_f64(value).filter(|multiple| *multiple != 0.into());
-    exact.ok_or_else(|| format!("a reaction is taken a plain number of times, such as 2 or 0.5, not {value}"))
 }

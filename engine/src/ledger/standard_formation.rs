@@ -205,6 +205,7 @@ pub fn read(
         log_k,
         temperature: Temperature::REFERENCE,
         conditions: Conditions::default(),
+        volume: None,
         history: History::of(origin),
     };
     Ok((name, Reaction::of(equation, constant)))

@@ -1,4 +1,5 @@
 //! Physical constants and properties of pure water.
 
 pub mod constants;
+pub mod seawater;
 pub mod water;

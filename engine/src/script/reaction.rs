@@ -308,12 +308,8 @@ mod reaction_functions {
             .range()
             .map(|range| format!(", {:.0} to {:.0} degC", range.lowest.celsius(), range.highest.celsius()));
         let fixed = constant.log_k.only_at().map(|at| format!(", known at {} degC only", at.celsius()));
-        Ok(format!(
-            "molal activities, gases counted from {}{}{}",
-            constant.conditions.gas_standard,
-            range.unwrap_or_default(),
-            fixed.unwrap_or_default()
-        ))
+        let conditions = constant.conditions.describe(reaction.terms().map_err(Fail::from)?);
+        Ok(format!("{conditions}{}{}", range.unwrap_or_default(), fixed.unwrap_or_default()))
     }
 
     /// Stoichiometric coefficient of a species: positive for products, negative for reactants, 0 if it takes no part.
