@@ -192,7 +192,8 @@ struct Case {
 impl Case {
     fn new(name: &'static str, inputs: Inputs, treatments: Vec<Treatment>, more: &[&'static str]) -> Self {
         let common = ["pH", "ionic_strength", "alkalinity", "DIC", "m(CO3^2-)", "c(Ca^2+)", "gamma(Ca^2+)"];
-        let more_common = ["SI(calcite)", "f(CO2(g))", "log_a(HCO3^-)", "charge_error", "density", "total(Ca)"];
+        let more_common =
+            ["SI(calcite)", "f(CO2(g))", "log_a(HCO3^-)", "charge_error", "density", "total(Ca)"];
         let observables = common.iter().chain(&more_common).chain(more).copied().collect();
         Self { name, inputs, texts: vec![], treatments, ideal: false, from: false, observables }
     }
@@ -291,10 +292,12 @@ fn cases() -> Vec<Case> {
         Case::new("alkalinity and fugacity", lake_with(&[co2], &["pH"]), vec![], &[]),
         Case::new("pH and fugacity", lake_with(&[co2], &["alkalinity"]), vec![], &[]),
         Case::new("a gas, and warmed", lake(), vec![open(4.2e-4), warm(25.0)], &["added(CO2(g))", "CCPP"]),
-        Case::new("a mineral", lake(), vec![
-            warm(40.0),
-            Treatment::Allow { solid: "calcite".into(), above: 0.0 },
-        ], &["n(calcite)", "all(Ca)"]),
+        Case::new(
+            "a mineral",
+            lake(),
+            vec![warm(40.0), Treatment::Allow { solid: "calcite".into(), above: 0.0 }],
+            &["n(calcite)", "all(Ca)"],
+        ),
         Case::new("an unlimited mineral and a gas", lake(), vec![calcite(0.3), open(1e-3)], &["n(calcite)"]),
         Case::new("a fixed pH", lake(), vec![hold(7.0, None)], &[]),
         Case::new("a pH by reagent", lake(), vec![hold(9.0, Some("NaOH"))], &["added(NaOH)", "total(Na)"]),
@@ -339,8 +342,7 @@ fn sensitivities_of_states_are_difference_quotients() {
         for (r, name) in names.iter().enumerate() {
             let is_used = slopes.iter().any(|(constants, _)| constants.contains_key(&r));
             if is_used && !name.starts_with("water") || r % 16 == 0 {
-                let quotients =
-                    derivative(|step| case.numbers(&sample, &shifted(&ledger, name, step)), 2e-3);
+                let quotients = derivative(|step| case.numbers(&sample, &shifted(&ledger, name, step)), 2e-3);
                 check(name, quotients, &|k| slopes[k].0.get(&r).copied().unwrap_or(0.0), 1.0);
             }
         }
@@ -390,7 +392,12 @@ fn random_draws_agree_with_first_order() {
     const DRAWS: usize = 400;
     const SIGMA: f64 = 0.02;
 
-    let mut case = Case::new("alkalinity and DIC", lake_with(&[("DIC", 2.6, "mmol/kg", 0.02)], &["pH"]), vec![open(4.2e-4)], &[]);
+    let mut case = Case::new(
+        "alkalinity and DIC",
+        lake_with(&[("DIC", 2.6, "mmol/kg", 0.02)], &["pH"]),
+        vec![open(4.2e-4)],
+        &[],
+    );
     case.observables = vec!["pH", "SI(calcite)", "m(CO3^2-)", "ionic_strength", "added(CO2(g))"];
     let ledger = freshwater();
     let names: Vec<String> = ledger.names().map(str::to_string).collect();
@@ -400,9 +407,10 @@ fn random_draws_agree_with_first_order() {
         .iter()
         .map(|observable| {
             let (constants, measured) = slopes(&state, observable);
-            let by_inputs = case.inputs.iter().map(|(key, _, _, sigma)| {
-                (measured.get(*key).copied().unwrap_or(0.0) * sigma).powi(2)
-            });
+            let by_inputs = case
+                .inputs
+                .iter()
+                .map(|(key, _, _, sigma)| (measured.get(*key).copied().unwrap_or(0.0) * sigma).powi(2));
             let by_constants = constants.values().map(|slope| (slope * SIGMA).powi(2));
             by_inputs.chain(by_constants).sum::<f64>().sqrt()
         })
@@ -413,10 +421,10 @@ fn random_draws_agree_with_first_order() {
             let random = &mut Random(seed);
             let used = state.influence(&Asked::parse("pH").unwrap()).unwrap().constants;
             let other = state.influence(&Asked::parse("SI(calcite)").unwrap()).unwrap().constants;
-            let drawn = names.iter().enumerate().filter(|(r, _)| used.contains_key(r) || other.contains_key(r));
-            let ledger = drawn.fold(ledger.clone(), |ledger, (_, name)| {
-                shifted(&ledger, name, SIGMA * normal(random))
-            });
+            let drawn =
+                names.iter().enumerate().filter(|(r, _)| used.contains_key(r) || other.contains_key(r));
+            let ledger = drawn
+                .fold(ledger.clone(), |ledger, (_, name)| shifted(&ledger, name, SIGMA * normal(random)));
             let mut drawn = Case::new("drawn", case.inputs.clone(), case.treatments.clone(), &[]);
             drawn.observables.clone_from(&case.observables);
             for (_, value, _, sigma) in &mut drawn.inputs {

@@ -1,5 +1,6 @@
 //! A run: states in order, a failed one as a row with its reason.
 
+use std::collections::BTreeMap;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicUsize, Ordering};
 
