@@ -316,7 +316,8 @@ fn cases() -> Vec<Case> {
 /// be zero are.
 #[test]
 fn sensitivities_of_states_are_difference_quotients() {
-    cases().par_iter().for_each(|case| {
+    let differing = |case: &Case| {
+        let mut differences = Vec::new();
         let (ledger, sample) = (case.ledger(), case.sample("", 0.0));
         let state = case.state(&sample, &ledger);
         let slopes: Vec<_> = case.observables.iter().map(|observable| slopes(&state, observable)).collect();
@@ -324,15 +325,16 @@ fn sensitivities_of_states_are_difference_quotients() {
             .iter()
             .map(|(constants, _)| constants.values().fold(0.0_f64, |largest, slope| largest.max(slope.abs())))
             .collect();
-        let check = |what: &str, quotients: Vec<f64>, slope: &dyn Fn(usize) -> f64, scale: f64| {
+        let mut check = |what: &str, quotients: Vec<f64>, slope: &dyn Fn(usize) -> f64, scale: f64| {
             for (k, quotient) in quotients.iter().enumerate() {
                 let allowed = 1e-6 * quotient.abs() + 1e-8 * largest[k] / scale;
                 let (slope, observable) = (slope(k), case.observables[k]);
-                assert!(
-                    (slope - quotient).abs() <= allowed,
-                    "{}: d {observable} / d {what}: {slope:e}, by difference {quotient:e}",
-                    case.name
-                );
+                if (slope - quotient).abs() > allowed || !slope.is_finite() {
+                    differences.push(format!(
+                        "{}: d {observable} / d {what}: {slope:e}, by difference {quotient:e}",
+                        case.name
+                    ));
+                }
             }
         };
         let names: Vec<String> = ledger.names().map(str::to_string).collect();
@@ -349,7 +351,10 @@ fn sensitivities_of_states_are_difference_quotients() {
             let quotients = derivative(|by| case.numbers(&case.sample(key, by), &ledger), step);
             check(key, quotients, &|k| slopes[k].1.get(*key).copied().unwrap_or(0.0), value.abs());
         }
-    });
+        differences
+    };
+    let differences: Vec<String> = cases().par_iter().flat_map_iter(differing).collect();
+    assert!(differences.is_empty(), "{}", differences.join("\n"));
 }
 
 #[test]
@@ -365,8 +370,9 @@ fn a_fixed_ph_depends_on_itself_alone() {
         let case = case(name);
         let ph = case.state(&case.sample("", 0.0), &case.ledger()).get("pH").unwrap();
         let [part] = ph.parts() else { panic!("{name}: {:?}", ph.parts()) };
-        assert_eq!((part.input.label(), part.sensitivity), ("pH", 1.0), "{name}");
-        assert_eq!(ph.sigma(), Some(0.02), "{name}");
+        assert_eq!(part.input.label(), "pH", "{name}");
+        assert!((part.sensitivity - 1.0).abs() <= f64::EPSILON, "{name}");
+        assert!((ph.sigma().unwrap() - 0.02).abs() < 1e-17, "{name}");
     }
 }
 
