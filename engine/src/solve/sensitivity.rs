@@ -257,9 +257,8 @@ impl Sensitivities {
                 None => {
                     let dissolved: f64 =
                         self.species.iter().map(|species| species.moles(j) * found.ln_c[species.idx]).sum();
-                    let delivered = self.coupled().map(|(own, other)| {
-                        other.supply[j] * x[own] * other.shift.exp()
-                    });
+                    let delivered =
+                        self.coupled().map(|(own, other)| other.supply[j] * x[own] * other.shift.exp());
                     column.total(&given.totals) + delivered.sum::<f64>() - dissolved
                 }
             };
@@ -306,7 +305,8 @@ impl Sensitivities {
             by_held[j] += product;
             if amount != 0.0 {
                 by_total[j] = amount;
-                self.coupled().for_each(|(own, other)| by_x[own] += amount * other.supply[j] * other.shift.exp());
+                self.coupled()
+                    .for_each(|(own, other)| by_x[own] += amount * other.supply[j] * other.shift.exp());
                 self.species.iter().for_each(|species| by_ln_c[species.idx] -= amount * species.moles(j));
             }
         }
@@ -462,18 +462,13 @@ impl Weights {
 }
 
 /// The columns that are not absent, by index and as balances still to be scaled.
-fn balances(
-    problem: &Problem,
-    converged: &Converged,
-    supplies: &[Vec<f64>],
-) -> (Vec<usize>, Vec<Balance>) {
+fn balances(problem: &Problem, converged: &Converged, supplies: &[Vec<f64>]) -> (Vec<usize>, Vec<Balance>) {
     let (basis, column) = (&converged.warm.basis, &converged.warm.column);
     let (n_species, n_reservoirs) = (problem.species.len(), problem.reservoirs.len());
     let there: Vec<usize> = (0..basis.n).filter(|j| column[*j] != Column::Absent).collect();
     let delivers_what_it_holds = own_supplies(problem) == supplies;
     let waters: Vec<f64> = problem.rows().map(|row| row.water).collect();
-    let of_component =
-        |j: usize| -> Vec<f64> { (0..basis.n).map(|k| basis.total_factor(k, j)).collect() };
+    let of_component = |j: usize| -> Vec<f64> { (0..basis.n).map(|k| basis.total_factor(k, j)).collect() };
     let mut n_solved = 0;
     let mut balances = Vec::with_capacity(there.len());
     for &j in &there {
