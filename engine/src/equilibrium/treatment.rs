@@ -25,11 +25,7 @@ const MOST_REAGENT: f64 = 20.0;
 /// # Errors
 ///
 /// Returns what the ledger does not know, and why there is no equilibrium.
-pub fn treat(
-    sample: &Sample,
-    analysed: &Analysed,
-    settings: &Settings,
-) -> Result<Outcome, EquilibriumError> {
+pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Result<Outcome, EquilibriumError> {
     let warmed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
         Treatment::WarmTo(temperature) => Some(*temperature),
         _ => None,
@@ -156,11 +152,12 @@ impl Surroundings {
 
     fn solids(&self, converged: &Converged) -> Vec<Solid> {
         // An unlimited solid that gave an amount to the water has so much less; what is there is its negative.
-        let unlimited = self.phases.iter().filter(|(_, species)| species.is_solid()).map(|(f, species)| Solid {
-            species: species.clone(),
-            amount: -converged.reservoir_amount[*f],
-            slope: (Variable::ReservoirAmount(*f), -1.0),
-        });
+        let unlimited =
+            self.phases.iter().filter(|(_, species)| species.is_solid()).map(|(f, species)| Solid {
+                species: species.clone(),
+                amount: -converged.reservoir_amount[*f],
+                slope: (Variable::ReservoirAmount(*f), -1.0),
+            });
         let formed = self.minerals.iter().enumerate().map(|(p, (_, species, _))| Solid {
             species: species.clone(),
             amount: converged.mineral_amount[p],
@@ -179,7 +176,11 @@ impl Surroundings {
         });
         Conditions {
             held: held.collect(),
-            minerals: self.minerals.iter().map(|(_, species, mineral)| (species.clone(), mineral.clone())).collect(),
+            minerals: self
+                .minerals
+                .iter()
+                .map(|(_, species, mineral)| (species.clone(), mineral.clone()))
+                .collect(),
             measured: self.measured.clone(),
             temperature: self.temperature.clone(),
         }
