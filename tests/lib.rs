@@ -1,6 +1,8 @@
 //! The project against the outside; each module names what it is compared with.
 
 #[cfg(test)]
+mod oxidation_states;
+#[cfg(test)]
 mod properties;
 #[cfg(test)]
 mod published;
