@@ -3,6 +3,8 @@
 #[cfg(test)]
 mod ledgers;
 #[cfg(test)]
+mod oxidation_states;
+#[cfg(test)]
 mod properties;
 #[cfg(test)]
 mod published;

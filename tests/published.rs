@@ -27,6 +27,7 @@ files! {
     buck2002 = "buck2002",
     carbonate_equilibria = "carbonate-equilibria",
     combined_constants = "combined-constants",
+    cox1989 = "cox1989",
     davies1962 = "davies1962",
     electron = "electron",
     felmy1990 = "felmy1990",
@@ -48,6 +49,7 @@ files! {
     plummer1982 = "plummer1982",
     robinson1959 = "robinson1959",
     solubility = "solubility",
+    standard_potentials = "standard-potentials",
 }
 
 /// The folder of the files.

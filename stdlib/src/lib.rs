@@ -6,15 +6,19 @@
 
 /// `(file name without extension, TOML text)` of every file in `constants/`, in alphabetical order.
 pub const CONSTANTS: &[(&str, &str)] = &[
+    ("bates1943", include_str!("../constants/bates1943.toml")),
     ("busenberg1984", include_str!("../constants/busenberg1984.toml")),
     ("busenberg1986", include_str!("../constants/busenberg1986.toml")),
     ("cox1989", include_str!("../constants/cox1989.toml")),
     ("felmy1990", include_str!("../constants/felmy1990.toml")),
+    ("grenthe1992", include_str!("../constants/grenthe1992.toml")),
+    ("manov1944", include_str!("../constants/manov1944.toml")),
     ("nordstrom1990", include_str!("../constants/nordstrom1990.toml")),
     ("olofsson1975", include_str!("../constants/olofsson1975.toml")),
     ("plummer1982", include_str!("../constants/plummer1982.toml")),
     ("rimstidt1980", include_str!("../constants/rimstidt1980.toml")),
     ("robie1995", include_str!("../constants/robie1995.toml")),
+    ("skoog2004", include_str!("../constants/skoog2004.toml")),
     ("wagman1982", include_str!("../constants/wagman1982.toml")),
 ];
 

@@ -363,9 +363,7 @@ impl<'a> Analysis<'a> {
     ) -> Self {
         let evidence = &measured.evidence;
         let level = ZeroLevel::at(system.ledger(), ALKALINITY_PH);
-        let moles = |amount: &Amount| {
-            amount.moles.value() * amount.per.to_water(solution)
-        };
+        let moles = |amount: &Amount| amount.moles.value() * amount.per.to_water(solution);
         let carbon = carriers(system.ledger().formations(), Element::C);
         Self {
             system,
@@ -590,7 +588,8 @@ impl<'a> Analysis<'a> {
         };
         let factor = |amount: &Amount| amount.per.to_water(&self.solution);
 
-        let mut conditions = Conditions { temperature: measured.temperature.clone(), ..Conditions::default() };
+        let mut conditions =
+            Conditions { temperature: measured.temperature.clone(), ..Conditions::default() };
         for carried in given {
             let change = self.supplied(position(self.system, carried.component));
             let change = change.into_iter().map(|change| change * carried.factor).collect();
@@ -713,7 +712,9 @@ impl<'a> Analysis<'a> {
             "alkalinity" | "DIC" => {
                 let carbon = self.carbon;
                 let (amount, weight): (_, &dyn Fn(&Row) -> f64) = if key == "DIC" {
-                    (self.evidence.dic.as_ref()?, &|row| carbon.map_or(0.0, |carbon| coefficient(row, carbon)))
+                    (self.evidence.dic.as_ref()?, &|row| {
+                        carbon.map_or(0.0, |carbon| coefficient(row, carbon))
+                    })
                 } else {
                     (self.evidence.alkalinity.as_ref()?, &|row| self.alkalinity_of(&self.moles(row)))
                 };
@@ -757,7 +758,8 @@ pub(super) fn scaled(slopes: &[(Variable, f64)], factor: f64) -> Slopes {
 /// The derivatives of ln of a phase's saturation ratio; `None` where the system cannot form it.
 pub(super) fn saturation_slopes(system: &System, phase: &Species) -> Option<Slopes> {
     let (position, (_, row)) = system.phases().enumerate().find(|(_, (own, _))| own.species == *phase)?;
-    let components = row.stoichiometry.iter().map(|(k, nu)| (Variable::LnActivity(*k), rational::to_f64(*nu)));
+    let components =
+        row.stoichiometry.iter().map(|(k, nu)| (Variable::LnActivity(*k), rational::to_f64(*nu)));
     let water = (Variable::LnWaterActivity, row.water);
     Some(components.chain([water, (Variable::PhaseLnK(position), 1.0)]).collect())
 }

@@ -71,7 +71,8 @@ pub fn saturation_ph(state: &State) -> Result<Quantity, EquilibriumError> {
     };
     let slopes = [(Variable::LnActivity(proton), -1.0 / LN_10)];
     let partials = Influence::of(&slopes, &[(&outcome, &stage)]).partials(system);
-    let partials: Vec<(&Quantity, f64)> = partials.iter().map(|(quantity, slope)| (quantity, *slope)).collect();
+    let partials: Vec<(&Quantity, f64)> =
+        partials.iter().map(|(quantity, slope)| (quantity, *slope)).collect();
     Quantity::from_partials(ph, Unit::one(), &partials).map_err(undefined)
 }
 

@@ -307,8 +307,11 @@ impl State {
     fn influence_on(&self, answer: &Answer) -> Influence {
         let outcomes = self.0.before.iter().chain([&self.0.outcome]);
         let stages: Vec<_> = outcomes.zip(self.stages().unwrap_or_default()).collect();
-        let mut influence =
-            if answer.slopes.is_empty() { Influence::default() } else { Influence::of(&answer.slopes, &stages) };
+        let mut influence = if answer.slopes.is_empty() {
+            Influence::default()
+        } else {
+            Influence::of(&answer.slopes, &stages)
+        };
         influence.measured.extend(answer.partials.iter().cloned());
         influence
     }
@@ -501,7 +504,10 @@ impl State {
     /// Density of pure water, kg/L, and dissolved mass per mass of water.
     fn density_terms(&self) -> (f64, f64) {
         let solution = &self.0.solution;
-        (water::density(self.temperature().kelvin()) / 1000.0, solution.dissolved / solution.water_per_litre())
+        (
+            water::density(self.temperature().kelvin()) / 1000.0,
+            solution.dissolved / solution.water_per_litre(),
+        )
     }
 
     /// d ln ρ / dT of pure water, 1/K.

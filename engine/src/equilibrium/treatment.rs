@@ -9,7 +9,7 @@ use super::assemble::{System, carriers};
 use super::error::EquilibriumError;
 use super::uncertainty::{Conditions, Held, Variable};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{Ledger, LedgerError};
+use crate::ledger::{Formations, Ledger};
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
 use crate::solve::sensitivity::own_supplies;
@@ -25,11 +25,7 @@ const MOST_REAGENT: f64 = 20.0;
 /// # Errors
 ///
 /// Returns what the ledger does not know, and why there is no equilibrium.
-pub fn treat(
-    sample: &Sample,
-    analysed: &Analysed,
-    settings: &Settings,
-) -> Result<Outcome, EquilibriumError> {
+pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Result<Outcome, EquilibriumError> {
     let warmed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
         Treatment::WarmTo(temperature) => Some(*temperature),
         _ => None,
@@ -156,11 +152,12 @@ impl Surroundings {
 
     fn solids(&self, converged: &Converged) -> Vec<Solid> {
         // An unlimited solid that gave an amount to the water has so much less; what is there is its negative.
-        let unlimited = self.phases.iter().filter(|(_, species)| species.is_solid()).map(|(f, species)| Solid {
-            species: species.clone(),
-            amount: -converged.reservoir_amount[*f],
-            slope: (Variable::ReservoirAmount(*f), -1.0),
-        });
+        let unlimited =
+            self.phases.iter().filter(|(_, species)| species.is_solid()).map(|(f, species)| Solid {
+                species: species.clone(),
+                amount: -converged.reservoir_amount[*f],
+                slope: (Variable::ReservoirAmount(*f), -1.0),
+            });
         let formed = self.minerals.iter().enumerate().map(|(p, (_, species, _))| Solid {
             species: species.clone(),
             amount: converged.mineral_amount[p],
@@ -179,7 +176,11 @@ impl Surroundings {
         });
         Conditions {
             held: held.collect(),
-            minerals: self.minerals.iter().map(|(_, species, mineral)| (species.clone(), mineral.clone())).collect(),
+            minerals: self
+                .minerals
+                .iter()
+                .map(|(_, species, mineral)| (species.clone(), mineral.clone()))
+                .collect(),
             measured: self.measured.clone(),
             temperature: self.temperature.clone(),
         }
@@ -281,26 +282,86 @@ pub fn reagent(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, Eq
         )));
     }
     let formations = ledger.formations();
-    let mut parts: Vec<(usize, Rational)> = Vec::new();
+    let mut choices: Vec<Vec<usize>> = vec![vec![]];
     for element in species.elements_beside_water() {
         let carriers = carriers(formations, element);
-        let Some(carrier) = carriers.first() else {
-            let why = format!("the ledger has no species of {element}");
-            return Err(LedgerError::Unknown { what: "reagent", name: text.into(), nearest: None })
-                .map_err(|_| fault(why));
-        };
-        parts.push((*carrier, species.count(element) / formations.components[*carrier].count(element)));
+        if carriers.is_empty() {
+            return Err(fault(format!("the ledger has no species of {element}")));
+        }
+        choices = choices
+            .iter()
+            .flat_map(|chosen| carriers.iter().map(move |own| [chosen.as_slice(), &[*own]].concat()))
+            .collect();
     }
+    choices.iter().find_map(|carriers| dissolved(formations, &species, carriers)).ok_or_else(|| {
+        fault("its oxidation states are not those of the ledger's species: dissolving it would be a redox reaction".into())
+    })
+}
+
+/// The substance as these components, one for each of its elements, with protons and water; `None` if that would take
+/// electrons.
+fn dissolved(
+    formations: &Formations,
+    species: &Species,
+    carriers: &[usize],
+) -> Option<Vec<(usize, Rational)>> {
+    let elements = species.elements_beside_water();
+    let amount =
+        |element: Element, j: usize| species.count(element) / formations.components[j].count(element);
+    let mut parts: Vec<(usize, Rational)> =
+        elements.zip(carriers).map(|(element, j)| (*j, amount(element, *j))).collect();
     let remainder = |element: Element| -> Rational {
         species.count(element)
             - parts.iter().map(|(j, n)| formations.components[*j].count(element) * n).sum::<Rational>()
     };
     let protons = remainder(Element::H) - remainder(Element::O) * 2;
     let charge: Rational = parts.iter().map(|(j, n)| n * i64::from(formations.components[*j].charge())).sum();
-    if charge + protons != 0.into() {
-        return Err(fault("its oxidation states are not those of the ledger's species: dissolving it would be a redox reaction".into()));
-    }
     let proton = formations.component(&Species::proton()).expect("every ledger has hydrogen ions");
     parts.push((proton, protons));
-    Ok(parts)
+    (charge + protons == 0.into()).then_some(parts)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::ledger::shipped;
+
+    /// What a reagent brings, as component keys with whole moles.
+    fn parts(text: &str) -> Vec<(String, i64)> {
+        let book = shipped::ledger("freshwater", None).unwrap();
+        let parts = reagent(&book, text).unwrap_or_else(|error| panic!("{error}"));
+        let key = |j: usize| book.formations().components[j].key().to_string();
+        parts.into_iter().map(|(j, n)| (key(j), n.to_integer())).collect()
+    }
+
+    #[track_caller]
+    fn case(text: &str, expected: &[(&str, i64)]) {
+        let mut found = parts(text);
+        found.retain(|(_, n)| *n != 0);
+        found.sort();
+        let mut expected: Vec<(String, i64)> = expected.iter().map(|(key, n)| ((*key).into(), *n)).collect();
+        expected.sort();
+        assert_eq!(found, expected, "{text}");
+    }
+
+    #[test]
+    fn a_reagent_brings_each_element_in_the_oxidation_state_it_has() {
+        case("H2SO4", &[("H^+", 2), ("SO4^2-", 1)]);
+        case("HNO3", &[("H^+", 1), ("NO3^-", 1)]);
+        case("FeCl2", &[("Fe^2+", 1), ("Cl^-", 2)]);
+        case("FeCl3", &[("Fe^3+", 1), ("Cl^-", 3)]);
+        case("FeSO4", &[("Fe^2+", 1), ("SO4^2-", 1)]);
+        case("Al2(SO4)3", &[("Al^3+", 2), ("SO4^2-", 3)]);
+        case("Na2S", &[("Na^+", 2), ("HS^-", 1), ("H^+", -1)]);
+        case("NH4Cl", &[("NH4^+", 1), ("Cl^-", 1)]);
+    }
+
+    #[test]
+    fn a_reagent_that_would_take_electrons_is_refused() {
+        let book = shipped::ledger("freshwater", None).unwrap();
+        for text in ["Na2SO3", "FeS2", "CH4"] {
+            let error = reagent(&book, text).unwrap_err().to_string();
+            assert!(error.contains("redox reaction"), "{text}: {error}");
+        }
+    }
 }

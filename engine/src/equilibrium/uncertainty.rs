@@ -265,8 +265,7 @@ fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem)
     let per_kelvin = |above: f64, below: f64| (above - below) / (2.0 * TEMPERATURE_STEP);
     let converged = &outcome.converged;
     let total_molality: f64 = converged.ln_c.iter().map(|ln_c| ln_c.exp()).sum();
-    let water =
-        |system: &System| system.model().ln_water_activity(total_molality, converged.ionic_strength);
+    let water = |system: &System| system.model().ln_water_activity(total_molality, converged.ionic_strength);
     let mut given = Given::zero(problem);
     given.ln_water_activity = per_kelvin(water(&above), water(&below));
     let rows = above.problem(&outcome.totals).species.into_iter().zip(below.problem(&outcome.totals).species);

@@ -1,5 +1,6 @@
 //! A run: states in order, a failed one as a row with its reason.
 
+use std::collections::BTreeMap;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicUsize, Ordering};
 
@@ -156,7 +157,8 @@ impl Run {
             Cells::Uncertain => state.answer(&asked).map(|answer| (cell(&answer), answer.unit().clone())),
         };
         let states: Vec<&State> = self.states().collect();
-        let answers: Vec<Result<(Cell, Unit), ObservableError>> = states.into_par_iter().map(answer).collect();
+        let answers: Vec<Result<(Cell, Unit), ObservableError>> =
+            states.into_par_iter().map(answer).collect();
         let mut found = answers.iter().filter_map(|answer| answer.as_ref().ok());
         let unit = match (found.next(), answers.iter().find_map(|answer| answer.as_ref().err())) {
             (Some((_, unit)), _) => unit.clone(),

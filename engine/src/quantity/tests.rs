@@ -314,7 +314,10 @@ fn published_values_and_draws() -> Result<(), QuantityError> {
 #[test]
 fn numbers_get_units() -> Result<(), QuantityError> {
     let ratio = (amount("2.0 +/- 0.1 mg/L") / amount("4 mg/L"))?;
-    assert_eq!(ratio.given_in(&unit("mol/kg"))?.display(Style::Ascii), "0.500 +/- 0.025 mol/kg");
+    assert_eq!(
+        ratio.given_in(&unit("mol/kg"))?.display(Style::Ascii),
+        "0.500 +/- 0.025 mol/kg (1 input without uncertainty)"
+    );
     assert_eq!(Quantity::exact(50.0, unit("%")).given_in(&unit("bar"))?.display(Style::Ascii), "0.5 bar");
     assert_eq!(amount("2 mg/L").given_in(&unit("g/L"))?.display(Style::Ascii), "0.002 g/L");
     Ok(())

@@ -415,7 +415,7 @@ mod state_functions {
     ///
     /// ```rhai
     /// let lake = sample(#{ pH: "8.15 +/- 0.02", alkalinity: "2.35 meq/L", Ca: "41.2 +/- 0.8 mg/L" });
-    /// lake.equilibrate().budget("pH").column("input").cells[0]   // "pH"
+    /// lake.equilibrate().budget("pH").column("input").values[0]   // "pH"
     /// ```
     #[rhai_fn(name = "budget", pure, return_raw)]
     pub fn state_budget(state: &mut State, observable: &str) -> ScriptResult<Table> {

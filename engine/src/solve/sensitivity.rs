@@ -10,8 +10,9 @@
 //! I = ½ Σ z_i² c_i,    ln a_w = f(Σ c_i, I)
 //! ```
 //!
-//! The held `μ_h` are eliminated by hand, so that what is held depends on nothing else to the last bit. Left as unknowns x
-//! are the free `μ_j`, the amounts of what is held, I and ln a_w, one for every equation. All equations weigh the species
+//! The held `μ_h` are eliminated by hand, so that what is held depends on nothing else to the last bit, and so are the
+//! amounts of what delivers just what it holds, each the rest of its own balance. Left as unknowns x are the free `μ_j`,
+//! the other amounts, I and ln a_w, one for every equation. All equations weigh the species
 //! linearly, so with `d ln c = κ + Q dx`, κ being the direct effect of a parameter, they read
 //!
 //! ```text
@@ -117,6 +118,8 @@ pub struct Sensitivities {
     n_species: usize,
     n_reservoirs: usize,
     n_minerals: usize,
+    /// Equations of balances.
+    n_balances: usize,
     lu: Lu,
 }
 
@@ -124,6 +127,10 @@ pub struct Sensitivities {
 #[derive(Debug, Clone)]
 struct Balance {
     held: Held,
+    /// Position of its equation, and of its unknown, in the linear system.
+    position: Option<usize>,
+    /// What a reservoir delivers to each balance.
+    supply: Vec<f64>,
     /// Coefficient of the solvent in the basis row.
     water: f64,
     /// ln of the concentration that the balance is relative to.
@@ -174,19 +181,20 @@ impl Sensitivities {
         converged: &Converged,
         supplies: &[Vec<f64>],
     ) -> Option<Self> {
-        let columns = balances(problem, converged);
+        let (there, columns) = balances(problem, converged, supplies);
         let by_ionic_strength = if converged.ionic_strength > 0.0 { converged.ionic_strength } else { 1.0 };
         let mut linear = Self {
-            species: weights(problem, model, converged, &columns.0),
-            columns: columns.1,
+            species: weights(problem, model, converged, &there),
+            n_balances: columns.iter().filter(|column| column.position.is_some()).count(),
+            columns,
             ionic_strength: by_ionic_strength,
             n_species: problem.species.len(),
             n_reservoirs: problem.reservoirs.len(),
             n_minerals: problem.minerals.len(),
             lu: Lu::default(),
         };
-        linear.scale_balances();
-        let matrix = linear.matrix(model.d_ln_water_activity(converged.ionic_strength).1, supplies);
+        linear.scale_balances(&converged.reservoir_amount);
+        let matrix = linear.matrix(model.d_ln_water_activity(converged.ionic_strength).1);
         let n = linear.n();
         let mut lu = Lu::default();
         (matrix.iter().all(|entry| entry.is_finite()) && lu.factor(&matrix, n)).then(|| Self { lu, ..linear })
@@ -198,9 +206,10 @@ impl Sensitivities {
         let held: Vec<f64> = self.columns.iter().map(|column| column.value(given)).collect();
         let direct: Vec<f64> = self.species.iter().map(|species| species.direct(given, &held)).collect();
         let mut right = vec![0.0; self.n()];
-        for (j, column) in self.columns.iter().enumerate() {
-            let total: f64 = column.of_component.iter().zip(&given.totals).map(|(f, t)| f * t).sum();
-            right[j] = total * (-column.shift).exp();
+        for column in &self.columns {
+            if let Some(row) = column.position {
+                right[row] = column.total(&given.totals) * (-column.shift).exp();
+            }
         }
         right[self.n() - 1] = given.ln_water_activity;
         for (species, direct) in self.species.iter().zip(&direct) {
@@ -223,29 +232,49 @@ impl Sensitivities {
             reservoir_amount: vec![0.0; self.n_reservoirs],
             mineral_amount: vec![0.0; self.n_minerals],
         };
-        for (j, column) in self.columns.iter().enumerate() {
-            let amount = x[j] * column.shift.exp();
-            let product = match column.held {
-                Held::Not => x[j],
-                Held::Reservoir(f) => {
-                    found.reservoir_amount[f] = amount;
-                    held[j] - column.water * ln_water_activity
-                }
-                Held::Mineral(p) => {
-                    found.mineral_amount[p] = amount;
-                    held[j] - column.water * ln_water_activity
-                }
-            };
-            for (ln_a, factor) in found.ln_a.iter_mut().zip(&column.of_component) {
-                *ln_a += factor * product;
-            }
-        }
         for (species, direct) in self.species.iter().zip(direct) {
             found.ln_c[species.idx] = *direct;
             found.ln_gamma[species.idx] += species.gamma * ionic_strength;
             self.for_each_slope(species, |column, slope| found.ln_c[species.idx] += slope * x[column]);
         }
+        for (j, column) in self.columns.iter().enumerate() {
+            let product = match (column.held, column.position) {
+                (Held::Not, Some(own)) => x[own],
+                _ => held[j] - column.water * ln_water_activity,
+            };
+            for (ln_a, factor) in found.ln_a.iter_mut().zip(&column.of_component) {
+                *ln_a += factor * product;
+            }
+        }
+        self.read_amounts(given, x, &mut found);
         found
+    }
+
+    fn read_amounts(&self, given: &Given, x: &[f64], found: &mut Found) {
+        for (j, column) in self.columns.iter().enumerate() {
+            let amount = match column.position {
+                Some(own) => x[own] * column.shift.exp(),
+                None => {
+                    let dissolved: f64 =
+                        self.species.iter().map(|species| species.moles(j) * found.ln_c[species.idx]).sum();
+                    let delivered =
+                        self.coupled().map(|(own, other)| other.supply[j] * x[own] * other.shift.exp());
+                    column.total(&given.totals) + delivered.sum::<f64>() - dissolved
+                }
+            };
+            match column.held {
+                Held::Not => {}
+                Held::Reservoir(f) if column.position.is_some() => found.reservoir_amount[f] = amount,
+                Held::Reservoir(f) => found.reservoir_amount[f] = -amount,
+                Held::Mineral(p) => found.mineral_amount[p] = amount,
+            }
+        }
+    }
+
+    /// Reservoirs whose amounts are unknowns, with their positions.
+    fn coupled(&self) -> impl Iterator<Item = (usize, &Balance)> {
+        let reservoirs = self.columns.iter().filter(|column| matches!(column.held, Held::Reservoir(_)));
+        reservoirs.filter_map(|column| Some((column.position?, column)))
     }
 
     /// The derivatives of `Σ weight · found` by everything that is given.
@@ -254,80 +283,110 @@ impl Sensitivities {
         let n = self.n();
         let mut by_x = vec![0.0; n];
         let mut by_held = vec![0.0; self.columns.len()];
+        let mut by_ln_c = weight.ln_c.clone();
+        let mut by_total = vec![0.0; self.columns.len()];
         by_x[n - 2] = weight.ionic_strength * self.ionic_strength;
         by_x[n - 1] = weight.ln_water_activity;
         for (j, column) in self.columns.iter().enumerate() {
             let product: f64 = column.of_component.iter().zip(&weight.ln_a).map(|(f, w)| f * w).sum();
-            let amount = match column.held {
-                Held::Not => {
-                    by_x[j] += product;
+            let amount = match (column.held, column.position) {
+                (Held::Not, own) => {
+                    by_x[own.expect("free balances are solved")] += product;
                     continue;
                 }
-                Held::Reservoir(f) => weight.reservoir_amount[f],
-                Held::Mineral(p) => weight.mineral_amount[p],
+                (Held::Reservoir(f), Some(own)) => {
+                    by_x[own] += weight.reservoir_amount[f] * column.shift.exp();
+                    0.0
+                }
+                (Held::Reservoir(f), None) => -weight.reservoir_amount[f],
+                (Held::Mineral(p), _) => weight.mineral_amount[p],
             };
-            by_x[j] += amount * column.shift.exp();
             by_x[n - 1] -= column.water * product;
             by_held[j] += product;
+            if amount != 0.0 {
+                by_total[j] = amount;
+                self.coupled()
+                    .for_each(|(own, other)| by_x[own] += amount * other.supply[j] * other.shift.exp());
+                self.species.iter().for_each(|species| by_ln_c[species.idx] -= amount * species.moles(j));
+            }
         }
         for species in &self.species {
             by_x[n - 2] += weight.ln_gamma[species.idx] * species.gamma * self.ionic_strength;
-            let own = weight.ln_c[species.idx];
+            let own = by_ln_c[species.idx];
             self.for_each_slope(species, |column, slope| by_x[column] += slope * own);
         }
         let mut by_right = vec![0.0; n];
         self.lu.solve_transposed(&by_x, &mut by_right);
-        self.derivatives(weight, by_held, &by_right)
+        for (by_total, column) in by_total.iter_mut().zip(&self.columns) {
+            if let Some(row) = column.position {
+                *by_total = by_right[row] * (-column.shift).exp();
+            }
+        }
+        let mut given = self.derivatives(&by_ln_c, by_held, &by_right, &by_total);
+        for (own, weight) in given.ln_gamma.iter_mut().zip(&weight.ln_gamma) {
+            *own += weight;
+        }
+        given
     }
 
-    fn derivatives(&self, weight: &Found, mut by_held: Vec<f64>, by_right: &[f64]) -> Given {
+    fn derivatives(
+        &self,
+        by_ln_c: &[f64],
+        mut by_held: Vec<f64>,
+        by_right: &[f64],
+        by_total: &[f64],
+    ) -> Given {
+        let n_components = self.columns.first().map_or(0, |column| column.of_component.len());
         let mut given = Given {
             ln_k: vec![0.0; self.n_species],
-            ln_gamma: weight.ln_gamma.clone(),
+            ln_gamma: vec![0.0; self.n_species],
             ln_water_activity: by_right[self.n() - 1],
-            totals: vec![0.0; weight.ln_a.len()],
+            totals: vec![0.0; n_components],
             reservoirs: vec![0.0; self.n_reservoirs],
             minerals: vec![0.0; self.n_minerals],
         };
         for species in &self.species {
-            let mut direct = weight.ln_c[species.idx];
+            let mut direct = by_ln_c[species.idx];
             self.for_each_weight(species, |row, weight| direct -= weight * by_right[row]);
             given.ln_k[species.idx] = direct;
-            given.ln_gamma[species.idx] -= direct;
+            given.ln_gamma[species.idx] = -direct;
             for (by_held, t) in by_held.iter_mut().zip(&species.t) {
                 *by_held += t * direct;
             }
         }
-        for (j, column) in self.columns.iter().enumerate() {
-            let by_total = by_right[j] * (-column.shift).exp();
+        for ((column, by_total), by_held) in self.columns.iter().zip(by_total).zip(by_held) {
             for (total, factor) in given.totals.iter_mut().zip(&column.of_component) {
                 *total += factor * by_total;
             }
             match column.held {
                 Held::Not => {}
-                Held::Reservoir(f) => given.reservoirs[f] = by_held[j],
-                Held::Mineral(p) => given.minerals[p] = by_held[j],
+                Held::Reservoir(f) => given.reservoirs[f] = by_held,
+                Held::Mineral(p) => given.minerals[p] = by_held,
             }
         }
         given
     }
 
-    /// Unknowns: one a column, then ln I and ln a_w.
+    /// Unknowns: one a balance that is solved, then ln I and ln a_w.
     fn n(&self) -> usize {
-        self.columns.len() + 2
+        self.n_balances + 2
     }
 
-    /// Takes each balance relative to its largest concentration.
-    fn scale_balances(&mut self) {
+    /// Takes each balance relative to its largest concentration or delivery.
+    fn scale_balances(&mut self, delivered: &[f64]) {
         for (j, column) in self.columns.iter_mut().enumerate() {
             let terms = self.species.iter().filter(|species| species.t[j] != 0.0).map(|species| species.ln_c);
-            let largest = terms.fold(f64::NEG_INFINITY, f64::max);
+            let amount = match column.held {
+                Held::Reservoir(f) => delivered[f].abs().ln(),
+                Held::Not | Held::Mineral(_) => f64::NEG_INFINITY,
+            };
+            let largest = terms.fold(amount, f64::max);
             column.shift = if largest.is_finite() { largest } else { 0.0 };
         }
     }
 
     /// The matrix `P c Q + L` by rows.
-    fn matrix(&self, electrostatic: f64, supplies: &[Vec<f64>]) -> Vec<f64> {
+    fn matrix(&self, electrostatic: f64) -> Vec<f64> {
         let n = self.n();
         let mut matrix = vec![0.0; n * n];
         for species in &self.species {
@@ -335,18 +394,10 @@ impl Sensitivities {
                 self.for_each_slope(species, |column, slope| matrix[row * n + column] += weight * slope);
             });
         }
-        for (column, held) in self.columns.iter().enumerate() {
-            match held.held {
-                Held::Not => {}
-                Held::Mineral(_) => matrix[column * n + column] += 1.0,
-                Held::Reservoir(f) => {
-                    for (row, balance) in self.columns.iter().enumerate() {
-                        let supply: f64 =
-                            balance.of_component.iter().zip(&supplies[f]).map(|(f, s)| f * s).sum();
-                        if supply != 0.0 {
-                            matrix[row * n + column] -= supply * (held.shift - balance.shift).exp();
-                        }
-                    }
+        for (column, held) in self.coupled() {
+            for (balance, supply) in self.columns.iter().zip(&held.supply) {
+                if let (Some(row), true) = (balance.position, *supply != 0.0) {
+                    matrix[row * n + column] -= supply * (held.shift - balance.shift).exp();
                 }
             }
         }
@@ -359,8 +410,8 @@ impl Sensitivities {
     /// The entries of Q for one species.
     fn for_each_slope(&self, species: &Weights, mut take: impl FnMut(usize, f64)) {
         for (j, column) in self.columns.iter().enumerate() {
-            if column.held == Held::Not && species.t[j] != 0.0 {
-                take(j, species.t[j]);
+            if let (Held::Not, Some(own), true) = (column.held, column.position, species.t[j] != 0.0) {
+                take(own, species.t[j]);
             }
         }
         let n = self.n();
@@ -371,8 +422,8 @@ impl Sensitivities {
     /// The entries of P c for one species.
     fn for_each_weight(&self, species: &Weights, mut take: impl FnMut(usize, f64)) {
         for (j, column) in self.columns.iter().enumerate() {
-            if species.t[j] != 0.0 {
-                take(j, species.t[j] * (species.ln_c - column.shift).exp());
+            if let (Some(row), true) = (column.position, species.t[j] != 0.0) {
+                take(row, species.t[j] * (species.ln_c - column.shift).exp());
             }
         }
         let (n, c) = (self.n(), species.ln_c.exp());
@@ -390,9 +441,19 @@ impl Balance {
             Held::Mineral(p) => given.minerals[p],
         }
     }
+
+    /// Change of the total of the basis row.
+    fn total(&self, totals: &[f64]) -> f64 {
+        self.of_component.iter().zip(totals).map(|(factor, total)| factor * total).sum()
+    }
 }
 
 impl Weights {
+    /// What it adds to a balance, per mole of the basis row.
+    fn moles(&self, column: usize) -> f64 {
+        if self.t[column] == 0.0 { 0.0 } else { self.t[column] * self.ln_c.exp() }
+    }
+
     /// Change of ln c at given unknowns.
     fn direct(&self, given: &Given, held: &[f64]) -> f64 {
         let held: f64 = self.t.iter().zip(held).map(|(t, held)| t * held).sum();
@@ -401,22 +462,35 @@ impl Weights {
 }
 
 /// The columns that are not absent, by index and as balances still to be scaled.
-fn balances(problem: &Problem, converged: &Converged) -> (Vec<usize>, Vec<Balance>) {
+fn balances(problem: &Problem, converged: &Converged, supplies: &[Vec<f64>]) -> (Vec<usize>, Vec<Balance>) {
     let (basis, column) = (&converged.warm.basis, &converged.warm.column);
     let (n_species, n_reservoirs) = (problem.species.len(), problem.reservoirs.len());
     let there: Vec<usize> = (0..basis.n).filter(|j| column[*j] != Column::Absent).collect();
-    let balance = |j: &usize| {
-        let row = basis.row_of(*j);
-        let held = match column[*j] {
+    let delivers_what_it_holds = own_supplies(problem) == supplies;
+    let waters: Vec<f64> = problem.rows().map(|row| row.water).collect();
+    let of_component = |j: usize| -> Vec<f64> { (0..basis.n).map(|k| basis.total_factor(k, j)).collect() };
+    let mut n_solved = 0;
+    let mut balances = Vec::with_capacity(there.len());
+    for &j in &there {
+        let row = basis.row_of(j);
+        let held = match column[j] {
             Column::Held if row < n_species + n_reservoirs => Held::Reservoir(row - n_species),
             Column::Held => Held::Mineral(row - n_species - n_reservoirs),
             Column::Free | Column::Absent => Held::Not,
         };
-        let of_component = (0..basis.n).map(|k| basis.total_factor(k, *j)).collect();
-        let water = problem.rows().nth(row).map_or(0.0, |row| row.water);
-        Balance { held, water, shift: 0.0, of_component }
-    };
-    let balances = there.iter().map(balance).collect();
+        let (solved, supply) = match held {
+            Held::Not => (true, vec![]),
+            Held::Mineral(_) => (false, vec![]),
+            Held::Reservoir(f) => {
+                let to = |j: &usize| of_component(*j).iter().zip(&supplies[f]).map(|(f, s)| f * s).sum();
+                (!delivers_what_it_holds, there.iter().map(to).collect())
+            }
+        };
+        let position = solved.then_some(n_solved);
+        n_solved += usize::from(solved);
+        let water = waters.get(row).copied().unwrap_or(0.0);
+        balances.push(Balance { held, position, supply, water, shift: 0.0, of_component: of_component(j) });
+    }
     (there, balances)
 }
 

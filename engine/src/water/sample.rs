@@ -76,12 +76,7 @@ impl Sample {
 
     /// A water of dissolved totals with no surroundings and no solids.
     #[must_use]
-    pub fn dissolved(
-        name: Option<String>,
-        setting: Setting,
-        dissolved: Dissolved,
-        ledger: Ledger,
-    ) -> Self {
+    pub fn dissolved(name: Option<String>, setting: Setting, dissolved: Dissolved, ledger: Ledger) -> Self {
         Self(Arc::new(Inner {
             name,
             setting,
