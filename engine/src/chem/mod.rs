@@ -2,7 +2,7 @@
 //!
 //! Reading order: an [`Element`] and its atomic mass; a [`Species`] read from a formula; an [`Equation`], balanced
 //! when it is made; a [`LogK`], log10 K as a vector of temperature terms; the [`Conditions`] in which it holds and the
-//! [`History`] of where it came from; and a [`Reaction`], which is an equation with its constant and adds up as
+//! [`History`] of where it came from, told by its [`Trail`]; and a [`Reaction`], which is an equation with its constant and adds up as
 //! chemistry does: written backwards K becomes 1/K, taken n times Kⁿ, and constants of added reactions multiply.
 
 pub mod conditions;
@@ -16,8 +16,9 @@ pub mod pressure;
 pub mod rational;
 pub mod reaction;
 pub mod salt;
-mod statement;
 mod stated_conditions;
+mod statement;
+pub mod trail;
 
 pub use conditions::{Conditions, GasStandard, GasUnit, Medium, PhScale, SoluteUnit};
 pub use element::Element;
@@ -27,3 +28,4 @@ pub use history::{History, Influence, Origin, Provenance};
 pub use log_k::{LogK, Range, Term};
 pub use rational::Rational;
 pub use reaction::{Constant, Reaction, ReactionError};
+pub use trail::Trail;

@@ -12,6 +12,7 @@ use super::log_k::{LogK, LogKError};
 use super::pressure::Volume;
 use super::rational::{self, Rational};
 use super::statement::Statement;
+pub use super::stated_conditions::salinity;
 pub use super::statement::{multiple, temperature};
 use crate::named::{KeyFault, Named};
 use crate::physics::constants::{GAS_CONSTANT, LN_10};

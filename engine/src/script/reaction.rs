@@ -3,19 +3,21 @@
 use rhai::plugin::*;
 use rhai::{Array, Dynamic, FLOAT, INT, Map};
 
+use super::column::drawn;
 use super::faults::advised;
 use super::named::{named, value};
 use super::numbers::real;
 use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
+use crate::chem::reaction::{self as chemistry, salinity};
 use crate::chem::{
-    EquationError, GasStandard, Rational, Reaction, ReactionError, Species, reaction as chemistry,
+    EquationError, GasStandard, Medium, PhScale, Rational, Reaction, ReactionError, Species, Trail,
 };
 use crate::ledger::{LedgerError, combine as combine_reactions};
 use crate::named::{Named, Value};
-use crate::present::{Cell, Column, Table};
+use crate::present::Table;
 use crate::quantity::Quantity;
-use crate::units::{Kind, Style as Alphabet, Temperature, Unit};
+use crate::units::{Kind, Pressure, Style as Alphabet, Temperature, Unit};
 
 /// Registers the type.
 pub(super) fn register(vocabulary: &mut Vocabulary) {
@@ -29,9 +31,16 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
             "at",
             "assume_enthalpy",
             "to_gas_standard",
+            "to_pressure",
+            "to_kc",
+            "to_kp",
+            "to_molal",
+            "to_ionic_strength",
+            "to_ph_scale",
             "trail",
         ])
-        .native::<Reaction>("Reaction", show);
+        .native::<Reaction>("Reaction", show)
+        .native::<Trail>("Trail", |trail, style| drawn(&trail.table(), style));
 }
 
 /// `CO2(aq) + H2O ⇌ HCO3⁻ + H⁺   log K = -6.352 ± 0.010 (25 °C)`.
@@ -119,32 +128,39 @@ fn warn_outside(
     Ok(())
 }
 
-/// Sources of a constant: one row a stated value.
-pub(super) fn trail_table(reaction: &Reaction) -> Result<Table, Fail> {
-    let history = &reaction.constant()?.history;
-    let texts = |title: &str, text: &dyn Fn(&crate::chem::Origin) -> String| {
-        let texts: Vec<String> = history.uses().iter().map(|(origin, _)| text(origin)).collect();
-        Column::texts(title, texts.iter().map(String::as_str))
-    };
-    let multiples = history.uses().iter().map(|(_, multiple)| crate::chem::rational::to_f64(*multiple));
-    let sigmas = history.uses().iter().map(|(origin, _)| match origin.parts.as_slice() {
-        [part] => part
-            .input
-            .sigma()
-            .map_or_else(Cell::missing, |sigma| Cell::number(sigma * part.sensitivity.abs())),
-        _ => Cell::missing(),
-    });
-    let equations: Vec<&str> = history.uses().iter().map(|(origin, _)| origin.equation.as_str()).collect();
-    Table::new([
-        texts("constant", &|origin| origin.label.clone()),
-        Column::numbers("multiple", multiples),
-        Column::chemistry("reaction", equations),
-        texts("as stated", &|origin| origin.stated.clone()),
-        Column::new("sigma", sigmas),
-        texts("provenance", &|origin| origin.provenance.to_string()),
-        texts("source", &|origin| origin.source.clone().unwrap_or_else(|| "no source given".into())),
-    ])
-    .map_err(|error| fail(error.to_string()))
+/// A temperature, pressure or salinity that log K is asked for.
+struct Asked {
+    temperature: Temperature,
+    pressure: Option<Pressure>,
+}
+
+impl Asked {
+    fn read(reaction: &Reaction, map: &Map) -> Result<Self, Fail> {
+        let mut options = named(map)?;
+        let constant = reaction.constant()?;
+        let given = options.take("temperature");
+        let temperature =
+            given.map_or(Ok(constant.temperature), |given| chemistry::temperature("temperature", given))?;
+        let pressure = options.quantity("pressure", Kind::Pressure)?;
+        let pressure = pressure.map(|given| Pressure::try_from(&given)).transpose()?;
+        let asked = options.take("salinity").map(|given| salinity("salinity", given)).transpose()?;
+        options.finish()?;
+        match (&constant.conditions.medium, asked) {
+            (Medium::Seawater { salinity }, Some(asked)) if asked != *salinity => Err(fail(format!(
+                "log K of `{reaction}` is known for salinity {salinity} only, not for {asked}"
+            ))
+            .key("salinity")),
+            (Medium::Seawater { .. }, _) | (_, None) => Ok(Self { temperature, pressure }),
+            (medium, Some(_)) => Err(fail(format!(
+                "log K of `{reaction}` holds for {medium}: it is no function of salinity"
+            ))
+            .key("salinity")),
+        }
+    }
+}
+
+fn no_options() -> Named {
+    Named::new([].into())
 }
 
 /// Reactions and their constants.
@@ -163,8 +179,9 @@ mod reaction_functions {
     }
 
     /// A reaction with log10 K at 25 degC, or with a map of options: one of `log_k`, `ln_k`, `k`, `pk`, `gibbs` (kJ/mol)
-    /// and `log_k_terms`; `enthalpy` (kJ/mol), `heat_capacity` (J/(mol K)), `temperature` (degC), `value_at`, `sigma`,
-    /// `range`, `gas_standard`, `source`, `provenance`.
+    /// and `log_k_terms`; `enthalpy` (kJ/mol), `heat_capacity` (J/(mol K)), `volume` (cm3/mol), `temperature` (degC),
+    /// `pressure` (bar), `value_at`, `sigma`, `sigma_of`, `range`, `source`, `provenance`; and the conditions
+    /// `ionic_strength` (mol/kg), `medium`, `salinity`, `ph_scale`, `basis`, `gas_standard`. A unit of `k` fixes the last two.
     ///
     /// ```rhai
     /// let k1 = reaction("CO2(aq) + H2O <=> HCO3^- + H^+", #{ log_k: -6.352, enthalpy: "9.11 kJ/mol" });
@@ -330,20 +347,16 @@ mod reaction_functions {
     /// ```
     #[rhai_fn(return_raw)]
     pub fn log_k_at(context: NativeCallContext, reaction: Reaction, at: Dynamic) -> ScriptResult<Quantity> {
-        let at = match at.read_lock::<Map>() {
-            None => temperature(&at)?,
-            Some(map) => {
-                let mut options = named(&map)?;
-                let given = options.take("temperature");
-                options.finish().map_err(Fail::from)?;
-                match given {
-                    Some(given) => chemistry::temperature("temperature", given).map_err(Fail::from)?,
-                    None => reaction.constant().map_err(Fail::from)?.temperature,
-                }
-            }
+        let asked = match at.read_lock::<Map>() {
+            None => Asked { temperature: temperature(&at)?, pressure: None },
+            Some(map) => Asked::read(&reaction, &map)?,
         };
-        warn_outside(&context, &reaction, at)?;
-        Ok(reaction.log_k_at(at).map_err(Fail::from)?)
+        warn_outside(&context, &reaction, asked.temperature)?;
+        let there = match asked.pressure {
+            Some(pressure) => reaction.to_pressure(pressure, asked.temperature).map_err(Fail::from)?,
+            None => reaction,
+        };
+        Ok(there.log_k_at(asked.temperature).map_err(Fail::from)?)
     }
 
     /// The same reaction with its constant known at one temperature alone, so that it adds to others known there.
@@ -385,14 +398,135 @@ mod reaction_functions {
         Ok(reaction.to_gas_standard(standard).map_err(Fail::from)?)
     }
 
-    /// Every stated value in the constant: its multiple, reaction, value, uncertainty, provenance and source.
+    /// The same reaction at another pressure (bar), by its `volume` of reaction; known at its own temperature alone.
+    ///
+    /// ```rhai
+    /// let kw = reaction("H2O <=> H^+ + OH^-", #{ log_k: -14.0, volume: "-22.3 cm3/mol" });
+    /// fmt(kw.to_pressure("500 bar").log_k.value, ".2f")   // "-13.81"
+    /// ```
+    #[rhai_fn(return_raw)]
+    pub fn to_pressure(reaction: Reaction, pressure: Dynamic) -> ScriptResult<Reaction> {
+        let pressure = Pressure::try_from(&quantity("pressure", &pressure, Kind::Pressure)?).map_err(Fail::from)?;
+        let own = reaction.constant().map_err(Fail::from)?.temperature;
+        Ok(reaction.to_pressure(pressure, own).map_err(Fail::from)?)
+    }
+
+    /// Kc: the same reaction with gases counted in mol/L, as ideal gases.
+    ///
+    /// ```rhai
+    /// let kp = reaction("N2O4(g) <=> 2 NO2(g)", #{ k: "0.148 bar" });
+    /// fmt(kp.to_kc().k.value, ".5f")   // "0.00597"
+    /// ```
+    #[rhai_fn(name = "to_kc", return_raw)]
+    pub fn to_kc(reaction: Reaction) -> ScriptResult<Reaction> {
+        Ok(reaction.to_kc(no_options()).map_err(Fail::from)?)
+    }
+    #[rhai_fn(name = "to_kc", return_raw)]
+    pub fn to_kc_with(reaction: Reaction, options: Map) -> ScriptResult<Reaction> {
+        Ok(reaction.to_kc(named(&options)?).map_err(Fail::from)?)
+    }
+    /// Kp: the same reaction with gases counted by pressure from 1 bar.
+    ///
+    /// ```rhai
+    /// reaction("N2O4(g) <=> 2 NO2(g)", #{ k: "0.00597 mol/L" }).to_kp().conditions
+    /// ```
+    #[rhai_fn(name = "to_kp", return_raw)]
+    pub fn to_kp(reaction: Reaction) -> ScriptResult<Reaction> {
+        Ok(reaction.to_kp(no_options()).map_err(Fail::from)?)
+    }
+    #[rhai_fn(name = "to_kp", return_raw)]
+    pub fn to_kp_with(reaction: Reaction, options: Map) -> ScriptResult<Reaction> {
+        Ok(reaction.to_kp(named(&options)?).map_err(Fail::from)?)
+    }
+
+    /// The same reaction with dissolved species counted per kilogram of water, from mol/L by the `density` of the medium,
+    /// or from mol/kg(solution) of seawater.
+    ///
+    /// ```rhai
+    /// let k = reaction("Zn^2+ + Cl^- <=> ZnCl^+", #{ log_k: 0.1, medium: "1 mol/L NaCl", basis: "molar" });
+    /// k.to_molal(#{ density: "1.0365 kg/L" }).conditions
+    /// ```
+    #[rhai_fn(name = "to_molal", return_raw)]
+    pub fn to_molal(reaction: Reaction) -> ScriptResult<Reaction> {
+        Ok(reaction.to_molal(no_options()).map_err(Fail::from)?)
+    }
+    #[rhai_fn(name = "to_molal", return_raw)]
+    pub fn to_molal_with(reaction: Reaction, options: Map) -> ScriptResult<Reaction> {
+        Ok(reaction.to_molal(named(&options)?).map_err(Fail::from)?)
+    }
+
+    /// The same reaction at another ionic strength (mol/kg of water), by activity coefficients of `"davies"` or `"sit"`.
+    /// Options: `A`, `b`, `delta_epsilon`, `temperature`, `ph_scale`, `beyond_range`.
+    ///
+    /// ```rhai
+    /// let k2 = reaction("HCO3^- <=> CO3^2- + H^+", -10.329);
+    /// fmt(k2.to_ionic_strength(0.1, "davies", #{ A: 0.5098 }).log_k.value, ".3f")   // "-9.900"
+    /// ```
+    #[rhai_fn(name = "to_ionic_strength", return_raw)]
+    pub fn to_ionic_strength(reaction: Reaction, target: Dynamic, model: &str) -> ScriptResult<Reaction> {
+        to_ionic_strength_with(reaction, target, model, Map::new())
+    }
+    #[rhai_fn(name = "to_ionic_strength", return_raw)]
+    pub fn to_ionic_strength_with(
+        reaction: Reaction,
+        target: Dynamic,
+        model: &str,
+        options: Map,
+    ) -> ScriptResult<Reaction> {
+        let target = plain("an ionic strength", &target)?;
+        Ok(reaction.to_ionic_strength(target, model, named(&options)?).map_err(Fail::from)?)
+    }
+
+    /// The same reaction with `H^+` on another scale of pH: `"free"`, `"total"`, `"seawater"`, `"nbs"` or `"activity"`. The
+    /// last two need an `activity_coefficient`.
+    ///
+    /// ```rhai
+    /// let k = reaction("B(OH)3(aq) + H2O <=> B(OH)4^- + H^+",
+    ///     #{ pk: 8.5975, medium: "seawater", salinity: 35, ph_scale: "total" });
+    /// fmt(k.to_ph_scale("free").pk.value, ".3f")   // "8.705"
+    /// ```
+    #[rhai_fn(name = "to_ph_scale", return_raw)]
+    pub fn to_ph_scale(reaction: Reaction, scale: &str) -> ScriptResult<Reaction> {
+        to_ph_scale_with(reaction, scale, Map::new())
+    }
+    #[rhai_fn(name = "to_ph_scale", return_raw)]
+    pub fn to_ph_scale_with(reaction: Reaction, scale: &str, options: Map) -> ScriptResult<Reaction> {
+        let scale = PhScale::parse(scale).ok_or_else(|| {
+            let known = crate::text::list(&PhScale::ALL.map(PhScale::word));
+            fail(format!("`{scale}` is no scale of pH")).help(format!("the scales are {known}")).argument(1)
+        })?;
+        Ok(reaction.to_ph_scale(scale, named(&options)?).map_err(Fail::from)?)
+    }
+
+    /// Every stated value in the constant with its multiple, source and share of the variance, and every conversion: shown
+    /// as a table; `.text()` tells it in sentences.
     ///
     /// ```rhai
     /// ledger("freshwater").derive("CaCO3(calcite) + H^+ <=> Ca^2+ + HCO3^-").trail().len   // 2
     /// ```
     #[rhai_fn(name = "trail", get = "trail", pure, return_raw)]
-    pub fn trail(reaction: &mut Reaction) -> ScriptResult<Table> {
-        Ok(trail_table(reaction)?)
+    pub fn trail(reaction: &mut Reaction) -> ScriptResult<Trail> {
+        Ok(reaction.trail().map_err(Fail::from)?)
+    }
+    /// The trail as a table.
+    #[rhai_fn(name = "table", get = "table", pure)]
+    pub fn trail_table(trail: &mut Trail) -> Table {
+        trail.table()
+    }
+    /// The trail in sentences, for a methods section.
+    #[rhai_fn(name = "text", get = "text", pure)]
+    pub fn trail_text(trail: &mut Trail) -> String {
+        trail.text()
+    }
+    /// The conversions made, as texts.
+    #[rhai_fn(name = "conversions", get = "conversions", pure)]
+    pub fn trail_conversions(trail: &mut Trail) -> Array {
+        trail.conversions().iter().map(|words| words.clone().into()).collect()
+    }
+    /// How many values and parameters the constant was made of; conversions are not counted.
+    #[rhai_fn(name = "len", get = "len", pure)]
+    pub fn trail_len(trail: &mut Trail) -> INT {
+        trail.rows().len() as INT
     }
 
     /// The constant of an equation as a sum of the given reactions, with exact multiples.

@@ -6,6 +6,7 @@ pub mod table;
 
 use std::io::IsTerminal;
 
+use lysocline_engine::chem::Trail;
 use lysocline_engine::present::{self, Table};
 use lysocline_engine::script::{ScriptEngine, Style};
 
@@ -13,7 +14,10 @@ use lysocline_engine::script::{ScriptEngine, Style};
 pub fn draw_with(engine: &ScriptEngine) {
     // A file is as wide as it needs to be; only a terminal has an edge.
     let has_edge = std::io::stdout().is_terminal();
-    engine.show_with(|shows| shows.set::<Table>(move |drawn, style| table(drawn, style, has_edge)));
+    engine.show_with(|shows| {
+        shows.set::<Table>(move |drawn, style| table(drawn, style, has_edge));
+        shows.set::<Trail>(move |trail, style| table(&trail.table(), style, has_edge));
+    });
 }
 
 fn table(table: &Table, style: &Style, has_edge: bool) -> String {
