@@ -16,7 +16,7 @@ pub use super::stated_conditions::salinity;
 pub use super::statement::{multiple, temperature};
 use crate::named::{KeyFault, Named};
 use crate::physics::constants::{GAS_CONSTANT, LN_10};
-use crate::quantity::Quantity;
+use crate::quantity::{Part, Quantity};
 use crate::units::{Kind, Temperature, Unit};
 
 /// Gas constant in kJ/(mol K).
@@ -207,6 +207,22 @@ impl Reaction {
     pub fn enthalpy(&self) -> Result<Option<f64>, ReactionError> {
         let constant = self.constant()?;
         Ok(constant.log_k.enthalpy(constant.temperature))
+    }
+
+    /// Enthalpy of reaction as [`Reaction::enthalpy`], with the uncertainty that was stated for it.
+    ///
+    /// # Errors
+    ///
+    /// As [`Reaction::constant`].
+    pub fn enthalpy_quantity(&self) -> Result<Option<Quantity>, ReactionError> {
+        let constant = self.constant()?;
+        let part = |influence: &Influence| {
+            let sensitivity = influence.on_log_k.enthalpy(constant.temperature)?;
+            Some(Part { input: influence.input.clone(), sensitivity })
+        };
+        let parts = constant.history.influences().iter().filter_map(part).collect();
+        let unit = Kind::Energy.default_unit();
+        Ok(self.enthalpy()?.map(|value| Quantity::from_parts(value, unit, parts)))
     }
 
     /// Entropy of reaction, J/(mol K): (ΔH - ΔG)/T; `None` where the enthalpy is not known.

@@ -284,7 +284,8 @@ mod reaction_functions {
     /// Enthalpy of reaction, kJ/mol, at the reaction's own temperature; `()` where it is not known.
     #[rhai_fn(name = "enthalpy", get = "enthalpy", pure, return_raw)]
     pub fn enthalpy(reaction: &mut Reaction) -> ScriptResult<Dynamic> {
-        Ok(optional(reaction.enthalpy().map_err(Fail::from)?, Kind::Energy))
+        let enthalpy = reaction.enthalpy_quantity().map_err(Fail::from)?;
+        Ok(enthalpy.map_or(Dynamic::UNIT, Dynamic::from))
     }
     /// Entropy of reaction, J/(mol K), at the reaction's own temperature; `()` where it is not known.
     #[rhai_fn(name = "entropy", get = "entropy", pure, return_raw)]
