@@ -34,6 +34,7 @@ files! {
     formation_cycles = "formation-cycles",
     four_waters = "four-waters",
     freeze1979 = "freeze1979",
+    grenthe1992 = "grenthe1992",
     harned1941 = "harned1941",
     harned1943 = "harned1943",
     harned1958 = "harned1958",

@@ -134,6 +134,64 @@ fn constants() {
 }
 
 #[test]
+fn conditions_of_constants() {
+    option("pH_scale", "total", "unknown key `pH_scale`; did you mean `ph_scale`?");
+    option(
+        "ph_scale",
+        "totl",
+        "`totl` is no scale of pH: the scales are `free`, `total`, `seawater`, `nbs` and `activity`; did you mean `total`?",
+    );
+    option(
+        "ph_scale",
+        "total",
+        "the total scale needs the solution the constant was measured in: give `ionic_strength` or `medium`",
+    );
+    option("medium", "seawater", "`medium: \"seawater\"` needs its `salinity`, such as 35");
+    option("salinity", "35 PSU", "`salinity` belongs to `medium: \"seawater\"`: give that too");
+    option("salinity", "35 g/kg", "`salinity` is practical salinity; write `35` or `\"35 PSU\"`");
+    option(
+        "medium",
+        "0.7 mol/kg brine",
+        "`0.7 mol/kg brine` is no medium: write \"0.7 mol/kg NaCl\" (a salt of common ions), or \"seawater\" with its \
+         `salinity`",
+    );
+    option("ionic_strength", "-0.1 mol/kg", "an ionic strength of -0.1 is negative");
+    option(
+        "ionic_strength",
+        "4 g/kg",
+        "an ionic strength or salt is given in `mol/kg` (of water) or `mol/L`, not in `g/kg`",
+    );
+    option(
+        "ionic_strength",
+        "0.1 mol/L",
+        "the medium is stated per litre: say whether the constant is, too, with `basis: \"molar\"` or `basis: \"molal\"`",
+    );
+    option(
+        "basis",
+        "molall",
+        "`molall` is no basis: the bases are `molal`, `molar`, `pressure` and `concentration`; did you mean `molal`?",
+    );
+    option("basis", "pressure", "`basis: \"pressure\"` is for gases, and `H2O <=> H^+ + OH^-` has none");
+    option(
+        "sigma_of",
+        "95 %",
+        "`sigma_of` says how wide the stated uncertainty is: give `sigma`, or `+/-` with the value",
+    );
+    option(
+        "sigma_of",
+        "95.6 %",
+        "`95.6 %` is no coverage of an uncertainty: known are `68 %`, `68.27 %`, `90 %`, `95 %`, `95.45 %`, `99 %`, \
+         `99.73 %` and `50 %`",
+    );
+    reaction(
+        "HCO3^- <=> CO3^2- + H^+",
+        &[("k", "1e-9 bar")],
+        "`k` in `bar` does not fit `HCO3^- <=> CO3^2- + H^+`, whose exponents demand `mol/kg`, `mol/L`, `mol/kg(water)` and \
+         `mol/kg(solution)`",
+    );
+}
+
+#[test]
 fn analyses() {
     key("Ca", "-1 mg/L", "`Ca` is negative: an amount is zero or more");
     key("DIC", "-2 mmol/L", "`DIC` is negative: an amount is zero or more");

@@ -6,7 +6,7 @@ use lysocline_engine::activity::{Davies, Model as ActivityModel};
 use lysocline_engine::chem::{Equation, GasStandard, LogK, Rational, Reaction, Species, rational};
 use lysocline_engine::equilibrium::{State, equilibrate};
 use lysocline_engine::ledger::{ActivityChoice, Ledger, file, shipped};
-use lysocline_engine::named::Value;
+use lysocline_engine::named::{Named, Value};
 use lysocline_engine::physics::{constants, water};
 use lysocline_engine::solve::Settings;
 use lysocline_engine::units::{Temperature, Unit};
@@ -57,6 +57,10 @@ fn answer(file: &File, check: &Check, given: &mut Given) -> Result<Answer, Strin
                 Ok(model.ln_gamma(charge, ionic_strength).exp())
             }))
         }
+        Kind::MeanActivityCoefficient => {
+            only("gamma", mean_activity_coefficient(check, given.take("molality [mol/kg]")?)?)
+        }
+        Kind::Molality => only("molality [mol/kg]", molality(check, given)?),
         Kind::Water => {
             let t = given.temperature()?.kelvin();
             Ok(Box::new(move |column| pure_water(t, column)))
@@ -243,17 +247,58 @@ fn enthalpy(reaction: &Reaction, t: Temperature) -> Result<f64, String> {
     reaction.constant().map_err(text)?.log_k.enthalpy(t).ok_or_else(|| "no enthalpy is known".into())
 }
 
-/// log10 K of molalities: log10 K at I = 0 less the sum of ν log10 γ.
+/// log10 K of molalities at an ionic strength: the constant at I = 0, converted.
 fn conditional_log_k(check: &Check, ionic_strength: f64) -> Result<f64, String> {
-    let model = davies(check)?;
-    let equation = Equation::parse(reaction_of(check)?).map_err(text)?;
-    let ln_gamma = |species: &Species| model.ln_gamma(f64::from(species.charge()), ionic_strength);
-    let correction: f64 =
-        equation.terms().iter().map(|(species, n)| rational::to_f64(*n) * ln_gamma(species)).sum();
     if check.model.water_activity != Some(1.0) {
         return Err("the activity of water is held at 1 here".into());
     }
-    Ok(check.model.log_k.ok_or("no `model.log_k`")? - correction / constants::LN_10)
+    let log_k = check.model.log_k.ok_or("no `model.log_k`")?;
+    converted(check, log_k, ionic_strength)?.log_k().map(|log_k| log_k.value()).map_err(text)
+}
+
+/// A constant of the check's reaction at I = 0, taken to an ionic strength by the check's model.
+fn converted(check: &Check, log_k: f64, ionic_strength: f64) -> Result<Reaction, String> {
+    let reaction = Reaction::read(reaction_of(check)?, None, numbers([("log_k", Some(log_k))]), None);
+    let model = &check.model;
+    let a = model.a.as_ref().map(Entry::number).transpose()?;
+    let mut options = vec![("A", a), ("b", model.b), ("delta_epsilon", model.delta_epsilon)];
+    options.retain(|(_, value)| value.is_some());
+    let mut options: BTreeMap<String, Value> =
+        options.into_iter().filter_map(|(key, value)| Some((key.into(), Value::Number(value?)))).collect();
+    options.insert("beyond_range".into(), Value::Flag(true));
+    let name = model.activity_model.as_deref().ok_or("no `activity_model`")?;
+    reaction.map_err(text)?.to_ionic_strength(ionic_strength, name, Named::new(options)).map_err(text)
+}
+
+fn numbers<const N: usize>(options: [(&str, Option<f64>); N]) -> Named {
+    let entries = options.into_iter().filter_map(|(key, value)| Some((key.into(), Value::Number(value?))));
+    Named::new(entries.collect())
+}
+
+/// Mean activity coefficient of a salt: K of its dissolution in molalities is K of activities over the product of its
+/// coefficients.
+fn mean_activity_coefficient(check: &Check, molality: f64) -> Result<f64, String> {
+    let dissolution = Equation::parse(reaction_of(check)?).map_err(text)?;
+    let ions = || dissolution.terms().iter().filter(|(species, _)| species.is_solute());
+    let sum = |of: &dyn Fn(&Species) -> f64| -> f64 {
+        ions().map(|(species, n)| rational::to_f64(*n) * of(species)).sum()
+    };
+    let ionic_strength = molality * sum(&|ion| f64::from(ion.charge()).powi(2)) / 2.0;
+    let log_k = converted(check, 0.0, ionic_strength)?.log_k().map_err(text)?.value();
+    Ok(10_f64.powf(-log_k / sum(&|_| 1.0)))
+}
+
+/// mol/kg(water) of a salt solution that is its own medium.
+fn molality(check: &Check, given: &mut Given) -> Result<f64, String> {
+    let (molarity, density) = (given.take("molarity [mol/L]")?, given.take("density [kg/L]")?);
+    let salt = check.model.salt.as_deref().ok_or("no `model.salt`")?;
+    let stated = [("log_k", "0"), ("medium", &format!("{molarity} mol/L {salt}")), ("basis", "molar")];
+    let stated = stated.map(|(key, value)| (key.to_string(), Value::Text(value.into())));
+    let reaction = Reaction::read("H2O <=> H^+ + OH^-", None, Named::new(stated.into()), None);
+    let molal = reaction.and_then(|reaction| reaction.to_molal(numbers([("density", Some(density))])));
+    let molal = molal.map_err(text)?;
+    let medium = &molal.constant().map_err(text)?.conditions.medium;
+    medium.ionic_strength().ok_or_else(|| "no ionic strength".into())
 }
 
 fn pure_water(t: f64, column: &str) -> Result<f64, String> {

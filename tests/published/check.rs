@@ -59,6 +59,8 @@ pub enum Kind {
     Sigma,
     ConditionalLogK,
     ActivityCoefficient,
+    MeanActivityCoefficient,
+    Molality,
     Water,
     Electron,
     State,
@@ -72,6 +74,8 @@ pub struct Model {
     #[serde(rename = "A")]
     pub a: Option<Entry>,
     pub b: Option<f64>,
+    pub delta_epsilon: Option<f64>,
+    pub salt: Option<String>,
     pub water_activity: Option<f64>,
     pub neutral_gamma: Option<f64>,
     pub gas: Option<String>,
