@@ -234,8 +234,7 @@ impl Conditions {
     /// Whether `H^+` is counted in the unit of the other solutes, not as an activity of its own.
     #[must_use]
     pub fn counts_protons(&self) -> bool {
-        self.medium == Medium::InfiniteDilution
-            || !matches!(self.ph_scale, PhScale::Activity | PhScale::Nbs)
+        self.medium == Medium::InfiniteDilution || !matches!(self.ph_scale, PhScale::Activity | PhScale::Nbs)
     }
 }
 

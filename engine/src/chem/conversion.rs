@@ -43,10 +43,8 @@ impl Reaction {
             GasUnit::Concentration => standard,
         };
         let shift = from.shift_to(standard, self.equation().gas_made());
-        let words = self
-            .terms()?
-            .has_gases
-            .then(|| format!("gas standard {from} to {standard}: log K {shift:+.4}"));
+        let words =
+            self.terms()?.has_gases.then(|| format!("gas standard {from} to {standard}: log K {shift:+.4}"));
         let conditions = Conditions { gases, ..constant.conditions.clone() };
         Ok(self.shifted(&[(Term::One, shift)], conditions, words, vec![])?)
     }
@@ -88,11 +86,9 @@ impl Reaction {
         }
         let water = self.water_per_unit(density.as_ref(), dissolved.as_ref())?;
         let medium = match &conditions.medium {
-            Medium::IonicStrength { value, per: SoluteUnit::Molar, salt } => Medium::IonicStrength {
-                value: value / water,
-                per: SoluteUnit::Molal,
-                salt: salt.clone(),
-            },
+            Medium::IonicStrength { value, per: SoluteUnit::Molar, salt } => {
+                Medium::IonicStrength { value: value / water, per: SoluteUnit::Molal, salt: salt.clone() }
+            }
             other => other.clone(),
         };
         let n = match conditions.solutes {
@@ -223,7 +219,9 @@ impl Reaction {
         let (to, from_ratio) =
             (solution.ratio(target, coefficient.as_ref())?, solution.ratio(from, coefficient.as_ref())?);
         let log = |ratio: &Quantity| {
-            ratio.log10().map_err(|_| KeyFault::new("activity_coefficient", "`activity_coefficient` must be above zero"))
+            ratio.log10().map_err(|_| {
+                KeyFault::new("activity_coefficient", "`activity_coefficient` must be above zero")
+            })
         };
         let (to, from_ratio) = (log(&to)?, log(&from_ratio)?);
         let shift = n * (to.value() - from_ratio.value());
@@ -357,7 +355,9 @@ impl Reaction {
                     (None, Some(salt), SoluteUnit::Molar) => {
                         density - value / salt.strength_per_mole * salt.molar_mass
                     }
-                    (None, Some(salt), _) => density / (1.0 + value / salt.strength_per_mole * salt.molar_mass),
+                    (None, Some(salt), _) => {
+                        density / (1.0 + value / salt.strength_per_mole * salt.molar_mass)
+                    }
                     (None, None, _) => {
                         return Err(ReactionError::Conversion(
                             "the salt of the medium is not named; give the mass it adds to a litre as `dissolved_mass`, \
@@ -378,9 +378,15 @@ impl Reaction {
 
 /// Equation for the change of log10 K with ionic strength.
 enum IonicModel {
-    Davies { a: f64, b: f64 },
+    Davies {
+        a: f64,
+        b: f64,
+    },
     /// Specific ion interaction, with D = A √I/(1 + 1.5 √I).
-    Sit { a: f64, delta_epsilon: Quantity },
+    Sit {
+        a: f64,
+        delta_epsilon: Quantity,
+    },
 }
 
 impl IonicModel {
@@ -461,10 +467,9 @@ impl IonicModel {
     fn influences(&self, by_delta_epsilon: f64) -> Vec<Influence> {
         match self {
             Self::Davies { .. } => vec![],
-            Self::Sit { delta_epsilon, .. } => Influence::through(
-                delta_epsilon.parts(),
-                &LogK::function(&[(Term::One, by_delta_epsilon)]),
-            ),
+            Self::Sit { delta_epsilon, .. } => {
+                Influence::through(delta_epsilon.parts(), &LogK::function(&[(Term::One, by_delta_epsilon)]))
+            }
         }
     }
 }
@@ -512,9 +517,8 @@ impl Hydrogen {
             )),
             (PhScale::Activity, _, Some(gamma)) => Ok(gamma.clone()),
             (PhScale::Activity, _, None) => Err(needed("activity", "the activity coefficient of H^+")),
-            (PhScale::Nbs, _, Some(f_h)) => {
-                (f_h * seawater).map_err(|error| KeyFault::new("activity_coefficient", error.to_string()).into())
-            }
+            (PhScale::Nbs, _, Some(f_h)) => (f_h * seawater)
+                .map_err(|error| KeyFault::new("activity_coefficient", error.to_string()).into()),
             (PhScale::Nbs, _, None) => {
                 Err(needed("nbs", "the ratio of 10^-pH to the concentration of H^+ (seawater scale)"))
             }
@@ -644,8 +648,10 @@ mod tests {
         const ION: &str = "UO2^2+ + Cl^- <=> UO2Cl^+";
         let (mut w, mut wx, mut wy, mut wxx, mut wxy) = (0.0, 0.0, 0.0, 0.0, 0.0);
         for (i, log_beta, u) in ROWS {
-            let measured = reaction(ION, &[("log_k", &log_beta.to_string()), ("ionic_strength", &i.to_string())]);
-            let debye_huckel = measured.to_ionic_strength(0.0, "sit", named(&[("delta_epsilon", "0")])).unwrap();
+            let measured =
+                reaction(ION, &[("log_k", &log_beta.to_string()), ("ionic_strength", &i.to_string())]);
+            let debye_huckel =
+                measured.to_ionic_strength(0.0, "sit", named(&[("delta_epsilon", "0")])).unwrap();
             let (y, weight) = (debye_huckel.log_k().unwrap().value(), 1.0 / (u * u));
             w += weight;
             wx += weight * i;
@@ -692,9 +698,14 @@ mod tests {
             "the nbs scale needs the ratio of 10^-pH to the concentration of H^+ (seawater scale), which nothing here can \
              compute; give it as `activity_coefficient`",
         );
-        let nbs = seawater.to_ph_scale(PhScale::Nbs, named(&[("activity_coefficient", "0.7 +/- 0.02")])).unwrap();
+        let nbs =
+            seawater.to_ph_scale(PhScale::Nbs, named(&[("activity_coefficient", "0.7 +/- 0.02")])).unwrap();
         has_log_k(&nbs, -8.5975 + 0.009_68 + 0.7_f64.log10(), 1e-5);
-        let sigma = Quantity::from_parts(0.0, Unit::one(), nbs.constant().unwrap().history.parts_at(Temperature::REFERENCE));
+        let sigma = Quantity::from_parts(
+            0.0,
+            Unit::one(),
+            nbs.constant().unwrap().history.parts_at(Temperature::REFERENCE),
+        );
         assert!((sigma.sigma().unwrap() - 0.02 / 0.7 / LN_10).abs() < 1e-12);
         refuses(
             total.to_ph_scale(PhScale::Free, named(&[("salinity", "20")])),
@@ -764,7 +775,9 @@ mod tests {
         let fits = |equation: &str, options: &[(&str, &str)]| reaction(equation, options).check_for_ledger();
         assert!(fits(FLASK, &[("k", "0.148 atm")]).is_ok());
         assert_eq!(
-            fits("HCO3^- <=> CO3^2- + H^+", &[("log_k", "-9.9"), ("ionic_strength", "0.1")]).unwrap_err().to_string(),
+            fits("HCO3^- <=> CO3^2- + H^+", &[("log_k", "-9.9"), ("ionic_strength", "0.1")])
+                .unwrap_err()
+                .to_string(),
             "`HCO3^- <=> CO3^2- + H^+` holds for I = 0.1 mol/kg(water), and a ledger takes zero ionic strength: convert it \
              with `.to_ionic_strength(0.0, \"davies\")`"
         );

@@ -1,6 +1,8 @@
 //! Conditions as they are stated with a constant, and what the unit of a K says about them.
 
-use super::conditions::{Conditions, GasStandard, GasUnit, HoldingPressure, Medium, PhScale, SoluteUnit, Terms};
+use super::conditions::{
+    Conditions, GasStandard, GasUnit, HoldingPressure, Medium, PhScale, SoluteUnit, Terms,
+};
 use super::equation::Equation;
 use super::formula::Species;
 use super::rational;
@@ -222,10 +224,8 @@ impl Stated {
     pub fn of_unit(&mut self, k: &Quantity, equation: &Equation) -> Result<Quantity, KeyFault> {
         let fault = |message: String| KeyFault::new("k", message);
         let terms = Terms::of(equation, &self.conditions);
-        let (n_solutes, n_gases) =
-            (rational::to_f64(terms.solutes), rational::to_f64(equation.gas_made()));
-        let standard =
-            if k.unit().symbol().contains("atm") { GasStandard::Atm } else { GasStandard::Bar };
+        let (n_solutes, n_gases) = (rational::to_f64(terms.solutes), rational::to_f64(equation.gas_made()));
+        let standard = if k.unit().symbol().contains("atm") { GasStandard::Atm } else { GasStandard::Bar };
         let mut demanded: Vec<String> = Vec::new();
         for (solute, solutes) in self.solute_units() {
             for gases in [GasUnit::Pressure(standard), GasUnit::Concentration] {

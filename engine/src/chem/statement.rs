@@ -121,7 +121,8 @@ impl Statement {
         }
         let stated_sigma = self.sigma.or_else(|| own_sigma(&parts));
         if self.coverage != 1.0 && stated_sigma.is_none() {
-            let message = "`sigma_of` says how wide the stated uncertainty is: give `sigma`, or `+/-` with the value";
+            let message =
+                "`sigma_of` says how wide the stated uncertainty is: give `sigma`, or `+/-` with the value";
             return Err(KeyFault::new("sigma_of", message).into());
         }
         let parts = match (self.sigma, identity) {
@@ -164,12 +165,7 @@ impl Statement {
     }
 
     /// How the enthalpy and the heat capacity act on log K away from the temperature it is stated for.
-    fn temperature_influences(
-        &self,
-        at: Temperature,
-        label: &str,
-        identity: Option<&str>,
-    ) -> Vec<Influence> {
+    fn temperature_influences(&self, at: Temperature, label: &str, identity: Option<&str>) -> Vec<Influence> {
         let of = |given: &Option<Quantity>, kind, word: &str, per_unit: LogK| {
             let Some(given) = given else { return vec![] };
             let given = kilojoule(given, kind);
@@ -225,7 +221,10 @@ fn coverage(text: &str) -> Result<f64, KeyFault> {
     let spaced = format!("{} %", text.trim().trim_end_matches('%').trim_end());
     COVERAGES.iter().find(|(known, _)| *known == spaced).map(|(_, width)| *width).ok_or_else(|| {
         let known = COVERAGES.map(|(known, _)| known);
-        KeyFault::new("sigma_of", format!("`{text}` is no coverage of an uncertainty: known are {}", list(&known)))
+        KeyFault::new(
+            "sigma_of",
+            format!("`{text}` is no coverage of an uncertainty: known are {}", list(&known)),
+        )
     })
 }
 

@@ -81,7 +81,11 @@ impl Reaction {
         }
         Ok(Trail {
             equation: self.equation().to_string(),
-            log_k: format!("{} at {} degC", log_k.display(Style::Ascii), celsius(constant.temperature.celsius())),
+            log_k: format!(
+                "{} at {} degC",
+                log_k.display(Style::Ascii),
+                celsius(constant.temperature.celsius())
+            ),
             conditions: constant.conditions.describe(self.terms()?),
             rows,
             conversions: constant.history.conversions().to_vec(),
@@ -195,8 +199,7 @@ impl TrailRow {
             }
             times => format!("taken {times} times"),
         };
-        let sigma =
-            self.sigma.map(|sigma| format!(", standard uncertainty {sigma}")).unwrap_or_default();
+        let sigma = self.sigma.map(|sigma| format!(", standard uncertainty {sigma}")).unwrap_or_default();
         let confirmed = if self.provenance == "memory" { "; recalled, to be confirmed" } else { "" };
         format!("{}, {taken}: {}{sigma} [{}{confirmed}].", self.equation, self.stated, self.cited())
     }

@@ -151,10 +151,10 @@ impl Asked {
             ))
             .key("salinity")),
             (Medium::Seawater { .. }, _) | (_, None) => Ok(Self { temperature, pressure }),
-            (medium, Some(_)) => Err(fail(format!(
-                "log K of `{reaction}` holds for {medium}: it is no function of salinity"
-            ))
-            .key("salinity")),
+            (medium, Some(_)) => {
+                Err(fail(format!("log K of `{reaction}` holds for {medium}: it is no function of salinity"))
+                    .key("salinity"))
+            }
         }
     }
 }
@@ -407,7 +407,8 @@ mod reaction_functions {
     /// ```
     #[rhai_fn(return_raw)]
     pub fn to_pressure(reaction: Reaction, pressure: Dynamic) -> ScriptResult<Reaction> {
-        let pressure = Pressure::try_from(&quantity("pressure", &pressure, Kind::Pressure)?).map_err(Fail::from)?;
+        let pressure =
+            Pressure::try_from(&quantity("pressure", &pressure, Kind::Pressure)?).map_err(Fail::from)?;
         let own = reaction.constant().map_err(Fail::from)?.temperature;
         Ok(reaction.to_pressure(pressure, own).map_err(Fail::from)?)
     }

@@ -5,6 +5,7 @@ use super::*;
 mod examples;
 mod language;
 mod quantities;
+mod reactions;
 mod tables;
 
 /// An engine whose output is dropped and whose files lie in a fresh folder.
