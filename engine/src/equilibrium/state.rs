@@ -9,8 +9,8 @@ use super::assemble::{Doubt, System};
 use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
-use crate::chem::{Element, Species, rational};
-use crate::ledger::Formation;
+use crate::chem::{Element, Rational, Species, rational};
+use crate::ledger::{Formation, Formations};
 use crate::nearest::nearest;
 use crate::physics::water;
 use crate::present::{Cell, Column, Table};
@@ -252,10 +252,10 @@ impl State {
             Observable::All(name) => {
                 let mut total = self.total(name, asked)?;
                 let analyte = Analyte::parse(name).map_err(|error| no_answer(asked, error.to_string()))?;
+                let formations = self.system().ledger().formations();
                 for (solid, amount) in &inner.outcome.solids {
-                    if counts(&analyte, solid) {
-                        total.value += amount * rational::to_f64(solid.count(analyte.element()));
-                    }
+                    let formed = formations.formation(solid).expect("solids are formed");
+                    total.value += amount * atoms(&analyte, formed, formations);
                 }
                 Ok(total)
             }
@@ -425,8 +425,7 @@ impl State {
             .system()
             .solutes()
             .zip(&self.0.molalities)
-            .filter(|(formed, _)| counts(&analyte, &formed.species))
-            .map(|(formed, m)| rational::to_f64(formed.species.count(element)) * m)
+            .map(|(formed, m)| atoms(&analyte, formed, self.system().ledger().formations()) * m)
             .sum();
         let per_analyte = rational::to_f64(analyte.atoms());
         Ok(Answer {
@@ -648,15 +647,19 @@ fn amount(value: f64, unit: &'static str, species: &Species) -> Answer {
     Answer { value, unit, molar_mass: species.molar_mass(), element }
 }
 
-/// Whether a species holds an analyte's element, in its oxidation state if that can be told.
-fn counts(analyte: &Analyte, species: &Species) -> bool {
-    if species.count(analyte.element()) == 0.into() {
-        return false;
-    }
-    match (analyte.oxidation_state(), oxidation_state(species, analyte.element())) {
-        (Some(wanted), Some(own)) => wanted == own,
-        _ => true,
-    }
+/// Atoms of an analyte's element in a species, those in its oxidation state if it has one. A complex of several elements
+/// does not tell by its formula: FeSO4^+ is iron(III) because it is formed of that ion.
+fn atoms(analyte: &Analyte, formed: &Formation, formations: &Formations) -> f64 {
+    let element = analyte.element();
+    let carried = |(j, nu): &(usize, Rational)| {
+        let ion = &formations.components[*j];
+        let is_counted = match (analyte.oxidation_state(), oxidation_state(ion, element)) {
+            (Some(wanted), Some(own)) => wanted == own,
+            _ => true,
+        };
+        if is_counted { ion.count(element) * nu } else { 0.into() }
+    };
+    rational::to_f64(formed.stoichiometry.iter().map(carried).sum())
 }
 
 fn dissolved(system: &System, molalities: &[f64]) -> Vec<f64> {
