@@ -1,6 +1,8 @@
 //! The project against the outside; each module names what it is compared with.
 
 #[cfg(test)]
+mod ledgers;
+#[cfg(test)]
 mod oxidation_states;
 #[cfg(test)]
 mod properties;
@@ -14,6 +16,8 @@ mod refusals;
 mod reproducible;
 #[cfg(test)]
 mod round_trips;
+#[cfg(test)]
+mod sensitivities;
 #[cfg(test)]
 mod tidy;
 #[cfg(test)]

@@ -31,6 +31,7 @@ files! {
     davies1962 = "davies1962",
     electron = "electron",
     felmy1990 = "felmy1990",
+    formation_cycles = "formation-cycles",
     four_waters = "four-waters",
     freeze1979 = "freeze1979",
     harned1941 = "harned1941",

@@ -146,7 +146,11 @@ fn analyses() {
     );
     key("Xx", "40 mg/L", "`Xx` is no element, oxidation state or species; did you mean `Xe`?");
     key("NaCl", "40 mg/L", "`NaCl(aq)` holds Na and Cl: give each of them as an amount of its own");
-    key("HCO3^-", "100 mg/L", "`HCO3^-` is not measured as such: give `alkalinity` or `DIC`, and `pH`");
+    key(
+        "HCO3^-",
+        "100 mg/L",
+        "`HCO3^-` is not measured as such: give `alkalinity` or `DIC`, and `pH` or `fCO2`",
+    );
     key("alkalinty", "2 meq/L", "unknown key `alkalinty`; did you mean `alkalinity`?");
     key(
         "alkalinity",
@@ -308,7 +312,7 @@ fn ledgers() {
     );
     assert_eq!(
         shipped::ledger("freshwatr", None).unwrap_err().to_string(),
-        "no ledger `freshwatr` is shipped: there are `freshwater`; did you mean `freshwater`?"
+        "no ledger `freshwatr` is shipped: there are `formation` and `freshwater`; did you mean `freshwater`?"
     );
 }
 

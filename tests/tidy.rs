@@ -89,7 +89,7 @@ fn every_shipped_constant_says_where_it_comes_from() {
     let files = shipped::constant_files().expect("the shipped constants");
     let mut counted = 0;
     for (key, file) in files {
-        for (name, reaction) in &file.constants {
+        for (name, reaction) in file.constants.iter().chain(&file.formations) {
             let uses = reaction.constant().expect("a constant").history.uses();
             assert_eq!(uses.len(), 1, "{key}/{name}");
             let origin = &uses[0].0;

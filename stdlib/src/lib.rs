@@ -17,11 +17,16 @@ pub const CONSTANTS: &[(&str, &str)] = &[
     ("olofsson1975", include_str!("../constants/olofsson1975.toml")),
     ("plummer1982", include_str!("../constants/plummer1982.toml")),
     ("rimstidt1980", include_str!("../constants/rimstidt1980.toml")),
+    ("robie1995", include_str!("../constants/robie1995.toml")),
     ("skoog2004", include_str!("../constants/skoog2004.toml")),
+    ("wagman1982", include_str!("../constants/wagman1982.toml")),
 ];
 
 /// `(file name without extension, TOML text)` of every file in `ledgers/`, in alphabetical order.
-pub const LEDGERS: &[(&str, &str)] = &[("freshwater", include_str!("../ledgers/freshwater.toml"))];
+pub const LEDGERS: &[(&str, &str)] = &[
+    ("formation", include_str!("../ledgers/formation.toml")),
+    ("freshwater", include_str!("../ledgers/freshwater.toml")),
+];
 
 #[cfg(test)]
 mod tests {

@@ -72,6 +72,15 @@ impl Davies {
         let electrostatic = limiting_integral(ionic_strength.sqrt()) - self.b * ionic_strength.powi(2);
         -WATER_MOLAR_MASS * (total_molality - self.a_ln * electrostatic)
     }
+
+    /// ∂ ln a_w / ∂ Σm and ∂ ln a_w / ∂I, kg(water)/mol.
+    #[must_use]
+    pub fn d_ln_water_activity(&self, ionic_strength: f64) -> (f64, f64) {
+        // 2 I f'(I), which vanishes with I like √I.
+        let x = ionic_strength.sqrt();
+        let electrostatic = self.a_ln * (x / (1.0 + x).powi(2) - 2.0 * self.b * ionic_strength);
+        (-WATER_MOLAR_MASS, WATER_MOLAR_MASS * electrostatic)
+    }
 }
 
 /// ∫ x/(1 + x)² dI from 0 to I = x², by its series where the closed form cancels.
@@ -109,6 +118,16 @@ mod tests {
             let h = 1e-5 * i;
             let quotient = (DAVIES.ln_gamma(2.0, i + h) - DAVIES.ln_gamma(2.0, i - h)) / (2.0 * h);
             assert!((quotient / DAVIES.d_ln_gamma(2.0, i) - 1.0).abs() < 1e-8, "I = {i}");
+        }
+    }
+
+    #[test]
+    fn the_derivative_of_the_water_activity_is_the_difference_quotient() {
+        for i in [1e-4, 0.01, 0.3, 2.0] {
+            let h = 1e-4 * i;
+            let (above, below) = (DAVIES.ln_water_activity(0.1, i + h), DAVIES.ln_water_activity(0.1, i - h));
+            let quotient = (above - below) / (2.0 * h);
+            assert!((quotient / DAVIES.d_ln_water_activity(i).1 - 1.0).abs() < 1e-7, "I = {i}");
         }
     }
 

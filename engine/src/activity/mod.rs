@@ -81,6 +81,15 @@ impl Model {
         }
     }
 
+    /// ∂ ln a_w / ∂ Σm and ∂ ln a_w / ∂I, kg(water)/mol.
+    #[must_use]
+    pub fn d_ln_water_activity(&self, ionic_strength: f64) -> (f64, f64) {
+        match (self.water, &self.solutes) {
+            (Water::Stated(_), _) | (Water::Consistent, Solutes::Ideal) => (0.0, 0.0),
+            (Water::Consistent, Solutes::Davies(davies)) => davies.d_ln_water_activity(ionic_strength),
+        }
+    }
+
     /// Whether ln γ of any ion changes with the ionic strength.
     #[must_use]
     pub fn depends_on_ionic_strength(&self) -> bool {

@@ -21,4 +21,4 @@ pub use formula::{FormulaError, Species, State};
 pub use history::{History, Origin, Provenance};
 pub use log_k::{LogK, Range, Term};
 pub use rational::Rational;
-pub use reaction::{Reaction, ReactionError};
+pub use reaction::{Constant, Reaction, ReactionError};

@@ -16,14 +16,16 @@ use std::collections::BTreeSet;
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::assemble::{System, carriers};
 use super::error::{EquilibriumError, proton_total_open};
+use super::uncertainty::{Conditions, Held, Slopes, Variable};
 use crate::chem::{Element, Rational, Species, rational};
 use crate::ledger::{Formations, Ledger};
 use crate::physics::water;
+use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
 use crate::solve::{Converged, Problem, Reservoir, Row, Settings, Total, Warm, solve};
-use crate::water::analysis::{Evidence, Measured, Ph};
+use crate::water::analysis::{Dissolved, Evidence, Measured, Ph};
 use crate::water::analyte::{Analyte, oxidation_state, to_roman};
-use crate::water::concentration::Solution;
+use crate::water::concentration::{Amount, Solution};
 use crate::water::{Sample, Treatment};
 
 const LN_10: f64 = std::f64::consts::LN_10;
@@ -48,10 +50,27 @@ pub struct Analysed {
     pub totals: Vec<f64>,
     /// The equilibrium the evidence itself implied, if there was any.
     pub outcome: Option<Outcome>,
-    /// Measured values that were not used, with their key and how far they lie above the computed ones.
-    pub misfits: Vec<(&'static str, f64)>,
+    /// What `totals` are sums of where no outcome says so: dissolved totals with the change of every total per unit.
+    pub measured: Vec<(Quantity, Vec<f64>)>,
+    /// The sample's own temperature in kelvin, where it is uncertain.
+    pub temperature: Option<Quantity>,
+    /// Measured values that were not used, less the computed ones.
+    pub misfits: Vec<Misfit>,
     /// What was assumed, in words.
     pub notes: Vec<String>,
+}
+
+/// A measured value that was not used, less the computed one.
+#[derive(Debug, Clone)]
+pub struct Misfit {
+    /// The key it was given under.
+    pub key: &'static str,
+    /// The difference, in the unit of the observable.
+    pub value: f64,
+    /// The measured value, with the derivative of the difference by it.
+    pub measured: (Quantity, f64),
+    /// The derivatives of the difference by what the analysis found.
+    pub slopes: Slopes,
 }
 
 /// A solved problem with the names of its surroundings and solids.
@@ -63,10 +82,24 @@ pub struct Outcome {
     pub converged: Converged,
     /// Total of each component over the water and its solids, mol/kg(water).
     pub totals: Vec<f64>,
-    /// What delivered or took each amount: the gas, solid or reagent, with mol/kg(water) taken up by the water.
+    /// What delivered or took each amount: the gas, solid or reagent, with mol/kg(water) taken up by the water. In the
+    /// order of what is held.
     pub exchanged: Vec<(String, f64)>,
     /// Amount of each solid that may form or is there without limit, mol/kg(water).
-    pub solids: Vec<(Species, f64)>,
+    pub solids: Vec<Solid>,
+    /// What it meets, where its derivatives are known.
+    pub conditions: Option<Conditions>,
+}
+
+/// A solid that may form or is there without limit.
+#[derive(Debug, Clone)]
+pub struct Solid {
+    /// Which.
+    pub species: Species,
+    /// mol/kg(water); negative where an unlimited one was dissolved.
+    pub amount: f64,
+    /// What the amount is read from, with its sign.
+    pub slope: (Variable, f64),
 }
 
 /// Fixes the totals of a laboratory analysis.
@@ -86,8 +119,8 @@ pub fn analyse(
     let present = present_components(sample, measured, ledger, &given)?;
     let system = System::new(ledger, &present, sample.setting().temperature)?;
     let mut totals = vec![0.0; system.n_components()];
-    for (j, moles) in &given {
-        totals[position(&system, *j)] += moles;
+    for carried in &given {
+        totals[position(&system, carried.component)] += carried.total();
     }
     let analysis = Analysis::new(&system, measured, &solution, settings, sample);
     let (totals, converged) = match &measured.make_up {
@@ -95,19 +128,22 @@ pub fn analyse(
         Some(key) => {
             let carrier = given
                 [measured.amounts.iter().position(|(_, own, _)| own == key).expect("checked on entry")]
-            .0;
+            .component;
             analysis.made_up(&totals, position(&system, carrier), key, &mut notes)?
         }
     };
     let misfits = analysis.misfits(&converged);
+    let conditions = analysis.conditions(measured, &given);
     let outcome = Outcome {
         system: system.clone(),
         converged,
         totals: totals.clone(),
         exchanged: vec![],
         solids: vec![],
+        conditions,
     };
-    Ok(Analysed { system, totals, outcome: Some(outcome), misfits, notes })
+    let temperature = measured.temperature.clone();
+    Ok(Analysed { system, totals, outcome: Some(outcome), measured: vec![], temperature, misfits, notes })
 }
 
 /// Takes up totals that an earlier equilibrium left.
@@ -117,27 +153,34 @@ pub fn analyse(
 /// Returns a species that the ledger does not know.
 pub fn restore(
     sample: &Sample,
-    dissolved: &[(Species, f64)],
+    dissolved: &Dissolved,
     ledger: &Ledger,
 ) -> Result<Analysed, EquilibriumError> {
     let formations = ledger.formations();
     let mut present = treatment_components(sample, ledger)?;
-    let mut given: Vec<(usize, f64)> = Vec::new();
-    for (species, moles) in dissolved {
+    let mut formed = Vec::new();
+    for (species, _) in &dissolved.totals {
         ledger.find_species(species.key())?;
-        let formed = formations.formation(species).expect("just found");
-        given.extend(formed.stoichiometry.iter().map(|(j, nu)| (*j, rational::to_f64(*nu) * moles)));
+        formed.push(formations.formation(species).expect("just found"));
     }
-    present.extend(given.iter().map(|(j, _)| *j));
+    present.extend(formed.iter().flat_map(|formed| formed.stoichiometry.iter().map(|(j, _)| *j)));
     present.extend(formations.component(&Species::proton()));
     let system = System::new(ledger, &present, sample.setting().temperature)?;
     let mut totals = vec![0.0; system.n_components()];
-    for (j, moles) in given {
-        if let Some(k) = system.components().iter().position(|own| *own == j) {
-            totals[k] += moles;
+    let mut measured = Vec::new();
+    for (formed, (_, moles)) in formed.into_iter().zip(&dissolved.totals) {
+        let mut change = vec![0.0; system.n_components()];
+        for (j, nu) in &formed.stoichiometry {
+            if let Some(k) = system.components().iter().position(|own| own == j) {
+                change[k] = rational::to_f64(*nu);
+                totals[k] += change[k] * moles.value();
+            }
         }
+        measured.push((moles.clone(), change));
     }
-    Ok(Analysed { system, totals, outcome: None, misfits: vec![], notes: sample.notes().to_vec() })
+    let notes = sample.notes().to_vec();
+    let temperature = dissolved.temperature.clone();
+    Ok(Analysed { system, totals, outcome: None, measured, temperature, misfits: vec![], notes })
 }
 
 fn position(system: &System, component: usize) -> usize {
@@ -167,20 +210,34 @@ fn laboratory(_: &Sample) -> crate::units::Temperature {
     crate::units::Temperature::from_celsius(20.0).expect("above absolute zero")
 }
 
-/// Moles per kilogram of water of the component that carries each analyte.
+/// A measured amount as the component that carries it.
+struct Carried {
+    component: usize,
+    moles: Quantity,
+    /// Moles of the component per kilogram of water, per unit of `moles`.
+    factor: f64,
+}
+
+impl Carried {
+    fn total(&self) -> f64 {
+        self.moles.value() * self.factor
+    }
+}
+
+/// Every measured amount, in order.
 fn amounts(
     measured: &Measured,
     ledger: &Ledger,
     solution: &Solution,
     notes: &mut Vec<String>,
-) -> Result<Vec<(usize, f64)>, EquilibriumError> {
+) -> Result<Vec<Carried>, EquilibriumError> {
     let formations = ledger.formations();
-    let convert = |(analyte, key, amount): &(Analyte, String, _)| {
-        let amount: &crate::water::concentration::Amount = amount;
+    let convert = |(analyte, key, amount): &(Analyte, String, Amount)| {
         let carrier = carrier(formations, analyte, key, notes)?;
         let atoms = formations.components[carrier].count(analyte.element());
         let ratio = rational::to_f64(analyte.atoms() / atoms);
-        Ok((carrier, amount.moles.value() * amount.per.to_water(solution) * ratio))
+        let factor = amount.per.to_water(solution) * ratio;
+        Ok(Carried { component: carrier, moles: amount.moles.clone(), factor })
     };
     measured.amounts.iter().map(convert).collect()
 }
@@ -229,12 +286,10 @@ fn present_components(
     sample: &Sample,
     measured: &Measured,
     ledger: &Ledger,
-    given: &[(usize, f64)],
+    given: &[Carried],
 ) -> Result<BTreeSet<usize>, EquilibriumError> {
     let formations = ledger.formations();
-    let mut present: BTreeSet<usize> =
-        given.iter().filter(|(_, moles)| *moles > 0.0).map(|(j, _)| *j).collect();
-    present.extend(given.iter().map(|(j, _)| *j));
+    let mut present: BTreeSet<usize> = given.iter().map(|carried| carried.component).collect();
     present.extend(formations.component(&Species::proton()));
     let evidence = &measured.evidence;
     if evidence.alkalinity.is_some() || evidence.dic.is_some() || evidence.co2.is_some() {
@@ -280,6 +335,7 @@ struct Analysis<'a> {
     system: &'a System,
     settings: &'a Settings,
     name: String,
+    solution: Solution,
     evidence: &'a Evidence,
     proton: usize,
     carbon: Option<usize>,
@@ -307,14 +363,13 @@ impl<'a> Analysis<'a> {
     ) -> Self {
         let evidence = &measured.evidence;
         let level = ZeroLevel::at(system.ledger(), ALKALINITY_PH);
-        let moles = |amount: &crate::water::concentration::Amount| {
-            amount.moles.value() * amount.per.to_water(solution)
-        };
+        let moles = |amount: &Amount| amount.moles.value() * amount.per.to_water(solution);
         let carbon = carriers(system.ledger().formations(), Element::C);
         Self {
             system,
             settings,
             name: sample.name().map_or_else(|| "the sample".into(), |name| format!("`{name}`")),
+            solution: *solution,
             evidence,
             proton: system.proton(),
             carbon: carbon.first().and_then(|j| system.components().iter().position(|own| own == j)),
@@ -510,7 +565,101 @@ impl<'a> Analysis<'a> {
             high.f = misses(high.x)?;
         }
         let root = root_between(&mut misses, low, high, ROOT)?;
-        self.solve_with(&totals, Some(root.x), self.co2, None)
+        let (delivered, _) = self.solve_with(&totals, Some(root.x), self.co2, None)?;
+        // The same with the protons known and the gas alone held, which is what the evidence says.
+        let gas = self.fixed_co2(1.0)?;
+        for (k, nu) in gas.row.stoichiometry {
+            totals[k] = delivered[k] - rational::to_f64(nu) * delivered[carbon];
+        }
+        self.solve_with(&totals, None, self.co2, None)
+    }
+
+    /// What the outcome of [`Analysis::solve`] meets, as one square system; `given` are the amounts.
+    fn conditions(&self, measured: &Measured, given: &[Carried]) -> Option<Conditions> {
+        let uses = |key| self.evidence.uses(key);
+        let unit = |k: usize| (0..self.protons.len()).map(|own| f64::from(u8::from(own == k))).collect();
+        let make_up = measured.make_up.as_ref().map(|key| {
+            let position_of = |key: &String| measured.amounts.iter().position(|(_, own, _)| own == key);
+            position(self.system, given[position_of(key).expect("checked on entry")].component)
+        });
+        let balanced = |change: Vec<f64>| match make_up {
+            None => change,
+            Some(k) => self.neutralised(change, &self.supplied(k)),
+        };
+        let factor = |amount: &Amount| amount.per.to_water(&self.solution);
+
+        let mut conditions =
+            Conditions { temperature: measured.temperature.clone(), ..Conditions::default() };
+        for carried in given {
+            let change = self.supplied(position(self.system, carried.component));
+            let change = change.into_iter().map(|change| change * carried.factor).collect();
+            conditions.measured.push((carried.moles.clone(), balanced(change)));
+        }
+        if let (Some(amount), Some(carbon), true) = (&self.evidence.dic, self.carbon, uses("DIC")) {
+            let change = self.supplied(carbon).into_iter().map(|change| change * factor(amount)).collect();
+            conditions.measured.push((amount.moles.clone(), balanced(change)));
+        }
+        if let (Some(amount), true) = (&self.evidence.alkalinity, uses("alkalinity")) {
+            let change: Vec<f64> = unit(self.proton);
+            let change = change.into_iter().map(|change| -change * factor(amount)).collect();
+            conditions.measured.push((amount.moles.clone(), balanced(change)));
+        }
+        match &self.evidence.ph {
+            Some(Ph::Measured(ph)) if uses("pH") => {
+                let supply = match self.carbon {
+                    Some(carbon) if uses("alkalinity") => self.supplied(carbon),
+                    _ => unit(self.proton),
+                };
+                conditions.held.push(Held {
+                    reservoir: fixed_ph(self.proton, ph.value()),
+                    phase: None,
+                    supply: balanced(supply),
+                    value: Some((ph.clone(), -LN_10)),
+                });
+            }
+            // The carbon that alkalinity and electroneutrality would fix together.
+            Some(Ph::Electroneutral) if uses("pH") && uses("alkalinity") => return None,
+            _ => {}
+        }
+        if let (Some(fugacity), true) = (&self.evidence.co2, uses("fCO2")) {
+            let reservoir = self.fixed_co2(fugacity.value()).ok()?;
+            let mut supply = vec![0.0; self.protons.len()];
+            for (k, nu) in &reservoir.row.stoichiometry {
+                supply[*k] = rational::to_f64(*nu);
+            }
+            let supply = if uses("DIC") { unit(self.proton) } else { supply };
+            conditions.held.push(Held {
+                reservoir,
+                phase: self.system.ledger().find_phase("CO2(g)").ok().cloned(),
+                supply: balanced(supply),
+                value: Some((fugacity.clone(), 1.0 / fugacity.value())),
+            });
+        }
+        Some(conditions)
+    }
+
+    /// How the totals move when a mole of component `k` more is given: the protons follow what is known of them.
+    fn supplied(&self, k: usize) -> Vec<f64> {
+        let mut change = vec![0.0; self.protons.len()];
+        let electroneutral = matches!(self.evidence.ph, Some(Ph::Electroneutral)) && self.evidence.uses("pH");
+        if k != self.proton {
+            change[k] = 1.0;
+            if self.evidence.uses("alkalinity") {
+                change[self.proton] = self.protons[k];
+            } else if electroneutral {
+                change[self.proton] = self.neutral_protons(&change);
+            }
+        } else if !self.evidence.uses("alkalinity") && !electroneutral {
+            change[k] = 1.0;
+        }
+        change
+    }
+
+    /// A change of the totals together with as much of `by` as keeps the charge.
+    fn neutralised(&self, change: Vec<f64>, by: &[f64]) -> Vec<f64> {
+        let charge = |change: &[f64]| self.charges.iter().zip(change).map(|(z, t)| z * t).sum::<f64>();
+        let share = charge(&change) / charge(by);
+        change.iter().zip(by).map(|(change, by)| change - share * by).collect()
     }
 
     /// Lets one total absorb the charge misfit.
@@ -548,33 +697,71 @@ impl<'a> Analysis<'a> {
     }
 
     /// Measured values beyond those used, less the computed ones.
-    fn misfits(&self, converged: &Converged) -> Vec<(&'static str, f64)> {
+    fn misfits(&self, converged: &Converged) -> Vec<Misfit> {
         let unused = self.evidence.given().into_iter().filter(|key| !self.evidence.uses(key));
-        let computed = |key: &str| -> Option<f64> {
-            let totals = self.dissolved(converged);
-            match key {
-                "pH" => Some(self.ph? + converged.ln_a[self.proton] / LN_10),
-                "alkalinity" => Some(self.alkalinity? - self.alkalinity_of(&totals)),
-                "DIC" => Some(self.dic? - totals[self.carbon?]),
-                _ => {
-                    let reservoir = self.fixed_co2(1.0).ok()?;
-                    Some(self.co2? - ln_saturation(&reservoir.row, converged).exp())
-                }
-            }
-        };
-        unused.filter_map(|key| Some((key, computed(key)?))).collect()
+        unused.filter_map(|key| self.misfit(key, converged)).collect()
     }
 
-    fn dissolved(&self, converged: &Converged) -> Vec<f64> {
-        let problem = self.system.problem(&vec![0.0; self.system.n_components()]);
-        let mut totals = vec![0.0; self.system.n_components()];
-        for (row, ln_c) in problem.species.iter().zip(&converged.ln_c) {
-            for (k, nu) in &row.stoichiometry {
-                totals[*k] += rational::to_f64(*nu) * ln_c.exp();
+    fn misfit(&self, key: &'static str, converged: &Converged) -> Option<Misfit> {
+        let (measured, factor, computed, slopes) = match key {
+            "pH" => {
+                let Some(Ph::Measured(ph)) = &self.evidence.ph else { return None };
+                let slope = (Variable::LnActivity(self.proton), -1.0 / LN_10);
+                (ph.clone(), 1.0, -converged.ln_a[self.proton] / LN_10, vec![slope])
             }
-        }
-        totals
+            "alkalinity" | "DIC" => {
+                let carbon = self.carbon;
+                let (amount, weight): (_, &dyn Fn(&Row) -> f64) = if key == "DIC" {
+                    (self.evidence.dic.as_ref()?, &|row| {
+                        carbon.map_or(0.0, |carbon| coefficient(row, carbon))
+                    })
+                } else {
+                    (self.evidence.alkalinity.as_ref()?, &|row| self.alkalinity_of(&self.moles(row)))
+                };
+                let problem = self.system.problem(&vec![0.0; self.system.n_components()]);
+                let rows = problem.species.iter().zip(&converged.ln_c).enumerate();
+                let slope = |(i, (row, ln_c)): (usize, (&Row, &f64))| {
+                    (Variable::LnMolality(i), weight(row) * ln_c.exp())
+                };
+                let slopes: Slopes = rows.map(slope).filter(|(_, slope)| *slope != 0.0).collect();
+                let computed = slopes.iter().map(|(_, slope)| slope).sum();
+                (amount.moles.clone(), amount.per.to_water(&self.solution), computed, slopes)
+            }
+            _ => {
+                let reservoir = self.fixed_co2(1.0).ok()?;
+                let fugacity = ln_saturation(&reservoir.row, converged).exp();
+                let gas = self.system.ledger().find_phase("CO2(g)").ok()?;
+                let slopes = scaled(&saturation_slopes(self.system, gas)?, fugacity);
+                (self.evidence.co2.clone()?, 1.0, fugacity, slopes)
+            }
+        };
+        let value = measured.value() * factor - computed;
+        Some(Misfit { key, value, measured: (measured, factor), slopes: scaled(&slopes, -1.0) })
     }
+
+    /// The moles of each component in a mole of a species.
+    fn moles(&self, row: &Row) -> Vec<f64> {
+        (0..self.protons.len()).map(|k| coefficient(row, k)).collect()
+    }
+}
+
+fn coefficient(row: &Row, component: usize) -> f64 {
+    let found = row.stoichiometry.iter().find(|(k, _)| *k == component);
+    found.map_or(0.0, |(_, nu)| rational::to_f64(*nu))
+}
+
+/// The slopes of a multiple.
+pub(super) fn scaled(slopes: &[(Variable, f64)], factor: f64) -> Slopes {
+    slopes.iter().map(|(variable, slope)| (*variable, slope * factor)).collect()
+}
+
+/// The derivatives of ln of a phase's saturation ratio; `None` where the system cannot form it.
+pub(super) fn saturation_slopes(system: &System, phase: &Species) -> Option<Slopes> {
+    let (position, (_, row)) = system.phases().enumerate().find(|(_, (own, _))| own.species == *phase)?;
+    let components =
+        row.stoichiometry.iter().map(|(k, nu)| (Variable::LnActivity(*k), rational::to_f64(*nu)));
+    let water = (Variable::LnWaterActivity, row.water);
+    Some(components.chain([water, (Variable::PhaseLnK(position), 1.0)]).collect())
 }
 
 /// A reservoir of hydrogen ions at a pH.

@@ -13,11 +13,6 @@ use super::error::EquilibriumError;
 
 const LN_10: f64 = std::f64::consts::LN_10;
 
-/// A misclosure above this many standard deviations is an error.
-const MISCLOSURE_SIGMAS: f64 = 3.0;
-/// A misclosure above this is an error where uncertainties are not stated, log10 units.
-const MISCLOSURE_UNSTATED: f64 = 0.1;
-
 /// The species, gases and solids that can occur with the components present, at one temperature.
 #[derive(Debug, Clone)]
 pub struct System {
@@ -56,7 +51,7 @@ impl System {
         let water = formations.component(&Species::water());
         let components: Vec<usize> = present.iter().copied().filter(|j| Some(*j) != water).collect();
         let (log_k, doubts) = constants(ledger, temperature);
-        check_closure(ledger, formations, &log_k)?;
+        check_closure(ledger, temperature)?;
         let is_present = |formed: &Formation| {
             formed.stoichiometry.iter().all(|(j, _)| Some(*j) == water || components.contains(j))
         };
@@ -147,6 +142,15 @@ impl System {
         formed.multiples.iter().filter_map(move |(k, _)| self.doubts[*k].map(|doubt| (names[*k], doubt)))
     }
 
+    /// The one temperature a reaction's constant is known at, where that is not the system's.
+    #[must_use]
+    pub fn known_only_at(&self, reaction: usize) -> Option<Temperature> {
+        match self.doubts[reaction] {
+            Some(Doubt::OneTemperature(known)) => Some(known),
+            _ => None,
+        }
+    }
+
     /// The solver's problem without surroundings and solids.
     #[must_use]
     pub fn problem(&self, totals: &[f64]) -> Problem {
@@ -182,22 +186,11 @@ fn constants(ledger: &Ledger, temperature: Temperature) -> (Vec<f64>, Vec<Option
 }
 
 /// The cycles that leftover reactions close must close.
-fn check_closure(ledger: &Ledger, formations: &Formations, log_k: &[f64]) -> Result<(), EquilibriumError> {
-    for leftover in &formations.leftovers {
-        let misclosure: f64 = leftover.cycle.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum();
-        let reactions: Vec<_> = ledger.reactions().collect();
-        let variance: Option<f64> = leftover
-            .cycle
-            .iter()
-            .map(|(k, n)| {
-                let sigma = reactions[*k].1.log_k().ok()?.sigma()?;
-                Some((rational::to_f64(*n) * sigma).powi(2))
-            })
-            .sum();
-        let limit = variance.map_or(MISCLOSURE_UNSTATED, |variance| MISCLOSURE_SIGMAS * variance.sqrt());
-        if misclosure.abs() > limit {
-            let reaction = reactions[leftover.reaction].0.to_string();
-            return Err(EquilibriumError::Misclosure { reaction, misclosure });
+fn check_closure(ledger: &Ledger, temperature: Temperature) -> Result<(), EquilibriumError> {
+    for leftover in &ledger.formations().leftovers {
+        let cycle = ledger.cycle(leftover, temperature);
+        if cycle.contradicts() {
+            return Err(EquilibriumError::Misclosure(Box::new(cycle)));
         }
     }
     Ok(())

@@ -1,6 +1,7 @@
 //! Why there is no state.
 
 use super::assemble::System;
+use crate::ledger::Cycle;
 use crate::ledger::{LedgerError, shipped::ShippedError};
 use crate::solve::SolveError;
 use crate::text::list;
@@ -31,15 +32,10 @@ pub enum EquilibriumError {
     ProtonTotal(String),
     /// Two routes to one constant disagree.
     #[error(
-        "the ledger contradicts itself: `{reaction}` misses the sum of the others by {misclosure:.2} in log K; \
-         take one out with `.without(\"{reaction}\")`, or adjust them"
+        "the ledger contradicts itself: {} in log K, and should be zero; adjust its constants with `.reconcile()`, or \
+         take `{}` out with `.without(\"{}\")`", .0.account(), .0.reactions[0].0, .0.reactions[0].0
     )]
-    Misclosure {
-        /// The reaction that was not needed.
-        reaction: String,
-        /// The misclosure in log10 units.
-        misclosure: f64,
-    },
+    Misclosure(Box<Cycle>),
     /// No composition has these totals.
     #[error(
         "no composition has these totals: {combination} is {value:.3e} mol/kg(water), which no species and no solid can give it"

@@ -11,12 +11,15 @@ mod error;
 mod indices;
 pub mod observable;
 pub mod state;
+mod trail;
 pub mod treatment;
+pub mod uncertainty;
 
 pub use assemble::System;
 pub use error::EquilibriumError;
 pub use observable::{Asked, Observable, ObservableError};
 pub use state::State;
+pub use trail::trail;
 
 use crate::ledger::{Ledger, shipped};
 use crate::solve::Settings;
@@ -36,15 +39,18 @@ pub fn equilibrate(
         Some(ledger) => ledger.clone(),
         None => shipped::ledger("freshwater", None)?,
     };
-    let analysed = match sample.analysis() {
+    let mut analysed = match sample.analysis() {
         Analysis::Measured(measured) => analysis::analyse(sample, measured, &ledger, settings)?,
         Analysis::Spoilt(reason) => return Err(EquilibriumError::Spoilt(reason.clone())),
-        Analysis::Dissolved(totals) => analysis::restore(sample, totals, &ledger)?,
+        Analysis::Dissolved(dissolved) => analysis::restore(sample, dissolved, &ledger)?,
     };
-    let outcome = if sample.treatments().is_empty() && analysed.outcome.is_some() {
-        analysed.outcome.clone().expect("just checked")
-    } else {
-        treatment::treat(sample, &analysed, settings)?
+    let first = analysed.outcome.take();
+    let outcomes = match first {
+        Some(first) if sample.treatments().is_empty() => vec![first],
+        first => {
+            let treated = treatment::treat(sample, &analysed, settings)?;
+            first.into_iter().chain([treated]).collect()
+        }
     };
-    Ok(State::new(sample.clone(), analysed, outcome))
+    Ok(State::new(sample.clone(), analysed, outcomes))
 }

@@ -1,27 +1,28 @@
 //! A state: what is there at equilibrium, in the user's names and units.
 
 use std::collections::BTreeMap;
-use std::sync::Arc;
+use std::sync::{Arc, OnceLock};
 
 use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
-use super::analysis::{Analysed, Outcome, ln_saturation};
+use super::analysis::{Analysed, Misfit, Outcome, Solid, ln_saturation, saturation_slopes, scaled};
 use super::assemble::{Doubt, System};
 use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
+use super::uncertainty::{Influence, Slopes, Stage, Variable};
 use crate::chem::{Element, Rational, Species, rational};
 use crate::ledger::{Formation, Formations};
 use crate::nearest::nearest;
 use crate::physics::water;
 use crate::present::{Cell, Column, Table};
-use crate::quantity::Quantity;
+use crate::quantity::{Quantity, QuantityError};
 use crate::solve::Certificate;
 use crate::text::list;
 use crate::units::{KgOf, Kind, Pressure, Temperature, Unit};
 use crate::water::analysis::Setting;
 use crate::water::analyte::{Analyte, oxidation_state};
 use crate::water::concentration::{SALT_TERM, Solution};
-use crate::water::{Sample, Treatment};
+use crate::water::{Dissolved, Sample, Treatment};
 
 const LN_10: f64 = std::f64::consts::LN_10;
 /// A sum smaller than this part of its terms is what rounding left of a zero.
@@ -37,8 +38,12 @@ pub struct State(Arc<Inner>);
 struct Inner {
     sample: Sample,
     outcome: Outcome,
+    /// The outcome of the analysis, where treatments came after it.
+    before: Option<Outcome>,
+    /// The outcomes linearised, in order, worked out on first need; `None` where they do not change smoothly.
+    stages: OnceLock<Option<Vec<Stage>>>,
     pressure: Pressure,
-    misfits: Vec<(&'static str, f64)>,
+    misfits: Vec<Misfit>,
     notes: Vec<String>,
     /// Molalities in the order of the system's solutes.
     molalities: Vec<f64>,
@@ -47,17 +52,36 @@ struct Inner {
     solution: Solution,
 }
 
-/// A number with the unit it is in and, for amounts, what it is an amount of.
+/// A number with the unit it is in, what it depends on and, for amounts, what it is an amount of.
 struct Answer {
     value: f64,
     unit: &'static str,
     /// Molar mass in g/mol and formula text, where grams may be asked for.
     molar_mass: Option<f64>,
     element: Option<(Element, f64)>,
+    /// Derivatives by what the last stage found.
+    slopes: Slopes,
+    /// Derivatives by other quantities.
+    partials: Vec<(Quantity, f64)>,
+}
+
+impl Answer {
+    fn new(value: f64, unit: &'static str, slopes: Slopes) -> Self {
+        Self { value, unit, molar_mass: None, element: None, slopes, partials: vec![] }
+    }
+
+    /// An answer that is a multiple of exp of what the slopes belong to.
+    fn exponential(value: f64, unit: &'static str, slopes: Slopes) -> Self {
+        Self::new(value, unit, scaled(&slopes, value))
+    }
 }
 
 impl State {
-    pub(super) fn new(sample: Sample, analysed: Analysed, outcome: Outcome) -> Self {
+    /// A state from the outcomes of its one or two stages.
+    pub(super) fn new(sample: Sample, analysed: Analysed, outcomes: Vec<Outcome>) -> Self {
+        let mut outcomes = outcomes.into_iter().rev();
+        let outcome = outcomes.next().expect("every state has an outcome");
+        let before = outcomes.next();
         let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
             Treatment::CompressTo(pressure) => Some(*pressure),
             _ => None,
@@ -67,7 +91,19 @@ impl State {
         let dissolved = dissolved(&outcome.system, &molalities);
         let solution = solution(&outcome.system, &molalities);
         let Analysed { misfits, notes, .. } = analysed;
-        Self(Arc::new(Inner { sample, outcome, pressure, misfits, notes, molalities, dissolved, solution }))
+        let stages = OnceLock::new();
+        Self(Arc::new(Inner {
+            sample,
+            outcome,
+            before,
+            stages,
+            pressure,
+            misfits,
+            notes,
+            molalities,
+            dissolved,
+            solution,
+        }))
     }
 
     /// The sample it is the equilibrium of.
@@ -119,8 +155,28 @@ impl State {
     /// A name the ledger does not know.
     pub fn solid_amount(&self, name: &str) -> Result<f64, EquilibriumError> {
         let solid = self.system().ledger().find_phase(name)?;
-        let found = self.0.outcome.solids.iter().find(|(species, _)| species == solid);
-        Ok(found.map_or(0.0, |(_, amount)| *amount))
+        Ok(self.solid(solid).map_or(0.0, |solid| solid.amount))
+    }
+
+    /// The same with its uncertainty.
+    ///
+    /// # Errors
+    ///
+    /// A name the ledger does not know.
+    pub fn solid_amount_quantity(&self, name: &str) -> Result<Quantity, EquilibriumError> {
+        let solid = self.solid(self.system().ledger().find_phase(name)?);
+        let slopes = solid.map(|solid| solid.slope).into_iter().collect();
+        Ok(self.quantity(solid.map_or(0.0, |solid| solid.amount), slopes))
+    }
+
+    /// The temperature in kelvin, where it was measured with an uncertainty.
+    #[must_use]
+    pub fn temperature_quantity(&self) -> Option<Quantity> {
+        self.0.outcome.conditions.as_ref()?.temperature.clone()
+    }
+
+    fn solid(&self, species: &Species) -> Option<&Solid> {
+        self.0.outcome.solids.iter().find(|solid| solid.species == *species)
     }
 
     /// Newton iterations and the like.
@@ -137,24 +193,39 @@ impl State {
     /// A solid in `keep` that is not there.
     pub fn sample(&self, keep: &[&str]) -> Result<Sample, EquilibriumError> {
         let system = self.system();
-        let mut totals: Vec<(Species, f64)> = self
-            .0
-            .dissolved
-            .iter()
-            .enumerate()
-            .map(|(k, total)| (system.component_species(k).clone(), *total))
-            .collect();
+        let mut totals = self.dissolved_quantities();
         for name in keep {
             let solid = system.ledger().find_phase(name)?;
-            let found = self.0.outcome.solids.iter().find(|(species, _)| species == solid);
-            let (_, amount) = found
+            let found = self.solid(solid);
+            let found = found
                 .ok_or_else(|| EquilibriumError::Unreachable(format!("`{name}` is not there to keep")))?;
-            totals.push((solid.clone(), amount.max(0.0)));
+            let slopes = if found.amount > 0.0 { vec![found.slope] } else { vec![] };
+            totals.push((solid.clone(), self.quantity(found.amount.max(0.0), slopes)));
         }
         let setting =
             Setting { temperature: self.temperature(), pressure: self.pressure(), ..self.0.sample.setting() };
         let name = self.0.sample.name().map(str::to_string);
-        Ok(Sample::dissolved(name, setting, totals, system.ledger().clone()))
+        let dissolved = Dissolved { totals, temperature: self.temperature_quantity() };
+        Ok(Sample::dissolved(name, setting, dissolved, system.ledger().clone()))
+    }
+
+    /// Dissolved total of each component, mol/kg(water), correlated through all they come from.
+    #[must_use]
+    pub fn dissolved_quantities(&self) -> Vec<(Species, Quantity)> {
+        let total = |(k, total): (usize, &f64)| {
+            let component = self.system().components()[k];
+            let (_, slopes) = self.sum(|formed| rational::to_f64(formed.coefficient(component)));
+            (self.system().component_species(k).clone(), self.quantity(*total, slopes))
+        };
+        self.0.dissolved.iter().enumerate().map(total).collect()
+    }
+
+    /// A number of the state in mol/kg(water), with the uncertainty that follows from its slopes.
+    pub(super) fn quantity(&self, value: f64, slopes: Slopes) -> Quantity {
+        let answer = Answer::new(value, "mol/kg(water)", slopes);
+        let unit = Unit::parse(answer.unit).expect("a known unit");
+        self.with_uncertainty(&answer, value, unit, 1.0)
+            .unwrap_or_else(|_| Quantity::exact(value, Unit::one()))
     }
 
     /// Answers an observable, in the unit asked for or its own.
@@ -173,146 +244,294 @@ impl State {
     ///
     /// As [`State::get`].
     pub fn answer(&self, asked: &Asked) -> Result<Quantity, ObservableError> {
+        let (answer, value, unit, factor) = self.answer_in_unit(asked)?;
+        let fault = |error: QuantityError| no_answer(&asked.observable.to_string(), error.to_string());
+        self.with_uncertainty(&answer, value, unit, factor).map_err(fault)
+    }
+
+    /// Answers an observable with the number alone, which spares a sweep the derivatives.
+    ///
+    /// # Errors
+    ///
+    /// As [`State::get`].
+    pub fn number(&self, asked: &Asked) -> Result<(f64, Unit), ObservableError> {
+        let (_, value, unit, _) = self.answer_in_unit(asked)?;
+        Ok((value, unit))
+    }
+
+    /// The derivatives of an observable, in its own unit, by log10 K of the constants and by what was measured.
+    ///
+    /// # Errors
+    ///
+    /// As [`State::get`].
+    pub fn influence(&self, asked: &Asked) -> Result<Influence, ObservableError> {
+        let (answer, _, _, factor) = self.answer_in_unit(asked)?;
+        let mut influence = self.influence_on(&answer);
+        influence.constants.values_mut().for_each(|slope| *slope *= factor);
+        influence.measured.iter_mut().for_each(|(_, slope)| *slope *= factor);
+        Ok(influence)
+    }
+
+    /// The answer in its own unit, then in the one asked for with the factor between their intervals. Where litres and
+    /// kilograms are exchanged the density counts as exact.
+    fn answer_in_unit(&self, asked: &Asked) -> Result<(Answer, f64, Unit, f64), ObservableError> {
         let name = asked.observable.to_string();
         let mut answer = self.value(&asked.observable, &name)?;
         // A sum over nothing is -0.
         answer.value += 0.0;
         let own = Unit::parse(answer.unit).expect("a known unit");
-        let (value, unit) = match &asked.unit {
-            None => (answer.value, own),
-            Some(unit) => (self.in_unit(&answer, &own, unit, &name)?, unit.per_kg_of(KgOf::Water)),
+        let Some(unit) = &asked.unit else {
+            let value = answer.value;
+            return Ok((answer, value, own, 1.0));
         };
-        // Until sensitivities are computed, the uncertainty of a result is not stated, which is not zero.
-        Quantity::measured(value, unit, None, &name)
-            .map_err(|error| ObservableError::NoAnswer { asked: name, why: error.to_string() })
+        let convert = |value: f64| self.in_unit(&answer, value, &own, unit, &name);
+        let (value, factor) = (convert(answer.value)?, convert(1.0)? - convert(0.0)?);
+        Ok((answer, value, unit.per_kg_of(KgOf::Water), factor))
+    }
+
+    fn with_uncertainty(
+        &self,
+        answer: &Answer,
+        value: f64,
+        unit: Unit,
+        factor: f64,
+    ) -> Result<Quantity, QuantityError> {
+        if self.stages().is_none() && !answer.slopes.is_empty() {
+            return Quantity::measured(value, unit, None, "this state");
+        }
+        let partials = self.influence_on(answer).partials(self.system());
+        let partials: Vec<(&Quantity, f64)> = partials.iter().map(|(q, slope)| (q, slope * factor)).collect();
+        Quantity::from_partials(value, unit, &partials)
+    }
+
+    fn influence_on(&self, answer: &Answer) -> Influence {
+        let outcomes = self.0.before.iter().chain([&self.0.outcome]);
+        let stages: Vec<_> = outcomes.zip(self.stages().unwrap_or_default()).collect();
+        let mut influence = if answer.slopes.is_empty() {
+            Influence::default()
+        } else {
+            Influence::of(&answer.slopes, &stages)
+        };
+        influence.measured.extend(answer.partials.iter().cloned());
+        influence
+    }
+
+    fn stages(&self) -> Option<&[Stage]> {
+        let outcomes = || self.0.before.iter().chain([&self.0.outcome]);
+        self.0.stages.get_or_init(|| outcomes().map(Stage::new).collect()).as_deref()
     }
 
     fn value(&self, observable: &Observable, asked: &str) -> Result<Answer, ObservableError> {
         let inner = &*self.0;
         let converged = &inner.outcome.converged;
-        let plain =
-            |value: f64, unit: &'static str| Ok(Answer { value, unit, molar_mass: None, element: None });
+        let plain = |value: f64, unit: &'static str, slopes: Slopes| Ok(Answer::new(value, unit, slopes));
+        let nothing = |error: EquilibriumError| no_answer(asked, error.to_string());
         match observable {
-            Observable::Ph => plain(self.ph(), "1"),
-            Observable::Temperature => plain(self.temperature().celsius(), "degC"),
-            Observable::Pressure => plain(inner.pressure.bar(), "bar"),
-            Observable::Density => plain(inner.solution.density, "kg/L"),
-            Observable::IonicStrength => plain(converged.ionic_strength, "mol/kg(water)"),
-            Observable::Alkalinity => plain(self.acid_base(ALKALINITY_PH), "eq/kg(water)"),
-            Observable::Acidity => plain(-self.acid_base(ACIDITY_PH), "eq/kg(water)"),
+            Observable::Ph => plain(self.ph(), "1", self.ph_slopes()),
+            Observable::Temperature => {
+                plain(self.temperature().celsius(), "degC", vec![(Variable::Temperature, 1.0)])
+            }
+            Observable::Pressure => plain(inner.pressure.bar(), "bar", vec![]),
+            Observable::Density => plain(inner.solution.density, "kg/L", self.density_slopes()),
+            Observable::IonicStrength => {
+                plain(converged.ionic_strength, "mol/kg(water)", vec![(Variable::IonicStrength, 1.0)])
+            }
+            Observable::Alkalinity => {
+                let (value, slopes) = self.acid_base(ALKALINITY_PH);
+                plain(value, "eq/kg(water)", slopes)
+            }
+            Observable::Acidity => {
+                let (value, slopes) = self.acid_base(ACIDITY_PH);
+                plain(-value, "eq/kg(water)", scaled(&slopes, -1.0))
+            }
             Observable::Dic => self.total("C", asked),
             Observable::Hardness => {
-                let (calcium, magnesium) = (self.element_total("Ca"), self.element_total("Mg"));
-                Ok(Answer {
-                    value: calcium + magnesium,
-                    unit: "mol/kg(water)",
-                    molar_mass: None,
-                    element: None,
-                })
+                let count = |formed: &Formation, symbol| {
+                    let element = Element::from_symbol(symbol).expect("a known element");
+                    rational::to_f64(formed.species.count(element))
+                };
+                let (value, slopes) = self.sum(|formed| count(formed, "Ca") + count(formed, "Mg"));
+                plain(value, "mol/kg(water)", slopes)
             }
             Observable::ChargeError => {
-                let (cations, anions) = self.charges();
-                plain(100.0 * (cations - anions) / (cations + anions), "%")
+                let ((cations, by_cations), (anions, by_anions)) = self.charges();
+                let sum = cations + anions;
+                let mut slopes = scaled(&by_cations, 200.0 * anions / (sum * sum));
+                slopes.extend(scaled(&by_anions, -200.0 * cations / (sum * sum)));
+                plain(100.0 * (cations - anions) / sum, "%", slopes)
             }
             Observable::ChargeMisfit => {
-                let (cations, anions) = self.charges();
-                plain(cations - anions, "eq/kg(water)")
+                let ((cations, mut slopes), (anions, by_anions)) = self.charges();
+                slopes.extend(scaled(&by_anions, -1.0));
+                plain(cations - anions, "eq/kg(water)", slopes)
             }
             Observable::CarbonatePotential => {
-                let potential =
-                    indices::carbonate_potential(self).map_err(|why| no_answer(asked, why.to_string()))?;
-                Ok(Answer {
-                    value: potential,
-                    unit: "mol/kg(water)",
-                    molar_mass: Some(100.086),
-                    element: None,
-                })
+                let potential = indices::carbonate_potential(self).map_err(nothing)?;
+                let value = potential.value();
+                let answer = Answer::new(value, "mol/kg(water)", vec![]);
+                Ok(Answer { molar_mass: Some(100.086), partials: vec![(potential, 1.0)], ..answer })
             }
             Observable::Langelier => {
-                plain(indices::langelier(self).map_err(|why| no_answer(asked, why.to_string()))?, "1")
+                let at_saturation = indices::saturation_ph(self).map_err(nothing)?;
+                let answer = Answer::new(self.ph() - at_saturation.value(), "1", self.ph_slopes());
+                Ok(Answer { partials: vec![(at_saturation, -1.0)], ..answer })
             }
             Observable::Molality(name) => {
                 let (k, formed) = self.solute(name, asked)?;
                 let value = k.map_or(0.0, |k| inner.molalities[k]);
-                Ok(amount(value, "mol/kg(water)", &formed.species))
+                let slopes = k.map(|k| (Variable::LnMolality(k), value)).into_iter().collect();
+                Ok(amount(value, "mol/kg(water)", &formed.species, slopes))
             }
             Observable::Molarity(name) => {
                 let (k, formed) = self.solute(name, asked)?;
-                let value = k.map_or(0.0, |k| inner.molalities[k] * inner.solution.water_per_litre());
-                Ok(amount(value, "mol/L", &formed.species))
+                let molality = k.map_or(0.0, |k| inner.molalities[k]);
+                let value = molality * inner.solution.water_per_litre();
+                let mut slopes = scaled(&self.water_per_litre_slopes(), molality);
+                slopes.extend(k.map(|k| (Variable::LnMolality(k), value)));
+                Ok(amount(value, "mol/L", &formed.species, slopes))
             }
-            Observable::Activity(name) => plain(self.ln_activity(name, asked)?.exp(), "1"),
-            Observable::LogActivity(name) => plain(self.ln_activity(name, asked)? / LN_10, "1"),
+            Observable::Activity(name) => {
+                let (ln_a, slopes) = self.ln_activity(name, asked)?;
+                Ok(Answer::exponential(ln_a.exp(), "1", slopes))
+            }
+            Observable::LogActivity(name) => {
+                let (ln_a, slopes) = self.ln_activity(name, asked)?;
+                plain(ln_a / LN_10, "1", scaled(&slopes, 1.0 / LN_10))
+            }
             Observable::Gamma(name) => {
                 let (k, _) = self.solute(name, asked)?;
                 let k = k.ok_or_else(|| absent(asked))?;
-                plain(converged.ln_gamma[k].exp(), "1")
+                Ok(Answer::exponential(converged.ln_gamma[k].exp(), "1", vec![(Variable::LnGamma(k), 1.0)]))
             }
             Observable::Total(name) => self.total(name, asked),
             Observable::All(name) => {
                 let mut total = self.total(name, asked)?;
                 let analyte = Analyte::parse(name).map_err(|error| no_answer(asked, error.to_string()))?;
                 let formations = self.system().ledger().formations();
-                for (solid, amount) in &inner.outcome.solids {
-                    let formed = formations.formation(solid).expect("solids are formed");
-                    total.value += amount * atoms(&analyte, formed, formations);
+                for solid in &inner.outcome.solids {
+                    let formed = formations.formation(&solid.species).expect("solids are formed");
+                    let count = atoms(&analyte, formed, formations) / rational::to_f64(analyte.atoms());
+                    total.value += solid.amount * count;
+                    total.slopes.extend(scaled(&[solid.slope], count));
                 }
                 Ok(total)
             }
-            Observable::SaturationIndex(name) => plain(self.ln_omega(name, asked)? / LN_10, "1"),
-            Observable::Omega(name) => plain(self.ln_omega(name, asked)?.exp(), "1"),
-            Observable::Fugacity(name) | Observable::PartialPressure(name) => {
-                plain(self.fugacity(name, asked)?, "bar")
+            Observable::SaturationIndex(name) => {
+                let (ln_omega, slopes) = self.ln_omega(name, asked)?;
+                plain(ln_omega / LN_10, "1", scaled(&slopes, 1.0 / LN_10))
             }
-            Observable::MoleFraction(name) => plain(self.fugacity(name, asked)? / self.dry_pressure(), "1"),
+            Observable::Omega(name) => {
+                let (ln_omega, slopes) = self.ln_omega(name, asked)?;
+                Ok(Answer::exponential(ln_omega.exp(), "1", slopes))
+            }
+            Observable::Fugacity(name) | Observable::PartialPressure(name) => {
+                let (fugacity, slopes) = self.fugacity(name, asked)?;
+                plain(fugacity, "bar", slopes)
+            }
+            Observable::MoleFraction(name) => {
+                let (fugacity, slopes) = self.fugacity(name, asked)?;
+                plain(fugacity / self.dry_pressure(), "1", scaled(&slopes, 1.0 / self.dry_pressure()))
+            }
             Observable::Amount(name) => {
-                let solid = self.phase(name, asked)?;
-                let found = inner.outcome.solids.iter().find(|(species, _)| *species == solid);
-                let moles = found.map_or(0.0, |(_, amount)| amount * inner.sample.setting().water);
-                Ok(amount(moles, "mol", &solid))
+                let species = self.phase(name, asked)?;
+                let water = inner.sample.setting().water;
+                let solid = self.solid(&species);
+                let slopes = solid.map(|solid| scaled(&[solid.slope], water)).unwrap_or_default();
+                Ok(amount(solid.map_or(0.0, |solid| solid.amount * water), "mol", &species, slopes))
             }
             Observable::Added(name) => self.exchanged(name, asked, 1.0),
             Observable::Removed(name) => self.exchanged(name, asked, -1.0),
-            Observable::Misfit(key) => {
-                let found = inner.misfits.iter().find(|(own, _)| own == key);
-                let (_, value) = found.ok_or_else(|| {
-                    let keys: Vec<&str> = inner.misfits.iter().map(|(own, _)| *own).collect();
-                    no_answer(
-                        asked,
-                        format!(
-                            "it was not measured beside what was used; misfits are known of {}",
-                            list(&keys)
-                        ),
-                    )
-                })?;
-                let unit = match key.as_str() {
-                    "pH" => "1",
-                    "alkalinity" => "eq/kg(water)",
-                    "fCO2" => "bar",
-                    _ => "mol/kg(water)",
-                };
-                plain(*value, unit)
-            }
+            Observable::Misfit(key) => self.misfit(key, asked),
         }
+    }
+
+    fn misfit(&self, key: &str, asked: &str) -> Result<Answer, ObservableError> {
+        let misfits = &self.0.misfits;
+        let misfit = misfits.iter().find(|own| own.key == key).ok_or_else(|| {
+            let keys: Vec<&str> = misfits.iter().map(|own| own.key).collect();
+            let why = "it was not measured beside what was used; misfits are known of";
+            no_answer(asked, format!("{why} {}", list(&keys)))
+        })?;
+        let unit = match key {
+            "pH" => "1",
+            "alkalinity" => "eq/kg(water)",
+            "fCO2" => "bar",
+            _ => "mol/kg(water)",
+        };
+        // It belongs to the analysis, whatever was done to the water since.
+        let analysed = self.0.before.as_ref().unwrap_or(&self.0.outcome);
+        let first: Vec<_> = [analysed].into_iter().zip(self.stages().unwrap_or_default()).collect();
+        let mut partials = Influence::of(&misfit.slopes, &first).partials(&analysed.system);
+        partials.push(misfit.measured.clone());
+        Ok(Answer { partials, ..Answer::new(misfit.value, unit, vec![]) })
+    }
+
+    pub(super) fn ph_slopes(&self) -> Slopes {
+        vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)]
+    }
+
+    /// `Σ weight · molality` over the solutes.
+    fn sum(&self, weight: impl Fn(&Formation) -> f64) -> (f64, Slopes) {
+        let terms = self.system().solutes().zip(&self.0.molalities).map(|(formed, m)| weight(formed) * m);
+        let slopes = terms.enumerate().map(|(i, term)| (Variable::LnMolality(i), term));
+        let slopes: Slopes = slopes.filter(|(_, term)| *term != 0.0).collect();
+        (slopes.iter().map(|(_, term)| term).sum(), slopes)
+    }
+
+    /// Slopes of the dissolved mass, kg/kg(water).
+    fn dissolved_mass_slopes(&self) -> Slopes {
+        self.sum(|formed| formed.species.molar_mass().unwrap_or(0.0) / 1000.0).1
+    }
+
+    fn water_per_litre_slopes(&self) -> Slopes {
+        let (water, per_water) = self.density_terms();
+        let mut slopes = scaled(
+            &self.dissolved_mass_slopes(),
+            -(1.0 - SALT_TERM) * water / (1.0 + (1.0 - SALT_TERM) * per_water).powi(2),
+        );
+        slopes.push((Variable::Temperature, self.0.solution.water_per_litre() * self.thermal_expansion()));
+        slopes
+    }
+
+    fn density_slopes(&self) -> Slopes {
+        let (water, per_water) = self.density_terms();
+        let slope = SALT_TERM * water / (1.0 + (1.0 - SALT_TERM) * per_water).powi(2);
+        let mut slopes = scaled(&self.dissolved_mass_slopes(), slope);
+        slopes.push((Variable::Temperature, self.0.solution.density * self.thermal_expansion()));
+        slopes
+    }
+
+    /// Density of pure water, kg/L, and dissolved mass per mass of water.
+    fn density_terms(&self) -> (f64, f64) {
+        let solution = &self.0.solution;
+        (
+            water::density(self.temperature().kelvin()) / 1000.0,
+            solution.dissolved / solution.water_per_litre(),
+        )
+    }
+
+    /// d ln ρ / dT of pure water, 1/K.
+    fn thermal_expansion(&self) -> f64 {
+        const STEP: f64 = 0.01;
+        let t = self.temperature().kelvin();
+        (water::density(t + STEP) / water::density(t - STEP)).ln() / (2.0 * STEP)
     }
 
     /// A number in another unit; amounts go between moles and grams and between kilograms and litres.
     fn in_unit(
         &self,
         answer: &Answer,
+        value: f64,
         own: &Unit,
         wanted: &Unit,
         asked: &str,
     ) -> Result<f64, ObservableError> {
         let wrong = |error| ObservableError::Unit { asked: asked.to_string(), error };
         let plain = wanted.per_kg_of(KgOf::Water).with_expressed_as(None);
-        let value = match wanted.expressed_as() {
-            None => answer.value,
-            Some(formula) => {
-                let species = Species::parse(formula).map_err(|error| no_answer(asked, error.to_string()))?;
-                return self.expressed(answer, own, &plain, &species, asked);
-            }
-        };
+        if let Some(formula) = wanted.expressed_as() {
+            let species = Species::parse(formula).map_err(|error| no_answer(asked, error.to_string()))?;
+            return self.expressed(answer, value, own, &plain, &species, asked);
+        }
         if let Ok(value) = own.convert(value, &plain) {
             return Ok(value);
         }
@@ -336,6 +555,7 @@ impl State {
     fn expressed(
         &self,
         answer: &Answer,
+        value: f64,
         own: &Unit,
         plain: &Unit,
         species: &Species,
@@ -351,7 +571,7 @@ impl State {
         };
         let mass = species.molar_mass().filter(|_| per_unit > 0.0);
         let mass = mass.ok_or_else(|| no_answer(asked, format!("it cannot be expressed as {species}")))?;
-        let value = answer.value / per_unit;
+        let value = value / per_unit;
         let own = Unit::parse(&own.symbol().replacen("eq", "mol", 1)).expect("a known unit");
         self.across(value, Some(mass), &own, plain, asked)
             .ok_or_else(|| no_answer(asked, format!("`{}` is no unit of it", plain.symbol())))
@@ -391,27 +611,18 @@ impl State {
         None
     }
 
-    /// Sums charge over cations and over anions, eq/kg(water).
-    fn charges(&self) -> (f64, f64) {
-        let charge = |formed: &Formation, m: f64| f64::from(formed.species.charge()) * m;
-        let charges = self.system().solutes().zip(&self.0.molalities).map(|(formed, m)| charge(formed, *m));
-        charges.fold((0.0, 0.0), |(c, a), z| if z > 0.0 { (c + z, a) } else { (c, a - z) })
+    /// Sums of charge over cations and over anions, eq/kg(water).
+    fn charges(&self) -> ((f64, Slopes), (f64, Slopes)) {
+        let charge = |formed: &Formation| f64::from(formed.species.charge());
+        (self.sum(|formed| charge(formed).max(0.0)), self.sum(|formed| (-charge(formed)).max(0.0)))
     }
 
-    fn acid_base(&self, ph: f64) -> f64 {
+    fn acid_base(&self, ph: f64) -> (f64, Slopes) {
         let level = ZeroLevel::at(self.system().ledger(), ph);
-        let weight = |formed: &Formation| rational::to_f64(level.weight(formed));
-        let terms: Vec<f64> =
-            self.system().solutes().zip(&self.0.molalities).map(|(f, m)| weight(f) * m).collect();
-        let (sum, size) = terms.iter().fold((0.0, 0.0), |(sum, size), term| (sum + term, size + term.abs()));
+        let (sum, slopes) = self.sum(|formed| rational::to_f64(level.weight(formed)));
+        let size: f64 = slopes.iter().map(|(_, term)| term.abs()).sum();
         // What rounding leaves of terms that cancel is the zero it stands for.
-        if f64::abs(sum) <= ROUNDING * size { 0.0 } else { sum }
-    }
-
-    fn element_total(&self, symbol: &str) -> f64 {
-        let element = Element::from_symbol(symbol).expect("a known element");
-        let count = |formed: &Formation| rational::to_f64(formed.species.count(element));
-        self.system().solutes().zip(&self.0.molalities).map(|(formed, m)| count(formed) * m).sum()
+        (if f64::abs(sum) <= ROUNDING * size { 0.0 } else { sum }, slopes)
     }
 
     fn total(&self, name: &str, asked: &str) -> Result<Answer, ObservableError> {
@@ -421,19 +632,11 @@ impl State {
         if !known {
             return Err(no_answer(asked, format!("the ledger has no species of {element}")));
         }
-        let atoms: f64 = self
-            .system()
-            .solutes()
-            .zip(&self.0.molalities)
-            .map(|(formed, m)| atoms(&analyte, formed, self.system().ledger().formations()) * m)
-            .sum();
         let per_analyte = rational::to_f64(analyte.atoms());
-        Ok(Answer {
-            value: atoms / per_analyte,
-            unit: "mol/kg(water)",
-            molar_mass: analyte.molar_mass(),
-            element: Some((element, per_analyte)),
-        })
+        let formations = self.system().ledger().formations();
+        let (value, slopes) = self.sum(|formed| atoms(&analyte, formed, formations) / per_analyte);
+        let answer = Answer::new(value, "mol/kg(water)", slopes);
+        Ok(Answer { molar_mass: analyte.molar_mass(), element: Some((element, per_analyte)), ..answer })
     }
 
     /// A solute with its position, if the elements it is made of are there.
@@ -452,31 +655,36 @@ impl State {
         found.cloned().map_err(|error| no_answer(asked, error.to_string()))
     }
 
-    fn ln_activity(&self, name: &str, asked: &str) -> Result<f64, ObservableError> {
+    fn ln_activity(&self, name: &str, asked: &str) -> Result<(f64, Slopes), ObservableError> {
         let converged = &self.0.outcome.converged;
         if Species::parse(name).is_ok_and(|species| species == Species::water()) {
-            return Ok(converged.ln_water_activity);
+            return Ok((converged.ln_water_activity, vec![(Variable::LnWaterActivity, 1.0)]));
         }
         match self.solute(name, asked) {
-            Ok((Some(k), _)) => Ok(converged.ln_c[k] + converged.ln_gamma[k]),
+            Ok((Some(k), _)) => {
+                let slopes = vec![(Variable::LnMolality(k), 1.0), (Variable::LnGamma(k), 1.0)];
+                Ok((converged.ln_c[k] + converged.ln_gamma[k], slopes))
+            }
             Ok((None, _)) => Err(absent(asked)),
             Err(error) => Err(error),
         }
     }
 
-    fn ln_omega(&self, name: &str, asked: &str) -> Result<f64, ObservableError> {
+    fn ln_omega(&self, name: &str, asked: &str) -> Result<(f64, Slopes), ObservableError> {
         let phase = self.phase(name, asked)?;
         let (_, row) = self.system().phase(&phase).ok_or_else(|| absent(asked))?;
         let ln_omega = ln_saturation(row, &self.0.outcome.converged);
-        if ln_omega.is_finite() { Ok(ln_omega) } else { Err(absent(asked)) }
+        let slopes = saturation_slopes(self.system(), &phase).filter(|_| ln_omega.is_finite());
+        slopes.map(|slopes| (ln_omega, slopes)).ok_or_else(|| absent(asked))
     }
 
-    fn fugacity(&self, name: &str, asked: &str) -> Result<f64, ObservableError> {
+    fn fugacity(&self, name: &str, asked: &str) -> Result<(f64, Slopes), ObservableError> {
         let phase = self.phase(name, asked)?;
         if !phase.is_gas() {
             return Err(no_answer(asked, format!("{phase} is no gas")));
         }
-        Ok(self.ln_omega(name, asked)?.exp())
+        let (ln_fugacity, slopes) = self.ln_omega(name, asked)?;
+        Ok((ln_fugacity.exp(), scaled(&slopes, ln_fugacity.exp())))
     }
 
     /// Total pressure less that of water vapour over pure water, bar.
@@ -489,13 +697,14 @@ impl State {
     }
 
     fn exchanged(&self, name: &str, asked: &str, sign: f64) -> Result<Answer, ObservableError> {
-        let found = self.0.outcome.exchanged.iter().find(|(own, _)| own == name);
-        let (_, amount) = found.ok_or_else(|| {
+        let mut exchanged = self.0.outcome.exchanged.iter().enumerate();
+        let (held, (_, amount)) = exchanged.find(|(_, (own, _))| own == name).ok_or_else(|| {
             let names: Vec<&str> = self.0.outcome.exchanged.iter().map(|(own, _)| own.as_str()).collect();
             no_answer(asked, format!("nothing of this name was exchanged; there are {}", list(&names)))
         })?;
         let molar_mass = Species::parse(name).ok().and_then(|species| species.molar_mass());
-        Ok(Answer { value: sign * amount, unit: "mol/kg(water)", molar_mass, element: None })
+        let slopes = vec![(Variable::ReservoirAmount(held), sign)];
+        Ok(Answer { molar_mass, ..Answer::new(sign * amount, "mol/kg(water)", slopes) })
     }
 
     /// Everything that can be asked, as a table of forms and meanings.
@@ -542,8 +751,8 @@ impl State {
             (a.0.species.is_gas(), b.1).partial_cmp(&(b.0.species.is_gas(), a.1)).expect("no NaN")
         });
         let amount = |formed: &Formation| {
-            let found = self.0.outcome.solids.iter().find(|(species, _)| *species == formed.species);
-            found.map_or_else(Cell::missing, |(_, amount)| Cell::number(*amount))
+            let found = self.solid(&formed.species);
+            found.map_or_else(Cell::missing, |solid| Cell::number(solid.amount))
         };
         let index = |(formed, index): &(&Formation, f64)| {
             if formed.species.is_gas() { Cell::missing() } else { Cell::number(*index) }
@@ -582,9 +791,9 @@ impl State {
                 self.add_doubts(formed, &mut doubts);
             }
         }
-        for (solid, amount) in &self.0.outcome.solids {
-            if *amount != 0.0
-                && let Some((formed, _)) = self.system().phase(solid)
+        for solid in &self.0.outcome.solids {
+            if solid.amount != 0.0
+                && let Some((formed, _)) = self.system().phase(&solid.species)
             {
                 self.add_doubts(formed, &mut doubts);
             }
@@ -641,10 +850,10 @@ fn no_answer(asked: &str, why: String) -> ObservableError {
     ObservableError::NoAnswer { asked: asked.into(), why }
 }
 
-fn amount(value: f64, unit: &'static str, species: &Species) -> Answer {
+fn amount(value: f64, unit: &'static str, species: &Species, slopes: Slopes) -> Answer {
     let element = species.elements_beside_water().next();
     let element = element.map(|element| (element, rational::to_f64(species.count(element))));
-    Answer { value, unit, molar_mass: species.molar_mass(), element }
+    Answer { molar_mass: species.molar_mass(), element, ..Answer::new(value, unit, slopes) }
 }
 
 /// Atoms of an analyte's element in a species, those in its oxidation state if it has one. A complex of several elements

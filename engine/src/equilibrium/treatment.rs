@@ -4,12 +4,15 @@
 //! problem at the final temperature holds them all. A pH held by a reagent is one equation outside it: so much of the
 //! reagent that the pH is met.
 
-use super::analysis::{Analysed, Outcome, delivered, fixed_ph};
+use super::analysis::{Analysed, Outcome, Solid, delivered, fixed_ph};
 use super::assemble::{System, carriers};
 use super::error::EquilibriumError;
+use super::uncertainty::{Conditions, Held, Variable};
 use crate::chem::{Element, Rational, Species, rational};
 use crate::ledger::{Formations, Ledger};
+use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
+use crate::solve::sensitivity::own_supplies;
 use crate::solve::{Converged, Mineral, Problem, Reservoir, Row, Settings, solve};
 use crate::water::{Sample, Treatment};
 
@@ -23,33 +26,45 @@ const MOST_REAGENT: f64 = 20.0;
 ///
 /// Returns what the ledger does not know, and why there is no equilibrium.
 pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Result<Outcome, EquilibriumError> {
-    let temperature = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+    let warmed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
         Treatment::WarmTo(temperature) => Some(*temperature),
         _ => None,
     });
-    let temperature = temperature.unwrap_or(sample.setting().temperature);
+    let temperature = warmed.unwrap_or(sample.setting().temperature);
     let present = analysed.system.components().iter().copied().collect();
     let system = System::new(analysed.system.ledger(), &present, temperature)?;
-    let surroundings = Surroundings::read(sample, &system)?;
-    match &surroundings.held_by_reagent {
-        None => surroundings.solve(&system, &analysed.totals, settings, vec![]),
-        Some((ph, reagent)) => surroundings.hold_ph(&system, &analysed.totals, *ph, reagent, settings),
+    let mut surroundings = Surroundings::read(sample, &system)?;
+    // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
+    surroundings.measured.clone_from(&analysed.measured);
+    surroundings.temperature = analysed.temperature.clone().filter(|_| warmed.is_none());
+    match surroundings.held_by_reagent.clone() {
+        None => surroundings.solve(&system, &analysed.totals, settings),
+        Some((ph, reagent)) => surroundings.hold_ph(&system, &analysed.totals, ph, &reagent, settings),
     }
 }
 
 /// What the water is in contact with, in indices.
 struct Surroundings {
     reservoirs: Vec<(String, Reservoir)>,
-    /// Solids without limit among the reservoirs, with the reservoir's position.
-    unlimited: Vec<(usize, Species)>,
+    /// Gases and solids among the reservoirs, by position.
+    phases: Vec<(usize, Species)>,
     minerals: Vec<(String, Species, Mineral)>,
     held_by_reagent: Option<(f64, String)>,
+    /// For the derivatives of what comes out: see [`Conditions`].
+    measured: Vec<(Quantity, Vec<f64>)>,
+    temperature: Option<Quantity>,
 }
 
 impl Surroundings {
     fn read(sample: &Sample, system: &System) -> Result<Self, EquilibriumError> {
-        let mut surroundings =
-            Self { reservoirs: vec![], unlimited: vec![], minerals: vec![], held_by_reagent: None };
+        let mut surroundings = Self {
+            reservoirs: vec![],
+            phases: vec![],
+            minerals: vec![],
+            held_by_reagent: None,
+            measured: vec![],
+            temperature: None,
+        };
         for treatment in sample.treatments() {
             surroundings.add(treatment, system)?;
         }
@@ -59,16 +74,12 @@ impl Surroundings {
     fn add(&mut self, treatment: &Treatment, system: &System) -> Result<(), EquilibriumError> {
         match treatment {
             Treatment::OpenTo { gas, fugacity } => {
-                let (_, row) = formed(system, gas, Species::is_gas, "gas")?;
-                self.hold(gas, Reservoir { row, ln_value: fugacity.ln() });
+                let (species, row) = formed(system, gas, Species::is_gas, "gas")?;
+                self.hold(gas, Some(species), Reservoir { row, ln_value: fugacity.ln() });
             }
             Treatment::Saturate { solid, index } => {
                 let (species, row) = formed(system, solid, Species::is_solid, "solid")?;
-                self.hold(solid, Reservoir { row, ln_value: index * LN_10 });
-                let position =
-                    self.reservoirs.iter().position(|(name, _)| name == solid).expect("just added");
-                self.unlimited.retain(|(_, other)| *other != species);
-                self.unlimited.push((position, species));
+                self.hold(solid, Some(species), Reservoir { row, ln_value: index * LN_10 });
             }
             Treatment::Allow { solid, above } => {
                 let species = find(system.ledger(), solid, Species::is_solid, "solid")?.clone();
@@ -79,7 +90,7 @@ impl Surroundings {
                     self.minerals.push((solid.clone(), species, mineral));
                 }
             }
-            Treatment::HoldPh { ph, reagent: None } => self.hold("pH", fixed_ph(system.proton(), *ph)),
+            Treatment::HoldPh { ph, reagent: None } => self.hold("pH", None, fixed_ph(system.proton(), *ph)),
             Treatment::HoldPh { ph, reagent: Some(reagent) } => {
                 self.held_by_reagent = Some((*ph, reagent.clone()))
             }
@@ -89,10 +100,13 @@ impl Surroundings {
     }
 
     /// Holds a value; the last word on one gas, solid or pH counts.
-    fn hold(&mut self, name: &str, reservoir: Reservoir) {
+    fn hold(&mut self, name: &str, phase: Option<Species>, reservoir: Reservoir) {
         match self.reservoirs.iter_mut().find(|(own, _)| own == name) {
             Some((_, own)) => *own = reservoir,
-            None => self.reservoirs.push((name.into(), reservoir)),
+            None => {
+                self.phases.extend(phase.map(|phase| (self.reservoirs.len(), phase)));
+                self.reservoirs.push((name.into(), reservoir));
+            }
         }
     }
 
@@ -121,25 +135,60 @@ impl Surroundings {
         system: &System,
         totals: &[f64],
         settings: &Settings,
-        added: Vec<(String, f64)>,
     ) -> Result<Outcome, EquilibriumError> {
         let converged = self.converge(system, totals, settings)?;
-        let mut exchanged = added;
         let taken = self.reservoirs.iter().zip(&converged.reservoir_amount);
-        exchanged.extend(taken.map(|((name, _), amount)| (name.clone(), *amount)));
-        // An unlimited solid that gave `amount` to the water has so much less; what is there is its negative.
+        let exchanged = taken.map(|((name, _), amount)| (name.clone(), *amount)).collect();
+        let problem = self.problem(system, totals);
+        Ok(Outcome {
+            system: system.clone(),
+            totals: delivered(&problem, &converged),
+            exchanged,
+            solids: self.solids(&converged),
+            conditions: Some(self.conditions(&problem)),
+            converged,
+        })
+    }
+
+    fn solids(&self, converged: &Converged) -> Vec<Solid> {
+        // An unlimited solid that gave an amount to the water has so much less; what is there is its negative.
         let unlimited =
-            self.unlimited.iter().map(|(k, species)| (species.clone(), -converged.reservoir_amount[*k]));
-        let formed = self.minerals.iter().zip(&converged.mineral_amount);
-        let solids =
-            unlimited.chain(formed.map(|((_, species, _), amount)| (species.clone(), *amount))).collect();
-        let totals = delivered(&self.problem(system, totals), &converged);
-        Ok(Outcome { system: system.clone(), converged, totals, exchanged, solids })
+            self.phases.iter().filter(|(_, species)| species.is_solid()).map(|(f, species)| Solid {
+                species: species.clone(),
+                amount: -converged.reservoir_amount[*f],
+                slope: (Variable::ReservoirAmount(*f), -1.0),
+            });
+        let formed = self.minerals.iter().enumerate().map(|(p, (_, species, _))| Solid {
+            species: species.clone(),
+            amount: converged.mineral_amount[p],
+            slope: (Variable::MineralAmount(p), 1.0),
+        });
+        unlimited.chain(formed).collect()
+    }
+
+    fn conditions(&self, problem: &Problem) -> Conditions {
+        let held = self.reservoirs.iter().zip(own_supplies(problem)).enumerate();
+        let held = held.map(|(f, ((_, reservoir), supply))| Held {
+            reservoir: reservoir.clone(),
+            phase: self.phases.iter().find(|(own, _)| *own == f).map(|(_, species)| species.clone()),
+            supply,
+            value: None,
+        });
+        Conditions {
+            held: held.collect(),
+            minerals: self
+                .minerals
+                .iter()
+                .map(|(_, species, mineral)| (species.clone(), mineral.clone()))
+                .collect(),
+            measured: self.measured.clone(),
+            temperature: self.temperature.clone(),
+        }
     }
 
     /// So much of a reagent that the pH is met.
     fn hold_ph(
-        &self,
+        mut self,
         system: &System,
         totals: &[f64],
         ph: f64,
@@ -180,7 +229,16 @@ impl Surroundings {
         } else {
             root_between(&mut misses, start, end, Tolerance { x: 1e-18, f: 1e-14 })?.x
         };
-        self.solve(system, &with(amount), settings, vec![(reagent_name.to_string(), amount)])
+        // Once more with the pH held, which it now is without a mole of hydrogen ions.
+        self.hold("pH", None, fixed_ph(system.proton(), ph));
+        let mut outcome = self.solve(system, &with(amount), settings)?;
+        let held = self.reservoirs.iter().position(|(name, _)| name == "pH").expect("just held");
+        outcome.exchanged[held] = (reagent_name.to_string(), amount);
+        let supply = with(1.0).iter().zip(totals).map(|(with, without)| with - without).collect();
+        if let Some(conditions) = &mut outcome.conditions {
+            conditions.held[held].supply = supply;
+        }
+        Ok(outcome)
     }
 }
 

@@ -1,40 +1,59 @@
 //! Ledgers and constants written as TOML.
 //!
-//! A file of constants has a `[publication]` and any number of `[[constant]]`: a `name`, a `reaction`, and the options
-//! of [`Reaction::read`]. A ledger file lists constants of such files by name. Every fault of a file is reported, each
-//! with its line.
+//! A file of constants has a `[publication]` and any number of `[[constant]]`: a `name`, a `reaction`, and the options of
+//! [`Reaction::read`]; `[[formation]]` and `[[element]]` are those of [`standard_formation`]. A ledger file lists constants
+//! of such files by name, and may hold entries of its own. Every fault of a file is reported, each with its line.
 
 use std::collections::BTreeMap;
 
 use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
-use super::ledger::ActivityChoice;
-use crate::chem::{Reaction, Species};
+use super::ledger::{ActivityChoice, Ledger};
+use super::shipped;
+use super::standard_formation::{self, Elements};
+use crate::chem::{Reaction, ReactionError, Species};
 use crate::named::{KeyFault, Named, Value};
+use crate::text::list;
 
 /// A file of constants from one publication.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Default)]
 pub struct ConstantFile {
     /// How the publication is cited.
     pub citation: String,
     /// Names with their reactions, in file order.
     pub constants: Vec<(String, Reaction)>,
+    /// Names with the formation of species from the elements, in file order.
+    pub formations: Vec<(String, Reaction)>,
 }
 
-/// A ledger file: which constants it takes from which files.
+/// A ledger file: which constants it takes from which files, and its own.
 #[derive(Debug, Clone)]
 pub struct LedgerFile {
     /// What the ledger is called.
     pub name: String,
     /// Its dated edition.
-    pub edition: String,
+    pub edition: Option<String>,
     /// Its activity model.
     pub activity: ActivityChoice,
     /// Ions that take part in no reaction.
     pub solutes: Vec<Species>,
-    /// File keys with the constants taken from each; `None` takes all.
-    pub from: Vec<(String, Option<Vec<String>>)>,
+    /// What it takes from files of constants.
+    pub from: Vec<From>,
+    /// Its own entries.
+    pub own: ConstantFile,
+}
+
+/// What a ledger takes from one file of constants.
+#[derive(Debug, Clone)]
+pub struct From {
+    /// The file's key.
+    pub file: String,
+    /// Names of constants; `None` takes all.
+    pub constants: Option<Vec<String>>,
+    /// Species whose formation is taken; `None` takes all.
+    pub formations: Option<Vec<String>>,
+    line: usize,
 }
 
 /// One fault of a file.
@@ -53,52 +72,239 @@ pub struct FileFault {
 ///
 /// Every fault of the file.
 pub fn read_constants(file_key: &str, text: &str) -> Result<ConstantFile, Vec<FileFault>> {
-    let table = Lines::parse(text)?;
+    let lines = Lines::parse(text)?;
     let mut faults = Vec::new();
-    let citation = match table.read("publication").map(|(_, publication)| publication) {
-        Some(Value::Map(mut publication)) => match publication.remove("citation") {
-            Some(Value::Text(citation)) => citation,
-            _ => String::new(),
-        },
-        _ => String::new(),
-    };
-    if citation.is_empty() {
+    let citation = read_citation(&lines);
+    if citation.is_none() {
         let message = "a file of constants opens with `[publication]` and its `citation`";
         faults.push(FileFault { line: 1, message: message.into() });
     }
-    let mut constants: Vec<(String, Reaction)> = Vec::new();
-    for (line, entry) in table.list("constant") {
-        let fault = |message: String| FileFault { line, message };
-        match read_constant(file_key, &citation, entry) {
-            Err(message) => faults.push(fault(message)),
-            Ok((name, _)) if constants.iter().any(|(taken, _)| *taken == name) => {
-                faults
-                    .push(fault(format!("there is a constant `{name}` already: names are unique in a file")));
-            }
-            Ok(constant) => constants.push(constant),
-        }
-    }
-    if faults.is_empty() { Ok(ConstantFile { citation, constants }) } else { Err(faults) }
+    let file = read_entries(file_key, &citation.unwrap_or_default(), &lines, &mut faults);
+    if faults.is_empty() { Ok(file) } else { Err(faults) }
 }
 
-fn read_constant(file_key: &str, citation: &str, entry: Value) -> Result<(String, Reaction), String> {
-    let Value::Map(mut entry) = entry else { return Err("`constant` is a table".into()) };
-    let mut text = |key: &str| match entry.remove(key) {
+/// Reads the `[[element]]` entries of a file alone.
+pub(super) fn read_elements(file_key: &str, text: &str) -> Elements {
+    Lines::parse(text)
+        .map_or_else(|_| Elements::default(), |lines| elements_of(file_key, &lines, &mut vec![]))
+}
+
+/// Reads a ledger with entries of its own and builds it. `file_key` is the file's name.
+///
+/// # Errors
+///
+/// Every fault of the file: nothing is half loaded.
+pub fn load(file_key: &str, text: &str) -> Result<Ledger, Vec<FileFault>> {
+    let file = read_ledger_as(file_key, text)?;
+    build(&file)
+}
+
+/// Puts a ledger together from its file and the shipped constants it names.
+///
+/// # Errors
+///
+/// Every entry that cannot be had.
+pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
+    let mut faults = Vec::new();
+    let mut ledger = Ledger::empty(&file.name, file.edition.clone()).with_activity(file.activity);
+    for species in &file.solutes {
+        ledger = ledger.with_solute(species.clone());
+    }
+    for from in &file.from {
+        let mut fault = |message: String| faults.push(FileFault { line: from.line, message });
+        let files = match shipped::constant_files() {
+            Ok(files) => files,
+            Err(broken) => return Err(vec![FileFault { line: from.line, message: broken.join("; ") }]),
+        };
+        let Some(found) = files.get(from.file.as_str()) else {
+            let known: Vec<&str> = files.keys().copied().collect();
+            fault(format!("no file `{}` is shipped: there are {}", from.file, list(&known)));
+            continue;
+        };
+        let chosen =
+            |entries: &[(String, Reaction)], wanted: &Option<Vec<String>>, of: &dyn Fn(&str) -> String| {
+                match wanted {
+                    None => (entries.to_vec(), vec![]),
+                    Some(names) => {
+                        let find = |name: &String| entries.iter().find(|(own, _)| *own == of(name)).cloned();
+                        let missing = names.iter().filter(|name| find(name).is_none()).cloned().collect();
+                        (names.iter().filter_map(find).collect(), missing)
+                    }
+                }
+            };
+        let formation_name =
+            |species: &str| format!("formation of {species}{}", standard_formation::by(&from.file));
+        let (constants, missing) = chosen(&found.constants, &from.constants, &str::to_string);
+        for name in missing {
+            fault(format!("`{}` has no constant `{name}`", from.file));
+        }
+        let (formations, missing) = chosen(&found.formations, &from.formations, &formation_name);
+        for name in missing {
+            fault(format!("`{}` has no formation of `{name}`", from.file));
+        }
+        ledger = with_entries(ledger, &constants, &formations, &mut fault);
+    }
+    let mut fault = |message: String| faults.push(FileFault { line: 1, message });
+    ledger = with_entries(ledger, &file.own.constants, &file.own.formations, &mut fault);
+    if faults.is_empty() { Ok(ledger) } else { Err(faults) }
+}
+
+fn with_entries(
+    mut ledger: Ledger,
+    constants: &[(String, Reaction)],
+    formations: &[(String, Reaction)],
+    fault: &mut impl FnMut(String),
+) -> Ledger {
+    let reactions = constants.iter().map(|(name, reaction)| (name, reaction, false));
+    for (name, reaction, is_formation) in reactions.chain(formations.iter().map(|(n, r)| (n, r, true))) {
+        let with = if is_formation { Ledger::with_formation } else { Ledger::with_reaction };
+        match with(&ledger, name, reaction) {
+            Ok(changed) => ledger = changed,
+            Err(error) => fault(error.to_string()),
+        }
+    }
+    ledger
+}
+
+fn read_citation(lines: &Lines<'_>) -> Option<String> {
+    let Some((_, Value::Map(mut publication))) = lines.read("publication") else { return None };
+    match publication.remove("citation") {
+        Some(Value::Text(citation)) if !citation.is_empty() => Some(citation),
+        _ => None,
+    }
+}
+
+fn elements_of(file_key: &str, lines: &Lines<'_>, faults: &mut Vec<FileFault>) -> Elements {
+    let mut elements = Elements::default();
+    for entry in lines.entries("element", faults) {
+        if let Err(fault) = elements.read(file_key, entry.named()) {
+            faults.push(entry.fault(&fault.key, fault.message));
+        }
+    }
+    elements
+}
+
+/// Constants and formation data of a file; a source of their own may stand in for the citation.
+fn read_entries(
+    file_key: &str,
+    citation: &str,
+    lines: &Lines<'_>,
+    faults: &mut Vec<FileFault>,
+) -> ConstantFile {
+    let mut file = ConstantFile { citation: citation.into(), ..ConstantFile::default() };
+    let mut names: BTreeMap<String, usize> = BTreeMap::new();
+    let mut check_name = |name: &str, entry: &Entry<'_>| match names.get(name) {
+        Some(line) => {
+            let message =
+                format!("there is a constant `{name}` already, in line {line}: names are unique in a file");
+            Err(entry.fault("name", message))
+        }
+        None => {
+            names.insert(name.to_string(), entry.line);
+            Ok(())
+        }
+    };
+    for entry in lines.entries("constant", faults) {
+        match read_constant(file_key, citation, &entry)
+            .and_then(|read| check_name(&read.1, &entry).map(|()| read))
+        {
+            Ok((false, name, reaction)) => file.constants.push((name, reaction)),
+            Ok((true, name, reaction)) => file.formations.push((name, reaction)),
+            Err(fault) => faults.push(fault),
+        }
+    }
+    let elements = elements_of(file_key, lines, faults);
+    let formations = lines.entries("formation", faults);
+    if formations.is_empty() {
+        return file;
+    }
+    let elements = elements.or(shipped::elements());
+    for entry in formations {
+        let read = read_formation(file_key, citation, &elements, &entry);
+        match read.and_then(|read| check_name(&read.0, &entry).map(|()| read)) {
+            Ok(read) => file.formations.push(read),
+            Err(fault) => faults.push(fault),
+        }
+    }
+    file
+}
+
+/// Whether it counts as formation data, its name, and the reaction.
+fn read_constant(
+    file_key: &str,
+    citation: &str,
+    entry: &Entry<'_>,
+) -> Result<(bool, String, Reaction), FileFault> {
+    let mut keys = entry.keys();
+    let mut text = |key: &str| match keys.remove(key) {
         Some(Value::Text(text)) => Ok(text),
-        _ => Err(format!("a constant needs a text `{key}`")),
+        _ => Err(entry.fault(key, format!("a constant needs a text `{key}`"))),
     };
     let name = text("name")?;
-    let equation = text("reaction").map_err(|message| format!("`{name}`: {message}"))?;
-    let missing = |key: &str| format!("`{name}`: a constant needs `{key}`");
-    if !entry.contains_key("provenance") {
-        return Err(missing("provenance") + ", one of `read`, `computed` and `memory`");
+    let named = |key: &str, message: String| entry.fault(key, format!("`{name}`: {message}"));
+    let equation = text("reaction").map_err(|fault| named("reaction", fault.message))?;
+    if !keys.contains_key("provenance") {
+        let message = "a constant needs `provenance`, one of `read`, `computed`, `memory` and `stated`";
+        return Err(named("provenance", message.into()));
     }
-    entry.entry("source".into()).or_insert_with(|| Value::Text(citation.into()));
-    let identity = format!("{file_key}/{name}");
-    let reaction = Reaction::read(&equation, Some(&name), Named::new(entry), Some(&identity));
-    let reaction = reaction.map_err(|error| format!("`{name}`: {error}"))?;
-    reaction.constant().map_err(|_| missing("log_k") + " or `log_k_terms`")?;
-    Ok((name, reaction))
+    if !keys.contains_key("source") {
+        if citation.is_empty() {
+            return Err(named(
+                "source",
+                "a constant needs `source`: the publication, or who measured it".into(),
+            ));
+        }
+        keys.insert("source".into(), Value::Text(citation.into()));
+    }
+    let history = match keys.remove("history") {
+        None => vec![],
+        Some(value) => {
+            let mut history = Named::new([("history".to_string(), value)].into());
+            history.texts("history").map_err(|fault| named("history", fault.message))?.unwrap_or_default()
+        }
+    };
+    let is_formation = match keys.remove("formation") {
+        None => false,
+        Some(Value::Flag(flag)) => flag,
+        Some(other) => {
+            return Err(named("formation", format!("`formation` is true or false, not {}", other.kind())));
+        }
+    };
+    let identity = match keys.remove("input") {
+        None => format!("{file_key}/{name}"),
+        Some(Value::Text(input)) => input,
+        Some(other) => return Err(named("input", format!("`input` takes a text, not {}", other.kind()))),
+    };
+    let reaction = Reaction::read(&equation, Some(&name), Named::new(keys), Some(&identity));
+    let reaction = reaction.map_err(|error| {
+        let key = match &error {
+            ReactionError::Option(fault) => fault.key.clone(),
+            _ => "reaction".into(),
+        };
+        named(&key, error.to_string())
+    })?;
+    let Ok(constant) = reaction.constant() else {
+        return Err(named("name", "a constant needs `log_k` or `log_k_terms`".into()));
+    };
+    let mut constant = constant.clone();
+    for conversion in history {
+        constant.history = constant.history.converted(conversion);
+    }
+    Ok((is_formation, name, Reaction::of(reaction.equation().clone(), constant)))
+}
+
+fn read_formation(
+    file_key: &str,
+    citation: &str,
+    elements: &Elements,
+    entry: &Entry<'_>,
+) -> Result<(String, Reaction), FileFault> {
+    if citation.is_empty() && !entry.keys().contains_key("source") {
+        let message = "formation data need `source`: the publication, or who measured them";
+        return Err(entry.fault("source", message.into()));
+    }
+    let read = standard_formation::read(file_key, citation, elements, entry.named());
+    read.map_err(|fault| entry.fault(&fault.key, fault.message))
 }
 
 /// Reads a ledger file.
@@ -107,33 +313,93 @@ fn read_constant(file_key: &str, citation: &str, entry: Value) -> Result<(String
 ///
 /// Every fault of the file.
 pub fn read_ledger(text: &str) -> Result<LedgerFile, Vec<FileFault>> {
-    let table = Lines::parse(text)?;
-    let mut from = Vec::new();
-    for (line, entry) in table.list("from") {
-        from.push(read_from(entry).map_err(|fault| vec![FileFault { line, message: fault.message }])?);
-    }
-    let mut named = table.named(&["from"]);
-    let mut read = || -> Result<LedgerFile, KeyFault> {
-        let name = named.text("name")?.ok_or_else(|| KeyFault::new("name", "a ledger needs a `name`"))?;
-        let edition = named.text("edition")?.unwrap_or_default();
-        let activity = named.text("activity_model")?.unwrap_or_else(|| "davies".into());
-        let activity = ActivityChoice::read(&activity, Named::default())?;
-        let solutes = named.texts("solutes")?.unwrap_or_default();
-        let solutes = solutes.iter().map(|text| Species::parse(text)).collect::<Result<_, _>>();
-        let solutes = solutes.map_err(|error| KeyFault::new("solutes", error.to_string()))?;
-        std::mem::take(&mut named).finish()?;
-        Ok(LedgerFile { name, edition, activity, solutes, from: from.clone() })
-    };
-    read().map_err(|fault| vec![FileFault { line: table.line_of(&fault.key), message: fault.message }])
+    read_ledger_as("ledger", text)
 }
 
-fn read_from(entry: Value) -> Result<(String, Option<Vec<String>>), KeyFault> {
-    let Value::Map(entry) = entry else { return Err(KeyFault::new("from", "`from` is a table")) };
-    let mut named = Named::new(entry);
-    let file = named.text("file")?.ok_or_else(|| KeyFault::new("file", "`[[from]]` needs a `file`"))?;
-    let names = named.texts("constants")?.unwrap_or_else(|| vec!["all".into()]);
+fn read_ledger_as(file_key: &str, text: &str) -> Result<LedgerFile, Vec<FileFault>> {
+    let lines = Lines::parse(text)?;
+    let mut faults = Vec::new();
+    let mut from = Vec::new();
+    for entry in lines.entries("from", &mut faults) {
+        match read_from(&entry) {
+            Ok(read) => from.push(read),
+            Err(fault) => faults.push(entry.fault(&fault.key, fault.message)),
+        }
+    }
+    let own = read_entries(file_key, &read_citation(&lines).unwrap_or_default(), &lines, &mut faults);
+    let head = read_head(file_key, lines.named(&["from", "constant", "formation", "element", "publication"]));
+    match head {
+        Ok(head) if faults.is_empty() => Ok(LedgerFile { from, own, ..head }),
+        Ok(_) => Err(in_order(faults)),
+        Err(fault) => {
+            faults.push(FileFault { line: lines.line_of(&fault.key), message: fault.message });
+            Err(in_order(faults))
+        }
+    }
+}
+
+fn in_order(mut faults: Vec<FileFault>) -> Vec<FileFault> {
+    faults.sort_by_key(|fault| fault.line);
+    faults
+}
+
+/// What stands before the entries.
+fn read_head(file_key: &str, mut named: Named) -> Result<LedgerFile, KeyFault> {
+    let name = named.text("name")?.unwrap_or_else(|| file_key.to_string());
+    let edition = named.text("edition")?;
+    let model = named.text("activity_model")?.unwrap_or_else(|| "davies".into());
+    let options = match named.take("activity_options") {
+        None => Named::default(),
+        Some(Value::Map(options)) => Named::new(options),
+        Some(other) => {
+            let message = format!("`activity_options` takes a table, not {}", other.kind());
+            return Err(KeyFault::new("activity_options", message));
+        }
+    };
+    let activity = ActivityChoice::read(&model, options)?;
+    let solutes = named.texts("solutes")?.unwrap_or_default();
+    let solutes = solutes.iter().map(|text| Species::parse(text)).collect::<Result<_, _>>();
+    let solutes = solutes.map_err(|error| KeyFault::new("solutes", error.to_string()))?;
     named.finish()?;
-    Ok((file, (names != ["all"]).then_some(names)))
+    Ok(LedgerFile { name, edition, activity, solutes, from: vec![], own: ConstantFile::default() })
+}
+
+/// `constants` and `formations` are lists, `all` where neither is given.
+fn read_from(entry: &Entry<'_>) -> Result<From, KeyFault> {
+    let mut named = entry.named();
+    let file = named.text("file")?.ok_or_else(|| KeyFault::new("file", "`[[from]]` needs a `file`"))?;
+    let (constants, formations) = (named.texts("constants")?, named.texts("formations")?);
+    named.finish()?;
+    let all = constants.is_none() && formations.is_none();
+    let chosen = |names: Option<Vec<String>>| match names {
+        None if all => None,
+        None => Some(vec![]),
+        Some(names) => (names != ["all"]).then_some(names),
+    };
+    Ok(From { file, constants: chosen(constants), formations: chosen(formations), line: entry.line })
+}
+
+/// One table of an array of tables.
+struct Entry<'a> {
+    text: &'a str,
+    line: usize,
+    table: &'a DeTable<'a>,
+}
+
+impl Entry<'_> {
+    fn keys(&self) -> BTreeMap<String, Value> {
+        self.table.iter().map(|(key, value)| (key.get_ref().to_string(), to_value(value.get_ref()))).collect()
+    }
+
+    fn named(&self) -> Named {
+        Named::new(self.keys())
+    }
+
+    /// A fault in the line of a key; of the whole entry where that key is missing.
+    fn fault(&self, key: &str, message: String) -> FileFault {
+        let line = self.table.get(key).map_or(self.line, |value| line_at(self.text, value.span().start));
+        FileFault { line, message }
+    }
 }
 
 /// A parsed file that knows the line of each of its keys.
@@ -158,15 +424,25 @@ impl<'a> Lines<'a> {
         Some((line_at(self.text, value.span().start), to_value(value.get_ref())))
     }
 
-    /// The tables of an array, each with its line.
-    fn list(&self, key: &str) -> Vec<(usize, Value)> {
-        match self.table.get_ref().get(key).map(Spanned::get_ref) {
-            Some(DeValue::Array(array)) => array
-                .iter()
-                .map(|item| (line_at(self.text, item.span().start), to_value(item.get_ref())))
-                .collect(),
-            _ => vec![],
+    /// The tables of an array; anything else under its key is a fault.
+    fn entries(&self, key: &str, faults: &mut Vec<FileFault>) -> Vec<Entry<'_>> {
+        let Some(value) = self.table.get_ref().get(key) else { return vec![] };
+        let line = |value: &Spanned<DeValue<'_>>| line_at(self.text, value.span().start);
+        let mut fault = |line| {
+            faults.push(FileFault { line, message: format!("write each `{key}` as a table `[[{key}]]`") })
+        };
+        let DeValue::Array(array) = value.get_ref() else {
+            fault(line(value));
+            return vec![];
+        };
+        let mut entries = Vec::new();
+        for item in array.iter() {
+            match item.get_ref() {
+                DeValue::Table(table) => entries.push(Entry { text: self.text, line: line(item), table }),
+                _ => fault(line(item)),
+            }
         }
+        entries
     }
 
     fn named(&self, without: &[&str]) -> Named {
@@ -217,12 +493,12 @@ mod tests {
                     provenance = \"read\"\n\n[[constant]]\nname = \"c\"\nreaction = \"H2O <=> H^+ + OH^-\"\nlog_k = -14\n";
         let faults = read_constants("invented", text).unwrap_err();
         let lines: Vec<(usize, &str)> = faults.iter().map(|f| (f.line, f.message.as_str())).collect();
-        assert_eq!(lines[0].0, 4);
+        assert_eq!(lines[0].0, 6);
         assert!(lines[0].1.contains("not balanced"), "{}", lines[0].1);
-        assert_eq!(lines[1], (10, "`b`: unknown key `log_q`; did you mean `log_k`?"));
+        assert_eq!(lines[1], (13, "`b`: unknown key `log_q`; did you mean `log_k`?"));
         assert_eq!(
             lines[2],
-            (16, "`c`: a constant needs `provenance`, one of `read`, `computed` and `memory`")
+            (16, "`c`: a constant needs `provenance`, one of `read`, `computed`, `memory` and `stated`")
         );
     }
 

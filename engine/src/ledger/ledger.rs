@@ -4,12 +4,16 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::{Arc, OnceLock};
 
-use super::elimination::{Combination, Echelon, Sparse};
-use super::formation::{Formations, in_bar};
-use crate::chem::{Equation, Reaction, ReactionError, Species};
+use super::alternative::{self, Alternative};
+use super::audit::{self, Audit, Cycle};
+use super::combine::{Combined, combine_routes};
+use super::formation::{Formations, Leftover, in_bar};
+use super::reconcile::{self, Reconciliation};
+use crate::chem::{Reaction, ReactionError, Species};
 use crate::named::{KeyFault, Named};
 use crate::nearest::nearest;
 use crate::text::list;
+use crate::units::Temperature;
 
 /// A set of constants one can calculate with; cheap to clone.
 #[derive(Clone)]
@@ -20,11 +24,15 @@ struct Inner {
     name: String,
     edition: Option<String>,
     reactions: BTreeMap<String, Reaction>,
+    /// Formation of species from the elements: evidence on the constants, by which no water is solved.
+    formation_data: BTreeMap<String, Reaction>,
     /// Ions that take part in no reaction.
     solutes: BTreeSet<Species>,
     activity: ActivityChoice,
     /// Worked out on first use; a clone made for a change starts without.
     formations: OnceLock<Formations>,
+    /// How it was reconciled; a change of its constants forgets it.
+    reconciliation: Option<Arc<Reconciliation>>,
 }
 
 /// Which activity model a ledger asks for; its coefficients at a temperature are the activity room's business.
@@ -74,10 +82,44 @@ pub enum LedgerError {
         /// The species that are left over.
         left_over: Vec<String>,
     },
+    /// Constants that cannot be weighed.
+    #[error(
+        "no uncertainty is stated for {}, and what is not stated cannot be weighed; fill it in with \
+         `.assume_sigma(0.05)`, or reconcile with `#{{ sigma: 0.05 }}`", list(.0)
+    )]
+    Unstated(Vec<String>),
+    /// An uncertainty that is none.
+    #[error("`sigma` is a standard uncertainty of log K and has to be above zero, not {0}")]
+    Sigma(f64),
+    /// No alternative of this description.
+    #[error("no shipped alternative to `{name}` is by `{author}`: {}", known_alternatives(.known))]
+    NoAlternative {
+        /// The reaction.
+        name: String,
+        /// Who was asked for.
+        author: String,
+        /// Authors and years of what there is.
+        known: Vec<String>,
+    },
+    /// A cycle nothing can close.
+    #[error(
+        "the cycle of {} cannot be closed: it misses by {misclosure:.4} in log K, more than the uncertainties of its \
+         constants leave room for; take one out with `.without()`", list(.names)
+    )]
+    Immovable {
+        /// The reactions of the cycle.
+        names: Vec<String>,
+        /// What is left of the misclosure.
+        misclosure: f64,
+    },
 }
 
 fn help(nearest: Option<&str>) -> String {
     nearest.map(|name| format!("; did you mean `{name}`?")).unwrap_or_default()
+}
+
+fn known_alternatives(known: &[String]) -> String {
+    if known.is_empty() { "there is none".into() } else { format!("there is {}", list(known)) }
 }
 
 impl Default for ActivityChoice {
@@ -121,19 +163,32 @@ impl Ledger {
         self.0.reactions.iter().map(|(name, reaction)| (name.as_str(), reaction))
     }
 
+    /// Formation of species from the elements, in order of name. It bears on [`Ledger::derive`], [`Ledger::audit`] and
+    /// [`Ledger::reconcile`]; waters are solved without, as it would set every oxidation state in equilibrium.
+    pub fn formation_data(&self) -> impl Iterator<Item = (&str, &Reaction)> {
+        self.0.formation_data.iter().map(|(name, reaction)| (name.as_str(), reaction))
+    }
+
+    /// Ions that are known though they take part in no reaction.
+    pub fn solutes(&self) -> impl Iterator<Item = &Species> {
+        self.0.solutes.iter()
+    }
+
     /// The activity model.
     #[must_use]
     pub fn activity(&self) -> ActivityChoice {
         self.0.activity
     }
 
-    /// One reaction by name.
+    /// One reaction, or formation of a species, by name.
     ///
     /// # Errors
     ///
     /// [`LedgerError::Unknown`] with the nearest name.
     pub fn reaction(&self, name: &str) -> Result<&Reaction, LedgerError> {
-        self.0.reactions.get(name).ok_or_else(|| self.unknown("reaction", name, self.names()))
+        let found = self.0.reactions.get(name).or_else(|| self.0.formation_data.get(name));
+        let names = self.names().chain(self.0.formation_data.keys().map(String::as_str));
+        found.ok_or_else(|| self.unknown("reaction", name, names))
     }
 
     /// The same with one more reaction.
@@ -142,10 +197,18 @@ impl Ledger {
     ///
     /// [`LedgerError::NameTaken`], or that the reaction has no constant.
     pub fn with_reaction(&self, name: &str, reaction: &Reaction) -> Result<Self, LedgerError> {
-        if self.0.reactions.contains_key(name) {
-            return Err(LedgerError::NameTaken(name.into()));
-        }
+        self.check_free(name)?;
         self.changed(|inner| Ok(inner.reactions.insert(name.into(), in_bar(reaction)?)))
+    }
+
+    /// The same with the formation of one more species from the elements.
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::NameTaken`], or that the reaction has no constant.
+    pub fn with_formation(&self, name: &str, reaction: &Reaction) -> Result<Self, LedgerError> {
+        self.check_free(name)?;
+        self.changed(|inner| Ok(inner.formation_data.insert(name.into(), in_bar(reaction)?)))
     }
 
     /// The same with a reaction of this name exchanged.
@@ -155,7 +218,13 @@ impl Ledger {
     /// [`LedgerError::Unknown`] if there is none, or that the reaction has no constant.
     pub fn replace(&self, name: &str, reaction: &Reaction) -> Result<Self, LedgerError> {
         self.reaction(name)?;
-        self.changed(|inner| Ok(inner.reactions.insert(name.into(), in_bar(reaction)?)))
+        self.changed(|inner| {
+            let of_its_kind = match inner.formation_data.contains_key(name) {
+                true => &mut inner.formation_data,
+                false => &mut inner.reactions,
+            };
+            Ok(of_its_kind.insert(name.into(), in_bar(reaction)?))
+        })
     }
 
     /// The same without a reaction. An ion that others are formed from stays known, even where this was the only
@@ -172,8 +241,11 @@ impl Ledger {
             .map(|(species, _)| species)
             .filter(|species| species.is_solute() && components.contains(species));
         self.changed(|inner| {
-            inner.solutes.extend(ions.cloned());
-            Ok(inner.reactions.remove(name))
+            if inner.formation_data.remove(name).is_none() {
+                inner.solutes.extend(ions.cloned());
+                inner.reactions.remove(name);
+            }
+            Ok(())
         })
     }
 
@@ -183,20 +255,23 @@ impl Ledger {
     ///
     /// [`LedgerError::Clash`] if names clash and `prefer_other` is `None`.
     pub fn merge(&self, other: &Self, prefer_other: Option<bool>) -> Result<Self, LedgerError> {
-        let clash = |(name, reaction): &(&str, &Reaction)| {
-            self.0.reactions.get(*name).is_some_and(|own| own != *reaction)
-        };
-        let clashes: Vec<String> =
-            other.reactions().filter(clash).map(|(name, _)| name.to_string()).collect();
+        let clash =
+            |(name, reaction): &(&str, &Reaction)| self.reaction(name).is_ok_and(|own| own != *reaction);
+        let both = other.reactions().chain(other.formation_data());
+        let clashes: Vec<String> = both.filter(clash).map(|(name, _)| name.to_string()).collect();
         if !clashes.is_empty() && prefer_other.is_none() {
             return Err(LedgerError::Clash(clashes));
         }
         self.changed(|inner| {
-            for (name, reaction) in other.reactions() {
-                if prefer_other == Some(true) || !inner.reactions.contains_key(name) {
-                    inner.reactions.insert(name.into(), reaction.clone());
+            let take = |own: &mut BTreeMap<String, Reaction>, others: &BTreeMap<String, Reaction>| {
+                for (name, reaction) in others {
+                    if prefer_other == Some(true) || !own.contains_key(name) {
+                        own.insert(name.clone(), reaction.clone());
+                    }
                 }
-            }
+            };
+            take(&mut inner.reactions, &other.0.reactions);
+            take(&mut inner.formation_data, &other.0.formation_data);
             inner.solutes.extend(other.0.solutes.iter().cloned());
             Ok(())
         })
@@ -254,7 +329,14 @@ impl Ledger {
         });
         match found {
             Some((_, species)) => Ok(species),
-            None => Err(self.unknown("mineral or gas", name, named.iter().map(|(name, _)| *name))),
+            None => {
+                // `CO2` is the solute: whoever asks for a gas means `CO2(g)`.
+                let gas = format!("{name}(g)");
+                match named.iter().find(|(own, _)| *own == gas) {
+                    Some((own, _)) => Err(self.unknown("mineral or gas", name, [*own].into_iter())),
+                    None => Err(self.unknown("mineral or gas", name, named.iter().map(|(name, _)| *name))),
+                }
+            }
         }
     }
 
@@ -279,14 +361,87 @@ impl Ledger {
         self.reactions().find(|(_, reaction)| own(reaction)).map_or(named, |(name, _)| name)
     }
 
-    /// The constant of an equation as a sum over the ledger's reactions.
+    /// The constant of an equation as a sum over the ledger's reactions and formation data.
     ///
     /// # Errors
     ///
     /// [`LedgerError::Unreachable`] with the species no combination accounts for, or why the constants do not add.
     pub fn derive(&self, target: &str) -> Result<Reaction, LedgerError> {
-        let reactions: Vec<&Reaction> = self.reactions().map(|(_, reaction)| reaction).collect();
-        combine(target, &reactions)
+        Ok(self.derive_routes(target)?.reaction)
+    }
+
+    /// As [`Ledger::derive`], with what is to be said where several routes lead to the equation.
+    ///
+    /// # Errors
+    ///
+    /// As [`Ledger::derive`].
+    pub fn derive_routes(&self, target: &str) -> Result<Combined, LedgerError> {
+        let all = self.reactions().chain(self.formation_data());
+        combine_routes(target, &all.map(|(_, reaction)| reaction).collect::<Vec<_>>())
+    }
+
+    /// Shipped constants for the same reactions that it does not use, in order of name.
+    #[must_use]
+    pub fn alternatives(&self) -> Vec<Alternative> {
+        alternative::alternatives(self)
+    }
+
+    /// The same with a shipped alternative in place of a reaction, named by author and year: `Rimstidt 1980`.
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::Unknown`] or [`LedgerError::NoAlternative`].
+    pub fn choose(&self, name: &str, author: &str) -> Result<Self, LedgerError> {
+        self.replace(name, &alternative::find(self, name, author)?)
+    }
+
+    /// Every independent cycle among its reactions and formation data, and how far each fails to close.
+    #[must_use]
+    pub fn audit(&self, temperature: Temperature) -> Audit {
+        audit::audit(self, temperature)
+    }
+
+    /// The cycle closed by a reaction that the others imply.
+    #[must_use]
+    pub fn cycle(&self, leftover: &Leftover, temperature: Temperature) -> Cycle {
+        audit::cycle(self, leftover.reaction, &leftover.cycle, temperature)
+    }
+
+    /// The ledger whose constants move least so that every cycle closes at a temperature.
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::Unstated`] if a constant in a cycle states no uncertainty, [`LedgerError::Immovable`] if a cycle
+    /// has none to close it with.
+    pub fn reconcile(&self, temperature: Temperature) -> Result<Self, LedgerError> {
+        Ok(reconcile::reconcile(self, temperature)?.0)
+    }
+
+    /// How it was reconciled, if it was and has not been changed since.
+    #[must_use]
+    pub fn reconciliation(&self) -> Option<&Reconciliation> {
+        self.0.reconciliation.as_deref()
+    }
+
+    pub(super) fn with_reconciliation(&self, reconciliation: Arc<Reconciliation>) -> Self {
+        Self(Arc::new(Inner { reconciliation: Some(reconciliation), ..self.copy() }))
+    }
+
+    /// The same with a standard uncertainty of log10 K wherever none was stated; said in the constants' histories.
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::Sigma`] unless `sigma` is above zero.
+    pub fn assume_sigma(&self, sigma: f64) -> Result<Self, LedgerError> {
+        if !(sigma.is_finite() && sigma > 0.0) {
+            return Err(LedgerError::Sigma(sigma));
+        }
+        self.changed(|inner| {
+            for reaction in inner.reactions.values_mut().chain(inner.formation_data.values_mut()) {
+                *reaction = reconcile::assume_sigma(reaction, sigma)?;
+            }
+            Ok(())
+        })
     }
 
     /// A short digest of names, equations and constants: the same for the same numbers, however they were put together.
@@ -298,7 +453,13 @@ impl Ledger {
         let reacts =
             |ion: &&Species| self.reactions().any(|(_, r)| r.equation().coefficient(ion) != 0.into());
         let solutes: Vec<&Species> = self.0.solutes.iter().filter(|ion| !reacts(ion)).collect();
-        let text = format!("{:?} {:?} {:?}", constants.collect::<Vec<_>>(), solutes, self.0.activity);
+        let mut text = format!("{:?} {:?} {:?}", constants.collect::<Vec<_>>(), solutes, self.0.activity);
+        for (name, reaction) in self.formation_data() {
+            text.push_str(&format!(
+                "{name:?} {reaction:?}",
+                reaction = reaction.constant().ok().map(|c| &c.log_k)
+            ));
+        }
         let fold = |hash: u64, byte: u8| (hash ^ u64::from(byte)).wrapping_mul(0x0100_0000_01b3);
         format!("{:016x}", text.bytes().fold(0xcbf2_9ce4_8422_2325, fold))
     }
@@ -316,11 +477,18 @@ impl Ledger {
         }
     }
 
+    fn check_free(&self, name: &str) -> Result<(), LedgerError> {
+        match self.reaction(name) {
+            Ok(_) => Err(LedgerError::NameTaken(name.into())),
+            Err(_) => Ok(()),
+        }
+    }
+
     fn changed<T>(
         &self,
         change: impl FnOnce(&mut Inner) -> Result<T, LedgerError>,
     ) -> Result<Self, LedgerError> {
-        let mut inner = self.copy();
+        let mut inner = Inner { reconciliation: None, ..self.copy() };
         change(&mut inner)?;
         Ok(Self(Arc::new(inner)))
     }
@@ -328,52 +496,6 @@ impl Ledger {
     fn copy(&self) -> Inner {
         Inner { formations: OnceLock::new(), ..(*self.0).clone() }
     }
-}
-
-/// The constant of an equation as a sum of reactions, with exact multiples.
-///
-/// Where several combinations reach it, the one over the reactions that come first is taken.
-///
-/// # Errors
-///
-/// [`LedgerError::Unreachable`] with the species no combination accounts for, or why the constants do not add.
-pub fn combine(target: &str, reactions: &[&Reaction]) -> Result<Reaction, LedgerError> {
-    let target = Equation::parse(target).map_err(ReactionError::from)?;
-    let mut species: Vec<&Species> = Vec::new();
-    for equation in reactions.iter().map(|reaction| reaction.equation()).chain([&target]) {
-        for (formula, _) in equation.terms() {
-            if !species.contains(&formula) {
-                species.push(formula);
-            }
-        }
-    }
-    let row = |equation: &Equation| -> Sparse {
-        let column =
-            |formula: &Species| species.iter().position(|known| *known == formula).expect("listed above");
-        equation.terms().iter().map(|(formula, coefficient)| (column(formula), *coefficient)).collect()
-    };
-    let mut echelon = Echelon::default();
-    for (index, reaction) in reactions.iter().enumerate() {
-        echelon.add(index, row(reaction.equation()));
-    }
-    let mut wanted = Combination { row: row(&target), ..Combination::default() };
-    echelon.reduce(&mut wanted);
-    if !wanted.row.is_empty() {
-        let left_over = wanted.row.keys().map(|column| species[*column].key().to_string()).collect();
-        return Err(LedgerError::Unreachable { target: target.to_string(), left_over });
-    }
-    let mut sum: Option<Reaction> = None;
-    for (index, multiple) in wanted.multiples {
-        let term = reactions[index].times(-multiple)?;
-        sum = Some(match sum {
-            None => term,
-            Some(sum) => sum.plus(&term)?,
-        });
-    }
-    let sum =
-        sum.ok_or_else(|| LedgerError::Unreachable { target: target.to_string(), left_over: vec![] })?;
-    // The sum has the target's species; write them in the target's order.
-    Ok(Reaction::of(target, sum.constant()?.clone()))
 }
 
 impl ActivityChoice {
@@ -401,6 +523,20 @@ impl ActivityChoice {
         };
         options.finish()?;
         Ok(choice)
+    }
+}
+
+impl ActivityChoice {
+    /// The name and options that [`ActivityChoice::read`] makes it from.
+    #[must_use]
+    pub fn written(self) -> (&'static str, Vec<(&'static str, f64)>) {
+        match self {
+            Self::Ideal => ("ideal", vec![]),
+            Self::Davies { a, b, water } => {
+                let options = [("A", a), ("b", Some(b)), ("water_activity", water)];
+                ("davies", options.into_iter().filter_map(|(key, value)| Some((key, value?))).collect())
+            }
+        }
     }
 }
 

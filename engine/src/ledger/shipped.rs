@@ -6,7 +6,8 @@ use std::sync::OnceLock;
 use lysocline_stdlib::{CONSTANTS, LEDGERS};
 
 use super::file::{self, ConstantFile, FileFault};
-use super::ledger::{Ledger, LedgerError};
+use super::ledger::Ledger;
+use super::standard_formation::Elements;
 use crate::nearest::nearest;
 use crate::text::list;
 
@@ -96,27 +97,20 @@ pub fn constant_files() -> Result<&'static BTreeMap<&'static str, ConstantFile>,
 }
 
 fn build(name: &str, text: &str) -> Result<Ledger, ShippedError> {
-    let broken = |faults: Vec<String>| ShippedError::Broken { name: name.into(), faults };
-    let listed = file::read_ledger(text).map_err(|faults| broken(in_file(name, &faults)))?;
-    let files = constant_files().map_err(broken)?;
-    let mut ledger = Ledger::empty(&listed.name, Some(listed.edition)).with_activity(listed.activity);
-    for species in listed.solutes {
-        ledger = ledger.with_solute(species);
-    }
-    for (key, wanted) in listed.from {
-        let constants =
-            &files.get(key.as_str()).ok_or_else(|| broken(vec![format!("no file `{key}`")]))?.constants;
-        let wanted = wanted.unwrap_or_else(|| constants.iter().map(|(name, _)| name.clone()).collect());
-        for name in wanted {
-            let found = constants.iter().find(|(own, _)| *own == name);
-            let (_, reaction) =
-                found.ok_or_else(|| broken(vec![format!("`{key}` has no constant `{name}`")]))?;
-            ledger = ledger
-                .with_reaction(&name, reaction)
-                .map_err(|error: LedgerError| broken(vec![error.to_string()]))?;
-        }
-    }
-    Ok(ledger)
+    let broken =
+        |faults: Vec<FileFault>| ShippedError::Broken { name: name.into(), faults: in_file(name, &faults) };
+    file::build(&file::read_ledger(text).map_err(broken)?).map_err(broken)
+}
+
+/// Entropies of the elements that formation data count from where their own file gives none (Cox et al. 1989).
+pub(super) fn elements() -> &'static Elements {
+    const KEY: &str = "cox1989";
+    static ELEMENTS: OnceLock<Elements> = OnceLock::new();
+    let read = || {
+        let text = CONSTANTS.iter().find(|(key, _)| *key == KEY);
+        text.map_or_else(Elements::default, |(_, text)| file::read_elements(KEY, text))
+    };
+    ELEMENTS.get_or_init(read)
 }
 
 fn in_file(key: &str, faults: &[FileFault]) -> Vec<String> {

@@ -26,6 +26,15 @@ struct Inner {
     outcomes: Vec<Result<State, String>>,
 }
 
+/// What a table shows of an answer.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Cells {
+    /// The number.
+    Plain,
+    /// The number with its standard uncertainty.
+    Uncertain,
+}
+
 /// Why a run has no table.
 #[derive(Debug, thiserror::Error)]
 #[non_exhaustive]
@@ -101,6 +110,19 @@ impl Run {
     ///
     /// Returns an observable that cannot be read, or that no row can answer.
     pub fn table(&self, observables: &[String]) -> Result<Table, RunError> {
+        self.table_of(observables, Cells::Plain)
+    }
+
+    /// The same, every number with its standard uncertainty.
+    ///
+    /// # Errors
+    ///
+    /// As [`Run::table`].
+    pub fn table_with_sigma(&self, observables: &[String]) -> Result<Table, RunError> {
+        self.table_of(observables, Cells::Uncertain)
+    }
+
+    fn table_of(&self, observables: &[String], cells: Cells) -> Result<Table, RunError> {
         let mut columns: Vec<Column> = Vec::new();
         let names_an_axis = |text: &str| self.axis(text).is_some();
         if !observables.iter().any(|text| names_an_axis(text)) {
@@ -109,7 +131,7 @@ impl Run {
         for text in observables {
             columns.push(match self.axis(text) {
                 Some(axis) => axis.clone(),
-                None => self.column(text)?,
+                None => self.column_of(text, cells)?,
             });
         }
         let failures = self.0.outcomes.iter().map(|outcome| outcome.as_ref().err().cloned());
@@ -122,15 +144,24 @@ impl Run {
     ///
     /// Returns an observable that cannot be read, or that no row can answer.
     pub fn column(&self, observable: &str) -> Result<Column, RunError> {
+        self.column_of(observable, Cells::Plain)
+    }
+
+    fn column_of(&self, observable: &str, cells: Cells) -> Result<Column, RunError> {
         if let Some(axis) = self.axis(observable) {
             return Ok(axis.clone());
         }
         let asked = Asked::parse(observable)?;
-        let answers: Vec<Result<Quantity, ObservableError>> =
-            self.states().map(|state| state.answer(&asked)).collect();
+        let answer = |state: &State| match cells {
+            Cells::Plain => state.number(&asked).map(|(value, unit)| (Cell::number(value), unit)),
+            Cells::Uncertain => state.answer(&asked).map(|answer| (cell(&answer), answer.unit().clone())),
+        };
+        let states: Vec<&State> = self.states().collect();
+        let answers: Vec<Result<(Cell, Unit), ObservableError>> =
+            states.into_par_iter().map(answer).collect();
         let mut found = answers.iter().filter_map(|answer| answer.as_ref().ok());
         let unit = match (found.next(), answers.iter().find_map(|answer| answer.as_ref().err())) {
-            (Some(first), _) => first.unit().clone(),
+            (Some((_, unit)), _) => unit.clone(),
             // An element that is in no row is absent from all of them; anything else no row answers is a fault.
             (None, Some(ObservableError::Absent { .. })) => Unit::one(),
             (None, Some(error)) => return Err(error.clone().into()),
@@ -140,7 +171,7 @@ impl Run {
         let cells = self.0.outcomes.iter().map(|outcome| match outcome {
             Err(_) => Cell::missing(),
             Ok(_) => match answers.next() {
-                Some(Ok(answer)) => cell(&answer),
+                Some(Ok((cell, _))) => cell,
                 Some(Err(ObservableError::Absent { .. })) => Cell::missing_because("absent"),
                 Some(Err(error)) => Cell::missing_because(&error.to_string()),
                 None => Cell::missing(),
@@ -150,6 +181,40 @@ impl Run {
         let title =
             if unit == Unit::one() { name } else { format!("{name} [{}]", unit.display(Style::Ascii)) };
         Ok(Column::new(title.as_str(), cells.collect::<Vec<_>>()))
+    }
+
+    /// Where the uncertainty of an observable comes from: the share of each input in its variance, averaged over the rows
+    /// that have one. Inputs of one name, such as `Ca` of every water, count as one.
+    ///
+    /// # Errors
+    ///
+    /// As [`Run::column`].
+    pub fn budget(&self, observable: &str) -> Result<Table, RunError> {
+        let asked = Asked::parse(observable)?;
+        let (mut shares, mut rows, mut fault) = (BTreeMap::<String, f64>::new(), 0, None);
+        for answer in self.states().map(|state| state.answer(&asked)) {
+            let budget = match answer {
+                Ok(answer) => answer.budget().rows,
+                Err(error) => {
+                    fault = fault.or(Some(error));
+                    continue;
+                }
+            };
+            rows += usize::from(budget.iter().any(|row| row.share != 0.0));
+            for row in budget {
+                *shares.entry(row.label).or_default() += row.share;
+            }
+        }
+        if let (0, Some(error)) = (rows, fault) {
+            return Err(error.into());
+        }
+        let mut shares: Vec<(String, f64)> = shares.into_iter().collect();
+        shares.sort_by(|a, b| b.1.abs().total_cmp(&a.1.abs()).then_with(|| a.0.cmp(&b.0)));
+        let mean = |(_, share): &(String, f64)| share / rows.max(1) as f64;
+        Ok(Table::new([
+            Column::texts("input", shares.iter().map(|(label, _)| label.as_str())),
+            Column::numbers("mean share", shares.iter().map(mean)),
+        ])?)
     }
 
     /// Rows that failed, with their reasons.
@@ -172,10 +237,13 @@ impl Run {
     /// Warnings of all rows, each once, with the rows concerned.
     #[must_use]
     pub fn warnings(&self) -> Vec<String> {
-        let mut rows: BTreeMap<String, Vec<usize>> = BTreeMap::new();
+        let mut rows: Vec<(String, Vec<usize>)> = Vec::new();
         for (row, outcome) in self.0.outcomes.iter().enumerate() {
             for warning in outcome.as_ref().map(State::warnings).unwrap_or_default() {
-                rows.entry(warning).or_default().push(row);
+                match rows.iter_mut().find(|(known, _)| *known == warning) {
+                    Some((_, concerned)) => concerned.push(row),
+                    None => rows.push((warning, vec![row])),
+                }
             }
         }
         rows.into_iter().map(|(warning, rows)| format!("{warning} ({})", which(&rows, self.len()))).collect()

@@ -10,10 +10,18 @@ pub(super) fn quantity(quantity: &Quantity, style: Style) -> String {
         Some(sigma) if sigma > 0.0 => with_sigma(quantity.value, sigma, style),
         _ => plain(quantity.value),
     };
-    if *quantity.unit() == Unit::one() {
+    let written = if *quantity.unit() == Unit::one() {
         number
     } else {
         format!("{number} {}", quantity.unit().display(style))
+    };
+    // An uncertainty that leaves inputs out must not pass for the whole.
+    let unstated = quantity.parts().iter().filter(|part| part.input.sigma().is_none()).count();
+    match quantity.sigma() {
+        Some(sigma) if sigma > 0.0 && unstated > 0 => {
+            format!("{written} ({} without uncertainty)", crate::text::count(unstated, "input"))
+        }
+        _ => written,
     }
 }
 

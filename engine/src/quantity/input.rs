@@ -58,6 +58,15 @@ impl Input {
         &self.0.label
     }
 
+    /// The name under which it is the same wherever it is read; `None` for a value written once.
+    #[must_use]
+    pub fn name(&self) -> Option<&str> {
+        match &self.0.key {
+            Key::Named(name) => Some(name),
+            Key::Written(_) => None,
+        }
+    }
+
     /// Its standard uncertainty in its own unit; `None` where not stated, which is not zero.
     #[must_use]
     pub fn sigma(&self) -> Option<f64> {

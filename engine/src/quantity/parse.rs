@@ -1,7 +1,7 @@
 //! Quantities from text, with or without a unit and an uncertainty.
 //!
 //! ```text
-//! 41.2 mg/L      41.2 +/- 0.8 mg/L      (41.2 ± 0.8) mg/L      41.2 mg/L +/- 2 %      41.2
+//! 41.2 mg/L      41.2 +/- 0.8 mg/L      (41.2 ± 0.8) mg/L      41.2 mg/L +/- 2 %      41.2(8) mg/L      41.2
 //! ```
 
 use super::{Quantity, QuantityError};
@@ -57,6 +57,9 @@ struct WrittenSigma<'a> {
 
 impl<'a> Written<'a> {
     fn split(text: &'a str) -> Result<Self, QuantityError> {
+        if let Some(concise) = Self::concise(text)? {
+            return Ok(concise);
+        }
         let (inside, unit_outside) = split_brackets(text)?;
         let Some((left, right)) = split_sigma(inside) else {
             let (value, unit) = number_and_unit(inside, text)?;
@@ -84,6 +87,32 @@ impl<'a> Written<'a> {
                 Ok(Self { value, unit: one_unit(unit, unit_outside, text)?, sigma: sigma(sigma_unit) })
             }
         }
+    }
+}
+
+impl<'a> Written<'a> {
+    /// `-3.30(12) mg/L`: the digits in brackets are the uncertainty of the last digits of the value (JCGM 100:2008, 7.2.2).
+    fn concise(text: &'a str) -> Result<Option<Self>, QuantityError> {
+        let piece = text.trim();
+        let (number, behind) = piece.split_at(number_end(piece));
+        let Some((digits, unit)) = behind.strip_prefix('(').and_then(|behind| behind.split_once(')')) else {
+            return Ok(None);
+        };
+        if digits.is_empty() || digits.len() > 15 || !digits.bytes().all(|byte| byte.is_ascii_digit()) {
+            return Ok(None);
+        }
+        if number.contains(['e', 'E']) {
+            return Err(refused(
+                text,
+                "write the uncertainty of a number with an exponent as `1.2e-3 +/- 0.1e-3`",
+            ));
+        }
+        let (value, _) = number_and_unit(number, text)?;
+        let decimals = number.split_once('.').map_or(0, |(_, decimals)| decimals.len());
+        let number: f64 = digits.parse().map_err(|_| refused(text, &expected_number(digits)))?;
+        let sigma = WrittenSigma { number: number / 10_f64.powi(decimals as i32), unit: None };
+        let unit = unit.trim();
+        Ok(Some(Self { value, unit: (!unit.is_empty()).then_some(unit), sigma: Some(sigma) }))
     }
 }
 

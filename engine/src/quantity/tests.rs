@@ -25,6 +25,8 @@ fn reads() {
     }
     case("41.2 mg/L", Kind::Amount, "41.2 mg/L", 41.2, None);
     case("41.2 +/- 0.8 mg/L", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
+    case("41.2(8) mg/L", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
+    case("-3.30(12)", Kind::Fraction, "-3.30 +/- 0.12", -3.3, Some(0.12));
     case("41.2±0.8 mg/L", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
     case("(41.2 +/- 0.8) mg/L", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
     case("41.2 mg/L +/- 0.8", Kind::Amount, "41.2 +/- 0.8 mg/L", 41.2, Some(0.8));
@@ -312,7 +314,10 @@ fn published_values_and_draws() -> Result<(), QuantityError> {
 #[test]
 fn numbers_get_units() -> Result<(), QuantityError> {
     let ratio = (amount("2.0 +/- 0.1 mg/L") / amount("4 mg/L"))?;
-    assert_eq!(ratio.given_in(&unit("mol/kg"))?.display(Style::Ascii), "0.500 +/- 0.025 mol/kg");
+    assert_eq!(
+        ratio.given_in(&unit("mol/kg"))?.display(Style::Ascii),
+        "0.500 +/- 0.025 mol/kg (1 input without uncertainty)"
+    );
     assert_eq!(Quantity::exact(50.0, unit("%")).given_in(&unit("bar"))?.display(Style::Ascii), "0.5 bar");
     assert_eq!(amount("2 mg/L").given_in(&unit("g/L"))?.display(Style::Ascii), "0.002 g/L");
     Ok(())

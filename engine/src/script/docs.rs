@@ -6,6 +6,8 @@ use std::any::TypeId;
 
 use rhai::{Dynamic, Engine, FuncInfo, NativeCallContext};
 
+use crate::equilibrium::observable::NAMES;
+
 use super::{Fail, fail, words};
 
 /// One function, method, property or operator as a script sees it.
@@ -65,6 +67,9 @@ pub fn help(entries: &[Entry], topic: &str, width: usize) -> Result<String, Fail
     let found: Vec<&Entry> =
         entries.iter().filter(|entry| entry.name == topic && !is_operator(&entry.name)).collect();
     if found.is_empty() {
+        if let Some((_, form, meaning)) = NAMES.iter().find(|(name, ..)| *name == topic) {
+            return Ok(format!("state.get(\"{form}\")\n    {meaning}"));
+        }
         let names = entries.iter().map(|entry| entry.name.as_str());
         return Err(fail(format!("there is no help on `{topic}`"))
             .maybe_help(words::did_you_mean(topic, names))

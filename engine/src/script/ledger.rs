@@ -4,12 +4,14 @@ use rhai::plugin::*;
 use rhai::{Array, Dynamic, Map};
 
 use super::named::named;
+use super::reaction::temperature;
 use super::show::Style;
-use super::{Fail, ScriptResult, Vocabulary, fail};
+use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::chem::{Element, Reaction, Species, rational};
 use crate::equilibrium::acid_base::{ALKALINITY_PH, ZeroLevel};
+use crate::ledger::file::{self, FileFault};
 use crate::ledger::shipped::{self, ShippedError};
-use crate::ledger::{ActivityChoice, Ledger};
+use crate::ledger::{ActivityChoice, Alternative, Audit, Cycle, Ledger, Reconciliation, save as ledger_text};
 use crate::nearest::nearest;
 use crate::present::{Cell, Column, Table};
 use crate::text::count;
@@ -20,6 +22,8 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
     vocabulary
         .module(rhai::exported_module!(ledger_functions))
         .pure(&["ledger", "with_reaction", "replace", "without", "merge", "with_activity_model", "derive"])
+        .pure(&["audit", "reconcile", "moved", "reconciliation", "assume_sigma", "alternatives", "choose"])
+        .pure(&["load_ledger"])
         .pure(&["species_of", "find", "phases", "gases", "sources", "alkalinity_table", "table"])
         .quoted(words)
         .native::<Ledger>("Ledger", show);
@@ -42,8 +46,13 @@ fn show(ledger: &Ledger, _: &Style) -> String {
     let edition = ledger.edition().map(|edition| format!(", edition {edition}")).unwrap_or_default();
     let solids = ledger.species().filter(|species| species.is_solid()).count();
     let solutes = ledger.species().filter(|species| species.is_solute()).count();
+    let formation_data = match ledger.formation_data().count() {
+        0 => String::new(),
+        number => format!("formation data of {number} species, "),
+    };
+    let reconciled = ledger.reconciliation().map_or_else(String::new, |r| format!(", {}", reconciled(r)));
     format!(
-        "ledger {}{edition}: {}, {}, {}, {} activities, digest {}",
+        "ledger {}{edition}: {}, {}, {}, {formation_data}{} activities, digest {}{reconciled}",
         ledger.name(),
         count(ledger.names().count(), "reaction"),
         count(solutes, "solute"),
@@ -104,6 +113,89 @@ fn reaction_table<'a>(reactions: impl Iterator<Item = (&'a str, &'a Reaction)>) 
     .map_err(|error| fail(error.to_string()))
 }
 
+/// `reconciled at 25 degC: 22 cycles closed, chi-square 8.1 for 22 degrees of freedom (probability 0.997)`.
+fn reconciled(reconciliation: &Reconciliation) -> String {
+    format!(
+        "reconciled at {} degC: {} closed, chi-square {:.1} for {} (probability {:.2})",
+        reconciliation.temperature.celsius(),
+        count(reconciliation.n_cycles, "cycle"),
+        reconciliation.chi_square,
+        count(reconciliation.degrees_of_freedom, "degree") + " of freedom",
+        reconciliation.probability
+    )
+}
+
+/// Cycles as a table, worst first.
+fn audit_table(audit: &Audit) -> Result<Table, Fail> {
+    let cycles: Vec<String> = audit.cycles.iter().map(Cycle::to_string).collect();
+    let optional = |value: Option<f64>| value.map_or_else(Cell::missing, Cell::number);
+    let verdicts =
+        audit.cycles.iter().map(|cycle| if cycle.contradicts() { "contradicts" } else { "agrees" });
+    Table::new([
+        Column::texts("cycle", cycles.iter().map(String::as_str)),
+        Column::numbers("misclosure of log K", audit.cycles.iter().map(|cycle| cycle.misclosure)),
+        Column::new("sigma", audit.cycles.iter().map(|cycle| optional(cycle.sigma)).collect::<Vec<_>>()),
+        Column::new(
+            "in sigmas",
+            audit.cycles.iter().map(|cycle| optional(cycle.sigmas())).collect::<Vec<_>>(),
+        ),
+        Column::texts("verdict", verdicts),
+    ])
+    .map_err(|error| fail(error.to_string()))
+}
+
+/// What a reconciliation moved, the most suspect first.
+fn moves_table(reconciliation: &Reconciliation) -> Result<Table, Fail> {
+    let moves = &reconciliation.moves;
+    Table::new([
+        Column::chemistry("name", moves.iter().map(|moved| moved.name.as_str())),
+        Column::new(
+            "log K before",
+            moves.iter().map(|m| Cell::uncertain(m.before, m.sigma_before)).collect::<Vec<_>>(),
+        ),
+        Column::new(
+            "log K after",
+            moves.iter().map(|m| Cell::uncertain(m.after, m.sigma_after)).collect::<Vec<_>>(),
+        ),
+        Column::numbers("moved by", moves.iter().map(|moved| moved.after - moved.before)),
+        Column::numbers("moved by sigmas", moves.iter().map(|moved| moved.in_sigmas())),
+        Column::numbers("standardised residual", moves.iter().map(|moved| moved.residual)),
+    ])
+    .map_err(|error| fail(error.to_string()))
+}
+
+/// Shipped constants in the place of a ledger's own.
+fn alternatives_table(ledger: &Ledger, alternatives: &[Alternative]) -> Result<Table, Fail> {
+    let log_k = |reaction: &Reaction| {
+        reaction
+            .constant()
+            .map_or_else(|_| Cell::missing(), |c| Cell::number(c.log_k.nearest_to(Temperature::REFERENCE).0))
+    };
+    let own = |alternative: &Alternative| {
+        ledger.reaction(&alternative.name).map_or_else(|_| Cell::missing(), log_k)
+    };
+    let sigma = |reaction: &Reaction| {
+        reaction.log_k().ok().and_then(|log_k| log_k.sigma()).map_or_else(Cell::missing, Cell::number)
+    };
+    let equations: Vec<String> = alternatives.iter().map(|a| a.reaction.equation().to_string()).collect();
+    Table::new([
+        Column::chemistry("name", alternatives.iter().map(|a| a.name.as_str())),
+        Column::texts("by", alternatives.iter().map(|a| a.author.as_str())),
+        Column::chemistry("reaction", equations.iter().map(String::as_str)),
+        Column::new("log K", alternatives.iter().map(|a| log_k(&a.reaction)).collect::<Vec<_>>()),
+        Column::new("sigma", alternatives.iter().map(|a| sigma(&a.reaction)).collect::<Vec<_>>()),
+        Column::new("log K in use", alternatives.iter().map(own).collect::<Vec<_>>()),
+    ])
+    .map_err(|error| fail(error.to_string()))
+}
+
+fn unreadable(file: &str, faults: &[FileFault]) -> Fail {
+    let number = count(faults.len(), "fault");
+    faults.iter().fold(fail(format!("`{file}` has {number}, so nothing was loaded")), |fail, fault| {
+        fail.help(fault.to_string())
+    })
+}
+
 /// Authors and year of a citation: what stands before the closing bracket of the year.
 fn short_citation(citation: &str) -> String {
     citation.split_once(')').map_or(citation, |(start, _)| start).replace(" (", " ")
@@ -112,7 +204,7 @@ fn short_citation(citation: &str) -> String {
 /// The publications a ledger's constants come from, with how many each gave.
 pub(super) fn sources_table(ledger: &Ledger) -> Result<Table, Fail> {
     let mut sources: Vec<(String, f64)> = Vec::new();
-    for (_, reaction) in ledger.reactions() {
+    for (_, reaction) in ledger.reactions().chain(ledger.formation_data()) {
         for (origin, _) in reaction.constant()?.history.uses() {
             let source = origin.source.clone().unwrap_or_else(|| "no source given".into());
             match sources.iter_mut().find(|(known, _)| *known == source) {
@@ -126,6 +218,13 @@ pub(super) fn sources_table(ledger: &Ledger) -> Result<Table, Fail> {
         Column::texts("source", sources.iter().map(|(source, _)| source.as_str())),
     ])
     .map_err(|error| fail(error.to_string()))
+}
+
+fn reconciliation_of(ledger: &Ledger) -> Result<&Reconciliation, Fail> {
+    ledger.reconciliation().ok_or_else(|| {
+        fail("this ledger was not reconciled, or changed since")
+            .help("write `let closed = book.reconcile();` first")
+    })
 }
 
 fn texts<'a>(names: impl Iterator<Item = &'a str>) -> Array {
@@ -147,7 +246,7 @@ mod ledger_functions {
         Ledger::default()
     }
 
-    /// A shipped ledger: `"freshwater"`. Results depend on the constants chosen; `.table()` shows them with their sources.
+    /// A shipped ledger: `"freshwater"`, or `"formation"`, standard formation data to audit others with. Results depend on the constants chosen; `.table()` shows them with their sources.
     ///
     /// ```rhai
     /// ledger("freshwater").reaction("calcite").equation   // "CaCO3(calcite) <=> Ca^2+ + CO3^2-"
@@ -263,15 +362,150 @@ mod ledger_functions {
         Ok(ledger.with_activity(choice))
     }
 
-    /// The constant of an equation as a sum over the ledger's reactions.
+    /// A ledger from a file beside the script: `[[constant]]` tables with `name`, `reaction`, a value as for `reaction`,
+    /// `source` and `provenance`. All faults of a file are reported at once; nothing is half loaded.
+    ///
+    /// ```rhai
+    /// ledger("freshwater").without("halite").save("mine.toml");
+    /// load_ledger("mine.toml").names.len() == ledger("freshwater").names.len() - 1   // true
+    /// ```
+    #[rhai_fn(return_raw)]
+    pub fn load_ledger(context: NativeCallContext, file: &str) -> ScriptResult<Ledger> {
+        let text =
+            Host::of(&context).files().read_text(file).map_err(|error| Fail::from(error).argument(0))?;
+        let stem =
+            std::path::Path::new(file).file_stem().map_or(file.into(), std::ffi::OsStr::to_string_lossy);
+        Ok(file::load(&stem, &text).map_err(|faults| unreadable(file, &faults).argument(0))?)
+    }
+    /// Writes the ledger to a file that `load_ledger` reads: every constant with its source and uncertainty.
+    ///
+    /// ```rhai
+    /// let book = ledger().with_reaction("Kw", reaction("H2O <=> H^+ + OH^-", #{ log_k: "-13.995 +/- 0.01" }));
+    /// book.save("book.toml");
+    /// load_ledger("book.toml").digest == book.digest   // true
+    /// ```
+    #[rhai_fn(name = "save", pure, return_raw)]
+    pub fn save_ledger(context: NativeCallContext, ledger: &mut Ledger, file: &str) -> ScriptResult<()> {
+        let text = ledger_text::to_text(ledger);
+        let written = Host::of(&context).files().write(file, text.as_bytes());
+        written.map_err(|error| Fail::from(error).argument(0))?;
+        Ok(())
+    }
+
+    /// The constant of an equation as a sum over the ledger's reactions. Where several routes lead to it, the sum of least
+    /// variance is taken if uncertainties are stated, else the one with fewest constants; a warning says how far the
+    /// routes lie apart.
     ///
     /// ```rhai
     /// let k = ledger("freshwater").derive("CaCO3(calcite) + CO2(g) + H2O <=> Ca^2+ + 2 HCO3^-");
     /// fmt(k.log_k.value, ".2f")   // "-5.98"
     /// ```
     #[rhai_fn(pure, return_raw)]
-    pub fn derive(ledger: &mut Ledger, equation: &str) -> ScriptResult<Reaction> {
-        Ok(ledger.derive(equation).map_err(Fail::from)?)
+    pub fn derive(context: NativeCallContext, ledger: &mut Ledger, equation: &str) -> ScriptResult<Reaction> {
+        let derived = ledger.derive_routes(equation).map_err(Fail::from)?;
+        if let Some(routes) = derived.routes {
+            Host::of(&context).message(&format!("warning: `{}`: {routes}", derived.reaction));
+        }
+        Ok(derived.reaction)
+    }
+
+    /// Every independent cycle among the ledger's constants and formation data at 25 degC: how far log K fails to close, in
+    /// log10 units and in standard deviations. Above 3, and above 0.1 log units where not all uncertainties are stated, the
+    /// constants contradict each other.
+    ///
+    /// ```rhai
+    /// let both = ledger("freshwater").merge(ledger("formation"));
+    /// both.audit().where(|row| row["cycle"].starts_with("K2 ")).len   // 1
+    /// ```
+    #[rhai_fn(name = "audit", pure, return_raw)]
+    pub fn audit(ledger: &mut Ledger) -> ScriptResult<Table> {
+        Ok(audit_table(&ledger.audit(Temperature::REFERENCE))?)
+    }
+    /// The same at a temperature (degC, or text with a unit); constants not known there are in no cycle, which is said.
+    #[rhai_fn(name = "audit", pure, return_raw)]
+    pub fn audit_at(context: NativeCallContext, ledger: &mut Ledger, at: Dynamic) -> ScriptResult<Table> {
+        let audit = ledger.audit(temperature(&at).map_err(|fail| fail.argument(0))?);
+        if !audit.unknown.is_empty() {
+            let names = crate::text::list(&audit.unknown);
+            let at = audit.temperature.celsius();
+            Host::of(&context).message(&format!("warning: not known at {at} degC, so in no cycle: {names}"));
+        }
+        Ok(audit_table(&audit)?)
+    }
+
+    /// The ledger whose constants move least, in units of their standard uncertainty, so that every cycle closes at 25 degC
+    /// (generalised least squares). `.moved()` tables what moved, `.reconciliation()` gives chi-square.
+    ///
+    /// ```rhai
+    /// let kw = |log_k| reaction("H2O <=> H^+ + OH^-", #{ log_k: log_k });
+    /// let book = ledger().with_reaction("a", kw.call("-14.00 +/- 0.01")).with_reaction("b", kw.call("-13.97 +/- 0.02"));
+    /// fmt(book.reconcile().reaction("a").log_k.value, ".3f")   // "-13.994"
+    /// ```
+    #[rhai_fn(name = "reconcile", pure, return_raw)]
+    pub fn reconcile(ledger: &mut Ledger) -> ScriptResult<Ledger> {
+        Ok(ledger.reconcile(Temperature::REFERENCE).map_err(Fail::from)?)
+    }
+    /// The same with `#{ temperature: "10 degC" }`, and `#{ sigma: 0.05 }` for constants that state no uncertainty.
+    #[rhai_fn(name = "reconcile", pure, return_raw)]
+    pub fn reconcile_with(ledger: &mut Ledger, options: Map) -> ScriptResult<Ledger> {
+        let mut options = named(&options)?;
+        let sigma = options.number("sigma").map_err(Fail::from)?;
+        let at = options.take("temperature");
+        let at = at.map(|value| crate::chem::reaction::temperature("temperature", value)).transpose();
+        let at = at.map_err(Fail::from)?.unwrap_or(Temperature::REFERENCE);
+        options.finish().map_err(Fail::from)?;
+        let weighed = match sigma {
+            Some(sigma) => ledger.assume_sigma(sigma).map_err(|error| Fail::from(error).key("sigma"))?,
+            None => ledger.clone(),
+        };
+        Ok(weighed.reconcile(at).map_err(Fail::from)?)
+    }
+    /// What a reconciliation moved: log K before and after, the change in standard uncertainties, and the standardised
+    /// residual of each constant, the most suspect first; above 3 it disagrees with all others.
+    #[rhai_fn(name = "moved", get = "moved", pure, return_raw)]
+    pub fn moved(ledger: &mut Ledger) -> ScriptResult<Table> {
+        Ok(moves_table(reconciliation_of(ledger)?)?)
+    }
+    /// How well a reconciled ledger agreed with itself: `chi_square`, `degrees_of_freedom`, the `probability` of a larger
+    /// chi-square if all uncertainties are right, and the `temperature` in degC.
+    #[rhai_fn(name = "reconciliation", get = "reconciliation", pure, return_raw)]
+    pub fn reconciliation(ledger: &mut Ledger) -> ScriptResult<Map> {
+        let done = reconciliation_of(ledger)?;
+        let degrees_of_freedom = i64::try_from(done.degrees_of_freedom).unwrap_or(i64::MAX);
+        Ok(Map::from([
+            ("chi_square".into(), done.chi_square.into()),
+            ("degrees_of_freedom".into(), degrees_of_freedom.into()),
+            ("probability".into(), done.probability.into()),
+            ("temperature".into(), done.temperature.celsius().into()),
+        ]))
+    }
+    /// A new ledger in which every constant without a stated uncertainty has this one, in log10 units; its trail says so.
+    ///
+    /// ```rhai
+    /// ledger("freshwater").assume_sigma(0.05).reaction("Kw").log_k.sigma   // 0.05
+    /// ```
+    #[rhai_fn(name = "assume_sigma", pure, return_raw)]
+    pub fn assume_sigma(ledger: &mut Ledger, sigma: f64) -> ScriptResult<Ledger> {
+        Ok(ledger.assume_sigma(sigma).map_err(|error| Fail::from(error).argument(0))?)
+    }
+
+    /// Shipped constants for the ledger's reactions that it does not use, with log K at 25 degC.
+    ///
+    /// ```rhai
+    /// ledger("freshwater").alternatives().where(|row| row["name"] == "quartz").column("by")[0]   // "Rimstidt 1980"
+    /// ```
+    #[rhai_fn(name = "alternatives", get = "alternatives", pure, return_raw)]
+    pub fn alternatives(ledger: &mut Ledger) -> ScriptResult<Table> {
+        Ok(alternatives_table(ledger, &ledger.alternatives())?)
+    }
+    /// A new ledger with a shipped alternative in place of a reaction, by author and year.
+    ///
+    /// ```rhai
+    /// fmt(ledger("freshwater").choose("quartz", "Rimstidt 1980").reaction("quartz").log_k.value, ".3f")   // "-3.956"
+    /// ```
+    #[rhai_fn(name = "choose", pure, return_raw)]
+    pub fn choose(ledger: &mut Ledger, name: &str, author: &str) -> ScriptResult<Ledger> {
+        Ok(ledger.choose(name, author).map_err(Fail::from)?)
     }
 
     /// Species that hold an element, as texts.
@@ -328,7 +562,7 @@ mod ledger_functions {
     /// Its reactions with log K at 25 degC, uncertainty, enthalpy, range, provenance and source.
     #[rhai_fn(name = "table", get = "table", pure, return_raw)]
     pub fn ledger_table(ledger: &mut Ledger) -> ScriptResult<Table> {
-        Ok(reaction_table(ledger.reactions())?)
+        Ok(reaction_table(ledger.reactions().chain(ledger.formation_data()))?)
     }
     /// The publications its constants come from, with how many each gave.
     #[rhai_fn(name = "sources", get = "sources", pure, return_raw)]

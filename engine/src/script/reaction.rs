@@ -92,6 +92,9 @@ fn optional(value: Option<f64>, kind: Kind) -> Dynamic {
     value.map_or(Dynamic::UNIT, |value| Dynamic::from(Quantity::exact(value, kind.default_unit())))
 }
 
+/// So many kelvin from its own temperature a constant without a stated range deserves a warning.
+const FAR: f64 = 50.0;
+
 /// Warns once a call where a constant is read outside the range it was stated for.
 fn warn_outside(
     context: &NativeCallContext,
@@ -100,13 +103,18 @@ fn warn_outside(
 ) -> ScriptResult<()> {
     let constant = reaction.constant().map_err(Fail::from)?;
     let outside = constant.log_k.outside(temperature);
-    if let (true, Some(range)) = (outside > 0.0, constant.log_k.range()) {
-        Host::of(context).message(&format!(
-            "warning: log K of `{reaction}` is stated for {:.0} to {:.0} degC; {:.1} degC is {outside:.1} K outside",
+    let away = (temperature.kelvin() - constant.temperature.kelvin()).abs();
+    let celsius = temperature.celsius();
+    match constant.log_k.range() {
+        Some(range) if outside > 0.0 => Host::of(context).message(&format!(
+            "warning: log K of `{reaction}` is stated for {:.0} to {:.0} degC; {celsius:.1} degC is {outside:.1} K outside",
             range.lowest.celsius(),
             range.highest.celsius(),
-            temperature.celsius()
-        ));
+        )),
+        None if away > FAR => Host::of(context).message(&format!(
+            "warning: log K of `{reaction}` states no range of temperature; {celsius:.1} degC is {away:.0} K from its own"
+        )),
+        _ => {}
     }
     Ok(())
 }

@@ -108,6 +108,9 @@ fn treated(sample: &Sample, treatment: Treatment) -> ScriptResult<Sample> {
     Ok(sample.treated(treatment).map_err(Fail::from)?)
 }
 
+/// A bare fugacity above this, bar, is taken for a forgotten unit.
+const LARGEST_BARE_FUGACITY: f64 = 10.0;
+
 fn fugacity(given: &Dynamic) -> Result<f64, Fail> {
     let value = value(given)?;
     if let Value::Text(text) = &value
@@ -115,6 +118,13 @@ fn fugacity(given: &Dynamic) -> Result<f64, Fail> {
     {
         return Err(fail("a gas is given by its fugacity, not in ppm")
             .help("write `\"420 uatm\"`, or the mole fraction times the pressure")
+            .argument(1));
+    }
+    if let Value::Number(number) = value
+        && number > LARGEST_BARE_FUGACITY
+    {
+        return Err(fail(format!("{number} bar?"))
+            .help(format!("write `\"{number} uatm\"`, or `\"{number} bar\"` if you mean it"))
             .argument(1));
     }
     let bar = crate::named::quantity("fugacity", value, Kind::Pressure)
@@ -181,10 +191,13 @@ fn survey(context: &NativeCallContext, name: &str, options: &CsvOptions) -> Scri
             count(survey.replacements.len(), "value")
         ));
     }
-    host.message(&format!("{name}: {}", told.join(", ")));
-    for fault in &survey.faults {
-        host.message(&format!("{name}: row left out of the results: {fault}"));
+    if !survey.faults.is_empty() {
+        told.push(format!(
+            "{} that cannot be read, whose equilibrium fails with the reason",
+            count(survey.faults.len(), "row")
+        ));
     }
+    host.message(&format!("{name}: {}", told.join(", ")));
     Ok(survey.samples.into_iter().map(Dynamic::from).collect())
 }
 

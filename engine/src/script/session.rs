@@ -170,7 +170,12 @@ impl Session {
         let (before, last, after) = (&entry[..start], &entry[start..end], &entry[end..]);
         let lead = last.len() - last.trim_start().len();
         let printed = format!("{before}{}print({});{after}", &last[..lead], &last[lead..]);
-        if shown && self.engine.parse_error(&printed).is_none() {
+        // A read that gave `()` showed nothing, but as a statement it would be refused for its unused result.
+        let statement = format!("{before}{last};{after}");
+        let is_read = || {
+            self.engine.parse_error(&statement).is_none() && self.engine.check(SESSION, &statement).is_err()
+        };
+        if (shown || is_read()) && self.engine.parse_error(&printed).is_none() {
             return printed;
         }
         // What needs no semicolon before a next statement, such as a `fn`, gets none.

@@ -11,6 +11,7 @@ use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::equilibrium::{Asked, EquilibriumError, Observable, ObservableError, State, equilibrate};
 use crate::ledger::Ledger;
+use crate::named::Value;
 use crate::present::{Cell, Column, Table};
 use crate::process::{Axis, Run, RunError, SweepError, run, sweep};
 use crate::quantity::Quantity;
@@ -410,6 +411,30 @@ mod state_functions {
         about(state, Observable::Amount(solid.into()))
     }
 
+    /// Where the uncertainty of an observable comes from: inputs with their sensitivity, sigma and share of the variance.
+    ///
+    /// ```rhai
+    /// let lake = sample(#{ pH: "8.15 +/- 0.02", alkalinity: "2.35 meq/L", Ca: "41.2 +/- 0.8 mg/L" });
+    /// lake.equilibrate().budget("pH").column("input").values[0]   // "pH"
+    /// ```
+    #[rhai_fn(name = "budget", pure, return_raw)]
+    pub fn state_budget(state: &mut State, observable: &str) -> ScriptResult<Table> {
+        let budget = state.get(observable).map_err(Fail::from)?.budget();
+        Ok(super::super::quantity::budget_table(&budget).map_err(|error| fail(error.to_string()))?)
+    }
+    /// Every constant and measured value behind an observable: as stated, sensitivity, sigma, share of the variance,
+    /// provenance and source.
+    ///
+    /// ```rhai
+    /// let lake = sample(#{ pH: "8.15 +/- 0.02", alkalinity: "2.35 meq/L", Ca: "41.2 +/- 0.8 mg/L" });
+    /// lake.equilibrate().trail("SI(calcite)").len > 10   // true
+    /// ```
+    #[rhai_fn(name = "trail", pure, return_raw)]
+    pub fn state_trail(state: &mut State, observable: &str) -> ScriptResult<Table> {
+        let asked = Asked::parse(observable).map_err(Fail::from)?;
+        Ok(crate::equilibrium::trail(state, &asked).map_err(Fail::from)?)
+    }
+
     /// The solutes from the most to the least abundant: molality (mol/kg(water)), activity, gamma.
     #[rhai_fn(name = "species", get = "species", pure)]
     pub fn state_species(state: &mut State) -> Table {
@@ -529,6 +554,37 @@ mod run_functions {
     #[rhai_fn(name = "table", pure, return_raw)]
     pub fn run_table(run: &mut Run, observables: Array) -> ScriptResult<Table> {
         Ok(run.table(&texts(&observables, "observables")?).map_err(Fail::from)?)
+    }
+    /// The same with options: `#{ sigma: true }` gives every number its standard uncertainty, where one is known.
+    ///
+    /// ```rhai
+    /// let waters = [sample(#{ pH: "8.15 +/- 0.02", DIC: "2 mmol/kg", Ca: "41 mg/L" })];
+    /// waters.equilibrate().table(["pH"], #{ sigma: true }).len   // 1
+    /// ```
+    #[rhai_fn(name = "table", pure, return_raw)]
+    pub fn run_table_with(run: &mut Run, observables: Array, options: Map) -> ScriptResult<Table> {
+        let observables = texts(&observables, "observables")?;
+        let mut options = named(&options)?;
+        let sigma = match options.take("sigma") {
+            None => false,
+            Some(Value::Flag(sigma)) => sigma,
+            Some(other) => {
+                return fail(format!("`sigma` is true or false, not {}", other.kind())).key("sigma").raise();
+            }
+        };
+        options.finish().map_err(Fail::from)?;
+        let table = if sigma { run.table_with_sigma(&observables) } else { run.table(&observables) };
+        Ok(table.map_err(Fail::from)?)
+    }
+    /// Where the uncertainty of an observable comes from: shares of the variance by input, averaged over all rows.
+    ///
+    /// ```rhai
+    /// let waters = [sample(#{ pH: "8.15 +/- 0.02", DIC: "2 mmol/kg", Ca: "41 mg/L" })];
+    /// waters.equilibrate().budget("pH").len   // 1
+    /// ```
+    #[rhai_fn(name = "budget", pure, return_raw)]
+    pub fn run_budget(run: &mut Run, observable: &str) -> ScriptResult<Table> {
+        Ok(run.budget(observable).map_err(Fail::from)?)
     }
     /// One observable of all rows.
     #[rhai_fn(name = "column", pure, return_raw)]

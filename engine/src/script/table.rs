@@ -378,7 +378,9 @@ mod table_functions {
     #[rhai_fn(return_raw, pure)]
     pub fn save(context: NativeCallContext, table: &mut Table, file: &str) -> ScriptResult<()> {
         let text = table.to_text_for(Path::new(file)).map_err(at_first)?;
-        Host::of(&context).files().write(file, text.as_bytes()).map_err(at_first)?;
+        let host = Host::of(&context);
+        let path = host.files().write(file, text.as_bytes()).map_err(at_first)?;
+        host.message(&format!("wrote {}", path.display()));
         Ok(())
     }
 }

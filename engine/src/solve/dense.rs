@@ -66,6 +66,26 @@ impl Lu {
         }
     }
 
+    /// Writes the solution of `Aᵀ x = rhs` to `x` (both of length n).
+    pub(super) fn solve_transposed(&self, rhs: &[f64], x: &mut [f64]) {
+        let n = self.n;
+        let mut y = rhs.to_vec();
+        for row in 0..n {
+            y[row] /= self.factors[row * n + row];
+            for later in row + 1..n {
+                y[later] -= self.factors[row * n + later] * y[row];
+            }
+        }
+        for row in (0..n).rev() {
+            for earlier in 0..row {
+                y[earlier] -= self.factors[row * n + earlier] * y[row];
+            }
+        }
+        for (value, row) in y.into_iter().zip(&self.permutation) {
+            x[*row] = value;
+        }
+    }
+
     /// The inverse, n x n by rows.
     pub(super) fn inverse(&self) -> Vec<f64> {
         let n = self.n;
@@ -98,6 +118,18 @@ mod tests {
                 let product: f64 = (0..3).map(|k| inverse[i * 3 + k] * matrix[k * 3 + j]).sum();
                 assert!((product - f64::from(u8::from(i == j))).abs() < 1e-14);
             }
+        }
+    }
+
+    #[test]
+    fn the_transposed_solution_is_a_row_of_the_inverse() {
+        let matrix = [0.0, 2.0, 1.0, 1.0, -1.0, 3.0, 4.0, 0.5, 0.0];
+        let (mut lu, mut row) = (Lu::default(), [0.0; 3]);
+        assert!(lu.factor(&matrix, 3));
+        let inverse = lu.inverse();
+        lu.solve_transposed(&[0.0, 1.0, 0.0], &mut row);
+        for k in 0..3 {
+            assert!((row[k] - inverse[3 + k]).abs() < 1e-15);
         }
     }
 

@@ -25,7 +25,7 @@
 //! - `feasibility`: totals that force exact zeros, or that nothing can satisfy.
 //! - `inner`: Newton's method on logarithmic balances, with Φ as merit, at given γ and given phases. `dense`: LU.
 //! - `phases`: which minerals are present. `ionic_strength`: γ and the activity of water.
-//! - `certificate`: what is checked. `scalar`: conditions that are not totals, as one equation outside all this.
+//! - `sensitivity`: derivatives of an answer. `certificate`: what is checked. `scalar`: conditions that are not totals, as one equation outside all this.
 
 mod basis;
 mod certificate;
@@ -37,6 +37,7 @@ mod ionic_strength;
 mod phases;
 mod problem;
 pub mod scalar;
+pub mod sensitivity;
 mod settings;
 mod system;
 #[cfg(test)]

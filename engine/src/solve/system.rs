@@ -23,9 +23,9 @@ pub(super) enum Column {
 /// Where an earlier solve ended, as a start for a problem with the same rows.
 #[derive(Debug, Clone)]
 pub struct Warm {
-    basis: Basis,
+    pub(super) basis: Basis,
     level: Vec<f64>,
-    column: Vec<Column>,
+    pub(super) column: Vec<Column>,
     mineral_amount: Vec<f64>,
     n_species: usize,
     pub(super) ionic_strength: f64,

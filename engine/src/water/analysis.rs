@@ -16,10 +16,19 @@ use crate::units::{Kind, Pressure, Temperature};
 pub enum Analysis {
     /// Measured amounts and what fixes the proton total.
     Measured(Box<Measured>),
-    /// Moles of species per kilogram of water whose elements and charge are the water's totals.
-    Dissolved(Vec<(Species, f64)>),
+    /// What an earlier equilibrium left.
+    Dissolved(Dissolved),
     /// A row of a survey that could not be read, with the reason.
     Spoilt(String),
+}
+
+/// What an earlier equilibrium left dissolved.
+#[derive(Debug, Clone, Default)]
+pub struct Dissolved {
+    /// Moles of species per kilogram of water whose elements and charge are the water's totals.
+    pub totals: Vec<(Species, Quantity)>,
+    /// The water's temperature in kelvin, where it is uncertain.
+    pub temperature: Option<Quantity>,
 }
 
 /// A laboratory analysis, read and in range, not yet converted to one basis.
@@ -35,6 +44,8 @@ pub struct Measured {
     pub density: Option<f64>,
     /// The temperature at which volumes were measured.
     pub volume_temperature: Option<Temperature>,
+    /// The water's own temperature in kelvin, where an uncertainty of it was stated.
+    pub temperature: Option<Quantity>,
 }
 
 /// What was measured of the acid-base state.
@@ -119,6 +130,8 @@ const NOT_YET: [(&str, &str); 8] = [
 
 /// A bare total above this, mol/kg(water), is taken for a forgotten unit.
 const LARGEST_BARE_TOTAL: f64 = 20.0;
+/// The same for alkalinity and inorganic carbon, of which waters hold less.
+const LARGEST_BARE_CARBON: f64 = 1.0;
 
 /// Reads the keys of a sample.
 ///
@@ -129,7 +142,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let mut named = Named::new(entries);
     let mut defaults = Vec::new();
     let name = named.text("name")?;
-    let setting = read_setting(&mut named, &mut defaults)?;
+    let (setting, temperature) = read_setting(&mut named, &mut defaults)?;
     let density = read_density(&mut named)?;
     let volume_temperature =
         named.take("volume_temperature").map(|v| reaction::temperature("volume_temperature", v));
@@ -138,6 +151,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
         make_up: named.text("make_up")?,
         density,
         volume_temperature: volume_temperature.transpose()?,
+        temperature,
         ..Measured::default()
     };
     for (key, value) in named.rest() {
@@ -152,9 +166,18 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     Ok(Read { name, setting, measured, defaults })
 }
 
-fn read_setting(named: &mut Named, defaults: &mut Vec<String>) -> Result<Setting, KeyFault> {
-    let temperature = match named.take("temperature") {
-        Some(value) => reaction::temperature("temperature", value)?,
+/// The setting, and the temperature in kelvin where it is uncertain.
+fn read_setting(
+    named: &mut Named,
+    defaults: &mut Vec<String>,
+) -> Result<(Setting, Option<Quantity>), KeyFault> {
+    let mut uncertain = None;
+    let temperature = match named.quantity("temperature", Kind::Temperature)? {
+        Some(given) => {
+            let kelvin = given.to(&crate::units::Unit::parse("K").expect("a known unit")).ok();
+            uncertain = kelvin.filter(|kelvin| kelvin.sigma().is_some_and(|sigma| sigma > 0.0));
+            reaction::temperature("temperature", Value::Quantity(given))?
+        }
         None => {
             defaults.push("temperature 25 degC".into());
             Temperature::REFERENCE
@@ -176,7 +199,7 @@ fn read_setting(named: &mut Named, defaults: &mut Vec<String>) -> Result<Setting
     if water <= 0.0 {
         return Err(KeyFault::new("water", "`water` must be above zero"));
     }
-    Ok(Setting { temperature, pressure, water })
+    Ok((Setting { temperature, pressure, water }, uncertain))
 }
 
 /// A pressure in bar, above zero.
@@ -216,9 +239,12 @@ fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyF
             .map(|given| read(&given).map_err(|message| KeyFault::new(key, format!("`{key}`: {message}"))))
             .transpose()
     };
-    let alkalinity = named.quantity("alkalinity", Kind::Alkalinity)?;
+    let alkalinity = bare_below(named, "alkalinity", "meq/L")?;
+    let alkalinity =
+        alkalinity.map(|given| crate::named::quantity("alkalinity", given, Kind::Alkalinity)).transpose()?;
     let alkalinity = amount("alkalinity", alkalinity, concentration::alkalinity)?;
-    let dic = named.quantity("DIC", Kind::Amount)?;
+    let dic = bare_below(named, "DIC", "mmol/L")?;
+    let dic = dic.map(|given| crate::named::quantity("DIC", given, Kind::Amount)).transpose()?;
     let dic = amount("DIC", dic, |given| {
         concentration::amount(&Analyte::parse("C").expect("carbon is an element"), given)
     })?;
@@ -229,6 +255,16 @@ fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyF
         Evidence { ph, alkalinity, dic, co2: read_co2(named, pressure)?, from: named.texts("from")? };
     check_pair(&evidence)?;
     Ok(evidence)
+}
+
+/// Takes a value out, unless it is a bare number too large to be meant.
+fn bare_below(named: &mut Named, key: &str, unit: &str) -> Result<Option<Value>, KeyFault> {
+    match named.take(key) {
+        Some(Value::Number(number)) if number.abs() > LARGEST_BARE_CARBON => {
+            Err(KeyFault::new(key, format!("`{key}`: {number} mol/kg? write \"{number} {unit}\"")))
+        }
+        value => Ok(value),
+    }
 }
 
 /// Fugacity in bar; an ideal gas's partial pressure is its fugacity, and a mole fraction that of the total pressure.

@@ -25,9 +25,17 @@ pub enum AnalyteError {
         "`{0}` is not given as an amount: hydrogen and oxygen follow from the water, its pH and its alkalinity"
     )]
     OfWater(String),
-    /// A carbonate ion, which the analysis of a water does not measure.
-    #[error("`{0}` is not measured as such: give `alkalinity` or `DIC`, and `pH`")]
+    /// One species of the carbonate system, which says nothing of the others.
+    #[error("`{0}` is not measured as such: give `alkalinity` or `DIC`, and `pH` or `fCO2`")]
     Carbonate(String),
+    /// An ion written without its charge, as laboratories do.
+    #[error("`{key}` is an ion: write `{ion}`")]
+    Charge {
+        /// The key.
+        key: String,
+        /// The ion it stands for.
+        ion: &'static str,
+    },
     /// A species with more than one element besides H and O.
     #[error("`{species}` holds {elements}: give each of them as an amount of its own")]
     Several {
@@ -73,6 +81,9 @@ impl Analyte {
             let state = roman(numeral).ok_or_else(|| AnalyteError::OxidationState(key.into()))?;
             return Ok(Self::State(element, state));
         }
+        if let Some((_, ion)) = WITHOUT_CHARGE.iter().find(|(written, _)| *written == key) {
+            return Err(AnalyteError::Charge { key: key.into(), ion });
+        }
         match Species::parse(key) {
             Ok(species) => Self::of_species(species),
             Err(_) => {
@@ -86,9 +97,7 @@ impl Analyte {
         let elements: Vec<&str> = species.elements_beside_water().map(Element::symbol).collect();
         match elements.as_slice() {
             [] => Err(AnalyteError::OfWater(species.to_string())),
-            ["C"] if ["HCO3^-", "CO3^2-"].contains(&species.key()) => {
-                Err(AnalyteError::Carbonate(species.to_string()))
-            }
+            ["C"] if CARBONATE.contains(&species.key()) => Err(AnalyteError::Carbonate(species.to_string())),
             [_] => Ok(Self::Species(species)),
             several => {
                 Err(AnalyteError::Several { species: species.to_string(), elements: several.join(" and ") })
@@ -158,6 +167,21 @@ impl fmt::Display for Analyte {
     }
 }
 
+/// Species of the carbonate system: what a titration calls free CO2 is `fCO2` or follows from pH.
+const CARBONATE: [&str; 6] = ["HCO3^-", "CO3^2-", "CO2(aq)", "H2CO3(aq)", "HCO3(aq)", "CO3(aq)"];
+
+/// Ions as laboratories write them.
+const WITHOUT_CHARGE: [(&str, &str); 8] = [
+    ("SO4", "SO4^2-"),
+    ("NO3", "NO3^-"),
+    ("NO2", "NO2^-"),
+    ("NH4", "NH4^+"),
+    ("PO4", "PO4^3-"),
+    ("HPO4", "HPO4^2-"),
+    ("H2PO4", "H2PO4^-"),
+    ("BO3", "BO3^3-"),
+];
+
 const NUMERALS: [&str; 10] = ["0", "I", "II", "III", "IV", "V", "VI", "VII", "VIII", "IX"];
 
 fn roman(text: &str) -> Option<i32> {
@@ -207,10 +231,9 @@ mod tests {
     #[test]
     fn what_is_no_analyte_says_why() {
         let message = |key: &str| Analyte::parse(key).unwrap_err().to_string();
-        assert_eq!(
-            message("HCO3^-"),
-            "`HCO3^-` is not measured as such: give `alkalinity` or `DIC`, and `pH`"
-        );
+        assert!(message("HCO3^-").ends_with("give `alkalinity` or `DIC`, and `pH` or `fCO2`"));
+        assert!(message("CO2").contains("is not measured as such"));
+        assert_eq!(message("SO4"), "`SO4` is an ion: write `SO4^2-`");
         assert!(message("H").contains("follow from the water"));
         assert!(message("OH^-").contains("follow from the water"));
         assert_eq!(message("NaCl"), "`NaCl(aq)` holds Na and Cl: give each of them as an amount of its own");

@@ -12,7 +12,7 @@ pub mod sample;
 pub mod survey;
 pub mod treatment;
 
-pub use analysis::{Analysis, Evidence, Measured, Ph};
+pub use analysis::{Analysis, Dissolved, Evidence, Measured, Ph};
 pub use analyte::Analyte;
 pub use sample::{Sample, SampleError};
 pub use survey::{Survey, SurveyError};

@@ -4,9 +4,8 @@
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
-use super::analysis::{self, Analysis, Measured, Setting};
+use super::analysis::{self, Analysis, Dissolved, Measured, Setting};
 use super::treatment::Treatment;
-use crate::chem::Species;
 use crate::ledger::{Ledger, LedgerError};
 use crate::named::{KeyFault, Value};
 use crate::units::{Pressure, Temperature};
@@ -75,18 +74,13 @@ impl Sample {
         })))
     }
 
-    /// A water of dissolved totals, mol/kg(water) of species, with no surroundings and no solids.
+    /// A water of dissolved totals with no surroundings and no solids.
     #[must_use]
-    pub fn dissolved(
-        name: Option<String>,
-        setting: Setting,
-        totals: Vec<(Species, f64)>,
-        ledger: Ledger,
-    ) -> Self {
+    pub fn dissolved(name: Option<String>, setting: Setting, dissolved: Dissolved, ledger: Ledger) -> Self {
         Self(Arc::new(Inner {
             name,
             setting,
-            analysis: Analysis::Dissolved(totals),
+            analysis: Analysis::Dissolved(dissolved),
             treatments: vec![],
             ledger: Some(ledger),
             labels: BTreeMap::new(),
@@ -100,7 +94,7 @@ impl Sample {
     pub fn spoilt(name: Option<String>, labels: BTreeMap<String, String>, reason: String) -> Self {
         let setting =
             Setting { temperature: Temperature::REFERENCE, pressure: Pressure::ATMOSPHERE, water: 1.0 };
-        let dissolved = Self::dissolved(name, setting, vec![], Ledger::default());
+        let dissolved = Self::dissolved(name, setting, Dissolved::default(), Ledger::default());
         let inner = (*dissolved.0).clone();
         Self(Arc::new(Inner { analysis: Analysis::Spoilt(reason), ledger: None, labels, ..inner }))
     }

@@ -8,6 +8,7 @@ use super::csv_text::{ColumnKind, CsvCell, CsvError, CsvOptions, CsvText, Header
 use super::sample::Sample;
 use crate::named::Value;
 use crate::quantity::{Quantity, QuantityError};
+use crate::text::list;
 use crate::units::{Kind, Unit, UnitError};
 
 /// A survey that was read.
@@ -62,8 +63,9 @@ impl Survey {
         let columns = text.columns.iter().map(Column::of).collect::<Result<Vec<_>, _>>()?;
         let mut faults = Vec::new();
         let samples = text.rows.iter().map(|row| {
-            let notes: Vec<String> =
+            let mut notes: Vec<String> =
                 text.replacements.iter().filter(|r| r.line == row.line).map(ToString::to_string).collect();
+            notes.extend(not_measured(&columns, &row.cells));
             let sample = if row.faults.is_empty() {
                 read_row(&columns, &row.cells).map_err(|message| format!("line {}: {message}", row.line))
             } else {
@@ -167,6 +169,18 @@ fn number(value: f64, sigma: Option<f64>, unit: Option<&Unit>, label: &str) -> R
         }
         (Some(unit), sigma, _) => Quantity::measured(value, unit.clone(), sigma, label).map(Value::Quantity),
     }
+}
+
+/// What a row leaves empty is taken as none of it, which has to be said.
+fn not_measured(columns: &[Column], cells: &[CsvCell]) -> Option<String> {
+    let is_empty = |(column, cell): &(&Column, &CsvCell)| {
+        **cell == CsvCell::Missing
+            && matches!(column.meaning, Meaning::Key(_))
+            && Analyte::parse(&column.title).is_ok()
+    };
+    let empty: Vec<&str> =
+        columns.iter().zip(cells).filter(is_empty).map(|(column, _)| column.title.as_str()).collect();
+    (!empty.is_empty()).then(|| format!("not measured, so taken as none: {}", list(&empty)))
 }
 
 fn labels(columns: &[Column], cells: &[CsvCell]) -> BTreeMap<String, String> {

@@ -1,0 +1,302 @@
+//! From the derivatives of a solve to those by published constants and measured values.
+//!
+//! An answer depends on what its last stage found, that on constants and totals, and these totals on what the stage before
+//! delivered and on what was measured. The chain rule runs backwards along this: one transposed solve a stage.
+//!
+//! Every stage is looked at as one square system, however it was solved: what was held, however it was met, is a
+//! reservoir that delivers what the totals were moved by.
+//!
+//! | met by | held | delivers |
+//! |---|---|---|
+//! | a reservoir | pH, fugacity, saturation | what it holds |
+//! | carbon, at a known alkalinity and pH | pH | carbon, with the protons that keep the alkalinity |
+//! | protons, at a known carbon and fugacity | fugacity | protons |
+//! | a reagent | pH | the reagent |
+//!
+//! An alkalinity, electroneutrality and a total that makes the charges add up are linear in the totals: they turn what is
+//! delivered, or measured, into a direction in which all totals move.
+
+use std::collections::BTreeMap;
+
+use super::analysis::Outcome;
+use super::assemble::System;
+use crate::chem::{Species, rational};
+use crate::ledger::Formation;
+use crate::quantity::{Input, Quantity};
+use crate::solve::sensitivity::{Found, Given, Sensitivities};
+use crate::solve::{Mineral, Problem, Reservoir};
+use crate::units::{Temperature, Unit};
+
+const LN_10: f64 = std::f64::consts::LN_10;
+/// log10 units of standard uncertainty per kelvin away from the one temperature a constant is known at: an assumption of
+/// this project.
+pub const SIGMA_PER_KELVIN: f64 = 0.01;
+/// Kelvin; derivatives by temperature are central differences of constants, never of equilibria.
+const TEMPERATURE_STEP: f64 = 0.01;
+
+/// What an answer can depend on directly.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Variable {
+    /// ln of the activity of a component.
+    LnActivity(usize),
+    /// ln of the molality of a solute.
+    LnMolality(usize),
+    /// ln γ of a solute.
+    LnGamma(usize),
+    /// Ionic strength.
+    IonicStrength,
+    /// ln of the activity of water.
+    LnWaterActivity,
+    /// What a reservoir delivered.
+    ReservoirAmount(usize),
+    /// The amount of a mineral.
+    MineralAmount(usize),
+    /// ln K of a gas or solid, by its position in [`System::phases`].
+    PhaseLnK(usize),
+    /// Temperature, K.
+    Temperature,
+}
+
+/// Derivatives of an answer by what the last stage found.
+pub type Slopes = Vec<(Variable, f64)>;
+
+/// What an outcome meets, as one square system.
+#[derive(Debug, Clone, Default)]
+pub struct Conditions {
+    /// What is held, in the order of the solver's reservoirs.
+    pub held: Vec<Held>,
+    /// Solids that may form, in the order of the solver's minerals.
+    pub minerals: Vec<(Species, Mineral)>,
+    /// Measured values that the totals are sums of, each with the change of every total per unit of it. Empty where the
+    /// totals are those that the stage before delivered.
+    pub measured: Vec<(Quantity, Vec<f64>)>,
+    /// Temperature in kelvin where it was measured with an uncertainty.
+    pub temperature: Option<Quantity>,
+}
+
+/// Something held.
+#[derive(Debug, Clone)]
+pub struct Held {
+    /// The equation.
+    pub reservoir: Reservoir,
+    /// The gas or solid whose constant it involves.
+    pub phase: Option<Species>,
+    /// Change of every total per mole delivered.
+    pub supply: Vec<f64>,
+    /// The measured value with the derivative of `ln_value` by it; none where it was chosen.
+    pub value: Option<(Quantity, f64)>,
+}
+
+/// The derivatives of one answer by everything it comes from.
+#[derive(Debug, Clone, Default)]
+pub struct Influence {
+    /// By log10 K of each of the ledger's reactions, by their order.
+    pub constants: BTreeMap<usize, f64>,
+    /// By measured values, and by the unknown temperature dependence of constants.
+    pub measured: Vec<(Quantity, f64)>,
+}
+
+/// A stage linearised about its outcome.
+#[derive(Debug)]
+pub struct Stage {
+    sensitivities: Sensitivities,
+    zero: Found,
+    by_temperature: Option<Given>,
+}
+
+impl Stage {
+    /// Linearises an outcome; `None` where it does not change smoothly.
+    #[must_use]
+    pub fn new(outcome: &Outcome) -> Option<Self> {
+        let conditions = outcome.conditions.as_ref()?;
+        let problem = Problem {
+            reservoirs: conditions.held.iter().map(|held| held.reservoir.clone()).collect(),
+            minerals: conditions.minerals.iter().map(|(_, mineral)| mineral.clone()).collect(),
+            ..outcome.system.problem(&outcome.totals)
+        };
+        let supplies: Vec<Vec<f64>> = conditions.held.iter().map(|held| held.supply.clone()).collect();
+        let sensitivities =
+            Sensitivities::new(&problem, outcome.system.model(), &outcome.converged, &supplies)?;
+        let by_temperature = match conditions.temperature {
+            None => None,
+            Some(_) => Some(by_temperature(outcome, conditions, &problem)?),
+        };
+        Some(Self { sensitivities, zero: Found::zero(&problem), by_temperature })
+    }
+}
+
+impl Influence {
+    /// What an answer of the last of `stages` (each with the outcome it linearises) comes from.
+    #[must_use]
+    pub fn of(slopes: &[(Variable, f64)], stages: &[(&Outcome, &Stage)]) -> Self {
+        let mut influence = Self::default();
+        let Some(((outcome, last), before)) = stages.split_last() else { return influence };
+        let mut weight = last.zero.clone();
+        for (variable, slope) in slopes {
+            match *variable {
+                Variable::LnActivity(k) => weight.ln_a[k] += slope,
+                Variable::LnMolality(i) => weight.ln_c[i] += slope,
+                Variable::LnGamma(i) => weight.ln_gamma[i] += slope,
+                Variable::IonicStrength => weight.ionic_strength += slope,
+                Variable::LnWaterActivity => weight.ln_water_activity += slope,
+                Variable::ReservoirAmount(f) => weight.reservoir_amount[f] += slope,
+                Variable::MineralAmount(p) => weight.mineral_amount[p] += slope,
+                Variable::PhaseLnK(p) => {
+                    let (formed, _) = outcome.system.phases().nth(p).expect("a phase of the system");
+                    influence.add_constants(&outcome.system, formed, *slope);
+                    influence.add_phase_temperature(outcome, p, *slope);
+                }
+                Variable::Temperature => influence.add_temperature(outcome, *slope),
+            }
+        }
+        let none = vec![0.0; outcome.totals.len()];
+        let mut by_totals = influence.add_stage(outcome, last, &weight, &none);
+        for (outcome, stage) in before.iter().rev() {
+            // What it delivered: the totals it began with, and what its reservoirs gave.
+            let mut weight = stage.zero.clone();
+            let held = outcome.conditions.iter().flat_map(|conditions| &conditions.held);
+            for (amount, held) in weight.reservoir_amount.iter_mut().zip(held) {
+                *amount = dot(&held.supply, &by_totals);
+            }
+            by_totals = influence.add_stage(outcome, stage, &weight, &by_totals);
+        }
+        influence
+    }
+
+    /// Adds the inputs of one stage and returns the derivatives by the totals it began with.
+    fn add_stage(&mut self, outcome: &Outcome, stage: &Stage, weight: &Found, direct: &[f64]) -> Vec<f64> {
+        let Some(conditions) = &outcome.conditions else { return direct.to_vec() };
+        let by = stage.sensitivities.pull(weight);
+        let system = &outcome.system;
+        for (formed, slope) in system.solutes().zip(&by.ln_k) {
+            self.add_constants(system, formed, *slope);
+        }
+        for (held, slope) in conditions.held.iter().zip(&by.reservoirs) {
+            if let Some((formed, _)) = held.phase.as_ref().and_then(|phase| system.phase(phase)) {
+                self.add_constants(system, formed, -slope);
+            }
+            if let Some((value, by_value)) = &held.value {
+                self.measured.push((value.clone(), slope * by_value));
+            }
+        }
+        for ((species, _), slope) in conditions.minerals.iter().zip(&by.minerals) {
+            if let Some((formed, _)) = system.phase(species) {
+                self.add_constants(system, formed, -slope);
+            }
+        }
+        if let Some(change) = &stage.by_temperature {
+            self.add_temperature(outcome, product(&by, change));
+        }
+        let by_totals: Vec<f64> = by.totals.iter().zip(direct).map(|(by, direct)| by + direct).collect();
+        for (quantity, change) in &conditions.measured {
+            self.measured.push((quantity.clone(), dot(change, &by_totals)));
+        }
+        by_totals
+    }
+
+    /// Adds the constants behind a row of the solver, given the derivative by its ln K.
+    fn add_constants(&mut self, system: &System, formed: &Formation, by_ln_k: f64) {
+        if by_ln_k == 0.0 {
+            return;
+        }
+        for (k, multiple) in &formed.multiples {
+            let by_log_k = by_ln_k * LN_10 * rational::to_f64(*multiple);
+            *self.constants.entry(*k).or_default() += by_log_k;
+            if let Some((slope, away)) = unknown_slope(system, *k) {
+                self.measured.push((slope, by_log_k * away));
+            }
+        }
+    }
+
+    fn add_temperature(&mut self, outcome: &Outcome, by_kelvin: f64) {
+        if let Some(temperature) = outcome.conditions.as_ref().and_then(|own| own.temperature.as_ref()) {
+            self.measured.push((temperature.clone(), by_kelvin));
+        }
+    }
+
+    fn add_phase_temperature(&mut self, outcome: &Outcome, phase: usize, by_ln_k: f64) {
+        if outcome.conditions.as_ref().is_some_and(|own| own.temperature.is_some())
+            && let Some((above, below)) = neighbours(&outcome.system)
+        {
+            let ln_k = |system: &System| system.phases().nth(phase).map_or(0.0, |(_, row)| row.ln_k);
+            self.add_temperature(outcome, by_ln_k * (ln_k(&above) - ln_k(&below)) / (2.0 * TEMPERATURE_STEP));
+        }
+    }
+
+    /// The inputs as quantities, each with the derivative by it.
+    #[must_use]
+    pub fn partials(&self, system: &System) -> Vec<(Quantity, f64)> {
+        let mut partials = self.measured.clone();
+        for (k, (_, reaction)) in system.ledger().reactions().enumerate() {
+            if let (Some(slope), Ok(constant)) = (self.constants.get(&k), reaction.constant()) {
+                let log_k = Quantity::from_parts(0.0, Unit::one(), constant.history.parts());
+                partials.push((log_k, *slope));
+            }
+        }
+        partials
+    }
+}
+
+/// d log10 K / dT of a constant known at one temperature only, as an input of its own, with the distance in kelvin.
+fn unknown_slope(system: &System, reaction: usize) -> Option<(Quantity, f64)> {
+    let known = system.known_only_at(reaction)?;
+    let (name, reaction) = system.ledger().reactions().nth(reaction)?;
+    let label = format!("change of log K of `{name}` with temperature, per K (assumed)");
+    let identity = format!("d log K / dT of {} known at {} K", reaction.equation(), known.kelvin());
+    let input = Input::named(&identity, &label, Some(SIGMA_PER_KELVIN)).ok()?;
+    let slope = Quantity::of_input(0.0, Unit::one(), input);
+    Some((slope, system.temperature().kelvin() - known.kelvin()))
+}
+
+/// The same system a little warmer and a little colder.
+fn neighbours(system: &System) -> Option<(System, System)> {
+    let present = system.components().iter().copied().collect();
+    let at = |kelvin: f64| {
+        let temperature = Temperature::from_kelvin(kelvin).ok()?;
+        System::new(system.ledger(), &present, temperature).ok()
+    };
+    let kelvin = system.temperature().kelvin();
+    Some((at(kelvin + TEMPERATURE_STEP)?, at(kelvin - TEMPERATURE_STEP)?))
+}
+
+/// Change per kelvin of everything the solver was given, at given composition.
+fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem) -> Option<Given> {
+    let (above, below) = neighbours(&outcome.system)?;
+    let per_kelvin = |above: f64, below: f64| (above - below) / (2.0 * TEMPERATURE_STEP);
+    let converged = &outcome.converged;
+    let total_molality: f64 = converged.ln_c.iter().map(|ln_c| ln_c.exp()).sum();
+    let water = |system: &System| system.model().ln_water_activity(total_molality, converged.ionic_strength);
+    let mut given = Given::zero(problem);
+    given.ln_water_activity = per_kelvin(water(&above), water(&below));
+    let rows = above.problem(&outcome.totals).species.into_iter().zip(below.problem(&outcome.totals).species);
+    for (i, (warm, cold)) in rows.enumerate() {
+        let ln_gamma = |system: &System| system.model().ln_gamma(warm.charge, converged.ionic_strength);
+        given.ln_k[i] = per_kelvin(warm.ln_k, cold.ln_k);
+        given.ln_gamma[i] = per_kelvin(ln_gamma(&above), ln_gamma(&below));
+    }
+    let ln_k = |species: &Species| {
+        let ln_k = |system: &System| system.phase(species).map_or(0.0, |(_, row)| row.ln_k);
+        per_kelvin(ln_k(&above), ln_k(&below))
+    };
+    for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
+        *value = held.phase.as_ref().map_or(0.0, |phase| -ln_k(phase));
+    }
+    for (value, (species, _)) in given.minerals.iter_mut().zip(&conditions.minerals) {
+        *value = -ln_k(species);
+    }
+    Some(given)
+}
+
+/// `Σ derivative · change` over everything given.
+fn product(by: &Given, change: &Given) -> f64 {
+    dot(&by.ln_k, &change.ln_k)
+        + dot(&by.ln_gamma, &change.ln_gamma)
+        + by.ln_water_activity * change.ln_water_activity
+        + dot(&by.totals, &change.totals)
+        + dot(&by.reservoirs, &change.reservoirs)
+        + dot(&by.minerals, &change.minerals)
+}
+
+fn dot(a: &[f64], b: &[f64]) -> f64 {
+    a.iter().zip(b).map(|(a, b)| a * b).sum()
+}
