@@ -28,7 +28,12 @@ fn states_given_separately_stay_separate() {
     let ferrous = ["Fe^2+", "FeOH^+", "FeSO4(aq)", "FeF^+"];
     let sum: f64 = ferrous.iter().map(|key| get(&state, &format!("m({key}) [mmol/kg]"))).sum();
     assert!((sum - 2.0).abs() < 1e-12, "{sum}");
-    assert!((get(&state, "total(Fe) [mmol/kg]") - 3.0).abs() < 1e-12);
+    for (observable, expected) in
+        [("total(Fe)", 3.0), ("total(Fe(II))", 2.0), ("total(Fe(III))", 1.0), ("total(S(VI))", 9.0)]
+    {
+        let total = get(&state, &format!("{observable} [mmol/kg]"));
+        assert!((total - expected).abs() < 1e-9, "{observable}: {total}");
+    }
     assert_eq!(
         state.warnings().iter().filter(|note| note.contains("taken as")).count(),
         0,

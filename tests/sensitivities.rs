@@ -91,7 +91,7 @@ fn random_problem(seed: u64) -> Option<(Problem, Model, Converged)> {
     for row in &mut problem.species {
         row.water = random.integer(-1, 1) as f64;
     }
-    let model = if seed % 2 == 0 { Model::IDEAL } else { Model::davies(Davies::new(0.509)) };
+    let model = if seed.is_multiple_of(2) { Model::IDEAL } else { Model::davies(Davies::new(0.509)) };
     let settings = Settings::default();
     let first = solve(&problem, &Model::IDEAL, &settings, None).ok()?;
     match seed % 3 {
@@ -347,8 +347,8 @@ fn sensitivities_of_states_are_difference_quotients() {
         let names: Vec<String> = ledger.names().map(str::to_string).collect();
         for (r, name) in names.iter().enumerate() {
             let input = input_of(&ledger, name);
-            // A third of the constants of each case: every one is tested in several.
-            if (r + case.name.len()) % 3 == 0 {
+            // An eleventh of the constants of each case: fifteen cases meet nearly all of them.
+            if (r + 5 * case.name.len()).is_multiple_of(11) {
                 let quotients = derivative(|step| case.numbers(&sample, &shifted(&ledger, name, step)), 2e-3);
                 check(name, &input, quotients, 2e-3);
             }

@@ -10,8 +10,8 @@ use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
 use super::uncertainty::{Influence, Slopes, Stage, Variable};
-use crate::chem::{Element, Species, rational};
-use crate::ledger::Formation;
+use crate::chem::{Element, Rational, Species, rational};
+use crate::ledger::{Formation, Formations};
 use crate::nearest::nearest;
 use crate::physics::water;
 use crate::present::{Cell, Column, Table};
@@ -407,12 +407,12 @@ impl State {
             Observable::All(name) => {
                 let mut total = self.total(name, asked)?;
                 let analyte = Analyte::parse(name).map_err(|error| no_answer(asked, error.to_string()))?;
+                let formations = self.system().ledger().formations();
                 for solid in &inner.outcome.solids {
-                    if counts(&analyte, &solid.species) {
-                        let count = rational::to_f64(solid.species.count(analyte.element()));
-                        total.value += solid.amount * count;
-                        total.slopes.extend(scaled(&[solid.slope], count));
-                    }
+                    let formed = formations.formation(&solid.species).expect("solids are formed");
+                    let count = atoms(&analyte, formed, formations) / rational::to_f64(analyte.atoms());
+                    total.value += solid.amount * count;
+                    total.slopes.extend(scaled(&[solid.slope], count));
                 }
                 Ok(total)
             }
@@ -633,10 +633,8 @@ impl State {
             return Err(no_answer(asked, format!("the ledger has no species of {element}")));
         }
         let per_analyte = rational::to_f64(analyte.atoms());
-        let (value, slopes) = self.sum(|formed| match counts(&analyte, &formed.species) {
-            true => rational::to_f64(formed.species.count(element)) / per_analyte,
-            false => 0.0,
-        });
+        let formations = self.system().ledger().formations();
+        let (value, slopes) = self.sum(|formed| atoms(&analyte, formed, formations) / per_analyte);
         let answer = Answer::new(value, "mol/kg(water)", slopes);
         Ok(Answer { molar_mass: analyte.molar_mass(), element: Some((element, per_analyte)), ..answer })
     }
@@ -858,15 +856,19 @@ fn amount(value: f64, unit: &'static str, species: &Species, slopes: Slopes) -> 
     Answer { molar_mass: species.molar_mass(), element, ..Answer::new(value, unit, slopes) }
 }
 
-/// Whether a species holds an analyte's element, in its oxidation state if that can be told.
-fn counts(analyte: &Analyte, species: &Species) -> bool {
-    if species.count(analyte.element()) == 0.into() {
-        return false;
-    }
-    match (analyte.oxidation_state(), oxidation_state(species, analyte.element())) {
-        (Some(wanted), Some(own)) => wanted == own,
-        _ => true,
-    }
+/// Atoms of an analyte's element in a species, those in its oxidation state if it has one. A complex of several elements
+/// does not tell by its formula: FeSO4^+ is iron(III) because it is formed of that ion.
+fn atoms(analyte: &Analyte, formed: &Formation, formations: &Formations) -> f64 {
+    let element = analyte.element();
+    let carried = |(j, nu): &(usize, Rational)| {
+        let ion = &formations.components[*j];
+        let is_counted = match (analyte.oxidation_state(), oxidation_state(ion, element)) {
+            (Some(wanted), Some(own)) => wanted == own,
+            _ => true,
+        };
+        if is_counted { ion.count(element) * nu } else { 0.into() }
+    };
+    rational::to_f64(formed.stoichiometry.iter().map(carried).sum())
 }
 
 fn dissolved(system: &System, molalities: &[f64]) -> Vec<f64> {

@@ -119,7 +119,7 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 fn known_alternatives(known: &[String]) -> String {
-    if known.is_empty() { "there is none".into() } else { format!("there is {}", list(known)) }
+    if known.is_empty() { "there is none".into() } else { format!("the alternatives are {}", list(known)) }
 }
 
 impl Default for ActivityChoice {

@@ -492,7 +492,7 @@ mod ledger_functions {
     /// Shipped constants for the ledger's reactions that it does not use, with log K at 25 degC.
     ///
     /// ```rhai
-    /// ledger("freshwater").alternatives().where(|row| row["name"] == "quartz").column("by")[0]   // "Rimstidt 1980"
+    /// ledger("freshwater").alternatives().where(|row| row["name"] == "quartz").column("by")[1]   // "Rimstidt 1980"
     /// ```
     #[rhai_fn(name = "alternatives", get = "alternatives", pure, return_raw)]
     pub fn alternatives(ledger: &mut Ledger) -> ScriptResult<Table> {

@@ -427,7 +427,7 @@ mod state_functions {
     ///
     /// ```rhai
     /// let lake = sample(#{ pH: "8.15 +/- 0.02", alkalinity: "2.35 meq/L", Ca: "41.2 +/- 0.8 mg/L" });
-    /// lake.equilibrate().trail("SI(calcite)").len > 10   // true
+    /// lake.equilibrate().trail("SI(calcite)").len   // 10
     /// ```
     #[rhai_fn(name = "trail", pure, return_raw)]
     pub fn state_trail(state: &mut State, observable: &str) -> ScriptResult<Table> {

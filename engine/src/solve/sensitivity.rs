@@ -197,7 +197,8 @@ impl Sensitivities {
         let matrix = linear.matrix(model.d_ln_water_activity(converged.ionic_strength).1);
         let n = linear.n();
         let mut lu = Lu::default();
-        (matrix.iter().all(|entry| entry.is_finite()) && lu.factor(&matrix, n)).then(|| Self { lu, ..linear })
+        (matrix.iter().all(|entry| entry.is_finite()) && lu.factor(&matrix, n))
+            .then_some(Self { lu, ..linear })
     }
 
     /// The change of everything found with a small change of what is given.
