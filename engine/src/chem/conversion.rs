@@ -46,7 +46,7 @@ impl Reaction {
         let words =
             self.terms()?.has_gases.then(|| format!("gas standard {from} to {standard}: log K {shift:+.4}"));
         let conditions = Conditions { gases, ..constant.conditions.clone() };
-        Ok(self.shifted(&[(Term::One, shift)], conditions, words, vec![])?)
+        self.shifted(&[(Term::One, shift)], conditions, words, vec![])
     }
 
     /// Kc: the same with gases counted in mol/L, as ideal gases; `temperature` in the options fixes one temperature.
@@ -104,7 +104,7 @@ impl Reaction {
             }
         );
         let conditions = Conditions { medium, solutes: SoluteUnit::Molal, ..conditions.clone() };
-        Ok(self.at_own()?.shifted(&[(Term::One, shift)], conditions, Some(words), vec![])?)
+        self.at_own()?.shifted(&[(Term::One, shift)], conditions, Some(words), vec![])
     }
 
     /// The same at another ionic strength, mol/kg(water), by the activity coefficients of `davies` or `sit`.
@@ -487,7 +487,8 @@ impl Hydrogen {
 
     fn in_seawater(at: Temperature, salinity: f64, beyond_range: bool) -> Result<Self, ReactionError> {
         let (t, celsius) = (at.kelvin(), round(at.celsius()));
-        if !beyond_range && !((5.0..=45.0).contains(&salinity) && (0.0..=45.0).contains(&celsius)) {
+        let in_range = (5.0..=45.0).contains(&salinity) && (0.0..=45.0).contains(&celsius);
+        if !(in_range || beyond_range) {
             return refused(format!(
                 "the constant of HSO4^- holds for salinity 5 to 45 and 0 to 45 degC, not for {salinity} and {celsius} degC; \
                  allow it with `#{{ beyond_range: true }}`"
