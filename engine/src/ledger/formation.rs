@@ -156,5 +156,6 @@ fn fitness(species: &Species) -> u8 {
 ///
 /// As [`Reaction::constant`].
 pub(super) fn in_bar(reaction: &Reaction) -> Result<Reaction, ReactionError> {
+    reaction.check_for_ledger()?;
     reaction.to_gas_standard(GasStandard::Bar)
 }
