@@ -19,6 +19,7 @@ use super::error::{EquilibriumError, proton_total_open};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
 use crate::chem::{Element, Rational, Species, rational};
 use crate::ledger::{Formations, Ledger};
+use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
@@ -28,7 +29,6 @@ use crate::water::analyte::{Analyte, oxidation_state, to_roman};
 use crate::water::concentration::{Amount, Solution};
 use crate::water::{Sample, Treatment};
 
-const LN_10: f64 = std::f64::consts::LN_10;
 /// Oxidation states an element given whole is taken in where a ledger knows several; common in aerated water.
 const COMMON_STATES: [(&str, i64); 5] = [("Fe", 3), ("S", 6), ("N", 5), ("C", 4), ("Mn", 2)];
 /// The smallest total carbon looked at, mol/kg(water).
@@ -114,7 +114,7 @@ pub fn analyse(
     settings: &Settings,
 ) -> Result<Analysed, EquilibriumError> {
     let mut notes = sample.notes().to_vec();
-    let solution = solution(measured, sample);
+    let solution = solution(measured);
     let given = amounts(measured, ledger, &solution, &mut notes)?;
     let present = present_components(sample, measured, ledger, &given)?;
     let system = System::new(ledger, &present, sample.setting().temperature)?;
@@ -188,8 +188,8 @@ fn position(system: &System, component: usize) -> usize {
 }
 
 /// Density and dissolved mass of the sample as its volumes were measured.
-fn solution(measured: &Measured, sample: &Sample) -> Solution {
-    let at = measured.volume_temperature.unwrap_or_else(|| laboratory(sample));
+fn solution(measured: &Measured) -> Solution {
+    let at = measured.volume_temperature.unwrap_or_else(laboratory);
     let water_density = water::density(at.kelvin()) / 1000.0;
     let grams = measured.amounts.iter().map(|(analyte, _, amount)| {
         analyte.molar_mass().unwrap_or(0.0) * amount.moles.value() * amount.per.to_litre(water_density)
@@ -206,7 +206,7 @@ fn solution(measured: &Measured, sample: &Sample) -> Solution {
 }
 
 /// Laboratories measure volumes at 20 degC, whatever the water had in the field.
-fn laboratory(_: &Sample) -> crate::units::Temperature {
+fn laboratory() -> crate::units::Temperature {
     crate::units::Temperature::from_celsius(20.0).expect("above absolute zero")
 }
 

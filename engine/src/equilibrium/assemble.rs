@@ -5,13 +5,12 @@ use std::collections::BTreeSet;
 use crate::activity::{Davies, Model};
 use crate::chem::{Element, Rational, Species, rational};
 use crate::ledger::{ActivityChoice, Formation, Formations, Ledger};
+use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::solve::{Problem, Row, Total};
 use crate::units::Temperature;
 
 use super::error::EquilibriumError;
-
-const LN_10: f64 = std::f64::consts::LN_10;
 
 /// The species, gases and solids that can occur with the components present, at one temperature.
 #[derive(Debug, Clone)]

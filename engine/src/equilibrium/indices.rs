@@ -5,13 +5,13 @@ use super::error::EquilibriumError;
 use super::state::State;
 use super::uncertainty::{Conditions, Held, Influence, Stage, Variable};
 use crate::chem::rational;
+use crate::physics::constants::LN_10;
 use crate::quantity::{Quantity, QuantityError};
 use crate::solve::scalar::{self, Tolerance};
 use crate::solve::{Problem, Reservoir, Row, Settings, solve};
 use crate::units::Unit;
 use crate::water::Treatment;
 
-const LN_10: f64 = std::f64::consts::LN_10;
 /// ln of the fugacities of CO2, bar, between which the saturation pH is looked for.
 const FUGACITIES: (f64, f64) = (-30.0, 5.0);
 const FUGACITY_INTERVALS: usize = 20;

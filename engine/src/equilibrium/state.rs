@@ -12,7 +12,7 @@ use super::observable::{Asked, NAMES, Observable, ObservableError};
 use super::uncertainty::{Influence, Slopes, Stage, Variable};
 use crate::chem::{Element, Rational, Species, rational};
 use crate::ledger::{Formation, Formations};
-use crate::nearest::nearest;
+use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::present::{Cell, Column, Table};
 use crate::quantity::{Quantity, QuantityError};
@@ -24,7 +24,6 @@ use crate::water::analyte::{Analyte, oxidation_state};
 use crate::water::concentration::{SALT_TERM, Solution};
 use crate::water::{Dissolved, Sample, Treatment};
 
-const LN_10: f64 = std::f64::consts::LN_10;
 /// A sum smaller than this part of its terms is what rounding left of a zero.
 const ROUNDING: f64 = 1e-12;
 /// A doubtful constant is worth a warning where its species holds more than this part of a total.
@@ -892,10 +891,4 @@ fn solution(system: &System, molalities: &[f64]) -> Solution {
     let water_density = water::density(system.temperature().kelvin()) / 1000.0;
     let water_per_litre = water_density / (1.0 + (1.0 - SALT_TERM) * per_water);
     Solution { density: water_per_litre * (1.0 + per_water), dissolved: water_per_litre * per_water }
-}
-
-/// The nearest observable to a misspelt one, for completion and messages.
-#[must_use]
-pub fn nearest_observable(name: &str) -> Option<&'static str> {
-    nearest(name, NAMES.map(|(known, ..)| known))
 }

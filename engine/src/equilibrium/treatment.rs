@@ -10,13 +10,13 @@ use super::error::EquilibriumError;
 use super::uncertainty::{Conditions, Held, Variable};
 use crate::chem::{Element, Rational, Species, rational};
 use crate::ledger::{Formations, Ledger};
+use crate::physics::constants::LN_10;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
 use crate::solve::sensitivity::own_supplies;
 use crate::solve::{Converged, Mineral, Problem, Reservoir, Row, Settings, solve};
 use crate::water::{Sample, Treatment};
 
-const LN_10: f64 = std::f64::consts::LN_10;
 /// The largest amount of a reagent looked at, mol/kg(water).
 const MOST_REAGENT: f64 = 20.0;
 

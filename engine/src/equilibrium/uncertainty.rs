@@ -22,12 +22,12 @@ use super::analysis::Outcome;
 use super::assemble::System;
 use crate::chem::{Species, rational};
 use crate::ledger::Formation;
+use crate::physics::constants::LN_10;
 use crate::quantity::{Input, Quantity};
 use crate::solve::sensitivity::{Found, Given, Sensitivities};
 use crate::solve::{Mineral, Problem, Reservoir};
 use crate::units::{Temperature, Unit};
 
-const LN_10: f64 = std::f64::consts::LN_10;
 /// log10 units of standard uncertainty per kelvin away from the one temperature a constant is known at: an assumption of
 /// this project.
 pub const SIGMA_PER_KELVIN: f64 = 0.01;

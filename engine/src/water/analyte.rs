@@ -2,7 +2,7 @@
 
 use std::fmt;
 
-use crate::chem::{Element, Rational, Species, rational};
+use crate::chem::{Element, Rational, Species};
 use crate::nearest::nearest;
 
 /// The subject of a measured amount.
@@ -197,12 +197,6 @@ fn roman(text: &str) -> Option<i32> {
 pub fn to_roman(state: i32) -> String {
     let numeral = NUMERALS.get(state.unsigned_abs() as usize).copied().unwrap_or("?");
     format!("{}{numeral}", if state < 0 { "-" } else { "" })
-}
-
-/// A count of atoms as a float.
-#[must_use]
-pub fn atoms_f64(count: Rational) -> f64 {
-    rational::to_f64(count)
 }
 
 #[cfg(test)]
