@@ -15,6 +15,7 @@ use std::collections::BTreeSet;
 
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::assemble::{System, carriers};
+use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
 use crate::chem::{Element, Rational, Species, rational};
@@ -87,6 +88,8 @@ pub struct Outcome {
     pub exchanged: Vec<(String, f64)>,
     /// Amount of each solid that may form or is there without limit, mol/kg(water).
     pub solids: Vec<Solid>,
+    /// What treatments did to the totals.
+    pub dosed: Dosed,
     /// What it meets, where its derivatives are known.
     pub conditions: Option<Conditions>,
 }
@@ -140,6 +143,7 @@ pub fn analyse(
         totals: totals.clone(),
         exchanged: vec![],
         solids: vec![],
+        dosed: Dosed::default(),
         conditions,
     };
     let temperature = measured.temperature.clone();
@@ -188,7 +192,7 @@ fn position(system: &System, component: usize) -> usize {
 }
 
 /// Density and dissolved mass of the sample as its volumes were measured.
-fn solution(measured: &Measured) -> Solution {
+pub(super) fn solution(measured: &Measured) -> Solution {
     let at = measured.volume_temperature.unwrap_or_else(laboratory);
     let water_density = water::density(at.kelvin()) / 1000.0;
     let grams = measured.amounts.iter().map(|(analyte, _, amount)| {
@@ -206,7 +210,7 @@ fn solution(measured: &Measured) -> Solution {
 }
 
 /// Laboratories measure volumes at 20 degC, whatever the water had in the field.
-fn laboratory() -> crate::units::Temperature {
+pub(super) fn laboratory() -> crate::units::Temperature {
     crate::units::Temperature::from_celsius(20.0).expect("above absolute zero")
 }
 
@@ -322,9 +326,29 @@ fn treatment_components(sample: &Sample, ledger: &Ledger) -> Result<BTreeSet<usi
             Treatment::HoldPh { reagent: Some(reagent), .. } => {
                 present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
             }
+            Treatment::WithSolid { solid, .. } => {
+                let formed = formations.formation(ledger.find_phase(solid)?).expect("phases are formed");
+                present.extend(formed.stoichiometry.iter().map(|(j, _)| *j));
+            }
+            Treatment::Dose(dose) | Treatment::Remove(dose) => {
+                present.extend(super::treatment::reagent(ledger, &dose.reagent)?.into_iter().map(|(j, _)| j));
+            }
+            Treatment::AddSolution { solution, .. } => {
+                for (formula, _) in &solution.solutes {
+                    present.extend(super::treatment::reagent(ledger, formula)?.into_iter().map(|(j, _)| j));
+                }
+            }
+            Treatment::Adjust(adjust) => {
+                for (reagent, ..) in &adjust.reagents {
+                    present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
+                }
+            }
             // A solid that may form brings nothing with it: it needs what is there already.
             Treatment::Allow { solid, .. } => drop(ledger.find_phase(solid)?),
-            Treatment::HoldPh { .. } | Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
+            Treatment::HoldPh { .. }
+            | Treatment::Concentrate(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => {}
         }
     }
     Ok(present)

@@ -36,6 +36,7 @@ mod expect;
 mod general;
 mod ledger;
 mod modules;
+mod processes;
 mod quantity;
 mod reaction;
 mod sample;
@@ -44,6 +45,7 @@ mod state;
 mod syntax;
 mod table;
 mod translate;
+mod treatments;
 
 pub use closure::Closure;
 pub use diagnostic::{Diagnostic, Fail, ScriptResult, fail};
