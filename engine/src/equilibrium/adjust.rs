@@ -87,7 +87,8 @@ impl<'a> Search<'a> {
         adjust: &'a Adjust,
     ) -> Result<Self, EquilibriumError> {
         let asked = |(name, target): &(String, Quantity)| {
-            let mut asked = Asked::parse(name).map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
+            let mut asked =
+                Asked::parse(name).map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
             if *target.unit() != Unit::one() {
                 asked.unit = Some(target.unit().clone());
             }
@@ -126,7 +127,8 @@ impl<'a> Search<'a> {
     }
 
     fn wanted(&self) -> String {
-        let target = |(asked, target): (&Asked, &&Quantity)| format!("{} {}", asked.observable, shown(target));
+        let target =
+            |(asked, target): (&Asked, &&Quantity)| format!("{} {}", asked.observable, shown(target));
         list(&self.asked.iter().zip(&self.targets).map(target).collect::<Vec<_>>())
     }
 
@@ -208,7 +210,8 @@ impl<'a> Search<'a> {
     /// Newton's method from every start.
     fn every_answer(&self) -> Result<Vec<Vec<f64>>, EquilibriumError> {
         let n = self.reagents.len();
-        let (mut answers, mut nearest, mut why) = (Vec::<Vec<f64>>::new(), None::<(f64, Vec<f64>, Vec<f64>)>, None);
+        let (mut answers, mut nearest, mut why) =
+            (Vec::<Vec<f64>>::new(), None::<(f64, Vec<f64>, Vec<f64>)>, None);
         for start in 0..STARTS.len().pow(n as u32) {
             let share = |j: usize| STARTS[start / STARTS.len().pow(j as u32) % STARTS.len()];
             let between = |j: usize| {
@@ -257,7 +260,8 @@ impl<'a> Search<'a> {
                 break;
             }
             let Some(gradient) = self.gradient(&at(&u))? else { break };
-            let by_u = |row: &Vec<f64>| row.iter().zip(&u).map(|(slope, u)| slope * SMALL * u.exp()).collect();
+            let by_u =
+                |row: &Vec<f64>| row.iter().zip(&u).map(|(slope, u)| slope * SMALL * u.exp()).collect();
             let jacobian: Vec<Vec<f64>> = gradient.iter().map(by_u).collect();
             let wanted: Vec<f64> = misses.iter().map(|miss| -miss).collect();
             let Some(step) = solve(&jacobian, &wanted) else { break };
@@ -290,8 +294,9 @@ impl<'a> Search<'a> {
     /// ∂g_i/∂d_j; none where a target does not change smoothly.
     fn gradient(&self, amounts: &[f64]) -> Result<Option<Vec<Vec<f64>>>, EquilibriumError> {
         let label = |j: usize| format!("amount of {}", self.reagents[j]);
-        let inputs: Vec<Input> =
-            (0..amounts.len()).map(|j| Input::written(&label(j), Some(1.0)).expect("a plain sigma")).collect();
+        let inputs: Vec<Input> = (0..amounts.len())
+            .map(|j| Input::written(&label(j), Some(1.0)).expect("a plain sigma"))
+            .collect();
         let tagged = amounts.iter().zip(&inputs);
         let tagged = tagged.map(|(d, input)| Quantity::of_input(*d, molality(), input.clone())).collect();
         let state = self.state(tagged)?;
@@ -313,7 +318,8 @@ impl<'a> Search<'a> {
         let answers: Result<Vec<Quantity>, _> = self.asked.iter().map(|asked| state.answer(asked)).collect();
         let answers = answers.map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
         let gradient = self.gradient(amounts)?;
-        let unit_vector = |j: usize| (0..amounts.len()).map(|i| f64::from(u8::from(i == j))).collect::<Vec<_>>();
+        let unit_vector =
+            |j: usize| (0..amounts.len()).map(|i| f64::from(u8::from(i == j))).collect::<Vec<_>>();
         let inverse: Option<Vec<Vec<f64>>> = gradient
             .and_then(|gradient| (0..amounts.len()).map(|j| solve(&gradient, &unit_vector(j))).collect());
         let dose = |(j, d): (usize, &f64)| {
@@ -351,7 +357,8 @@ fn short(number: f64) -> String {
 }
 
 fn shown(target: &Quantity) -> String {
-    let unit = target.unit().display(Style::Ascii);
+    let unit =
+        if *target.unit() == Unit::one() { String::new() } else { target.unit().display(Style::Ascii) };
     format!("{} {unit}", short(target.value())).trim_end().into()
 }
 

@@ -85,7 +85,8 @@ impl<'a> Course<'a> {
             }
             Treatment::WithSolid { solid, amount } => {
                 let ledger = self.system.ledger();
-                let formed = ledger.formations().formation(ledger.find_phase(solid)?).expect("phases are formed");
+                let formed =
+                    ledger.formations().formation(ledger.find_phase(solid)?).expect("phases are formed");
                 let change = self.change(&formed.stoichiometry);
                 let factor = amount.per.to_water(&self.litre());
                 self.add(&amount.moles, &change, factor);
@@ -153,9 +154,10 @@ impl<'a> Course<'a> {
             brought.iter_mut().zip(&change).for_each(|(sum, change)| *sum += change * moles.value());
         }
         // A larger sample is diluted less: dT/dr = (c ν - w' T) / (w + r w'), dr/dV = -r/V.
-        let by_volume = brought.iter().zip(&self.totals).map(|(brought, total)| {
-            -(brought - added_water * total) / whole * ratio / sample_volume.value()
-        });
+        let by_volume = brought
+            .iter()
+            .zip(&self.totals)
+            .map(|(brought, total)| -(brought - added_water * total) / whole * ratio / sample_volume.value());
         self.measured.push((sample_volume.clone(), by_volume.collect()));
         Ok(())
     }

@@ -22,7 +22,8 @@ pub fn mix(
     let mut dissolved = Dissolved::default();
     let (mut kelvin, mut notes) = (Vec::new(), Vec::new());
     for (position, (part, share)) in parts.iter().enumerate().filter(|(_, (_, share))| *share > 0.0) {
-        let state = super::equilibrate(part, Some(ledger), settings).map_err(|error| of_part(position, part, error))?;
+        let state = super::equilibrate(part, Some(ledger), settings)
+            .map_err(|error| of_part(position, part, error))?;
         for (species, total) in state.dissolved_quantities() {
             dissolved.totals.push((species, shared(&total, *share).map_err(undefined)?));
         }

@@ -8,6 +8,7 @@ pub mod acid_base;
 mod adjust;
 pub mod analysis;
 pub mod assemble;
+mod buffer;
 mod dosing;
 mod error;
 mod indices;
@@ -19,10 +20,10 @@ pub mod treatment;
 pub mod uncertainty;
 
 pub use assemble::System;
+pub use dosing::Dosed;
 pub use error::EquilibriumError;
 pub use observable::{Asked, Observable, ObservableError};
 pub use state::State;
-pub use dosing::Dosed;
 pub use trail::trail;
 
 use crate::ledger::{Ledger, shipped};

@@ -6,6 +6,7 @@ use std::sync::{Arc, OnceLock};
 use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
 use super::analysis::{Analysed, Misfit, Outcome, Solid, ln_saturation, saturation_slopes, scaled};
 use super::assemble::{Doubt, System};
+use super::buffer;
 use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
@@ -204,7 +205,8 @@ impl State {
         let mut sample = Sample::dissolved(name, setting, dissolved, system.ledger().clone());
         for name in keep {
             let allowed = Treatment::Allow { solid: (*name).into(), above: self.held_at(name)? };
-            sample = sample.treated(allowed).map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
+            sample =
+                sample.treated(allowed).map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
         }
         Ok(sample)
     }
@@ -215,7 +217,9 @@ impl State {
         let wanted = ledger.find_phase(name)?;
         let is_it = |solid: &str| ledger.find_phase(solid).is_ok_and(|own| own == wanted);
         let index = |treatment: &Treatment| match treatment {
-            Treatment::Allow { solid, above: index } | Treatment::Saturate { solid, index } if is_it(solid) => {
+            Treatment::Allow { solid, above: index } | Treatment::Saturate { solid, index }
+                if is_it(solid) =>
+            {
                 Some(*index)
             }
             _ => None,
@@ -384,6 +388,14 @@ impl State {
                 let ((cations, mut slopes), (anions, by_anions)) = self.charges();
                 slopes.extend(scaled(&by_anions, -1.0));
                 plain(cations - anions, "eq/kg(water)", slopes)
+            }
+            Observable::BufferIntensity => {
+                let value = buffer::intensity(self).map_err(nothing)?;
+                // Its own derivatives would be second ones: what it is uncertain by is not stated.
+                let unit = Unit::parse("eq/kg(water)").expect("a known unit");
+                let unstated = Quantity::measured(value, unit, None, "buffer intensity")
+                    .map_err(|error| no_answer(asked, error.to_string()))?;
+                Ok(Answer { partials: vec![(unstated, 1.0)], ..Answer::new(value, "eq/kg(water)", vec![]) })
             }
             Observable::CarbonatePotential => {
                 let potential = indices::carbonate_potential(self).map_err(nothing)?;

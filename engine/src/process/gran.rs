@@ -89,7 +89,9 @@ pub enum GranError {
         most: f64,
     },
     /// No slope.
-    #[error("the free acid does not rise with the volume between pH {0} and {1}: these readings lie before equivalence")]
+    #[error(
+        "the free acid does not rise with the volume between pH {0} and {1}: these readings lie before equivalence"
+    )]
     NotRising(f64, f64),
     /// A base.
     #[error("`titrant`: {0} is no acid; Gran's plot of alkalinity takes a strong acid, `0.1 mol/L HCl`")]
@@ -115,7 +117,8 @@ pub fn gran(readings: Readings, ledger: &Ledger) -> Result<Gran, GranError> {
     }
     let normality: f64 = strength.iter().map(|(moles, n)| moles.value() * n).sum();
     if normality <= 0.0 {
-        let formulas: Vec<&str> = readings.titrant.solutes.iter().map(|(formula, _)| formula.as_str()).collect();
+        let formulas: Vec<&str> =
+            readings.titrant.solutes.iter().map(|(formula, _)| formula.as_str()).collect();
         return Err(GranError::NoAcid(crate::text::list(&formulas)));
     }
     let Line { slope, root, scatter, sigma, n } = Line::through(&readings)?;
@@ -126,7 +129,8 @@ pub fn gran(readings: Readings, ledger: &Ledger) -> Result<Gran, GranError> {
     let alkalinity = normality * litres.value() / sample.value();
     let mut partials = vec![(&litres, normality / sample.value()), (sample, -alkalinity / sample.value())];
     partials.extend(strength.iter().map(|(moles, n)| (*moles, n * litres.value() / sample.value())));
-    let alkalinity = Quantity::from_partials(alkalinity, Unit::parse("eq/L").expect("a known unit"), &partials)?;
+    let alkalinity =
+        Quantity::from_partials(alkalinity, Unit::parse("eq/L").expect("a known unit"), &partials)?;
     Ok(Gran { volume, alkalinity, n_points: n, slope, scatter, readings })
 }
 

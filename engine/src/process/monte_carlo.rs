@@ -53,7 +53,9 @@ pub enum MonteCarloError {
         nearest: Option<String>,
     },
     /// Nothing that varies.
-    #[error("`vary`: {0}; write `Ca: \"41.2 +/- 0.8 mg/L\"`, or fill in the constants with `.assume_sigma(0.05)`")]
+    #[error(
+        "`vary`: {0}; write `Ca: \"41.2 +/- 0.8 mg/L\"`, or fill in the constants with `.assume_sigma(0.05)`"
+    )]
     Nothing(String),
     /// The water itself.
     #[error(transparent)]
@@ -156,13 +158,17 @@ impl Inputs {
             quantities.push(quantity.clone());
             quantity.clone()
         });
-        let measured = quantities.iter().flat_map(|quantity| quantity.parts().iter().map(|part| part.input.clone()));
+        let measured =
+            quantities.iter().flat_map(|quantity| quantity.parts().iter().map(|part| part.input.clone()));
         let constants = ledger.reactions().flat_map(|(name, reaction)| {
             let history = reaction.constant().ok().map(|constant| &constant.history);
             let stated = history.into_iter().flat_map(|history| history.parts()).map(|part| part.input);
             let influences = history.into_iter().flat_map(|history| history.influences());
             let influences = influences.map(|influence| influence.input.clone());
-            stated.chain(influences).chain(unknown_slope(name, reaction).map(|(input, _)| input)).collect::<Vec<_>>()
+            stated
+                .chain(influences)
+                .chain(unknown_slope(name, reaction).map(|(input, _)| input))
+                .collect::<Vec<_>>()
         });
         let stated = |input: &Input| input.sigma().is_some_and(|sigma| sigma > 0.0);
         let found: Vec<Input> = match vary {
@@ -193,7 +199,8 @@ impl Inputs {
     }
 
     fn draw(&self, seed: u64, draw: u64) -> Moved {
-        let z: Vec<f64> = (0..self.inputs.len()).map(|input| standard_normal(seed, draw, input as u64)).collect();
+        let z: Vec<f64> =
+            (0..self.inputs.len()).map(|input| standard_normal(seed, draw, input as u64)).collect();
         let z = |i: usize| match self.factor.get(i) {
             None => z[i],
             Some(row) => row.iter().zip(&z).map(|(l, z)| l * z).sum(),
@@ -209,7 +216,8 @@ fn correlated(inputs: &[Input], quantities: &[Quantity]) -> Vec<Vec<f64>> {
     let between = |a: &Input, b: &Input| {
         quantities.iter().map(|quantity| quantity.input_correlation(a, b)).find(|r| *r != 0.0).unwrap_or(0.0)
     };
-    let r: Vec<Vec<f64>> = (0..n).map(|i| (0..=i).map(|j| between(&inputs[i], &inputs[j])).collect()).collect();
+    let r: Vec<Vec<f64>> =
+        (0..n).map(|i| (0..=i).map(|j| between(&inputs[i], &inputs[j])).collect()).collect();
     if (0..n).all(|i| r[i][..i].iter().all(|r| *r == 0.0)) {
         return vec![];
     }
@@ -249,7 +257,8 @@ fn constant_moved(name: &str, reaction: &Reaction, moved: &Moved) -> Option<LogK
             log_k = sum;
         }
     }
-    if let (Some((input, known)), Some(value)) = (unknown_slope(name, reaction), log_k.only_at().map(|at| log_k.nearest_to(at).0))
+    if let (Some((input, known)), Some(value)) =
+        (unknown_slope(name, reaction), log_k.only_at().map(|at| log_k.nearest_to(at).0))
         && let Some(slope) = moved.get(&input)
     {
         let at_zero = value - slope * known.kelvin();
@@ -279,4 +288,3 @@ fn mixed(x: u64) -> u64 {
     let x = (x ^ (x >> 27)).wrapping_mul(0x94D0_49BB_1331_11EB);
     x ^ (x >> 31)
 }
-

@@ -106,7 +106,8 @@ impl Titration {
         let run = Run::equilibrate(&samples, self.ledger.as_ref(), settings, progress)?;
         let title = format!("{VOLUME} [{}]", self.unit.display(Style::Ascii));
         let axis = Column::numbers(title.as_str(), volumes.iter().copied());
-        Ok(Run::new(vec![axis], run.outcomes().to_vec()).with_origin(Origin::Titration(Box::new(self.clone()))))
+        Ok(Run::new(vec![axis], run.outcomes().to_vec())
+            .with_origin(Origin::Titration(Box::new(self.clone()))))
     }
 
     /// Where the curve of pH over volume is steepest, found between the volumes of a run by further equilibria.
@@ -114,7 +115,11 @@ impl Titration {
     /// # Errors
     ///
     /// [`TitrationError::TooFew`], or an equilibrium that failed.
-    fn steepest(&self, points: &[(f64, f64)], settings: &Settings) -> Result<Vec<(f64, f64)>, TitrationError> {
+    fn steepest(
+        &self,
+        points: &[(f64, f64)],
+        settings: &Settings,
+    ) -> Result<Vec<(f64, f64)>, TitrationError> {
         if points.len() < 4 {
             return Err(TitrationError::TooFew(points.len()));
         }
@@ -130,7 +135,12 @@ impl Titration {
     }
 
     /// Golden-section search for the largest |dpH/dV|.
-    fn steepest_between(&self, low: f64, high: f64, settings: &Settings) -> Result<(f64, f64), TitrationError> {
+    fn steepest_between(
+        &self,
+        low: f64,
+        high: f64,
+        settings: &Settings,
+    ) -> Result<(f64, f64), TitrationError> {
         const GOLDEN: f64 = 0.381_966_011_250_105_1;
 
         let width = high - low;

@@ -14,7 +14,9 @@ use crate::equilibrium::{EquilibriumError, State, equilibrate};
 use crate::ledger::{Ledger, shipped};
 use crate::named::{Named, Value};
 use crate::present::{Column, Table};
-use crate::process::{self, Gran, GranError, MonteCarloError, Readings, Run, Titration, TitrationError, Vary};
+use crate::process::{
+    self, Gran, GranError, MonteCarloError, Readings, Run, Titration, TitrationError, Vary,
+};
 use crate::quantity::Quantity;
 use crate::units::{self, Kind, Unit};
 use crate::water::{Sample, Titrant};
@@ -157,7 +159,11 @@ fn vary(found: Option<Value>) -> Result<Vary, Fail> {
     }
 }
 
-#[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "checked to be whole and not negative")]
+#[allow(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    reason = "checked to be whole and not negative"
+)]
 fn whole(options: &mut Named, key: &str, default: u64) -> Result<u64, Fail> {
     let Some(number) = options.number(key).map_err(Fail::from)? else { return Ok(default) };
     if number < 0.0 || number.fract() != 0.0 || number > 1e15 {
@@ -174,7 +180,9 @@ fn step_state(host: &Host, made: &Dynamic, ledger: Option<&Ledger>) -> ScriptRes
     }
     let Some(sample) = made.clone().try_cast::<Sample>() else {
         let made = docs::described(made);
-        return fail(format!("the closure of a path returns a sample or a state, not {made}")).argument(2).raise();
+        return fail(format!("the closure of a path returns a sample or a state, not {made}"))
+            .argument(2)
+            .raise();
     };
     match equilibrate(&sample, ledger, &settings(host)) {
         Err(EquilibriumError::Stopped) => host.stop().check().map(|()| Err("interrupted".into())),
@@ -242,8 +250,7 @@ mod process_functions {
         let titration = Titration::new(&water, titrant, &sample_volume, unit, ledger.as_ref());
         let titration = titration.map_err(Fail::from)?;
         let total = add.len() as u64;
-        let run =
-            titration.run(&add, &settings(&host), &|done| host.progress("titrate", done as u64, total));
+        let run = titration.run(&add, &settings(&host), &|done| host.progress("titrate", done as u64, total));
         host.stop().check()?;
         Ok(run.map_err(Fail::from)?)
     }
@@ -332,7 +339,12 @@ mod process_functions {
     /// fmt(run.states[1].alkalinity.value, ".4f")   // "0.0010"
     /// ```
     #[rhai_fn(name = "path", return_raw)]
-    pub fn path(context: NativeCallContext, start: Dynamic, values: Dynamic, step: FnPtr) -> ScriptResult<Run> {
+    pub fn path(
+        context: NativeCallContext,
+        start: Dynamic,
+        values: Dynamic,
+        step: FnPtr,
+    ) -> ScriptResult<Run> {
         walk(&context, &start, &values, &step, &Map::new())
     }
     /// The same with options: `keep` (solids that go along where they are there), `title` of the axis, `ledger`.
@@ -378,7 +390,9 @@ mod process_functions {
     #[rhai_fn(name = "summary", pure, return_raw)]
     pub fn monte_carlo_summary(run: &mut Run, observables: Array) -> ScriptResult<Table> {
         let text = |item: &Dynamic| {
-            item.clone().into_string().map_err(|found| fail(format!("observables are texts, not {found}")).argument(0))
+            item.clone()
+                .into_string()
+                .map_err(|found| fail(format!("observables are texts, not {found}")).argument(0))
         };
         let observables = observables.iter().map(text).collect::<Result<Vec<_>, _>>()?;
         Ok(process::monte_carlo::summary(run, &observables).map_err(Fail::from)?)

@@ -58,7 +58,9 @@ fn parts(list: &Array) -> Result<Vec<(Sample, f64)>, Fail> {
 fn targets(until: Option<Value>) -> Result<Vec<(String, Quantity)>, Fail> {
     let example = "write `until_is: #{ \"SI(calcite)\": 0.1 }`";
     let Some(Value::Map(map)) = until else {
-        return Err(fail("`until_is` takes a map of observables and their targets").help(example).key("until_is"));
+        return Err(fail("`until_is` takes a map of observables and their targets")
+            .help(example)
+            .key("until_is"));
     };
     let target = |(name, given): (String, Value)| {
         let asked = Asked::parse(&name).map_err(|error| Fail::from(error).key(name.clone()))?;
@@ -66,11 +68,11 @@ fn targets(until: Option<Value>) -> Result<Vec<(String, Quantity)>, Fail> {
         let target = match given {
             Value::Number(number) => Quantity::exact(number, unit),
             Value::Quantity(quantity) => quantity,
-            Value::Text(text) => {
-                Quantity::parse_any(&text, &unit, &name).map_err(|error| Fail::from(error).key(name.clone()))?
-            }
+            Value::Text(text) => Quantity::parse_any(&text, &unit, &name)
+                .map_err(|error| Fail::from(error).key(name.clone()))?,
             other => {
-                let message = format!("the target of `{name}` is a number or a quantity, not {}", other.kind());
+                let message =
+                    format!("the target of `{name}` is a number or a quantity, not {}", other.kind());
                 return Err(fail(message).help(example).key(name));
             }
         };
@@ -112,7 +114,10 @@ mod treatment_functions {
         let given = given.map_err(|fault| fail(fault.message).argument(1))?;
         // A mineral known by its name alone has no formula to weigh.
         let substance = Species::parse(solid).unwrap_or_else(|_| Species::water());
-        let read = match sample.ledger().map_or_else(|| crate::ledger::shipped::ledger("freshwater", None).ok(), |own| Some(own.clone())) {
+        let read = match sample
+            .ledger()
+            .map_or_else(|| crate::ledger::shipped::ledger("freshwater", None).ok(), |own| Some(own.clone()))
+        {
             Some(ledger) => concentration::substance(ledger.find_phase(solid).unwrap_or(&substance), &given),
             None => concentration::substance(&substance, &given),
         };

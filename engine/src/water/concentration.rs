@@ -131,10 +131,14 @@ pub fn substance(substance: &Species, given: &Quantity) -> Result<Amount, String
         None => (substance.molar_mass(), 1.0),
         Some(text) => {
             let part = Species::parse(text).map_err(|error| error.to_string())?;
-            let element = part.elements_beside_water().next().filter(|_| part.elements_beside_water().count() == 1);
-            let held = element.map_or_else(|| 0.into(), |element| substance.count(element) / part.count(element));
+            let element =
+                part.elements_beside_water().next().filter(|_| part.elements_beside_water().count() == 1);
+            let held =
+                element.map_or_else(|| 0.into(), |element| substance.count(element) / part.count(element));
             if held == 0.into() {
-                return Err(format!("`as {text}` counts nothing of {substance}: name an element it holds, or give moles"));
+                return Err(format!(
+                    "`as {text}` counts nothing of {substance}: name an element it holds, or give moles"
+                ));
             }
             (part.molar_mass(), 1.0 / rational::to_f64(held))
         }

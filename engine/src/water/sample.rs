@@ -40,7 +40,9 @@ pub enum SampleError {
     #[error(transparent)]
     Ledger(#[from] LedgerError),
     /// An analysis cannot be edited where there is none.
-    #[error("this water has no analysis to edit: it is what an equilibrium left dissolved, or a mixture; treat it instead")]
+    #[error(
+        "this water has no analysis to edit: it is what an equilibrium left dissolved, or a mixture; treat it instead"
+    )]
     NoAnalysis,
     /// A number out of its range.
     #[error("{0}")]
@@ -109,7 +111,9 @@ impl Sample {
             return refuse("`mix` takes at least one water, and more than nothing of it".into());
         };
         let setting = first.setting_after();
-        if let Some((other, _)) = parts.iter().find(|(part, _)| part.setting_after().pressure != setting.pressure) {
+        if let Some((other, _)) =
+            parts.iter().find(|(part, _)| part.setting_after().pressure != setting.pressure)
+        {
             return refuse(format!(
                 "`mix`: one water is at {} bar and one at {} bar; bring them to one pressure with `.compress_to`",
                 setting.pressure.bar(),
@@ -118,7 +122,9 @@ impl Sample {
         }
         let mut ledgers = parts.iter().filter_map(|(part, _)| part.ledger());
         let ledger = ledgers.next();
-        if let (Some(own), Some(other)) = (ledger, ledgers.find(|other| other.digest() != ledger.map_or_else(String::new, Ledger::digest))) {
+        if let (Some(own), Some(other)) =
+            (ledger, ledgers.find(|other| other.digest() != ledger.map_or_else(String::new, Ledger::digest)))
+        {
             return refuse(format!(
                 "`mix`: the waters are computed with different ledgers, `{}` and `{}`; give both one with `.with_ledger(book)`",
                 own.name(),

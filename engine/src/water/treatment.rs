@@ -112,7 +112,9 @@ pub fn substance(reagent: &str) -> Result<Species, String> {
     };
     if species.charge() != 0 {
         let charge = species.charge();
-        return Err(format!("`{species}` has charge {charge}; {example}, and brings its counter-ion with it"));
+        return Err(format!(
+            "`{species}` has charge {charge}; {example}, and brings its counter-ion with it"
+        ));
     }
     if species.elements_beside_water().next().is_none() {
         return Err(format!(
@@ -137,7 +139,8 @@ impl Dose {
     pub fn read(verb: &str, reagent: &str, amount: Value) -> Result<Self, String> {
         let substance = substance(reagent)?;
         let amount = named::quantity(reagent, amount, Kind::Amount).map_err(|fault| fault.message)?;
-        let amount = concentration::substance(&substance, &amount).map_err(|why| format!("`{reagent}`: {why}"))?;
+        let amount =
+            concentration::substance(&substance, &amount).map_err(|why| format!("`{reagent}`: {why}"))?;
         if amount.moles.value() < 0.0 {
             let other = if verb == "dose" { "`.remove` takes away" } else { "`.dose` adds" };
             return Err(format!("`{verb}`: {} of `{reagent}` is negative; {other}", amount.moles));
@@ -168,8 +171,10 @@ impl Adjust {
             ));
         }
         let bounds = |reagent: &String| {
-            let (least, most) = between(reagent)?.unwrap_or((Value::Number(0.0), Value::Number(MOST_REAGENT)));
-            let (least, most) = (Dose::read("between", reagent, least)?, Dose::read("between", reagent, most)?);
+            let (least, most) =
+                between(reagent)?.unwrap_or((Value::Number(0.0), Value::Number(MOST_REAGENT)));
+            let (least, most) =
+                (Dose::read("between", reagent, least)?, Dose::read("between", reagent, most)?);
             let (from, to) = (&least.amount, &most.amount);
             if from.per == to.per && from.moles.value() >= to.moles.value() {
                 return Err(format!(
@@ -202,9 +207,12 @@ impl Titrant {
             let species = substance(formula).map_err(|why| format!("{why}; {right}"))?;
             let given = Quantity::parse(strength, Kind::Amount, &format!("concentration of {formula}"))
                 .map_err(|error| format!("`{part}`: {error}; {right}"))?;
-            let amount = concentration::substance(&species, &given).map_err(|why| format!("`{part}`: {why}"))?;
+            let amount =
+                concentration::substance(&species, &given).map_err(|why| format!("`{part}`: {why}"))?;
             if amount.per != Per::Litre {
-                return Err(format!("`{part}`: a burette measures litres; give the titrant per litre, in mol/L"));
+                return Err(format!(
+                    "`{part}`: a burette measures litres; give the titrant per litre, in mol/L"
+                ));
             }
             if amount.moles.value() <= 0.0 {
                 return Err(format!("`{part}`: the concentration has to be above zero"));
