@@ -183,11 +183,12 @@ impl<'a> Course<'a> {
             .min_by(|a, b| a.0.total_cmp(&b.0));
         match most {
             Some((most, k)) if wanted > most * (1.0 + 1e-12) => Err(EquilibriumError::Unreachable(format!(
-                "`remove`: {wanted:.4e} mol/kg(water) of `{}` is more than there is; the water holds {:.4e} of {}, \
-                 so {most:.4e} can be taken away",
+                "`remove`: {} mol/kg(water) of `{}` is more than there is; the water holds {} of {}, so {} can be taken away",
+                short(wanted),
                 dose.reagent,
-                self.totals[k],
-                self.system.component_species(k)
+                short(self.totals[k]),
+                self.system.component_species(k),
+                short(most),
             ))),
             _ => Ok(()),
         }
@@ -216,4 +217,9 @@ fn per_water(moles: &Quantity, factor: f64) -> Result<Quantity, EquilibriumError
     let unit = Unit::parse("mol/kg(water)").expect("a known unit");
     Quantity::from_partials(moles.value() * factor, unit, &[(moles, factor)])
         .map_err(|error| EquilibriumError::Unreachable(error.to_string()))
+}
+
+/// A number of five digits, for messages.
+pub(super) fn short(number: f64) -> String {
+    format!("{number:.4e}").parse::<f64>().unwrap_or(number).to_string()
 }
