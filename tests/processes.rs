@@ -286,6 +286,8 @@ fn solids_that_are_kept_go_along() {
     let kept = state(&first.sample(&["calcite"]).unwrap());
     close(get(&kept, "n(calcite)"), get(&first, "n(calcite)"), 1e-12);
     close(get(&kept, "pH"), get(&first, "pH"), 1e-10);
+    close(get(&first, "removed(calcite)"), get(&first, "n(calcite)"), 0.0);
+    close(get(&kept, "removed(calcite)"), 0.0, 1e-12);
     let dissolved = state(&treated(&first.sample(&["calcite"]).unwrap(), vec![dose("HCl", "10 mmol/kg")]));
     assert_eq!(get(&dissolved, "n(calcite)"), 0.0);
     // The same solid given by hand.

@@ -12,25 +12,27 @@ use super::analysis::{self, Analysed};
 use super::assemble::System;
 use super::error::EquilibriumError;
 use super::treatment::reagent;
-use crate::chem::{Rational, rational};
+use crate::chem::{Rational, Species, rational};
 use crate::physics::water;
 use crate::quantity::Quantity;
 use crate::units::Unit;
 use crate::water::concentration::{Amount, SALT_TERM, Solution};
-use crate::water::{Dose, Sample, Titrant, Treatment};
+use crate::water::{Analysis, Dose, Sample, Titrant, Treatment};
 
 /// What was done to the totals.
 #[derive(Debug, Clone)]
 pub struct Dosed {
     /// Reagents with moles per kilogram of water that dissolved; negative where they were taken away.
     pub amounts: Vec<(String, Quantity)>,
+    /// Solids that were put beside the water, mol/kg(water).
+    pub solids: Vec<(Species, Quantity)>,
     /// How many times as much a kilogram of water holds of what was there at first.
     pub concentrated: f64,
 }
 
 impl Default for Dosed {
     fn default() -> Self {
-        Self { amounts: vec![], concentrated: 1.0 }
+        Self { amounts: vec![], solids: vec![], concentrated: 1.0 }
     }
 }
 
@@ -66,6 +68,10 @@ impl<'a> Course<'a> {
             dosed: Dosed::default(),
             untouched: true,
         };
+        if let Analysis::Dissolved(dissolved) = sample.analysis() {
+            let solids = dissolved.totals.iter().filter(|(species, _)| species.is_solid());
+            course.dosed.solids.extend(solids.cloned());
+        }
         for treatment in sample.treatments() {
             course.meet(treatment)?;
         }
@@ -90,6 +96,7 @@ impl<'a> Course<'a> {
                 let change = self.change(&formed.stoichiometry);
                 let factor = amount.per.to_water(&self.litre());
                 self.add(&amount.moles, &change, factor);
+                self.dosed.solids.push((formed.species.clone(), per_water(&amount.moles, factor)?));
                 Ok(())
             }
             Treatment::Concentrate(factor) => {
@@ -128,7 +135,8 @@ impl<'a> Course<'a> {
         let scale = |numbers: &mut Vec<f64>| numbers.iter_mut().for_each(|number| *number *= factor);
         scale(&mut self.totals);
         self.measured.iter_mut().for_each(|(_, change)| scale(change));
-        for (_, amount) in &mut self.dosed.amounts {
+        let solids = self.dosed.solids.iter_mut().map(|(_, amount)| amount);
+        for amount in self.dosed.amounts.iter_mut().map(|(_, amount)| amount).chain(solids) {
             *amount = per_water(amount, factor).unwrap_or_else(|_| amount.clone());
         }
         self.dosed.concentrated *= factor;
