@@ -23,4 +23,6 @@ mod tidy;
 #[cfg(test)]
 mod two_routes;
 #[cfg(test)]
+mod uncertainty;
+#[cfg(test)]
 mod waters;
