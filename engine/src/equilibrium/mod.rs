@@ -7,6 +7,7 @@
 pub mod acid_base;
 pub mod analysis;
 pub mod assemble;
+mod dissolved_mass;
 mod error;
 mod indices;
 pub mod observable;
