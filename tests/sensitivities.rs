@@ -12,7 +12,7 @@ use lysocline_engine::chem::Reaction;
 use lysocline_engine::chem::reaction::Constant;
 use lysocline_engine::equilibrium::{Asked, State, equilibrate};
 use lysocline_engine::ledger::{ActivityChoice, Ledger};
-use lysocline_engine::named::Value;
+use lysocline_engine::named::{Named, Value};
 use lysocline_engine::quantity::Quantity;
 use lysocline_engine::script::sandbox::Sandbox;
 use lysocline_engine::script::{Dynamic, Options, ScriptEngine, Session};
@@ -369,6 +369,89 @@ fn sensitivities_of_states_are_difference_quotients() {
     };
     let differences: Vec<String> = cases().par_iter().flat_map_iter(differing).collect();
     assert!(differences.is_empty(), "{}", differences.join("\n"));
+}
+
+/// Asserts that the slopes of some observables by one input are the difference quotients of whole solves.
+fn compare_one(what: &str, asked: &[&str], state: &State, input: &str, step: f64, at: impl Fn(f64) -> State) {
+    let numbers = |state: &State| -> Vec<f64> {
+        asked.iter().map(|text| state.number(&Asked::parse(text).unwrap()).unwrap().0).collect()
+    };
+    let (values, quotients) = (numbers(state), derivative(|by| numbers(&at(by)), step));
+    for ((observable, quotient), value) in asked.iter().zip(quotients).zip(values) {
+        let slope = slopes(state, observable).get(input).copied().unwrap_or(0.0);
+        let allowed = 1e-6 * quotient.abs() + 1e-13 * (1.0 + value.abs()) / step;
+        assert!((slope - quotient).abs() < allowed, "{what}: d {observable}: {slope:e}, by difference {quotient:e}");
+    }
+    let acts = asked.iter().any(|observable| slopes(state, observable).get(input).is_some_and(|slope| *slope != 0.0));
+    assert!(acts, "{what} does nothing");
+}
+
+/// A fugacity, a saturation index, a pH and a temperature that were written with `+/-`.
+#[test]
+fn values_of_treatments_are_inputs() {
+    let calcite = || "calcite".to_string();
+    type Chosen = (&'static str, f64, &'static str, Box<dyn Fn(f64) -> Treatment>);
+    let cases: [Chosen; 6] = [
+        ("a fugacity", 4.2e-4, "bar", Box::new(open)),
+        ("an unlimited solid", 0.3, "1", Box::new(move |index| Treatment::Saturate { solid: calcite(), index })),
+        ("a solid that may form", 0.2, "1", Box::new(move |above| Treatment::Allow { solid: calcite(), above })),
+        ("a pH", 7.0, "1", Box::new(|ph| Treatment::HoldPh { ph, reagent: None })),
+        ("a pH by reagent", 9.0, "1", Box::new(|ph| Treatment::HoldPh { ph, reagent: Some("NaOH".into()) })),
+        ("a temperature", 313.15, "K", Box::new(|t| Treatment::WarmTo(Temperature::from_kelvin(t).unwrap()))),
+    ];
+    let (case, ledger) = (Case::new("lake", lake(), vec![], &[]), freshwater());
+    let base = case.sample("", 0.0);
+    for (what, value, unit, treatment) in cases {
+        let stated = Quantity::measured(value, Unit::parse(unit).unwrap(), Some(0.01 * value), "chosen").unwrap();
+        let state = case.state(&base.treated_to(treatment(value), &stated).unwrap(), &ledger);
+        let asked = ["pH", "DIC", "m(CO3^2-)", "SI(calcite)", "ionic_strength", "total(Ca)"];
+        let step = if unit == "bar" { 1e-3 * value } else { 1e-2 };
+        compare_one(what, &asked, &state, "chosen", step, |by| {
+            case.state(&base.treated(treatment(value + by)).unwrap(), &ledger)
+        });
+    }
+    // Chosen without an uncertainty, the same value is exact.
+    let chosen = Quantity::measured(4.2e-4, Unit::parse("bar").unwrap(), None, "chosen").unwrap();
+    let state = case.state(&base.treated_to(open(4.2e-4), &chosen).unwrap(), &ledger);
+    assert!(!slopes(&state, "pH").contains_key("chosen"));
+}
+
+/// An enthalpy acts at 8.5 degC, where the lake was analysed, and otherwise at 40 degC, to which it is warmed.
+#[test]
+fn the_uncertainty_of_an_enthalpy_reaches_states_at_other_temperatures() {
+    let with_enthalpy = |enthalpy: f64| {
+        let text = |text: String| Value::Text(text);
+        let options = BTreeMap::from([
+            ("log_k".to_string(), text("-10.329 +/- 0.02".into())),
+            ("enthalpy".to_string(), text(format!("{enthalpy:?} +/- 0.4 kJ/mol"))),
+        ]);
+        let k2 = Reaction::read("HCO3^- <=> CO3^2- + H^+", None, Named::new(options), None).unwrap();
+        freshwater().replace("K2", &k2).unwrap()
+    };
+    let case = Case::new("lake", lake(), vec![warm(40.0)], &[]);
+    let sample = case.sample("", 0.0);
+    let state = case.state(&sample, &with_enthalpy(14.7));
+    let known = slopes(&state, "m(CO3^2-)");
+    let input = known.keys().find(|label| label.starts_with("enthalpy of HCO3^-")).expect("named");
+    let asked = ["pH", "DIC", "m(CO3^2-)", "SI(calcite)"];
+    compare_one(input, &asked, &state, input, 0.1, |by| case.state(&sample, &with_enthalpy(14.7 + by)));
+    // At 25 degC throughout it does nothing.
+    let mut inputs = lake();
+    inputs[0] = ("temperature", 25.0, "degC", 0.0);
+    let room = Case::new("lake at 25 degC", inputs, vec![], &[]);
+    let state = room.state(&room.sample("", 0.0), &with_enthalpy(14.7));
+    assert!(!slopes(&state, "m(CO3^2-)").contains_key(input));
+}
+
+#[test]
+fn a_temperature_without_an_uncertainty_is_not_stated() {
+    let text = |(key, text): (&str, &str)| (key.to_string(), Value::Text(text.into()));
+    let water = [("temperature", "8.5 degC"), ("pH", "8.15 +/- 0.02"), ("alkalinity", "2.35 meq/L"), ("Ca", "1 mmol/L")];
+    let sample = Sample::read(water.map(text).into()).unwrap();
+    let state = equilibrate(&sample, Some(&freshwater()), &Settings::default()).unwrap();
+    let index = state.get("SI(calcite)").unwrap();
+    let part = index.parts().iter().find(|part| part.input.label() == "temperature").expect("an input");
+    assert!(part.input.sigma().is_none() && part.sensitivity != 0.0, "{part:?}");
 }
 
 #[test]

@@ -31,6 +31,8 @@ use crate::units::{Temperature, Unit};
 /// log10 units of standard uncertainty per kelvin away from the one temperature a constant is known at: an assumption of
 /// this project.
 pub const SIGMA_PER_KELVIN: f64 = 0.01;
+/// How the names of inputs begin that stand for it.
+pub(super) const UNKNOWN_SLOPE: &str = "d log K / dT of";
 /// Kelvin; derivatives by temperature are central differences of constants, never of equilibria.
 const TEMPERATURE_STEP: f64 = 0.01;
 
@@ -269,7 +271,7 @@ fn unknown_slope(system: &System, reaction: usize) -> Option<(Quantity, f64)> {
     let known = system.known_only_at(reaction)?;
     let (name, reaction) = system.ledger().reactions().nth(reaction)?;
     let label = format!("change of log K of `{name}` with temperature, per K (assumed)");
-    let identity = format!("d log K / dT of {} known at {} K", reaction.equation(), known.kelvin());
+    let identity = format!("{UNKNOWN_SLOPE} {} known at {} K", reaction.equation(), known.kelvin());
     let input = Input::named(&identity, &label, Some(SIGMA_PER_KELVIN)).ok()?;
     let slope = Quantity::of_input(0.0, Unit::one(), input);
     Some((slope, system.temperature().kelvin() - known.kelvin()))

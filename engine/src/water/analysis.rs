@@ -378,6 +378,12 @@ fn not_negative(key: &str, amount: &Amount) -> Result<(), KeyFault> {
 
 fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
     let Some(key) = &measured.make_up else { return Ok(()) };
+    if matches!(measured.evidence.ph, Some(Ph::Electroneutral)) {
+        return Err(KeyFault::new(
+            "make_up",
+            format!("`pH: \"electroneutral\"` and `make_up: \"{key}\"` both make the charges add up: keep one"),
+        ));
+    }
     if measured.amounts.iter().any(|(_, own, _)| own == key) {
         return Ok(());
     }
