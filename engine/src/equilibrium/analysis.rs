@@ -195,9 +195,8 @@ fn solution(measured: &Measured) -> Solution {
         analyte.molar_mass().unwrap_or(0.0) * amount.moles.value() * amount.per.to_litre(water_density)
     });
     // Alkalinity and carbon are counted as hydrogencarbonate, which most of either is.
-    let carbonate = dissolved_mass::carbonate(measured).map_or(0.0, |amount| {
-        CARBONATE_MASS * amount.moles.value() * amount.per.to_litre(water_density)
-    });
+    let carbonate = dissolved_mass::carbonate(measured)
+        .map_or(0.0, |amount| CARBONATE_MASS * amount.moles.value() * amount.per.to_litre(water_density));
     let dissolved = (grams.sum::<f64>() + carbonate).max(0.0) / 1000.0;
     match measured.density {
         Some(density) => Solution { density, dissolved },

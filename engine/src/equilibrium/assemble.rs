@@ -4,7 +4,7 @@ use std::collections::BTreeSet;
 
 use crate::activity::{Davies, Model};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Formation, Formations, Ledger};
+use crate::ledger::{ActivityChoice, Formation, Formations, Ledger, LedgerError};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::solve::{Problem, Row, Total};
@@ -47,6 +47,9 @@ impl System {
         temperature: Temperature,
     ) -> Result<Self, EquilibriumError> {
         let formations = ledger.formations();
+        if let Some((name, _)) = formations.too_large.first().and_then(|k| ledger.reactions().nth(*k)) {
+            return Err(LedgerError::TooLarge(name.into()).into());
+        }
         let water = formations.component(&Species::water());
         let components: Vec<usize> = present.iter().copied().filter(|j| Some(*j) != water).collect();
         let (log_k, doubts) = constants(ledger, temperature);
@@ -70,7 +73,8 @@ impl System {
     pub fn at(&self, temperature: Temperature) -> Self {
         let formations = self.ledger.formations();
         let (log_k, doubts) = constants(&self.ledger, temperature);
-        let mut system = Self { temperature, doubts, model: model(self.ledger.activity(), temperature), ..self.clone() };
+        let mut system =
+            Self { temperature, doubts, model: model(self.ledger.activity(), temperature), ..self.clone() };
         for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
             row.ln_k = ln_k(&formations.species[*index], &log_k);
         }

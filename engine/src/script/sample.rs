@@ -13,8 +13,8 @@ use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::ledger::{Ledger, shipped};
 use crate::named::Value;
 use crate::nearest::nearest;
-use crate::text::{count, list};
 use crate::quantity::Quantity;
+use crate::text::{count, list};
 use crate::units::{Kind, Pressure, Temperature, Unit};
 use crate::water::csv_text::{Below, CsvOptions};
 use crate::water::{Sample, SampleError, Survey, SurveyError, Treatment};
@@ -140,8 +140,8 @@ fn fugacity(gas: &str, given: &Dynamic) -> Result<Quantity, Fail> {
             .argument(1));
     }
     let what = format!("fugacity of {gas}");
-    let fugacity =
-        crate::named::quantity(&what, value, Kind::Pressure).map_err(|fault| fail(fault.message).argument(1))?;
+    let fugacity = crate::named::quantity(&what, value, Kind::Pressure)
+        .map_err(|fault| fail(fault.message).argument(1))?;
     let wrong = |message: String| fail(message).argument(1);
     Pressure::try_from(&fugacity).map_err(|error| wrong(error.to_string()))?;
     fugacity.to(&Kind::Pressure.default_unit()).map_err(|error| wrong(error.to_string()))
@@ -359,7 +359,8 @@ mod sample_functions {
     #[rhai_fn(pure, return_raw)]
     pub fn warm_to(sample: &mut Sample, to: Dynamic) -> ScriptResult<Sample> {
         let stated = quantity("temperature", &to, Kind::Temperature)?;
-        let temperature = Temperature::try_from(&stated).map_err(|error| fail(error.to_string()).argument(0))?;
+        let temperature =
+            Temperature::try_from(&stated).map_err(|error| fail(error.to_string()).argument(0))?;
         let kelvin = stated.to(&Unit::known("K")).map_err(|error| fail(error.to_string()))?;
         treated_to(sample, Treatment::WarmTo(temperature), &kelvin)
     }

@@ -381,7 +381,9 @@ fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
     if matches!(measured.evidence.ph, Some(Ph::Electroneutral)) {
         return Err(KeyFault::new(
             "make_up",
-            format!("`pH: \"electroneutral\"` and `make_up: \"{key}\"` both make the charges add up: keep one"),
+            format!(
+                "`pH: \"electroneutral\"` and `make_up: \"{key}\"` both make the charges add up: keep one"
+            ),
         ));
     }
     if measured.amounts.iter().any(|(_, own, _)| own == key) {
