@@ -359,6 +359,8 @@ fn all_faults_of_a_file_are_said_at_once() {
          [[constant]]\nname = \"F\"\nreaction = \"HF(aq) <=> H^+ + F^-\"\nlog_k = -3.18\nsource = \"A (2020)\"\nprovenance = \"read\"\n\n\
          [[constant]]\nname = \"F\"\nreaction = \"HF2^- <=> HF(aq) + F^-\"\nlog_k = -0.6\nsource = \"A (2020)\"\nprovenance = \"heard\"\n\n\
          [[constant]]\nname = \"F\"\nreaction = \"HF2^- <=> HF(aq) + F^-\"\nlog_k = -0.6\nsource = \"A (2020)\"\nprovenance = \"read\"\n\n\
+         [[constant]]\nname = \"pH\"\nreaction = \"HS^- <=> S^2- + H^+\"\nlog_k = -17\nph_scale = \"totl\"\nsource = \"A (2020)\"\nprovenance = \"read\"\n\n\
+         [[constant]]\nname = \"V\"\nreaction = \"HS^- <=> S^2- + H^+\"\nlog_k = -17\ninfluences = [{ of = \"enthalpy\", sigma = -1 }]\nsource = \"A (2020)\"\nprovenance = \"read\"\n\n\
          [[formation]]\nspecies = \"Ca^2+\"\nenthalpy = \"-543.0 +/- 1.0 kJ/mol\"\nsource = \"A (2020)\"\nprovenance = \"memory\"\n",
         &[
             "line 2: no activity model `davis`: there are `ideal` and `davies`",
@@ -369,7 +371,10 @@ fn all_faults_of_a_file_are_said_at_once() {
             "line 29: `KH`: unknown key `standard`; did you mean `gas_standard`?",
             "line 45: `F`: `heard` is no provenance: it is `read`, `computed`, `memory` or `stated`",
             "line 48: there is a constant `F` already, in line 33: names are unique in a file",
-            "line 55: `formation of Ca^2+` needs `gibbs`, or `enthalpy` with `entropy`",
+            "line 58: `pH`: `totl` is no scale of pH: the scales are `free`, `total`, `seawater`, `nbs` and `activity`; did \
+             you mean `total`?",
+            "line 66: `V`: `influences`: each needs `log_k_terms`",
+            "line 71: `formation of Ca^2+` needs `gibbs`, or `enthalpy` with `entropy`",
         ],
     );
 }
