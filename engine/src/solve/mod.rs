@@ -45,7 +45,7 @@ mod tests;
 
 pub use certificate::Certificate;
 pub use exact::Total;
-pub use problem::{Coefficient, Mineral, Problem, Reservoir, Row};
+pub use problem::{Coefficient, Mineral, Mixture, Problem, Reservoir, Row};
 pub use settings::{Input, Settings, SolveError};
 pub use system::{Effort, Warm};
 
@@ -75,12 +75,25 @@ pub struct Converged {
     pub mineral_present: Vec<bool>,
     /// ln saturation of each mineral relative to its target; 0 when present. Shape `(n_minerals,)`.
     pub mineral_ln_saturation: Vec<f64>,
+    /// Each mixture. Shape `(n_mixtures,)`.
+    pub mixtures: Vec<Mixed>,
     /// What the solve took.
     pub effort: Effort,
     /// What was checked.
     pub certificate: Certificate,
     /// A start for a neighbouring problem.
     pub warm: Warm,
+}
+
+/// A mixture in an answer.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Mixed {
+    /// Sum of the amounts of its members; 0 where it is absent.
+    pub amount: f64,
+    /// ln of the sum of the saturations of its members relative to the target; 0 when present.
+    pub ln_saturation: f64,
+    /// ln of the mole fraction of each member, or of the one it would have. Shape `(n_members,)`.
+    pub ln_x: Vec<f64>,
 }
 
 /// Solves for the equilibrium of `problem` with the activity `model`.
@@ -143,6 +156,7 @@ pub fn solve(
         mineral_amount: phases.mineral_amount,
         mineral_present: phases.mineral_present,
         mineral_ln_saturation: phases.mineral_ln_saturation,
+        mixtures: vec![],
         effort: Effort { pivots: system.basis.pivots, ..system.effort },
         certificate,
         warm: system.warm(ionic_strength, ln_water_activity),

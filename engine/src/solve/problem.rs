@@ -67,6 +67,16 @@ pub struct Mineral {
     pub ln_target: f64,
 }
 
+/// An ideal mixture that may form, a solid solution or a gas at fixed pressure: present at `G = 0` or absent at `G < 0`,
+/// with `G = ln Σ_k exp(ln K_k + Σ ν_kj λ_j + w_k ln a_w) - ln_target`, so that the mole fractions add up to one.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Mixture {
+    /// Formation of each member from the components, as for a pure phase of it.
+    pub members: Vec<Row>,
+    /// ln of the saturation ratio at which the phase is held; ln of the total pressure of a gas.
+    pub ln_target: f64,
+}
+
 /// An equilibrium problem of `n_components` components.
 #[derive(Debug, Clone, PartialEq, Default)]
 pub struct Problem {
@@ -78,6 +88,8 @@ pub struct Problem {
     pub reservoirs: Vec<Reservoir>,
     /// Phases that may form.
     pub minerals: Vec<Mineral>,
+    /// Mixtures that may form.
+    pub mixtures: Vec<Mixture>,
     /// Total of each component over species and minerals, mol/kg(water); zero and negative totals are legal. Shape
     /// `(n_components,)`.
     pub totals: Vec<Total>,

@@ -44,6 +44,9 @@ pub struct Given {
     pub reservoirs: Vec<f64>,
     /// `ln_target - ln K` of each mineral; without effect where it is absent. Shape `(n_minerals,)`.
     pub minerals: Vec<f64>,
+    /// `ln_target - ln K` of each member of each mixture; without effect where it is absent. Shape `(n_mixtures,)` of
+    /// `(n_members,)`.
+    pub mixtures: Vec<Vec<f64>>,
 }
 
 /// A number for each thing that is found: changes of them, or weights in a sum of them. What is absent changes nothing.
@@ -76,6 +79,7 @@ impl Given {
             totals: vec![0.0; problem.n_components],
             reservoirs: vec![0.0; problem.reservoirs.len()],
             minerals: vec![0.0; problem.minerals.len()],
+            mixtures: problem.mixtures.iter().map(|mixture| vec![0.0; mixture.members.len()]).collect(),
         }
     }
 }
@@ -345,6 +349,7 @@ impl Sensitivities {
             totals: vec![0.0; n_components],
             reservoirs: vec![0.0; self.n_reservoirs],
             minerals: vec![0.0; self.n_minerals],
+            mixtures: vec![],
         };
         for species in &self.species {
             let mut direct = by_ln_c[species.idx];
