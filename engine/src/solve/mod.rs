@@ -24,7 +24,7 @@
 //! - `basis`: the stoichiometry in the basis of the most concentrated species, exactly. `system`: the state in it.
 //! - `feasibility`: totals that force exact zeros, or that nothing can satisfy.
 //! - `inner`: Newton's method on logarithmic balances, with Φ as merit, at given γ and given phases. `dense`: LU.
-//! - `phases`: which minerals are present. `ionic_strength`: γ and the activity of water.
+//! - `phases`: which phases are present. `mixtures`: how much of each mixture. `ionic_strength`: γ and the activity of water.
 //! - `sensitivity`: derivatives of an answer. `certificate`: what is checked. `scalar`: conditions that are not totals, as one equation outside all this.
 
 mod basis;
@@ -34,6 +34,7 @@ mod exact;
 mod feasibility;
 mod inner;
 mod ionic_strength;
+mod mixtures;
 mod phases;
 mod problem;
 pub mod scalar;
@@ -148,7 +149,7 @@ pub fn solve(
     }
     Ok(Converged {
         ln_a: component_activities(&system),
-        ln_c: std::mem::take(&mut system.ln_c),
+        ln_c: system.ln_c[..problem.species.len()].to_vec(),
         ln_gamma: std::mem::take(&mut system.ln_gamma),
         ionic_strength,
         ln_water_activity,
@@ -156,15 +157,28 @@ pub fn solve(
         mineral_amount: phases.mineral_amount,
         mineral_present: phases.mineral_present,
         mineral_ln_saturation: phases.mineral_ln_saturation,
-        mixtures: vec![],
+        mixtures: phases.mixtures,
         effort: Effort { pivots: system.basis.pivots, ..system.effort },
         certificate,
         warm: system.warm(ionic_strength, ln_water_activity),
     })
 }
 
+impl Mixed {
+    fn read(system: &System, mixture_idx: usize) -> Self {
+        let ln_fractions = system.ln_fractions(mixture_idx);
+        let ln_saturation = system.mixture_saturation(mixture_idx);
+        let ln_amount = system.level_of(system.amount_row(mixture_idx));
+        Self {
+            amount: if system.mixture_present[mixture_idx] { ln_amount.exp() } else { 0.0 },
+            ln_saturation,
+            ln_x: ln_fractions.iter().map(|ln_x| ln_x - ln_saturation).collect(),
+        }
+    }
+}
+
 fn component_activities(system: &System) -> Vec<f64> {
-    (0..system.basis.n).map(|k| system.basis.scale(k) * system.level_of(system.basis.unit_row(k))).collect()
+    (0..system.problem.n_components).map(|k| system.basis.scale(k) * system.level_of(system.basis.unit_row(k))).collect()
 }
 
 /// Amounts and saturations of reservoirs and minerals, as in [`Converged`].
@@ -173,6 +187,7 @@ struct Phases {
     mineral_amount: Vec<f64>,
     mineral_present: Vec<bool>,
     mineral_ln_saturation: Vec<f64>,
+    mixtures: Vec<Mixed>,
 }
 
 impl Phases {
@@ -187,17 +202,17 @@ impl Phases {
             mineral_amount: system.mineral_amount.clone(),
             mineral_present: vec![false; n_minerals],
             mineral_ln_saturation: (0..n_minerals).map(saturation).collect(),
+            mixtures: (0..system.problem.mixtures.len()).map(|p| Mixed::read(system, p)).collect(),
         };
         for column in 0..system.basis.n {
             if system.column[column] != Column::Held {
                 continue;
             }
-            match system.mineral_of(column) {
-                Some(mineral_idx) => phases.mineral_present[mineral_idx] = true,
-                None => {
-                    let reservoir_idx = system.basis.row_of(column) - system.problem.species.len();
-                    phases.reservoir_amount[reservoir_idx] = -system.held_amount(column).0;
-                }
+            if let Some(mineral_idx) = system.mineral_of(column) {
+                phases.mineral_present[mineral_idx] = true;
+            }
+            if let Some(reservoir_idx) = system.reservoir_of(column) {
+                phases.reservoir_amount[reservoir_idx] = -system.held_amount(column).0;
             }
         }
         phases

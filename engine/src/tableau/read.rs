@@ -145,7 +145,6 @@ impl Reader {
                 problem.minerals.extend(members.into_iter().map(|row| Mineral { row, ln_target: 0.0 }));
                 Part::Mineral(problem.minerals.len() - 1)
             } else {
-                self.fault(&place, "several members are still to come");
                 problem.mixtures.push(Mixture { members, ln_target: 0.0 });
                 Part::Mixture(problem.mixtures.len() - 1)
             };
