@@ -30,6 +30,7 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<Amoun
     const MOST_ROUNDS: usize = 60;
 
     if present(system).is_empty() || any_held(system) {
+        hold(system);
         let converged = inner::converge(system, settings)?;
         // A balance may have asked for a mixture meanwhile.
         if present(system).is_empty() {
@@ -76,6 +77,14 @@ fn any_held(system: &System) -> bool {
     })
 }
 
+/// Holds all amounts where they are.
+fn hold(system: &mut System) {
+    for p in present(system) {
+        let ln_amount = system.level_of(system.amount_row(p));
+        system.hold_mixture(p, ln_amount.clamp(VERY_LITTLE, VERY_MUCH));
+    }
+}
+
 fn release(system: &mut System) {
     present(system).into_iter().for_each(|p| system.release_mixture(p));
 }
@@ -86,7 +95,6 @@ struct Start {
     level: Vec<f64>,
     column: Vec<Column>,
     absent: Vec<bool>,
-    ln_amounts: Vec<(usize, f64)>,
 }
 
 impl Start {
@@ -96,7 +104,6 @@ impl Start {
             level: system.level.clone(),
             column: system.column.clone(),
             absent: system.absent.clone(),
-            ln_amounts: present(system).into_iter().map(|p| (p, system.level_of(system.amount_row(p)))).collect(),
         }
     }
 
@@ -108,9 +115,7 @@ impl Start {
         system.level = self.level;
         system.column = self.column;
         system.absent = self.absent;
-        for (p, ln_amount) in self.ln_amounts {
-            system.hold_mixture(p, ln_amount.clamp(VERY_LITTLE, VERY_MUCH));
-        }
+        hold(system);
     }
 }
 
