@@ -43,6 +43,7 @@ mod session;
 mod state;
 mod syntax;
 mod table;
+mod tableau;
 mod translate;
 
 pub use closure::Closure;

@@ -9,7 +9,7 @@ use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
     Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, quantity, reaction, sample,
-    state, table,
+    state, table, tableau,
 };
 
 /// Gathers everything a script can name.
@@ -29,6 +29,7 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     ledger::register(vocabulary);
     sample::register(vocabulary);
     state::register(vocabulary);
+    tableau::register(vocabulary);
     expect::register(vocabulary);
 }
 
