@@ -226,7 +226,10 @@ fn uncertainties_of_enthalpies_and_volumes_are_saved() {
     for (name, reaction) in book.reactions() {
         let again = read.reaction(name).unwrap();
         let volume = |reaction: &Reaction| reaction.constant().unwrap().volume.as_ref().map(|v| v.quantity());
-        assert_eq!(volume(again).map(|v| (v.value(), v.sigma())), volume(reaction).map(|v| (v.value(), v.sigma())));
+        assert_eq!(
+            volume(again).map(|v| (v.value(), v.sigma())),
+            volume(reaction).map(|v| (v.value(), v.sigma()))
+        );
         let (at, at_first) = (again.log_k_at(warm).unwrap(), reaction.log_k_at(warm).unwrap());
         assert_eq!(at.parts().len(), at_first.parts().len(), "{name}");
         assert_eq!(at.budget().n_unstated, at_first.budget().n_unstated, "{name}");

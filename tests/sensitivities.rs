@@ -396,9 +396,14 @@ fn compare_one(what: &str, asked: &[&str], state: &State, input: &str, step: f64
     for ((observable, quotient), value) in asked.iter().zip(quotients).zip(values) {
         let slope = slopes(state, observable).get(input).copied().unwrap_or(0.0);
         let allowed = 1e-6 * quotient.abs() + 1e-13 * (1.0 + value.abs()) / step;
-        assert!((slope - quotient).abs() < allowed, "{what}: d {observable}: {slope:e}, by difference {quotient:e}");
+        assert!(
+            (slope - quotient).abs() < allowed,
+            "{what}: d {observable}: {slope:e}, by difference {quotient:e}"
+        );
     }
-    let acts = asked.iter().any(|observable| slopes(state, observable).get(input).is_some_and(|slope| *slope != 0.0));
+    let acts = asked
+        .iter()
+        .any(|observable| slopes(state, observable).get(input).is_some_and(|slope| *slope != 0.0));
     assert!(acts, "{what} does nothing");
 }
 
@@ -409,8 +414,18 @@ fn values_of_treatments_are_inputs() {
     type Chosen = (&'static str, f64, &'static str, Box<dyn Fn(f64) -> Treatment>);
     let cases: [Chosen; 6] = [
         ("a fugacity", 4.2e-4, "bar", Box::new(open)),
-        ("an unlimited solid", 0.3, "1", Box::new(move |index| Treatment::Saturate { solid: calcite(), index })),
-        ("a solid that may form", 0.2, "1", Box::new(move |above| Treatment::Allow { solid: calcite(), above })),
+        (
+            "an unlimited solid",
+            0.3,
+            "1",
+            Box::new(move |index| Treatment::Saturate { solid: calcite(), index }),
+        ),
+        (
+            "a solid that may form",
+            0.2,
+            "1",
+            Box::new(move |above| Treatment::Allow { solid: calcite(), above }),
+        ),
         ("a pH", 7.0, "1", Box::new(|ph| Treatment::HoldPh { ph, reagent: None })),
         ("a pH by reagent", 9.0, "1", Box::new(|ph| Treatment::HoldPh { ph, reagent: Some("NaOH".into()) })),
         ("a temperature", 313.15, "K", Box::new(|t| Treatment::WarmTo(Temperature::from_kelvin(t).unwrap()))),
@@ -418,7 +433,8 @@ fn values_of_treatments_are_inputs() {
     let (case, ledger) = (Case::new("lake", lake(), vec![], &[]), freshwater());
     let base = case.sample("", 0.0);
     for (what, value, unit, treatment) in cases {
-        let stated = Quantity::measured(value, Unit::parse(unit).unwrap(), Some(0.01 * value), "chosen").unwrap();
+        let stated =
+            Quantity::measured(value, Unit::parse(unit).unwrap(), Some(0.01 * value), "chosen").unwrap();
         let state = case.state(&base.treated_to(treatment(value), &stated).unwrap(), &ledger);
         let asked = ["pH", "DIC", "m(CO3^2-)", "SI(calcite)", "ionic_strength", "total(Ca)"];
         let step = if unit == "bar" { 1e-3 * value } else { 1e-2 };
@@ -462,7 +478,12 @@ fn the_uncertainty_of_an_enthalpy_reaches_states_at_other_temperatures() {
 #[test]
 fn a_temperature_without_an_uncertainty_is_not_stated() {
     let text = |(key, text): (&str, &str)| (key.to_string(), Value::Text(text.into()));
-    let water = [("temperature", "8.5 degC"), ("pH", "8.15 +/- 0.02"), ("alkalinity", "2.35 meq/L"), ("Ca", "1 mmol/L")];
+    let water = [
+        ("temperature", "8.5 degC"),
+        ("pH", "8.15 +/- 0.02"),
+        ("alkalinity", "2.35 meq/L"),
+        ("Ca", "1 mmol/L"),
+    ];
     let sample = Sample::read(water.map(text).into()).unwrap();
     let state = equilibrate(&sample, Some(&freshwater()), &Settings::default()).unwrap();
     let index = state.get("SI(calcite)").unwrap();
@@ -520,11 +541,14 @@ fn example_waters() -> Vec<(String, Sample)> {
         let mut session = Session::new(Arc::new(ScriptEngine::new(options)));
         session.enter(&std::fs::read_to_string(&path).unwrap()).unwrap_or_else(|error| panic!("{error:?}"));
         let name = path.file_name().unwrap().to_string_lossy().into_owned();
-        let samples = session.variables().into_iter().flat_map(|(_, value)| match value.clone().into_array() {
-            Ok(array) => array.into_iter().filter_map(Dynamic::try_cast::<Sample>).collect(),
-            Err(_) => value.try_cast::<Sample>().into_iter().collect::<Vec<_>>(),
-        });
-        waters.extend(samples.filter(|sample| sample.measured().is_some()).map(|sample| (name.clone(), sample)));
+        let samples =
+            session.variables().into_iter().flat_map(|(_, value)| match value.clone().into_array() {
+                Ok(array) => array.into_iter().filter_map(Dynamic::try_cast::<Sample>).collect(),
+                Err(_) => value.try_cast::<Sample>().into_iter().collect::<Vec<_>>(),
+            });
+        waters.extend(
+            samples.filter(|sample| sample.measured().is_some()).map(|sample| (name.clone(), sample)),
+        );
     }
     waters
 }
@@ -554,7 +578,15 @@ fn measured_input(sample: &Sample, key: &str) -> Option<(String, f64)> {
 }
 
 const OF_EXAMPLES: [&str; 9] = [
-    "pH", "ionic_strength", "alkalinity", "DIC", "m(CO3^2-)", "f(CO2(g))", "charge_error", "SI(calcite)", "total(Ca)",
+    "pH",
+    "ionic_strength",
+    "alkalinity",
+    "DIC",
+    "m(CO3^2-)",
+    "f(CO2(g))",
+    "charge_error",
+    "SI(calcite)",
+    "total(Ca)",
 ];
 
 /// The waters of the examples are in mg/L, so that every amount acts on all others through the dissolved mass.
@@ -574,7 +606,8 @@ fn sensitivities_of_the_shipped_examples_are_difference_quotients() {
         .par_iter()
         .map(|(_, sample)| {
             let state = equilibrate(sample, Some(&ledger), &Settings::default()).unwrap();
-            let slopes = OF_EXAMPLES.iter().map(|text| state.get(text).map_or_else(|_| BTreeMap::new(), slopes_of));
+            let slopes =
+                OF_EXAMPLES.iter().map(|text| state.get(text).map_or_else(|_| BTreeMap::new(), slopes_of));
             (state.clone(), slopes.collect(), numbers(sample, &ledger))
         })
         .collect();

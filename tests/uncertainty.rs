@@ -47,9 +47,14 @@ impl Group {
     /// The same inputs as variables of a script.
     fn session(&self) -> Session {
         let mut session = Session::new(Arc::new(ScriptEngine::new(Options::default())));
-        let inputs: Vec<String> =
-            self.values.iter().zip(&self.sigmas).map(|(value, sigma)| format!("{value:?} ± {sigma:?}")).collect();
-        let mut enter = |entry: String| session.enter(&entry).map(|_| ()).unwrap_or_else(|error| panic!("{error:?}"));
+        let inputs: Vec<String> = self
+            .values
+            .iter()
+            .zip(&self.sigmas)
+            .map(|(value, sigma)| format!("{value:?} ± {sigma:?}"))
+            .collect();
+        let mut enter =
+            |entry: String| session.enter(&entry).map(|_| ()).unwrap_or_else(|error| panic!("{error:?}"));
         enter(format!("let x = [{}];", inputs.join(", ")));
         if let Some(matrix) = &self.correlation {
             enter(format!("let x = correlate(x, {matrix:?});"));
@@ -94,8 +99,18 @@ fn evaluated(postfix: &str, inputs: &[Quantity]) -> Result<Quantity, QuantityErr
 fn agrees(expression: &Expression, found: &Quantity) {
     let apart = |a: f64, b: f64| (a - b).abs() / b.abs();
     let (value, sigma) = (found.value(), found.sigma().expect("stated"));
-    assert!(apart(value, expression.value) < ROUNDING, "{}: {value:e} {:e}", expression.script, expression.value);
-    assert!(apart(sigma, expression.sigma) < ROUNDING, "{}: {sigma:e} {:e}", expression.script, expression.sigma);
+    assert!(
+        apart(value, expression.value) < ROUNDING,
+        "{}: {value:e} {:e}",
+        expression.script,
+        expression.value
+    );
+    assert!(
+        apart(sigma, expression.sigma) < ROUNDING,
+        "{}: {sigma:e} {:e}",
+        expression.script,
+        expression.sigma
+    );
 }
 
 fn groups() -> Vec<Group> {

@@ -70,7 +70,8 @@ impl System {
     pub fn at(&self, temperature: Temperature) -> Self {
         let formations = self.ledger.formations();
         let (log_k, doubts) = constants(&self.ledger, temperature);
-        let mut system = Self { temperature, doubts, model: model(self.ledger.activity(), temperature), ..self.clone() };
+        let mut system =
+            Self { temperature, doubts, model: model(self.ledger.activity(), temperature), ..self.clone() };
         for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
             row.ln_k = ln_k(&formations.species[*index], &log_k);
         }

@@ -59,7 +59,9 @@ pub fn trail(state: &State, asked: &Asked) -> Result<Table, ObservableError> {
         Column::numbers("sensitivity", sources.iter().map(|source| source.part.sensitivity)),
         Column::new("sigma", sources.iter().map(sigma)),
         Column::new("share", sources.iter().map(share)),
-        texts("provenance", &|source| of_origin(source, &|origin| origin.provenance.to_string(), given(source))),
+        texts("provenance", &|source| {
+            of_origin(source, &|origin| origin.provenance.to_string(), given(source))
+        }),
         texts("source", &|source| of_origin(source, &cited, by(source))),
     ])
     .expect("columns of one length"))
@@ -67,7 +69,8 @@ pub fn trail(state: &State, asked: &Asked) -> Result<Table, ObservableError> {
 
 fn source<'a>(state: &'a State, answer: &Quantity, part: &'a Part) -> Source<'a> {
     let is_this = |origin: &&Origin| origin.parts.iter().any(|own| own.input == part.input);
-    let constants = || state.system().ledger().reactions().filter_map(|(_, reaction)| reaction.constant().ok());
+    let constants =
+        || state.system().ledger().reactions().filter_map(|(_, reaction)| reaction.constant().ok());
     let mut origins = constants().flat_map(|constant| constant.history.uses()).map(|(origin, _)| &**origin);
     let value = origins.find(is_this);
     let acts = |history: &&History| history.influences().iter().any(|own| own.input == part.input);

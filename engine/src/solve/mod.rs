@@ -29,7 +29,7 @@
 
 mod basis;
 mod certificate;
-mod dense;
+pub(crate) mod dense;
 mod exact;
 mod feasibility;
 mod inner;
@@ -178,7 +178,9 @@ impl Mixed {
 }
 
 fn component_activities(system: &System) -> Vec<f64> {
-    (0..system.problem.n_components).map(|k| system.basis.scale(k) * system.level_of(system.basis.unit_row(k))).collect()
+    (0..system.problem.n_components)
+        .map(|k| system.basis.scale(k) * system.level_of(system.basis.unit_row(k)))
+        .collect()
 }
 
 /// Amounts and saturations of reservoirs and minerals, as in [`Converged`].

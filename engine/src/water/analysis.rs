@@ -18,6 +18,8 @@ pub enum Analysis {
     Measured(Box<Measured>),
     /// What an earlier equilibrium left.
     Dissolved(Dissolved),
+    /// Waters mixed, with the share of each in the water's mass.
+    Mixed(Vec<(super::Sample, f64)>),
     /// A row of a survey that could not be read, with the reason.
     Spoilt(String),
 }
@@ -381,7 +383,9 @@ fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
     if matches!(measured.evidence.ph, Some(Ph::Electroneutral)) {
         return Err(KeyFault::new(
             "make_up",
-            format!("`pH: \"electroneutral\"` and `make_up: \"{key}\"` both make the charges add up: keep one"),
+            format!(
+                "`pH: \"electroneutral\"` and `make_up: \"{key}\"` both make the charges add up: keep one"
+            ),
         ));
     }
     if measured.amounts.iter().any(|(_, own, _)| own == key) {
