@@ -1,6 +1,8 @@
 //! The project against the outside; each module names what it is compared with.
 
 #[cfg(test)]
+mod kkt;
+#[cfg(test)]
 mod ledgers;
 #[cfg(test)]
 mod oxidation_states;

@@ -39,6 +39,7 @@ fn derivative(f: impl Fn(f64) -> Vec<f64>, step: f64) -> Vec<f64> {
 fn flattened(found: &Found) -> Vec<f64> {
     [&found.ln_a, &found.ln_c, &found.ln_gamma, &found.reservoir_amount, &found.mineral_amount]
         .into_iter()
+        .chain(&found.mixtures)
         .flatten()
         .copied()
         .chain([found.ionic_strength, found.ln_water_activity])
@@ -55,13 +56,23 @@ fn read(converged: &Converged) -> Vec<f64> {
         ln_water_activity: converged.ln_water_activity,
         reservoir_amount: reservoirs.clone(),
         mineral_amount: minerals.clone(),
+        mixtures: converged.mixtures.iter().map(ln_amounts).collect(),
     })
+}
+
+/// ln of the amounts of the members of a mixture; zero where it is absent.
+fn ln_amounts(mixture: &Mixed) -> Vec<f64> {
+    let ln_amount = |ln_x: &f64| if mixture.amount > 0.0 { ln_x + mixture.amount.ln() } else { 0.0 };
+    mixture.ln_x.iter().map(ln_amount).collect()
 }
 
 /// A change of everything that is given.
 fn any_change(random: &mut Random, problem: &Problem) -> Given {
     let mut change = Given::zero(problem);
     for value in change.ln_k.iter_mut().chain(&mut change.reservoirs).chain(&mut change.minerals) {
+        *value = random.uniform(-1.0, 1.0);
+    }
+    for value in change.mixtures.iter_mut().flatten() {
         *value = random.uniform(-1.0, 1.0);
     }
     for (change, total) in change.totals.iter_mut().zip(&problem.totals) {
@@ -80,6 +91,11 @@ fn moved(problem: &Problem, change: &Given, step: f64) -> Problem {
     }
     for (mineral, change) in problem.minerals.iter_mut().zip(&change.minerals) {
         mineral.ln_target += step * change;
+    }
+    for (mixture, change) in problem.mixtures.iter_mut().zip(&change.mixtures) {
+        for (member, change) in mixture.members.iter_mut().zip(change) {
+            member.ln_k -= step * change;
+        }
     }
     for (total, change) in problem.totals.iter_mut().zip(&change.totals) {
         *total = *total + lysocline_engine::solve::Total::from(step * change);

@@ -16,6 +16,7 @@ use std::collections::BTreeSet;
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::assemble::{System, carriers};
 use super::dissolved_mass::{self, CARBONATE_MASS};
+use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
 use crate::chem::{Element, Rational, Species, rational};
@@ -88,6 +89,8 @@ pub struct Outcome {
     pub exchanged: Vec<(String, f64)>,
     /// Amount of each solid that may form or is there without limit, mol/kg(water).
     pub solids: Vec<Solid>,
+    /// What treatments did to the totals.
+    pub dosed: Dosed,
     /// What it meets, where its derivatives are known.
     pub conditions: Option<Conditions>,
 }
@@ -141,6 +144,7 @@ pub fn analyse(
         totals: totals.clone(),
         exchanged: vec![],
         solids: vec![],
+        dosed: Dosed::default(),
         conditions,
     };
     let temperature = measured.temperature.clone();
@@ -189,7 +193,7 @@ fn position(system: &System, component: usize) -> usize {
 }
 
 /// Density and dissolved mass of the sample as its volumes were measured.
-fn solution(measured: &Measured) -> Solution {
+pub(super) fn solution(measured: &Measured) -> Solution {
     let water_density = water_density(measured);
     let grams = measured.amounts.iter().map(|(analyte, _, amount)| {
         analyte.molar_mass().unwrap_or(0.0) * amount.moles.value() * amount.per.to_litre(water_density)
@@ -211,7 +215,7 @@ fn water_density(measured: &Measured) -> f64 {
 }
 
 /// Laboratories measure volumes at 20 degC, whatever the water had in the field.
-fn laboratory() -> crate::units::Temperature {
+pub(super) fn laboratory() -> crate::units::Temperature {
     crate::units::Temperature::from_celsius(20.0).expect("above absolute zero")
 }
 
@@ -327,9 +331,29 @@ fn treatment_components(sample: &Sample, ledger: &Ledger) -> Result<BTreeSet<usi
             Treatment::HoldPh { reagent: Some(reagent), .. } => {
                 present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
             }
+            Treatment::WithSolid { solid, .. } => {
+                let formed = formations.formation(ledger.find_phase(solid)?).expect("phases are formed");
+                present.extend(formed.stoichiometry.iter().map(|(j, _)| *j));
+            }
+            Treatment::Dose(dose) | Treatment::Remove(dose) => {
+                present.extend(super::treatment::reagent(ledger, &dose.reagent)?.into_iter().map(|(j, _)| j));
+            }
+            Treatment::AddSolution { solution, .. } => {
+                for (formula, _) in &solution.solutes {
+                    present.extend(super::treatment::reagent(ledger, formula)?.into_iter().map(|(j, _)| j));
+                }
+            }
+            Treatment::Adjust(adjust) => {
+                for (reagent, ..) in &adjust.reagents {
+                    present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
+                }
+            }
             // A solid that may form brings nothing with it: it needs what is there already.
             Treatment::Allow { solid, .. } => drop(ledger.find_phase(solid)?),
-            Treatment::HoldPh { .. } | Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
+            Treatment::HoldPh { .. }
+            | Treatment::Concentrate(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => {}
         }
     }
     Ok(present)

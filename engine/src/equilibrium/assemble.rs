@@ -172,9 +172,8 @@ impl System {
         Problem {
             n_components: self.n_components(),
             species: self.solutes.iter().map(|(_, row)| row.clone()).collect(),
-            reservoirs: vec![],
-            minerals: vec![],
             totals: totals.iter().map(|total| Total::from(*total)).collect(),
+            ..Problem::default()
         }
     }
 

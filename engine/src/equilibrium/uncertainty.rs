@@ -20,7 +20,7 @@ use std::collections::BTreeMap;
 
 use super::analysis::Outcome;
 use super::assemble::System;
-use crate::chem::{Species, rational};
+use crate::chem::{Reaction, Species, rational};
 use crate::ledger::Formation;
 use crate::physics::constants::LN_10;
 use crate::quantity::{Input, Part, Quantity};
@@ -74,6 +74,8 @@ pub struct Conditions {
     pub measured: Vec<(Quantity, Vec<f64>)>,
     /// Temperature in kelvin where it was measured; none where it was chosen.
     pub temperature: Option<Quantity>,
+    /// What the totals that the stage before delivered were multiplied by, if they were concentrated.
+    pub concentrated: Option<f64>,
 }
 
 /// Something held.
@@ -207,7 +209,8 @@ impl Influence {
         for (quantity, change) in &conditions.measured {
             self.measured.push((quantity.clone(), dot(change, &by_totals)));
         }
-        by_totals
+        let concentrated = conditions.concentrated.unwrap_or(1.0);
+        by_totals.into_iter().map(|by_total| by_total * concentrated).collect()
     }
 
     /// Adds the constants behind a row of the solver, given the derivative by its ln K.
@@ -270,11 +273,15 @@ fn influences(system: &System, reaction: usize) -> Option<Quantity> {
 fn unknown_slope(system: &System, reaction: usize) -> Option<(Quantity, f64)> {
     let known = system.known_only_at(reaction)?;
     let (name, reaction) = system.ledger().reactions().nth(reaction)?;
+    let slope = Quantity::of_input(0.0, Unit::one(), assumed_slope(name, reaction, known)?);
+    Some((slope, system.temperature().kelvin() - known.kelvin()))
+}
+
+/// The input that stands for the change with temperature of a constant `known` at one temperature only.
+pub fn assumed_slope(name: &str, reaction: &Reaction, known: Temperature) -> Option<Input> {
     let label = format!("change of log K of `{name}` with temperature, per K (assumed)");
     let identity = format!("{UNKNOWN_SLOPE} {} known at {} K", reaction.equation(), known.kelvin());
-    let input = Input::named(&identity, &label, Some(SIGMA_PER_KELVIN)).ok()?;
-    let slope = Quantity::of_input(0.0, Unit::one(), input);
-    Some((slope, system.temperature().kelvin() - known.kelvin()))
+    Input::named(&identity, &label, Some(SIGMA_PER_KELVIN)).ok()
 }
 
 /// The same system a little warmer and a little colder.

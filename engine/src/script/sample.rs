@@ -63,6 +63,20 @@ fn words(treatment: &Treatment) -> String {
         Treatment::Saturate { solid, index } => format!("saturated with {solid} at SI {}", trimmed(*index)),
         Treatment::Allow { solid, above } if *above == 0.0 => format!("{solid} may form"),
         Treatment::Allow { solid, above } => format!("{solid} may form above SI {}", trimmed(*above)),
+        Treatment::WithSolid { solid, amount } => format!("with {solid}, {}", amount.moles),
+        Treatment::Dose(dose) => format!("dosed with {} {}", dose.amount.moles, dose.reagent),
+        Treatment::Remove(dose) => format!("{} {} removed", dose.amount.moles, dose.reagent),
+        Treatment::Concentrate(factor) => format!("concentrated {} times", trimmed(*factor)),
+        Treatment::AddSolution { volume, solution, .. } => {
+            let formulas: Vec<&str> = solution.solutes.iter().map(|(formula, _)| formula.as_str()).collect();
+            format!("with {} L of a solution of {}", trimmed(*volume), list(&formulas))
+        }
+        Treatment::Adjust(adjust) => {
+            let reagents: Vec<&str> = adjust.reagents.iter().map(|(name, ..)| name.as_str()).collect();
+            let targets: Vec<String> =
+                adjust.targets.iter().map(|(name, target)| format!("{name} {target}")).collect();
+            format!("adjusted with {} to {}", list(&reagents), list(&targets))
+        }
         Treatment::HoldPh { ph, reagent: None } => format!("held at pH {}", trimmed(*ph)),
         Treatment::HoldPh { ph, reagent: Some(reagent) } => {
             format!("held at pH {} with {reagent}", trimmed(*ph))
@@ -90,7 +104,7 @@ impl From<SurveyError> for Fail {
 
 /// A mineral or gas must be known to some shipped ledger, or to the sample's own; whether the ledger finally used knows
 /// it is checked at equilibrium.
-fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
+pub(super) fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
     let shipped: Vec<Ledger> =
         shipped::names().iter().filter_map(|name| shipped::ledger(name, None).ok()).collect();
     if sample.ledger().is_some() || shipped.iter().any(|ledger| ledger.find_phase(name).is_ok()) {
@@ -105,7 +119,7 @@ fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
         .argument(0))
 }
 
-fn treated(sample: &Sample, treatment: Treatment) -> ScriptResult<Sample> {
+pub(super) fn treated(sample: &Sample, treatment: Treatment) -> ScriptResult<Sample> {
     Ok(sample.treated(treatment).map_err(Fail::from)?)
 }
 

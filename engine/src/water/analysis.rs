@@ -18,6 +18,8 @@ pub enum Analysis {
     Measured(Box<Measured>),
     /// What an earlier equilibrium left.
     Dissolved(Dissolved),
+    /// Waters mixed, with the share of each in the water's mass.
+    Mixed(Vec<(super::Sample, f64)>),
     /// A row of a survey that could not be read, with the reason.
     Spoilt(String),
 }
