@@ -7,6 +7,7 @@
 //! not add up to one however little there is of it leaves.
 
 use super::inner::{self, Point, Reduced};
+use super::phases;
 use super::scalar::{self, Sample, Tolerance};
 use super::settings::{Settings, SolveError};
 use super::system::{Column, System};
@@ -15,12 +16,12 @@ use super::system::{Column, System};
 pub(super) enum Amounts {
     /// The fractions of every mixture that is still present add up to one.
     Settled(Box<(Reduced, Point)>),
-    /// They add up to more however much there is; the system is left with very much of it.
-    Endless { mixture_idx: usize },
+    /// They do not, and on the way minerals that are present were used up, or there is very much of this mixture.
+    Rising { mixture_idx: usize },
 }
 
 /// ln of more than can form.
-const VERY_MUCH: f64 = 60.0;
+const VERY_MUCH: f64 = 300.0;
 
 /// ln of less than counts beside no amount at all.
 const VERY_LITTLE: f64 = -650.0;
@@ -50,7 +51,11 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<Amoun
             match close(system, settings, mixture_idx, tolerance)? {
                 Closed::Amount => {}
                 Closed::Left => break,
-                Closed::Endless => return Ok(Amounts::Endless { mixture_idx }),
+                Closed::Endless => return Ok(Amounts::Rising { mixture_idx }),
+            }
+            // Mixtures that draw on minerals beyond what there is of them can rise together without end.
+            if round > 1 && phases::any_used_up(system) {
+                return Ok(Amounts::Rising { mixture_idx });
             }
         }
         if present(system).is_empty() {
