@@ -23,8 +23,8 @@ pub(super) enum Amounts {
 /// ln of more than can form.
 const VERY_MUCH: f64 = 300.0;
 
-/// ln of less than counts beside no amount at all.
-const VERY_LITTLE: f64 = -650.0;
+/// ln of less than counts beside no amount at all, even where activity coefficients run to thousands of powers of ten.
+const VERY_LITTLE: f64 = -1e5;
 
 /// Solves for composition and amounts of mixtures at given activity coefficients and present phases.
 pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<Amounts, SolveError> {
@@ -41,6 +41,7 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<Amoun
     }
     for round in 0..MOST_ROUNDS {
         let start = Start::of(system);
+        let before = ln_amounts(system);
         if let Some(converged) = inner::converge_saddle(system, settings)? {
             return Ok(settled(converged));
         }
@@ -61,9 +62,48 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<Amoun
         if present(system).is_empty() {
             return Ok(settled(inner::converge(system, settings)?));
         }
+        if round > 1 {
+            stride(system, settings, &before)?;
+        }
         release(system);
     }
     Err(SolveError::NotConverged { iterations: system.effort.iterations, residual: f64::INFINITY })
+}
+
+/// Goes on in the direction of the latest round, in doubled steps, while the Gibbs energy falls: amounts that depend on
+/// each other move slowly one after the other.
+fn stride(system: &mut System, settings: &Settings, before: &[(usize, f64)]) -> Result<(), SolveError> {
+    const MOST_DOUBLINGS: i32 = 8;
+
+    let here = ln_amounts(system);
+    if here.len() != before.len() {
+        return Ok(());
+    }
+    let change: Vec<f64> = here.iter().zip(before).map(|((_, new), (_, old))| new - old).collect();
+    let slope_at = |system: &mut System, share: f64| -> Result<f64, SolveError> {
+        for ((p, ln_amount), change) in here.iter().zip(&change) {
+            system.hold_mixture(*p, (ln_amount + share * change).clamp(VERY_LITTLE, VERY_MUCH));
+        }
+        inner::converge(system, settings)?;
+        let slope = |((p, _), change): (&(usize, f64), &f64)| {
+            change * system.level_of(system.amount_row(*p)).exp() * system.mixture_saturation(*p).exp_m1()
+        };
+        Ok(here.iter().zip(&change).map(slope).sum())
+    };
+    let mut share = 0.0;
+    for doubling in 0..MOST_DOUBLINGS {
+        let farther = 2_f64.powi(doubling);
+        if slope_at(system, farther)? <= 0.0 {
+            break;
+        }
+        share = farther;
+    }
+    slope_at(system, share)?;
+    Ok(())
+}
+
+fn ln_amounts(system: &System) -> Vec<(usize, f64)> {
+    present(system).into_iter().map(|p| (p, system.level_of(system.amount_row(p)))).collect()
 }
 
 fn settled(converged: (Reduced, Point)) -> Amounts {
