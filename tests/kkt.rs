@@ -22,7 +22,8 @@ pub fn check(problem: &Problem, converged: &Converged) -> Result<(), String> {
     }
     for (p, (mixture, mixed)) in problem.mixtures.iter().zip(&converged.mixtures).enumerate() {
         let saturation = mixed.ln_saturation;
-        phase(saturation, mixed.amount, mixed.amount > 0.0).map_err(|fault| format!("mixture {p}: {fault}"))?;
+        phase(saturation, mixed.amount, mixed.amount > 0.0)
+            .map_err(|fault| format!("mixture {p}: {fault}"))?;
         for (k, (member, ln_x)) in mixture.members.iter().zip(&mixed.ln_x).enumerate() {
             let (ln_product, magnitude) = product(member, converged);
             let difference = ln_product - mixture.ln_target - saturation - ln_x;
@@ -40,7 +41,11 @@ fn phase(saturation: f64, amount: f64, present: bool) -> Result<(), String> {
         || !(0.0..).contains(&amount)
         || (!present && amount != 0.0)
         || (present && saturation.abs() > 1e-10);
-    if wrong { Err(format!("saturation {saturation:e}, amount {amount:e}, present {present}")) } else { Ok(()) }
+    if wrong {
+        Err(format!("saturation {saturation:e}, amount {amount:e}, present {present}"))
+    } else {
+        Ok(())
+    }
 }
 
 /// ln K plus the logarithms of the activities that a row is formed from, and the sum of the absolute terms.

@@ -12,7 +12,11 @@ fn sweep(name: &str, count: u64, model: Model, make: impl Fn(&mut Random) -> Opt
         let Some(problem) = make(&mut Random(seed * 7919 + 1)) else { return Ok(None) };
         let converged = match solve(&problem, &model, &Settings::default(), None) {
             Ok(converged) => converged,
-            Err(SolveError::Unbounded { .. } | SolveError::UnboundedMixture { .. }) if !problem.reservoirs.is_empty() => return Ok(None),
+            Err(SolveError::Unbounded { .. } | SolveError::UnboundedMixture { .. })
+                if !problem.reservoirs.is_empty() =>
+            {
+                return Ok(None);
+            }
             Err(error) => return Err(format!("seed {seed}: {error}")),
         };
         check(&problem, &converged).map_err(|message| format!("seed {seed}: {message}"))?;

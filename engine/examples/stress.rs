@@ -84,7 +84,9 @@ impl Family {
                 kkt::check(&problem, &converged)?;
                 Ok(Some(converged.effort.iterations))
             }
-            Err(SolveError::Unbounded { .. } | SolveError::UnboundedMixture { .. }) if self.fixed_component => {
+            Err(SolveError::Unbounded { .. } | SolveError::UnboundedMixture { .. })
+                if self.fixed_component =>
+            {
                 Ok(None)
             }
             Err(error) => Err(error.to_string()),

@@ -74,7 +74,9 @@ fn json(value: &Dynamic) -> Result<Value, Fail> {
         return Ok(number.into());
     }
     if let Ok(number) = value.as_float() {
-        return Ok(serde_json::Number::from_f64(number).map_or_else(|| number.to_string().into(), Value::Number));
+        return Ok(
+            serde_json::Number::from_f64(number).map_or_else(|| number.to_string().into(), Value::Number)
+        );
     }
     if let Ok(flag) = value.as_bool() {
         return Ok(flag.into());
@@ -183,7 +185,8 @@ mod tableau_functions {
     pub fn tableau_sensitivities(context: NativeCallContext, tableau: &mut Tableau) -> ScriptResult<Table> {
         let solved = solve(&Host::of(&context), tableau)?;
         let derivatives = tableau.sensitivities(solution(&solved)?).ok_or_else(|| {
-            fail("the composition does not change smoothly here").help("a phase is just about to form or to vanish")
+            fail("the composition does not change smoothly here")
+                .help("a phase is just about to form or to vanish")
         })?;
         let species = Column::texts("species", tableau.species().iter().map(String::as_str));
         let columns = derivatives.into_iter().map(|column| Column::numbers(column.by.as_str(), column.ln_c));

@@ -69,7 +69,8 @@ fn replace_components(system: &mut System) -> Result<(), SolveError> {
         if system.column[column] != Column::Free || !system.basis.is_unit(system.basis.row_of(column)) {
             continue;
         }
-        let row = terms(system, column).map(|(row, _)| row).find(|row| system.basis.column_of(*row).is_none());
+        let row =
+            terms(system, column).map(|(row, _)| row).find(|row| system.basis.column_of(*row).is_none());
         if row.is_some_and(|row| system.basis.pivot(row, column)) {
             continue;
         }
@@ -190,8 +191,10 @@ fn infeasible(system: &System, column: usize, value: f64) -> SolveError {
     let basis = &system.basis;
     let sign = basis.determinant().signum();
     let factor = |k: usize| sign * basis.scaled_row(basis.unit_row(k))[column] * basis.scale(k);
-    let mut combination: Vec<(usize, f64)> =
-        (0..system.problem.n_components).map(|k| (k, factor(k))).filter(|(_, factor)| *factor != 0.0).collect();
+    let mut combination: Vec<(usize, f64)> = (0..system.problem.n_components)
+        .map(|k| (k, factor(k)))
+        .filter(|(_, factor)| *factor != 0.0)
+        .collect();
     let common = combination.iter().fold(0.0, |divisor, (_, factor)| common_divisor(divisor, factor.abs()));
     combination.iter_mut().for_each(|(_, factor)| *factor /= common);
     SolveError::Infeasible { combination, value: value * (basis.determinant().abs() / common) }

@@ -27,7 +27,13 @@ impl Settled {
     /// Σ m over the solutes, which come first among the rows.
     fn total_molality(&self, system: &System) -> f64 {
         let n_species = system.problem.species.len();
-        self.reduced.species.iter().zip(&self.point.c).filter(|(row, _)| **row < n_species).map(|(_, c)| c).sum()
+        self.reduced
+            .species
+            .iter()
+            .zip(&self.point.c)
+            .filter(|(row, _)| **row < n_species)
+            .map(|(_, c)| c)
+            .sum()
     }
 }
 

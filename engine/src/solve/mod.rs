@@ -199,7 +199,9 @@ impl Mixed {
 }
 
 fn component_activities(system: &System) -> Vec<f64> {
-    (0..system.problem.n_components).map(|k| system.basis.scale(k) * system.level_of(system.basis.unit_row(k))).collect()
+    (0..system.problem.n_components)
+        .map(|k| system.basis.scale(k) * system.level_of(system.basis.unit_row(k)))
+        .collect()
 }
 
 /// Amounts and saturations of reservoirs and minerals, as in [`Converged`].

@@ -23,10 +23,10 @@
 //! solver, traces below the smallest double included. It is factored once; [`Sensitivities::push`] solves for the effect
 //! of parameters on everything, [`Sensitivities::pull`] for the effect of everything on one number.
 
-use super::{Converged, Mixed};
 use super::dense::Lu;
 use super::problem::{Problem, Row};
 use super::system::Column;
+use super::{Converged, Mixed};
 use crate::activity::Model;
 
 /// A number for each thing that is given: changes of them, or derivatives by them.
@@ -224,7 +224,8 @@ impl Sensitivities {
     pub fn push(&self, given: &Given) -> Found {
         let held: Vec<f64> = self.columns.iter().map(|column| column.value(given)).collect();
         let own = self.own(given);
-        let direct: Vec<f64> = self.species.iter().map(|species| own[species.idx] + species.held(&held)).collect();
+        let direct: Vec<f64> =
+            self.species.iter().map(|species| own[species.idx] + species.held(&held)).collect();
         let mut right = vec![0.0; self.n()];
         for column in &self.columns {
             if let Some(row) = column.position {
@@ -407,7 +408,8 @@ impl Sensitivities {
     /// Change of the constant of each row.
     fn own(&self, given: &Given) -> Vec<f64> {
         let species = given.ln_k.iter().zip(&given.ln_gamma).map(|(ln_k, ln_gamma)| ln_k - ln_gamma);
-        let mut own: Vec<f64> = species.chain(given.mixtures.iter().flatten().map(|target| -target)).collect();
+        let mut own: Vec<f64> =
+            species.chain(given.mixtures.iter().flatten().map(|target| -target)).collect();
         own.resize(self.n_rows(), 0.0);
         own
     }
@@ -529,7 +531,8 @@ fn balances(problem: &Problem, converged: &Converged, supplies: &[Vec<f64>]) -> 
     let there: Vec<usize> = (0..basis.n).filter(is_there).collect();
     let delivers_what_it_holds = own_supplies(problem) == supplies;
     let waters: Vec<f64> = problem.rows().map(|(row, _)| row.water).collect();
-    let of_component = |j: usize| -> Vec<f64> { (0..problem.n_components).map(|k| basis.total_factor(k, j)).collect() };
+    let of_component =
+        |j: usize| -> Vec<f64> { (0..problem.n_components).map(|k| basis.total_factor(k, j)).collect() };
     let mut n_solved = 0;
     let mut balances = Vec::with_capacity(there.len());
     for &j in &there {
@@ -585,7 +588,11 @@ fn weights(problem: &Problem, model: &Model, converged: &Converged, columns: &[u
             ln_c: ln_amounts[idx],
             t,
             water: row.water - held,
-            gamma: if is_solute && ionic_strength > 0.0 { model.d_ln_gamma(row.charge, ionic_strength) } else { 0.0 },
+            gamma: if is_solute && ionic_strength > 0.0 {
+                model.d_ln_gamma(row.charge, ionic_strength)
+            } else {
+                0.0
+            },
             half_charge_squared: if is_solute { 0.5 * row.charge * row.charge } else { 0.0 },
             osmotic: if is_solute { osmotic } else { 0.0 },
         }

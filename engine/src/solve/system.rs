@@ -95,8 +95,8 @@ impl<'p> System<'p> {
     /// The system at its starting point.
     pub(super) fn new(problem: &'p Problem, warm: Option<&Warm>) -> Result<Self, SolveError> {
         let (n_components, n_mixtures) = (problem.n_components, problem.mixtures.len());
-        let basis = Basis::new(problem.rows(), n_components, n_mixtures)
-            .ok_or(SolveError::CoefficientsTooLarge)?;
+        let basis =
+            Basis::new(problem.rows(), n_components, n_mixtures).ok_or(SolveError::CoefficientsTooLarge)?;
         let mut column = vec![Column::Free; basis.n];
         column[n_components..].fill(Column::Held);
         let mixture_of = problem.rows().filter_map(|(_, mixture)| mixture).collect();
@@ -297,7 +297,10 @@ impl<'p> System<'p> {
 
         let most = |row: &Row| {
             let shares = row.stoichiometry.iter().filter(|(_, nu)| *nu.numer() > 0);
-            shares.map(|(j, _)| self.problem.totals[*j].to_f64()).filter(|total| *total > 0.0).fold(1.0, f64::min)
+            shares
+                .map(|(j, _)| self.problem.totals[*j].to_f64())
+                .filter(|total| *total > 0.0)
+                .fold(1.0, f64::min)
         };
         (PART * self.problem.mixtures[mixture_idx].members.iter().map(most).fold(0.0, f64::max)).ln()
     }
@@ -367,7 +370,8 @@ impl<'p> System<'p> {
         self.sum.add(total);
         let first_whole = self.problem.whole_row(0);
         for (row, ln_c) in self.ln_c.iter().enumerate() {
-            let coefficient = self.basis.coefficient(row, column) * if row < first_whole { 1.0 } else { -1.0 };
+            let coefficient =
+                self.basis.coefficient(row, column) * if row < first_whole { 1.0 } else { -1.0 };
             if coefficient != 0.0 {
                 let c = ln_c.exp();
                 plain -= coefficient * c;

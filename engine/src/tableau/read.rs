@@ -31,8 +31,9 @@ impl Tableau {
     ///
     /// Returns all faults.
     pub fn parse(json: &str) -> Result<Self, Vec<Fault>> {
-        let value: Value = serde_json::from_str(json)
-            .map_err(|error| vec![Fault { place: "the file".into(), message: format!("is not JSON: {error}") }])?;
+        let value: Value = serde_json::from_str(json).map_err(|error| {
+            vec![Fault { place: "the file".into(), message: format!("is not JSON: {error}") }]
+        })?;
         Self::read(&value)
     }
 
@@ -68,16 +69,21 @@ impl Reader {
         let model = self.model(map);
         let mut problem = Problem { n_components: components.len(), totals, ..Problem::default() };
         let mut species = Vec::new();
-        let charge_of = |j: usize| charges.as_ref().and_then(|charges| charges.get(j)).copied().unwrap_or(0.0);
+        let charge_of =
+            |j: usize| charges.as_ref().and_then(|charges| charges.get(j)).copied().unwrap_or(0.0);
         for (j, name) in components.iter().enumerate().filter(|(j, _)| !bare.contains(j)) {
             species.push(name.clone());
             problem.species.push(Row::new(&[(j, 1)], 0.0).with_charge(charge_of(j)));
         }
         if model.depends_on_ionic_strength() && charges.is_none() && !species.is_empty() {
-            self.fault("charges", "`activity` \"davies\" needs the charge of every component that is a species");
+            self.fault(
+                "charges",
+                "`activity` \"davies\" needs the charge of every component that is a species",
+            );
         }
         for (item, place) in self.items(map.get("species"), "species") {
-            let Some(entry) = self.map(item, &place, &["name", "nu", "log_k", "charge"], &["name", "nu", "log_k"])
+            let Some(entry) =
+                self.map(item, &place, &["name", "nu", "log_k", "charge"], &["name", "nu", "log_k"])
             else {
                 continue;
             };
@@ -105,9 +111,9 @@ impl Reader {
         for (item, place) in self.items(value, "fixed") {
             let keys = &["component", "log_a"];
             let Some(entry) = self.map(item, &place, keys, keys) else { continue };
-            let component = entry.get("component").and_then(|name| {
-                self.component(name, &format!("{place}.component"), components)
-            });
+            let component = entry
+                .get("component")
+                .and_then(|name| self.component(name, &format!("{place}.component"), components));
             let log_a = entry.get("log_a").and_then(|log_a| self.number(log_a, &format!("{place}.log_a")));
             let (Some(component), Some(log_a)) = (component, log_a) else { continue };
             if fixed.contains(&component) {
@@ -158,7 +164,9 @@ impl Reader {
         let davies = map.get("davies").and_then(|davies| self.map(davies, "davies", &["A", "b"], &[]));
         let mut coefficient = |key: &str, default: f64| {
             let value = davies.and_then(|davies| davies.get(key));
-            value.map_or(Some(default), |value| self.number(value, &format!("davies.{key}"))).unwrap_or(default)
+            value
+                .map_or(Some(default), |value| self.number(value, &format!("davies.{key}")))
+                .unwrap_or(default)
         };
         let model = Davies::new(coefficient("A", 0.509)).with_b(coefficient("b", 0.3));
         match asked.as_deref() {
@@ -170,7 +178,10 @@ impl Reader {
                 Model::IDEAL
             }
             Some(other) => {
-                self.fault("activity", format!("there is no model `{other}`; there are `ideal` and `davies`"));
+                self.fault(
+                    "activity",
+                    format!("there is no model `{other}`; there are `ideal` and `davies`"),
+                );
                 Model::IDEAL
             }
         }
@@ -245,7 +256,10 @@ impl Reader {
         let items = self.items(value, place);
         if value.is_some_and(Value::is_array) && items.len() != self.n_components {
             let (found, wanted) = (items.len(), self.n_components);
-            self.fault(place, format!("has {}, and there are {wanted} components", text::count(found, "number")));
+            self.fault(
+                place,
+                format!("has {}, and there are {wanted} components", text::count(found, "number")),
+            );
         }
         items.into_iter().map(|(item, place)| self.number(item, &place).unwrap_or(0.0)).collect()
     }
@@ -339,7 +353,8 @@ fn coefficient(value: f64) -> Option<Coefficient> {
     let over = |denominator: i64| {
         let numerator = value * denominator as f64;
         let is_whole = (numerator - numerator.round()).abs() <= CLOSE * denominator as f64;
-        (is_whole && numerator.abs() < LARGEST).then(|| Coefficient::new(numerator.round() as i64, denominator))
+        (is_whole && numerator.abs() < LARGEST)
+            .then(|| Coefficient::new(numerator.round() as i64, denominator))
     };
     if value.fract() == 0.0 { over(1) } else { (2..=10_000).find_map(over) }
 }

@@ -18,8 +18,12 @@ impl Tableau {
     /// Returns `None` where the composition does not change smoothly.
     #[must_use]
     pub fn sensitivities(&self, solution: &Solution) -> Option<Vec<Derivatives>> {
-        let linear =
-            Sensitivities::new(&self.problem, &self.model, &solution.converged, &own_supplies(&self.problem))?;
+        let linear = Sensitivities::new(
+            &self.problem,
+            &self.model,
+            &solution.converged,
+            &own_supplies(&self.problem),
+        )?;
         let column = |(by, given): (String, Given)| Derivatives { by, ln_c: linear.push(&given).ln_c };
         Some(self.changes().into_iter().map(column).collect())
     }

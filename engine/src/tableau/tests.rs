@@ -142,11 +142,19 @@ fn sensitivities_are_difference_quotients() {
         let (up, down) = (solved(&up), solved(&down));
         for ((a, b), derivative) in up.log_c.iter().zip(&down.log_c).zip(&column.ln_c) {
             let quotient = (a - b) * LN_10 / width;
-            assert!((quotient - derivative).abs() <= 1e-6 * quotient.abs().max(1.0), "{by} {quotient} {derivative}");
+            assert!(
+                (quotient - derivative).abs() <= 1e-6 * quotient.abs().max(1.0),
+                "{by} {quotient} {derivative}"
+            );
         }
     };
     let h = 1e-4;
     compare("ln K(ML)", case(total, log_k + h, log_a), case(total, log_k - h, log_a), 2.0 * h * LN_10);
     compare("ln a(H)", case(total, log_k, log_a + h), case(total, log_k, log_a - h), 2.0 * h * LN_10);
-    compare("T(M)", case(total * (1.0 + h), log_k, log_a), case(total * (1.0 - h), log_k, log_a), 2.0 * h * total);
+    compare(
+        "T(M)",
+        case(total * (1.0 + h), log_k, log_a),
+        case(total * (1.0 - h), log_k, log_a),
+        2.0 * h * total,
+    );
 }
