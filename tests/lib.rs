@@ -27,4 +27,6 @@ mod tidy;
 #[cfg(test)]
 mod two_routes;
 #[cfg(test)]
+mod uncertainty;
+#[cfg(test)]
 mod waters;

@@ -115,12 +115,12 @@ impl From<SweepError> for Fail {
     }
 }
 
-fn settings(host: &Host) -> Settings {
+pub(super) fn settings(host: &Host) -> Settings {
     Settings { stop: Some(host.stop().flag()), ..Settings::default() }
 }
 
 /// One water; an interruption is passed on as such.
-fn one(host: &Host, sample: &Sample, ledger: Option<&Ledger>) -> ScriptResult<State> {
+pub(super) fn one(host: &Host, sample: &Sample, ledger: Option<&Ledger>) -> ScriptResult<State> {
     match equilibrate(sample, ledger, &settings(host)) {
         Ok(state) => Ok(state),
         Err(error) => {

@@ -29,7 +29,7 @@
 
 mod basis;
 mod certificate;
-mod dense;
+pub(crate) mod dense;
 mod exact;
 mod feasibility;
 mod inner;
