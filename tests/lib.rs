@@ -21,6 +21,8 @@ mod round_trips;
 #[cfg(test)]
 mod sensitivities;
 #[cfg(test)]
+mod tableaux;
+#[cfg(test)]
 mod tidy;
 #[cfg(test)]
 mod two_routes;
