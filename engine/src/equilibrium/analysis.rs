@@ -15,6 +15,7 @@ use std::collections::BTreeSet;
 
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::assemble::{System, carriers};
+use super::dissolved_mass::{self, CARBONATE_MASS};
 use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
@@ -193,20 +194,24 @@ fn position(system: &System, component: usize) -> usize {
 
 /// Density and dissolved mass of the sample as its volumes were measured.
 pub(super) fn solution(measured: &Measured) -> Solution {
-    let at = measured.volume_temperature.unwrap_or_else(laboratory);
-    let water_density = water::density(at.kelvin()) / 1000.0;
+    let water_density = water_density(measured);
     let grams = measured.amounts.iter().map(|(analyte, _, amount)| {
         analyte.molar_mass().unwrap_or(0.0) * amount.moles.value() * amount.per.to_litre(water_density)
     });
-    // Alkalinity and carbon are counted as hydrogencarbonate, 61 g/mol, which most of either is.
-    let evidence = measured.evidence.alkalinity.iter().chain(&measured.evidence.dic).next();
-    let carbonate =
-        evidence.map_or(0.0, |amount| 61.017 * amount.moles.value() * amount.per.to_litre(water_density));
+    // Alkalinity and carbon are counted as hydrogencarbonate, which most of either is.
+    let carbonate = dissolved_mass::carbonate(measured)
+        .map_or(0.0, |amount| CARBONATE_MASS * amount.moles.value() * amount.per.to_litre(water_density));
     let dissolved = (grams.sum::<f64>() + carbonate).max(0.0) / 1000.0;
     match measured.density {
         Some(density) => Solution { density, dissolved },
         None => Solution::with_salts(water_density, dissolved),
     }
+}
+
+/// Density of pure water where volumes were measured, kg/L.
+fn water_density(measured: &Measured) -> f64 {
+    let at = measured.volume_temperature.unwrap_or_else(laboratory);
+    water::density(at.kelvin()) / 1000.0
 }
 
 /// Laboratories measure volumes at 20 degC, whatever the water had in the field.
@@ -614,6 +619,7 @@ impl<'a> Analysis<'a> {
 
         let mut conditions =
             Conditions { temperature: measured.temperature.clone(), ..Conditions::default() };
+        let mut amounts: Vec<&Amount> = measured.amounts.iter().map(|(_, _, amount)| amount).collect();
         for carried in given {
             let change = self.supplied(position(self.system, carried.component));
             let change = change.into_iter().map(|change| change * carried.factor).collect();
@@ -622,12 +628,16 @@ impl<'a> Analysis<'a> {
         if let (Some(amount), Some(carbon), true) = (&self.evidence.dic, self.carbon, uses("DIC")) {
             let change = self.supplied(carbon).into_iter().map(|change| change * factor(amount)).collect();
             conditions.measured.push((amount.moles.clone(), balanced(change)));
+            amounts.push(amount);
         }
         if let (Some(amount), true) = (&self.evidence.alkalinity, uses("alkalinity")) {
             let change: Vec<f64> = unit(self.proton);
             let change = change.into_iter().map(|change| -change * factor(amount)).collect();
             conditions.measured.push((amount.moles.clone(), balanced(change)));
+            amounts.push(amount);
         }
+        let water_density = water_density(measured);
+        dissolved_mass::account(&mut conditions, &amounts, measured, &self.solution, water_density);
         match &self.evidence.ph {
             Some(Ph::Measured(ph)) if uses("pH") => {
                 let supply = match self.carbon {

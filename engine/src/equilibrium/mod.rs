@@ -9,6 +9,7 @@ mod adjust;
 pub mod analysis;
 pub mod assemble;
 mod buffer;
+mod dissolved_mass;
 mod dosing;
 mod error;
 mod indices;

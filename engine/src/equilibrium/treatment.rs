@@ -5,12 +5,14 @@
 //! problem at the final temperature holds them all. A pH held by a reagent is one equation outside it: so much of the
 //! reagent that the pH is met.
 
+use std::collections::BTreeMap;
+
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::analysis::{Analysed, Outcome, Solid, delivered, fixed_ph};
 use super::assemble::{System, carriers};
 use super::dosing::{Course, Dosed};
 use super::error::EquilibriumError;
-use super::uncertainty::{Conditions, Held, Variable};
+use super::uncertainty::{Conditions, Held, MayForm, Variable};
 use crate::chem::{Element, Equation, Rational, Species, rational};
 use crate::ledger::{Formations, Ledger};
 use crate::physics::constants::LN_10;
@@ -29,11 +31,11 @@ const MOST_REAGENT: f64 = 20.0;
 ///
 /// Returns what the ledger does not know, and why there is no equilibrium.
 pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Result<Outcome, EquilibriumError> {
-    let warmed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
-        Treatment::WarmTo(temperature) => Some(*temperature),
+    let warmed = sample.treatments().iter().enumerate().rev().find_map(|(k, treatment)| match treatment {
+        Treatment::WarmTo(temperature) => Some((*temperature, sample.stated_value(k))),
         _ => None,
     });
-    let temperature = warmed.unwrap_or(sample.setting().temperature);
+    let temperature = warmed.map_or(sample.setting().temperature, |(temperature, _)| temperature);
     let present = analysed.system.components().iter().copied().collect();
     let system = System::new(analysed.system.ledger(), &present, temperature)?;
     let mut surroundings = Surroundings::read(sample, &system)?;
@@ -41,7 +43,10 @@ pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Resul
     // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
     surroundings.measured = course.measured;
     surroundings.dosed = course.dosed;
-    surroundings.temperature = analysed.temperature.clone().filter(|_| warmed.is_none());
+    surroundings.temperature = match warmed {
+        Some((_, stated)) => stated.cloned(),
+        None => analysed.temperature.clone(),
+    };
     match surroundings.held_by_reagent.clone() {
         None => surroundings.solve(&system, &course.totals, settings),
         Some((ph, reagent)) => surroundings.hold_ph(&system, &course.totals, ph, &reagent, settings),
@@ -55,6 +60,8 @@ struct Surroundings {
     phases: Vec<(usize, Species)>,
     minerals: Vec<(String, Species, Mineral)>,
     held_by_reagent: Option<(f64, String)>,
+    /// Values stated with an uncertainty, by the name of what they hold, with the derivative of the solver's value by them.
+    stated: BTreeMap<String, (Quantity, f64)>,
     /// For the derivatives of what comes out: see [`Conditions`].
     measured: Vec<(Quantity, Vec<f64>)>,
     temperature: Option<Quantity>,
@@ -68,12 +75,14 @@ impl Surroundings {
             phases: vec![],
             minerals: vec![],
             held_by_reagent: None,
+            stated: BTreeMap::new(),
             measured: vec![],
             temperature: None,
             dosed: Dosed::default(),
         };
-        for treatment in sample.treatments() {
+        for (k, treatment) in sample.treatments().iter().enumerate() {
             surroundings.add(treatment, system)?;
+            surroundings.note(treatment, sample.stated_value(k));
         }
         Ok(surroundings)
     }
@@ -115,6 +124,27 @@ impl Surroundings {
             self.minerals.push((solid.into(), species, mineral));
         }
         Ok(())
+    }
+
+    /// Notes what the value of a treatment depends on; the last word on one gas, solid or pH counts.
+    fn note(&mut self, treatment: &Treatment, stated: Option<&Quantity>) {
+        let (name, slope) = match treatment {
+            Treatment::OpenTo { gas, fugacity } => (gas.as_str(), 1.0 / fugacity),
+            Treatment::Saturate { solid, .. } | Treatment::Allow { solid, .. } => (solid.as_str(), LN_10),
+            Treatment::HoldPh { .. } => ("pH", -LN_10),
+            Treatment::WithSolid { .. }
+            | Treatment::Dose(_)
+            | Treatment::Remove(_)
+            | Treatment::Concentrate(_)
+            | Treatment::AddSolution { .. }
+            | Treatment::Adjust(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => return,
+        };
+        match stated {
+            Some(stated) => self.stated.insert(name.into(), (stated.clone(), slope)),
+            None => self.stated.remove(name),
+        };
     }
 
     /// Holds a value; the last word on one gas, solid or pH counts.
@@ -187,19 +217,20 @@ impl Surroundings {
 
     fn conditions(&self, problem: &Problem) -> Conditions {
         let held = self.reservoirs.iter().zip(own_supplies(problem)).enumerate();
-        let held = held.map(|(f, ((_, reservoir), supply))| Held {
+        let held = held.map(|(f, ((name, reservoir), supply))| Held {
             reservoir: reservoir.clone(),
             phase: self.phases.iter().find(|(own, _)| *own == f).map(|(_, species)| species.clone()),
             supply,
-            value: None,
+            value: self.stated.get(name).cloned(),
+        });
+        let formed = self.minerals.iter().map(|(name, species, mineral)| MayForm {
+            species: species.clone(),
+            mineral: mineral.clone(),
+            value: self.stated.get(name).cloned(),
         });
         Conditions {
             held: held.collect(),
-            minerals: self
-                .minerals
-                .iter()
-                .map(|(_, species, mineral)| (species.clone(), mineral.clone()))
-                .collect(),
+            minerals: formed.collect(),
             measured: self.measured.clone(),
             temperature: self.temperature.clone(),
             concentrated: Some(self.dosed.concentrated),

@@ -44,6 +44,7 @@ mod session;
 mod state;
 mod syntax;
 mod table;
+mod tableau;
 mod translate;
 mod treatments;
 

@@ -9,7 +9,7 @@ use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
     Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, processes, quantity,
-    reaction, sample, state, table, treatments,
+    reaction, sample, state, table, tableau, treatments,
 };
 
 /// Gathers everything a script can name.
@@ -30,6 +30,7 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     sample::register(vocabulary);
     treatments::register(vocabulary);
     state::register(vocabulary);
+    tableau::register(vocabulary);
     processes::register(vocabulary);
     expect::register(vocabulary);
 }

@@ -21,6 +21,8 @@ struct Inner {
     setting: Setting,
     analysis: Analysis,
     treatments: Vec<Treatment>,
+    /// Values of treatments that were stated with an uncertainty, by position of the treatment.
+    stated: BTreeMap<usize, Quantity>,
     ledger: Option<Ledger>,
     /// What a survey says of it in words: date, station.
     labels: BTreeMap<String, String>,
@@ -70,6 +72,7 @@ impl Sample {
             setting,
             analysis,
             treatments: vec![],
+            stated: BTreeMap::new(),
             ledger: None,
             labels,
             entries,
@@ -85,6 +88,7 @@ impl Sample {
             setting,
             analysis: Analysis::Dissolved(dissolved),
             treatments: vec![],
+            stated: BTreeMap::new(),
             ledger: Some(ledger),
             labels: BTreeMap::new(),
             entries: BTreeMap::new(),
@@ -140,6 +144,7 @@ impl Sample {
             setting: Setting { temperature, water, ..setting },
             analysis: Analysis::Mixed(shares),
             treatments: vec![],
+            stated: BTreeMap::new(),
             ledger: ledger.cloned(),
             labels: BTreeMap::new(),
             entries: BTreeMap::new(),
@@ -202,6 +207,13 @@ impl Sample {
     #[must_use]
     pub fn treatments(&self) -> &[Treatment] {
         &self.0.treatments
+    }
+
+    /// What the value of treatment `k` was stated as, in the unit the treatment holds it in (a temperature in kelvin), where
+    /// that came with an uncertainty; a value that is merely chosen is exact.
+    #[must_use]
+    pub fn stated_value(&self, k: usize) -> Option<&Quantity> {
+        self.0.stated.get(&k)
     }
 
     /// The ledger that travels with it.
@@ -341,6 +353,20 @@ impl Sample {
         inner.treatments.push(treatment);
         Ok(Self(Arc::new(inner)))
     }
+
+    /// The same with one more treatment, whose value has the uncertainty of `stated`: see [`Sample::stated_value`].
+    ///
+    /// # Errors
+    ///
+    /// As [`Sample::treated`].
+    pub fn treated_to(&self, treatment: Treatment, stated: &Quantity) -> Result<Self, SampleError> {
+        let mut treated = self.treated(treatment)?;
+        if stated.parts().iter().any(|part| part.input.sigma().is_some()) {
+            let inner = Arc::make_mut(&mut treated.0);
+            inner.stated.insert(inner.treatments.len() - 1, stated.clone());
+        }
+        Ok(treated)
+    }
 }
 
 /// Mean temperature of waters by their shares.
@@ -350,7 +376,8 @@ fn mean_kelvin(shares: &[(Sample, f64)]) -> f64 {
 
 impl std::fmt::Debug for Inner {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        write!(f, "Sample {:?} {:?}", self.name, self.treatments)
+        let stated: Vec<String> = self.stated.values().map(Quantity::to_string).collect();
+        write!(f, "Sample {:?} {:?} {stated:?}", self.name, self.treatments)
     }
 }
 
