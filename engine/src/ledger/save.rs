@@ -103,8 +103,10 @@ fn entry(text: &mut String, name: &str, reaction: &Reaction, is_formation: bool)
 fn value(text: &mut String, constant: &Constant) {
     match constant.log_k.terms() {
         Some(terms) => {
-            let mut terms: Vec<String> =
-                terms.iter().map(|(term, value)| format!("{} = {value:?}", quoted(term.written()))).collect();
+            let mut terms: Vec<String> = terms
+                .iter()
+                .map(|(term, value)| format!("{} = {value:?}", quoted(&term.written())))
+                .collect();
             if terms.is_empty() {
                 terms.push("\"1\" = 0.0".into());
             }

@@ -5,8 +5,9 @@ use std::collections::BTreeMap;
 use std::sync::Arc;
 
 use super::analysis::{self, Analysis, Dissolved, Measured, Setting};
+use super::marine;
 use super::treatment::Treatment;
-use crate::ledger::{Ledger, LedgerError};
+use crate::ledger::{Ledger, LedgerError, Sea};
 use crate::named::{KeyFault, Value};
 use crate::units::{Pressure, Temperature};
 
@@ -53,10 +54,26 @@ impl Sample {
     ///
     /// The first fault with its key.
     pub fn read(entries: BTreeMap<String, Value>) -> Result<Self, SampleError> {
+        Self::read_by(entries, analysis::read)
+    }
+
+    /// A seawater of named keys: see [`marine::read`].
+    ///
+    /// # Errors
+    ///
+    /// The first fault with its key.
+    pub fn read_seawater(entries: BTreeMap<String, Value>) -> Result<Self, SampleError> {
+        Self::read_by(entries, marine::read)
+    }
+
+    fn read_by(
+        entries: BTreeMap<String, Value>,
+        reader: fn(BTreeMap<String, Value>) -> Result<analysis::Read, KeyFault>,
+    ) -> Result<Self, SampleError> {
         let mut read = entries.clone();
         read.remove("ledger");
         let labels = take_labels(&mut read)?;
-        let analysis::Read { name, setting, measured, defaults } = analysis::read(read)?;
+        let analysis::Read { name, setting, measured, defaults } = reader(read)?;
         let notes = match defaults.as_slice() {
             [] => vec![],
             defaults => vec![format!("not given, so taken: {}", defaults.join(", "))],
@@ -126,6 +143,16 @@ impl Sample {
         }
     }
 
+    /// The sea it is of: salinity, pressure and scale of pH of a seawater at its analysis.
+    #[must_use]
+    pub fn sea(&self) -> Option<Sea> {
+        match &self.0.analysis {
+            Analysis::Measured(measured) => measured.sea,
+            Analysis::Dissolved(_) => self.0.ledger.as_ref().and_then(Ledger::sea),
+            Analysis::Spoilt(_) => None,
+        }
+    }
+
     /// What is done to it, in order.
     #[must_use]
     pub fn treatments(&self) -> &[Treatment] {
@@ -162,9 +189,7 @@ impl Sample {
     ///
     /// The first fault with its key, or [`SampleError::NoAnalysis`].
     pub fn but(&self, changes: BTreeMap<String, Option<Value>>) -> Result<Self, SampleError> {
-        if self.measured().is_none() {
-            return Err(SampleError::NoAnalysis);
-        }
+        let Some(measured) = self.measured() else { return Err(SampleError::NoAnalysis) };
         let mut entries = self.0.entries.clone();
         for (key, value) in changes {
             match value {
@@ -172,7 +197,10 @@ impl Sample {
                 None => entries.remove(&key),
             };
         }
-        let edited = Self::read(entries)?;
+        let edited = match measured.sea {
+            Some(_) => Self::read_seawater(entries)?,
+            None => Self::read(entries)?,
+        };
         let Inner { name, setting, analysis, entries, notes, labels, .. } = (*edited.0).clone();
         let labels = if labels.is_empty() { self.0.labels.clone() } else { labels };
         Ok(Self(Arc::new(Inner { name, setting, analysis, entries, notes, labels, ..(*self.0).clone() })))

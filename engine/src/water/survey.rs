@@ -158,7 +158,9 @@ fn read_row(columns: &[Column], cells: &[CsvCell]) -> Result<Sample, String> {
         };
         entries.insert(column.title.clone(), value);
     }
-    Sample::read(entries).map_err(|error| error.to_string())
+    // A salinity makes a seawater.
+    let read = if entries.contains_key("salinity") { Sample::read_seawater } else { Sample::read };
+    read(entries).map_err(|error| error.to_string())
 }
 
 fn number(value: f64, sigma: Option<f64>, unit: Option<&Unit>, label: &str) -> Result<Value, QuantityError> {
