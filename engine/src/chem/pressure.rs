@@ -57,6 +57,14 @@ impl Volume {
         }
     }
 
+    /// The options it is read from, each with its terms.
+    #[must_use]
+    pub fn written(&self) -> [(&'static str, Vec<(&'static str, f64)>); 2] {
+        let volume = ["1", "t", "t^2"].into_iter().zip(self.volume).collect();
+        let compressibility = ["1", "t"].into_iter().zip(self.compressibility).collect();
+        [("volume_terms", volume), ("compressibility_terms", compressibility)]
+    }
+
     /// ln K(p)/K(0), p being the pressure in bar above that at which K(0) holds.
     #[must_use]
     pub fn ln_factor(&self, pressure_bar: f64, temperature: Temperature) -> f64 {

@@ -43,7 +43,7 @@ pub struct Sea {
 
 impl Constituent {
     /// Reads a `[[composition]]` entry: `name`, `of`, and either `mass_per_chlorinity` (mass ratio) with `molar_mass`
-    /// (g/mol), or `mole_fraction` of the reference composition; `relative_sigma`, `source`, `provenance`, `note`.
+    /// (g/mol), or `mole_fraction` of the reference composition, or `mol_per_salinity` (mol/kg(solution)); `relative_sigma`, `source`, `provenance`, `note`.
     ///
     /// # Errors
     ///
@@ -59,6 +59,7 @@ impl Constituent {
         let ratio = named.number("mass_per_chlorinity")?;
         let molar_mass = named.number("molar_mass")?;
         let mole_fraction = named.number("mole_fraction")?;
+        let per_salinity = named.number("mol_per_salinity")?;
         let sigma = named.number("relative_sigma")?;
         let source = named.text("source")?.unwrap_or_else(|| citation.to_string());
         let word = named.text("provenance")?;
@@ -67,7 +68,8 @@ impl Constituent {
         })?;
         named.take("note");
         named.finish()?;
-        let per_salinity = match (ratio, molar_mass, mole_fraction) {
+        let per_salinity = match (ratio, molar_mass, mole_fraction.or(per_salinity)) {
+            (None, None, Some(per_salinity)) if mole_fraction.is_none() => per_salinity,
             (Some(ratio), Some(molar_mass), None) if molar_mass > 0.0 => {
                 ratio / molar_mass / SALINITY_PER_CHLORINITY
             }
@@ -84,6 +86,12 @@ impl Constituent {
         let input = input.map_err(|error| KeyFault::new("relative_sigma", error.to_string()))?;
         let factor = Part { input, sensitivity: 1.0 };
         Ok(Self { name, of, per_salinity, factor, source, provenance })
+    }
+
+    /// Its relative standard uncertainty, where one was published.
+    #[must_use]
+    pub fn relative_sigma(&self) -> Option<f64> {
+        self.factor.input.sigma()
     }
 
     /// mol/kg(solution) at a practical salinity, with the uncertainty of the ratio.

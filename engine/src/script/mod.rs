@@ -39,6 +39,7 @@ mod modules;
 mod quantity;
 mod reaction;
 mod sample;
+mod seawater;
 mod session;
 mod state;
 mod syntax;

@@ -9,7 +9,7 @@ use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
     Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, quantity, reaction, sample,
-    state, table,
+    seawater, state, table,
 };
 
 /// Gathers everything a script can name.
@@ -28,6 +28,7 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     reaction::register(vocabulary);
     ledger::register(vocabulary);
     sample::register(vocabulary);
+    seawater::register(vocabulary);
     state::register(vocabulary);
     expect::register(vocabulary);
 }

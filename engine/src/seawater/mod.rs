@@ -8,4 +8,6 @@
 
 pub mod buffers;
 pub mod constants;
+pub mod estuary;
+pub mod profile;
 pub mod scales;

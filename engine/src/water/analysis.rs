@@ -102,6 +102,8 @@ pub struct Read {
     pub measured: Measured,
     /// Defaults that were used, in words.
     pub defaults: Vec<String>,
+    /// How what was given was taken, in words.
+    pub notes: Vec<String>,
 }
 
 /// The keys of a sample besides amounts.
@@ -155,7 +157,10 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let volume_temperature =
         named.take("volume_temperature").map(|v| reaction::temperature("volume_temperature", v));
     let mut measured = Measured {
-        evidence: read_evidence(&mut named, setting.pressure)?,
+        evidence: {
+            let co2 = read_co2(&mut named, setting.pressure)?;
+            read_evidence(&mut named, co2)?
+        },
         make_up: named.text("make_up")?,
         density,
         volume_temperature: volume_temperature.transpose()?,
@@ -171,7 +176,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     {
         return Err(KeyFault::new("DIC", "`DIC` and `C` state the same carbon: keep one"));
     }
-    Ok(Read { name, setting, measured, defaults })
+    Ok(Read { name, setting, measured, defaults, notes: vec![] })
 }
 
 /// The setting, and the temperature in kelvin where it is uncertain.
@@ -230,7 +235,8 @@ pub(super) fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
     }
 }
 
-pub(super) fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyFault> {
+/// pH, alkalinity and inorganic carbon, beside the fugacity of CO2 in bar.
+pub(super) fn read_evidence(named: &mut Named, co2: Option<Quantity>) -> Result<Evidence, KeyFault> {
     let ph = match named.take("pH") {
         None => None,
         Some(Value::Text(text)) if text == "electroneutral" => Some(Ph::Electroneutral),
@@ -259,8 +265,7 @@ pub(super) fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evi
     if let Some(dic) = &dic {
         not_negative("DIC", dic)?;
     }
-    let evidence =
-        Evidence { ph, alkalinity, dic, co2: read_co2(named, pressure)?, from: named.texts("from")? };
+    let evidence = Evidence { ph, alkalinity, dic, co2, from: named.texts("from")? };
     check_pair(&evidence)?;
     Ok(evidence)
 }
@@ -327,7 +332,7 @@ impl Evidence {
     }
 }
 
-pub(super) fn check_pair(evidence: &Evidence) -> Result<(), KeyFault> {
+fn check_pair(evidence: &Evidence) -> Result<(), KeyFault> {
     let given = evidence.given();
     if let Some(from) = &evidence.from {
         for name in from {

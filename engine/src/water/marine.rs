@@ -15,7 +15,7 @@ use crate::text::list;
 use crate::units::{KgOf, Kind, Pressure, Temperature, Unit};
 
 /// The nutrients, by the names oceanographers give them, as the amounts they are.
-const NUTRIENTS: [(&str, &str); 4] =
+pub const NUTRIENTS: [(&str, &str); 4] =
     [("phosphate", "P"), ("silicate", "Si"), ("ammonium", "N(-III)"), ("sulfide", "S(-II)")];
 
 /// Keys that a seawater has besides those of any sample.
@@ -42,11 +42,11 @@ const COMMON_LATITUDE: f64 = 45.0;
 /// Returns the first fault with its key.
 pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let mut named = Named::new(entries);
-    let mut notes = Vec::new();
+    let (mut defaults, mut notes) = (Vec::new(), Vec::new());
     let name = named.text("name")?;
     let salinity = read_salinity(&mut named, &mut notes)?;
     read_depth(&mut named, &mut notes)?;
-    let (setting, temperature) = analysis::read_setting(&mut named, &mut notes)?;
+    let (setting, temperature) = analysis::read_setting(&mut named, &mut defaults)?;
     let ph_scale = read_scale(&mut named)?;
     let ph_temperature =
         named.take("pH_temperature").map(|value| reaction::temperature("pH_temperature", value));
@@ -60,11 +60,9 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let make_up = named.text("make_up")?;
 
     let mut named = Named::new(in_solution(named.rest())?);
-    let with_gas = with_fugacity(&mut named, setting.temperature, salinity, air)?;
-    let evidence = analysis::read_evidence(&mut named, setting.pressure)?;
+    let co2 = with_fugacity(&mut named, setting.temperature, salinity, air)?;
+    let evidence = analysis::read_evidence(&mut named, co2)?;
     check_ph_temperature(ph_temperature, &evidence)?;
-    let evidence = Evidence { co2: with_gas.or(evidence.co2), ..evidence };
-    analysis::check_pair(&evidence)?;
     let mut measured = Measured {
         evidence,
         make_up,
@@ -83,7 +81,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     }
     note_litres(&measured, salinity, &mut notes);
     analysis::check_make_up(&measured)?;
-    Ok(Read { name, setting, measured, defaults: notes })
+    Ok(Read { name, setting, measured, defaults, notes })
 }
 
 /// Density of the sample as its volumes were measured, 20 degC unless said otherwise, at the surface.

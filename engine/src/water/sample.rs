@@ -73,11 +73,12 @@ impl Sample {
         let mut read = entries.clone();
         read.remove("ledger");
         let labels = take_labels(&mut read)?;
-        let analysis::Read { name, setting, measured, defaults } = reader(read)?;
-        let notes = match defaults.as_slice() {
+        let analysis::Read { name, setting, measured, defaults, notes: mut taken } = reader(read)?;
+        let mut notes = match defaults.as_slice() {
             [] => vec![],
             defaults => vec![format!("not given, so taken: {}", defaults.join(", "))],
         };
+        notes.append(&mut taken);
         let analysis = Analysis::Measured(Box::new(measured));
         Ok(Self(Arc::new(Inner {
             name,
