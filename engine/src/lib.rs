@@ -13,6 +13,7 @@ pub mod quantity;
 pub mod script;
 pub mod seawater;
 pub mod solve;
+pub mod tableau;
 pub mod text;
 pub mod units;
 pub mod water;

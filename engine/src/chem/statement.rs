@@ -182,7 +182,12 @@ impl Statement {
                 given.published_as(&format!("{identity}/{word}"), &format!("{word} of {label}"))
             });
             let given = named.and_then(Result::ok).unwrap_or(given);
-            Influence::through(given.parts(), &per_unit)
+            // A value typed here is called after its key; a budget has to say whose it is.
+            let called = |part: &Part| match part.input.label() == word.replace(' ', "_") {
+                true => Part { input: part.input.called(&format!("{word} of {label}")), ..part.clone() },
+                false => part.clone(),
+            };
+            Influence::through(&given.parts().iter().map(called).collect::<Vec<_>>(), &per_unit)
         };
         let mut influences =
             of(&self.enthalpy, Kind::Energy, "enthalpy", LogK::van_t_hoff(0.0, at, 1.0, 0.0));
@@ -322,6 +327,15 @@ fn read_k(
 
 /// Terms as they were published: of log10 K, of ln K or of pK, with what turns a coefficient into one of log10 K.
 const TERMS: [(&str, f64); 3] = [("log_k_terms", 1.0), ("ln_k_terms", 1.0 / LN_10), ("pk_terms", -1.0)];
+
+/// Reads the terms of a function of temperature and salinity, `#{ "1": 14.8, "1/T": -3404.7 }`.
+///
+/// # Errors
+///
+/// A fault of `log_k_terms` that names the term.
+pub fn terms(value: Value) -> Result<Vec<(Product, f64)>, KeyFault> {
+    read_terms("log_k_terms", 1.0, value)
+}
 
 /// Terms of a map, each coefficient times `of_log_k`.
 fn read_terms(option: &str, of_log_k: f64, value: Value) -> Result<Vec<(Product, f64)>, KeyFault> {

@@ -5,11 +5,15 @@
 //! questions in the user's names and units.
 
 pub mod acid_base;
+mod adjust;
 pub mod analysis;
 pub mod assemble;
 pub mod buffer;
+mod dissolved_mass;
+mod dosing;
 mod error;
 mod indices;
+mod mixture;
 pub mod observable;
 pub mod state;
 mod trail;
@@ -17,6 +21,7 @@ pub mod treatment;
 pub mod uncertainty;
 
 pub use assemble::System;
+pub use dosing::Dosed;
 pub use error::EquilibriumError;
 pub use observable::{Asked, Observable, ObservableError};
 pub use state::State;
@@ -40,13 +45,20 @@ pub fn equilibrate(
     let mut analysed = match sample.analysis() {
         Analysis::Measured(measured) => analysis::analyse(sample, measured, &ledger, settings)?,
         Analysis::Spoilt(reason) => return Err(EquilibriumError::Spoilt(reason.clone())),
+        Analysis::Mixed(parts) => mixture::mix(sample, parts, &ledger, settings)?,
         Analysis::Dissolved(dissolved) => analysis::restore(sample, dissolved, &ledger)?,
     };
+    let mut resolved = sample.clone();
+    if adjust::is_needed(sample) {
+        let notes;
+        (resolved, notes) = adjust::resolve(sample, &analysed, settings)?;
+        analysed.notes.extend(notes);
+    }
     let first = analysed.outcome.take();
     let outcomes = match first {
         Some(first) if sample.treatments().is_empty() && !measured_elsewhere(sample) => vec![first],
         first => {
-            let treated = treatment::treat(sample, &analysed, settings)?;
+            let treated = treatment::treat(&resolved, &analysed, settings)?;
             first.into_iter().chain([treated]).collect()
         }
     };
@@ -56,6 +68,12 @@ pub fn equilibrate(
 /// The ledger a sample is computed with, in the sea that the sample is of.
 fn ledger_of(sample: &Sample, given: Option<&Ledger>) -> Result<Ledger, EquilibriumError> {
     let sea = sample.sea();
+    if let (Analysis::Mixed(parts), None) = (sample.analysis(), sea)
+        && parts.iter().any(|(part, _)| part.sea().is_some())
+    {
+        let why = "seawater and other water hold by different constants: mix them with `estuary(river, sea, [0.5])`";
+        return Err(EquilibriumError::Unreachable(why.into()));
+    }
     let ledger = match given.or(sample.ledger()) {
         Some(ledger) => ledger.clone(),
         None => shipped::ledger(if sea.is_some() { "seawater" } else { "freshwater" }, None)?,

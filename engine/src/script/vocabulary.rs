@@ -8,8 +8,8 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
-    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, quantity, reaction, sample,
-    seawater, state, table,
+    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, processes, quantity,
+    reaction, sample, seawater, state, table, tableau, treatments,
 };
 
 /// Gathers everything a script can name.
@@ -29,7 +29,10 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     ledger::register(vocabulary);
     sample::register(vocabulary);
     seawater::register(vocabulary);
+    treatments::register(vocabulary);
     state::register(vocabulary);
+    tableau::register(vocabulary);
+    processes::register(vocabulary);
     expect::register(vocabulary);
 }
 
