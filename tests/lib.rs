@@ -23,6 +23,8 @@ mod seawater;
 #[cfg(test)]
 mod sensitivities;
 #[cfg(test)]
+mod tableaux;
+#[cfg(test)]
 mod tidy;
 #[cfg(test)]
 mod two_routes;

@@ -3,7 +3,7 @@
 use crate::kkt::check;
 use crate::random_systems::{self, HARD, Random};
 use lysocline_engine::activity::{Davies, Model};
-use lysocline_engine::solve::{Coefficient, Converged, Effort, Problem, Row, Settings, SolveError, solve};
+use lysocline_engine::solve::{Coefficient, Effort, Problem, Row, Settings, SolveError, solve};
 use rayon::prelude::*;
 
 /// Solves a family of problems; fails if any fails, and tells how hard they were.
@@ -323,4 +323,83 @@ fn a_warm_start_leads_to_the_cold_answer_bit_for_bit_each_time() {
 
 fn largest_difference(a: &[f64], b: &[f64]) -> f64 {
     a.iter().zip(b).filter(|(a, b)| a != b).map(|(a, b)| (a - b).abs()).fold(0.0, f64::max)
+}
+
+/// Coefficients of a row with an integer in each component.
+fn integers(row: &Row, n_components: usize) -> Vec<i64> {
+    let mut nu = vec![0; n_components];
+    row.stoichiometry.iter().for_each(|(j, value)| nu[*j] = *value.numer());
+    nu
+}
+
+/// A problem with one component, of positive coefficients only, whose total is `sign` times its size, hidden by mixing
+/// the components; with the species that contain it, and the problem before it was mixed.
+fn hidden(seed: u64, sign: f64) -> Option<(Problem, Problem, Vec<bool>)> {
+    let random = &mut Random(seed * 104_729 + 7);
+    let mut problem = random_systems::tableau(random, HARD);
+    let last = problem.n_components - 1;
+    let contains = |row: &Row| row.stoichiometry.iter().any(|(j, _)| *j == last);
+    let marked: Vec<bool> = problem.species.iter().map(contains).collect();
+    let is_one_sided = problem.species.iter().flat_map(|row| &row.stoichiometry);
+    if is_one_sided.filter(|(j, _)| *j == last).any(|(_, nu)| *nu.numer() < 0) {
+        return None;
+    }
+    problem.totals[last] = problem.totals[last] * sign;
+    let mut mixed = problem.clone();
+    for _ in 0..3 {
+        mixed = mix_components(random, &mixed);
+    }
+    Some((problem, mixed, marked))
+}
+
+#[test]
+fn hidden_infeasible_problems_are_refused_with_a_proof() {
+    let proven = (0..220_u64).into_par_iter().filter(|seed| {
+        let Some((_, mixed, _)) = hidden(*seed, -1.0) else { return false };
+        let outcome = solve(&mixed, &Model::IDEAL, &Settings::default(), None);
+        let Err(SolveError::Infeasible { combination, value }) = outcome else {
+            panic!("seed {seed}: {:?}", outcome.err())
+        };
+        let of = |nu: &[i64]| combination.iter().map(|(j, factor)| factor * nu[*j] as f64).sum::<f64>();
+        for row in &mixed.species {
+            assert!(of(&integers(row, mixed.n_components)) * value <= 0.0, "seed {seed}");
+        }
+        let total: f64 = combination.iter().map(|(j, factor)| factor * mixed.totals[*j].to_f64()).sum();
+        assert!((total - value).abs() <= 1e-9 * value.abs().max(1.0), "seed {seed}: {total:e} {value:e}");
+        true
+    });
+    assert!(proven.count() >= 200);
+}
+
+#[test]
+fn hidden_boundary_problems_have_exact_zeros() {
+    let solved = (0..220_u64).into_par_iter().filter(|seed| {
+        let Some((plain, mixed, marked)) = hidden(*seed, 0.0) else { return false };
+        let solve = |problem: &Problem| {
+            let outcome = solve(problem, &Model::IDEAL, &Settings::default(), None);
+            outcome.unwrap_or_else(|error| panic!("seed {seed}: {error}"))
+        };
+        let (plain, mixed) = (solve(&plain), solve(&mixed));
+        for (i, is_zero) in marked.iter().enumerate() {
+            assert_eq!(mixed.ln_c[i] == f64::NEG_INFINITY, *is_zero, "seed {seed}, species {i}");
+        }
+        assert_same_composition("boundary", *seed, &plain.ln_c, mixed.ln_c, plain.certificate.condition);
+        true
+    });
+    assert!(solved.count() >= 200);
+}
+
+#[test]
+fn hidden_interior_problems_are_solved() {
+    let solved = (0..220_u64).into_par_iter().filter(|seed| {
+        let Some((plain, mixed, _)) = hidden(*seed, 1.0) else { return false };
+        let solve = |problem: &Problem| {
+            let outcome = solve(problem, &Model::IDEAL, &Settings::default(), None);
+            outcome.unwrap_or_else(|error| panic!("seed {seed}: {error}"))
+        };
+        let (plain, mixed) = (solve(&plain), solve(&mixed));
+        assert_same_composition("interior", *seed, &plain.ln_c, mixed.ln_c, plain.certificate.condition);
+        true
+    });
+    assert!(solved.count() >= 200);
 }

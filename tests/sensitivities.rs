@@ -17,7 +17,7 @@ use lysocline_engine::quantity::Quantity;
 use lysocline_engine::script::sandbox::Sandbox;
 use lysocline_engine::script::{Dynamic, Options, ScriptEngine, Session};
 use lysocline_engine::solve::sensitivity::{Found, Given, Sensitivities, own_supplies};
-use lysocline_engine::solve::{Converged, Problem, Settings, solve};
+use lysocline_engine::solve::{Converged, Mixed, Problem, Settings, solve};
 use lysocline_engine::units::{Temperature, Unit};
 use lysocline_engine::water::{Sample, Treatment};
 use rayon::prelude::*;
@@ -103,7 +103,7 @@ fn moved(problem: &Problem, change: &Given, step: f64) -> Problem {
     problem
 }
 
-/// A random problem with minerals in a third, a reservoir in a third, and the Davies equation in half of them.
+/// A random problem with minerals in a quarter, a reservoir in another, mixtures in a third, and the Davies equation in half of them.
 fn random_problem(seed: u64) -> Option<(Problem, Model, Converged)> {
     let random = &mut Random(seed);
     let mut problem = random_systems::tableau(random, FAMILY);
@@ -114,15 +114,17 @@ fn random_problem(seed: u64) -> Option<(Problem, Model, Converged)> {
     let model = if seed.is_multiple_of(2) { Model::IDEAL } else { Model::davies(Davies::new(0.509)) };
     let settings = Settings::default();
     let first = solve(&problem, &Model::IDEAL, &settings, None).ok()?;
-    match seed % 3 {
+    match seed % 4 {
         0 => random_systems::add_minerals(random, &mut problem, &first.ln_a, 2),
         1 => random_systems::hold_component(&mut problem, 0, first.ln_a[0] + 1.0),
+        2 => random_systems::add_mixtures(random, &mut problem, &first.ln_a, 2),
         _ => {}
     }
     let converged = solve(&problem, &model, &settings, None).ok()?;
     let judged = converged.ionic_strength < 0.5
         && converged.certificate.condition < 1e3
         && converged.mineral_ln_saturation.iter().all(|saturation| *saturation == 0.0 || *saturation < -0.1)
+        && converged.mixtures.iter().all(|mixture| mixture.amount > 0.0 || mixture.ln_saturation < -0.1)
         && converged.certificate.smallest_amount > 1e-3 * converged.ionic_strength.max(1e-9);
     judged.then_some((problem, model, converged))
 }
@@ -172,7 +174,8 @@ fn pull_is_the_transpose_of_push() {
         for value in weight.ln_a.iter_mut().chain(&mut weight.ln_c).chain(&mut weight.ln_gamma) {
             *value = random.uniform(-1.0, 1.0);
         }
-        for value in weight.reservoir_amount.iter_mut().chain(&mut weight.mineral_amount) {
+        let amounts = weight.reservoir_amount.iter_mut().chain(&mut weight.mineral_amount);
+        for value in amounts.chain(weight.mixtures.iter_mut().flatten()) {
             *value = random.uniform(-1.0, 1.0);
         }
         (weight.ionic_strength, weight.ln_water_activity) = (random.uniform(-1.0, 1.0), 0.3);
@@ -180,6 +183,7 @@ fn pull_is_the_transpose_of_push() {
         let given = |given: &Given| -> Vec<f64> {
             [&given.ln_k, &given.ln_gamma, &given.totals, &given.reservoirs, &given.minerals]
                 .into_iter()
+                .chain(&given.mixtures)
                 .flatten()
                 .copied()
                 .chain([given.ln_water_activity])

@@ -4,7 +4,7 @@ use std::collections::BTreeSet;
 
 use crate::activity::{Davies, Model};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Formation, Formations, Ledger, Sea};
+use crate::ledger::{ActivityChoice, Formation, Formations, Ledger, LedgerError, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::seawater::constants::{Place, log_k_free};
@@ -49,6 +49,9 @@ impl System {
         temperature: Temperature,
     ) -> Result<Self, EquilibriumError> {
         let formations = ledger.formations();
+        if let Some((name, _)) = formations.too_large.first().and_then(|k| ledger.reactions().nth(*k)) {
+            return Err(LedgerError::TooLarge(name.into()).into());
+        }
         let water = formations.component(&Species::water());
         let components: Vec<usize> = present.iter().copied().filter(|j| Some(*j) != water).collect();
         let (log_k, doubts) = constants(ledger, temperature);

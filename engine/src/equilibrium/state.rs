@@ -826,7 +826,15 @@ impl State {
         .expect("columns of one length")
     }
 
-    /// Solutes from the most to the least abundant.
+    /// A number for a table, with its standard uncertainty where one is known.
+    fn cell(&self, value: f64, slopes: Slopes) -> Cell {
+        match self.quantity(value, slopes).sigma() {
+            Some(sigma) if sigma > 0.0 => Cell::uncertain(value, sigma),
+            _ => Cell::number(value),
+        }
+    }
+
+    /// Solutes from the most to the least abundant; molalities with their uncertainty where it is known.
     #[must_use]
     pub fn species(&self) -> Table {
         let converged = &self.0.outcome.converged;
@@ -836,14 +844,18 @@ impl State {
         let numbers = |title: &str, value: &dyn Fn(usize) -> f64| {
             Column::numbers(title, order.iter().map(|k| value(*k)))
         };
+        let molality = |k: &usize| {
+            let molality = self.0.molalities[*k];
+            self.cell(molality, vec![(Variable::LnMolality(*k), molality)])
+        };
         Table::new([
             Column::chemistry("species", order.iter().map(|k| solutes[*k].species.key())),
-            numbers(
+            Column::new(
                 match self.basis() {
                     KgOf::Water => "molality [mol/kg(water)]",
                     KgOf::Solution => "concentration [mol/kg(solution)]",
                 },
-                &|k| self.0.molalities[k],
+                order.iter().map(molality),
             ),
             numbers("activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]).exp()),
             numbers("log activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]) / LN_10),
@@ -852,7 +864,8 @@ impl State {
         .expect("columns of one length")
     }
 
-    /// Gases and solids that the water's components can form, from the most to the least saturated.
+    /// Gases and solids that the water's components can form, from the most to the least saturated, with the uncertainty of
+    /// what is known.
     #[must_use]
     pub fn phases(&self) -> Table {
         let converged = &self.0.outcome.converged;
@@ -867,13 +880,20 @@ impl State {
         });
         let amount = |formed: &Formation| {
             let found = self.solid(&formed.species);
-            found.map_or_else(Cell::missing, |solid| Cell::number(solid.amount))
+            found.map_or_else(Cell::missing, |solid| self.cell(solid.amount, vec![solid.slope]))
         };
-        let index = |(formed, index): &(&Formation, f64)| {
-            if formed.species.is_gas() { Cell::missing() } else { Cell::number(*index) }
+        let slopes =
+            |formed: &Formation| saturation_slopes(self.system(), &formed.species).unwrap_or_default();
+        let index = |(formed, index): &(&Formation, f64)| match formed.species.is_gas() {
+            true => Cell::missing(),
+            false => self.cell(*index, scaled(&slopes(formed), 1.0 / LN_10)),
         };
         let fugacity = |(formed, index): &(&Formation, f64)| {
-            if formed.species.is_gas() { Cell::number(10_f64.powf(*index)) } else { Cell::missing() }
+            let fugacity = 10_f64.powf(*index);
+            match formed.species.is_gas() {
+                true => self.cell(fugacity, scaled(&slopes(formed), fugacity)),
+                false => Cell::missing(),
+            }
         };
         let notes: Vec<String> =
             phases.iter().map(|(formed, _)| self.doubt_words(formed).unwrap_or_default()).collect();

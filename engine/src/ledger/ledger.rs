@@ -89,6 +89,12 @@ pub enum LedgerError {
         /// The species that are left over.
         left_over: Vec<String>,
     },
+    /// Coefficients that outgrow 64 bits when reactions are combined.
+    #[error(
+        "`{0}` cannot be combined with the others: its coefficients are too large, or have too many digits, to be \
+         counted exactly"
+    )]
+    TooLarge(String),
     /// Constants that cannot be weighed.
     #[error(
         "no uncertainty is stated for {}, and what is not stated cannot be weighed; fill it in with \
@@ -494,8 +500,11 @@ impl Ledger {
     }
 
     /// Every independent cycle among its reactions and formation data, and how far each fails to close.
-    #[must_use]
-    pub fn audit(&self, temperature: Temperature) -> Audit {
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::TooLarge`].
+    pub fn audit(&self, temperature: Temperature) -> Result<Audit, LedgerError> {
         audit::audit(self, temperature)
     }
 

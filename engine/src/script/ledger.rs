@@ -415,12 +415,13 @@ mod ledger_functions {
     /// ```
     #[rhai_fn(name = "audit", pure, return_raw)]
     pub fn audit(ledger: &mut Ledger) -> ScriptResult<Table> {
-        Ok(audit_table(&ledger.audit(Temperature::REFERENCE))?)
+        Ok(audit_table(&ledger.audit(Temperature::REFERENCE).map_err(Fail::from)?)?)
     }
     /// The same at a temperature (degC, or text with a unit); constants not known there are in no cycle, which is said.
     #[rhai_fn(name = "audit", pure, return_raw)]
     pub fn audit_at(context: NativeCallContext, ledger: &mut Ledger, at: Dynamic) -> ScriptResult<Table> {
-        let audit = ledger.audit(temperature(&at).map_err(|fail| fail.argument(0))?);
+        let at = temperature(&at).map_err(|fail| fail.argument(0))?;
+        let audit = ledger.audit(at).map_err(Fail::from)?;
         if !audit.unknown.is_empty() {
             let names = crate::text::list(&audit.unknown);
             let at = audit.temperature.celsius();

@@ -177,7 +177,7 @@ impl Point {
         if !self.shifted {
             self.add_up(reduced);
         }
-        if self.shifted || !self.worst.is_finite() {
+        if self.shifted || !self.worst.is_finite() || self.has_lost_precision() {
             self.add_up_shifted(reduced);
         }
     }
@@ -202,6 +202,11 @@ impl Point {
             (self.per_p[k], self.per_n[k]) = (1.0 / p, 1.0 / n);
             self.finish(k);
         }
+    }
+
+    /// Whether a sum is so small that its terms are no longer normal numbers.
+    fn has_lost_precision(&self) -> bool {
+        self.ln_p.iter().chain(&self.ln_n).any(|ln_sum| *ln_sum < -LARGE)
     }
 
     /// The same where a sum over- or underflows: every sum relative to its largest term.
@@ -360,7 +365,7 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<(Redu
         if newton.step() {
             continue;
         }
-        if before <= settings.stalled_residual || newton.is_rounding() {
+        if before <= settings.stalled_residual || newton.is_rounding(settings) {
             return Ok(newton.finish());
         }
         let swept = newton.sweep();
@@ -389,7 +394,7 @@ pub(super) fn converge_saddle(
         }
         newton.system.effort.iterations += 1;
         if !newton.saddle_step() {
-            let is_settled = newton.here.worst <= settings.stalled_residual || newton.is_rounding();
+            let is_settled = newton.here.worst <= settings.stalled_residual || newton.is_rounding(settings);
             return Ok(is_settled.then(|| newton.finish()));
         }
     }
@@ -664,10 +669,10 @@ impl<'s, 'p> Newton<'s, 'p> {
 
     /// Whether the residual is no larger than its own rounding, as it may be far from the final ionic strength, where
     /// logarithms of concentrations run into the thousands. The certificate is not so lenient.
-    fn is_rounding(&self) -> bool {
+    fn is_rounding(&self, settings: &Settings) -> bool {
         self.here.worst < 1e-8 && {
             let (_, rounding) = self.here.absolute_jacobian(&self.reduced);
-            self.here.residual.iter().zip(&rounding).all(|(f, bound)| f.abs() <= *bound)
+            self.here.residual.iter().zip(&rounding).all(|(f, bound)| f.abs() <= bound.max(settings.residual))
         }
     }
 

@@ -7,6 +7,7 @@
 //! not add up to one however little there is of it leaves.
 
 use super::inner::{self, Point, Reduced};
+use super::phases;
 use super::scalar::{self, Sample, Tolerance};
 use super::settings::{Settings, SolveError};
 use super::system::{Column, System};
@@ -15,15 +16,15 @@ use super::system::{Column, System};
 pub(super) enum Amounts {
     /// The fractions of every mixture that is still present add up to one.
     Settled(Box<(Reduced, Point)>),
-    /// They add up to more however much there is; the system is left with very much of it.
-    Endless { mixture_idx: usize },
+    /// They do not, and on the way minerals that are present were used up, or there is very much of this mixture.
+    Rising { mixture_idx: usize },
 }
 
 /// ln of more than can form.
-const VERY_MUCH: f64 = 60.0;
+const VERY_MUCH: f64 = 300.0;
 
-/// ln of less than counts beside no amount at all.
-const VERY_LITTLE: f64 = -650.0;
+/// ln of less than counts beside no amount at all, even where activity coefficients run to thousands of powers of ten.
+const VERY_LITTLE: f64 = -1e5;
 
 /// Solves for composition and amounts of mixtures at given activity coefficients and present phases.
 pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<Amounts, SolveError> {
@@ -40,6 +41,7 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<Amoun
     }
     for round in 0..MOST_ROUNDS {
         let start = Start::of(system);
+        let before = ln_amounts(system);
         if let Some(converged) = inner::converge_saddle(system, settings)? {
             return Ok(settled(converged));
         }
@@ -50,15 +52,58 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<Amoun
             match close(system, settings, mixture_idx, tolerance)? {
                 Closed::Amount => {}
                 Closed::Left => break,
-                Closed::Endless => return Ok(Amounts::Endless { mixture_idx }),
+                Closed::Endless => return Ok(Amounts::Rising { mixture_idx }),
+            }
+            // Mixtures that draw on minerals beyond what there is of them can rise together without end.
+            if round > 1 && phases::any_used_up(system) {
+                return Ok(Amounts::Rising { mixture_idx });
             }
         }
         if present(system).is_empty() {
             return Ok(settled(inner::converge(system, settings)?));
         }
+        if round > 1 {
+            stride(system, settings, &before)?;
+        }
         release(system);
     }
     Err(SolveError::NotConverged { iterations: system.effort.iterations, residual: f64::INFINITY })
+}
+
+/// Goes on in the direction of the latest round, in doubled steps, while the Gibbs energy falls: amounts that depend on
+/// each other move slowly one after the other.
+fn stride(system: &mut System, settings: &Settings, before: &[(usize, f64)]) -> Result<(), SolveError> {
+    const MOST_DOUBLINGS: i32 = 8;
+
+    let here = ln_amounts(system);
+    if here.len() != before.len() {
+        return Ok(());
+    }
+    let change: Vec<f64> = here.iter().zip(before).map(|((_, new), (_, old))| new - old).collect();
+    let slope_at = |system: &mut System, share: f64| -> Result<f64, SolveError> {
+        for ((p, ln_amount), change) in here.iter().zip(&change) {
+            system.hold_mixture(*p, (ln_amount + share * change).clamp(VERY_LITTLE, VERY_MUCH));
+        }
+        inner::converge(system, settings)?;
+        let slope = |((p, _), change): (&(usize, f64), &f64)| {
+            change * system.level_of(system.amount_row(*p)).exp() * system.mixture_saturation(*p).exp_m1()
+        };
+        Ok(here.iter().zip(&change).map(slope).sum())
+    };
+    let mut share = 0.0;
+    for doubling in 0..MOST_DOUBLINGS {
+        let farther = 2_f64.powi(doubling);
+        if slope_at(system, farther)? <= 0.0 {
+            break;
+        }
+        share = farther;
+    }
+    slope_at(system, share)?;
+    Ok(())
+}
+
+fn ln_amounts(system: &System) -> Vec<(usize, f64)> {
+    present(system).into_iter().map(|p| (p, system.level_of(system.amount_row(p)))).collect()
 }
 
 fn settled(converged: (Reduced, Point)) -> Amounts {

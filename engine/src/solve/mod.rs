@@ -138,7 +138,28 @@ pub fn solve(
     warm: Option<&Warm>,
 ) -> Result<Converged, SolveError> {
     problem.validate()?;
-    let mut system = System::new(problem, warm)?;
+    match attempt(System::new(problem, warm)?, model, settings, warm) {
+        Err(failure) if failure.is_open() => {
+            // Newton's method does not end where the totals lie on the boundary of what is possible, or beyond.
+            let absent = feasibility::zeros(problem)?;
+            if !absent.contains(&true) {
+                return Err(failure);
+            }
+            let mut system = System::new(problem, None)?;
+            system.absent = absent;
+            attempt(system, model, settings, None)
+        }
+        outcome => outcome,
+    }
+}
+
+/// Solves from the start that `system` is at.
+fn attempt(
+    mut system: System,
+    model: &Model,
+    settings: &Settings,
+    warm: Option<&Warm>,
+) -> Result<Converged, SolveError> {
     let start = warm.map_or((0.0, 0.0), |warm| (warm.ionic_strength, warm.ln_water_activity));
     let settled = ionic_strength::settle(&mut system, model, settings, start)?;
     let Settled { ionic_strength, ln_water_activity, .. } = settled;
@@ -149,7 +170,7 @@ pub fn solve(
     }
     Ok(Converged {
         ln_a: component_activities(&system),
-        ln_c: system.ln_c[..problem.species.len()].to_vec(),
+        ln_c: system.ln_c[..system.problem.species.len()].to_vec(),
         ln_gamma: std::mem::take(&mut system.ln_gamma),
         ionic_strength,
         ln_water_activity,

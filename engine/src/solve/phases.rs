@@ -27,7 +27,7 @@ pub(super) fn settle(system: &mut System, settings: &Settings) -> Result<(Reduce
         }
         let converged = match amounts {
             Amounts::Settled(converged) => *converged,
-            Amounts::Endless { mixture_idx } => return Err(SolveError::UnboundedMixture { mixture_idx }),
+            Amounts::Rising { mixture_idx } => return Err(SolveError::UnboundedMixture { mixture_idx }),
         };
         match most_supersaturated(system, settings.saturation) {
             None => return Ok(converged),
@@ -49,12 +49,21 @@ pub(super) fn present(system: &System) -> Vec<(usize, usize)> {
         .collect()
 }
 
+/// Amounts smaller than this share of their balance are rounding.
+const ROUNDING: f64 = 1e-15;
+
+const LARGEST: f64 = 1e300;
+
+/// Whether a mineral is present in a negative amount, before it is told to leave.
+pub(super) fn any_used_up(system: &mut System) -> bool {
+    present(system).into_iter().any(|(column, _)| {
+        let (amount, magnitude) = system.held_amount(column);
+        amount < -ROUNDING * magnitude.min(LARGEST)
+    })
+}
+
 /// Moves the amounts towards those that balance the solution; returns the column of the first that reaches zero.
 fn move_to_new_amounts(system: &mut System) -> Option<usize> {
-    /// Amounts smaller than this share of their balance are rounding.
-    const ROUNDING: f64 = 1e-15;
-    const LARGEST: f64 = 1e300;
-
     let mut first: Option<(f64, usize)> = None;
     let mut moved = Vec::new();
     for (column, mineral_idx) in present(system) {

@@ -156,3 +156,17 @@ pub enum SolveError {
     #[error("interrupted")]
     Stopped,
 }
+
+impl SolveError {
+    /// Whether it leaves open if there is a solution.
+    pub(super) fn is_open(&self) -> bool {
+        matches!(
+            self,
+            Self::NotConverged { .. }
+                | Self::PhasesNotSettled { .. }
+                | Self::NoIonicStrength { .. }
+                | Self::WaterActivityNotConverged { .. }
+                | Self::Uncertified { .. }
+        )
+    }
+}

@@ -115,7 +115,7 @@ fn every_fault_is_told_with_its_place() {
     faults("{", &["`the file`: is not JSON: EOF while parsing an object at line 1 column 1"]);
     faults(
         r#"{ "components": ["A", "A"], "totals": [1, 1e999] }"#,
-        &["`the file`: is not JSON: number out of range at line 1 column 48"],
+        &["`the file`: is not JSON: number out of range at line 1 column 47"],
     );
 }
 
