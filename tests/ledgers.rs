@@ -225,7 +225,14 @@ fn uncertainties_of_enthalpies_and_volumes_are_saved() {
     let warm = Temperature::from_celsius(60.0).unwrap();
     for (name, reaction) in book.reactions() {
         let again = read.reaction(name).unwrap();
-        let volume = |reaction: &Reaction| reaction.constant().unwrap().volume.as_ref().map(|v| v.quantity());
+        let volume = |reaction: &Reaction| {
+            reaction
+                .constant()
+                .unwrap()
+                .volume
+                .as_ref()
+                .map(|v| v.quantity(reaction.constant().unwrap().temperature))
+        };
         assert_eq!(
             volume(again).map(|v| (v.value(), v.sigma())),
             volume(reaction).map(|v| (v.value(), v.sigma()))

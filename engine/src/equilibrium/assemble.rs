@@ -4,9 +4,11 @@ use std::collections::BTreeSet;
 
 use crate::activity::{Davies, Model};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Formation, Formations, Ledger, LedgerError};
+use crate::ledger::{ActivityChoice, Formation, Formations, Ledger, LedgerError, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
+use crate::seawater::constants::{Place, log_k_free};
+use crate::seawater::scales::Scales;
 use crate::solve::{Problem, Row, Total};
 use crate::units::Temperature;
 
@@ -123,6 +125,20 @@ impl System {
         self.components.iter().position(|j| self.formations().components[*j] == *species)
     }
 
+    /// What is added to -log10 a(H^+) to have pH on the scale of the water: 0 outside seawater, where the hydrogen ion of
+    /// the solver is the free one.
+    #[must_use]
+    pub fn ph_shift(&self) -> f64 {
+        self.scales().map_or(0.0, |(sea, scales)| scales.shift_from_free(sea.ph_scale))
+    }
+
+    /// The sea of a marine system with its scales of pH.
+    #[must_use]
+    pub fn scales(&self) -> Option<(Sea, Scales)> {
+        let sea = self.ledger.sea()?;
+        Some((sea, Scales::at(&self.ledger, &Place::of(sea, self.temperature))))
+    }
+
     /// Position of the hydrogen ion, which is always present.
     #[must_use]
     pub fn proton(&self) -> usize {
@@ -184,6 +200,12 @@ impl System {
 
 /// log10 K of every reaction at a temperature, and what is doubtful about it.
 fn constants(ledger: &Ledger, temperature: Temperature) -> (Vec<f64>, Vec<Option<Doubt>>) {
+    if let Some(sea) = ledger.sea() {
+        // A state in seawater warns of its own of constants outside their range: see `seawater::constants`.
+        let log_k = log_k_free(ledger, sea, temperature);
+        let certain = vec![None; log_k.len()];
+        return (log_k, certain);
+    }
     let read = ledger.reactions().map(|(_, reaction)| {
         let Ok(constant) = reaction.constant() else { return (0.0, None) };
         let (log_k, away) = constant.log_k.nearest_to(temperature);
