@@ -117,7 +117,7 @@ pub fn analyse(
     let solution = solution(measured);
     let given = amounts(measured, ledger, &solution, &mut notes)?;
     let present = present_components(sample, measured, ledger, &given)?;
-    let system = System::new(ledger, &present, sample.setting().temperature)?;
+    let system = System::new(ledger, &present, sample.setting().temperature, sample.setting().pressure)?;
     let mut totals = vec![0.0; system.n_components()];
     for carried in &given {
         totals[position(&system, carried.component)] += carried.total();
@@ -165,7 +165,7 @@ pub fn restore(
     }
     present.extend(formed.iter().flat_map(|formed| formed.stoichiometry.iter().map(|(j, _)| *j)));
     present.extend(formations.component(&Species::proton()));
-    let system = System::new(ledger, &present, sample.setting().temperature)?;
+    let system = System::new(ledger, &present, sample.setting().temperature, sample.setting().pressure)?;
     let mut totals = vec![0.0; system.n_components()];
     let mut measured = Vec::new();
     for (formed, (_, moles)) in formed.into_iter().zip(&dissolved.totals) {

@@ -2,21 +2,22 @@
 
 use std::collections::BTreeSet;
 
-use crate::activity::{Davies, Model};
+use crate::activity::Model;
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Formation, Formations, Ledger};
+use crate::ledger::{Formation, Formations, Ledger};
 use crate::physics::constants::LN_10;
-use crate::physics::water;
 use crate::solve::{Problem, Row, Total};
-use crate::units::Temperature;
+use crate::units::{Pressure, Temperature};
 
+use super::activity;
 use super::error::EquilibriumError;
 
-/// The species, gases and solids that can occur with the components present, at one temperature.
+/// The species, gases and solids that can occur with the components present, at one temperature and pressure.
 #[derive(Debug, Clone)]
 pub struct System {
     ledger: Ledger,
     temperature: Temperature,
+    pressure: Pressure,
     /// Positions in the ledger's components, water left out: the solver's component k is `components[k]`.
     components: Vec<usize>,
     /// Positions in [`Formations::species`], with their rows.
@@ -45,6 +46,7 @@ impl System {
         ledger: &Ledger,
         present: &BTreeSet<usize>,
         temperature: Temperature,
+        pressure: Pressure,
     ) -> Result<Self, EquilibriumError> {
         let formations = ledger.formations();
         let water = formations.component(&Species::water());
@@ -61,8 +63,9 @@ impl System {
             .partition(|(i, _)| formations.species[*i].species.is_solute());
         let phases =
             others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
-        let model = model(ledger.activity(), temperature);
-        Ok(Self { ledger: ledger.clone(), temperature, components, solutes, phases, model, doubts })
+        let dissolved: Vec<&Species> = solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
+        let model = activity::model(ledger.activity(), &dissolved, temperature, pressure);
+        Ok(Self { ledger: ledger.clone(), temperature, pressure, components, solutes, phases, model, doubts })
     }
 
     /// The ledger.
@@ -75,6 +78,12 @@ impl System {
     #[must_use]
     pub fn temperature(&self) -> Temperature {
         self.temperature
+    }
+
+    /// The pressure its activity model holds for; constants are those of 1 atm.
+    #[must_use]
+    pub fn pressure(&self) -> Pressure {
+        self.pressure
     }
 
     /// The activity model.
@@ -206,23 +215,6 @@ fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[
         charge: f64::from(formed.species.charge()),
         water: water.map_or(0.0, |water| rational::to_f64(formed.coefficient(water))),
     }
-}
-
-fn model(choice: ActivityChoice, temperature: Temperature) -> Model {
-    match choice {
-        ActivityChoice::Ideal => Model::IDEAL,
-        ActivityChoice::Davies { a, b, water: stated } => {
-            let a = a.unwrap_or_else(|| debye_huckel_a(temperature));
-            let model = Model::davies(Davies::new(a).with_b(b));
-            stated.map_or(model, |activity| model.with_ln_water_activity(activity.ln()))
-        }
-    }
-}
-
-fn debye_huckel_a(temperature: Temperature) -> f64 {
-    let t = temperature.kelvin();
-    let density = water::density(t);
-    water::debye_huckel_a(t, density, water::relative_permittivity(t, density))
 }
 
 /// The components that carry an element, water and the hydrogen ion left out.

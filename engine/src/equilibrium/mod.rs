@@ -5,6 +5,7 @@
 //! questions in the user's names and units.
 
 pub mod acid_base;
+pub mod activity;
 pub mod analysis;
 pub mod assemble;
 mod error;

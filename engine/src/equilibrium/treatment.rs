@@ -31,8 +31,13 @@ pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Resul
         _ => None,
     });
     let temperature = warmed.unwrap_or(sample.setting().temperature);
+    let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::CompressTo(pressure) => Some(*pressure),
+        _ => None,
+    });
+    let pressure = compressed.unwrap_or(sample.setting().pressure);
     let present = analysed.system.components().iter().copied().collect();
-    let system = System::new(analysed.system.ledger(), &present, temperature)?;
+    let system = System::new(analysed.system.ledger(), &present, temperature, pressure)?;
     let mut surroundings = Surroundings::read(sample, &system)?;
     // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
     surroundings.measured.clone_from(&analysed.measured);

@@ -45,10 +45,10 @@ fn head(text: &mut String, ledger: &Ledger) {
     if let Some(edition) = ledger.edition() {
         let _ = writeln!(text, "edition = {}", quoted(edition));
     }
-    let (model, options) = ledger.activity().written();
-    let _ = writeln!(text, "activity_model = {}", quoted(model));
+    let _ = writeln!(text, "activity_model = {}", quoted(ledger.activity().name()));
+    let options = ledger.activity().written(|species| ledger.find_species(species.key()).is_ok());
     if !options.is_empty() {
-        let options: Vec<String> = options.iter().map(|(key, value)| format!("{key} = {value:?}")).collect();
+        let options: Vec<String> = options.iter().map(|(key, value)| format!("{key} = {value}")).collect();
         let _ = writeln!(text, "activity_options = {{ {} }}", options.join(", "));
     }
     let solutes: Vec<String> = ledger.solutes().map(|species| species.key().to_string()).collect();

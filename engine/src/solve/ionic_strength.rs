@@ -6,10 +6,11 @@
 
 use super::inner::{Point, Reduced};
 use super::phases;
+use super::specific;
 use super::scalar::{self, Sample, Tolerance};
 use super::settings::{Settings, SolveError};
 use super::system::System;
-use crate::activity::Model;
+use crate::activity::{Composition, Model};
 
 /// A composition with the activity coefficients that belong to it.
 pub(super) struct Settled {
@@ -21,6 +22,8 @@ pub(super) struct Settled {
     /// Number of ionic strengths seen that agree with their composition.
     pub(super) roots: usize,
     pub(super) ln_water_activity: f64,
+    /// Largest difference of the specific part of an ln γ from that of the composition.
+    pub(super) ln_gamma_residual: f64,
 }
 
 /// Solves with consistent activity coefficients and activity of water, starting from the values given.
@@ -32,12 +35,17 @@ pub(super) fn settle(
 ) -> Result<Settled, SolveError> {
     const MOST_PASSES: usize = 60;
 
+    if model.is_specific() {
+        return specific::settle(system, model, settings, start);
+    }
+    // What an earlier model left behind.
+    system.specific.fill(0.0);
     let (mut guess, mut ln_water_activity) = start;
     let solvent_matters = system.problem.rows().any(|row| row.water != 0.0);
     let mut change = f64::INFINITY;
     for _ in 0..MOST_PASSES {
-        let mut settled = Coupling { system, model, settings, ln_water_activity, last: None }.root(guess)?;
-        let updated = model.ln_water_activity(settled.point.c.iter().sum(), settled.ionic_strength);
+        let mut settled = at_solvent(system, model, settings, ln_water_activity, guess)?;
+        let updated = ln_water_activity_of(system, model, settled.ionic_strength);
         change = (updated - ln_water_activity).abs();
         if !solvent_matters || change <= settings.ln_water_activity {
             settled.ln_water_activity = if solvent_matters { ln_water_activity } else { updated };
@@ -47,6 +55,23 @@ pub(super) fn settle(
         guess = settled.ionic_strength;
     }
     Err(SolveError::WaterActivityNotConverged { change })
+}
+
+/// Solves at one activity of water and one specific part of every ln γ, the system's.
+pub(super) fn at_solvent(
+    system: &mut System,
+    model: &Model,
+    settings: &Settings,
+    ln_water_activity: f64,
+    guess: f64,
+) -> Result<Settled, SolveError> {
+    Coupling { system, model, settings, ln_water_activity, last: None }.root(guess)
+}
+
+/// ln of the activity of water that belongs to the composition of the latest solve.
+pub(super) fn ln_water_activity_of(system: &System, model: &Model, ionic_strength: f64) -> f64 {
+    let molalities: Vec<f64> = system.ln_c.iter().map(|ln_c| ln_c.exp()).collect();
+    model.ln_water_activity(Composition { charges: &system.charges, molalities: &molalities, ionic_strength })
 }
 
 /// Solves as a function of the ionic strength, at one activity of water.
@@ -67,7 +92,8 @@ impl Coupling<'_, '_> {
         let start = self.sample(guess)?;
         let mut root = if self.agrees(start) { start } else { self.search(start)? };
         let mut roots = 1;
-        if root.x > 1.0 {
+        // With specific parts the electrostatic one levels off, and nothing makes γ grow with I alone.
+        if root.x > 1.0 && !self.model.is_specific() {
             let all = self.scan(root)?;
             roots = all.len().max(1);
             root = all.first().copied().unwrap_or(root);
@@ -162,6 +188,7 @@ impl Coupling<'_, '_> {
             ionic_strength_residual: sample.f,
             roots,
             ln_water_activity: self.ln_water_activity,
+            ln_gamma_residual: 0.0,
         })
     }
 }

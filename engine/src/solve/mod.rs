@@ -24,7 +24,8 @@
 //! - `basis`: the stoichiometry in the basis of the most concentrated species, exactly. `system`: the state in it.
 //! - `feasibility`: totals that force exact zeros, or that nothing can satisfy.
 //! - `inner`: Newton's method on logarithmic balances, with Φ as merit, at given γ and given phases. `dense`: LU.
-//! - `phases`: which minerals are present. `ionic_strength`: γ and the activity of water.
+//! - `phases`: which minerals are present. `ionic_strength`: γ and the activity of water. `specific`: γ that depends on
+//!   more than the ionic strength.
 //! - `sensitivity`: derivatives of an answer. `certificate`: what is checked. `scalar`: conditions that are not totals, as one equation outside all this.
 
 mod basis;
@@ -39,6 +40,7 @@ mod problem;
 pub mod scalar;
 pub mod sensitivity;
 mod settings;
+mod specific;
 mod system;
 #[cfg(test)]
 mod tests;
@@ -91,7 +93,7 @@ pub struct Converged {
 /// # Errors
 ///
 /// Returns [`SolveError::BadInput`] when the problem is malformed; `Infeasible`, `Unbounded` and `Overdetermined` when it
-/// has no solution, with the reason; `NoIonicStrength`, `WaterActivityNotConverged` when the activity model has none;
+/// has no solution, with the reason; `NoIonicStrength`, `WaterActivityNotConverged`, `ActivityNotConverged` when the activity model has none;
 /// `NotConverged`, `PhasesNotSettled` and `Uncertified` when a solution was not found to the tolerances; `Stopped` when
 /// interrupted.
 ///

@@ -28,6 +28,7 @@ pub struct Warm {
     pub(super) column: Vec<Column>,
     mineral_amount: Vec<f64>,
     n_species: usize,
+    specific: Vec<f64>,
     pub(super) ionic_strength: f64,
     pub(super) ln_water_activity: f64,
 }
@@ -50,6 +51,10 @@ pub(super) struct System<'p> {
     pub(super) g: Vec<f64>,
     /// ln γ of each species.
     pub(super) ln_gamma: Vec<f64>,
+    /// Charge number of each species.
+    pub(super) charges: Vec<f64>,
+    /// The specific part of each ln γ: zero where the model has none.
+    pub(super) specific: Vec<f64>,
     /// Level of each column's basis row.
     pub(super) level: Vec<f64>,
     pub(super) column: Vec<Column>,
@@ -87,6 +92,8 @@ impl<'p> System<'p> {
             problem,
             g: vec![0.0; basis.unit_row(0) + problem.n_components],
             ln_gamma: vec![0.0; problem.species.len()],
+            charges: problem.species.iter().map(|row| row.charge).collect(),
+            specific: vec![0.0; problem.species.len()],
             ln_c: vec![f64::NEG_INFINITY; problem.species.len()],
             level: vec![0.0; problem.n_components],
             column: vec![Column::Free; problem.n_components],
@@ -110,6 +117,7 @@ impl<'p> System<'p> {
             level: self.level,
             column: self.column,
             n_species: self.problem.species.len(),
+            specific: self.specific,
             mineral_amount: self.mineral_amount,
             ionic_strength,
             ln_water_activity,
@@ -122,6 +130,7 @@ impl<'p> System<'p> {
         self.level.copy_from_slice(&warm.level);
         self.column.copy_from_slice(&warm.column);
         self.mineral_amount.copy_from_slice(&warm.mineral_amount);
+        self.specific.copy_from_slice(&warm.specific);
         for column in 0..self.basis.n {
             if self.column[column] == Column::Absent {
                 // The total may have changed since; if it is still zero the reduction finds it again.
@@ -163,8 +172,8 @@ impl<'p> System<'p> {
     /// Recomputes the constant part of every level for a new ionic strength and activity of water.
     pub(super) fn set_activities(&mut self, model: &Model, ionic_strength: f64, ln_water_activity: f64) {
         let problem = self.problem;
-        for (ln_gamma, row) in self.ln_gamma.iter_mut().zip(&problem.species) {
-            *ln_gamma = model.ln_gamma(row.charge, ionic_strength);
+        for (i, ln_gamma) in self.ln_gamma.iter_mut().enumerate() {
+            *ln_gamma = model.ln_gamma(i, self.charges[i], ionic_strength) + self.specific[i];
         }
         let solvent = |water: f64| if water == 0.0 { 0.0 } else { water * ln_water_activity };
         let species = problem.species.iter().zip(&self.ln_gamma).map(|(row, gamma)| (row, *gamma));
