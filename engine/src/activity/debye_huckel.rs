@@ -42,7 +42,8 @@ impl DebyeHuckel {
     #[must_use]
     pub fn ln_gamma(&self, solute: usize, charge: f64, ionic_strength: f64) -> f64 {
         let IonCoefficients { size, linear } = self.solutes[solute];
-        -charge * charge * self.a_ln * electrostatic::term(self.b * size, ionic_strength) + linear * ionic_strength
+        -charge * charge * self.a_ln * electrostatic::term(self.b * size, ionic_strength)
+            + linear * ionic_strength
     }
 
     /// d ln γ / dI; minus infinity for an ion at I = 0.

@@ -60,6 +60,9 @@ impl Sit {
 
     /// `Σ ε_jk m_j m_k` over the pairs.
     pub(super) fn pair_sum(&self, molalities: &[f64]) -> f64 {
-        self.pairs.iter().map(|pair| pair.epsilon * molalities[pair.solutes.0] * molalities[pair.solutes.1]).sum()
+        self.pairs
+            .iter()
+            .map(|pair| pair.epsilon * molalities[pair.solutes.0] * molalities[pair.solutes.1])
+            .sum()
     }
 }

@@ -13,8 +13,12 @@ fn models() -> Vec<Model> {
     let sizes = [ion(6.0, 0.0), ion(4.0, 0.0), ion(3.0, 0.0), ion(4.0, 0.0), ion(0.0, 0.0)];
     let fitted = [ion(5.0, 0.165), ion(4.0, 0.075), ion(3.5, 0.015), ion(5.0, -0.04), ion(0.0, 0.1)];
     let pairs = vec![pair(0, 2, 0.14), pair(1, 2, 0.03), pair(1, 3, -0.12), pair(4, 1, 0.07)];
-    let sized =
-        |solutes: [IonCoefficients; 5], valid_to| DebyeHuckel { a_ln: A * LN_10, b: 0.3284, solutes: solutes.to_vec(), valid_to };
+    let sized = |solutes: [IonCoefficients; 5], valid_to| DebyeHuckel {
+        a_ln: A * LN_10,
+        b: 0.3284,
+        solutes: solutes.to_vec(),
+        valid_to,
+    };
     vec![
         Model::davies(Davies::new(A)),
         Model::consistent(Solutes::DebyeHuckel(sized(sizes, 0.1))),
@@ -41,7 +45,11 @@ fn dilute_solutions_are_ideal_and_then_follow_the_limiting_law() {
         let at = at(&m);
         for (ln_gamma, z) in model.ln_gammas(at).iter().zip(CHARGES) {
             let limit = -A * LN_10 * z * z * at.ionic_strength.sqrt();
-            assert!((ln_gamma - limit).abs() <= 2e-5 * limit.abs() + 1e-10, "{}: {ln_gamma} {limit}", model.name());
+            assert!(
+                (ln_gamma - limit).abs() <= 2e-5 * limit.abs() + 1e-10,
+                "{}: {ln_gamma} {limit}",
+                model.name()
+            );
         }
     }
 }
@@ -67,7 +75,12 @@ fn derivatives_are_difference_quotients() {
             model.for_each_specific_slope(|i, by, slope| slopes[i] += if by == k { slope } else { 0.0 });
             for i in 0..5 {
                 let quotient = (above[i] - below[i]) / (2.0 * h);
-                assert!((quotient - slopes[i]).abs() < 1e-8, "{} {i} by {k}: {quotient} {}", model.name(), slopes[i]);
+                assert!(
+                    (quotient - slopes[i]).abs() < 1e-8,
+                    "{} {i} by {k}: {quotient} {}",
+                    model.name(),
+                    slopes[i]
+                );
             }
             let water = model.d_ln_water_activity(at(&m));
             let slope = water.by_molality[k] + 0.5 * CHARGES[k].powi(2) * water.by_ionic_strength;

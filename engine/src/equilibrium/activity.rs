@@ -145,7 +145,11 @@ fn uncertain<'a>(choice: &'a ActivityChoice, solutes: &[&Species]) -> Vec<(Param
 
 /// What was assumed of the solutes that matter, each with its molality, in words.
 #[must_use]
-pub fn assumptions(choice: &ActivityChoice, solutes: &[(&Species, f64)], temperature: Temperature) -> Vec<String> {
+pub fn assumptions(
+    choice: &ActivityChoice,
+    solutes: &[(&Species, f64)],
+    temperature: Temperature,
+) -> Vec<String> {
     let ions = || solutes.iter().filter(|(species, _)| species.charge() != 0);
     let mut words = vec![];
     match choice {
@@ -156,7 +160,10 @@ pub fn assumptions(choice: &ActivityChoice, solutes: &[(&Species, f64)], tempera
             let without: Vec<&str> =
                 ions().filter(|(ion, _)| !own.b.contains_key(ion)).map(|(ion, _)| ion.key()).collect();
             if !without.is_empty() {
-                words.push(format!("no `b` of the Truesdell-Jones equation is known, and 0 is taken, for {}", list(&without)));
+                words.push(format!(
+                    "no `b` of the Truesdell-Jones equation is known, and 0 is taken, for {}",
+                    list(&without)
+                ));
             }
         }
         ActivityChoice::Sit(own) => {
@@ -171,7 +178,10 @@ pub fn assumptions(choice: &ActivityChoice, solutes: &[(&Species, f64)], tempera
             }
             if !without.is_empty() {
                 let without: Vec<String> = without.into_iter().collect();
-                words.push(format!("no interaction coefficient is known, and 0 is taken, for {}", list(&without)));
+                words.push(format!(
+                    "no interaction coefficient is known, and 0 is taken, for {}",
+                    list(&without)
+                ));
             }
         }
     }

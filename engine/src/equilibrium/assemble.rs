@@ -63,7 +63,8 @@ impl System {
             .partition(|(i, _)| formations.species[*i].species.is_solute());
         let phases =
             others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
-        let dissolved: Vec<&Species> = solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
+        let dissolved: Vec<&Species> =
+            solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
         let model = activity::model(ledger.activity(), &dissolved, temperature, pressure);
         Ok(Self { ledger: ledger.clone(), temperature, pressure, components, solutes, phases, model, doubts })
     }

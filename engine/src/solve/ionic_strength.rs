@@ -6,9 +6,9 @@
 
 use super::inner::{Point, Reduced};
 use super::phases;
-use super::specific;
 use super::scalar::{self, Sample, Tolerance};
 use super::settings::{Settings, SolveError};
+use super::specific;
 use super::system::System;
 use crate::activity::{Composition, Model};
 
@@ -43,11 +43,17 @@ pub(super) fn settle(
     let (mut guess, mut ln_water_activity) = start;
     let solvent_matters = system.problem.rows().any(|row| row.water != 0.0);
     let mut change = f64::INFINITY;
+    // Where rounding stops all progress: ln a_w is the size of its own terms.
+    let stalled = |change: f64, before: f64, size: f64| {
+        change >= before && change <= 100.0 * settings.ln_water_activity * (1.0 + size)
+    };
     for _ in 0..MOST_PASSES {
         let mut settled = at_solvent(system, model, settings, ln_water_activity, guess)?;
         let updated = ln_water_activity_of(system, model, settled.ionic_strength);
+        let before = change;
         change = (updated - ln_water_activity).abs();
-        if !solvent_matters || change <= settings.ln_water_activity {
+        let settles = change <= settings.ln_water_activity || stalled(change, before, updated.abs());
+        if !solvent_matters || settles {
             settled.ln_water_activity = if solvent_matters { ln_water_activity } else { updated };
             return Ok(settled);
         }

@@ -260,7 +260,8 @@ impl Sensitivities {
     }
 
     fn read(&self, given: &Given, held: &[f64], direct: &[f64], x: &[f64]) -> Found {
-        let (ionic_strength, ln_water_activity) = (x[self.n_balances] * self.ionic_strength, x[self.solvent()]);
+        let (ionic_strength, ln_water_activity) =
+            (x[self.n_balances] * self.ionic_strength, x[self.solvent()]);
         let mut found = Found {
             ln_a: vec![0.0; given.totals.len()],
             ln_c: vec![0.0; self.n_species],

@@ -25,7 +25,8 @@ pub(super) fn settle(
     settings: &Settings,
     start: (f64, f64),
 ) -> Result<Settled, SolveError> {
-    let here = Held { specific: system.specific.clone(), ionic_strength: start.0, ln_water_activity: start.1 };
+    let here =
+        Held { specific: system.specific.clone(), ionic_strength: start.0, ln_water_activity: start.1 };
     match approach(system, model, settings, here) {
         Err(error) if is_of_the_numerics(&error) => continued(system, model, settings),
         done => Ok(done?.0),
@@ -76,7 +77,8 @@ impl Reached {
             ionic_strength: self.settled.ionic_strength,
             reservoir_amount: &vec![0.0; problem.reservoirs.len()],
         };
-        let given = Given { ln_gamma: self.off.clone(), ln_water_activity: self.water_off, ..Given::zero(problem) };
+        let given =
+            Given { ln_gamma: self.off.clone(), ln_water_activity: self.water_off, ..Given::zero(problem) };
         let linear = Sensitivities::about(problem, model, &place, &own_supplies(problem));
         let mut held = Held { ionic_strength: self.settled.ionic_strength, ..self.held.clone() };
         let (strength, water, by_species) = match linear.map(|linear| linear.push(&given)) {
