@@ -67,6 +67,15 @@ impl Reached {
         self.off.iter().fold(self.water_off.abs(), |largest, off| largest.max(off.abs()))
     }
 
+    /// What the fixed point would hold next.
+    fn plain(&self) -> Held {
+        Held {
+            specific: self.held.specific.iter().zip(&self.off).map(|(specific, off)| specific + off).collect(),
+            ionic_strength: self.settled.ionic_strength,
+            ln_water_activity: self.held.ln_water_activity + self.water_off,
+        }
+    }
+
     /// What Newton's method would hold next; the plain fixed point where the linear system has no answer.
     fn next(&self, system: &System, model: &Model) -> Held {
         let problem = system.problem;
@@ -116,7 +125,12 @@ fn approach(
             return Ok(here.finish());
         }
         let next = here.next(system, model);
-        let Some(better) = improved(system, model, settings, &here, &next, MOST_HALVINGS)? else {
+        let mut better = improved(system, model, settings, &here, &next, MOST_HALVINGS)?;
+        if better.is_none() && here.change() > settings.ln_gamma {
+            // Where a phase comes or goes the linear system is that of one side only; the fixed point knows both.
+            better = improved(system, model, settings, &here, &here.plain(), MOST_HALVINGS)?;
+        }
+        let Some(better) = better else {
             if here.change() <= settings.ln_gamma {
                 // The latest solve was a trial: the system goes back to the best.
                 return Ok(Reached::at(system, model, settings, here.held)?.finish());
