@@ -198,6 +198,66 @@ fn a_saved_ledger_is_read_back_as_it_was() {
     }
 }
 
+/// An enthalpy, a heat capacity and a volume with their uncertainties, and an enthalpy that states none.
+fn functions() -> Ledger {
+    let options = |entries: &[(&str, &str)]| {
+        let entries = entries.iter().map(|(key, text)| ((*key).to_string(), Value::Text((*text).into())));
+        Named::new(entries.collect())
+    };
+    let own = options(&[
+        ("log_k", "-10.33 +/- 0.02"),
+        ("enthalpy", "14.7 +/- 0.4 kJ/mol"),
+        ("heat_capacity", "-290 +/- 30 J/(mol K)"),
+        ("volume", "-27.9 +/- 0.5 cm3/mol"),
+    ]);
+    let unstated = options(&[("log_k", "-6.35"), ("enthalpy", "9.1 kJ/mol"), ("volume", "-26 cm3/mol")]);
+    let read = |equation: &str, options| Reaction::read(equation, None, options, None).unwrap();
+    Ledger::default()
+        .with_reaction("K2", &read("HCO3^- <=> CO3^2- + H^+", own))
+        .and_then(|book| book.with_reaction("K1", &read("CO2(aq) + H2O <=> HCO3^- + H^+", unstated)))
+        .unwrap()
+}
+
+#[test]
+fn uncertainties_of_enthalpies_and_volumes_are_saved() {
+    let book = functions();
+    let read = file::load("mine", &save::to_text(&book)).unwrap();
+    let warm = Temperature::from_celsius(60.0).unwrap();
+    for (name, reaction) in book.reactions() {
+        let again = read.reaction(name).unwrap();
+        let volume = |reaction: &Reaction| reaction.constant().unwrap().volume.as_ref().map(|v| v.quantity());
+        assert_eq!(
+            volume(again).map(|v| (v.value(), v.sigma())),
+            volume(reaction).map(|v| (v.value(), v.sigma()))
+        );
+        let (at, at_first) = (again.log_k_at(warm).unwrap(), reaction.log_k_at(warm).unwrap());
+        assert_eq!(at.parts().len(), at_first.parts().len(), "{name}");
+        assert_eq!(at.budget().n_unstated, at_first.budget().n_unstated, "{name}");
+        match (at.sigma(), at_first.sigma()) {
+            (Some(sigma), Some(first)) => assert_abs_diff_eq!(sigma, first, epsilon = 1e-12),
+            (sigma, first) => assert_eq!(sigma, first, "{name}"),
+        }
+    }
+    // 0.4 kJ/mol over 35 K: more than the 0.02 at 25 degC.
+    let sigma = read.reaction("K2").unwrap().log_k_at(warm).unwrap().sigma().unwrap();
+    assert!(sigma > 0.02 + 1e-3, "{sigma}");
+}
+
+/// An assumed sigma stands in for that of log K alone; what enthalpies state is kept, through a reconciliation too.
+#[test]
+fn assumed_uncertainties_leave_those_of_enthalpies() {
+    let assumed = functions().assume_sigma(0.05).unwrap();
+    let direct = stated("CO2(aq) + H2O <=> CO3^2- + 2 H^+", "-16.6 +/- 0.1");
+    let closed = assumed.with_reaction("both", &direct).unwrap().reconcile(ROOM).unwrap();
+    for (name, n_influences) in [("K1", 1), ("K2", 2)] {
+        for book in [&assumed, &closed] {
+            let history = &book.reaction(name).unwrap().constant().unwrap().history;
+            assert_eq!(history.influences().len(), n_influences, "{name}");
+        }
+    }
+    assert_eq!(assumed.reaction("K1").unwrap().log_k().unwrap().sigma(), Some(0.05));
+}
+
 /// A shipped constant saved and read again is still one input with itself.
 #[test]
 fn a_saved_constant_stays_the_same_input() {

@@ -69,6 +69,21 @@ impl System {
         Ok(Self { ledger: ledger.clone(), temperature, pressure, components, solutes, phases, model, doubts })
     }
 
+    /// The same species with the constants of another temperature; whether cycles close there is not asked.
+    #[must_use]
+    pub fn at(&self, temperature: Temperature) -> Self {
+        let formations = self.ledger.formations();
+        let (log_k, doubts) = constants(&self.ledger, temperature);
+        let dissolved: Vec<&Species> =
+            self.solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
+        let model = activity::model(self.ledger.activity(), &dissolved, temperature, self.pressure);
+        let mut system = Self { temperature, doubts, model, ..self.clone() };
+        for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
+            row.ln_k = ln_k(&formations.species[*index], &log_k);
+        }
+        system
+    }
+
     /// The ledger.
     #[must_use]
     pub fn ledger(&self) -> &Ledger {
@@ -166,9 +181,8 @@ impl System {
         Problem {
             n_components: self.n_components(),
             species: self.solutes.iter().map(|(_, row)| row.clone()).collect(),
-            reservoirs: vec![],
-            minerals: vec![],
             totals: totals.iter().map(|total| Total::from(*total)).collect(),
+            ..Problem::default()
         }
     }
 
@@ -209,13 +223,16 @@ fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[
     let position = |j: usize| components.iter().position(|own| *own == j);
     let stoichiometry: Vec<(usize, Rational)> =
         formed.stoichiometry.iter().filter_map(|(j, nu)| position(*j).map(|k| (k, *nu))).collect();
-    let log_k: f64 = formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum();
     Row {
         stoichiometry,
-        ln_k: log_k * LN_10,
+        ln_k: ln_k(formed, log_k),
         charge: f64::from(formed.species.charge()),
         water: water.map_or(0.0, |water| rational::to_f64(formed.coefficient(water))),
     }
+}
+
+fn ln_k(formed: &Formation, log_k: &[f64]) -> f64 {
+    formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum::<f64>() * LN_10
 }
 
 /// The components that carry an element, water and the hydrogen ion left out.

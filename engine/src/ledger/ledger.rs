@@ -10,7 +10,7 @@ use super::audit::{self, Audit, Cycle};
 use super::combine::{Combined, combine_routes};
 use super::formation::{Formations, Leftover, in_bar};
 use super::reconcile::{self, Reconciliation};
-use crate::chem::{Reaction, ReactionError, Species};
+use crate::chem::{Constant, LogK, Reaction, ReactionError, Species};
 use crate::nearest::nearest;
 use crate::text::list;
 use crate::units::Temperature;
@@ -267,6 +267,22 @@ impl Ledger {
     #[must_use]
     pub fn with_activity(&self, activity: ActivityChoice) -> Self {
         Self(Arc::new(Inner { activity, ..self.copy() }))
+    }
+
+    /// The same with other constants for its reactions, by routes already found: for random draws, which are too many to
+    /// find routes anew. Where two routes lead to one constant a draw does not make them agree, and keeps the first.
+    pub(crate) fn moved(&self, log_k: impl Fn(&str, &Reaction) -> Option<LogK>) -> Self {
+        let mut formations = self.formations().clone();
+        formations.leftovers.clear();
+        let mut inner = self.copy();
+        for (name, reaction) in &mut inner.reactions {
+            if let (Some(log_k), Ok(constant)) = (log_k(name, reaction), reaction.constant()) {
+                let constant = Constant { log_k, ..constant.clone() };
+                *reaction = Reaction::of(reaction.equation().clone(), constant);
+            }
+        }
+        inner.formations = OnceLock::from(formations);
+        Self(Arc::new(inner))
     }
 
     /// Formation of every species from components the engine picks; worked out once.

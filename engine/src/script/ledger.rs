@@ -4,7 +4,7 @@ use rhai::plugin::*;
 use rhai::{Array, Dynamic, Map};
 
 use super::named::named;
-use super::reaction::temperature;
+use super::reaction::{temperature, told};
 use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::chem::{Element, Reaction, Species, rational};
@@ -414,11 +414,7 @@ mod ledger_functions {
     /// ```
     #[rhai_fn(pure, return_raw)]
     pub fn derive(context: NativeCallContext, ledger: &mut Ledger, equation: &str) -> ScriptResult<Reaction> {
-        let derived = ledger.derive_routes(equation).map_err(Fail::from)?;
-        if let Some(routes) = derived.routes {
-            Host::of(&context).message(&format!("warning: `{}`: {routes}", derived.reaction));
-        }
-        Ok(derived.reaction)
+        Ok(told(&context, ledger.derive_routes(equation).map_err(Fail::from)?))
     }
 
     /// Every independent cycle among the ledger's constants and formation data at 25 degC: how far log K fails to close, in

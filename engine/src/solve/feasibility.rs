@@ -43,9 +43,11 @@ impl Signs {
 fn reduce_balance(system: &mut System, column: usize) -> Result<bool, SolveError> {
     let total = system.total(column);
     let mut species = Signs::default();
-    for row in 0..system.problem.species.len() {
-        if !system.absent[row] {
-            species.note(system.basis.scaled_row(row)[column] * system.basis.determinant());
+    let first_whole = system.problem.whole_row(0);
+    for row in 0..system.problem.n_amounts() {
+        if system.takes_part(row) {
+            let coefficient = system.basis.scaled_row(row)[column] * system.basis.determinant();
+            species.note(if row < first_whole { coefficient } else { -coefficient });
         }
     }
     let lacks_supply = !species.positive && total >= 0.0;
@@ -53,44 +55,51 @@ fn reduce_balance(system: &mut System, column: usize) -> Result<bool, SolveError
     if !lacks_supply && !lacks_sink {
         return Ok(false);
     }
-    // A side of the balance is empty. Either nothing can fill it, or a mineral of the right sign must.
-    let minerals = candidate_minerals(system, column);
-    let supply = species.positive || minerals.iter().any(|(_, nu)| *nu > 0.0);
-    let sink = species.negative || minerals.iter().any(|(_, nu)| *nu < 0.0);
+    // A side of the balance is empty. Either nothing can fill it, or a phase of the right sign must.
+    let phases = candidate_phases(system, column);
+    let supply = species.positive || phases.iter().any(|(_, nu)| *nu > 0.0);
+    let sink = species.negative || phases.iter().any(|(_, nu)| *nu < 0.0);
     if total == 0.0 && !(supply && sink) {
-        remove(system, column, &minerals);
+        remove(system, column, &phases);
         return Ok(true);
     }
     if (total > 0.0 && !supply) || (total < 0.0 && !sink) {
         return Err(infeasible(system, column, total));
     }
     let fills = |nu: f64| (lacks_supply && nu > 0.0) || (lacks_sink && nu < 0.0);
-    for &(mineral_idx, _) in minerals.iter().filter(|(_, nu)| fills(*nu)) {
-        if system.basis.pivot(system.mineral_row(mineral_idx), column) {
+    for &(row, _) in phases.iter().filter(|(_, nu)| fills(*nu)) {
+        if let Some(mixture_idx) = system.mixture_of(row) {
+            system.enter_mixture(mixture_idx);
+            return Ok(true);
+        }
+        if system.basis.pivot(row, column) {
             return Ok(system.hold(column));
         }
     }
     Ok(false)
 }
 
-/// (index, coefficient in the column) of the minerals that are neither excluded nor present.
-fn candidate_minerals(system: &System, column: usize) -> Vec<(usize, f64)> {
-    (0..system.problem.minerals.len())
-        .map(|p| (p, system.mineral_row(p)))
-        .filter(|&(_, row)| !system.absent[row] && system.basis.column_of(row).is_none())
-        .map(|(p, row)| (p, system.basis.coefficient(row, column)))
+/// (row, coefficient in the column) of the minerals, and of the members of mixtures, that are neither excluded nor
+/// present.
+fn candidate_phases(system: &System, column: usize) -> Vec<(usize, f64)> {
+    let minerals = system.mineral_row(0)..system.mineral_row(system.problem.minerals.len());
+    let minerals = minerals.filter(|row| !system.absent[*row] && system.basis.column_of(*row).is_none());
+    let members = system.problem.species.len()..system.problem.whole_row(0);
+    let members = members.filter(|row| !system.absent[*row] && !system.takes_part(*row));
+    minerals
+        .chain(members)
+        .map(|row| (row, system.basis.coefficient(row, column)))
         .filter(|(_, nu)| *nu != 0.0)
         .collect()
 }
 
-fn remove(system: &mut System, column: usize, minerals: &[(usize, f64)]) {
-    for row in 0..system.problem.species.len() {
-        if system.basis.coefficient(row, column) != 0.0 {
+fn remove(system: &mut System, column: usize, phases: &[(usize, f64)]) {
+    for row in 0..system.problem.n_amounts() {
+        if system.takes_part(row) && system.basis.coefficient(row, column) != 0.0 {
             system.absent[row] = true;
         }
     }
-    for &(mineral_idx, _) in minerals {
-        let row = system.mineral_row(mineral_idx);
+    for &(row, _) in phases {
         system.absent[row] = true;
     }
     system.column[column] = Column::Absent;
@@ -98,7 +107,7 @@ fn remove(system: &mut System, column: usize, minerals: &[(usize, f64)]) {
 }
 
 fn infeasible(system: &System, column: usize, value: f64) -> SolveError {
-    let combination = (0..system.basis.n)
+    let combination = (0..system.problem.n_components)
         .map(|k| (k, system.basis.total_factor(k, column)))
         .filter(|(_, factor)| *factor != 0.0)
         .collect();

@@ -41,7 +41,7 @@ pub(super) fn settle(
     // What an earlier model left behind.
     system.specific.fill(0.0);
     let (mut guess, mut ln_water_activity) = start;
-    let solvent_matters = system.problem.rows().any(|row| row.water != 0.0);
+    let solvent_matters = system.problem.rows().any(|(row, _)| row.water != 0.0);
     let mut change = f64::INFINITY;
     // Where rounding stops all progress: ln a_w is the size of its own terms.
     let stalled = |change: f64, before: f64, size: f64| {
@@ -76,7 +76,7 @@ pub(super) fn at_solvent(
 
 /// ln of the activity of water that belongs to the composition of the latest solve.
 pub(super) fn ln_water_activity_of(system: &System, model: &Model, ionic_strength: f64) -> f64 {
-    let molalities: Vec<f64> = system.ln_c.iter().map(|ln_c| ln_c.exp()).collect();
+    let molalities = system.molalities();
     model.ln_water_activity(Composition { charges: &system.charges, molalities: &molalities, ionic_strength })
 }
 
@@ -121,9 +121,9 @@ impl Coupling<'_, '_> {
         self.system.effort.ionic_strengths += 1;
         self.system.set_activities(self.model, ionic_strength, self.ln_water_activity);
         let (reduced, point) = phases::settle(self.system, self.settings)?;
-        let charge_squared = |i: &usize| self.system.problem.species[*i].charge.powi(2);
-        let implied: f64 =
-            0.5 * reduced.species.iter().map(charge_squared).zip(&point.c).map(|(z2, c)| z2 * c).sum::<f64>();
+        let species = &self.system.problem.species;
+        let dissolved = reduced.species.iter().filter_map(|i| species.get(*i)).zip(&point.c);
+        let implied = 0.5 * dissolved.map(|(row, c)| row.charge.powi(2) * c).sum::<f64>();
         let sample = Sample { x: ionic_strength, f: implied - ionic_strength };
         self.last = Some((sample, reduced, point));
         Ok(sample)

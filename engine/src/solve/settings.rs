@@ -62,6 +62,8 @@ pub enum Input {
     Reservoir,
     /// `Problem::minerals`.
     Mineral,
+    /// `Problem::mixtures`.
+    Mixture,
     /// `Problem::totals`.
     Totals,
 }
@@ -102,6 +104,14 @@ pub enum SolveError {
     Unbounded {
         /// The phase.
         mineral_idx: usize,
+    },
+    /// A mixture stays supersaturated however much of it forms.
+    #[error(
+        "mixture {mixture_idx} would form without end: reservoirs and phases that it does not consume hold all of its components"
+    )]
+    UnboundedMixture {
+        /// The phase.
+        mixture_idx: usize,
     },
     /// A reservoir holds what others already hold.
     #[error("reservoir {reservoir_idx} holds a combination that the reservoirs before it already fix")]

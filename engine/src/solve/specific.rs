@@ -54,7 +54,7 @@ impl Reached {
     fn at(system: &mut System, model: &Model, settings: &Settings, held: Held) -> Result<Self, SolveError> {
         system.specific.copy_from_slice(&held.specific);
         let settled = at_solvent(system, model, settings, held.ln_water_activity, held.ionic_strength)?;
-        let molalities: Vec<f64> = system.ln_c.iter().map(|ln_c| ln_c.exp()).collect();
+        let molalities = system.molalities();
         let mut off = vec![0.0; molalities.len()];
         model.specific(&molalities, &mut off);
         off.iter_mut().zip(&held.specific).for_each(|(off, specific)| *off -= specific);
@@ -70,7 +70,13 @@ impl Reached {
     /// What the fixed point would hold next.
     fn plain(&self) -> Held {
         Held {
-            specific: self.held.specific.iter().zip(&self.off).map(|(specific, off)| specific + off).collect(),
+            specific: self
+                .held
+                .specific
+                .iter()
+                .zip(&self.off)
+                .map(|(specific, off)| specific + off)
+                .collect(),
             ionic_strength: self.settled.ionic_strength,
             ln_water_activity: self.held.ln_water_activity + self.water_off,
         }
@@ -82,7 +88,7 @@ impl Reached {
         let place = Place {
             basis: &system.basis,
             column: &system.column,
-            ln_c: &system.ln_c,
+            ln_amounts: &system.ln_c,
             ionic_strength: self.settled.ionic_strength,
             reservoir_amount: &vec![0.0; problem.reservoirs.len()],
         };
