@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 use std::sync::{Arc, OnceLock};
 
 use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
+use super::activity::assumptions;
 use super::analysis::{Analysed, Misfit, Outcome, Solid, ln_saturation, saturation_slopes, scaled};
 use super::assemble::{Doubt, System};
 use super::buffer::{self, Answering, buffer_factor};
@@ -918,11 +919,20 @@ impl State {
         let mut warnings = self.0.notes.clone();
         let certificate = self.certificate();
         if certificate.outside_validity {
+            let model = self.system().model();
             warnings.push(format!(
-                "ionic strength {:.2} mol/kg(water) is beyond the range of the activity model",
-                self.0.outcome.converged.ionic_strength
+                "ionic strength {:.2} mol/kg(water) is beyond the range of the activity model: the {} holds to {} mol/kg(water)",
+                self.0.outcome.converged.ionic_strength,
+                model.name(),
+                model.valid_to().unwrap_or(f64::INFINITY)
             ));
         }
+        let solutes = self.system().solutes().zip(&self.0.molalities);
+        let matter: Vec<(&Species, f64)> = solutes
+            .filter(|(formed, molality)| self.matters(formed, **molality))
+            .map(|(formed, molality)| (&formed.species, *molality))
+            .collect();
+        warnings.extend(assumptions(self.system().ledger().activity(), &matter, self.temperature()));
         let mut doubts: BTreeMap<String, Vec<String>> = BTreeMap::new();
         for (formed, molality) in self.system().solutes().zip(&self.0.molalities) {
             if self.matters(formed, *molality) {
