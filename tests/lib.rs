@@ -21,6 +21,8 @@ mod reproducible;
 #[cfg(test)]
 mod round_trips;
 #[cfg(test)]
+mod seawater;
+#[cfg(test)]
 mod sensitivities;
 #[cfg(test)]
 mod tableaux;

@@ -99,7 +99,7 @@ impl<'a> Search<'a> {
         };
         let litre = Solution::pure(1.0);
         let water = |amount: &Amount| {
-            amount.moles.value() * if amount.per == Per::Litre { 1.0 } else { amount.per.to_water(&litre) }
+            amount.moles.value() * if amount.per == Per::Litre { 1.0 } else { amount.per.to_basis(&litre) }
         };
         Ok(Self {
             sample,

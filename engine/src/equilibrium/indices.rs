@@ -70,7 +70,7 @@ pub fn saturation_ph(state: &State) -> Result<Quantity, EquilibriumError> {
     saturation(root.x)?;
     let outcome = at_saturation(state, totals, calcite, gas)?;
     let proton = system.proton();
-    let ph = -outcome.converged.ln_a[proton] / LN_10;
+    let ph = system.ph_shift() - outcome.converged.ln_a[proton] / LN_10;
     let Some(stage) = Stage::new(&outcome) else {
         return Quantity::measured(ph, Unit::one(), None, "pH of saturation").map_err(undefined);
     };
