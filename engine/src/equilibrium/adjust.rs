@@ -10,6 +10,7 @@
 //! ```
 
 use super::analysis::Analysed;
+use super::dosing::short;
 use super::error::EquilibriumError;
 use super::observable::Asked;
 use super::state::State;
@@ -74,6 +75,7 @@ struct Search<'a> {
     reagents: Vec<&'a str>,
     /// The least and the most of each reagent, mol/kg(water).
     bounds: Vec<(f64, f64)>,
+    names: Vec<&'a str>,
     asked: Vec<Asked>,
     targets: Vec<&'a Quantity>,
 }
@@ -96,7 +98,7 @@ impl<'a> Search<'a> {
         };
         let litre = Solution::pure(1.0);
         let water = |amount: &Amount| {
-            amount.moles.value() * if amount.per == Per::Litre { 1.0 } else { amount.per.to_water(&litre) }
+            amount.moles.value() * if amount.per == Per::Litre { 1.0 } else { amount.per.to_basis(&litre) }
         };
         Ok(Self {
             sample,
@@ -105,6 +107,7 @@ impl<'a> Search<'a> {
             settings,
             reagents: adjust.reagents.iter().map(|(name, ..)| name.as_str()).collect(),
             bounds: adjust.reagents.iter().map(|(_, least, most)| (water(least), water(most))).collect(),
+            names: adjust.targets.iter().map(|(name, _)| name.as_str()).collect(),
             asked: adjust.targets.iter().map(asked).collect::<Result<_, _>>()?,
             targets: adjust.targets.iter().map(|(_, target)| target).collect(),
         })
@@ -127,9 +130,8 @@ impl<'a> Search<'a> {
     }
 
     fn wanted(&self) -> String {
-        let target =
-            |(asked, target): (&Asked, &&Quantity)| format!("{} {}", asked.observable, shown(target));
-        list(&self.asked.iter().zip(&self.targets).map(target).collect::<Vec<_>>())
+        let target = |(name, target): (&&str, &&Quantity)| format!("{name} {}", shown(target));
+        list(&self.names.iter().zip(&self.targets).map(target).collect::<Vec<_>>())
     }
 
     /// The water with so much of each reagent.
@@ -192,11 +194,11 @@ impl<'a> Search<'a> {
         let told = match nearest {
             None => why.unwrap_or_else(|| "there is no equilibrium".into()),
             Some((amounts, misses)) => {
-                let value = |((asked, target), miss): ((&Asked, &&Quantity), &f64)| {
-                    format!("{} {}", asked.observable, short(target.value() + miss))
+                let value = |((name, target), miss): ((&&str, &&Quantity), &f64)| {
+                    format!("{name} {}", short(target.value() + miss))
                 };
                 let values: Vec<String> =
-                    self.asked.iter().zip(&self.targets).zip(&misses).map(value).collect();
+                    self.names.iter().zip(&self.targets).zip(&misses).map(value).collect();
                 format!("the nearest is {}, with {} mol/kg(water)", list(&values), words(&amounts))
             }
         };
@@ -352,12 +354,9 @@ fn amount(coordinate: f64) -> f64 {
     SMALL * coordinate.exp_m1()
 }
 
-fn short(number: f64) -> String {
-    format!("{}", format!("{number:.4e}").parse::<f64>().unwrap_or(number))
-}
-
 fn shown(target: &Quantity) -> String {
-    let unit = target.unit().display(Style::Ascii);
+    let unit =
+        if *target.unit() == Unit::one() { String::new() } else { target.unit().display(Style::Ascii) };
     format!("{} {unit}", short(target.value())).trim_end().into()
 }
 

@@ -14,7 +14,7 @@ use super::dosing::{Course, Dosed};
 use super::error::EquilibriumError;
 use super::uncertainty::{Conditions, Held, MayForm, Variable};
 use crate::chem::{Element, Equation, Rational, Species, rational};
-use crate::ledger::{Formations, Ledger};
+use crate::ledger::{Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
@@ -36,8 +36,13 @@ pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Resul
         _ => None,
     });
     let temperature = warmed.map_or(sample.setting().temperature, |(temperature, _)| temperature);
+    let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::CompressTo(pressure) => Some(*pressure),
+        _ => None,
+    });
+    let pressure = compressed.unwrap_or(sample.setting().pressure);
     let present = analysed.system.components().iter().copied().collect();
-    let system = System::new(analysed.system.ledger(), &present, temperature)?;
+    let system = System::new(&ledger_in_place(sample, &analysed.system)?, &present, temperature, pressure)?;
     let mut surroundings = Surroundings::read(sample, &system)?;
     let course = Course::run(sample, &system, analysed)?;
     // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
@@ -51,6 +56,17 @@ pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Resul
         None => surroundings.solve(&system, &course.totals, settings),
         Some((ph, reagent)) => surroundings.hold_ph(&system, &course.totals, ph, &reagent, settings),
     }
+}
+
+/// The ledger at the pressure that the water comes to.
+fn ledger_in_place(sample: &Sample, system: &System) -> Result<Ledger, EquilibriumError> {
+    let ledger = system.ledger();
+    let Some(sea) = ledger.sea() else { return Ok(ledger.clone()) };
+    let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::CompressTo(pressure) => Some(*pressure),
+        _ => None,
+    });
+    Ok(ledger.in_sea(Sea { pressure: compressed.unwrap_or(sample.setting().pressure), ..sea })?)
 }
 
 /// What the water is in contact with, in indices.
@@ -99,7 +115,9 @@ impl Surroundings {
             }
             Treatment::Allow { solid, above } => self.allow(solid, *above, system)?,
             Treatment::WithSolid { solid, .. } => self.allow(solid, 0.0, system)?,
-            Treatment::HoldPh { ph, reagent: None } => self.hold("pH", None, fixed_ph(system.proton(), *ph)),
+            Treatment::HoldPh { ph, reagent: None } => {
+                self.hold("pH", None, fixed_ph(system.proton(), ph - system.ph_shift()));
+            }
             Treatment::HoldPh { ph, reagent: Some(reagent) } => {
                 self.held_by_reagent = Some((*ph, reagent.clone()))
             }
@@ -258,7 +276,7 @@ impl Surroundings {
         };
         let mut misses = |amount: f64| {
             let converged = self.converge(system, &with(amount), settings)?;
-            Ok::<f64, EquilibriumError>(-converged.ln_a[system.proton()] / LN_10 - ph)
+            Ok::<f64, EquilibriumError>(system.ph_shift() - converged.ln_a[system.proton()] / LN_10 - ph)
         };
         let start = scalar::Sample { x: 0.0, f: misses(0.0)? };
         let mut nearest = start;
@@ -281,7 +299,7 @@ impl Surroundings {
             root_between(&mut misses, start, end, Tolerance { x: 1e-18, f: 1e-14 })?.x
         };
         // Once more with the pH held, which it now is without a mole of hydrogen ions.
-        self.hold("pH", None, fixed_ph(system.proton(), ph));
+        self.hold("pH", None, fixed_ph(system.proton(), ph - system.ph_shift()));
         let mut outcome = self.solve(system, &with(amount), settings)?;
         let held = self.reservoirs.iter().position(|(name, _)| name == "pH").expect("just held");
         outcome.exchanged[held] = (reagent_name.to_string(), amount);

@@ -64,7 +64,7 @@ pub(super) fn reconcile(
     ledger: &Ledger,
     temperature: Temperature,
 ) -> Result<(Ledger, Reconciliation), LedgerError> {
-    let survey = Survey::of(ledger, temperature);
+    let survey = Survey::of(ledger, temperature)?;
     check_stated(&survey)?;
     let misclosures: Vec<f64> = survey.cycles.iter().map(|cycle| survey.misclosure(cycle)).collect();
     let weights = Weights::of(survey.cycles.iter().map(|cycle| survey.scatter.combined(cycle)).collect());

@@ -32,6 +32,8 @@ pub struct Certificate {
     pub smallest_amount: f64,
     /// Error of the ionic strength, relative.
     pub ionic_strength: f64,
+    /// Largest difference of the specific part of an ln γ from that of the composition; 0 where the model has none.
+    pub ln_gamma: f64,
     /// Number of ionic strengths seen that agree with their composition; the answer belongs to the lowest.
     pub ionic_strength_roots: usize,
     /// Whether the ionic strength is beyond the range of the activity model.
@@ -51,6 +53,7 @@ impl Certificate {
             && self.present_saturation <= settings.saturation
             && self.smallest_amount >= 0.0
             && self.ionic_strength <= settings.ionic_strength
+            && self.ln_gamma <= settings.ln_gamma
     }
 }
 
@@ -84,6 +87,7 @@ pub(super) fn certify(system: &System, settled: &Settled, phases: &Phases, model
         present_saturation: present.map(f64::abs).fold(0.0, f64::max),
         smallest_amount: amounts.fold(f64::INFINITY, f64::min),
         ionic_strength: relative(settled.ionic_strength_residual, settled.ionic_strength),
+        ln_gamma: settled.ln_gamma_residual,
         ionic_strength_roots: settled.roots,
         outside_validity: model.valid_to().is_some_and(|limit| settled.ionic_strength > limit),
         condition,

@@ -25,6 +25,7 @@
 //! - `feasibility`: totals that force exact zeros, or that nothing can satisfy.
 //! - `inner`: Newton's method on logarithmic balances, with Φ as merit, at given γ and given phases. `dense`: LU.
 //! - `phases`: which phases are present. `mixtures`: how much of each mixture. `ionic_strength`: γ and the activity of water.
+//!   `specific`: γ that depends on more than the ionic strength.
 //! - `prepared`: many solves of one stoichiometry.
 //! - `sensitivity`: derivatives of an answer. `certificate`: what is checked. `scalar`: conditions that are not totals, as one equation outside all this.
 
@@ -42,6 +43,7 @@ mod problem;
 pub mod scalar;
 pub mod sensitivity;
 mod settings;
+mod specific;
 mod system;
 #[cfg(test)]
 mod tests;
@@ -108,7 +110,7 @@ pub struct Mixed {
 /// # Errors
 ///
 /// Returns [`SolveError::BadInput`] when the problem is malformed; `Infeasible`, `Unbounded` and `Overdetermined` when it
-/// has no solution, with the reason; `NoIonicStrength`, `WaterActivityNotConverged` when the activity model has none;
+/// has no solution, with the reason; `NoIonicStrength`, `WaterActivityNotConverged`, `ActivityNotConverged` when the activity model has none;
 /// `NotConverged`, `PhasesNotSettled` and `Uncertified` when a solution was not found to the tolerances; `Stopped` when
 /// interrupted.
 ///

@@ -34,6 +34,7 @@ pub struct Warm {
     mineral_amount: Vec<f64>,
     mixture_present: Vec<bool>,
     n_species: usize,
+    specific: Vec<f64>,
     pub(super) ionic_strength: f64,
     pub(super) ln_water_activity: f64,
 }
@@ -57,6 +58,10 @@ pub(super) struct System<'p> {
     pub(super) g: Vec<f64>,
     /// ln γ of each species.
     pub(super) ln_gamma: Vec<f64>,
+    /// Charge number of each species.
+    pub(super) charges: Vec<f64>,
+    /// The specific part of each ln γ: zero where the model has none.
+    pub(super) specific: Vec<f64>,
     /// Mixture of each member and of each mixture as a whole.
     mixture_of: Vec<usize>,
     /// Level of each column's basis row.
@@ -111,6 +116,7 @@ impl<'p> System<'p> {
             column: warm.column,
             mineral_amount: warm.mineral_amount,
             mixture_present: warm.mixture_present,
+            specific: warm.specific,
             ..Self::on(problem, warm.basis)
         };
         system.basis.pivots = 0;
@@ -134,6 +140,8 @@ impl<'p> System<'p> {
             g: vec![0.0; basis.unit_row(0) + basis.n],
             ln_gamma: vec![0.0; problem.species.len()],
             mixture_of: problem.rows().filter_map(|(_, mixture)| mixture).collect(),
+            charges: problem.species.iter().map(|row| row.charge).collect(),
+            specific: vec![0.0; problem.species.len()],
             ln_c: vec![f64::NEG_INFINITY; problem.n_amounts()],
             level: vec![0.0; basis.n],
             column,
@@ -154,6 +162,7 @@ impl<'p> System<'p> {
             level: self.level,
             column: self.column,
             n_species: self.problem.species.len(),
+            specific: self.specific,
             mineral_amount: self.mineral_amount,
             mixture_present: self.mixture_present,
             ionic_strength,
@@ -213,8 +222,8 @@ impl<'p> System<'p> {
     /// Recomputes the constant part of every level for a new ionic strength and activity of water.
     pub(super) fn set_activities(&mut self, model: &Model, ionic_strength: f64, ln_water_activity: f64) {
         let problem = self.problem;
-        for (ln_gamma, row) in self.ln_gamma.iter_mut().zip(&problem.species) {
-            *ln_gamma = model.ln_gamma(row.charge, ionic_strength);
+        for (i, ln_gamma) in self.ln_gamma.iter_mut().enumerate() {
+            *ln_gamma = model.ln_gamma(i, self.charges[i], ionic_strength) + self.specific[i];
         }
         let solvent = |water: f64| if water == 0.0 { 0.0 } else { water * ln_water_activity };
         let species = problem.species.iter().zip(&self.ln_gamma).map(|(row, gamma)| (row, *gamma));
@@ -230,6 +239,11 @@ impl<'p> System<'p> {
         for (g, row) in self.g[problem.n_amounts()..].iter_mut().zip(reservoirs.chain(minerals)) {
             *g = constant(row);
         }
+    }
+
+    /// Molality of each species after the latest inner solve, mol/kg(water). Shape `(n_species,)`.
+    pub(super) fn molalities(&self) -> Vec<f64> {
+        self.ln_c[..self.charges.len()].iter().map(|ln_c| ln_c.exp()).collect()
     }
 
     /// Total of a column's basis row, exact in sign.
