@@ -4,11 +4,12 @@ use std::collections::BTreeSet;
 
 use crate::activity::{Davies, Model};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Formation, Formations, Ledger};
+use crate::ledger::{ActivityChoice, Couple, Formation, Formations, Ledger};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
-use crate::solve::{Problem, Row, Total};
+use crate::solve::{Problem, Reservoir, Row, Total};
 use crate::units::Temperature;
+use crate::water::analyte::oxidation_state;
 
 use super::error::EquilibriumError;
 
@@ -22,7 +23,10 @@ pub struct System {
     /// Positions in [`Formations::species`], with their rows.
     solutes: Vec<(usize, Row)>,
     phases: Vec<(usize, Row)>,
+    /// Redox couples in equilibrium: rows that are zero then.
+    couples: Vec<(Couple, Row)>,
     model: Model,
+    log_k: Vec<f64>,
     doubts: Vec<Option<Doubt>>,
 }
 
@@ -62,7 +66,28 @@ impl System {
         let phases =
             others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
         let model = model(ledger.activity(), temperature);
-        Ok(Self { ledger: ledger.clone(), temperature, components, solutes, phases, model, doubts })
+        let couples = vec![];
+        let ledger = ledger.clone();
+        Ok(Self { ledger, temperature, components, solutes, phases, couples, model, log_k, doubts })
+    }
+
+    /// The same with these redox couples in equilibrium, whose components have to be present.
+    #[must_use]
+    pub fn with_couples(mut self, couples: Vec<Couple>) -> Self {
+        let rows: Vec<Row> = couples.iter().map(|couple| self.couple_row(couple)).collect();
+        self.couples = couples.into_iter().zip(rows).collect();
+        self
+    }
+
+    /// The same at another temperature.
+    ///
+    /// # Errors
+    ///
+    /// As [`System::new`].
+    pub fn at(&self, temperature: Temperature) -> Result<Self, EquilibriumError> {
+        let present = self.components.iter().copied().collect();
+        let couples = self.couples().map(|(couple, _)| couple.clone()).collect();
+        Ok(Self::new(&self.ledger, &present, temperature)?.with_couples(couples))
     }
 
     /// The ledger.
@@ -135,6 +160,37 @@ impl System {
         self.phases().find(|(formed, _)| formed.species == *species)
     }
 
+    /// Redox couples in equilibrium.
+    pub fn couples(&self) -> impl ExactSizeIterator<Item = (&Couple, &Row)> {
+        self.couples.iter().map(|(couple, row)| (couple, row))
+    }
+
+    /// The reduction of a couple as a row of the solver, zero at equilibrium.
+    #[must_use]
+    pub fn couple_row(&self, couple: &Couple) -> Row {
+        let water = self.formations().component(&Species::water());
+        row(&couple.reduction, &self.components, water, &self.log_k)
+    }
+
+    /// ln K of a species, whether or not its components are present.
+    #[must_use]
+    pub fn formation_ln_k(&self, formed: &Formation) -> f64 {
+        row(formed, &[], None, &self.log_k).ln_k
+    }
+
+    /// The couples in equilibrium as what the solver holds. A reservoir that delivers a reaction, so much oxidised for so
+    /// much reduced, delivers nothing else: it sets the reaction in equilibrium.
+    #[must_use]
+    pub fn couples_held(&self) -> Vec<Reservoir> {
+        self.couples.iter().map(|(_, row)| Reservoir { row: row.clone(), ln_value: 0.0 }).collect()
+    }
+
+    /// Position of the electron, where any reaction with electrons plays a part.
+    #[must_use]
+    pub fn electron(&self) -> Option<usize> {
+        self.component(&Species::electron())
+    }
+
     /// Why the constants behind a species are uncertain at this temperature, with the reactions concerned.
     pub fn doubts<'a>(&'a self, formed: &'a Formation) -> impl Iterator<Item = (&'a str, Doubt)> {
         let names: Vec<&str> = self.ledger.names().collect();
@@ -203,7 +259,8 @@ fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[
     Row {
         stoichiometry,
         ln_k: log_k * LN_10,
-        charge: f64::from(formed.species.charge()),
+        // A couple is a reaction, whose charges add up.
+        charge: if formed.species == Species::electron() { 0.0 } else { f64::from(formed.species.charge()) },
         water: water.map_or(0.0, |water| rational::to_f64(formed.coefficient(water))),
     }
 }
@@ -225,8 +282,27 @@ fn debye_huckel_a(temperature: Temperature) -> f64 {
     water::debye_huckel_a(t, density, water::relative_permittivity(t, density))
 }
 
-/// The components that carry an element, water and the hydrogen ion left out.
+/// The components that carry an element, water and the hydrogen ion left out: those that hold no other element where there
+/// are any, since a complex such as Fe(CN)6^3- is counted as itself. Oxygen and hydrogen are carried by their own gases.
 pub(super) fn carriers(formations: &Formations, element: Element) -> Vec<usize> {
-    let carries = |species: &Species| species.count(element) != 0.into() && *species != Species::water();
-    (0..formations.components.len()).filter(|j| carries(&formations.components[*j])).collect()
+    let components = 0..formations.components.len();
+    let carries = |j: &usize| {
+        let species = &formations.components[*j];
+        let is_of_water = matches!(element, Element::H | Element::O);
+        species.count(element) != 0.into()
+            && *species != Species::water()
+            && (!is_of_water || oxidation_state(species, element) == Some(0.into()))
+    };
+    let all: Vec<usize> = components.filter(carries).collect();
+    let alone = |j: &usize| formations.components[*j].elements_beside_water().nth(1).is_none();
+    let alone: Vec<usize> = all.iter().copied().filter(alone).collect();
+    if alone.is_empty() { all } else { alone }
+}
+
+/// The component that inorganic carbon is counted by.
+pub(super) fn inorganic_carbon(formations: &Formations) -> Option<usize> {
+    let carriers = carriers(formations, Element::C);
+    let is_inorganic =
+        |j: &&usize| oxidation_state(&formations.components[**j], Element::C) == Some(4.into());
+    carriers.iter().find(is_inorganic).or(carriers.first()).copied()
 }

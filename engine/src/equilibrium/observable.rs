@@ -15,6 +15,12 @@ use crate::units::{Unit, UnitError};
 pub enum Observable {
     /// -log10 a(H⁺).
     Ph,
+    /// -log10 a(e⁻).
+    Pe,
+    /// The potential against the standard hydrogen electrode that belongs to pe.
+    Eh,
+    /// The potential a couple alone would give.
+    EhOf(String),
     /// Temperature.
     Temperature,
     /// Pressure.
@@ -129,8 +135,11 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 /// Name, form as it is written, and what it is, in order of listing.
-pub const NAMES: [(&str, &str, &str); 29] = [
+pub const NAMES: [(&str, &str, &str); 32] = [
     ("pH", "pH", "-log10 of the activity of H^+"),
+    ("pe", "pe", "-log10 of the activity of the electron, from the couples in equilibrium"),
+    ("Eh", "Eh", "potential against the standard hydrogen electrode, V"),
+    ("Eh", "Eh(Fe(III)/Fe(II))", "potential that a couple alone gives, in equilibrium with others or not, V"),
     ("temperature", "temperature", "temperature, degC"),
     ("pressure", "pressure", "pressure, bar"),
     ("density", "density", "density of the solution, kg/L"),
@@ -190,9 +199,12 @@ impl Asked {
             let nearest = nearest(name, NAMES.map(|(known, ..)| known)).map(|name| form_of(name).to_string());
             return Err(ObservableError::Unknown { name: body.into(), nearest });
         };
-        let observable = match (subject, form.contains('(')) {
-            (None, false) => plain(name),
-            (Some(subject), true) if !subject.is_empty() => about(name, subject),
+        let takes = |subject: bool| {
+            NAMES.iter().any(|(known, form, _)| *known == name && form.contains('(') == subject)
+        };
+        let observable = match subject {
+            None if takes(false) => plain(name),
+            Some(subject) if takes(true) && !subject.is_empty() => about(name, subject),
             _ => return Err(ObservableError::Form(body.into(), form)),
         };
         Ok(Self { observable, unit })
@@ -206,6 +218,8 @@ fn form_of(name: &str) -> &'static str {
 fn plain(name: &str) -> Observable {
     match name {
         "pH" => Observable::Ph,
+        "pe" => Observable::Pe,
+        "Eh" => Observable::Eh,
         "temperature" => Observable::Temperature,
         "pressure" => Observable::Pressure,
         "density" => Observable::Density,
@@ -223,6 +237,7 @@ fn plain(name: &str) -> Observable {
 
 fn about(name: &str, subject: String) -> Observable {
     match name {
+        "Eh" => Observable::EhOf(subject),
         "m" => Observable::Molality(subject),
         "c" => Observable::Molarity(subject),
         "a" => Observable::Activity(subject),
@@ -246,6 +261,9 @@ impl fmt::Display for Observable {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let (name, subject) = match self {
             Self::Ph => ("pH", None),
+            Self::Pe => ("pe", None),
+            Self::Eh => ("Eh", None),
+            Self::EhOf(subject) => ("Eh", Some(subject)),
             Self::Temperature => ("temperature", None),
             Self::Pressure => ("pressure", None),
             Self::Density => ("density", None),

@@ -32,7 +32,11 @@ impl Echelon {
     /// Adds reaction number `index`. A reaction that earlier ones already imply is not added: the combination that
     /// closes the cycle is returned, with an empty row.
     pub fn add(&mut self, index: usize, row: Sparse) -> Option<Combination> {
-        let mut added = Combination { row, multiples: Sparse::from([(index, 1.into())]) };
+        self.add_combination(Combination { row, multiples: Sparse::from([(index, 1.into())]) })
+    }
+
+    /// The same for a combination of reactions.
+    pub fn add_combination(&mut self, mut added: Combination) -> Option<Combination> {
         self.reduce(&mut added);
         let Some((&pivot, &coefficient)) = added.row.first_key_value() else { return Some(added) };
         added.scale(coefficient.recip());

@@ -5,6 +5,7 @@ use std::collections::BTreeMap;
 use std::sync::Arc;
 
 use super::analysis::{self, Analysis, Dissolved, Measured, Setting};
+use super::redox::PE_RANGE;
 use super::treatment::Treatment;
 use crate::ledger::{Ledger, LedgerError};
 use crate::named::{KeyFault, Value};
@@ -225,6 +226,9 @@ fn check(treatment: &Treatment) -> Result<(), SampleError> {
         }
         Treatment::HoldPh { ph, .. } if !(-2.0..=17.0).contains(ph) => {
             refuse(format!("pH {ph} lies outside -2 to 17"))
+        }
+        Treatment::HoldPe { pe, .. } if !(PE_RANGE.0..=PE_RANGE.1).contains(pe) => {
+            refuse(format!("pe {pe} lies outside {} to {}", PE_RANGE.0, PE_RANGE.1))
         }
         _ => Ok(()),
     }
