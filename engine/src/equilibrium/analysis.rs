@@ -235,7 +235,9 @@ impl Given<'_> {
             }
             pe = next;
         }
-        Err(EquilibriumError::Unreachable(format!("`pe`: none was found at which {couple} is in equilibrium")))
+        Err(EquilibriumError::Unreachable(format!(
+            "`pe`: none was found at which {couple} is in equilibrium"
+        )))
     }
 
     fn solve_at(&self, system: &System, pe: Option<f64>, of: Option<&Pe>) -> Result<Found, EquilibriumError> {

@@ -82,7 +82,9 @@ impl Plan {
             }
         }
         let measured = |couple: &Couple| {
-            given.iter().any(|(_, _, j)| [&couple.oxidised, &couple.reduced].contains(&&formations.components[*j]))
+            given
+                .iter()
+                .any(|(_, _, j)| [&couple.oxidised, &couple.reduced].contains(&&formations.components[*j]))
         };
         plan.add(of_water(formations).filter(|own| !measured(own)).collect());
         Ok(plan)
@@ -293,9 +295,10 @@ pub fn implied(system: &System, converged: &Converged) -> Vec<Implied> {
     for couple in of_water(formations) {
         let dissolved = if couple.reduced == Species::water() { &couple.oxidised } else { &couple.reduced };
         let Some(j) = formations.component(dissolved) else { continue };
-        let gas = formations.species.iter().find(|formed| {
-            formed.species.is_gas() && formed.stoichiometry == [(j, 1.into())]
-        });
+        let gas = formations
+            .species
+            .iter()
+            .find(|formed| formed.species.is_gas() && formed.stoichiometry == [(j, 1.into())]);
         let Some(gas) = gas else { continue };
         // ln a of what is dissolved, from the couple at this pe: Σ νⱼ ln aⱼ + ln K = 0 solved for it.
         let nu = rational::to_f64(couple.reduction.coefficient(j));

@@ -234,7 +234,8 @@ impl Surroundings {
     }
 
     fn conditions(&self, system: &System, problem: &Problem) -> Conditions {
-        let phase = |f: usize| self.phases.iter().find(|(own, _)| *own == f).map(|(_, species)| species.clone());
+        let phase =
+            |f: usize| self.phases.iter().find(|(own, _)| *own == f).map(|(_, species)| species.clone());
         let couple = |f: usize| {
             let position = f.checked_sub(self.reservoirs.len())?;
             system.couples().nth(position).map(|(couple, _)| couple.clone())

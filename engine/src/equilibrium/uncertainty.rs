@@ -182,7 +182,8 @@ impl Influence {
                 Variable::FormationLnK(i) => {
                     let formed = &outcome.system.ledger().formations().species[i];
                     influence.add_constants(&outcome.system, formed, *slope);
-                    influence.add_constant_temperature(outcome, *slope, |system| system.formation_ln_k(formed));
+                    influence
+                        .add_constant_temperature(outcome, *slope, |system| system.formation_ln_k(formed));
                 }
                 Variable::CoupleLnK(c) => {
                     let couples = outcome.system.ledger().formations().couples();
@@ -260,12 +261,7 @@ impl Influence {
     }
 
     /// Adds what an ln K contributes through an uncertain temperature.
-    fn add_constant_temperature(
-        &mut self,
-        outcome: &Outcome,
-        by_ln_k: f64,
-        ln_k: impl Fn(&System) -> f64,
-    ) {
+    fn add_constant_temperature(&mut self, outcome: &Outcome, by_ln_k: f64, ln_k: impl Fn(&System) -> f64) {
         if outcome.conditions.as_ref().is_some_and(|own| own.temperature.is_some())
             && let Some((above, below)) = neighbours(&outcome.system)
         {

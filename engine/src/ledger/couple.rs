@@ -139,7 +139,8 @@ pub(super) fn between(
         return None;
     }
     // Electrons stand with what they reduce.
-    let (oxidised, reduced) = if (electrons > 0.into()) == (nu(one) > 0.into()) { (one, other) } else { (other, one) };
+    let (oxidised, reduced) =
+        if (electrons > 0.into()) == (nu(one) > 0.into()) { (one, other) } else { (other, one) };
     // The row reads Σ νⱼ ln aⱼ = ln K: turned so that electrons are taken up, in whole numbers.
     let whole = row.row.values().fold(1, |so_far: i64, nu| so_far * (nu * so_far).denom());
     let scale = Rational::from_integer(if electrons > 0.into() { -whole } else { whole });

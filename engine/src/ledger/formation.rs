@@ -102,8 +102,9 @@ impl Formations {
             let balance = Combination { row: components.collect(), multiples: balance.multiples };
             match independent.add_combination(balance.clone()) {
                 None => balances.push(balance),
-                Some(cycle) => leftovers
-                    .push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() }),
+                Some(cycle) => {
+                    leftovers.push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() })
+                }
             }
         }
         Self { components, species, leftovers, balances }

@@ -1,6 +1,5 @@
 //! What was measured of the redox state, and which couples are taken to be in equilibrium.
 
-use crate::chem::reaction;
 use crate::named::{KeyFault, Named, Value};
 use crate::nearest::nearest;
 use crate::physics::electrode::{ELECTRODE_RANGE, ELECTRODES, volts_per_pe};
@@ -108,9 +107,10 @@ fn read_orp(named: &mut Named, temperature: Temperature) -> Result<Option<Potent
     let (orp, electrode) = (potential(named, "ORP")?, named.take("electrode"));
     match (orp, electrode) {
         (None, None) => Ok(None),
-        (None, Some(_)) => {
-            Err(KeyFault::new("electrode", "`electrode` belongs to `ORP`, which was not given; `Eh` counts from the hydrogen electrode already"))
-        }
+        (None, Some(_)) => Err(KeyFault::new(
+            "electrode",
+            "`electrode` belongs to `ORP`, which was not given; `Eh` counts from the hydrogen electrode already",
+        )),
         (Some(_), None) => Err(KeyFault::new(
             "ORP",
             format!(
@@ -154,7 +154,10 @@ fn reference(electrode: Value, temperature: Temperature) -> Result<(f64, f64), K
                     list(&ELECTRODES.map(|own| own.name))
                 ),
             };
-            return Err(KeyFault::new("electrode", format!("`electrode`: no reference electrode \"{name}\"; {help}")));
+            return Err(KeyFault::new(
+                "electrode",
+                format!("`electrode`: no reference electrode \"{name}\"; {help}"),
+            ));
         };
         let (low, high) = ELECTRODE_RANGE;
         let celsius = temperature.celsius();
@@ -171,7 +174,10 @@ fn reference(electrode: Value, temperature: Temperature) -> Result<(f64, f64), K
     let volt = given.to(&Unit::parse("V").expect("a known unit"));
     let volt = volt.map_err(|error| KeyFault::new("electrode", error.to_string()))?.value();
     if volt.abs() > 1.0 {
-        return Err(KeyFault::new("electrode", format!("`electrode`: {volt} V against the hydrogen electrode? write \"210 mV\"")));
+        return Err(KeyFault::new(
+            "electrode",
+            format!("`electrode`: {volt} V against the hydrogen electrode? write \"210 mV\""),
+        ));
     }
     Ok((volt, 0.0))
 }
@@ -224,7 +230,7 @@ fn read_couples(named: &mut Named) -> Result<Couples, KeyFault> {
 /// A temperature in degC as text with a unit, for tests.
 #[cfg(test)]
 fn celsius(text: &str) -> Temperature {
-    reaction::temperature("temperature", Value::Text(text.into())).expect("a temperature")
+    crate::chem::reaction::temperature("temperature", Value::Text(text.into())).expect("a temperature")
 }
 
 #[cfg(test)]
