@@ -753,13 +753,10 @@ impl State {
         if !phase.is_gas() {
             return Err(no_answer(asked, format!("{phase} is no gas")));
         }
-        if self.system().phase(&phase).is_none()
-            && let Some(implied) = self.implied_fugacity(&phase)
-        {
-            return Ok(implied);
+        match (self.ln_omega(name, asked), self.implied_fugacity(&phase)) {
+            (Err(ObservableError::Absent { .. }), Some(implied)) => Ok(implied),
+            (found, _) => found.map(|(ln_f, slopes)| (ln_f.exp(), scaled(&slopes, ln_f.exp()))),
         }
-        let (ln_fugacity, slopes) = self.ln_omega(name, asked)?;
-        Ok((ln_fugacity.exp(), scaled(&slopes, ln_fugacity.exp())))
     }
 
     /// The fugacity of oxygen or hydrogen that pe implies where none of it is dissolved.
@@ -950,7 +947,8 @@ fn words(doubt: Doubt) -> String {
 
 /// `3.2e15`, also beyond what a double holds.
 fn power_of_ten(log10: f64) -> String {
-    let exponent = log10.floor();
+    // What rounds to 10 counts as 1 of the next power.
+    let exponent = (log10 + 1.0 - 9.95_f64.log10()).floor();
     format!("{:.1}e{exponent:.0}", 10_f64.powf(log10 - exponent))
 }
 
@@ -976,7 +974,8 @@ fn atoms(analyte: &Analyte, formed: &Formation, formations: &Formations) -> f64 
         let ion = &formations.components[*j];
         let is_counted = match (analyte.oxidation_state(), oxidation_state(ion, element)) {
             (Some(wanted), Some(own)) => wanted == own,
-            _ => true,
+            // Hydrogen and oxygen of other ions are those of water.
+            _ => !matches!(element, Element::H | Element::O),
         };
         if is_counted { ion.count(element) * nu } else { 0.into() }
     };

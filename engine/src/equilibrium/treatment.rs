@@ -33,10 +33,19 @@ pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Resul
     });
     let temperature = warmed.unwrap_or(sample.setting().temperature);
     let system = analysed.system.at(temperature)?;
-    let holds_pe = sample.treatments().iter().any(|own| matches!(own, Treatment::HoldPe { .. }));
-    if !holds_pe {
-        return treat_with(sample, analysed, &system, warmed.is_some(), settings);
-    }
+    let holds_pe = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::HoldPe { reagent, .. } => Some(reagent),
+        _ => None,
+    });
+    let system = match holds_pe {
+        None => return treat_with(sample, analysed, &system, warmed.is_some(), settings),
+        // A reagent is an amount, so that water gives off no more of its gases than that.
+        Some(Some(_)) => {
+            let system = system.with_couples(analysed.couples.clone());
+            return treat_with(sample, analysed, &system, warmed.is_some(), settings);
+        }
+        Some(None) => system,
+    };
     // Water takes part as far as it is stable at this pe.
     let at_first = system.with_couples(redox::without_water(&analysed.couples));
     let outcome = treat_with(sample, analysed, &at_first, warmed.is_some(), settings)?;

@@ -11,7 +11,8 @@ use crate::activity::Model;
 /// How well an answer satisfies its equations, and how far it can be trusted.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Certificate {
-    /// Largest error of a balance of the components, summed without rounding, relative to the sum of its absolute terms.
+    /// Largest error of a balance of the components, summed without rounding, relative to the sum of its absolute terms; an
+    /// amount delivered counts by the terms it is the difference of.
     pub balance: f64,
     /// Component of that balance.
     pub balance_idx: usize,
@@ -99,20 +100,21 @@ fn worst_balance(system: &System, phases: &Phases) -> (f64, usize) {
     let basis = &system.basis;
     let first_reservoir = system.problem.species.len();
     let first_mineral = system.mineral_row(0);
-    let amounts = (0..).zip(&system.ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
-    let delivered = (first_reservoir..).zip(&phases.reservoir_amount).map(|(row, amount)| (row, -amount));
-    let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
-    let terms: Vec<(usize, f64)> =
-        amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
+    let amounts = (0..).zip(&system.ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp(), 0.0));
+    let delivered = phases.reservoir_amount.iter().zip(&phases.reservoir_terms);
+    let delivered = (first_reservoir..).zip(delivered).map(|(row, (amount, terms))| (row, -amount, *terms));
+    let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount, 0.0));
+    let terms: Vec<(usize, f64, f64)> =
+        amounts.chain(delivered).chain(minerals).filter(|(_, x, _)| *x != 0.0).collect();
     let mut worst = (0.0, 0);
     let mut sum = ExactSum::default();
     for k in 0..basis.n {
         let mut magnitude = 0.0;
-        for &(row, amount) in &terms {
+        for &(row, amount, difference_of) in &terms {
             let coefficient = basis.input_row(row)[k];
             if coefficient != 0.0 {
                 sum.add_product(coefficient, amount);
-                magnitude += (coefficient * amount).abs();
+                magnitude += coefficient.abs() * amount.abs().max(difference_of);
             }
         }
         for part in system.problem.totals[k].parts() {
