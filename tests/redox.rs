@@ -1,6 +1,7 @@
 //! Redox equilibria against the Nernst equation by hand, and against what has to be conserved.
 
-use lysocline_engine::equilibrium::{State, equilibrate};
+use lysocline_engine::chem::{Element, Species};
+use lysocline_engine::equilibrium::{State, equilibrate, predominance};
 use lysocline_engine::ledger::shipped;
 use lysocline_engine::physics::electrode::volts_per_pe;
 use lysocline_engine::process::sweep::{Axis, sweep};
@@ -436,5 +437,35 @@ fn pe_is_held_in_a_water_that_said_nothing_of_it() {
         near(get(&found, "pe"), pe, 1e-12);
         near(log_a(&found, "Fe^2+") - log_a(&found, "Fe^3+"), IRON - pe, 1e-10);
         near(get(&found, "total(Fe)"), 5e-5, 1e-17);
+    }
+}
+
+/// Boundaries of the iron diagram at 10 umol/kg, by hand from log K: Fe(III)/Fe(II) at pe 13.02 in acid, ferrihydrite
+/// (log K as the ledger has it) against Fe^2+ at pe = 13.02 + log K - 3 pH - log a(Fe^2+).
+#[test]
+fn fields_of_the_iron_diagram_meet_where_they_should() {
+    let iron = Element::from_symbol("Fe").unwrap();
+    let water = sample(&[("pH", "7"), ("Fe", "10 umol/kg")]);
+    let field = |pe: f64, ph: f64| {
+        let found = predominance::at(&water, iron, (pe, ph), &["ferrihydrite"], None, &Settings::default());
+        found.unwrap_or_else(|error| panic!("pe {pe}, pH {ph}: {error}"))
+    };
+    assert_eq!(field(12.8, 0.5).species.key(), "Fe^2+");
+    assert_eq!(field(13.3, 0.5).species.key(), "Fe^3+");
+    let ledger = shipped::ledger("freshwater", None).unwrap();
+    let solubility = ledger.reaction("ferrihydrite").unwrap();
+    assert_eq!(solubility.equation().coefficient(&Species::parse("Fe(OH)3(ferrihydrite)").unwrap()), (-1).into());
+    let constant = solubility.log_k().unwrap().value();
+    // Half of the iron dissolved as Fe^2+ at pH 6.
+    let boundary = IRON + constant - 3.0 * 6.0 - 5e-6_f64.log10();
+    assert_eq!(field(boundary - 0.1, 6.0).species.key(), "Fe^2+");
+    let above = field(boundary + 0.1, 6.0);
+    assert_eq!(above.species.mineral_name(), Some("ferrihydrite"));
+    assert!(above.share > 0.5 && above.share < 0.7, "{}", above.share);
+    // All over the diagram there is an answer.
+    for k in 0..28 {
+        for ph in 0..14 {
+            field(-9.0 + f64::from(k), 0.5 + f64::from(ph));
+        }
     }
 }

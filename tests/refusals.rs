@@ -302,8 +302,8 @@ fn treatments() {
     water(DILUTE, &[open_to("CO2(g)", 0.0)], "the fugacity of `CO2(g)` must be above zero, not 0 bar");
     water(
         DILUTE,
-        &[open_to("O2(g)", 1.0)],
-        "the ledger has no mineral or gas `O2(g)`; did you mean `CO2(g)`?",
+        &[open_to("N2(g)", 1.0)],
+        "the ledger has no mineral or gas `N2(g)`; did you mean `H2(g)`?",
     );
     water(DILUTE, &[open_to("calcite", 1.0)], "`calcite`: CaCO3(calcite) is no gas");
     water(DILUTE, &[saturate("CO2(g)", 0.0)], "`CO2(g)`: CO2(g) is no solid");

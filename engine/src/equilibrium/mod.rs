@@ -10,6 +10,7 @@ pub mod assemble;
 mod error;
 mod indices;
 pub mod observable;
+pub mod predominance;
 pub mod redox;
 pub mod state;
 mod trail;

@@ -176,6 +176,12 @@ impl State {
         self.0.outcome.conditions.as_ref()?.temperature.clone()
     }
 
+    /// Solids that may form or are there without limit.
+    #[must_use]
+    pub fn solids(&self) -> &[Solid] {
+        &self.0.outcome.solids
+    }
+
     fn solid(&self, species: &Species) -> Option<&Solid> {
         self.0.outcome.solids.iter().find(|solid| solid.species == *species)
     }
