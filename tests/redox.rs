@@ -454,7 +454,10 @@ fn fields_of_the_iron_diagram_meet_where_they_should() {
     assert_eq!(field(13.3, 0.5).species.key(), "Fe^3+");
     let ledger = shipped::ledger("freshwater", None).unwrap();
     let solubility = ledger.reaction("ferrihydrite").unwrap();
-    assert_eq!(solubility.equation().coefficient(&Species::parse("Fe(OH)3(ferrihydrite)").unwrap()), (-1).into());
+    assert_eq!(
+        solubility.equation().coefficient(&Species::parse("Fe(OH)3(ferrihydrite)").unwrap()),
+        (-1).into()
+    );
     let constant = solubility.log_k().unwrap().value();
     // Half of the iron dissolved as Fe^2+ at pH 6.
     let boundary = IRON + constant - 3.0 * 6.0 - 5e-6_f64.log10();

@@ -244,6 +244,10 @@ fn analyses() {
         "`pH_temperature` is not read here: give pH as it is at the sample's temperature",
     );
     key("make_up", "Na", "`make_up` names `Na`, which was not given: none were");
+    analysis(
+        &[("pH", "electroneutral"), ("Na", "1 mmol/L"), ("make_up", "Na")],
+        "`pH: \"electroneutral\"` and `make_up: \"Na\"` both make the charges add up: keep one",
+    );
     analysis(&[("pH", "27")], "pH 27 lies outside -2 to 17");
     analysis(&[("pCO2", "0 uatm")], "`pCO2` must be above zero");
     analysis(

@@ -12,6 +12,7 @@ pub mod process;
 pub mod quantity;
 pub mod script;
 pub mod solve;
+pub mod tableau;
 pub mod text;
 pub mod units;
 pub mod water;

@@ -28,6 +28,8 @@ pub struct Cli {
 pub enum Command {
     /// Run a script file
     Run(Run),
+    /// Solve a tableau of components, species and totals (JSON) and print the result as JSON
+    Solve(Solve),
 }
 
 /// Run a script file.
@@ -43,6 +45,17 @@ pub struct Run {
     /// Write files below this folder
     #[arg(long, value_name = "DIR", default_value = "out")]
     pub write: PathBuf,
+}
+
+/// Solve a tableau.
+#[derive(Debug, Args)]
+pub struct Solve {
+    /// The case: `components`, `totals`, `species`, `fixed`, `phases`, `activity` as for `tableau` in a script
+    pub case: PathBuf,
+
+    /// Solve it this many times and add the median `seconds_per_solve`
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(1..))]
+    pub repeat: Option<u32>,
 }
 
 /// How output looks.

@@ -13,7 +13,7 @@ use super::pressure::Volume;
 use super::rational::{self, Rational};
 pub use super::stated_conditions::salinity;
 use super::statement::Statement;
-pub use super::statement::{multiple, temperature};
+pub use super::statement::{multiple, temperature, terms};
 use crate::named::{KeyFault, Named};
 use crate::physics::constants::{GAS_CONSTANT, LN_10};
 use crate::quantity::{Part, Quantity};

@@ -173,7 +173,12 @@ impl Statement {
                 given.published_as(&format!("{identity}/{word}"), &format!("{word} of {label}"))
             });
             let given = named.and_then(Result::ok).unwrap_or(given);
-            Influence::through(given.parts(), &per_unit)
+            // A value typed here is called after its key; a budget has to say whose it is.
+            let called = |part: &Part| match part.input.label() == word.replace(' ', "_") {
+                true => Part { input: part.input.called(&format!("{word} of {label}")), ..part.clone() },
+                false => part.clone(),
+            };
+            Influence::through(&given.parts().iter().map(called).collect::<Vec<_>>(), &per_unit)
         };
         let mut influences =
             of(&self.enthalpy, Kind::Energy, "enthalpy", LogK::van_t_hoff(0.0, at, 1.0, 0.0));
@@ -281,7 +286,7 @@ fn read_value(
         given.push(("gibbs", Stated::Gibbs(gibbs)));
     }
     if let Some(value) = options.take("log_k_terms") {
-        given.push(("log_k_terms", Stated::Terms(read_terms(value)?)));
+        given.push(("log_k_terms", Stated::Terms(terms(value)?)));
     }
     if given.len() > 1 {
         let keys: Vec<&str> = given.iter().map(|(key, _)| *key).collect();
@@ -309,7 +314,12 @@ fn read_k(
     conditions.of_unit(&k, equation)
 }
 
-fn read_terms(value: Value) -> Result<Vec<(Term, f64)>, KeyFault> {
+/// Reads the terms of a function of temperature, `#{ "1": 14.8, "1/T": -3404.7 }`.
+///
+/// # Errors
+///
+/// A fault of `log_k_terms` that names the term.
+pub fn terms(value: Value) -> Result<Vec<(Term, f64)>, KeyFault> {
     let fault = |message: String| KeyFault::new("log_k_terms", message);
     let known: Vec<&str> = Term::ALL.map(Term::written).into_iter().chain(["ln(T)"]).collect();
     let Value::Map(map) = value else {

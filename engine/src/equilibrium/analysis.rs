@@ -16,6 +16,8 @@ use std::collections::BTreeSet;
 
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::assemble::{System, carriers, inorganic_carbon};
+use super::dissolved_mass::{self, CARBONATE_MASS};
+use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
 use super::redox::{self, Pe, Plan};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
@@ -98,6 +100,8 @@ pub struct Outcome {
     pub exchanged: Vec<(String, f64)>,
     /// Amount of each solid that may form or is there without limit, mol/kg(water).
     pub solids: Vec<Solid>,
+    /// What treatments did to the totals.
+    pub dosed: Dosed,
     /// What it meets, where its derivatives are known.
     pub conditions: Option<Conditions>,
 }
@@ -165,6 +169,7 @@ pub fn analyse(
         totals: found.totals.clone(),
         exchanged: vec![],
         solids: vec![],
+        dosed: Dosed::default(),
         conditions: found.conditions,
     };
     let temperature = measured.temperature.clone();
@@ -311,16 +316,14 @@ fn position(system: &System, component: usize) -> usize {
 }
 
 /// Density and dissolved mass of the sample as its volumes were measured.
-fn solution(measured: &Measured) -> Solution {
-    let at = measured.volume_temperature.unwrap_or_else(laboratory);
-    let water_density = water::density(at.kelvin()) / 1000.0;
+pub(super) fn solution(measured: &Measured) -> Solution {
+    let water_density = water_density(measured);
     let grams = measured.amounts.iter().map(|(analyte, _, amount)| {
         analyte.molar_mass().unwrap_or(0.0) * amount.moles.value() * amount.per.to_litre(water_density)
     });
-    // Alkalinity and carbon are counted as hydrogencarbonate, 61 g/mol, which most of either is.
-    let evidence = measured.evidence.alkalinity.iter().chain(&measured.evidence.dic).next();
-    let carbonate =
-        evidence.map_or(0.0, |amount| 61.017 * amount.moles.value() * amount.per.to_litre(water_density));
+    // Alkalinity and carbon are counted as hydrogencarbonate, which most of either is.
+    let carbonate = dissolved_mass::carbonate(measured)
+        .map_or(0.0, |amount| CARBONATE_MASS * amount.moles.value() * amount.per.to_litre(water_density));
     let dissolved = (grams.sum::<f64>() + carbonate).max(0.0) / 1000.0;
     match measured.density {
         Some(density) => Solution { density, dissolved },
@@ -328,8 +331,14 @@ fn solution(measured: &Measured) -> Solution {
     }
 }
 
+/// Density of pure water where volumes were measured, kg/L.
+fn water_density(measured: &Measured) -> f64 {
+    let at = measured.volume_temperature.unwrap_or_else(laboratory);
+    water::density(at.kelvin()) / 1000.0
+}
+
 /// Laboratories measure volumes at 20 degC, whatever the water had in the field.
-fn laboratory() -> crate::units::Temperature {
+pub(super) fn laboratory() -> crate::units::Temperature {
     crate::units::Temperature::from_celsius(20.0).expect("above absolute zero")
 }
 
@@ -446,10 +455,30 @@ fn treatment_components(sample: &Sample, ledger: &Ledger) -> Result<BTreeSet<usi
             | Treatment::HoldPe { reagent: Some(reagent), .. } => {
                 present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
             }
+            Treatment::WithSolid { solid, .. } => {
+                let formed = formations.formation(ledger.find_phase(solid)?).expect("phases are formed");
+                present.extend(formed.stoichiometry.iter().map(|(j, _)| *j));
+            }
+            Treatment::Dose(dose) | Treatment::Remove(dose) => {
+                present.extend(super::treatment::reagent(ledger, &dose.reagent)?.into_iter().map(|(j, _)| j));
+            }
+            Treatment::AddSolution { solution, .. } => {
+                for (formula, _) in &solution.solutes {
+                    present.extend(super::treatment::reagent(ledger, formula)?.into_iter().map(|(j, _)| j));
+                }
+            }
+            Treatment::Adjust(adjust) => {
+                for (reagent, ..) in &adjust.reagents {
+                    present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
+                }
+            }
             // A solid that may form brings nothing with it: it needs what is there already.
             Treatment::Allow { solid, .. } => drop(ledger.find_phase(solid)?),
             Treatment::HoldPe { .. } => present.extend(formations.component(&Species::electron())),
-            Treatment::HoldPh { .. } | Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
+            Treatment::HoldPh { .. }
+            | Treatment::Concentrate(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => {}
         }
     }
     Ok(present)
@@ -793,6 +822,7 @@ impl<'a> Analysis<'a> {
 
         let mut conditions =
             Conditions { temperature: measured.temperature.clone(), ..Conditions::default() };
+        let mut amounts: Vec<&Amount> = measured.amounts.iter().map(|(_, _, amount)| amount).collect();
         for carried in given {
             let change = self.supplied(position(self.system, carried.component));
             let change = change.into_iter().map(|change| change * carried.factor).collect();
@@ -801,12 +831,16 @@ impl<'a> Analysis<'a> {
         if let (Some(amount), Some(carbon), true) = (&self.evidence.dic, self.carbon, uses("DIC")) {
             let change = self.supplied(carbon).into_iter().map(|change| change * factor(amount)).collect();
             conditions.measured.push((amount.moles.clone(), balanced(change)));
+            amounts.push(amount);
         }
         if let (Some(amount), true) = (&self.evidence.alkalinity, uses("alkalinity")) {
             let change: Vec<f64> = unit(self.proton);
             let change = change.into_iter().map(|change| -change * factor(amount)).collect();
             conditions.measured.push((amount.moles.clone(), balanced(change)));
+            amounts.push(amount);
         }
+        let water_density = water_density(measured);
+        dissolved_mass::account(&mut conditions, &amounts, measured, &self.solution, water_density);
         match &self.evidence.ph {
             Some(Ph::Measured(ph)) if uses("pH") => {
                 let supply = match self.carbon {

@@ -4,7 +4,7 @@ use std::collections::BTreeSet;
 
 use crate::activity::{Davies, Model};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Couple, Formation, Formations, Ledger};
+use crate::ledger::{ActivityChoice, Couple, Formation, Formations, Ledger, LedgerError};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::solve::{Problem, Reservoir, Row, Total};
@@ -51,6 +51,9 @@ impl System {
         temperature: Temperature,
     ) -> Result<Self, EquilibriumError> {
         let formations = ledger.formations();
+        if let Some((name, _)) = formations.too_large.first().and_then(|k| ledger.reactions().nth(*k)) {
+            return Err(LedgerError::TooLarge(name.into()).into());
+        }
         let water = formations.component(&Species::water());
         let components: Vec<usize> = present.iter().copied().filter(|j| Some(*j) != water).collect();
         let (log_k, doubts) = constants(ledger, temperature);
@@ -79,15 +82,21 @@ impl System {
         self
     }
 
-    /// The same at another temperature.
-    ///
-    /// # Errors
-    ///
-    /// As [`System::new`].
-    pub fn at(&self, temperature: Temperature) -> Result<Self, EquilibriumError> {
-        let present = self.components.iter().copied().collect();
-        let couples = self.couples().map(|(couple, _)| couple.clone()).collect();
-        Ok(Self::new(&self.ledger, &present, temperature)?.with_couples(couples))
+    /// The same species with the constants of another temperature; whether cycles close there is not asked.
+    #[must_use]
+    pub fn at(&self, temperature: Temperature) -> Self {
+        let formations = self.ledger.formations();
+        let (log_k, doubts) = constants(&self.ledger, temperature);
+        let mut system =
+            Self { temperature, doubts, model: model(self.ledger.activity(), temperature), ..self.clone() };
+        for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
+            row.ln_k = ln_k(&formations.species[*index], &log_k);
+        }
+        for (couple, row) in &mut system.couples {
+            row.ln_k = ln_k(&couple.reduction, &log_k);
+        }
+        system.log_k = log_k;
+        system
     }
 
     /// The ledger.
@@ -175,7 +184,7 @@ impl System {
     /// ln K of a species, whether or not its components are present.
     #[must_use]
     pub fn formation_ln_k(&self, formed: &Formation) -> f64 {
-        row(formed, &[], None, &self.log_k).ln_k
+        ln_k(formed, &self.log_k)
     }
 
     /// The couples in equilibrium as what the solver holds. A reservoir that delivers a reaction, so much oxidised for so
@@ -212,9 +221,8 @@ impl System {
         Problem {
             n_components: self.n_components(),
             species: self.solutes.iter().map(|(_, row)| row.clone()).collect(),
-            reservoirs: vec![],
-            minerals: vec![],
             totals: totals.iter().map(|total| Total::from(*total)).collect(),
+            ..Problem::default()
         }
     }
 
@@ -255,14 +263,17 @@ fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[
     let position = |j: usize| components.iter().position(|own| *own == j);
     let stoichiometry: Vec<(usize, Rational)> =
         formed.stoichiometry.iter().filter_map(|(j, nu)| position(*j).map(|k| (k, *nu))).collect();
-    let log_k: f64 = formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum();
     Row {
         stoichiometry,
-        ln_k: log_k * LN_10,
+        ln_k: ln_k(formed, log_k),
         // A couple is a reaction, whose charges add up.
         charge: if formed.species == Species::electron() { 0.0 } else { f64::from(formed.species.charge()) },
         water: water.map_or(0.0, |water| rational::to_f64(formed.coefficient(water))),
     }
+}
+
+fn ln_k(formed: &Formation, log_k: &[f64]) -> f64 {
+    formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum::<f64>() * LN_10
 }
 
 fn model(choice: ActivityChoice, temperature: Temperature) -> Model {

@@ -1,6 +1,7 @@
 //! Indices of the trade that ask what a water would do: each is one more equilibrium of its dissolved totals.
 
 use super::analysis::{Outcome, delivered, ln_saturation};
+use super::dosing::Dosed;
 use super::error::EquilibriumError;
 use super::state::State;
 use super::uncertainty::{Conditions, Held, Influence, Stage, Variable};
@@ -108,6 +109,7 @@ fn at_saturation(
         totals,
         exchanged: vec![],
         solids: vec![],
+        dosed: Dosed::default(),
         conditions: Some(conditions),
     })
 }

@@ -5,10 +5,14 @@
 //! questions in the user's names and units.
 
 pub mod acid_base;
+mod adjust;
 pub mod analysis;
 pub mod assemble;
+mod dissolved_mass;
+mod dosing;
 mod error;
 mod indices;
+mod mixture;
 pub mod observable;
 pub mod predominance;
 pub mod redox;
@@ -18,6 +22,7 @@ pub mod treatment;
 pub mod uncertainty;
 
 pub use assemble::System;
+pub use dosing::Dosed;
 pub use error::EquilibriumError;
 pub use observable::{Asked, Observable, ObservableError};
 pub use state::State;
@@ -44,13 +49,20 @@ pub fn equilibrate(
     let mut analysed = match sample.analysis() {
         Analysis::Measured(measured) => analysis::analyse(sample, measured, &ledger, settings)?,
         Analysis::Spoilt(reason) => return Err(EquilibriumError::Spoilt(reason.clone())),
+        Analysis::Mixed(parts) => mixture::mix(sample, parts, &ledger, settings)?,
         Analysis::Dissolved(dissolved) => analysis::restore(sample, dissolved, &ledger)?,
     };
+    let mut resolved = sample.clone();
+    if adjust::is_needed(sample) {
+        let notes;
+        (resolved, notes) = adjust::resolve(sample, &analysed, settings)?;
+        analysed.notes.extend(notes);
+    }
     let first = analysed.outcome.take();
     let outcomes = match first {
         Some(first) if sample.treatments().is_empty() => vec![first],
         first => {
-            let treated = treatment::treat(sample, &analysed, settings)?;
+            let treated = treatment::treat(&resolved, &analysed, settings)?;
             first.into_iter().chain([treated]).collect()
         }
     };

@@ -24,7 +24,7 @@ use crate::units::{KgOf, Kind, Pressure, Temperature, Unit};
 use crate::water::analysis::Setting;
 use crate::water::analyte::{Analyte, oxidation_state};
 use crate::water::concentration::{SALT_TERM, Solution};
-use crate::water::{Dissolved, Sample, Treatment};
+use crate::water::{Dissolved, Sample, Treatment, treatment};
 
 /// A sum smaller than this part of its terms is what rounding left of a zero.
 const ROUNDING: f64 = 1e-12;
@@ -83,11 +83,7 @@ impl State {
         let mut outcomes = outcomes.into_iter().rev();
         let outcome = outcomes.next().expect("every state has an outcome");
         let before = outcomes.next();
-        let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
-            Treatment::CompressTo(pressure) => Some(*pressure),
-            _ => None,
-        });
-        let pressure = compressed.unwrap_or(sample.setting().pressure);
+        let pressure = sample.setting_after().pressure;
         let molalities: Vec<f64> = outcome.converged.ln_c.iter().map(|ln_c| ln_c.exp()).collect();
         let dissolved = dissolved(&outcome.system, &molalities);
         let solution = solution(&outcome.system, &molalities);
@@ -211,11 +207,39 @@ impl State {
             totals.push((solid.clone(), self.quantity(found.amount.max(0.0), slopes)));
         }
         let setting =
-            Setting { temperature: self.temperature(), pressure: self.pressure(), ..self.0.sample.setting() };
+            Setting { temperature: self.temperature(), pressure: self.pressure(), water: self.water() };
         let name = self.0.sample.name().map(str::to_string);
         let couples = system.couples().map(|(couple, _)| couple.to_string()).collect();
         let dissolved = Dissolved { totals, temperature: self.temperature_quantity(), couples };
-        Ok(Sample::dissolved(name, setting, dissolved, system.ledger().clone()))
+        let mut sample = Sample::dissolved(name, setting, dissolved, system.ledger().clone());
+        for name in keep {
+            let allowed = Treatment::Allow { solid: (*name).into(), above: self.held_at(name)? };
+            sample =
+                sample.treated(allowed).map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
+        }
+        Ok(sample)
+    }
+
+    /// The saturation index a solid that is there is held at.
+    fn held_at(&self, name: &str) -> Result<f64, EquilibriumError> {
+        let ledger = self.system().ledger();
+        let wanted = ledger.find_phase(name)?;
+        let is_it = |solid: &str| ledger.find_phase(solid).is_ok_and(|own| own == wanted);
+        let index = |treatment: &Treatment| match treatment {
+            Treatment::Allow { solid, above: index } | Treatment::Saturate { solid, index }
+                if is_it(solid) =>
+            {
+                Some(*index)
+            }
+            _ => None,
+        };
+        Ok(self.0.sample.treatments().iter().rev().find_map(index).unwrap_or(0.0))
+    }
+
+    /// Kilograms of water: what the sample had, less what evaporated.
+    #[must_use]
+    pub fn water(&self) -> f64 {
+        self.0.sample.setting().water / self.0.outcome.dosed.concentrated
     }
 
     /// Dissolved total of each component, mol/kg(water), correlated through all they come from.
@@ -455,7 +479,7 @@ impl State {
             }
             Observable::Amount(name) => {
                 let species = self.phase(name, asked)?;
-                let water = inner.sample.setting().water;
+                let water = self.water();
                 let solid = self.solid(&species);
                 let slopes = solid.map(|solid| scaled(&[solid.slope], water)).unwrap_or_default();
                 Ok(amount(solid.map_or(0.0, |solid| solid.amount * water), "mol", &species, slopes))
@@ -783,14 +807,26 @@ impl State {
     }
 
     fn exchanged(&self, name: &str, asked: &str, sign: f64) -> Result<Answer, ObservableError> {
-        let mut exchanged = self.0.outcome.exchanged.iter().enumerate();
-        let (held, (_, amount)) = exchanged.find(|(_, (own, _))| own == name).ok_or_else(|| {
-            let names: Vec<&str> = self.0.outcome.exchanged.iter().map(|(own, _)| own.as_str()).collect();
-            no_answer(asked, format!("nothing of this name was exchanged; there are {}", list(&names)))
-        })?;
-        let molar_mass = Species::parse(name).ok().and_then(|species| species.molar_mass());
-        let slopes = vec![(Variable::ReservoirAmount(held), sign)];
-        Ok(Answer { molar_mass, ..Answer::new(sign * amount, "mol/kg(water)", slopes) })
+        let outcome = &self.0.outcome;
+        let held = outcome.exchanged.iter().enumerate().find(|(_, (own, _))| own == name);
+        let dosed: Vec<&Quantity> =
+            outcome.dosed.amounts.iter().filter(|(own, _)| own == name).map(|(_, amount)| amount).collect();
+        if held.is_none() && dosed.is_empty() {
+            let names = outcome.exchanged.iter().map(|(own, _)| own.as_str());
+            let mut names: Vec<&str> =
+                names.chain(outcome.dosed.amounts.iter().map(|(own, _)| own.as_str())).collect();
+            names.dedup();
+            return Err(no_answer(
+                asked,
+                format!("nothing of this name was exchanged; there are {}", list(&names)),
+            ));
+        }
+        let exchanged = held.map_or(0.0, |(_, (_, amount))| *amount);
+        let amount = exchanged + dosed.iter().map(|amount| amount.value()).sum::<f64>();
+        let molar_mass = treatment::substance(name).ok().and_then(|species| species.molar_mass());
+        let slopes = held.map(|(f, _)| (Variable::ReservoirAmount(f), sign)).into_iter().collect();
+        let partials = dosed.into_iter().map(|amount| (amount.clone(), sign)).collect();
+        Ok(Answer { molar_mass, partials, ..Answer::new(sign * amount, "mol/kg(water)", slopes) })
     }
 
     /// Everything that can be asked, as a table of forms and meanings.
@@ -803,7 +839,15 @@ impl State {
         .expect("columns of one length")
     }
 
-    /// Solutes from the most to the least abundant.
+    /// A number for a table, with its standard uncertainty where one is known.
+    fn cell(&self, value: f64, slopes: Slopes) -> Cell {
+        match self.quantity(value, slopes).sigma() {
+            Some(sigma) if sigma > 0.0 => Cell::uncertain(value, sigma),
+            _ => Cell::number(value),
+        }
+    }
+
+    /// Solutes from the most to the least abundant; molalities with their uncertainty where it is known.
     #[must_use]
     pub fn species(&self) -> Table {
         let converged = &self.0.outcome.converged;
@@ -813,9 +857,13 @@ impl State {
         let numbers = |title: &str, value: &dyn Fn(usize) -> f64| {
             Column::numbers(title, order.iter().map(|k| value(*k)))
         };
+        let molality = |k: &usize| {
+            let molality = self.0.molalities[*k];
+            self.cell(molality, vec![(Variable::LnMolality(*k), molality)])
+        };
         Table::new([
             Column::chemistry("species", order.iter().map(|k| solutes[*k].species.key())),
-            numbers("molality [mol/kg(water)]", &|k| self.0.molalities[k]),
+            Column::new("molality [mol/kg(water)]", order.iter().map(molality)),
             numbers("activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]).exp()),
             numbers("log activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]) / LN_10),
             numbers("gamma", &|k| converged.ln_gamma[k].exp()),
@@ -823,7 +871,8 @@ impl State {
         .expect("columns of one length")
     }
 
-    /// Gases and solids that the water's components can form, from the most to the least saturated.
+    /// Gases and solids that the water's components can form, from the most to the least saturated, with the uncertainty of
+    /// what is known.
     #[must_use]
     pub fn phases(&self) -> Table {
         let converged = &self.0.outcome.converged;
@@ -838,13 +887,20 @@ impl State {
         });
         let amount = |formed: &Formation| {
             let found = self.solid(&formed.species);
-            found.map_or_else(Cell::missing, |solid| Cell::number(solid.amount))
+            found.map_or_else(Cell::missing, |solid| self.cell(solid.amount, vec![solid.slope]))
         };
-        let index = |(formed, index): &(&Formation, f64)| {
-            if formed.species.is_gas() { Cell::missing() } else { Cell::number(*index) }
+        let slopes =
+            |formed: &Formation| saturation_slopes(self.system(), &formed.species).unwrap_or_default();
+        let index = |(formed, index): &(&Formation, f64)| match formed.species.is_gas() {
+            true => Cell::missing(),
+            false => self.cell(*index, scaled(&slopes(formed), 1.0 / LN_10)),
         };
         let fugacity = |(formed, index): &(&Formation, f64)| {
-            if formed.species.is_gas() { Cell::number(10_f64.powf(*index)) } else { Cell::missing() }
+            let fugacity = 10_f64.powf(*index);
+            match formed.species.is_gas() {
+                true => self.cell(fugacity, scaled(&slopes(formed), fugacity)),
+                false => Cell::missing(),
+            }
         };
         let notes: Vec<String> =
             phases.iter().map(|(formed, _)| self.doubt_words(formed).unwrap_or_default()).collect();

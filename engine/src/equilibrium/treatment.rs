@@ -1,22 +1,27 @@
 //! The second stage: treatments act on the conserved totals.
 //!
-//! Gases at a fixed fugacity and unlimited solids are reservoirs, solids that may form are minerals, and one convex
+//! What moves the totals themselves acts first, in the order given (see [`super::dosing`]); surroundings act last and
+//! together. Gases at a fixed fugacity and unlimited solids are reservoirs, solids that may form are minerals, and one convex
 //! problem at the final temperature holds them all, with the couples in equilibrium. A pH or pe held by a reagent is one
 //! equation outside it: so much of the reagent that it is met.
 
+use std::collections::BTreeMap;
+
+use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::analysis::{Analysed, Outcome, Solid, delivered, fixed_ph};
 use super::assemble::{System, carriers};
+use super::dosing::{Course, Dosed};
 use super::error::EquilibriumError;
 use super::redox::{self, fixed_pe};
-use super::uncertainty::{Conditions, Held, Variable};
-use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{Formations, Ledger};
+use super::uncertainty::{Conditions, Held, MayForm, Variable};
+use crate::chem::{Element, Equation, Rational, Species, rational};
+use crate::ledger::{Couple, Formations, Ledger};
 use crate::physics::constants::LN_10;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
 use crate::solve::sensitivity::own_supplies;
 use crate::solve::{Converged, Mineral, Problem, Reservoir, Row, Settings, solve};
-use crate::water::{Sample, Treatment};
+use crate::water::{Sample, Treatment, treatment};
 
 /// The largest amount of a reagent looked at, mol/kg(water).
 const MOST_REAGENT: f64 = 20.0;
@@ -27,50 +32,55 @@ const MOST_REAGENT: f64 = 20.0;
 ///
 /// Returns what the ledger does not know, and why there is no equilibrium.
 pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Result<Outcome, EquilibriumError> {
-    let warmed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
-        Treatment::WarmTo(temperature) => Some(*temperature),
+    let warmed = sample.treatments().iter().enumerate().rev().find_map(|(k, treatment)| match treatment {
+        Treatment::WarmTo(temperature) => Some((*temperature, sample.stated_value(k))),
         _ => None,
     });
-    let temperature = warmed.unwrap_or(sample.setting().temperature);
-    let system = analysed.system.at(temperature)?;
+    let temperature = warmed.map_or(sample.setting().temperature, |(temperature, _)| temperature);
+    let present = analysed.system.components().iter().copied().collect();
+    let system = System::new(analysed.system.ledger(), &present, temperature)?;
+    let kelvin = match warmed {
+        Some((_, stated)) => stated.cloned(),
+        None => analysed.temperature.clone(),
+    };
+    let with = |couples: Vec<Couple>| {
+        treat_with(sample, analysed, &system.clone().with_couples(couples), kelvin.clone(), settings)
+    };
     let holds_pe = sample.treatments().iter().rev().find_map(|treatment| match treatment {
         Treatment::HoldPe { reagent, .. } => Some(reagent),
         _ => None,
     });
-    let system = match holds_pe {
-        None => return treat_with(sample, analysed, &system, warmed.is_some(), settings),
+    match holds_pe {
+        None => with(analysed.system.couples().map(|(couple, _)| couple.clone()).collect()),
         // A reagent is an amount, so that water gives off no more of its gases than that.
-        Some(Some(_)) => {
-            let system = system.with_couples(analysed.couples.clone());
-            return treat_with(sample, analysed, &system, warmed.is_some(), settings);
+        Some(Some(_)) => with(analysed.couples.clone()),
+        // Water takes part as far as it is stable at this pe.
+        Some(None) => {
+            let at_first = redox::without_water(&analysed.couples);
+            let outcome = with(at_first.clone())?;
+            let stable = redox::stable(&analysed.couples, &outcome.system, &outcome.converged);
+            if stable.len() == at_first.len() { Ok(outcome) } else { with(stable) }
         }
-        Some(None) => system,
-    };
-    // Water takes part as far as it is stable at this pe.
-    let at_first = system.with_couples(redox::without_water(&analysed.couples));
-    let outcome = treat_with(sample, analysed, &at_first, warmed.is_some(), settings)?;
-    let stable = redox::stable(&analysed.couples, &at_first, &outcome.converged);
-    if stable.len() == at_first.couples().len() {
-        return Ok(outcome);
     }
-    treat_with(sample, analysed, &at_first.with_couples(stable), warmed.is_some(), settings)
 }
 
-/// The treatments in a system whose couples are settled.
+/// The treatments in a system whose couples are settled, at a temperature in kelvin that may be uncertain.
 fn treat_with(
     sample: &Sample,
     analysed: &Analysed,
     system: &System,
-    is_warmed: bool,
+    kelvin: Option<Quantity>,
     settings: &Settings,
 ) -> Result<Outcome, EquilibriumError> {
     let mut surroundings = Surroundings::read(sample, system)?;
+    let course = Course::run(sample, system, analysed)?;
     // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
-    surroundings.measured.clone_from(&analysed.measured);
-    surroundings.temperature = analysed.temperature.clone().filter(|_| !is_warmed);
+    surroundings.measured = course.measured;
+    surroundings.dosed = course.dosed;
+    surroundings.temperature = kelvin;
     match surroundings.held_by_reagent.clone() {
-        None => surroundings.solve(system, &analysed.totals, settings),
-        Some(target) => surroundings.hold_by(system, &analysed.totals, &target, settings),
+        None => surroundings.solve(system, &course.totals, settings),
+        Some(target) => surroundings.hold_by(system, &course.totals, &target, settings),
     }
 }
 
@@ -81,9 +91,12 @@ struct Surroundings {
     phases: Vec<(usize, Species)>,
     minerals: Vec<(String, Species, Mineral)>,
     held_by_reagent: Option<ByReagent>,
+    /// Values stated with an uncertainty, by the name of what they hold, with the derivative of the solver's value by them.
+    stated: BTreeMap<String, (Quantity, f64)>,
     /// For the derivatives of what comes out: see [`Conditions`].
     measured: Vec<(Quantity, Vec<f64>)>,
     temperature: Option<Quantity>,
+    dosed: Dosed,
 }
 
 /// -log10 of an activity that a reagent brings about.
@@ -110,11 +123,14 @@ impl Surroundings {
             phases: vec![],
             minerals: vec![],
             held_by_reagent: None,
+            stated: BTreeMap::new(),
             measured: vec![],
             temperature: None,
+            dosed: Dosed::default(),
         };
-        for treatment in sample.treatments() {
+        for (k, treatment) in sample.treatments().iter().enumerate() {
             surroundings.add(treatment, system)?;
+            surroundings.note(treatment, sample.stated_value(k));
         }
         Ok(surroundings)
     }
@@ -129,15 +145,8 @@ impl Surroundings {
                 let (species, row) = formed(system, solid, Species::is_solid, "solid")?;
                 self.hold(solid, Some(species), Reservoir { row, ln_value: index * LN_10 });
             }
-            Treatment::Allow { solid, above } => {
-                let species = find(system.ledger(), solid, Species::is_solid, "solid")?.clone();
-                // A solid whose elements are not there cannot form.
-                if let Some((_, row)) = system.phase(&species) {
-                    self.minerals.retain(|(name, ..)| name != solid);
-                    let mineral = Mineral { row: row.clone(), ln_target: above * LN_10 };
-                    self.minerals.push((solid.clone(), species, mineral));
-                }
-            }
+            Treatment::Allow { solid, above } => self.allow(solid, *above, system)?,
+            Treatment::WithSolid { solid, .. } => self.allow(solid, 0.0, system)?,
             Treatment::HoldPh { ph, reagent: None } => self.hold("pH", None, fixed_ph(system.proton(), *ph)),
             Treatment::HoldPh { ph, reagent: Some(reagent) } => {
                 self.hold_later("pH", system.proton(), *ph, reagent)?;
@@ -149,7 +158,13 @@ impl Surroundings {
                     Some(reagent) => self.hold_later("pe", electron, *pe, reagent)?,
                 }
             }
-            Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
+            Treatment::Dose(_)
+            | Treatment::Remove(_)
+            | Treatment::Concentrate(_)
+            | Treatment::AddSolution { .. }
+            | Treatment::Adjust(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => {}
         }
         Ok(())
     }
@@ -167,6 +182,40 @@ impl Surroundings {
         }
         self.held_by_reagent = Some(ByReagent { what, component, value, reagent: reagent.into() });
         Ok(())
+    }
+
+    /// A solid that may form; the last word on one counts.
+    fn allow(&mut self, solid: &str, above: f64, system: &System) -> Result<(), EquilibriumError> {
+        let species = find(system.ledger(), solid, Species::is_solid, "solid")?.clone();
+        // A solid whose elements are not there cannot form.
+        if let Some((_, row)) = system.phase(&species) {
+            self.minerals.retain(|(_, own, _)| *own != species);
+            let mineral = Mineral { row: row.clone(), ln_target: above * LN_10 };
+            self.minerals.push((solid.into(), species, mineral));
+        }
+        Ok(())
+    }
+
+    /// Notes what the value of a treatment depends on; the last word on one gas, solid or pH counts.
+    fn note(&mut self, treatment: &Treatment, stated: Option<&Quantity>) {
+        let (name, slope) = match treatment {
+            Treatment::OpenTo { gas, fugacity } => (gas.as_str(), 1.0 / fugacity),
+            Treatment::Saturate { solid, .. } | Treatment::Allow { solid, .. } => (solid.as_str(), LN_10),
+            Treatment::HoldPh { .. } => ("pH", -LN_10),
+            Treatment::HoldPe { .. } => ("pe", -LN_10),
+            Treatment::WithSolid { .. }
+            | Treatment::Dose(_)
+            | Treatment::Remove(_)
+            | Treatment::Concentrate(_)
+            | Treatment::AddSolution { .. }
+            | Treatment::Adjust(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => return,
+        };
+        match stated {
+            Some(stated) => self.stated.insert(name.into(), (stated.clone(), slope)),
+            None => self.stated.remove(name),
+        };
     }
 
     /// Holds a value; the last word on one gas, solid or pH counts.
@@ -221,6 +270,7 @@ impl Surroundings {
             totals: delivered(&problem, &converged),
             exchanged,
             solids: self.solids(&converged),
+            dosed: self.dosed.clone(),
             conditions: Some(self.conditions(system, &problem)),
             converged,
         })
@@ -249,21 +299,25 @@ impl Surroundings {
             let position = f.checked_sub(self.reservoirs.len())?;
             system.couples().nth(position).map(|(couple, _)| couple.clone())
         };
+        let stated = |f: usize| self.stated.get(&self.reservoirs.get(f)?.0).cloned();
         let held = problem.reservoirs.iter().zip(own_supplies(problem)).enumerate();
         let held = held.map(|(f, (reservoir, supply))| Held {
             phase: phase(f),
             couple: couple(f),
+            value: stated(f),
             ..Held::chosen(reservoir.clone(), supply)
+        });
+        let formed = self.minerals.iter().map(|(name, species, mineral)| MayForm {
+            species: species.clone(),
+            mineral: mineral.clone(),
+            value: self.stated.get(name).cloned(),
         });
         Conditions {
             held: held.collect(),
-            minerals: self
-                .minerals
-                .iter()
-                .map(|(_, species, mineral)| (species.clone(), mineral.clone()))
-                .collect(),
+            minerals: formed.collect(),
             measured: self.measured.clone(),
             temperature: self.temperature.clone(),
+            concentrated: Some(self.dosed.concentrated),
         }
     }
 
@@ -353,13 +407,16 @@ fn formed(
     Ok((species, row.clone()))
 }
 
-/// A neutral substance in moles of the ledger's components, water left out.
+/// A neutral substance, or the equation by which it dissolves, in moles of the ledger's components, water left out.
 ///
 /// # Errors
 ///
 /// Returns why it is not made of them: an element the ledger lacks, or oxidation states that do not add up.
 pub fn reagent(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, EquilibriumError> {
     let fault = |why: String| EquilibriumError::Analyte { key: text.into(), why };
+    if treatment::is_equation(text) {
+        return dissolution(ledger, text);
+    }
     let species = Species::parse(text).map_err(|error| fault(error.to_string()))?;
     if species.charge() != 0 {
         return Err(fault(format!(
@@ -390,6 +447,41 @@ fn solute(formations: &Formations, species: &Species) -> Option<Vec<(usize, Rati
     let formed = formations.formation(species)?;
     let water = formations.component(&Species::water());
     Some(formed.stoichiometry.iter().copied().filter(|(j, _)| Some(*j) != water).collect())
+}
+
+/// Equivalents of strong acid in a mole of a reagent, counted as alkalinity is: HCl 1, H2SO4 2, NaOH -1.
+///
+/// # Errors
+///
+/// As [`reagent`].
+pub fn acid_equivalents(ledger: &Ledger, text: &str) -> Result<f64, EquilibriumError> {
+    let level = ZeroLevel::at(ledger, ALKALINITY_PH);
+    let proton = ledger.formations().component(&Species::proton());
+    let acid = |(j, nu): &(usize, Rational)| {
+        if Some(*j) == proton { *nu } else { -level.of_component(*j) * nu }
+    };
+    Ok(rational::to_f64(reagent(ledger, text)?.iter().map(acid).sum()))
+}
+
+/// What the equation of a dissolution brings into the water, per mole of its first substance.
+fn dissolution(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, EquilibriumError> {
+    let fault = |why: String| EquilibriumError::Analyte { key: text.into(), why };
+    let dissolving = treatment::substance(text).map_err(fault)?;
+    let equation = Equation::parse(text).map_err(|error| fault(error.to_string()))?;
+    let per_mole = -equation.coefficient(&dissolving);
+    let mut parts: Vec<(usize, Rational)> = Vec::new();
+    for (species, coefficient) in equation.terms().iter().filter(|(species, _)| *species != dissolving) {
+        let known = ledger.find_species(species.key())?;
+        let formed = ledger.formations().formation(known).expect("just found");
+        for (j, nu) in &formed.stoichiometry {
+            let moles = coefficient / per_mole * nu;
+            match parts.iter_mut().find(|(own, _)| own == j) {
+                Some((_, sum)) => *sum += moles,
+                None => parts.push((*j, moles)),
+            }
+        }
+    }
+    Ok(parts)
 }
 
 /// The substance as these components, one for each of its elements, with protons and water; `None` if that would take

@@ -130,7 +130,7 @@ pub(super) fn between(
     let mut echelon = Echelon::default();
     for balance in balances {
         let row: Sparse = balance.row.iter().map(|(j, nu)| (column_of(*j), *nu)).collect();
-        echelon.add_combination(Combination { row, multiples: balance.multiples.clone() });
+        echelon.add_combination(Combination { row, multiples: balance.multiples.clone() }).ok()?;
     }
     let row = echelon.row_of(pivot)?;
     let nu = |j: usize| row.row.get(&column_of(j)).copied().unwrap_or_else(|| 0.into());

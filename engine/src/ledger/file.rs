@@ -9,6 +9,7 @@ use std::collections::BTreeMap;
 use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
+use super::influence;
 use super::ledger::{ActivityChoice, Ledger};
 use super::shipped;
 use super::standard_formation::{self, Elements};
@@ -275,6 +276,10 @@ fn read_constant(
         Some(Value::Text(input)) => input,
         Some(other) => return Err(named("input", format!("`input` takes a text, not {}", other.kind()))),
     };
+    let influences = match keys.remove("influences") {
+        None => vec![],
+        Some(value) => influence::read(value, &identity).map_err(|fault| named(&fault.key, fault.message))?,
+    };
     let reaction = Reaction::read(&equation, Some(&name), Named::new(keys), Some(&identity));
     let reaction = reaction.map_err(|error| {
         let key = match &error {
@@ -290,6 +295,7 @@ fn read_constant(
     for conversion in history {
         constant.history = constant.history.converted(conversion);
     }
+    constant.history = constant.history.influenced(influences);
     Ok((is_formation, name, Reaction::of(reaction.equation().clone(), constant)))
 }
 

@@ -12,7 +12,7 @@ use std::cmp::Reverse;
 use std::collections::BTreeSet;
 
 use super::couple::Couple;
-use super::elimination::{Combination, Echelon, Sparse};
+use super::elimination::{Combination, Echelon, Sparse, TooLarge};
 use crate::chem::{GasStandard, Rational, Reaction, ReactionError, Species};
 
 /// Every species of a ledger as a formation reaction from its components.
@@ -27,6 +27,8 @@ pub struct Formations {
     /// Reactions with electrons among components, each independent of those before: `Σ νⱼ ln aⱼ + Σ nₖ ln Kₖ = 0`, with
     /// components by their index.
     balances: Vec<Combination>,
+    /// Reactions left out because their coefficients outgrow 64 bits, by their index in the order of names.
+    pub too_large: Vec<usize>,
 }
 
 /// One species formed from components: ln a = Σ νⱼ ln aⱼ + Σ nₖ ln Kₖ.
@@ -67,20 +69,26 @@ impl Formations {
         let is_phase = |column: usize| columns[column].is_gas() || columns[column].is_solid();
         let mut echelon = Echelon::default();
         let mut among_components = Vec::new();
-        let mut leftovers = Vec::new();
+        let (mut leftovers, mut too_large) = (Vec::new(), Vec::new());
         for index in order {
             let terms = reactions[index].1.equation().terms();
             let row: Sparse = terms.iter().map(|(species, c)| (column_of(species), *c)).collect();
-            if has_electrons(index) {
-                let mut reduced = Combination { row, multiples: Sparse::from([(index, 1.into())]) };
-                echelon.reduce(&mut reduced);
-                if reduced.row.first_key_value().is_some_and(|(pivot, _)| !is_phase(*pivot)) {
-                    among_components.push((index, reduced));
-                } else {
-                    echelon.add_combination(reduced);
+            let mut reduced = Combination { row, multiples: Sparse::from([(index, 1.into())]) };
+            if echelon.reduce(&mut reduced).is_err() {
+                too_large.push(index);
+                continue;
+            }
+            let pivot = reduced.row.first_key_value().map(|(pivot, _)| *pivot);
+            if has_electrons(index) && pivot.is_some_and(|pivot| !is_phase(pivot)) {
+                among_components.push((index, reduced));
+                continue;
+            }
+            match echelon.add_combination(reduced) {
+                Ok(None) => {}
+                Ok(Some(cycle)) => {
+                    leftovers.push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() })
                 }
-            } else if let Some(cycle) = echelon.add(index, row) {
-                leftovers.push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() });
+                Err(TooLarge) => too_large.push(index),
             }
         }
 
@@ -101,13 +109,14 @@ impl Formations {
             let components = balance.row.iter().map(|(c, nu)| (position(*c).expect("components only"), *nu));
             let balance = Combination { row: components.collect(), multiples: balance.multiples };
             match independent.add_combination(balance.clone()) {
-                None => balances.push(balance),
-                Some(cycle) => {
+                Ok(None) => balances.push(balance),
+                Ok(Some(cycle)) => {
                     leftovers.push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() })
                 }
+                Err(TooLarge) => too_large.push(index),
             }
         }
-        Self { components, species, leftovers, balances }
+        Self { components, species, leftovers, balances, too_large }
     }
 
     /// Position of a component.

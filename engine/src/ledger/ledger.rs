@@ -9,7 +9,7 @@ use super::audit::{self, Audit, Cycle};
 use super::combine::{Combined, combine_routes};
 use super::formation::{Formations, Leftover, in_bar};
 use super::reconcile::{self, Reconciliation};
-use crate::chem::{Reaction, ReactionError, Species};
+use crate::chem::{Constant, LogK, Reaction, ReactionError, Species};
 use crate::named::{KeyFault, Named};
 use crate::nearest::nearest;
 use crate::text::list;
@@ -82,6 +82,12 @@ pub enum LedgerError {
         /// The species that are left over.
         left_over: Vec<String>,
     },
+    /// Coefficients that outgrow 64 bits when reactions are combined.
+    #[error(
+        "`{0}` cannot be combined with the others: its coefficients are too large, or have too many digits, to be \
+         counted exactly"
+    )]
+    TooLarge(String),
     /// Constants that cannot be weighed.
     #[error(
         "no uncertainty is stated for {}, and what is not stated cannot be weighed; fill it in with \
@@ -291,6 +297,22 @@ impl Ledger {
         Self(Arc::new(Inner { activity, ..self.copy() }))
     }
 
+    /// The same with other constants for its reactions, by routes already found: for random draws, which are too many to
+    /// find routes anew. Where two routes lead to one constant a draw does not make them agree, and keeps the first.
+    pub(crate) fn moved(&self, log_k: impl Fn(&str, &Reaction) -> Option<LogK>) -> Self {
+        let mut formations = self.formations().clone();
+        formations.leftovers.clear();
+        let mut inner = self.copy();
+        for (name, reaction) in &mut inner.reactions {
+            if let (Some(log_k), Ok(constant)) = (log_k(name, reaction), reaction.constant()) {
+                let constant = Constant { log_k, ..constant.clone() };
+                *reaction = Reaction::of(reaction.equation().clone(), constant);
+            }
+        }
+        inner.formations = OnceLock::from(formations);
+        Self(Arc::new(inner))
+    }
+
     /// Formation of every species from components the engine picks; worked out once.
     #[must_use]
     pub fn formations(&self) -> &Formations {
@@ -396,8 +418,11 @@ impl Ledger {
     }
 
     /// Every independent cycle among its reactions and formation data, and how far each fails to close.
-    #[must_use]
-    pub fn audit(&self, temperature: Temperature) -> Audit {
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::TooLarge`].
+    pub fn audit(&self, temperature: Temperature) -> Result<Audit, LedgerError> {
         audit::audit(self, temperature)
     }
 

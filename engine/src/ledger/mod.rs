@@ -14,6 +14,7 @@ mod couple;
 pub mod elimination;
 pub mod file;
 mod formation;
+mod influence;
 mod least_squares;
 #[allow(clippy::module_inception)]
 mod ledger;

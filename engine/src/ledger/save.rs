@@ -8,10 +8,12 @@ use std::collections::BTreeMap;
 use std::fmt::Write;
 
 use super::formation::in_bar;
+use super::influence;
 use super::ledger::Ledger;
 use super::shipped;
 use crate::chem::{Constant, Provenance, Reaction};
-use crate::units::Temperature;
+use crate::quantity::Quantity;
+use crate::units::{Temperature, Unit};
 
 /// The ledger in the layout of ledger files.
 #[must_use]
@@ -87,11 +89,16 @@ fn entry(text: &mut String, name: &str, reaction: &Reaction, is_formation: bool)
         let ends = [temperature(range.lowest), temperature(range.highest)];
         let _ = writeln!(text, "range = {}", quoted_list(&ends));
     }
-    if let Some(sigma) = reaction.log_k().ok().and_then(|log_k| log_k.sigma()) {
+    let own = Quantity::from_parts(0.0, Unit::one(), constant.history.parts());
+    if let Some(sigma) = own.sigma() {
         let _ = writeln!(text, "sigma = {sigma:?}");
     }
     if let Some(input) = only_input(constant) {
         let _ = writeln!(text, "input = {}", quoted(input));
+    }
+    text.push_str(&influence::written(constant.history.influences(), quoted));
+    if let Some(volume) = &constant.volume {
+        let _ = writeln!(text, "volume = {}", quoted(&exactly(&volume.quantity())));
     }
     origin(text, constant);
     let conversions = constant.history.conversions();
@@ -144,6 +151,12 @@ fn only_input(constant: &Constant) -> Option<&str> {
         return None;
     }
     part.input.name()
+}
+
+/// A quantity with every digit, as `Quantity::parse` reads it.
+fn exactly(quantity: &Quantity) -> String {
+    let sigma = quantity.sigma().map_or_else(String::new, |sigma| format!(" +/- {sigma:?}"));
+    format!("{:?}{sigma} {}", quantity.value(), quantity.unit().symbol())
 }
 
 /// In degC where that reads back as the same temperature, else in kelvin.

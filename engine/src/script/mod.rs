@@ -36,6 +36,7 @@ mod expect;
 mod general;
 mod ledger;
 mod modules;
+mod processes;
 mod quantity;
 mod reaction;
 mod sample;
@@ -43,7 +44,9 @@ mod session;
 mod state;
 mod syntax;
 mod table;
+mod tableau;
 mod translate;
+mod treatments;
 
 pub use closure::Closure;
 pub use diagnostic::{Diagnostic, Fail, ScriptResult, fail};

@@ -13,7 +13,7 @@ use crate::chem::reaction::{self as chemistry, salinity};
 use crate::chem::{
     EquationError, GasStandard, Medium, PhScale, Rational, Reaction, ReactionError, Species, Trail,
 };
-use crate::ledger::{LedgerError, combine as combine_reactions};
+use crate::ledger::{Combined, LedgerError, combine_routes};
 use crate::named::{Named, Value};
 use crate::present::Table;
 use crate::quantity::Quantity;
@@ -81,6 +81,14 @@ impl From<LedgerError> for Fail {
 pub(super) fn temperature(given: &Dynamic) -> Result<Temperature, Fail> {
     let read = chemistry::temperature("temperature", value(given)?);
     read.map_err(|fault| fail(fault.message))
+}
+
+/// The reaction found, with a warning where several routes lead to it.
+pub(super) fn told(context: &NativeCallContext, combined: Combined) -> Reaction {
+    if let Some(routes) = combined.routes {
+        Host::of(context).message(&format!("warning: `{}`: {routes}", combined.reaction));
+    }
+    combined.reaction
 }
 
 /// A number or text as a quantity of a kind.
@@ -531,7 +539,9 @@ mod reaction_functions {
         trail.rows().len() as INT
     }
 
-    /// The constant of an equation as a sum of the given reactions, with exact multiples.
+    /// The constant of an equation as a sum of the given reactions, with exact multiples. Where several sums reach it, that
+    /// of least variance is taken if uncertainties are stated, else the one with fewest constants; a warning says how far
+    /// the routes lie apart.
     ///
     /// ```rhai
     /// let k1 = reaction("CO2(aq) + H2O <=> HCO3^- + H^+", -6.352);
@@ -539,7 +549,7 @@ mod reaction_functions {
     /// fmt(combine("CO2(aq) + H2O <=> CO3^2- + 2 H^+", [k1, k2]).log_k.value, ".3f")   // "-16.681"
     /// ```
     #[rhai_fn(return_raw)]
-    pub fn combine(target: &str, reactions: Array) -> ScriptResult<Reaction> {
+    pub fn combine(context: NativeCallContext, target: &str, reactions: Array) -> ScriptResult<Reaction> {
         let read = reactions.iter().map(|item| {
             item.clone().try_cast::<Reaction>().ok_or_else(|| {
                 fail(format!(
@@ -550,7 +560,8 @@ mod reaction_functions {
             })
         });
         let reactions = read.collect::<Result<Vec<_>, _>>()?;
-        Ok(combine_reactions(target, &reactions.iter().collect::<Vec<_>>()).map_err(Fail::from)?)
+        let combined = combine_routes(target, &reactions.iter().collect::<Vec<_>>()).map_err(Fail::from)?;
+        Ok(told(&context, combined))
     }
 }
 

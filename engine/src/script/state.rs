@@ -15,7 +15,7 @@ use crate::named::Value;
 use crate::present::{Cell, Column, Table};
 use crate::process::{Axis, Run, RunError, SweepError, run, sweep};
 use crate::quantity::Quantity;
-use crate::solve::Settings;
+use crate::solve::{Certificate, Settings};
 use crate::text::count;
 use crate::water::Sample;
 
@@ -115,12 +115,12 @@ impl From<SweepError> for Fail {
     }
 }
 
-fn settings(host: &Host) -> Settings {
+pub(super) fn settings(host: &Host) -> Settings {
     Settings { stop: Some(host.stop().flag()), ..Settings::default() }
 }
 
 /// One water; an interruption is passed on as such.
-fn one(host: &Host, sample: &Sample, ledger: Option<&Ledger>) -> ScriptResult<State> {
+pub(super) fn one(host: &Host, sample: &Sample, ledger: Option<&Ledger>) -> ScriptResult<State> {
     match equilibrate(sample, ledger, &settings(host)) {
         Ok(state) => Ok(state),
         Err(error) => {
@@ -245,8 +245,7 @@ fn texts(items: &Array, what: &str) -> Result<Vec<String>, Fail> {
     items.iter().map(text).collect()
 }
 
-fn certificate_table(state: &State) -> Result<Table, Fail> {
-    let certificate = state.certificate();
+pub(super) fn certificate_table(certificate: &Certificate) -> Result<Table, Fail> {
     let bound = certificate.ln_c_error.map(|error| error / std::f64::consts::LN_10);
     let smallest =
         if certificate.smallest_amount.is_finite() { Some(certificate.smallest_amount) } else { None };
@@ -468,7 +467,7 @@ mod state_functions {
     /// What was checked of the answer: mass balance, mass action, solids, ionic strength.
     #[rhai_fn(name = "certificate", get = "certificate", pure, return_raw)]
     pub fn certificate(state: &mut State) -> ScriptResult<Table> {
-        Ok(certificate_table(state)?)
+        Ok(certificate_table(state.certificate())?)
     }
     /// What a reader of the numbers should know, as texts.
     #[rhai_fn(name = "warnings", get = "warnings", pure)]

@@ -8,8 +8,8 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
-    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, quantity, reaction, sample,
-    state, table,
+    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, processes, quantity,
+    reaction, sample, state, table, tableau, treatments,
 };
 
 /// Gathers everything a script can name.
@@ -28,7 +28,10 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     reaction::register(vocabulary);
     ledger::register(vocabulary);
     sample::register(vocabulary);
+    treatments::register(vocabulary);
     state::register(vocabulary);
+    tableau::register(vocabulary);
+    processes::register(vocabulary);
     expect::register(vocabulary);
 }
 

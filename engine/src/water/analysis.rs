@@ -19,6 +19,8 @@ pub enum Analysis {
     Measured(Box<Measured>),
     /// What an earlier equilibrium left.
     Dissolved(Dissolved),
+    /// Waters mixed, with the share of each in the water's mass.
+    Mixed(Vec<(super::Sample, f64)>),
     /// A row of a survey that could not be read, with the reason.
     Spoilt(String),
 }
@@ -47,7 +49,7 @@ pub struct Measured {
     pub density: Option<f64>,
     /// The temperature at which volumes were measured.
     pub volume_temperature: Option<Temperature>,
-    /// The water's own temperature in kelvin, where an uncertainty of it was stated.
+    /// The water's own temperature in kelvin, unless it is known exactly.
     pub temperature: Option<Quantity>,
     /// pe, Eh or ORP as measured, and the couples in equilibrium.
     pub redox: Redox,
@@ -172,7 +174,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     Ok(Read { name, setting, measured, defaults })
 }
 
-/// The setting, and the temperature in kelvin where it is uncertain.
+/// The setting, and the temperature in kelvin where it was measured.
 fn read_setting(
     named: &mut Named,
     defaults: &mut Vec<String>,
@@ -181,7 +183,8 @@ fn read_setting(
     let temperature = match named.quantity("temperature", Kind::Temperature)? {
         Some(given) => {
             let kelvin = given.to(&crate::units::Unit::parse("K").expect("a known unit")).ok();
-            uncertain = kelvin.filter(|kelvin| kelvin.sigma().is_some_and(|sigma| sigma > 0.0));
+            // An unstated uncertainty is unknown, not zero; what a sweep chooses is exact.
+            uncertain = kelvin.filter(|kelvin| kelvin.sigma() != Some(0.0));
             reaction::temperature("temperature", Value::Quantity(given))?
         }
         None => {
@@ -383,6 +386,14 @@ fn not_negative(key: &str, amount: &Amount) -> Result<(), KeyFault> {
 
 fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
     let Some(key) = &measured.make_up else { return Ok(()) };
+    if matches!(measured.evidence.ph, Some(Ph::Electroneutral)) {
+        return Err(KeyFault::new(
+            "make_up",
+            format!(
+                "`pH: \"electroneutral\"` and `make_up: \"{key}\"` both make the charges add up: keep one"
+            ),
+        ));
+    }
     if measured.amounts.iter().any(|(_, own, _)| own == key) {
         return Ok(());
     }

@@ -121,6 +121,33 @@ pub fn amount(analyte: &Analyte, given: &Quantity) -> Result<Amount, String> {
     Ok(Amount { moles, per })
 }
 
+/// Reads an amount of a substance, a reagent, in moles of its formula; a bare `/kg` is per kilogram of water.
+///
+/// # Errors
+///
+/// Returns words for a unit of another kind, an `as` of something it does not hold, or an unknown molar mass.
+pub fn substance(substance: &Species, given: &Quantity) -> Result<Amount, String> {
+    let (grams_per_mole, per_formula) = match given.unit().expressed_as() {
+        None => (substance.molar_mass(), 1.0),
+        Some(text) => {
+            let part = Species::parse(text).map_err(|error| error.to_string())?;
+            let element =
+                part.elements_beside_water().next().filter(|_| part.elements_beside_water().count() == 1);
+            let held =
+                element.map_or_else(|| 0.into(), |element| substance.count(element) / part.count(element));
+            if held == 0.into() {
+                return Err(format!(
+                    "`as {text}` counts nothing of {substance}: name an element it holds, or give moles"
+                ));
+            }
+            (part.molar_mass(), 1.0 / rational::to_f64(held))
+        }
+    };
+    let plain = relabelled(given, given.unit().with_expressed_as(None))?;
+    let (moles, per) = in_moles(&plain, grams_per_mole, &substance.to_string(), Kind::Amount)?;
+    Ok(Amount { moles: scaled(moles, per_formula)?, per })
+}
+
 /// A mole of an ion of charge z has |z| equivalents; 1 where moles or grams were given.
 fn equivalents_per_mole(analyte: &Analyte, given: &Quantity) -> Result<f64, String> {
     if given.unit().dimension().exponent(Base::Equivalents) == Exponent::ZERO {

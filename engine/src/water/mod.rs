@@ -17,4 +17,4 @@ pub use analysis::{Analysis, Dissolved, Evidence, Measured, Ph};
 pub use analyte::Analyte;
 pub use sample::{Sample, SampleError};
 pub use survey::{Survey, SurveyError};
-pub use treatment::Treatment;
+pub use treatment::{Adjust, Dose, Titrant, Treatment};

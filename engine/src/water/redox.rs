@@ -55,6 +55,16 @@ pub enum Couples {
     All,
 }
 
+impl Electron {
+    /// Takes another value of what was measured, as a random draw does.
+    pub(super) fn change(&mut self, change: &mut dyn FnMut(&Quantity) -> Quantity) {
+        let (value, slope) = &self.value;
+        let changed = change(value);
+        self.pe += slope * (changed.value() - value.value());
+        self.value = (changed, *slope);
+    }
+}
+
 impl Redox {
     /// Whether pe and couples were both left open: then nothing of it concerns electrons.
     #[must_use]

@@ -3,8 +3,10 @@
 mod interactive;
 mod piped;
 mod run;
+mod solve;
 
 pub use run::read as read_script;
+use run::read_text;
 
 use std::io::IsTerminal;
 use std::process::ExitCode;
@@ -18,6 +20,7 @@ use crate::cli::{Cli, Command};
 pub fn dispatch(cli: Cli) -> ExitCode {
     let done = match &cli.command {
         Some(Command::Run(run)) => run::run(run, &cli.look, &cli.limits),
+        Some(Command::Solve(solve)) => solve::run(solve, &cli.look),
         None if std::io::stdin().is_terminal() => interactive::run(&cli.look, &cli.limits),
         None => piped::run(&cli.look, &cli.limits),
     };
