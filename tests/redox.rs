@@ -2,7 +2,7 @@
 
 use lysocline_engine::chem::{Element, Species};
 use lysocline_engine::equilibrium::{State, equilibrate, predominance};
-use lysocline_engine::ledger::shipped;
+use lysocline_engine::ledger::{ActivityChoice, shipped};
 use lysocline_engine::physics::electrode::volts_per_pe;
 use lysocline_engine::process::sweep::{Axis, sweep};
 use lysocline_engine::quantity::Quantity;
@@ -441,18 +441,19 @@ fn pe_is_held_in_a_water_that_said_nothing_of_it() {
 }
 
 /// Boundaries of the iron diagram at 10 umol/kg, by hand from log K: Fe(III)/Fe(II) at pe 13.02 in acid, ferrihydrite
-/// (log K as the ledger has it) against Fe^2+ at pe = 13.02 + log K - 3 pH - log a(Fe^2+).
+/// (log K as the ledger has it, all ideal) against Fe^2+ at pe = 13.02 + log K - 3 pH - log a(Fe^2+).
 #[test]
 fn fields_of_the_iron_diagram_meet_where_they_should() {
     let iron = Element::from_symbol("Fe").unwrap();
     let water = sample(&[("pH", "7"), ("Fe", "10 umol/kg")]);
+    let ledger = shipped::ledger("freshwater", None).unwrap().with_activity(ActivityChoice::Ideal);
     let field = |pe: f64, ph: f64| {
-        let found = predominance::at(&water, iron, (pe, ph), &["ferrihydrite"], None, &Settings::default());
+        let found =
+            predominance::at(&water, iron, (pe, ph), &["ferrihydrite"], Some(&ledger), &Settings::default());
         found.unwrap_or_else(|error| panic!("pe {pe}, pH {ph}: {error}"))
     };
-    assert_eq!(field(12.8, 0.5).species.key(), "Fe^2+");
-    assert_eq!(field(13.3, 0.5).species.key(), "Fe^3+");
-    let ledger = shipped::ledger("freshwater", None).unwrap();
+    assert_eq!(field(12.95, 0.5).species.key(), "Fe^2+");
+    assert_eq!(field(13.09, 0.5).species.key(), "Fe^3+");
     let solubility = ledger.reaction("ferrihydrite").unwrap();
     assert_eq!(
         solubility.equation().coefficient(&Species::parse("Fe(OH)3(ferrihydrite)").unwrap()),
@@ -471,4 +472,42 @@ fn fields_of_the_iron_diagram_meet_where_they_should() {
             field(-9.0 + f64::from(k), 0.5 + f64::from(ph));
         }
     }
+}
+
+/// A dose brings its electrons along: hydrogen sulfide eight, as much as two oxygen take up.
+#[test]
+fn doses_and_mixtures_carry_their_electrons() {
+    let dose = |water: &Sample, reagent: &str, moles: &str| {
+        let value = lysocline_engine::named::quantity(
+            "amount",
+            lysocline_engine::named::Value::Text(moles.into()),
+            lysocline_engine::units::Kind::Amount,
+        )
+        .unwrap();
+        let amount = lysocline_engine::water::concentration::amount(
+            &lysocline_engine::water::Analyte::parse("S(-II)").unwrap(),
+            &value,
+        )
+        .unwrap();
+        treated(water, Treatment::Dose(lysocline_engine::water::Dose { reagent: reagent.into(), amount }))
+    };
+    let water = pond(&[
+        ("couples", "all"),
+        ("SO4^2-", "1 mmol/kg"),
+        ("O2(aq)", "0.2 mmol/kg"),
+        ("Fe(III)", "1 umol/kg"),
+    ]);
+    let electrons = |state: &State| {
+        let total = |what: &str| get(state, &format!("total({what})"));
+        total("Fe(II)") + 8.0 * (total("S(-II)") + total("C(-IV)")) + 2.0 * total("H2(aq)")
+            - 4.0 * total("O2(aq)")
+    };
+    near(electrons(&state(&water)), -8e-4, 1e-16);
+    let sulfide = dose(&water, "H2S", "0.15 mmol/kg");
+    near(electrons(&state(&sulfide)), -8e-4 + 12e-4, 1e-16);
+    assert!(get(&state(&water), "pe") > 13.0 && get(&state(&sulfide), "pe") < 0.0);
+    // Half of the oxic water with half of the reduced one.
+    let mixed = Sample::mixed(&[(water.clone(), 0.5), (sulfide.clone(), 0.5)]).unwrap();
+    near(electrons(&state(&mixed)), -8e-4 + 6e-4, 1e-15);
+    assert!(get(&state(&mixed), "pe") > 12.0);
 }
