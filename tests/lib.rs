@@ -7,6 +7,8 @@ mod ledgers;
 #[cfg(test)]
 mod oxidation_states;
 #[cfg(test)]
+mod processes;
+#[cfg(test)]
 mod properties;
 #[cfg(test)]
 mod published;
@@ -20,6 +22,8 @@ mod refusals;
 mod reproducible;
 #[cfg(test)]
 mod round_trips;
+#[cfg(test)]
+mod seawater;
 #[cfg(test)]
 mod sensitivities;
 #[cfg(test)]

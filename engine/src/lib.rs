@@ -11,6 +11,7 @@ pub mod present;
 pub mod process;
 pub mod quantity;
 pub mod script;
+pub mod seawater;
 pub mod solve;
 pub mod tableau;
 pub mod text;

@@ -1,6 +1,7 @@
 //! Published equilibrium constants and the ledgers made of them, embedded as text.
 //!
-//! One TOML file a publication in `constants/`, one list of entries a ledger in `ledgers/`; the engine reads them.
+//! One TOML file a publication in `constants/`, the parameters of activity models in `activity/`, one list of entries a ledger
+//! in `ledgers/`; the engine reads them.
 //! This crate holds data only: it parses nothing and computes nothing. The format and the known contradictions are
 //! described in its README.
 
@@ -11,27 +12,59 @@ pub const CONSTANTS: &[(&str, &str)] = &[
     ("busenberg1984", include_str!("../constants/busenberg1984.toml")),
     ("busenberg1986", include_str!("../constants/busenberg1986.toml")),
     ("cox1989", include_str!("../constants/cox1989.toml")),
+    ("dickson-riley1979", include_str!("../constants/dickson-riley1979.toml")),
+    ("dickson1990", include_str!("../constants/dickson1990.toml")),
     ("felmy1990", include_str!("../constants/felmy1990.toml")),
     ("grenthe1992", include_str!("../constants/grenthe1992.toml")),
+    ("lee2010", include_str!("../constants/lee2010.toml")),
+    ("lueker2000", include_str!("../constants/lueker2000.toml")),
     ("manov1944", include_str!("../constants/manov1944.toml")),
+    ("martin-mayor2025", include_str!("../constants/martin-mayor2025.toml")),
+    ("mehrbach-refit1987", include_str!("../constants/mehrbach-refit1987.toml")),
+    ("millero-seawater1995", include_str!("../constants/millero-seawater1995.toml")),
+    ("millero-total2010", include_str!("../constants/millero-total2010.toml")),
+    ("millero1988", include_str!("../constants/millero1988.toml")),
+    ("millero1995", include_str!("../constants/millero1995.toml")),
+    ("millero2006", include_str!("../constants/millero2006.toml")),
+    ("millero2008", include_str!("../constants/millero2008.toml")),
+    ("millero2010", include_str!("../constants/millero2010.toml")),
+    ("morris-riley1966", include_str!("../constants/morris-riley1966.toml")),
+    ("mucci1983", include_str!("../constants/mucci1983.toml")),
     ("nordstrom1990", include_str!("../constants/nordstrom1990.toml")),
     ("olofsson1975", include_str!("../constants/olofsson1975.toml")),
+    ("perez-fraga1987", include_str!("../constants/perez-fraga1987.toml")),
     ("plummer1982", include_str!("../constants/plummer1982.toml")),
+    ("riley-tongudai1967", include_str!("../constants/riley-tongudai1967.toml")),
+    ("riley1965", include_str!("../constants/riley1965.toml")),
     ("rimstidt1980", include_str!("../constants/rimstidt1980.toml")),
     ("robie1995", include_str!("../constants/robie1995.toml")),
+    ("roy1993", include_str!("../constants/roy1993.toml")),
     ("skoog2004", include_str!("../constants/skoog2004.toml")),
+    ("uppstrom1974", include_str!("../constants/uppstrom1974.toml")),
     ("wagman1982", include_str!("../constants/wagman1982.toml")),
+    ("waters-total2014", include_str!("../constants/waters-total2014.toml")),
+    ("waters2014", include_str!("../constants/waters2014.toml")),
+    ("weiss1974", include_str!("../constants/weiss1974.toml")),
+    ("yao-millero1995", include_str!("../constants/yao-millero1995.toml")),
+];
+
+/// `(file name without extension, TOML text)` of every file in `activity/`, in alphabetical order.
+pub const ACTIVITY: &[(&str, &str)] = &[
+    ("grenthe1992", include_str!("../activity/grenthe1992.toml")),
+    ("kielland1937", include_str!("../activity/kielland1937.toml")),
+    ("truesdell1974", include_str!("../activity/truesdell1974.toml")),
 ];
 
 /// `(file name without extension, TOML text)` of every file in `ledgers/`, in alphabetical order.
 pub const LEDGERS: &[(&str, &str)] = &[
     ("formation", include_str!("../ledgers/formation.toml")),
     ("freshwater", include_str!("../ledgers/freshwater.toml")),
+    ("seawater", include_str!("../ledgers/seawater.toml")),
 ];
 
 #[cfg(test)]
 mod tests {
-    use super::{CONSTANTS, LEDGERS};
+    use super::{ACTIVITY, CONSTANTS, LEDGERS};
     use std::path::Path;
 
     /// Names of the TOML files in a folder of this crate, in alphabetical order.
@@ -52,13 +85,14 @@ mod tests {
         let listed =
             |files: &[(&str, &str)]| files.iter().map(|(name, _)| (*name).to_owned()).collect::<Vec<_>>();
         assert_eq!(listed(CONSTANTS), toml_files("constants"));
+        assert_eq!(listed(ACTIVITY), toml_files("activity"));
         assert_eq!(listed(LEDGERS), toml_files("ledgers"));
     }
 
     #[test]
     fn every_file_of_constants_names_itself_and_is_in_the_bibliography() {
         let bibliography = include_str!("../references.bib");
-        for (name, text) in CONSTANTS {
+        for (name, text) in CONSTANTS.iter().chain(ACTIVITY) {
             assert!(text.contains(&format!("key = \"{name}\"")), "`{name}` carries another key");
             assert!(bibliography.contains(&format!("{{{name},")), "`{name}` is not in references.bib");
         }

@@ -2,14 +2,14 @@
 
 use std::collections::BTreeMap;
 
-use lysocline_engine::activity::{Davies, Model as ActivityModel};
+use lysocline_engine::activity::Composition;
 use lysocline_engine::chem::{Equation, GasStandard, LogK, Rational, Reaction, Species, rational};
-use lysocline_engine::equilibrium::{State, equilibrate};
+use lysocline_engine::equilibrium::{State, activity as equations, equilibrate};
 use lysocline_engine::ledger::{ActivityChoice, Ledger, file, shipped};
 use lysocline_engine::named::{Named, Value};
 use lysocline_engine::physics::{constants, water};
 use lysocline_engine::solve::Settings;
-use lysocline_engine::units::{Temperature, Unit};
+use lysocline_engine::units::{Pressure, Temperature, Unit};
 use lysocline_engine::water::{Sample, Treatment};
 
 use super::check::{Case, Check, Entry, File, Kind};
@@ -49,12 +49,21 @@ fn answer(file: &File, check: &Check, given: &mut Given) -> Result<Answer, Strin
             only("log_k", conditional_log_k(check, given.take("ionic_strength [mol/kg]")?)?)
         }
         Kind::ActivityCoefficient => {
-            let (model, ionic_strength) = (davies(check)?, given.take("ionic_strength [mol/kg]")?);
+            let (choice, ionic_strength) = (chosen(check)?, given.take("ionic_strength [mol/kg]")?);
             Ok(Box::new(move |column| {
-                let charge = column.strip_prefix("gamma(").and_then(|rest| rest.strip_suffix(')'));
-                let charge: f64 =
-                    charge.and_then(|charge| charge.parse().ok()).ok_or_else(|| unknown(column))?;
-                Ok(model.ln_gamma(charge, ionic_strength).exp())
+                let ion = column.strip_prefix("gamma(").and_then(|rest| rest.strip_suffix(')'));
+                let ion = ion.ok_or_else(|| unknown(column))?;
+                // An ion, or a charge by itself.
+                let (ions, charge) = match ion.parse() {
+                    Ok(charge) => (vec![], charge),
+                    Err(_) => {
+                        let ion = Species::parse(ion).map_err(text)?;
+                        (vec![ion.clone()], f64::from(ion.charge()))
+                    }
+                };
+                let ions: Vec<&Species> = ions.iter().collect();
+                let model = equations::model(&choice, &ions, Temperature::REFERENCE, Pressure::ATMOSPHERE);
+                Ok(model.ln_gamma(0, charge, ionic_strength).exp())
             }))
         }
         Kind::MeanActivityCoefficient => {
@@ -66,6 +75,23 @@ fn answer(file: &File, check: &Check, given: &mut Given) -> Result<Answer, Strin
             Ok(Box::new(move |column| pure_water(t, column)))
         }
         Kind::Electron => electron(given),
+        Kind::MarineConstant => {
+            let (t, salinity) = (given.temperature()?, given.take("salinity")?);
+            let there = shipped_constant(check)?.at_salinity(salinity).map_err(text)?;
+            let log_k = log_k(&there, t)?;
+            Ok(Box::new(move |column| match column {
+                "log_k" => Ok(log_k),
+                "pk" => Ok(-log_k),
+                "ln_k" => Ok(log_k * constants::LN_10),
+                "k" => Ok(10_f64.powf(log_k)),
+                other => Err(unknown(other)),
+            }))
+        }
+        Kind::PressureFactor => {
+            let (t, p) = (given.temperature()?, given.take("hydrostatic pressure [bar]")?);
+            let constant = shipped_constant(check)?.constant().map_err(text)?.clone();
+            only("factor", constant.volume.ok_or("no volume of reaction")?.ln_factor(p, t).exp())
+        }
         Kind::State => {
             let state = state(file, check, given)?;
             Ok(Box::new(move |column| observe(&state, column)))
@@ -117,10 +143,23 @@ fn ledger(file: &File, check: &Check) -> Result<Ledger, String> {
         ledger = without(ledger, &dropped)?;
     }
     ledger = without(ledger, check.model.without.as_deref().unwrap_or_default())?;
+    for [name, author] in &check.choose {
+        ledger = ledger.choose(name, author).map_err(text)?;
+    }
     Ok(match activity(check)? {
         Some(activity) => ledger.with_activity(activity),
         None => ledger,
     })
+}
+
+/// A constant of a shipped file, as `file/name`.
+fn shipped_constant(check: &Check) -> Result<Reaction, String> {
+    let named = check.constant.as_deref().ok_or("no `constant` is named")?;
+    let (key, name) = named.split_once('/').ok_or("a constant is named as `file/name`")?;
+    let files = shipped::constant_files().map_err(|faults| faults.join("; "))?;
+    let file = files.get(key).ok_or_else(|| format!("no file `{key}` is shipped"))?;
+    let found = file.constants.iter().find(|(own, _)| own == name);
+    found.map(|(_, reaction)| reaction.clone()).ok_or_else(|| format!("`{key}` has no constant `{name}`"))
 }
 
 fn without(ledger: Ledger, names: &[String]) -> Result<Ledger, String> {
@@ -168,17 +207,23 @@ fn activity(check: &Check) -> Result<Option<ActivityChoice>, String> {
             };
             Ok(Some(ActivityChoice::Davies { a, b: model.b.ok_or("no `b`")?, water: model.water_activity }))
         }
-        Some(other) => Err(format!("no activity model `{other}`")),
+        Some(name) => {
+            let a = match &model.a {
+                Some(Entry::Number(a)) => Some(*a),
+                None => None,
+                Some(Entry::Text(_)) => {
+                    return Err("`A` is a number, or left to the properties of water".into());
+                }
+            };
+            let options = numbers([("A", a), ("water_activity", model.water_activity)]);
+            ActivityChoice::read(name, options).map(Some).map_err(text)
+        }
     }
 }
 
-fn davies(check: &Check) -> Result<ActivityModel, String> {
-    match activity(check)? {
-        Some(ActivityChoice::Davies { a: Some(a), b, .. }) => {
-            Ok(ActivityModel::davies(Davies::new(a).with_b(b)))
-        }
-        _ => Err("a Davies model with its `A` is needed".into()),
-    }
+/// The activity model of a check that names one.
+fn chosen(check: &Check) -> Result<ActivityChoice, String> {
+    activity(check)?.ok_or_else(|| "no `activity_model`".into())
 }
 
 fn reaction_of(check: &Check) -> Result<&str, String> {
@@ -275,8 +320,8 @@ fn numbers<const N: usize>(options: [(&str, Option<f64>); N]) -> Named {
     Named::new(entries.collect())
 }
 
-/// Mean activity coefficient of a salt: K of its dissolution in molalities is K of activities over the product of its
-/// coefficients.
+/// Mean activity coefficient of a salt: from the parameters of its ions, or from `delta_epsilon`: K of its dissolution in
+/// molalities is K of activities over the product of its coefficients.
 fn mean_activity_coefficient(check: &Check, molality: f64) -> Result<f64, String> {
     let dissolution = Equation::parse(reaction_of(check)?).map_err(text)?;
     let ions = || dissolution.terms().iter().filter(|(species, _)| species.is_solute());
@@ -284,6 +329,16 @@ fn mean_activity_coefficient(check: &Check, molality: f64) -> Result<f64, String
         ions().map(|(species, n)| rational::to_f64(*n) * of(species)).sum()
     };
     let ionic_strength = molality * sum(&|ion| f64::from(ion.charge()).powi(2)) / 2.0;
+    if check.model.delta_epsilon.is_none() {
+        let (ions, n): (Vec<&Species>, Vec<f64>) =
+            ions().map(|(species, n)| (species, rational::to_f64(*n))).unzip();
+        let model = equations::model(&chosen(check)?, &ions, Temperature::REFERENCE, Pressure::ATMOSPHERE);
+        let charges: Vec<f64> = ions.iter().map(|ion| f64::from(ion.charge())).collect();
+        let molalities: Vec<f64> = n.iter().map(|n| n * molality).collect();
+        let at = Composition { charges: &charges, molalities: &molalities, ionic_strength };
+        let sum_ln: f64 = model.ln_gammas(at).iter().zip(&n).map(|(ln_gamma, n)| n * ln_gamma).sum();
+        return Ok((sum_ln / n.iter().sum::<f64>()).exp());
+    }
     let log_k = converted(check, 0.0, ionic_strength)?.log_k().map_err(text)?.value();
     Ok(10_f64.powf(-log_k / sum(&|_| 1.0)))
 }
@@ -330,7 +385,9 @@ fn state(file: &File, check: &Check, given: &mut Given) -> Result<State, String>
     let ledger = ledger(file, check)?;
     let equilibrium =
         |sample: &Sample| equilibrate(sample, Some(&ledger), &Settings::default()).map_err(text);
-    let mut sample = Sample::read(entries(check, given)?).map_err(text)?;
+    let entries = entries(check, given)?;
+    let read = if entries.contains_key("salinity") { Sample::read_seawater } else { Sample::read };
+    let mut sample = read(entries).map_err(text)?;
     for step in &check.steps {
         let words: Vec<&str> = step.iter().map(String::as_str).collect();
         sample = match words.as_slice() {

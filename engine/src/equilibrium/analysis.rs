@@ -21,17 +21,18 @@ use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
 use super::redox::{self, Pe, Plan};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
-use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{Couple, Formations, Ledger};
+use crate::chem::{Element, PhScale, Rational, Species, rational};
+use crate::ledger::{Couple, Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
 use crate::solve::{Converged, Problem, Reservoir, Row, Settings, Total, Warm, solve};
+use crate::units::{KgOf, Pressure};
 use crate::water::analysis::{Dissolved, Evidence, Measured, Ph};
 use crate::water::analyte::{Analyte, oxidation_state, to_roman};
 use crate::water::concentration::{Amount, Solution};
-use crate::water::{Sample, Treatment};
+use crate::water::{Sample, Treatment, marine};
 
 /// Oxidation states an element given whole is taken in where a ledger knows several; common in aerated water.
 const COMMON_STATES: [(&str, i64); 5] = [("Fe", 3), ("S", 6), ("N", 5), ("C", 4), ("Mn", 2)];
@@ -131,14 +132,24 @@ pub fn analyse(
     let mut notes = sample.notes().to_vec();
     let solution = solution(measured);
     let mut common = Vec::new();
-    let given = amounts(measured, ledger, &solution, &mut common)?;
+    let mut given = amounts(measured, ledger, &solution, &mut common)?;
+    given.extend(conservative(ledger, &given)?);
     let mut present = present_components(sample, measured, ledger, &given)?;
     let plan = plan(sample, measured, ledger, &given, &present)?;
     if plan.pe.is_none() {
         notes.extend(common);
     }
     present.extend(plan.components(ledger.formations()));
-    let bare = System::new(ledger, &present, sample.setting().temperature)?;
+    let setting = sample.setting();
+    let bare = match measured.ph_temperature {
+        None => System::new(ledger, &present, setting.temperature, setting.pressure)?,
+        // Where pH was measured elsewhere, it was in a laboratory at the surface.
+        Some(temperature) => {
+            let surface = ledger.sea().map(|sea| Sea { pressure: Pressure::ATMOSPHERE, ..sea });
+            let ledger = surface.map_or_else(|| Ok(ledger.clone()), |surface| ledger.in_sea(surface))?;
+            System::new(&ledger, &present, temperature, Pressure::ATMOSPHERE)?
+        }
+    };
     let mut totals = vec![0.0; bare.n_components()];
     for carried in &given {
         totals[position(&bare, carried.component)] += carried.total();
@@ -292,7 +303,9 @@ pub fn restore(
         present.extend(plan.components(formations));
         plan
     };
-    let system = System::new(ledger, &present, sample.setting().temperature)?.with_couples(couples.clone());
+    let setting = sample.setting();
+    let system = System::new(ledger, &present, setting.temperature, setting.pressure)?;
+    let system = system.with_couples(couples.clone());
     let mut totals = vec![0.0; system.n_components()];
     let mut measured = Vec::new();
     for (formed, (_, moles)) in formed.into_iter().zip(&dissolved.totals) {
@@ -317,6 +330,9 @@ fn position(system: &System, component: usize) -> usize {
 
 /// Density and dissolved mass of the sample as its volumes were measured.
 pub(super) fn solution(measured: &Measured) -> Solution {
+    if let Some(sea) = measured.sea {
+        return marine::solution(measured, sea.salinity);
+    }
     let water_density = water_density(measured);
     let grams = measured.amounts.iter().map(|(analyte, _, amount)| {
         analyte.molar_mass().unwrap_or(0.0) * amount.moles.value() * amount.per.to_litre(water_density)
@@ -326,7 +342,7 @@ pub(super) fn solution(measured: &Measured) -> Solution {
         .map_or(0.0, |amount| CARBONATE_MASS * amount.moles.value() * amount.per.to_litre(water_density));
     let dissolved = (grams.sum::<f64>() + carbonate).max(0.0) / 1000.0;
     match measured.density {
-        Some(density) => Solution { density, dissolved },
+        Some(density) => Solution { density, dissolved, basis: KgOf::Water },
         None => Solution::with_salts(water_density, dissolved),
     }
 }
@@ -368,10 +384,29 @@ fn amounts(
         let carrier = carrier(formations, analyte, key, notes)?;
         let atoms = formations.components[carrier].count(analyte.element());
         let ratio = rational::to_f64(analyte.atoms() / atoms);
-        let factor = amount.per.to_water(solution) * ratio;
+        let factor = amount.per.to_basis(solution) * ratio;
         Ok(Carried { component: carrier, moles: amount.moles.clone(), factor })
     };
     measured.amounts.iter().map(convert).collect()
+}
+
+/// What goes with the salinity of a seawater, less what was measured of it.
+fn conservative(ledger: &Ledger, given: &[Carried]) -> Result<Vec<Carried>, EquilibriumError> {
+    let Some(sea) = ledger.sea() else { return Ok(vec![]) };
+    let formations = ledger.formations();
+    let mut carried = Vec::new();
+    for constituent in ledger.composition() {
+        let key = &constituent.name;
+        let analyte = Analyte::parse(&constituent.of)
+            .map_err(|error| EquilibriumError::Analyte { key: key.clone(), why: error.to_string() })?;
+        let component = carrier(formations, &analyte, key, &mut vec![])?;
+        let atoms = formations.components[component].count(analyte.element());
+        let factor = rational::to_f64(analyte.atoms() / atoms);
+        if given.iter().all(|own| own.component != component) && sea.salinity > 0.0 {
+            carried.push(Carried { component, moles: constituent.amount(sea.salinity), factor });
+        }
+    }
+    Ok(carried)
 }
 
 /// The component that carries an analyte in its oxidation state.
@@ -521,7 +556,7 @@ impl<'a> Analysis<'a> {
     ) -> Self {
         let evidence = &measured.evidence;
         let level = ZeroLevel::at(system.ledger(), ALKALINITY_PH);
-        let moles = |amount: &Amount| amount.moles.value() * amount.per.to_water(solution);
+        let moles = |amount: &Amount| amount.moles.value() * amount.per.to_basis(solution);
         let carbon = inorganic_carbon(system.ledger().formations());
         let electron = system.electron();
         Self {
@@ -543,7 +578,7 @@ impl<'a> Analysis<'a> {
             alkalinity: evidence.alkalinity.as_ref().map(moles),
             dic: evidence.dic.as_ref().map(moles),
             ph: match &evidence.ph {
-                Some(Ph::Measured(ph)) => Some(ph.value()),
+                Some(Ph::Measured(ph)) => Some(ph.value() - system.ph_shift()),
                 _ => None,
             },
             co2: evidence.co2.as_ref().map(|fugacity| fugacity.value()),
@@ -818,7 +853,7 @@ impl<'a> Analysis<'a> {
             None => change,
             Some(k) => self.neutralised(change, &self.supplied(k)),
         };
-        let factor = |amount: &Amount| amount.per.to_water(&self.solution);
+        let factor = |amount: &Amount| amount.per.to_basis(&self.solution);
 
         let mut conditions =
             Conditions { temperature: measured.temperature.clone(), ..Conditions::default() };
@@ -847,7 +882,7 @@ impl<'a> Analysis<'a> {
                     Some(carbon) if uses("alkalinity") => self.supplied(carbon),
                     _ => unit(self.proton),
                 };
-                let reservoir = fixed_ph(self.proton, ph.value());
+                let reservoir = fixed_ph(self.proton, ph.value() - self.system.ph_shift());
                 let value = Some((ph.clone(), -LN_10));
                 conditions.held.push(Held { value, ..Held::chosen(reservoir, balanced(supply)) });
             }
@@ -971,7 +1006,10 @@ impl<'a> Analysis<'a> {
             "pH" => {
                 let Some(Ph::Measured(ph)) = &self.evidence.ph else { return None };
                 let slope = (Variable::LnActivity(self.proton), -1.0 / LN_10);
-                (ph.clone(), 1.0, -converged.ln_a[self.proton] / LN_10, vec![slope])
+                let computed = self.system.ph_shift() - converged.ln_a[self.proton] / LN_10;
+                let scale = self.system.ledger().sea().map_or(PhScale::Free, |sea| sea.ph_scale);
+                let by_kelvin = (Variable::Temperature, self.system.ph_shift_per_kelvin(scale));
+                (ph.clone(), 1.0, computed, vec![slope, by_kelvin])
             }
             "alkalinity" | "DIC" => {
                 let carbon = self.carbon;
@@ -989,7 +1027,7 @@ impl<'a> Analysis<'a> {
                 };
                 let slopes: Slopes = rows.map(slope).filter(|(_, slope)| *slope != 0.0).collect();
                 let computed = slopes.iter().map(|(_, slope)| slope).sum();
-                (amount.moles.clone(), amount.per.to_water(&self.solution), computed, slopes)
+                (amount.moles.clone(), amount.per.to_basis(&self.solution), computed, slopes)
             }
             _ => {
                 let reservoir = self.fixed_co2(1.0).ok()?;

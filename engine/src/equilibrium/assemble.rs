@@ -2,22 +2,25 @@
 
 use std::collections::BTreeSet;
 
-use crate::activity::{Davies, Model};
-use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Couple, Formation, Formations, Ledger, LedgerError};
+use crate::activity::Model;
+use crate::chem::{Element, PhScale, Rational, Species, rational};
+use crate::ledger::{Couple, Formation, Formations, Ledger, LedgerError, Sea};
 use crate::physics::constants::LN_10;
-use crate::physics::water;
+use crate::seawater::constants::{Place, log_k_free};
+use crate::seawater::scales::Scales;
 use crate::solve::{Problem, Reservoir, Row, Total};
-use crate::units::Temperature;
+use crate::units::{Pressure, Temperature};
 use crate::water::analyte::oxidation_state;
 
+use super::activity;
 use super::error::EquilibriumError;
 
-/// The species, gases and solids that can occur with the components present, at one temperature.
+/// The species, gases and solids that can occur with the components present, at one temperature and pressure.
 #[derive(Debug, Clone)]
 pub struct System {
     ledger: Ledger,
     temperature: Temperature,
+    pressure: Pressure,
     /// Positions in the ledger's components, water left out: the solver's component k is `components[k]`.
     components: Vec<usize>,
     /// Positions in [`Formations::species`], with their rows.
@@ -49,6 +52,7 @@ impl System {
         ledger: &Ledger,
         present: &BTreeSet<usize>,
         temperature: Temperature,
+        pressure: Pressure,
     ) -> Result<Self, EquilibriumError> {
         let formations = ledger.formations();
         if let Some((name, _)) = formations.too_large.first().and_then(|k| ledger.reactions().nth(*k)) {
@@ -68,10 +72,12 @@ impl System {
             .partition(|(i, _)| formations.species[*i].species.is_solute());
         let phases =
             others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
-        let model = model(ledger.activity(), temperature);
+        let dissolved: Vec<&Species> =
+            solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
+        let model = activity::model(ledger.activity(), &dissolved, temperature, pressure);
         let couples = vec![];
         let ledger = ledger.clone();
-        Ok(Self { ledger, temperature, components, solutes, phases, couples, model, log_k, doubts })
+        Ok(Self { ledger, temperature, pressure, components, solutes, phases, couples, model, log_k, doubts })
     }
 
     /// The same with these redox couples in equilibrium, whose components have to be present.
@@ -87,8 +93,10 @@ impl System {
     pub fn at(&self, temperature: Temperature) -> Self {
         let formations = self.ledger.formations();
         let (log_k, doubts) = constants(&self.ledger, temperature);
-        let mut system =
-            Self { temperature, doubts, model: model(self.ledger.activity(), temperature), ..self.clone() };
+        let dissolved: Vec<&Species> =
+            self.solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
+        let model = activity::model(self.ledger.activity(), &dissolved, temperature, self.pressure);
+        let mut system = Self { temperature, doubts, model, ..self.clone() };
         for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
             row.ln_k = ln_k(&formations.species[*index], &log_k);
         }
@@ -109,6 +117,12 @@ impl System {
     #[must_use]
     pub fn temperature(&self) -> Temperature {
         self.temperature
+    }
+
+    /// The pressure its activity model holds for; constants are those of 1 atm.
+    #[must_use]
+    pub fn pressure(&self) -> Pressure {
+        self.pressure
     }
 
     /// The activity model.
@@ -139,6 +153,33 @@ impl System {
     #[must_use]
     pub fn component(&self, species: &Species) -> Option<usize> {
         self.components.iter().position(|j| self.formations().components[*j] == *species)
+    }
+
+    /// What is added to -log10 a(H^+) to have pH on the scale of the water: 0 outside seawater, where the hydrogen ion of
+    /// the solver is the free one.
+    #[must_use]
+    pub fn ph_shift(&self) -> f64 {
+        self.scales().map_or(0.0, |(sea, scales)| scales.shift_from_free(sea.ph_scale))
+    }
+
+    /// Change of pH on a scale less pH on the free scale, per kelvin; 0 outside seawater.
+    #[must_use]
+    pub fn ph_shift_per_kelvin(&self, scale: PhScale) -> f64 {
+        const STEP: f64 = 0.01;
+        let Some(sea) = self.ledger.sea() else { return 0.0 };
+        let at = |kelvin: f64| {
+            let place = Place::of(sea, Temperature::from_kelvin(kelvin).unwrap_or(self.temperature));
+            Scales::at(&self.ledger, &place).shift_from_free(scale)
+        };
+        let kelvin = self.temperature.kelvin();
+        (at(kelvin + STEP) - at(kelvin - STEP)) / (2.0 * STEP)
+    }
+
+    /// The sea of a marine system with its scales of pH.
+    #[must_use]
+    pub fn scales(&self) -> Option<(Sea, Scales)> {
+        let sea = self.ledger.sea()?;
+        Some((sea, Scales::at(&self.ledger, &Place::of(sea, self.temperature))))
     }
 
     /// Position of the hydrogen ion, which is always present.
@@ -233,6 +274,12 @@ impl System {
 
 /// log10 K of every reaction at a temperature, and what is doubtful about it.
 fn constants(ledger: &Ledger, temperature: Temperature) -> (Vec<f64>, Vec<Option<Doubt>>) {
+    if let Some(sea) = ledger.sea() {
+        // A state in seawater warns of its own of constants outside their range: see `seawater::constants`.
+        let log_k = log_k_free(ledger, sea, temperature);
+        let certain = vec![None; log_k.len()];
+        return (log_k, certain);
+    }
     let read = ledger.reactions().map(|(_, reaction)| {
         let Ok(constant) = reaction.constant() else { return (0.0, None) };
         let (log_k, away) = constant.log_k.nearest_to(temperature);
@@ -274,23 +321,6 @@ fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[
 
 fn ln_k(formed: &Formation, log_k: &[f64]) -> f64 {
     formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum::<f64>() * LN_10
-}
-
-fn model(choice: ActivityChoice, temperature: Temperature) -> Model {
-    match choice {
-        ActivityChoice::Ideal => Model::IDEAL,
-        ActivityChoice::Davies { a, b, water: stated } => {
-            let a = a.unwrap_or_else(|| debye_huckel_a(temperature));
-            let model = Model::davies(Davies::new(a).with_b(b));
-            stated.map_or(model, |activity| model.with_ln_water_activity(activity.ln()))
-        }
-    }
-}
-
-fn debye_huckel_a(temperature: Temperature) -> f64 {
-    let t = temperature.kelvin();
-    let density = water::density(t);
-    water::debye_huckel_a(t, density, water::relative_permittivity(t, density))
 }
 
 /// The components that carry an element, water and the hydrogen ion left out: those that hold no other element where there

@@ -5,6 +5,7 @@
 //! right to four digits only.
 
 use super::uncertainty::Conditions;
+use crate::units::KgOf;
 use crate::water::analysis::Measured;
 use crate::water::concentration::{Amount, Per, SALT_TERM, Solution};
 
@@ -26,6 +27,10 @@ pub fn account(
     solution: &Solution,
     water_density: f64,
 ) {
+    // In seawater the water content goes with salinity, whatever else was measured.
+    if solution.basis == KgOf::Solution {
+        return;
+    }
     let n_totals = conditions.measured.first().map_or(0, |(_, change)| change.len());
     let slope = |per| per_dissolved(per, solution, measured.density.is_some());
     let mut by_mass = vec![0.0; n_totals];

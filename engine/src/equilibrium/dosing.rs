@@ -12,25 +12,27 @@ use super::analysis::{self, Analysed};
 use super::assemble::System;
 use super::error::EquilibriumError;
 use super::treatment::reagent;
-use crate::chem::{Rational, rational};
-use crate::physics::water;
+use crate::chem::{Rational, Species, rational};
+use crate::physics::{seawater, water};
 use crate::quantity::Quantity;
-use crate::units::Unit;
+use crate::units::{KgOf, Unit};
 use crate::water::concentration::{Amount, SALT_TERM, Solution};
-use crate::water::{Dose, Sample, Titrant, Treatment};
+use crate::water::{Analysis, Dose, Sample, Titrant, Treatment};
 
 /// What was done to the totals.
 #[derive(Debug, Clone)]
 pub struct Dosed {
     /// Reagents with moles per kilogram of water that dissolved; negative where they were taken away.
     pub amounts: Vec<(String, Quantity)>,
+    /// Solids that were put beside the water, mol/kg(water).
+    pub solids: Vec<(Species, Quantity)>,
     /// How many times as much a kilogram of water holds of what was there at first.
     pub concentrated: f64,
 }
 
 impl Default for Dosed {
     fn default() -> Self {
-        Self { amounts: vec![], concentrated: 1.0 }
+        Self { amounts: vec![], solids: vec![], concentrated: 1.0 }
     }
 }
 
@@ -66,6 +68,10 @@ impl<'a> Course<'a> {
             dosed: Dosed::default(),
             untouched: true,
         };
+        if let Analysis::Dissolved(dissolved) = sample.analysis() {
+            let solids = dissolved.totals.iter().filter(|(species, _)| species.is_solid());
+            course.dosed.solids.extend(solids.cloned());
+        }
         for treatment in sample.treatments() {
             course.meet(treatment)?;
         }
@@ -88,9 +94,15 @@ impl<'a> Course<'a> {
                 let formed =
                     ledger.formations().formation(ledger.find_phase(solid)?).expect("phases are formed");
                 let change = self.change(&formed.stoichiometry);
-                let factor = amount.per.to_water(&self.litre());
+                let factor = amount.per.to_basis(&self.litre());
                 self.add(&amount.moles, &change, factor);
+                self.dosed.solids.push((formed.species.clone(), per_water(&amount.moles, factor)?));
                 Ok(())
+            }
+            Treatment::Concentrate(_) if self.system.ledger().sea().is_some() => {
+                let why = "`concentrate` would change the salinity that the constants of seawater hold for: write the water as \
+                           `seawater(#{ salinity: … })` of its new salinity";
+                Err(EquilibriumError::Unreachable(why.into()))
             }
             Treatment::Concentrate(factor) => {
                 self.concentrate(*factor);
@@ -110,7 +122,7 @@ impl<'a> Course<'a> {
         change: &[f64],
         sign: f64,
     ) -> Result<(), EquilibriumError> {
-        let factor = sign * amount.per.to_water(&self.litre());
+        let factor = sign * amount.per.to_basis(&self.litre());
         self.add(&amount.moles, change, factor);
         self.dosed.amounts.push((name.to_string(), per_water(&amount.moles, factor)?));
         Ok(())
@@ -128,7 +140,8 @@ impl<'a> Course<'a> {
         let scale = |numbers: &mut Vec<f64>| numbers.iter_mut().for_each(|number| *number *= factor);
         scale(&mut self.totals);
         self.measured.iter_mut().for_each(|(_, change)| scale(change));
-        for (_, amount) in &mut self.dosed.amounts {
+        let solids = self.dosed.solids.iter_mut().map(|(_, amount)| amount);
+        for amount in self.dosed.amounts.iter_mut().map(|(_, amount)| amount).chain(solids) {
             *amount = per_water(amount, factor).unwrap_or_else(|_| amount.clone());
         }
         self.dosed.concentrated *= factor;
@@ -141,8 +154,13 @@ impl<'a> Course<'a> {
         sample_volume: &Quantity,
         solution: &Titrant,
     ) -> Result<(), EquilibriumError> {
-        let water = self.litre().water_per_litre();
-        let added_water = Solution::with_salts(self.pure_density(), solution.dissolved()).water_per_litre();
+        // Seawater is counted by the kilogram of solution, and so is what comes to it.
+        let water = self.litre().basis_per_litre();
+        let added = Solution::with_salts(self.pure_density(), solution.dissolved());
+        let added_water = match self.litre().basis {
+            KgOf::Water => added.water_per_litre(),
+            KgOf::Solution => added.density,
+        };
         let ratio = volume / sample_volume.value();
         let whole = water + ratio * added_water;
         self.concentrate(water / whole);
@@ -175,7 +193,7 @@ impl<'a> Course<'a> {
 
     /// Refuses to take away more than there is; hydrogen has no least.
     fn check_there(&self, dose: &Dose, change: &[f64]) -> Result<(), EquilibriumError> {
-        let wanted = dose.amount.moles.value() * dose.amount.per.to_water(&self.litre());
+        let wanted = dose.amount.moles.value() * dose.amount.per.to_basis(&self.litre());
         let proton = self.system.proton();
         let most = (0..change.len())
             .filter(|k| *k != proton && change[*k] > 0.0)
@@ -183,11 +201,12 @@ impl<'a> Course<'a> {
             .min_by(|a, b| a.0.total_cmp(&b.0));
         match most {
             Some((most, k)) if wanted > most * (1.0 + 1e-12) => Err(EquilibriumError::Unreachable(format!(
-                "`remove`: {wanted:.4e} mol/kg(water) of `{}` is more than there is; the water holds {:.4e} of {}, \
-                 so {most:.4e} can be taken away",
+                "`remove`: {} mol/kg(water) of `{}` is more than there is; the water holds {} of {}, so {} can be taken away",
+                short(wanted),
                 dose.reagent,
-                self.totals[k],
-                self.system.component_species(k)
+                short(self.totals[k]),
+                self.system.component_species(k),
+                short(most),
             ))),
             _ => Ok(()),
         }
@@ -198,11 +217,21 @@ impl<'a> Course<'a> {
         if let (Some(measured), true) = (self.sample.measured(), self.untouched) {
             return analysis::solution(measured);
         }
+        if let Some(sea) = self.system.ledger().sea() {
+            return Solution::seawater(self.seawater_density(sea.salinity), sea.salinity);
+        }
         let molar_mass = |k| self.system.component_species(k).molar_mass().unwrap_or(0.0);
         let grams = self.totals.iter().enumerate().map(|(k, total)| total * molar_mass(k));
         let per_water = grams.sum::<f64>().max(0.0) / 1000.0;
         let water_per_litre = self.pure_density() / (1.0 + (1.0 - SALT_TERM) * per_water);
-        Solution { density: water_per_litre * (1.0 + per_water), dissolved: water_per_litre * per_water }
+        let (density, dissolved) = (water_per_litre * (1.0 + per_water), water_per_litre * per_water);
+        Solution { density, dissolved, basis: KgOf::Water }
+    }
+
+    /// kg/L where volumes were measured, at the surface.
+    fn seawater_density(&self, salinity: f64) -> f64 {
+        let at = self.sample.measured().and_then(|measured| measured.volume_temperature);
+        seawater::density(at.unwrap_or_else(analysis::laboratory).kelvin(), salinity, 0.0) / 1000.0
     }
 
     /// kg/L of pure water where volumes were measured.
@@ -216,4 +245,9 @@ fn per_water(moles: &Quantity, factor: f64) -> Result<Quantity, EquilibriumError
     let unit = Unit::parse("mol/kg(water)").expect("a known unit");
     Quantity::from_partials(moles.value() * factor, unit, &[(moles, factor)])
         .map_err(|error| EquilibriumError::Unreachable(error.to_string()))
+}
+
+/// A number of five digits, for messages.
+pub(super) fn short(number: f64) -> String {
+    format!("{number:.4e}").parse::<f64>().unwrap_or(number).to_string()
 }

@@ -5,9 +5,11 @@
 //! questions in the user's names and units.
 
 pub mod acid_base;
+pub mod activity;
 mod adjust;
 pub mod analysis;
 pub mod assemble;
+pub mod buffer;
 mod dissolved_mass;
 mod dosing;
 mod error;
@@ -42,10 +44,7 @@ pub fn equilibrate(
     ledger: Option<&Ledger>,
     settings: &Settings,
 ) -> Result<State, EquilibriumError> {
-    let ledger = match ledger.or(sample.ledger()) {
-        Some(ledger) => ledger.clone(),
-        None => shipped::ledger("freshwater", None)?,
-    };
+    let ledger = ledger_of(sample, ledger)?;
     let mut analysed = match sample.analysis() {
         Analysis::Measured(measured) => analysis::analyse(sample, measured, &ledger, settings)?,
         Analysis::Spoilt(reason) => return Err(EquilibriumError::Spoilt(reason.clone())),
@@ -60,11 +59,39 @@ pub fn equilibrate(
     }
     let first = analysed.outcome.take();
     let outcomes = match first {
-        Some(first) if sample.treatments().is_empty() => vec![first],
+        Some(first) if sample.treatments().is_empty() && !measured_elsewhere(sample) => vec![first],
         first => {
             let treated = treatment::treat(&resolved, &analysed, settings)?;
             first.into_iter().chain([treated]).collect()
         }
     };
     Ok(State::new(sample.clone(), analysed, outcomes))
+}
+
+/// The ledger a sample is computed with, in the sea that the sample is of.
+fn ledger_of(sample: &Sample, given: Option<&Ledger>) -> Result<Ledger, EquilibriumError> {
+    let sea = sample.sea();
+    if let (Analysis::Mixed(parts), None) = (sample.analysis(), sea)
+        && parts.iter().any(|(part, _)| part.sea().is_some())
+    {
+        let why = "seawater and other water hold by different constants: mix them with `estuary(river, sea, [0.5])`";
+        return Err(EquilibriumError::Unreachable(why.into()));
+    }
+    let ledger = match given.or(sample.ledger()) {
+        Some(ledger) => ledger.clone(),
+        None => shipped::ledger(if sea.is_some() { "seawater" } else { "freshwater" }, None)?,
+    };
+    match sea {
+        Some(sea) => Ok(ledger.in_sea(sea)?),
+        None if ledger.is_marine() => Err(EquilibriumError::Unreachable(format!(
+            "the constants of the ledger `{}` are functions of salinity: write the water as `seawater(#{{ salinity: 35, … }})`",
+            ledger.name()
+        ))),
+        None => Ok(ledger),
+    }
+}
+
+/// Whether the analysis holds at another temperature than the water's own, to which it is then brought.
+fn measured_elsewhere(sample: &Sample) -> bool {
+    sample.measured().is_some_and(|measured| measured.ph_temperature.is_some())
 }

@@ -6,6 +6,8 @@
 
 use std::fmt;
 
+use super::buffer::{Added, Answering};
+use crate::chem::PhScale;
 use crate::nearest::nearest;
 use crate::text::list;
 use crate::units::{Unit, UnitError};
@@ -21,6 +23,14 @@ pub enum Observable {
     Eh,
     /// The potential a couple alone would give.
     EhOf(String),
+    /// pH of a seawater on a named scale.
+    PhOn(PhScale),
+    /// DIC over the buffer factor of CO2 by carbon.
+    Revelle,
+    /// A buffer factor.
+    Buffer(Answering, Added),
+    /// Practical salinity of a seawater.
+    Salinity,
     /// Temperature.
     Temperature,
     /// Pressure.
@@ -41,6 +51,8 @@ pub enum Observable {
     ChargeError,
     /// C - A.
     ChargeMisfit,
+    /// d alkalinity / d pH of the water alone.
+    BufferIntensity,
     /// Calcium carbonate that would form (positive) or dissolve until calcite is at equilibrium.
     CarbonatePotential,
     /// pH less the pH of equilibrium with calcite.
@@ -135,8 +147,12 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 /// Name, form as it is written, and what it is, in order of listing.
-pub const NAMES: [(&str, &str, &str); 32] = [
-    ("pH", "pH", "-log10 of the activity of H^+"),
+pub const NAMES: [(&str, &str, &str); 41] = [
+    (
+        "pH",
+        "pH",
+        "-log10 of the activity of H^+; in seawater on the sample's scale, on another as pH(free), pH(nbs)",
+    ),
     ("pe", "pe", "-log10 of the activity of the electron, from the couples in equilibrium"),
     ("Eh", "Eh", "potential against the standard hydrogen electrode, V"),
     ("Eh", "Eh(Fe(III)/Fe(II))", "potential that a couple alone gives, in equilibrium with others or not, V"),
@@ -150,7 +166,12 @@ pub const NAMES: [(&str, &str, &str); 32] = [
     ("hardness", "hardness", "calcium and magnesium, mol/kg(water)"),
     ("charge_error", "charge_error", "100 (C - A)/(C + A) over the charges of the ions as computed, %"),
     ("charge_misfit", "charge_misfit", "cations less anions, eq/kg(water)"),
-    ("CCPP", "CCPP", "calcium carbonate that would form until calcite is at equilibrium, mol/kg(water)"),
+    ("buffer_intensity", "buffer_intensity", "strong base per unit of pH, water alone, eq/kg(water)"),
+    (
+        "CCPP",
+        "CCPP",
+        "calcium carbonate that would form (negative: dissolve) until calcite is at equilibrium, mol/kg(water)",
+    ),
     ("Langelier", "Langelier", "pH less the pH at which calcite would be at equilibrium, alkalinity kept"),
     ("m", "m(Ca^2+)", "molality, mol/kg(water)"),
     ("c", "c(Ca^2+)", "concentration, mol/L"),
@@ -168,6 +189,14 @@ pub const NAMES: [(&str, &str, &str); 32] = [
     ("added", "added(NaOH)", "amount a treatment added, mol/kg(water)"),
     ("removed", "removed(CO2(g))", "amount a treatment took away, mol/kg(water)"),
     ("misfit", "misfit(DIC)", "a measured value not used, less the computed one"),
+    ("salinity", "salinity", "practical salinity of a seawater"),
+    ("Revelle", "Revelle", "Revelle factor, d ln [CO2] / d ln DIC at constant alkalinity"),
+    ("gamma_DIC", "gamma_DIC", "1/(d ln [CO2] / d DIC) at constant alkalinity, mol/kg"),
+    ("gamma_TA", "gamma_TA", "1/(d ln [CO2] / d alkalinity) at constant DIC, mol/kg"),
+    ("beta_DIC", "beta_DIC", "1/(d ln [H^+] / d DIC) at constant alkalinity, mol/kg"),
+    ("beta_TA", "beta_TA", "1/(d ln [H^+] / d alkalinity) at constant DIC, mol/kg"),
+    ("omega_DIC", "omega_DIC", "1/(d ln [CO3^2-] / d DIC) at constant alkalinity, mol/kg"),
+    ("omega_TA", "omega_TA", "1/(d ln [CO3^2-] / d alkalinity) at constant DIC, mol/kg"),
 ];
 
 impl Asked {
@@ -188,6 +217,9 @@ impl Asked {
             }
             None => (text, None),
         };
+        if let Some(gas) = SHORT_FOR_GAS.iter().find_map(|(short, long)| (*short == body).then_some(long)) {
+            return Ok(Self { observable: about(gas, "CO2(g)".into()), unit });
+        }
         let (name, subject) = match body.split_once('(') {
             Some((name, rest)) => {
                 let subject = rest.strip_suffix(')').map(|subject| subject.trim().to_string());
@@ -199,6 +231,9 @@ impl Asked {
             let nearest = nearest(name, NAMES.map(|(known, ..)| known)).map(|name| form_of(name).to_string());
             return Err(ObservableError::Unknown { name: body.into(), nearest });
         };
+        if let ("pH", Some(scale)) = (name, &subject) {
+            return on_scale(scale, body).map(|observable| Self { observable, unit });
+        }
         let takes = |subject: bool| {
             NAMES.iter().any(|(known, form, _)| *known == name && form.contains('(') == subject)
         };
@@ -215,8 +250,34 @@ fn form_of(name: &str) -> &'static str {
     NAMES.iter().find(|(known, ..)| *known == name).map_or("", |(_, form, _)| form)
 }
 
+/// The CO2 of a seawater goes out by the keys it comes in.
+const SHORT_FOR_GAS: [(&str, &str); 3] = [("fCO2", "f"), ("pCO2", "p"), ("xCO2", "x")];
+
+const BUFFERS: [(&str, Answering, Added); 6] = [
+    ("gamma_DIC", Answering::CarbonDioxide, Added::Carbon),
+    ("gamma_TA", Answering::CarbonDioxide, Added::Alkalinity),
+    ("beta_DIC", Answering::HydrogenIon, Added::Carbon),
+    ("beta_TA", Answering::HydrogenIon, Added::Alkalinity),
+    ("omega_DIC", Answering::Carbonate, Added::Carbon),
+    ("omega_TA", Answering::Carbonate, Added::Alkalinity),
+];
+
+fn on_scale(scale: &str, body: &str) -> Result<Observable, ObservableError> {
+    let scales = [PhScale::Free, PhScale::Total, PhScale::Seawater, PhScale::Nbs];
+    let found = scales.into_iter().find(|known| known.word() == scale);
+    found.map(Observable::PhOn).ok_or_else(|| ObservableError::NoAnswer {
+        asked: body.into(),
+        why: format!("the scales of pH are {}", list(&scales.map(PhScale::word))),
+    })
+}
+
 fn plain(name: &str) -> Observable {
+    if let Some((_, of, by)) = BUFFERS.iter().find(|(known, ..)| *known == name) {
+        return Observable::Buffer(*of, *by);
+    }
     match name {
+        "salinity" => Observable::Salinity,
+        "Revelle" => Observable::Revelle,
         "pH" => Observable::Ph,
         "pe" => Observable::Pe,
         "Eh" => Observable::Eh,
@@ -230,6 +291,7 @@ fn plain(name: &str) -> Observable {
         "hardness" => Observable::Hardness,
         "charge_error" => Observable::ChargeError,
         "charge_misfit" => Observable::ChargeMisfit,
+        "buffer_intensity" => Observable::BufferIntensity,
         "Langelier" => Observable::Langelier,
         _ => Observable::CarbonatePotential,
     }
@@ -264,6 +326,13 @@ impl fmt::Display for Observable {
             Self::Pe => ("pe", None),
             Self::Eh => ("Eh", None),
             Self::EhOf(subject) => ("Eh", Some(subject)),
+            Self::PhOn(scale) => return write!(f, "pH({})", scale.word()),
+            Self::Salinity => ("salinity", None),
+            Self::Revelle => ("Revelle", None),
+            Self::Buffer(of, by) => {
+                let found = BUFFERS.iter().find(|(_, own_of, own_by)| (own_of, own_by) == (of, by));
+                (found.map_or("", |(name, ..)| name), None)
+            }
             Self::Temperature => ("temperature", None),
             Self::Pressure => ("pressure", None),
             Self::Density => ("density", None),
@@ -274,6 +343,7 @@ impl fmt::Display for Observable {
             Self::Hardness => ("hardness", None),
             Self::ChargeError => ("charge_error", None),
             Self::ChargeMisfit => ("charge_misfit", None),
+            Self::BufferIntensity => ("buffer_intensity", None),
             Self::CarbonatePotential => ("CCPP", None),
             Self::Langelier => ("Langelier", None),
             Self::Molality(subject) => ("m", Some(subject)),
@@ -320,7 +390,11 @@ mod tests {
         let message = |text: &str| Asked::parse(text).unwrap_err().to_string();
         assert_eq!(message("ph"), "no observable `ph`; did you mean `pH`?");
         assert_eq!(message("SI"), "`SI` is asked as `SI(calcite)`");
-        assert_eq!(message("pH(free)"), "`pH(free)` is asked as `pH`");
+        assert_eq!(message("DIC(x)"), "`DIC(x)` is asked as `DIC`");
+        assert_eq!(
+            message("pH(fre)"),
+            "`pH(fre)`: the scales of pH are `free`, `total`, `seawater` and `nbs`"
+        );
         assert!(message("m(Ca^2+) [mmol/kgg]").starts_with("`m(Ca^2+) [mmol/kgg]`: unknown unit"));
     }
 }

@@ -4,20 +4,24 @@ use std::collections::BTreeMap;
 use std::sync::{Arc, OnceLock};
 
 use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
+use super::activity::assumptions;
 use super::analysis::{Analysed, Misfit, Outcome, Solid, ln_saturation, saturation_slopes, scaled};
 use super::assemble::{Doubt, System};
+use super::buffer::{self, Answering, buffer_factor};
 use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
 use super::redox;
 use super::uncertainty::{Influence, Slopes, Stage, Variable};
-use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{Formation, Formations};
+use crate::chem::{Element, PhScale, Rational, Species, rational};
+use crate::ledger::{Formation, Formations, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::electrode::volts_per_pe;
-use crate::physics::water;
+use crate::physics::{gas_exchange, seawater, water};
 use crate::present::{Cell, Column, Table};
 use crate::quantity::{Quantity, QuantityError};
+use crate::seawater::constants::outside_ranges;
+use crate::seawater::scales::Scales;
 use crate::solve::Certificate;
 use crate::text::list;
 use crate::units::{KgOf, Kind, Pressure, Temperature, Unit};
@@ -64,11 +68,13 @@ struct Answer {
     slopes: Slopes,
     /// Derivatives by other quantities.
     partials: Vec<(Quantity, f64)>,
+    /// Whether its uncertainty is not worked out.
+    is_unstated: bool,
 }
 
 impl Answer {
     fn new(value: f64, unit: &'static str, slopes: Slopes) -> Self {
-        Self { value, unit, molar_mass: None, element: None, slopes, partials: vec![] }
+        Self { value, unit, molar_mass: None, element: None, slopes, partials: vec![], is_unstated: false }
     }
 
     /// An answer that is a multiple of exp of what the slopes belong to.
@@ -133,10 +139,24 @@ impl State {
         &self.0.outcome.converged.certificate
     }
 
-    /// pH: -log10 a(H⁺).
+    /// pH: -log10 a(H⁺); in seawater on the sample's scale.
     #[must_use]
     pub fn ph(&self) -> f64 {
-        -self.0.outcome.converged.ln_a[self.system().proton()] / LN_10
+        self.system().ph_shift() - self.0.outcome.converged.ln_a[self.system().proton()] / LN_10
+    }
+
+    /// The kilogram that concentrations are counted per.
+    fn basis(&self) -> KgOf {
+        self.0.solution.basis
+    }
+
+    /// The unit of an answer, which is written per kilogram of water, by the state's own kilogram.
+    fn unit(&self, unit: &str) -> Unit {
+        match self.basis() {
+            KgOf::Water => Unit::parse(unit),
+            KgOf::Solution => Unit::parse(&unit.replace("kg(water)", "kg(solution)")),
+        }
+        .expect("a known unit")
     }
 
     /// Dissolved total of each component of [`State::system`], mol/kg(water).
@@ -256,7 +276,7 @@ impl State {
     /// A number of the state in mol/kg(water), with the uncertainty that follows from its slopes.
     pub(super) fn quantity(&self, value: f64, slopes: Slopes) -> Quantity {
         let answer = Answer::new(value, "mol/kg(water)", slopes);
-        let unit = Unit::parse(answer.unit).expect("a known unit");
+        let unit = self.unit(answer.unit);
         self.with_uncertainty(&answer, value, unit, 1.0)
             .unwrap_or_else(|_| Quantity::exact(value, Unit::one()))
     }
@@ -312,14 +332,14 @@ impl State {
         let mut answer = self.value(&asked.observable, &name)?;
         // A sum over nothing is -0.
         answer.value += 0.0;
-        let own = Unit::parse(answer.unit).expect("a known unit");
+        let own = self.unit(answer.unit);
         let Some(unit) = &asked.unit else {
             let value = answer.value;
             return Ok((answer, value, own, 1.0));
         };
         let convert = |value: f64| self.in_unit(&answer, value, &own, unit, &name);
         let (value, factor) = (convert(answer.value)?, convert(1.0)? - convert(0.0)?);
-        Ok((answer, value, unit.per_kg_of(KgOf::Water), factor))
+        Ok((answer, value, unit.per_kg_of(self.basis()), factor))
     }
 
     fn with_uncertainty(
@@ -329,7 +349,7 @@ impl State {
         unit: Unit,
         factor: f64,
     ) -> Result<Quantity, QuantityError> {
-        if self.stages().is_none() && !answer.slopes.is_empty() {
+        if answer.is_unstated || (self.stages().is_none() && !answer.slopes.is_empty()) {
             return Quantity::measured(value, unit, None, "this state");
         }
         let partials = self.influence_on(answer).partials(self.system());
@@ -373,6 +393,21 @@ impl State {
                 let (ln_a, slopes) = self.ln_electron_of(name, asked)?;
                 Ok(self.potential(ln_a, &slopes))
             }
+            Observable::PhOn(scale) => {
+                let (sea, scales) = self.scales(asked)?;
+                let shift = scales.shift_from_free(*scale) - scales.shift_from_free(sea.ph_scale);
+                plain(self.ph() + shift, "1", self.ph_slopes_on(*scale))
+            }
+            Observable::Salinity => plain(self.scales(asked)?.0.salinity, "1", vec![]),
+            Observable::Revelle => {
+                let gamma = buffer_factor(self, Answering::CarbonDioxide, buffer::Added::Carbon);
+                let value = self.total("C", asked)?.value / gamma.map_err(nothing)?;
+                Ok(Answer { is_unstated: true, ..Answer::new(value, "1", vec![]) })
+            }
+            Observable::Buffer(of, by) => {
+                let value = buffer_factor(self, *of, *by).map_err(nothing)?;
+                Ok(Answer { is_unstated: true, ..Answer::new(value, "mol/kg(water)", vec![]) })
+            }
             Observable::Temperature => {
                 plain(self.temperature().celsius(), "degC", vec![(Variable::Temperature, 1.0)])
             }
@@ -410,6 +445,14 @@ impl State {
                 slopes.extend(scaled(&by_anions, -1.0));
                 plain(cations - anions, "eq/kg(water)", slopes)
             }
+            Observable::BufferIntensity => {
+                let value = buffer::intensity(self).map_err(nothing)?;
+                // Its own derivatives would be second ones: what it is uncertain by is not stated.
+                let unit = Unit::parse("eq/kg(water)").expect("a known unit");
+                let unstated = Quantity::measured(value, unit, None, "buffer intensity")
+                    .map_err(|error| no_answer(asked, error.to_string()))?;
+                Ok(Answer { partials: vec![(unstated, 1.0)], ..Answer::new(value, "eq/kg(water)", vec![]) })
+            }
             Observable::CarbonatePotential => {
                 let potential = indices::carbonate_potential(self).map_err(nothing)?;
                 let value = potential.value();
@@ -430,8 +473,8 @@ impl State {
             Observable::Molarity(name) => {
                 let (k, formed) = self.solute(name, asked)?;
                 let molality = k.map_or(0.0, |k| inner.molalities[k]);
-                let value = molality * inner.solution.water_per_litre();
-                let mut slopes = scaled(&self.water_per_litre_slopes(), molality);
+                let value = molality * inner.solution.basis_per_litre();
+                let mut slopes = scaled(&self.basis_per_litre_slopes(), molality);
                 slopes.extend(k.map(|k| (Variable::LnMolality(k), value)));
                 Ok(amount(value, "mol/L", &formed.species, slopes))
             }
@@ -469,13 +512,19 @@ impl State {
                 let (ln_omega, slopes) = self.ln_omega(name, asked)?;
                 Ok(Answer::exponential(ln_omega.exp(), "1", slopes))
             }
-            Observable::Fugacity(name) | Observable::PartialPressure(name) => {
+            Observable::Fugacity(name) => {
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
                 plain(fugacity, "bar", slopes)
             }
+            Observable::PartialPressure(name) => {
+                let (fugacity, slopes) = self.fugacity(name, asked)?;
+                let factor = self.fugacity_factor(name);
+                plain(fugacity / factor, "bar", scaled(&slopes, 1.0 / factor))
+            }
             Observable::MoleFraction(name) => {
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
-                plain(fugacity / self.dry_pressure(), "1", scaled(&slopes, 1.0 / self.dry_pressure()))
+                let per_fraction = self.dry_pressure() * self.fugacity_factor(name);
+                plain(fugacity / per_fraction, "1", scaled(&slopes, 1.0 / per_fraction))
             }
             Observable::Amount(name) => {
                 let species = self.phase(name, asked)?;
@@ -567,7 +616,37 @@ impl State {
     }
 
     pub(super) fn ph_slopes(&self) -> Slopes {
-        vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)]
+        let scale = self.system().ledger().sea().map_or(PhScale::Free, |sea| sea.ph_scale);
+        self.ph_slopes_on(scale)
+    }
+
+    /// The scales themselves change with temperature, as HSO4^- and HF do.
+    fn ph_slopes_on(&self, scale: PhScale) -> Slopes {
+        let mut slopes = vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)];
+        if scale != PhScale::Free {
+            slopes.push((Variable::Temperature, self.system().ph_shift_per_kelvin(scale)));
+        }
+        slopes
+    }
+
+    /// The sea of a seawater with its scales of pH.
+    fn scales(&self, asked: &str) -> Result<(Sea, Scales), ObservableError> {
+        self.system().scales().ok_or_else(|| {
+            no_answer(
+                asked,
+                "it is asked of a seawater; outside it pH is -log10 of the activity of H^+".into(),
+            )
+        })
+    }
+
+    /// Fugacity over partial pressure: 1 but for CO2 over seawater.
+    fn fugacity_factor(&self, gas: &str) -> f64 {
+        let is_co2 = self.system().ledger().find_phase(gas).is_ok_and(|phase| phase.key() == "CO2(g)");
+        if is_co2 && self.basis() == KgOf::Solution {
+            gas_exchange::fugacity_factor(self.temperature().kelvin(), Pressure::ATMOSPHERE.bar())
+        } else {
+            1.0
+        }
     }
 
     /// `Σ weight · molality` over the solutes.
@@ -583,7 +662,10 @@ impl State {
         self.sum(|formed| formed.species.molar_mass().unwrap_or(0.0) / 1000.0).1
     }
 
-    fn water_per_litre_slopes(&self) -> Slopes {
+    fn basis_per_litre_slopes(&self) -> Slopes {
+        if self.basis() == KgOf::Solution {
+            return self.density_slopes();
+        }
         let (water, per_water) = self.density_terms();
         let mut slopes = scaled(
             &self.dissolved_mass_slopes(),
@@ -594,6 +676,9 @@ impl State {
     }
 
     fn density_slopes(&self) -> Slopes {
+        if self.basis() == KgOf::Solution {
+            return vec![(Variable::Temperature, self.0.solution.density * self.thermal_expansion())];
+        }
         let (water, per_water) = self.density_terms();
         let slope = SALT_TERM * water / (1.0 + (1.0 - SALT_TERM) * per_water).powi(2);
         let mut slopes = scaled(&self.dissolved_mass_slopes(), slope);
@@ -610,10 +695,14 @@ impl State {
         )
     }
 
-    /// d ln ρ / dT of pure water, 1/K.
+    /// d ln ρ / dT of pure water, in seawater of the seawater, 1/K.
     fn thermal_expansion(&self) -> f64 {
         const STEP: f64 = 0.01;
         let t = self.temperature().kelvin();
+        if let Some(sea) = self.system().ledger().sea() {
+            let density = |t| seawater::density(t, sea.salinity, sea.hydrostatic_bar());
+            return (density(t + STEP) / density(t - STEP)).ln() / (2.0 * STEP);
+        }
         (water::density(t + STEP) / water::density(t - STEP)).ln() / (2.0 * STEP)
     }
 
@@ -627,7 +716,7 @@ impl State {
         asked: &str,
     ) -> Result<f64, ObservableError> {
         let wrong = |error| ObservableError::Unit { asked: asked.to_string(), error };
-        let plain = wanted.per_kg_of(KgOf::Water).with_expressed_as(None);
+        let plain = wanted.per_kg_of(self.basis()).with_expressed_as(None);
         if let Some(formula) = wanted.expressed_as() {
             let species = Species::parse(formula).map_err(|error| no_answer(asked, error.to_string()))?;
             return self.expressed(answer, value, own, &plain, &species, asked);
@@ -797,8 +886,12 @@ impl State {
         Some((fugacity, scaled(&redox::implied_slopes(&implied, system)?, fugacity)))
     }
 
-    /// Total pressure less that of water vapour over pure water, bar.
+    /// Total pressure less that of water vapour over pure water, bar; over seawater at one atmosphere.
     fn dry_pressure(&self) -> f64 {
+        if let Some(sea) = self.system().ledger().sea() {
+            let t = self.temperature().kelvin();
+            return Pressure::ATMOSPHERE.bar() - gas_exchange::vapour_pressure(t, sea.salinity);
+        }
         // Antoine-type fit of the saturation pressure (Buck, A.L. (1981) J. Appl. Meteorol. 20, 1527-1532; recalled),
         // good to 0.1 % between 0 and 50 degC.
         let t = self.temperature().celsius();
@@ -811,6 +904,12 @@ impl State {
         let held = outcome.exchanged.iter().enumerate().find(|(_, (own, _))| own == name);
         let dosed: Vec<&Quantity> =
             outcome.dosed.amounts.iter().filter(|(own, _)| own == name).map(|(_, amount)| amount).collect();
+        if let (None, Some(formed)) = (held, self.formed(name)) {
+            let slopes = scaled(&formed.slopes, -sign);
+            let partials =
+                formed.partials.iter().map(|(amount, slope)| (amount.clone(), -sign * slope)).collect();
+            return Ok(Answer { value: -sign * formed.value, slopes, partials, ..formed });
+        }
         if held.is_none() && dosed.is_empty() {
             let names = outcome.exchanged.iter().map(|(own, _)| own.as_str());
             let mut names: Vec<&str> =
@@ -827,6 +926,18 @@ impl State {
         let slopes = held.map(|(f, _)| (Variable::ReservoirAmount(f), sign)).into_iter().collect();
         let partials = dosed.into_iter().map(|amount| (amount.clone(), sign)).collect();
         Ok(Answer { molar_mass, partials, ..Answer::new(sign * amount, "mol/kg(water)", slopes) })
+    }
+
+    /// What formed of a solid that may form, less what was there before.
+    fn formed(&self, name: &str) -> Option<Answer> {
+        let species = self.system().ledger().find_phase(name).ok()?;
+        let solid =
+            self.solid(species).filter(|solid| matches!(solid.slope.0, Variable::MineralAmount(_)))?;
+        let before = self.0.outcome.dosed.solids.iter().filter(|(own, _)| own == species);
+        let partials: Vec<(Quantity, f64)> = before.map(|(_, amount)| (amount.clone(), -1.0)).collect();
+        let there: f64 = partials.iter().map(|(amount, _)| amount.value()).sum();
+        let answer = amount(solid.amount - there, "mol/kg(water)", species, vec![solid.slope]);
+        Some(Answer { partials, ..answer })
     }
 
     /// Everything that can be asked, as a table of forms and meanings.
@@ -863,7 +974,13 @@ impl State {
         };
         Table::new([
             Column::chemistry("species", order.iter().map(|k| solutes[*k].species.key())),
-            Column::new("molality [mol/kg(water)]", order.iter().map(molality)),
+            Column::new(
+                match self.basis() {
+                    KgOf::Water => "molality [mol/kg(water)]",
+                    KgOf::Solution => "concentration [mol/kg(solution)]",
+                },
+                order.iter().map(molality),
+            ),
             numbers("activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]).exp()),
             numbers("log activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]) / LN_10),
             numbers("gamma", &|k| converged.ln_gamma[k].exp()),
@@ -909,7 +1026,10 @@ impl State {
             Column::chemistry("formula", phases.iter().map(|(formed, _)| formed.species.key())),
             Column::new("SI", phases.iter().map(index)),
             Column::new("fugacity [bar]", phases.iter().map(fugacity)),
-            Column::new("amount [mol/kg(water)]", phases.iter().map(|(formed, _)| amount(formed))),
+            Column::new(
+                format!("amount [{}]", self.unit("mol/kg(water)").symbol()).as_str(),
+                phases.iter().map(|(formed, _)| amount(formed)),
+            ),
             Column::texts("note", notes.iter().map(String::as_str)),
         ])
         .expect("columns of one length")
@@ -922,12 +1042,21 @@ impl State {
         let mut warnings = self.0.notes.clone();
         let certificate = self.certificate();
         if certificate.outside_validity {
+            let model = self.system().model();
             warnings.push(format!(
-                "ionic strength {:.2} mol/kg(water) is beyond the range of the activity model",
-                self.0.outcome.converged.ionic_strength
+                "ionic strength {:.2} mol/kg(water) is beyond the range of the activity model: the {} holds to {} mol/kg(water)",
+                self.0.outcome.converged.ionic_strength,
+                model.name(),
+                model.valid_to().unwrap_or(f64::INFINITY)
             ));
         }
         warnings.extend(self.beyond_stability());
+        let solutes = self.system().solutes().zip(&self.0.molalities);
+        let matter: Vec<(&Species, f64)> = solutes
+            .filter(|(formed, molality)| self.matters(formed, **molality))
+            .map(|(formed, molality)| (&formed.species, *molality))
+            .collect();
+        warnings.extend(assumptions(self.system().ledger().activity(), &matter, self.temperature()));
         let mut doubts: BTreeMap<String, Vec<String>> = BTreeMap::new();
         for (formed, molality) in self.system().solutes().zip(&self.0.molalities) {
             if self.matters(formed, *molality) {
@@ -942,6 +1071,7 @@ impl State {
             }
         }
         warnings.extend(doubts.into_iter().map(|(why, names)| format!("{why}: {}", list(&names))));
+        warnings.extend(self.marine_warnings());
         let leftovers = &self.system().ledger().formations().leftovers;
         let names: Vec<&str> = self.system().ledger().names().collect();
         warnings.extend(leftovers.iter().map(|leftover| {
@@ -970,6 +1100,60 @@ impl State {
             )
         };
         beyond.map(words).collect()
+    }
+
+    /// Constants of seawater outside their range, and the convention of a fugacity at depth.
+    fn marine_warnings(&self) -> Vec<String> {
+        let Some(sea) = self.system().ledger().sea() else { return vec![] };
+        let uses =
+            |k: usize| self.system().solutes().any(|formed| formed.multiples.iter().any(|(j, _)| *j == k));
+        let mut warnings = outside_ranges(self.system().ledger(), sea, self.temperature(), uses);
+        if sea.hydrostatic_bar() > 0.0 && self.system().solute(&carbon_dioxide()).is_some() {
+            warnings.push(
+                "fugacities are those of the water at the surface: the constant of CO2(g) has no pressure term".into(),
+            );
+        }
+        warnings
+    }
+
+    /// What was chosen where the ledger had a choice, and the scale of pH; nothing outside seawater.
+    #[must_use]
+    pub fn choices(&self) -> Option<String> {
+        let sea = self.system().ledger().sea()?;
+        let choices = self.system().ledger().choices();
+        // Constants of one publication go together: `K1 K2 Lueker 2000`.
+        let mut by_author: Vec<(String, String)> = Vec::new();
+        for (name, author) in choices {
+            match by_author.last_mut().filter(|(_, last)| *last == author) {
+                Some((names, _)) => *names = format!("{names} {name}"),
+                None => by_author.push((name, author)),
+            }
+        }
+        let words: Vec<String> =
+            by_author.iter().map(|(names, author)| format!("{names} {author}")).collect();
+        Some(format!("{}; pH on the {} scale", words.join(", "), sea.ph_scale.word()))
+    }
+
+    /// What each species holds of the alkalinity, the largest share first.
+    #[must_use]
+    pub fn alkalinity_parts(&self) -> Table {
+        let level = ZeroLevel::at(self.system().ledger(), ALKALINITY_PH);
+        let weigh = |(formed, molality): (&Formation, &f64)| {
+            let weight = rational::to_f64(level.weight(formed));
+            (formed.species.key().to_string(), weight, weight * molality)
+        };
+        let mut parts: Vec<(String, f64, f64)> =
+            self.system().solutes().zip(&self.0.molalities).map(weigh).filter(|part| part.1 != 0.0).collect();
+        parts.sort_by(|a, b| b.2.abs().total_cmp(&a.2.abs()));
+        Table::new([
+            Column::chemistry("species", parts.iter().map(|(species, ..)| species.as_str())),
+            Column::numbers("equivalents per mole", parts.iter().map(|(_, weight, _)| *weight)),
+            Column::numbers(
+                format!("alkalinity [{}]", self.unit("eq/kg(water)").symbol()).as_str(),
+                parts.iter().map(|(.., part)| *part),
+            ),
+        ])
+        .expect("columns of one length")
     }
 
     fn add_doubts(&self, formed: &Formation, doubts: &mut BTreeMap<String, Vec<String>>) {
@@ -1012,6 +1196,10 @@ fn power_of_ten(log10: f64) -> String {
     // What rounds to 10 counts as 1 of the next power.
     let exponent = (log10 + 1.0 - 9.95_f64.log10()).floor();
     format!("{:.1}e{exponent:.0}", 10_f64.powf(log10 - exponent))
+}
+
+fn carbon_dioxide() -> Species {
+    Species::parse("CO2(aq)").expect("a formula")
 }
 
 fn absent(asked: &str) -> ObservableError {
@@ -1059,10 +1247,15 @@ fn dissolved(system: &System, molalities: &[f64]) -> Vec<f64> {
 /// Density and dissolved mass of a computed water: with S kg of solutes per kg of water, a litre holds
 /// `ρ_w / (1 + (1 - SALT_TERM) S)` kg of water.
 fn solution(system: &System, molalities: &[f64]) -> Solution {
+    if let Some(sea) = system.ledger().sea() {
+        let density = seawater::density(system.temperature().kelvin(), sea.salinity, sea.hydrostatic_bar());
+        return Solution::seawater(density / 1000.0, sea.salinity);
+    }
     let grams =
         system.solutes().zip(molalities).map(|(formed, m)| formed.species.molar_mass().unwrap_or(0.0) * m);
     let per_water = grams.sum::<f64>() / 1000.0;
     let water_density = water::density(system.temperature().kelvin()) / 1000.0;
     let water_per_litre = water_density / (1.0 + (1.0 - SALT_TERM) * per_water);
-    Solution { density: water_per_litre * (1.0 + per_water), dissolved: water_per_litre * per_water }
+    let (density, dissolved) = (water_per_litre * (1.0 + per_water), water_per_litre * per_water);
+    Solution { density, dissolved, basis: KgOf::Water }
 }

@@ -15,7 +15,7 @@ use super::error::EquilibriumError;
 use super::redox::{self, fixed_pe};
 use super::uncertainty::{Conditions, Held, MayForm, Variable};
 use crate::chem::{Element, Equation, Rational, Species, rational};
-use crate::ledger::{Couple, Formations, Ledger};
+use crate::ledger::{Couple, Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
@@ -37,8 +37,13 @@ pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Resul
         _ => None,
     });
     let temperature = warmed.map_or(sample.setting().temperature, |(temperature, _)| temperature);
+    let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::CompressTo(pressure) => Some(*pressure),
+        _ => None,
+    });
+    let pressure = compressed.unwrap_or(sample.setting().pressure);
     let present = analysed.system.components().iter().copied().collect();
-    let system = System::new(analysed.system.ledger(), &present, temperature)?;
+    let system = System::new(&ledger_in_place(sample, &analysed.system)?, &present, temperature, pressure)?;
     let kelvin = match warmed {
         Some((_, stated)) => stated.cloned(),
         None => analysed.temperature.clone(),
@@ -84,6 +89,17 @@ fn treat_with(
     }
 }
 
+/// The ledger at the pressure that the water comes to.
+fn ledger_in_place(sample: &Sample, system: &System) -> Result<Ledger, EquilibriumError> {
+    let ledger = system.ledger();
+    let Some(sea) = ledger.sea() else { return Ok(ledger.clone()) };
+    let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::CompressTo(pressure) => Some(*pressure),
+        _ => None,
+    });
+    Ok(ledger.in_sea(Sea { pressure: compressed.unwrap_or(sample.setting().pressure), ..sea })?)
+}
+
 /// What the water is in contact with, in indices.
 struct Surroundings {
     reservoirs: Vec<(String, Reservoir)>,
@@ -110,9 +126,9 @@ struct ByReagent {
 }
 
 impl ByReagent {
-    fn reservoir(&self) -> Reservoir {
-        // Of hydrogen ions or of electrons alike.
-        fixed_ph(self.component, self.value)
+    /// What the scale of pH adds to -log10 of the activity; of electrons there is one scale.
+    fn shift(&self, system: &System) -> f64 {
+        if self.what == "pH" { system.ph_shift() } else { 0.0 }
     }
 }
 
@@ -147,7 +163,9 @@ impl Surroundings {
             }
             Treatment::Allow { solid, above } => self.allow(solid, *above, system)?,
             Treatment::WithSolid { solid, .. } => self.allow(solid, 0.0, system)?,
-            Treatment::HoldPh { ph, reagent: None } => self.hold("pH", None, fixed_ph(system.proton(), *ph)),
+            Treatment::HoldPh { ph, reagent: None } => {
+                self.hold("pH", None, fixed_ph(system.proton(), ph - system.ph_shift()));
+            }
             Treatment::HoldPh { ph, reagent: Some(reagent) } => {
                 self.hold_later("pH", system.proton(), *ph, reagent)?;
             }
@@ -342,7 +360,7 @@ impl Surroundings {
         };
         let mut misses = |amount: f64| {
             let converged = self.converge(system, &with(amount), settings)?;
-            Ok::<f64, EquilibriumError>(-converged.ln_a[*component] / LN_10 - value)
+            Ok::<f64, EquilibriumError>(target.shift(system) - converged.ln_a[*component] / LN_10 - value)
         };
         let start = scalar::Sample { x: 0.0, f: misses(0.0)? };
         let mut nearest = start;
@@ -365,7 +383,7 @@ impl Surroundings {
             root_between(&mut misses, start, end, Tolerance { x: 1e-18, f: 1e-14 })?.x
         };
         // Once more with it held, which it now is without a mole of hydrogen ions or electrons.
-        self.hold(what, None, target.reservoir());
+        self.hold(what, None, fixed_ph(*component, value - target.shift(system)));
         let mut outcome = self.solve(system, &with(amount), settings)?;
         let held = self.reservoirs.iter().position(|(own, _)| own == what).expect("just held");
         outcome.exchanged[held] = (name.clone(), amount);

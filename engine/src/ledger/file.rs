@@ -9,8 +9,10 @@ use std::collections::BTreeMap;
 use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
+use super::activity_choice::ActivityChoice;
+use super::composition::Constituent;
 use super::influence;
-use super::ledger::{ActivityChoice, Ledger};
+use super::ledger::Ledger;
 use super::shipped;
 use super::standard_formation::{self, Elements};
 use crate::chem::{Reaction, ReactionError, Species};
@@ -26,6 +28,8 @@ pub struct ConstantFile {
     pub constants: Vec<(String, Reaction)>,
     /// Names with the formation of species from the elements, in file order.
     pub formations: Vec<(String, Reaction)>,
+    /// What seawater holds in proportion to its salinity.
+    pub composition: Vec<Constituent>,
 }
 
 /// A ledger file: which constants it takes from which files, and its own.
@@ -37,6 +41,8 @@ pub struct LedgerFile {
     pub edition: Option<String>,
     /// Its activity model.
     pub activity: ActivityChoice,
+    /// Whether its constants are those of seawater.
+    pub is_marine: bool,
     /// Ions that take part in no reaction.
     pub solutes: Vec<Species>,
     /// What it takes from files of constants.
@@ -54,6 +60,8 @@ pub struct From {
     pub constants: Option<Vec<String>>,
     /// Species whose formation is taken; `None` takes all.
     pub formations: Option<Vec<String>>,
+    /// Names of constituents of seawater; `None` takes all.
+    pub composition: Option<Vec<String>>,
     line: usize,
 }
 
@@ -84,6 +92,11 @@ pub fn read_constants(file_key: &str, text: &str) -> Result<ConstantFile, Vec<Fi
     if faults.is_empty() { Ok(file) } else { Err(faults) }
 }
 
+/// Reads a file that is all tables and values.
+pub(super) fn read_tables(text: &str) -> Result<BTreeMap<String, Value>, Vec<FileFault>> {
+    Ok(Lines::parse(text)?.named(&[]).rest())
+}
+
 /// Reads the `[[element]]` entries of a file alone.
 pub(super) fn read_elements(file_key: &str, text: &str) -> Elements {
     Lines::parse(text)
@@ -107,7 +120,10 @@ pub fn load(file_key: &str, text: &str) -> Result<Ledger, Vec<FileFault>> {
 /// Every entry that cannot be had.
 pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
     let mut faults = Vec::new();
-    let mut ledger = Ledger::empty(&file.name, file.edition.clone()).with_activity(file.activity);
+    let mut ledger = Ledger::empty(&file.name, file.edition.clone()).with_activity(file.activity.clone());
+    if file.is_marine {
+        ledger = ledger.of_seawater();
+    }
     for species in &file.solutes {
         ledger = ledger.with_solute(species.clone());
     }
@@ -143,10 +159,21 @@ pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
         for name in missing {
             fault(format!("`{}` has no formation of `{name}`", from.file));
         }
+        for constituent in &found.composition {
+            if from.composition.as_ref().is_none_or(|names| names.contains(&constituent.name)) {
+                ledger = ledger.with_constituent(constituent.clone());
+            }
+        }
         ledger = with_entries(ledger, &constants, &formations, &mut fault);
+    }
+    for constituent in &file.own.composition {
+        ledger = ledger.with_constituent(constituent.clone());
     }
     let mut fault = |message: String| faults.push(FileFault { line: 1, message });
     ledger = with_entries(ledger, &file.own.constants, &file.own.formations, &mut fault);
+    if let Err(unknown) = file.activity.check(&ledger) {
+        fault(unknown.message);
+    }
     if faults.is_empty() { Ok(ledger) } else { Err(faults) }
 }
 
@@ -212,6 +239,12 @@ fn read_entries(
             Ok((false, name, reaction)) => file.constants.push((name, reaction)),
             Ok((true, name, reaction)) => file.formations.push((name, reaction)),
             Err(fault) => faults.push(fault),
+        }
+    }
+    for entry in lines.entries("composition", faults) {
+        match Constituent::read(file_key, citation, entry.named()) {
+            Ok(constituent) => file.composition.push(constituent),
+            Err(fault) => faults.push(entry.fault(&fault.key, fault.message)),
         }
     }
     let elements = elements_of(file_key, lines, faults);
@@ -333,7 +366,10 @@ fn read_ledger_as(file_key: &str, text: &str) -> Result<LedgerFile, Vec<FileFaul
         }
     }
     let own = read_entries(file_key, &read_citation(&lines).unwrap_or_default(), &lines, &mut faults);
-    let head = read_head(file_key, lines.named(&["from", "constant", "formation", "element", "publication"]));
+    let head = read_head(
+        file_key,
+        lines.named(&["from", "constant", "formation", "composition", "element", "publication"]),
+    );
     match head {
         Ok(head) if faults.is_empty() => Ok(LedgerFile { from, own, ..head }),
         Ok(_) => Err(in_order(faults)),
@@ -362,12 +398,25 @@ fn read_head(file_key: &str, mut named: Named) -> Result<LedgerFile, KeyFault> {
             return Err(KeyFault::new("activity_options", message));
         }
     };
-    let activity = ActivityChoice::read(&model, options)?;
+    let activity = ActivityChoice::read(&model, options).map_err(|fault| match fault.key.as_str() {
+        "activity_model" => fault,
+        _ => KeyFault::new("activity_options", fault.message),
+    })?;
     let solutes = named.texts("solutes")?.unwrap_or_default();
     let solutes = solutes.iter().map(|text| Species::parse(text)).collect::<Result<_, _>>();
     let solutes = solutes.map_err(|error| KeyFault::new("solutes", error.to_string()))?;
+    let is_marine = match named.text("medium")?.as_deref() {
+        None => false,
+        Some("seawater") => true,
+        Some(other) => {
+            let message = format!(
+                "the constants of a ledger hold for zero ionic strength or `seawater`, not for `{other}`"
+            );
+            return Err(KeyFault::new("medium", message));
+        }
+    };
     named.finish()?;
-    Ok(LedgerFile { name, edition, activity, solutes, from: vec![], own: ConstantFile::default() })
+    Ok(LedgerFile { name, edition, activity, is_marine, solutes, from: vec![], own: ConstantFile::default() })
 }
 
 /// `constants` and `formations` are lists, `all` where neither is given.
@@ -375,14 +424,16 @@ fn read_from(entry: &Entry<'_>) -> Result<From, KeyFault> {
     let mut named = entry.named();
     let file = named.text("file")?.ok_or_else(|| KeyFault::new("file", "`[[from]]` needs a `file`"))?;
     let (constants, formations) = (named.texts("constants")?, named.texts("formations")?);
+    let composition = named.texts("composition")?;
     named.finish()?;
-    let all = constants.is_none() && formations.is_none();
+    let all = constants.is_none() && formations.is_none() && composition.is_none();
     let chosen = |names: Option<Vec<String>>| match names {
         None if all => None,
         None => Some(vec![]),
         Some(names) => (names != ["all"]).then_some(names),
     };
-    Ok(From { file, constants: chosen(constants), formations: chosen(formations), line: entry.line })
+    let (constants, formations) = (chosen(constants), chosen(formations));
+    Ok(From { file, constants, formations, composition: chosen(composition), line: entry.line })
 }
 
 /// One table of an array of tables.

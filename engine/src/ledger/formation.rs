@@ -209,8 +209,14 @@ fn fitness(species: &Species) -> u8 {
 ///
 /// # Errors
 ///
-/// As [`Reaction::constant`].
+/// [`ReactionError::NotForLedger`], or as [`Reaction::constant`].
 pub(super) fn in_bar(reaction: &Reaction) -> Result<Reaction, ReactionError> {
     reaction.check_for_ledger()?;
+    reaction.to_gas_standard(GasStandard::Bar)
+}
+
+/// The same for a ledger of seawater.
+pub(super) fn in_bar_at_sea(reaction: &Reaction) -> Result<Reaction, ReactionError> {
+    reaction.check_for_sea_ledger()?;
     reaction.to_gas_standard(GasStandard::Bar)
 }

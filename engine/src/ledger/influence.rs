@@ -24,7 +24,7 @@ pub fn written(influences: &[Influence], quoted: impl Fn(&str) -> String) -> Str
         keys.extend(influence.input.sigma().map(|sigma| format!("sigma = {sigma:?}")));
         let terms = influence.on_log_k.terms().unwrap_or_default();
         let terms: Vec<String> =
-            terms.iter().map(|(term, value)| format!("{} = {value:?}", quoted(term.written()))).collect();
+            terms.iter().map(|(term, value)| format!("{} = {value:?}", quoted(&term.written()))).collect();
         keys.push(format!("log_k_terms = {{ {} }}", terms.join(", ")));
         format!("  {{ {} }},\n", keys.join(", "))
     };
@@ -61,5 +61,5 @@ fn read_one(entry: Value, identity: &str) -> Result<Influence, KeyFault> {
     let terms = reaction::terms(terms).map_err(inner)?;
     named.finish().map_err(inner)?;
     let input = Input::named(&name, &of, sigma).map_err(|error| fault(format!("`{KEY}`: {error}")))?;
-    Ok(Influence { input, on_log_k: LogK::function(&terms) })
+    Ok(Influence { input, on_log_k: LogK::of(terms) })
 }

@@ -2,5 +2,6 @@
 
 pub mod constants;
 pub mod electrode;
+pub mod gas_exchange;
 pub mod seawater;
 pub mod water;

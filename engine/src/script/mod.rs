@@ -40,6 +40,7 @@ mod processes;
 mod quantity;
 mod reaction;
 mod sample;
+mod seawater;
 mod session;
 mod state;
 mod syntax;

@@ -10,9 +10,7 @@ use super::numbers::real;
 use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::chem::reaction::{self as chemistry, salinity};
-use crate::chem::{
-    EquationError, GasStandard, Medium, PhScale, Rational, Reaction, ReactionError, Species, Trail,
-};
+use crate::chem::{EquationError, GasStandard, PhScale, Rational, Reaction, ReactionError, Species, Trail};
 use crate::ledger::{Combined, LedgerError, combine_routes};
 use crate::named::{Named, Value};
 use crate::present::Table;
@@ -140,6 +138,7 @@ fn warn_outside(
 struct Asked {
     temperature: Temperature,
     pressure: Option<Pressure>,
+    salinity: Option<f64>,
 }
 
 impl Asked {
@@ -151,19 +150,9 @@ impl Asked {
             given.map_or(Ok(constant.temperature), |given| chemistry::temperature("temperature", given))?;
         let pressure = options.quantity("pressure", Kind::Pressure)?;
         let pressure = pressure.map(|given| Pressure::try_from(&given)).transpose()?;
-        let asked = options.take("salinity").map(|given| salinity("salinity", given)).transpose()?;
+        let salinity = options.take("salinity").map(|given| salinity("salinity", given)).transpose()?;
         options.finish()?;
-        match (&constant.conditions.medium, asked) {
-            (Medium::Seawater { salinity }, Some(asked)) if asked != *salinity => Err(fail(format!(
-                "log K of `{reaction}` is known for salinity {salinity} only, not for {asked}"
-            ))
-            .key("salinity")),
-            (Medium::Seawater { .. }, _) | (_, None) => Ok(Self { temperature, pressure }),
-            (medium, Some(_)) => {
-                Err(fail(format!("log K of `{reaction}` holds for {medium}: it is no function of salinity"))
-                    .key("salinity"))
-            }
-        }
+        Ok(Self { temperature, pressure, salinity })
     }
 }
 
@@ -357,8 +346,14 @@ mod reaction_functions {
     #[rhai_fn(return_raw)]
     pub fn log_k_at(context: NativeCallContext, reaction: Reaction, at: Dynamic) -> ScriptResult<Quantity> {
         let asked = match at.read_lock::<Map>() {
-            None => Asked { temperature: temperature(&at)?, pressure: None },
+            None => Asked { temperature: temperature(&at)?, pressure: None, salinity: None },
             Some(map) => Asked::read(&reaction, &map)?,
+        };
+        let reaction = match asked.salinity {
+            Some(salinity) => {
+                reaction.at_salinity(salinity).map_err(|error| Fail::from(error).key("salinity"))?
+            }
+            None => reaction,
         };
         warn_outside(&context, &reaction, asked.temperature)?;
         let there = match asked.pressure {

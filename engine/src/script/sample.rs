@@ -38,7 +38,8 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
 }
 
 fn show(sample: &Sample, style: &Style) -> String {
-    let name = sample.name().map_or_else(|| "water".to_string(), |name| format!("water \"{name}\""));
+    let kind = if sample.sea().is_some() { "seawater" } else { "water" };
+    let name = sample.name().map_or_else(|| kind.to_string(), |name| format!("{kind} \"{name}\""));
     let degree = if style.ascii { "degC" } else { "°C" };
     let keys: Vec<&str> = sample
         .entries()
@@ -174,6 +175,20 @@ fn entries(map: &Map) -> Result<BTreeMap<String, Value>, Fail> {
     Ok(entries)
 }
 
+/// A sample of a script's keys, by one of the readers of samples; `ledger` is the one it is computed with.
+pub(super) fn sample_of(
+    keys: &Map,
+    read: fn(BTreeMap<String, Value>) -> Result<Sample, SampleError>,
+) -> ScriptResult<Sample> {
+    let mut keys = keys.clone();
+    let ledger = keys.remove("ledger").map(|ledger| {
+        ledger.try_cast::<Ledger>().ok_or_else(|| fail("`ledger` takes a ledger").key("ledger"))
+    });
+    let ledger = ledger.transpose()?;
+    let sample = read(entries(&keys)?).map_err(Fail::from)?;
+    Ok(ledger.map_or(sample.clone(), |ledger| sample.with_ledger(&ledger)))
+}
+
 fn csv_options(options: &Map) -> Result<CsvOptions, Fail> {
     let mut options = named(options)?;
     let missing = options.texts("missing").map_err(Fail::from)?.unwrap_or_default();
@@ -249,13 +264,7 @@ mod sample_functions {
     /// ```
     #[rhai_fn(name = "sample", return_raw)]
     pub fn sample(keys: Map) -> ScriptResult<Sample> {
-        let mut entries = keys.clone();
-        let ledger = entries.remove("ledger").map(|ledger| {
-            ledger.try_cast::<Ledger>().ok_or_else(|| fail("`ledger` takes a ledger").key("ledger"))
-        });
-        let ledger = ledger.transpose()?;
-        let sample = Sample::read(super::entries(&entries)?).map_err(Fail::from)?;
-        Ok(ledger.map_or(sample.clone(), |ledger| sample.with_ledger(&ledger)))
+        sample_of(&keys, Sample::read)
     }
 
     /// Samples from a CSV file beside the script, with units in its header: `Ca [mg/L]`, `alkalinity [mg/L as CaCO3]`.

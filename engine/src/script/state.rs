@@ -52,16 +52,21 @@ fn show_state(state: &State, style: &Style) -> String {
     };
     let degree = if style.ascii { "degC" } else { "°C" };
     let name = state.of().name().map_or_else(|| "state".to_string(), |name| format!("state of \"{name}\""));
+    let sea = state.system().ledger().sea();
+    let (scale, kg) = sea.map_or((String::new(), "kg(water)"), |sea| {
+        (format!(" ({} scale)", sea.ph_scale.word()), "kg(solution)")
+    });
     let mut lines = vec![
         format!("{name} at {} {degree}", read("temperature", 1)),
-        format!("  pH {}   ionic strength {} mol/kg(water)", read("pH", 3), number("ionic_strength")),
+        format!("  pH {}{scale}   ionic strength {} mol/{kg}", read("pH", 3), number("ionic_strength")),
         format!(
-            "  alkalinity {} meq/kg(water)   DIC {} mmol/kg(water)   charge error {} %",
+            "  alkalinity {} meq/{kg}   DIC {} mmol/{kg}   charge error {} %",
             number("alkalinity [meq/kg]"),
             number("DIC [mmol/kg]"),
             read("charge_error", 1)
         ),
     ];
+    lines.extend(state.choices().map(|choices| format!("  {choices}")));
     lines.extend(state.warnings().iter().map(|warning| format!("  note: {warning}")));
     lines.push("  `.species()`, `.phases()` and `.get(\"SI(calcite)\")` show more".to_string());
     lines.join("\n")
@@ -501,8 +506,8 @@ mod state_functions {
 mod run_functions {
     use super::*;
 
-    /// Every combination of the values of some axes, as a run: an axis is `temperature`, `pressure`, `pH`, `f(CO2(g))` or
-    /// `SI(calcite)`, with a unit, or a key of the analysis as `as measured: Ca`. Axes in alphabetical order, last fastest.
+    /// Every combination of the values of some axes, as a run: an axis is `temperature`, `pressure`, `pH`, `f(CO2(g))`,
+    /// `SI(calcite)` or `added(HCl)`, with a unit, or a key of the analysis as `as measured: Ca`. Axes in alphabetical order, last fastest.
     ///
     /// ```rhai
     /// let rain = sample(#{ pH: "electroneutral" });

@@ -9,7 +9,7 @@ use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
     Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, processes, quantity,
-    reaction, sample, state, table, tableau, treatments,
+    reaction, sample, seawater, state, table, tableau, treatments,
 };
 
 /// Gathers everything a script can name.
@@ -28,6 +28,7 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     reaction::register(vocabulary);
     ledger::register(vocabulary);
     sample::register(vocabulary);
+    seawater::register(vocabulary);
     treatments::register(vocabulary);
     state::register(vocabulary);
     tableau::register(vocabulary);

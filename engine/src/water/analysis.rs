@@ -6,6 +6,7 @@ use super::analyte::Analyte;
 use super::concentration::{self, Amount};
 use super::redox::Redox;
 use crate::chem::{Species, reaction};
+use crate::ledger::Sea;
 use crate::named::{KeyFault, Named, Value};
 use crate::nearest::nearest;
 use crate::quantity::Quantity;
@@ -40,7 +41,7 @@ pub struct Dissolved {
 #[derive(Debug, Clone, Default)]
 pub struct Measured {
     /// Amounts by analyte, with the key each was given under.
-    pub amounts: Vec<(Analyte, String, Amount)>,
+    pub amounts: Vec<Given>,
     /// pH, alkalinity, inorganic carbon and CO2, as measured.
     pub evidence: Evidence,
     /// The key whose total absorbs the charge misfit.
@@ -53,7 +54,14 @@ pub struct Measured {
     pub temperature: Option<Quantity>,
     /// pe, Eh or ORP as measured, and the couples in equilibrium.
     pub redox: Redox,
+    /// Salinity, pressure and scale of pH of a seawater.
+    pub sea: Option<Sea>,
+    /// The temperature at which pH was measured, where that is not the water's own.
+    pub ph_temperature: Option<Temperature>,
 }
+
+/// An amount with what it is of and the key it was given under.
+pub type Given = (Analyte, String, Amount);
 
 /// What was measured of the acid-base state.
 #[derive(Debug, Clone, Default)]
@@ -101,6 +109,8 @@ pub struct Read {
     pub measured: Measured,
     /// Defaults that were used, in words.
     pub defaults: Vec<String>,
+    /// How what was given was taken, in words.
+    pub notes: Vec<String>,
 }
 
 /// The keys of a sample besides amounts.
@@ -130,9 +140,9 @@ pub const KEYS: [&str; 21] = [
 
 /// Keys of later landings, refused with a word rather than as misspelt.
 const NOT_YET: [(&str, &str); 3] = [
-    ("salinity", "it belongs to `seawater`, which is not there yet"),
+    ("salinity", "it belongs to `seawater(#{ … })`"),
     ("ph_scale", "outside seawater pH is -log10 of the activity of H^+"),
-    ("pH_temperature", "give pH as it is at the sample's temperature"),
+    ("pH_temperature", "give pH as it is at the sample's temperature; `seawater(#{ … })` takes both"),
 ];
 
 /// A bare total above this, mol/kg(water), is taken for a forgotten unit.
@@ -154,7 +164,10 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let volume_temperature =
         named.take("volume_temperature").map(|v| reaction::temperature("volume_temperature", v));
     let mut measured = Measured {
-        evidence: read_evidence(&mut named, setting.pressure)?,
+        evidence: {
+            let co2 = read_co2(&mut named, setting.pressure)?;
+            read_evidence(&mut named, co2)?
+        },
         make_up: named.text("make_up")?,
         redox: super::redox::read(&mut named, setting.temperature)?,
         density,
@@ -163,7 +176,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
         ..Measured::default()
     };
     for (key, value) in named.rest() {
-        measured.amounts.push(read_amount(key, value)?);
+        measured.amounts.push(read_amount(key, value, &[])?);
     }
     check_make_up(&measured)?;
     if measured.evidence.dic.is_some()
@@ -171,11 +184,11 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     {
         return Err(KeyFault::new("DIC", "`DIC` and `C` state the same carbon: keep one"));
     }
-    Ok(Read { name, setting, measured, defaults })
+    Ok(Read { name, setting, measured, defaults, notes: vec![] })
 }
 
 /// The setting, and the temperature in kelvin where it was measured.
-fn read_setting(
+pub(super) fn read_setting(
     named: &mut Named,
     defaults: &mut Vec<String>,
 ) -> Result<(Setting, Option<Quantity>), KeyFault> {
@@ -220,7 +233,7 @@ pub fn pressure_of(key: &str, quantity: &Quantity) -> Result<Pressure, KeyFault>
     Pressure::try_from(quantity).map_err(|error| KeyFault::new(key, format!("`{key}`: {error}")))
 }
 
-fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
+pub(super) fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
     let Some(quantity) = named.quantity("density", Kind::Density)? else { return Ok(None) };
     let unit = crate::units::Unit::parse("kg/L").expect("a known unit");
     let density = quantity.to(&unit).map_err(|error| KeyFault::new("density", error.to_string()))?.value();
@@ -231,7 +244,8 @@ fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
     }
 }
 
-fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyFault> {
+/// pH, alkalinity and inorganic carbon, beside the fugacity of CO2 in bar.
+pub(super) fn read_evidence(named: &mut Named, co2: Option<Quantity>) -> Result<Evidence, KeyFault> {
     let ph = match named.take("pH") {
         None => None,
         Some(Value::Text(text)) if text == "electroneutral" => Some(Ph::Electroneutral),
@@ -260,8 +274,7 @@ fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyF
     if let Some(dic) = &dic {
         not_negative("DIC", dic)?;
     }
-    let evidence =
-        Evidence { ph, alkalinity, dic, co2: read_co2(named, pressure)?, from: named.texts("from")? };
+    let evidence = Evidence { ph, alkalinity, dic, co2, from: named.texts("from")? };
     check_pair(&evidence)?;
     Ok(evidence)
 }
@@ -351,12 +364,13 @@ fn check_pair(evidence: &Evidence) -> Result<(), KeyFault> {
     Ok(())
 }
 
-fn read_amount(key: String, value: Value) -> Result<(Analyte, String, Amount), KeyFault> {
+/// Reads an amount by its key; `more` are keys beside [`KEYS`] that a misspelt one may be meant as.
+pub(super) fn read_amount(key: String, value: Value, more: &[&'static str]) -> Result<Given, KeyFault> {
     if let Some((_, why)) = NOT_YET.iter().find(|(later, _)| *later == key) {
         return Err(KeyFault::new(key.clone(), format!("`{key}` is not read here: {why}")));
     }
     let analyte = Analyte::parse(&key).map_err(|error| {
-        let message = match nearest(&key, KEYS) {
+        let message = match nearest(&key, KEYS.into_iter().chain(more.iter().copied())) {
             Some(close) if !matches!(error, super::analyte::AnalyteError::Carbonate(_)) => {
                 format!("unknown key `{key}`; did you mean `{close}`?")
             }
@@ -370,6 +384,16 @@ fn read_amount(key: String, value: Value) -> Result<(Analyte, String, Amount), K
         let message = format!("`{key}`: {number} mol/kg? write \"{number} mg/L\"");
         return Err(KeyFault::new(key, message));
     }
+    amount_of(analyte, key, value)
+}
+
+/// Reads an amount of a named analyte under a key of its own.
+pub(super) fn read_amount_of(analyte: &str, key: &str, value: Value) -> Result<Given, KeyFault> {
+    let analyte = Analyte::parse(analyte).map_err(|error| KeyFault::new(key, error.to_string()))?;
+    amount_of(analyte, key.into(), value)
+}
+
+fn amount_of(analyte: Analyte, key: String, value: Value) -> Result<Given, KeyFault> {
     let given = crate::named::quantity(&key, value, Kind::Amount)?;
     let amount = concentration::amount(&analyte, &given);
     let amount = amount.map_err(|message| KeyFault::new(key.clone(), format!("`{key}`: {message}")))?;
@@ -384,7 +408,7 @@ fn not_negative(key: &str, amount: &Amount) -> Result<(), KeyFault> {
     Ok(())
 }
 
-fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
+pub(super) fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
     let Some(key) = &measured.make_up else { return Ok(()) };
     if matches!(measured.evidence.ph, Some(Ph::Electroneutral)) {
         return Err(KeyFault::new(

@@ -8,6 +8,7 @@ pub mod analysis;
 pub mod analyte;
 pub mod concentration;
 pub mod csv_text;
+pub mod marine;
 pub mod redox;
 pub mod sample;
 pub mod survey;

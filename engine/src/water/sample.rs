@@ -5,9 +5,10 @@ use std::collections::BTreeMap;
 use std::sync::Arc;
 
 use super::analysis::{self, Analysis, Dissolved, Measured, Ph, Setting};
+use super::marine;
 use super::redox::{PE_RANGE, Potential};
 use super::treatment::Treatment;
-use crate::ledger::{Ledger, LedgerError};
+use crate::ledger::{Ledger, LedgerError, Sea};
 use crate::named::{KeyFault, Value};
 use crate::quantity::Quantity;
 use crate::units::{Pressure, Temperature};
@@ -31,6 +32,9 @@ struct Inner {
     entries: BTreeMap<String, Value>,
     notes: Vec<String>,
 }
+
+/// A treatment with what its value was stated as, where that came with an uncertainty.
+pub(crate) type StatedTreatment = (Treatment, Option<Quantity>);
 
 /// Why a sample cannot be made or treated so.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
@@ -59,14 +63,31 @@ impl Sample {
     ///
     /// The first fault with its key.
     pub fn read(entries: BTreeMap<String, Value>) -> Result<Self, SampleError> {
+        Self::read_by(entries, analysis::read)
+    }
+
+    /// A seawater of named keys: see [`marine::read`].
+    ///
+    /// # Errors
+    ///
+    /// The first fault with its key.
+    pub fn read_seawater(entries: BTreeMap<String, Value>) -> Result<Self, SampleError> {
+        Self::read_by(entries, marine::read)
+    }
+
+    fn read_by(
+        entries: BTreeMap<String, Value>,
+        reader: fn(BTreeMap<String, Value>) -> Result<analysis::Read, KeyFault>,
+    ) -> Result<Self, SampleError> {
         let mut read = entries.clone();
         read.remove("ledger");
         let labels = take_labels(&mut read)?;
-        let analysis::Read { name, setting, measured, defaults } = analysis::read(read)?;
-        let notes = match defaults.as_slice() {
+        let analysis::Read { name, setting, measured, defaults, notes: mut taken } = reader(read)?;
+        let mut notes = match defaults.as_slice() {
             [] => vec![],
             defaults => vec![format!("not given, so taken: {}", defaults.join(", "))],
         };
+        notes.append(&mut taken);
         let analysis = Analysis::Measured(Box::new(measured));
         Ok(Self(Arc::new(Inner {
             name,
@@ -204,6 +225,17 @@ impl Sample {
         }
     }
 
+    /// The sea it is of: salinity, pressure and scale of pH of a seawater at its analysis.
+    #[must_use]
+    pub fn sea(&self) -> Option<Sea> {
+        match &self.0.analysis {
+            Analysis::Measured(measured) => measured.sea,
+            Analysis::Dissolved(_) => self.0.ledger.as_ref().and_then(Ledger::sea),
+            Analysis::Mixed(parts) => mixed_sea(parts, self.setting().pressure),
+            Analysis::Spoilt(_) => None,
+        }
+    }
+
     /// What is done to it, in order.
     #[must_use]
     pub fn treatments(&self) -> &[Treatment] {
@@ -247,9 +279,7 @@ impl Sample {
     ///
     /// The first fault with its key, or [`SampleError::NoAnalysis`].
     pub fn but(&self, changes: BTreeMap<String, Option<Value>>) -> Result<Self, SampleError> {
-        if self.measured().is_none() {
-            return Err(SampleError::NoAnalysis);
-        }
+        let Some(measured) = self.measured() else { return Err(SampleError::NoAnalysis) };
         let mut entries = self.0.entries.clone();
         for (key, value) in changes {
             match value {
@@ -257,7 +287,10 @@ impl Sample {
                 None => entries.remove(&key),
             };
         }
-        let edited = Self::read(entries)?;
+        let edited = match measured.sea {
+            Some(_) => Self::read_seawater(entries)?,
+            None => Self::read(entries)?,
+        };
         let Inner { name, setting, analysis, entries, notes, labels, .. } = (*edited.0).clone();
         let labels = if labels.is_empty() { self.0.labels.clone() } else { labels };
         Ok(Self(Arc::new(Inner { name, setting, analysis, entries, notes, labels, ..(*self.0).clone() })))
@@ -278,10 +311,19 @@ impl Sample {
         Self(Arc::new(inner))
     }
 
+    /// Its treatments, each with what its value was stated as.
+    pub(crate) fn stated_treatments(&self) -> impl Iterator<Item = StatedTreatment> {
+        let stated = |(k, treatment): (usize, &Treatment)| (treatment.clone(), self.stated_value(k).cloned());
+        self.0.treatments.iter().enumerate().map(stated)
+    }
+
     /// The same with other treatments.
     #[must_use]
-    pub(crate) fn with_treatments(&self, treatments: Vec<Treatment>) -> Self {
-        Self(Arc::new(Inner { treatments, ..(*self.0).clone() }))
+    pub(crate) fn with_treatments(&self, treatments: Vec<StatedTreatment>) -> Self {
+        let stated = treatments.iter().enumerate();
+        let stated = stated.filter_map(|(k, (_, stated))| Some((k, stated.clone()?))).collect();
+        let treatments = treatments.into_iter().map(|(treatment, _)| treatment).collect();
+        Self(Arc::new(Inner { treatments, stated, ..(*self.0).clone() }))
     }
 
     /// The same with every measured quantity replaced, those of waters mixed into it and of its treatments too.
@@ -326,6 +368,10 @@ impl Sample {
         if let Some(kelvin) = uncertain {
             *kelvin = change(kelvin);
             inner.setting.temperature = Temperature::try_from(&*kelvin).unwrap_or(inner.setting.temperature);
+        }
+        for (k, stated) in &mut inner.stated {
+            *stated = change(stated);
+            set_value(&mut inner.treatments[*k], stated);
         }
         for treatment in &mut inner.treatments {
             match treatment {
@@ -373,9 +419,33 @@ impl Sample {
     }
 }
 
+/// Gives a treatment the value it is now stated as, in the unit the treatment holds it in.
+fn set_value(treatment: &mut Treatment, stated: &Quantity) {
+    match treatment {
+        Treatment::OpenTo { fugacity: value, .. }
+        | Treatment::Saturate { index: value, .. }
+        | Treatment::Allow { above: value, .. }
+        | Treatment::HoldPh { ph: value, .. } => *value = stated.value(),
+        Treatment::WarmTo(temperature) => {
+            *temperature = Temperature::try_from(stated).unwrap_or(*temperature);
+        }
+        Treatment::CompressTo(pressure) => *pressure = Pressure::try_from(stated).unwrap_or(*pressure),
+        _ => {}
+    }
+}
+
 /// Mean temperature of waters by their shares.
 fn mean_kelvin(shares: &[(Sample, f64)]) -> f64 {
     shares.iter().map(|(part, share)| share * part.setting_after().temperature.kelvin()).sum()
+}
+
+/// The sea of mixed seawaters: salinity is conserved. `None` if one of them is no seawater.
+fn mixed_sea(parts: &[(Sample, f64)], pressure: Pressure) -> Option<Sea> {
+    let seas = parts.iter().map(|(part, share)| Some((part.sea()?, *share)));
+    let seas: Vec<(Sea, f64)> = seas.collect::<Option<_>>()?;
+    let salinity = seas.iter().map(|(sea, share)| sea.salinity * share).sum();
+    let ph_scale = seas.first()?.0.ph_scale;
+    Some(Sea { salinity, pressure, ph_scale })
 }
 
 impl std::fmt::Debug for Inner {
