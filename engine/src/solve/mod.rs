@@ -212,6 +212,8 @@ fn component_activities(system: &System) -> Vec<f64> {
 /// Amounts and saturations of reservoirs and minerals, as in [`Converged`].
 struct Phases {
     reservoir_amount: Vec<f64>,
+    /// The sum of absolute terms that each of these amounts is the difference of.
+    reservoir_terms: Vec<f64>,
     mineral_amount: Vec<f64>,
     mineral_present: Vec<bool>,
     mineral_ln_saturation: Vec<f64>,
@@ -227,6 +229,7 @@ impl Phases {
         };
         let mut phases = Self {
             reservoir_amount: vec![0.0; system.problem.reservoirs.len()],
+            reservoir_terms: vec![0.0; system.problem.reservoirs.len()],
             mineral_amount: system.mineral_amount.clone(),
             mineral_present: vec![false; n_minerals],
             mineral_ln_saturation: (0..n_minerals).map(saturation).collect(),
@@ -240,7 +243,9 @@ impl Phases {
                 phases.mineral_present[mineral_idx] = true;
             }
             if let Some(reservoir_idx) = system.reservoir_of(column) {
-                phases.reservoir_amount[reservoir_idx] = -system.held_amount(column).0;
+                let (amount, terms) = system.held_amount(column);
+                phases.reservoir_amount[reservoir_idx] = -amount;
+                phases.reservoir_terms[reservoir_idx] = terms;
             }
         }
         phases
