@@ -53,11 +53,15 @@ pub(super) fn find(ledger: &Ledger, name: &str, author: &str) -> Result<Reaction
     found.map(|alternative| alternative.reaction.clone()).ok_or_else(|| LedgerError::NoAlternative {
         name: name.into(),
         author: author.into(),
-        known: candidates.into_iter().map(|alternative| alternative.author).collect(),
+        known: candidates
+            .into_iter()
+            .filter(|other| other.reaction != *own)
+            .map(|other| other.author)
+            .collect(),
     })
 }
 
-pub(super) fn find_constituent(_: &Ledger, name: &str, author: &str) -> Result<Constituent, LedgerError> {
+pub(super) fn find_constituent(name: &str, author: &str) -> Result<Constituent, LedgerError> {
     let candidates: Vec<(String, &Constituent)> = constituents(name).collect();
     let found = candidates.iter().find(|(own, _)| plain(own) == plain(author));
     found.map(|(_, constituent)| (*constituent).clone()).ok_or_else(|| LedgerError::NoAlternative {

@@ -484,7 +484,7 @@ impl Ledger {
     /// [`LedgerError::Unknown`] or [`LedgerError::NoAlternative`].
     pub fn choose(&self, name: &str, author: &str) -> Result<Self, LedgerError> {
         if self.0.composition.contains_key(name) {
-            return Ok(self.with_constituent(alternative::find_constituent(self, name, author)?));
+            return Ok(self.with_constituent(alternative::find_constituent(name, author)?));
         }
         let several: Vec<&str> = name.split_whitespace().collect();
         if several.len() > 1 && self.reaction(name).is_err() {
