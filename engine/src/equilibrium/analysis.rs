@@ -123,13 +123,14 @@ pub fn analyse(
     let mut given = amounts(measured, ledger, &solution, &mut notes)?;
     given.extend(conservative(ledger, &given)?);
     let present = present_components(sample, measured, ledger, &given)?;
+    let setting = sample.setting();
     let system = match measured.ph_temperature {
-        None => System::new(ledger, &present, sample.setting().temperature)?,
+        None => System::new(ledger, &present, setting.temperature, setting.pressure)?,
         // Where pH was measured elsewhere, it was in a laboratory at the surface.
         Some(temperature) => {
             let surface = ledger.sea().map(|sea| Sea { pressure: Pressure::ATMOSPHERE, ..sea });
             let ledger = surface.map_or_else(|| Ok(ledger.clone()), |surface| ledger.in_sea(surface))?;
-            System::new(&ledger, &present, temperature)?
+            System::new(&ledger, &present, temperature, Pressure::ATMOSPHERE)?
         }
     };
     let mut totals = vec![0.0; system.n_components()];
@@ -180,7 +181,7 @@ pub fn restore(
     }
     present.extend(formed.iter().flat_map(|formed| formed.stoichiometry.iter().map(|(j, _)| *j)));
     present.extend(formations.component(&Species::proton()));
-    let system = System::new(ledger, &present, sample.setting().temperature)?;
+    let system = System::new(ledger, &present, sample.setting().temperature, sample.setting().pressure)?;
     let mut totals = vec![0.0; system.n_components()];
     let mut measured = Vec::new();
     for (formed, (_, moles)) in formed.into_iter().zip(&dissolved.totals) {
