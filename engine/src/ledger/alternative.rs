@@ -24,6 +24,14 @@ pub(super) fn alternatives(ledger: &Ledger) -> Vec<Alternative> {
     candidates.collect()
 }
 
+pub(super) fn constituent_alternatives(ledger: &Ledger) -> Vec<(String, String)> {
+    let others = ledger.composition().flat_map(|own| {
+        let others = constituents(&own.name).filter(move |(_, constituent)| *constituent != own);
+        others.map(|(author, _)| (own.name.clone(), author))
+    });
+    others.collect()
+}
+
 /// Author and year of what is in use where there is a choice.
 pub(super) fn choices(ledger: &Ledger) -> Vec<(String, String)> {
     let mut choices = Vec::new();

@@ -471,6 +471,12 @@ impl Ledger {
         self.replace(name, &alternative::find(self, name, author)?)
     }
 
+    /// Shipped ratios for what goes with salinity that it does not use, by name with author and year.
+    #[must_use]
+    pub fn constituent_alternatives(&self) -> Vec<(String, String)> {
+        alternative::constituent_alternatives(self)
+    }
+
     /// Author and year of each constant, and of each constituent of seawater, that has a shipped alternative.
     #[must_use]
     pub fn choices(&self) -> Vec<(String, String)> {
