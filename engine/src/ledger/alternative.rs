@@ -24,6 +24,14 @@ pub(super) fn alternatives(ledger: &Ledger) -> Vec<Alternative> {
     candidates.collect()
 }
 
+pub(super) fn constituent_alternatives(ledger: &Ledger) -> Vec<(String, String)> {
+    let others = ledger.composition().flat_map(|own| {
+        let others = constituents(&own.name).filter(move |(_, constituent)| *constituent != own);
+        others.map(|(author, _)| (own.name.clone(), author))
+    });
+    others.collect()
+}
+
 /// Author and year of what is in use where there is a choice.
 pub(super) fn choices(ledger: &Ledger) -> Vec<(String, String)> {
     let mut choices = Vec::new();
@@ -53,11 +61,15 @@ pub(super) fn find(ledger: &Ledger, name: &str, author: &str) -> Result<Reaction
     found.map(|alternative| alternative.reaction.clone()).ok_or_else(|| LedgerError::NoAlternative {
         name: name.into(),
         author: author.into(),
-        known: candidates.into_iter().map(|alternative| alternative.author).collect(),
+        known: candidates
+            .into_iter()
+            .filter(|other| other.reaction != *own)
+            .map(|other| other.author)
+            .collect(),
     })
 }
 
-pub(super) fn find_constituent(_: &Ledger, name: &str, author: &str) -> Result<Constituent, LedgerError> {
+pub(super) fn find_constituent(name: &str, author: &str) -> Result<Constituent, LedgerError> {
     let candidates: Vec<(String, &Constituent)> = constituents(name).collect();
     let found = candidates.iter().find(|(own, _)| plain(own) == plain(author));
     found.map(|(_, constituent)| (*constituent).clone()).ok_or_else(|| LedgerError::NoAlternative {

@@ -462,13 +462,19 @@ impl Ledger {
     /// [`LedgerError::Unknown`] or [`LedgerError::NoAlternative`].
     pub fn choose(&self, name: &str, author: &str) -> Result<Self, LedgerError> {
         if self.0.composition.contains_key(name) {
-            return Ok(self.with_constituent(alternative::find_constituent(self, name, author)?));
+            return Ok(self.with_constituent(alternative::find_constituent(name, author)?));
         }
         let several: Vec<&str> = name.split_whitespace().collect();
         if several.len() > 1 && self.reaction(name).is_err() {
             return several.into_iter().try_fold(self.clone(), |ledger, one| ledger.choose(one, author));
         }
         self.replace(name, &alternative::find(self, name, author)?)
+    }
+
+    /// Shipped ratios for what goes with salinity that it does not use, by name with author and year.
+    #[must_use]
+    pub fn constituent_alternatives(&self) -> Vec<(String, String)> {
+        alternative::constituent_alternatives(self)
     }
 
     /// Author and year of each constant, and of each constituent of seawater, that has a shipped alternative.

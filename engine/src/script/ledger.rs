@@ -82,13 +82,14 @@ impl From<ShippedError> for Fail {
 fn reaction_table<'a>(reactions: impl Iterator<Item = (&'a str, &'a Reaction)>) -> Result<Table, Fail> {
     let rows: Vec<(&str, &Reaction)> = reactions.collect();
     let constants: Vec<_> = rows.iter().filter_map(|(_, reaction)| reaction.constant().ok()).collect();
-    let log_k =
-        constants.iter().map(|constant| Cell::number(constant.log_k.nearest_to(Temperature::REFERENCE).0));
+    let log_k = constants
+        .iter()
+        .map(|constant| Cell::number(constant.at_own_salinity().nearest_to(Temperature::REFERENCE).0));
     let sigma = rows.iter().map(|(_, reaction)| {
         reaction.log_k().ok().and_then(|log_k| log_k.sigma()).map_or_else(Cell::missing, Cell::number)
     });
     let enthalpy = constants.iter().map(|constant| {
-        constant.log_k.enthalpy(Temperature::REFERENCE).map_or_else(Cell::missing, Cell::number)
+        constant.at_own_salinity().enthalpy(Temperature::REFERENCE).map_or_else(Cell::missing, Cell::number)
     });
     let range = constants.iter().map(|constant| match (constant.log_k.range(), constant.log_k.only_at()) {
         (Some(range), _) => format!("{:.0} to {:.0}", range.lowest.celsius(), range.highest.celsius()),
@@ -170,9 +171,10 @@ fn moves_table(reconciliation: &Reconciliation) -> Result<Table, Fail> {
 /// Shipped constants in the place of a ledger's own.
 fn alternatives_table(ledger: &Ledger, alternatives: &[Alternative]) -> Result<Table, Fail> {
     let log_k = |reaction: &Reaction| {
-        reaction
-            .constant()
-            .map_or_else(|_| Cell::missing(), |c| Cell::number(c.log_k.nearest_to(Temperature::REFERENCE).0))
+        reaction.constant().map_or_else(
+            |_| Cell::missing(),
+            |c| Cell::number(c.at_own_salinity().nearest_to(Temperature::REFERENCE).0),
+        )
     };
     let own = |alternative: &Alternative| {
         ledger.reaction(&alternative.name).map_or_else(|_| Cell::missing(), log_k)
@@ -180,14 +182,25 @@ fn alternatives_table(ledger: &Ledger, alternatives: &[Alternative]) -> Result<T
     let sigma = |reaction: &Reaction| {
         reaction.log_k().ok().and_then(|log_k| log_k.sigma()).map_or_else(Cell::missing, Cell::number)
     };
+    // What goes with salinity has alternatives too, which are no constants.
+    let constituents = ledger.constituent_alternatives();
+    let names = alternatives.iter().map(|a| a.name.as_str());
+    let authors = alternatives.iter().map(|a| a.author.as_str());
     let equations: Vec<String> = alternatives.iter().map(|a| a.reaction.equation().to_string()).collect();
+    let none = || constituents.iter().map(|_| Cell::missing());
+    let cells = |cell: &dyn Fn(&Alternative) -> Cell| -> Vec<Cell> {
+        alternatives.iter().map(cell).chain(none()).collect()
+    };
     Table::new([
-        Column::chemistry("name", alternatives.iter().map(|a| a.name.as_str())),
-        Column::texts("by", alternatives.iter().map(|a| a.author.as_str())),
-        Column::chemistry("reaction", equations.iter().map(String::as_str)),
-        Column::new("log K", alternatives.iter().map(|a| log_k(&a.reaction)).collect::<Vec<_>>()),
-        Column::new("sigma", alternatives.iter().map(|a| sigma(&a.reaction)).collect::<Vec<_>>()),
-        Column::new("log K in use", alternatives.iter().map(own).collect::<Vec<_>>()),
+        Column::chemistry("name", names.chain(constituents.iter().map(|(name, _)| name.as_str()))),
+        Column::texts("by", authors.chain(constituents.iter().map(|(_, author)| author.as_str()))),
+        Column::chemistry(
+            "reaction",
+            equations.iter().map(String::as_str).chain(constituents.iter().map(|_| "")),
+        ),
+        Column::new("log K", cells(&|a| log_k(&a.reaction))),
+        Column::new("sigma", cells(&|a| sigma(&a.reaction))),
+        Column::new("log K in use", cells(&own)),
     ])
     .map_err(|error| fail(error.to_string()))
 }

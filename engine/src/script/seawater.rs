@@ -101,7 +101,7 @@ mod seawater_functions {
     ///
     /// ```rhai
     /// let sea = seawater(#{ salinity: 35, temperature: 25, DIC: "2000 umol/kg", alkalinity: "2300 umol/kg" });
-    /// fmt(sea.equilibrate().get("pH(total)").value, ".4f")   // "8.0449"
+    /// fmt(sea.equilibrate().get("pH(total)").value, ".4f")   // "8.0401"
     /// ```
     #[rhai_fn(name = "seawater", return_raw)]
     pub fn seawater(keys: Map) -> ScriptResult<Sample> {
@@ -144,7 +144,7 @@ mod seawater_functions {
     /// ```rhai
     /// let river = sample(#{ pH: 7.8, alkalinity: "1.2 meq/L", Ca: "20 mg/L" }).equilibrate();
     /// let sea = seawater(#{ salinity: 34, DIC: "2050 umol/kg", alkalinity: "2290 umol/kg" }).equilibrate();
-    /// fmt(estuary(river, sea, [0.5]).equilibrate().column("alkalinity [umol/kg]").mean, ".0f")   // "1745"
+    /// fmt(estuary(river, sea, [0.5]).equilibrate().column("alkalinity [umol/kg]").mean, ".0f")   // "1746"
     /// ```
     #[rhai_fn(return_raw)]
     pub fn estuary(river: State, sea: State, fractions: Array) -> ScriptResult<Array> {
@@ -195,7 +195,7 @@ mod seawater_functions {
     /// Pressure above the surface's, dbar, at a depth (m) and a latitude (degrees).
     ///
     /// ```rhai
-    /// fmt(pressure_at_depth(1000, 30).to("dbar").value, ".1f")   // "1008.5"
+    /// fmt(pressure_at_depth(1000, 30).to("dbar").value, ".1f")   // "1009.6"
     /// ```
     #[rhai_fn(return_raw)]
     pub fn pressure_at_depth(depth: Dynamic, latitude: Dynamic) -> ScriptResult<Quantity> {
@@ -294,7 +294,7 @@ mod seawater_functions {
     /// salinity.
     ///
     /// ```rhai
-    /// fmt(cresol_purple_pH(1.5, 25, 35), ".3f")   // "7.875"
+    /// fmt(cresol_purple_pH(1.5, 25, 35), ".3f")   // "7.874"
     /// ```
     #[rhai_fn(name = "cresol_purple_pH", return_raw)]
     pub fn cresol_purple(ratio: Dynamic, at: Dynamic, salinity: Dynamic) -> ScriptResult<FLOAT> {
