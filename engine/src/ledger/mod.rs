@@ -19,6 +19,7 @@ mod ledger;
 mod network;
 mod reconcile;
 pub mod save;
+pub mod in_force;
 pub mod shipped;
 pub mod standard_formation;
 

@@ -1,5 +1,6 @@
 //! Many equilibria: a [`Run`] holds their states in order, [`sweep`] makes one over axes.
 
+pub mod diagram;
 pub mod run;
 pub mod sweep;
 

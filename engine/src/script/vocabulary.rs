@@ -8,7 +8,7 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
-    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, quantity, reaction, sample,
+    Fail, Host, ScriptResult, column, compare, general, ledger, numbers, plot, quantity, reaction, record, sample,
     state, table,
 };
 
@@ -29,7 +29,8 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     ledger::register(vocabulary);
     sample::register(vocabulary);
     state::register(vocabulary);
-    expect::register(vocabulary);
+    plot::register(vocabulary);
+    record::register(vocabulary);
 }
 
 /// The language without chemistry.
@@ -40,6 +41,7 @@ pub(super) fn base(vocabulary: &mut Vocabulary) {
         .module(rhai::exported_module!(general::general_functions))
         .pure(&["pow", "exp10", "exp", "ln", "log10", "sqrt", "abs", "min", "max", "idiv", "fmt"])
         .pure(&["linspace", "logspace", "steps", "args"])
+        .native::<general::Arguments>("Arguments", |arguments, _| arguments.to_string())
         .native::<Fail>("Failure", |fail, _| fail.message.clone())
         .module(rhai::exported_module!(failure));
 }
