@@ -149,6 +149,31 @@ impl ScriptEngine {
         on_deep_stack(|| self.compile(name, &text, &Scope::new(), None).map(drop))
     }
 
+    /// Every file read so far, modules among them, in alphabetical order.
+    #[must_use]
+    pub fn files_read(&self) -> Vec<std::path::PathBuf> {
+        let read: std::collections::BTreeSet<_> =
+            self.host.files().files_read().map(std::path::Path::to_owned).chain(self.modules.paths()).collect();
+        read.into_iter().collect()
+    }
+
+    /// The numbers written as `seed: 7` in a script: what its random draws start from.
+    #[must_use]
+    pub fn seeds(&self, text: &str) -> Vec<i64> {
+        let mut seeds = Vec::new();
+        let Ok(ast) = self.engine.compile(clean(text)) else { return seeds };
+        ast.walk(&mut |path| {
+            if let Some(rhai::ASTNode::Expr(rhai::Expr::Map(map, _))) = path.last() {
+                seeds.extend(map.0.iter().filter(|(key, _)| key.name == "seed").filter_map(|(_, value)| match value {
+                    rhai::Expr::IntegerConstant(seed, _) => Some(*seed),
+                    _ => None,
+                }));
+            }
+            true
+        });
+        seeds
+    }
+
     /// Declarations of everything a script can call, for editors that read Rhai's definition files.
     #[must_use]
     pub fn definitions(&self) -> String {
@@ -176,13 +201,15 @@ impl ScriptEngine {
     ) -> Result<Option<Dynamic>, Box<Diagnostic>> {
         self.modules.forget_main();
         self.host.records().begin();
-        on_deep_stack(|| {
+        let result = on_deep_stack(|| {
             let source = self.compile(name, text, scope, None)?;
             if self.host.is_gathering() {
                 return self.evaluate_by_statement(name, &source, scope);
             }
             self.evaluate(name, &source, scope)
-        })
+        });
+        scope.iter_raw().for_each(|(.., value)| self.host.rests_on(&value.flatten_clone()));
+        result
     }
 
     /// The reader's error for `text`, if any.

@@ -64,6 +64,7 @@ struct Parts {
     progress: Option<OnProgress>,
     shown: Option<OnShown>,
     records: Mutex<Records>,
+    sources: Mutex<super::Sources>,
 }
 
 impl Host {
@@ -79,6 +80,7 @@ impl Host {
             progress: options.progress,
             shown: options.shown,
             records: Mutex::default(),
+            sources: Mutex::default(),
         }))
     }
 
@@ -148,6 +150,7 @@ impl Host {
         if self.0.shown.is_none() {
             return;
         }
+        self.sources().gather(value);
         let table = || value.read_lock::<crate::chem::Trail>().map(|trail| trail.table());
         self.report(if let Some(plot) = value.read_lock::<crate::present::plot::Plot>() {
             Shown::Plot(plot.clone())
@@ -165,6 +168,18 @@ impl Host {
         if let Some(gather) = &self.0.shown {
             gather(shown);
         }
+    }
+
+    /// Notes what a value rests on, while a report is being gathered.
+    pub(super) fn rests_on(&self, value: &Dynamic) {
+        if self.is_gathering() {
+            self.sources().gather(value);
+        }
+    }
+
+    /// What the values shown rest on, while a report is being gathered.
+    pub fn sources(&self) -> MutexGuard<'_, super::Sources> {
+        self.0.sources.lock().unwrap_or_else(PoisonError::into_inner)
     }
 
     /// What the script recorded and checked so far.

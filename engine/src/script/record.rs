@@ -155,6 +155,7 @@ mod record_functions {
     #[rhai_fn(return_raw)]
     pub fn record(context: NativeCallContext, label: &str, value: Dynamic) -> ScriptResult<()> {
         let host = Host::of(&context);
+        host.rests_on(&value);
         let record = Record { label: label.to_owned(), value: recorded(&value)?, expected: None };
         host.records().add(record.clone())?;
         host.report(Shown::Record(record));
@@ -180,6 +181,7 @@ mod record_functions {
         let allowed = super::tolerance(&tolerance, expected)?;
         if (found - expected).abs() <= allowed {
             let host = Host::of(&context);
+            host.rests_on(&value);
             let value = recorded(&value)?;
             let expected = Some(Expected { value: expected, tolerance: allowed });
             let record = host.records().add_check(Record { label: label.to_owned(), value, expected });

@@ -114,7 +114,7 @@ impl Session {
     }
 
     /// The accepted entries as a script needs them.
-    pub(super) fn entries_written(&self) -> impl Iterator<Item = &str> {
+    pub fn entries_written(&self) -> impl Iterator<Item = &str> {
         self.entries.iter().map(|entry| entry.written.as_str())
     }
 

@@ -6,8 +6,9 @@ use rhai::{Array, Dynamic, Map};
 
 use crate::chem::{Constant, Origin, Reaction};
 use crate::equilibrium::State;
-use crate::ledger::Ledger;
+use crate::ledger::{Ledger, shipped};
 use crate::process::Run;
+use crate::quantity::Quantity;
 use crate::water::Sample;
 
 /// What was gathered.
@@ -21,6 +22,8 @@ pub struct Sources {
     pub recalled: BTreeSet<String>,
     /// What the states warn of, each once.
     pub warnings: BTreeSet<String>,
+    /// Names of published inputs that computed numbers depend on; [`Sources::complete`] looks them up.
+    inputs: BTreeSet<String>,
 }
 
 impl Sources {
@@ -36,10 +39,26 @@ impl Sources {
             sample.ledger().into_iter().for_each(|ledger| self.ledger(ledger));
         } else if let Some(ledger) = value.read_lock::<Ledger>() {
             self.ledger(&ledger);
+        } else if let Some(quantity) = value.read_lock::<Quantity>() {
+            self.inputs.extend(quantity.parts().iter().filter_map(|part| part.input.name()).map(str::to_owned));
         } else if let Some(items) = value.read_lock::<Array>() {
             items.iter().for_each(|item| self.gather(item));
         } else if let Some(map) = value.read_lock::<Map>() {
             map.values().for_each(|item| self.gather(item));
+        }
+    }
+
+    /// Looks up the constants behind the numbers gathered, where no state told them.
+    pub fn complete(&mut self) {
+        let ledgers = shipped::names().into_iter().filter_map(|name| shipped::as_shipped(name).ok());
+        for ledger in ledgers {
+            for (_, reaction) in ledger.reactions() {
+                let Ok(constant) = reaction.constant() else { continue };
+                let mut parts = constant.history.uses().iter().flat_map(|(origin, _)| &origin.parts);
+                if parts.any(|part| part.input.name().is_some_and(|name| self.inputs.contains(name))) {
+                    self.constant(constant);
+                }
+            }
         }
     }
 
