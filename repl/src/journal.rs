@@ -99,7 +99,7 @@ pub fn entries(path: &Path) -> std::io::Result<(Vec<String>, bool)> {
     let bytes = std::fs::read(path)?;
     let text = String::from_utf8_lossy(&bytes);
     let mut entries = Vec::new();
-    let mut entry = Vec::new();
+    let mut entry: Vec<&str> = Vec::new();
     for line in text.split_inclusive('\n') {
         if line.strip_suffix('\n') == Some(WHOLE) {
             entries.push(std::mem::take(&mut entry).concat().trim_end_matches('\n').to_owned());

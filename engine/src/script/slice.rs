@@ -43,6 +43,8 @@ pub struct Slice {
     pub kept: usize,
     /// How many the session has.
     pub of: usize,
+    /// Whether the dependencies seen were not enough, and all statements are kept instead.
+    pub is_whole: bool,
 }
 
 impl Session {
@@ -64,6 +66,7 @@ impl Session {
             text: (0..units.len()).filter(|i| keep(*i)).map(|i| ended(&units[i].text)).collect(),
             kept: (0..units.len()).filter(|i| keep(*i)).count(),
             of: units.len(),
+            is_whole: false,
         };
         let smallest = chosen(&|i| needed.contains(&i));
         if self.gives(&smallest.text, name, value) {
@@ -71,7 +74,7 @@ impl Session {
         }
         let whole = chosen(&|_| true);
         if self.gives(&whole.text, name, value) {
-            return Ok(whole);
+            return Ok(Slice { is_whole: true, ..whole });
         }
         Err(match twice_defined(&units) {
             Some(function) => fail(format!(
