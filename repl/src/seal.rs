@@ -242,9 +242,12 @@ fn quoted(text: &str) -> String {
 fn compact(text: &str) -> String {
     let Ok(table) = text.parse::<Table>() else { return text.to_owned() };
     let mut out = String::new();
-    for (key, value) in &table {
+    let is_entries = |value: &Value| value.as_array().is_some_and(|items| items.iter().all(Value::is_table));
+    // Name, edition and model first, the constants below.
+    let (entries, head): (Vec<_>, Vec<_>) = table.iter().partition(|(_, value)| is_entries(value));
+    for (key, value) in head.into_iter().chain(entries) {
         match value {
-            Value::Array(items) if items.iter().all(Value::is_table) => rows(
+            Value::Array(items) if is_entries(value) => rows(
                 &mut out,
                 key,
                 items.iter().filter_map(Value::as_table).map(|entry| {

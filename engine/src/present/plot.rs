@@ -51,6 +51,8 @@ pub enum Marks {
 pub struct Curve {
     /// As typed, without the unit: `m(Ca^2+)`.
     pub name: String,
+    /// Whether the whole name is a formula.
+    pub is_formula: bool,
     /// In the order they are joined.
     pub points: Vec<Point>,
     /// Whether neighbours are joined by a line.
@@ -292,7 +294,7 @@ fn curve(across: &Column, column: &Column) -> Result<Curve, PlotError> {
     let xs: Vec<f64> = points.iter().map(|point| point.x).filter(|x| x.is_finite()).collect();
     let goes = |step: fn(&f64, &f64) -> bool| xs.windows(2).all(|pair| step(&pair[0], &pair[1]));
     let is_line = xs.len() > 1 && (goes(|a, b| a < b) || goes(|a, b| a > b));
-    Ok(Curve { name: column.title().name().to_owned(), points, is_line })
+    Ok(Curve { name: column.title().name().to_owned(), is_formula: false, points, is_line })
 }
 
 /// What the vertical axis of these columns is called.

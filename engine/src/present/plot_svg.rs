@@ -16,7 +16,7 @@ pub const COLOURS_ON_DARK: [&str; 7] =
 const DASHES: [&str; 7] = ["none", "8 4", "2 3", "10 3 2 3", "14 4", "5 2 1 2 1 2", "1 5"];
 
 const WIDTH: f64 = 720.0;
-const RIGHT: f64 = 18.0;
+const RIGHT: f64 = 30.0;
 /// Height of the plotting area: alone, and as one of several.
 const TALL: f64 = 340.0;
 const SHORT: f64 = 210.0;
@@ -123,7 +123,7 @@ impl Drawing {
         }
         let (mut x, mut y) = (self.left, top + 12.0);
         for (i, curve) in curves.iter().enumerate() {
-            let name = shown_name(&curve.name);
+            let name = shown_name(curve);
             let length = 34.0 + text_width(&name) + 18.0;
             if x > self.left && x + length > WIDTH - RIGHT {
                 (x, y) = (self.left, y + LINE);
@@ -386,8 +386,11 @@ fn shown_label(axis: &Axis) -> String {
     if title.name().is_empty() { axis.label.clone() } else { notation::shown_title(&title, Style::default()) }
 }
 
-fn shown_name(name: &str) -> String {
-    notation::shown_name(&Title::parse(name), Style::default())
+fn shown_name(curve: &Curve) -> String {
+    match curve.is_formula {
+        true => notation::shown(&curve.name, Style::default()),
+        false => notation::shown_name(&Title::parse(&curve.name), Style::default()),
+    }
 }
 
 /// A generous guess, as the reader's font is not known.

@@ -165,17 +165,18 @@ struct Holder {
 impl Holder {
     /// log10 of the moles of the element it holds per kg of water; not a number where there is none.
     fn log_amount(&self, state: Option<&State>) -> f64 {
-        let amount = state.map_or(f64::NAN, |state| amount(state, &self.species));
-        if amount > 0.0 { (amount * self.atoms).log10() } else { f64::NAN }
+        let log = state.and_then(|state| log_amount(state, &self.species)).filter(|log| log.is_finite());
+        log.map_or(f64::NAN, |log| log + self.atoms.log10())
     }
 }
 
-/// mol per kg of water.
-fn amount(state: &State, species: &Species) -> f64 {
+/// log10 of the amount of a solute or solid, mol per kg of water.
+fn log_amount(state: &State, species: &Species) -> Option<f64> {
     if species.is_solid() {
-        return state.solid_amount(species.key()).unwrap_or(0.0);
+        return state.solid_amount(species.key()).ok().map(f64::log10);
     }
-    state.system().solute(species).and_then(|i| state.dissolved().get(i).copied()).unwrap_or(0.0)
+    let solute = state.system().solute(species)?;
+    state.converged().ln_c.get(solute).map(|ln_c| ln_c / std::f64::consts::LN_10)
 }
 
 /// Everything that holds the element in any of the states, in order of first appearance.
@@ -237,6 +238,7 @@ fn curves(
     let top = drawn.iter().flat_map(|(_, values)| values).copied().fold(f64::NAN, f64::max);
     let curve = |(name, values): &(String, Vec<f64>)| Curve {
         name: name.clone(),
+        is_formula: true,
         points: across.iter().zip(values).map(|(x, y)| Point { x: *x, y: *y, sigma: None }).collect(),
         is_line: true,
     };

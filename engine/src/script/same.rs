@@ -79,8 +79,8 @@ fn same_reaction(a: &Reaction, b: &Reaction) -> bool {
 
 fn same_state(a: &State, b: &State) -> bool {
     let text = |state: &State| {
-        let fugacities = state.phases();
-        format!("{:?} {:?} {:?} {}", state.dissolved(), state.temperature(), state.pressure(), bits(&fugacities))
+        let (species, phases) = (bits(&state.species()), bits(&state.phases()));
+        format!("{:?} {:?} {:?} {species} {phases}", state.dissolved(), state.temperature(), state.pressure())
     };
     text(a) == text(b)
 }

@@ -61,7 +61,8 @@ impl Session {
             return Err(fail(format!("there is no variable `{name}`")).maybe_help(words::did_you_mean(name, names)));
         };
         let units = self.units();
-        let needed = needed(&units, name);
+        let plain = variables.iter().filter(|(_, value)| !holds_a_closure(value)).map(|(own, _)| own.as_str());
+        let needed = needed(&units, name, &plain.collect());
         let chosen = |keep: &dyn Fn(usize) -> bool| Slice {
             text: (0..units.len()).filter(|i| keep(*i)).map(|i| ended(&units[i].text)).collect(),
             kept: (0..units.len()).filter(|i| keep(*i)).count(),
@@ -148,7 +149,7 @@ struct Unit {
 
 impl Unit {
     fn of(text: &str) -> Self {
-        Self { text: text.trim_matches('\n').to_owned(), ..Self::default() }
+        Self { text: text.trim().to_owned(), ..Self::default() }
     }
 }
 
@@ -341,9 +342,27 @@ fn root(expression: &Expr) -> Option<String> {
     }
 }
 
-/// The units that the newest variable `target` depends on.
-fn needed(units: &[Unit], target: &str) -> BTreeSet<usize> {
-    let resolved = resolve(units);
+fn holds_a_closure(value: &Dynamic) -> bool {
+    if let Some(items) = value.read_lock::<rhai::Array>() {
+        return items.iter().any(holds_a_closure);
+    }
+    if let Some(map) = value.read_lock::<rhai::Map>() {
+        return map.values().any(holds_a_closure);
+    }
+    value.is_fnptr()
+}
+
+/// The units that the newest variable `target` depends on. The variables in `plain` hold no closure now.
+fn needed(units: &[Unit], target: &str, plain: &BTreeSet<&str>) -> BTreeSet<usize> {
+    let mut resolved = resolve(units);
+    for name in plain {
+        let Some(version) = resolved.newest.get(*name) else { continue };
+        let own = versioned(name, *version);
+        // Its value is the one it was given, so it never held any.
+        if !resolved.units.iter().any(|unit| unit.writes.contains(&own)) {
+            resolved.holds.remove(&own);
+        }
+    }
     let mut wanted = Wanted { holds: &resolved.holds, names: BTreeSet::new() };
     if let Some(version) = resolved.newest.get(target) {
         wanted.add(&versioned(target, *version));

@@ -75,7 +75,10 @@ impl Canvas {
         match &panel.marks {
             Marks::Curves(curves) if curves.len() > 1 => {
                 let entries = curves.iter().enumerate().map(|(i, curve)| {
-                    let name = notation::shown_name(&Title::parse(&curve.name), style(&self.look));
+                    let name = match curve.is_formula {
+                        true => shown(&curve.name, &self.look),
+                        false => notation::shown_name(&Title::parse(&curve.name), style(&self.look)),
+                    };
                     self.painted(i, &format!("{} {name}", self.sign(i, curves.len())))
                 });
                 format!("{start}:  {}", entries.collect::<Vec<_>>().join("   "))

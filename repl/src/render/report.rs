@@ -61,12 +61,10 @@ impl Report {
     }
 }
 
-/// The script cut into prose and code, with each output below the statement that showed it.
+/// The script cut into prose and code, with each output below the statement that showed it. Records do not cut the code:
+/// they stand below the stretch of code that made them.
 pub fn blocks(script: &str, shown: &[Shown]) -> Vec<Block> {
-    let lines: Vec<&str> = script.lines().collect();
-    let mut blocks = Vec::new();
-    // The next line to be written, counted from 0.
-    let mut next = 0;
+    let mut layout = Layout { lines: script.lines().collect(), next: 0, records: Vec::new(), blocks: Vec::new() };
     let starts: Vec<usize> = shown.iter().filter_map(statement).collect();
     let mut passed = 0;
     for item in shown {
@@ -75,19 +73,50 @@ pub fn blocks(script: &str, shown: &[Shown]) -> Vec<Block> {
             continue;
         }
         let end = match starts.get(passed) {
-            Some(start) => end_before(&lines, next, start - 1),
-            None => lines.len(),
+            Some(start) => end_before(&layout.lines, layout.next, start - 1),
+            None => layout.lines.len(),
         };
-        if end > next {
-            write(&mut blocks, &lines[next..end]);
-            next = end;
-        }
-        if !matches!(item, Shown::Message(text) if text.starts_with("wrote ")) {
-            blocks.push(Block::Output(item.clone()));
+        match item {
+            Shown::Message(text) if text.starts_with("wrote ") => {}
+            Shown::Record(_) => layout.records.push((end, item.clone())),
+            _ => {
+                layout.write_to(end);
+                layout.blocks.push(Block::Output(item.clone()));
+            }
         }
     }
-    write(&mut blocks, &lines[next.min(lines.len())..]);
-    blocks
+    layout.write_to(layout.lines.len());
+    layout.blocks
+}
+
+struct Layout<'a> {
+    lines: Vec<&'a str>,
+    /// The next line to be written, counted from 0.
+    next: usize,
+    /// Records not yet written, each with the line after its statement.
+    records: Vec<(usize, Shown)>,
+    blocks: Vec<Block>,
+}
+
+impl Layout<'_> {
+    /// Writes lines up to `end`, and the records that belong to them.
+    fn write_to(&mut self, end: usize) {
+        let lines: Vec<&str> = self.lines.get(self.next..end).map(<[&str]>::to_vec).unwrap_or_default();
+        for run in lines.chunk_by(|a, b| is_prose(a) == is_prose(b)) {
+            write(&mut self.blocks, run);
+            self.next += run.len();
+            self.write_records();
+        }
+        self.write_records();
+    }
+
+    fn write_records(&mut self) {
+        let next = self.next;
+        let (due, later) = std::mem::take(&mut self.records).into_iter().partition(|(end, _)| *end <= next);
+        self.records = later;
+        let due: Vec<(usize, Shown)> = due;
+        self.blocks.extend(due.into_iter().map(|(_, record)| Block::Output(record)));
+    }
 }
 
 fn statement(shown: &Shown) -> Option<usize> {
