@@ -9,19 +9,19 @@ use super::plot::{Axis, Curve, Fields, Marks, Panel, Plot, Scale, Tick};
 use super::{Style, Title, notation};
 
 /// Colours that stay apart for the common forms of colour blindness, and differ in lightness.
-pub const COLOURS: [&str; 7] = ["#15507f", "#cf5a12", "#12806a", "#8f2d6c", "#a88700", "#5897d0", "#45474a"];
+pub const COLOURS: [&str; 7] = ["#3051c9", "#9a6f1d", "#3ba778", "#f55cbf", "#283352", "#4f2506", "#615854"];
 /// The same on a dark page.
 pub const COLOURS_ON_DARK: [&str; 7] =
-    ["#6fb1ec", "#f59a5b", "#4fc7aa", "#e08cc5", "#dcc24c", "#b3d6f7", "#cfd2d6"];
+    ["#3b8bfd", "#bf7f3b", "#0eed97", "#fc3e97", "#5ab7c0", "#abac0a", "#e9cbcc"];
 const DASHES: [&str; 7] = ["none", "8 4", "2 3", "10 3 2 3", "14 4", "5 2 1 2 1 2", "1 5"];
 
 const WIDTH: f64 = 720.0;
-const RIGHT: f64 = 30.0;
+const RIGHT: f64 = 34.0;
 /// Height of the plotting area: alone, and as one of several.
 const TALL: f64 = 340.0;
 const SHORT: f64 = 210.0;
-const FONT: f64 = 13.0;
-const LINE: f64 = 19.0;
+const FONT: f64 = 15.0;
+const LINE: f64 = 21.0;
 /// Rows and columns a field diagram is sampled at.
 const FINE: usize = 240;
 
@@ -66,7 +66,7 @@ impl Drawing {
     fn of(plot: &Plot) -> Self {
         let ticks: Vec<Vec<Tick>> = plot.panels.iter().map(|panel| panel.y.ticks(6)).collect();
         let widest = ticks.iter().flatten().map(|tick| text_width(&tick.text)).fold(20.0, f64::max);
-        let left = widest + 46.0;
+        let left = widest + 50.0;
         let mut drawing = Self { text: String::new(), left, width: WIDTH - left - RIGHT };
         let mut y = 10.0;
         if let Some(title) = &plot.title {
@@ -86,7 +86,7 @@ impl Drawing {
             drawing.panel(&plot.x, panel, ticks, y, height, is_last);
             y += height + if is_last { 0.0 } else { 14.0 };
         }
-        y += 18.0 + FONT + 10.0;
+        y += 20.0 + FONT + 11.0;
         let middle = left + drawing.width / 2.0;
         let label = escaped(&shown_label(&plot.x));
         let _ = writeln!(drawing.text, "{}", words(middle, y, "middle", &label));
@@ -95,7 +95,7 @@ impl Drawing {
             let note = "bands: one standard uncertainty either way";
             let _ = writeln!(
                 drawing.text,
-                "<text class=\"ly-ink\" x=\"{middle:.1}\" y=\"{y}\" text-anchor=\"middle\" font-size=\"11\" fill=\"#1b1f24\" opacity=\"0.75\">{note}</text>"
+                "<text class=\"ly-ink\" x=\"{middle:.1}\" y=\"{y}\" text-anchor=\"middle\" font-size=\"13\" fill=\"#1b1f24\" opacity=\"0.75\">{note}</text>"
             );
         }
         let name = plot.title.clone().unwrap_or_else(|| "plot".to_owned());
@@ -157,7 +157,7 @@ impl Drawing {
             let length = if tick.text.is_empty() { 3.0 } else { 6.0 };
             let _ = writeln!(self.text, "<path class=\"ly-frame\" d=\"M{at:.1} {bottom:.1}v-{length}\" stroke=\"#5d656e\"/>");
             if is_last {
-                let _ = writeln!(self.text, "{}", words(at, bottom + 18.0, "middle", &tick.text));
+                let _ = writeln!(self.text, "{}", words(at, bottom + 20.0, "middle", &tick.text));
             }
         }
         for tick in ticks {
@@ -167,7 +167,7 @@ impl Drawing {
             }
             let length = if tick.text.is_empty() { 3.0 } else { 6.0 };
             let _ = writeln!(self.text, "<path class=\"ly-frame\" d=\"M{left:.1} {at:.1}h{length}\" stroke=\"#5d656e\"/>");
-            let _ = writeln!(self.text, "{}", words(left - 8.0, at + 4.5, "end", &tick.text));
+            let _ = writeln!(self.text, "{}", words(left - 8.0, at + 5.0, "end", &tick.text));
         }
         let (at, middle) = (left - 8.0 - self.widest(ticks) - 14.0, top + height / 2.0);
         let label = escaped(&shown_label(&panel.y));
@@ -428,6 +428,43 @@ mod tests {
         assert!(text.contains("prefers-color-scheme:dark"));
         assert_eq!(text.matches("stroke-dasharray=\"none\"").count(), 2, "a line and its entry in the legend");
         assert!(!text.contains("NaN") && !text.contains("inf"));
+    }
+
+    /// Linear RGB of a colour as seen without one kind of cone (Machado, Oliveira & Fernandes 2009, severity 1; recalled).
+    const SEEN: [[[f64; 3]; 3]; 4] = [
+        [[1.0, 0.0, 0.0], [0.0, 1.0, 0.0], [0.0, 0.0, 1.0]],
+        [[0.152286, 1.052583, -0.204868], [0.114503, 0.786281, 0.099216], [-0.003882, -0.048116, 1.051998]],
+        [[0.367322, 0.860646, -0.227968], [0.280085, 0.672501, 0.047413], [-0.011820, 0.042940, 0.968881]],
+        [[1.255528, -0.076749, -0.178779], [-0.078411, 0.930809, 0.147602], [0.004733, 0.691367, 0.303900]],
+    ];
+
+    /// CIE L*a*b* of a colour, under D65.
+    fn lab(colour: &str, seen: [[f64; 3]; 3]) -> [f64; 3] {
+        let channel = |i: usize| f64::from(u8::from_str_radix(&colour[i..i + 2], 16).unwrap()) / 255.0;
+        let linear = |c: f64| if c <= 0.04045 { c / 12.92 } else { ((c + 0.055) / 1.055).powf(2.4) };
+        let rgb = [1, 3, 5].map(|i| linear(channel(i)));
+        let rgb = seen.map(|row| row.iter().zip(rgb).map(|(a, b)| a * b).sum::<f64>().clamp(0.0, 1.0));
+        let weighted = |w: [f64; 3]| w.iter().zip(rgb).map(|(a, b)| a * b).sum::<f64>();
+        let f = |t: f64| if t > 0.008856 { t.cbrt() } else { 7.787 * t + 16.0 / 116.0 };
+        let x = f(weighted([0.4124, 0.3576, 0.1805]) / 0.9505);
+        let y = f(weighted([0.2126, 0.7152, 0.0722]));
+        let z = f(weighted([0.0193, 0.1192, 0.9505]) / 1.089);
+        [116.0 * y - 16.0, 500.0 * (x - y), 200.0 * (y - z)]
+    }
+
+    #[test]
+    fn colours_stay_apart_for_the_colour_blind() {
+        for (colours, least) in [(COLOURS, 20.0), (COLOURS_ON_DARK, 15.0)] {
+            for seen in SEEN {
+                for (i, a) in colours.iter().enumerate() {
+                    for b in &colours[..i] {
+                        let (p, q) = (lab(a, seen), lab(b, seen));
+                        let distance = p.iter().zip(q).map(|(p, q)| (p - q).powi(2)).sum::<f64>().sqrt();
+                        assert!(distance > least, "{a} {b}: {distance}");
+                    }
+                }
+            }
+        }
     }
 
     #[test]

@@ -32,8 +32,7 @@ pub fn draw(report: &Report) -> String {
     }
     section(&mut text, "Warnings", report.warnings().iter().map(ToString::to_string));
     section(&mut text, "Sources of the constants used", report.sources.publications.iter().map(|(source, equations)| {
-        let shown: Vec<String> = equations.iter().map(|equation| notation::shown(equation, Style::default())).collect();
-        format!("{source} ({})", shown.join("; "))
+        format!("{source} ({})", super::report::taken(equations))
     }));
     section(&mut text, "Cautions", report.cautions().into_iter());
     let _ = writeln!(text, "---\n\n{}\n\n{MARK}", report.making.join("  \n"));

@@ -162,8 +162,7 @@ fn ending(report: &Report) -> String {
     }
     if !report.sources.publications.is_empty() {
         let entry = |(source, equations): (&String, &std::collections::BTreeSet<String>)| {
-            let shown: Vec<String> = equations.iter().map(|equation| escaped(&notation::shown(equation, Style::default()))).collect();
-            format!("{}<br><span class=\"unit\">{}</span>", escaped(source), shown.join("; "))
+            format!("{}<br><span class=\"unit\">{}</span>", escaped(source), escaped(&super::report::taken(equations)))
         };
         let _ = writeln!(
             text,
@@ -213,8 +212,8 @@ tbody th{font-weight:400}
 td.n,th.n{text-align:right;white-space:nowrap}
 .unit{color:var(--faint);font-weight:400;font-size:.85em}
 .why{color:var(--warn);font-size:.88em}
-figure{margin:1rem 0}
-figure svg{display:block;width:100%;height:auto;max-width:45rem}
+figure{margin:1rem 0;overflow-x:auto}
+figure svg{display:block;width:100%;height:auto;min-width:30rem;max-width:45rem}
 ul.kept{list-style:none;padding-left:.2rem;margin:.6rem 0}
 .note{color:var(--warn);background:var(--warn-paper);padding:.35rem .8rem;font-size:.92rem}
 .warnings li{color:var(--warn)}
@@ -222,7 +221,7 @@ ul.kept{list-style:none;padding-left:.2rem;margin:.6rem 0}
 .sources li{margin:.35rem 0}
 footer{margin-top:2.5rem;padding-top:.6rem;border-top:1px solid var(--line);color:var(--faint);font-size:.85rem}
 footer p{margin:.2rem 0}
-@media print{@page{margin:18mm}body{font-size:10pt}main{max-width:none;padding:0}pre{white-space:pre-wrap}pre.code{border-left-color:#999}
+@media print{@page{margin:18mm}body{font-size:10pt}main{max-width:none;padding:0}pre{white-space:pre-wrap}figure svg{min-width:0}pre.code{break-after:avoid;border-left-color:#999}
 figure,table,.failure{break-inside:avoid}h2,h3{break-after:avoid}.table{overflow:visible}a{color:inherit}}
 ";
 

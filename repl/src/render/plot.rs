@@ -17,7 +17,7 @@ pub struct Look {
 /// Signs of the curves where no colour tells them apart.
 const SIGNS: [char; 7] = ['*', 'o', '+', 'x', '#', '@', '%'];
 /// Colours of terminals that are told apart on dark and on light ground.
-const COLOURS: [u8; 7] = [34, 33, 36, 35, 32, 94, 90];
+const COLOURS: [u8; 7] = [94, 33, 32, 35, 36, 31, 90];
 /// Lines of a panel: alone, and as one of several.
 const TALL: usize = 18;
 const SHORT: usize = 10;

@@ -1,6 +1,9 @@
 //! A report: the script's prose and code with what it showed, in order, and what it rests on. Drawn by [`super::page`] as
 //! HTML and by [`super::markdown`] as Markdown.
 
+use std::collections::BTreeSet;
+
+use lysocline_engine::present::{Style, notation};
 use lysocline_engine::script::{Record, Shown, Sources};
 
 /// Everything a report is drawn from.
@@ -59,6 +62,15 @@ impl Report {
     pub fn warnings(&self) -> Vec<&str> {
         self.sources.warnings.iter().map(String::as_str).collect()
     }
+}
+
+/// The reactions whose constants were taken from one publication; of many the first few.
+pub fn taken(equations: &BTreeSet<String>) -> String {
+    const SHOWN: usize = 5;
+    let shown = equations.iter().take(SHOWN).map(|equation| notation::shown(equation, Style::default()));
+    let more = equations.len().saturating_sub(SHOWN);
+    let more = (more > 0).then(|| format!("and {more} more"));
+    shown.chain(more).collect::<Vec<_>>().join("; ")
 }
 
 /// The script cut into prose and code, with each output below the statement that showed it. Records do not cut the code:
