@@ -128,12 +128,7 @@ fn read(block: &str) -> Result<Seal, SealError> {
     if digest != digest_of(inside.as_bytes()) {
         return Err(SealError::Edited);
     }
-    let ledgers = ledgers.iter().map(|(name, text)| {
-        file::load(name, text).map_err(|faults| {
-            let faults: Vec<String> = faults.iter().map(ToString::to_string).collect();
-            unreadable(&format!("the ledger `{name}`: {}", faults.join("; ")))
-        })
-    });
+    let ledgers = ledgers.iter().map(|(name, text)| ledger(name, text));
     Ok(Seal {
         program: program.to_owned(),
         script: text_of(&table, "script")?,
@@ -142,6 +137,20 @@ fn read(block: &str) -> Result<Seal, SealError> {
         values: list(&table, "values").iter().map(record).collect::<Result<_, _>>()?,
         ledgers: ledgers.collect::<Result<_, _>>()?,
     })
+}
+
+/// A sealed ledger. What it names rather than holds, such as shipped formation data, may have changed since.
+fn ledger(name: &str, text: &str) -> Result<Ledger, SealError> {
+    let ledger = file::load(name, text).map_err(|faults| {
+        let faults: Vec<String> = faults.iter().map(ToString::to_string).collect();
+        unreadable(&format!("the ledger `{name}`: {}", faults.join("; ")))
+    })?;
+    let sealed = text.lines().find_map(|line| line.strip_prefix("# digest "));
+    if sealed.is_some_and(|sealed| sealed != ledger.digest()) {
+        let why = format!("the ledger `{name}` names shipped constants that have changed since, so it cannot be put together again");
+        return Err(unreadable(&why));
+    }
+    Ok(ledger)
 }
 
 fn unreadable(why: &str) -> SealError {

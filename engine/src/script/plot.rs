@@ -261,8 +261,7 @@ mod plot_functions {
         Host::of(&context).display(&Dynamic::from(plot.clone()));
     }
 
-    /// Writes the plot to a file in the output folder, as its ending says: `.svg`, or `.png` where the program was built with
-    /// it.
+    /// Writes the plot to a file in the output folder: `.svg`, which browsers and word processors show.
     ///
     /// ```rhai
     /// table(#{ "depth [m]": [0, 10, 20], pH: [8.1, 7.9, 7.8] }).plot("depth", ["pH"]).save("lake.svg")
@@ -281,12 +280,6 @@ fn bytes_for(file: &str, plot: &Plot) -> Result<Vec<u8>, Fail> {
     let ending = std::path::Path::new(file).extension().map(|ending| ending.to_string_lossy().to_lowercase());
     match ending.as_deref() {
         Some("svg") => Ok(plot_svg::standalone(plot).into_bytes()),
-        #[cfg(feature = "png")]
-        Some("png") => crate::present::plot_png::pixels(&plot_svg::standalone(plot)).map_err(|why| fail(why).argument(0)),
-        #[cfg(not(feature = "png"))]
-        Some("png") => Err(fail("this build of the program writes no PNG")
-            .help("write `.svg`, or build with `--features png`")
-            .argument(0)),
-        _ => Err(fail(format!("cannot tell the kind of `{file}`")).help("end the name in `.svg` or `.png`").argument(0)),
+        _ => Err(fail(format!("cannot tell the kind of `{file}`")).help("end the name in `.svg`").argument(0)),
     }
 }

@@ -70,7 +70,8 @@ fn write(
         Form::Html => page::draw(&made),
         Form::Markdown => markdown::draw(&made),
     };
-    write_whole(output, text.as_bytes()).map_err(|error| {
+    let folder = output.parent().map_or(Ok(()), std::fs::create_dir_all);
+    folder.and_then(|()| write_whole(output, text.as_bytes())).map_err(|error| {
         job::complaint(format!("cannot write `{}`: {}", output.display(), error.to_string().to_lowercase()))
     })?;
     Ok(outcome)
