@@ -1,6 +1,8 @@
 //! The project against the outside; each module names what it is compared with.
 
 #[cfg(test)]
+mod kkt;
+#[cfg(test)]
 mod ledgers;
 #[cfg(test)]
 mod oxidation_states;
@@ -17,10 +19,16 @@ mod reproducible;
 #[cfg(test)]
 mod round_trips;
 #[cfg(test)]
+mod seawater;
+#[cfg(test)]
 mod sensitivities;
+#[cfg(test)]
+mod tableaux;
 #[cfg(test)]
 mod tidy;
 #[cfg(test)]
 mod two_routes;
+#[cfg(test)]
+mod uncertainty;
 #[cfg(test)]
 mod waters;

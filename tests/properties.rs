@@ -1,57 +1,10 @@
 //! Properties of the solver that need no reference value, on thousands of random problems.
 
+use crate::kkt::check;
 use crate::random_systems::{self, HARD, Random};
 use lysocline_engine::activity::{Davies, Model};
-use lysocline_engine::solve::{Coefficient, Converged, Effort, Problem, Row, Settings, SolveError, solve};
+use lysocline_engine::solve::{Coefficient, Effort, Problem, Row, Settings, SolveError, solve};
 use rayon::prelude::*;
-
-/// Balances and mass action, recomputed here from the answer alone. ln a of a component is itself a sum over the species of
-/// the dominant basis, with terms of hundreds; 1e-12 is their rounding.
-fn check(problem: &Problem, converged: &Converged) -> Result<(), String> {
-    for (i, row) in problem.species.iter().enumerate() {
-        let terms = row
-            .stoichiometry
-            .iter()
-            .map(|(j, nu)| *nu.numer() as f64 / *nu.denom() as f64 * converged.ln_a[*j]);
-        let ln_a = terms.clone().sum::<f64>() + row.ln_k + row.water * converged.ln_water_activity;
-        let magnitude = terms.map(f64::abs).sum::<f64>() + row.ln_k.abs() + 1.0;
-        let difference = ln_a - converged.ln_gamma[i] - converged.ln_c[i];
-        let close = difference.abs() <= 1e-12 + 1e-14 * magnitude;
-        if !close && converged.ln_c[i] != f64::NEG_INFINITY {
-            return Err(format!("mass action of species {i} is off by {difference:e} of {magnitude}"));
-        }
-    }
-    for j in 0..problem.n_components {
-        let of = |row: &Row| {
-            let entry = row.stoichiometry.iter().find(|(k, _)| *k == j);
-            entry.map_or(0.0, |(_, nu)| *nu.numer() as f64 / *nu.denom() as f64)
-        };
-        let species = problem.species.iter().zip(&converged.ln_c).map(|(row, ln_c)| of(row) * ln_c.exp());
-        let minerals = problem.minerals.iter().zip(&converged.mineral_amount).map(|(p, n)| of(&p.row) * n);
-        let reservoirs =
-            problem.reservoirs.iter().zip(&converged.reservoir_amount).map(|(r, e)| -of(&r.row) * e);
-        let terms: Vec<f64> =
-            species.chain(minerals).chain(reservoirs).chain([-problem.totals[j].to_f64()]).collect();
-        let (sum, magnitude) = (terms.iter().sum::<f64>(), terms.iter().map(|t| t.abs()).sum::<f64>());
-        let closed = sum.abs() <= 1e-12 * magnitude;
-        if !closed {
-            return Err(format!("balance {j} is off by {sum:e} of {magnitude:e}"));
-        }
-    }
-    for (p, saturation) in converged.mineral_ln_saturation.iter().enumerate() {
-        let (present, amount) = (converged.mineral_present[p], converged.mineral_amount[p]);
-        if *saturation > 1e-10
-            || amount < 0.0
-            || (!present && amount != 0.0)
-            || (present && saturation.abs() > 1e-10)
-        {
-            return Err(format!(
-                "mineral {p}: saturation {saturation:e}, amount {amount:e}, present {present}"
-            ));
-        }
-    }
-    Ok(())
-}
 
 /// Solves a family of problems; fails if any fails, and tells how hard they were.
 fn sweep(name: &str, count: u64, model: Model, make: impl Fn(&mut Random) -> Option<Problem> + Sync) {
@@ -59,7 +12,11 @@ fn sweep(name: &str, count: u64, model: Model, make: impl Fn(&mut Random) -> Opt
         let Some(problem) = make(&mut Random(seed * 7919 + 1)) else { return Ok(None) };
         let converged = match solve(&problem, &model, &Settings::default(), None) {
             Ok(converged) => converged,
-            Err(SolveError::Unbounded { .. }) if !problem.reservoirs.is_empty() => return Ok(None),
+            Err(SolveError::Unbounded { .. } | SolveError::UnboundedMixture { .. })
+                if !problem.reservoirs.is_empty() =>
+            {
+                return Ok(None);
+            }
             Err(error) => return Err(format!("seed {seed}: {error}")),
         };
         check(&problem, &converged).map_err(|message| format!("seed {seed}: {message}"))?;
@@ -109,6 +66,19 @@ fn with_minerals(random: &mut Random, mut problem: Problem, most: i64) -> Option
     Some(problem)
 }
 
+/// Mixtures around the saturation of the solution without them, then minerals.
+fn with_phases(
+    random: &mut Random,
+    mut problem: Problem,
+    mixtures: usize,
+    minerals: usize,
+) -> Option<Problem> {
+    let ln_a = solve(&problem, &Model::IDEAL, &Settings::default(), None).ok()?.ln_a;
+    random_systems::add_mixtures(random, &mut problem, &ln_a, mixtures);
+    random_systems::add_minerals(random, &mut problem, &ln_a, minerals);
+    Some(problem)
+}
+
 fn davies() -> Model {
     Model::davies(Davies::new(0.509))
 }
@@ -136,6 +106,41 @@ fn random_tableaux_with_minerals_and_a_fixed_component_are_solved() {
     sweep("minerals, fixed component", 5000, Model::IDEAL, |random| {
         let problem = with_fixed_component(random)?;
         with_minerals(random, problem, 8)
+    });
+}
+
+/// A gas at fixed pressure or a solid solution beside three minerals.
+#[test]
+fn random_tableaux_with_a_mixture_and_minerals_are_solved() {
+    sweep("mixture, 3 minerals", 3000, Model::IDEAL, |random| {
+        let problem = plain(random)?;
+        with_phases(random, problem, 1, 3)
+    });
+}
+
+#[test]
+fn random_tableaux_with_two_mixtures_and_minerals_are_solved() {
+    sweep("2 mixtures, 3 minerals", 2000, Model::IDEAL, |random| {
+        let problem = plain(random)?;
+        with_phases(random, problem, 2, 3)
+    });
+}
+
+#[test]
+fn random_tableaux_with_mixtures_minerals_and_a_fixed_component_are_solved() {
+    sweep("2 mixtures, 2 minerals, fixed component", 2000, Model::IDEAL, |random| {
+        let problem = with_fixed_component(random)?;
+        with_phases(random, problem, 2, 2)
+    });
+}
+
+#[test]
+fn random_tableaux_with_davies_and_a_mixture_are_solved() {
+    sweep("davies, mixture, 2 minerals", 1000, davies(), |random| {
+        let problem = plain(random)?;
+        let mut problem = with_phases(random, problem, 1, 2)?;
+        random_systems::add_charges(random, &mut problem);
+        Some(problem)
     });
 }
 
@@ -318,4 +323,83 @@ fn a_warm_start_leads_to_the_cold_answer_bit_for_bit_each_time() {
 
 fn largest_difference(a: &[f64], b: &[f64]) -> f64 {
     a.iter().zip(b).filter(|(a, b)| a != b).map(|(a, b)| (a - b).abs()).fold(0.0, f64::max)
+}
+
+/// Coefficients of a row with an integer in each component.
+fn integers(row: &Row, n_components: usize) -> Vec<i64> {
+    let mut nu = vec![0; n_components];
+    row.stoichiometry.iter().for_each(|(j, value)| nu[*j] = *value.numer());
+    nu
+}
+
+/// A problem with one component, of positive coefficients only, whose total is `sign` times its size, hidden by mixing
+/// the components; with the species that contain it, and the problem before it was mixed.
+fn hidden(seed: u64, sign: f64) -> Option<(Problem, Problem, Vec<bool>)> {
+    let random = &mut Random(seed * 104_729 + 7);
+    let mut problem = random_systems::tableau(random, HARD);
+    let last = problem.n_components - 1;
+    let contains = |row: &Row| row.stoichiometry.iter().any(|(j, _)| *j == last);
+    let marked: Vec<bool> = problem.species.iter().map(contains).collect();
+    let is_one_sided = problem.species.iter().flat_map(|row| &row.stoichiometry);
+    if is_one_sided.filter(|(j, _)| *j == last).any(|(_, nu)| *nu.numer() < 0) {
+        return None;
+    }
+    problem.totals[last] = problem.totals[last] * sign;
+    let mut mixed = problem.clone();
+    for _ in 0..3 {
+        mixed = mix_components(random, &mixed);
+    }
+    Some((problem, mixed, marked))
+}
+
+#[test]
+fn hidden_infeasible_problems_are_refused_with_a_proof() {
+    let proven = (0..220_u64).into_par_iter().filter(|seed| {
+        let Some((_, mixed, _)) = hidden(*seed, -1.0) else { return false };
+        let outcome = solve(&mixed, &Model::IDEAL, &Settings::default(), None);
+        let Err(SolveError::Infeasible { combination, value }) = outcome else {
+            panic!("seed {seed}: {:?}", outcome.err())
+        };
+        let of = |nu: &[i64]| combination.iter().map(|(j, factor)| factor * nu[*j] as f64).sum::<f64>();
+        for row in &mixed.species {
+            assert!(of(&integers(row, mixed.n_components)) * value <= 0.0, "seed {seed}");
+        }
+        let total: f64 = combination.iter().map(|(j, factor)| factor * mixed.totals[*j].to_f64()).sum();
+        assert!((total - value).abs() <= 1e-9 * value.abs().max(1.0), "seed {seed}: {total:e} {value:e}");
+        true
+    });
+    assert!(proven.count() >= 200);
+}
+
+#[test]
+fn hidden_boundary_problems_have_exact_zeros() {
+    let solved = (0..220_u64).into_par_iter().filter(|seed| {
+        let Some((plain, mixed, marked)) = hidden(*seed, 0.0) else { return false };
+        let solve = |problem: &Problem| {
+            let outcome = solve(problem, &Model::IDEAL, &Settings::default(), None);
+            outcome.unwrap_or_else(|error| panic!("seed {seed}: {error}"))
+        };
+        let (plain, mixed) = (solve(&plain), solve(&mixed));
+        for (i, is_zero) in marked.iter().enumerate() {
+            assert_eq!(mixed.ln_c[i] == f64::NEG_INFINITY, *is_zero, "seed {seed}, species {i}");
+        }
+        assert_same_composition("boundary", *seed, &plain.ln_c, mixed.ln_c, plain.certificate.condition);
+        true
+    });
+    assert!(solved.count() >= 200);
+}
+
+#[test]
+fn hidden_interior_problems_are_solved() {
+    let solved = (0..220_u64).into_par_iter().filter(|seed| {
+        let Some((plain, mixed, _)) = hidden(*seed, 1.0) else { return false };
+        let solve = |problem: &Problem| {
+            let outcome = solve(problem, &Model::IDEAL, &Settings::default(), None);
+            outcome.unwrap_or_else(|error| panic!("seed {seed}: {error}"))
+        };
+        let (plain, mixed) = (solve(&plain), solve(&mixed));
+        assert_same_composition("interior", *seed, &plain.ln_c, mixed.ln_c, plain.certificate.condition);
+        true
+    });
+    assert!(solved.count() >= 200);
 }

@@ -49,6 +49,9 @@ files! {
     nordstrom2022 = "nordstrom2022",
     plummer1982 = "plummer1982",
     robinson1959 = "robinson1959",
+    seawater_constants = "seawater-constants",
+    seawater_pressure = "seawater-pressure",
+    seawater_states = "seawater-states",
     solubility = "solubility",
     standard_potentials = "standard-potentials",
 }

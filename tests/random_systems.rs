@@ -1,6 +1,6 @@
 //! Random equilibrium problems, reproducible from a seed.
 
-use lysocline_engine::solve::{Mineral, Problem, Reservoir, Row, Total};
+use lysocline_engine::solve::{Mineral, Mixture, Problem, Reservoir, Row, Total};
 
 /// log10 to natural logarithm.
 pub const LN_10: f64 = std::f64::consts::LN_10;
@@ -119,6 +119,21 @@ pub fn add_minerals(random: &mut Random, problem: &mut Problem, ln_a: &[f64], co
         let saturation = random.uniform(-10.0, 25.0) * LN_10;
         let ln_iap: f64 = row.stoichiometry.iter().map(|(j, nu)| *nu.numer() as f64 * ln_a[*j]).sum();
         problem.minerals.push(Mineral { row: Row { ln_k: saturation - ln_iap, ..row }, ln_target: 0.0 });
+    }
+}
+
+/// Adds ideal mixtures of two to four members whose ln saturation at `ln_a` lies between -10 and 25 log10 units, and those
+/// of the single members up to 8 below it.
+pub fn add_mixtures(random: &mut Random, problem: &mut Problem, ln_a: &[f64], count: usize) {
+    for _ in 0..count {
+        let saturation = random.uniform(-10.0, 25.0) * LN_10;
+        let members = (0..random.integer(2, 4)).map(|_| {
+            let row = complex(random, problem.n_components, false);
+            let ln_iap: f64 = row.stoichiometry.iter().map(|(j, nu)| *nu.numer() as f64 * ln_a[*j]).sum();
+            Row { ln_k: saturation - random.uniform(0.0, 8.0) * LN_10 - ln_iap, ..row }
+        });
+        let members = members.collect();
+        problem.mixtures.push(Mixture { members, ln_target: 0.0 });
     }
 }
 

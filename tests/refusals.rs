@@ -228,6 +228,10 @@ fn analyses() {
     key("density", "10 kg/L", "`density` is 10 kg/L, which no water has");
     key("pe", "4", "`pe` is not read here: redox equilibria are not computed yet");
     key("make_up", "Na", "`make_up` names `Na`, which was not given: none were");
+    analysis(
+        &[("pH", "electroneutral"), ("Na", "1 mmol/L"), ("make_up", "Na")],
+        "`pH: \"electroneutral\"` and `make_up: \"Na\"` both make the charges add up: keep one",
+    );
     analysis(&[("pH", "27")], "pH 27 lies outside -2 to 17");
     analysis(&[("pCO2", "0 uatm")], "`pCO2` must be above zero");
     analysis(

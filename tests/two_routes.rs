@@ -62,7 +62,7 @@ impl Route {
 }
 
 /// ln c by the slow route.
-fn bisect(problem: &Problem) -> Vec<f64> {
+pub fn bisect(problem: &Problem) -> Vec<f64> {
     let route = Route::new(problem);
     let mut lambda = vec![0.0; problem.n_components];
     route.close(&mut lambda, 0);

@@ -51,6 +51,8 @@ pub enum Command {
     },
     /// Print the manual page
     Manual,
+    /// Solve a tableau of components, species and totals (JSON) and print the result as JSON
+    Solve(Solve),
 }
 
 /// Run a script file.
@@ -105,6 +107,17 @@ pub struct Check {
     /// The scripts
     #[arg(required = true)]
     pub files: Vec<PathBuf>,
+}
+
+/// Solve a tableau.
+#[derive(Debug, Args)]
+pub struct Solve {
+    /// The case: `components`, `totals`, `species`, `fixed`, `phases`, `activity` as for `tableau` in a script
+    pub case: PathBuf,
+
+    /// Solve it this many times and add the median `seconds_per_solve`
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(1..))]
+    pub repeat: Option<u32>,
 }
 
 /// How output looks.

@@ -66,6 +66,23 @@ fn answer(file: &File, check: &Check, given: &mut Given) -> Result<Answer, Strin
             Ok(Box::new(move |column| pure_water(t, column)))
         }
         Kind::Electron => electron(given),
+        Kind::MarineConstant => {
+            let (t, salinity) = (given.temperature()?, given.take("salinity")?);
+            let there = shipped_constant(check)?.at_salinity(salinity).map_err(text)?;
+            let log_k = log_k(&there, t)?;
+            Ok(Box::new(move |column| match column {
+                "log_k" => Ok(log_k),
+                "pk" => Ok(-log_k),
+                "ln_k" => Ok(log_k * constants::LN_10),
+                "k" => Ok(10_f64.powf(log_k)),
+                other => Err(unknown(other)),
+            }))
+        }
+        Kind::PressureFactor => {
+            let (t, p) = (given.temperature()?, given.take("hydrostatic pressure [bar]")?);
+            let constant = shipped_constant(check)?.constant().map_err(text)?.clone();
+            only("factor", constant.volume.ok_or("no volume of reaction")?.ln_factor(p, t).exp())
+        }
         Kind::State => {
             let state = state(file, check, given)?;
             Ok(Box::new(move |column| observe(&state, column)))
@@ -117,10 +134,23 @@ fn ledger(file: &File, check: &Check) -> Result<Ledger, String> {
         ledger = without(ledger, &dropped)?;
     }
     ledger = without(ledger, check.model.without.as_deref().unwrap_or_default())?;
+    for [name, author] in &check.choose {
+        ledger = ledger.choose(name, author).map_err(text)?;
+    }
     Ok(match activity(check)? {
         Some(activity) => ledger.with_activity(activity),
         None => ledger,
     })
+}
+
+/// A constant of a shipped file, as `file/name`.
+fn shipped_constant(check: &Check) -> Result<Reaction, String> {
+    let named = check.constant.as_deref().ok_or("no `constant` is named")?;
+    let (key, name) = named.split_once('/').ok_or("a constant is named as `file/name`")?;
+    let files = shipped::constant_files().map_err(|faults| faults.join("; "))?;
+    let file = files.get(key).ok_or_else(|| format!("no file `{key}` is shipped"))?;
+    let found = file.constants.iter().find(|(own, _)| own == name);
+    found.map(|(_, reaction)| reaction.clone()).ok_or_else(|| format!("`{key}` has no constant `{name}`"))
 }
 
 fn without(ledger: Ledger, names: &[String]) -> Result<Ledger, String> {
@@ -330,7 +360,9 @@ fn state(file: &File, check: &Check, given: &mut Given) -> Result<State, String>
     let ledger = ledger(file, check)?;
     let equilibrium =
         |sample: &Sample| equilibrate(sample, Some(&ledger), &Settings::default()).map_err(text);
-    let mut sample = Sample::read(entries(check, given)?).map_err(text)?;
+    let entries = entries(check, given)?;
+    let read = if entries.contains_key("salinity") { Sample::read_seawater } else { Sample::read };
+    let mut sample = read(entries).map_err(text)?;
     for step in &check.steps {
         let words: Vec<&str> = step.iter().map(String::as_str).collect();
         sample = match words.as_slice() {

@@ -28,6 +28,9 @@ pub struct Check {
     pub gas_standard: Option<String>,
     pub recipe: Option<BTreeMap<String, i64>>,
     pub ledger: Option<String>,
+    pub constant: Option<String>,
+    #[serde(default)]
+    pub choose: Vec<[String; 2]>,
     #[serde(default)]
     pub sample: BTreeMap<String, Entry>,
     #[serde(default)]
@@ -63,6 +66,8 @@ pub enum Kind {
     Molality,
     Water,
     Electron,
+    MarineConstant,
+    PressureFactor,
     State,
 }
 

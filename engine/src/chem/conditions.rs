@@ -177,6 +177,32 @@ impl Conditions {
         if words.is_empty() { "activities of pure phases".into() } else { words.join(", ") }
     }
 
+    /// What keeps a constant out of a ledger of seawater, where concentrations in mol/kg(solution) are required, `H^+` on
+    /// the free, total or seawater scale. Gases may be counted from 1 atm.
+    #[must_use]
+    pub fn unfit_for_sea_ledger(&self, terms: Terms) -> Option<Mismatch> {
+        let medium = match self.medium {
+            Medium::Seawater { .. } => self.medium.clone(),
+            _ => Medium::Seawater { salinity: 35.0 },
+        };
+        let ph_scale = match self.ph_scale {
+            PhScale::Activity | PhScale::Nbs => PhScale::Total,
+            scale => scale,
+        };
+        let gases = match self.gases {
+            GasUnit::Concentration => GasUnit::default(),
+            gases => gases,
+        };
+        let standard = Self {
+            medium,
+            solutes: SoluteUnit::PerKgSolution,
+            ph_scale,
+            gases,
+            pressure: HoldingPressure::default(),
+        };
+        standard.common(terms, self, terms).err()
+    }
+
     /// What keeps a constant out of a ledger, where molal activities at zero ionic strength and 1 bar are required.
     ///
     /// # Returns
@@ -255,7 +281,19 @@ impl Medium {
         }
     }
 
+    /// Practical salinity, of seawater.
+    #[must_use]
+    pub fn salinity(&self) -> Option<f64> {
+        match self {
+            Self::Seawater { salinity } => Some(*salinity),
+            _ => None,
+        }
+    }
+
     fn conversion(target: &Self, other: &Self) -> String {
+        if let (Self::Seawater { salinity }, Self::Seawater { .. }) = (target, other) {
+            return format!(".at_salinity({salinity})");
+        }
         let towards = if *target == Self::InfiniteDilution { target } else { other };
         match towards.ionic_strength() {
             Some(ionic_strength) => format!(".to_ionic_strength({ionic_strength:?}, \"davies\")"),

@@ -196,6 +196,22 @@ impl Reaction {
         let coefficient = options.quantity("activity_coefficient", Kind::Fraction)?;
         let beyond_range = flag(&mut options, "beyond_range")?;
         options.finish()?;
+        match stated {
+            Some(stated) if self.constant()?.log_k.depends_on_salinity() => {
+                self.at_salinity(stated)?.on_ph_scale(target, at, None, coefficient.as_ref(), beyond_range)
+            }
+            stated => self.on_ph_scale(target, at, stated, coefficient.as_ref(), beyond_range),
+        }
+    }
+
+    fn on_ph_scale(
+        &self,
+        target: PhScale,
+        at: Temperature,
+        stated: Option<f64>,
+        coefficient: Option<&Quantity>,
+        beyond_range: bool,
+    ) -> Converted {
         let constant = self.constant()?;
         let from = constant.conditions.ph_scale;
         let n = rational::to_f64(self.terms()?.protons);
@@ -216,8 +232,7 @@ impl Reaction {
                 "`{self}` holds for zero ionic strength, where H^+ is an activity; give the `medium` it was measured in"
             ));
         }
-        let (to, from_ratio) =
-            (solution.ratio(target, coefficient.as_ref())?, solution.ratio(from, coefficient.as_ref())?);
+        let (to, from_ratio) = (solution.ratio(target, coefficient)?, solution.ratio(from, coefficient)?);
         let log = |ratio: &Quantity| {
             ratio.log10().map_err(|_| {
                 KeyFault::new("activity_coefficient", "`activity_coefficient` must be above zero")

@@ -151,6 +151,16 @@ impl History {
         self.parts().into_iter().chain(influences).collect()
     }
 
+    /// The same with every origin changed; what else acts on the value, and the conversions, are kept.
+    ///
+    /// # Errors
+    ///
+    /// The first that `change` returns.
+    pub fn with_origins<E>(&self, change: impl Fn(&Origin) -> Result<Origin, E>) -> Result<Self, E> {
+        let changed = self.uses.iter().map(|(origin, multiple)| Ok((Arc::new(change(origin)?), *multiple)));
+        Ok(Self { uses: changed.collect::<Result<_, E>>()?, ..self.clone() })
+    }
+
     /// The history of Kⁿ.
     #[must_use]
     pub fn times(&self, multiple: Rational) -> Self {

@@ -1,7 +1,8 @@
-//! log10 K as a function of temperature: a vector over a fixed set of terms.
+//! log10 K as a function of temperature, and of salinity in seawater: a vector over a fixed set of terms.
 //!
 //! ```text
-//! log10 K(T) = a + b T + c/T + d log10 T + e/T² + f T² + g √T          T in kelvin
+//! log10 K(T)    = a + b T + c/T + d log10 T + e/T² + f T² + g √T + …          T in kelvin
+//! log10 K(T, S) = Σ_ij a_ij fᵢ(T) gⱼ(S)                        gⱼ = 1, √S, S, …: see [`super::salinity_term`]
 //! ```
 //!
 //! Published functions are of this form, and so is the van 't Hoff equation with constant enthalpy and heat capacity of
@@ -14,7 +15,10 @@
 //! Functions of one form add and scale exactly, term by term: no sampling, no refitting. A constant known at one
 //! temperature only is kept apart, since nothing can be said of it elsewhere.
 
+use std::collections::BTreeMap;
+
 use super::rational::{self, Rational};
+use super::salinity_term::{Product, SalinityTerm};
 use crate::physics::constants::GAS_CONSTANT;
 use crate::units::Temperature;
 
@@ -39,22 +43,36 @@ pub enum Term {
     T2,
     /// √T.
     SqrtT,
+    /// 1/ln T.
+    InverseLnT,
 }
 
-/// log10 K with its dependence on temperature and the range in which that holds.
+/// log10 K with its dependence on temperature (and salinity) and the range in which that holds.
 #[derive(Debug, Clone, PartialEq)]
 pub struct LogK {
     dependence: Dependence,
     range: Option<Range>,
+    salinities: Option<Salinities>,
+}
+
+/// A range of practical salinity, both ends included.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Salinities {
+    /// The lowest salinity.
+    pub lowest: f64,
+    /// The highest salinity.
+    pub highest: f64,
 }
 
 #[derive(Debug, Clone, PartialEq)]
 enum Dependence {
-    /// Coefficients in the order of [`Term::ALL`].
-    Function([f64; Term::ALL.len()]),
+    /// Coefficients that are not zero.
+    Function(Coefficients),
     /// Known at one temperature only.
     Only { value: f64, at: Temperature },
 }
+
+type Coefficients = BTreeMap<Product, f64>;
 
 /// A range of temperatures, both ends included.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -87,8 +105,16 @@ pub enum LogKError {
 
 impl Term {
     /// Every term, in the order coefficients are kept.
-    pub const ALL: [Self; 7] =
-        [Self::One, Self::T, Self::InverseT, Self::Log10T, Self::InverseT2, Self::T2, Self::SqrtT];
+    pub const ALL: [Self; 8] = [
+        Self::One,
+        Self::T,
+        Self::InverseT,
+        Self::Log10T,
+        Self::InverseT2,
+        Self::T2,
+        Self::SqrtT,
+        Self::InverseLnT,
+    ];
 
     /// Reads a term as it is written in `log_k_terms`, with the factor its coefficient takes (ln 10 for `ln(T)`).
     #[must_use]
@@ -102,6 +128,7 @@ impl Term {
             "1/T^2" => Self::InverseT2,
             "T^2" => Self::T2,
             "sqrt(T)" => Self::SqrtT,
+            "1/ln(T)" => Self::InverseLnT,
             _ => return None,
         };
         Some((term, 1.0))
@@ -118,10 +145,13 @@ impl Term {
             Self::InverseT2 => "1/T^2",
             Self::T2 => "T^2",
             Self::SqrtT => "sqrt(T)",
+            Self::InverseLnT => "1/ln(T)",
         }
     }
 
-    fn at(self, t: f64) -> f64 {
+    /// Its value at T kelvin.
+    #[must_use]
+    pub fn at(self, t: f64) -> f64 {
         match self {
             Self::One => 1.0,
             Self::T => t,
@@ -130,6 +160,7 @@ impl Term {
             Self::InverseT2 => 1.0 / (t * t),
             Self::T2 => t * t,
             Self::SqrtT => t.sqrt(),
+            Self::InverseLnT => 1.0 / t.ln(),
         }
     }
 
@@ -143,6 +174,7 @@ impl Term {
             Self::InverseT2 => -2.0 / (t * t * t),
             Self::T2 => 2.0 * t,
             Self::SqrtT => 0.5 / t.sqrt(),
+            Self::InverseLnT => -1.0 / (t * t.ln() * t.ln()),
         }
     }
 
@@ -155,6 +187,7 @@ impl Term {
             Self::InverseT2 => 6.0 / t.powi(4),
             Self::T2 => 2.0,
             Self::SqrtT => -0.25 / (t * t.sqrt()),
+            Self::InverseLnT => (1.0 + 2.0 / t.ln()) / (t * t.ln()).powi(2),
         }
     }
 }
@@ -163,17 +196,21 @@ impl LogK {
     /// A published function of temperature.
     #[must_use]
     pub fn function(coefficients: &[(Term, f64)]) -> Self {
-        let mut vector = [0.0; Term::ALL.len()];
-        for (term, coefficient) in coefficients {
-            vector[*term as usize] += coefficient;
-        }
-        Self { dependence: Dependence::Function(vector), range: None }
+        Self::of(coefficients.iter().map(|(term, coefficient)| (Product::of(*term), *coefficient)))
+    }
+
+    /// A published function of temperature and salinity.
+    #[must_use]
+    pub fn of(coefficients: impl IntoIterator<Item = (Product, f64)>) -> Self {
+        let mut vector = Coefficients::new();
+        add(&mut vector, coefficients);
+        Self { dependence: Dependence::Function(vector), range: None, salinities: None }
     }
 
     /// A value at one temperature, nothing known elsewhere.
     #[must_use]
     pub fn only(value: f64, at: Temperature) -> Self {
-        Self { dependence: Dependence::Only { value, at }, range: None }
+        Self { dependence: Dependence::Only { value, at }, range: None, salinities: None }
     }
 
     /// The van 't Hoff equation from a value at T₀.
@@ -201,10 +238,49 @@ impl LogK {
     ///
     /// [`LogKError::OneTemperature`] if nothing is known at `at`.
     pub fn frozen_at(&self, at: Temperature) -> Result<Self, LogKError> {
-        Ok(Self { dependence: Dependence::Only { value: self.at(at)?, at }, range: self.range })
+        Ok(Self { dependence: Dependence::Only { value: self.at(at)?, at }, ..self.clone() })
     }
 
-    /// log10 K at a temperature, whether or not it lies in the stated range (see [`LogK::outside`]).
+    /// The same stated to hold within a range of salinity.
+    #[must_use]
+    pub fn within_salinities(mut self, salinities: Salinities) -> Self {
+        self.salinities = Some(salinities);
+        self
+    }
+
+    /// The function of temperature that it is at one salinity: exact, as every term is a product.
+    #[must_use]
+    pub fn at_salinity(&self, salinity: f64) -> Self {
+        let dependence = match &self.dependence {
+            Dependence::Function(vector) => {
+                let mut there = Coefficients::new();
+                add(
+                    &mut there,
+                    vector.iter().map(|(product, c)| {
+                        (Product::of(product.temperature), c * product.salinity.at(salinity))
+                    }),
+                );
+                Dependence::Function(there)
+            }
+            only => only.clone(),
+        };
+        Self { dependence, ..self.clone() }
+    }
+
+    /// Whether it depends on salinity.
+    #[must_use]
+    pub fn depends_on_salinity(&self) -> bool {
+        self.vector().is_some_and(|vector| vector.keys().any(|product| product.salinity != SalinityTerm::One))
+    }
+
+    /// The stated range of salinity.
+    #[must_use]
+    pub fn salinities(&self) -> Option<Salinities> {
+        self.salinities
+    }
+
+    /// log10 K at a temperature, whether or not it lies in the stated range (see [`LogK::outside`]); a function of
+    /// salinity counts at zero salinity (see [`LogK::at_salinity`]).
     ///
     /// # Errors
     ///
@@ -254,9 +330,8 @@ impl LogK {
 
     /// Coefficients that are not zero, if it is a function of temperature.
     #[must_use]
-    pub fn terms(&self) -> Option<Vec<(Term, f64)>> {
-        let vector = self.vector()?;
-        Some(Term::ALL.into_iter().zip(*vector).filter(|(_, coefficient)| *coefficient != 0.0).collect())
+    pub fn terms(&self) -> Option<Vec<(Product, f64)>> {
+        Some(self.vector()?.iter().map(|(product, coefficient)| (*product, *coefficient)).collect())
     }
 
     /// The stated range of temperature.
@@ -281,10 +356,14 @@ impl LogK {
     #[must_use]
     pub fn scaled(&self, n: f64) -> Self {
         let dependence = match &self.dependence {
-            Dependence::Function(vector) => Dependence::Function(vector.map(|coefficient| n * coefficient)),
+            Dependence::Function(vector) => {
+                let mut scaled = Coefficients::new();
+                add(&mut scaled, vector.iter().map(|(product, coefficient)| (*product, n * coefficient)));
+                Dependence::Function(scaled)
+            }
             Dependence::Only { value, at } => Dependence::Only { value: n * value, at: *at },
         };
-        Self { dependence, range: self.range }
+        Self { dependence, ..self.clone() }
     }
 
     /// log10 of a product of constants, in the range common to both.
@@ -295,7 +374,11 @@ impl LogK {
     pub fn plus(&self, other: &Self) -> Result<Self, LogKError> {
         use Dependence::{Function, Only};
         let dependence = match (&self.dependence, &other.dependence) {
-            (Function(a), Function(b)) => Function(std::array::from_fn(|i| a[i] + b[i])),
+            (Function(a), Function(b)) => {
+                let mut sum = a.clone();
+                add(&mut sum, b.iter().map(|(product, coefficient)| (*product, *coefficient)));
+                Function(sum)
+            }
             (Only { value: a, at }, Only { value: b, at: other }) if same(*at, *other) => {
                 Only { value: a + b, at: *at }
             }
@@ -307,7 +390,11 @@ impl LogK {
             (Some(a), Some(b)) => Some(a.common(b)),
             (a, b) => a.or(b),
         };
-        Ok(Self { dependence, range })
+        let salinities = match (self.salinities, other.salinities) {
+            (Some(a), Some(b)) => Some(a.common(b)),
+            (a, b) => a.or(b),
+        };
+        Ok(Self { dependence, range, salinities })
     }
 
     /// log10 K + `shift`, as when the standard state of a gas changes.
@@ -315,7 +402,7 @@ impl LogK {
     pub fn shifted(&self, shift: f64) -> Self {
         let mut shifted = self.clone();
         match &mut shifted.dependence {
-            Dependence::Function(vector) => vector[Term::One as usize] += shift,
+            Dependence::Function(vector) => add(vector, [(Product::of(Term::One), shift)]),
             Dependence::Only { value, .. } => *value += shift,
         }
         shifted
@@ -334,12 +421,12 @@ impl LogK {
     #[must_use]
     pub fn is_zero(&self) -> bool {
         match &self.dependence {
-            Dependence::Function(vector) => vector.iter().all(|coefficient| *coefficient == 0.0),
+            Dependence::Function(vector) => vector.is_empty(),
             Dependence::Only { value, .. } => *value == 0.0,
         }
     }
 
-    fn vector(&self) -> Option<&[f64; Term::ALL.len()]> {
+    fn vector(&self) -> Option<&Coefficients> {
         match &self.dependence {
             Dependence::Function(vector) => Some(vector),
             Dependence::Only { .. } => None,
@@ -366,9 +453,30 @@ impl Range {
     }
 }
 
-/// Terms without a coefficient are skipped, so that a plain constant stays exact.
-fn sum(vector: &[f64; Term::ALL.len()], value: impl Fn(Term) -> f64) -> f64 {
-    Term::ALL.into_iter().zip(vector).filter(|(_, c)| **c != 0.0).map(|(term, c)| c * value(term)).sum()
+impl Salinities {
+    /// By how much a salinity lies outside; 0 inside.
+    #[must_use]
+    pub fn distance(self, salinity: f64) -> f64 {
+        (self.lowest - salinity).max(salinity - self.highest).max(0.0)
+    }
+
+    fn common(self, other: Self) -> Self {
+        Self { lowest: self.lowest.max(other.lowest), highest: self.highest.min(other.highest) }
+    }
+}
+
+/// Adds coefficients; what cancels leaves.
+fn add(vector: &mut Coefficients, more: impl IntoIterator<Item = (Product, f64)>) {
+    for (product, coefficient) in more {
+        *vector.entry(product).or_insert(0.0) += coefficient;
+    }
+    vector.retain(|_, coefficient| *coefficient != 0.0);
+}
+
+/// At zero salinity, where every factor of salinity but 1 vanishes.
+fn sum(vector: &Coefficients, value: impl Fn(Term) -> f64) -> f64 {
+    let terms = vector.iter().filter(|(product, _)| product.salinity == SalinityTerm::One);
+    terms.map(|(product, c)| c * value(product.temperature)).sum()
 }
 
 fn same(a: Temperature, b: Temperature) -> bool {

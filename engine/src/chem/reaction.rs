@@ -5,7 +5,7 @@
 
 use std::fmt;
 
-use super::conditions::{Conditions, Mismatch, Terms};
+use super::conditions::{Conditions, Medium, Mismatch, Terms};
 use super::equation::{Equation, EquationError};
 use super::history::{History, Influence};
 use super::log_k::{LogK, LogKError};
@@ -13,7 +13,7 @@ use super::pressure::Volume;
 use super::rational::{self, Rational};
 pub use super::stated_conditions::salinity;
 use super::statement::Statement;
-pub use super::statement::{multiple, temperature};
+pub use super::statement::{multiple, temperature, terms};
 use crate::named::{KeyFault, Named};
 use crate::physics::constants::{GAS_CONSTANT, LN_10};
 use crate::quantity::{Part, Quantity};
@@ -42,6 +42,17 @@ pub struct Constant {
     pub volume: Option<Volume>,
     /// Where it came from.
     pub history: History,
+}
+
+impl Constant {
+    /// log10 K as a function of temperature at the salinity it is quoted for.
+    #[must_use]
+    pub fn at_own_salinity(&self) -> LogK {
+        match self.conditions.medium.salinity() {
+            Some(salinity) => self.log_k.at_salinity(salinity),
+            None => self.log_k.clone(),
+        }
+    }
 }
 
 /// Why a reaction cannot be made, or cannot answer.
@@ -179,7 +190,7 @@ impl Reaction {
     /// [`ReactionError::NoConstant`], or [`ReactionError::Temperature`] where nothing is known.
     pub fn log_k_at(&self, temperature: Temperature) -> Result<Quantity, ReactionError> {
         let constant = self.constant()?;
-        let value = constant.log_k.at(temperature);
+        let value = constant.at_own_salinity().at(temperature);
         let value =
             value.map_err(|why| ReactionError::Temperature { equation: self.equation.to_string(), why })?;
         Ok(Quantity::from_parts(value, Unit::one(), constant.history.parts_at(temperature)))
@@ -193,7 +204,7 @@ impl Reaction {
     pub fn gibbs(&self) -> Result<Quantity, ReactionError> {
         let constant = self.constant()?;
         let factor = -R_KJ * constant.temperature.kelvin() * LN_10;
-        let value = constant.log_k.nearest_to(constant.temperature).0 * factor;
+        let value = constant.at_own_salinity().nearest_to(constant.temperature).0 * factor;
         let parts = constant.history.parts_at(constant.temperature);
         let parts = parts.iter().map(|part| part.scaled(factor)).collect();
         Ok(Quantity::from_parts(value, Kind::Energy.default_unit(), parts))
@@ -206,7 +217,7 @@ impl Reaction {
     /// As [`Reaction::constant`].
     pub fn enthalpy(&self) -> Result<Option<f64>, ReactionError> {
         let constant = self.constant()?;
-        Ok(constant.log_k.enthalpy(constant.temperature))
+        Ok(constant.at_own_salinity().enthalpy(constant.temperature))
     }
 
     /// Enthalpy of reaction as [`Reaction::enthalpy`], with the uncertainty that was stated for it.
@@ -270,7 +281,18 @@ impl Reaction {
     }
 
     fn product(&self, left: &Constant, other: &Self, right: &Constant) -> Result<Constant, ReactionError> {
-        let log_k = left.log_k.plus(&right.log_k).map_err(|_| {
+        // A constant known at one salinity meets a function of it at that salinity.
+        let (left_log_k, right_log_k) =
+            match (left.log_k.depends_on_salinity(), right.log_k.depends_on_salinity()) {
+                (true, false) if right.conditions.medium.salinity().is_some() => {
+                    (left.at_own_salinity(), right.log_k.clone())
+                }
+                (false, true) if left.conditions.medium.salinity().is_some() => {
+                    (left.log_k.clone(), right.at_own_salinity())
+                }
+                _ => (left.log_k.clone(), right.log_k.clone()),
+            };
+        let log_k = left_log_k.plus(&right_log_k).map_err(|_| {
             let (fixed, at, other) = match (left.log_k.only_at(), right.log_k.only_at()) {
                 (Some(at), _) => (&self.equation, at, &other.equation),
                 (None, Some(at)) => (&other.equation, at, &self.equation),
@@ -334,6 +356,22 @@ impl Reaction {
         }
     }
 
+    /// Refuses a constant that holds in other conditions than a ledger of seawater's: concentrations in mol/kg(solution)
+    /// of seawater, 1 bar.
+    ///
+    /// # Errors
+    ///
+    /// As [`Reaction::check_for_ledger`].
+    pub fn check_for_sea_ledger(&self) -> Result<(), ReactionError> {
+        match self.constant()?.conditions.unfit_for_sea_ledger(self.terms()?) {
+            None => Ok(()),
+            Some(mismatch) => Err(ReactionError::NotForLedger {
+                reaction: self.equation.to_string(),
+                mismatch: Box::new(mismatch),
+            }),
+        }
+    }
+
     /// The same with its constant known at `temperature` alone, so that it adds to others known there.
     ///
     /// # Errors
@@ -341,12 +379,36 @@ impl Reaction {
     /// As [`Reaction::log_k_at`].
     pub fn at(&self, temperature: Temperature) -> Result<Self, ReactionError> {
         let constant = self.constant()?;
-        let log_k = constant.log_k.frozen_at(temperature);
+        let log_k = constant.at_own_salinity().frozen_at(temperature);
         let log_k =
             log_k.map_err(|why| ReactionError::Temperature { equation: self.equation.to_string(), why })?;
         let history = constant.history.frozen_at(temperature);
         let constant = Constant { log_k, temperature, history, ..constant.clone() };
         Ok(Self { equation: self.equation.clone(), constant: Some(constant) })
+    }
+
+    /// The same in seawater of one salinity: its constant becomes a function of temperature alone.
+    ///
+    /// # Errors
+    ///
+    /// [`ReactionError::Conversion`] where it is no function of salinity, or as [`Reaction::constant`].
+    pub fn at_salinity(&self, salinity: f64) -> Result<Self, ReactionError> {
+        let constant = self.constant()?;
+        match constant.conditions.medium.salinity() {
+            Some(own) if own == salinity || constant.log_k.depends_on_salinity() => {
+                let log_k = constant.log_k.at_salinity(salinity);
+                let conditions =
+                    Conditions { medium: Medium::Seawater { salinity }, ..constant.conditions.clone() };
+                Ok(Self::of(self.equation.clone(), Constant { log_k, conditions, ..constant.clone() }))
+            }
+            Some(own) => Err(ReactionError::Conversion(format!(
+                "log K of `{self}` is known for salinity {own} only, not for {salinity}"
+            ))),
+            None => Err(ReactionError::Conversion(format!(
+                "log K of `{self}` holds for {}: it is no function of salinity",
+                constant.conditions.medium
+            ))),
+        }
     }
 
     /// The same with an enthalpy of reaction assumed; its constant, known at one temperature, becomes a function.
@@ -358,7 +420,8 @@ impl Reaction {
         let constant = self.constant()?;
         let enthalpy = enthalpy.to(&Kind::Energy.default_unit());
         let enthalpy = enthalpy.map_err(|error| KeyFault::new("enthalpy", error.to_string()))?;
-        let (value, at) = (constant.log_k.nearest_to(constant.temperature).0, constant.temperature);
+        let (value, at) =
+            (constant.at_own_salinity().nearest_to(constant.temperature).0, constant.temperature);
         let mut log_k = LogK::van_t_hoff(value, at, enthalpy.value(), 0.0);
         if let Some(range) = constant.log_k.range() {
             log_k = log_k.within(range);

@@ -13,13 +13,16 @@ use crate::quantity::Quantity;
 use crate::text::list;
 use crate::units::{Kind, Pressure, Unit};
 
+/// The practical salinity at which a function of salinity is quoted.
+pub const STANDARD_SALINITY: f64 = 35.0;
+
 /// Takes `ionic_strength`, `medium`, `salinity`, `ph_scale`, `basis`, `gas_standard` and `pressure` out of the options.
 ///
 /// # Errors
 ///
 /// Returns the fault of the option that does not fit the reaction or the others.
 pub(super) fn read(options: &mut Named, equation: &Equation) -> Result<Stated, KeyFault> {
-    let medium = read_medium(options)?;
+    let (medium, salinity_is_default) = read_medium(options)?;
     let ph_scale = read_ph_scale(options, &medium, equation)?;
     let (solutes, gases, basis) = read_basis(options, &medium, equation)?;
     let pressure = match options.quantity("pressure", Kind::Pressure)? {
@@ -30,13 +33,16 @@ pub(super) fn read(options: &mut Named, equation: &Equation) -> Result<Stated, K
                 .bar(),
         ),
     };
-    Ok(Stated { conditions: Conditions { medium, solutes, ph_scale, gases, pressure }, basis })
+    let conditions = Conditions { medium, solutes, ph_scale, gases, pressure };
+    Ok(Stated { conditions, basis, salinity_is_default })
 }
 
 /// Conditions, and whether a basis was among what was said.
 pub(super) struct Stated {
     pub conditions: Conditions,
     basis: Option<String>,
+    /// `medium: "seawater"` alone: right for a function of salinity, which is then quoted at 35.
+    pub salinity_is_default: bool,
 }
 
 /// Practical salinity: a bare number or one in PSU.
@@ -59,10 +65,41 @@ pub fn salinity(key: &str, value: Value) -> Result<f64, KeyFault> {
     }
 }
 
-fn read_medium(options: &mut Named) -> Result<Medium, KeyFault> {
+/// Whether a constant may leave its salinity open.
+///
+/// # Errors
+///
+/// A fault of `medium` where the two do not go together.
+pub(super) fn check_salinity(stated: &Stated, depends_on_salinity: bool) -> Result<(), KeyFault> {
+    let is_seawater = matches!(stated.conditions.medium, Medium::Seawater { .. });
+    match (depends_on_salinity, is_seawater) {
+        (true, false) => Err(KeyFault::new(
+            "medium",
+            "a function of salinity holds in seawater: give it `medium: \"seawater\"`",
+        )),
+        (false, true) if stated.salinity_is_default => {
+            Err(KeyFault::new("medium", "`medium: \"seawater\"` needs its `salinity`, such as 35"))
+        }
+        _ => Ok(()),
+    }
+}
+
+/// The medium, and whether it is seawater of a salinity that was not said.
+fn read_medium(options: &mut Named) -> Result<(Medium, bool), KeyFault> {
     let stated = options.quantity("ionic_strength", Kind::Amount)?.map(ionic_strength).transpose()?;
     let text = options.text("medium")?;
     let salinity = options.take("salinity").map(|value| self::salinity("salinity", value)).transpose()?;
+    if let (Some("seawater"), None, None) = (text.as_deref(), salinity, stated) {
+        return Ok((Medium::Seawater { salinity: STANDARD_SALINITY }, true));
+    }
+    medium_of(text, salinity, stated).map(|medium| (medium, false))
+}
+
+fn medium_of(
+    text: Option<String>,
+    salinity: Option<f64>,
+    stated: Option<(f64, SoluteUnit)>,
+) -> Result<Medium, KeyFault> {
     match (text.as_deref(), salinity, stated) {
         (Some("seawater"), Some(salinity), None) => Ok(Medium::Seawater { salinity }),
         (Some("seawater"), Some(_), Some(_)) => Err(KeyFault::new(

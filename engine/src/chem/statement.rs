@@ -3,10 +3,11 @@
 use super::conditions::Conditions;
 use super::equation::Equation;
 use super::history::{History, Influence, Origin, Provenance};
-use super::log_k::{LogK, Range, Term};
+use super::log_k::{LogK, Range, Salinities, Term};
 use super::pressure::Volume;
 use super::rational::{self, Rational};
 use super::reaction::{Constant, ReactionError};
+use super::salinity_term::{Product, SalinityTerm};
 use super::stated_conditions;
 use crate::named::{self, KeyFault, Named, Value};
 use crate::nearest::nearest;
@@ -26,11 +27,12 @@ pub(super) struct Statement {
     enthalpy: Option<Quantity>,
     heat_capacity: Option<Quantity>,
     temperature: Option<Temperature>,
-    value_at: Option<(Temperature, f64)>,
+    value_at: Option<ValueAt>,
     sigma: Option<f64>,
     /// By how many standard uncertainties the one stated is wide.
     coverage: f64,
     range: Option<Range>,
+    salinities: Option<Salinities>,
     volume: Option<Volume>,
     conditions: Conditions,
     source: Option<String>,
@@ -42,7 +44,7 @@ enum Stated {
     LogK(&'static str, Quantity),
     /// Gibbs energy of reaction, kJ/mol.
     Gibbs(Quantity),
-    Terms(Vec<(Term, f64)>),
+    Terms(Vec<(Product, f64)>),
 }
 
 impl Statement {
@@ -60,11 +62,14 @@ impl Statement {
             sigma: read_sigma(&mut options)?,
             coverage: options.text("sigma_of")?.map_or(Ok(1.0), |text| coverage(&text))?,
             range: options.take("range").map(read_range).transpose()?,
-            volume: options.quantity("volume", Kind::MolarVolume)?.as_ref().map(Volume::of),
-            conditions: stated.conditions,
+            salinities: options.take("salinity_range").map(read_salinities).transpose()?,
+            volume: Volume::read(&mut options)?,
+            conditions: stated.conditions.clone(),
             source: options.text("source")?,
             provenance: read_provenance(&mut options)?,
         };
+        let depends_on_salinity = matches!(&statement.value, Some(self::Stated::Terms(terms)) if LogK::of(terms.clone()).depends_on_salinity());
+        stated_conditions::check_salinity(&stated, depends_on_salinity)?;
         options.take("note");
         options.finish()?;
         Ok(statement)
@@ -95,7 +100,7 @@ impl Statement {
                         "`log_k_terms` already fix the enthalpy: leave `enthalpy` and `heat_capacity` out";
                     return Err(KeyFault::new("log_k_terms", message).into());
                 }
-                let log_k = LogK::function(&terms);
+                let log_k = LogK::of(terms);
                 let stated = format!("log K = {}", written(&log_k.terms().unwrap_or_default()));
                 (log_k, vec![], stated)
             }
@@ -113,11 +118,15 @@ impl Statement {
                 (self.at_temperature(gibbs.value() * factor, temperature), parts, stated)
             }
         };
-        if let Some((at, expected)) = self.value_at {
-            check_typing(&log_k, at, expected)?;
+        if let Some(value_at) = self.value_at {
+            let salinity = value_at.salinity.or(self.conditions.medium.salinity()).unwrap_or(0.0);
+            check_typing(&log_k.at_salinity(salinity), value_at)?;
         }
         if let Some(range) = self.range {
             log_k = log_k.within(range);
+        }
+        if let Some(salinities) = self.salinities {
+            log_k = log_k.within_salinities(salinities);
         }
         let stated_sigma = self.sigma.or_else(|| own_sigma(&parts));
         if self.coverage != 1.0 && stated_sigma.is_none() {
@@ -173,7 +182,12 @@ impl Statement {
                 given.published_as(&format!("{identity}/{word}"), &format!("{word} of {label}"))
             });
             let given = named.and_then(Result::ok).unwrap_or(given);
-            Influence::through(given.parts(), &per_unit)
+            // A value typed here is called after its key; a budget has to say whose it is.
+            let called = |part: &Part| match part.input.label() == word.replace(' ', "_") {
+                true => Part { input: part.input.called(&format!("{word} of {label}")), ..part.clone() },
+                false => part.clone(),
+            };
+            Influence::through(&given.parts().iter().map(called).collect::<Vec<_>>(), &per_unit)
         };
         let mut influences =
             of(&self.enthalpy, Kind::Energy, "enthalpy", LogK::van_t_hoff(0.0, at, 1.0, 0.0));
@@ -229,7 +243,7 @@ fn coverage(text: &str) -> Result<f64, KeyFault> {
 }
 
 /// `14.8435 - 3404.71/T - 0.032786 T`.
-fn written(terms: &[(Term, f64)]) -> String {
+fn written(terms: &[(Product, f64)]) -> String {
     let mut text = String::new();
     for (term, coefficient) in terms {
         let sign = match (text.is_empty(), *coefficient < 0.0) {
@@ -239,7 +253,7 @@ fn written(terms: &[(Term, f64)]) -> String {
             (false, false) => " + ",
         };
         let size = coefficient.abs();
-        text.push_str(&match term.written() {
+        text.push_str(&match term.written().as_str() {
             "1" => format!("{sign}{size}"),
             inverse if inverse.starts_with("1/") => format!("{sign}{size}{}", &inverse[1..]),
             other => format!("{sign}{size} {other}"),
@@ -280,8 +294,10 @@ fn read_value(
     if let Some(gibbs) = options.quantity("gibbs", Kind::Energy)? {
         given.push(("gibbs", Stated::Gibbs(gibbs)));
     }
-    if let Some(value) = options.take("log_k_terms") {
-        given.push(("log_k_terms", Stated::Terms(read_terms(value)?)));
+    for (option, of_log_k) in TERMS {
+        if let Some(value) = options.take(option) {
+            given.push((option, Stated::Terms(read_terms(option, of_log_k, value)?)));
+        }
     }
     if given.len() > 1 {
         let keys: Vec<&str> = given.iter().map(|(key, _)| *key).collect();
@@ -309,42 +325,77 @@ fn read_k(
     conditions.of_unit(&k, equation)
 }
 
-fn read_terms(value: Value) -> Result<Vec<(Term, f64)>, KeyFault> {
-    let fault = |message: String| KeyFault::new("log_k_terms", message);
+/// Terms as they were published: of log10 K, of ln K or of pK, with what turns a coefficient into one of log10 K.
+const TERMS: [(&str, f64); 3] = [("log_k_terms", 1.0), ("ln_k_terms", 1.0 / LN_10), ("pk_terms", -1.0)];
+
+/// Reads the terms of a function of temperature and salinity, `#{ "1": 14.8, "1/T": -3404.7 }`.
+///
+/// # Errors
+///
+/// A fault of `log_k_terms` that names the term.
+pub fn terms(value: Value) -> Result<Vec<(Product, f64)>, KeyFault> {
+    read_terms("log_k_terms", 1.0, value)
+}
+
+/// Terms of a map, each coefficient times `of_log_k`.
+fn read_terms(option: &str, of_log_k: f64, value: Value) -> Result<Vec<(Product, f64)>, KeyFault> {
+    let fault = |message: String| KeyFault::new(option, message);
     let known: Vec<&str> = Term::ALL.map(Term::written).into_iter().chain(["ln(T)"]).collect();
     let Value::Map(map) = value else {
         return Err(fault(format!(
-            "`log_k_terms` takes a map of terms, not {}: the terms are {}",
+            "`{option}` takes a map of terms, not {}: the terms are {}",
             value.kind(),
             list(&known)
         )));
     };
     let mut terms = Vec::new();
     for (key, value) in map {
-        let Some((term, factor)) = Term::parse(&key) else {
+        let Some(parsed) = Product::parse(&key) else {
             let help = nearest(&key, known.iter().copied())
                 .map(|close| format!("; did you mean `{close}`?"))
                 .unwrap_or_default();
-            return Err(fault(format!("`{key}` is no term of log K: the terms are {}{help}", list(&known))));
+            return Err(fault(format!(
+                "`{key}` is no term of log K: the terms are {}, and in seawater their products with {}{help}",
+                list(&known),
+                list(&SalinityTerm::ALL[1..].iter().map(|term| term.written()).collect::<Vec<_>>())
+            )));
         };
         let Value::Number(coefficient) = value else {
             return Err(fault(format!("the coefficient of `{key}` must be a number, not {}", value.kind())));
         };
-        terms.push((term, coefficient * factor));
+        terms.extend(parsed.into_iter().map(|(product, factor)| (product, coefficient * of_log_k * factor)));
     }
-    if terms.is_empty() { Err(fault("`log_k_terms` is empty".into())) } else { Ok(terms) }
+    if terms.is_empty() { Err(fault(format!("`{option}` is empty"))) } else { Ok(terms) }
 }
 
-fn read_value_at(value: Value) -> Result<(Temperature, f64), KeyFault> {
+/// Where log K is stated to have a value, in a check of the typing.
+#[derive(Clone, Copy)]
+struct ValueAt {
+    temperature: Temperature,
+    /// Practical salinity; `None`: the medium's own.
+    salinity: Option<f64>,
+    log_k: f64,
+}
+
+fn read_value_at(value: Value) -> Result<ValueAt, KeyFault> {
     let fault = || {
-        KeyFault::new("value_at", "`value_at` takes a temperature and log K there: `[\"25 degC\", -8.48]`")
+        KeyFault::new(
+            "value_at",
+            "`value_at` takes a temperature, in seawater a salinity, and log K there: `[\"25 degC\", -8.48]`",
+        )
     };
-    let Value::List(values) = value else { return Err(fault()) };
-    let Ok([at, Value::Number(expected)]) = <[Value; 2]>::try_from(values) else { return Err(fault()) };
-    Ok((temperature("value_at", at)?, expected))
+    let Value::List(mut values) = value else { return Err(fault()) };
+    let Some(Value::Number(log_k)) = values.pop() else { return Err(fault()) };
+    let mut values = values.into_iter();
+    let (Some(at), salinity, None) = (values.next(), values.next(), values.next()) else {
+        return Err(fault());
+    };
+    let salinity = salinity.map(|value| stated_conditions::salinity("value_at", value)).transpose()?;
+    Ok(ValueAt { temperature: temperature("value_at", at)?, salinity, log_k })
 }
 
-fn check_typing(log_k: &LogK, at: Temperature, expected: f64) -> Result<(), KeyFault> {
+fn check_typing(log_k: &LogK, stated: ValueAt) -> Result<(), KeyFault> {
+    let (at, expected) = (stated.temperature, stated.log_k);
     let value = log_k.at(at).map_err(|why| KeyFault::new("value_at", format!("log K is {why}")))?;
     // A value printed to fewer decimals than that may differ by half its last one.
     let decimals = expected.to_string().split_once('.').map_or(0, |(_, fraction)| fraction.len());
@@ -382,6 +433,15 @@ fn read_range(value: Value) -> Result<Range, KeyFault> {
         return Err(fault("starts above its end"));
     }
     Ok(Range { lowest, highest })
+}
+
+fn read_salinities(value: Value) -> Result<Salinities, KeyFault> {
+    let fault = || KeyFault::new("salinity_range", "`salinity_range` takes two salinities: write `[5, 45]`");
+    let Value::List(values) = value else { return Err(fault()) };
+    let Ok([lowest, highest]) = <[Value; 2]>::try_from(values) else { return Err(fault()) };
+    let read = |value| stated_conditions::salinity("salinity_range", value);
+    let (lowest, highest) = (read(lowest)?, read(highest)?);
+    if lowest > highest { Err(fault()) } else { Ok(Salinities { lowest, highest }) }
 }
 
 fn read_provenance(options: &mut Named) -> Result<Provenance, KeyFault> {

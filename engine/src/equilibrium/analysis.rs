@@ -15,19 +15,22 @@ use std::collections::BTreeSet;
 
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::assemble::{System, carriers};
+use super::dissolved_mass::{self, CARBONATE_MASS};
+use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{Formations, Ledger};
+use crate::ledger::{Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
 use crate::solve::{Converged, Problem, Reservoir, Row, Settings, Total, Warm, solve};
+use crate::units::{KgOf, Pressure};
 use crate::water::analysis::{Dissolved, Evidence, Measured, Ph};
 use crate::water::analyte::{Analyte, oxidation_state, to_roman};
 use crate::water::concentration::{Amount, Solution};
-use crate::water::{Sample, Treatment};
+use crate::water::{Sample, Treatment, marine};
 
 /// Oxidation states an element given whole is taken in where a ledger knows several; common in aerated water.
 const COMMON_STATES: [(&str, i64); 5] = [("Fe", 3), ("S", 6), ("N", 5), ("C", 4), ("Mn", 2)];
@@ -87,6 +90,8 @@ pub struct Outcome {
     pub exchanged: Vec<(String, f64)>,
     /// Amount of each solid that may form or is there without limit, mol/kg(water).
     pub solids: Vec<Solid>,
+    /// What treatments did to the totals.
+    pub dosed: Dosed,
     /// What it meets, where its derivatives are known.
     pub conditions: Option<Conditions>,
 }
@@ -115,9 +120,18 @@ pub fn analyse(
 ) -> Result<Analysed, EquilibriumError> {
     let mut notes = sample.notes().to_vec();
     let solution = solution(measured);
-    let given = amounts(measured, ledger, &solution, &mut notes)?;
+    let mut given = amounts(measured, ledger, &solution, &mut notes)?;
+    given.extend(conservative(ledger, &given)?);
     let present = present_components(sample, measured, ledger, &given)?;
-    let system = System::new(ledger, &present, sample.setting().temperature)?;
+    let system = match measured.ph_temperature {
+        None => System::new(ledger, &present, sample.setting().temperature)?,
+        // Where pH was measured elsewhere, it was in a laboratory at the surface.
+        Some(temperature) => {
+            let surface = ledger.sea().map(|sea| Sea { pressure: Pressure::ATMOSPHERE, ..sea });
+            let ledger = surface.map_or_else(|| Ok(ledger.clone()), |surface| ledger.in_sea(surface))?;
+            System::new(&ledger, &present, temperature)?
+        }
+    };
     let mut totals = vec![0.0; system.n_components()];
     for carried in &given {
         totals[position(&system, carried.component)] += carried.total();
@@ -140,6 +154,7 @@ pub fn analyse(
         totals: totals.clone(),
         exchanged: vec![],
         solids: vec![],
+        dosed: Dosed::default(),
         conditions,
     };
     let temperature = measured.temperature.clone();
@@ -188,25 +203,32 @@ fn position(system: &System, component: usize) -> usize {
 }
 
 /// Density and dissolved mass of the sample as its volumes were measured.
-fn solution(measured: &Measured) -> Solution {
-    let at = measured.volume_temperature.unwrap_or_else(laboratory);
-    let water_density = water::density(at.kelvin()) / 1000.0;
+pub(super) fn solution(measured: &Measured) -> Solution {
+    if let Some(sea) = measured.sea {
+        return marine::solution(measured, sea.salinity);
+    }
+    let water_density = water_density(measured);
     let grams = measured.amounts.iter().map(|(analyte, _, amount)| {
         analyte.molar_mass().unwrap_or(0.0) * amount.moles.value() * amount.per.to_litre(water_density)
     });
-    // Alkalinity and carbon are counted as hydrogencarbonate, 61 g/mol, which most of either is.
-    let evidence = measured.evidence.alkalinity.iter().chain(&measured.evidence.dic).next();
-    let carbonate =
-        evidence.map_or(0.0, |amount| 61.017 * amount.moles.value() * amount.per.to_litre(water_density));
+    // Alkalinity and carbon are counted as hydrogencarbonate, which most of either is.
+    let carbonate = dissolved_mass::carbonate(measured)
+        .map_or(0.0, |amount| CARBONATE_MASS * amount.moles.value() * amount.per.to_litre(water_density));
     let dissolved = (grams.sum::<f64>() + carbonate).max(0.0) / 1000.0;
     match measured.density {
-        Some(density) => Solution { density, dissolved },
+        Some(density) => Solution { density, dissolved, basis: KgOf::Water },
         None => Solution::with_salts(water_density, dissolved),
     }
 }
 
+/// Density of pure water where volumes were measured, kg/L.
+fn water_density(measured: &Measured) -> f64 {
+    let at = measured.volume_temperature.unwrap_or_else(laboratory);
+    water::density(at.kelvin()) / 1000.0
+}
+
 /// Laboratories measure volumes at 20 degC, whatever the water had in the field.
-fn laboratory() -> crate::units::Temperature {
+pub(super) fn laboratory() -> crate::units::Temperature {
     crate::units::Temperature::from_celsius(20.0).expect("above absolute zero")
 }
 
@@ -236,10 +258,29 @@ fn amounts(
         let carrier = carrier(formations, analyte, key, notes)?;
         let atoms = formations.components[carrier].count(analyte.element());
         let ratio = rational::to_f64(analyte.atoms() / atoms);
-        let factor = amount.per.to_water(solution) * ratio;
+        let factor = amount.per.to_basis(solution) * ratio;
         Ok(Carried { component: carrier, moles: amount.moles.clone(), factor })
     };
     measured.amounts.iter().map(convert).collect()
+}
+
+/// What goes with the salinity of a seawater, less what was measured of it.
+fn conservative(ledger: &Ledger, given: &[Carried]) -> Result<Vec<Carried>, EquilibriumError> {
+    let Some(sea) = ledger.sea() else { return Ok(vec![]) };
+    let formations = ledger.formations();
+    let mut carried = Vec::new();
+    for constituent in ledger.composition() {
+        let key = &constituent.name;
+        let analyte = Analyte::parse(&constituent.of)
+            .map_err(|error| EquilibriumError::Analyte { key: key.clone(), why: error.to_string() })?;
+        let component = carrier(formations, &analyte, key, &mut vec![])?;
+        let atoms = formations.components[component].count(analyte.element());
+        let factor = rational::to_f64(analyte.atoms() / atoms);
+        if given.iter().all(|own| own.component != component) && sea.salinity > 0.0 {
+            carried.push(Carried { component, moles: constituent.amount(sea.salinity), factor });
+        }
+    }
+    Ok(carried)
 }
 
 /// The component that carries an analyte in its oxidation state.
@@ -322,9 +363,29 @@ fn treatment_components(sample: &Sample, ledger: &Ledger) -> Result<BTreeSet<usi
             Treatment::HoldPh { reagent: Some(reagent), .. } => {
                 present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
             }
+            Treatment::WithSolid { solid, .. } => {
+                let formed = formations.formation(ledger.find_phase(solid)?).expect("phases are formed");
+                present.extend(formed.stoichiometry.iter().map(|(j, _)| *j));
+            }
+            Treatment::Dose(dose) | Treatment::Remove(dose) => {
+                present.extend(super::treatment::reagent(ledger, &dose.reagent)?.into_iter().map(|(j, _)| j));
+            }
+            Treatment::AddSolution { solution, .. } => {
+                for (formula, _) in &solution.solutes {
+                    present.extend(super::treatment::reagent(ledger, formula)?.into_iter().map(|(j, _)| j));
+                }
+            }
+            Treatment::Adjust(adjust) => {
+                for (reagent, ..) in &adjust.reagents {
+                    present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
+                }
+            }
             // A solid that may form brings nothing with it: it needs what is there already.
             Treatment::Allow { solid, .. } => drop(ledger.find_phase(solid)?),
-            Treatment::HoldPh { .. } | Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
+            Treatment::HoldPh { .. }
+            | Treatment::Concentrate(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => {}
         }
     }
     Ok(present)
@@ -363,7 +424,7 @@ impl<'a> Analysis<'a> {
     ) -> Self {
         let evidence = &measured.evidence;
         let level = ZeroLevel::at(system.ledger(), ALKALINITY_PH);
-        let moles = |amount: &Amount| amount.moles.value() * amount.per.to_water(solution);
+        let moles = |amount: &Amount| amount.moles.value() * amount.per.to_basis(solution);
         let carbon = carriers(system.ledger().formations(), Element::C);
         Self {
             system,
@@ -380,7 +441,7 @@ impl<'a> Analysis<'a> {
             alkalinity: evidence.alkalinity.as_ref().map(moles),
             dic: evidence.dic.as_ref().map(moles),
             ph: match &evidence.ph {
-                Some(Ph::Measured(ph)) => Some(ph.value()),
+                Some(Ph::Measured(ph)) => Some(ph.value() - system.ph_shift()),
                 _ => None,
             },
             co2: evidence.co2.as_ref().map(|fugacity| fugacity.value()),
@@ -586,10 +647,11 @@ impl<'a> Analysis<'a> {
             None => change,
             Some(k) => self.neutralised(change, &self.supplied(k)),
         };
-        let factor = |amount: &Amount| amount.per.to_water(&self.solution);
+        let factor = |amount: &Amount| amount.per.to_basis(&self.solution);
 
         let mut conditions =
             Conditions { temperature: measured.temperature.clone(), ..Conditions::default() };
+        let mut amounts: Vec<&Amount> = measured.amounts.iter().map(|(_, _, amount)| amount).collect();
         for carried in given {
             let change = self.supplied(position(self.system, carried.component));
             let change = change.into_iter().map(|change| change * carried.factor).collect();
@@ -598,12 +660,16 @@ impl<'a> Analysis<'a> {
         if let (Some(amount), Some(carbon), true) = (&self.evidence.dic, self.carbon, uses("DIC")) {
             let change = self.supplied(carbon).into_iter().map(|change| change * factor(amount)).collect();
             conditions.measured.push((amount.moles.clone(), balanced(change)));
+            amounts.push(amount);
         }
         if let (Some(amount), true) = (&self.evidence.alkalinity, uses("alkalinity")) {
             let change: Vec<f64> = unit(self.proton);
             let change = change.into_iter().map(|change| -change * factor(amount)).collect();
             conditions.measured.push((amount.moles.clone(), balanced(change)));
+            amounts.push(amount);
         }
+        let water_density = water_density(measured);
+        dissolved_mass::account(&mut conditions, &amounts, measured, &self.solution, water_density);
         match &self.evidence.ph {
             Some(Ph::Measured(ph)) if uses("pH") => {
                 let supply = match self.carbon {
@@ -611,7 +677,7 @@ impl<'a> Analysis<'a> {
                     _ => unit(self.proton),
                 };
                 conditions.held.push(Held {
-                    reservoir: fixed_ph(self.proton, ph.value()),
+                    reservoir: fixed_ph(self.proton, ph.value() - self.system.ph_shift()),
                     phase: None,
                     supply: balanced(supply),
                     value: Some((ph.clone(), -LN_10)),
@@ -707,7 +773,8 @@ impl<'a> Analysis<'a> {
             "pH" => {
                 let Some(Ph::Measured(ph)) = &self.evidence.ph else { return None };
                 let slope = (Variable::LnActivity(self.proton), -1.0 / LN_10);
-                (ph.clone(), 1.0, -converged.ln_a[self.proton] / LN_10, vec![slope])
+                let computed = self.system.ph_shift() - converged.ln_a[self.proton] / LN_10;
+                (ph.clone(), 1.0, computed, vec![slope])
             }
             "alkalinity" | "DIC" => {
                 let carbon = self.carbon;
@@ -725,7 +792,7 @@ impl<'a> Analysis<'a> {
                 };
                 let slopes: Slopes = rows.map(slope).filter(|(_, slope)| *slope != 0.0).collect();
                 let computed = slopes.iter().map(|(_, slope)| slope).sum();
-                (amount.moles.clone(), amount.per.to_water(&self.solution), computed, slopes)
+                (amount.moles.clone(), amount.per.to_basis(&self.solution), computed, slopes)
             }
             _ => {
                 let reservoir = self.fixed_co2(1.0).ok()?;

@@ -4,9 +4,11 @@ use std::collections::BTreeSet;
 
 use crate::activity::{Davies, Model};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Formation, Formations, Ledger};
+use crate::ledger::{ActivityChoice, Formation, Formations, Ledger, LedgerError, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
+use crate::seawater::constants::{Place, log_k_free};
+use crate::seawater::scales::Scales;
 use crate::solve::{Problem, Row, Total};
 use crate::units::Temperature;
 
@@ -47,6 +49,9 @@ impl System {
         temperature: Temperature,
     ) -> Result<Self, EquilibriumError> {
         let formations = ledger.formations();
+        if let Some((name, _)) = formations.too_large.first().and_then(|k| ledger.reactions().nth(*k)) {
+            return Err(LedgerError::TooLarge(name.into()).into());
+        }
         let water = formations.component(&Species::water());
         let components: Vec<usize> = present.iter().copied().filter(|j| Some(*j) != water).collect();
         let (log_k, doubts) = constants(ledger, temperature);
@@ -63,6 +68,19 @@ impl System {
             others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
         let model = model(ledger.activity(), temperature);
         Ok(Self { ledger: ledger.clone(), temperature, components, solutes, phases, model, doubts })
+    }
+
+    /// The same species with the constants of another temperature; whether cycles close there is not asked.
+    #[must_use]
+    pub fn at(&self, temperature: Temperature) -> Self {
+        let formations = self.ledger.formations();
+        let (log_k, doubts) = constants(&self.ledger, temperature);
+        let mut system =
+            Self { temperature, doubts, model: model(self.ledger.activity(), temperature), ..self.clone() };
+        for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
+            row.ln_k = ln_k(&formations.species[*index], &log_k);
+        }
+        system
     }
 
     /// The ledger.
@@ -105,6 +123,20 @@ impl System {
     #[must_use]
     pub fn component(&self, species: &Species) -> Option<usize> {
         self.components.iter().position(|j| self.formations().components[*j] == *species)
+    }
+
+    /// What is added to -log10 a(H^+) to have pH on the scale of the water: 0 outside seawater, where the hydrogen ion of
+    /// the solver is the free one.
+    #[must_use]
+    pub fn ph_shift(&self) -> f64 {
+        self.scales().map_or(0.0, |(sea, scales)| scales.shift_from_free(sea.ph_scale))
+    }
+
+    /// The sea of a marine system with its scales of pH.
+    #[must_use]
+    pub fn scales(&self) -> Option<(Sea, Scales)> {
+        let sea = self.ledger.sea()?;
+        Some((sea, Scales::at(&self.ledger, &Place::of(sea, self.temperature))))
     }
 
     /// Position of the hydrogen ion, which is always present.
@@ -156,9 +188,8 @@ impl System {
         Problem {
             n_components: self.n_components(),
             species: self.solutes.iter().map(|(_, row)| row.clone()).collect(),
-            reservoirs: vec![],
-            minerals: vec![],
             totals: totals.iter().map(|total| Total::from(*total)).collect(),
+            ..Problem::default()
         }
     }
 
@@ -169,6 +200,12 @@ impl System {
 
 /// log10 K of every reaction at a temperature, and what is doubtful about it.
 fn constants(ledger: &Ledger, temperature: Temperature) -> (Vec<f64>, Vec<Option<Doubt>>) {
+    if let Some(sea) = ledger.sea() {
+        // A state in seawater warns of its own of constants outside their range: see `seawater::constants`.
+        let log_k = log_k_free(ledger, sea, temperature);
+        let certain = vec![None; log_k.len()];
+        return (log_k, certain);
+    }
     let read = ledger.reactions().map(|(_, reaction)| {
         let Ok(constant) = reaction.constant() else { return (0.0, None) };
         let (log_k, away) = constant.log_k.nearest_to(temperature);
@@ -199,13 +236,16 @@ fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[
     let position = |j: usize| components.iter().position(|own| *own == j);
     let stoichiometry: Vec<(usize, Rational)> =
         formed.stoichiometry.iter().filter_map(|(j, nu)| position(*j).map(|k| (k, *nu))).collect();
-    let log_k: f64 = formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum();
     Row {
         stoichiometry,
-        ln_k: log_k * LN_10,
+        ln_k: ln_k(formed, log_k),
         charge: f64::from(formed.species.charge()),
         water: water.map_or(0.0, |water| rational::to_f64(formed.coefficient(water))),
     }
+}
+
+fn ln_k(formed: &Formation, log_k: &[f64]) -> f64 {
+    formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum::<f64>() * LN_10
 }
 
 fn model(choice: ActivityChoice, temperature: Temperature) -> Model {

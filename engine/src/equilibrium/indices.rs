@@ -1,6 +1,7 @@
 //! Indices of the trade that ask what a water would do: each is one more equilibrium of its dissolved totals.
 
 use super::analysis::{Outcome, delivered, ln_saturation};
+use super::dosing::Dosed;
 use super::error::EquilibriumError;
 use super::state::State;
 use super::uncertainty::{Conditions, Held, Influence, Stage, Variable};
@@ -65,7 +66,7 @@ pub fn saturation_ph(state: &State) -> Result<Quantity, EquilibriumError> {
     saturation(root.x)?;
     let outcome = at_saturation(state, totals, calcite, gas)?;
     let proton = system.proton();
-    let ph = -outcome.converged.ln_a[proton] / LN_10;
+    let ph = system.ph_shift() - outcome.converged.ln_a[proton] / LN_10;
     let Some(stage) = Stage::new(&outcome) else {
         return Quantity::measured(ph, Unit::one(), None, "pH of saturation").map_err(undefined);
     };
@@ -108,6 +109,7 @@ fn at_saturation(
         totals,
         exchanged: vec![],
         solids: vec![],
+        dosed: Dosed::default(),
         conditions: Some(conditions),
     })
 }

@@ -5,10 +5,15 @@
 //! questions in the user's names and units.
 
 pub mod acid_base;
+mod adjust;
 pub mod analysis;
 pub mod assemble;
+pub mod buffer;
+mod dissolved_mass;
+mod dosing;
 mod error;
 mod indices;
+mod mixture;
 pub mod observable;
 pub mod state;
 mod trail;
@@ -16,6 +21,7 @@ pub mod treatment;
 pub mod uncertainty;
 
 pub use assemble::System;
+pub use dosing::Dosed;
 pub use error::EquilibriumError;
 pub use observable::{Asked, Observable, ObservableError};
 pub use state::State;
@@ -35,22 +41,54 @@ pub fn equilibrate(
     ledger: Option<&Ledger>,
     settings: &Settings,
 ) -> Result<State, EquilibriumError> {
-    let ledger = match ledger.or(sample.ledger()) {
-        Some(ledger) => ledger.clone(),
-        None => shipped::ledger("freshwater", None)?,
-    };
+    let ledger = ledger_of(sample, ledger)?;
     let mut analysed = match sample.analysis() {
         Analysis::Measured(measured) => analysis::analyse(sample, measured, &ledger, settings)?,
         Analysis::Spoilt(reason) => return Err(EquilibriumError::Spoilt(reason.clone())),
+        Analysis::Mixed(parts) => mixture::mix(sample, parts, &ledger, settings)?,
         Analysis::Dissolved(dissolved) => analysis::restore(sample, dissolved, &ledger)?,
     };
+    let mut resolved = sample.clone();
+    if adjust::is_needed(sample) {
+        let notes;
+        (resolved, notes) = adjust::resolve(sample, &analysed, settings)?;
+        analysed.notes.extend(notes);
+    }
     let first = analysed.outcome.take();
     let outcomes = match first {
-        Some(first) if sample.treatments().is_empty() => vec![first],
+        Some(first) if sample.treatments().is_empty() && !measured_elsewhere(sample) => vec![first],
         first => {
-            let treated = treatment::treat(sample, &analysed, settings)?;
+            let treated = treatment::treat(&resolved, &analysed, settings)?;
             first.into_iter().chain([treated]).collect()
         }
     };
     Ok(State::new(sample.clone(), analysed, outcomes))
+}
+
+/// The ledger a sample is computed with, in the sea that the sample is of.
+fn ledger_of(sample: &Sample, given: Option<&Ledger>) -> Result<Ledger, EquilibriumError> {
+    let sea = sample.sea();
+    if let (Analysis::Mixed(parts), None) = (sample.analysis(), sea)
+        && parts.iter().any(|(part, _)| part.sea().is_some())
+    {
+        let why = "seawater and other water hold by different constants: mix them with `estuary(river, sea, [0.5])`";
+        return Err(EquilibriumError::Unreachable(why.into()));
+    }
+    let ledger = match given.or(sample.ledger()) {
+        Some(ledger) => ledger.clone(),
+        None => shipped::ledger(if sea.is_some() { "seawater" } else { "freshwater" }, None)?,
+    };
+    match sea {
+        Some(sea) => Ok(ledger.in_sea(sea)?),
+        None if ledger.is_marine() => Err(EquilibriumError::Unreachable(format!(
+            "the constants of the ledger `{}` are functions of salinity: write the water as `seawater(#{{ salinity: 35, … }})`",
+            ledger.name()
+        ))),
+        None => Ok(ledger),
+    }
+}
+
+/// Whether the analysis holds at another temperature than the water's own, to which it is then brought.
+fn measured_elsewhere(sample: &Sample) -> bool {
+    sample.measured().is_some_and(|measured| measured.ph_temperature.is_some())
 }

@@ -6,6 +6,8 @@
 
 use std::fmt;
 
+use super::buffer::{Added, Answering};
+use crate::chem::PhScale;
 use crate::nearest::nearest;
 use crate::text::list;
 use crate::units::{Unit, UnitError};
@@ -15,6 +17,14 @@ use crate::units::{Unit, UnitError};
 pub enum Observable {
     /// -log10 a(H⁺).
     Ph,
+    /// pH of a seawater on a named scale.
+    PhOn(PhScale),
+    /// DIC over the buffer factor of CO2 by carbon.
+    Revelle,
+    /// A buffer factor.
+    Buffer(Answering, Added),
+    /// Practical salinity of a seawater.
+    Salinity,
     /// Temperature.
     Temperature,
     /// Pressure.
@@ -129,8 +139,12 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 /// Name, form as it is written, and what it is, in order of listing.
-pub const NAMES: [(&str, &str, &str); 29] = [
-    ("pH", "pH", "-log10 of the activity of H^+"),
+pub const NAMES: [(&str, &str, &str); 37] = [
+    (
+        "pH",
+        "pH",
+        "-log10 of the activity of H^+; in seawater on the sample's scale, on another as pH(free), pH(nbs)",
+    ),
     ("temperature", "temperature", "temperature, degC"),
     ("pressure", "pressure", "pressure, bar"),
     ("density", "density", "density of the solution, kg/L"),
@@ -159,6 +173,14 @@ pub const NAMES: [(&str, &str, &str); 29] = [
     ("added", "added(NaOH)", "amount a treatment added, mol/kg(water)"),
     ("removed", "removed(CO2(g))", "amount a treatment took away, mol/kg(water)"),
     ("misfit", "misfit(DIC)", "a measured value not used, less the computed one"),
+    ("salinity", "salinity", "practical salinity of a seawater"),
+    ("Revelle", "Revelle", "Revelle factor, d ln [CO2] / d ln DIC at constant alkalinity"),
+    ("gamma_DIC", "gamma_DIC", "1/(d ln [CO2] / d DIC) at constant alkalinity, mol/kg"),
+    ("gamma_TA", "gamma_TA", "1/(d ln [CO2] / d alkalinity) at constant DIC, mol/kg"),
+    ("beta_DIC", "beta_DIC", "1/(d ln [H^+] / d DIC) at constant alkalinity, mol/kg"),
+    ("beta_TA", "beta_TA", "1/(d ln [H^+] / d alkalinity) at constant DIC, mol/kg"),
+    ("omega_DIC", "omega_DIC", "1/(d ln [CO3^2-] / d DIC) at constant alkalinity, mol/kg"),
+    ("omega_TA", "omega_TA", "1/(d ln [CO3^2-] / d alkalinity) at constant DIC, mol/kg"),
 ];
 
 impl Asked {
@@ -179,6 +201,9 @@ impl Asked {
             }
             None => (text, None),
         };
+        if let Some(gas) = SHORT_FOR_GAS.iter().find_map(|(short, long)| (*short == body).then_some(long)) {
+            return Ok(Self { observable: about(gas, "CO2(g)".into()), unit });
+        }
         let (name, subject) = match body.split_once('(') {
             Some((name, rest)) => {
                 let subject = rest.strip_suffix(')').map(|subject| subject.trim().to_string());
@@ -190,6 +215,9 @@ impl Asked {
             let nearest = nearest(name, NAMES.map(|(known, ..)| known)).map(|name| form_of(name).to_string());
             return Err(ObservableError::Unknown { name: body.into(), nearest });
         };
+        if let ("pH", Some(scale)) = (name, &subject) {
+            return on_scale(scale, body).map(|observable| Self { observable, unit });
+        }
         let observable = match (subject, form.contains('(')) {
             (None, false) => plain(name),
             (Some(subject), true) if !subject.is_empty() => about(name, subject),
@@ -203,8 +231,34 @@ fn form_of(name: &str) -> &'static str {
     NAMES.iter().find(|(known, ..)| *known == name).map_or("", |(_, form, _)| form)
 }
 
+/// The CO2 of a seawater goes out by the keys it comes in.
+const SHORT_FOR_GAS: [(&str, &str); 3] = [("fCO2", "f"), ("pCO2", "p"), ("xCO2", "x")];
+
+const BUFFERS: [(&str, Answering, Added); 6] = [
+    ("gamma_DIC", Answering::CarbonDioxide, Added::Carbon),
+    ("gamma_TA", Answering::CarbonDioxide, Added::Alkalinity),
+    ("beta_DIC", Answering::HydrogenIon, Added::Carbon),
+    ("beta_TA", Answering::HydrogenIon, Added::Alkalinity),
+    ("omega_DIC", Answering::Carbonate, Added::Carbon),
+    ("omega_TA", Answering::Carbonate, Added::Alkalinity),
+];
+
+fn on_scale(scale: &str, body: &str) -> Result<Observable, ObservableError> {
+    let scales = [PhScale::Free, PhScale::Total, PhScale::Seawater, PhScale::Nbs];
+    let found = scales.into_iter().find(|known| known.word() == scale);
+    found.map(Observable::PhOn).ok_or_else(|| ObservableError::NoAnswer {
+        asked: body.into(),
+        why: format!("the scales of pH are {}", list(&scales.map(PhScale::word))),
+    })
+}
+
 fn plain(name: &str) -> Observable {
+    if let Some((_, of, by)) = BUFFERS.iter().find(|(known, ..)| *known == name) {
+        return Observable::Buffer(*of, *by);
+    }
     match name {
+        "salinity" => Observable::Salinity,
+        "Revelle" => Observable::Revelle,
         "pH" => Observable::Ph,
         "temperature" => Observable::Temperature,
         "pressure" => Observable::Pressure,
@@ -246,6 +300,13 @@ impl fmt::Display for Observable {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let (name, subject) = match self {
             Self::Ph => ("pH", None),
+            Self::PhOn(scale) => return write!(f, "pH({})", scale.word()),
+            Self::Salinity => ("salinity", None),
+            Self::Revelle => ("Revelle", None),
+            Self::Buffer(of, by) => {
+                let found = BUFFERS.iter().find(|(_, own_of, own_by)| (own_of, own_by) == (of, by));
+                (found.map_or("", |(name, ..)| name), None)
+            }
             Self::Temperature => ("temperature", None),
             Self::Pressure => ("pressure", None),
             Self::Density => ("density", None),
@@ -302,7 +363,11 @@ mod tests {
         let message = |text: &str| Asked::parse(text).unwrap_err().to_string();
         assert_eq!(message("ph"), "no observable `ph`; did you mean `pH`?");
         assert_eq!(message("SI"), "`SI` is asked as `SI(calcite)`");
-        assert_eq!(message("pH(free)"), "`pH(free)` is asked as `pH`");
+        assert_eq!(message("DIC(x)"), "`DIC(x)` is asked as `DIC`");
+        assert_eq!(
+            message("pH(fre)"),
+            "`pH(fre)`: the scales of pH are `free`, `total`, `seawater` and `nbs`"
+        );
         assert!(message("m(Ca^2+) [mmol/kgg]").starts_with("`m(Ca^2+) [mmol/kgg]`: unknown unit"));
     }
 }

@@ -6,23 +6,26 @@ use std::sync::{Arc, OnceLock};
 use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
 use super::analysis::{Analysed, Misfit, Outcome, Solid, ln_saturation, saturation_slopes, scaled};
 use super::assemble::{Doubt, System};
+use super::buffer::{self, Answering, buffer_factor};
 use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
 use super::uncertainty::{Influence, Slopes, Stage, Variable};
 use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{Formation, Formations};
+use crate::ledger::{Formation, Formations, Sea};
 use crate::physics::constants::LN_10;
-use crate::physics::water;
+use crate::physics::{gas_exchange, seawater, water};
 use crate::present::{Cell, Column, Table};
 use crate::quantity::{Quantity, QuantityError};
+use crate::seawater::constants::outside_ranges;
+use crate::seawater::scales::Scales;
 use crate::solve::Certificate;
 use crate::text::list;
 use crate::units::{KgOf, Kind, Pressure, Temperature, Unit};
 use crate::water::analysis::Setting;
 use crate::water::analyte::{Analyte, oxidation_state};
 use crate::water::concentration::{SALT_TERM, Solution};
-use crate::water::{Dissolved, Sample, Treatment};
+use crate::water::{Dissolved, Sample, Treatment, treatment};
 
 /// A sum smaller than this part of its terms is what rounding left of a zero.
 const ROUNDING: f64 = 1e-12;
@@ -62,11 +65,13 @@ struct Answer {
     slopes: Slopes,
     /// Derivatives by other quantities.
     partials: Vec<(Quantity, f64)>,
+    /// Whether its uncertainty is not worked out.
+    is_unstated: bool,
 }
 
 impl Answer {
     fn new(value: f64, unit: &'static str, slopes: Slopes) -> Self {
-        Self { value, unit, molar_mass: None, element: None, slopes, partials: vec![] }
+        Self { value, unit, molar_mass: None, element: None, slopes, partials: vec![], is_unstated: false }
     }
 
     /// An answer that is a multiple of exp of what the slopes belong to.
@@ -81,11 +86,7 @@ impl State {
         let mut outcomes = outcomes.into_iter().rev();
         let outcome = outcomes.next().expect("every state has an outcome");
         let before = outcomes.next();
-        let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
-            Treatment::CompressTo(pressure) => Some(*pressure),
-            _ => None,
-        });
-        let pressure = compressed.unwrap_or(sample.setting().pressure);
+        let pressure = sample.setting_after().pressure;
         let molalities: Vec<f64> = outcome.converged.ln_c.iter().map(|ln_c| ln_c.exp()).collect();
         let dissolved = dissolved(&outcome.system, &molalities);
         let solution = solution(&outcome.system, &molalities);
@@ -135,10 +136,24 @@ impl State {
         &self.0.outcome.converged.certificate
     }
 
-    /// pH: -log10 a(H⁺).
+    /// pH: -log10 a(H⁺); in seawater on the sample's scale.
     #[must_use]
     pub fn ph(&self) -> f64 {
-        -self.0.outcome.converged.ln_a[self.system().proton()] / LN_10
+        self.system().ph_shift() - self.0.outcome.converged.ln_a[self.system().proton()] / LN_10
+    }
+
+    /// The kilogram that concentrations are counted per.
+    fn basis(&self) -> KgOf {
+        self.0.solution.basis
+    }
+
+    /// The unit of an answer, which is written per kilogram of water, by the state's own kilogram.
+    fn unit(&self, unit: &str) -> Unit {
+        match self.basis() {
+            KgOf::Water => Unit::parse(unit),
+            KgOf::Solution => Unit::parse(&unit.replace("kg(water)", "kg(solution)")),
+        }
+        .expect("a known unit")
     }
 
     /// Dissolved total of each component of [`State::system`], mol/kg(water).
@@ -202,10 +217,38 @@ impl State {
             totals.push((solid.clone(), self.quantity(found.amount.max(0.0), slopes)));
         }
         let setting =
-            Setting { temperature: self.temperature(), pressure: self.pressure(), ..self.0.sample.setting() };
+            Setting { temperature: self.temperature(), pressure: self.pressure(), water: self.water() };
         let name = self.0.sample.name().map(str::to_string);
         let dissolved = Dissolved { totals, temperature: self.temperature_quantity() };
-        Ok(Sample::dissolved(name, setting, dissolved, system.ledger().clone()))
+        let mut sample = Sample::dissolved(name, setting, dissolved, system.ledger().clone());
+        for name in keep {
+            let allowed = Treatment::Allow { solid: (*name).into(), above: self.held_at(name)? };
+            sample =
+                sample.treated(allowed).map_err(|error| EquilibriumError::Unreachable(error.to_string()))?;
+        }
+        Ok(sample)
+    }
+
+    /// The saturation index a solid that is there is held at.
+    fn held_at(&self, name: &str) -> Result<f64, EquilibriumError> {
+        let ledger = self.system().ledger();
+        let wanted = ledger.find_phase(name)?;
+        let is_it = |solid: &str| ledger.find_phase(solid).is_ok_and(|own| own == wanted);
+        let index = |treatment: &Treatment| match treatment {
+            Treatment::Allow { solid, above: index } | Treatment::Saturate { solid, index }
+                if is_it(solid) =>
+            {
+                Some(*index)
+            }
+            _ => None,
+        };
+        Ok(self.0.sample.treatments().iter().rev().find_map(index).unwrap_or(0.0))
+    }
+
+    /// Kilograms of water: what the sample had, less what evaporated.
+    #[must_use]
+    pub fn water(&self) -> f64 {
+        self.0.sample.setting().water / self.0.outcome.dosed.concentrated
     }
 
     /// Dissolved total of each component, mol/kg(water), correlated through all they come from.
@@ -222,7 +265,7 @@ impl State {
     /// A number of the state in mol/kg(water), with the uncertainty that follows from its slopes.
     pub(super) fn quantity(&self, value: f64, slopes: Slopes) -> Quantity {
         let answer = Answer::new(value, "mol/kg(water)", slopes);
-        let unit = Unit::parse(answer.unit).expect("a known unit");
+        let unit = self.unit(answer.unit);
         self.with_uncertainty(&answer, value, unit, 1.0)
             .unwrap_or_else(|_| Quantity::exact(value, Unit::one()))
     }
@@ -278,14 +321,14 @@ impl State {
         let mut answer = self.value(&asked.observable, &name)?;
         // A sum over nothing is -0.
         answer.value += 0.0;
-        let own = Unit::parse(answer.unit).expect("a known unit");
+        let own = self.unit(answer.unit);
         let Some(unit) = &asked.unit else {
             let value = answer.value;
             return Ok((answer, value, own, 1.0));
         };
         let convert = |value: f64| self.in_unit(&answer, value, &own, unit, &name);
         let (value, factor) = (convert(answer.value)?, convert(1.0)? - convert(0.0)?);
-        Ok((answer, value, unit.per_kg_of(KgOf::Water), factor))
+        Ok((answer, value, unit.per_kg_of(self.basis()), factor))
     }
 
     fn with_uncertainty(
@@ -295,7 +338,7 @@ impl State {
         unit: Unit,
         factor: f64,
     ) -> Result<Quantity, QuantityError> {
-        if self.stages().is_none() && !answer.slopes.is_empty() {
+        if answer.is_unstated || (self.stages().is_none() && !answer.slopes.is_empty()) {
             return Quantity::measured(value, unit, None, "this state");
         }
         let partials = self.influence_on(answer).partials(self.system());
@@ -327,6 +370,21 @@ impl State {
         let nothing = |error: EquilibriumError| no_answer(asked, error.to_string());
         match observable {
             Observable::Ph => plain(self.ph(), "1", self.ph_slopes()),
+            Observable::PhOn(scale) => {
+                let (sea, scales) = self.scales(asked)?;
+                let shift = scales.shift_from_free(*scale) - scales.shift_from_free(sea.ph_scale);
+                plain(self.ph() + shift, "1", self.ph_slopes())
+            }
+            Observable::Salinity => plain(self.scales(asked)?.0.salinity, "1", vec![]),
+            Observable::Revelle => {
+                let gamma = buffer_factor(self, Answering::CarbonDioxide, buffer::Added::Carbon);
+                let value = self.total("C", asked)?.value / gamma.map_err(nothing)?;
+                Ok(Answer { is_unstated: true, ..Answer::new(value, "1", vec![]) })
+            }
+            Observable::Buffer(of, by) => {
+                let value = buffer_factor(self, *of, *by).map_err(nothing)?;
+                Ok(Answer { is_unstated: true, ..Answer::new(value, "mol/kg(water)", vec![]) })
+            }
             Observable::Temperature => {
                 plain(self.temperature().celsius(), "degC", vec![(Variable::Temperature, 1.0)])
             }
@@ -384,8 +442,8 @@ impl State {
             Observable::Molarity(name) => {
                 let (k, formed) = self.solute(name, asked)?;
                 let molality = k.map_or(0.0, |k| inner.molalities[k]);
-                let value = molality * inner.solution.water_per_litre();
-                let mut slopes = scaled(&self.water_per_litre_slopes(), molality);
+                let value = molality * inner.solution.basis_per_litre();
+                let mut slopes = scaled(&self.basis_per_litre_slopes(), molality);
                 slopes.extend(k.map(|k| (Variable::LnMolality(k), value)));
                 Ok(amount(value, "mol/L", &formed.species, slopes))
             }
@@ -423,17 +481,23 @@ impl State {
                 let (ln_omega, slopes) = self.ln_omega(name, asked)?;
                 Ok(Answer::exponential(ln_omega.exp(), "1", slopes))
             }
-            Observable::Fugacity(name) | Observable::PartialPressure(name) => {
+            Observable::Fugacity(name) => {
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
                 plain(fugacity, "bar", slopes)
             }
+            Observable::PartialPressure(name) => {
+                let (fugacity, slopes) = self.fugacity(name, asked)?;
+                let factor = self.fugacity_factor(name);
+                plain(fugacity / factor, "bar", scaled(&slopes, 1.0 / factor))
+            }
             Observable::MoleFraction(name) => {
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
-                plain(fugacity / self.dry_pressure(), "1", scaled(&slopes, 1.0 / self.dry_pressure()))
+                let per_fraction = self.dry_pressure() * self.fugacity_factor(name);
+                plain(fugacity / per_fraction, "1", scaled(&slopes, 1.0 / per_fraction))
             }
             Observable::Amount(name) => {
                 let species = self.phase(name, asked)?;
-                let water = inner.sample.setting().water;
+                let water = self.water();
                 let solid = self.solid(&species);
                 let slopes = solid.map(|solid| scaled(&[solid.slope], water)).unwrap_or_default();
                 Ok(amount(solid.map_or(0.0, |solid| solid.amount * water), "mol", &species, slopes))
@@ -469,6 +533,26 @@ impl State {
         vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)]
     }
 
+    /// The sea of a seawater with its scales of pH.
+    fn scales(&self, asked: &str) -> Result<(Sea, Scales), ObservableError> {
+        self.system().scales().ok_or_else(|| {
+            no_answer(
+                asked,
+                "it is asked of a seawater; outside it pH is -log10 of the activity of H^+".into(),
+            )
+        })
+    }
+
+    /// Fugacity over partial pressure: 1 but for CO2 over seawater.
+    fn fugacity_factor(&self, gas: &str) -> f64 {
+        let is_co2 = self.system().ledger().find_phase(gas).is_ok_and(|phase| phase.key() == "CO2(g)");
+        if is_co2 && self.basis() == KgOf::Solution {
+            gas_exchange::fugacity_factor(self.temperature().kelvin(), Pressure::ATMOSPHERE.bar())
+        } else {
+            1.0
+        }
+    }
+
     /// `Σ weight · molality` over the solutes.
     fn sum(&self, weight: impl Fn(&Formation) -> f64) -> (f64, Slopes) {
         let terms = self.system().solutes().zip(&self.0.molalities).map(|(formed, m)| weight(formed) * m);
@@ -482,7 +566,10 @@ impl State {
         self.sum(|formed| formed.species.molar_mass().unwrap_or(0.0) / 1000.0).1
     }
 
-    fn water_per_litre_slopes(&self) -> Slopes {
+    fn basis_per_litre_slopes(&self) -> Slopes {
+        if self.basis() == KgOf::Solution {
+            return self.density_slopes();
+        }
         let (water, per_water) = self.density_terms();
         let mut slopes = scaled(
             &self.dissolved_mass_slopes(),
@@ -493,6 +580,9 @@ impl State {
     }
 
     fn density_slopes(&self) -> Slopes {
+        if self.basis() == KgOf::Solution {
+            return vec![(Variable::Temperature, self.0.solution.density * self.thermal_expansion())];
+        }
         let (water, per_water) = self.density_terms();
         let slope = SALT_TERM * water / (1.0 + (1.0 - SALT_TERM) * per_water).powi(2);
         let mut slopes = scaled(&self.dissolved_mass_slopes(), slope);
@@ -509,10 +599,14 @@ impl State {
         )
     }
 
-    /// d ln ρ / dT of pure water, 1/K.
+    /// d ln ρ / dT of pure water, in seawater of the seawater, 1/K.
     fn thermal_expansion(&self) -> f64 {
         const STEP: f64 = 0.01;
         let t = self.temperature().kelvin();
+        if let Some(sea) = self.system().ledger().sea() {
+            let density = |t| seawater::density(t, sea.salinity, sea.hydrostatic_bar());
+            return (density(t + STEP) / density(t - STEP)).ln() / (2.0 * STEP);
+        }
         (water::density(t + STEP) / water::density(t - STEP)).ln() / (2.0 * STEP)
     }
 
@@ -526,7 +620,7 @@ impl State {
         asked: &str,
     ) -> Result<f64, ObservableError> {
         let wrong = |error| ObservableError::Unit { asked: asked.to_string(), error };
-        let plain = wanted.per_kg_of(KgOf::Water).with_expressed_as(None);
+        let plain = wanted.per_kg_of(self.basis()).with_expressed_as(None);
         if let Some(formula) = wanted.expressed_as() {
             let species = Species::parse(formula).map_err(|error| no_answer(asked, error.to_string()))?;
             return self.expressed(answer, value, own, &plain, &species, asked);
@@ -686,8 +780,12 @@ impl State {
         Ok((ln_fugacity.exp(), scaled(&slopes, ln_fugacity.exp())))
     }
 
-    /// Total pressure less that of water vapour over pure water, bar.
+    /// Total pressure less that of water vapour over pure water, bar; over seawater at one atmosphere.
     fn dry_pressure(&self) -> f64 {
+        if let Some(sea) = self.system().ledger().sea() {
+            let t = self.temperature().kelvin();
+            return Pressure::ATMOSPHERE.bar() - gas_exchange::vapour_pressure(t, sea.salinity);
+        }
         // Antoine-type fit of the saturation pressure (Buck, A.L. (1981) J. Appl. Meteorol. 20, 1527-1532; recalled),
         // good to 0.1 % between 0 and 50 degC.
         let t = self.temperature().celsius();
@@ -696,14 +794,26 @@ impl State {
     }
 
     fn exchanged(&self, name: &str, asked: &str, sign: f64) -> Result<Answer, ObservableError> {
-        let mut exchanged = self.0.outcome.exchanged.iter().enumerate();
-        let (held, (_, amount)) = exchanged.find(|(_, (own, _))| own == name).ok_or_else(|| {
-            let names: Vec<&str> = self.0.outcome.exchanged.iter().map(|(own, _)| own.as_str()).collect();
-            no_answer(asked, format!("nothing of this name was exchanged; there are {}", list(&names)))
-        })?;
-        let molar_mass = Species::parse(name).ok().and_then(|species| species.molar_mass());
-        let slopes = vec![(Variable::ReservoirAmount(held), sign)];
-        Ok(Answer { molar_mass, ..Answer::new(sign * amount, "mol/kg(water)", slopes) })
+        let outcome = &self.0.outcome;
+        let held = outcome.exchanged.iter().enumerate().find(|(_, (own, _))| own == name);
+        let dosed: Vec<&Quantity> =
+            outcome.dosed.amounts.iter().filter(|(own, _)| own == name).map(|(_, amount)| amount).collect();
+        if held.is_none() && dosed.is_empty() {
+            let names = outcome.exchanged.iter().map(|(own, _)| own.as_str());
+            let mut names: Vec<&str> =
+                names.chain(outcome.dosed.amounts.iter().map(|(own, _)| own.as_str())).collect();
+            names.dedup();
+            return Err(no_answer(
+                asked,
+                format!("nothing of this name was exchanged; there are {}", list(&names)),
+            ));
+        }
+        let exchanged = held.map_or(0.0, |(_, (_, amount))| *amount);
+        let amount = exchanged + dosed.iter().map(|amount| amount.value()).sum::<f64>();
+        let molar_mass = treatment::substance(name).ok().and_then(|species| species.molar_mass());
+        let slopes = held.map(|(f, _)| (Variable::ReservoirAmount(f), sign)).into_iter().collect();
+        let partials = dosed.into_iter().map(|amount| (amount.clone(), sign)).collect();
+        Ok(Answer { molar_mass, partials, ..Answer::new(sign * amount, "mol/kg(water)", slopes) })
     }
 
     /// Everything that can be asked, as a table of forms and meanings.
@@ -716,7 +826,15 @@ impl State {
         .expect("columns of one length")
     }
 
-    /// Solutes from the most to the least abundant.
+    /// A number for a table, with its standard uncertainty where one is known.
+    fn cell(&self, value: f64, slopes: Slopes) -> Cell {
+        match self.quantity(value, slopes).sigma() {
+            Some(sigma) if sigma > 0.0 => Cell::uncertain(value, sigma),
+            _ => Cell::number(value),
+        }
+    }
+
+    /// Solutes from the most to the least abundant; molalities with their uncertainty where it is known.
     #[must_use]
     pub fn species(&self) -> Table {
         let converged = &self.0.outcome.converged;
@@ -726,9 +844,19 @@ impl State {
         let numbers = |title: &str, value: &dyn Fn(usize) -> f64| {
             Column::numbers(title, order.iter().map(|k| value(*k)))
         };
+        let molality = |k: &usize| {
+            let molality = self.0.molalities[*k];
+            self.cell(molality, vec![(Variable::LnMolality(*k), molality)])
+        };
         Table::new([
             Column::chemistry("species", order.iter().map(|k| solutes[*k].species.key())),
-            numbers("molality [mol/kg(water)]", &|k| self.0.molalities[k]),
+            Column::new(
+                match self.basis() {
+                    KgOf::Water => "molality [mol/kg(water)]",
+                    KgOf::Solution => "concentration [mol/kg(solution)]",
+                },
+                order.iter().map(molality),
+            ),
             numbers("activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]).exp()),
             numbers("log activity", &|k| (converged.ln_c[k] + converged.ln_gamma[k]) / LN_10),
             numbers("gamma", &|k| converged.ln_gamma[k].exp()),
@@ -736,7 +864,8 @@ impl State {
         .expect("columns of one length")
     }
 
-    /// Gases and solids that the water's components can form, from the most to the least saturated.
+    /// Gases and solids that the water's components can form, from the most to the least saturated, with the uncertainty of
+    /// what is known.
     #[must_use]
     pub fn phases(&self) -> Table {
         let converged = &self.0.outcome.converged;
@@ -751,13 +880,20 @@ impl State {
         });
         let amount = |formed: &Formation| {
             let found = self.solid(&formed.species);
-            found.map_or_else(Cell::missing, |solid| Cell::number(solid.amount))
+            found.map_or_else(Cell::missing, |solid| self.cell(solid.amount, vec![solid.slope]))
         };
-        let index = |(formed, index): &(&Formation, f64)| {
-            if formed.species.is_gas() { Cell::missing() } else { Cell::number(*index) }
+        let slopes =
+            |formed: &Formation| saturation_slopes(self.system(), &formed.species).unwrap_or_default();
+        let index = |(formed, index): &(&Formation, f64)| match formed.species.is_gas() {
+            true => Cell::missing(),
+            false => self.cell(*index, scaled(&slopes(formed), 1.0 / LN_10)),
         };
         let fugacity = |(formed, index): &(&Formation, f64)| {
-            if formed.species.is_gas() { Cell::number(10_f64.powf(*index)) } else { Cell::missing() }
+            let fugacity = 10_f64.powf(*index);
+            match formed.species.is_gas() {
+                true => self.cell(fugacity, scaled(&slopes(formed), fugacity)),
+                false => Cell::missing(),
+            }
         };
         let notes: Vec<String> =
             phases.iter().map(|(formed, _)| self.doubt_words(formed).unwrap_or_default()).collect();
@@ -766,7 +902,10 @@ impl State {
             Column::chemistry("formula", phases.iter().map(|(formed, _)| formed.species.key())),
             Column::new("SI", phases.iter().map(index)),
             Column::new("fugacity [bar]", phases.iter().map(fugacity)),
-            Column::new("amount [mol/kg(water)]", phases.iter().map(|(formed, _)| amount(formed))),
+            Column::new(
+                format!("amount [{}]", self.unit("mol/kg(water)").symbol()).as_str(),
+                phases.iter().map(|(formed, _)| amount(formed)),
+            ),
             Column::texts("note", notes.iter().map(String::as_str)),
         ])
         .expect("columns of one length")
@@ -798,12 +937,58 @@ impl State {
             }
         }
         warnings.extend(doubts.into_iter().map(|(why, names)| format!("{why}: {}", list(&names))));
+        warnings.extend(self.marine_warnings());
         let leftovers = &self.system().ledger().formations().leftovers;
         let names: Vec<&str> = self.system().ledger().names().collect();
         warnings.extend(leftovers.iter().map(|leftover| {
             format!("`{}` was left out: other constants of the ledger imply it", names[leftover.reaction])
         }));
         warnings
+    }
+
+    /// Constants of seawater outside their range, and the convention of a fugacity at depth.
+    fn marine_warnings(&self) -> Vec<String> {
+        let Some(sea) = self.system().ledger().sea() else { return vec![] };
+        let uses =
+            |k: usize| self.system().solutes().any(|formed| formed.multiples.iter().any(|(j, _)| *j == k));
+        let mut warnings = outside_ranges(self.system().ledger(), sea, self.temperature(), uses);
+        if sea.hydrostatic_bar() > 0.0 && self.system().solute(&carbon_dioxide()).is_some() {
+            warnings.push(
+                "fugacities are those of the water at the surface: the constant of CO2(g) has no pressure term".into(),
+            );
+        }
+        warnings
+    }
+
+    /// What was chosen where the ledger had a choice, and the scale of pH; nothing outside seawater.
+    #[must_use]
+    pub fn choices(&self) -> Option<String> {
+        let sea = self.system().ledger().sea()?;
+        let choices = self.system().ledger().choices();
+        let choices: Vec<String> = choices.iter().map(|(name, author)| format!("{name} {author}")).collect();
+        Some(format!("{}; pH on the {} scale", choices.join(", "), sea.ph_scale.word()))
+    }
+
+    /// What each species holds of the alkalinity, the largest share first.
+    #[must_use]
+    pub fn alkalinity_parts(&self) -> Table {
+        let level = ZeroLevel::at(self.system().ledger(), ALKALINITY_PH);
+        let weigh = |(formed, molality): (&Formation, &f64)| {
+            let weight = rational::to_f64(level.weight(formed));
+            (formed.species.key().to_string(), weight, weight * molality)
+        };
+        let mut parts: Vec<(String, f64, f64)> =
+            self.system().solutes().zip(&self.0.molalities).map(weigh).filter(|part| part.1 != 0.0).collect();
+        parts.sort_by(|a, b| b.2.abs().total_cmp(&a.2.abs()));
+        Table::new([
+            Column::chemistry("species", parts.iter().map(|(species, ..)| species.as_str())),
+            Column::numbers("equivalents per mole", parts.iter().map(|(_, weight, _)| *weight)),
+            Column::numbers(
+                format!("alkalinity [{}]", self.unit("eq/kg(water)").symbol()).as_str(),
+                parts.iter().map(|(.., part)| *part),
+            ),
+        ])
+        .expect("columns of one length")
     }
 
     fn add_doubts(&self, formed: &Formation, doubts: &mut BTreeMap<String, Vec<String>>) {
@@ -839,6 +1024,10 @@ fn words(doubt: Doubt) -> String {
         }
         Doubt::OutsideRange(by) => format!("log K used {by:.1} K outside its stated range"),
     }
+}
+
+fn carbon_dioxide() -> Species {
+    Species::parse("CO2(aq)").expect("a formula")
 }
 
 fn absent(asked: &str) -> ObservableError {
@@ -885,10 +1074,15 @@ fn dissolved(system: &System, molalities: &[f64]) -> Vec<f64> {
 /// Density and dissolved mass of a computed water: with S kg of solutes per kg of water, a litre holds
 /// `ρ_w / (1 + (1 - SALT_TERM) S)` kg of water.
 fn solution(system: &System, molalities: &[f64]) -> Solution {
+    if let Some(sea) = system.ledger().sea() {
+        let density = seawater::density(system.temperature().kelvin(), sea.salinity, sea.hydrostatic_bar());
+        return Solution::seawater(density / 1000.0, sea.salinity);
+    }
     let grams =
         system.solutes().zip(molalities).map(|(formed, m)| formed.species.molar_mass().unwrap_or(0.0) * m);
     let per_water = grams.sum::<f64>() / 1000.0;
     let water_density = water::density(system.temperature().kelvin()) / 1000.0;
     let water_per_litre = water_density / (1.0 + (1.0 - SALT_TERM) * per_water);
-    Solution { density: water_per_litre * (1.0 + per_water), dissolved: water_per_litre * per_water }
+    let (density, dissolved) = (water_per_litre * (1.0 + per_water), water_per_litre * per_water);
+    Solution { density, dissolved, basis: KgOf::Water }
 }

@@ -1,21 +1,26 @@
 //! The second stage: treatments act on the conserved totals.
 //!
-//! Gases at a fixed fugacity and unlimited solids are reservoirs, solids that may form are minerals, and one convex
+//! What moves the totals themselves acts first, in the order given (see [`super::dosing`]); surroundings act last and
+//! together. Gases at a fixed fugacity and unlimited solids are reservoirs, solids that may form are minerals, and one convex
 //! problem at the final temperature holds them all. A pH held by a reagent is one equation outside it: so much of the
 //! reagent that the pH is met.
 
+use std::collections::BTreeMap;
+
+use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::analysis::{Analysed, Outcome, Solid, delivered, fixed_ph};
 use super::assemble::{System, carriers};
+use super::dosing::{Course, Dosed};
 use super::error::EquilibriumError;
-use super::uncertainty::{Conditions, Held, Variable};
-use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{Formations, Ledger};
+use super::uncertainty::{Conditions, Held, MayForm, Variable};
+use crate::chem::{Element, Equation, Rational, Species, rational};
+use crate::ledger::{Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
 use crate::solve::sensitivity::own_supplies;
 use crate::solve::{Converged, Mineral, Problem, Reservoir, Row, Settings, solve};
-use crate::water::{Sample, Treatment};
+use crate::water::{Sample, Treatment, treatment};
 
 /// The largest amount of a reagent looked at, mol/kg(water).
 const MOST_REAGENT: f64 = 20.0;
@@ -26,21 +31,37 @@ const MOST_REAGENT: f64 = 20.0;
 ///
 /// Returns what the ledger does not know, and why there is no equilibrium.
 pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Result<Outcome, EquilibriumError> {
-    let warmed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
-        Treatment::WarmTo(temperature) => Some(*temperature),
+    let warmed = sample.treatments().iter().enumerate().rev().find_map(|(k, treatment)| match treatment {
+        Treatment::WarmTo(temperature) => Some((*temperature, sample.stated_value(k))),
         _ => None,
     });
-    let temperature = warmed.unwrap_or(sample.setting().temperature);
+    let temperature = warmed.map_or(sample.setting().temperature, |(temperature, _)| temperature);
     let present = analysed.system.components().iter().copied().collect();
-    let system = System::new(analysed.system.ledger(), &present, temperature)?;
+    let system = System::new(&ledger_in_place(sample, &analysed.system)?, &present, temperature)?;
     let mut surroundings = Surroundings::read(sample, &system)?;
+    let course = Course::run(sample, &system, analysed)?;
     // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
-    surroundings.measured.clone_from(&analysed.measured);
-    surroundings.temperature = analysed.temperature.clone().filter(|_| warmed.is_none());
+    surroundings.measured = course.measured;
+    surroundings.dosed = course.dosed;
+    surroundings.temperature = match warmed {
+        Some((_, stated)) => stated.cloned(),
+        None => analysed.temperature.clone(),
+    };
     match surroundings.held_by_reagent.clone() {
-        None => surroundings.solve(&system, &analysed.totals, settings),
-        Some((ph, reagent)) => surroundings.hold_ph(&system, &analysed.totals, ph, &reagent, settings),
+        None => surroundings.solve(&system, &course.totals, settings),
+        Some((ph, reagent)) => surroundings.hold_ph(&system, &course.totals, ph, &reagent, settings),
     }
+}
+
+/// The ledger at the pressure that the water comes to.
+fn ledger_in_place(sample: &Sample, system: &System) -> Result<Ledger, EquilibriumError> {
+    let ledger = system.ledger();
+    let Some(sea) = ledger.sea() else { return Ok(ledger.clone()) };
+    let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::CompressTo(pressure) => Some(*pressure),
+        _ => None,
+    });
+    Ok(ledger.in_sea(Sea { pressure: compressed.unwrap_or(sample.setting().pressure), ..sea })?)
 }
 
 /// What the water is in contact with, in indices.
@@ -50,9 +71,12 @@ struct Surroundings {
     phases: Vec<(usize, Species)>,
     minerals: Vec<(String, Species, Mineral)>,
     held_by_reagent: Option<(f64, String)>,
+    /// Values stated with an uncertainty, by the name of what they hold, with the derivative of the solver's value by them.
+    stated: BTreeMap<String, (Quantity, f64)>,
     /// For the derivatives of what comes out: see [`Conditions`].
     measured: Vec<(Quantity, Vec<f64>)>,
     temperature: Option<Quantity>,
+    dosed: Dosed,
 }
 
 impl Surroundings {
@@ -62,11 +86,14 @@ impl Surroundings {
             phases: vec![],
             minerals: vec![],
             held_by_reagent: None,
+            stated: BTreeMap::new(),
             measured: vec![],
             temperature: None,
+            dosed: Dosed::default(),
         };
-        for treatment in sample.treatments() {
+        for (k, treatment) in sample.treatments().iter().enumerate() {
             surroundings.add(treatment, system)?;
+            surroundings.note(treatment, sample.stated_value(k));
         }
         Ok(surroundings)
     }
@@ -81,22 +108,56 @@ impl Surroundings {
                 let (species, row) = formed(system, solid, Species::is_solid, "solid")?;
                 self.hold(solid, Some(species), Reservoir { row, ln_value: index * LN_10 });
             }
-            Treatment::Allow { solid, above } => {
-                let species = find(system.ledger(), solid, Species::is_solid, "solid")?.clone();
-                // A solid whose elements are not there cannot form.
-                if let Some((_, row)) = system.phase(&species) {
-                    self.minerals.retain(|(name, ..)| name != solid);
-                    let mineral = Mineral { row: row.clone(), ln_target: above * LN_10 };
-                    self.minerals.push((solid.clone(), species, mineral));
-                }
+            Treatment::Allow { solid, above } => self.allow(solid, *above, system)?,
+            Treatment::WithSolid { solid, .. } => self.allow(solid, 0.0, system)?,
+            Treatment::HoldPh { ph, reagent: None } => {
+                self.hold("pH", None, fixed_ph(system.proton(), ph - system.ph_shift()));
             }
-            Treatment::HoldPh { ph, reagent: None } => self.hold("pH", None, fixed_ph(system.proton(), *ph)),
             Treatment::HoldPh { ph, reagent: Some(reagent) } => {
                 self.held_by_reagent = Some((*ph, reagent.clone()))
             }
-            Treatment::WarmTo(_) | Treatment::CompressTo(_) => {}
+            Treatment::Dose(_)
+            | Treatment::Remove(_)
+            | Treatment::Concentrate(_)
+            | Treatment::AddSolution { .. }
+            | Treatment::Adjust(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => {}
         }
         Ok(())
+    }
+
+    /// A solid that may form; the last word on one counts.
+    fn allow(&mut self, solid: &str, above: f64, system: &System) -> Result<(), EquilibriumError> {
+        let species = find(system.ledger(), solid, Species::is_solid, "solid")?.clone();
+        // A solid whose elements are not there cannot form.
+        if let Some((_, row)) = system.phase(&species) {
+            self.minerals.retain(|(_, own, _)| *own != species);
+            let mineral = Mineral { row: row.clone(), ln_target: above * LN_10 };
+            self.minerals.push((solid.into(), species, mineral));
+        }
+        Ok(())
+    }
+
+    /// Notes what the value of a treatment depends on; the last word on one gas, solid or pH counts.
+    fn note(&mut self, treatment: &Treatment, stated: Option<&Quantity>) {
+        let (name, slope) = match treatment {
+            Treatment::OpenTo { gas, fugacity } => (gas.as_str(), 1.0 / fugacity),
+            Treatment::Saturate { solid, .. } | Treatment::Allow { solid, .. } => (solid.as_str(), LN_10),
+            Treatment::HoldPh { .. } => ("pH", -LN_10),
+            Treatment::WithSolid { .. }
+            | Treatment::Dose(_)
+            | Treatment::Remove(_)
+            | Treatment::Concentrate(_)
+            | Treatment::AddSolution { .. }
+            | Treatment::Adjust(_)
+            | Treatment::WarmTo(_)
+            | Treatment::CompressTo(_) => return,
+        };
+        match stated {
+            Some(stated) => self.stated.insert(name.into(), (stated.clone(), slope)),
+            None => self.stated.remove(name),
+        };
     }
 
     /// Holds a value; the last word on one gas, solid or pH counts.
@@ -145,6 +206,7 @@ impl Surroundings {
             totals: delivered(&problem, &converged),
             exchanged,
             solids: self.solids(&converged),
+            dosed: self.dosed.clone(),
             conditions: Some(self.conditions(&problem)),
             converged,
         })
@@ -168,21 +230,23 @@ impl Surroundings {
 
     fn conditions(&self, problem: &Problem) -> Conditions {
         let held = self.reservoirs.iter().zip(own_supplies(problem)).enumerate();
-        let held = held.map(|(f, ((_, reservoir), supply))| Held {
+        let held = held.map(|(f, ((name, reservoir), supply))| Held {
             reservoir: reservoir.clone(),
             phase: self.phases.iter().find(|(own, _)| *own == f).map(|(_, species)| species.clone()),
             supply,
-            value: None,
+            value: self.stated.get(name).cloned(),
+        });
+        let formed = self.minerals.iter().map(|(name, species, mineral)| MayForm {
+            species: species.clone(),
+            mineral: mineral.clone(),
+            value: self.stated.get(name).cloned(),
         });
         Conditions {
             held: held.collect(),
-            minerals: self
-                .minerals
-                .iter()
-                .map(|(_, species, mineral)| (species.clone(), mineral.clone()))
-                .collect(),
+            minerals: formed.collect(),
             measured: self.measured.clone(),
             temperature: self.temperature.clone(),
+            concentrated: Some(self.dosed.concentrated),
         }
     }
 
@@ -207,7 +271,7 @@ impl Surroundings {
         };
         let mut misses = |amount: f64| {
             let converged = self.converge(system, &with(amount), settings)?;
-            Ok::<f64, EquilibriumError>(-converged.ln_a[system.proton()] / LN_10 - ph)
+            Ok::<f64, EquilibriumError>(system.ph_shift() - converged.ln_a[system.proton()] / LN_10 - ph)
         };
         let start = scalar::Sample { x: 0.0, f: misses(0.0)? };
         let mut nearest = start;
@@ -230,7 +294,7 @@ impl Surroundings {
             root_between(&mut misses, start, end, Tolerance { x: 1e-18, f: 1e-14 })?.x
         };
         // Once more with the pH held, which it now is without a mole of hydrogen ions.
-        self.hold("pH", None, fixed_ph(system.proton(), ph));
+        self.hold("pH", None, fixed_ph(system.proton(), ph - system.ph_shift()));
         let mut outcome = self.solve(system, &with(amount), settings)?;
         let held = self.reservoirs.iter().position(|(name, _)| name == "pH").expect("just held");
         outcome.exchanged[held] = (reagent_name.to_string(), amount);
@@ -267,13 +331,16 @@ fn formed(
     Ok((species, row.clone()))
 }
 
-/// A neutral substance in moles of the ledger's components, water left out.
+/// A neutral substance, or the equation by which it dissolves, in moles of the ledger's components, water left out.
 ///
 /// # Errors
 ///
 /// Returns why it is not made of them: an element the ledger lacks, or oxidation states that do not add up.
 pub fn reagent(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, EquilibriumError> {
     let fault = |why: String| EquilibriumError::Analyte { key: text.into(), why };
+    if treatment::is_equation(text) {
+        return dissolution(ledger, text);
+    }
     let species = Species::parse(text).map_err(|error| fault(error.to_string()))?;
     if species.charge() != 0 {
         return Err(fault(format!(
@@ -296,6 +363,41 @@ pub fn reagent(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, Eq
     choices.iter().find_map(|carriers| dissolved(formations, &species, carriers)).ok_or_else(|| {
         fault("its oxidation states are not those of the ledger's species: dissolving it would be a redox reaction".into())
     })
+}
+
+/// Equivalents of strong acid in a mole of a reagent, counted as alkalinity is: HCl 1, H2SO4 2, NaOH -1.
+///
+/// # Errors
+///
+/// As [`reagent`].
+pub fn acid_equivalents(ledger: &Ledger, text: &str) -> Result<f64, EquilibriumError> {
+    let level = ZeroLevel::at(ledger, ALKALINITY_PH);
+    let proton = ledger.formations().component(&Species::proton());
+    let acid = |(j, nu): &(usize, Rational)| {
+        if Some(*j) == proton { *nu } else { -level.of_component(*j) * nu }
+    };
+    Ok(rational::to_f64(reagent(ledger, text)?.iter().map(acid).sum()))
+}
+
+/// What the equation of a dissolution brings into the water, per mole of its first substance.
+fn dissolution(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, EquilibriumError> {
+    let fault = |why: String| EquilibriumError::Analyte { key: text.into(), why };
+    let dissolving = treatment::substance(text).map_err(fault)?;
+    let equation = Equation::parse(text).map_err(|error| fault(error.to_string()))?;
+    let per_mole = -equation.coefficient(&dissolving);
+    let mut parts: Vec<(usize, Rational)> = Vec::new();
+    for (species, coefficient) in equation.terms().iter().filter(|(species, _)| *species != dissolving) {
+        let known = ledger.find_species(species.key())?;
+        let formed = ledger.formations().formation(known).expect("just found");
+        for (j, nu) in &formed.stoichiometry {
+            let moles = coefficient / per_mole * nu;
+            match parts.iter_mut().find(|(own, _)| own == j) {
+                Some((_, sum)) => *sum += moles,
+                None => parts.push((*j, moles)),
+            }
+        }
+    }
+    Ok(parts)
 }
 
 /// The substance as these components, one for each of its elements, with protons and water; `None` if that would take

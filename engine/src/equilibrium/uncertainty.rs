@@ -20,10 +20,10 @@ use std::collections::BTreeMap;
 
 use super::analysis::Outcome;
 use super::assemble::System;
-use crate::chem::{Species, rational};
+use crate::chem::{Reaction, Species, rational};
 use crate::ledger::Formation;
 use crate::physics::constants::LN_10;
-use crate::quantity::{Input, Quantity};
+use crate::quantity::{Input, Part, Quantity};
 use crate::solve::sensitivity::{Found, Given, Sensitivities};
 use crate::solve::{Mineral, Problem, Reservoir};
 use crate::units::{Temperature, Unit};
@@ -31,6 +31,8 @@ use crate::units::{Temperature, Unit};
 /// log10 units of standard uncertainty per kelvin away from the one temperature a constant is known at: an assumption of
 /// this project.
 pub const SIGMA_PER_KELVIN: f64 = 0.01;
+/// How the names of inputs begin that stand for it.
+pub(super) const UNKNOWN_SLOPE: &str = "d log K / dT of";
 /// Kelvin; derivatives by temperature are central differences of constants, never of equilibria.
 const TEMPERATURE_STEP: f64 = 0.01;
 
@@ -66,12 +68,14 @@ pub struct Conditions {
     /// What is held, in the order of the solver's reservoirs.
     pub held: Vec<Held>,
     /// Solids that may form, in the order of the solver's minerals.
-    pub minerals: Vec<(Species, Mineral)>,
+    pub minerals: Vec<MayForm>,
     /// Measured values that the totals are sums of, each with the change of every total per unit of it. Empty where the
     /// totals are those that the stage before delivered.
     pub measured: Vec<(Quantity, Vec<f64>)>,
-    /// Temperature in kelvin where it was measured with an uncertainty.
+    /// Temperature in kelvin where it was measured; none where it was chosen.
     pub temperature: Option<Quantity>,
+    /// What the totals that the stage before delivered were multiplied by, if they were concentrated.
+    pub concentrated: Option<f64>,
 }
 
 /// Something held.
@@ -87,12 +91,23 @@ pub struct Held {
     pub value: Option<(Quantity, f64)>,
 }
 
+/// A solid that may form.
+#[derive(Debug, Clone)]
+pub struct MayForm {
+    /// The solid.
+    pub species: Species,
+    /// Its equation.
+    pub mineral: Mineral,
+    /// The value its target was stated as, with the derivative of `ln_target` by it; none where it was chosen.
+    pub value: Option<(Quantity, f64)>,
+}
+
 /// The derivatives of one answer by everything it comes from.
 #[derive(Debug, Clone, Default)]
 pub struct Influence {
-    /// By log10 K of each of the ledger's reactions, by their order.
+    /// By log10 K of each of the ledger's reactions, by their order, its own value alone.
     pub constants: BTreeMap<usize, f64>,
-    /// By measured values, and by the unknown temperature dependence of constants.
+    /// By measured values, by enthalpies and the like of constants, and by their unknown dependence on temperature.
     pub measured: Vec<(Quantity, f64)>,
 }
 
@@ -111,7 +126,7 @@ impl Stage {
         let conditions = outcome.conditions.as_ref()?;
         let problem = Problem {
             reservoirs: conditions.held.iter().map(|held| held.reservoir.clone()).collect(),
-            minerals: conditions.minerals.iter().map(|(_, mineral)| mineral.clone()).collect(),
+            minerals: conditions.minerals.iter().map(|formed| formed.mineral.clone()).collect(),
             ..outcome.system.problem(&outcome.totals)
         };
         let supplies: Vec<Vec<f64>> = conditions.held.iter().map(|held| held.supply.clone()).collect();
@@ -179,9 +194,12 @@ impl Influence {
                 self.measured.push((value.clone(), slope * by_value));
             }
         }
-        for ((species, _), slope) in conditions.minerals.iter().zip(&by.minerals) {
-            if let Some((formed, _)) = system.phase(species) {
+        for (solid, slope) in conditions.minerals.iter().zip(&by.minerals) {
+            if let Some((formed, _)) = system.phase(&solid.species) {
                 self.add_constants(system, formed, -slope);
+            }
+            if let Some((value, by_value)) = &solid.value {
+                self.measured.push((value.clone(), slope * by_value));
             }
         }
         if let Some(change) = &stage.by_temperature {
@@ -191,7 +209,8 @@ impl Influence {
         for (quantity, change) in &conditions.measured {
             self.measured.push((quantity.clone(), dot(change, &by_totals)));
         }
-        by_totals
+        let concentrated = conditions.concentrated.unwrap_or(1.0);
+        by_totals.into_iter().map(|by_total| by_total * concentrated).collect()
     }
 
     /// Adds the constants behind a row of the solver, given the derivative by its ln K.
@@ -202,6 +221,10 @@ impl Influence {
         for (k, multiple) in &formed.multiples {
             let by_log_k = by_ln_k * LN_10 * rational::to_f64(*multiple);
             *self.constants.entry(*k).or_default() += by_log_k;
+            // An enthalpy acts differently on stages of different temperature, so it is counted stage by stage.
+            if let Some(influences) = influences(system, *k) {
+                self.measured.push((influences, by_log_k));
+            }
             if let Some((slope, away)) = unknown_slope(system, *k) {
                 self.measured.push((slope, by_log_k * away));
             }
@@ -237,24 +260,33 @@ impl Influence {
     }
 }
 
+/// What acts on log10 K beside the stated value, at the system's temperature: enthalpies, parameters of conversions.
+fn influences(system: &System, reaction: usize) -> Option<Quantity> {
+    let (_, reaction) = system.ledger().reactions().nth(reaction)?;
+    let influences = reaction.constant().ok()?.history.influences();
+    let parts: Vec<Part> = influences.iter().map(|influence| influence.at(system.temperature())).collect();
+    let acts = parts.iter().any(|part| part.sensitivity != 0.0);
+    acts.then(|| Quantity::from_parts(0.0, Unit::one(), parts))
+}
+
 /// d log10 K / dT of a constant known at one temperature only, as an input of its own, with the distance in kelvin.
 fn unknown_slope(system: &System, reaction: usize) -> Option<(Quantity, f64)> {
     let known = system.known_only_at(reaction)?;
     let (name, reaction) = system.ledger().reactions().nth(reaction)?;
-    let label = format!("change of log K of `{name}` with temperature, per K (assumed)");
-    let identity = format!("d log K / dT of {} known at {} K", reaction.equation(), known.kelvin());
-    let input = Input::named(&identity, &label, Some(SIGMA_PER_KELVIN)).ok()?;
-    let slope = Quantity::of_input(0.0, Unit::one(), input);
+    let slope = Quantity::of_input(0.0, Unit::one(), assumed_slope(name, reaction, known)?);
     Some((slope, system.temperature().kelvin() - known.kelvin()))
+}
+
+/// The input that stands for the change with temperature of a constant `known` at one temperature only.
+pub fn assumed_slope(name: &str, reaction: &Reaction, known: Temperature) -> Option<Input> {
+    let label = format!("change of log K of `{name}` with temperature, per K (assumed)");
+    let identity = format!("{UNKNOWN_SLOPE} {} known at {} K", reaction.equation(), known.kelvin());
+    Input::named(&identity, &label, Some(SIGMA_PER_KELVIN)).ok()
 }
 
 /// The same system a little warmer and a little colder.
 fn neighbours(system: &System) -> Option<(System, System)> {
-    let present = system.components().iter().copied().collect();
-    let at = |kelvin: f64| {
-        let temperature = Temperature::from_kelvin(kelvin).ok()?;
-        System::new(system.ledger(), &present, temperature).ok()
-    };
+    let at = |kelvin: f64| Some(system.at(Temperature::from_kelvin(kelvin).ok()?));
     let kelvin = system.temperature().kelvin();
     Some((at(kelvin + TEMPERATURE_STEP)?, at(kelvin - TEMPERATURE_STEP)?))
 }
@@ -281,8 +313,8 @@ fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem)
     for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
         *value = held.phase.as_ref().map_or(0.0, |phase| -ln_k(phase));
     }
-    for (value, (species, _)) in given.minerals.iter_mut().zip(&conditions.minerals) {
-        *value = -ln_k(species);
+    for (value, solid) in given.minerals.iter_mut().zip(&conditions.minerals) {
+        *value = -ln_k(&solid.species);
     }
     Some(given)
 }

@@ -5,7 +5,7 @@
 
 use super::elimination::Sparse;
 use super::least_squares::Scatter;
-use super::ledger::Ledger;
+use super::ledger::{Ledger, LedgerError};
 use super::network::Network;
 use crate::chem::{Rational, Reaction, rational};
 use crate::units::Temperature;
@@ -94,13 +94,13 @@ impl std::fmt::Display for Cycle {
 }
 
 /// Every independent cycle among the reactions and formation data of a ledger.
-pub(super) fn audit(ledger: &Ledger, temperature: Temperature) -> Audit {
-    let survey = Survey::of(ledger, temperature);
+pub(super) fn audit(ledger: &Ledger, temperature: Temperature) -> Result<Audit, LedgerError> {
+    let survey = Survey::of(ledger, temperature)?;
     let described =
         survey.closing.iter().zip(&survey.cycles).map(|(closing, cycle)| survey.describe(*closing, cycle));
     let mut cycles: Vec<Cycle> = described.collect();
     cycles.sort_by(|a, b| b.severity().total_cmp(&a.severity()).then_with(|| a.reactions.cmp(&b.reactions)));
-    Audit { temperature, cycles, unknown: survey.unknown }
+    Ok(Audit { temperature, cycles, unknown: survey.unknown })
 }
 
 /// The cycle that a reaction closes which the ledger's others already imply; reactions by their position in the order of
@@ -115,7 +115,7 @@ pub(super) fn cycle(
     let network = Network::new(reactions.clone());
     let survey = Survey {
         log_k: (0..reactions.len()).map(|index| network.log_k(index, temperature)).collect(),
-        scatter: Scatter::of(&reactions),
+        scatter: Scatter::of(&reactions, temperature),
         names: names.into_iter().map(str::to_string).collect(),
         reactions,
         cycles: vec![],
@@ -138,12 +138,12 @@ pub(super) struct Survey<'a> {
 }
 
 impl<'a> Survey<'a> {
-    pub fn of(ledger: &'a Ledger, temperature: Temperature) -> Self {
+    pub fn of(ledger: &'a Ledger, temperature: Temperature) -> Result<Self, LedgerError> {
         let mut survey = Survey {
             names: vec![],
             reactions: vec![],
             log_k: vec![],
-            scatter: Scatter::of(&[]),
+            scatter: Scatter::of(&[], temperature),
             cycles: vec![],
             closing: vec![],
             unknown: vec![],
@@ -168,9 +168,9 @@ impl<'a> Survey<'a> {
         order.sort_by_key(|index| {
             (*index >= n_formation_data, survey.reactions[*index].equation().terms().len(), *index)
         });
-        (survey.closing, survey.cycles) = network.eliminate(order).cycles.into_iter().unzip();
-        survey.scatter = Scatter::of(&survey.reactions);
-        survey
+        (survey.closing, survey.cycles) = network.eliminate(order)?.cycles.into_iter().unzip();
+        survey.scatter = Scatter::of(&survey.reactions, temperature);
+        Ok(survey)
     }
 
     /// Σ n log10 K round a cycle.

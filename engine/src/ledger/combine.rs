@@ -12,7 +12,9 @@
 
 use std::collections::{BTreeSet, VecDeque};
 
-use super::elimination::Sparse;
+use num_traits::CheckedDiv;
+
+use super::elimination::{Sparse, TooLarge, subtract};
 use super::least_squares::{Scatter, Weights};
 use super::ledger::LedgerError;
 use super::network::{Eliminated, Network};
@@ -21,6 +23,8 @@ use crate::units::Temperature;
 
 /// Weights are whole multiples of this part of one.
 const PARTS: i64 = 1_000_000;
+/// Beyond this a weight is absurd.
+const MOST_PARTS: f64 = 1e15;
 
 /// A combined constant, and the routes it could have been reached by.
 #[derive(Debug, Clone)]
@@ -92,19 +96,18 @@ pub fn combine_routes(target: &str, reactions: &[&Reaction]) -> Result<Combined,
 
 fn combine_over(target: &Equation, reactions: &[&Reaction], weighted: bool) -> Result<Combined, LedgerError> {
     let network = Network::new(reactions.to_vec());
-    let eliminated = network.eliminate(0..reactions.len());
-    let unreachable =
-        |left_over: Vec<String>| LedgerError::Unreachable { target: target.to_string(), left_over };
-    let first = network
-        .reach(&eliminated.echelon, target)
-        .map_err(|species| unreachable(species.iter().map(|s| s.key().to_string()).collect()))?;
+    let eliminated = network.eliminate(0..reactions.len())?;
+    let first = network.reach(&eliminated.echelon, target)?;
     let cycles = connected(&eliminated, &first);
     if cycles.is_empty() {
         return Ok(Combined { reaction: sum(target, &first, reactions)?, routes: None });
     }
-    let scatter = Scatter::of(reactions);
-    let multiples =
-        if weighted { least_variance(&first, &cycles, &scatter) } else { shortest(first.clone(), &cycles) };
+    let scatter = Scatter::of(reactions, Temperature::REFERENCE);
+    let multiples = match weighted {
+        true => least_variance(&first, &cycles, &scatter)
+            .map_err(|TooLarge| LedgerError::TooLarge(target.to_string()))?,
+        false => shortest(first.clone(), &cycles),
+    };
     let routes = compare(&first, &cycles, &network, weighted.then_some(&scatter));
     let reaction = sum(target, &multiples, reactions)?;
     let constant = reaction.constant()?;
@@ -133,16 +136,20 @@ fn connected(eliminated: &Eliminated, route: &Sparse) -> Vec<Sparse> {
 }
 
 /// n = n₀ + Cᵀ t with t = -(C Σ Cᵀ)⁻¹ C Σ n₀.
-fn least_variance(route: &Sparse, cycles: &[Sparse], scatter: &Scatter) -> Sparse {
+fn least_variance(route: &Sparse, cycles: &[Sparse], scatter: &Scatter) -> Result<Sparse, TooLarge> {
     let own = scatter.combined(route);
     let weights = Weights::of(cycles.iter().map(|cycle| scatter.combined(cycle)).collect());
     let covariance: Vec<f64> =
         weights.cycles.iter().map(|cycle| super::least_squares::dot(cycle, &own)).collect();
     let mut best = route.clone();
     for (cycle, share) in cycles.iter().zip(weights.times(&covariance)) {
-        add(&mut best, cycle, Rational::new((-share * PARTS as f64).round() as i64, PARTS));
+        let parts = (share * PARTS as f64).round();
+        if parts.abs() > MOST_PARTS {
+            return Err(TooLarge);
+        }
+        subtract(&mut best, cycle, Rational::new(parts as i64, PARTS))?;
     }
-    best
+    Ok(best)
 }
 
 /// Exchanges one constant of the route for another as long as that makes it shorter.
@@ -156,14 +163,14 @@ fn shortest(mut route: Sparse, cycles: &[Sparse]) -> Sparse {
     }
 }
 
-/// Routes that do without one of the constants of this one, by going round a cycle.
+/// Routes that do without one of the constants of this one, by going round a cycle; absurdly large ones are passed over.
 fn exchanges(route: &Sparse, cycles: &[Sparse]) -> impl Iterator<Item = Sparse> {
     cycles.iter().flat_map(move |cycle| {
         let shared = route.iter().filter_map(|(index, n)| Some((n, cycle.get(index)?)));
-        shared.map(move |(n, in_cycle)| {
+        shared.filter_map(move |(n, in_cycle)| {
             let mut other = route.clone();
-            add(&mut other, cycle, -(n / in_cycle));
-            other
+            subtract(&mut other, cycle, n.checked_div(in_cycle)?).ok()?;
+            Some(other)
         })
     })
 }
@@ -207,13 +214,6 @@ fn sum(target: &Equation, multiples: &Sparse, reactions: &[&Reaction]) -> Result
         }
     }
     Ok(Reaction::of(target.clone(), sum.constant()?.clone()))
-}
-
-fn add(to: &mut Sparse, row: &Sparse, factor: Rational) {
-    for (index, multiple) in row {
-        *to.entry(*index).or_insert_with(|| 0.into()) += multiple * factor;
-    }
-    to.retain(|_, multiple| *multiple != 0.into());
 }
 
 impl Routes {

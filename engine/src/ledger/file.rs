@@ -9,6 +9,8 @@ use std::collections::BTreeMap;
 use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
+use super::composition::Constituent;
+use super::influence;
 use super::ledger::{ActivityChoice, Ledger};
 use super::shipped;
 use super::standard_formation::{self, Elements};
@@ -25,6 +27,8 @@ pub struct ConstantFile {
     pub constants: Vec<(String, Reaction)>,
     /// Names with the formation of species from the elements, in file order.
     pub formations: Vec<(String, Reaction)>,
+    /// What seawater holds in proportion to its salinity.
+    pub composition: Vec<Constituent>,
 }
 
 /// A ledger file: which constants it takes from which files, and its own.
@@ -36,6 +40,8 @@ pub struct LedgerFile {
     pub edition: Option<String>,
     /// Its activity model.
     pub activity: ActivityChoice,
+    /// Whether its constants are those of seawater.
+    pub is_marine: bool,
     /// Ions that take part in no reaction.
     pub solutes: Vec<Species>,
     /// What it takes from files of constants.
@@ -53,6 +59,8 @@ pub struct From {
     pub constants: Option<Vec<String>>,
     /// Species whose formation is taken; `None` takes all.
     pub formations: Option<Vec<String>>,
+    /// Names of constituents of seawater; `None` takes all.
+    pub composition: Option<Vec<String>>,
     line: usize,
 }
 
@@ -107,6 +115,9 @@ pub fn load(file_key: &str, text: &str) -> Result<Ledger, Vec<FileFault>> {
 pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
     let mut faults = Vec::new();
     let mut ledger = Ledger::empty(&file.name, file.edition.clone()).with_activity(file.activity);
+    if file.is_marine {
+        ledger = ledger.of_seawater();
+    }
     for species in &file.solutes {
         ledger = ledger.with_solute(species.clone());
     }
@@ -142,7 +153,15 @@ pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
         for name in missing {
             fault(format!("`{}` has no formation of `{name}`", from.file));
         }
+        for constituent in &found.composition {
+            if from.composition.as_ref().is_none_or(|names| names.contains(&constituent.name)) {
+                ledger = ledger.with_constituent(constituent.clone());
+            }
+        }
         ledger = with_entries(ledger, &constants, &formations, &mut fault);
+    }
+    for constituent in &file.own.composition {
+        ledger = ledger.with_constituent(constituent.clone());
     }
     let mut fault = |message: String| faults.push(FileFault { line: 1, message });
     ledger = with_entries(ledger, &file.own.constants, &file.own.formations, &mut fault);
@@ -213,6 +232,12 @@ fn read_entries(
             Err(fault) => faults.push(fault),
         }
     }
+    for entry in lines.entries("composition", faults) {
+        match Constituent::read(file_key, citation, entry.named()) {
+            Ok(constituent) => file.composition.push(constituent),
+            Err(fault) => faults.push(entry.fault(&fault.key, fault.message)),
+        }
+    }
     let elements = elements_of(file_key, lines, faults);
     let formations = lines.entries("formation", faults);
     if formations.is_empty() {
@@ -275,6 +300,10 @@ fn read_constant(
         Some(Value::Text(input)) => input,
         Some(other) => return Err(named("input", format!("`input` takes a text, not {}", other.kind()))),
     };
+    let influences = match keys.remove("influences") {
+        None => vec![],
+        Some(value) => influence::read(value, &identity).map_err(|fault| named(&fault.key, fault.message))?,
+    };
     let reaction = Reaction::read(&equation, Some(&name), Named::new(keys), Some(&identity));
     let reaction = reaction.map_err(|error| {
         let key = match &error {
@@ -290,6 +319,7 @@ fn read_constant(
     for conversion in history {
         constant.history = constant.history.converted(conversion);
     }
+    constant.history = constant.history.influenced(influences);
     Ok((is_formation, name, Reaction::of(reaction.equation().clone(), constant)))
 }
 
@@ -327,7 +357,10 @@ fn read_ledger_as(file_key: &str, text: &str) -> Result<LedgerFile, Vec<FileFaul
         }
     }
     let own = read_entries(file_key, &read_citation(&lines).unwrap_or_default(), &lines, &mut faults);
-    let head = read_head(file_key, lines.named(&["from", "constant", "formation", "element", "publication"]));
+    let head = read_head(
+        file_key,
+        lines.named(&["from", "constant", "formation", "composition", "element", "publication"]),
+    );
     match head {
         Ok(head) if faults.is_empty() => Ok(LedgerFile { from, own, ..head }),
         Ok(_) => Err(in_order(faults)),
@@ -360,8 +393,18 @@ fn read_head(file_key: &str, mut named: Named) -> Result<LedgerFile, KeyFault> {
     let solutes = named.texts("solutes")?.unwrap_or_default();
     let solutes = solutes.iter().map(|text| Species::parse(text)).collect::<Result<_, _>>();
     let solutes = solutes.map_err(|error| KeyFault::new("solutes", error.to_string()))?;
+    let is_marine = match named.text("medium")?.as_deref() {
+        None => false,
+        Some("seawater") => true,
+        Some(other) => {
+            let message = format!(
+                "the constants of a ledger hold for zero ionic strength or `seawater`, not for `{other}`"
+            );
+            return Err(KeyFault::new("medium", message));
+        }
+    };
     named.finish()?;
-    Ok(LedgerFile { name, edition, activity, solutes, from: vec![], own: ConstantFile::default() })
+    Ok(LedgerFile { name, edition, activity, is_marine, solutes, from: vec![], own: ConstantFile::default() })
 }
 
 /// `constants` and `formations` are lists, `all` where neither is given.
@@ -369,14 +412,16 @@ fn read_from(entry: &Entry<'_>) -> Result<From, KeyFault> {
     let mut named = entry.named();
     let file = named.text("file")?.ok_or_else(|| KeyFault::new("file", "`[[from]]` needs a `file`"))?;
     let (constants, formations) = (named.texts("constants")?, named.texts("formations")?);
+    let composition = named.texts("composition")?;
     named.finish()?;
-    let all = constants.is_none() && formations.is_none();
+    let all = constants.is_none() && formations.is_none() && composition.is_none();
     let chosen = |names: Option<Vec<String>>| match names {
         None if all => None,
         None => Some(vec![]),
         Some(names) => (names != ["all"]).then_some(names),
     };
-    Ok(From { file, constants: chosen(constants), formations: chosen(formations), line: entry.line })
+    let (constants, formations) = (chosen(constants), chosen(formations));
+    Ok(From { file, constants, formations, composition: chosen(composition), line: entry.line })
 }
 
 /// One table of an array of tables.

@@ -7,7 +7,7 @@
 use std::cmp::Reverse;
 use std::collections::BTreeSet;
 
-use super::elimination::{Combination, Echelon, Sparse};
+use super::elimination::{Combination, Echelon, Sparse, TooLarge};
 use crate::chem::{GasStandard, Rational, Reaction, ReactionError, Species};
 
 /// Every species of a ledger as a formation reaction from its components.
@@ -19,6 +19,8 @@ pub struct Formations {
     pub species: Vec<Formation>,
     /// Reactions that the others already imply, with the cycle each would close.
     pub leftovers: Vec<Leftover>,
+    /// Reactions left out because their coefficients outgrow 64 bits, by their index in the order of names.
+    pub too_large: Vec<usize>,
 }
 
 /// One species formed from components: ln a = Σ νⱼ ln aⱼ + Σ nₖ ln Kₖ.
@@ -56,12 +58,17 @@ impl Formations {
         let column_of =
             |species: &Species| columns.iter().position(|known| known == species).expect("every species");
         let mut echelon = Echelon::default();
-        let mut leftovers = Vec::new();
+        let (mut leftovers, mut too_large) = (Vec::new(), Vec::new());
         for index in order {
             let terms = reactions[index].1.equation().terms();
             let row: Sparse = terms.iter().map(|(species, c)| (column_of(species), *c)).collect();
-            if let Some(cycle) = echelon.add(index, row) {
-                leftovers.push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() });
+            match echelon.add(index, row) {
+                Ok(None) => {}
+                Ok(Some(cycle)) => {
+                    leftovers
+                        .push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() });
+                }
+                Err(TooLarge) => too_large.push(index),
             }
         }
 
@@ -74,7 +81,7 @@ impl Formations {
             .collect();
         species.sort_by_key(|formed| (!formed.species.is_solute(), formed.species.clone()));
         let components = component_columns.into_iter().map(|column| columns[column].clone()).collect();
-        Self { components, species, leftovers }
+        Self { components, species, leftovers, too_large }
     }
 
     /// Position of a component.
@@ -154,8 +161,14 @@ fn fitness(species: &Species) -> u8 {
 ///
 /// # Errors
 ///
-/// As [`Reaction::constant`].
+/// [`ReactionError::NotForLedger`], or as [`Reaction::constant`].
 pub(super) fn in_bar(reaction: &Reaction) -> Result<Reaction, ReactionError> {
     reaction.check_for_ledger()?;
+    reaction.to_gas_standard(GasStandard::Bar)
+}
+
+/// The same for a ledger of seawater.
+pub(super) fn in_bar_at_sea(reaction: &Reaction) -> Result<Reaction, ReactionError> {
+    reaction.check_for_sea_ledger()?;
     reaction.to_gas_standard(GasStandard::Bar)
 }

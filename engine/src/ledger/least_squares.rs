@@ -12,13 +12,14 @@
 use super::elimination::Sparse;
 use crate::chem::{Reaction, rational};
 use crate::quantity::Input;
+use crate::units::Temperature;
 
 /// A pivot that is left with less than this share of its diagonal says nothing new.
 const DEPENDENT: f64 = 1e-9;
 /// A sum of sensitivities below this share of its largest term is a remainder of rounding.
 const CANCELS: f64 = 1e-9;
 
-/// Sensitivities of log10 K to its inputs, each times the input's standard uncertainty: one row a reaction.
+/// Sensitivities of log10 K to its inputs at one temperature, each times the input's standard uncertainty: one row a reaction.
 pub(super) struct Scatter {
     pub inputs: Vec<Input>,
     pub rows: Vec<Vec<f64>>,
@@ -26,10 +27,11 @@ pub(super) struct Scatter {
 
 impl Scatter {
     /// Inputs that state no uncertainty are left out: whether that is allowed is for the caller to ask.
-    pub fn of(reactions: &[&Reaction]) -> Self {
+    pub fn of(reactions: &[&Reaction], temperature: Temperature) -> Self {
         let parts: Vec<_> = reactions
             .iter()
-            .map(|reaction| reaction.constant().map(|constant| constant.history.parts()).unwrap_or_default())
+            .map(|reaction| reaction.constant().map(|constant| constant.history.parts_at(temperature)))
+            .map(Result::unwrap_or_default)
             .collect();
         let mut inputs: Vec<Input> = parts
             .iter()

@@ -7,9 +7,10 @@ use std::sync::{Arc, OnceLock};
 use super::alternative::{self, Alternative};
 use super::audit::{self, Audit, Cycle};
 use super::combine::{Combined, combine_routes};
-use super::formation::{Formations, Leftover, in_bar};
+use super::composition::{Constituent, Sea};
+use super::formation::{Formations, Leftover, in_bar, in_bar_at_sea};
 use super::reconcile::{self, Reconciliation};
-use crate::chem::{Reaction, ReactionError, Species};
+use crate::chem::{Constant, LogK, Reaction, ReactionError, Species};
 use crate::named::{KeyFault, Named};
 use crate::nearest::nearest;
 use crate::text::list;
@@ -29,6 +30,12 @@ struct Inner {
     /// Ions that take part in no reaction.
     solutes: BTreeSet<Species>,
     activity: ActivityChoice,
+    /// Whether its constants are those of seawater: concentrations in mol/kg(solution).
+    is_marine: bool,
+    /// What goes with salinity, by name.
+    composition: BTreeMap<String, Constituent>,
+    /// The sea that its constants are evaluated in.
+    sea: Option<Sea>,
     /// Worked out on first use; a clone made for a change starts without.
     formations: OnceLock<Formations>,
     /// How it was reconciled; a change of its constants forgets it.
@@ -82,6 +89,12 @@ pub enum LedgerError {
         /// The species that are left over.
         left_over: Vec<String>,
     },
+    /// Coefficients that outgrow 64 bits when reactions are combined.
+    #[error(
+        "`{0}` cannot be combined with the others: its coefficients are too large, or have too many digits, to be \
+         counted exactly"
+    )]
+    TooLarge(String),
     /// Constants that cannot be weighed.
     #[error(
         "no uncertainty is stated for {}, and what is not stated cannot be weighed; fill it in with \
@@ -91,6 +104,9 @@ pub enum LedgerError {
     /// An uncertainty that is none.
     #[error("`sigma` is a standard uncertainty of log K and has to be above zero, not {0}")]
     Sigma(f64),
+    /// A ledger of seawater, or none, where the other is needed.
+    #[error("{0}")]
+    Medium(String),
     /// No alternative of this description.
     #[error("no shipped alternative to `{name}` is by `{author}`: {}", known_alternatives(.known))]
     NoAlternative {
@@ -198,7 +214,8 @@ impl Ledger {
     /// [`LedgerError::NameTaken`], or that the reaction has no constant.
     pub fn with_reaction(&self, name: &str, reaction: &Reaction) -> Result<Self, LedgerError> {
         self.check_free(name)?;
-        self.changed(|inner| Ok(inner.reactions.insert(name.into(), in_bar(reaction)?)))
+        let reaction = self.fitting(reaction)?;
+        self.changed(|inner| Ok(inner.reactions.insert(name.into(), reaction)))
     }
 
     /// The same with the formation of one more species from the elements.
@@ -218,12 +235,13 @@ impl Ledger {
     /// [`LedgerError::Unknown`] if there is none, or that the reaction has no constant.
     pub fn replace(&self, name: &str, reaction: &Reaction) -> Result<Self, LedgerError> {
         self.reaction(name)?;
+        let reaction = self.fitting(reaction)?;
         self.changed(|inner| {
             let of_its_kind = match inner.formation_data.contains_key(name) {
                 true => &mut inner.formation_data,
                 false => &mut inner.reactions,
             };
-            Ok(of_its_kind.insert(name.into(), in_bar(reaction)?))
+            Ok(of_its_kind.insert(name.into(), reaction))
         })
     }
 
@@ -262,6 +280,10 @@ impl Ledger {
         if !clashes.is_empty() && prefer_other.is_none() {
             return Err(LedgerError::Clash(clashes));
         }
+        if self.is_marine() != other.is_marine() && other.names().next().is_some() {
+            let message = "one ledger holds for seawater and the other for zero ionic strength: their constants do not add";
+            return Err(LedgerError::Medium(message.into()));
+        }
         self.changed(|inner| {
             let take = |own: &mut BTreeMap<String, Reaction>, others: &BTreeMap<String, Reaction>| {
                 for (name, reaction) in others {
@@ -285,10 +307,78 @@ impl Ledger {
         Self(Arc::new(inner))
     }
 
+    /// The same as an empty ledger of seawater would be: constants are concentrations in mol/kg(solution), as published.
+    #[must_use]
+    pub fn of_seawater(&self) -> Self {
+        Self(Arc::new(Inner { is_marine: true, ..self.copy() }))
+    }
+
+    /// Whether its constants are those of seawater.
+    #[must_use]
+    pub fn is_marine(&self) -> bool {
+        self.0.is_marine
+    }
+
+    /// The same evaluated in a sea: its constants at that salinity and pressure.
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::Medium`] for a ledger of other waters.
+    pub fn in_sea(&self, sea: Sea) -> Result<Self, LedgerError> {
+        if !self.is_marine() {
+            return Err(LedgerError::Medium(format!(
+                "the constants of the ledger `{}` hold for zero ionic strength, not for seawater: use `ledger(\"seawater\")`",
+                self.name()
+            )));
+        }
+        // The constants do not change, only where they are evaluated: what was worked out stays.
+        Ok(Self(Arc::new(Inner { sea: Some(sea), ..(*self.0).clone() })))
+    }
+
+    /// The sea that its constants are evaluated in.
+    #[must_use]
+    pub fn sea(&self) -> Option<Sea> {
+        self.0.sea
+    }
+
+    /// What goes with salinity, in order of name.
+    pub fn composition(&self) -> impl Iterator<Item = &Constituent> {
+        self.0.composition.values()
+    }
+
+    /// The same with a constituent that goes with salinity, in place of one of its name.
+    #[must_use]
+    pub fn with_constituent(&self, constituent: Constituent) -> Self {
+        let mut inner = self.copy();
+        inner.composition.insert(constituent.name.clone(), constituent);
+        Self(Arc::new(inner))
+    }
+
+    /// The reaction as this ledger keeps it.
+    pub(super) fn fitting(&self, reaction: &Reaction) -> Result<Reaction, ReactionError> {
+        if self.is_marine() { in_bar_at_sea(reaction) } else { in_bar(reaction) }
+    }
+
     /// The same with another activity model.
     #[must_use]
     pub fn with_activity(&self, activity: ActivityChoice) -> Self {
         Self(Arc::new(Inner { activity, ..self.copy() }))
+    }
+
+    /// The same with other constants for its reactions, by routes already found: for random draws, which are too many to
+    /// find routes anew. Where two routes lead to one constant a draw does not make them agree, and keeps the first.
+    pub(crate) fn moved(&self, log_k: impl Fn(&str, &Reaction) -> Option<LogK>) -> Self {
+        let mut formations = self.formations().clone();
+        formations.leftovers.clear();
+        let mut inner = self.copy();
+        for (name, reaction) in &mut inner.reactions {
+            if let (Some(log_k), Ok(constant)) = (log_k(name, reaction), reaction.constant()) {
+                let constant = Constant { log_k, ..constant.clone() };
+                *reaction = Reaction::of(reaction.equation().clone(), constant);
+            }
+        }
+        inner.formations = OnceLock::from(formations);
+        Self(Arc::new(inner))
     }
 
     /// Formation of every species from components the engine picks; worked out once.
@@ -386,18 +476,35 @@ impl Ledger {
         alternative::alternatives(self)
     }
 
-    /// The same with a shipped alternative in place of a reaction, named by author and year: `Rimstidt 1980`.
+    /// The same with a shipped alternative in place of a reaction, named by author and year: `Rimstidt 1980`. Several
+    /// reactions by one author go together, `K1 K2`; so does what goes with salinity, `total boron`.
     ///
     /// # Errors
     ///
     /// [`LedgerError::Unknown`] or [`LedgerError::NoAlternative`].
     pub fn choose(&self, name: &str, author: &str) -> Result<Self, LedgerError> {
+        if self.0.composition.contains_key(name) {
+            return Ok(self.with_constituent(alternative::find_constituent(self, name, author)?));
+        }
+        let several: Vec<&str> = name.split_whitespace().collect();
+        if several.len() > 1 && self.reaction(name).is_err() {
+            return several.into_iter().try_fold(self.clone(), |ledger, one| ledger.choose(one, author));
+        }
         self.replace(name, &alternative::find(self, name, author)?)
     }
 
-    /// Every independent cycle among its reactions and formation data, and how far each fails to close.
+    /// Author and year of each constant, and of each constituent of seawater, that has a shipped alternative.
     #[must_use]
-    pub fn audit(&self, temperature: Temperature) -> Audit {
+    pub fn choices(&self) -> Vec<(String, String)> {
+        alternative::choices(self)
+    }
+
+    /// Every independent cycle among its reactions and formation data, and how far each fails to close.
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::TooLarge`].
+    pub fn audit(&self, temperature: Temperature) -> Result<Audit, LedgerError> {
         audit::audit(self, temperature)
     }
 
@@ -459,6 +566,13 @@ impl Ledger {
                 "{name:?} {reaction:?}",
                 reaction = reaction.constant().ok().map(|c| &c.log_k)
             ));
+        }
+        for constituent in self.composition() {
+            text.push_str(&format!("{} {:?}", constituent.name, constituent.per_salinity));
+        }
+        if self.is_marine() {
+            let volumes = self.reactions().filter_map(|(_, r)| r.constant().ok()).map(|c| &c.volume);
+            text.push_str(&format!("{:?}", volumes.collect::<Vec<_>>()));
         }
         let fold = |hash: u64, byte: u8| (hash ^ u64::from(byte)).wrapping_mul(0x0100_0000_01b3);
         format!("{:016x}", text.bytes().fold(0xcbf2_9ce4_8422_2325, fold))

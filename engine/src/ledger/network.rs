@@ -2,7 +2,8 @@
 
 use std::collections::BTreeMap;
 
-use super::elimination::{Combination, Echelon, Sparse};
+use super::elimination::{Combination, Echelon, Sparse, TooLarge};
+use super::ledger::LedgerError;
 use crate::chem::{Equation, Reaction, Species};
 use crate::units::Temperature;
 
@@ -31,32 +32,42 @@ impl<'a> Network<'a> {
     }
 
     /// Adds the reactions one by one: those that come early are needed, those that come late close cycles.
-    pub fn eliminate(&self, order: impl IntoIterator<Item = usize>) -> Eliminated {
+    ///
+    /// # Errors
+    ///
+    /// [`LedgerError::TooLarge`].
+    pub fn eliminate(&self, order: impl IntoIterator<Item = usize>) -> Result<Eliminated, LedgerError> {
         let mut echelon = Echelon::default();
         let mut cycles = Vec::new();
         for index in order {
-            let row = self.row(self.reactions[index].equation()).expect("its own species");
-            if let Some(cycle) = echelon.add(index, row) {
+            let equation = self.reactions[index].equation();
+            let row = self.row(equation).expect("its own species");
+            let added = echelon.add(index, row);
+            if let Some(cycle) = added.map_err(|TooLarge| LedgerError::TooLarge(equation.to_string()))? {
                 cycles.push((index, cycle.multiples));
             }
         }
-        Eliminated { echelon, cycles }
+        Ok(Eliminated { echelon, cycles })
     }
 
     /// The multiples of reactions that add up to an equation.
     ///
     /// # Errors
     ///
-    /// The species no combination accounts for.
-    pub fn reach(&self, echelon: &Echelon, target: &'a Equation) -> Result<Sparse, Vec<&'a Species>> {
-        let row = self.row(target)?;
+    /// [`LedgerError::Unreachable`] with the species no combination accounts for, [`LedgerError::TooLarge`].
+    pub fn reach(&self, echelon: &Echelon, target: &'a Equation) -> Result<Sparse, LedgerError> {
+        let unreachable = |left_over: Vec<&Species>| LedgerError::Unreachable {
+            target: target.to_string(),
+            left_over: left_over.iter().map(|species| species.key().to_string()).collect(),
+        };
+        let row = self.row(target).map_err(unreachable)?;
         let mut wanted = Combination { row, ..Combination::default() };
-        echelon.reduce(&mut wanted);
+        echelon.reduce(&mut wanted).map_err(|TooLarge| LedgerError::TooLarge(target.to_string()))?;
         if wanted.row.is_empty() {
             return Ok(wanted.multiples.into_iter().map(|(index, multiple)| (index, -multiple)).collect());
         }
         let left_over = |species: &&'a Species| wanted.row.contains_key(&self.columns[*species]);
-        Err(self.columns.keys().copied().filter(left_over).collect())
+        Err(unreachable(self.columns.keys().copied().filter(left_over).collect()))
     }
 
     /// log10 K of a reaction, at the nearest temperature it is known at.

@@ -64,7 +64,7 @@ pub(super) fn reconcile(
     ledger: &Ledger,
     temperature: Temperature,
 ) -> Result<(Ledger, Reconciliation), LedgerError> {
-    let survey = Survey::of(ledger, temperature);
+    let survey = Survey::of(ledger, temperature)?;
     check_stated(&survey)?;
     let misclosures: Vec<f64> = survey.cycles.iter().map(|cycle| survey.misclosure(cycle)).collect();
     let weights = Weights::of(survey.cycles.iter().map(|cycle| survey.scatter.combined(cycle)).collect());
@@ -169,15 +169,7 @@ pub(super) fn assume_sigma(reaction: &Reaction, sigma: f64) -> Result<Reaction, 
         return Ok(reaction.clone());
     }
     let constant = reaction.constant()?;
-    let mut history: Option<History> = None;
-    for (origin, multiple) in constant.history.uses() {
-        let filled = History::of(filled(origin, sigma)?).times(*multiple);
-        history = Some(history.map_or_else(|| filled.clone(), |sum| sum.plus(&filled)));
-    }
-    let mut history = history.unwrap_or_default();
-    for conversion in constant.history.conversions() {
-        history = history.converted(conversion.clone());
-    }
+    let history = constant.history.with_origins(|origin| filled(origin, sigma))?;
     let history = history.converted(format!("uncertainty not stated: {sigma} assumed for log K"));
     Ok(Reaction::of(reaction.equation().clone(), Constant { history, ..constant.clone() }))
 }

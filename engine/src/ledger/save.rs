@@ -7,18 +7,21 @@
 use std::collections::BTreeMap;
 use std::fmt::Write;
 
+use super::composition::Constituent;
 use super::formation::in_bar;
+use super::influence;
 use super::ledger::Ledger;
 use super::shipped;
 use crate::chem::{Constant, Provenance, Reaction};
-use crate::units::Temperature;
+use crate::quantity::Quantity;
+use crate::units::{Temperature, Unit};
 
 /// The ledger in the layout of ledger files.
 #[must_use]
 pub fn to_text(ledger: &Ledger) -> String {
-    let mut text = String::from(
-        "# A ledger of equilibrium constants: molal, at zero ionic strength, gases counted from 1 bar.\n",
-    );
+    let basis =
+        if ledger.is_marine() { "in mol/kg(solution) of seawater" } else { "molal, at zero ionic strength" };
+    let mut text = format!("# A ledger of equilibrium constants: {basis}, gases counted from 1 bar.\n");
     head(&mut text, ledger);
     let mut named: BTreeMap<&str, Vec<String>> = BTreeMap::new();
     let mut own = Vec::new();
@@ -30,6 +33,9 @@ pub fn to_text(ledger: &Ledger) -> String {
     }
     for (file, species) in &named {
         let _ = write!(text, "\n[[from]]\nfile = {}\nformations = {}\n", quoted(file), quoted_list(species));
+    }
+    for constituent in ledger.composition() {
+        composition(&mut text, constituent);
     }
     for (name, reaction) in ledger.reactions() {
         entry(&mut text, name, reaction, false);
@@ -44,6 +50,9 @@ fn head(text: &mut String, ledger: &Ledger) {
     let _ = writeln!(text, "name = {}", quoted(ledger.name()));
     if let Some(edition) = ledger.edition() {
         let _ = writeln!(text, "edition = {}", quoted(edition));
+    }
+    if ledger.is_marine() {
+        text.push_str("medium = \"seawater\"\n");
     }
     let (model, options) = ledger.activity().written();
     let _ = writeln!(text, "activity_model = {}", quoted(model));
@@ -82,16 +91,23 @@ fn entry(text: &mut String, name: &str, reaction: &Reaction, is_formation: bool)
     if is_formation {
         text.push_str("formation = true\n");
     }
+    seawater(text, reaction, constant);
     value(text, constant);
     if let Some(range) = constant.log_k.range() {
         let ends = [temperature(range.lowest), temperature(range.highest)];
         let _ = writeln!(text, "range = {}", quoted_list(&ends));
     }
-    if let Some(sigma) = reaction.log_k().ok().and_then(|log_k| log_k.sigma()) {
+    let own = Quantity::from_parts(0.0, Unit::one(), constant.history.parts());
+    if let Some(sigma) = own.sigma() {
         let _ = writeln!(text, "sigma = {sigma:?}");
     }
     if let Some(input) = only_input(constant) {
         let _ = writeln!(text, "input = {}", quoted(input));
+    }
+    text.push_str(&influence::written(constant.history.influences(), quoted));
+    if let (Some(volume), None) = (&constant.volume, constant.conditions.medium.salinity()) {
+        let volume = volume.quantity(constant.temperature);
+        let _ = writeln!(text, "volume = {}", quoted(&exactly(&volume)));
     }
     origin(text, constant);
     let conversions = constant.history.conversions();
@@ -100,11 +116,53 @@ fn entry(text: &mut String, name: &str, reaction: &Reaction, is_formation: bool)
     }
 }
 
+/// What goes with salinity.
+fn composition(text: &mut String, constituent: &Constituent) {
+    let _ = write!(
+        text,
+        "\n[[composition]]\nname = {}\nof = {}\nmol_per_salinity = {:?}\n",
+        quoted(&constituent.name),
+        quoted(&constituent.of),
+        constituent.per_salinity
+    );
+    if let Some(sigma) = constituent.relative_sigma() {
+        let _ = writeln!(text, "relative_sigma = {sigma:?}");
+    }
+    let _ = write!(
+        text,
+        "source = {}\nprovenance = {}\n",
+        quoted(&constituent.source),
+        quoted(&constituent.provenance.to_string())
+    );
+}
+
+/// The conditions of a constant of seawater.
+fn seawater(text: &mut String, reaction: &Reaction, constant: &Constant) {
+    let Some(salinity) = constant.conditions.medium.salinity() else { return };
+    text.push_str("medium = \"seawater\"\n");
+    let _ = writeln!(text, "salinity = {salinity:?}");
+    if reaction.terms().is_ok_and(|terms| terms.protons != 0.into()) {
+        let _ = writeln!(text, "ph_scale = {}", quoted(constant.conditions.ph_scale.word()));
+    }
+    if let Some(range) = constant.log_k.salinities() {
+        let _ = writeln!(text, "salinity_range = [{:?}, {:?}]", range.lowest, range.highest);
+    }
+    if let Some(volume) = &constant.volume {
+        for (key, terms) in volume.written() {
+            let terms: Vec<String> =
+                terms.iter().map(|(term, value)| format!("{} = {value:?}", quoted(term))).collect();
+            let _ = writeln!(text, "{key} = {{ {} }}", terms.join(", "));
+        }
+    }
+}
+
 fn value(text: &mut String, constant: &Constant) {
     match constant.log_k.terms() {
         Some(terms) => {
-            let mut terms: Vec<String> =
-                terms.iter().map(|(term, value)| format!("{} = {value:?}", quoted(term.written()))).collect();
+            let mut terms: Vec<String> = terms
+                .iter()
+                .map(|(term, value)| format!("{} = {value:?}", quoted(&term.written())))
+                .collect();
             if terms.is_empty() {
                 terms.push("\"1\" = 0.0".into());
             }
@@ -144,6 +202,12 @@ fn only_input(constant: &Constant) -> Option<&str> {
         return None;
     }
     part.input.name()
+}
+
+/// A quantity with every digit, as `Quantity::parse` reads it.
+fn exactly(quantity: &Quantity) -> String {
+    let sigma = quantity.sigma().map_or_else(String::new, |sigma| format!(" +/- {sigma:?}"));
+    format!("{:?}{sigma} {}", quantity.value(), quantity.unit().symbol())
 }
 
 /// In degC where that reads back as the same temperature, else in kelvin.

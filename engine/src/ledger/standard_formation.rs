@@ -328,11 +328,20 @@ fn in_default(quantity: &Quantity, kind: Kind) -> f64 {
 pub(super) fn by(file_key: &str) -> String {
     let author = file_key.trim_end_matches(|c: char| c.is_ascii_digit());
     let year = &file_key[author.len()..];
-    let mut letters = author.chars();
-    match letters.next() {
-        Some(first) if year.len() == 4 && author.chars().all(char::is_alphabetic) => {
-            format!(", {}{} {year}", first.to_uppercase(), letters.as_str())
-        }
-        _ => String::new(),
+    let capital = |name: &str| {
+        let mut letters = name.chars();
+        letters
+            .next()
+            .map_or_else(String::new, |first| format!("{}{}", first.to_uppercase(), letters.as_str()))
+    };
+    // `refit` and the like say what of an author is meant.
+    let word = |name: &str| match name {
+        "refit" | "seawater" | "total" => name.to_string(),
+        author => capital(author),
+    };
+    let is_author = !author.is_empty() && author.chars().all(|c| c.is_alphabetic() || c == '-');
+    if year.len() != 4 || !is_author {
+        return String::new();
     }
+    format!(", {} {year}", author.split('-').map(word).collect::<Vec<_>>().join(" "))
 }

@@ -1,5 +1,6 @@
 //! Physical constants and properties of pure water.
 
 pub mod constants;
+pub mod gas_exchange;
 pub mod seawater;
 pub mod water;

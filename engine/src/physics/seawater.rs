@@ -3,6 +3,12 @@
 //!
 //! `salinity` is practical salinity, `temperature_k` in kelvin; amounts are per kilogram of solution unless said otherwise.
 
+/// Reference salinity per unit of practical salinity, g/kg. Millero et al. (2008) Deep-Sea Research I 55, 50-72.
+pub const REFERENCE_SALINITY_PER_SALINITY: f64 = 35.165_04 / 35.0;
+
+/// Mean molar mass of sea salt, g/mol: of the reference composition, same source (computed from its mole fractions).
+pub const SEA_SALT_MOLAR_MASS: f64 = 31.403_821_8;
+
 /// Ionic strength, mol/kg(water): 19.924 S/(1000 - 1.005 S).
 ///
 /// Dickson, Sabine and Christian (2007) PICES Special Publication 3, chapter 5 (recalled).
@@ -60,6 +66,81 @@ pub fn k_fluoride(temperature_k: f64, salinity: f64) -> f64 {
     ln_k.exp() * water_content(salinity)
 }
 
+/// Density, kg/m3, at a hydrostatic pressure in bar above that of the surface.
+///
+/// The equation of state of 1980: UNESCO (1981) Technical Papers in Marine Science 36 and 38, Millero et al. (1980)
+/// Deep-Sea Research 27A, 255-264, Millero and Poisson (1981) ibid. 28A, 625-629 (recalled; meets the printed check
+/// values). Temperatures are read on the scale of 1968, 0.006 K above that of 1990 at 25 degC.
+///
+/// # Validity
+///
+/// Salinity to 42, -2 to 40 degC, to 1000 bar.
+#[must_use]
+pub fn density(temperature_k: f64, salinity: f64, hydrostatic_bar: f64) -> f64 {
+    let t = (temperature_k - 273.15) * 1.000_24;
+    let s = salinity;
+    let poly = |c: &[f64]| c.iter().rev().fold(0.0, |sum, c| sum * t + c);
+    let water = poly(&[999.842_594, 6.793_952e-2, -9.095_29e-3, 1.001_685e-4, -1.120_083e-6, 6.536_332e-9]);
+    let surface = water
+        + s * poly(&[8.244_93e-1, -4.0899e-3, 7.6438e-5, -8.2467e-7, 5.3875e-9])
+        + s * s.sqrt() * poly(&[-5.724_66e-3, 1.0227e-4, -1.6546e-6])
+        + 4.8314e-4 * s * s;
+    // The secant bulk modulus, bar.
+    let modulus = poly(&[19_652.21, 148.4206, -2.327_105, 1.360_477e-2, -5.155_288e-5])
+        + s * poly(&[54.6746, -0.603_459, 1.099_87e-2, -6.1670e-5])
+        + s * s.sqrt() * poly(&[7.944e-2, 1.6483e-2, -5.3009e-4]);
+    let a = poly(&[3.239_908, 1.437_13e-3, 1.160_92e-4, -5.779_05e-7])
+        + s * poly(&[2.2838e-3, -1.0981e-5, -1.6078e-6])
+        + s * s.sqrt() * 1.910_75e-4;
+    let b = poly(&[8.509_35e-5, -6.122_93e-6, 5.2787e-8]) + s * poly(&[-9.9348e-7, 2.0816e-8, 9.1697e-10]);
+    let p = hydrostatic_bar;
+    surface / (1.0 - p / (modulus + a * p + b * p * p))
+}
+
+/// Pressure above that of the surface, dbar, at a depth in metres and a latitude in degrees.
+///
+/// Saunders (1981) J. Physical Oceanography 11, 573-574 (recalled): within 0.1 dbar to 5000 m, and 1 dbar to 10 000 m, of
+/// integrating a standard ocean of 0 degC and salinity 35.
+#[must_use]
+pub fn pressure_at_depth(depth_m: f64, latitude_deg: f64) -> f64 {
+    let (c1, c2) = saunders(latitude_deg);
+    ((1.0 - c1) - ((1.0 - c1).powi(2) - 4.0 * c2 * depth_m).sqrt()) / (2.0 * c2)
+}
+
+/// Depth in metres at a pressure above that of the surface, dbar, and a latitude in degrees: the same turned round.
+#[must_use]
+pub fn depth_at_pressure(pressure_dbar: f64, latitude_deg: f64) -> f64 {
+    let (c1, c2) = saunders(latitude_deg);
+    (1.0 - c1) * pressure_dbar - c2 * pressure_dbar * pressure_dbar
+}
+
+fn saunders(latitude_deg: f64) -> (f64, f64) {
+    ((5.92 + 5.25 * latitude_deg.to_radians().sin().powi(2)) * 1e-3, 2.21e-6)
+}
+
+/// Practical salinity from the conductivity ratio to seawater of salinity 35 at 15 degC and the surface, a temperature on
+/// the scale of 1968 in degC and a pressure in dbar above that of the surface.
+///
+/// The practical salinity scale of 1978: UNESCO (1981) Technical Papers in Marine Science 37 (recalled; meets the printed
+/// check values).
+///
+/// # Validity
+///
+/// Salinity 2 to 42, -2 to 35 degC.
+#[must_use]
+pub fn practical_salinity(conductivity_ratio: f64, t68_celsius: f64, pressure_dbar: f64) -> f64 {
+    let (r, t, p) = (conductivity_ratio, t68_celsius, pressure_dbar);
+    let poly = |c: &[f64], x: f64| c.iter().rev().fold(0.0, |sum, c| sum * x + c);
+    let r_t = poly(&[0.676_609_7, 2.005_64e-2, 1.104_259e-4, -6.9698e-7, 1.0031e-9], t);
+    let by_pressure = 1.0
+        + p * poly(&[2.070e-5, -6.370e-10, 3.989e-15], p)
+            / (1.0 + 3.426e-2 * t + 4.464e-4 * t * t + (4.215e-1 - 3.107e-3 * t) * r);
+    let x = (r / (by_pressure * r_t)).sqrt();
+    let away = (t - 15.0) / (1.0 + 0.0162 * (t - 15.0));
+    poly(&[0.0080, -0.1692, 25.3851, 14.0941, -7.0261, 2.7081], x)
+        + away * poly(&[0.0005, -0.0056, -0.0066, -0.0375, 0.0636, -0.0144], x)
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -75,6 +156,39 @@ mod tests {
     fn fluoride_meets_its_printed_value() {
         let total = 1.0 + total_sulfate(35.0) / k_bisulfate(298.15, 35.0);
         assert!((k_fluoride(298.15, 35.0).ln() + total.ln() + 5.80).abs() < 0.005);
+    }
+
+    /// Printed check values of UNESCO (1981), temperatures on the scale of 1968.
+    #[test]
+    fn density_meets_its_printed_values() {
+        for (s, t68, p, printed) in [
+            (0.0, 5.0, 0.0, 999.966_75),
+            (35.0, 5.0, 0.0, 1027.675_47),
+            (35.0, 25.0, 0.0, 1023.343_06),
+            (0.0, 5.0, 1000.0, 1044.128_02),
+            (35.0, 25.0, 1000.0, 1062.538_17),
+            (35.0, 5.0, 1000.0, 1069.489_14),
+        ] {
+            let found = density(t68 / 1.000_24 + 273.15, s, p);
+            assert!((found - printed).abs() < 6e-6, "{found} for {printed}");
+        }
+    }
+
+    /// Printed check values of UNESCO (1983): 37.245628 and 27.995347.
+    #[test]
+    fn practical_salinity_meets_its_printed_values() {
+        assert!((practical_salinity(1.2, 20.0, 2000.0) - 37.245_628).abs() < 6e-7);
+        assert!((practical_salinity(0.65, 5.0, 1500.0) - 27.995_347).abs() < 6e-7);
+    }
+
+    /// The standard of 2010 gives 5100.902 dbar at 5000 m and 4902.190 m at 5000 dbar, at 45 degrees (computed apart);
+    /// Saunders states 0.1 dbar to 5000 dbar against the tables of 1983.
+    #[test]
+    fn depth_and_pressure_turn_round() {
+        assert!((depth_at_pressure(5000.0, 45.0) - 4902.190).abs() < 0.5);
+        assert!((pressure_at_depth(5000.0, 45.0) - 5100.902).abs() < 0.5);
+        let back = depth_at_pressure(pressure_at_depth(3210.0, 30.0), 30.0);
+        assert!((back - 3210.0).abs() < 1e-9);
     }
 
     /// Reference composition (Millero et al. 2008): I = 0.72263, sulfate 0.0282352, fluoride 6.8306e-5.

@@ -6,6 +6,7 @@ use std::sync::atomic::{AtomicUsize, Ordering};
 
 use rayon::prelude::*;
 
+use super::titration::Titration;
 use crate::equilibrium::{Asked, EquilibriumError, ObservableError, State, equilibrate};
 use crate::ledger::Ledger;
 use crate::present::{Cell, Column, Table, TableError};
@@ -24,6 +25,19 @@ struct Inner {
     /// What tells the rows apart: the names of samples, or the values of axes.
     axes: Vec<Column>,
     outcomes: Vec<Result<State, String>>,
+    origin: Origin,
+}
+
+/// What made a run, where more can be asked of it than of its states.
+#[derive(Clone, Debug, Default)]
+pub enum Origin {
+    /// Nothing that matters any more.
+    #[default]
+    Any,
+    /// A titration, which can be taken to any other volume.
+    Titration(Box<Titration>),
+    /// Random draws about the state of the water as given.
+    Draws(Box<State>),
 }
 
 /// What a table shows of an answer.
@@ -54,7 +68,20 @@ impl Run {
     /// Rows by what tells them apart and what became of them.
     #[must_use]
     pub fn new(axes: Vec<Column>, outcomes: Vec<Result<State, String>>) -> Self {
-        Self(Arc::new(Inner { axes, outcomes }))
+        Self(Arc::new(Inner { axes, outcomes, origin: Origin::Any }))
+    }
+
+    /// The same with what made it.
+    #[must_use]
+    pub fn with_origin(&self, origin: Origin) -> Self {
+        let Inner { axes, outcomes, .. } = &*self.0;
+        Self(Arc::new(Inner { axes: axes.clone(), outcomes: outcomes.clone(), origin }))
+    }
+
+    /// What made it.
+    #[must_use]
+    pub fn origin(&self) -> &Origin {
+        &self.0.origin
     }
 
     /// Equilibrates samples in parallel; the order and every bit of the results do not depend on the number of threads.

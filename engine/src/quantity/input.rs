@@ -82,6 +82,12 @@ impl Input {
         Self::new(self.0.key.clone(), &self.0.label, sigma)
     }
 
+    /// The same input under another label.
+    #[must_use]
+    pub fn called(&self, label: &str) -> Self {
+        Self(Arc::new(Described { key: self.0.key.clone(), label: label.to_owned(), sigma: self.0.sigma }))
+    }
+
     pub(super) fn key(&self) -> &Key {
         &self.0.key
     }

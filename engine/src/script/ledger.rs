@@ -4,7 +4,7 @@ use rhai::plugin::*;
 use rhai::{Array, Dynamic, Map};
 
 use super::named::named;
-use super::reaction::temperature;
+use super::reaction::{temperature, told};
 use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::chem::{Element, Reaction, Species, rational};
@@ -402,11 +402,7 @@ mod ledger_functions {
     /// ```
     #[rhai_fn(pure, return_raw)]
     pub fn derive(context: NativeCallContext, ledger: &mut Ledger, equation: &str) -> ScriptResult<Reaction> {
-        let derived = ledger.derive_routes(equation).map_err(Fail::from)?;
-        if let Some(routes) = derived.routes {
-            Host::of(&context).message(&format!("warning: `{}`: {routes}", derived.reaction));
-        }
-        Ok(derived.reaction)
+        Ok(told(&context, ledger.derive_routes(equation).map_err(Fail::from)?))
     }
 
     /// Every independent cycle among the ledger's constants and formation data at 25 degC: how far log K fails to close, in
@@ -419,12 +415,13 @@ mod ledger_functions {
     /// ```
     #[rhai_fn(name = "audit", pure, return_raw)]
     pub fn audit(ledger: &mut Ledger) -> ScriptResult<Table> {
-        Ok(audit_table(&ledger.audit(Temperature::REFERENCE))?)
+        Ok(audit_table(&ledger.audit(Temperature::REFERENCE).map_err(Fail::from)?)?)
     }
     /// The same at a temperature (degC, or text with a unit); constants not known there are in no cycle, which is said.
     #[rhai_fn(name = "audit", pure, return_raw)]
     pub fn audit_at(context: NativeCallContext, ledger: &mut Ledger, at: Dynamic) -> ScriptResult<Table> {
-        let audit = ledger.audit(temperature(&at).map_err(|fail| fail.argument(0))?);
+        let at = temperature(&at).map_err(|fail| fail.argument(0))?;
+        let audit = ledger.audit(at).map_err(Fail::from)?;
         if !audit.unknown.is_empty() {
             let names = crate::text::list(&audit.unknown);
             let at = audit.temperature.celsius();

@@ -10,10 +10,8 @@ use super::numbers::real;
 use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::chem::reaction::{self as chemistry, salinity};
-use crate::chem::{
-    EquationError, GasStandard, Medium, PhScale, Rational, Reaction, ReactionError, Species, Trail,
-};
-use crate::ledger::{LedgerError, combine as combine_reactions};
+use crate::chem::{EquationError, GasStandard, PhScale, Rational, Reaction, ReactionError, Species, Trail};
+use crate::ledger::{Combined, LedgerError, combine_routes};
 use crate::named::{Named, Value};
 use crate::present::Table;
 use crate::quantity::Quantity;
@@ -83,6 +81,14 @@ pub(super) fn temperature(given: &Dynamic) -> Result<Temperature, Fail> {
     read.map_err(|fault| fail(fault.message))
 }
 
+/// The reaction found, with a warning where several routes lead to it.
+pub(super) fn told(context: &NativeCallContext, combined: Combined) -> Reaction {
+    if let Some(routes) = combined.routes {
+        Host::of(context).message(&format!("warning: `{}`: {routes}", combined.reaction));
+    }
+    combined.reaction
+}
+
 /// A number or text as a quantity of a kind.
 pub(super) fn quantity(what: &str, given: &Dynamic, kind: Kind) -> Result<Quantity, Fail> {
     crate::named::quantity(what, value(given)?, kind).map_err(|fault| fail(fault.message))
@@ -132,6 +138,7 @@ fn warn_outside(
 struct Asked {
     temperature: Temperature,
     pressure: Option<Pressure>,
+    salinity: Option<f64>,
 }
 
 impl Asked {
@@ -143,19 +150,9 @@ impl Asked {
             given.map_or(Ok(constant.temperature), |given| chemistry::temperature("temperature", given))?;
         let pressure = options.quantity("pressure", Kind::Pressure)?;
         let pressure = pressure.map(|given| Pressure::try_from(&given)).transpose()?;
-        let asked = options.take("salinity").map(|given| salinity("salinity", given)).transpose()?;
+        let salinity = options.take("salinity").map(|given| salinity("salinity", given)).transpose()?;
         options.finish()?;
-        match (&constant.conditions.medium, asked) {
-            (Medium::Seawater { salinity }, Some(asked)) if asked != *salinity => Err(fail(format!(
-                "log K of `{reaction}` is known for salinity {salinity} only, not for {asked}"
-            ))
-            .key("salinity")),
-            (Medium::Seawater { .. }, _) | (_, None) => Ok(Self { temperature, pressure }),
-            (medium, Some(_)) => {
-                Err(fail(format!("log K of `{reaction}` holds for {medium}: it is no function of salinity"))
-                    .key("salinity"))
-            }
-        }
+        Ok(Self { temperature, pressure, salinity })
     }
 }
 
@@ -349,8 +346,14 @@ mod reaction_functions {
     #[rhai_fn(return_raw)]
     pub fn log_k_at(context: NativeCallContext, reaction: Reaction, at: Dynamic) -> ScriptResult<Quantity> {
         let asked = match at.read_lock::<Map>() {
-            None => Asked { temperature: temperature(&at)?, pressure: None },
+            None => Asked { temperature: temperature(&at)?, pressure: None, salinity: None },
             Some(map) => Asked::read(&reaction, &map)?,
+        };
+        let reaction = match asked.salinity {
+            Some(salinity) => {
+                reaction.at_salinity(salinity).map_err(|error| Fail::from(error).key("salinity"))?
+            }
+            None => reaction,
         };
         warn_outside(&context, &reaction, asked.temperature)?;
         let there = match asked.pressure {
@@ -531,7 +534,9 @@ mod reaction_functions {
         trail.rows().len() as INT
     }
 
-    /// The constant of an equation as a sum of the given reactions, with exact multiples.
+    /// The constant of an equation as a sum of the given reactions, with exact multiples. Where several sums reach it, that
+    /// of least variance is taken if uncertainties are stated, else the one with fewest constants; a warning says how far
+    /// the routes lie apart.
     ///
     /// ```rhai
     /// let k1 = reaction("CO2(aq) + H2O <=> HCO3^- + H^+", -6.352);
@@ -539,7 +544,7 @@ mod reaction_functions {
     /// fmt(combine("CO2(aq) + H2O <=> CO3^2- + 2 H^+", [k1, k2]).log_k.value, ".3f")   // "-16.681"
     /// ```
     #[rhai_fn(return_raw)]
-    pub fn combine(target: &str, reactions: Array) -> ScriptResult<Reaction> {
+    pub fn combine(context: NativeCallContext, target: &str, reactions: Array) -> ScriptResult<Reaction> {
         let read = reactions.iter().map(|item| {
             item.clone().try_cast::<Reaction>().ok_or_else(|| {
                 fail(format!(
@@ -550,7 +555,8 @@ mod reaction_functions {
             })
         });
         let reactions = read.collect::<Result<Vec<_>, _>>()?;
-        Ok(combine_reactions(target, &reactions.iter().collect::<Vec<_>>()).map_err(Fail::from)?)
+        let combined = combine_routes(target, &reactions.iter().collect::<Vec<_>>()).map_err(Fail::from)?;
+        Ok(told(&context, combined))
     }
 }
 

@@ -7,14 +7,15 @@ use rhai::{Array, Dynamic, Map};
 
 use super::faults::advised;
 use super::named::{named, one_or_many, value};
-use super::reaction::{plain, quantity, temperature};
+use super::reaction::{plain, quantity};
 use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::ledger::{Ledger, shipped};
 use crate::named::Value;
 use crate::nearest::nearest;
+use crate::quantity::Quantity;
 use crate::text::{count, list};
-use crate::units::{Kind, Pressure};
+use crate::units::{Kind, Pressure, Temperature, Unit};
 use crate::water::csv_text::{Below, CsvOptions};
 use crate::water::{Sample, SampleError, Survey, SurveyError, Treatment};
 
@@ -37,7 +38,8 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
 }
 
 fn show(sample: &Sample, style: &Style) -> String {
-    let name = sample.name().map_or_else(|| "water".to_string(), |name| format!("water \"{name}\""));
+    let kind = if sample.sea().is_some() { "seawater" } else { "water" };
+    let name = sample.name().map_or_else(|| kind.to_string(), |name| format!("{kind} \"{name}\""));
     let degree = if style.ascii { "degC" } else { "°C" };
     let keys: Vec<&str> = sample
         .entries()
@@ -62,6 +64,20 @@ fn words(treatment: &Treatment) -> String {
         Treatment::Saturate { solid, index } => format!("saturated with {solid} at SI {}", trimmed(*index)),
         Treatment::Allow { solid, above } if *above == 0.0 => format!("{solid} may form"),
         Treatment::Allow { solid, above } => format!("{solid} may form above SI {}", trimmed(*above)),
+        Treatment::WithSolid { solid, amount } => format!("with {solid}, {}", amount.moles),
+        Treatment::Dose(dose) => format!("dosed with {} {}", dose.amount.moles, dose.reagent),
+        Treatment::Remove(dose) => format!("{} {} removed", dose.amount.moles, dose.reagent),
+        Treatment::Concentrate(factor) => format!("concentrated {} times", trimmed(*factor)),
+        Treatment::AddSolution { volume, solution, .. } => {
+            let formulas: Vec<&str> = solution.solutes.iter().map(|(formula, _)| formula.as_str()).collect();
+            format!("with {} L of a solution of {}", trimmed(*volume), list(&formulas))
+        }
+        Treatment::Adjust(adjust) => {
+            let reagents: Vec<&str> = adjust.reagents.iter().map(|(name, ..)| name.as_str()).collect();
+            let targets: Vec<String> =
+                adjust.targets.iter().map(|(name, target)| format!("{name} {target}")).collect();
+            format!("adjusted with {} to {}", list(&reagents), list(&targets))
+        }
         Treatment::HoldPh { ph, reagent: None } => format!("held at pH {}", trimmed(*ph)),
         Treatment::HoldPh { ph, reagent: Some(reagent) } => {
             format!("held at pH {} with {reagent}", trimmed(*ph))
@@ -89,7 +105,7 @@ impl From<SurveyError> for Fail {
 
 /// A mineral or gas must be known to some shipped ledger, or to the sample's own; whether the ledger finally used knows
 /// it is checked at equilibrium.
-fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
+pub(super) fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
     let shipped: Vec<Ledger> =
         shipped::names().iter().filter_map(|name| shipped::as_shipped(name).ok()).collect();
     if sample.ledger().is_some() || shipped.iter().any(|ledger| ledger.find_phase(name).is_ok()) {
@@ -104,14 +120,25 @@ fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
         .argument(0))
 }
 
-fn treated(sample: &Sample, treatment: Treatment) -> ScriptResult<Sample> {
+pub(super) fn treated(sample: &Sample, treatment: Treatment) -> ScriptResult<Sample> {
     Ok(sample.treated(treatment).map_err(Fail::from)?)
+}
+
+/// A treatment with the uncertainty its value was written with.
+fn treated_to(sample: &Sample, treatment: Treatment, stated: &Quantity) -> ScriptResult<Sample> {
+    Ok(sample.treated_to(treatment, stated).map_err(Fail::from)?)
+}
+
+/// A chosen value in the default unit of its kind, with the uncertainty it was written with.
+fn chosen(what: &str, given: &Dynamic, kind: Kind) -> Result<Quantity, Fail> {
+    let given = quantity(what, given, kind)?;
+    given.to(&kind.default_unit()).map_err(|error| fail(error.to_string()))
 }
 
 /// A bare fugacity above this, bar, is taken for a forgotten unit.
 const LARGEST_BARE_FUGACITY: f64 = 10.0;
 
-fn fugacity(given: &Dynamic) -> Result<f64, Fail> {
+fn fugacity(gas: &str, given: &Dynamic) -> Result<Quantity, Fail> {
     let value = value(given)?;
     if let Value::Text(text) = &value
         && (text.ends_with("ppm") || text.ends_with("ppb"))
@@ -127,10 +154,12 @@ fn fugacity(given: &Dynamic) -> Result<f64, Fail> {
             .help(format!("write `\"{number} uatm\"`, or `\"{number} bar\"` if you mean it"))
             .argument(1));
     }
-    let bar = crate::named::quantity("fugacity", value, Kind::Pressure)
+    let what = format!("fugacity of {gas}");
+    let fugacity = crate::named::quantity(&what, value, Kind::Pressure)
         .map_err(|fault| fail(fault.message).argument(1))?;
-    let bar = Pressure::try_from(&bar).map_err(|error| fail(error.to_string()).argument(1))?;
-    Ok(bar.bar())
+    let wrong = |message: String| fail(message).argument(1);
+    Pressure::try_from(&fugacity).map_err(|error| wrong(error.to_string()))?;
+    fugacity.to(&Kind::Pressure.default_unit()).map_err(|error| wrong(error.to_string()))
 }
 
 fn entries(map: &Map) -> Result<BTreeMap<String, Value>, Fail> {
@@ -140,6 +169,20 @@ fn entries(map: &Map) -> Result<BTreeMap<String, Value>, Fail> {
         entries.insert(key.to_string(), read);
     }
     Ok(entries)
+}
+
+/// A sample of a script's keys, by one of the readers of samples; `ledger` is the one it is computed with.
+pub(super) fn sample_of(
+    keys: &Map,
+    read: fn(BTreeMap<String, Value>) -> Result<Sample, SampleError>,
+) -> ScriptResult<Sample> {
+    let mut keys = keys.clone();
+    let ledger = keys.remove("ledger").map(|ledger| {
+        ledger.try_cast::<Ledger>().ok_or_else(|| fail("`ledger` takes a ledger").key("ledger"))
+    });
+    let ledger = ledger.transpose()?;
+    let sample = read(entries(&keys)?).map_err(Fail::from)?;
+    Ok(ledger.map_or(sample.clone(), |ledger| sample.with_ledger(&ledger)))
 }
 
 fn csv_options(options: &Map) -> Result<CsvOptions, Fail> {
@@ -216,13 +259,7 @@ mod sample_functions {
     /// ```
     #[rhai_fn(name = "sample", return_raw)]
     pub fn sample(keys: Map) -> ScriptResult<Sample> {
-        let mut entries = keys.clone();
-        let ledger = entries.remove("ledger").map(|ledger| {
-            ledger.try_cast::<Ledger>().ok_or_else(|| fail("`ledger` takes a ledger").key("ledger"))
-        });
-        let ledger = ledger.transpose()?;
-        let sample = Sample::read(super::entries(&entries)?).map_err(Fail::from)?;
-        Ok(ledger.map_or(sample.clone(), |ledger| sample.with_ledger(&ledger)))
+        sample_of(&keys, Sample::read)
     }
 
     /// Samples from a CSV file beside the script, with units in its header: `Ca [mg/L]`, `alkalinity [mg/L as CaCO3]`.
@@ -282,7 +319,8 @@ mod sample_functions {
     #[rhai_fn(pure, return_raw)]
     pub fn open_to(sample: &mut Sample, gas: &str, fugacity: Dynamic) -> ScriptResult<Sample> {
         known(sample, gas)?;
-        treated(sample, Treatment::OpenTo { gas: gas.into(), fugacity: super::fugacity(&fugacity)? })
+        let stated = super::fugacity(gas, &fugacity)?;
+        treated_to(sample, Treatment::OpenTo { gas: gas.into(), fugacity: stated.value() }, &stated)
     }
     /// The water in contact with as much of a solid as it will dissolve or deposit: SI 0.
     #[rhai_fn(name = "saturate", pure, return_raw)]
@@ -294,10 +332,8 @@ mod sample_functions {
     #[rhai_fn(name = "saturate", pure, return_raw)]
     pub fn saturate_at(sample: &mut Sample, solid: &str, index: Dynamic) -> ScriptResult<Sample> {
         known(sample, solid)?;
-        treated(
-            sample,
-            Treatment::Saturate { solid: solid.into(), index: plain("a saturation index", &index)? },
-        )
+        let stated = chosen(&format!("saturation index of {solid}"), &index, Kind::Fraction)?;
+        treated_to(sample, Treatment::Saturate { solid: solid.into(), index: stated.value() }, &stated)
     }
     /// Solids that may form where the water is supersaturated: a name or a list of names.
     ///
@@ -312,11 +348,11 @@ mod sample_functions {
     /// The same, forming only above a saturation index.
     #[rhai_fn(name = "allow", pure, return_raw)]
     pub fn allow_above(sample: &mut Sample, solids: Dynamic, above: Dynamic) -> ScriptResult<Sample> {
-        let above = plain("a saturation index", &above)?;
         let mut water = sample.clone();
         for solid in one_or_many(&solids)? {
             known(sample, &solid)?;
-            water = treated(&water, Treatment::Allow { solid, above })?;
+            let stated = chosen(&format!("saturation index of {solid}"), &above, Kind::Fraction)?;
+            water = treated_to(&water, Treatment::Allow { solid, above: stated.value() }, &stated)?;
         }
         Ok(water)
     }
@@ -345,7 +381,11 @@ mod sample_functions {
     /// ```
     #[rhai_fn(pure, return_raw)]
     pub fn warm_to(sample: &mut Sample, to: Dynamic) -> ScriptResult<Sample> {
-        treated(sample, Treatment::WarmTo(temperature(&to)?))
+        let stated = quantity("temperature", &to, Kind::Temperature)?;
+        let temperature =
+            Temperature::try_from(&stated).map_err(|error| fail(error.to_string()).argument(0))?;
+        let kelvin = stated.to(&Unit::known("K")).map_err(|error| fail(error.to_string()))?;
+        treated_to(sample, Treatment::WarmTo(temperature), &kelvin)
     }
     /// The same totals at another pressure (bar, or text with a unit). Constants are not corrected for pressure yet.
     #[rhai_fn(pure, return_raw)]
@@ -380,7 +420,8 @@ fn hold_with(sample: &Sample, what: &str, value: Dynamic, reagent: Option<String
         crate::equilibrium::treatment::reagent(&ledger, reagent)
             .map_err(|error| fail(error.to_string()).argument(2))?;
     }
-    treated(sample, Treatment::HoldPh { ph: plain("a pH", &value)?, reagent })
+    let stated = chosen("pH", &value, Kind::Fraction)?;
+    treated_to(sample, Treatment::HoldPh { ph: stated.value(), reagent }, &stated)
 }
 
 /// Numbers of an axis: a list of numbers.

@@ -15,7 +15,7 @@ use crate::named::Value;
 use crate::present::{Cell, Column, Table};
 use crate::process::{Axis, Run, RunError, SweepError, run, sweep};
 use crate::quantity::Quantity;
-use crate::solve::Settings;
+use crate::solve::{Certificate, Settings};
 use crate::text::count;
 use crate::water::Sample;
 
@@ -52,16 +52,21 @@ fn show_state(state: &State, style: &Style) -> String {
     };
     let degree = if style.ascii { "degC" } else { "°C" };
     let name = state.of().name().map_or_else(|| "state".to_string(), |name| format!("state of \"{name}\""));
+    let sea = state.system().ledger().sea();
+    let (scale, kg) = sea.map_or((String::new(), "kg(water)"), |sea| {
+        (format!(" ({} scale)", sea.ph_scale.word()), "kg(solution)")
+    });
     let mut lines = vec![
         format!("{name} at {} {degree}", read("temperature", 1)),
-        format!("  pH {}   ionic strength {} mol/kg(water)", read("pH", 3), number("ionic_strength")),
+        format!("  pH {}{scale}   ionic strength {} mol/{kg}", read("pH", 3), number("ionic_strength")),
         format!(
-            "  alkalinity {} meq/kg(water)   DIC {} mmol/kg(water)   charge error {} %",
+            "  alkalinity {} meq/{kg}   DIC {} mmol/{kg}   charge error {} %",
             number("alkalinity [meq/kg]"),
             number("DIC [mmol/kg]"),
             read("charge_error", 1)
         ),
     ];
+    lines.extend(state.choices().map(|choices| format!("  {choices}")));
     lines.extend(state.warnings().iter().map(|warning| format!("  note: {warning}")));
     lines.push("  `.species()`, `.phases()` and `.get(\"SI(calcite)\")` show more".to_string());
     lines.join("\n")
@@ -115,12 +120,12 @@ impl From<SweepError> for Fail {
     }
 }
 
-fn settings(host: &Host) -> Settings {
+pub(super) fn settings(host: &Host) -> Settings {
     Settings { stop: Some(host.stop().flag()), ..Settings::default() }
 }
 
 /// One water; an interruption is passed on as such.
-fn one(host: &Host, sample: &Sample, ledger: Option<&Ledger>) -> ScriptResult<State> {
+pub(super) fn one(host: &Host, sample: &Sample, ledger: Option<&Ledger>) -> ScriptResult<State> {
     match equilibrate(sample, ledger, &settings(host)) {
         Ok(state) => Ok(state),
         Err(error) => {
@@ -245,8 +250,7 @@ fn texts(items: &Array, what: &str) -> Result<Vec<String>, Fail> {
     items.iter().map(text).collect()
 }
 
-fn certificate_table(state: &State) -> Result<Table, Fail> {
-    let certificate = state.certificate();
+pub(super) fn certificate_table(certificate: &Certificate) -> Result<Table, Fail> {
     let bound = certificate.ln_c_error.map(|error| error / std::f64::consts::LN_10);
     let smallest =
         if certificate.smallest_amount.is_finite() { Some(certificate.smallest_amount) } else { None };
@@ -453,7 +457,7 @@ mod state_functions {
     /// What was checked of the answer: mass balance, mass action, solids, ionic strength.
     #[rhai_fn(name = "certificate", get = "certificate", pure, return_raw)]
     pub fn certificate(state: &mut State) -> ScriptResult<Table> {
-        Ok(certificate_table(state)?)
+        Ok(certificate_table(state.certificate())?)
     }
     /// What a reader of the numbers should know, as texts.
     #[rhai_fn(name = "warnings", get = "warnings", pure)]

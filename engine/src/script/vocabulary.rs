@@ -8,8 +8,8 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
-    Fail, Host, ScriptResult, column, compare, general, ledger, numbers, plot, quantity, reaction, record, sample,
-    state, table,
+    Fail, Host, ScriptResult, column, compare, general, ledger, numbers, plot, processes, quantity, reaction,
+    record, sample, seawater, state, table, tableau, treatments,
 };
 
 /// Gathers everything a script can name.
@@ -28,7 +28,11 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     reaction::register(vocabulary);
     ledger::register(vocabulary);
     sample::register(vocabulary);
+    seawater::register(vocabulary);
+    treatments::register(vocabulary);
     state::register(vocabulary);
+    tableau::register(vocabulary);
+    processes::register(vocabulary);
     plot::register(vocabulary);
     record::register(vocabulary);
 }

@@ -18,7 +18,7 @@ const EXACT: f64 = 9_007_199_254_740_992.0;
 /// the inverse of every later one.
 #[derive(Debug, Clone)]
 pub(super) struct Basis {
-    /// Columns, that is components.
+    /// Columns: components, then mixtures.
     pub(super) n: usize,
     n_rows: usize,
     /// Least common denominator of each component's column; component j is counted in units of 1/scale[j].
@@ -34,13 +34,23 @@ pub(super) struct Basis {
 }
 
 impl Basis {
-    /// The tableau of `rows` in the basis of the unit rows. `None` when the coefficients have no small common denominator.
-    pub(super) fn new<'r>(rows: impl Iterator<Item = &'r Row>, n: usize) -> Option<Self> {
-        let rows: Vec<&Row> = rows.collect();
+    /// The tableau of `rows` in the basis of the unit rows. A row of a mixture contains that mixture's column once.
+    ///
+    /// `None` when the coefficients have no small common denominator.
+    pub(super) fn new<'r>(
+        rows: impl Iterator<Item = (&'r Row, Option<usize>)>,
+        n_components: usize,
+        n_mixtures: usize,
+    ) -> Option<Self> {
+        let rows: Vec<(&Row, Option<usize>)> = rows.collect();
+        let n = n_components + n_mixtures;
         let scale = common_denominators(&rows, n)?;
         let n_rows = rows.len() + n;
         let mut input = vec![0.0; n_rows * n];
-        for (entries, row) in input.chunks_exact_mut(n.max(1)).zip(&rows) {
+        for (entries, (row, mixture)) in input.chunks_exact_mut(n.max(1)).zip(&rows) {
+            if let Some(p) = mixture {
+                entries[n_components + p] = 1.0;
+            }
             for &(j, nu) in &row.stoichiometry {
                 entries[j] = scaled(nu, scale[j])?;
             }
@@ -181,10 +191,10 @@ impl Basis {
 }
 
 /// Least common denominator of each component's coefficients.
-fn common_denominators(rows: &[&Row], n: usize) -> Option<Vec<i64>> {
+fn common_denominators(rows: &[(&Row, Option<usize>)], n: usize) -> Option<Vec<i64>> {
     const LIMIT: i64 = 1 << 20;
     let mut scale = vec![1_i64; n];
-    let fractions = rows.iter().flat_map(|row| &row.stoichiometry).filter(|(_, nu)| *nu.denom() != 1);
+    let fractions = rows.iter().flat_map(|(row, _)| &row.stoichiometry).filter(|(_, nu)| *nu.denom() != 1);
     for (j, nu) in fractions {
         let denominator = *nu.denom();
         let missing = *Coefficient::new(denominator, scale[*j]).reduced().numer();
@@ -220,7 +230,7 @@ mod tests {
     #[test]
     fn rows_are_recovered_from_any_basis() {
         let rows = rows();
-        let mut basis = Basis::new(rows.iter(), 3).unwrap();
+        let mut basis = Basis::new(rows.iter().map(|row| (row, None)), 3, 0).unwrap();
         for (row, column) in [(0, 0), (1, 2), (2, 1), (3, 0), (0, 2)] {
             assert!(basis.pivot(row, column), "pivot on row {row}");
             for row in 0..rows.len() + 3 {
@@ -240,7 +250,7 @@ mod tests {
     #[test]
     fn transformed_totals_are_exact() {
         let rows = [Row::new(&[(0, 1), (1, 1), (2, 1)], 0.0)];
-        let mut basis = Basis::new(rows.iter(), 3).unwrap();
+        let mut basis = Basis::new(rows.iter().map(|row| (row, None)), 3, 0).unwrap();
         let mut sum = ExactSum::default();
         assert!(basis.pivot(0, 2));
         let equal = [Total::from(0.5), Total::from(0.5), Total::from(0.5)];
@@ -252,7 +262,7 @@ mod tests {
     #[test]
     fn pivots_that_would_round_are_refused() {
         let huge = [Row::new(&[(0, 1 << 29), (1, 1)], 0.0), Row::new(&[(0, 1), (1, 1 << 29)], 0.0)];
-        let mut basis = Basis::new(huge.iter(), 2).unwrap();
+        let mut basis = Basis::new(huge.iter().map(|row| (row, None)), 2, 0).unwrap();
         assert!(!basis.pivot(0, 0));
         assert_eq!(basis.determinant(), 1.0);
     }

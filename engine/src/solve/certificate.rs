@@ -5,7 +5,7 @@ use super::dense::Lu;
 use super::exact::ExactSum;
 use super::ionic_strength::Settled;
 use super::settings::Settings;
-use super::system::System;
+use super::system::{System, ln_sum};
 use crate::activity::Model;
 
 /// How well an answer satisfies its equations, and how far it can be trusted.
@@ -22,12 +22,12 @@ pub struct Certificate {
     /// Bound on the error of ln c of any species at the given activity coefficients, from a contraction argument; `None`
     /// where it does not apply.
     pub ln_c_error: Option<f64>,
-    /// Largest ln saturation of an absent mineral: the distance to its formation, as a negative number. Minus infinity
+    /// Largest ln saturation of an absent phase: the distance to its formation, as a negative number. Minus infinity
     /// without one.
     pub saturation: f64,
-    /// Largest |ln saturation| of a mineral that is present.
+    /// Largest |ln saturation| of a phase that is present.
     pub present_saturation: f64,
-    /// Smallest amount of a mineral that is present, mol/kg(water): the distance to its disappearance. Infinite without one.
+    /// Smallest amount of a phase that is present, mol/kg(water): the distance to its disappearance. Infinite without one.
     pub smallest_amount: f64,
     /// Error of the ionic strength, relative.
     pub ionic_strength: f64,
@@ -62,8 +62,17 @@ pub(super) fn certify(system: &System, settled: &Settled, phases: &Phases, model
     let (ln_c_error, condition) = error_and_condition(system, settled, ln_c_rounding);
     let minerals = || phases.mineral_ln_saturation.iter().zip(&phases.mineral_present);
     let absent = minerals().filter(|(_, present)| !**present).map(|(saturation, _)| *saturation);
-    let present = (0..).zip(&phases.mineral_present).filter(|(_, present)| **present).map(|(p, _)| p);
+    let present = (0..).zip(&phases.mineral_present).filter(|(_, present)| **present);
+    let present = present.map(|(p, _)| saturation_from_components(system, system.mineral_row(p)));
     let amounts = phases.mineral_amount.iter().zip(&phases.mineral_present);
+    let amounts = amounts.filter(|(_, present)| **present).map(|(n, _)| *n);
+    let mixtures = |wanted: bool| {
+        let mixtures = phases.mixtures.iter().enumerate().zip(&system.mixture_present);
+        mixtures.filter(move |(_, present)| **present == wanted).map(|(mixture, _)| mixture)
+    };
+    let absent = absent.chain(mixtures(false).map(|(_, mixture)| mixture.ln_saturation));
+    let present = present.chain(mixtures(true).map(|(p, _)| mixture_saturation(system, p)));
+    let amounts = amounts.chain(mixtures(true).map(|(_, mixture)| mixture.amount));
     Certificate {
         balance,
         balance_idx,
@@ -71,11 +80,8 @@ pub(super) fn certify(system: &System, settled: &Settled, phases: &Phases, model
         ln_c_rounding,
         ln_c_error,
         saturation: absent.fold(f64::NEG_INFINITY, f64::max),
-        present_saturation: present.map(|p| saturation_from_components(system, p).abs()).fold(0.0, f64::max),
-        smallest_amount: amounts
-            .filter(|(_, present)| **present)
-            .map(|(n, _)| *n)
-            .fold(f64::INFINITY, f64::min),
+        present_saturation: present.map(f64::abs).fold(0.0, f64::max),
+        smallest_amount: amounts.fold(f64::INFINITY, f64::min),
         ionic_strength: relative(settled.ionic_strength_residual, settled.ionic_strength),
         ionic_strength_roots: settled.roots,
         outside_validity: model.valid_to().is_some_and(|limit| settled.ionic_strength > limit),
@@ -83,10 +89,16 @@ pub(super) fn certify(system: &System, settled: &Settled, phases: &Phases, model
     }
 }
 
-/// ln saturation of a mineral from the activities of the components, independent of the basis it is part of.
-fn saturation_from_components(system: &System, mineral_idx: usize) -> f64 {
-    let row = system.mineral_row(mineral_idx);
-    let made_of = system.basis.input_row(row).iter().enumerate().filter(|(_, nu)| **nu != 0.0);
+/// ln of the sum of the saturations of the members of a mixture.
+fn mixture_saturation(system: &System, mixture_idx: usize) -> f64 {
+    let members = system.problem.member_rows(mixture_idx).filter(|row| !system.absent[*row]);
+    ln_sum(&members.map(|row| saturation_from_components(system, row)).collect::<Vec<_>>())
+}
+
+/// ln saturation of a pure phase or member from the activities of the components, independent of the basis it is part of.
+fn saturation_from_components(system: &System, row: usize) -> f64 {
+    let components = &system.basis.input_row(row)[..system.problem.n_components];
+    let made_of = components.iter().enumerate().filter(|(_, nu)| **nu != 0.0);
     system.g[row] + made_of.map(|(k, nu)| nu * system.level_of(system.basis.unit_row(k))).sum::<f64>()
 }
 
@@ -97,7 +109,7 @@ fn relative(error: f64, size: f64) -> f64 {
 /// Largest relative error of a balance in the components as given, with its index.
 fn worst_balance(system: &System, phases: &Phases) -> (f64, usize) {
     let basis = &system.basis;
-    let first_reservoir = system.problem.species.len();
+    let first_reservoir = system.problem.reservoir_row(0);
     let first_mineral = system.mineral_row(0);
     let amounts = (0..).zip(&system.ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
     let delivered = (first_reservoir..).zip(&phases.reservoir_amount).map(|(row, amount)| (row, -amount));
@@ -106,7 +118,7 @@ fn worst_balance(system: &System, phases: &Phases) -> (f64, usize) {
         amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
     let mut worst = (0.0, 0);
     let mut sum = ExactSum::default();
-    for k in 0..basis.n {
+    for k in 0..system.problem.n_components {
         let mut magnitude = 0.0;
         for &(row, amount) in &terms {
             let coefficient = basis.input_row(row)[k];

@@ -2,7 +2,7 @@
 
 /// LU factors with row pivoting of an n x n matrix stored by rows.
 #[derive(Debug, Clone, Default)]
-pub(super) struct Lu {
+pub(crate) struct Lu {
     n: usize,
     factors: Vec<f64>,
     permutation: Vec<usize>,
@@ -10,7 +10,7 @@ pub(super) struct Lu {
 
 impl Lu {
     /// Factors `matrix` (n x n, by rows), reusing the storage. Returns false when a pivot is zero or not finite.
-    pub(super) fn factor(&mut self, matrix: &[f64], n: usize) -> bool {
+    pub(crate) fn factor(&mut self, matrix: &[f64], n: usize) -> bool {
         self.n = n;
         self.factors.clear();
         self.factors.extend_from_slice(matrix);
@@ -52,7 +52,7 @@ impl Lu {
     }
 
     /// Writes the solution of `A x = rhs` to `x` (both of length n).
-    pub(super) fn solve(&self, rhs: &[f64], x: &mut [f64]) {
+    pub(crate) fn solve(&self, rhs: &[f64], x: &mut [f64]) {
         let n = self.n;
         for row in 0..n {
             let below = &self.factors[row * n..row * n + row];
@@ -67,7 +67,7 @@ impl Lu {
     }
 
     /// Writes the solution of `Aᵀ x = rhs` to `x` (both of length n).
-    pub(super) fn solve_transposed(&self, rhs: &[f64], x: &mut [f64]) {
+    pub(crate) fn solve_transposed(&self, rhs: &[f64], x: &mut [f64]) {
         let n = self.n;
         let mut y = rhs.to_vec();
         for row in 0..n {
@@ -87,7 +87,7 @@ impl Lu {
     }
 
     /// The inverse, n x n by rows.
-    pub(super) fn inverse(&self) -> Vec<f64> {
+    pub(crate) fn inverse(&self) -> Vec<f64> {
         let n = self.n;
         let mut inverse = vec![0.0; n * n];
         let (mut unit, mut column) = (vec![0.0; n], vec![0.0; n]);

@@ -27,7 +27,10 @@ const REBASE: f64 = 1.0986;
 #[derive(Debug, Default)]
 pub(super) struct Reduced {
     pub(super) columns: Vec<usize>,
+    /// Rows with amounts: species and members, then mixtures as a whole.
     pub(super) species: Vec<usize>,
+    /// How many of them come before the mixtures as a whole, which count negatively in the balances.
+    n_counted: usize,
     start: Vec<usize>,
     entries: Vec<(u32, f64)>,
     /// ln c of each species where all free levels are zero.
@@ -49,7 +52,9 @@ impl Reduced {
         self.columns.clear();
         self.columns.extend((0..basis.n).filter(|&j| system.column[j] == Column::Free));
         self.species.clear();
-        self.species.extend((0..system.problem.species.len()).filter(|&i| !system.absent[i]));
+        self.species.extend((0..system.problem.n_amounts()).filter(|&i| system.takes_part(i)));
+        let first_whole = system.problem.whole_row(0);
+        self.n_counted = self.species.partition_point(|&row| row < first_whole);
         self.start.clear();
         self.start.push(0);
         self.entries.clear();
@@ -100,6 +105,11 @@ impl Reduced {
 
     pub(super) fn n(&self) -> usize {
         self.columns.len()
+    }
+
+    /// Sign with which a row counts in the balances.
+    fn sign(&self, i: usize) -> f64 {
+        if i < self.n_counted { 1.0 } else { -1.0 }
     }
 
     /// Largest change of any ln c along a step.
@@ -167,13 +177,14 @@ impl Point {
         if !self.shifted {
             self.add_up(reduced);
         }
-        if self.shifted || !self.worst.is_finite() {
+        if self.shifted || !self.worst.is_finite() || self.has_lost_precision() {
             self.add_up_shifted(reduced);
         }
     }
 
     fn add_up(&mut self, reduced: &Reduced) {
         for (i, c) in self.c.iter().enumerate() {
+            let c = reduced.sign(i) * c;
             for &(k, nu) in reduced.row(i) {
                 let term = nu * c;
                 if term > 0.0 {
@@ -193,6 +204,11 @@ impl Point {
         }
     }
 
+    /// Whether a sum is so small that its terms are no longer normal numbers.
+    fn has_lost_precision(&self) -> bool {
+        self.ln_p.iter().chain(&self.ln_n).any(|ln_sum| *ln_sum < -LARGE)
+    }
+
     /// The same where a sum over- or underflows: every sum relative to its largest term.
     fn add_up_shifted(&mut self, reduced: &Reduced) {
         self.shifted = true;
@@ -204,7 +220,7 @@ impl Point {
         for i in 0..reduced.species.len() {
             for &(k, nu) in reduced.row(i) {
                 let shift = &mut self.shift[k as usize];
-                let side = if nu > 0.0 { &mut shift.0 } else { &mut shift.1 };
+                let side = if reduced.sign(i) * nu > 0.0 { &mut shift.0 } else { &mut shift.1 };
                 *side = side.max(self.ln_c[i] + nu.abs().ln());
             }
         }
@@ -213,6 +229,7 @@ impl Point {
         for i in 0..reduced.species.len() {
             for &(k, nu) in reduced.row(i) {
                 let (k, (up, down)) = (k as usize, self.shift[k as usize]);
+                let nu = reduced.sign(i) * nu;
                 if nu > 0.0 {
                     self.supply[k] += nu * (self.ln_c[i] - up).exp();
                 } else {
@@ -258,7 +275,7 @@ impl Point {
             let row = reduced.row(i);
             for &(j, nu) in row {
                 let j = j as usize;
-                let weight = self.weight(i, j, nu);
+                let weight = self.weight(i, j, reduced.sign(i) * nu);
                 let target = &mut jacobian[j * n..(j + 1) * n];
                 for &(k, other) in row {
                     target[k as usize] += weight * other;
@@ -280,7 +297,7 @@ impl Point {
             let ln_c_rounding = reduced.rounding(i, &self.y);
             for &(j, nu) in reduced.row(i) {
                 let j = j as usize;
-                let weight = self.weight(i, j, nu).abs();
+                let weight = self.weight(i, j, reduced.sign(i) * nu).abs();
                 rounding[j] += weight * ln_c_rounding;
                 for &(k, other) in reduced.row(i) {
                     absolute[j * n + k as usize] += weight * other.abs();
@@ -348,7 +365,7 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<(Redu
         if newton.step() {
             continue;
         }
-        if before <= settings.stalled_residual || newton.is_rounding() {
+        if before <= settings.stalled_residual || newton.is_rounding(settings) {
             return Ok(newton.finish());
         }
         let swept = newton.sweep();
@@ -358,6 +375,30 @@ pub(super) fn converge(system: &mut System, settings: &Settings) -> Result<(Redu
     }
     let (iterations, residual) = (newton.system.effort.iterations, newton.here.worst);
     Err(SolveError::NotConverged { iterations, residual })
+}
+
+/// Solves the same with unknown amounts of mixtures, from a start near enough. `None` if Newton's method does not get
+/// there.
+pub(super) fn converge_saddle(
+    system: &mut System,
+    settings: &Settings,
+) -> Result<Option<(Reduced, Point)>, SolveError> {
+    const MOST_STEPS: usize = 40;
+
+    let mut newton = Newton::new(system)?;
+    for _ in 0..MOST_STEPS {
+        settings.check_stop()?;
+        newton.rebase()?;
+        if newton.here.worst <= settings.residual {
+            return Ok(Some(newton.finish()));
+        }
+        newton.system.effort.iterations += 1;
+        if !newton.saddle_step() {
+            let is_settled = newton.here.worst <= settings.stalled_residual || newton.is_rounding(settings);
+            return Ok(is_settled.then(|| newton.finish()));
+        }
+    }
+    Ok(None)
 }
 
 /// The (species, column) where a species exceeds the basis row that it could replace by the largest factor.
@@ -435,8 +476,8 @@ impl<'s, 'p> Newton<'s, 'p> {
 
     /// ln c of every species (not only those that are left) at the system's levels.
     fn levels_from_system(&self) -> Vec<f64> {
-        let level = |i| if self.system.absent[i] { f64::NEG_INFINITY } else { self.system.level_of(i) };
-        (0..self.system.problem.species.len()).map(level).collect()
+        let level = |i| if self.system.takes_part(i) { self.system.level_of(i) } else { f64::NEG_INFINITY };
+        (0..self.system.problem.n_amounts()).map(level).collect()
     }
 
     /// Reads the tableau and evaluates at the system's levels.
@@ -479,7 +520,7 @@ impl<'s, 'p> Newton<'s, 'p> {
         for (k, &column) in self.reduced.columns.iter().enumerate() {
             self.system.level[column] = self.here.y[k];
         }
-        let mut ln_c = vec![f64::NEG_INFINITY; self.system.problem.species.len()];
+        let mut ln_c = vec![f64::NEG_INFINITY; self.system.problem.n_amounts()];
         for (k, &row) in self.reduced.species.iter().enumerate() {
             ln_c[row] = self.here.ln_c[k];
         }
@@ -524,27 +565,51 @@ impl<'s, 'p> Newton<'s, 'p> {
         self.evaluate_trial();
     }
 
-    /// One Newton step on F. Returns whether it was accepted.
-    fn step(&mut self) -> bool {
-        /// Longest accepted and longest believable change of any ln c.
-        const CAP: f64 = 60.0;
+    /// Finds the direction of Newton's method on F, and the largest change of any ln c along it; `None` where it is not to
+    /// be believed.
+    fn newton_direction(&mut self) -> Option<f64> {
+        /// Longest believable change of any ln c.
         const GARBAGE: f64 = 400.0;
 
         if !self.here.worst.is_finite() {
-            return false;
+            return None;
         }
         let n = self.reduced.n();
         self.here.jacobian(&self.reduced, &mut self.jacobian);
         if !self.lu.factor(&self.jacobian, n) {
-            return false;
+            return None;
         }
         self.direction.resize(n, 0.0);
         self.lu.solve(&self.here.residual, &mut self.direction);
         self.direction.iter_mut().for_each(|d| *d = -*d);
         let longest = self.reduced.largest_change(&self.direction);
-        if longest > GARBAGE || !self.direction.iter().all(|d| d.is_finite()) {
-            return false;
+        (longest <= GARBAGE && self.direction.iter().all(|d| d.is_finite())).then_some(longest)
+    }
+
+    /// One Newton step on F, shortened until |F| falls: for unknown amounts of mixtures, where Φ has no minimum but a
+    /// saddle. Returns whether it was accepted.
+    fn saddle_step(&mut self) -> bool {
+        /// Longest change of any ln c.
+        const CAP: f64 = 20.0;
+
+        let Some(longest) = self.newton_direction() else { return false };
+        for fraction in [1.0, 0.5, 0.25, 0.0625] {
+            let t = fraction * (CAP / longest).min(1.0);
+            self.try_step(t);
+            if self.trial.worst < (1.0 - 1e-4 * t) * self.here.worst {
+                std::mem::swap(&mut self.here, &mut self.trial);
+                return true;
+            }
         }
+        false
+    }
+
+    /// One Newton step on F. Returns whether it was accepted.
+    fn step(&mut self) -> bool {
+        /// Longest accepted change of any ln c.
+        const CAP: f64 = 60.0;
+
+        let Some(longest) = self.newton_direction() else { return false };
         if self.here.worst <= NEAR {
             self.try_step(1.0);
             if self.trial.worst < self.here.worst {
@@ -604,10 +669,10 @@ impl<'s, 'p> Newton<'s, 'p> {
 
     /// Whether the residual is no larger than its own rounding, as it may be far from the final ionic strength, where
     /// logarithms of concentrations run into the thousands. The certificate is not so lenient.
-    fn is_rounding(&self) -> bool {
+    fn is_rounding(&self, settings: &Settings) -> bool {
         self.here.worst < 1e-8 && {
             let (_, rounding) = self.here.absolute_jacobian(&self.reduced);
-            self.here.residual.iter().zip(&rounding).all(|(f, bound)| f.abs() <= *bound)
+            self.here.residual.iter().zip(&rounding).all(|(f, bound)| f.abs() <= bound.max(settings.residual))
         }
     }
 

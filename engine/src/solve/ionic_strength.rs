@@ -23,6 +23,20 @@ pub(super) struct Settled {
     pub(super) ln_water_activity: f64,
 }
 
+impl Settled {
+    /// Σ m over the solutes, which come first among the rows.
+    fn total_molality(&self, system: &System) -> f64 {
+        let n_species = system.problem.species.len();
+        self.reduced
+            .species
+            .iter()
+            .zip(&self.point.c)
+            .filter(|(row, _)| **row < n_species)
+            .map(|(_, c)| c)
+            .sum()
+    }
+}
+
 /// Solves with consistent activity coefficients and activity of water, starting from the values given.
 pub(super) fn settle(
     system: &mut System,
@@ -33,11 +47,11 @@ pub(super) fn settle(
     const MOST_PASSES: usize = 60;
 
     let (mut guess, mut ln_water_activity) = start;
-    let solvent_matters = system.problem.rows().any(|row| row.water != 0.0);
+    let solvent_matters = system.problem.rows().any(|(row, _)| row.water != 0.0);
     let mut change = f64::INFINITY;
     for _ in 0..MOST_PASSES {
         let mut settled = Coupling { system, model, settings, ln_water_activity, last: None }.root(guess)?;
-        let updated = model.ln_water_activity(settled.point.c.iter().sum(), settled.ionic_strength);
+        let updated = model.ln_water_activity(settled.total_molality(system), settled.ionic_strength);
         change = (updated - ln_water_activity).abs();
         if !solvent_matters || change <= settings.ln_water_activity {
             settled.ln_water_activity = if solvent_matters { ln_water_activity } else { updated };
@@ -89,9 +103,9 @@ impl Coupling<'_, '_> {
         self.system.effort.ionic_strengths += 1;
         self.system.set_activities(self.model, ionic_strength, self.ln_water_activity);
         let (reduced, point) = phases::settle(self.system, self.settings)?;
-        let charge_squared = |i: &usize| self.system.problem.species[*i].charge.powi(2);
-        let implied: f64 =
-            0.5 * reduced.species.iter().map(charge_squared).zip(&point.c).map(|(z2, c)| z2 * c).sum::<f64>();
+        let species = &self.system.problem.species;
+        let dissolved = reduced.species.iter().filter_map(|i| species.get(*i)).zip(&point.c);
+        let implied = 0.5 * dissolved.map(|(row, c)| row.charge.powi(2) * c).sum::<f64>();
         let sample = Sample { x: ionic_strength, f: implied - ionic_strength };
         self.last = Some((sample, reduced, point));
         Ok(sample)

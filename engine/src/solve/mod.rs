@@ -24,16 +24,17 @@
 //! - `basis`: the stoichiometry in the basis of the most concentrated species, exactly. `system`: the state in it.
 //! - `feasibility`: totals that force exact zeros, or that nothing can satisfy.
 //! - `inner`: Newton's method on logarithmic balances, with Φ as merit, at given γ and given phases. `dense`: LU.
-//! - `phases`: which minerals are present. `ionic_strength`: γ and the activity of water.
+//! - `phases`: which phases are present. `mixtures`: how much of each mixture. `ionic_strength`: γ and the activity of water.
 //! - `sensitivity`: derivatives of an answer. `certificate`: what is checked. `scalar`: conditions that are not totals, as one equation outside all this.
 
 mod basis;
 mod certificate;
-mod dense;
+pub(crate) mod dense;
 mod exact;
 mod feasibility;
 mod inner;
 mod ionic_strength;
+mod mixtures;
 mod phases;
 mod problem;
 pub mod scalar;
@@ -45,7 +46,7 @@ mod tests;
 
 pub use certificate::Certificate;
 pub use exact::Total;
-pub use problem::{Coefficient, Mineral, Problem, Reservoir, Row};
+pub use problem::{Coefficient, Mineral, Mixture, Problem, Reservoir, Row};
 pub use settings::{Input, Settings, SolveError};
 pub use system::{Effort, Warm};
 
@@ -75,12 +76,25 @@ pub struct Converged {
     pub mineral_present: Vec<bool>,
     /// ln saturation of each mineral relative to its target; 0 when present. Shape `(n_minerals,)`.
     pub mineral_ln_saturation: Vec<f64>,
+    /// Each mixture. Shape `(n_mixtures,)`.
+    pub mixtures: Vec<Mixed>,
     /// What the solve took.
     pub effort: Effort,
     /// What was checked.
     pub certificate: Certificate,
     /// A start for a neighbouring problem.
     pub warm: Warm,
+}
+
+/// A mixture in an answer.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Mixed {
+    /// Sum of the amounts of its members; 0 where it is absent.
+    pub amount: f64,
+    /// ln of the sum of the saturations of its members relative to the target; 0 when present.
+    pub ln_saturation: f64,
+    /// ln of the mole fraction of each member, or of the one it would have. Shape `(n_members,)`.
+    pub ln_x: Vec<f64>,
 }
 
 /// Solves for the equilibrium of `problem` with the activity `model`.
@@ -124,7 +138,28 @@ pub fn solve(
     warm: Option<&Warm>,
 ) -> Result<Converged, SolveError> {
     problem.validate()?;
-    let mut system = System::new(problem, warm)?;
+    match attempt(System::new(problem, warm)?, model, settings, warm) {
+        Err(failure) if failure.is_open() => {
+            // Newton's method does not end where the totals lie on the boundary of what is possible, or beyond.
+            let absent = feasibility::zeros(problem)?;
+            if !absent.contains(&true) {
+                return Err(failure);
+            }
+            let mut system = System::new(problem, None)?;
+            system.absent = absent;
+            attempt(system, model, settings, None)
+        }
+        outcome => outcome,
+    }
+}
+
+/// Solves from the start that `system` is at.
+fn attempt(
+    mut system: System,
+    model: &Model,
+    settings: &Settings,
+    warm: Option<&Warm>,
+) -> Result<Converged, SolveError> {
     let start = warm.map_or((0.0, 0.0), |warm| (warm.ionic_strength, warm.ln_water_activity));
     let settled = ionic_strength::settle(&mut system, model, settings, start)?;
     let Settled { ionic_strength, ln_water_activity, .. } = settled;
@@ -135,7 +170,7 @@ pub fn solve(
     }
     Ok(Converged {
         ln_a: component_activities(&system),
-        ln_c: std::mem::take(&mut system.ln_c),
+        ln_c: system.ln_c[..system.problem.species.len()].to_vec(),
         ln_gamma: std::mem::take(&mut system.ln_gamma),
         ionic_strength,
         ln_water_activity,
@@ -143,14 +178,30 @@ pub fn solve(
         mineral_amount: phases.mineral_amount,
         mineral_present: phases.mineral_present,
         mineral_ln_saturation: phases.mineral_ln_saturation,
+        mixtures: phases.mixtures,
         effort: Effort { pivots: system.basis.pivots, ..system.effort },
         certificate,
         warm: system.warm(ionic_strength, ln_water_activity),
     })
 }
 
+impl Mixed {
+    fn read(system: &System, mixture_idx: usize) -> Self {
+        let ln_fractions = system.ln_fractions(mixture_idx);
+        let ln_saturation = system.mixture_saturation(mixture_idx);
+        let ln_amount = system.level_of(system.amount_row(mixture_idx));
+        Self {
+            amount: if system.mixture_present[mixture_idx] { ln_amount.exp() } else { 0.0 },
+            ln_saturation,
+            ln_x: ln_fractions.iter().map(|ln_x| ln_x - ln_saturation).collect(),
+        }
+    }
+}
+
 fn component_activities(system: &System) -> Vec<f64> {
-    (0..system.basis.n).map(|k| system.basis.scale(k) * system.level_of(system.basis.unit_row(k))).collect()
+    (0..system.problem.n_components)
+        .map(|k| system.basis.scale(k) * system.level_of(system.basis.unit_row(k)))
+        .collect()
 }
 
 /// Amounts and saturations of reservoirs and minerals, as in [`Converged`].
@@ -159,6 +210,7 @@ struct Phases {
     mineral_amount: Vec<f64>,
     mineral_present: Vec<bool>,
     mineral_ln_saturation: Vec<f64>,
+    mixtures: Vec<Mixed>,
 }
 
 impl Phases {
@@ -173,17 +225,17 @@ impl Phases {
             mineral_amount: system.mineral_amount.clone(),
             mineral_present: vec![false; n_minerals],
             mineral_ln_saturation: (0..n_minerals).map(saturation).collect(),
+            mixtures: (0..system.problem.mixtures.len()).map(|p| Mixed::read(system, p)).collect(),
         };
         for column in 0..system.basis.n {
             if system.column[column] != Column::Held {
                 continue;
             }
-            match system.mineral_of(column) {
-                Some(mineral_idx) => phases.mineral_present[mineral_idx] = true,
-                None => {
-                    let reservoir_idx = system.basis.row_of(column) - system.problem.species.len();
-                    phases.reservoir_amount[reservoir_idx] = -system.held_amount(column).0;
-                }
+            if let Some(mineral_idx) = system.mineral_of(column) {
+                phases.mineral_present[mineral_idx] = true;
+            }
+            if let Some(reservoir_idx) = system.reservoir_of(column) {
+                phases.reservoir_amount[reservoir_idx] = -system.held_amount(column).0;
             }
         }
         phases

@@ -4,17 +4,20 @@
 //! supersaturated phase enters; if an amount would turn negative, the amounts move from their old values towards the
 //! new ones until the first reaches zero and that phase leaves. A phase made of phases already present is exchanged for
 //! the one it exhausts first. The energy falls with every change, so the loop ends.
+//!
+//! It is convex in the amounts of mixtures too; those that are present are settled within each step (`mixtures`).
 
-use super::inner::{self, Point, Reduced};
+use super::inner::{Point, Reduced};
+use super::mixtures::{self, Amounts};
 use super::settings::{Settings, SolveError};
 use super::system::{Column, System};
 
 /// Solves for composition and phases at given activity coefficients.
 pub(super) fn settle(system: &mut System, settings: &Settings) -> Result<(Reduced, Point), SolveError> {
-    let most_changes = 100 + 20 * system.problem.minerals.len();
+    let most_changes = 100 + 20 * (system.problem.minerals.len() + system.problem.mixtures.len());
     let before = system.effort.phase_changes;
     loop {
-        let converged = inner::converge(system, settings)?;
+        let amounts = mixtures::converge(system, settings)?;
         if system.effort.phase_changes - before > most_changes {
             return Err(SolveError::PhasesNotSettled { changes: most_changes });
         }
@@ -22,11 +25,18 @@ pub(super) fn settle(system: &mut System, settings: &Settings) -> Result<(Reduce
             system.leave(column);
             continue;
         }
-        let Some(mineral_idx) = most_supersaturated(system, settings.saturation) else {
-            return Ok(converged);
+        let converged = match amounts {
+            Amounts::Settled(converged) => *converged,
+            Amounts::Rising { mixture_idx } => return Err(SolveError::UnboundedMixture { mixture_idx }),
         };
-        if !system.enter(mineral_idx) {
-            exchange(system, mineral_idx)?;
+        match most_supersaturated(system, settings.saturation) {
+            None => return Ok(converged),
+            Some(Candidate::Mixture(mixture_idx)) => system.enter_mixture(mixture_idx),
+            Some(Candidate::Mineral(mineral_idx)) => {
+                if !system.enter(mineral_idx) {
+                    exchange(system, mineral_idx)?;
+                }
+            }
         }
     }
 }
@@ -39,12 +49,21 @@ pub(super) fn present(system: &System) -> Vec<(usize, usize)> {
         .collect()
 }
 
+/// Amounts smaller than this share of their balance are rounding.
+const ROUNDING: f64 = 1e-15;
+
+const LARGEST: f64 = 1e300;
+
+/// Whether a mineral is present in a negative amount, before it is told to leave.
+pub(super) fn any_used_up(system: &mut System) -> bool {
+    present(system).into_iter().any(|(column, _)| {
+        let (amount, magnitude) = system.held_amount(column);
+        amount < -ROUNDING * magnitude.min(LARGEST)
+    })
+}
+
 /// Moves the amounts towards those that balance the solution; returns the column of the first that reaches zero.
 fn move_to_new_amounts(system: &mut System) -> Option<usize> {
-    /// Amounts smaller than this share of their balance are rounding.
-    const ROUNDING: f64 = 1e-15;
-    const LARGEST: f64 = 1e300;
-
     let mut first: Option<(f64, usize)> = None;
     let mut moved = Vec::new();
     for (column, mineral_idx) in present(system) {
@@ -61,6 +80,10 @@ fn move_to_new_amounts(system: &mut System) -> Option<usize> {
         moved.push((mineral_idx, old, amount));
     }
     let share = first.map_or(1.0, |(share, _)| share);
+    for p in (0..system.mixture_present.len()).filter(|p| system.mixture_present[*p]).collect::<Vec<_>>() {
+        let amount = system.level_of(system.amount_row(p)).exp();
+        system.mixture_amount[p] += share * (amount - system.mixture_amount[p]);
+    }
     for (mineral_idx, old, amount) in moved {
         let moved = match share {
             0.0 => old,
@@ -76,20 +99,32 @@ fn move_to_new_amounts(system: &mut System) -> Option<usize> {
     Some(column)
 }
 
-/// The absent mineral with the largest ln saturation above the tolerance.
-fn most_supersaturated(system: &System, tolerance: f64) -> Option<usize> {
-    let mut most: Option<(f64, usize)> = None;
+/// A phase that may form.
+enum Candidate {
+    Mineral(usize),
+    Mixture(usize),
+}
+
+/// The absent phase with the largest ln saturation above the tolerance.
+fn most_supersaturated(system: &System, tolerance: f64) -> Option<Candidate> {
+    let mut most: Option<(f64, Candidate)> = None;
     for mineral_idx in 0..system.problem.minerals.len() {
         let row = system.mineral_row(mineral_idx);
         if system.absent[row] || system.basis.column_of(row).is_some() {
             continue;
         }
         let saturation = system.level_of(row);
-        if saturation > most.map_or(tolerance, |most| most.0) {
-            most = Some((saturation, mineral_idx));
+        if saturation > most.as_ref().map_or(tolerance, |most| most.0) {
+            most = Some((saturation, Candidate::Mineral(mineral_idx)));
         }
     }
-    most.map(|(_, mineral_idx)| mineral_idx)
+    for mixture_idx in (0..system.mixture_present.len()).filter(|p| !system.mixture_present[*p]) {
+        let saturation = system.mixture_saturation(mixture_idx);
+        if saturation > most.as_ref().map_or(tolerance, |most| most.0) {
+            most = Some((saturation, Candidate::Mixture(mixture_idx)));
+        }
+    }
+    most.map(|(_, candidate)| candidate)
 }
 
 /// Replaces one of the present phases that a mineral consists of by that mineral: the one used up first.

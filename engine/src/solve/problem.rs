@@ -67,6 +67,16 @@ pub struct Mineral {
     pub ln_target: f64,
 }
 
+/// An ideal mixture that may form, a solid solution or a gas at fixed pressure: present at `G = 0` or absent at `G < 0`,
+/// with `G = ln Σ_k exp(ln K_k + Σ ν_kj λ_j + w_k ln a_w) - ln_target`, so that the mole fractions add up to one.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Mixture {
+    /// Formation of each member from the components, as for a pure phase of it.
+    pub members: Vec<Row>,
+    /// ln of the saturation ratio at which the phase is held; ln of the total pressure of a gas.
+    pub ln_target: f64,
+}
+
 /// An equilibrium problem of `n_components` components.
 #[derive(Debug, Clone, PartialEq, Default)]
 pub struct Problem {
@@ -78,17 +88,53 @@ pub struct Problem {
     pub reservoirs: Vec<Reservoir>,
     /// Phases that may form.
     pub minerals: Vec<Mineral>,
+    /// Mixtures that may form.
+    pub mixtures: Vec<Mixture>,
     /// Total of each component over species and minerals, mol/kg(water); zero and negative totals are legal. Shape
     /// `(n_components,)`.
     pub totals: Vec<Total>,
 }
 
+/// What stands for the amount of a mixture as a whole: nothing but its own column.
+static WHOLE: Row = Row { stoichiometry: Vec::new(), ln_k: 0.0, charge: 0.0, water: 0.0 };
+
 impl Problem {
-    /// All rows in the order species, reservoirs, minerals: the row order of the tableau.
-    pub(super) fn rows(&self) -> impl Iterator<Item = &Row> {
+    /// All rows of the tableau, each with the mixture that it belongs to: what has an amount of its own (species, members
+    /// of mixtures, mixtures as a whole), then reservoirs, then minerals.
+    pub(super) fn rows(&self) -> impl Iterator<Item = (&Row, Option<usize>)> {
+        let members = self.mixtures.iter().enumerate();
+        let members =
+            members.flat_map(|(p, mixture)| mixture.members.iter().map(move |member| (member, Some(p))));
+        let wholes = (0..self.mixtures.len()).map(|p| (&WHOLE, Some(p)));
         let reservoirs = self.reservoirs.iter().map(|reservoir| &reservoir.row);
         let minerals = self.minerals.iter().map(|mineral| &mineral.row);
-        self.species.iter().chain(reservoirs).chain(minerals)
+        let species = self.species.iter().map(|row| (row, None));
+        species.chain(members).chain(wholes).chain(reservoirs.chain(minerals).map(|row| (row, None)))
+    }
+
+    /// Number of rows with an amount that is an exponential: species, members, mixtures as a whole.
+    pub(super) fn n_amounts(&self) -> usize {
+        self.whole_row(self.mixtures.len())
+    }
+
+    pub(super) fn whole_row(&self, mixture_idx: usize) -> usize {
+        let members: usize = self.mixtures.iter().map(|mixture| mixture.members.len()).sum();
+        self.species.len() + members + mixture_idx
+    }
+
+    /// Rows of the members of a mixture.
+    pub(super) fn member_rows(&self, mixture_idx: usize) -> std::ops::Range<usize> {
+        let before: usize = self.mixtures[..mixture_idx].iter().map(|mixture| mixture.members.len()).sum();
+        let first = self.species.len() + before;
+        first..first + self.mixtures[mixture_idx].members.len()
+    }
+
+    pub(super) fn reservoir_row(&self, reservoir_idx: usize) -> usize {
+        self.n_amounts() + reservoir_idx
+    }
+
+    pub(super) fn mineral_row(&self, mineral_idx: usize) -> usize {
+        self.reservoir_row(self.reservoirs.len()) + mineral_idx
     }
 
     /// Checks that every index is in range and every number finite.
@@ -99,17 +145,20 @@ impl Problem {
         if let Some(idx) = self.totals.iter().position(|total| !total.to_f64().is_finite()) {
             return Err(SolveError::BadInput { input: Input::Totals, idx });
         }
-        let (n_species, n_held) = (self.species.len(), self.species.len() + self.reservoirs.len());
-        let values = self.reservoirs.iter().map(|reservoir| reservoir.ln_value);
-        let targets = self.minerals.iter().map(|mineral| mineral.ln_target);
-        let values = std::iter::repeat_n(0.0, n_species).chain(values).chain(targets);
-        for (row_idx, (row, value)) in self.rows().zip(values).enumerate() {
-            if !self.is_sound(row) || !value.is_finite() {
-                let (input, idx) = match row_idx {
-                    i if i < n_species => (Input::Species, i),
-                    i if i < n_held => (Input::Reservoir, i - n_species),
-                    i => (Input::Mineral, i - n_held),
-                };
+        let is_sound = |row: &Row, value: f64| value.is_finite() && self.is_sound(row);
+        let species = self.species.iter().position(|row| !is_sound(row, 0.0));
+        let reservoir = self.reservoirs.iter().position(|held| !is_sound(&held.row, held.ln_value));
+        let mineral = self.minerals.iter().position(|mineral| !is_sound(&mineral.row, mineral.ln_target));
+        let mixture = self.mixtures.iter().position(|mixture| {
+            mixture.members.is_empty() || mixture.members.iter().any(|row| !is_sound(row, mixture.ln_target))
+        });
+        for (input, idx) in [
+            (Input::Species, species),
+            (Input::Reservoir, reservoir),
+            (Input::Mineral, mineral),
+            (Input::Mixture, mixture),
+        ] {
+            if let Some(idx) = idx {
                 return Err(SolveError::BadInput { input, idx });
             }
         }

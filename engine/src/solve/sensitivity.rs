@@ -23,10 +23,10 @@
 //! solver, traces below the smallest double included. It is factored once; [`Sensitivities::push`] solves for the effect
 //! of parameters on everything, [`Sensitivities::pull`] for the effect of everything on one number.
 
-use super::Converged;
 use super::dense::Lu;
 use super::problem::{Problem, Row};
 use super::system::Column;
+use super::{Converged, Mixed};
 use crate::activity::Model;
 
 /// A number for each thing that is given: changes of them, or derivatives by them.
@@ -44,6 +44,9 @@ pub struct Given {
     pub reservoirs: Vec<f64>,
     /// `ln_target - ln K` of each mineral; without effect where it is absent. Shape `(n_minerals,)`.
     pub minerals: Vec<f64>,
+    /// `ln_target - ln K` of each member of each mixture; without effect where it is absent. Shape `(n_mixtures,)` of
+    /// `(n_members,)`.
+    pub mixtures: Vec<Vec<f64>>,
 }
 
 /// A number for each thing that is found: changes of them, or weights in a sum of them. What is absent changes nothing.
@@ -63,6 +66,8 @@ pub struct Found {
     pub reservoir_amount: Vec<f64>,
     /// Amount of each mineral, mol/kg(water). Shape `(n_minerals,)`.
     pub mineral_amount: Vec<f64>,
+    /// ln of the amount of each member of each mixture. Shape `(n_mixtures,)` of `(n_members,)`.
+    pub mixtures: Vec<Vec<f64>>,
 }
 
 impl Given {
@@ -76,6 +81,7 @@ impl Given {
             totals: vec![0.0; problem.n_components],
             reservoirs: vec![0.0; problem.reservoirs.len()],
             minerals: vec![0.0; problem.minerals.len()],
+            mixtures: by_member(problem),
         }
     }
 }
@@ -92,8 +98,14 @@ impl Found {
             ln_water_activity: 0.0,
             reservoir_amount: vec![0.0; problem.reservoirs.len()],
             mineral_amount: vec![0.0; problem.minerals.len()],
+            mixtures: by_member(problem),
         }
     }
+}
+
+/// A zero for each member of each mixture.
+fn by_member(problem: &Problem) -> Vec<Vec<f64>> {
+    problem.mixtures.iter().map(|mixture| vec![0.0; mixture.members.len()]).collect()
 }
 
 /// What each reservoir delivers, in components, when it delivers what it holds. Shape `(n_reservoirs, n_components)`.
@@ -113,9 +125,12 @@ pub fn own_supplies(problem: &Problem) -> Vec<Vec<f64>> {
 #[derive(Debug, Clone)]
 pub struct Sensitivities {
     columns: Vec<Balance>,
+    /// Everything with an amount: species, members of mixtures, mixtures as a whole.
     species: Vec<Weights>,
     ionic_strength: f64,
     n_species: usize,
+    /// Members of each mixture.
+    n_members: Vec<usize>,
     n_reservoirs: usize,
     n_minerals: usize,
     /// Equations of balances.
@@ -150,10 +165,12 @@ enum Held {
     Mineral(usize),
 }
 
-/// One species that is there.
+/// One row with an amount that is there.
 #[derive(Debug, Clone)]
 struct Weights {
     idx: usize,
+    /// How it counts in the balances: a mixture as a whole negatively.
+    sign: f64,
     ln_c: f64,
     /// Coefficient in each balance.
     t: Vec<f64>,
@@ -189,6 +206,7 @@ impl Sensitivities {
             columns,
             ionic_strength: by_ionic_strength,
             n_species: problem.species.len(),
+            n_members: problem.mixtures.iter().map(|mixture| mixture.members.len()).collect(),
             n_reservoirs: problem.reservoirs.len(),
             n_minerals: problem.minerals.len(),
             lu: Lu::default(),
@@ -205,7 +223,9 @@ impl Sensitivities {
     #[must_use]
     pub fn push(&self, given: &Given) -> Found {
         let held: Vec<f64> = self.columns.iter().map(|column| column.value(given)).collect();
-        let direct: Vec<f64> = self.species.iter().map(|species| species.direct(given, &held)).collect();
+        let own = self.own(given);
+        let direct: Vec<f64> =
+            self.species.iter().map(|species| own[species.idx] + species.held(&held)).collect();
         let mut right = vec![0.0; self.n()];
         for column in &self.columns {
             if let Some(row) = column.position {
@@ -224,19 +244,23 @@ impl Sensitivities {
     fn read(&self, given: &Given, held: &[f64], direct: &[f64], x: &[f64]) -> Found {
         let n = self.n();
         let (ionic_strength, ln_water_activity) = (x[n - 2] * self.ionic_strength, x[n - 1]);
+        let mut ln_c = vec![0.0; self.n_rows()];
+        for (species, direct) in self.species.iter().zip(direct) {
+            ln_c[species.idx] = *direct;
+            self.for_each_slope(species, |column, slope| ln_c[species.idx] += slope * x[column]);
+        }
         let mut found = Found {
             ln_a: vec![0.0; given.totals.len()],
-            ln_c: vec![0.0; self.n_species],
+            ln_c: ln_c[..self.n_species].to_vec(),
             ln_gamma: given.ln_gamma.clone(),
             ionic_strength,
             ln_water_activity,
             reservoir_amount: vec![0.0; self.n_reservoirs],
             mineral_amount: vec![0.0; self.n_minerals],
+            mixtures: self.by_member(&ln_c),
         };
-        for (species, direct) in self.species.iter().zip(direct) {
-            found.ln_c[species.idx] = *direct;
+        for species in self.species.iter().filter(|species| species.idx < self.n_species) {
             found.ln_gamma[species.idx] += species.gamma * ionic_strength;
-            self.for_each_slope(species, |column, slope| found.ln_c[species.idx] += slope * x[column]);
         }
         for (j, column) in self.columns.iter().enumerate() {
             let product = match (column.held, column.position) {
@@ -247,17 +271,17 @@ impl Sensitivities {
                 *ln_a += factor * product;
             }
         }
-        self.read_amounts(given, x, &mut found);
+        self.read_amounts(given, x, &ln_c, &mut found);
         found
     }
 
-    fn read_amounts(&self, given: &Given, x: &[f64], found: &mut Found) {
+    fn read_amounts(&self, given: &Given, x: &[f64], ln_c: &[f64], found: &mut Found) {
         for (j, column) in self.columns.iter().enumerate() {
             let amount = match column.position {
                 Some(own) => x[own] * column.shift.exp(),
                 None => {
                     let dissolved: f64 =
-                        self.species.iter().map(|species| species.moles(j) * found.ln_c[species.idx]).sum();
+                        self.species.iter().map(|species| species.moles(j) * ln_c[species.idx]).sum();
                     let delivered =
                         self.coupled().map(|(own, other)| other.supply[j] * x[own] * other.shift.exp());
                     column.total(&given.totals) + delivered.sum::<f64>() - dissolved
@@ -285,6 +309,8 @@ impl Sensitivities {
         let mut by_x = vec![0.0; n];
         let mut by_held = vec![0.0; self.columns.len()];
         let mut by_ln_c = weight.ln_c.clone();
+        by_ln_c.extend(weight.mixtures.iter().flatten());
+        by_ln_c.resize(self.n_rows(), 0.0);
         let mut by_total = vec![0.0; self.columns.len()];
         by_x[n - 2] = weight.ionic_strength * self.ionic_strength;
         by_x[n - 1] = weight.ln_water_activity;
@@ -312,7 +338,9 @@ impl Sensitivities {
             }
         }
         for species in &self.species {
-            by_x[n - 2] += weight.ln_gamma[species.idx] * species.gamma * self.ionic_strength;
+            if species.idx < self.n_species {
+                by_x[n - 2] += weight.ln_gamma[species.idx] * species.gamma * self.ionic_strength;
+            }
             let own = by_ln_c[species.idx];
             self.for_each_slope(species, |column, slope| by_x[column] += slope * own);
         }
@@ -345,16 +373,20 @@ impl Sensitivities {
             totals: vec![0.0; n_components],
             reservoirs: vec![0.0; self.n_reservoirs],
             minerals: vec![0.0; self.n_minerals],
+            mixtures: vec![],
         };
+        let mut own = vec![0.0; self.n_rows()];
         for species in &self.species {
             let mut direct = by_ln_c[species.idx];
             self.for_each_weight(species, |row, weight| direct -= weight * by_right[row]);
-            given.ln_k[species.idx] = direct;
-            given.ln_gamma[species.idx] = -direct;
+            own[species.idx] = direct;
             for (by_held, t) in by_held.iter_mut().zip(&species.t) {
                 *by_held += t * direct;
             }
         }
+        given.ln_k.copy_from_slice(&own[..self.n_species]);
+        given.ln_gamma = given.ln_k.iter().map(|direct| -direct).collect();
+        given.mixtures = self.by_member(&own.iter().map(|direct| -direct).collect::<Vec<_>>());
         for ((column, by_total), by_held) in self.columns.iter().zip(by_total).zip(by_held) {
             for (total, factor) in given.totals.iter_mut().zip(&column.of_component) {
                 *total += factor * by_total;
@@ -366,6 +398,31 @@ impl Sensitivities {
             }
         }
         given
+    }
+
+    /// Species, members of mixtures, mixtures as a whole.
+    fn n_rows(&self) -> usize {
+        self.n_species + self.n_members.iter().sum::<usize>() + self.n_members.len()
+    }
+
+    /// Change of the constant of each row.
+    fn own(&self, given: &Given) -> Vec<f64> {
+        let species = given.ln_k.iter().zip(&given.ln_gamma).map(|(ln_k, ln_gamma)| ln_k - ln_gamma);
+        let mut own: Vec<f64> =
+            species.chain(given.mixtures.iter().flatten().map(|target| -target)).collect();
+        own.resize(self.n_rows(), 0.0);
+        own
+    }
+
+    /// The part of a number for each row that belongs to the members of mixtures.
+    fn by_member(&self, by_row: &[f64]) -> Vec<Vec<f64>> {
+        let mut rest = &by_row[self.n_species..];
+        let mut take = |n: &usize| {
+            let (members, others) = rest.split_at(*n);
+            rest = others;
+            members.to_vec()
+        };
+        self.n_members.iter().map(&mut take).collect()
     }
 
     /// Unknowns: one a balance that is solved, then ln I and ln a_w.
@@ -424,7 +481,7 @@ impl Sensitivities {
     fn for_each_weight(&self, species: &Weights, mut take: impl FnMut(usize, f64)) {
         for (j, column) in self.columns.iter().enumerate() {
             if let (Some(row), true) = (column.position, species.t[j] != 0.0) {
-                take(row, species.t[j] * (species.ln_c - column.shift).exp());
+                take(row, species.sign * species.t[j] * (species.ln_c - column.shift).exp());
             }
         }
         let (n, c) = (self.n(), species.ln_c.exp());
@@ -452,31 +509,37 @@ impl Balance {
 impl Weights {
     /// What it adds to a balance, per mole of the basis row.
     fn moles(&self, column: usize) -> f64 {
-        if self.t[column] == 0.0 { 0.0 } else { self.t[column] * self.ln_c.exp() }
+        if self.t[column] == 0.0 { 0.0 } else { self.sign * self.t[column] * self.ln_c.exp() }
     }
 
-    /// Change of ln c at given unknowns.
-    fn direct(&self, given: &Given, held: &[f64]) -> f64 {
-        let held: f64 = self.t.iter().zip(held).map(|(t, held)| t * held).sum();
-        given.ln_k[self.idx] - given.ln_gamma[self.idx] + held
+    /// Change of ln c with what is held.
+    fn held(&self, held: &[f64]) -> f64 {
+        self.t.iter().zip(held).map(|(t, held)| t * held).sum()
     }
 }
 
 /// The columns that are not absent, by index and as balances still to be scaled.
 fn balances(problem: &Problem, converged: &Converged, supplies: &[Vec<f64>]) -> (Vec<usize>, Vec<Balance>) {
     let (basis, column) = (&converged.warm.basis, &converged.warm.column);
-    let (n_species, n_reservoirs) = (problem.species.len(), problem.reservoirs.len());
-    let there: Vec<usize> = (0..basis.n).filter(|j| column[*j] != Column::Absent).collect();
+    let (first_reservoir, first_mineral) = (problem.reservoir_row(0), problem.mineral_row(0));
+    // The column of a mixture that is absent is held by nothing but its absence.
+    let is_there = |j: &usize| match column[*j] {
+        Column::Free => true,
+        Column::Held => !basis.is_unit(basis.row_of(*j)),
+        Column::Absent => false,
+    };
+    let there: Vec<usize> = (0..basis.n).filter(is_there).collect();
     let delivers_what_it_holds = own_supplies(problem) == supplies;
-    let waters: Vec<f64> = problem.rows().map(|row| row.water).collect();
-    let of_component = |j: usize| -> Vec<f64> { (0..basis.n).map(|k| basis.total_factor(k, j)).collect() };
+    let waters: Vec<f64> = problem.rows().map(|(row, _)| row.water).collect();
+    let of_component =
+        |j: usize| -> Vec<f64> { (0..problem.n_components).map(|k| basis.total_factor(k, j)).collect() };
     let mut n_solved = 0;
     let mut balances = Vec::with_capacity(there.len());
     for &j in &there {
         let row = basis.row_of(j);
         let held = match column[j] {
-            Column::Held if row < n_species + n_reservoirs => Held::Reservoir(row - n_species),
-            Column::Held => Held::Mineral(row - n_species - n_reservoirs),
+            Column::Held if row < first_mineral => Held::Reservoir(row - first_reservoir),
+            Column::Held => Held::Mineral(row - first_mineral),
             Column::Free | Column::Absent => Held::Not,
         };
         let (solved, supply) = match held {
@@ -495,26 +558,43 @@ fn balances(problem: &Problem, converged: &Converged, supplies: &[Vec<f64>]) -> 
     (there, balances)
 }
 
-/// The species that are there.
+/// ln of the amounts of the members of mixtures, then of the mixtures as a whole.
+fn mixed_ln_amounts(converged: &Converged) -> impl Iterator<Item = f64> {
+    let members = |mixture: &Mixed| -> Vec<f64> {
+        mixture.ln_x.iter().map(|ln_x| ln_x + mixture.amount.ln()).collect()
+    };
+    let wholes = converged.mixtures.iter().map(|mixture| mixture.amount.ln());
+    converged.mixtures.iter().flat_map(members).chain(wholes)
+}
+
+/// The species that are there, and what mixtures that are present consist of.
 fn weights(problem: &Problem, model: &Model, converged: &Converged, columns: &[usize]) -> Vec<Weights> {
     let (basis, column) = (&converged.warm.basis, &converged.warm.column);
     let ionic_strength = converged.ionic_strength;
     let (osmotic, _) = model.d_ln_water_activity(ionic_strength);
-    let waters: Vec<f64> = problem.rows().map(|row| row.water).collect();
-    let there = (0..problem.species.len()).filter(|i| converged.ln_c[*i] != f64::NEG_INFINITY);
+    let waters: Vec<f64> = problem.rows().map(|(row, _)| row.water).collect();
+    let ln_amounts: Vec<f64> = converged.ln_c.iter().copied().chain(mixed_ln_amounts(converged)).collect();
+    let rows: Vec<&Row> = problem.rows().map(|(row, _)| row).collect();
+    let there = (0..problem.n_amounts()).filter(|i| ln_amounts[*i] != f64::NEG_INFINITY);
     let weights = |idx: usize| {
-        let row = &problem.species[idx];
+        let row = rows[idx];
+        let is_solute = idx < problem.species.len();
         let t: Vec<f64> = columns.iter().map(|j| basis.coefficient(idx, *j)).collect();
         let held = columns.iter().zip(&t).filter(|(j, _)| column[**j] == Column::Held);
         let held: f64 = held.map(|(j, t)| t * waters[basis.row_of(*j)]).sum();
         Weights {
             idx,
-            ln_c: converged.ln_c[idx],
+            sign: if idx < problem.whole_row(0) { 1.0 } else { -1.0 },
+            ln_c: ln_amounts[idx],
             t,
             water: row.water - held,
-            gamma: if ionic_strength > 0.0 { model.d_ln_gamma(row.charge, ionic_strength) } else { 0.0 },
-            half_charge_squared: 0.5 * row.charge * row.charge,
-            osmotic,
+            gamma: if is_solute && ionic_strength > 0.0 {
+                model.d_ln_gamma(row.charge, ionic_strength)
+            } else {
+                0.0
+            },
+            half_charge_squared: if is_solute { 0.5 * row.charge * row.charge } else { 0.0 },
+            osmotic: if is_solute { osmotic } else { 0.0 },
         }
     };
     there.map(weights).collect()

@@ -59,6 +59,8 @@ pub enum Input {
     Reservoir,
     /// `Problem::minerals`.
     Mineral,
+    /// `Problem::mixtures`.
+    Mixture,
     /// `Problem::totals`.
     Totals,
 }
@@ -99,6 +101,14 @@ pub enum SolveError {
     Unbounded {
         /// The phase.
         mineral_idx: usize,
+    },
+    /// A mixture stays supersaturated however much of it forms.
+    #[error(
+        "mixture {mixture_idx} would form without end: reservoirs and phases that it does not consume hold all of its components"
+    )]
+    UnboundedMixture {
+        /// The phase.
+        mixture_idx: usize,
     },
     /// A reservoir holds what others already hold.
     #[error("reservoir {reservoir_idx} holds a combination that the reservoirs before it already fix")]
@@ -145,4 +155,18 @@ pub enum SolveError {
     /// Interrupted through [`Settings::stop`].
     #[error("interrupted")]
     Stopped,
+}
+
+impl SolveError {
+    /// Whether it leaves open if there is a solution.
+    pub(super) fn is_open(&self) -> bool {
+        matches!(
+            self,
+            Self::NotConverged { .. }
+                | Self::PhasesNotSettled { .. }
+                | Self::NoIonicStrength { .. }
+                | Self::WaterActivityNotConverged { .. }
+                | Self::Uncertified { .. }
+        )
+    }
 }

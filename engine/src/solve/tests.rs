@@ -402,3 +402,169 @@ fn a_start_from_a_problem_with_other_parts_is_ignored() {
     let warm = solve(&problem, &Model::IDEAL, &Settings::default(), Some(&warm)).unwrap();
     assert_eq!(cold.ln_c, warm.ln_c);
 }
+
+/// Two gases at 1 bar, each with a dissolved form of which `k` is in equilibrium with 1 bar.
+fn two_gases(totals: [f64; 2], k: [f64; 2]) -> Problem {
+    let dissolved = vec![row(&[(0, 1)], 0.0), row(&[(1, 1)], 0.0)];
+    let members = vec![row(&[(0, 1)], -k[0].log10()), row(&[(1, 1)], -k[1].log10())];
+    Problem {
+        n_components: 2,
+        species: dissolved,
+        mixtures: vec![Mixture { members, ln_target: 0.0 }],
+        totals: self::totals(&totals),
+        ..Problem::default()
+    }
+}
+
+/// By hand: x_i = T_i/(N + k_i), so N is the positive root of (N + k1)(N + k2) = T1 (N + k2) + T2 (N + k1).
+#[test]
+fn a_gas_at_fixed_pressure_holds_what_the_quadratic_says() {
+    let (t, k) = ([0.01, 0.002], [3e-2, 6e-4]);
+    let converged = ideal(&two_gases(t, k)).unwrap();
+    let (p, q) = (k[0] + k[1] - t[0] - t[1], k[0] * k[1] - t[0] * k[1] - t[1] * k[0]);
+    let amount = -0.5 * p + (0.25 * p * p - q).sqrt();
+    let gas = &converged.mixtures[0];
+    assert!((gas.amount / amount - 1.0).abs() < 1e-12, "{} {amount}", gas.amount);
+    for i in 0..2 {
+        assert!((gas.ln_x[i].exp() - t[i] / (amount + k[i])).abs() < 1e-13);
+        assert!((converged.ln_c[i].exp() / (k[i] * t[i] / (amount + k[i])) - 1.0).abs() < 1e-12);
+    }
+    assert!(converged.certificate.present_saturation < 1e-12);
+}
+
+/// Below saturation there is no bubble, and its saturation is the sum of the partial pressures.
+#[test]
+fn a_gas_below_its_pressure_is_absent() {
+    let converged = ideal(&two_gases([0.01, 1e-4], [3e-2, 6e-4])).unwrap();
+    assert_eq!(converged.mixtures[0].amount, 0.0);
+    assert!((converged.mixtures[0].ln_saturation.exp() - (0.01 / 3e-2 + 1e-4 / 6e-4)).abs() < 1e-13);
+}
+
+/// From no gas to almost nothing but gas and back, each point from the one before: the amount grows with the total.
+#[test]
+fn a_gas_appears_and_vanishes_along_a_sweep() {
+    let (mut warm, mut before): (Option<Warm>, f64) = (None, 0.0);
+    for point in (0..=200).chain((0..200).rev()) {
+        let problem = two_gases([10_f64.powf(-4.0 + f64::from(point) / 50.0), 1e-4], [3e-2, 6e-4]);
+        let converged = solve(&problem, &Model::IDEAL, &Settings::default(), warm.as_ref()).unwrap();
+        let cold = ideal(&problem).unwrap().mixtures[0].amount;
+        let amount = converged.mixtures[0].amount;
+        assert!((amount - cold).abs() <= 1e-12 * cold, "{amount} {cold}");
+        if point == 0 {
+            assert_eq!(amount, 0.0);
+        }
+        before = before.max(amount);
+        warm = Some(converged.warm);
+    }
+    assert!(before > 0.9);
+}
+
+/// Calcite-magnesite with the pure end-members beside it: the solid solution is always the more stable, since mixing
+/// lowers the activity of each member. Two solid solutions share the calcium where the second is richer in it.
+#[test]
+fn a_solid_solution_replaces_its_end_members() {
+    let mut problem = carbonate(Total::from_ratio(-1.0, 10.0));
+    problem.minerals.truncate(1);
+    problem.n_components = 4;
+    problem.totals.push(Total::from(0.01));
+    problem.species.push(row(&[(3, 1)], 0.0));
+    problem.minerals.push(mineral(&[(3, 1), (1, 1)], 8.0));
+    let without = ideal(&problem).unwrap();
+    assert_eq!(without.mineral_present, [true, true]);
+    let members = problem.minerals.iter().map(|mineral| mineral.row.clone()).collect();
+    problem.mixtures.push(Mixture { members, ln_target: 0.0 });
+    let converged = ideal(&problem).unwrap();
+    assert_eq!(converged.mineral_present, [false, false]);
+    assert!(
+        converged
+            .mineral_ln_saturation
+            .iter()
+            .zip(&converged.mixtures[0].ln_x)
+            .all(|(s, x)| (s - x).abs() < 1e-12)
+    );
+    assert!(converged.mixtures[0].amount > without.mineral_amount.iter().sum::<f64>());
+}
+
+/// A mixture of one member is a pure phase.
+#[test]
+fn a_mixture_of_one_is_a_mineral() {
+    let pure = carbonate(Total::from_ratio(-1.0, 10.0));
+    let mut mixed = pure.clone();
+    let first = mixed.minerals.remove(0);
+    mixed.mixtures.push(Mixture { members: vec![first.row], ln_target: first.ln_target });
+    let (pure, mixed) = (ideal(&pure).unwrap(), ideal(&mixed).unwrap());
+    assert!((pure.mineral_amount[0] / mixed.mixtures[0].amount - 1.0).abs() < 1e-12);
+    assert!(pure.ln_c.iter().zip(&mixed.ln_c).all(|(a, b)| (a - b).abs() < 1e-12));
+}
+
+/// A component that only the members of a mixture contain.
+#[test]
+fn a_mixture_without_which_no_balance_closes_is_present() {
+    let species = vec![row(&[(0, 1)], 0.0)];
+    let mixtures = vec![Mixture { members: vec![row(&[(0, 1)], 1.0), row(&[(1, 1)], 3.0)], ln_target: 0.0 }];
+    let problem =
+        Problem { n_components: 2, species, mixtures, totals: totals(&[0.3, 0.1]), ..Problem::default() };
+    let converged = ideal(&problem).unwrap();
+    let mixture = &converged.mixtures[0];
+    assert!((mixture.amount * mixture.ln_x[1].exp() - 0.1).abs() < 1e-14);
+    assert!((mixture.ln_x[0].exp() - 10.0 * converged.ln_c[0].exp()).abs() < 1e-13);
+}
+
+/// A gas of one member at 1 bar over a component held above it would never stop to grow.
+#[test]
+fn a_gas_without_end_is_recognised() {
+    let mut problem = two_gases([0.0, 0.0], [1e-2, 1e-2]);
+    problem.reservoirs = vec![Reservoir { row: row(&[(0, 1)], 0.0), ln_value: -1.0 }];
+    assert_eq!(ideal(&problem).unwrap_err(), SolveError::UnboundedMixture { mixture_idx: 0 });
+}
+
+/// A gas in a given volume needs nothing of its own: its members are species.
+#[test]
+fn a_gas_of_fixed_volume_is_a_species() {
+    // 1 L of gas over 1 kg of water at 298.15 K: n = p V/(R T), so ln K of the gas counts in mol.
+    let per_bar: f64 = 1e5 * 1e-3 / (8.314462618 * 298.15);
+    let species = vec![row(&[(0, 1)], 0.0), row(&[(0, 1)], (per_bar / 3.4e-2).log10())];
+    let problem = Problem { n_components: 1, species, totals: totals(&[0.01]), ..Problem::default() };
+    let dissolved = ideal(&problem).unwrap().ln_c[0].exp();
+    assert!((dissolved / (0.01 / (1.0 + per_bar / 3.4e-2)) - 1.0).abs() < 1e-13);
+}
+
+/// The redox titration with hydrogen and oxygen as one gas at 1 bar instead of two: its fractions always add up to one
+/// where it is present, and it is present at both ends.
+#[test]
+fn a_redox_titration_meets_one_gas_at_both_ends() {
+    let (h, e, fe) = (0, 1, 2);
+    let species = vec![
+        ion(&[(h, 1)], 0.0, 1.0),
+        ion(&[(h, -1)], -14.0, -1.0),
+        ion(&[(fe, 1)], 0.0, 2.0),
+        ion(&[(fe, 1), (e, -1)], -13.02, 3.0),
+        row(&[(h, 2), (e, 2)], -3.15),
+        row(&[(h, -4), (e, -4)], -86.08),
+    ];
+    let gas = Mixture {
+        members: vec![row(&[(h, 2), (e, 2)], -0.05), row(&[(h, -4), (e, -4)], -83.1)],
+        ln_target: 0.0,
+    };
+    let minerals = vec![mineral(&[(fe, 1), (e, -1), (h, -3)], -17.91)];
+    let mut problem = Problem {
+        n_components: 3,
+        species,
+        minerals,
+        mixtures: vec![gas],
+        totals: totals(&[0.0; 3]),
+        ..Problem::default()
+    };
+    let (mut pe, mut present) = (Vec::new(), Vec::new());
+    for point in 0..=400 {
+        let electrons = Total::from_ratio(f64::from(point) - 200.0, 10_000.0);
+        problem.totals = vec![electrons + Total::from(0.001), electrons, Total::from(1e-3)];
+        let converged = ideal(&problem).unwrap_or_else(|error| panic!("point {point}: {error}"));
+        let gas = &converged.mixtures[0];
+        assert!(gas.amount == 0.0 || gas.ln_saturation.abs() < 1e-12, "point {point}");
+        pe.push(-converged.ln_a[e] / LN_10);
+        present.push(gas.amount > 0.0);
+    }
+    assert!(pe.windows(2).all(|pair| pair[1] <= pair[0] + 1e-9), "pe rises on adding electrons");
+    assert!(present[0] && present[400] && present.contains(&false));
+}

@@ -5,6 +5,7 @@ use std::collections::BTreeMap;
 use super::analyte::Analyte;
 use super::concentration::{self, Amount};
 use crate::chem::{Species, reaction};
+use crate::ledger::Sea;
 use crate::named::{KeyFault, Named, Value};
 use crate::nearest::nearest;
 use crate::quantity::Quantity;
@@ -18,6 +19,8 @@ pub enum Analysis {
     Measured(Box<Measured>),
     /// What an earlier equilibrium left.
     Dissolved(Dissolved),
+    /// Waters mixed, with the share of each in the water's mass.
+    Mixed(Vec<(super::Sample, f64)>),
     /// A row of a survey that could not be read, with the reason.
     Spoilt(String),
 }
@@ -35,7 +38,7 @@ pub struct Dissolved {
 #[derive(Debug, Clone, Default)]
 pub struct Measured {
     /// Amounts by analyte, with the key each was given under.
-    pub amounts: Vec<(Analyte, String, Amount)>,
+    pub amounts: Vec<Given>,
     /// pH, alkalinity, inorganic carbon and CO2, as measured.
     pub evidence: Evidence,
     /// The key whose total absorbs the charge misfit.
@@ -44,9 +47,16 @@ pub struct Measured {
     pub density: Option<f64>,
     /// The temperature at which volumes were measured.
     pub volume_temperature: Option<Temperature>,
-    /// The water's own temperature in kelvin, where an uncertainty of it was stated.
+    /// The water's own temperature in kelvin, unless it is known exactly.
     pub temperature: Option<Quantity>,
+    /// Salinity, pressure and scale of pH of a seawater.
+    pub sea: Option<Sea>,
+    /// The temperature at which pH was measured, where that is not the water's own.
+    pub ph_temperature: Option<Temperature>,
 }
+
+/// An amount with what it is of and the key it was given under.
+pub type Given = (Analyte, String, Amount);
 
 /// What was measured of the acid-base state.
 #[derive(Debug, Clone, Default)]
@@ -94,6 +104,8 @@ pub struct Read {
     pub measured: Measured,
     /// Defaults that were used, in words.
     pub defaults: Vec<String>,
+    /// How what was given was taken, in words.
+    pub notes: Vec<String>,
 }
 
 /// The keys of a sample besides amounts.
@@ -123,9 +135,9 @@ const NOT_YET: [(&str, &str); 8] = [
     ("ORP", "redox equilibria are not computed yet"),
     ("electrode", "redox equilibria are not computed yet"),
     ("couples", "redox equilibria are not computed yet"),
-    ("salinity", "it belongs to `seawater`, which is not there yet"),
+    ("salinity", "it belongs to `seawater(#{ … })`"),
     ("ph_scale", "outside seawater pH is -log10 of the activity of H^+"),
-    ("pH_temperature", "give pH as it is at the sample's temperature"),
+    ("pH_temperature", "give pH as it is at the sample's temperature; `seawater(#{ … })` takes both"),
 ];
 
 /// A bare total above this, mol/kg(water), is taken for a forgotten unit.
@@ -147,7 +159,10 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let volume_temperature =
         named.take("volume_temperature").map(|v| reaction::temperature("volume_temperature", v));
     let mut measured = Measured {
-        evidence: read_evidence(&mut named, setting.pressure)?,
+        evidence: {
+            let co2 = read_co2(&mut named, setting.pressure)?;
+            read_evidence(&mut named, co2)?
+        },
         make_up: named.text("make_up")?,
         density,
         volume_temperature: volume_temperature.transpose()?,
@@ -155,7 +170,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
         ..Measured::default()
     };
     for (key, value) in named.rest() {
-        measured.amounts.push(read_amount(key, value)?);
+        measured.amounts.push(read_amount(key, value, &[])?);
     }
     check_make_up(&measured)?;
     if measured.evidence.dic.is_some()
@@ -163,11 +178,11 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     {
         return Err(KeyFault::new("DIC", "`DIC` and `C` state the same carbon: keep one"));
     }
-    Ok(Read { name, setting, measured, defaults })
+    Ok(Read { name, setting, measured, defaults, notes: vec![] })
 }
 
-/// The setting, and the temperature in kelvin where it is uncertain.
-fn read_setting(
+/// The setting, and the temperature in kelvin where it was measured.
+pub(super) fn read_setting(
     named: &mut Named,
     defaults: &mut Vec<String>,
 ) -> Result<(Setting, Option<Quantity>), KeyFault> {
@@ -175,7 +190,8 @@ fn read_setting(
     let temperature = match named.quantity("temperature", Kind::Temperature)? {
         Some(given) => {
             let kelvin = given.to(&crate::units::Unit::parse("K").expect("a known unit")).ok();
-            uncertain = kelvin.filter(|kelvin| kelvin.sigma().is_some_and(|sigma| sigma > 0.0));
+            // An unstated uncertainty is unknown, not zero; what a sweep chooses is exact.
+            uncertain = kelvin.filter(|kelvin| kelvin.sigma() != Some(0.0));
             reaction::temperature("temperature", Value::Quantity(given))?
         }
         None => {
@@ -211,7 +227,7 @@ pub fn pressure_of(key: &str, quantity: &Quantity) -> Result<Pressure, KeyFault>
     Pressure::try_from(quantity).map_err(|error| KeyFault::new(key, format!("`{key}`: {error}")))
 }
 
-fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
+pub(super) fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
     let Some(quantity) = named.quantity("density", Kind::Density)? else { return Ok(None) };
     let unit = crate::units::Unit::parse("kg/L").expect("a known unit");
     let density = quantity.to(&unit).map_err(|error| KeyFault::new("density", error.to_string()))?.value();
@@ -222,7 +238,8 @@ fn read_density(named: &mut Named) -> Result<Option<f64>, KeyFault> {
     }
 }
 
-fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyFault> {
+/// pH, alkalinity and inorganic carbon, beside the fugacity of CO2 in bar.
+pub(super) fn read_evidence(named: &mut Named, co2: Option<Quantity>) -> Result<Evidence, KeyFault> {
     let ph = match named.take("pH") {
         None => None,
         Some(Value::Text(text)) if text == "electroneutral" => Some(Ph::Electroneutral),
@@ -251,8 +268,7 @@ fn read_evidence(named: &mut Named, pressure: Pressure) -> Result<Evidence, KeyF
     if let Some(dic) = &dic {
         not_negative("DIC", dic)?;
     }
-    let evidence =
-        Evidence { ph, alkalinity, dic, co2: read_co2(named, pressure)?, from: named.texts("from")? };
+    let evidence = Evidence { ph, alkalinity, dic, co2, from: named.texts("from")? };
     check_pair(&evidence)?;
     Ok(evidence)
 }
@@ -342,12 +358,13 @@ fn check_pair(evidence: &Evidence) -> Result<(), KeyFault> {
     Ok(())
 }
 
-fn read_amount(key: String, value: Value) -> Result<(Analyte, String, Amount), KeyFault> {
+/// Reads an amount by its key; `more` are keys beside [`KEYS`] that a misspelt one may be meant as.
+pub(super) fn read_amount(key: String, value: Value, more: &[&'static str]) -> Result<Given, KeyFault> {
     if let Some((_, why)) = NOT_YET.iter().find(|(later, _)| *later == key) {
         return Err(KeyFault::new(key.clone(), format!("`{key}` is not read here: {why}")));
     }
     let analyte = Analyte::parse(&key).map_err(|error| {
-        let message = match nearest(&key, KEYS) {
+        let message = match nearest(&key, KEYS.into_iter().chain(more.iter().copied())) {
             Some(close) if !matches!(error, super::analyte::AnalyteError::Carbonate(_)) => {
                 format!("unknown key `{key}`; did you mean `{close}`?")
             }
@@ -361,6 +378,16 @@ fn read_amount(key: String, value: Value) -> Result<(Analyte, String, Amount), K
         let message = format!("`{key}`: {number} mol/kg? write \"{number} mg/L\"");
         return Err(KeyFault::new(key, message));
     }
+    amount_of(analyte, key, value)
+}
+
+/// Reads an amount of a named analyte under a key of its own.
+pub(super) fn read_amount_of(analyte: &str, key: &str, value: Value) -> Result<Given, KeyFault> {
+    let analyte = Analyte::parse(analyte).map_err(|error| KeyFault::new(key, error.to_string()))?;
+    amount_of(analyte, key.into(), value)
+}
+
+fn amount_of(analyte: Analyte, key: String, value: Value) -> Result<Given, KeyFault> {
     let given = crate::named::quantity(&key, value, Kind::Amount)?;
     let amount = concentration::amount(&analyte, &given);
     let amount = amount.map_err(|message| KeyFault::new(key.clone(), format!("`{key}`: {message}")))?;
@@ -375,8 +402,16 @@ fn not_negative(key: &str, amount: &Amount) -> Result<(), KeyFault> {
     Ok(())
 }
 
-fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
+pub(super) fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {
     let Some(key) = &measured.make_up else { return Ok(()) };
+    if matches!(measured.evidence.ph, Some(Ph::Electroneutral)) {
+        return Err(KeyFault::new(
+            "make_up",
+            format!(
+                "`pH: \"electroneutral\"` and `make_up: \"{key}\"` both make the charges add up: keep one"
+            ),
+        ));
+    }
     if measured.amounts.iter().any(|(_, own, _)| own == key) {
         return Ok(());
     }

@@ -10,6 +10,7 @@
 
 use super::analyte::Analyte;
 use crate::chem::{Species, rational};
+use crate::physics::seawater;
 use crate::quantity::Quantity;
 use crate::units::{Base, Exponent, KgOf, Kind, Unit};
 
@@ -23,19 +24,37 @@ pub struct Solution {
     pub density: f64,
     /// Dissolved mass per litre, kg/L.
     pub dissolved: f64,
+    /// The kilogram that totals are counted per: of water, in seawater of solution.
+    pub basis: KgOf,
 }
 
 impl Solution {
     /// Pure water of the given density, kg/L.
     #[must_use]
     pub fn pure(density: f64) -> Self {
-        Self { density, dissolved: 0.0 }
+        Self { density, dissolved: 0.0, basis: KgOf::Water }
     }
 
     /// A solution with `dissolved` kg of salts a litre, in water of the given density.
     #[must_use]
     pub fn with_salts(water_density: f64, dissolved: f64) -> Self {
-        Self { density: water_density + SALT_TERM * dissolved, dissolved }
+        Self { density: water_density + SALT_TERM * dissolved, dissolved, basis: KgOf::Water }
+    }
+
+    /// Seawater of a density, kg/L, and practical salinity: totals are per kilogram of solution.
+    #[must_use]
+    pub fn seawater(density: f64, salinity: f64) -> Self {
+        let dissolved = density * (1.0 - seawater::water_content(salinity));
+        Self { density, dissolved, basis: KgOf::Solution }
+    }
+
+    /// Kilograms that totals are counted per in a litre.
+    #[must_use]
+    pub fn basis_per_litre(&self) -> f64 {
+        match self.basis {
+            KgOf::Water => self.water_per_litre(),
+            KgOf::Solution => self.density,
+        }
     }
 
     /// Kilograms of water in a litre.
@@ -75,13 +94,14 @@ impl Per {
     const ALL: [(Self, &'static str); 3] =
         [(Self::Litre, "L"), (Self::Water, "kg(water)"), (Self::Solution, "kg(solution)")];
 
-    /// What an amount per this is multiplied by to be per kilogram of water.
+    /// What an amount per this is multiplied by to be per kilogram of the solution's basis.
     #[must_use]
-    pub fn to_water(self, solution: &Solution) -> f64 {
-        match self {
-            Self::Litre => 1.0 / solution.water_per_litre(),
-            Self::Water => 1.0,
-            Self::Solution => 1.0 / solution.water_per_kilogram(),
+    pub fn to_basis(self, solution: &Solution) -> f64 {
+        match (self, solution.basis) {
+            (Self::Litre, _) => 1.0 / solution.basis_per_litre(),
+            (Self::Water, KgOf::Water) | (Self::Solution, KgOf::Solution) => 1.0,
+            (Self::Solution, KgOf::Water) => 1.0 / solution.water_per_kilogram(),
+            (Self::Water, KgOf::Solution) => solution.water_per_kilogram(),
         }
     }
 
@@ -119,6 +139,33 @@ pub fn amount(analyte: &Analyte, given: &Quantity) -> Result<Amount, String> {
     let (moles, per) = in_moles(&plain, grams_per_mole, &analyte.to_string(), Kind::Amount)?;
     let moles = scaled(moles, moles_of_analyte / equivalents_per_mole(analyte, &plain)?)?;
     Ok(Amount { moles, per })
+}
+
+/// Reads an amount of a substance, a reagent, in moles of its formula; a bare `/kg` is per kilogram of water.
+///
+/// # Errors
+///
+/// Returns words for a unit of another kind, an `as` of something it does not hold, or an unknown molar mass.
+pub fn substance(substance: &Species, given: &Quantity) -> Result<Amount, String> {
+    let (grams_per_mole, per_formula) = match given.unit().expressed_as() {
+        None => (substance.molar_mass(), 1.0),
+        Some(text) => {
+            let part = Species::parse(text).map_err(|error| error.to_string())?;
+            let element =
+                part.elements_beside_water().next().filter(|_| part.elements_beside_water().count() == 1);
+            let held =
+                element.map_or_else(|| 0.into(), |element| substance.count(element) / part.count(element));
+            if held == 0.into() {
+                return Err(format!(
+                    "`as {text}` counts nothing of {substance}: name an element it holds, or give moles"
+                ));
+            }
+            (part.molar_mass(), 1.0 / rational::to_f64(held))
+        }
+    };
+    let plain = relabelled(given, given.unit().with_expressed_as(None))?;
+    let (moles, per) = in_moles(&plain, grams_per_mole, &substance.to_string(), Kind::Amount)?;
+    Ok(Amount { moles: scaled(moles, per_formula)?, per })
 }
 
 /// A mole of an ion of charge z has |z| equivalents; 1 where moles or grams were given.
@@ -239,9 +286,9 @@ mod tests {
     #[test]
     fn a_litre_of_salt_water_holds_less_water() {
         // NaCl 1 mol/L at 25 degC: density 1.0365 kg/L gives 1.022 mol/kg(water).
-        let solution = Solution { density: 1.0365, dissolved: 0.058443 };
-        assert_relative_eq!(Per::Litre.to_water(&solution), 1.022, max_relative = 5e-4);
+        let solution = Solution { density: 1.0365, dissolved: 0.058443, basis: KgOf::Water };
+        assert_relative_eq!(Per::Litre.to_basis(&solution), 1.022, max_relative = 5e-4);
         let estimated = Solution::with_salts(0.99705, 0.058443);
-        assert_relative_eq!(Per::Litre.to_water(&estimated), 1.022, max_relative = 2e-3);
+        assert_relative_eq!(Per::Litre.to_basis(&estimated), 1.022, max_relative = 2e-3);
     }
 }

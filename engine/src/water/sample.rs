@@ -4,10 +4,12 @@
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
-use super::analysis::{self, Analysis, Dissolved, Measured, Setting};
+use super::analysis::{self, Analysis, Dissolved, Measured, Ph, Setting};
+use super::marine;
 use super::treatment::Treatment;
-use crate::ledger::{Ledger, LedgerError};
+use crate::ledger::{Ledger, LedgerError, Sea};
 use crate::named::{KeyFault, Value};
+use crate::quantity::Quantity;
 use crate::units::{Pressure, Temperature};
 
 /// A water sample; cheap to clone.
@@ -20,6 +22,8 @@ struct Inner {
     setting: Setting,
     analysis: Analysis,
     treatments: Vec<Treatment>,
+    /// Values of treatments that were stated with an uncertainty, by position of the treatment.
+    stated: BTreeMap<usize, Quantity>,
     ledger: Option<Ledger>,
     /// What a survey says of it in words: date, station.
     labels: BTreeMap<String, String>,
@@ -39,7 +43,9 @@ pub enum SampleError {
     #[error(transparent)]
     Ledger(#[from] LedgerError),
     /// An analysis cannot be edited where there is none.
-    #[error("this water has no analysis to edit, only what an equilibrium left dissolved: treat it instead")]
+    #[error(
+        "this water has no analysis to edit: it is what an equilibrium left dissolved, or a mixture; treat it instead"
+    )]
     NoAnalysis,
     /// A number out of its range.
     #[error("{0}")]
@@ -53,20 +59,38 @@ impl Sample {
     ///
     /// The first fault with its key.
     pub fn read(entries: BTreeMap<String, Value>) -> Result<Self, SampleError> {
+        Self::read_by(entries, analysis::read)
+    }
+
+    /// A seawater of named keys: see [`marine::read`].
+    ///
+    /// # Errors
+    ///
+    /// The first fault with its key.
+    pub fn read_seawater(entries: BTreeMap<String, Value>) -> Result<Self, SampleError> {
+        Self::read_by(entries, marine::read)
+    }
+
+    fn read_by(
+        entries: BTreeMap<String, Value>,
+        reader: fn(BTreeMap<String, Value>) -> Result<analysis::Read, KeyFault>,
+    ) -> Result<Self, SampleError> {
         let mut read = entries.clone();
         read.remove("ledger");
         let labels = take_labels(&mut read)?;
-        let analysis::Read { name, setting, measured, defaults } = analysis::read(read)?;
-        let notes = match defaults.as_slice() {
+        let analysis::Read { name, setting, measured, defaults, notes: mut taken } = reader(read)?;
+        let mut notes = match defaults.as_slice() {
             [] => vec![],
             defaults => vec![format!("not given, so taken: {}", defaults.join(", "))],
         };
+        notes.append(&mut taken);
         let analysis = Analysis::Measured(Box::new(measured));
         Ok(Self(Arc::new(Inner {
             name,
             setting,
             analysis,
             treatments: vec![],
+            stated: BTreeMap::new(),
             ledger: None,
             labels,
             entries,
@@ -82,11 +106,68 @@ impl Sample {
             setting,
             analysis: Analysis::Dissolved(dissolved),
             treatments: vec![],
+            stated: BTreeMap::new(),
             ledger: Some(ledger),
             labels: BTreeMap::new(),
             entries: BTreeMap::new(),
             notes: vec![],
         }))
+    }
+
+    /// Waters mixed by the kilograms of water in each; a share of zero counts for nothing.
+    ///
+    /// The heat of the parts is kept and water's heat capacity taken the same in all, so the temperature is their mean by
+    /// mass. Each part comes as its own analysis and treatments leave it, without its solids and surroundings.
+    ///
+    /// # Errors
+    ///
+    /// [`SampleError::Treatment`] for shares that are negative or add up to nothing, parts at different pressures, and
+    /// parts whose ledgers differ.
+    pub fn mixed(parts: &[(Self, f64)]) -> Result<Self, SampleError> {
+        let refuse = |message: String| Err(SampleError::Treatment(message));
+        if let Some((_, share)) = parts.iter().find(|(_, share)| !(share.is_finite() && *share >= 0.0)) {
+            return refuse(format!("`mix` takes kilograms of each water, zero or more, not {share}"));
+        }
+        let water: f64 = parts.iter().map(|(_, share)| share).sum();
+        let Some((first, _)) = parts.first().filter(|_| water > 0.0) else {
+            return refuse("`mix` takes at least one water, and more than nothing of it".into());
+        };
+        let setting = first.setting_after();
+        if let Some((other, _)) =
+            parts.iter().find(|(part, _)| part.setting_after().pressure != setting.pressure)
+        {
+            return refuse(format!(
+                "`mix`: one water is at {} bar and one at {} bar; bring them to one pressure with `.compress_to`",
+                setting.pressure.bar(),
+                other.setting_after().pressure.bar()
+            ));
+        }
+        let mut ledgers = parts.iter().filter_map(|(part, _)| part.ledger());
+        let ledger = ledgers.next();
+        if let (Some(own), Some(other)) =
+            (ledger, ledgers.find(|other| other.digest() != ledger.map_or_else(String::new, Ledger::digest)))
+        {
+            return refuse(format!(
+                "`mix`: the waters are computed with different ledgers, `{}` and `{}`; give both one with `.with_ledger(book)`",
+                own.name(),
+                other.name()
+            ));
+        }
+        let shares: Vec<(Self, f64)> =
+            parts.iter().map(|(part, share)| (part.clone(), share / water)).collect();
+        let temperature = Temperature::from_kelvin(mean_kelvin(&shares));
+        let temperature = temperature.map_err(|error| SampleError::Treatment(error.to_string()))?;
+        Ok(Self(Arc::new(Inner {
+            name: None,
+            setting: Setting { temperature, water, ..setting },
+            analysis: Analysis::Mixed(shares),
+            treatments: vec![],
+            stated: BTreeMap::new(),
+            ledger: ledger.cloned(),
+            labels: BTreeMap::new(),
+            entries: BTreeMap::new(),
+            notes: vec![],
+        })))
     }
 
     /// A row of a survey that could not be read: it keeps its place, and its equilibrium fails with the reason.
@@ -111,6 +192,20 @@ impl Sample {
         self.0.setting
     }
 
+    /// Temperature and pressure after its treatments; the water that evaporates or is added is counted with the totals.
+    #[must_use]
+    pub fn setting_after(&self) -> Setting {
+        let mut setting = self.0.setting;
+        for treatment in &self.0.treatments {
+            match treatment {
+                Treatment::WarmTo(temperature) => setting.temperature = *temperature,
+                Treatment::CompressTo(pressure) => setting.pressure = *pressure,
+                _ => {}
+            }
+        }
+        setting
+    }
+
     /// What fixes its totals.
     #[must_use]
     pub fn analysis(&self) -> &Analysis {
@@ -122,7 +217,18 @@ impl Sample {
     pub fn measured(&self) -> Option<&Measured> {
         match &self.0.analysis {
             Analysis::Measured(measured) => Some(measured),
-            Analysis::Dissolved(_) | Analysis::Spoilt(_) => None,
+            Analysis::Dissolved(_) | Analysis::Mixed(_) | Analysis::Spoilt(_) => None,
+        }
+    }
+
+    /// The sea it is of: salinity, pressure and scale of pH of a seawater at its analysis.
+    #[must_use]
+    pub fn sea(&self) -> Option<Sea> {
+        match &self.0.analysis {
+            Analysis::Measured(measured) => measured.sea,
+            Analysis::Dissolved(_) => self.0.ledger.as_ref().and_then(Ledger::sea),
+            Analysis::Mixed(parts) => mixed_sea(parts, self.setting().pressure),
+            Analysis::Spoilt(_) => None,
         }
     }
 
@@ -130,6 +236,13 @@ impl Sample {
     #[must_use]
     pub fn treatments(&self) -> &[Treatment] {
         &self.0.treatments
+    }
+
+    /// What the value of treatment `k` was stated as, in the unit the treatment holds it in (a temperature in kelvin), where
+    /// that came with an uncertainty; a value that is merely chosen is exact.
+    #[must_use]
+    pub fn stated_value(&self, k: usize) -> Option<&Quantity> {
+        self.0.stated.get(&k)
     }
 
     /// The ledger that travels with it.
@@ -162,9 +275,7 @@ impl Sample {
     ///
     /// The first fault with its key, or [`SampleError::NoAnalysis`].
     pub fn but(&self, changes: BTreeMap<String, Option<Value>>) -> Result<Self, SampleError> {
-        if self.measured().is_none() {
-            return Err(SampleError::NoAnalysis);
-        }
+        let Some(measured) = self.measured() else { return Err(SampleError::NoAnalysis) };
         let mut entries = self.0.entries.clone();
         for (key, value) in changes {
             match value {
@@ -172,7 +283,10 @@ impl Sample {
                 None => entries.remove(&key),
             };
         }
-        let edited = Self::read(entries)?;
+        let edited = match measured.sea {
+            Some(_) => Self::read_seawater(entries)?,
+            None => Self::read(entries)?,
+        };
         let Inner { name, setting, analysis, entries, notes, labels, .. } = (*edited.0).clone();
         let labels = if labels.is_empty() { self.0.labels.clone() } else { labels };
         Ok(Self(Arc::new(Inner { name, setting, analysis, entries, notes, labels, ..(*self.0).clone() })))
@@ -193,6 +307,71 @@ impl Sample {
         Self(Arc::new(inner))
     }
 
+    /// The same with other treatments.
+    #[must_use]
+    pub(crate) fn with_treatments(&self, treatments: Vec<Treatment>) -> Self {
+        Self(Arc::new(Inner { treatments, ..(*self.0).clone() }))
+    }
+
+    /// The same with every measured quantity replaced, those of waters mixed into it and of its treatments too.
+    pub(crate) fn moved(&self, change: &mut dyn FnMut(&Quantity) -> Quantity) -> Self {
+        let mut inner = (*self.0).clone();
+        let uncertain = match &mut inner.analysis {
+            Analysis::Measured(measured) => {
+                for (.., amount) in &mut measured.amounts {
+                    amount.moles = change(&amount.moles);
+                }
+                let evidence = &mut measured.evidence;
+                for amount in evidence.alkalinity.iter_mut().chain(&mut evidence.dic) {
+                    amount.moles = change(&amount.moles);
+                }
+                if let Some(Ph::Measured(ph)) = &mut evidence.ph {
+                    *ph = change(ph);
+                }
+                if let Some(fugacity) = &mut evidence.co2 {
+                    *fugacity = change(fugacity);
+                }
+                measured.temperature.as_mut()
+            }
+            Analysis::Dissolved(dissolved) => {
+                for (_, total) in &mut dissolved.totals {
+                    *total = change(total);
+                }
+                dissolved.temperature.as_mut()
+            }
+            Analysis::Mixed(parts) => {
+                for (part, _) in parts.iter_mut() {
+                    *part = part.moved(change);
+                }
+                let mean = Temperature::from_kelvin(mean_kelvin(parts));
+                inner.setting.temperature = mean.unwrap_or(inner.setting.temperature);
+                None
+            }
+            Analysis::Spoilt(_) => None,
+        };
+        if let Some(kelvin) = uncertain {
+            *kelvin = change(kelvin);
+            inner.setting.temperature = Temperature::try_from(&*kelvin).unwrap_or(inner.setting.temperature);
+        }
+        for treatment in &mut inner.treatments {
+            match treatment {
+                Treatment::WithSolid { amount, .. } => amount.moles = change(&amount.moles),
+                Treatment::Dose(dose) | Treatment::Remove(dose) => {
+                    dose.amount.moles = change(&dose.amount.moles);
+                }
+                Treatment::AddSolution { sample_volume, solution, .. } => {
+                    *sample_volume = change(sample_volume);
+                    solution.solutes.iter_mut().for_each(|(_, moles)| *moles = change(moles));
+                }
+                Treatment::Adjust(adjust) => {
+                    adjust.targets.iter_mut().for_each(|(_, target)| *target = change(target));
+                }
+                _ => {}
+            }
+        }
+        Self(Arc::new(inner))
+    }
+
     /// The same with one more treatment.
     ///
     /// # Errors
@@ -204,11 +383,40 @@ impl Sample {
         inner.treatments.push(treatment);
         Ok(Self(Arc::new(inner)))
     }
+
+    /// The same with one more treatment, whose value has the uncertainty of `stated`: see [`Sample::stated_value`].
+    ///
+    /// # Errors
+    ///
+    /// As [`Sample::treated`].
+    pub fn treated_to(&self, treatment: Treatment, stated: &Quantity) -> Result<Self, SampleError> {
+        let mut treated = self.treated(treatment)?;
+        if stated.parts().iter().any(|part| part.input.sigma().is_some()) {
+            let inner = Arc::make_mut(&mut treated.0);
+            inner.stated.insert(inner.treatments.len() - 1, stated.clone());
+        }
+        Ok(treated)
+    }
+}
+
+/// Mean temperature of waters by their shares.
+fn mean_kelvin(shares: &[(Sample, f64)]) -> f64 {
+    shares.iter().map(|(part, share)| share * part.setting_after().temperature.kelvin()).sum()
+}
+
+/// The sea of mixed seawaters: salinity is conserved. `None` if one of them is no seawater.
+fn mixed_sea(parts: &[(Sample, f64)], pressure: Pressure) -> Option<Sea> {
+    let seas = parts.iter().map(|(part, share)| Some((part.sea()?, *share)));
+    let seas: Vec<(Sea, f64)> = seas.collect::<Option<_>>()?;
+    let salinity = seas.iter().map(|(sea, share)| sea.salinity * share).sum();
+    let ph_scale = seas.first()?.0.ph_scale;
+    Some(Sea { salinity, pressure, ph_scale })
 }
 
 impl std::fmt::Debug for Inner {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        write!(f, "Sample {:?} {:?}", self.name, self.treatments)
+        let stated: Vec<String> = self.stated.values().map(Quantity::to_string).collect();
+        write!(f, "Sample {:?} {:?} {stated:?}", self.name, self.treatments)
     }
 }
 
@@ -223,6 +431,10 @@ fn check(treatment: &Treatment) -> Result<(), SampleError> {
         {
             refuse(format!("the saturation index of `{solid}` must be a finite number"))
         }
+        Treatment::Concentrate(factor) if !(factor.is_finite() && *factor > 0.0) => refuse(format!(
+            "`concentrate` takes how many times as much a kilogram of water shall hold, above zero, not {factor}; \
+             2 evaporates half the water, 0.5 doubles it"
+        )),
         Treatment::HoldPh { ph, .. } if !(-2.0..=17.0).contains(ph) => {
             refuse(format!("pH {ph} lies outside -2 to 17"))
         }

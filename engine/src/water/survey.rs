@@ -5,6 +5,7 @@ use std::collections::BTreeMap;
 use super::analysis::KEYS;
 use super::analyte::{Analyte, AnalyteError};
 use super::csv_text::{ColumnKind, CsvCell, CsvError, CsvOptions, CsvText, Header};
+use super::marine;
 use super::sample::Sample;
 use crate::named::Value;
 use crate::quantity::{Quantity, QuantityError};
@@ -59,15 +60,22 @@ impl Survey {
     ///
     /// Returns what is wrong with the file or with a header; faults of rows are in the samples.
     pub fn read(bytes: &[u8], options: &CsvOptions) -> Result<Self, SurveyError> {
-        let text = CsvText::read(bytes, options, kind)?;
-        let columns = text.columns.iter().map(Column::of).collect::<Result<Vec<_>, _>>()?;
+        let mut text = CsvText::read(bytes, options, kind)?;
+        // A salinity makes seawaters of the rows, and a depth more than words about them.
+        let is_marine = text.columns.iter().any(|header| header.title == "salinity");
+        if is_marine {
+            text = CsvText::read(bytes, options, marine_kind)?;
+        }
+        let column = |header: &Header| Column::of(header, is_marine);
+        let columns = text.columns.iter().map(column).collect::<Result<Vec<_>, _>>()?;
         let mut faults = Vec::new();
         let samples = text.rows.iter().map(|row| {
             let mut notes: Vec<String> =
                 text.replacements.iter().filter(|r| r.line == row.line).map(ToString::to_string).collect();
             notes.extend(not_measured(&columns, &row.cells));
             let sample = if row.faults.is_empty() {
-                read_row(&columns, &row.cells).map_err(|message| format!("line {}: {message}", row.line))
+                read_row(&columns, &row.cells, is_marine)
+                    .map_err(|message| format!("line {}: {message}", row.line))
             } else {
                 Err(row.faults.iter().map(ToString::to_string).collect::<Vec<_>>().join("; "))
             };
@@ -103,12 +111,12 @@ enum Meaning {
 }
 
 impl Column {
-    fn of(header: &Header) -> Result<Self, SurveyError> {
+    fn of(header: &Header, is_marine: bool) -> Result<Self, SurveyError> {
         let title = header.title.clone();
         let unit = header.unit.as_deref().map(Unit::parse).transpose();
         let unit = unit.map_err(|error| SurveyError::Unit { column: header.to_string(), error })?;
         let analyte = Analyte::parse(&title);
-        let is_key = KEYS.contains(&title.as_str());
+        let is_key = KEYS.contains(&title.as_str()) || (is_marine && marine::KEYS.contains(&title.as_str()));
         if is_key || analyte.is_ok() {
             if let (Some(unit), Some(kind)) = (&unit, kind_of(&title)) {
                 kind.check(unit).map_err(|error| SurveyError::Unit { column: header.to_string(), error })?;
@@ -133,10 +141,21 @@ fn kind(title: &str) -> ColumnKind {
     }
 }
 
+fn marine_kind(title: &str) -> ColumnKind {
+    match title {
+        "ph_scale" => ColumnKind::Texts,
+        title if marine::KEYS.contains(&title) => ColumnKind::Numbers,
+        title => kind(title),
+    }
+}
+
 fn kind_of(key: &str) -> Option<Kind> {
     match key {
-        "temperature" | "volume_temperature" => Some(Kind::Temperature),
-        "pressure" | "fCO2" | "pCO2" => Some(Kind::Pressure),
+        "temperature" | "volume_temperature" | "pH_temperature" => Some(Kind::Temperature),
+        "salinity" => Some(Kind::Salinity),
+        "depth" => Some(Kind::Length),
+        "latitude" | "ph_scale" => None,
+        "air_pressure" | "pressure" | "fCO2" | "pCO2" => Some(Kind::Pressure),
         "density" => Some(Kind::Density),
         "alkalinity" => Some(Kind::Alkalinity),
         "pH" | "xCO2" => Some(Kind::Fraction),
@@ -146,7 +165,7 @@ fn kind_of(key: &str) -> Option<Kind> {
     }
 }
 
-fn read_row(columns: &[Column], cells: &[CsvCell]) -> Result<Sample, String> {
+fn read_row(columns: &[Column], cells: &[CsvCell], is_marine: bool) -> Result<Sample, String> {
     let mut entries = BTreeMap::new();
     for (column, cell) in columns.iter().zip(cells) {
         let Meaning::Key(unit) = &column.meaning else { continue };
@@ -158,7 +177,8 @@ fn read_row(columns: &[Column], cells: &[CsvCell]) -> Result<Sample, String> {
         };
         entries.insert(column.title.clone(), value);
     }
-    Sample::read(entries).map_err(|error| error.to_string())
+    let read = if is_marine { Sample::read_seawater } else { Sample::read };
+    read(entries).map_err(|error| error.to_string())
 }
 
 fn number(value: f64, sigma: Option<f64>, unit: Option<&Unit>, label: &str) -> Result<Value, QuantityError> {
@@ -176,7 +196,8 @@ fn not_measured(columns: &[Column], cells: &[CsvCell]) -> Option<String> {
     let is_empty = |(column, cell): &(&Column, &CsvCell)| {
         **cell == CsvCell::Missing
             && matches!(column.meaning, Meaning::Key(_))
-            && Analyte::parse(&column.title).is_ok()
+            && (Analyte::parse(&column.title).is_ok()
+                || marine::NUTRIENTS.iter().any(|(name, _)| *name == column.title))
     };
     let empty: Vec<&str> =
         columns.iter().zip(cells).filter(is_empty).map(|(column, _)| column.title.as_str()).collect();

@@ -7,10 +7,12 @@ mod report;
 mod run;
 mod seal;
 mod shell;
+mod solve;
 mod verify;
 mod watch;
 
 pub use run::read as read_script;
+use run::read_text;
 
 use std::io::IsTerminal;
 use std::process::ExitCode;
@@ -32,6 +34,7 @@ pub fn dispatch(cli: Cli) -> ExitCode {
         Some(Command::Definitions) => shell::definitions(),
         Some(Command::Completions { shell }) => shell::completions(*shell),
         Some(Command::Manual) => shell::manual(),
+        Some(Command::Solve(solve)) => solve::run(solve, &cli.look),
         None if cli.interactive || std::io::stdin().is_terminal() => interactive::run(&cli.look, &cli.limits),
         None => piped::run(&cli.look, &cli.limits),
     };

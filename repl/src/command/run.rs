@@ -80,8 +80,13 @@ fn differing(sealed: &[Ledger]) -> Option<String> {
 ///
 /// Returns why it cannot be read.
 pub fn read(file: &Path) -> Result<String, Box<Diagnostic>> {
+    read_text("the script", file)
+}
+
+/// The text of a file; `what` it is stands in the message.
+pub fn read_text(what: &str, file: &Path) -> Result<String, Box<Diagnostic>> {
     let failed = |reason: &str| {
-        let message = format!("cannot read the script `{}`: {reason}", file.display());
+        let message = format!("cannot read {what} `{}`: {reason}", file.display());
         Box::new(Diagnostic::new(Kind::Failure, message))
     };
     if file.is_dir() {

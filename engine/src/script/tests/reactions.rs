@@ -39,6 +39,50 @@ fn a_trail_is_told_in_sentences() {
     );
 }
 
+#[derive(Clone, Default)]
+struct Told(std::sync::Arc<std::sync::Mutex<Vec<u8>>>);
+
+impl std::io::Write for Told {
+    fn write(&mut self, bytes: &[u8]) -> std::io::Result<usize> {
+        self.0.lock().expect("one thread").extend(bytes);
+        Ok(bytes.len())
+    }
+    fn flush(&mut self) -> std::io::Result<()> {
+        Ok(())
+    }
+}
+
+#[test]
+fn combine_tells_how_far_routes_lie_apart() {
+    let told = Told::default();
+    let options = Options { messages: Box::new(told.clone()), ..Options::default() };
+    let script = r#"
+        let k1 = reaction("CO2(aq) + H2O <=> HCO3^- + H^+", "-6.35 +/- 0.06");
+        let k2 = reaction("HCO3^- <=> CO3^2- + H^+", "-10.33 +/- 0.08");
+        let both = reaction("CO2(aq) + H2O <=> CO3^2- + 2 H^+", "-16.60 +/- 0.2");
+        let k = combine("CO2(aq) + H2O <=> CO3^2- + 2 H^+", [k1, k2, both]);"#;
+    ScriptEngine::new(options).run("test", script).expect("it runs");
+    let text = String::from_utf8(told.0.lock().expect("one thread").clone()).expect("text");
+    assert!(
+        text.ends_with(
+            "2 independent routes, weighted by least variance; singly they give log K -16.680 to -16.600 at 25 degC, \
+             at most 0.4 standard deviations apart\n"
+        ),
+        "{text}"
+    );
+}
+
+#[test]
+fn coefficients_that_cannot_be_counted_are_refused() {
+    fails(
+        r#"let a = reaction("999999937 HCO3^- <=> 999999937 CO3^2- + 999999937 H^+", -10);
+           a * 999999937.0 + a"#,
+        "its coefficients are too large, or have too many digits, to be counted exactly",
+        &[],
+        "*",
+    );
+}
+
 #[test]
 fn log_k_follows_pressure_by_the_volume_of_reaction() {
     let water = r#"let kw = reaction("H2O <=> H^+ + OH^-", #{ log_k: -14, volume: "-22.3 cm3/mol" });"#;
