@@ -243,8 +243,15 @@ fn float(value: f64) -> String {
     if value.is_nan() { "nan".to_owned() } else { format!("{value:?}") }
 }
 
+/// A text on one line, whatever it holds.
 fn quoted(text: &str) -> String {
-    Value::String(text.to_owned()).to_string().replace('\n', "\\n")
+    let escaped = |c: char| match c {
+        '"' => "\\\"".to_owned(),
+        '\\' => "\\\\".to_owned(),
+        c if c.is_control() => format!("\\u{:04X}", u32::from(c)),
+        c => c.to_string(),
+    };
+    format!("\"{}\"", text.chars().map(escaped).collect::<String>())
 }
 
 /// A ledger's text with each entry on a line of its own.
@@ -324,7 +331,7 @@ mod tests {
     #[test]
     fn what_is_written_is_read_back() {
         let (seal, script) = (seal(), "let a = 1;\n");
-        let whole = script.to_owned() + &seal.text();
+        let whole = format!("{script}{}", seal.text());
         let (found, read) = split(&whole);
         let read = read.unwrap().unwrap();
         assert_eq!((found, &read.program, &read.script, &read.files, &read.seeds), (script, &seal.program, &seal.script, &seal.files, &seal.seeds));

@@ -35,7 +35,7 @@ fn entry(i: usize) -> String {
     match i % 4 {
         0 => format!("let x{i} = {i}; `accepted ${{x{i}}}`"),
         1 => format!("let y{i} = [{i}, \"two words\", 1e-3]; `accepted ${{y{i}[0]}}`"),
-        2 => format!("fn f{i}(a) {{ a + {i} }} `accepted ${{f{i}(0)}}`"),
+        2 => format!("let f{i} = |a| a + {i}; `accepted ${{f{i}.call(0)}}`"),
         _ => format!("let t{i} = `a\nb ${{1 + 1}}\nc`; `accepted {i}`"),
     }
 }

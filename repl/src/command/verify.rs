@@ -176,11 +176,11 @@ fn with_todays(
         let changes = changes(old, &now);
         differ += changes.len();
         notes.push(format!(
-            "the ledger `{}` has changed: edition {} then, {} now; {} differ",
+            "the ledger `{}` has changed: edition {} then, {} now; {}",
             old.name(),
             old.edition().unwrap_or("unknown"),
             now.edition().unwrap_or("unknown"),
-            if changes.len() == 1 { "1 constant".to_owned() } else { format!("{} constants", changes.len()) }
+            if changes.len() == 1 { "1 constant differs".to_owned() } else { format!("{} constants differ", changes.len()) }
         ));
         for (what, ledger) in changes {
             let mut ledgers = seal.ledgers.clone();
