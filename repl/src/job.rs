@@ -98,7 +98,8 @@ impl Job<'_> {
     pub fn gather(&self, script: &Script, files: Files) -> Outcome {
         let shown: Arc<Mutex<Vec<Shown>>> = Arc::default();
         let into = Arc::clone(&shown);
-        let gather: OnShown = Arc::new(move |item| into.lock().unwrap_or_else(PoisonError::into_inner).push(item));
+        let gather: OnShown =
+            Arc::new(move |item| into.lock().unwrap_or_else(PoisonError::into_inner).push(item));
         let mut options = self.options();
         options.shown = Some(gather);
         options.output = Box::new(std::io::sink());
@@ -175,7 +176,6 @@ impl Drop for Watch {
 pub fn complaint(message: impl Into<String>) -> Diagnostic {
     Diagnostic::new(Kind::Failure, message)
 }
-
 
 /// The last resort when a native loop does not listen to the time limit.
 fn end_process_after(limit: Duration, over: &Arc<AtomicBool>) {

@@ -22,7 +22,9 @@ pub fn watch(limit: usize, stop: &Stop, over: &Arc<AtomicBool>) {
             std::thread::sleep(PERIOD);
             let held = held().unwrap_or(0);
             if held > limit + limit / 2 {
-                eprintln!("error: ended: the calculation holds {held} MB, more than `--memory-limit {limit}` allows");
+                eprintln!(
+                    "error: ended: the calculation holds {held} MB, more than `--memory-limit {limit}` allows"
+                );
                 std::process::exit(1);
             }
             if held > limit {

@@ -111,7 +111,9 @@ impl Prompt {
             self.warned = true;
             let reason = error.to_string().to_lowercase();
             let message = format!("this session cannot be kept against a crash: {reason}");
-            self.complain(Diagnostic::new(Kind::Failure, message).help("`:save file.rhai` keeps it now and then"));
+            self.complain(
+                Diagnostic::new(Kind::Failure, message).help("`:save file.rhai` keeps it now and then"),
+            );
         }
     }
 
@@ -189,7 +191,11 @@ impl Prompt {
             "" => (self.session.script(), counted(self.session.len(), "entry", "entries")),
             variable => match self.session.slice(variable) {
                 Ok(slice) => {
-                    let what = format!("{} of {} that give `{variable}`", slice.kept, counted(slice.of, "statement", "statements"));
+                    let what = format!(
+                        "{} of {} that give `{variable}`",
+                        slice.kept,
+                        counted(slice.of, "statement", "statements")
+                    );
                     (slice.text, what)
                 }
                 Err(fail) => return self.complain(without_place(fail)),
@@ -238,7 +244,12 @@ impl Prompt {
             let entered = self.session.len();
             self.enter(entry);
             if self.session.len() == entered {
-                let message = format!("brought back {} of {} entries; the rest is in `{}`", entered - before, entries.len(), path.display());
+                let message = format!(
+                    "brought back {} of {} entries; the rest is in `{}`",
+                    entered - before,
+                    entries.len(),
+                    path.display()
+                );
                 return self.complain(Diagnostic::new(Kind::Failure, message));
             }
         }

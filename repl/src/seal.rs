@@ -17,9 +17,9 @@
 use std::fmt::Write;
 
 use lysocline_engine::ledger::{Ledger, file, save};
+use lysocline_engine::script::Record;
 use lysocline_engine::script::record::Recorded;
 use lysocline_engine::script::sandbox::digest_of;
-use lysocline_engine::script::Record;
 use toml::{Table, Value};
 
 /// The layout written here. A file with a higher number was sealed by a later version.
@@ -107,7 +107,8 @@ fn read(block: &str) -> Result<Seal, SealError> {
     }
     let mut parts = inside.split_inclusive('\n').collect::<Vec<_>>();
     let opening = parts.remove(0);
-    let program = opening.trim_end().strip_prefix(BEGIN).and_then(|rest| rest.strip_suffix(CLOSE)).unwrap_or("?");
+    let program =
+        opening.trim_end().strip_prefix(BEGIN).and_then(|rest| rest.strip_suffix(CLOSE)).unwrap_or("?");
     let mut head = String::new();
     let mut ledgers: Vec<(String, String)> = Vec::new();
     for line in parts {
@@ -121,7 +122,8 @@ fn read(block: &str) -> Result<Seal, SealError> {
     }
     // The layout is asked first: a later one may compute its digest in another way.
     let table: Table = head.parse().map_err(|error: toml::de::Error| unreadable(error.message()))?;
-    let format = table.get("format").and_then(Value::as_integer).ok_or_else(|| unreadable("`format` is missing"))?;
+    let format =
+        table.get("format").and_then(Value::as_integer).ok_or_else(|| unreadable("`format` is missing"))?;
     if format > FORMAT {
         return Err(SealError::Newer { program: program.to_owned(), format });
     }
@@ -147,7 +149,9 @@ fn ledger(name: &str, text: &str) -> Result<Ledger, SealError> {
     })?;
     let sealed = text.lines().find_map(|line| line.strip_prefix("# digest "));
     if sealed.is_some_and(|sealed| sealed != ledger.digest()) {
-        let why = format!("the ledger `{name}` names shipped constants that have changed since, so it cannot be put together again");
+        let why = format!(
+            "the ledger `{name}` names shipped constants that have changed since, so it cannot be put together again"
+        );
         return Err(unreadable(&why));
     }
     Ok(ledger)
@@ -177,7 +181,9 @@ fn pairs(table: &Table) -> Result<Vec<(String, String)>, SealError> {
 fn record(value: &Value) -> Result<Record, SealError> {
     let entry = value.as_table().ok_or_else(|| unreadable("a value is no table"))?;
     let label = text_of(entry, "label")?;
-    let number = |key: &str| entry.get(key).and_then(|value| value.as_float().or(value.as_integer().map(|n| n as f64)));
+    let number = |key: &str| {
+        entry.get(key).and_then(|value| value.as_float().or(value.as_integer().map(|n| n as f64)))
+    };
     let value = match number("value") {
         Some(value) => Recorded::Number {
             value,
@@ -198,7 +204,10 @@ impl Seal {
         if !self.seeds.is_empty() {
             let _ = writeln!(head, "seeds = {:?}", self.seeds);
         }
-        let files = self.files.iter().map(|(path, digest)| format!("path = {}, digest = {}", quoted(path), quoted(digest)));
+        let files = self
+            .files
+            .iter()
+            .map(|(path, digest)| format!("path = {}, digest = {}", quoted(path), quoted(digest)));
         rows(&mut head, "files", files);
         rows(&mut head, "values", self.values.iter().map(row));
         commented(&mut text, &head);
@@ -267,7 +276,11 @@ fn compact(text: &str) -> String {
                 &mut out,
                 key,
                 items.iter().filter_map(Value::as_table).map(|entry| {
-                    entry.iter().map(|(key, value)| format!("{key} = {}", inline(value))).collect::<Vec<_>>().join(", ")
+                    entry
+                        .iter()
+                        .map(|(key, value)| format!("{key} = {}", inline(value)))
+                        .collect::<Vec<_>>()
+                        .join(", ")
                 }),
             ),
             value => {
@@ -334,7 +347,10 @@ mod tests {
         let whole = format!("{script}{}", seal.text());
         let (found, read) = split(&whole);
         let read = read.unwrap().unwrap();
-        assert_eq!((found, &read.program, &read.script, &read.files, &read.seeds), (script, &seal.program, &seal.script, &seal.files, &seal.seeds));
+        assert_eq!(
+            (found, &read.program, &read.script, &read.files, &read.seeds),
+            (script, &seal.program, &seal.script, &seal.files, &seal.seeds)
+        );
         assert_eq!(read.values, seal.values);
         assert_eq!(read.ledgers[0].digest(), seal.ledgers[0].digest());
     }
@@ -346,7 +362,8 @@ mod tests {
         assert_eq!(fault(&text[..text.len() / 2]), SealError::CutOff);
         assert_eq!(fault(&text.replacen("8.1", "8.2", 1)), SealError::Edited);
         assert_eq!(fault(&format!("{text}let b = 2;\n")), SealError::TextBelow);
-        let newer = text.replacen("format = 1", "format = 2", 1).replacen("lysocline 0.1.0", "lysocline 9.0.0", 1);
+        let newer =
+            text.replacen("format = 1", "format = 2", 1).replacen("lysocline 0.1.0", "lysocline 9.0.0", 1);
         assert_eq!(fault(&newer), SealError::Newer { program: "9.0.0".into(), format: 2 });
         assert!(split("print(1);").1.unwrap().is_none());
         // Edited on a system that ends lines otherwise, it still reads.

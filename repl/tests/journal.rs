@@ -50,7 +50,8 @@ fn journals(test: &Test) -> Vec<PathBuf> {
     let mut found = Vec::new();
     let mut folders = vec![test.path().to_owned()];
     while let Some(folder) = folders.pop() {
-        for path in std::fs::read_dir(folder).expect("a folder").map(|entry| entry.expect("an entry").path()) {
+        for path in std::fs::read_dir(folder).expect("a folder").map(|entry| entry.expect("an entry").path())
+        {
             if path.is_dir() {
                 folders.push(path);
             } else if path.parent().is_some_and(|parent| parent.ends_with("sessions")) {
@@ -85,7 +86,12 @@ fn killed_after(test: &Test, wait: Duration) -> usize {
         drop(input);
     });
     let reader = std::thread::spawn(move || {
-        output.lines().map_while(Result::ok).filter_map(|line| accepted(&line)).last().map_or(0, |last| last + 1)
+        output
+            .lines()
+            .map_while(Result::ok)
+            .filter_map(|line| accepted(&line))
+            .last()
+            .map_or(0, |last| last + 1)
     });
     std::thread::sleep(wait);
     child.kill().expect("it can be killed");
@@ -125,7 +131,8 @@ fn a_killed_session_loses_no_accepted_entry() {
         assert!(kept.len() >= count, "accepted {count}, kept {}", kept.len());
         for (i, kept) in kept.iter().enumerate() {
             let written = entry(i);
-            let (before, shown) = written.split_at(written.rfind('`').map_or(0, |end| written[..end].rfind('`').unwrap_or(0)));
+            let (before, shown) =
+                written.split_at(written.rfind('`').map_or(0, |end| written[..end].rfind('`').unwrap_or(0)));
             assert_eq!(kept.trim_end(), format!("{before}print({shown});"), "entry {i}");
         }
         (all, most) = (all + count, most.max(count));
@@ -139,21 +146,27 @@ fn the_next_session_brings_it_back() {
     let mut child = session(&test);
     let mut input = child.stdin.take().expect("a pipe");
     let mut output = BufReader::new(child.stdout.take().expect("a pipe"));
-    writeln!(input, "let a = [1,\n 2];\nfn double(x) {{ 2 * x }}\nlet b = double(a[1]); `accepted 9`").expect("it is read");
+    writeln!(input, "let a = [1,\n 2];\nfn double(x) {{ 2 * x }}\nlet b = double(a[1]); `accepted 9`")
+        .expect("it is read");
     let mut line = String::new();
     while accepted(&line).is_none() {
         line.clear();
         assert!(output.read_line(&mut line).expect("a line") > 0, "the session ended");
     }
     // Another session at the same time has a journal of its own and offers nothing.
-    let said = test.lysocline(&["--interactive"]).write_stdin("let other = 1;\n").output().expect("it starts");
+    let said =
+        test.lysocline(&["--interactive"]).write_stdin("let other = 1;\n").output().expect("it starts");
     let said = String::from_utf8_lossy(&said.stdout).into_owned();
     assert!(!said.contains("broke off"), "{said}");
     child.kill().expect("it can be killed");
     child.wait().expect("it ended");
     assert_eq!(journals(&test).len(), 1);
 
-    let said = test.lysocline(&["--interactive"]).write_stdin(":load\n`b is ${b}`\n:save back.rhai b\n").output().expect("it starts");
+    let said = test
+        .lysocline(&["--interactive"])
+        .write_stdin(":load\n`b is ${b}`\n:save back.rhai b\n")
+        .output()
+        .expect("it starts");
     let said = String::from_utf8_lossy(&said.stdout).into_owned();
     assert!(said.contains("an earlier session broke off: `:load` alone brings its 3 entries back"), "{said}");
     assert!(said.contains("brought back 3 entries") && said.contains("b is 4"), "{said}");

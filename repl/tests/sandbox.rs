@@ -21,7 +21,10 @@ fn refused(test: &Test, script: &str, options: &[&str], message: &str) {
 }
 
 fn test() -> Test {
-    Test::new().file("secret.csv", "a\n1\n").file("secret.rhai", "let key = 1;").file("in/own.csv", "name,pH\na,7\n")
+    Test::new()
+        .file("secret.csv", "a\n1\n")
+        .file("secret.rhai", "let key = 1;")
+        .file("in/own.csv", "name,pH\na,7\n")
 }
 
 #[test]
@@ -82,5 +85,10 @@ fn memory_has_a_limit() {
     let limit = ["--memory-limit", "300", "--time-limit", "50"];
     refused(&test, "let a = [];\nloop { a.push([1, 2, 3, 4]); }", &limit, "memory");
     refused(&test, "let s = \"x\";\nloop { s += s; }", &limit, "");
-    refused(&test, "let a = linspace(0, 1, 1000000);\nlet b = [];\nloop { b.push(a); a[0] = b.len(); }", &limit, "memory");
+    refused(
+        &test,
+        "let a = linspace(0, 1, 1000000);\nlet b = [];\nloop { b.push(a); a[0] = b.len(); }",
+        &limit,
+        "memory",
+    );
 }

@@ -14,6 +14,7 @@ mod composition;
 pub mod elimination;
 pub mod file;
 mod formation;
+pub mod in_force;
 mod influence;
 mod least_squares;
 #[allow(clippy::module_inception)]
@@ -21,7 +22,6 @@ mod ledger;
 mod network;
 mod reconcile;
 pub mod save;
-pub mod in_force;
 pub mod shipped;
 pub mod standard_formation;
 

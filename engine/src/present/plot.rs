@@ -206,7 +206,9 @@ impl Curve {
 
     /// Its points cut where there is no value.
     pub fn pieces(&self) -> impl Iterator<Item = &[Point]> {
-        self.points.split(|point| !(point.x.is_finite() && point.y.is_finite())).filter(|piece| !piece.is_empty())
+        self.points
+            .split(|point| !(point.x.is_finite() && point.y.is_finite()))
+            .filter(|piece| !piece.is_empty())
     }
 }
 
@@ -225,11 +227,12 @@ impl Fields {
         };
         let amounts = self.log_amounts.iter().map(amount).enumerate().filter(|(_, amount)| !amount.is_nan());
         // The first of equals, so that the drawing does not depend on rounding.
-        amounts.fold(None, |best: Option<(usize, f64)>, (k, a)| match best {
-            Some((_, most)) if a <= most => best,
-            _ => Some((k, a)),
-        })
-        .map(|(k, _)| k)
+        amounts
+            .fold(None, |best: Option<(usize, f64)>, (k, a)| match best {
+                Some((_, most)) if a <= most => best,
+                _ => Some((k, a)),
+            })
+            .map(|(k, _)| k)
     }
 
     /// The candidates that are largest somewhere on the grid, in order.
@@ -329,7 +332,10 @@ mod tests {
     fn lake() -> Table {
         Table::new([
             Column::numbers("f(CO2(g)) [uatm]", [100.0, 200.0, 400.0, 800.0, 1600.0]),
-            Column::new("pH", [Cell::uncertain(8.7, 0.02), Cell::missing(), 8.1.into(), 7.8.into(), 7.5.into()]),
+            Column::new(
+                "pH",
+                [Cell::uncertain(8.7, 0.02), Cell::missing(), 8.1.into(), 7.8.into(), 7.5.into()],
+            ),
             Column::numbers("SI(calcite)", [0.9, 0.6, 0.3, 0.0, -0.3]),
             Column::numbers("SI(gypsum)", [-2.0; 5]),
             Column::texts("name", ["a", "b", "c", "d", "e"]),
@@ -356,7 +362,10 @@ mod tests {
             Plot::of_table(&lake(), x, ys, options).unwrap_err().to_string()
         };
         let plain = Options::default();
-        assert_eq!(error("name", &["pH"], &plain), "the column `name` holds texts; a plot is made of numbers");
+        assert_eq!(
+            error("name", &["pH"], &plain),
+            "the column `name` holds texts; a plot is made of numbers"
+        );
         assert!(error("pH", &[], &plain).starts_with("a plot needs at least one column"));
         assert!(error("pH", &["SI(calcit)"], &plain).contains("SI(calcite)"));
         let log = Options { y_scale: Some(Scale::Log), ..plain };
@@ -372,7 +381,10 @@ mod tests {
             y: vec![0.0, 1.0],
             log_amounts: vec![vec![0.0, -2.0, 0.0, -2.0], vec![-2.0, 0.0, -2.0, 0.0]],
         };
-        assert_eq!([0.0, 0.49, 0.51, 1.0].map(|x| fields.largest_at(x, 0.3)), [Some(0), Some(0), Some(1), Some(1)]);
+        assert_eq!(
+            [0.0, 0.49, 0.51, 1.0].map(|x| fields.largest_at(x, 0.3)),
+            [Some(0), Some(0), Some(1), Some(1)]
+        );
         assert_eq!(fields.present(), [0, 1]);
     }
 }

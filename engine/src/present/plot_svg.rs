@@ -23,7 +23,7 @@ const SHORT: f64 = 210.0;
 const FONT: f64 = 15.0;
 const LINE: f64 = 21.0;
 /// Rows and columns a field diagram is sampled at.
-const FINE: usize = 240;
+const FINE: usize = 320;
 
 /// A file of its own, which follows the reader's light or dark setting.
 #[must_use]
@@ -37,9 +37,8 @@ pub fn standalone(plot: &Plot) -> String {
 #[must_use]
 pub fn style_sheet() -> String {
     let coloured = |colours: &[&str; 7]| -> String {
-        let rule = |(i, colour): (usize, &&str)| {
-            format!(".ly-s{i}{{stroke:{colour}}}.ly-f{i}{{fill:{colour}}}")
-        };
+        let rule =
+            |(i, colour): (usize, &&str)| format!(".ly-s{i}{{stroke:{colour}}}.ly-f{i}{{fill:{colour}}}");
         colours.iter().enumerate().map(rule).collect()
     };
     format!(
@@ -152,10 +151,16 @@ impl Drawing {
         for tick in x.ticks(8) {
             let at = across(x.place(tick.value));
             if !is_fields && !tick.text.is_empty() {
-                let _ = writeln!(self.text, "<path class=\"ly-grid\" d=\"M{at:.1} {top:.1}V{bottom:.1}\" stroke=\"#e3e6ea\"/>");
+                let _ = writeln!(
+                    self.text,
+                    "<path class=\"ly-grid\" d=\"M{at:.1} {top:.1}V{bottom:.1}\" stroke=\"#e3e6ea\"/>"
+                );
             }
             let length = if tick.text.is_empty() { 3.0 } else { 6.0 };
-            let _ = writeln!(self.text, "<path class=\"ly-frame\" d=\"M{at:.1} {bottom:.1}v-{length}\" stroke=\"#5d656e\"/>");
+            let _ = writeln!(
+                self.text,
+                "<path class=\"ly-frame\" d=\"M{at:.1} {bottom:.1}v-{length}\" stroke=\"#5d656e\"/>"
+            );
             if is_last {
                 let _ = writeln!(self.text, "{}", words(at, bottom + 20.0, "middle", &tick.text));
             }
@@ -163,10 +168,16 @@ impl Drawing {
         for tick in ticks {
             let at = up(panel.y.place(tick.value));
             if !is_fields && !tick.text.is_empty() {
-                let _ = writeln!(self.text, "<path class=\"ly-grid\" d=\"M{left:.1} {at:.1}H{right:.1}\" stroke=\"#e3e6ea\"/>");
+                let _ = writeln!(
+                    self.text,
+                    "<path class=\"ly-grid\" d=\"M{left:.1} {at:.1}H{right:.1}\" stroke=\"#e3e6ea\"/>"
+                );
             }
             let length = if tick.text.is_empty() { 3.0 } else { 6.0 };
-            let _ = writeln!(self.text, "<path class=\"ly-frame\" d=\"M{left:.1} {at:.1}h{length}\" stroke=\"#5d656e\"/>");
+            let _ = writeln!(
+                self.text,
+                "<path class=\"ly-frame\" d=\"M{left:.1} {at:.1}h{length}\" stroke=\"#5d656e\"/>"
+            );
             let _ = writeln!(self.text, "{}", words(left - 8.0, at + 5.0, "end", &tick.text));
         }
         let (at, middle) = (left - 8.0 - self.widest(ticks) - 14.0, top + height / 2.0);
@@ -176,9 +187,22 @@ impl Drawing {
             "<text class=\"ly-ink\" transform=\"translate({at:.1} {middle:.1}) rotate(-90)\" text-anchor=\"middle\" fill=\"#1b1f24\">{label}</text>"
         );
         if let Marks::Curves(curves) = &panel.marks {
+            // A drawing within the drawing cuts off what lies beyond the axes; markers on them stay whole.
+            let (x0, y0, w, h) = (left - 5.0, top - 5.0, width + 10.0, height + 10.0);
+            let _ = writeln!(
+                self.text,
+                "<svg x=\"{x0:.1}\" y=\"{y0:.1}\" width=\"{w:.1}\" height=\"{h:.1}\" viewBox=\"{x0:.1} {y0:.1} {w:.1} {h:.1}\" overflow=\"hidden\">"
+            );
             for (i, curve) in curves.iter().enumerate() {
-                self.curve(i, curve, &panel.y, |point| (across(x.place(point.0)), up(panel.y.place(point.1))), (top, bottom));
+                self.curve(
+                    i,
+                    curve,
+                    &panel.y,
+                    |point| (across(x.place(point.0)), up(panel.y.place(point.1))),
+                    (top, bottom),
+                );
             }
+            self.text.push_str("</svg>\n");
         }
         let _ = writeln!(
             self.text,
@@ -191,12 +215,22 @@ impl Drawing {
         ticks.iter().map(|tick| text_width(&tick.text)).fold(0.0, f64::max)
     }
 
-    fn curve(&mut self, i: usize, curve: &Curve, y: &Axis, to: impl Fn((f64, f64)) -> (f64, f64), ends: (f64, f64)) {
+    fn curve(
+        &mut self,
+        i: usize,
+        curve: &Curve,
+        y: &Axis,
+        to: impl Fn((f64, f64)) -> (f64, f64),
+        ends: (f64, f64),
+    ) {
         let kept = |at: f64| at.clamp(ends.0, ends.1);
         for piece in curve.pieces() {
             // Numbers a logarithmic axis cannot show are left out.
-            let places: Vec<(f64, f64)> =
-                piece.iter().map(|p| to((p.x, p.y))).filter(|(x, y)| x.is_finite() && y.is_finite()).collect();
+            let places: Vec<(f64, f64)> = piece
+                .iter()
+                .map(|p| to((p.x, p.y)))
+                .filter(|(x, y)| x.is_finite() && y.is_finite())
+                .collect();
             if curve.has_band() && curve.is_line && piece.len() > 1 {
                 let edge = |sign: f64, value: f64, sigma: f64| {
                     let moved = value + sign * sigma;
@@ -296,6 +330,8 @@ fn field_shapes(fields: &Fields, area: &Area) -> String {
         (0..FINE * FINE).map(|k| fields.largest_at(place(k % FINE), place(k / FINE))).collect();
     let at = |i: usize, j: usize| grid[j * FINE + i];
     let (dx, dy) = (area.width / FINE as f64, area.height / FINE as f64);
+    // Rows overlap a little, or the ground shows between them.
+    let tall = dy + 0.6;
     let x = |i: usize| area.left + i as f64 * dx;
     let y = |j: usize| area.top + area.height - j as f64 * dy;
     let present = fields.present();
@@ -304,7 +340,14 @@ fn field_shapes(fields: &Fields, area: &Area) -> String {
         let mut path = String::new();
         for j in 0..FINE {
             for (start, end) in runs(|i| at(i, j) == Some(*field)) {
-                let _ = write!(path, "M{:.1} {:.1}h{:.1}v-{dy:.2}h-{:.1}z", x(start), y(j), (end - start) as f64 * dx, (end - start) as f64 * dx);
+                let _ = write!(
+                    path,
+                    "M{:.1} {:.1}h{:.1}v-{tall:.2}h-{:.1}z",
+                    x(start),
+                    y(j),
+                    (end - start) as f64 * dx,
+                    (end - start) as f64 * dx
+                );
             }
         }
         let n = order % COLOURS.len();
@@ -326,7 +369,10 @@ fn field_shapes(fields: &Fields, area: &Area) -> String {
             }
         }
     }
-    let _ = writeln!(text, "<path class=\"ly-edge\" d=\"{edges}\" stroke=\"#1b1f24\" stroke-width=\"1.4\" stroke-linecap=\"square\" fill=\"none\"/>");
+    let _ = writeln!(
+        text,
+        "<path class=\"ly-edge\" d=\"{edges}\" stroke=\"#1b1f24\" stroke-width=\"1.4\" stroke-linecap=\"square\" fill=\"none\"/>"
+    );
     for field in present {
         if let Some((i, j)) = middle(&grid, field) {
             let name = escaped(&notation::shown(&fields.names[field], Style::default()));
@@ -378,7 +424,9 @@ fn middle(grid: &[Option<usize>], field: usize) -> Option<(usize, usize)> {
 }
 
 fn words(x: f64, y: f64, anchor: &str, escaped: &str) -> String {
-    format!("<text class=\"ly-ink\" x=\"{x:.1}\" y=\"{y:.1}\" text-anchor=\"{anchor}\" fill=\"#1b1f24\">{escaped}</text>")
+    format!(
+        "<text class=\"ly-ink\" x=\"{x:.1}\" y=\"{y:.1}\" text-anchor=\"{anchor}\" fill=\"#1b1f24\">{escaped}</text>"
+    )
 }
 
 fn shown_label(axis: &Axis) -> String {
@@ -426,7 +474,11 @@ mod tests {
         assert!(text.contains("<title>a &lt; b &amp; &quot;c&quot;</title>"), "{text}");
         assert!(text.contains("m(HCO₃⁻)") && text.contains("mmol/kg") && text.contains("aria-label="));
         assert!(text.contains("prefers-color-scheme:dark"));
-        assert_eq!(text.matches("stroke-dasharray=\"none\"").count(), 2, "a line and its entry in the legend");
+        assert_eq!(
+            text.matches("stroke-dasharray=\"none\"").count(),
+            2,
+            "a line and its entry in the legend"
+        );
         assert!(!text.contains("NaN") && !text.contains("inf"));
     }
 

@@ -242,7 +242,12 @@ fn curves(
         points: across.iter().zip(values).map(|(x, y)| Point { x: *x, y: *y, sigma: None }).collect(),
         is_line: true,
     };
-    let y = Ruler { label: "log10 molality [mol/kg]".to_owned(), scale: Scale::Linear, from: top - DECADES, to: top + 0.3 };
+    let y = Ruler {
+        label: "log10 molality [mol/kg]".to_owned(),
+        scale: Scale::Linear,
+        from: top - DECADES,
+        to: top + 0.3,
+    };
     Plot {
         title: Some(format!("species of {} against pH", diagram.element)),
         x: diagram.across.ruler(),

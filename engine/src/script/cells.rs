@@ -4,12 +4,12 @@ use std::sync::Arc;
 
 use rhai::{AST, ASTNode, Dynamic, Scope, Stmt};
 
+use super::ScriptEngine;
 use super::diagnostic::Diagnostic;
 use super::engine::{bug, quietly};
 use super::host::Shown;
 use super::input::ends_with_semicolon;
 use super::modules::Source;
-use super::ScriptEngine;
 
 impl ScriptEngine {
     /// As [`ScriptEngine::evaluate`], announcing each statement before it runs. Must be called on a deep stack.

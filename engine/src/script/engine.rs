@@ -152,8 +152,13 @@ impl ScriptEngine {
     /// Every file read so far, modules among them, in alphabetical order.
     #[must_use]
     pub fn files_read(&self) -> Vec<std::path::PathBuf> {
-        let read: std::collections::BTreeSet<_> =
-            self.host.files().files_read().map(std::path::Path::to_owned).chain(self.modules.paths()).collect();
+        let read: std::collections::BTreeSet<_> = self
+            .host
+            .files()
+            .files_read()
+            .map(std::path::Path::to_owned)
+            .chain(self.modules.paths())
+            .collect();
         read.into_iter().collect()
     }
 
@@ -164,9 +169,11 @@ impl ScriptEngine {
         let Ok(ast) = self.engine.compile(clean(text)) else { return seeds };
         ast.walk(&mut |path| {
             if let Some(rhai::ASTNode::Expr(rhai::Expr::Map(map, _))) = path.last() {
-                seeds.extend(map.0.iter().filter(|(key, _)| key.name == "seed").filter_map(|(_, value)| match value {
-                    rhai::Expr::IntegerConstant(seed, _) => Some(*seed),
-                    _ => None,
+                seeds.extend(map.0.iter().filter(|(key, _)| key.name == "seed").filter_map(|(_, value)| {
+                    match value {
+                        rhai::Expr::IntegerConstant(seed, _) => Some(*seed),
+                        _ => None,
+                    }
                 }));
             }
             true
@@ -265,7 +272,12 @@ impl ScriptEngine {
         self.modules.begin();
     }
 
-    pub(super) fn translator<'a>(&'a self, main: &'a str, source: Arc<Source>, scope: &Scope) -> Translator<'a> {
+    pub(super) fn translator<'a>(
+        &'a self,
+        main: &'a str,
+        source: Arc<Source>,
+        scope: &Scope,
+    ) -> Translator<'a> {
         let mut entries = self.entries();
         let own = source.ast.iter_functions().filter(|function| !function.name.starts_with("anon$"));
         entries.extend(own.map(|function| Entry {

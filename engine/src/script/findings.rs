@@ -15,8 +15,20 @@ use super::modules::Source;
 use super::{ScriptEngine, words};
 
 /// Names the interpreter knows though nobody registers them.
-const BUILT_IN: [&str; 12] =
-    ["curry", "call", "Fn", "type_of", "is_def_var", "is_def_fn", "is_shared", "this", "args", "global", "print", "debug"];
+const BUILT_IN: [&str; 12] = [
+    "curry",
+    "call",
+    "Fn",
+    "type_of",
+    "is_def_var",
+    "is_def_fn",
+    "is_shared",
+    "this",
+    "args",
+    "global",
+    "print",
+    "debug",
+];
 
 impl ScriptEngine {
     /// Everything that can be found wrong with a script without running it, in order of place.
@@ -60,8 +72,9 @@ impl ScriptEngine {
         let own = super::check::own_functions(ast);
         let mut calls = Vec::new();
         ast.walk(&mut |path| {
-            if let Some(ASTNode::Expr(Expr::FnCall(call, position)) | ASTNode::Stmt(Stmt::FnCall(call, position))) =
-                path.last()
+            if let Some(
+                ASTNode::Expr(Expr::FnCall(call, position)) | ASTNode::Stmt(Stmt::FnCall(call, position)),
+            ) = path.last()
                 && self.vocabulary.pure.contains(&call.name)
                 && !own.contains(call.name.as_str())
                 && call.args.iter().all(is_written_out)
@@ -130,15 +143,23 @@ fn unknown_names(ast: &AST, functions: &BTreeSet<String>) -> Vec<(Fail, Position
             Some(
                 ASTNode::Expr(Expr::FnCall(call, position) | Expr::MethodCall(call, position))
                 | ASTNode::Stmt(Stmt::FnCall(call, position)),
-            ) if call.namespace.is_empty() && call.op_token.is_none() && is_a_name(&call.name) && !known(&call.name) => {
-                let what = if matches!(path.last(), Some(ASTNode::Expr(Expr::MethodCall(..)))) { "method" } else { "function" };
+            ) if call.namespace.is_empty()
+                && call.op_token.is_none()
+                && is_a_name(&call.name)
+                && !known(&call.name) =>
+            {
+                let what = if matches!(path.last(), Some(ASTNode::Expr(Expr::MethodCall(..)))) {
+                    "method"
+                } else {
+                    "function"
+                };
                 found.push((unknown(what, &call.name), *position));
             }
-            Some(ASTNode::Expr(Expr::Property(names, position))) if !functions.contains(names.2.as_str()) => {
-                // A member of a map is named by the script.
-                if !names_a_key(ast, &names.2) {
-                    found.push((unknown("property", &names.2), *position));
-                }
+            // A member of a map is named by the script.
+            Some(ASTNode::Expr(Expr::Property(names, position)))
+                if !functions.contains(names.2.as_str()) && !names_a_key(ast, &names.2) =>
+            {
+                found.push((unknown("property", &names.2), *position));
             }
             _ => {}
         }
@@ -159,7 +180,9 @@ fn names_a_key(ast: &AST, key: &str) -> bool {
     let mut found = false;
     ast.walk(&mut |path| {
         match path.last() {
-            Some(ASTNode::Expr(Expr::Map(map, _))) => found |= map.0.iter().any(|(ident, _)| ident.name == key),
+            Some(ASTNode::Expr(Expr::Map(map, _))) => {
+                found |= map.0.iter().any(|(ident, _)| ident.name == key)
+            }
             Some(ASTNode::Stmt(Stmt::Assignment(parts))) => found |= ends_in(&parts.1.lhs, key),
             _ => {}
         }

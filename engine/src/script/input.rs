@@ -114,8 +114,14 @@ enum Open {
 
 impl Scan {
     fn of(text: &str) -> Self {
-        let mut scan =
-            Self { last: None, open: Open::Code, brackets: 0, statement_start: 0, code_end: 0, cuts: Vec::new() };
+        let mut scan = Self {
+            last: None,
+            open: Open::Code,
+            brackets: 0,
+            statement_start: 0,
+            code_end: 0,
+            cuts: Vec::new(),
+        };
         let mut characters = text.char_indices().peekable();
         while let Some((index, c)) = characters.next() {
             let next = characters.peek().map(|(_, next)| *next);

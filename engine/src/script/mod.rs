@@ -60,11 +60,11 @@ pub use diagnostic::{Diagnostic, Fail, ScriptResult, fail};
 pub use engine::{Options, ScriptEngine};
 pub use host::{Host, OnShown, Progress, Shown};
 pub use record::Record;
-pub use same::same;
-pub use sources::Sources;
 pub use rhai::Dynamic;
+pub use same::same;
 pub use session::{SESSION, Session};
 pub use show::{Shows, Style};
+pub use sources::Sources;
 pub use stop::{Halt, Stop};
 pub use vocabulary::Vocabulary;
 

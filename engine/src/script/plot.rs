@@ -59,8 +59,9 @@ fn options(map: &Map) -> Result<Options, Fail> {
     let mut given = named(map)?;
     let mut scale = |key: &str| -> Result<Option<Scale>, Fail> {
         let Some(word) = given.text(key).map_err(Fail::from)? else { return Ok(None) };
-        let scale = Scale::parse(&word)
-            .ok_or_else(|| fail(format!("unknown scale `{word}`")).help("write \"linear\" or \"log\"").key(key));
+        let scale = Scale::parse(&word).ok_or_else(|| {
+            fail(format!("unknown scale `{word}`")).help("write \"linear\" or \"log\"").key(key)
+        });
         scale.map(Some)
     };
     let (x_scale, y_scale) = (scale("x_scale")?, scale("y_scale")?);
@@ -94,15 +95,17 @@ fn spans(map: Map, diagram: &mut Diagram) -> Result<(), Fail> {
         diagram.axes().map(|axis| axis.title.clone()).chain(["points".to_owned()]).collect();
     for (key, value) in &map {
         if key.as_str() == "points" {
-            let points = value.as_int().ok().and_then(|n| usize::try_from(n).ok()).filter(|n| (2..=400).contains(n));
-            diagram.points = points
-                .ok_or_else(|| fail("`points` is a whole number from 2 to 400").key("points"))?;
+            let points =
+                value.as_int().ok().and_then(|n| usize::try_from(n).ok()).filter(|n| (2..=400).contains(n));
+            diagram.points =
+                points.ok_or_else(|| fail("`points` is a whole number from 2 to 400").key("points"))?;
             continue;
         }
-        let near = nearest(key, known.iter().map(String::as_str)).map(|near| format!("did you mean `{near}`?"));
-        let span = diagram.axis_mut(key).ok_or_else(|| {
-            fail(format!("unknown key `{key}`")).maybe_help(near).key(key.to_string())
-        })?;
+        let near =
+            nearest(key, known.iter().map(String::as_str)).map(|near| format!("did you mean `{near}`?"));
+        let span = diagram
+            .axis_mut(key)
+            .ok_or_else(|| fail(format!("unknown key `{key}`")).maybe_help(near).key(key.to_string()))?;
         let ends = value.read_lock::<Array>().map(|ends| ends.iter().filter_map(number).collect::<Vec<_>>());
         let wrong = || fail(format!("`{key}` takes its two ends, such as `[4, 10]`")).key(key.to_string());
         match ends.as_deref() {
@@ -129,9 +132,8 @@ fn drawn(context: &NativeCallContext, sample: &Sample, diagram: &Diagram) -> Scr
 
 fn span(title: &str) -> Result<Span, Fail> {
     Span::usual(title).ok_or_else(|| {
-        fail(format!("`{title}` has no usual range")).help(format!(
-            "give its ends: `predominance(sample, y, x, \"Fe\", #{{ \"{title}\": [0, 1] }})`"
-        ))
+        fail(format!("`{title}` has no usual range"))
+            .help(format!("give its ends: `predominance(sample, y, x, \"Fe\", #{{ \"{title}\": [0, 1] }})`"))
     })
 }
 
@@ -280,6 +282,8 @@ fn bytes_for(file: &str, plot: &Plot) -> Result<Vec<u8>, Fail> {
     let ending = std::path::Path::new(file).extension().map(|ending| ending.to_string_lossy().to_lowercase());
     match ending.as_deref() {
         Some("svg") => Ok(plot_svg::standalone(plot).into_bytes()),
-        _ => Err(fail(format!("cannot tell the kind of `{file}`")).help("end the name in `.svg`").argument(0)),
+        _ => {
+            Err(fail(format!("cannot tell the kind of `{file}`")).help("end the name in `.svg`").argument(0))
+        }
     }
 }

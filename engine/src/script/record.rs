@@ -103,7 +103,11 @@ impl Records {
 fn recorded(value: &Dynamic) -> Result<Recorded, Fail> {
     let text = |text: String| Ok(Recorded::Text(text));
     if let Some(quantity) = value.read_lock::<Quantity>() {
-        let unit = if *quantity.unit() == Unit::one() { String::new() } else { quantity.unit().display(Style::Ascii) };
+        let unit = if *quantity.unit() == Unit::one() {
+            String::new()
+        } else {
+            quantity.unit().display(Style::Ascii)
+        };
         return Ok(Recorded::Number { value: quantity.value(), sigma: quantity.sigma(), unit });
     }
     if let Some(words) = value.read_lock::<rhai::ImmutableString>() {

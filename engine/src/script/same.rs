@@ -44,7 +44,11 @@ pub fn same(engine: &ScriptEngine, a: &Dynamic, b: &Dynamic) -> bool {
 
 /// The native types, each by what it holds.
 fn native(a: &Dynamic, b: &Dynamic) -> Option<bool> {
-    fn by<T: Any + Clone + Send + Sync>(a: &Dynamic, b: &Dynamic, same: impl Fn(&T, &T) -> bool) -> Option<bool> {
+    fn by<T: Any + Clone + Send + Sync>(
+        a: &Dynamic,
+        b: &Dynamic,
+        same: impl Fn(&T, &T) -> bool,
+    ) -> Option<bool> {
         Some(same(&*a.read_lock::<T>()?, &*b.read_lock::<T>()?))
     }
     by(a, b, same_quantity)
@@ -64,7 +68,8 @@ fn bits(table: &Table) -> String {
 }
 
 fn same_quantity(a: &Quantity, b: &Quantity) -> bool {
-    let text = |quantity: &Quantity| format!("{:?} {:?} {:?}", quantity.value(), quantity.unit(), quantity.sigma());
+    let text =
+        |quantity: &Quantity| format!("{:?} {:?} {:?}", quantity.value(), quantity.unit(), quantity.sigma());
     text(a) == text(b)
 }
 
@@ -96,7 +101,8 @@ fn same_run(a: &Run, b: &Run) -> bool {
 
 /// What was measured and done, without the identities of its inputs, which are new in every run.
 fn sample_text(sample: &Sample) -> String {
-    let entries: Vec<String> = sample.entries().iter().map(|(key, value)| format!("{key}: {value:?}")).collect();
+    let entries: Vec<String> =
+        sample.entries().iter().map(|(key, value)| format!("{key}: {value:?}")).collect();
     let entries: Vec<String> = entries.iter().map(|text| without_identities(text)).collect();
     let ledger = sample.ledger().map(Ledger::digest);
     format!("{:?} {entries:?} {:?} {ledger:?}", sample.name(), sample.treatments())

@@ -27,11 +27,50 @@ const WRITE_FILES: [&str; 1] = ["save"];
 const READ_FILES: [&str; 2] = ["read_", "load_"];
 /// Members of texts, arrays, maps and numbers that leave them as they are.
 const ONLY_READ: [&str; 44] = [
-    "len", "is_empty", "contains", "index_of", "keys", "values", "map", "filter", "reduce", "reduce_rev", "some",
-    "all", "find", "find_map", "to_string", "to_debug", "to_float", "to_int", "to_upper", "to_lower",
-    "sub_string", "split", "starts_with", "ends_with", "chars", "floor", "ceiling", "round", "int", "fraction",
-    "is_nan", "is_finite", "sin", "cos", "tan", "type_of", "is_def_var", "is_def_fn", "parse_float", "parse_int", "range",
-    "is_shared", "extract", "zip",
+    "len",
+    "is_empty",
+    "contains",
+    "index_of",
+    "keys",
+    "values",
+    "map",
+    "filter",
+    "reduce",
+    "reduce_rev",
+    "some",
+    "all",
+    "find",
+    "find_map",
+    "to_string",
+    "to_debug",
+    "to_float",
+    "to_int",
+    "to_upper",
+    "to_lower",
+    "sub_string",
+    "split",
+    "starts_with",
+    "ends_with",
+    "chars",
+    "floor",
+    "ceiling",
+    "round",
+    "int",
+    "fraction",
+    "is_nan",
+    "is_finite",
+    "sin",
+    "cos",
+    "tan",
+    "type_of",
+    "is_def_var",
+    "is_def_fn",
+    "parse_float",
+    "parse_int",
+    "range",
+    "is_shared",
+    "extract",
+    "zip",
 ];
 
 /// The smallest script for one variable.
@@ -58,10 +97,13 @@ impl Session {
         let variables = self.variables();
         let Some((_, value)) = variables.iter().rev().find(|(own, _)| own == name) else {
             let names = variables.iter().map(|(own, _)| own.as_str());
-            return Err(fail(format!("there is no variable `{name}`")).maybe_help(words::did_you_mean(name, names)));
+            return Err(
+                fail(format!("there is no variable `{name}`")).maybe_help(words::did_you_mean(name, names))
+            );
         };
         let units = self.units();
-        let plain = variables.iter().filter(|(_, value)| !holds_a_closure(value)).map(|(own, _)| own.as_str());
+        let plain =
+            variables.iter().filter(|(_, value)| !holds_a_closure(value)).map(|(own, _)| own.as_str());
         let needed = needed(&units, name, &plain.collect());
         let chosen = |keep: &dyn Fn(usize) -> bool| Slice {
             text: (0..units.len()).filter(|i| keep(*i)).map(|i| ended(&units[i].text)).collect(),
@@ -106,8 +148,11 @@ impl Session {
 
     /// The session's statements, read.
     fn units(&self) -> Vec<Unit> {
-        let own: BTreeSet<String> =
-            self.function_names().into_iter().map(|name| name.split('(').next().unwrap_or("").to_owned()).collect();
+        let own: BTreeSet<String> = self
+            .function_names()
+            .into_iter()
+            .map(|name| name.split('(').next().unwrap_or("").to_owned())
+            .collect();
         let read = |text: &str| -> Option<Unit> {
             let ast = self.engine().engine.compile(text).ok()?;
             Some(Reader { own: &own, pure: &self.engine().vocabulary.pure, unit: Unit::of(text) }.read(&ast))
@@ -118,7 +163,9 @@ impl Session {
             match parts {
                 Some(parts) => units.extend(parts),
                 // Cut wrongly: the entry as a whole.
-                None => units.push(read(entry).unwrap_or_else(|| Unit { is_opaque: true, ..Unit::of(entry) })),
+                None => {
+                    units.push(read(entry).unwrap_or_else(|| Unit { is_opaque: true, ..Unit::of(entry) }))
+                }
             }
         }
         units
@@ -281,7 +328,8 @@ impl Reader<'_> {
             }
         }
         let is_operator = call.op_token.is_some() || words::deed(name).is_some();
-        if !is_operator && !self.leaves_alone(name)
+        if !is_operator
+            && !self.leaves_alone(name)
             && let Some(first) = call.args.first()
         {
             self.changed(first);
@@ -308,11 +356,13 @@ impl Reader<'_> {
     fn changes(&self, chain: &Expr) -> bool {
         match chain {
             // `x.call(f)` runs the closure `f` on `x`; `f.call(1)` only calls.
-            Expr::MethodCall(call, _) if call.name == "call" => {
-                call.args.first().is_some_and(|first| !matches!(first, Expr::Array(..) | Expr::Map(..)) && !first.is_constant())
-            }
+            Expr::MethodCall(call, _) if call.name == "call" => call.args.first().is_some_and(|first| {
+                !matches!(first, Expr::Array(..) | Expr::Map(..)) && !first.is_constant()
+            }),
             Expr::MethodCall(call, _) => !self.leaves_alone(&call.name),
-            Expr::Dot(parts, ..) | Expr::Index(parts, ..) => self.changes(&parts.lhs) || self.changes(&parts.rhs),
+            Expr::Dot(parts, ..) | Expr::Index(parts, ..) => {
+                self.changes(&parts.lhs) || self.changes(&parts.rhs)
+            }
             _ => false,
         }
     }
@@ -443,7 +493,8 @@ fn resolve(units: &[Unit]) -> Resolved {
             let known = [before.get(name), newest.get(name)].into_iter().flatten();
             known.map(|version| versioned(name, *version)).collect()
         };
-        let all = |names: &BTreeSet<String>| -> BTreeSet<String> { names.iter().flat_map(versions).collect() };
+        let all =
+            |names: &BTreeSet<String>| -> BTreeSet<String> { names.iter().flat_map(versions).collect() };
         let mut reads = all(&unit.reads);
         reads.extend(all(&unit.writes));
         reads.extend(unit.calls.iter().cloned());

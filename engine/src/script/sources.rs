@@ -40,7 +40,8 @@ impl Sources {
         } else if let Some(ledger) = value.read_lock::<Ledger>() {
             self.ledger(&ledger);
         } else if let Some(quantity) = value.read_lock::<Quantity>() {
-            self.inputs.extend(quantity.parts().iter().filter_map(|part| part.input.name()).map(str::to_owned));
+            self.inputs
+                .extend(quantity.parts().iter().filter_map(|part| part.input.name()).map(str::to_owned));
         } else if let Some(items) = value.read_lock::<Array>() {
             items.iter().for_each(|item| self.gather(item));
         } else if let Some(map) = value.read_lock::<Map>() {
@@ -108,7 +109,8 @@ impl Sources {
     }
 
     fn origin(&mut self, origin: &Origin) {
-        let source = origin.source.clone().unwrap_or_else(|| "given in the script, without a source".to_owned());
+        let source =
+            origin.source.clone().unwrap_or_else(|| "given in the script, without a source".to_owned());
         self.publications.entry(source).or_default().insert(origin.equation.clone());
         if origin.provenance == crate::chem::Provenance::Memory {
             self.recalled.insert(origin.equation.clone());

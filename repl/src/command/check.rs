@@ -1,8 +1,8 @@
 //! `lysocline check a.rhai`: what can be found wrong without running it.
 
+use lysocline_engine::script::Options;
 use lysocline_engine::script::ScriptEngine;
 use lysocline_engine::script::sandbox::Sandbox;
-use lysocline_engine::script::Options;
 
 use crate::cli::{Check, Look};
 use crate::job;

@@ -86,13 +86,17 @@ fn making(job: &Job, script: &Script, outcome: &Outcome) -> Vec<String> {
         env!("CARGO_PKG_VERSION"),
         file_name(job.file)
     )];
-    facts.extend(outcome.sources.ledgers.iter().map(|(name, digest)| format!("Ledger {name}, digest {digest}.")));
+    facts.extend(
+        outcome.sources.ledgers.iter().map(|(name, digest)| format!("Ledger {name}, digest {digest}.")),
+    );
     let files: Vec<String> = outcome.files.iter().map(|file| file_name(file)).collect();
     if !files.is_empty() {
         facts.push(format!("Files read: {}.", files.join(", ")));
     }
     if matches!(&script.seal, Ok(Some(_))) {
-        facts.push("The file is sealed; `lysocline verify` compares these values with the sealed ones.".to_owned());
+        facts.push(
+            "The file is sealed; `lysocline verify` compares these values with the sealed ones.".to_owned(),
+        );
     }
     facts
 }

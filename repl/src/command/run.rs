@@ -46,8 +46,11 @@ fn ledgers(script: &Script, sealed: bool) -> Result<Constants, Box<Diagnostic>> 
     match (&script.seal, sealed) {
         (Ok(Some(seal)), true) => Ok(Constants::Sealed(seal.ledgers.clone())),
         (Ok(None), true) => Err(Box::new(
-            job::complaint(format!("`{}` is not sealed, so there are no sealed constants to run it with", script.name))
-                .help("leave `--sealed` out, or seal the file with `lysocline seal`"),
+            job::complaint(format!(
+                "`{}` is not sealed, so there are no sealed constants to run it with",
+                script.name
+            ))
+            .help("leave `--sealed` out, or seal the file with `lysocline seal`"),
         )),
         (Err(fault), true) => Err(Box::new(job::complaint(format!("`{}`: {fault}", script.name)))),
         (Ok(Some(seal)), false) => Ok(Constants::Shipped(differing(&seal.ledgers))),
@@ -64,14 +67,23 @@ fn differing(sealed: &[Ledger]) -> Option<String> {
             Some(today) if today.digest() == old.digest() => None,
             Some(today) => {
                 let edition = |ledger: &Ledger| ledger.edition().unwrap_or("no edition").to_owned();
-                Some(format!("`{}` was {} ({}), is {} ({})", old.name(), edition(old), old.digest(), edition(&today), today.digest()))
+                Some(format!(
+                    "`{}` was {} ({}), is {} ({})",
+                    old.name(),
+                    edition(old),
+                    old.digest(),
+                    edition(&today),
+                    today.digest()
+                ))
             }
             None => Some(format!("`{}` is no longer shipped", old.name())),
         }
     });
     let first = moved.next()?;
     let others = moved.map(|other| format!(", {other}")).collect::<String>();
-    Some(format!("note: constants have changed since this file was sealed: {first}{others}; `run --sealed` takes the old ones, `verify` shows what moves"))
+    Some(format!(
+        "note: constants have changed since this file was sealed: {first}{others}; `run --sealed` takes the old ones, `verify` shows what moves"
+    ))
 }
 
 /// The text of a script file.

@@ -37,7 +37,10 @@ fn seal(job: &Job) -> Result<String, Box<Diagnostic>> {
     }
     if !job.arguments.is_empty() {
         let message = "a sealed file is run again without arguments, so it cannot be sealed with any";
-        return Err(Box::new(job::complaint(message).help("write the values into the script: `args.get(\"file\", \"survey.csv\")`")));
+        return Err(Box::new(
+            job::complaint(message)
+                .help("write the values into the script: `args.get(\"file\", \"survey.csv\")`"),
+        ));
     }
     let in_use = in_force::stand_in([]);
     let outcome = job.gather(&script, Files::Untouched);
@@ -48,7 +51,9 @@ fn seal(job: &Job) -> Result<String, Box<Diagnostic>> {
     }
     if outcome.records.is_empty() {
         let message = format!("`{}` records nothing, so there is nothing to seal", script.name);
-        return Err(Box::new(job::complaint(message).help("mark results with `record(\"pH of the lake\", lake.pH);`")));
+        return Err(Box::new(
+            job::complaint(message).help("mark results with `record(\"pH of the lake\", lake.pH);`"),
+        ));
     }
     let seal = Seal {
         program: env!("CARGO_PKG_VERSION").to_owned(),

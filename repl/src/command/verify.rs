@@ -72,9 +72,13 @@ fn verify(job: &Job) -> Result<Verdict, Box<Diagnostic>> {
         Ok(Some(seal)) => seal.clone(),
         Ok(None) => {
             let message = format!("`{}` is not sealed", script.name);
-            return Err(Box::new(job::complaint(message).help(format!("write `lysocline seal {}` first", script.name))));
+            return Err(Box::new(
+                job::complaint(message).help(format!("write `lysocline seal {}` first", script.name)),
+            ));
         }
-        Err(fault) => return Err(Box::new(job::complaint(format!("`{}` cannot be verified: {fault}", script.name)))),
+        Err(fault) => {
+            return Err(Box::new(job::complaint(format!("`{}` cannot be verified: {fault}", script.name))));
+        }
     };
     let mut notes = Vec::new();
     let program = env!("CARGO_PKG_VERSION");
@@ -104,9 +108,13 @@ fn verify(job: &Job) -> Result<Verdict, Box<Diagnostic>> {
             compared
         })
         .collect();
-    let extra: Vec<&String> = today.keys().filter(|label| seal.values.iter().all(|sealed| sealed.label != **label)).collect();
+    let extra: Vec<&String> =
+        today.keys().filter(|label| seal.values.iter().all(|sealed| sealed.label != **label)).collect();
     if !extra.is_empty() {
-        notes.push(format!("recorded now and not sealed: {}", extra.iter().map(|label| format!("`{label}`")).collect::<Vec<_>>().join(", ")));
+        notes.push(format!(
+            "recorded now and not sealed: {}",
+            extra.iter().map(|label| format!("`{label}`")).collect::<Vec<_>>().join(", ")
+        ));
     }
     let edited = script_edited || !changed.is_empty();
     Ok(Verdict { name: script.name.clone(), notes, edited, values })
@@ -117,7 +125,9 @@ fn changed_files(job: &Job, seal: &Seal) -> Vec<String> {
     let folder = job.file.parent().unwrap_or(Path::new(""));
     let fault = |(name, digest): &(String, String)| match std::fs::read(folder.join(name)) {
         Err(_) => Some(format!("the file `{name}` that it read is gone")),
-        Ok(content) if digest_of(&content) != *digest => Some(format!("the file `{name}` that it reads has changed")),
+        Ok(content) if digest_of(&content) != *digest => {
+            Some(format!("the file `{name}` that it reads has changed"))
+        }
         Ok(_) => None,
     };
     seal.files.iter().filter_map(fault).collect()
@@ -180,7 +190,11 @@ fn with_todays(
             old.name(),
             old.edition().unwrap_or("unknown"),
             now.edition().unwrap_or("unknown"),
-            if changes.len() == 1 { "1 constant differs".to_owned() } else { format!("{} constants differ", changes.len()) }
+            if changes.len() == 1 {
+                "1 constant differs".to_owned()
+            } else {
+                format!("{} constants differ", changes.len())
+            }
         ));
         for (what, ledger) in changes {
             let mut ledgers = seal.ledgers.clone();
@@ -199,7 +213,8 @@ fn with_todays(
     for (what, ledgers) in variants.into_iter().take(TRIED) {
         // A constant without which the script fails moves everything.
         let values = records(job, script, &ledgers).unwrap_or_default();
-        let moved = then.iter().filter(|(label, value)| !values.get(*label).is_some_and(|now| agrees(value, now)));
+        let moved =
+            then.iter().filter(|(label, value)| !values.get(*label).is_some_and(|now| agrees(value, now)));
         changes.push(Change { what, moves: moved.map(|(label, _)| label.clone()).collect() });
     }
     Ok((today, changes))
@@ -241,7 +256,9 @@ fn differs(a: &Reaction, b: &Reaction) -> bool {
 fn words(name: &str, before: &Reaction, after: &Reaction) -> String {
     let log_k = |reaction: &Reaction| reaction.log_k().ok().map(|log_k| log_k.value());
     match (log_k(before), log_k(after)) {
-        (Some(before), Some(after)) if before != after => format!("{name} (log K {after:.4}, was {before:.4})"),
+        (Some(before), Some(after)) if before != after => {
+            format!("{name} (log K {after:.4}, was {before:.4})")
+        }
         _ => format!("{name} (its function of temperature, or its equation)"),
     }
 }
@@ -282,7 +299,9 @@ impl Verdict {
         let values = |n: usize| if n == 1 { "1 value".to_owned() } else { format!("{n} values") };
         match (n, self.edited) {
             (0, false) => println!("{}: {} as sealed", self.name, values(all)),
-            (0, true) => println!("{}: {} as sealed, but not everything else (see above)", self.name, values(all)),
+            (0, true) => {
+                println!("{}: {} as sealed, but not everything else (see above)", self.name, values(all))
+            }
             _ => println!("{}: {} of {} moved", self.name, n, values(all)),
         }
     }
@@ -296,13 +315,17 @@ fn drawn(moved: &[&Compared], look: &Look) -> String {
         Column::texts(title, texts.iter().map(String::as_str))
     };
     let difference = |value: &&Compared| match (&value.sealed.value, &value.today) {
-        (Recorded::Number { value: then, .. }, Some(Recorded::Number { value: now, .. })) => Cell::number(now - then),
+        (Recorded::Number { value: then, .. }, Some(Recorded::Number { value: now, .. })) => {
+            Cell::number(now - then)
+        }
         _ => Cell::missing(),
     };
     let columns = [
         texts("value", &|value| value.sealed.label.clone()),
         texts("sealed", &|value| shown(&value.sealed.value)),
-        texts("sealed constants", &|value| if value.moved_then() { text(&value.then) } else { "same".to_owned() }),
+        texts("sealed constants", &|value| {
+            if value.moved_then() { text(&value.then) } else { "same".to_owned() }
+        }),
         texts("today", &|value| if value.moved_today() { text(&value.today) } else { "same".to_owned() }),
         Column::new("today - sealed", moved.iter().map(difference).collect::<Vec<_>>()),
         texts("moved by", &|value| value.cause.clone()),

@@ -43,6 +43,7 @@ fn saved(script: &Path) -> BTreeMap<PathBuf, SystemTime> {
         let ending = path.extension().and_then(|ending| ending.to_str());
         matches!(ending, Some("rhai" | "csv" | "toml" | "json"))
     };
-    let when = |path: PathBuf| Some((path.clone(), std::fs::metadata(&path).and_then(|m| m.modified()).ok()?));
+    let when =
+        |path: PathBuf| Some((path.clone(), std::fs::metadata(&path).and_then(|m| m.modified()).ok()?));
     entries.filter(matters).chain([script.to_owned()]).filter_map(when).collect()
 }

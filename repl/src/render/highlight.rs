@@ -3,8 +3,8 @@
 use lysocline_engine::present::plot_svg::escaped;
 
 const KEYWORDS: [&str; 22] = [
-    "as", "break", "catch", "const", "continue", "do", "else", "export", "false", "fn", "for", "if", "import", "in",
-    "let", "loop", "return", "switch", "throw", "true", "try", "while",
+    "as", "break", "catch", "const", "continue", "do", "else", "export", "false", "fn", "for", "if",
+    "import", "in", "let", "loop", "return", "switch", "throw", "true", "try", "while",
 ];
 
 /// The text with `<span>`s: `c` comment, `s` text, `n` number, `k` keyword, `f` what is called.
@@ -97,8 +97,14 @@ mod tests {
 
     #[test]
     fn words_by_kind() {
-        case("let x = 1e-3; // a<b", "<span class=\"k\">let</span> x = <span class=\"n\">1e-3</span>; <span class=\"c\">// a&lt;b</span>");
-        case("k2.log_k_at(\"10 \\\" C\")", "k2.<span class=\"f\">log_k_at</span>(<span class=\"s\">&quot;10 \\&quot; C&quot;</span>)");
+        case(
+            "let x = 1e-3; // a<b",
+            "<span class=\"k\">let</span> x = <span class=\"n\">1e-3</span>; <span class=\"c\">// a&lt;b</span>",
+        );
+        case(
+            "k2.log_k_at(\"10 \\\" C\")",
+            "k2.<span class=\"f\">log_k_at</span>(<span class=\"s\">&quot;10 \\&quot; C&quot;</span>)",
+        );
         case("/* a /* b */ c */ 2", "<span class=\"c\">/* a /* b */ c */</span> <span class=\"n\">2</span>");
         case("0..10", "<span class=\"n\">0</span>..<span class=\"n\">10</span>");
         case("\"open", "<span class=\"s\">&quot;open</span>");

@@ -3,8 +3,8 @@
 use std::fmt::Write;
 
 use lysocline_engine::present::{Style, notation};
-use lysocline_engine::script::{Record, Shown};
 use lysocline_engine::script::record::Recorded;
+use lysocline_engine::script::{Record, Shown};
 
 use super::plot;
 use super::report::{Block, Report};
@@ -31,9 +31,15 @@ pub fn draw(report: &Report) -> String {
         text.push('\n');
     }
     section(&mut text, "Warnings", report.warnings().iter().map(ToString::to_string));
-    section(&mut text, "Sources of the constants used", report.sources.publications.iter().map(|(source, equations)| {
-        format!("{source} ({})", super::report::taken(equations))
-    }));
+    section(
+        &mut text,
+        "Sources of the constants used",
+        report
+            .sources
+            .publications
+            .iter()
+            .map(|(source, equations)| format!("{source} ({})", super::report::taken(equations))),
+    );
     section(&mut text, "Cautions", report.cautions().into_iter());
     let _ = writeln!(text, "---\n\n{}\n\n{MARK}", report.making.join("  \n"));
     text

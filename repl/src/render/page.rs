@@ -4,8 +4,8 @@ use std::fmt::Write;
 
 use lysocline_engine::present::plot_svg::{self, escaped};
 use lysocline_engine::present::{Column, Style, Table, notation, number, table::FAILURE};
-use lysocline_engine::script::{Record, Shown};
 use lysocline_engine::script::record::Recorded;
+use lysocline_engine::script::{Record, Shown};
 use pulldown_cmark::{Event, Options, Parser, Tag};
 
 use super::highlight;
@@ -20,14 +20,21 @@ pub fn draw(report: &Report) -> String {
     if !matches!(report.blocks.first(), Some(Block::Prose(text)) if text.starts_with("# ")) {
         let _ = writeln!(body, "<h1>{}</h1>", escaped(&report.title));
     }
-    for run in report.blocks.chunk_by(|a, b| matches!((a, b), (Block::Output(Shown::Record(_)), Block::Output(Shown::Record(_))))) {
+    for run in report
+        .blocks
+        .chunk_by(|a, b| matches!((a, b), (Block::Output(Shown::Record(_)), Block::Output(Shown::Record(_)))))
+    {
         match run {
             [Block::Output(Shown::Record(_)), ..] => body.push_str(&kept(run)),
             _ => run.iter().for_each(|block| body.push_str(&self::block(block))),
         }
     }
     if let Some(failure) = &report.failure {
-        let _ = writeln!(body, "<div class=\"failure\" role=\"alert\"><strong>The script did not come to its end.</strong><pre>{}</pre></div>", escaped(failure));
+        let _ = writeln!(
+            body,
+            "<div class=\"failure\" role=\"alert\"><strong>The script did not come to its end.</strong><pre>{}</pre></div>",
+            escaped(failure)
+        );
     }
     body.push_str(&ending(report));
     format!(
@@ -43,8 +50,12 @@ pub fn draw(report: &Report) -> String {
 fn block(block: &Block) -> String {
     match block {
         Block::Prose(text) => prose(text),
-        Block::Code(text) => format!("<pre class=\"code\" tabindex=\"0\"><code>{}</code></pre>\n", highlight::html(text)),
-        Block::Output(Shown::Text(text)) => format!("<pre class=\"out\" tabindex=\"0\">{}</pre>\n", escaped(text)),
+        Block::Code(text) => {
+            format!("<pre class=\"code\" tabindex=\"0\"><code>{}</code></pre>\n", highlight::html(text))
+        }
+        Block::Output(Shown::Text(text)) => {
+            format!("<pre class=\"out\" tabindex=\"0\">{}</pre>\n", escaped(text))
+        }
         Block::Output(Shown::Table(table)) => self::table(table),
         Block::Output(Shown::Plot(plot)) => format!("<figure>{}</figure>\n", plot_svg::fragment(plot)),
         Block::Output(Shown::Message(text)) => format!("<p class=\"note\">{}</p>\n", escaped(text)),
@@ -61,7 +72,10 @@ fn kept(run: &[Block]) -> String {
                 Some(_) => ("✓", format!("{value}, as expected{}", within(record))),
                 None => ("•", value),
             };
-            Some(format!("<li><span aria-hidden=\"true\">{sign}</span> {}: <strong>{what}</strong></li>", escaped(&record.label)))
+            Some(format!(
+                "<li><span aria-hidden=\"true\">{sign}</span> {}: <strong>{what}</strong></li>",
+                escaped(&record.label)
+            ))
         }
         _ => None,
     });
@@ -93,9 +107,12 @@ fn prose(text: &str) -> String {
     let options = Options::ENABLE_TABLES | Options::ENABLE_FOOTNOTES | Options::ENABLE_STRIKETHROUGH;
     let safe = Parser::new_ext(text, options).map(|event| match event {
         Event::Html(html) | Event::InlineHtml(html) => Event::Text(html),
-        Event::Start(Tag::Image { dest_url, title, .. }) => {
-            Event::Start(Tag::Link { link_type: pulldown_cmark::LinkType::Inline, dest_url: harmless(&dest_url).into(), title, id: "".into() })
-        }
+        Event::Start(Tag::Image { dest_url, title, .. }) => Event::Start(Tag::Link {
+            link_type: pulldown_cmark::LinkType::Inline,
+            dest_url: harmless(&dest_url).into(),
+            title,
+            id: "".into(),
+        }),
         Event::End(pulldown_cmark::TagEnd::Image) => Event::End(pulldown_cmark::TagEnd::Link),
         Event::Start(Tag::Link { link_type, dest_url, title, id }) => {
             Event::Start(Tag::Link { link_type, dest_url: harmless(&dest_url).into(), title, id })
@@ -109,7 +126,9 @@ fn prose(text: &str) -> String {
 
 /// A link that only leads somewhere.
 fn harmless(address: &str) -> String {
-    let plain = ["https:", "http:", "mailto:", "doi:", "#"].iter().any(|start| address.to_lowercase().starts_with(start));
+    let plain = ["https:", "http:", "mailto:", "doi:", "#"]
+        .iter()
+        .any(|start| address.to_lowercase().starts_with(start));
     let relative = !address.contains(':');
     if plain || relative { address.to_owned() } else { String::new() }
 }
@@ -120,7 +139,9 @@ fn table(table: &Table) -> String {
     let mut text = String::from("<div class=\"table\" tabindex=\"0\"><table>\n<thead><tr>");
     let class = |column: &Column| if column.is_numeric() { " class=\"n\"" } else { "" };
     for column in &columns {
-        let unit = column.title().unit().map(|unit| format!("<br><span class=\"unit\">{}</span>", escaped(&notation::shown_unit(unit, style))));
+        let unit = column.title().unit().map(|unit| {
+            format!("<br><span class=\"unit\">{}</span>", escaped(&notation::shown_unit(unit, style)))
+        });
         let _ = write!(
             text,
             "<th scope=\"col\"{}>{}{}</th>",
@@ -138,7 +159,12 @@ fn table(table: &Table) -> String {
         }
         text.push_str("</tr>\n");
         if let Some(reason) = table.failure(row) {
-            let _ = writeln!(text, "<tr><td class=\"why\" colspan=\"{}\">row {row} failed: {}</td></tr>", columns.len().max(1), escaped(reason));
+            let _ = writeln!(
+                text,
+                "<tr><td class=\"why\" colspan=\"{}\">row {row} failed: {}</td></tr>",
+                columns.len().max(1),
+                escaped(reason)
+            );
         }
     }
     text.push_str("</tbody></table></div>\n");
@@ -150,19 +176,34 @@ fn ending(report: &Report) -> String {
     let mut text = String::new();
     let recorded: Vec<&Record> = report.records.iter().filter(|record| record.expected.is_none()).collect();
     if !recorded.is_empty() {
-        text.push_str("<section><h2>Recorded values</h2>\n<div class=\"table\" tabindex=\"0\"><table>\n<tbody>\n");
+        text.push_str(
+            "<section><h2>Recorded values</h2>\n<div class=\"table\" tabindex=\"0\"><table>\n<tbody>\n",
+        );
         for record in recorded {
-            let _ = writeln!(text, "<tr><th scope=\"row\">{}</th><td class=\"n\">{}</td></tr>", escaped(&record.label), value(record));
+            let _ = writeln!(
+                text,
+                "<tr><th scope=\"row\">{}</th><td class=\"n\">{}</td></tr>",
+                escaped(&record.label),
+                value(record)
+            );
         }
         text.push_str("</tbody></table></div></section>\n");
     }
     let warnings = report.warnings();
     if !warnings.is_empty() {
-        let _ = writeln!(text, "<section><h2>Warnings</h2>\n<ul class=\"warnings\">{}</ul></section>", items(warnings.iter().map(|warning| escaped(warning))));
+        let _ = writeln!(
+            text,
+            "<section><h2>Warnings</h2>\n<ul class=\"warnings\">{}</ul></section>",
+            items(warnings.iter().map(|warning| escaped(warning)))
+        );
     }
     if !report.sources.publications.is_empty() {
         let entry = |(source, equations): (&String, &std::collections::BTreeSet<String>)| {
-            format!("{}<br><span class=\"unit\">{}</span>", escaped(source), escaped(&super::report::taken(equations)))
+            format!(
+                "{}<br><span class=\"unit\">{}</span>",
+                escaped(source),
+                escaped(&super::report::taken(equations))
+            )
         };
         let _ = writeln!(
             text,
@@ -209,6 +250,7 @@ th,td{padding:.25rem .75rem;text-align:left;vertical-align:baseline;border-botto
 th:first-child,td:first-child{padding-left:.2rem}
 thead th{border-bottom:2px solid var(--ink);vertical-align:bottom;line-height:1.3}
 tbody th{font-weight:400}
+td:not(.n){min-width:8rem}
 td.n,th.n{text-align:right;white-space:nowrap}
 .unit{color:var(--faint);font-weight:400;font-size:.85em}
 .why{color:var(--warn);font-size:.88em}
@@ -231,16 +273,27 @@ mod tests {
 
     #[test]
     fn prose_runs_nothing_and_fetches_nothing() {
-        let html = prose("a <script>x()</script> ![p](http://a.b/c.png) [j](javascript:x) [ok](https://a.b)\n\n<img src=x>");
-        assert!(!html.contains("<script") && !html.contains("<img") && !html.contains("javascript:"), "{html}");
+        let html = prose(
+            "a <script>x()</script> ![p](http://a.b/c.png) [j](javascript:x) [ok](https://a.b)\n\n<img src=x>",
+        );
+        assert!(
+            !html.contains("<script") && !html.contains("<img") && !html.contains("javascript:"),
+            "{html}"
+        );
         assert!(html.contains("href=\"https://a.b\""), "{html}");
     }
 
     #[test]
     fn tables_align_numbers_and_name_failures() {
-        let made = Table::new([Column::texts("name", ["a", "b"]), Column::numbers("Ca [mg/L]", [1.5, 20.0])]).unwrap();
+        let made = Table::new([Column::texts("name", ["a", "b"]), Column::numbers("Ca [mg/L]", [1.5, 20.0])])
+            .unwrap();
         let made = made.with_failures([None, Some("no <equilibrium>".to_owned())]).unwrap();
         let html = table(&made);
-        assert!(html.contains("<td class=\"n\">1.5") && html.contains("no &lt;equilibrium&gt;") && html.contains("mg/L"), "{html}");
+        assert!(
+            html.contains("<td class=\"n\">1.5")
+                && html.contains("no &lt;equilibrium&gt;")
+                && html.contains("mg/L"),
+            "{html}"
+        );
     }
 }

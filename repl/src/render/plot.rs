@@ -28,7 +28,8 @@ pub fn draw(plot: &Plot, look: &Look) -> String {
     let ticks: Vec<Vec<Tick>> = plot.panels.iter().map(|panel| panel.y.ticks(5)).collect();
     let texts = ticks.iter().flatten().map(|tick| tick.text.chars().count());
     let margin = texts.max().unwrap_or(0) + 1;
-    let canvas = Canvas { margin, width: look.width.min(WIDEST).saturating_sub(margin + 3).max(16), look: *look };
+    let canvas =
+        Canvas { margin, width: look.width.min(WIDEST).saturating_sub(margin + 3).max(16), look: *look };
     let mut lines = Vec::new();
     lines.extend(plot.title.iter().map(|title| format!("{:margin$} {}", "", shown(title, look))));
     let height = if plot.panels.len() == 1 { TALL } else { SHORT };
@@ -86,7 +87,10 @@ impl Canvas {
             Marks::Curves(_) => start,
             Marks::Fields(fields) => {
                 let entries = fields.present().into_iter().enumerate().map(|(order, field)| {
-                    self.painted(order, &format!("{} {}", letter(order), shown(&fields.names[field], &self.look)))
+                    self.painted(
+                        order,
+                        &format!("{} {}", letter(order), shown(&fields.names[field], &self.look)),
+                    )
                 });
                 format!("{start}:  {}", entries.collect::<Vec<_>>().join("   "))
             }
@@ -123,14 +127,17 @@ impl Canvas {
     }
 
     fn row(&self, cells: &[Cell]) -> String {
-        cells.iter().map(|cell| match (cell.sign, cell.dots) {
-            (Some(sign), _) => self.painted(cell.curve, &sign.to_string()),
-            (None, 0) => " ".to_owned(),
-            (None, dots) => {
-                let braille = char::from_u32(0x2800 + u32::from(dots)).unwrap_or(' ');
-                self.painted(cell.curve, &braille.to_string())
-            }
-        }).collect()
+        cells
+            .iter()
+            .map(|cell| match (cell.sign, cell.dots) {
+                (Some(sign), _) => self.painted(cell.curve, &sign.to_string()),
+                (None, 0) => " ".to_owned(),
+                (None, dots) => {
+                    let braille = char::from_u32(0x2800 + u32::from(dots)).unwrap_or(' ');
+                    self.painted(cell.curve, &braille.to_string())
+                }
+            })
+            .collect()
     }
 
     /// Colours tell lines of dots apart; without them each curve is drawn in its sign.
@@ -150,7 +157,8 @@ impl Canvas {
         let in_signs = self.in_signs(n_curves) || !curve.is_line;
         let sign = if self.look.plain || self.in_signs(n_curves) { SIGNS[i % SIGNS.len()] } else { '●' };
         let mut set = |across: f64, down: f64| {
-            let inside = across >= -0.5 && down >= -0.5 && across < columns as f64 - 0.4 && down < rows as f64 - 0.4;
+            let inside =
+                across >= -0.5 && down >= -0.5 && across < columns as f64 - 0.4 && down < rows as f64 - 0.4;
             if !inside {
                 return;
             }
@@ -285,6 +293,9 @@ mod tests {
     fn plain_is_plain() {
         let text = drawn(Look { plain: true, color: false, width: 60 });
         assert!(text.is_ascii(), "{text}");
-        assert!(text.contains("m(Ca^2+) [mmol/kg]") && text.contains("x [m]") && text.contains('*'), "{text}");
+        assert!(
+            text.contains("m(Ca^2+) [mmol/kg]") && text.contains("x [m]") && text.contains('*'),
+            "{text}"
+        );
     }
 }

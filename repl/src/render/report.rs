@@ -49,11 +49,15 @@ impl Report {
         let mut cautions: Vec<String> = CAUTIONS.iter().map(ToString::to_string).collect();
         let recalled = self.sources.recalled.len();
         if recalled > 0 {
-            let which = if recalled == 1 { "One constant".to_owned() } else { format!("{recalled} constants") };
-            cautions.push(format!(
-                "{which} used here were recalled and cross-checked rather than read in their source; \
+            let which =
+                if recalled == 1 { "One constant".to_owned() } else { format!("{recalled} constants") };
+            cautions.push(
+                format!(
+                    "{which} used here were recalled and cross-checked rather than read in their source; \
                  confirm what a decision rests on."
-            ).replace("One constant used here were", "One constant used here was"));
+                )
+                .replace("One constant used here were", "One constant used here was"),
+            );
         }
         cautions
     }
@@ -76,7 +80,8 @@ pub fn taken(equations: &BTreeSet<String>) -> String {
 /// The script cut into prose and code, with each output below the statement that showed it. Records do not cut the code:
 /// they stand below the stretch of code that made them.
 pub fn blocks(script: &str, shown: &[Shown]) -> Vec<Block> {
-    let mut layout = Layout { lines: script.lines().collect(), next: 0, records: Vec::new(), blocks: Vec::new() };
+    let mut layout =
+        Layout { lines: script.lines().collect(), next: 0, records: Vec::new(), blocks: Vec::new() };
     let starts: Vec<usize> = shown.iter().filter_map(statement).collect();
     let mut passed = 0;
     for item in shown {
@@ -142,7 +147,8 @@ fn statement(shown: &Shown) -> Option<usize> {
 fn end_before(lines: &[&str], from: usize, start: usize) -> usize {
     let start = start.min(lines.len());
     let belongs_to_next = |line: &&str| line.trim().is_empty() || line.trim_start().starts_with("//");
-    let trailing = lines[from.min(start)..start].iter().rev().take_while(|line| belongs_to_next(line)).count();
+    let trailing =
+        lines[from.min(start)..start].iter().rev().take_while(|line| belongs_to_next(line)).count();
     start - trailing
 }
 

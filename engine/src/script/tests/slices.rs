@@ -8,7 +8,8 @@ use crate::script::{Options, ScriptEngine, Session, same};
 
 fn session(entries: &[&str]) -> Session {
     let sink = || Box::new(std::io::sink());
-    let engine = Arc::new(ScriptEngine::new(Options { output: sink(), messages: sink(), ..Options::default() }));
+    let engine =
+        Arc::new(ScriptEngine::new(Options { output: sink(), messages: sink(), ..Options::default() }));
     let mut session = Session::new(engine);
     for entry in entries {
         session.enter(entry).unwrap_or_else(|error| panic!("{entry}: {error}"));
@@ -24,12 +25,20 @@ fn case(entries: &[&str], name: &str, expected: &[&str]) {
 
 #[test]
 fn only_what_a_variable_needs() {
-    case(&["let a = 1;", "let b = 2;", "let c = a + 1;", "b", "print(c);"], "c", &["let a = 1;", "let c = a + 1;"]);
+    case(
+        &["let a = 1;", "let b = 2;", "let c = a + 1;", "b", "print(c);"],
+        "c",
+        &["let a = 1;", "let c = a + 1;"],
+    );
     // Statements of one entry are told apart.
     case(&["let a = 1; let b = 2; let c = b * 2;"], "c", &["let b = 2;", "let c = b * 2;"].map(|line| line));
     // A new `let` is another variable; a change is not.
     case(&["let a = 1;", "let b = a;", "let a = 5;"], "a", &["let a = 5;"]);
-    case(&["let a = [1];", "a.push(2);", "let n = a.len();", "a.push(3);"], "n", &["let a = [1];", "a.push(2);", "let n = a.len();"]);
+    case(
+        &["let a = [1];", "a.push(2);", "let n = a.len();", "a.push(3);"],
+        "n",
+        &["let a = [1];", "a.push(2);", "let n = a.len();"],
+    );
     case(&["let a = [1];", "push(a, 2);"], "a", &["let a = [1];", "push(a, 2);"]);
     case(&["let m = #{ x: 1 };", "m.y = 2;", "let z = 3;"], "m", &["let m = #{ x: 1 };", "m.y = 2;"]);
 }
@@ -59,8 +68,16 @@ fn functions_and_closures() {
         "n",
         &["let n = 0;", "let f = || { n += 1; };", "f.call();", "f.call();"],
     );
-    case(&["fn add(x) { this += x; }", "let a = 1;", "a.add(2);"], "a", &["fn add(x) { this += x; }", "let a = 1;", "a.add(2);"]);
-    case(&["let a = [3, 1];", "a.sort();", "for x in a { print(x); }"], "a", &["let a = [3, 1];", "a.sort();"]);
+    case(
+        &["fn add(x) { this += x; }", "let a = 1;", "a.add(2);"],
+        "a",
+        &["fn add(x) { this += x; }", "let a = 1;", "a.add(2);"],
+    );
+    case(
+        &["let a = [3, 1];", "a.sort();", "for x in a { print(x); }"],
+        "a",
+        &["let a = [3, 1];", "a.sort();"],
+    );
 }
 
 #[test]
