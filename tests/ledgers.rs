@@ -370,7 +370,7 @@ fn all_faults_of_a_file_are_said_at_once() {
          [[constant]]\nname = \"V\"\nreaction = \"HS^- <=> S^2- + H^+\"\nlog_k = -17\ninfluences = [{ of = \"enthalpy\", sigma = -1 }]\nsource = \"A (2020)\"\nprovenance = \"read\"\n\n\
          [[formation]]\nspecies = \"Ca^2+\"\nenthalpy = \"-543.0 +/- 1.0 kJ/mol\"\nsource = \"A (2020)\"\nprovenance = \"memory\"\n",
         &[
-            "line 2: no activity model `davis`: there are `ideal` and `davies`",
+            "line 2: no activity model `davis`, did you mean `davies`? There are `ideal`, `davies`, `debye-hueckel`, `truesdell-jones` and `sit`",
             "line 8: `Kw`: `sigma` is a standard uncertainty and cannot be negative: -0.01",
             "line 14: `K2`: `HCO3^- <=> CO3^2-` is not balanced: the right side is short of 1 H, the charges differ: the \
              right side has -1 more; add `H^+` to the right side",

@@ -7,6 +7,8 @@ mod ledgers;
 #[cfg(test)]
 mod oxidation_states;
 #[cfg(test)]
+mod processes;
+#[cfg(test)]
 mod properties;
 #[cfg(test)]
 mod published;

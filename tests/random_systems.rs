@@ -1,5 +1,6 @@
 //! Random equilibrium problems, reproducible from a seed.
 
+use lysocline_engine::activity::{DebyeHuckel, IonCoefficients, Model, Pair, Sit, Solutes};
 use lysocline_engine::solve::{Mineral, Mixture, Problem, Reservoir, Row, Total};
 
 /// log10 to natural logarithm.
@@ -149,4 +150,33 @@ pub fn add_charges(random: &mut Random, problem: &mut Problem) {
     for row in &mut problem.species {
         row.charge = row.stoichiometry.iter().map(|(j, nu)| (charges[*j] * nu.numer()) as f64).sum();
     }
+}
+
+/// Ion sizes and linear terms as those of Truesdell and Jones spread.
+pub fn ion_sizes(random: &mut Random, problem: &Problem) -> Model {
+    let ion = |random: &mut Random| IonCoefficients {
+        size: random.uniform(2.5, 11.0),
+        linear: random.uniform(-0.05, 0.25) * LN_10,
+    };
+    let solutes = problem.species.iter().map(|_| ion(random)).collect();
+    Model::consistent(Solutes::DebyeHuckel(DebyeHuckel {
+        a_ln: 0.509 * LN_10,
+        b: 0.3284,
+        solutes,
+        valid_to: 3.0,
+    }))
+}
+
+/// Interaction coefficients for half of all pairs of unlike charge, as widely spread as the published ones.
+pub fn interactions(random: &mut Random, problem: &Problem) -> Model {
+    let mut pairs = vec![];
+    for j in 0..problem.species.len() {
+        for k in 0..j {
+            let unlike = problem.species[j].charge * problem.species[k].charge < 0.0;
+            if unlike && random.chance(0.5) {
+                pairs.push(Pair { solutes: (j, k), epsilon: random.uniform(-0.2, 0.35) * LN_10 });
+            }
+        }
+    }
+    Model::consistent(Solutes::Sit(Sit { a_ln: 0.509 * LN_10, pairs }))
 }

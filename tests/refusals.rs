@@ -391,7 +391,9 @@ fn what_is_stretched_is_said() {
     warns(
         &[("pH", "7"), ("temperature", "25 degC"), ("Na", "2 mol/kg"), ("Cl", "2 mol/kg")],
         &[],
-        &["ionic strength 2.00 mol/kg(water) is beyond the range of the activity model"],
+        &[
+            "ionic strength 2.00 mol/kg(water) is beyond the range of the activity model: the Davies equation holds to 0.5 mol/kg(water)",
+        ],
     );
     warns(
         &[("pH", "7"), ("Na", "1 mmol/kg"), ("Cl", "1 mmol/kg")],

@@ -103,7 +103,8 @@ fn moved(problem: &Problem, change: &Given, step: f64) -> Problem {
     problem
 }
 
-/// A random problem with minerals in a quarter, a reservoir in another, mixtures in a third, and the Davies equation in half of them.
+/// A random problem with minerals in a quarter, a reservoir in another, mixtures in a third, and each of the activity models in a
+/// quarter of each.
 fn random_problem(seed: u64) -> Option<(Problem, Model, Converged)> {
     let random = &mut Random(seed);
     let mut problem = random_systems::tableau(random, FAMILY);
@@ -111,7 +112,12 @@ fn random_problem(seed: u64) -> Option<(Problem, Model, Converged)> {
     for row in &mut problem.species {
         row.water = random.integer(-1, 1) as f64;
     }
-    let model = if seed.is_multiple_of(2) { Model::IDEAL } else { Model::davies(Davies::new(0.509)) };
+    let model = match seed / 4 % 4 {
+        0 => Model::IDEAL,
+        1 => Model::davies(Davies::new(0.509)),
+        2 => random_systems::ion_sizes(random, &problem),
+        _ => random_systems::interactions(random, &problem),
+    };
     let settings = Settings::default();
     let first = solve(&problem, &Model::IDEAL, &settings, None).ok()?;
     match seed % 4 {
@@ -207,7 +213,7 @@ struct Case {
     inputs: Inputs,
     texts: Vec<(&'static str, &'static str)>,
     treatments: Vec<Treatment>,
-    ideal: bool,
+    model: &'static str,
     /// Whether pH and DIC are to be used where alkalinity is given too.
     from: bool,
     observables: Vec<&'static str>,
@@ -219,7 +225,7 @@ impl Case {
         let more_common =
             ["SI(calcite)", "f(CO2(g))", "log_a(HCO3^-)", "charge_error", "density", "total(Ca)"];
         let observables = common.iter().chain(&more_common).chain(more).copied().collect();
-        Self { name, inputs, texts: vec![], treatments, ideal: false, from: false, observables }
+        Self { name, inputs, texts: vec![], treatments, model: "davies", from: false, observables }
     }
 
     fn sample(&self, changed: &str, by: f64) -> Sample {
@@ -239,7 +245,7 @@ impl Case {
     }
 
     fn ledger(&self) -> Ledger {
-        if self.ideal { freshwater().with_activity(ActivityChoice::Ideal) } else { freshwater() }
+        freshwater().with_activity(ActivityChoice::read(self.model, Named::default()).unwrap())
     }
 
     fn state(&self, sample: &Sample, ledger: &Ledger) -> State {
@@ -332,7 +338,20 @@ fn cases() -> Vec<Case> {
         Case::new("a pH by reagent", lake(), vec![hold(9.0, Some("NaOH"))], &["added(NaOH)", "total(Na)"]),
     ];
     let mut ideal = Case::new("ideal", lake_with(&[dic], &["alkalinity"]), vec![], &[]);
-    ideal.ideal = true;
+    ideal.model = "ideal";
+    let brine = || lake_with(&[("Na", 9.0, "g/kg", 0.1), ("Cl", 14.0, "g/kg", 0.1)], &["Na", "Cl"]);
+    let mut sized = Case::new("ion sizes", lake(), vec![open(4.2e-4), warm(25.0)], &[]);
+    sized.model = "debye-hueckel";
+    let mut fitted = Case::new("ion sizes in a brine", brine(), vec![calcite(0.3)], &[]);
+    fitted.model = "truesdell-jones";
+    let mut specific = Case::new(
+        "specific interactions in a brine",
+        brine(),
+        vec![warm(30.0), calcite(0.0)],
+        &["n(calcite)"],
+    );
+    specific.model = "sit";
+    cases.extend([sized, fitted, specific]);
     let mut made_up = Case::new("charges made up", lake(), vec![open(4.2e-4)], &["total(Cl)"]);
     made_up.texts.push(("make_up", "Cl"));
     let mut neutral = Case::new("electroneutral", lake_with(&[dic], &["pH", "alkalinity"]), vec![], &[]);
@@ -389,6 +408,40 @@ fn sensitivities_of_states_are_difference_quotients() {
     };
     let differences: Vec<String> = cases().par_iter().flat_map_iter(differing).collect();
     assert!(differences.is_empty(), "{}", differences.join("\n"));
+}
+
+/// The uncertain parameters of an activity model reach the budget with the slope of whole solves.
+#[test]
+fn parameters_of_activity_models_are_inputs() {
+    let given = |model: &str, table: &str, key: &str, text: String| {
+        let entries = Value::Map(BTreeMap::from([(key.to_string(), Value::Text(text))]));
+        let options = Named::new(BTreeMap::from([(table.to_string(), entries)]));
+        freshwater().with_activity(ActivityChoice::read(model, options).unwrap())
+    };
+    let cases = cases();
+    for (model, table, key, value, unit, label) in [
+        ("sit", "epsilon", "Na^+ Cl^-", 0.03, "kg/mol", "Na^+ Cl^-"),
+        ("sit", "epsilon", "Ca^2+ Cl^-", 0.14, "kg/mol", "Ca^2+ Cl^-"),
+        ("truesdell-jones", "b", "Na^+", 0.075, "kg/mol", "Na^+"),
+        ("truesdell-jones", "ion_size", "Ca^2+", 5.0, "angstrom", "ion size of Ca^2+"),
+    ] {
+        let case = cases.iter().find(|case| case.model == model).unwrap();
+        let sample = case.sample("", 0.0);
+        let with = |by: f64| given(model, table, key, format!("{} +/- 0.01 {unit}", value + by));
+        let state = case.state(&sample, &with(0.0));
+        let quotients = derivative(|by| case.numbers(&sample, &with(by)), 1e-3);
+        let mut moves = 0;
+        for (observable, quotient) in case.observables.iter().zip(quotients) {
+            let slope = slopes(&state, observable).get(label).copied().unwrap_or(0.0);
+            let allowed = 2e-6 * quotient.abs() + 1e-8;
+            assert!(
+                (slope - quotient).abs() <= allowed,
+                "{model} {key}, {observable}: {slope:e} {quotient:e}"
+            );
+            moves += usize::from(slope != 0.0);
+        }
+        assert!(moves > 4, "{model} {key}: {moves}");
+    }
 }
 
 /// Asserts that the slopes of some observables by one input are the difference quotients of whole solves.

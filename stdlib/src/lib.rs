@@ -1,6 +1,7 @@
 //! Published equilibrium constants and the ledgers made of them, embedded as text.
 //!
-//! One TOML file a publication in `constants/`, one list of entries a ledger in `ledgers/`; the engine reads them.
+//! One TOML file a publication in `constants/`, the parameters of activity models in `activity/`, one list of entries a ledger
+//! in `ledgers/`; the engine reads them.
 //! This crate holds data only: it parses nothing and computes nothing. The format and the known contradictions are
 //! described in its README.
 
@@ -46,6 +47,13 @@ pub const CONSTANTS: &[(&str, &str)] = &[
     ("yao-millero1995", include_str!("../constants/yao-millero1995.toml")),
 ];
 
+/// `(file name without extension, TOML text)` of every file in `activity/`, in alphabetical order.
+pub const ACTIVITY: &[(&str, &str)] = &[
+    ("grenthe1992", include_str!("../activity/grenthe1992.toml")),
+    ("kielland1937", include_str!("../activity/kielland1937.toml")),
+    ("truesdell1974", include_str!("../activity/truesdell1974.toml")),
+];
+
 /// `(file name without extension, TOML text)` of every file in `ledgers/`, in alphabetical order.
 pub const LEDGERS: &[(&str, &str)] = &[
     ("formation", include_str!("../ledgers/formation.toml")),
@@ -55,7 +63,7 @@ pub const LEDGERS: &[(&str, &str)] = &[
 
 #[cfg(test)]
 mod tests {
-    use super::{CONSTANTS, LEDGERS};
+    use super::{ACTIVITY, CONSTANTS, LEDGERS};
     use std::path::Path;
 
     /// Names of the TOML files in a folder of this crate, in alphabetical order.
@@ -76,13 +84,14 @@ mod tests {
         let listed =
             |files: &[(&str, &str)]| files.iter().map(|(name, _)| (*name).to_owned()).collect::<Vec<_>>();
         assert_eq!(listed(CONSTANTS), toml_files("constants"));
+        assert_eq!(listed(ACTIVITY), toml_files("activity"));
         assert_eq!(listed(LEDGERS), toml_files("ledgers"));
     }
 
     #[test]
     fn every_file_of_constants_names_itself_and_is_in_the_bibliography() {
         let bibliography = include_str!("../references.bib");
-        for (name, text) in CONSTANTS {
+        for (name, text) in CONSTANTS.iter().chain(ACTIVITY) {
             assert!(text.contains(&format!("key = \"{name}\"")), "`{name}` carries another key");
             assert!(bibliography.contains(&format!("{{{name},")), "`{name}` is not in references.bib");
         }

@@ -2,14 +2,14 @@
 
 use std::collections::BTreeMap;
 
-use lysocline_engine::activity::{Davies, Model as ActivityModel};
+use lysocline_engine::activity::Composition;
 use lysocline_engine::chem::{Equation, GasStandard, LogK, Rational, Reaction, Species, rational};
-use lysocline_engine::equilibrium::{State, equilibrate};
+use lysocline_engine::equilibrium::{State, activity as equations, equilibrate};
 use lysocline_engine::ledger::{ActivityChoice, Ledger, file, shipped};
 use lysocline_engine::named::{Named, Value};
 use lysocline_engine::physics::{constants, water};
 use lysocline_engine::solve::Settings;
-use lysocline_engine::units::{Temperature, Unit};
+use lysocline_engine::units::{Pressure, Temperature, Unit};
 use lysocline_engine::water::{Sample, Treatment};
 
 use super::check::{Case, Check, Entry, File, Kind};
@@ -49,12 +49,21 @@ fn answer(file: &File, check: &Check, given: &mut Given) -> Result<Answer, Strin
             only("log_k", conditional_log_k(check, given.take("ionic_strength [mol/kg]")?)?)
         }
         Kind::ActivityCoefficient => {
-            let (model, ionic_strength) = (davies(check)?, given.take("ionic_strength [mol/kg]")?);
+            let (choice, ionic_strength) = (chosen(check)?, given.take("ionic_strength [mol/kg]")?);
             Ok(Box::new(move |column| {
-                let charge = column.strip_prefix("gamma(").and_then(|rest| rest.strip_suffix(')'));
-                let charge: f64 =
-                    charge.and_then(|charge| charge.parse().ok()).ok_or_else(|| unknown(column))?;
-                Ok(model.ln_gamma(charge, ionic_strength).exp())
+                let ion = column.strip_prefix("gamma(").and_then(|rest| rest.strip_suffix(')'));
+                let ion = ion.ok_or_else(|| unknown(column))?;
+                // An ion, or a charge by itself.
+                let (ions, charge) = match ion.parse() {
+                    Ok(charge) => (vec![], charge),
+                    Err(_) => {
+                        let ion = Species::parse(ion).map_err(text)?;
+                        (vec![ion.clone()], f64::from(ion.charge()))
+                    }
+                };
+                let ions: Vec<&Species> = ions.iter().collect();
+                let model = equations::model(&choice, &ions, Temperature::REFERENCE, Pressure::ATMOSPHERE);
+                Ok(model.ln_gamma(0, charge, ionic_strength).exp())
             }))
         }
         Kind::MeanActivityCoefficient => {
@@ -198,17 +207,23 @@ fn activity(check: &Check) -> Result<Option<ActivityChoice>, String> {
             };
             Ok(Some(ActivityChoice::Davies { a, b: model.b.ok_or("no `b`")?, water: model.water_activity }))
         }
-        Some(other) => Err(format!("no activity model `{other}`")),
+        Some(name) => {
+            let a = match &model.a {
+                Some(Entry::Number(a)) => Some(*a),
+                None => None,
+                Some(Entry::Text(_)) => {
+                    return Err("`A` is a number, or left to the properties of water".into());
+                }
+            };
+            let options = numbers([("A", a), ("water_activity", model.water_activity)]);
+            ActivityChoice::read(name, options).map(Some).map_err(text)
+        }
     }
 }
 
-fn davies(check: &Check) -> Result<ActivityModel, String> {
-    match activity(check)? {
-        Some(ActivityChoice::Davies { a: Some(a), b, .. }) => {
-            Ok(ActivityModel::davies(Davies::new(a).with_b(b)))
-        }
-        _ => Err("a Davies model with its `A` is needed".into()),
-    }
+/// The activity model of a check that names one.
+fn chosen(check: &Check) -> Result<ActivityChoice, String> {
+    activity(check)?.ok_or_else(|| "no `activity_model`".into())
 }
 
 fn reaction_of(check: &Check) -> Result<&str, String> {
@@ -305,8 +320,8 @@ fn numbers<const N: usize>(options: [(&str, Option<f64>); N]) -> Named {
     Named::new(entries.collect())
 }
 
-/// Mean activity coefficient of a salt: K of its dissolution in molalities is K of activities over the product of its
-/// coefficients.
+/// Mean activity coefficient of a salt: from the parameters of its ions, or from `delta_epsilon`: K of its dissolution in
+/// molalities is K of activities over the product of its coefficients.
 fn mean_activity_coefficient(check: &Check, molality: f64) -> Result<f64, String> {
     let dissolution = Equation::parse(reaction_of(check)?).map_err(text)?;
     let ions = || dissolution.terms().iter().filter(|(species, _)| species.is_solute());
@@ -314,6 +329,16 @@ fn mean_activity_coefficient(check: &Check, molality: f64) -> Result<f64, String
         ions().map(|(species, n)| rational::to_f64(*n) * of(species)).sum()
     };
     let ionic_strength = molality * sum(&|ion| f64::from(ion.charge()).powi(2)) / 2.0;
+    if check.model.delta_epsilon.is_none() {
+        let (ions, n): (Vec<&Species>, Vec<f64>) =
+            ions().map(|(species, n)| (species, rational::to_f64(*n))).unzip();
+        let model = equations::model(&chosen(check)?, &ions, Temperature::REFERENCE, Pressure::ATMOSPHERE);
+        let charges: Vec<f64> = ions.iter().map(|ion| f64::from(ion.charge())).collect();
+        let molalities: Vec<f64> = n.iter().map(|n| n * molality).collect();
+        let at = Composition { charges: &charges, molalities: &molalities, ionic_strength };
+        let sum_ln: f64 = model.ln_gammas(at).iter().zip(&n).map(|(ln_gamma, n)| n * ln_gamma).sum();
+        return Ok((sum_ln / n.iter().sum::<f64>()).exp());
+    }
     let log_k = converted(check, 0.0, ionic_strength)?.log_k().map_err(text)?.value();
     Ok(10_f64.powf(-log_k / sum(&|_| 1.0)))
 }

@@ -12,6 +12,7 @@
 //! ∫₀ᴵ 2 I' f' dI' = A ( 2 [ (1 + x) - 2 ln(1 + x) - 1/(1 + x) ] - b I² ),    x = √I
 //! ```
 
+use super::electrostatic;
 use crate::physics::constants::{LN_10, WATER_MOLAR_MASS};
 
 /// The Davies equation with its two coefficients.
@@ -69,7 +70,8 @@ impl Davies {
     /// ln of the activity of water. `total_molality` is Σ m over all solutes, mol/kg(water).
     #[must_use]
     pub fn ln_water_activity(&self, total_molality: f64, ionic_strength: f64) -> f64 {
-        let electrostatic = limiting_integral(ionic_strength.sqrt()) - self.b * ionic_strength.powi(2);
+        let electrostatic = 2.0 * ionic_strength * electrostatic::mean_term(1.0, ionic_strength)
+            - self.b * ionic_strength.powi(2);
         -WATER_MOLAR_MASS * (total_molality - self.a_ln * electrostatic)
     }
 
@@ -80,16 +82,6 @@ impl Davies {
         let x = ionic_strength.sqrt();
         let electrostatic = self.a_ln * (x / (1.0 + x).powi(2) - 2.0 * self.b * ionic_strength);
         (-WATER_MOLAR_MASS, WATER_MOLAR_MASS * electrostatic)
-    }
-}
-
-/// ∫ x/(1 + x)² dI from 0 to I = x², by its series where the closed form cancels.
-fn limiting_integral(x: f64) -> f64 {
-    if x < 0.02 {
-        // 2 ∫ x² (1 - 2x + 3x² - ...) dx; the ninth term is below 1e-17 of the first
-        (0..9).rev().fold(0.0, |sum, k| f64::from(k + 1) / f64::from(k + 3) - x * sum) * 2.0 * x.powi(3)
-    } else {
-        2.0 * (x + x / (1.0 + x) - 2.0 * x.ln_1p())
     }
 }
 

@@ -10,6 +10,7 @@
 //! ```
 
 use super::analysis::Analysed;
+use super::dosing::short;
 use super::error::EquilibriumError;
 use super::observable::Asked;
 use super::state::State;
@@ -21,6 +22,7 @@ use crate::solve::scalar::{self, Tolerance};
 use crate::text::list;
 use crate::units::{Style, Unit};
 use crate::water::concentration::{Amount, Per, Solution};
+use crate::water::sample::StatedTreatment;
 use crate::water::{Adjust, Dose, Sample, Treatment};
 
 /// Amounts are searched in ln(1 + d / this), mol/kg(water): even below it, by decades above.
@@ -45,16 +47,16 @@ pub fn resolve(
     settings: &Settings,
 ) -> Result<(Sample, Vec<String>), EquilibriumError> {
     let (mut done, mut notes) = (Vec::new(), Vec::new());
-    for treatment in sample.treatments() {
+    for (treatment, stated) in sample.stated_treatments() {
         match treatment {
             Treatment::Adjust(adjust) => {
-                let search = Search::new(sample, &done, analysed, settings, adjust)?;
+                let search = Search::new(sample, &done, analysed, settings, &adjust)?;
                 let (amounts, note) = search.amounts()?;
                 notes.push(note);
                 let doses = search.doses(&amounts)?;
-                done.extend(doses.into_iter().map(Treatment::Dose));
+                done.extend(doses.into_iter().map(|dose| (Treatment::Dose(dose), None)));
             }
-            other => done.push(other.clone()),
+            other => done.push((other, stated)),
         }
     }
     Ok((sample.with_treatments(done), notes))
@@ -68,12 +70,13 @@ pub fn is_needed(sample: &Sample) -> bool {
 
 struct Search<'a> {
     sample: &'a Sample,
-    before: &'a [Treatment],
+    before: &'a [StatedTreatment],
     analysed: &'a Analysed,
     settings: &'a Settings,
     reagents: Vec<&'a str>,
     /// The least and the most of each reagent, mol/kg(water).
     bounds: Vec<(f64, f64)>,
+    names: Vec<&'a str>,
     asked: Vec<Asked>,
     targets: Vec<&'a Quantity>,
 }
@@ -81,7 +84,7 @@ struct Search<'a> {
 impl<'a> Search<'a> {
     fn new(
         sample: &'a Sample,
-        before: &'a [Treatment],
+        before: &'a [StatedTreatment],
         analysed: &'a Analysed,
         settings: &'a Settings,
         adjust: &'a Adjust,
@@ -105,6 +108,7 @@ impl<'a> Search<'a> {
             settings,
             reagents: adjust.reagents.iter().map(|(name, ..)| name.as_str()).collect(),
             bounds: adjust.reagents.iter().map(|(_, least, most)| (water(least), water(most))).collect(),
+            names: adjust.targets.iter().map(|(name, _)| name.as_str()).collect(),
             asked: adjust.targets.iter().map(asked).collect::<Result<_, _>>()?,
             targets: adjust.targets.iter().map(|(_, target)| target).collect(),
         })
@@ -127,15 +131,15 @@ impl<'a> Search<'a> {
     }
 
     fn wanted(&self) -> String {
-        let target =
-            |(asked, target): (&Asked, &&Quantity)| format!("{} {}", asked.observable, shown(target));
-        list(&self.asked.iter().zip(&self.targets).map(target).collect::<Vec<_>>())
+        let target = |(name, target): (&&str, &&Quantity)| format!("{name} {}", shown(target));
+        list(&self.names.iter().zip(&self.targets).map(target).collect::<Vec<_>>())
     }
 
     /// The water with so much of each reagent.
     fn state(&self, amounts: Vec<Quantity>) -> Result<State, EquilibriumError> {
         let doses = self.reagents.iter().zip(amounts).map(|(reagent, moles)| {
-            Treatment::Dose(Dose { reagent: (*reagent).into(), amount: Amount { moles, per: Per::Water } })
+            let amount = Amount { moles, per: Per::Water };
+            (Treatment::Dose(Dose { reagent: (*reagent).into(), amount }), None)
         });
         let trial = self.sample.with_treatments(self.before.iter().cloned().chain(doses).collect());
         let outcome = treat(&trial, self.analysed, self.settings)?;
@@ -192,11 +196,11 @@ impl<'a> Search<'a> {
         let told = match nearest {
             None => why.unwrap_or_else(|| "there is no equilibrium".into()),
             Some((amounts, misses)) => {
-                let value = |((asked, target), miss): ((&Asked, &&Quantity), &f64)| {
-                    format!("{} {}", asked.observable, short(target.value() + miss))
+                let value = |((name, target), miss): ((&&str, &&Quantity), &f64)| {
+                    format!("{name} {}", short(target.value() + miss))
                 };
                 let values: Vec<String> =
-                    self.asked.iter().zip(&self.targets).zip(&misses).map(value).collect();
+                    self.names.iter().zip(&self.targets).zip(&misses).map(value).collect();
                 format!("the nearest is {}, with {} mol/kg(water)", list(&values), words(&amounts))
             }
         };
@@ -352,12 +356,9 @@ fn amount(coordinate: f64) -> f64 {
     SMALL * coordinate.exp_m1()
 }
 
-fn short(number: f64) -> String {
-    format!("{}", format!("{number:.4e}").parse::<f64>().unwrap_or(number))
-}
-
 fn shown(target: &Quantity) -> String {
-    let unit = target.unit().display(Style::Ascii);
+    let unit =
+        if *target.unit() == Unit::one() { String::new() } else { target.unit().display(Style::Ascii) };
     format!("{} {unit}", short(target.value())).trim_end().into()
 }
 

@@ -19,7 +19,7 @@ use super::dissolved_mass::{self, CARBONATE_MASS};
 use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
-use crate::chem::{Element, Rational, Species, rational};
+use crate::chem::{Element, PhScale, Rational, Species, rational};
 use crate::ledger::{Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
@@ -123,13 +123,14 @@ pub fn analyse(
     let mut given = amounts(measured, ledger, &solution, &mut notes)?;
     given.extend(conservative(ledger, &given)?);
     let present = present_components(sample, measured, ledger, &given)?;
+    let setting = sample.setting();
     let system = match measured.ph_temperature {
-        None => System::new(ledger, &present, sample.setting().temperature)?,
+        None => System::new(ledger, &present, setting.temperature, setting.pressure)?,
         // Where pH was measured elsewhere, it was in a laboratory at the surface.
         Some(temperature) => {
             let surface = ledger.sea().map(|sea| Sea { pressure: Pressure::ATMOSPHERE, ..sea });
             let ledger = surface.map_or_else(|| Ok(ledger.clone()), |surface| ledger.in_sea(surface))?;
-            System::new(&ledger, &present, temperature)?
+            System::new(&ledger, &present, temperature, Pressure::ATMOSPHERE)?
         }
     };
     let mut totals = vec![0.0; system.n_components()];
@@ -180,7 +181,7 @@ pub fn restore(
     }
     present.extend(formed.iter().flat_map(|formed| formed.stoichiometry.iter().map(|(j, _)| *j)));
     present.extend(formations.component(&Species::proton()));
-    let system = System::new(ledger, &present, sample.setting().temperature)?;
+    let system = System::new(ledger, &present, sample.setting().temperature, sample.setting().pressure)?;
     let mut totals = vec![0.0; system.n_components()];
     let mut measured = Vec::new();
     for (formed, (_, moles)) in formed.into_iter().zip(&dissolved.totals) {
@@ -774,7 +775,9 @@ impl<'a> Analysis<'a> {
                 let Some(Ph::Measured(ph)) = &self.evidence.ph else { return None };
                 let slope = (Variable::LnActivity(self.proton), -1.0 / LN_10);
                 let computed = self.system.ph_shift() - converged.ln_a[self.proton] / LN_10;
-                (ph.clone(), 1.0, computed, vec![slope])
+                let scale = self.system.ledger().sea().map_or(PhScale::Free, |sea| sea.ph_scale);
+                let by_kelvin = (Variable::Temperature, self.system.ph_shift_per_kelvin(scale));
+                (ph.clone(), 1.0, computed, vec![slope, by_kelvin])
             }
             "alkalinity" | "DIC" => {
                 let carbon = self.carbon;

@@ -2,23 +2,24 @@
 
 use std::collections::BTreeSet;
 
-use crate::activity::{Davies, Model};
-use crate::chem::{Element, Rational, Species, rational};
-use crate::ledger::{ActivityChoice, Formation, Formations, Ledger, LedgerError, Sea};
+use crate::activity::Model;
+use crate::chem::{Element, PhScale, Rational, Species, rational};
+use crate::ledger::{Formation, Formations, Ledger, LedgerError, Sea};
 use crate::physics::constants::LN_10;
-use crate::physics::water;
 use crate::seawater::constants::{Place, log_k_free};
 use crate::seawater::scales::Scales;
 use crate::solve::{Problem, Row, Total};
-use crate::units::Temperature;
+use crate::units::{Pressure, Temperature};
 
+use super::activity;
 use super::error::EquilibriumError;
 
-/// The species, gases and solids that can occur with the components present, at one temperature.
+/// The species, gases and solids that can occur with the components present, at one temperature and pressure.
 #[derive(Debug, Clone)]
 pub struct System {
     ledger: Ledger,
     temperature: Temperature,
+    pressure: Pressure,
     /// Positions in the ledger's components, water left out: the solver's component k is `components[k]`.
     components: Vec<usize>,
     /// Positions in [`Formations::species`], with their rows.
@@ -47,6 +48,7 @@ impl System {
         ledger: &Ledger,
         present: &BTreeSet<usize>,
         temperature: Temperature,
+        pressure: Pressure,
     ) -> Result<Self, EquilibriumError> {
         let formations = ledger.formations();
         if let Some((name, _)) = formations.too_large.first().and_then(|k| ledger.reactions().nth(*k)) {
@@ -66,8 +68,10 @@ impl System {
             .partition(|(i, _)| formations.species[*i].species.is_solute());
         let phases =
             others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
-        let model = model(ledger.activity(), temperature);
-        Ok(Self { ledger: ledger.clone(), temperature, components, solutes, phases, model, doubts })
+        let dissolved: Vec<&Species> =
+            solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
+        let model = activity::model(ledger.activity(), &dissolved, temperature, pressure);
+        Ok(Self { ledger: ledger.clone(), temperature, pressure, components, solutes, phases, model, doubts })
     }
 
     /// The same species with the constants of another temperature; whether cycles close there is not asked.
@@ -75,8 +79,10 @@ impl System {
     pub fn at(&self, temperature: Temperature) -> Self {
         let formations = self.ledger.formations();
         let (log_k, doubts) = constants(&self.ledger, temperature);
-        let mut system =
-            Self { temperature, doubts, model: model(self.ledger.activity(), temperature), ..self.clone() };
+        let dissolved: Vec<&Species> =
+            self.solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
+        let model = activity::model(self.ledger.activity(), &dissolved, temperature, self.pressure);
+        let mut system = Self { temperature, doubts, model, ..self.clone() };
         for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
             row.ln_k = ln_k(&formations.species[*index], &log_k);
         }
@@ -93,6 +99,12 @@ impl System {
     #[must_use]
     pub fn temperature(&self) -> Temperature {
         self.temperature
+    }
+
+    /// The pressure its activity model holds for; constants are those of 1 atm.
+    #[must_use]
+    pub fn pressure(&self) -> Pressure {
+        self.pressure
     }
 
     /// The activity model.
@@ -130,6 +142,19 @@ impl System {
     #[must_use]
     pub fn ph_shift(&self) -> f64 {
         self.scales().map_or(0.0, |(sea, scales)| scales.shift_from_free(sea.ph_scale))
+    }
+
+    /// Change of pH on a scale less pH on the free scale, per kelvin; 0 outside seawater.
+    #[must_use]
+    pub fn ph_shift_per_kelvin(&self, scale: PhScale) -> f64 {
+        const STEP: f64 = 0.01;
+        let Some(sea) = self.ledger.sea() else { return 0.0 };
+        let at = |kelvin: f64| {
+            let place = Place::of(sea, Temperature::from_kelvin(kelvin).unwrap_or(self.temperature));
+            Scales::at(&self.ledger, &place).shift_from_free(scale)
+        };
+        let kelvin = self.temperature.kelvin();
+        (at(kelvin + STEP) - at(kelvin - STEP)) / (2.0 * STEP)
     }
 
     /// The sea of a marine system with its scales of pH.
@@ -246,23 +271,6 @@ fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[
 
 fn ln_k(formed: &Formation, log_k: &[f64]) -> f64 {
     formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum::<f64>() * LN_10
-}
-
-fn model(choice: ActivityChoice, temperature: Temperature) -> Model {
-    match choice {
-        ActivityChoice::Ideal => Model::IDEAL,
-        ActivityChoice::Davies { a, b, water: stated } => {
-            let a = a.unwrap_or_else(|| debye_huckel_a(temperature));
-            let model = Model::davies(Davies::new(a).with_b(b));
-            stated.map_or(model, |activity| model.with_ln_water_activity(activity.ln()))
-        }
-    }
-}
-
-fn debye_huckel_a(temperature: Temperature) -> f64 {
-    let t = temperature.kelvin();
-    let density = water::density(t);
-    water::debye_huckel_a(t, density, water::relative_permittivity(t, density))
 }
 
 /// The components that carry an element, water and the hydrogen ion left out.

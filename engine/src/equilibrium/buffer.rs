@@ -1,4 +1,13 @@
-//! Buffer factors: how CO2, hydrogen ion and carbonate answer to carbon and to alkalinity.
+//! How a water resists: its buffer intensity, and the buffer factors of the sea.
+//!
+//! Buffer intensity is how much strong base raises the pH (Van Slyke, D.D. (1922) On the measurement of buffer values,
+//! J. Biol. Chem. 52, 525-570; recalled):
+//!
+//! ```text
+//! β = d alkalinity / d pH = -dT_H / dpH      at constant totals of everything else
+//! ```
+//!
+//! Buffer factors are how CO2, hydrogen ion and carbonate answer to carbon and to alkalinity.
 //!
 //! ```text
 //! γ_X = (∂ ln [CO2]/∂X)⁻¹    β_X = (∂ ln [H^+]/∂X)⁻¹    ω_X = (∂ ln [CO3^2-]/∂X)⁻¹      X = DIC at constant alkalinity, or
@@ -6,14 +15,15 @@
 //! ```
 //!
 //! Egleston, Sabine and Morel (2010) Global Biogeochemical Cycles 24, GB1002; Revelle and Suess (1957) Tellus 9, 18-27.
-//! They are read from the linearised equilibrium of the water closed off, with every acid it holds, so they are the
-//! derivatives themselves.
+//! All are read from the linearised equilibrium of the water alone, closed to gases and apart from its solids, with every
+//! acid it holds, so they are the derivatives themselves.
 
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::assemble::carriers;
 use super::error::EquilibriumError;
 use super::state::State;
 use crate::chem::{Element, Species, rational};
+use crate::physics::constants::LN_10;
 use crate::solve::sensitivity::{Found, Sensitivities};
 use crate::solve::{Settings, solve};
 
@@ -70,6 +80,26 @@ pub fn buffer_factor(state: &State, of: Answering, by: Added) -> Result<f64, Equ
         }
     };
     Ok(1.0 / derivative)
+}
+
+/// Equivalents of strong base per kilogram of water and unit of pH.
+///
+/// # Errors
+///
+/// Returns that the water does not change smoothly, or that its pH would not change at all.
+pub fn intensity(state: &State) -> Result<f64, EquilibriumError> {
+    let fault = |why: &str| EquilibriumError::Unreachable(why.into());
+    let system = state.system();
+    let problem = system.problem(state.dissolved());
+    // As solved, the water may have had a pH held, or gases and solids around it.
+    let alone = solve(&problem, system.model(), &Settings::default(), None)
+        .map_err(|error| EquilibriumError::named(error, system, &[], &[]))?;
+    let sensitivities = Sensitivities::new(&problem, system.model(), &alone, &[])
+        .ok_or_else(|| fault("the water does not change smoothly here"))?;
+    let mut weight = Found::zero(&problem);
+    weight.ln_a[system.proton()] = -1.0 / LN_10;
+    let by_protons = sensitivities.pull(&weight).totals[system.proton()];
+    if by_protons < 0.0 { Ok(-1.0 / by_protons) } else { Err(fault("its pH does not answer to a base")) }
 }
 
 fn position(state: &State, species: &str) -> Option<usize> {

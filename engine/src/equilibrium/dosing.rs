@@ -12,25 +12,27 @@ use super::analysis::{self, Analysed};
 use super::assemble::System;
 use super::error::EquilibriumError;
 use super::treatment::reagent;
-use crate::chem::{Rational, rational};
+use crate::chem::{Rational, Species, rational};
 use crate::physics::{seawater, water};
 use crate::quantity::Quantity;
 use crate::units::{KgOf, Unit};
 use crate::water::concentration::{Amount, SALT_TERM, Solution};
-use crate::water::{Dose, Sample, Titrant, Treatment};
+use crate::water::{Analysis, Dose, Sample, Titrant, Treatment};
 
 /// What was done to the totals.
 #[derive(Debug, Clone)]
 pub struct Dosed {
     /// Reagents with moles per kilogram of water that dissolved; negative where they were taken away.
     pub amounts: Vec<(String, Quantity)>,
+    /// Solids that were put beside the water, mol/kg(water).
+    pub solids: Vec<(Species, Quantity)>,
     /// How many times as much a kilogram of water holds of what was there at first.
     pub concentrated: f64,
 }
 
 impl Default for Dosed {
     fn default() -> Self {
-        Self { amounts: vec![], concentrated: 1.0 }
+        Self { amounts: vec![], solids: vec![], concentrated: 1.0 }
     }
 }
 
@@ -66,6 +68,10 @@ impl<'a> Course<'a> {
             dosed: Dosed::default(),
             untouched: true,
         };
+        if let Analysis::Dissolved(dissolved) = sample.analysis() {
+            let solids = dissolved.totals.iter().filter(|(species, _)| species.is_solid());
+            course.dosed.solids.extend(solids.cloned());
+        }
         for treatment in sample.treatments() {
             course.meet(treatment)?;
         }
@@ -90,6 +96,7 @@ impl<'a> Course<'a> {
                 let change = self.change(&formed.stoichiometry);
                 let factor = amount.per.to_basis(&self.litre());
                 self.add(&amount.moles, &change, factor);
+                self.dosed.solids.push((formed.species.clone(), per_water(&amount.moles, factor)?));
                 Ok(())
             }
             Treatment::Concentrate(_) if self.system.ledger().sea().is_some() => {
@@ -133,7 +140,8 @@ impl<'a> Course<'a> {
         let scale = |numbers: &mut Vec<f64>| numbers.iter_mut().for_each(|number| *number *= factor);
         scale(&mut self.totals);
         self.measured.iter_mut().for_each(|(_, change)| scale(change));
-        for (_, amount) in &mut self.dosed.amounts {
+        let solids = self.dosed.solids.iter_mut().map(|(_, amount)| amount);
+        for amount in self.dosed.amounts.iter_mut().map(|(_, amount)| amount).chain(solids) {
             *amount = per_water(amount, factor).unwrap_or_else(|_| amount.clone());
         }
         self.dosed.concentrated *= factor;
@@ -193,11 +201,12 @@ impl<'a> Course<'a> {
             .min_by(|a, b| a.0.total_cmp(&b.0));
         match most {
             Some((most, k)) if wanted > most * (1.0 + 1e-12) => Err(EquilibriumError::Unreachable(format!(
-                "`remove`: {wanted:.4e} mol/kg(water) of `{}` is more than there is; the water holds {:.4e} of {}, \
-                 so {most:.4e} can be taken away",
+                "`remove`: {} mol/kg(water) of `{}` is more than there is; the water holds {} of {}, so {} can be taken away",
+                short(wanted),
                 dose.reagent,
-                self.totals[k],
-                self.system.component_species(k)
+                short(self.totals[k]),
+                self.system.component_species(k),
+                short(most),
             ))),
             _ => Ok(()),
         }
@@ -236,4 +245,9 @@ fn per_water(moles: &Quantity, factor: f64) -> Result<Quantity, EquilibriumError
     let unit = Unit::parse("mol/kg(water)").expect("a known unit");
     Quantity::from_partials(moles.value() * factor, unit, &[(moles, factor)])
         .map_err(|error| EquilibriumError::Unreachable(error.to_string()))
+}
+
+/// A number of five digits, for messages.
+pub(super) fn short(number: f64) -> String {
+    format!("{number:.4e}").parse::<f64>().unwrap_or(number).to_string()
 }

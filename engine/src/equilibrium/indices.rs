@@ -19,6 +19,10 @@ const FUGACITY_INTERVALS: usize = 20;
 
 /// Calcium carbonate that a water deposits until calcite is at equilibrium, mol/kg(water); negative if it dissolves some.
 ///
+/// The water is closed to gases, so that acidity, and alkalinity less twice the calcium, stay as they are: with x deposited
+/// the alkalinity falls by 2 x, which is how the marble test reads it. As mg/L of CaCO3 it is the trade's calcium carbonate
+/// precipitation potential.
+///
 /// # Errors
 ///
 /// Returns that the ledger knows no calcite, or why there is no equilibrium.

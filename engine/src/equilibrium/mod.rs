@@ -5,6 +5,7 @@
 //! questions in the user's names and units.
 
 pub mod acid_base;
+pub mod activity;
 mod adjust;
 pub mod analysis;
 pub mod assemble;

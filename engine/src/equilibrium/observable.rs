@@ -45,6 +45,8 @@ pub enum Observable {
     ChargeError,
     /// C - A.
     ChargeMisfit,
+    /// d alkalinity / d pH of the water alone.
+    BufferIntensity,
     /// Calcium carbonate that would form (positive) or dissolve until calcite is at equilibrium.
     CarbonatePotential,
     /// pH less the pH of equilibrium with calcite.
@@ -139,7 +141,7 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 /// Name, form as it is written, and what it is, in order of listing.
-pub const NAMES: [(&str, &str, &str); 37] = [
+pub const NAMES: [(&str, &str, &str); 38] = [
     (
         "pH",
         "pH",
@@ -155,7 +157,12 @@ pub const NAMES: [(&str, &str, &str); 37] = [
     ("hardness", "hardness", "calcium and magnesium, mol/kg(water)"),
     ("charge_error", "charge_error", "100 (C - A)/(C + A) over the charges of the ions as computed, %"),
     ("charge_misfit", "charge_misfit", "cations less anions, eq/kg(water)"),
-    ("CCPP", "CCPP", "calcium carbonate that would form until calcite is at equilibrium, mol/kg(water)"),
+    ("buffer_intensity", "buffer_intensity", "strong base per unit of pH, water alone, eq/kg(water)"),
+    (
+        "CCPP",
+        "CCPP",
+        "calcium carbonate that would form (negative: dissolve) until calcite is at equilibrium, mol/kg(water)",
+    ),
     ("Langelier", "Langelier", "pH less the pH at which calcite would be at equilibrium, alkalinity kept"),
     ("m", "m(Ca^2+)", "molality, mol/kg(water)"),
     ("c", "c(Ca^2+)", "concentration, mol/L"),
@@ -270,6 +277,7 @@ fn plain(name: &str) -> Observable {
         "hardness" => Observable::Hardness,
         "charge_error" => Observable::ChargeError,
         "charge_misfit" => Observable::ChargeMisfit,
+        "buffer_intensity" => Observable::BufferIntensity,
         "Langelier" => Observable::Langelier,
         _ => Observable::CarbonatePotential,
     }
@@ -317,6 +325,7 @@ impl fmt::Display for Observable {
             Self::Hardness => ("hardness", None),
             Self::ChargeError => ("charge_error", None),
             Self::ChargeMisfit => ("charge_misfit", None),
+            Self::BufferIntensity => ("buffer_intensity", None),
             Self::CarbonatePotential => ("CCPP", None),
             Self::Langelier => ("Langelier", None),
             Self::Molality(subject) => ("m", Some(subject)),

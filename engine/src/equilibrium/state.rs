@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 use std::sync::{Arc, OnceLock};
 
 use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
+use super::activity::assumptions;
 use super::analysis::{Analysed, Misfit, Outcome, Solid, ln_saturation, saturation_slopes, scaled};
 use super::assemble::{Doubt, System};
 use super::buffer::{self, Answering, buffer_factor};
@@ -11,7 +12,7 @@ use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
 use super::uncertainty::{Influence, Slopes, Stage, Variable};
-use crate::chem::{Element, Rational, Species, rational};
+use crate::chem::{Element, PhScale, Rational, Species, rational};
 use crate::ledger::{Formation, Formations, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::{gas_exchange, seawater, water};
@@ -373,7 +374,7 @@ impl State {
             Observable::PhOn(scale) => {
                 let (sea, scales) = self.scales(asked)?;
                 let shift = scales.shift_from_free(*scale) - scales.shift_from_free(sea.ph_scale);
-                plain(self.ph() + shift, "1", self.ph_slopes())
+                plain(self.ph() + shift, "1", self.ph_slopes_on(*scale))
             }
             Observable::Salinity => plain(self.scales(asked)?.0.salinity, "1", vec![]),
             Observable::Revelle => {
@@ -421,6 +422,14 @@ impl State {
                 let ((cations, mut slopes), (anions, by_anions)) = self.charges();
                 slopes.extend(scaled(&by_anions, -1.0));
                 plain(cations - anions, "eq/kg(water)", slopes)
+            }
+            Observable::BufferIntensity => {
+                let value = buffer::intensity(self).map_err(nothing)?;
+                // Its own derivatives would be second ones: what it is uncertain by is not stated.
+                let unit = Unit::parse("eq/kg(water)").expect("a known unit");
+                let unstated = Quantity::measured(value, unit, None, "buffer intensity")
+                    .map_err(|error| no_answer(asked, error.to_string()))?;
+                Ok(Answer { partials: vec![(unstated, 1.0)], ..Answer::new(value, "eq/kg(water)", vec![]) })
             }
             Observable::CarbonatePotential => {
                 let potential = indices::carbonate_potential(self).map_err(nothing)?;
@@ -530,7 +539,17 @@ impl State {
     }
 
     pub(super) fn ph_slopes(&self) -> Slopes {
-        vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)]
+        let scale = self.system().ledger().sea().map_or(PhScale::Free, |sea| sea.ph_scale);
+        self.ph_slopes_on(scale)
+    }
+
+    /// The scales themselves change with temperature, as HSO4^- and HF do.
+    fn ph_slopes_on(&self, scale: PhScale) -> Slopes {
+        let mut slopes = vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)];
+        if scale != PhScale::Free {
+            slopes.push((Variable::Temperature, self.system().ph_shift_per_kelvin(scale)));
+        }
+        slopes
     }
 
     /// The sea of a seawater with its scales of pH.
@@ -798,6 +817,12 @@ impl State {
         let held = outcome.exchanged.iter().enumerate().find(|(_, (own, _))| own == name);
         let dosed: Vec<&Quantity> =
             outcome.dosed.amounts.iter().filter(|(own, _)| own == name).map(|(_, amount)| amount).collect();
+        if let (None, Some(formed)) = (held, self.formed(name)) {
+            let slopes = scaled(&formed.slopes, -sign);
+            let partials =
+                formed.partials.iter().map(|(amount, slope)| (amount.clone(), -sign * slope)).collect();
+            return Ok(Answer { value: -sign * formed.value, slopes, partials, ..formed });
+        }
         if held.is_none() && dosed.is_empty() {
             let names = outcome.exchanged.iter().map(|(own, _)| own.as_str());
             let mut names: Vec<&str> =
@@ -814,6 +839,18 @@ impl State {
         let slopes = held.map(|(f, _)| (Variable::ReservoirAmount(f), sign)).into_iter().collect();
         let partials = dosed.into_iter().map(|amount| (amount.clone(), sign)).collect();
         Ok(Answer { molar_mass, partials, ..Answer::new(sign * amount, "mol/kg(water)", slopes) })
+    }
+
+    /// What formed of a solid that may form, less what was there before.
+    fn formed(&self, name: &str) -> Option<Answer> {
+        let species = self.system().ledger().find_phase(name).ok()?;
+        let solid =
+            self.solid(species).filter(|solid| matches!(solid.slope.0, Variable::MineralAmount(_)))?;
+        let before = self.0.outcome.dosed.solids.iter().filter(|(own, _)| own == species);
+        let partials: Vec<(Quantity, f64)> = before.map(|(_, amount)| (amount.clone(), -1.0)).collect();
+        let there: f64 = partials.iter().map(|(amount, _)| amount.value()).sum();
+        let answer = amount(solid.amount - there, "mol/kg(water)", species, vec![solid.slope]);
+        Some(Answer { partials, ..answer })
     }
 
     /// Everything that can be asked, as a table of forms and meanings.
@@ -918,11 +955,20 @@ impl State {
         let mut warnings = self.0.notes.clone();
         let certificate = self.certificate();
         if certificate.outside_validity {
+            let model = self.system().model();
             warnings.push(format!(
-                "ionic strength {:.2} mol/kg(water) is beyond the range of the activity model",
-                self.0.outcome.converged.ionic_strength
+                "ionic strength {:.2} mol/kg(water) is beyond the range of the activity model: the {} holds to {} mol/kg(water)",
+                self.0.outcome.converged.ionic_strength,
+                model.name(),
+                model.valid_to().unwrap_or(f64::INFINITY)
             ));
         }
+        let solutes = self.system().solutes().zip(&self.0.molalities);
+        let matter: Vec<(&Species, f64)> = solutes
+            .filter(|(formed, molality)| self.matters(formed, **molality))
+            .map(|(formed, molality)| (&formed.species, *molality))
+            .collect();
+        warnings.extend(assumptions(self.system().ledger().activity(), &matter, self.temperature()));
         let mut doubts: BTreeMap<String, Vec<String>> = BTreeMap::new();
         for (formed, molality) in self.system().solutes().zip(&self.0.molalities) {
             if self.matters(formed, *molality) {
@@ -965,8 +1011,17 @@ impl State {
     pub fn choices(&self) -> Option<String> {
         let sea = self.system().ledger().sea()?;
         let choices = self.system().ledger().choices();
-        let choices: Vec<String> = choices.iter().map(|(name, author)| format!("{name} {author}")).collect();
-        Some(format!("{}; pH on the {} scale", choices.join(", "), sea.ph_scale.word()))
+        // Constants of one publication go together: `K1 K2 Lueker 2000`.
+        let mut by_author: Vec<(String, String)> = Vec::new();
+        for (name, author) in choices {
+            match by_author.last_mut().filter(|(_, last)| *last == author) {
+                Some((names, _)) => *names = format!("{names} {name}"),
+                None => by_author.push((name, author)),
+            }
+        }
+        let words: Vec<String> =
+            by_author.iter().map(|(names, author)| format!("{names} {author}")).collect();
+        Some(format!("{}; pH on the {} scale", words.join(", "), sea.ph_scale.word()))
     }
 
     /// What each species holds of the alkalinity, the largest share first.

@@ -36,8 +36,13 @@ pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Resul
         _ => None,
     });
     let temperature = warmed.map_or(sample.setting().temperature, |(temperature, _)| temperature);
+    let compressed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::CompressTo(pressure) => Some(*pressure),
+        _ => None,
+    });
+    let pressure = compressed.unwrap_or(sample.setting().pressure);
     let present = analysed.system.components().iter().copied().collect();
-    let system = System::new(&ledger_in_place(sample, &analysed.system)?, &present, temperature)?;
+    let system = System::new(&ledger_in_place(sample, &analysed.system)?, &present, temperature, pressure)?;
     let mut surroundings = Surroundings::read(sample, &system)?;
     let course = Course::run(sample, &system, analysed)?;
     // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.

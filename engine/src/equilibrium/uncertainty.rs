@@ -18,8 +18,10 @@
 
 use std::collections::BTreeMap;
 
+use super::activity::{ParameterEffect, parameter_effects};
 use super::analysis::Outcome;
 use super::assemble::System;
+use crate::activity::Composition;
 use crate::chem::{Reaction, Species, rational};
 use crate::ledger::Formation;
 use crate::physics::constants::LN_10;
@@ -117,6 +119,8 @@ pub struct Stage {
     sensitivities: Sensitivities,
     zero: Found,
     by_temperature: Option<Given>,
+    /// Uncertain parameters of the activity model, with the change of everything given per unit.
+    by_parameters: Vec<(Quantity, Given)>,
 }
 
 impl Stage {
@@ -136,7 +140,8 @@ impl Stage {
             None => None,
             Some(_) => Some(by_temperature(outcome, conditions, &problem)?),
         };
-        Some(Self { sensitivities, zero: Found::zero(&problem), by_temperature })
+        let by_parameters = by_parameters(outcome, &problem);
+        Some(Self { sensitivities, zero: Found::zero(&problem), by_temperature, by_parameters })
     }
 }
 
@@ -204,6 +209,9 @@ impl Influence {
         }
         if let Some(change) = &stage.by_temperature {
             self.add_temperature(outcome, product(&by, change));
+        }
+        for (parameter, change) in &stage.by_parameters {
+            self.measured.push((parameter.clone(), product(&by, change)));
         }
         let by_totals: Vec<f64> = by.totals.iter().zip(direct).map(|(by, direct)| by + direct).collect();
         for (quantity, change) in &conditions.measured {
@@ -295,28 +303,64 @@ fn neighbours(system: &System) -> Option<(System, System)> {
 fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem) -> Option<Given> {
     let (above, below) = neighbours(&outcome.system)?;
     let per_kelvin = |above: f64, below: f64| (above - below) / (2.0 * TEMPERATURE_STEP);
-    let converged = &outcome.converged;
-    let total_molality: f64 = converged.ln_c.iter().map(|ln_c| ln_c.exp()).sum();
-    let water = |system: &System| system.model().ln_water_activity(total_molality, converged.ionic_strength);
+    let solutes = SolutesOf::new(outcome, problem);
+    let water = |system: &System| system.model().ln_water_activity(solutes.composition());
+    let ln_gammas = |system: &System| system.model().ln_gammas(solutes.composition());
     let mut given = Given::zero(problem);
     given.ln_water_activity = per_kelvin(water(&above), water(&below));
     let rows = above.problem(&outcome.totals).species.into_iter().zip(below.problem(&outcome.totals).species);
     for (i, (warm, cold)) in rows.enumerate() {
-        let ln_gamma = |system: &System| system.model().ln_gamma(warm.charge, converged.ionic_strength);
         given.ln_k[i] = per_kelvin(warm.ln_k, cold.ln_k);
-        given.ln_gamma[i] = per_kelvin(ln_gamma(&above), ln_gamma(&below));
     }
+    let changes = ln_gammas(&above).into_iter().zip(ln_gammas(&below));
+    given.ln_gamma = changes.map(|(above, below)| per_kelvin(above, below)).collect();
     let ln_k = |species: &Species| {
         let ln_k = |system: &System| system.phase(species).map_or(0.0, |(_, row)| row.ln_k);
         per_kelvin(ln_k(&above), ln_k(&below))
     };
     for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
-        *value = held.phase.as_ref().map_or(0.0, |phase| -ln_k(phase));
+        // What is held and is no phase is a pH: in seawater on a scale that changes with temperature.
+        let of_ph = || per_kelvin(above.ph_shift(), below.ph_shift()) * LN_10;
+        *value = held.phase.as_ref().map_or_else(of_ph, |phase| -ln_k(phase));
     }
     for (value, solid) in given.minerals.iter_mut().zip(&conditions.minerals) {
         *value = -ln_k(&solid.species);
     }
     Some(given)
+}
+
+/// Change of everything the solver was given, per unit of each uncertain parameter of the activity model.
+fn by_parameters(outcome: &Outcome, problem: &Problem) -> Vec<(Quantity, Given)> {
+    let solutes = SolutesOf::new(outcome, problem);
+    let species: Vec<&Species> = outcome.system.solutes().map(|formed| &formed.species).collect();
+    let (choice, model) = (outcome.system.ledger().activity(), outcome.system.model());
+    let effects = parameter_effects(choice, model, &species, solutes.composition());
+    let given = |ParameterEffect { parameter, ln_gamma, ln_water_activity }| {
+        (parameter, Given { ln_gamma, ln_water_activity, ..Given::zero(problem) })
+    };
+    effects.into_iter().map(given).collect()
+}
+
+/// The solutes of an outcome, as the activity model asks for them.
+struct SolutesOf {
+    charges: Vec<f64>,
+    molalities: Vec<f64>,
+    ionic_strength: f64,
+}
+
+impl SolutesOf {
+    fn new(outcome: &Outcome, problem: &Problem) -> Self {
+        Self {
+            charges: problem.species.iter().map(|row| row.charge).collect(),
+            molalities: outcome.converged.ln_c.iter().map(|ln_c| ln_c.exp()).collect(),
+            ionic_strength: outcome.converged.ionic_strength,
+        }
+    }
+
+    fn composition(&self) -> Composition<'_> {
+        let (charges, molalities) = (&self.charges, &self.molalities);
+        Composition { charges, molalities, ionic_strength: self.ionic_strength }
+    }
 }
 
 /// `Σ derivative · change` over everything given.

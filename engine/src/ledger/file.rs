@@ -9,9 +9,10 @@ use std::collections::BTreeMap;
 use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
+use super::activity_choice::ActivityChoice;
 use super::composition::Constituent;
 use super::influence;
-use super::ledger::{ActivityChoice, Ledger};
+use super::ledger::Ledger;
 use super::shipped;
 use super::standard_formation::{self, Elements};
 use crate::chem::{Reaction, ReactionError, Species};
@@ -91,6 +92,11 @@ pub fn read_constants(file_key: &str, text: &str) -> Result<ConstantFile, Vec<Fi
     if faults.is_empty() { Ok(file) } else { Err(faults) }
 }
 
+/// Reads a file that is all tables and values.
+pub(super) fn read_tables(text: &str) -> Result<BTreeMap<String, Value>, Vec<FileFault>> {
+    Ok(Lines::parse(text)?.named(&[]).rest())
+}
+
 /// Reads the `[[element]]` entries of a file alone.
 pub(super) fn read_elements(file_key: &str, text: &str) -> Elements {
     Lines::parse(text)
@@ -114,7 +120,7 @@ pub fn load(file_key: &str, text: &str) -> Result<Ledger, Vec<FileFault>> {
 /// Every entry that cannot be had.
 pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
     let mut faults = Vec::new();
-    let mut ledger = Ledger::empty(&file.name, file.edition.clone()).with_activity(file.activity);
+    let mut ledger = Ledger::empty(&file.name, file.edition.clone()).with_activity(file.activity.clone());
     if file.is_marine {
         ledger = ledger.of_seawater();
     }
@@ -165,6 +171,9 @@ pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
     }
     let mut fault = |message: String| faults.push(FileFault { line: 1, message });
     ledger = with_entries(ledger, &file.own.constants, &file.own.formations, &mut fault);
+    if let Err(unknown) = file.activity.check(&ledger) {
+        fault(unknown.message);
+    }
     if faults.is_empty() { Ok(ledger) } else { Err(faults) }
 }
 
@@ -389,7 +398,10 @@ fn read_head(file_key: &str, mut named: Named) -> Result<LedgerFile, KeyFault> {
             return Err(KeyFault::new("activity_options", message));
         }
     };
-    let activity = ActivityChoice::read(&model, options)?;
+    let activity = ActivityChoice::read(&model, options).map_err(|fault| match fault.key.as_str() {
+        "activity_model" => fault,
+        _ => KeyFault::new("activity_options", fault.message),
+    })?;
     let solutes = named.texts("solutes")?.unwrap_or_default();
     let solutes = solutes.iter().map(|text| Species::parse(text)).collect::<Result<_, _>>();
     let solutes = solutes.map_err(|error| KeyFault::new("solutes", error.to_string()))?;

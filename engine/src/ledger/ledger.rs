@@ -4,6 +4,7 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::{Arc, OnceLock};
 
+use super::activity_choice::ActivityChoice;
 use super::alternative::{self, Alternative};
 use super::audit::{self, Audit, Cycle};
 use super::combine::{Combined, combine_routes};
@@ -11,7 +12,6 @@ use super::composition::{Constituent, Sea};
 use super::formation::{Formations, Leftover, in_bar, in_bar_at_sea};
 use super::reconcile::{self, Reconciliation};
 use crate::chem::{Constant, LogK, Reaction, ReactionError, Species};
-use crate::named::{KeyFault, Named};
 use crate::nearest::nearest;
 use crate::text::list;
 use crate::units::Temperature;
@@ -40,22 +40,6 @@ struct Inner {
     formations: OnceLock<Formations>,
     /// How it was reconciled; a change of its constants forgets it.
     reconciliation: Option<Arc<Reconciliation>>,
-}
-
-/// Which activity model a ledger asks for; its coefficients at a temperature are the activity room's business.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub enum ActivityChoice {
-    /// γ = 1.
-    Ideal,
-    /// Davies (1962).
-    Davies {
-        /// The Debye-Hückel A (log10 basis, kg½ mol-½) used at every temperature; `None`: from the properties of water.
-        a: Option<f64>,
-        /// The coefficient of the linear term, 0.3.
-        b: f64,
-        /// The activity of water used throughout; `None`: from the same model.
-        water: Option<f64>,
-    },
 }
 
 /// Why a ledger cannot be changed or asked.
@@ -138,12 +122,6 @@ fn known_alternatives(known: &[String]) -> String {
     if known.is_empty() { "there is none".into() } else { format!("the alternatives are {}", list(known)) }
 }
 
-impl Default for ActivityChoice {
-    fn default() -> Self {
-        Self::Davies { a: None, b: 0.3, water: None }
-    }
-}
-
 impl Default for Ledger {
     fn default() -> Self {
         Self::empty("ledger", None)
@@ -192,8 +170,8 @@ impl Ledger {
 
     /// The activity model.
     #[must_use]
-    pub fn activity(&self) -> ActivityChoice {
-        self.0.activity
+    pub fn activity(&self) -> &ActivityChoice {
+        &self.0.activity
     }
 
     /// One reaction, or formation of a species, by name.
@@ -609,57 +587,6 @@ impl Ledger {
 
     fn copy(&self) -> Inner {
         Inner { formations: OnceLock::new(), ..(*self.0).clone() }
-    }
-}
-
-impl ActivityChoice {
-    /// The models by name.
-    pub const NAMES: [&str; 2] = ["ideal", "davies"];
-
-    /// A model by name with its options: `A`, `b` and `water_activity` for `davies`.
-    ///
-    /// # Errors
-    ///
-    /// A fault of the name, under the key `activity_model`, or of an option.
-    pub fn read(name: &str, mut options: Named) -> Result<Self, KeyFault> {
-        let choice = match name {
-            "ideal" => Self::Ideal,
-            "davies" => {
-                let a = positive(&mut options, "A")?;
-                let b = options.number("b")?.unwrap_or(0.3);
-                let water = positive(&mut options, "water_activity")?;
-                Self::Davies { a, b, water }
-            }
-            other => {
-                let message = format!("no activity model `{other}`: there are {}", list(&Self::NAMES));
-                return Err(KeyFault::new("activity_model", message));
-            }
-        };
-        options.finish()?;
-        Ok(choice)
-    }
-}
-
-impl ActivityChoice {
-    /// The name and options that [`ActivityChoice::read`] makes it from.
-    #[must_use]
-    pub fn written(self) -> (&'static str, Vec<(&'static str, f64)>) {
-        match self {
-            Self::Ideal => ("ideal", vec![]),
-            Self::Davies { a, b, water } => {
-                let options = [("A", a), ("b", Some(b)), ("water_activity", water)];
-                ("davies", options.into_iter().filter_map(|(key, value)| Some((key, value?))).collect())
-            }
-        }
-    }
-}
-
-fn positive(options: &mut Named, key: &str) -> Result<Option<f64>, KeyFault> {
-    match options.number(key)? {
-        Some(number) if number <= 0.0 => {
-            Err(KeyFault::new(key, format!("`{key}` must be above zero, not {number}")))
-        }
-        number => Ok(number),
     }
 }
 

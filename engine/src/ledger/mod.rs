@@ -6,6 +6,7 @@
 //! [`standard_formation`] brings enthalpies and entropies of formation to bear on them. [`file`] reads and checks ledgers
 //! written as TOML, [`save`] writes them; [`shipped`] knows those that come with the program.
 
+mod activity_choice;
 mod alternative;
 mod audit;
 pub mod chi_square;
@@ -25,10 +26,11 @@ pub mod save;
 pub mod shipped;
 pub mod standard_formation;
 
+pub use activity_choice::{ActivityChoice, Interactions, IonParameters};
 pub use alternative::Alternative;
 pub use audit::{Audit, Cycle};
 pub use combine::{Combined, Routes, combine, combine_routes};
 pub use composition::{Constituent, Sea};
 pub use formation::{Formation, Formations, Leftover};
-pub use ledger::{ActivityChoice, Ledger, LedgerError};
+pub use ledger::{Ledger, LedgerError};
 pub use reconcile::{Move, Reconciliation};

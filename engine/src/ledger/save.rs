@@ -54,10 +54,10 @@ fn head(text: &mut String, ledger: &Ledger) {
     if ledger.is_marine() {
         text.push_str("medium = \"seawater\"\n");
     }
-    let (model, options) = ledger.activity().written();
-    let _ = writeln!(text, "activity_model = {}", quoted(model));
+    let _ = writeln!(text, "activity_model = {}", quoted(ledger.activity().name()));
+    let options = ledger.activity().written(|species| ledger.find_species(species.key()).is_ok());
     if !options.is_empty() {
-        let options: Vec<String> = options.iter().map(|(key, value)| format!("{key} = {value:?}")).collect();
+        let options: Vec<String> = options.iter().map(|(key, value)| format!("{key} = {value}")).collect();
         let _ = writeln!(text, "activity_options = {{ {} }}", options.join(", "));
     }
     let solutes: Vec<String> = ledger.solutes().map(|species| species.key().to_string()).collect();

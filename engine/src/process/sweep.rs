@@ -10,7 +10,7 @@ use crate::present::Column;
 use crate::quantity::Quantity;
 use crate::solve::Settings;
 use crate::units::{Kind, Pressure, Temperature, Unit, UnitError};
-use crate::water::{Sample, SampleError, Treatment};
+use crate::water::{Dose, Sample, SampleError, Treatment};
 
 /// The most points a sweep may have: more is taken for a slip.
 const MOST_POINTS: usize = 1_000_000;
@@ -32,6 +32,8 @@ enum Meaning {
     Ph,
     Fugacity(String, Unit),
     Saturation(String),
+    /// So much of a reagent, in a unit.
+    Dose(String, Unit),
     /// A key of the analysis, with the unit its values are in.
     Measured(String, Option<Unit>),
 }
@@ -45,7 +47,7 @@ pub enum SweepError {
     Observable(#[from] ObservableError),
     /// An observable that no treatment sets.
     #[error(
-        "`{0}` cannot be swept: an axis is `temperature`, `pressure`, `pH`, `f(CO2(g))`, `SI(calcite)`, \
+        "`{0}` cannot be swept: an axis is `temperature`, `pressure`, `pH`, `f(CO2(g))`, `SI(calcite)`, `added(HCl)`, \
          or a key of the analysis as `as measured: Ca`"
     )]
     NotAnAxis(String),
@@ -116,6 +118,11 @@ impl Axis {
             Meaning::Saturation(solid) => {
                 Ok(sample.treated(Treatment::Saturate { solid: solid.clone(), index: value })?)
             }
+            Meaning::Dose(reagent, unit) => {
+                let amount = Value::Quantity(Quantity::exact(value, unit.clone()));
+                let dose = Dose::read("dose", reagent, amount).map_err(SampleError::Treatment)?;
+                Ok(sample.treated(Treatment::Dose(dose))?)
+            }
             Meaning::Measured(key, unit) => {
                 let value = match unit {
                     None => Value::Number(value),
@@ -148,6 +155,7 @@ fn treatment(title: &str) -> Result<Meaning, SweepError> {
         Observable::Ph => Ok(Meaning::Ph),
         Observable::Fugacity(gas) => Ok(Meaning::Fugacity(gas, unit(Kind::Pressure)?)),
         Observable::SaturationIndex(solid) => Ok(Meaning::Saturation(solid)),
+        Observable::Added(reagent) => Ok(Meaning::Dose(reagent, unit(Kind::Amount)?)),
         _ => Err(SweepError::NotAnAxis(title.to_string())),
     }
 }

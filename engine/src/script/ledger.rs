@@ -62,10 +62,13 @@ fn show(ledger: &Ledger, _: &Style) -> String {
     )
 }
 
-fn activity_name(choice: ActivityChoice) -> &'static str {
+fn activity_name(choice: &ActivityChoice) -> &'static str {
     match choice {
         ActivityChoice::Ideal => "ideal",
         ActivityChoice::Davies { .. } => "Davies",
+        ActivityChoice::DebyeHuckel(_) => "extended Debye-Hueckel",
+        ActivityChoice::TruesdellJones(_) => "Truesdell-Jones",
+        ActivityChoice::Sit(_) => "specific ion interaction",
     }
 }
 
@@ -342,7 +345,9 @@ mod ledger_functions {
         Ok(ledger.merge(&other, prefer).map_err(Fail::from)?)
     }
 
-    /// A new ledger computed with another activity model: `"ideal"` or `"davies"`.
+    /// A new ledger computed with another activity model: `"ideal"`, `"davies"` (to 0.5 mol/kg), `"debye-hueckel"` (extended, with
+    /// ion sizes, to 0.1), `"truesdell-jones"` (to 3 in solutions of the ions it was fitted to), `"sit"` (specific ion
+    /// interaction, to 3.5). The water's activity follows from the same model.
     ///
     /// ```rhai
     /// let ideal = ledger("freshwater").with_activity_model("ideal");
@@ -352,13 +357,20 @@ mod ledger_functions {
     pub fn with_activity_model(ledger: &mut Ledger, name: &str) -> ScriptResult<Ledger> {
         with_activity_options(ledger, name, Map::new())
     }
-    /// The same with options: for `"davies"` the Debye-Hueckel `A` (log10, kg^0.5 mol^-0.5) at every temperature, `b`
-    /// (0.3), and `water_activity` where that of the model is not wanted.
+    /// The same with options: the Debye-Hueckel `A` (log10, kg^0.5 mol^-0.5) at every temperature, `water_activity` where that of
+    /// the model is not wanted; for `"davies"` its `b` (0.3); for `"debye-hueckel"` a table `ion_size` in angstrom, for
+    /// `"truesdell-jones"` also a table `b` in kg/mol; for `"sit"` a table `epsilon` in kg/mol. What a table does not name is as shipped.
+    ///
+    /// ```rhai
+    /// let own = ledger("freshwater").with_activity_model("sit", #{ epsilon: #{ "Ca^2+ SO4^2-": "0.1 +/- 0.05" } });
+    /// sample(#{ pH: 7, Na: 1.0, Cl: 1.0 }).equilibrate(own).gamma("Na^+").value > 0.6   // true
+    /// ```
     #[rhai_fn(name = "with_activity_model", pure, return_raw)]
     pub fn with_activity_options(ledger: &mut Ledger, name: &str, options: Map) -> ScriptResult<Ledger> {
         let choice = ActivityChoice::read(name, named(&options)?).map_err(|fault| {
             if fault.key == "activity_model" { fail(fault.message).argument(0) } else { Fail::from(fault) }
         })?;
+        choice.check(ledger).map_err(Fail::from)?;
         Ok(ledger.with_activity(choice))
     }
 

@@ -273,7 +273,7 @@ mod process_functions {
     /// let volumes = [2.4, 2.6, 2.8, 3.0];
     /// let pHs = [3.41, 3.24, 3.12, 3.03];
     /// let line = gran(volumes, pHs, #{ sample_volume: "100 mL", titrant: "0.1 mol/L HCl", between: [3.0, 3.5] });
-    /// fmt(line.volume.value, ".2f")   // "2.01"
+    /// fmt(line.volume.value, ".2f")   // "1.97"
     /// ```
     #[rhai_fn(return_raw)]
     pub fn gran(volumes: Dynamic, readings: Dynamic, options: Map) -> ScriptResult<Gran> {

@@ -491,8 +491,8 @@ mod state_functions {
 mod run_functions {
     use super::*;
 
-    /// Every combination of the values of some axes, as a run: an axis is `temperature`, `pressure`, `pH`, `f(CO2(g))` or
-    /// `SI(calcite)`, with a unit, or a key of the analysis as `as measured: Ca`. Axes in alphabetical order, last fastest.
+    /// Every combination of the values of some axes, as a run: an axis is `temperature`, `pressure`, `pH`, `f(CO2(g))`,
+    /// `SI(calcite)` or `added(HCl)`, with a unit, or a key of the analysis as `as measured: Ca`. Axes in alphabetical order, last fastest.
     ///
     /// ```rhai
     /// let rain = sample(#{ pH: "electroneutral" });

@@ -2,7 +2,7 @@
 
 use super::Phases;
 use super::dense::Lu;
-use super::exact::ExactSum;
+use super::exact::DoubleSum;
 use super::ionic_strength::Settled;
 use super::settings::Settings;
 use super::system::{System, ln_sum};
@@ -11,7 +11,8 @@ use crate::activity::Model;
 /// How well an answer satisfies its equations, and how far it can be trusted.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Certificate {
-    /// Largest error of a balance of the components, summed without rounding, relative to the sum of its absolute terms.
+    /// Largest error of a balance of the components, summed in twice the precision, relative to the sum of its
+    /// absolute terms.
     pub balance: f64,
     /// Component of that balance.
     pub balance_idx: usize,
@@ -31,6 +32,8 @@ pub struct Certificate {
     pub smallest_amount: f64,
     /// Error of the ionic strength, relative.
     pub ionic_strength: f64,
+    /// Largest difference of the specific part of an ln γ from that of the composition; 0 where the model has none.
+    pub ln_gamma: f64,
     /// Number of ionic strengths seen that agree with their composition; the answer belongs to the lowest.
     pub ionic_strength_roots: usize,
     /// Whether the ionic strength is beyond the range of the activity model.
@@ -50,6 +53,7 @@ impl Certificate {
             && self.present_saturation <= settings.saturation
             && self.smallest_amount >= 0.0
             && self.ionic_strength <= settings.ionic_strength
+            && self.ln_gamma <= settings.ln_gamma
     }
 }
 
@@ -83,6 +87,7 @@ pub(super) fn certify(system: &System, settled: &Settled, phases: &Phases, model
         present_saturation: present.map(f64::abs).fold(0.0, f64::max),
         smallest_amount: amounts.fold(f64::INFINITY, f64::min),
         ionic_strength: relative(settled.ionic_strength_residual, settled.ionic_strength),
+        ln_gamma: settled.ln_gamma_residual,
         ionic_strength_roots: settled.roots,
         outside_validity: model.valid_to().is_some_and(|limit| settled.ionic_strength > limit),
         condition,
@@ -116,17 +121,18 @@ fn worst_balance(system: &System, phases: &Phases) -> (f64, usize) {
     let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
     let terms: Vec<(usize, f64)> =
         amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
-    let mut worst = (0.0, 0);
-    let mut sum = ExactSum::default();
-    for k in 0..system.problem.n_components {
-        let mut magnitude = 0.0;
-        for &(row, amount) in &terms {
-            let coefficient = basis.input_row(row)[k];
-            if coefficient != 0.0 {
-                sum.add_product(coefficient, amount);
-                magnitude += (coefficient * amount).abs();
+    let n = system.problem.n_components;
+    let (mut sums, mut magnitudes) = (vec![DoubleSum::default(); n], vec![0.0; n]);
+    for &(row, amount) in &terms {
+        for (k, coefficient) in basis.input_row(row)[..n].iter().enumerate() {
+            if *coefficient != 0.0 {
+                sums[k].add_product(*coefficient, amount);
+                magnitudes[k] += (coefficient * amount).abs();
             }
         }
+    }
+    let mut worst = (0.0, 0);
+    for (k, (mut sum, mut magnitude)) in sums.into_iter().zip(magnitudes).enumerate() {
         for part in system.problem.totals[k].parts() {
             sum.add_product(-basis.scale(k), part);
             magnitude += (basis.scale(k) * part).abs();

@@ -8,8 +8,9 @@ use super::inner::{Point, Reduced};
 use super::phases;
 use super::scalar::{self, Sample, Tolerance};
 use super::settings::{Settings, SolveError};
+use super::specific;
 use super::system::System;
-use crate::activity::Model;
+use crate::activity::{Composition, Model};
 
 /// A composition with the activity coefficients that belong to it.
 pub(super) struct Settled {
@@ -21,20 +22,8 @@ pub(super) struct Settled {
     /// Number of ionic strengths seen that agree with their composition.
     pub(super) roots: usize,
     pub(super) ln_water_activity: f64,
-}
-
-impl Settled {
-    /// Σ m over the solutes, which come first among the rows.
-    fn total_molality(&self, system: &System) -> f64 {
-        let n_species = system.problem.species.len();
-        self.reduced
-            .species
-            .iter()
-            .zip(&self.point.c)
-            .filter(|(row, _)| **row < n_species)
-            .map(|(_, c)| c)
-            .sum()
-    }
+    /// Largest difference of the specific part of an ln γ from that of the composition.
+    pub(super) ln_gamma_residual: f64,
 }
 
 /// Solves with consistent activity coefficients and activity of water, starting from the values given.
@@ -46,14 +35,25 @@ pub(super) fn settle(
 ) -> Result<Settled, SolveError> {
     const MOST_PASSES: usize = 60;
 
+    if model.is_specific() {
+        return specific::settle(system, model, settings, start);
+    }
+    // What an earlier model left behind.
+    system.specific.fill(0.0);
     let (mut guess, mut ln_water_activity) = start;
     let solvent_matters = system.problem.rows().any(|(row, _)| row.water != 0.0);
     let mut change = f64::INFINITY;
+    // Where rounding stops all progress: ln a_w is the size of its own terms.
+    let stalled = |change: f64, before: f64, size: f64| {
+        change >= before && change <= 100.0 * settings.ln_water_activity * (1.0 + size)
+    };
     for _ in 0..MOST_PASSES {
-        let mut settled = Coupling { system, model, settings, ln_water_activity, last: None }.root(guess)?;
-        let updated = model.ln_water_activity(settled.total_molality(system), settled.ionic_strength);
+        let mut settled = at_solvent(system, model, settings, ln_water_activity, guess)?;
+        let updated = ln_water_activity_of(system, model, settled.ionic_strength);
+        let before = change;
         change = (updated - ln_water_activity).abs();
-        if !solvent_matters || change <= settings.ln_water_activity {
+        let settles = change <= settings.ln_water_activity || stalled(change, before, updated.abs());
+        if !solvent_matters || settles {
             settled.ln_water_activity = if solvent_matters { ln_water_activity } else { updated };
             return Ok(settled);
         }
@@ -61,6 +61,23 @@ pub(super) fn settle(
         guess = settled.ionic_strength;
     }
     Err(SolveError::WaterActivityNotConverged { change })
+}
+
+/// Solves at one activity of water and one specific part of every ln γ, the system's.
+pub(super) fn at_solvent(
+    system: &mut System,
+    model: &Model,
+    settings: &Settings,
+    ln_water_activity: f64,
+    guess: f64,
+) -> Result<Settled, SolveError> {
+    Coupling { system, model, settings, ln_water_activity, last: None }.root(guess)
+}
+
+/// ln of the activity of water that belongs to the composition of the latest solve.
+pub(super) fn ln_water_activity_of(system: &System, model: &Model, ionic_strength: f64) -> f64 {
+    let molalities = system.molalities();
+    model.ln_water_activity(Composition { charges: &system.charges, molalities: &molalities, ionic_strength })
 }
 
 /// Solves as a function of the ionic strength, at one activity of water.
@@ -81,7 +98,8 @@ impl Coupling<'_, '_> {
         let start = self.sample(guess)?;
         let mut root = if self.agrees(start) { start } else { self.search(start)? };
         let mut roots = 1;
-        if root.x > 1.0 {
+        // With specific parts the electrostatic one levels off, and nothing makes γ grow with I alone.
+        if root.x > 1.0 && !self.model.is_specific() {
             let all = self.scan(root)?;
             roots = all.len().max(1);
             root = all.first().copied().unwrap_or(root);
@@ -176,6 +194,7 @@ impl Coupling<'_, '_> {
             ionic_strength_residual: sample.f,
             roots,
             ln_water_activity: self.ln_water_activity,
+            ln_gamma_residual: 0.0,
         })
     }
 }

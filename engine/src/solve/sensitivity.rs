@@ -4,15 +4,15 @@
 //! product of the components of basis row j, and `t_ij` its coefficient in species i:
 //!
 //! ```text
-//! ln c_i = ln K_i + Σ_j t_ij μ_j + w_i ln a_w - ln γ_i(I)
+//! ln c_i = ln K_i + Σ_j t_ij μ_j + w_i ln a_w - ln γ_i,    ln γ_i = f_i(I) + s_i
 //! Σ_i t_ij c_i = T_j + (supply E)_j - n_j         the balance of each basis row
 //! μ_h + w_h ln a_w + ln K_h = v_h                 what is held: reservoirs, minerals that are present
-//! I = ½ Σ z_i² c_i,    ln a_w = f(Σ c_i, I)
+//! I = ½ Σ z_i² c_i,    ln a_w = f(c, I),    s_i = g_i(c), the specific part where the model has one
 //! ```
 //!
 //! The held `μ_h` are eliminated by hand, so that what is held depends on nothing else to the last bit, and so are the
 //! amounts of what delivers just what it holds, each the rest of its own balance. Left as unknowns x are the free `μ_j`,
-//! the other amounts, I and ln a_w, one for every equation. All equations weigh the species
+//! the other amounts, I, ln a_w and the specific parts, one for every equation. All equations weigh the species
 //! linearly, so with `d ln c = κ + Q dx`, κ being the direct effect of a parameter, they read
 //!
 //! ```text
@@ -23,11 +23,12 @@
 //! solver, traces below the smallest double included. It is factored once; [`Sensitivities::push`] solves for the effect
 //! of parameters on everything, [`Sensitivities::pull`] for the effect of everything on one number.
 
+use super::basis::Basis;
 use super::dense::Lu;
 use super::problem::{Problem, Row};
 use super::system::Column;
 use super::{Converged, Mixed};
-use crate::activity::Model;
+use crate::activity::{Composition, Model, WaterSlopes};
 
 /// A number for each thing that is given: changes of them, or derivatives by them.
 #[derive(Debug, Clone, PartialEq)]
@@ -121,6 +122,16 @@ pub fn own_supplies(problem: &Problem) -> Vec<Vec<f64>> {
     problem.reservoirs.iter().map(|reservoir| supply(&reservoir.row)).collect()
 }
 
+/// Where a problem is linearised: an answer, or a point on the way to one.
+pub(super) struct Place<'a> {
+    pub(super) basis: &'a Basis,
+    pub(super) column: &'a [Column],
+    /// ln of the amounts of species, members of mixtures, and mixtures as a whole.
+    pub(super) ln_amounts: &'a [f64],
+    pub(super) ionic_strength: f64,
+    pub(super) reservoir_amount: &'a [f64],
+}
+
 /// The factored linear system of one answer.
 #[derive(Debug, Clone)]
 pub struct Sensitivities {
@@ -135,6 +146,8 @@ pub struct Sensitivities {
     n_minerals: usize,
     /// Equations of balances.
     n_balances: usize,
+    /// Specific parts that are unknowns.
+    n_specific: usize,
     lu: Lu,
 }
 
@@ -179,8 +192,12 @@ struct Weights {
     /// d ln γ / dI.
     gamma: f64,
     half_charge_squared: f64,
-    /// ∂ ln a_w / ∂ Σm.
+    /// ∂ ln a_w / ∂ m.
     osmotic: f64,
+    /// Position of the specific part of its ln γ.
+    specific: Option<usize>,
+    /// ∂ s / ∂ m of the specific parts that it has a share in, by their positions.
+    acts_on: Vec<(usize, f64)>,
 }
 
 impl Sensitivities {
@@ -198,11 +215,35 @@ impl Sensitivities {
         converged: &Converged,
         supplies: &[Vec<f64>],
     ) -> Option<Self> {
-        let (there, columns) = balances(problem, converged, supplies);
-        let by_ionic_strength = if converged.ionic_strength > 0.0 { converged.ionic_strength } else { 1.0 };
+        let ln_amounts: Vec<f64> =
+            converged.ln_c.iter().copied().chain(mixed_ln_amounts(converged)).collect();
+        let place = Place {
+            basis: &converged.warm.basis,
+            column: &converged.warm.column,
+            ln_amounts: &ln_amounts,
+            ionic_strength: converged.ionic_strength,
+            reservoir_amount: &converged.reservoir_amount,
+        };
+        Self::about(problem, model, &place, supplies)
+    }
+
+    /// Linearises `problem` about a place where all equations hold but those of γ and of the activity of water.
+    pub(super) fn about(
+        problem: &Problem,
+        model: &Model,
+        place: &Place<'_>,
+        supplies: &[Vec<f64>],
+    ) -> Option<Self> {
+        let (there, columns) = balances(problem, place, supplies);
+        let by_ionic_strength = if place.ionic_strength > 0.0 { place.ionic_strength } else { 1.0 };
+        let water = water_slopes(problem, model, place);
+        let n_balances = columns.iter().filter(|column| column.position.is_some()).count();
+        let mut species = weights(problem, model, place, &there, &water);
+        let n_specific = couple(&mut species, model, n_balances + 2);
         let mut linear = Self {
-            species: weights(problem, model, converged, &there),
-            n_balances: columns.iter().filter(|column| column.position.is_some()).count(),
+            species,
+            n_balances,
+            n_specific,
             columns,
             ionic_strength: by_ionic_strength,
             n_species: problem.species.len(),
@@ -211,8 +252,8 @@ impl Sensitivities {
             n_minerals: problem.minerals.len(),
             lu: Lu::default(),
         };
-        linear.scale_balances(&converged.reservoir_amount);
-        let matrix = linear.matrix(model.d_ln_water_activity(converged.ionic_strength).1);
+        linear.scale_balances(place.reservoir_amount);
+        let matrix = linear.matrix(water.by_ionic_strength);
         let n = linear.n();
         let mut lu = Lu::default();
         (matrix.iter().all(|entry| entry.is_finite()) && lu.factor(&matrix, n))
@@ -232,7 +273,7 @@ impl Sensitivities {
                 right[row] = column.total(&given.totals) * (-column.shift).exp();
             }
         }
-        right[self.n() - 1] = given.ln_water_activity;
+        right[self.solvent()] = given.ln_water_activity;
         for (species, direct) in self.species.iter().zip(&direct) {
             self.for_each_weight(species, |row, weight| right[row] -= weight * direct);
         }
@@ -242,8 +283,8 @@ impl Sensitivities {
     }
 
     fn read(&self, given: &Given, held: &[f64], direct: &[f64], x: &[f64]) -> Found {
-        let n = self.n();
-        let (ionic_strength, ln_water_activity) = (x[n - 2] * self.ionic_strength, x[n - 1]);
+        let (ionic_strength, ln_water_activity) =
+            (x[self.n_balances] * self.ionic_strength, x[self.solvent()]);
         let mut ln_c = vec![0.0; self.n_rows()];
         for (species, direct) in self.species.iter().zip(direct) {
             ln_c[species.idx] = *direct;
@@ -260,7 +301,8 @@ impl Sensitivities {
             mixtures: self.by_member(&ln_c),
         };
         for species in self.species.iter().filter(|species| species.idx < self.n_species) {
-            found.ln_gamma[species.idx] += species.gamma * ionic_strength;
+            let specific = species.specific.map_or(0.0, |own| x[own]);
+            found.ln_gamma[species.idx] += species.gamma * ionic_strength + specific;
         }
         for (j, column) in self.columns.iter().enumerate() {
             let product = match (column.held, column.position) {
@@ -312,8 +354,8 @@ impl Sensitivities {
         by_ln_c.extend(weight.mixtures.iter().flatten());
         by_ln_c.resize(self.n_rows(), 0.0);
         let mut by_total = vec![0.0; self.columns.len()];
-        by_x[n - 2] = weight.ionic_strength * self.ionic_strength;
-        by_x[n - 1] = weight.ln_water_activity;
+        by_x[self.n_balances] = weight.ionic_strength * self.ionic_strength;
+        by_x[self.solvent()] = weight.ln_water_activity;
         for (j, column) in self.columns.iter().enumerate() {
             let product: f64 = column.of_component.iter().zip(&weight.ln_a).map(|(f, w)| f * w).sum();
             let amount = match (column.held, column.position) {
@@ -328,7 +370,7 @@ impl Sensitivities {
                 (Held::Reservoir(f), None) => -weight.reservoir_amount[f],
                 (Held::Mineral(p), _) => weight.mineral_amount[p],
             };
-            by_x[n - 1] -= column.water * product;
+            by_x[self.solvent()] -= column.water * product;
             by_held[j] += product;
             if amount != 0.0 {
                 by_total[j] = amount;
@@ -339,7 +381,11 @@ impl Sensitivities {
         }
         for species in &self.species {
             if species.idx < self.n_species {
-                by_x[n - 2] += weight.ln_gamma[species.idx] * species.gamma * self.ionic_strength;
+                let by_ln_gamma = weight.ln_gamma[species.idx];
+                by_x[self.n_balances] += by_ln_gamma * species.gamma * self.ionic_strength;
+                if let Some(own) = species.specific {
+                    by_x[own] += by_ln_gamma;
+                }
             }
             let own = by_ln_c[species.idx];
             self.for_each_slope(species, |column, slope| by_x[column] += slope * own);
@@ -369,7 +415,7 @@ impl Sensitivities {
         let mut given = Given {
             ln_k: vec![0.0; self.n_species],
             ln_gamma: vec![0.0; self.n_species],
-            ln_water_activity: by_right[self.n() - 1],
+            ln_water_activity: by_right[self.solvent()],
             totals: vec![0.0; n_components],
             reservoirs: vec![0.0; self.n_reservoirs],
             minerals: vec![0.0; self.n_minerals],
@@ -425,9 +471,14 @@ impl Sensitivities {
         self.n_members.iter().map(&mut take).collect()
     }
 
-    /// Unknowns: one a balance that is solved, then ln I and ln a_w.
+    /// Unknowns: one a balance that is solved, then ln I, ln a_w, and the specific parts.
     fn n(&self) -> usize {
-        self.n_balances + 2
+        self.n_balances + 2 + self.n_specific
+    }
+
+    /// Position of ln a_w; ln I stands before it.
+    fn solvent(&self) -> usize {
+        self.n_balances + 1
     }
 
     /// Takes each balance relative to its largest concentration or delivery.
@@ -459,9 +510,12 @@ impl Sensitivities {
                 }
             }
         }
-        matrix[(n - 2) * n + n - 2] -= 1.0;
-        matrix[(n - 1) * n + n - 1] += 1.0;
-        matrix[(n - 1) * n + n - 2] -= electrostatic * self.ionic_strength;
+        let (strength, solvent) = (self.n_balances, self.solvent());
+        matrix[strength * n + strength] -= 1.0;
+        for own in solvent..n {
+            matrix[own * n + own] += 1.0;
+        }
+        matrix[solvent * n + strength] -= electrostatic * self.ionic_strength;
         matrix
     }
 
@@ -472,9 +526,11 @@ impl Sensitivities {
                 take(own, species.t[j]);
             }
         }
-        let n = self.n();
-        take(n - 2, -species.gamma * self.ionic_strength);
-        take(n - 1, species.water);
+        take(self.n_balances, -species.gamma * self.ionic_strength);
+        take(self.solvent(), species.water);
+        if let Some(own) = species.specific {
+            take(own, -1.0);
+        }
     }
 
     /// The entries of P c for one species.
@@ -484,9 +540,12 @@ impl Sensitivities {
                 take(row, species.sign * species.t[j] * (species.ln_c - column.shift).exp());
             }
         }
-        let (n, c) = (self.n(), species.ln_c.exp());
-        take(n - 2, species.half_charge_squared * c / self.ionic_strength);
-        take(n - 1, -species.osmotic * c);
+        let c = species.ln_c.exp();
+        take(self.n_balances, species.half_charge_squared * c / self.ionic_strength);
+        take(self.solvent(), -species.osmotic * c);
+        for (specific, slope) in &species.acts_on {
+            take(*specific, -slope * c);
+        }
     }
 }
 
@@ -519,8 +578,8 @@ impl Weights {
 }
 
 /// The columns that are not absent, by index and as balances still to be scaled.
-fn balances(problem: &Problem, converged: &Converged, supplies: &[Vec<f64>]) -> (Vec<usize>, Vec<Balance>) {
-    let (basis, column) = (&converged.warm.basis, &converged.warm.column);
+fn balances(problem: &Problem, place: &Place<'_>, supplies: &[Vec<f64>]) -> (Vec<usize>, Vec<Balance>) {
+    let Place { basis, column, .. } = *place;
     let (first_reservoir, first_mineral) = (problem.reservoir_row(0), problem.mineral_row(0));
     // The column of a mixture that is absent is held by nothing but its absence.
     let is_there = |j: &usize| match column[*j] {
@@ -558,6 +617,13 @@ fn balances(problem: &Problem, converged: &Converged, supplies: &[Vec<f64>]) -> 
     (there, balances)
 }
 
+fn water_slopes(problem: &Problem, model: &Model, place: &Place<'_>) -> WaterSlopes {
+    let charges: Vec<f64> = problem.species.iter().map(|row| row.charge).collect();
+    let molalities: Vec<f64> = place.ln_amounts[..charges.len()].iter().map(|ln_c| ln_c.exp()).collect();
+    let (charges, molalities, ionic_strength) = (&charges, &molalities, place.ionic_strength);
+    model.d_ln_water_activity(Composition { charges, molalities, ionic_strength })
+}
+
 /// ln of the amounts of the members of mixtures, then of the mixtures as a whole.
 fn mixed_ln_amounts(converged: &Converged) -> impl Iterator<Item = f64> {
     let members = |mixture: &Mixed| -> Vec<f64> {
@@ -568,12 +634,15 @@ fn mixed_ln_amounts(converged: &Converged) -> impl Iterator<Item = f64> {
 }
 
 /// The species that are there, and what mixtures that are present consist of.
-fn weights(problem: &Problem, model: &Model, converged: &Converged, columns: &[usize]) -> Vec<Weights> {
-    let (basis, column) = (&converged.warm.basis, &converged.warm.column);
-    let ionic_strength = converged.ionic_strength;
-    let (osmotic, _) = model.d_ln_water_activity(ionic_strength);
+fn weights(
+    problem: &Problem,
+    model: &Model,
+    place: &Place<'_>,
+    columns: &[usize],
+    water: &WaterSlopes,
+) -> Vec<Weights> {
+    let Place { basis, column, ln_amounts, ionic_strength, .. } = *place;
     let waters: Vec<f64> = problem.rows().map(|(row, _)| row.water).collect();
-    let ln_amounts: Vec<f64> = converged.ln_c.iter().copied().chain(mixed_ln_amounts(converged)).collect();
     let rows: Vec<&Row> = problem.rows().map(|(row, _)| row).collect();
     let there = (0..problem.n_amounts()).filter(|i| ln_amounts[*i] != f64::NEG_INFINITY);
     let weights = |idx: usize| {
@@ -589,13 +658,37 @@ fn weights(problem: &Problem, model: &Model, converged: &Converged, columns: &[u
             t,
             water: row.water - held,
             gamma: if is_solute && ionic_strength > 0.0 {
-                model.d_ln_gamma(row.charge, ionic_strength)
+                model.d_ln_gamma(idx, row.charge, ionic_strength)
             } else {
                 0.0
             },
             half_charge_squared: if is_solute { 0.5 * row.charge * row.charge } else { 0.0 },
-            osmotic: if is_solute { osmotic } else { 0.0 },
+            osmotic: if is_solute { water.by_molality[idx] } else { 0.0 },
+            specific: None,
+            acts_on: vec![],
         }
     };
     there.map(weights).collect()
+}
+
+/// Gives each specific part that is not zero a position from `first` on, and tells which species have a share in it.
+///
+/// Returns their number.
+fn couple(species: &mut [Weights], model: &Model, first: usize) -> usize {
+    let n_species = species.iter().map(|species| species.idx + 1).max().unwrap_or(0);
+    let mut place_of = vec![None; n_species];
+    for (place, species) in species.iter().enumerate() {
+        place_of[species.idx] = Some(place);
+    }
+    let mut n = 0;
+    model.for_each_specific_slope(|i, k, slope| {
+        let place_of = |idx: usize| place_of.get(idx).copied().flatten();
+        let (Some(i), Some(k)) = (place_of(i), place_of(k)) else { return };
+        let own = *species[i].specific.get_or_insert_with(|| {
+            n += 1;
+            first + n - 1
+        });
+        species[k].acts_on.push((own, slope));
+    });
+    n
 }

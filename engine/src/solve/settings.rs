@@ -19,6 +19,8 @@ pub struct Settings {
     pub ionic_strength: f64,
     /// Largest error of ln of the activity of water, absolute.
     pub ln_water_activity: f64,
+    /// Largest error of the specific part of an ln γ, absolute.
+    pub ln_gamma: f64,
     /// Newton iterations allowed for one set of phases at one ionic strength.
     pub max_iterations: usize,
     /// Set from outside to interrupt the solve; looked at once an iteration.
@@ -34,6 +36,7 @@ impl Default for Settings {
             saturation: 1e-10,
             ionic_strength: 1e-12,
             ln_water_activity: 1e-14,
+            ln_gamma: 1e-11,
             max_iterations: 500,
             stop: None,
         }
@@ -144,6 +147,12 @@ pub enum SolveError {
     #[error("ln of the activity of water is still changing by {change:e}")]
     WaterActivityNotConverged {
         /// Last change of ln a_w.
+        change: f64,
+    },
+    /// The activity coefficients that depend on the composition did not settle, nor in steps from those that do not.
+    #[error("activity coefficients did not settle: a ln gamma is still changing by {change:e}")]
+    ActivityNotConverged {
+        /// Last change of an ln γ.
         change: f64,
     },
     /// The answer misses a tolerance.

@@ -34,6 +34,7 @@ pub struct Warm {
     mineral_amount: Vec<f64>,
     mixture_present: Vec<bool>,
     n_species: usize,
+    specific: Vec<f64>,
     pub(super) ionic_strength: f64,
     pub(super) ln_water_activity: f64,
 }
@@ -57,6 +58,10 @@ pub(super) struct System<'p> {
     pub(super) g: Vec<f64>,
     /// ln γ of each species.
     pub(super) ln_gamma: Vec<f64>,
+    /// Charge number of each species.
+    pub(super) charges: Vec<f64>,
+    /// The specific part of each ln γ: zero where the model has none.
+    pub(super) specific: Vec<f64>,
     /// Mixture of each member and of each mixture as a whole.
     mixture_of: Vec<usize>,
     /// Level of each column's basis row.
@@ -94,33 +99,60 @@ pub struct Effort {
 impl<'p> System<'p> {
     /// The system at its starting point.
     pub(super) fn new(problem: &'p Problem, warm: Option<&Warm>) -> Result<Self, SolveError> {
-        let (n_components, n_mixtures) = (problem.n_components, problem.mixtures.len());
-        let basis =
-            Basis::new(problem.rows(), n_components, n_mixtures).ok_or(SolveError::CoefficientsTooLarge)?;
-        let mut column = vec![Column::Free; basis.n];
-        column[n_components..].fill(Column::Held);
-        let mixture_of = problem.rows().filter_map(|(_, mixture)| mixture).collect();
+        let basis = Basis::new(problem.rows(), problem.n_components, problem.mixtures.len())
+            .ok_or(SolveError::CoefficientsTooLarge)?;
+        let mut system = Self::on(problem, basis);
+        match warm.filter(|warm| warm.fits(&system)) {
+            Some(warm) => system = Self::resume(problem, warm.clone()),
+            None => system.start_cold()?,
+        }
+        Ok(system)
+    }
+
+    /// The system where an earlier solve of the same rows ended.
+    pub(super) fn resume(problem: &'p Problem, warm: Warm) -> Self {
         let mut system = Self {
+            level: warm.level,
+            column: warm.column,
+            mineral_amount: warm.mineral_amount,
+            mixture_present: warm.mixture_present,
+            specific: warm.specific,
+            ..Self::on(problem, warm.basis)
+        };
+        system.basis.pivots = 0;
+        for column in 0..system.basis.n {
+            if system.column[column] == Column::Absent {
+                // The total may have changed since; if it is still zero the reduction finds it again.
+                system.column[column] = Column::Free;
+                let total = system.total(column);
+                system.level[column] = starting_level(total);
+            }
+        }
+        system
+    }
+
+    /// A tableau without a start.
+    fn on(problem: &'p Problem, basis: Basis) -> Self {
+        let mut column = vec![Column::Free; basis.n];
+        column[problem.n_components..].fill(Column::Held);
+        Self {
             problem,
             g: vec![0.0; basis.unit_row(0) + basis.n],
             ln_gamma: vec![0.0; problem.species.len()],
-            mixture_of,
+            mixture_of: problem.rows().filter_map(|(_, mixture)| mixture).collect(),
+            charges: problem.species.iter().map(|row| row.charge).collect(),
+            specific: vec![0.0; problem.species.len()],
             ln_c: vec![f64::NEG_INFINITY; problem.n_amounts()],
             level: vec![0.0; basis.n],
             column,
             absent: vec![false; basis.unit_row(0)],
             mineral_amount: vec![0.0; problem.minerals.len()],
-            mixture_present: vec![false; n_mixtures],
-            mixture_amount: vec![0.0; n_mixtures],
+            mixture_present: vec![false; problem.mixtures.len()],
+            mixture_amount: vec![0.0; problem.mixtures.len()],
             sum: ExactSum::default(),
             effort: Effort::default(),
             basis,
-        };
-        match warm.filter(|warm| warm.fits(&system)) {
-            Some(warm) => system.start_from(warm),
-            None => system.start_cold()?,
         }
-        Ok(system)
     }
 
     /// Where this solve ended.
@@ -130,27 +162,11 @@ impl<'p> System<'p> {
             level: self.level,
             column: self.column,
             n_species: self.problem.species.len(),
+            specific: self.specific,
             mineral_amount: self.mineral_amount,
             mixture_present: self.mixture_present,
             ionic_strength,
             ln_water_activity,
-        }
-    }
-
-    fn start_from(&mut self, warm: &Warm) {
-        self.basis.clone_from(&warm.basis);
-        self.basis.pivots = 0;
-        self.level.copy_from_slice(&warm.level);
-        self.column.copy_from_slice(&warm.column);
-        self.mineral_amount.copy_from_slice(&warm.mineral_amount);
-        self.mixture_present.copy_from_slice(&warm.mixture_present);
-        for column in 0..self.basis.n {
-            if self.column[column] == Column::Absent {
-                // The total may have changed since; if it is still zero the reduction finds it again.
-                self.column[column] = Column::Free;
-                let total = self.total(column);
-                self.level[column] = starting_level(total);
-            }
         }
     }
 
@@ -206,8 +222,8 @@ impl<'p> System<'p> {
     /// Recomputes the constant part of every level for a new ionic strength and activity of water.
     pub(super) fn set_activities(&mut self, model: &Model, ionic_strength: f64, ln_water_activity: f64) {
         let problem = self.problem;
-        for (ln_gamma, row) in self.ln_gamma.iter_mut().zip(&problem.species) {
-            *ln_gamma = model.ln_gamma(row.charge, ionic_strength);
+        for (i, ln_gamma) in self.ln_gamma.iter_mut().enumerate() {
+            *ln_gamma = model.ln_gamma(i, self.charges[i], ionic_strength) + self.specific[i];
         }
         let solvent = |water: f64| if water == 0.0 { 0.0 } else { water * ln_water_activity };
         let species = problem.species.iter().zip(&self.ln_gamma).map(|(row, gamma)| (row, *gamma));
@@ -225,6 +241,11 @@ impl<'p> System<'p> {
         }
     }
 
+    /// Molality of each species after the latest inner solve, mol/kg(water). Shape `(n_species,)`.
+    pub(super) fn molalities(&self) -> Vec<f64> {
+        self.ln_c[..self.charges.len()].iter().map(|ln_c| ln_c.exp()).collect()
+    }
+
     /// Total of a column's basis row, exact in sign.
     pub(super) fn total(&mut self, column: usize) -> f64 {
         self.basis.total(column, &self.problem.totals, &mut self.sum)
@@ -232,15 +253,13 @@ impl<'p> System<'p> {
 
     /// Level of any row from the levels of the basis rows; minus infinity if it contains something absent.
     pub(super) fn level_of(&self, row: usize) -> f64 {
-        let scaled = self.basis.scaled_row(row);
-        let mut level = self.g[row];
-        for (column, entry) in scaled.iter().enumerate() {
+        let mut sum = 0.0;
+        for (column, entry) in self.basis.scaled_row(row).iter().enumerate() {
             if *entry != 0.0 {
-                let basis_row = self.basis.row_of(column);
-                level += entry / self.basis.determinant() * (self.level[column] - self.g[basis_row]);
+                sum += entry * (self.level[column] - self.g[self.basis.row_of(column)]);
             }
         }
-        level
+        self.g[row] + sum / self.basis.determinant()
     }
 
     /// Puts a mineral into the basis in place of the least concentrated species that it is made of.

@@ -98,6 +98,7 @@ static ATOMS: &[Atom] = &[
     atom("um", 1.0, -6, &[(Length, 1)]),
     atom("nm", 1.0, -9, &[(Length, 1)]),
     atom("km", 1.0, 3, &[(Length, 1)]),
+    also(atom("angstrom", 1.0, -10, &[(Length, 1)]), &["Å"]),
     atom("s", 1.0, 0, &[(Time, 1)]),
     atom("K", 1.0, 0, &[(Temperature, 1)]),
     also(counted_from(273.15, atom("degC", 1.0, 0, &[(Temperature, 1)])), &["°C", "℃"]),

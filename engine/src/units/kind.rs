@@ -180,7 +180,7 @@ impl Kind {
             Self::Mass => ("mass", &["kg", "g", "mg", "ug", "kg(water)", "kg(solution)"]),
             Self::Density => ("density", &["kg/L", "g/mL", "g/cm3", "kg/m3", "g/L"]),
             Self::Salinity => ("salinity", &["g/kg", "g/kg(solution)", "PSU"]),
-            Self::Length => ("length", &["m", "cm", "mm", "um", "nm", "km"]),
+            Self::Length => ("length", &["m", "cm", "mm", "um", "nm", "km", "angstrom"]),
             Self::SpecificArea => ("specific area", &["m2/g", "m2/kg"]),
             Self::Capacitance => ("capacitance", &["F/m2"]),
             Self::Fraction => ("fraction", &["1", "%"]),
