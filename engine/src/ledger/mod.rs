@@ -16,6 +16,7 @@ mod couple;
 pub mod elimination;
 pub mod file;
 mod formation;
+pub mod in_force;
 mod influence;
 mod least_squares;
 #[allow(clippy::module_inception)]

@@ -111,7 +111,7 @@ impl From<SurveyError> for Fail {
 /// it is checked at equilibrium.
 pub(super) fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
     let shipped: Vec<Ledger> =
-        shipped::names().iter().filter_map(|name| shipped::ledger(name, None).ok()).collect();
+        shipped::names().iter().filter_map(|name| shipped::as_shipped(name).ok()).collect();
     if sample.ledger().is_some() || shipped.iter().any(|ledger| ledger.find_phase(name).is_ok()) {
         return Ok(());
     }
