@@ -530,6 +530,31 @@ fn random_draws_agree_with_first_order_uncertainty() {
     }
 }
 
+/// The value of a treatment is an input like any other, before a reagent is found for a target and in every draw.
+#[test]
+fn the_uncertainty_of_a_treatment_goes_along() {
+    let bar = Unit::parse("bar").unwrap();
+    let stated = Quantity::measured(1e-3, bar, Some(2e-5), "CO2 of the cellar").unwrap();
+    let open = Treatment::OpenTo { gas: "CO2(g)".into(), fugacity: 1e-3 };
+    let targets = [("alkalinity", 3e-3), ("hardness", 2e-3)];
+    let water =
+        treated(&lake(), vec![adjust(&["NaOH", "CaCl2"], &targets)]).treated_to(open, &stated).unwrap();
+    let of_cellar = |state: &State| {
+        let answer = state.get("pH").unwrap();
+        let part = answer.parts().iter().find(|part| part.input.label() == "CO2 of the cellar");
+        part.map_or(0.0, |part| part.sensitivity)
+    };
+    let moved = |by: f64| {
+        let open = Treatment::OpenTo { gas: "CO2(g)".into(), fugacity: 1e-3 + by };
+        get(&state(&treated(&lake(), vec![adjust(&["NaOH", "CaCl2"], &targets), open])), "pH")
+    };
+    let quotient = (moved(1e-7) - moved(-1e-7)) / 2e-7;
+    close(of_cellar(&state(&water)), quotient, 1e-5 * quotient.abs());
+    let only = Vary::Named(vec!["CO2 of the cellar".into()]);
+    let sd = draws(&water, &only, 60).column("pH").unwrap().standard_deviation().unwrap();
+    close(sd, quotient.abs() * 2e-5, 4.0 / 120_f64.sqrt() * quotient.abs() * 2e-5);
+}
+
 #[test]
 fn declared_correlation_is_drawn() {
     let unit = Unit::parse("mmol/kg").unwrap();

@@ -3,7 +3,9 @@
 use crate::kkt::check;
 use crate::random_systems::{self, HARD, Random};
 use lysocline_engine::activity::{Composition, Davies, Model};
-use lysocline_engine::solve::{Coefficient, Converged, Effort, Problem, Row, Settings, SolveError, solve};
+use lysocline_engine::solve::{
+    Coefficient, Converged, Effort, Prepared, Problem, Row, Settings, SolveError, solve,
+};
 use rayon::prelude::*;
 
 /// The activity coefficients are those of the composition, and so is the activity of water.
@@ -195,6 +197,45 @@ fn random_tableaux_with_davies_and_minerals_are_solved() {
         let mut problem = with_minerals(random, problem, 5)?;
         random_systems::add_charges(random, &mut problem);
         Some(problem)
+    });
+}
+
+/// Ionic strengths tried on the way give logarithms of thousands, where some balances end at their rounding and others
+/// meet the tolerance: number 28873 of the family stopped there.
+#[test]
+fn balances_at_their_rounding_and_within_the_tolerance_are_both_settled() {
+    let random = &mut Random(28_873 * 7919 + 1);
+    let problem = plain(random).unwrap();
+    let mut problem = with_minerals(random, problem, 5).unwrap();
+    random_systems::add_charges(random, &mut problem);
+    let converged = solve(&problem, &davies(), &Settings::default(), None).unwrap();
+    check(&problem, &converged).unwrap();
+}
+
+/// The same answers from a problem that is prepared once and from one that is new each time.
+#[test]
+fn a_prepared_problem_gives_the_same_answers() {
+    (0..300_u64).into_par_iter().for_each(|seed| {
+        let random = &mut Random(seed * 31 + 5);
+        let Some(problem) = plain(random).and_then(|problem| with_phases(random, problem, 1, 2)) else {
+            return;
+        };
+        let mut prepared = Prepared::new(problem.clone()).unwrap();
+        let last = problem.n_components - 1;
+        for factor in [1.0, 1.3, 2.0, 0.0, -1.0, 0.7] {
+            let total = problem.totals[last] * factor;
+            prepared.set_total(last, total).unwrap();
+            prepared.set_ln_k(0, 0.1 * factor).unwrap();
+            let fresh = solve(prepared.problem(), &Model::IDEAL, &Settings::default(), None);
+            match (prepared.solve(&Model::IDEAL, &Settings::default()), fresh) {
+                (Ok(near), Ok(fresh)) => {
+                    let condition = fresh.certificate.condition;
+                    assert_same_composition("prepared", seed, &fresh.ln_c, near.ln_c.clone(), condition);
+                }
+                (Err(SolveError::Infeasible { .. }), Err(SolveError::Infeasible { .. })) => {}
+                (near, fresh) => panic!("seed {seed}: {:?} {:?}", near.err(), fresh.err()),
+            }
+        }
     });
 }
 

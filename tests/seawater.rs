@@ -229,6 +229,31 @@ fn a_budget_holds_what_moving_a_constant_does() {
     }
 }
 
+/// Of pH on every scale and of a fugacity from a measured pH, by the temperature of the water.
+#[test]
+fn a_budget_holds_what_warmth_does() {
+    let at = |t: f64, pair: [(&str, &str); 2]| {
+        let temperature = format!("{t} +/- 0.1 degC");
+        let pairs = [("salinity", "33"), ("temperature", temperature.as_str()), pair[0], pair[1]];
+        state(&pairs)
+    };
+    let pairs = [
+        [("DIC", "2010 umol/kg"), ("alkalinity", "2250 umol/kg")],
+        [("DIC", "2010 umol/kg"), ("pH", "8.0")],
+        [("alkalinity", "2250 umol/kg"), ("pH", "8.0")],
+    ];
+    for pair in pairs {
+        let (here, warmer, colder) = (at(17.0, pair), at(17.01, pair), at(16.99, pair));
+        for asked in ["pH(free)", "pH(total)", "pH(seawater)", "pH(nbs)", "fCO2 [uatm]", "Omega(aragonite)"] {
+            let difference = (get(&warmer, asked) - get(&colder, asked)) / 0.02;
+            let answer = here.get(asked).unwrap();
+            let part = answer.parts().iter().find(|part| part.input.label() == "temperature");
+            let sensitivity = part.map_or(0.0, |part| part.sensitivity);
+            assert_relative_eq!(sensitivity, difference, max_relative = 1e-4, epsilon = 1e-9);
+        }
+    }
+}
+
 #[test]
 fn scales_of_ph_differ_by_what_they_count() {
     let state = state(WATERS[1]);
@@ -421,7 +446,7 @@ fn what_is_doubtful_is_said() {
     assert!(with_ph.contains("pH is on the total scale"), "{with_ph}");
     assert!(with_ph.contains("DIC` per litre by a density of 1.02476 kg/L"), "{with_ph}");
     let choices = state(WATERS[1]).choices().unwrap();
-    for choice in ["K1 Lueker 2000", "KF Perez Fraga 1987", "total boron Lee 2010", "total scale"] {
+    for choice in ["K1 K2 Lueker 2000", "KF Perez Fraga 1987", "total boron Lee 2010", "total scale"] {
         assert!(choices.contains(choice), "{choices}");
     }
 }

@@ -5,8 +5,10 @@
 mod tableaux;
 
 use std::hint::black_box;
+use std::time::Instant;
 
-use lysocline_engine::solve::{Problem, Settings, Total};
+use lysocline_engine::activity::Model;
+use lysocline_engine::solve::{Prepared, Problem, Settings, Total};
 use tableaux::{
     COMPONENTS, N_TABLEAUX, Random, SPECIES, iteration_time, quantile, random_tableau, run, time,
 };
@@ -26,6 +28,7 @@ fn main() {
     let exponentials = time_exponentials();
     let iteration = quantile(&mut iteration, 0.5);
     let warm = sweep_time(&problems, &settings);
+    let prepared = prepared_time(&problems, &settings);
     let near = perturbed_time(&problems, &settings);
     let mut iterations: Vec<f64> = effort.iter().map(|effort| effort.iterations as f64).collect();
     let mut evaluations: Vec<f64> = effort.iter().map(|effort| effort.evaluations as f64).collect();
@@ -50,6 +53,11 @@ fn main() {
         "warm point of a sweep     {:8.2} µs   {:6.1} x iteration (target 4)",
         warm.0 * 1e6,
         warm.0 / iteration
+    );
+    println!(
+        "the same, prepared        {:8.2} µs   {:6.1} x iteration (target 4)",
+        prepared * 1e6,
+        prepared / iteration
     );
     println!("   iterations a point     {:8.2}", warm.1);
     println!("warm, all constants moved {:8.2} µs   {:6.1} x iteration", near * 1e6, near / iteration);
@@ -97,6 +105,28 @@ fn sweep_time(problems: &[Problem], settings: &Settings) -> (f64, f64) {
     }
     let per_point = iterations as f64 / (POINTS * times.len()) as f64;
     (quantile(&mut times, 0.5), per_point)
+}
+
+/// Seconds of one point of the same sweep with a prepared problem, checks and certificate included.
+fn prepared_time(problems: &[Problem], settings: &Settings) -> f64 {
+    const POINTS: usize = 1000;
+    let sweep = |problem: &Problem| {
+        let last = problem.n_components - 1;
+        let first = problem.totals[last].to_f64();
+        let mut prepared = Prepared::new(problem.clone()).expect("random tableaux are sound");
+        prepared.solve(&Model::IDEAL, settings).expect("random tableaux have a solution");
+        let mut point = |point: usize| {
+            let total = Total::from(first * 10_f64.powf(point as f64 / POINTS as f64));
+            let start = Instant::now();
+            prepared.set_total(last, total).expect("a component with a finite total");
+            black_box(prepared.solve(&Model::IDEAL, settings).expect("random tableaux have a solution"));
+            start.elapsed().as_secs_f64()
+        };
+        let mut points: Vec<f64> = (0..POINTS).map(&mut point).collect();
+        quantile(&mut points, 0.5)
+    };
+    let mut times: Vec<f64> = problems.iter().take(20).map(sweep).collect();
+    quantile(&mut times, 0.5)
 }
 
 /// Seconds of a warm solve after every ln K moved by up to 0.1 and every total by up to 1 %.

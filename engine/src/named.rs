@@ -72,6 +72,12 @@ impl Named {
         Self { entries, known: vec![] }
     }
 
+    /// Whether a key is there.
+    #[must_use]
+    pub fn has(&self, key: &str) -> bool {
+        self.entries.contains_key(key)
+    }
+
     /// Takes a key out, if it is there.
     pub fn take(&mut self, key: &str) -> Option<Value> {
         self.known.push(key.into());

@@ -7,6 +7,7 @@ use super::equation::Equation;
 use super::formula::Species;
 use super::rational;
 use super::salt::Salt;
+use super::statement::TERMS;
 use crate::named::{self, KeyFault, Named, Value};
 use crate::nearest::nearest;
 use crate::quantity::Quantity;
@@ -89,7 +90,8 @@ fn read_medium(options: &mut Named) -> Result<(Medium, bool), KeyFault> {
     let stated = options.quantity("ionic_strength", Kind::Amount)?.map(ionic_strength).transpose()?;
     let text = options.text("medium")?;
     let salinity = options.take("salinity").map(|value| self::salinity("salinity", value)).transpose()?;
-    if let (Some("seawater"), None, None) = (text.as_deref(), salinity, stated) {
+    let may_depend_on_it = TERMS.iter().any(|(option, _)| options.has(option));
+    if let (Some("seawater"), None, None, true) = (text.as_deref(), salinity, stated, may_depend_on_it) {
         return Ok((Medium::Seawater { salinity: STANDARD_SALINITY }, true));
     }
     medium_of(text, salinity, stated).map(|medium| (medium, false))

@@ -326,7 +326,8 @@ fn read_k(
 }
 
 /// Terms as they were published: of log10 K, of ln K or of pK, with what turns a coefficient into one of log10 K.
-const TERMS: [(&str, f64); 3] = [("log_k_terms", 1.0), ("ln_k_terms", 1.0 / LN_10), ("pk_terms", -1.0)];
+pub(super) const TERMS: [(&str, f64); 3] =
+    [("log_k_terms", 1.0), ("ln_k_terms", 1.0 / LN_10), ("pk_terms", -1.0)];
 
 /// Reads the terms of a function of temperature and salinity, `#{ "1": 14.8, "1/T": -3404.7 }`.
 ///

@@ -22,6 +22,7 @@ use crate::solve::scalar::{self, Tolerance};
 use crate::text::list;
 use crate::units::{Style, Unit};
 use crate::water::concentration::{Amount, Per, Solution};
+use crate::water::sample::StatedTreatment;
 use crate::water::{Adjust, Dose, Sample, Treatment};
 
 /// Amounts are searched in ln(1 + d / this), mol/kg(water): even below it, by decades above.
@@ -46,16 +47,16 @@ pub fn resolve(
     settings: &Settings,
 ) -> Result<(Sample, Vec<String>), EquilibriumError> {
     let (mut done, mut notes) = (Vec::new(), Vec::new());
-    for treatment in sample.treatments() {
+    for (treatment, stated) in sample.stated_treatments() {
         match treatment {
             Treatment::Adjust(adjust) => {
-                let search = Search::new(sample, &done, analysed, settings, adjust)?;
+                let search = Search::new(sample, &done, analysed, settings, &adjust)?;
                 let (amounts, note) = search.amounts()?;
                 notes.push(note);
                 let doses = search.doses(&amounts)?;
-                done.extend(doses.into_iter().map(Treatment::Dose));
+                done.extend(doses.into_iter().map(|dose| (Treatment::Dose(dose), None)));
             }
-            other => done.push(other.clone()),
+            other => done.push((other, stated)),
         }
     }
     Ok((sample.with_treatments(done), notes))
@@ -69,7 +70,7 @@ pub fn is_needed(sample: &Sample) -> bool {
 
 struct Search<'a> {
     sample: &'a Sample,
-    before: &'a [Treatment],
+    before: &'a [StatedTreatment],
     analysed: &'a Analysed,
     settings: &'a Settings,
     reagents: Vec<&'a str>,
@@ -83,7 +84,7 @@ struct Search<'a> {
 impl<'a> Search<'a> {
     fn new(
         sample: &'a Sample,
-        before: &'a [Treatment],
+        before: &'a [StatedTreatment],
         analysed: &'a Analysed,
         settings: &'a Settings,
         adjust: &'a Adjust,
@@ -137,7 +138,8 @@ impl<'a> Search<'a> {
     /// The water with so much of each reagent.
     fn state(&self, amounts: Vec<Quantity>) -> Result<State, EquilibriumError> {
         let doses = self.reagents.iter().zip(amounts).map(|(reagent, moles)| {
-            Treatment::Dose(Dose { reagent: (*reagent).into(), amount: Amount { moles, per: Per::Water } })
+            let amount = Amount { moles, per: Per::Water };
+            (Treatment::Dose(Dose { reagent: (*reagent).into(), amount }), None)
         });
         let trial = self.sample.with_treatments(self.before.iter().cloned().chain(doses).collect());
         let outcome = treat(&trial, self.analysed, self.settings)?;

@@ -19,7 +19,7 @@ use super::dissolved_mass::{self, CARBONATE_MASS};
 use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
-use crate::chem::{Element, Rational, Species, rational};
+use crate::chem::{Element, PhScale, Rational, Species, rational};
 use crate::ledger::{Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
@@ -775,7 +775,9 @@ impl<'a> Analysis<'a> {
                 let Some(Ph::Measured(ph)) = &self.evidence.ph else { return None };
                 let slope = (Variable::LnActivity(self.proton), -1.0 / LN_10);
                 let computed = self.system.ph_shift() - converged.ln_a[self.proton] / LN_10;
-                (ph.clone(), 1.0, computed, vec![slope])
+                let scale = self.system.ledger().sea().map_or(PhScale::Free, |sea| sea.ph_scale);
+                let by_kelvin = (Variable::Temperature, self.system.ph_shift_per_kelvin(scale));
+                (ph.clone(), 1.0, computed, vec![slope, by_kelvin])
             }
             "alkalinity" | "DIC" => {
                 let carbon = self.carbon;

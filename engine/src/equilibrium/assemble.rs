@@ -3,7 +3,7 @@
 use std::collections::BTreeSet;
 
 use crate::activity::Model;
-use crate::chem::{Element, Rational, Species, rational};
+use crate::chem::{Element, PhScale, Rational, Species, rational};
 use crate::ledger::{Formation, Formations, Ledger, LedgerError, Sea};
 use crate::physics::constants::LN_10;
 use crate::seawater::constants::{Place, log_k_free};
@@ -142,6 +142,19 @@ impl System {
     #[must_use]
     pub fn ph_shift(&self) -> f64 {
         self.scales().map_or(0.0, |(sea, scales)| scales.shift_from_free(sea.ph_scale))
+    }
+
+    /// Change of pH on a scale less pH on the free scale, per kelvin; 0 outside seawater.
+    #[must_use]
+    pub fn ph_shift_per_kelvin(&self, scale: PhScale) -> f64 {
+        const STEP: f64 = 0.01;
+        let Some(sea) = self.ledger.sea() else { return 0.0 };
+        let at = |kelvin: f64| {
+            let place = Place::of(sea, Temperature::from_kelvin(kelvin).unwrap_or(self.temperature));
+            Scales::at(&self.ledger, &place).shift_from_free(scale)
+        };
+        let kelvin = self.temperature.kelvin();
+        (at(kelvin + STEP) - at(kelvin - STEP)) / (2.0 * STEP)
     }
 
     /// The sea of a marine system with its scales of pH.

@@ -12,7 +12,7 @@ use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
 use super::uncertainty::{Influence, Slopes, Stage, Variable};
-use crate::chem::{Element, Rational, Species, rational};
+use crate::chem::{Element, PhScale, Rational, Species, rational};
 use crate::ledger::{Formation, Formations, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::{gas_exchange, seawater, water};
@@ -374,7 +374,7 @@ impl State {
             Observable::PhOn(scale) => {
                 let (sea, scales) = self.scales(asked)?;
                 let shift = scales.shift_from_free(*scale) - scales.shift_from_free(sea.ph_scale);
-                plain(self.ph() + shift, "1", self.ph_slopes())
+                plain(self.ph() + shift, "1", self.ph_slopes_on(*scale))
             }
             Observable::Salinity => plain(self.scales(asked)?.0.salinity, "1", vec![]),
             Observable::Revelle => {
@@ -539,7 +539,17 @@ impl State {
     }
 
     pub(super) fn ph_slopes(&self) -> Slopes {
-        vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)]
+        let scale = self.system().ledger().sea().map_or(PhScale::Free, |sea| sea.ph_scale);
+        self.ph_slopes_on(scale)
+    }
+
+    /// The scales themselves change with temperature, as HSO4^- and HF do.
+    fn ph_slopes_on(&self, scale: PhScale) -> Slopes {
+        let mut slopes = vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)];
+        if scale != PhScale::Free {
+            slopes.push((Variable::Temperature, self.system().ph_shift_per_kelvin(scale)));
+        }
+        slopes
     }
 
     /// The sea of a seawater with its scales of pH.
@@ -1001,8 +1011,17 @@ impl State {
     pub fn choices(&self) -> Option<String> {
         let sea = self.system().ledger().sea()?;
         let choices = self.system().ledger().choices();
-        let choices: Vec<String> = choices.iter().map(|(name, author)| format!("{name} {author}")).collect();
-        Some(format!("{}; pH on the {} scale", choices.join(", "), sea.ph_scale.word()))
+        // Constants of one publication go together: `K1 K2 Lueker 2000`.
+        let mut by_author: Vec<(String, String)> = Vec::new();
+        for (name, author) in choices {
+            match by_author.last_mut().filter(|(_, last)| *last == author) {
+                Some((names, _)) => *names = format!("{names} {name}"),
+                None => by_author.push((name, author)),
+            }
+        }
+        let words: Vec<String> =
+            by_author.iter().map(|(names, author)| format!("{names} {author}")).collect();
+        Some(format!("{}; pH on the {} scale", words.join(", "), sea.ph_scale.word()))
     }
 
     /// What each species holds of the alkalinity, the largest share first.

@@ -319,7 +319,9 @@ fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem)
         per_kelvin(ln_k(&above), ln_k(&below))
     };
     for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
-        *value = held.phase.as_ref().map_or(0.0, |phase| -ln_k(phase));
+        // What is held and is no phase is a pH: in seawater on a scale that changes with temperature.
+        let of_ph = || per_kelvin(above.ph_shift(), below.ph_shift()) * LN_10;
+        *value = held.phase.as_ref().map_or_else(of_ph, |phase| -ln_k(phase));
     }
     for (value, solid) in given.minerals.iter_mut().zip(&conditions.minerals) {
         *value = -ln_k(&solid.species);

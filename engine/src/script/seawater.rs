@@ -144,7 +144,7 @@ mod seawater_functions {
     /// ```rhai
     /// let river = sample(#{ pH: 7.8, alkalinity: "1.2 meq/L", Ca: "20 mg/L" }).equilibrate();
     /// let sea = seawater(#{ salinity: 34, DIC: "2050 umol/kg", alkalinity: "2290 umol/kg" }).equilibrate();
-    /// fmt(estuary(river, sea, [0.5]).equilibrate().column("alkalinity [umol/kg]").mean.value, ".0f")   // "1745"
+    /// fmt(estuary(river, sea, [0.5]).equilibrate().column("alkalinity [umol/kg]").mean, ".0f")   // "1745"
     /// ```
     #[rhai_fn(return_raw)]
     pub fn estuary(river: State, sea: State, fractions: Array) -> ScriptResult<Array> {

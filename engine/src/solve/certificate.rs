@@ -2,7 +2,7 @@
 
 use super::Phases;
 use super::dense::Lu;
-use super::exact::ExactSum;
+use super::exact::DoubleSum;
 use super::ionic_strength::Settled;
 use super::settings::Settings;
 use super::system::{System, ln_sum};
@@ -11,7 +11,8 @@ use crate::activity::Model;
 /// How well an answer satisfies its equations, and how far it can be trusted.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Certificate {
-    /// Largest error of a balance of the components, summed without rounding, relative to the sum of its absolute terms.
+    /// Largest error of a balance of the components, summed in twice the precision, relative to the sum of its
+    /// absolute terms.
     pub balance: f64,
     /// Component of that balance.
     pub balance_idx: usize,
@@ -120,17 +121,18 @@ fn worst_balance(system: &System, phases: &Phases) -> (f64, usize) {
     let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
     let terms: Vec<(usize, f64)> =
         amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
-    let mut worst = (0.0, 0);
-    let mut sum = ExactSum::default();
-    for k in 0..system.problem.n_components {
-        let mut magnitude = 0.0;
-        for &(row, amount) in &terms {
-            let coefficient = basis.input_row(row)[k];
-            if coefficient != 0.0 {
-                sum.add_product(coefficient, amount);
-                magnitude += (coefficient * amount).abs();
+    let n = system.problem.n_components;
+    let (mut sums, mut magnitudes) = (vec![DoubleSum::default(); n], vec![0.0; n]);
+    for &(row, amount) in &terms {
+        for (k, coefficient) in basis.input_row(row)[..n].iter().enumerate() {
+            if *coefficient != 0.0 {
+                sums[k].add_product(*coefficient, amount);
+                magnitudes[k] += (coefficient * amount).abs();
             }
         }
+    }
+    let mut worst = (0.0, 0);
+    for (k, (mut sum, mut magnitude)) in sums.into_iter().zip(magnitudes).enumerate() {
         for part in system.problem.totals[k].parts() {
             sum.add_product(-basis.scale(k), part);
             magnitude += (basis.scale(k) * part).abs();

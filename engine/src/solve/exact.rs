@@ -151,6 +151,28 @@ impl ExactSum {
     }
 }
 
+/// Sum of products in twice the precision of `f64` (Ogita, Rump & Oishi 2005; recalled): enough to see how well a balance
+/// closes, and cheaper than a sum without any rounding.
+#[derive(Debug, Clone, Copy, Default)]
+pub(super) struct DoubleSum {
+    sum: f64,
+    error: f64,
+}
+
+impl DoubleSum {
+    /// Adds `a * b`.
+    pub(super) fn add_product(&mut self, a: f64, b: f64) {
+        let (product, product_error) = two_product(a, b);
+        let (sum, sum_error) = two_sum(self.sum, product);
+        self.sum = sum;
+        self.error += product_error + sum_error;
+    }
+
+    pub(super) fn take(self) -> f64 {
+        self.sum + self.error
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

@@ -272,10 +272,10 @@ impl Point {
         jacobian.clear();
         jacobian.resize(n * n, 0.0);
         for i in 0..reduced.species.len() {
-            let row = reduced.row(i);
+            let (row, sign) = (reduced.row(i), reduced.sign(i));
             for &(j, nu) in row {
                 let j = j as usize;
-                let weight = self.weight(i, j, reduced.sign(i) * nu);
+                let weight = self.weight(i, j, sign * nu);
                 let target = &mut jacobian[j * n..(j + 1) * n];
                 for &(k, other) in row {
                     target[k as usize] += weight * other;

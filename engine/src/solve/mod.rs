@@ -26,6 +26,7 @@
 //! - `inner`: Newton's method on logarithmic balances, with Φ as merit, at given γ and given phases. `dense`: LU.
 //! - `phases`: which phases are present. `mixtures`: how much of each mixture. `ionic_strength`: γ and the activity of water.
 //!   `specific`: γ that depends on more than the ionic strength.
+//! - `prepared`: many solves of one stoichiometry.
 //! - `sensitivity`: derivatives of an answer. `certificate`: what is checked. `scalar`: conditions that are not totals, as one equation outside all this.
 
 mod basis;
@@ -37,6 +38,7 @@ mod inner;
 mod ionic_strength;
 mod mixtures;
 mod phases;
+mod prepared;
 mod problem;
 pub mod scalar;
 pub mod sensitivity;
@@ -48,6 +50,7 @@ mod tests;
 
 pub use certificate::Certificate;
 pub use exact::Total;
+pub use prepared::Prepared;
 pub use problem::{Coefficient, Mineral, Mixture, Problem, Reservoir, Row};
 pub use settings::{Input, Settings, SolveError};
 pub use system::{Effort, Warm};
@@ -142,7 +145,8 @@ pub fn solve(
     warm: Option<&Warm>,
 ) -> Result<Converged, SolveError> {
     problem.validate()?;
-    match attempt(System::new(problem, warm)?, model, settings, warm) {
+    let start = warm.map_or((0.0, 0.0), |warm| (warm.ionic_strength, warm.ln_water_activity));
+    match attempt(System::new(problem, warm)?, model, settings, start) {
         Err(failure) if failure.is_open() => {
             // Newton's method does not end where the totals lie on the boundary of what is possible, or beyond.
             let absent = feasibility::zeros(problem)?;
@@ -151,20 +155,19 @@ pub fn solve(
             }
             let mut system = System::new(problem, None)?;
             system.absent = absent;
-            attempt(system, model, settings, None)
+            attempt(system, model, settings, (0.0, 0.0))
         }
         outcome => outcome,
     }
 }
 
-/// Solves from the start that `system` is at.
+/// Solves from where `system` is, and from an ionic strength with its ln of the activity of water.
 fn attempt(
     mut system: System,
     model: &Model,
     settings: &Settings,
-    warm: Option<&Warm>,
+    start: (f64, f64),
 ) -> Result<Converged, SolveError> {
-    let start = warm.map_or((0.0, 0.0), |warm| (warm.ionic_strength, warm.ln_water_activity));
     let settled = ionic_strength::settle(&mut system, model, settings, start)?;
     let Settled { ionic_strength, ln_water_activity, .. } = settled;
     let phases = Phases::read(&mut system);

@@ -99,35 +99,60 @@ pub struct Effort {
 impl<'p> System<'p> {
     /// The system at its starting point.
     pub(super) fn new(problem: &'p Problem, warm: Option<&Warm>) -> Result<Self, SolveError> {
-        let (n_components, n_mixtures) = (problem.n_components, problem.mixtures.len());
-        let basis =
-            Basis::new(problem.rows(), n_components, n_mixtures).ok_or(SolveError::CoefficientsTooLarge)?;
-        let mut column = vec![Column::Free; basis.n];
-        column[n_components..].fill(Column::Held);
-        let mixture_of = problem.rows().filter_map(|(_, mixture)| mixture).collect();
+        let basis = Basis::new(problem.rows(), problem.n_components, problem.mixtures.len())
+            .ok_or(SolveError::CoefficientsTooLarge)?;
+        let mut system = Self::on(problem, basis);
+        match warm.filter(|warm| warm.fits(&system)) {
+            Some(warm) => system = Self::resume(problem, warm.clone()),
+            None => system.start_cold()?,
+        }
+        Ok(system)
+    }
+
+    /// The system where an earlier solve of the same rows ended.
+    pub(super) fn resume(problem: &'p Problem, warm: Warm) -> Self {
         let mut system = Self {
+            level: warm.level,
+            column: warm.column,
+            mineral_amount: warm.mineral_amount,
+            mixture_present: warm.mixture_present,
+            specific: warm.specific,
+            ..Self::on(problem, warm.basis)
+        };
+        system.basis.pivots = 0;
+        for column in 0..system.basis.n {
+            if system.column[column] == Column::Absent {
+                // The total may have changed since; if it is still zero the reduction finds it again.
+                system.column[column] = Column::Free;
+                let total = system.total(column);
+                system.level[column] = starting_level(total);
+            }
+        }
+        system
+    }
+
+    /// A tableau without a start.
+    fn on(problem: &'p Problem, basis: Basis) -> Self {
+        let mut column = vec![Column::Free; basis.n];
+        column[problem.n_components..].fill(Column::Held);
+        Self {
             problem,
             g: vec![0.0; basis.unit_row(0) + basis.n],
             ln_gamma: vec![0.0; problem.species.len()],
+            mixture_of: problem.rows().filter_map(|(_, mixture)| mixture).collect(),
             charges: problem.species.iter().map(|row| row.charge).collect(),
             specific: vec![0.0; problem.species.len()],
-            mixture_of,
             ln_c: vec![f64::NEG_INFINITY; problem.n_amounts()],
             level: vec![0.0; basis.n],
             column,
             absent: vec![false; basis.unit_row(0)],
             mineral_amount: vec![0.0; problem.minerals.len()],
-            mixture_present: vec![false; n_mixtures],
-            mixture_amount: vec![0.0; n_mixtures],
+            mixture_present: vec![false; problem.mixtures.len()],
+            mixture_amount: vec![0.0; problem.mixtures.len()],
             sum: ExactSum::default(),
             effort: Effort::default(),
             basis,
-        };
-        match warm.filter(|warm| warm.fits(&system)) {
-            Some(warm) => system.start_from(warm),
-            None => system.start_cold()?,
         }
-        Ok(system)
     }
 
     /// Where this solve ended.
@@ -142,24 +167,6 @@ impl<'p> System<'p> {
             mixture_present: self.mixture_present,
             ionic_strength,
             ln_water_activity,
-        }
-    }
-
-    fn start_from(&mut self, warm: &Warm) {
-        self.basis.clone_from(&warm.basis);
-        self.basis.pivots = 0;
-        self.level.copy_from_slice(&warm.level);
-        self.column.copy_from_slice(&warm.column);
-        self.mineral_amount.copy_from_slice(&warm.mineral_amount);
-        self.specific.copy_from_slice(&warm.specific);
-        self.mixture_present.copy_from_slice(&warm.mixture_present);
-        for column in 0..self.basis.n {
-            if self.column[column] == Column::Absent {
-                // The total may have changed since; if it is still zero the reduction finds it again.
-                self.column[column] = Column::Free;
-                let total = self.total(column);
-                self.level[column] = starting_level(total);
-            }
         }
     }
 
@@ -247,15 +254,13 @@ impl<'p> System<'p> {
 
     /// Level of any row from the levels of the basis rows; minus infinity if it contains something absent.
     pub(super) fn level_of(&self, row: usize) -> f64 {
-        let scaled = self.basis.scaled_row(row);
-        let mut level = self.g[row];
-        for (column, entry) in scaled.iter().enumerate() {
+        let mut sum = 0.0;
+        for (column, entry) in self.basis.scaled_row(row).iter().enumerate() {
             if *entry != 0.0 {
-                let basis_row = self.basis.row_of(column);
-                level += entry / self.basis.determinant() * (self.level[column] - self.g[basis_row]);
+                sum += entry * (self.level[column] - self.g[self.basis.row_of(column)]);
             }
         }
-        level
+        self.g[row] + sum / self.basis.determinant()
     }
 
     /// Puts a mineral into the basis in place of the least concentrated species that it is made of.

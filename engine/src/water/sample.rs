@@ -32,6 +32,9 @@ struct Inner {
     notes: Vec<String>,
 }
 
+/// A treatment with what its value was stated as, where that came with an uncertainty.
+pub(crate) type StatedTreatment = (Treatment, Option<Quantity>);
+
 /// Why a sample cannot be made or treated so.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 #[non_exhaustive]
@@ -307,10 +310,19 @@ impl Sample {
         Self(Arc::new(inner))
     }
 
+    /// Its treatments, each with what its value was stated as.
+    pub(crate) fn stated_treatments(&self) -> impl Iterator<Item = StatedTreatment> {
+        let stated = |(k, treatment): (usize, &Treatment)| (treatment.clone(), self.stated_value(k).cloned());
+        self.0.treatments.iter().enumerate().map(stated)
+    }
+
     /// The same with other treatments.
     #[must_use]
-    pub(crate) fn with_treatments(&self, treatments: Vec<Treatment>) -> Self {
-        Self(Arc::new(Inner { treatments, ..(*self.0).clone() }))
+    pub(crate) fn with_treatments(&self, treatments: Vec<StatedTreatment>) -> Self {
+        let stated = treatments.iter().enumerate();
+        let stated = stated.filter_map(|(k, (_, stated))| Some((k, stated.clone()?))).collect();
+        let treatments = treatments.into_iter().map(|(treatment, _)| treatment).collect();
+        Self(Arc::new(Inner { treatments, stated, ..(*self.0).clone() }))
     }
 
     /// The same with every measured quantity replaced, those of waters mixed into it and of its treatments too.
@@ -352,6 +364,10 @@ impl Sample {
         if let Some(kelvin) = uncertain {
             *kelvin = change(kelvin);
             inner.setting.temperature = Temperature::try_from(&*kelvin).unwrap_or(inner.setting.temperature);
+        }
+        for (k, stated) in &mut inner.stated {
+            *stated = change(stated);
+            set_value(&mut inner.treatments[*k], stated);
         }
         for treatment in &mut inner.treatments {
             match treatment {
@@ -396,6 +412,21 @@ impl Sample {
             inner.stated.insert(inner.treatments.len() - 1, stated.clone());
         }
         Ok(treated)
+    }
+}
+
+/// Gives a treatment the value it is now stated as, in the unit the treatment holds it in.
+fn set_value(treatment: &mut Treatment, stated: &Quantity) {
+    match treatment {
+        Treatment::OpenTo { fugacity: value, .. }
+        | Treatment::Saturate { index: value, .. }
+        | Treatment::Allow { above: value, .. }
+        | Treatment::HoldPh { ph: value, .. } => *value = stated.value(),
+        Treatment::WarmTo(temperature) => {
+            *temperature = Temperature::try_from(stated).unwrap_or(*temperature);
+        }
+        Treatment::CompressTo(pressure) => *pressure = Pressure::try_from(stated).unwrap_or(*pressure),
+        _ => {}
     }
 }
 
