@@ -66,6 +66,8 @@ pub struct Converged {
     pub ln_a: Vec<f64>,
     /// ln of the concentration of each species. Shape `(n_species,)`.
     pub ln_c: Vec<f64>,
+    /// ln of the amount of each other, mol/kg(water). Shape `(n_others,)`.
+    pub ln_others: Vec<f64>,
     /// ln γ of each species. Shape `(n_species,)`.
     pub ln_gamma: Vec<f64>,
     /// `½ Σ z² c`, mol/kg(water).
@@ -176,6 +178,7 @@ fn attempt(
     Ok(Converged {
         ln_a: component_activities(&system),
         ln_c: system.ln_c[..system.problem.species.len()].to_vec(),
+        ln_others: system.ln_c[system.problem.species.len()..system.problem.first_member()].to_vec(),
         ln_gamma: std::mem::take(&mut system.ln_gamma),
         ionic_strength,
         ln_water_activity,
