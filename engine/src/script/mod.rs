@@ -38,6 +38,7 @@ mod findings;
 mod general;
 mod ledger;
 mod modules;
+mod neighbours;
 mod plot;
 mod processes;
 mod quantity;

@@ -9,6 +9,7 @@ pub mod analyte;
 pub mod concentration;
 pub mod csv_text;
 pub mod marine;
+pub mod neighbour;
 pub mod redox;
 pub mod sample;
 pub mod survey;
@@ -16,6 +17,7 @@ pub mod treatment;
 
 pub use analysis::{Analysis, Dissolved, Evidence, Measured, Ph};
 pub use analyte::Analyte;
+pub use neighbour::Neighbour;
 pub use sample::{Sample, SampleError};
 pub use survey::{Survey, SurveyError};
 pub use treatment::{Adjust, Dose, Titrant, Treatment};
