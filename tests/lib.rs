@@ -15,6 +15,8 @@ mod published;
 #[cfg(test)]
 mod random_systems;
 #[cfg(test)]
+mod redox;
+#[cfg(test)]
 mod refusals;
 #[cfg(test)]
 mod reproducible;

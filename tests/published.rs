@@ -50,6 +50,7 @@ files! {
     marshall1981 = "marshall1981",
     nordstrom2022 = "nordstrom2022",
     plummer1982 = "plummer1982",
+    redox = "redox",
     robinson1959 = "robinson1959",
     seawater_constants = "seawater-constants",
     seawater_pressure = "seawater-pressure",

@@ -226,7 +226,23 @@ fn analyses() {
         "`pressure`: a pressure of -1 bar is not possible: pressures are absolute, 0 bar or more",
     );
     key("density", "10 kg/L", "`density` is 10 kg/L, which no water has");
-    key("pe", "4", "`pe` is not read here: redox equilibria are not computed yet");
+    key(
+        "pe",
+        "40",
+        "`pe` amounts to pe 40.0000, which lies outside -20 to 30: water is stable from about -10 to 21",
+    );
+    key(
+        "ORP",
+        "0.2",
+        "`ORP` needs the reference electrode it was read against: give `electrode`, one of `Ag/AgCl saturated KCl`, \
+         `Ag/AgCl 3.5 mol/L KCl`, `Ag/AgCl 3 mol/L KCl` and `calomel saturated KCl`, or its potential against the hydrogen \
+         electrode, \"0.21 V\"; a value against that electrode itself is `Eh`",
+    );
+    key(
+        "pH_temperature",
+        "20 degC",
+        "`pH_temperature` is not read here: give pH as it is at the sample's temperature",
+    );
     key("make_up", "Na", "`make_up` names `Na`, which was not given: none were");
     analysis(
         &[("pH", "electroneutral"), ("Na", "1 mmol/L"), ("make_up", "Na")],
@@ -290,8 +306,8 @@ fn treatments() {
     water(DILUTE, &[open_to("CO2(g)", 0.0)], "the fugacity of `CO2(g)` must be above zero, not 0 bar");
     water(
         DILUTE,
-        &[open_to("O2(g)", 1.0)],
-        "the ledger has no mineral or gas `O2(g)`; did you mean `CO2(g)`?",
+        &[open_to("N2(g)", 1.0)],
+        "the ledger has no mineral or gas `N2(g)`; did you mean `H2(g)`?",
     );
     water(DILUTE, &[open_to("calcite", 1.0)], "`calcite`: CaCO3(calcite) is no gas");
     water(DILUTE, &[saturate("CO2(g)", 0.0)], "`CO2(g)`: CO2(g) is no solid");

@@ -37,7 +37,7 @@ fn derivative(f: impl Fn(f64) -> Vec<f64>, step: f64) -> Vec<f64> {
 }
 
 fn flattened(found: &Found) -> Vec<f64> {
-    [&found.ln_a, &found.ln_c, &found.ln_gamma, &found.reservoir_amount, &found.mineral_amount]
+    [&found.ln_a, &found.ln_c, &found.others, &found.ln_gamma, &found.reservoir_amount, &found.mineral_amount]
         .into_iter()
         .chain(&found.mixtures)
         .flatten()
@@ -51,6 +51,7 @@ fn read(converged: &Converged) -> Vec<f64> {
     flattened(&Found {
         ln_a: converged.ln_a.clone(),
         ln_c: converged.ln_c.clone(),
+        others: converged.ln_others.clone(),
         ln_gamma: converged.ln_gamma.clone(),
         ionic_strength: converged.ionic_strength,
         ln_water_activity: converged.ln_water_activity,

@@ -17,6 +17,10 @@ pub struct Cli {
     #[command(subcommand)]
     pub command: Option<Command>,
 
+    /// Keep the prompt though the input is no terminal: for editors that drive it
+    #[arg(long)]
+    pub interactive: bool,
+
     #[command(flatten)]
     pub look: Look,
 
@@ -28,6 +32,25 @@ pub struct Cli {
 pub enum Command {
     /// Run a script file
     Run(Run),
+    /// Run a script and write a report: prose, code, results, sources, cautions
+    Report(Report),
+    /// Write the report again whenever the script or a file beside it is saved
+    Watch(Report),
+    /// Run a script and write what it gave, and how, at the end of its file
+    Seal(Run),
+    /// Tell whether a sealed script still gives the same, and what moved it
+    Verify(Verify),
+    /// Find unknown names and keys in scripts without running them
+    Check(Check),
+    /// Print declarations of all script functions, for editors
+    Definitions,
+    /// Print completions for a shell
+    Completions {
+        /// The shell
+        shell: clap_complete::Shell,
+    },
+    /// Print the manual page
+    Manual,
     /// Solve a tableau of components, species and totals (JSON) and print the result as JSON
     Solve(Solve),
 }
@@ -38,13 +61,52 @@ pub struct Run {
     /// The script
     pub file: PathBuf,
 
-    /// Words the script reads with `args()`; `--` before them keeps options from being read by the program
+    /// Words for the script: `file=survey.csv` is read as `args["file"]`; `--` before them keeps options from being read by the
+    /// program
     #[arg(trailing_var_arg = true, allow_hyphen_values = true)]
     pub arguments: Vec<OsString>,
 
     /// Write files below this folder
     #[arg(long, value_name = "DIR", default_value = "out")]
     pub write: PathBuf,
+
+    /// Run a sealed file with the constants it was sealed with
+    #[arg(long)]
+    pub sealed: bool,
+}
+
+/// Run a script and write a report.
+#[derive(Debug, Args)]
+pub struct Report {
+    /// The script
+    pub file: PathBuf,
+
+    /// The report, ending in `.html` or `.md`; without it the script's name ending in `.html`, in this folder
+    #[arg(short, long, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+
+    /// Words for the script: `file=survey.csv` is read as `args["file"]`
+    #[arg(trailing_var_arg = true, allow_hyphen_values = true)]
+    pub arguments: Vec<OsString>,
+
+    /// Write files below this folder
+    #[arg(long, value_name = "DIR", default_value = "out")]
+    pub write: PathBuf,
+}
+
+/// Compare a sealed script with what it gives now.
+#[derive(Debug, Args)]
+pub struct Verify {
+    /// The sealed script
+    pub file: PathBuf,
+}
+
+/// Find faults without running.
+#[derive(Debug, Args)]
+pub struct Check {
+    /// The scripts
+    #[arg(required = true)]
+    pub files: Vec<PathBuf>,
 }
 
 /// Solve a tableau.
@@ -80,6 +142,10 @@ pub struct Limits {
     /// Stop a script, or one entry at the prompt, after this long
     #[arg(long, global = true, value_name = "SECONDS", value_parser = seconds)]
     pub time_limit: Option<Duration>,
+
+    /// Stop a calculation that holds more memory than this
+    #[arg(long, global = true, value_name = "MB", default_value_t = 4096, value_parser = megabytes)]
+    pub memory_limit: usize,
 }
 
 /// When to use colours.
@@ -127,6 +193,11 @@ impl Look {
 fn width() -> usize {
     terminal_size::terminal_size_of(std::io::stdout())
         .map_or(Style::default().width, |(columns, _)| usize::from(columns.0.max(40)))
+}
+
+fn megabytes(text: &str) -> Result<usize, String> {
+    let number = text.parse().ok().filter(|megabytes| *megabytes >= 64);
+    number.ok_or_else(|| "a number of megabytes is needed, 64 or more".to_owned())
 }
 
 fn seconds(text: &str) -> Result<Duration, String> {

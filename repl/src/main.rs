@@ -3,10 +3,13 @@
 mod cli;
 mod command;
 mod editor;
+mod job;
 mod journal;
+mod memory;
 mod progress;
 mod prompt;
 mod render;
+mod seal;
 
 use std::process::ExitCode;
 

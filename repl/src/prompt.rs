@@ -8,7 +8,7 @@ use lysocline_engine::script::{Diagnostic, Fail, ScriptEngine, Session, docs, wo
 
 use crate::command::read_script;
 use crate::editor::{Editor, Line};
-use crate::journal::Journal;
+use crate::journal::{self, Journal};
 use crate::render::diagnostic::Report;
 
 /// The colon commands: name, what follows it, what it does.
@@ -16,7 +16,7 @@ pub const COMMANDS: [(&str, &str, &str); 6] = [
     (":help", "[name]", "explain a function, a method or a property"),
     (":names", "", "list the variables and functions of this session"),
     (":undo", "", "take the last entry back"),
-    (":save", "file.rhai", "write every accepted entry to a script"),
+    (":save", "file.rhai [name]", "write every accepted entry to a script, or only what `name` needs"),
     (":load", "file.rhai", "run a script in this session"),
     (":quit", "", "leave (also Ctrl-D)"),
 ];
@@ -29,6 +29,8 @@ pub struct Prompt {
     report: Report,
     /// Journals of sessions that broke off, newest first.
     abandoned: Vec<PathBuf>,
+    /// Whether it was said that the journal cannot be written.
+    warned: bool,
 }
 
 /// Whether to go on.
@@ -41,7 +43,7 @@ impl Prompt {
     /// A prompt on an empty session.
     pub fn new(engine: Arc<ScriptEngine>, editor: Editor, journal: Journal, report: Report) -> Self {
         let abandoned = journal.abandoned();
-        Self { session: Session::new(engine), editor, journal, report, abandoned }
+        Self { session: Session::new(engine), editor, journal, report, abandoned, warned: false }
     }
 
     /// Runs until the person leaves.
@@ -68,8 +70,9 @@ impl Prompt {
             ": `:help` explains, Tab completes, `:quit` leaves"
         ));
         if let Some(path) = self.abandoned.first() {
-            let count = std::fs::read_to_string(path).map_or(0, |text| text.lines().count());
-            self.say(&format!("an earlier session broke off: `:load` alone brings its {count} lines back"));
+            let count = journal::entries(path).map_or(0, |(entries, _)| entries.len());
+            let entries = counted(count, "entry", "entries");
+            self.say(&format!("an earlier session broke off: `:load` alone brings its {entries} back"));
         }
     }
 
@@ -92,12 +95,25 @@ impl Prompt {
     fn enter(&mut self, entry: &str) {
         match self.session.enter(entry) {
             Ok(value) => {
-                self.journal.append(self.session.last_written().unwrap_or(entry));
+                let kept = self.journal.append(self.session.last_written().unwrap_or(entry));
+                self.note_unkept(kept);
                 if let Some(value) = value {
                     self.say(&self.session.engine().show(&value));
                 }
             }
             Err(diagnostic) => self.report.print(&diagnostic),
+        }
+    }
+
+    /// Says once that a crash would lose what is entered from now on.
+    fn note_unkept(&mut self, kept: std::io::Result<()>) {
+        if let (Err(error), false) = (kept, self.warned) {
+            self.warned = true;
+            let reason = error.to_string().to_lowercase();
+            let message = format!("this session cannot be kept against a crash: {reason}");
+            self.complain(
+                Diagnostic::new(Kind::Failure, message).help("`:save file.rhai` keeps it now and then"),
+            );
         }
     }
 
@@ -160,46 +176,86 @@ impl Prompt {
     fn undo(&mut self) {
         match self.session.undo() {
             Some(entry) => {
-                self.journal.rewrite(&self.session.script());
+                let kept = self.journal.rewrite(self.session.entries_written());
+                self.note_unkept(kept);
                 self.say(&format!("taken back: {}", first_line(&entry)));
             }
             None => self.say("there is nothing to take back"),
         }
     }
 
-    fn save(&self, file: &str) {
+    /// The whole session, or what one variable needs.
+    fn save(&self, words: &str) {
+        let (file, variable) = words.split_once(char::is_whitespace).unwrap_or((words, ""));
+        let (text, what) = match variable.trim() {
+            "" => (self.session.script(), counted(self.session.len(), "entry", "entries")),
+            variable => match self.session.slice(variable) {
+                Ok(slice) => {
+                    let what = format!(
+                        "{} of {} that give `{variable}`",
+                        slice.kept,
+                        counted(slice.of, "statement", "statements")
+                    );
+                    (slice.text, what)
+                }
+                Err(fail) => return self.complain(without_place(fail)),
+            },
+        };
         let name =
             if Path::new(file).extension().is_none() { format!("{file}.rhai") } else { file.to_owned() };
-        let written = self.session.engine().host().files().write(&name, self.session.script().as_bytes());
+        let written = self.session.engine().host().files().write(&name, text.as_bytes());
         match written {
-            Ok(_) => {
-                self.say(&format!("saved {} in `{name}`", counted(self.session.len(), "entry", "entries")))
-            }
-            Err(error) => self.complain(without_place(error.into())),
+            Ok(_) => self.say(&format!("saved {what} in `{name}`")),
+            Err(error) => return self.complain(without_place(error.into())),
+        }
+        // A function written anew at the prompt stands in the script twice.
+        if let Err(fault) = self.session.engine().check(&name, &text) {
+            let message = format!("the script will not run as it stands: {}", fault.message);
+            self.complain(Diagnostic { help: fault.help, ..Diagnostic::new(Kind::Failure, message) });
         }
     }
 
     /// Without a name: what the newest broken session left.
     fn load(&mut self, file: &str) {
-        let path = match (file, self.abandoned.first()) {
-            ("", None) => {
-                return self.complain(
-                    Diagnostic::new(Kind::Failure, "`:load` needs a file name")
-                        .help("write `:load lake.rhai`"),
-                );
-            }
-            ("", Some(path)) => path.clone(),
-            (file, _) => PathBuf::from(file),
+        if file.is_empty() {
+            return self.recover();
+        }
+        match read_script(Path::new(file)) {
+            Ok(text) => self.enter(text.trim_end()),
+            Err(diagnostic) => self.complain(*diagnostic),
+        }
+    }
+
+    /// Enters what a broken session left, entry by entry. Its journal goes only when all of it is in this session's own.
+    fn recover(&mut self) {
+        let Some(path) = self.abandoned.first().cloned() else {
+            let message = Diagnostic::new(Kind::Failure, "`:load` needs a file name");
+            return self.complain(message.help("write `:load lake.rhai`"));
         };
-        let text = match read_script(&path) {
-            Ok(text) => text,
-            Err(diagnostic) => return self.complain(*diagnostic),
+        let (entries, torn) = match journal::entries(&path) {
+            Ok(read) => read,
+            Err(error) => {
+                let message = format!("cannot read what the earlier session left: {error}");
+                return self.complain(Diagnostic::new(Kind::Failure, message));
+            }
         };
         let before = self.session.len();
-        self.enter(text.trim_end());
-        if file.is_empty() && self.session.len() > before {
-            let _ = std::fs::remove_file(self.abandoned.remove(0));
+        for entry in &entries {
+            let entered = self.session.len();
+            self.enter(entry);
+            if self.session.len() == entered {
+                let message = format!(
+                    "brought back {} of {} entries; the rest is in `{}`",
+                    entered - before,
+                    entries.len(),
+                    path.display()
+                );
+                return self.complain(Diagnostic::new(Kind::Failure, message));
+            }
         }
+        let torn = if torn { "; one that was not finished is left out" } else { "" };
+        self.say(&format!("brought back {}{torn}", counted(entries.len(), "entry", "entries")));
+        let _ = std::fs::remove_file(self.abandoned.remove(0));
     }
 }
 

@@ -8,6 +8,7 @@
 /// `(file name without extension, TOML text)` of every file in `constants/`, in alphabetical order.
 pub const CONSTANTS: &[(&str, &str)] = &[
     ("bates1943", include_str!("../constants/bates1943.toml")),
+    ("benson1979", include_str!("../constants/benson1979.toml")),
     ("busenberg1984", include_str!("../constants/busenberg1984.toml")),
     ("busenberg1986", include_str!("../constants/busenberg1986.toml")),
     ("cox1989", include_str!("../constants/cox1989.toml")),

@@ -6,7 +6,7 @@
 
 use std::fmt;
 
-/// A chemical element, by its atomic number.
+/// A chemical element, by its atomic number; or [`Element::SITE`].
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub struct Element(u8);
 
@@ -17,6 +17,10 @@ impl Element {
     pub const C: Self = Self(6);
     /// Oxygen.
     pub const O: Self = Self(8);
+
+    /// X, a site of a solid that the name in brackets says: one place for a charge on an exchanger, `NaX(clay)`, or one
+    /// group of a surface, `XOH(ferric oxide)`. It is balanced like an element and weighs nothing.
+    pub const SITE: Self = Self(119);
 
     /// The element with this symbol, `Ca`; capitals matter.
     #[must_use]
@@ -36,7 +40,7 @@ impl Element {
         MASSES.binary_search_by(|(symbol, _)| symbol.cmp(&self.symbol())).ok().map(|index| MASSES[index].1)
     }
 
-    /// Every symbol, in order of atomic number.
+    /// Every symbol, in order of atomic number, and X.
     #[must_use]
     pub fn symbols() -> &'static [&'static str] {
         &SYMBOLS
@@ -50,7 +54,7 @@ impl fmt::Display for Element {
 }
 
 #[rustfmt::skip]
-const SYMBOLS: [&str; 118] = [
+const SYMBOLS: [&str; 119] = [
     "H", "He",
     "Li", "Be", "B", "C", "N", "O", "F", "Ne",
     "Na", "Mg", "Al", "Si", "P", "S", "Cl", "Ar",
@@ -60,11 +64,12 @@ const SYMBOLS: [&str; 118] = [
     "Hf", "Ta", "W", "Re", "Os", "Ir", "Pt", "Au", "Hg", "Tl", "Pb", "Bi", "Po", "At", "Rn",
     "Fr", "Ra", "Ac", "Th", "Pa", "U", "Np", "Pu", "Am", "Cm", "Bk", "Cf", "Es", "Fm", "Md", "No", "Lr",
     "Rf", "Db", "Sg", "Bh", "Hs", "Mt", "Ds", "Rg", "Cn", "Nh", "Fl", "Mc", "Lv", "Ts", "Og",
+    "X",
 ];
 
 /// Symbol and mass in g/mol, by symbol.
 #[rustfmt::skip]
-const MASSES: [(&str, f64); 84] = [
+const MASSES: [(&str, f64); 85] = [
     ("Ag", 107.8682), ("Al", 26.9815384), ("Ar", 39.95), ("As", 74.921595), ("Au", 196.966570), ("B", 10.81),
     ("Ba", 137.327), ("Be", 9.0121831), ("Bi", 208.98040), ("Br", 79.904), ("C", 12.011), ("Ca", 40.078),
     ("Cd", 112.414), ("Ce", 140.116), ("Cl", 35.45), ("Co", 58.933194), ("Cr", 51.9961), ("Cs", 132.90545196),
@@ -78,7 +83,7 @@ const MASSES: [(&str, f64); 84] = [
     ("Ru", 101.07), ("S", 32.06), ("Sb", 121.760), ("Sc", 44.955907), ("Se", 78.971), ("Si", 28.085),
     ("Sm", 150.36), ("Sn", 118.710), ("Sr", 87.62), ("Ta", 180.94788), ("Tb", 158.925354), ("Te", 127.60),
     ("Th", 232.0377), ("Ti", 47.867), ("Tl", 204.38), ("Tm", 168.934219), ("U", 238.02891), ("V", 50.9415),
-    ("W", 183.84), ("Xe", 131.293), ("Y", 88.905838), ("Yb", 173.045), ("Zn", 65.38), ("Zr", 91.222),
+    ("W", 183.84), ("X", 0.0), ("Xe", 131.293), ("Y", 88.905838), ("Yb", 173.045), ("Zn", 65.38), ("Zr", 91.222),
 ];
 
 #[cfg(test)]

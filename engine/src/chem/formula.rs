@@ -8,7 +8,8 @@
 //! ```
 //!
 //! Subscript and superscript characters and the middle dot are read as the ASCII they stand for, so that `HCO₃⁻` and
-//! `HCO3^-` are one species. A neutral species without a state is a solute; `H2O` is liquid water.
+//! `HCO3^-` are one species. The element X is a site of the solid in the brackets: `CaX2(clay)` is calcium on two exchange
+//! sites of a clay, `XOH2^+(ferric oxide)` a surface group that took up a proton. A neutral species without a state is a solute; `H2O` is liquid water.
 
 use std::collections::BTreeMap;
 use std::fmt;
@@ -77,6 +78,9 @@ pub enum FormulaError {
         /// The spelling that would be read.
         suggested: String,
     },
+    /// A site of nothing.
+    #[error("`{0}`: X is a site of a solid, which goes into brackets: `NaX(clay)`, `XOH(ferric oxide)`")]
+    HomelessSite(String),
     /// Anything else that cannot be read on from `at`.
     #[error("`{formula}` cannot be read on from `{rest}`: {expected}")]
     Unreadable {
@@ -188,7 +192,19 @@ impl Species {
     /// Whether it is a solid.
     #[must_use]
     pub fn is_solid(&self) -> bool {
-        !matches!(self.0.state, State::Aqueous | State::Gas | State::Liquid)
+        !matches!(self.0.state, State::Aqueous | State::Gas | State::Liquid) && self.sites() == 0.into()
+    }
+
+    /// Whether it is held by sites of a solid: `NaX(clay)`, `XOH(ferric oxide)`.
+    #[must_use]
+    pub fn is_on_sites(&self) -> bool {
+        self.mineral_name().is_some() && self.sites() != 0.into()
+    }
+
+    /// Moles of sites in a mole of the species.
+    #[must_use]
+    pub fn sites(&self) -> Rational {
+        self.count(Element::SITE)
     }
 
     /// The name in the last bracket of a mineral: `calcite`.
@@ -357,6 +373,9 @@ impl<'a> Reader<'a> {
         let formula_end = self.position;
         let charge = self.charge(formula_end)?;
         let state = self.state()?;
+        if composition.contains_key(&Element::SITE) && !matches!(state, Some(State::Mineral(_))) {
+            return Err(FormulaError::HomelessSite(self.written.into()));
+        }
         if !self.rest().is_empty() {
             return Err(self.unreadable(
                 "an element, a charge such as `^2+`, or a state such as `(aq)` could stand here",

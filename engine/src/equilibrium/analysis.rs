@@ -9,18 +9,20 @@
 //! ```
 //!
 //! Where the evidence fixes neither total, one unknown is left and found as the root of one equation outside the convex
-//! problem: total carbon from alkalinity at a given pH, pH from total carbon at a given fugacity.
+//! problem: total carbon from alkalinity at a given pH, pH from total carbon at a given fugacity; and the total of hydrogen,
+//! where couples in equilibrium move what it is counted from.
 
 use std::collections::BTreeSet;
 
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
-use super::assemble::{System, carriers};
+use super::assemble::{System, carriers, inorganic_carbon};
 use super::dissolved_mass::{self, CARBONATE_MASS};
 use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
+use super::redox::{self, Pe, Plan};
 use super::uncertainty::{Conditions, Held, Slopes, Variable};
 use crate::chem::{Element, PhScale, Rational, Species, rational};
-use crate::ledger::{Formations, Ledger, Sea};
+use crate::ledger::{Couple, Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::water;
 use crate::quantity::Quantity;
@@ -43,6 +45,13 @@ const PH_RANGE: (f64, f64) = (-2.0, 17.0);
 /// Roots are found to this in ln total or in pH: the last digits of a double.
 const ROOT: Tolerance = Tolerance { x: 1e-15, f: 0.0 };
 const ROOT_INTERVALS: usize = 24;
+/// A total of hydrogen is found to this, mol/kg(water).
+const PROTON_ROOT: Tolerance = Tolerance { x: 1e-18, f: 1e-17 };
+/// The largest change of the total of hydrogen looked at, mol/kg(water).
+const MOST_PROTONS: f64 = 30.0;
+/// A couple's pe is found to this; it depends on itself through complexes only, so a few rounds do.
+const PE_ROOT: f64 = 1e-13;
+const PE_ROUNDS: usize = 60;
 
 /// The conserved totals and what was found on the way to them.
 #[derive(Debug, Clone)]
@@ -61,6 +70,8 @@ pub struct Analysed {
     pub misfits: Vec<Misfit>,
     /// What was assumed, in words.
     pub notes: Vec<String>,
+    /// The couples the water is to have in equilibrium; those of `system`, and of water itself what pe ruled out.
+    pub couples: Vec<Couple>,
 }
 
 /// A measured value that was not used, less the computed one.
@@ -120,11 +131,17 @@ pub fn analyse(
 ) -> Result<Analysed, EquilibriumError> {
     let mut notes = sample.notes().to_vec();
     let solution = solution(measured);
-    let mut given = amounts(measured, ledger, &solution, &mut notes)?;
+    let mut common = Vec::new();
+    let mut given = amounts(measured, ledger, &solution, &mut common)?;
     given.extend(conservative(ledger, &given)?);
-    let present = present_components(sample, measured, ledger, &given)?;
+    let mut present = present_components(sample, measured, ledger, &given)?;
+    let plan = plan(sample, measured, ledger, &given, &present)?;
+    if plan.pe.is_none() {
+        notes.extend(common);
+    }
+    present.extend(plan.components(ledger.formations()));
     let setting = sample.setting();
-    let system = match measured.ph_temperature {
+    let bare = match measured.ph_temperature {
         None => System::new(ledger, &present, setting.temperature, setting.pressure)?,
         // Where pH was measured elsewhere, it was in a laboratory at the surface.
         Some(temperature) => {
@@ -133,33 +150,133 @@ pub fn analyse(
             System::new(&ledger, &present, temperature, Pressure::ATMOSPHERE)?
         }
     };
-    let mut totals = vec![0.0; system.n_components()];
+    let mut totals = vec![0.0; bare.n_components()];
     for carried in &given {
-        totals[position(&system, carried.component)] += carried.total();
+        totals[position(&bare, carried.component)] += carried.total();
     }
-    let analysis = Analysis::new(&system, measured, &solution, settings, sample);
-    let (totals, converged) = match &measured.make_up {
-        None => analysis.solve(&totals)?,
-        Some(key) => {
-            let carrier = given
-                [measured.amounts.iter().position(|(_, own, _)| own == key).expect("checked on entry")]
-            .component;
-            analysis.made_up(&totals, position(&system, carrier), key, &mut notes)?
-        }
+
+    let Plan { couples, pe } = plan;
+    let evidence = Given { measured, sample, amounts: &given, totals, solution, settings };
+    let pe_is_held = pe.is_some();
+    let at_first = match (pe_is_held, measured.redox.is_silent()) {
+        (true, _) => redox::without_water(&couples),
+        // Couples that only a treatment asks for.
+        (false, true) => vec![],
+        (false, false) => couples.clone(),
     };
-    let misfits = analysis.misfits(&converged);
-    let conditions = analysis.conditions(measured, &given);
+    let mut system = bare.clone().with_couples(at_first);
+    let mut found = evidence.solve(&system, pe.as_ref())?;
+    if pe_is_held {
+        let stable = redox::stable(&couples, &system, &found.converged);
+        if stable.len() > system.couples().len() {
+            system = bare.with_couples(stable);
+            found = evidence.solve(&system, pe.as_ref())?;
+        }
+    }
+    notes.extend(found.notes);
     let outcome = Outcome {
         system: system.clone(),
-        converged,
-        totals: totals.clone(),
+        converged: found.converged,
+        totals: found.totals.clone(),
         exchanged: vec![],
         solids: vec![],
         dosed: Dosed::default(),
-        conditions,
+        conditions: found.conditions,
     };
     let temperature = measured.temperature.clone();
-    Ok(Analysed { system, totals, outcome: Some(outcome), measured: vec![], temperature, misfits, notes })
+    let (totals, misfits) = (found.totals, found.misfits);
+    let outcome = Some(outcome);
+    Ok(Analysed { system, totals, outcome, measured: vec![], temperature, misfits, notes, couples })
+}
+
+/// The couples of the water, and what fixes its pe. A pe that a treatment holds splits what was given whole, too.
+fn plan(
+    sample: &Sample,
+    measured: &Measured,
+    ledger: &Ledger,
+    given: &[Carried],
+    present: &BTreeSet<usize>,
+) -> Result<Plan, EquilibriumError> {
+    let carried = measured.amounts.iter().zip(given);
+    let given: Vec<(&Analyte, &str, usize)> =
+        carried.map(|((analyte, key, _), carried)| (analyte, key.as_str(), carried.component)).collect();
+    Plan::new(&measured.redox, holds_pe(sample), ledger, &given, present)
+}
+
+fn holds_pe(sample: &Sample) -> bool {
+    sample.treatments().iter().any(|treatment| matches!(treatment, Treatment::HoldPe { .. }))
+}
+
+/// What an analysis is solved from, whichever couples are in equilibrium.
+struct Given<'a> {
+    measured: &'a Measured,
+    sample: &'a Sample,
+    amounts: &'a [Carried],
+    /// Totals of everything but hydrogen and carbon.
+    totals: Vec<f64>,
+    solution: Solution,
+    settings: &'a Settings,
+}
+
+/// A solved analysis.
+struct Found {
+    totals: Vec<f64>,
+    converged: Converged,
+    misfits: Vec<Misfit>,
+    conditions: Option<Conditions>,
+    notes: Vec<String>,
+}
+
+impl Given<'_> {
+    fn solve(&self, system: &System, pe: Option<&Pe>) -> Result<Found, EquilibriumError> {
+        match pe {
+            None => self.solve_at(system, None, None),
+            Some(Pe::Value(electron)) => self.solve_at(system, Some(electron.pe), pe),
+            Some(Pe::Of(couple)) => self.solve_at(system, Some(self.pe_of(system, couple)?), pe),
+        }
+    }
+
+    /// The pe at which a couple is in equilibrium with the rest, which depends on it.
+    fn pe_of(&self, system: &System, couple: &Couple) -> Result<f64, EquilibriumError> {
+        let mut pe = 4.0;
+        for _ in 0..PE_ROUNDS {
+            let found = self.solve_at(system, Some(pe), None)?;
+            let next = redox::pe_of(couple, system, &found.converged);
+            if !next.is_finite() {
+                let why = format!("{couple} gives no pe where one of both is absent");
+                return Err(EquilibriumError::Analyte { key: "pe".into(), why });
+            }
+            if (next - pe).abs() <= PE_ROOT * pe.abs().max(1.0) {
+                return Ok(next);
+            }
+            pe = next;
+        }
+        Err(EquilibriumError::Unreachable(format!(
+            "`pe`: none was found at which {couple} is in equilibrium"
+        )))
+    }
+
+    fn solve_at(&self, system: &System, pe: Option<f64>, of: Option<&Pe>) -> Result<Found, EquilibriumError> {
+        let mut notes = Vec::new();
+        let mut analysis =
+            Analysis::new(system, self.measured, &self.solution, self.settings, self.sample, pe);
+        let (totals, mut converged) = match &self.measured.make_up {
+            None => analysis.solve(&self.totals)?,
+            Some(key) => {
+                let keys = self.measured.amounts.iter().map(|(_, own, _)| own);
+                let own = keys.zip(self.amounts).find(|(own, _)| *own == key).expect("checked on entry").1;
+                analysis.made_up(&self.totals, position(system, own.component), key, &mut notes)?
+            }
+        };
+        if let Some(Pe::Of(couple)) = of {
+            // The same once more with the couple itself held, which is what the evidence says.
+            analysis.pe = Some(Reservoir { row: system.couple_row(couple), ln_value: 0.0 });
+            (_, converged) = analysis.again(&totals)?;
+        }
+        let misfits = analysis.misfits(&converged);
+        let conditions = analysis.conditions(self.measured, self.amounts, of);
+        Ok(Found { totals, converged, misfits, conditions, notes })
+    }
 }
 
 /// Takes up totals that an earlier equilibrium left.
@@ -181,7 +298,14 @@ pub fn restore(
     }
     present.extend(formed.iter().flat_map(|formed| formed.stoichiometry.iter().map(|(j, _)| *j)));
     present.extend(formations.component(&Species::proton()));
-    let system = System::new(ledger, &present, sample.setting().temperature, sample.setting().pressure)?;
+    let Plan { couples, .. } = {
+        let plan = Plan::named(&dissolved.couples, holds_pe(sample), ledger)?;
+        present.extend(plan.components(formations));
+        plan
+    };
+    let setting = sample.setting();
+    let system = System::new(ledger, &present, setting.temperature, setting.pressure)?;
+    let system = system.with_couples(couples.clone());
     let mut totals = vec![0.0; system.n_components()];
     let mut measured = Vec::new();
     for (formed, (_, moles)) in formed.into_iter().zip(&dissolved.totals) {
@@ -196,7 +320,8 @@ pub fn restore(
     }
     let notes = sample.notes().to_vec();
     let temperature = dissolved.temperature.clone();
-    Ok(Analysed { system, totals, outcome: None, measured, temperature, misfits: vec![], notes })
+    let misfits = vec![];
+    Ok(Analysed { system, totals, outcome: None, measured, temperature, misfits, notes, couples })
 }
 
 fn position(system: &System, component: usize) -> usize {
@@ -335,8 +460,8 @@ fn present_components(
     present.extend(formations.component(&Species::proton()));
     let evidence = &measured.evidence;
     if evidence.alkalinity.is_some() || evidence.dic.is_some() || evidence.co2.is_some() {
-        let carbon = carriers(formations, Element::C);
-        if carbon.is_empty() {
+        let carbon = inorganic_carbon(formations);
+        if carbon.is_none() {
             let why =
                 "the ledger has no species of C: alkalinity, DIC and CO2 mean nothing in it".to_string();
             return Err(EquilibriumError::Analyte {
@@ -344,7 +469,7 @@ fn present_components(
                 why,
             });
         }
-        present.extend(carbon.first());
+        present.extend(carbon);
     }
     present.extend(treatment_components(sample, ledger)?);
     Ok(present)
@@ -361,7 +486,8 @@ fn treatment_components(sample: &Sample, ledger: &Ledger) -> Result<BTreeSet<usi
                 let formed = formations.formation(phase).expect("phases are formed");
                 present.extend(formed.stoichiometry.iter().map(|(j, _)| *j));
             }
-            Treatment::HoldPh { reagent: Some(reagent), .. } => {
+            Treatment::HoldPh { reagent: Some(reagent), .. }
+            | Treatment::HoldPe { reagent: Some(reagent), .. } => {
                 present.extend(super::treatment::reagent(ledger, reagent)?.into_iter().map(|(j, _)| j));
             }
             Treatment::WithSolid { solid, .. } => {
@@ -383,6 +509,7 @@ fn treatment_components(sample: &Sample, ledger: &Ledger) -> Result<BTreeSet<usi
             }
             // A solid that may form brings nothing with it: it needs what is there already.
             Treatment::Allow { solid, .. } => drop(ledger.find_phase(solid)?),
+            Treatment::HoldPe { .. } => present.extend(formations.component(&Species::electron())),
             Treatment::HoldPh { .. }
             | Treatment::Concentrate(_)
             | Treatment::WarmTo(_)
@@ -400,7 +527,10 @@ struct Analysis<'a> {
     solution: Solution,
     evidence: &'a Evidence,
     proton: usize,
+    electron: Option<usize>,
     carbon: Option<usize>,
+    /// What holds pe.
+    pe: Option<Reservoir>,
     /// Protons each component of the system carries in its zero-level species.
     protons: Vec<f64>,
     charges: Vec<f64>,
@@ -422,11 +552,13 @@ impl<'a> Analysis<'a> {
         solution: &Solution,
         settings: &'a Settings,
         sample: &Sample,
+        pe: Option<f64>,
     ) -> Self {
         let evidence = &measured.evidence;
         let level = ZeroLevel::at(system.ledger(), ALKALINITY_PH);
         let moles = |amount: &Amount| amount.moles.value() * amount.per.to_basis(solution);
-        let carbon = carriers(system.ledger().formations(), Element::C);
+        let carbon = inorganic_carbon(system.ledger().formations());
+        let electron = system.electron();
         Self {
             system,
             settings,
@@ -434,10 +566,14 @@ impl<'a> Analysis<'a> {
             solution: *solution,
             evidence,
             proton: system.proton(),
-            carbon: carbon.first().and_then(|j| system.components().iter().position(|own| own == j)),
+            electron,
+            carbon: carbon.and_then(|j| system.components().iter().position(|own| *own == j)),
+            pe: electron.zip(pe).map(|(electron, pe)| redox::fixed_pe(electron, pe)),
             protons: system.components().iter().map(|j| rational::to_f64(level.of_component(*j))).collect(),
+            // No electron is dissolved, so none carries charge.
             charges: (0..system.n_components())
-                .map(|k| f64::from(system.component_species(k).charge()))
+                .map(|k| if Some(k) == electron { 0 } else { system.component_species(k).charge() })
+                .map(f64::from)
                 .collect(),
             alkalinity: evidence.alkalinity.as_ref().map(moles),
             dic: evidence.dic.as_ref().map(moles),
@@ -464,26 +600,84 @@ impl<'a> Analysis<'a> {
             (true, true, _, true) => Err(self.too_much()),
             (true, false, co2, _) => {
                 if electroneutral {
-                    totals[self.proton] = self.neutral_protons(&totals);
+                    return self.neutral(&totals, self.co2_if(co2), None);
                 }
-                self.solve_with(
-                    &totals,
-                    (!electroneutral).then_some(self.ph).flatten(),
-                    self.co2_if(co2),
-                    None,
-                )
+                self.solve_with(&totals, self.ph, self.co2_if(co2), None)
             }
-            (false, true, false, true) if self.carbon.is_some() => {
-                totals[self.proton] = self.protons_from_alkalinity(&totals);
-                self.solve_with(&totals, None, None, None)
-            }
-            (false, true, true, _) => {
-                totals[self.proton] = self.protons_from_alkalinity(&totals);
-                self.solve_with(&totals, None, self.co2, None)
-            }
+            (false, true, false, true) if self.carbon.is_some() => self.alkaline(&totals, None),
+            (false, true, true, _) => self.alkaline(&totals, self.co2),
             (false, false, true, true) if uses("DIC") => self.ph_from_carbon(&totals),
             _ => Err(proton_total_open(&self.name, &self.evidence.used())),
         }
+    }
+
+    /// With the protons that make the charges add up.
+    fn neutral(
+        &self,
+        totals: &[f64],
+        co2: Option<f64>,
+        warm: Option<&Warm>,
+    ) -> Result<Solved, EquilibriumError> {
+        let mut totals = totals.to_vec();
+        totals[self.proton] = self.neutral_protons(&totals);
+        // Electrons that a pe delivers bring charge along.
+        if self.pe.is_none() || self.system.couples().len() == 0 {
+            return self.solve_with(&totals, None, co2, warm);
+        }
+        let charge = |totals: &[f64]| self.charges.iter().zip(totals).map(|(z, t)| z * t).sum::<f64>();
+        self.with_protons(&totals, co2, charge)
+    }
+
+    /// With the protons that give the measured alkalinity.
+    fn alkaline(&self, totals: &[f64], co2: Option<f64>) -> Result<Solved, EquilibriumError> {
+        let mut totals = totals.to_vec();
+        totals[self.proton] = self.protons_from_alkalinity(&totals);
+        let reduces = |row: &Row| self.alkalinity_of(&self.moles(row)) != 0.0;
+        if !self.system.couples().any(|(_, row)| reduces(row)) {
+            return self.solve_with(&totals, None, co2, None);
+        }
+        let target = self.alkalinity.expect("alkalinity is used");
+        self.with_protons(&totals, co2, |totals| target - self.alkalinity_of(totals))
+    }
+
+    /// The total of hydrogen at which `misses`, which rises with it, is zero, where couples in equilibrium move the totals
+    /// it is counted from. Of several the nearest to that without couples.
+    fn with_protons(
+        &self,
+        totals: &[f64],
+        co2: Option<f64>,
+        misses: impl Fn(&[f64]) -> f64,
+    ) -> Result<Solved, EquilibriumError> {
+        let mut last: Option<Solved> = None;
+        let mut at = |protons: f64| {
+            let mut totals = totals.to_vec();
+            totals[self.proton] = protons;
+            let warm = last.as_ref().map(|(_, converged)| converged.warm.clone());
+            let solved = self.solve_with(&totals, None, co2, warm.as_ref())?;
+            let miss = misses(&solved.0);
+            last = Some(solved);
+            Ok::<f64, EquilibriumError>(miss)
+        };
+        let begin = totals[self.proton];
+        let start = scalar::Sample { x: begin, f: at(begin)? };
+        let mut end = start;
+        let mut step = start.f.abs().max(1e-12);
+        while end.f * start.f > 0.0 {
+            end.x = begin - step.copysign(start.f);
+            end.f = at(end.x)?;
+            step *= 2.0;
+            if step > MOST_PROTONS {
+                return Err(EquilibriumError::ProtonTotal(format!(
+                    "no total of hydrogen gives {} what was measured of it once its couples are in equilibrium",
+                    self.name
+                )));
+            }
+        }
+        if start.f != 0.0 {
+            let root = root_between(&mut at, start, end, PROTON_ROOT)?;
+            at(root.x)?;
+        }
+        Ok(last.expect("solved at the root"))
     }
 
     fn too_much(&self) -> EquilibriumError {
@@ -535,9 +729,23 @@ impl<'a> Analysis<'a> {
             problem.reservoirs.push(self.fixed_co2(fugacity)?);
             held.push("CO2(g)".to_string());
         }
+        if let Some(pe) = &self.pe {
+            problem.reservoirs.push(pe.clone());
+            held.push("pe".to_string());
+        }
+        problem.reservoirs.extend(self.system.couples_held());
+        held.extend(self.system.couples().map(|(couple, _)| couple.to_string()));
         let converged = solve(&problem, self.system.model(), self.settings, warm);
         let converged = converged.map_err(|error| EquilibriumError::named(error, self.system, &held, &[]))?;
-        Ok((delivered(&problem, &converged), converged))
+        let totals = delivered(&problem, &converged);
+        Ok((settled(self.system, totals, &converged), converged))
+    }
+
+    /// Solves for totals found before, with what the evidence holds.
+    fn again(&self, totals: &[f64]) -> Result<Solved, EquilibriumError> {
+        let electroneutral = matches!(self.evidence.ph, Some(Ph::Electroneutral));
+        let ph = self.ph.filter(|_| self.evidence.uses("pH") && !electroneutral);
+        self.solve_with(totals, ph, self.co2_if(self.evidence.uses("fCO2")), None)
     }
 
     fn fixed_co2(&self, fugacity: f64) -> Result<Reservoir, EquilibriumError> {
@@ -558,16 +766,12 @@ impl<'a> Analysis<'a> {
         let mut misses = |ln_total: f64| {
             let mut totals = totals.to_vec();
             totals[carbon] = ln_total.exp();
-            if electroneutral {
-                totals[self.proton] = self.neutral_protons(&totals);
-            }
             let warm = last.as_ref().map(|(_, converged)| converged.warm.clone());
-            let solved = self.solve_with(
-                &totals,
-                (!electroneutral).then_some(self.ph).flatten(),
-                None,
-                warm.as_ref(),
-            )?;
+            let solved = if electroneutral {
+                self.neutral(&totals, None, warm.as_ref())?
+            } else {
+                self.solve_with(&totals, self.ph, None, warm.as_ref())?
+            };
             let miss = self.alkalinity_of(&solved.0) - target;
             last = Some(solved);
             Ok::<f64, EquilibriumError>(miss)
@@ -630,6 +834,7 @@ impl<'a> Analysis<'a> {
         let (delivered, _) = self.solve_with(&totals, Some(root.x), self.co2, None)?;
         // The same with the protons known and the gas alone held, which is what the evidence says.
         let gas = self.fixed_co2(1.0)?;
+        totals.clone_from(&delivered);
         for (k, nu) in gas.row.stoichiometry {
             totals[k] = delivered[k] - rational::to_f64(nu) * delivered[carbon];
         }
@@ -637,7 +842,7 @@ impl<'a> Analysis<'a> {
     }
 
     /// What the outcome of [`Analysis::solve`] meets, as one square system; `given` are the amounts.
-    fn conditions(&self, measured: &Measured, given: &[Carried]) -> Option<Conditions> {
+    fn conditions(&self, measured: &Measured, given: &[Carried], pe: Option<&Pe>) -> Option<Conditions> {
         let uses = |key| self.evidence.uses(key);
         let unit = |k: usize| (0..self.protons.len()).map(|own| f64::from(u8::from(own == k))).collect();
         let make_up = measured.make_up.as_ref().map(|key| {
@@ -677,12 +882,9 @@ impl<'a> Analysis<'a> {
                     Some(carbon) if uses("alkalinity") => self.supplied(carbon),
                     _ => unit(self.proton),
                 };
-                conditions.held.push(Held {
-                    reservoir: fixed_ph(self.proton, ph.value() - self.system.ph_shift()),
-                    phase: None,
-                    supply: balanced(supply),
-                    value: Some((ph.clone(), -LN_10)),
-                });
+                let reservoir = fixed_ph(self.proton, ph.value() - self.system.ph_shift());
+                let value = Some((ph.clone(), -LN_10));
+                conditions.held.push(Held { value, ..Held::chosen(reservoir, balanced(supply)) });
             }
             // The carbon that alkalinity and electroneutrality would fix together.
             Some(Ph::Electroneutral) if uses("pH") && uses("alkalinity") => return None,
@@ -696,19 +898,49 @@ impl<'a> Analysis<'a> {
             }
             let supply = if uses("DIC") { unit(self.proton) } else { supply };
             conditions.held.push(Held {
-                reservoir,
                 phase: self.system.ledger().find_phase("CO2(g)").ok().cloned(),
-                supply: balanced(supply),
                 value: Some((fugacity.clone(), 1.0 / fugacity.value())),
+                ..Held::chosen(reservoir, balanced(supply))
             });
         }
+        if let (Some(reservoir), Some(electron)) = (&self.pe, self.electron) {
+            let held = Held::chosen(reservoir.clone(), balanced(unit(electron)));
+            conditions.held.push(match pe {
+                Some(Pe::Value(electron)) => {
+                    let (value, slope) = &electron.value;
+                    let value = Some((value.clone(), -LN_10 * slope));
+                    Held { value, per_kelvin: -LN_10 * electron.per_kelvin, ..held }
+                }
+                Some(Pe::Of(couple)) => Held { couple: Some((**couple).clone()), ..held },
+                None => held,
+            });
+        }
+        for ((couple, row), reservoir) in self.system.couples().zip(self.system.couples_held()) {
+            let supply = balanced(self.kept(self.moles(row)));
+            let couple = Some(couple.clone());
+            conditions.held.push(Held { couple, ..Held::chosen(reservoir, supply) });
+        }
         Some(conditions)
+    }
+
+    /// A change of the totals with as many protons as keep what is known of them.
+    fn kept(&self, mut change: Vec<f64>) -> Vec<f64> {
+        if self.evidence.uses("alkalinity") {
+            change[self.proton] = self.others().map(|k| self.protons[k] * change[k]).sum();
+        } else if self.is_neutral() {
+            change[self.proton] = self.neutral_protons(&change);
+        }
+        change
+    }
+
+    fn is_neutral(&self) -> bool {
+        matches!(self.evidence.ph, Some(Ph::Electroneutral)) && self.evidence.uses("pH")
     }
 
     /// How the totals move when a mole of component `k` more is given: the protons follow what is known of them.
     fn supplied(&self, k: usize) -> Vec<f64> {
         let mut change = vec![0.0; self.protons.len()];
-        let electroneutral = matches!(self.evidence.ph, Some(Ph::Electroneutral)) && self.evidence.uses("pH");
+        let electroneutral = self.is_neutral();
         if k != self.proton {
             change[k] = 1.0;
             if self.evidence.uses("alkalinity") {
@@ -848,6 +1080,25 @@ pub(super) fn delivered(problem: &Problem, converged: &Converged) -> Vec<f64> {
         }
     }
     totals.into_iter().map(Total::to_f64).collect()
+}
+
+/// The totals after couples came to equilibrium: of the states they relate what is dissolved, so that a trace of one is not
+/// lost in the rounding of the other, and no electrons.
+pub(super) fn settled(system: &System, mut totals: Vec<f64>, converged: &Converged) -> Vec<f64> {
+    let related = system.couples().flat_map(|(_, row)| row.stoichiometry.iter().map(|(k, _)| *k));
+    let related: BTreeSet<usize> = related.filter(|k| *k != system.proton()).collect();
+    let problem = system.problem(&totals);
+    for k in related {
+        let dissolved = problem.species.iter().zip(&converged.ln_c).map(|(row, ln_c)| {
+            let nu = coefficient(row, k);
+            if nu == 0.0 { 0.0 } else { nu * ln_c.exp() }
+        });
+        totals[k] = dissolved.sum();
+    }
+    if let Some(electron) = system.electron() {
+        totals[electron] = 0.0;
+    }
+    totals
 }
 
 /// ln of the activity product of a row over its constant.

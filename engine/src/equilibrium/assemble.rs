@@ -4,12 +4,13 @@ use std::collections::BTreeSet;
 
 use crate::activity::Model;
 use crate::chem::{Element, PhScale, Rational, Species, rational};
-use crate::ledger::{Formation, Formations, Ledger, LedgerError, Sea};
+use crate::ledger::{Couple, Formation, Formations, Ledger, LedgerError, Sea};
 use crate::physics::constants::LN_10;
 use crate::seawater::constants::{Place, log_k_free};
 use crate::seawater::scales::Scales;
-use crate::solve::{Problem, Row, Total};
+use crate::solve::{Problem, Reservoir, Row, Total};
 use crate::units::{Pressure, Temperature};
+use crate::water::analyte::oxidation_state;
 
 use super::activity;
 use super::error::EquilibriumError;
@@ -25,7 +26,10 @@ pub struct System {
     /// Positions in [`Formations::species`], with their rows.
     solutes: Vec<(usize, Row)>,
     phases: Vec<(usize, Row)>,
+    /// Redox couples in equilibrium: rows that are zero then.
+    couples: Vec<(Couple, Row)>,
     model: Model,
+    log_k: Vec<f64>,
     doubts: Vec<Option<Doubt>>,
 }
 
@@ -71,7 +75,17 @@ impl System {
         let dissolved: Vec<&Species> =
             solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
         let model = activity::model(ledger.activity(), &dissolved, temperature, pressure);
-        Ok(Self { ledger: ledger.clone(), temperature, pressure, components, solutes, phases, model, doubts })
+        let couples = vec![];
+        let ledger = ledger.clone();
+        Ok(Self { ledger, temperature, pressure, components, solutes, phases, couples, model, log_k, doubts })
+    }
+
+    /// The same with these redox couples in equilibrium, whose components have to be present.
+    #[must_use]
+    pub fn with_couples(mut self, couples: Vec<Couple>) -> Self {
+        let rows: Vec<Row> = couples.iter().map(|couple| self.couple_row(couple)).collect();
+        self.couples = couples.into_iter().zip(rows).collect();
+        self
     }
 
     /// The same species with the constants of another temperature; whether cycles close there is not asked.
@@ -86,6 +100,10 @@ impl System {
         for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
             row.ln_k = ln_k(&formations.species[*index], &log_k);
         }
+        for (couple, row) in &mut system.couples {
+            row.ln_k = ln_k(&couple.reduction, &log_k);
+        }
+        system.log_k = log_k;
         system
     }
 
@@ -192,6 +210,37 @@ impl System {
         self.phases().find(|(formed, _)| formed.species == *species)
     }
 
+    /// Redox couples in equilibrium.
+    pub fn couples(&self) -> impl ExactSizeIterator<Item = (&Couple, &Row)> {
+        self.couples.iter().map(|(couple, row)| (couple, row))
+    }
+
+    /// The reduction of a couple as a row of the solver, zero at equilibrium.
+    #[must_use]
+    pub fn couple_row(&self, couple: &Couple) -> Row {
+        let water = self.formations().component(&Species::water());
+        row(&couple.reduction, &self.components, water, &self.log_k)
+    }
+
+    /// ln K of a species, whether or not its components are present.
+    #[must_use]
+    pub fn formation_ln_k(&self, formed: &Formation) -> f64 {
+        ln_k(formed, &self.log_k)
+    }
+
+    /// The couples in equilibrium as what the solver holds. A reservoir that delivers a reaction, so much oxidised for so
+    /// much reduced, delivers nothing else: it sets the reaction in equilibrium.
+    #[must_use]
+    pub fn couples_held(&self) -> Vec<Reservoir> {
+        self.couples.iter().map(|(_, row)| Reservoir { row: row.clone(), ln_value: 0.0 }).collect()
+    }
+
+    /// Position of the electron, where any reaction with electrons plays a part.
+    #[must_use]
+    pub fn electron(&self) -> Option<usize> {
+        self.component(&Species::electron())
+    }
+
     /// Why the constants behind a species are uncertain at this temperature, with the reactions concerned.
     pub fn doubts<'a>(&'a self, formed: &'a Formation) -> impl Iterator<Item = (&'a str, Doubt)> {
         let names: Vec<&str> = self.ledger.names().collect();
@@ -264,7 +313,8 @@ fn row(formed: &Formation, components: &[usize], water: Option<usize>, log_k: &[
     Row {
         stoichiometry,
         ln_k: ln_k(formed, log_k),
-        charge: f64::from(formed.species.charge()),
+        // A couple is a reaction, whose charges add up.
+        charge: if formed.species == Species::electron() { 0.0 } else { f64::from(formed.species.charge()) },
         water: water.map_or(0.0, |water| rational::to_f64(formed.coefficient(water))),
     }
 }
@@ -273,8 +323,27 @@ fn ln_k(formed: &Formation, log_k: &[f64]) -> f64 {
     formed.multiples.iter().map(|(k, n)| rational::to_f64(*n) * log_k[*k]).sum::<f64>() * LN_10
 }
 
-/// The components that carry an element, water and the hydrogen ion left out.
+/// The components that carry an element, water and the hydrogen ion left out: those that hold no other element where there
+/// are any, since a complex such as Fe(CN)6^3- is counted as itself. Oxygen and hydrogen are carried by their own gases.
 pub(super) fn carriers(formations: &Formations, element: Element) -> Vec<usize> {
-    let carries = |species: &Species| species.count(element) != 0.into() && *species != Species::water();
-    (0..formations.components.len()).filter(|j| carries(&formations.components[*j])).collect()
+    let components = 0..formations.components.len();
+    let carries = |j: &usize| {
+        let species = &formations.components[*j];
+        let is_of_water = matches!(element, Element::H | Element::O);
+        species.count(element) != 0.into()
+            && *species != Species::water()
+            && (!is_of_water || oxidation_state(species, element) == Some(0.into()))
+    };
+    let all: Vec<usize> = components.filter(carries).collect();
+    let alone = |j: &usize| formations.components[*j].elements_beside_water().nth(1).is_none();
+    let alone: Vec<usize> = all.iter().copied().filter(alone).collect();
+    if alone.is_empty() { all } else { alone }
+}
+
+/// The component that inorganic carbon is counted by.
+pub(super) fn inorganic_carbon(formations: &Formations) -> Option<usize> {
+    let carriers = carriers(formations, Element::C);
+    let is_inorganic =
+        |j: &&usize| oxidation_state(&formations.components[**j], Element::C) == Some(4.into());
+    carriers.iter().find(is_inorganic).or(carriers.first()).copied()
 }

@@ -102,7 +102,7 @@ fn at_saturation(
     let dissolved = state.dissolved_quantities().into_iter().enumerate();
     let phase = Some(system.ledger().find_phase("calcite")?.clone());
     let conditions = Conditions {
-        held: vec![Held { reservoir, phase, supply, value: None }],
+        held: vec![Held { phase, ..Held::chosen(reservoir, supply) }],
         measured: dissolved.map(|(k, (_, total))| (total, unit(k))).collect(),
         temperature: state.temperature_quantity(),
         ..Conditions::default()

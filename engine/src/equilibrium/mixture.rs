@@ -2,6 +2,7 @@
 
 use super::analysis::{self, Analysed};
 use super::error::EquilibriumError;
+use crate::chem::Species;
 use crate::ledger::Ledger;
 use crate::quantity::{Quantity, QuantityError};
 use crate::solve::Settings;
@@ -24,8 +25,16 @@ pub fn mix(
     for (position, (part, share)) in parts.iter().enumerate().filter(|(_, (_, share))| *share > 0.0) {
         let state = super::equilibrate(part, Some(ledger), settings)
             .map_err(|error| of_part(position, part, error))?;
-        for (species, total) in state.dissolved_quantities() {
+        // No electron is dissolved: they are counted by the oxidation states.
+        let totals = state.dissolved_quantities().into_iter();
+        for (species, total) in totals.filter(|(species, _)| *species != Species::electron()) {
             dissolved.totals.push((species, shared(&total, *share).map_err(undefined)?));
+        }
+        for (couple, _) in state.system().couples() {
+            let couple = couple.to_string();
+            if !dissolved.couples.contains(&couple) {
+                dissolved.couples.push(couple);
+            }
         }
         kelvin.extend(state.temperature_quantity().map(|temperature| (temperature, *share)));
         for note in part.notes() {

@@ -16,6 +16,8 @@ mod error;
 mod indices;
 mod mixture;
 pub mod observable;
+pub mod predominance;
+pub mod redox;
 pub mod state;
 mod trail;
 pub mod treatment;

@@ -17,6 +17,12 @@ use crate::units::{Unit, UnitError};
 pub enum Observable {
     /// -log10 a(H⁺).
     Ph,
+    /// -log10 a(e⁻).
+    Pe,
+    /// The potential against the standard hydrogen electrode that belongs to pe.
+    Eh,
+    /// The potential a couple alone would give.
+    EhOf(String),
     /// pH of a seawater on a named scale.
     PhOn(PhScale),
     /// DIC over the buffer factor of CO2 by carbon.
@@ -141,12 +147,15 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 /// Name, form as it is written, and what it is, in order of listing.
-pub const NAMES: [(&str, &str, &str); 38] = [
+pub const NAMES: [(&str, &str, &str); 41] = [
     (
         "pH",
         "pH",
         "-log10 of the activity of H^+; in seawater on the sample's scale, on another as pH(free), pH(nbs)",
     ),
+    ("pe", "pe", "-log10 of the activity of the electron, from the couples in equilibrium"),
+    ("Eh", "Eh", "potential against the standard hydrogen electrode, V"),
+    ("Eh", "Eh(Fe(III)/Fe(II))", "potential that a couple alone gives, in equilibrium with others or not, V"),
     ("temperature", "temperature", "temperature, degC"),
     ("pressure", "pressure", "pressure, bar"),
     ("density", "density", "density of the solution, kg/L"),
@@ -225,9 +234,12 @@ impl Asked {
         if let ("pH", Some(scale)) = (name, &subject) {
             return on_scale(scale, body).map(|observable| Self { observable, unit });
         }
-        let observable = match (subject, form.contains('(')) {
-            (None, false) => plain(name),
-            (Some(subject), true) if !subject.is_empty() => about(name, subject),
+        let takes = |subject: bool| {
+            NAMES.iter().any(|(known, form, _)| *known == name && form.contains('(') == subject)
+        };
+        let observable = match subject {
+            None if takes(false) => plain(name),
+            Some(subject) if takes(true) && !subject.is_empty() => about(name, subject),
             _ => return Err(ObservableError::Form(body.into(), form)),
         };
         Ok(Self { observable, unit })
@@ -267,6 +279,8 @@ fn plain(name: &str) -> Observable {
         "salinity" => Observable::Salinity,
         "Revelle" => Observable::Revelle,
         "pH" => Observable::Ph,
+        "pe" => Observable::Pe,
+        "Eh" => Observable::Eh,
         "temperature" => Observable::Temperature,
         "pressure" => Observable::Pressure,
         "density" => Observable::Density,
@@ -285,6 +299,7 @@ fn plain(name: &str) -> Observable {
 
 fn about(name: &str, subject: String) -> Observable {
     match name {
+        "Eh" => Observable::EhOf(subject),
         "m" => Observable::Molality(subject),
         "c" => Observable::Molarity(subject),
         "a" => Observable::Activity(subject),
@@ -308,6 +323,9 @@ impl fmt::Display for Observable {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let (name, subject) = match self {
             Self::Ph => ("pH", None),
+            Self::Pe => ("pe", None),
+            Self::Eh => ("Eh", None),
+            Self::EhOf(subject) => ("Eh", Some(subject)),
             Self::PhOn(scale) => return write!(f, "pH({})", scale.word()),
             Self::Salinity => ("salinity", None),
             Self::Revelle => ("Revelle", None),

@@ -11,10 +11,12 @@ use super::buffer::{self, Answering, buffer_factor};
 use super::error::EquilibriumError;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
+use super::redox;
 use super::uncertainty::{Influence, Slopes, Stage, Variable};
 use crate::chem::{Element, PhScale, Rational, Species, rational};
 use crate::ledger::{Formation, Formations, Sea};
 use crate::physics::constants::LN_10;
+use crate::physics::electrode::volts_per_pe;
 use crate::physics::{gas_exchange, seawater, water};
 use crate::present::{Cell, Column, Table};
 use crate::quantity::{Quantity, QuantityError};
@@ -190,6 +192,12 @@ impl State {
         self.0.outcome.conditions.as_ref()?.temperature.clone()
     }
 
+    /// Solids that may form or are there without limit.
+    #[must_use]
+    pub fn solids(&self) -> &[Solid] {
+        &self.0.outcome.solids
+    }
+
     fn solid(&self, species: &Species) -> Option<&Solid> {
         self.0.outcome.solids.iter().find(|solid| solid.species == *species)
     }
@@ -209,6 +217,7 @@ impl State {
     pub fn sample(&self, keep: &[&str]) -> Result<Sample, EquilibriumError> {
         let system = self.system();
         let mut totals = self.dissolved_quantities();
+        totals.retain(|(species, _)| *species != Species::electron());
         for name in keep {
             let solid = system.ledger().find_phase(name)?;
             let found = self.solid(solid);
@@ -220,7 +229,8 @@ impl State {
         let setting =
             Setting { temperature: self.temperature(), pressure: self.pressure(), water: self.water() };
         let name = self.0.sample.name().map(str::to_string);
-        let dissolved = Dissolved { totals, temperature: self.temperature_quantity() };
+        let couples = system.couples().map(|(couple, _)| couple.to_string()).collect();
+        let dissolved = Dissolved { totals, temperature: self.temperature_quantity(), couples };
         let mut sample = Sample::dissolved(name, setting, dissolved, system.ledger().clone());
         for name in keep {
             let allowed = Treatment::Allow { solid: (*name).into(), above: self.held_at(name)? };
@@ -371,6 +381,18 @@ impl State {
         let nothing = |error: EquilibriumError| no_answer(asked, error.to_string());
         match observable {
             Observable::Ph => plain(self.ph(), "1", self.ph_slopes()),
+            Observable::Pe => {
+                let (ln_a, slopes) = self.ln_electron(asked)?;
+                plain(-ln_a / LN_10, "1", scaled(&slopes, -1.0 / LN_10))
+            }
+            Observable::Eh => {
+                let (ln_a, slopes) = self.ln_electron(asked)?;
+                Ok(self.potential(ln_a, &slopes))
+            }
+            Observable::EhOf(name) => {
+                let (ln_a, slopes) = self.ln_electron_of(name, asked)?;
+                Ok(self.potential(ln_a, &slopes))
+            }
             Observable::PhOn(scale) => {
                 let (sea, scales) = self.scales(asked)?;
                 let shift = scales.shift_from_free(*scale) - scales.shift_from_free(sea.ph_scale);
@@ -536,6 +558,61 @@ impl State {
         let mut partials = Influence::of(&misfit.slopes, &first).partials(&analysed.system);
         partials.push(misfit.measured.clone());
         Ok(Answer { partials, ..Answer::new(misfit.value, unit, vec![]) })
+    }
+
+    /// ln of the activity of the electron.
+    fn ln_electron(&self, asked: &str) -> Result<(f64, Slopes), ObservableError> {
+        let ln_a = &self.0.outcome.converged.ln_a;
+        let electron = self.system().electron().filter(|k| ln_a[*k].is_finite());
+        let k = electron.ok_or_else(|| {
+            let couples: Vec<String> = self.system().couples().map(|(couple, _)| couple.to_string()).collect();
+            let why = match couples.as_slice() {
+                [] => "no couple of this water is in equilibrium: name some with `couples`, or ask what one of them gives \
+                       alone, as `Eh(Fe(III)/Fe(II))`"
+                    .to_string(),
+                couples => format!("it has no value where of {} one state is absent", list(couples)),
+            };
+            no_answer(asked, why)
+        })?;
+        Ok((ln_a[k], vec![(Variable::LnActivity(k), 1.0)]))
+    }
+
+    /// The same as one couple alone has it.
+    fn ln_electron_of(&self, name: &str, asked: &str) -> Result<(f64, Slopes), ObservableError> {
+        let system = self.system();
+        let ledger = system.ledger();
+        let couple = redox::find(ledger, name, "Eh").map_err(|error| match error {
+            EquilibriumError::Analyte { why, .. } => no_answer(asked, why),
+            other => no_answer(asked, other.to_string()),
+        })?;
+        let there = [&couple.oxidised, &couple.reduced];
+        if there.iter().any(|own| **own != Species::water() && system.component(own).is_none()) {
+            return Err(absent(asked));
+        }
+        let ln_a = redox::ln_electron(&couple, system, &self.0.outcome.converged);
+        if !ln_a.is_finite() {
+            return Err(absent(asked));
+        }
+        let row = system.couple_row(&couple);
+        let per_electron = 1.0 / couple.electrons as f64;
+        let others = row.stoichiometry.iter().filter(|(k, _)| Some(*k) != system.electron());
+        let mut slopes: Slopes =
+            others.map(|(k, nu)| (Variable::LnActivity(*k), rational::to_f64(*nu) * per_electron)).collect();
+        slopes.push((Variable::LnWaterActivity, row.water * per_electron));
+        let known = ledger.formations().couples();
+        slopes.extend(
+            known.iter().position(|own| *own == couple).map(|c| (Variable::CoupleLnK(c), per_electron)),
+        );
+        Ok((ln_a, slopes))
+    }
+
+    /// The potential, V, at an ln activity of the electron: `Eh = -(R T/F) ln a(e⁻)`.
+    fn potential(&self, ln_a: f64, slopes: &Slopes) -> Answer {
+        let kelvin = self.temperature().kelvin();
+        let volts = volts_per_pe(kelvin) / LN_10;
+        let mut slopes = scaled(slopes, -volts);
+        slopes.push((Variable::Temperature, -ln_a * volts / kelvin));
+        Answer::new(-ln_a * volts, "V", slopes)
     }
 
     pub(super) fn ph_slopes(&self) -> Slopes {
@@ -795,8 +872,18 @@ impl State {
         if !phase.is_gas() {
             return Err(no_answer(asked, format!("{phase} is no gas")));
         }
-        let (ln_fugacity, slopes) = self.ln_omega(name, asked)?;
-        Ok((ln_fugacity.exp(), scaled(&slopes, ln_fugacity.exp())))
+        match (self.ln_omega(name, asked), self.implied_fugacity(&phase)) {
+            (Err(ObservableError::Absent { .. }), Some(implied)) => Ok(implied),
+            (found, _) => found.map(|(ln_f, slopes)| (ln_f.exp(), scaled(&slopes, ln_f.exp()))),
+        }
+    }
+
+    /// The fugacity of oxygen or hydrogen that pe implies where none of it is dissolved.
+    fn implied_fugacity(&self, gas: &Species) -> Option<(f64, Slopes)> {
+        let (system, converged) = (self.system(), &self.0.outcome.converged);
+        let implied = redox::implied(system, converged).into_iter().find(|own| own.gas == *gas)?;
+        let fugacity = implied.ln_fugacity.exp();
+        Some((fugacity, scaled(&redox::implied_slopes(&implied, system)?, fugacity)))
     }
 
     /// Total pressure less that of water vapour over pure water, bar; over seawater at one atmosphere.
@@ -963,6 +1050,7 @@ impl State {
                 model.valid_to().unwrap_or(f64::INFINITY)
             ));
         }
+        warnings.extend(self.beyond_stability());
         let solutes = self.system().solutes().zip(&self.0.molalities);
         let matter: Vec<(&Species, f64)> = solutes
             .filter(|(formed, molality)| self.matters(formed, **molality))
@@ -990,6 +1078,28 @@ impl State {
             format!("`{}` was left out: other constants of the ledger imply it", names[leftover.reaction])
         }));
         warnings
+    }
+
+    /// What is said where water is not stable at the pe.
+    fn beyond_stability(&self) -> Vec<String> {
+        let system = self.system();
+        let converged = &self.0.outcome.converged;
+        let beyond = redox::implied(system, converged).into_iter();
+        let beyond = beyond.filter(|own| own.ln_fugacity > redox::STABLE.ln() + ROUNDING);
+        let words = |own: redox::Implied| {
+            let pe = -converged.ln_a[system.electron().expect("a pe is known")] / LN_10;
+            let side = if own.couple.reduced == Species::water() { "above" } else { "below" };
+            let left_out = match system.couples().any(|(couple, _)| *couple == own.couple) {
+                true => "",
+                false => "; water was not taken to be in equilibrium with it",
+            };
+            format!(
+                "pe {pe:.2} lies {side} what water is stable at: it implies {} at {} bar{left_out}",
+                own.gas,
+                power_of_ten(own.ln_fugacity / LN_10)
+            )
+        };
+        beyond.map(words).collect()
     }
 
     /// Constants of seawater outside their range, and the convention of a fugacity at depth.
@@ -1081,6 +1191,13 @@ fn words(doubt: Doubt) -> String {
     }
 }
 
+/// `3.2e15`, also beyond what a double holds.
+fn power_of_ten(log10: f64) -> String {
+    // What rounds to 10 counts as 1 of the next power.
+    let exponent = (log10 + 1.0 - 9.95_f64.log10()).floor();
+    format!("{:.1}e{exponent:.0}", 10_f64.powf(log10 - exponent))
+}
+
 fn carbon_dioxide() -> Species {
     Species::parse("CO2(aq)").expect("a formula")
 }
@@ -1107,7 +1224,8 @@ fn atoms(analyte: &Analyte, formed: &Formation, formations: &Formations) -> f64 
         let ion = &formations.components[*j];
         let is_counted = match (analyte.oxidation_state(), oxidation_state(ion, element)) {
             (Some(wanted), Some(own)) => wanted == own,
-            _ => true,
+            // Hydrogen and oxygen of other ions are those of water.
+            _ => !matches!(element, Element::H | Element::O),
         };
         if is_counted { ion.count(element) * nu } else { 0.into() }
     };

@@ -2,8 +2,8 @@
 //!
 //! What moves the totals themselves acts first, in the order given (see [`super::dosing`]); surroundings act last and
 //! together. Gases at a fixed fugacity and unlimited solids are reservoirs, solids that may form are minerals, and one convex
-//! problem at the final temperature holds them all. A pH held by a reagent is one equation outside it: so much of the
-//! reagent that the pH is met.
+//! problem at the final temperature holds them all, with the couples in equilibrium. A pH or pe held by a reagent is one
+//! equation outside it: so much of the reagent that it is met.
 
 use std::collections::BTreeMap;
 
@@ -12,9 +12,10 @@ use super::analysis::{Analysed, Outcome, Solid, delivered, fixed_ph};
 use super::assemble::{System, carriers};
 use super::dosing::{Course, Dosed};
 use super::error::EquilibriumError;
+use super::redox::{self, fixed_pe};
 use super::uncertainty::{Conditions, Held, MayForm, Variable};
 use crate::chem::{Element, Equation, Rational, Species, rational};
-use crate::ledger::{Formations, Ledger, Sea};
+use crate::ledger::{Couple, Formations, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::quantity::Quantity;
 use crate::solve::scalar::{self, Tolerance, root_between};
@@ -43,18 +44,48 @@ pub fn treat(sample: &Sample, analysed: &Analysed, settings: &Settings) -> Resul
     let pressure = compressed.unwrap_or(sample.setting().pressure);
     let present = analysed.system.components().iter().copied().collect();
     let system = System::new(&ledger_in_place(sample, &analysed.system)?, &present, temperature, pressure)?;
-    let mut surroundings = Surroundings::read(sample, &system)?;
-    let course = Course::run(sample, &system, analysed)?;
-    // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
-    surroundings.measured = course.measured;
-    surroundings.dosed = course.dosed;
-    surroundings.temperature = match warmed {
+    let kelvin = match warmed {
         Some((_, stated)) => stated.cloned(),
         None => analysed.temperature.clone(),
     };
+    let with = |couples: Vec<Couple>| {
+        treat_with(sample, analysed, &system.clone().with_couples(couples), kelvin.clone(), settings)
+    };
+    let holds_pe = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::HoldPe { reagent, .. } => Some(reagent),
+        _ => None,
+    });
+    match holds_pe {
+        None => with(analysed.system.couples().map(|(couple, _)| couple.clone()).collect()),
+        // A reagent is an amount, so that water gives off no more of its gases than that.
+        Some(Some(_)) => with(analysed.couples.clone()),
+        // Water takes part as far as it is stable at this pe.
+        Some(None) => {
+            let at_first = redox::without_water(&analysed.couples);
+            let outcome = with(at_first.clone())?;
+            let stable = redox::stable(&analysed.couples, &outcome.system, &outcome.converged);
+            if stable.len() == at_first.len() { Ok(outcome) } else { with(stable) }
+        }
+    }
+}
+
+/// The treatments in a system whose couples are settled, at a temperature in kelvin that may be uncertain.
+fn treat_with(
+    sample: &Sample,
+    analysed: &Analysed,
+    system: &System,
+    kelvin: Option<Quantity>,
+    settings: &Settings,
+) -> Result<Outcome, EquilibriumError> {
+    let mut surroundings = Surroundings::read(sample, system)?;
+    let course = Course::run(sample, system, analysed)?;
+    // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
+    surroundings.measured = course.measured;
+    surroundings.dosed = course.dosed;
+    surroundings.temperature = kelvin;
     match surroundings.held_by_reagent.clone() {
-        None => surroundings.solve(&system, &course.totals, settings),
-        Some((ph, reagent)) => surroundings.hold_ph(&system, &course.totals, ph, &reagent, settings),
+        None => surroundings.solve(system, &course.totals, settings),
+        Some(target) => surroundings.hold_by(system, &course.totals, &target, settings),
     }
 }
 
@@ -75,13 +106,30 @@ struct Surroundings {
     /// Gases and solids among the reservoirs, by position.
     phases: Vec<(usize, Species)>,
     minerals: Vec<(String, Species, Mineral)>,
-    held_by_reagent: Option<(f64, String)>,
+    held_by_reagent: Option<ByReagent>,
     /// Values stated with an uncertainty, by the name of what they hold, with the derivative of the solver's value by them.
     stated: BTreeMap<String, (Quantity, f64)>,
     /// For the derivatives of what comes out: see [`Conditions`].
     measured: Vec<(Quantity, Vec<f64>)>,
     temperature: Option<Quantity>,
     dosed: Dosed,
+}
+
+/// -log10 of an activity that a reagent brings about.
+#[derive(Clone)]
+struct ByReagent {
+    /// `pH` or `pe`.
+    what: &'static str,
+    component: usize,
+    value: f64,
+    reagent: String,
+}
+
+impl ByReagent {
+    /// What the scale of pH adds to -log10 of the activity; of electrons there is one scale.
+    fn shift(&self, system: &System) -> f64 {
+        if self.what == "pH" { system.ph_shift() } else { 0.0 }
+    }
 }
 
 impl Surroundings {
@@ -119,7 +167,14 @@ impl Surroundings {
                 self.hold("pH", None, fixed_ph(system.proton(), ph - system.ph_shift()));
             }
             Treatment::HoldPh { ph, reagent: Some(reagent) } => {
-                self.held_by_reagent = Some((*ph, reagent.clone()))
+                self.hold_later("pH", system.proton(), *ph, reagent)?;
+            }
+            Treatment::HoldPe { pe, reagent } => {
+                let electron = system.electron().ok_or_else(no_electrons)?;
+                match reagent {
+                    None => self.hold("pe", None, fixed_pe(electron, *pe)),
+                    Some(reagent) => self.hold_later("pe", electron, *pe, reagent)?,
+                }
             }
             Treatment::Dose(_)
             | Treatment::Remove(_)
@@ -129,6 +184,21 @@ impl Surroundings {
             | Treatment::WarmTo(_)
             | Treatment::CompressTo(_) => {}
         }
+        Ok(())
+    }
+
+    fn hold_later(
+        &mut self,
+        what: &'static str,
+        component: usize,
+        value: f64,
+        reagent: &str,
+    ) -> Result<(), EquilibriumError> {
+        if let Some(other) = self.held_by_reagent.as_ref().filter(|own| own.what != what) {
+            let why = format!("`{}` is held by a reagent already: one of both can be", other.what);
+            return Err(EquilibriumError::Analyte { key: what.into(), why });
+        }
+        self.held_by_reagent = Some(ByReagent { what, component, value, reagent: reagent.into() });
         Ok(())
     }
 
@@ -150,6 +220,7 @@ impl Surroundings {
             Treatment::OpenTo { gas, fugacity } => (gas.as_str(), 1.0 / fugacity),
             Treatment::Saturate { solid, .. } | Treatment::Allow { solid, .. } => (solid.as_str(), LN_10),
             Treatment::HoldPh { .. } => ("pH", -LN_10),
+            Treatment::HoldPe { .. } => ("pe", -LN_10),
             Treatment::WithSolid { .. }
             | Treatment::Dose(_)
             | Treatment::Remove(_)
@@ -176,9 +247,15 @@ impl Surroundings {
         }
     }
 
+    /// The surroundings, then the couples in equilibrium.
+    fn held(&self, system: &System) -> impl Iterator<Item = (String, Reservoir)> {
+        let names = system.couples().map(|(couple, _)| couple.to_string());
+        self.reservoirs.iter().cloned().chain(names.zip(system.couples_held()))
+    }
+
     fn problem(&self, system: &System, totals: &[f64]) -> Problem {
         Problem {
-            reservoirs: self.reservoirs.iter().map(|(_, reservoir)| reservoir.clone()).collect(),
+            reservoirs: self.held(system).map(|(_, reservoir)| reservoir).collect(),
             minerals: self.minerals.iter().map(|(_, _, mineral)| mineral.clone()).collect(),
             ..system.problem(totals)
         }
@@ -190,7 +267,7 @@ impl Surroundings {
         totals: &[f64],
         settings: &Settings,
     ) -> Result<Converged, EquilibriumError> {
-        let held: Vec<String> = self.reservoirs.iter().map(|(name, _)| name.clone()).collect();
+        let held: Vec<String> = self.held(system).map(|(name, _)| name).collect();
         let solids: Vec<String> = self.minerals.iter().map(|(name, ..)| name.clone()).collect();
         let converged = solve(&self.problem(system, totals), system.model(), settings, None);
         converged.map_err(|error| EquilibriumError::named(error, system, &held, &solids))
@@ -212,7 +289,7 @@ impl Surroundings {
             exchanged,
             solids: self.solids(&converged),
             dosed: self.dosed.clone(),
-            conditions: Some(self.conditions(&problem)),
+            conditions: Some(self.conditions(system, &problem)),
             converged,
         })
     }
@@ -233,13 +310,20 @@ impl Surroundings {
         unlimited.chain(formed).collect()
     }
 
-    fn conditions(&self, problem: &Problem) -> Conditions {
-        let held = self.reservoirs.iter().zip(own_supplies(problem)).enumerate();
-        let held = held.map(|(f, ((name, reservoir), supply))| Held {
-            reservoir: reservoir.clone(),
-            phase: self.phases.iter().find(|(own, _)| *own == f).map(|(_, species)| species.clone()),
-            supply,
-            value: self.stated.get(name).cloned(),
+    fn conditions(&self, system: &System, problem: &Problem) -> Conditions {
+        let phase =
+            |f: usize| self.phases.iter().find(|(own, _)| *own == f).map(|(_, species)| species.clone());
+        let couple = |f: usize| {
+            let position = f.checked_sub(self.reservoirs.len())?;
+            system.couples().nth(position).map(|(couple, _)| couple.clone())
+        };
+        let stated = |f: usize| self.stated.get(&self.reservoirs.get(f)?.0).cloned();
+        let held = problem.reservoirs.iter().zip(own_supplies(problem)).enumerate();
+        let held = held.map(|(f, (reservoir, supply))| Held {
+            phase: phase(f),
+            couple: couple(f),
+            value: stated(f),
+            ..Held::chosen(reservoir.clone(), supply)
         });
         let formed = self.minerals.iter().map(|(name, species, mineral)| MayForm {
             species: species.clone(),
@@ -255,16 +339,16 @@ impl Surroundings {
         }
     }
 
-    /// So much of a reagent that the pH is met.
-    fn hold_ph(
+    /// So much of a reagent that a pH or pe is met.
+    fn hold_by(
         mut self,
         system: &System,
         totals: &[f64],
-        ph: f64,
-        reagent_name: &str,
+        target: &ByReagent,
         settings: &Settings,
     ) -> Result<Outcome, EquilibriumError> {
-        let reagent = reagent(system.ledger(), reagent_name)?;
+        let ByReagent { what, component, value, reagent: name } = target;
+        let reagent = reagent(system.ledger(), name)?;
         let with = |amount: f64| {
             let mut totals = totals.to_vec();
             for (j, nu) in &reagent {
@@ -276,7 +360,7 @@ impl Surroundings {
         };
         let mut misses = |amount: f64| {
             let converged = self.converge(system, &with(amount), settings)?;
-            Ok::<f64, EquilibriumError>(system.ph_shift() - converged.ln_a[system.proton()] / LN_10 - ph)
+            Ok::<f64, EquilibriumError>(target.shift(system) - converged.ln_a[*component] / LN_10 - value)
         };
         let start = scalar::Sample { x: 0.0, f: misses(0.0)? };
         let mut nearest = start;
@@ -288,9 +372,9 @@ impl Surroundings {
         }
         if end.f * start.f > 0.0 {
             return Err(EquilibriumError::Unreachable(format!(
-                "no amount of `{reagent_name}` up to {MOST_REAGENT} mol/kg(water) brings the water to pH {ph}: \
-                 the nearest is pH {:.2}",
-                nearest.f + ph
+                "no amount of `{name}` up to {MOST_REAGENT} mol/kg(water) brings the water to {what} {value}: \
+                 the nearest is {what} {:.2}",
+                nearest.f + value
             )));
         }
         let amount = if start.f == 0.0 {
@@ -298,17 +382,22 @@ impl Surroundings {
         } else {
             root_between(&mut misses, start, end, Tolerance { x: 1e-18, f: 1e-14 })?.x
         };
-        // Once more with the pH held, which it now is without a mole of hydrogen ions.
-        self.hold("pH", None, fixed_ph(system.proton(), ph - system.ph_shift()));
+        // Once more with it held, which it now is without a mole of hydrogen ions or electrons.
+        self.hold(what, None, fixed_ph(*component, value - target.shift(system)));
         let mut outcome = self.solve(system, &with(amount), settings)?;
-        let held = self.reservoirs.iter().position(|(name, _)| name == "pH").expect("just held");
-        outcome.exchanged[held] = (reagent_name.to_string(), amount);
+        let held = self.reservoirs.iter().position(|(own, _)| own == what).expect("just held");
+        outcome.exchanged[held] = (name.clone(), amount);
         let supply = with(1.0).iter().zip(totals).map(|(with, without)| with - without).collect();
         if let Some(conditions) = &mut outcome.conditions {
             conditions.held[held].supply = supply;
         }
         Ok(outcome)
     }
+}
+
+fn no_electrons() -> EquilibriumError {
+    let why = "the ledger has no reaction with electrons, so pe means nothing in it".into();
+    EquilibriumError::Analyte { key: "pe".into(), why }
 }
 
 /// A gas, or a solid, by its name.
@@ -365,9 +454,17 @@ pub fn reagent(ledger: &Ledger, text: &str) -> Result<Vec<(usize, Rational)>, Eq
             .flat_map(|chosen| carriers.iter().map(move |own| [chosen.as_slice(), &[*own]].concat()))
             .collect();
     }
-    choices.iter().find_map(|carriers| dissolved(formations, &species, carriers)).ok_or_else(|| {
+    let found = choices.iter().find_map(|carriers| dissolved(formations, &species, carriers));
+    found.or_else(|| solute(formations, &species)).ok_or_else(|| {
         fault("its oxidation states are not those of the ledger's species: dissolving it would be a redox reaction".into())
     })
+}
+
+/// A solute the ledger forms without electrons, such as dissolved oxygen.
+fn solute(formations: &Formations, species: &Species) -> Option<Vec<(usize, Rational)>> {
+    let formed = formations.formation(species)?;
+    let water = formations.component(&Species::water());
+    Some(formed.stoichiometry.iter().copied().filter(|(j, _)| Some(*j) != water).collect())
 }
 
 /// Equivalents of strong acid in a mole of a reagent, counted as alkalinity is: HCl 1, H2SO4 2, NaOH -1.
@@ -461,12 +558,14 @@ mod tests {
         case("Al2(SO4)3", &[("Al^3+", 2), ("SO4^2-", 3)]);
         case("Na2S", &[("Na^+", 2), ("HS^-", 1), ("H^+", -1)]);
         case("NH4Cl", &[("NH4^+", 1), ("Cl^-", 1)]);
+        case("O2", &[("O2(aq)", 1)]);
+        case("CH4", &[("CH4(aq)", 1)]);
     }
 
     #[test]
     fn a_reagent_that_would_take_electrons_is_refused() {
         let book = shipped::ledger("freshwater", None).unwrap();
-        for text in ["Na2SO3", "FeS2", "CH4"] {
+        for text in ["Na2SO3", "FeS2", "C2H4"] {
             let error = reagent(&book, text).unwrap_err().to_string();
             assert!(error.contains("redox reaction"), "{text}: {error}");
         }

@@ -12,6 +12,8 @@
 //! | carbon, at a known alkalinity and pH | pH | carbon, with the protons that keep the alkalinity |
 //! | protons, at a known carbon and fugacity | fugacity | protons |
 //! | a reagent | pH | the reagent |
+//! | electrons | pe, Eh, a couple's pe | electrons |
+//! | a reaction between oxidation states | a couple's equilibrium | the reaction, with the protons that keep an alkalinity |
 //!
 //! An alkalinity, electroneutrality and a total that makes the charges add up are linear in the totals: they turn what is
 //! delivered, or measured, into a direction in which all totals move.
@@ -23,7 +25,7 @@ use super::analysis::Outcome;
 use super::assemble::System;
 use crate::activity::Composition;
 use crate::chem::{Reaction, Species, rational};
-use crate::ledger::Formation;
+use crate::ledger::{Couple, Formation};
 use crate::physics::constants::LN_10;
 use crate::quantity::{Input, Part, Quantity};
 use crate::solve::sensitivity::{Found, Given, Sensitivities};
@@ -57,6 +59,10 @@ pub enum Variable {
     MineralAmount(usize),
     /// ln K of a gas or solid, by its position in [`System::phases`].
     PhaseLnK(usize),
+    /// ln K of a species that need not be in the system, by its position in the ledger's formations.
+    FormationLnK(usize),
+    /// ln K of a redox couple, by its position in the ledger's list of couples.
+    CoupleLnK(usize),
     /// Temperature, K.
     Temperature,
 }
@@ -87,10 +93,35 @@ pub struct Held {
     pub reservoir: Reservoir,
     /// The gas or solid whose constant it involves.
     pub phase: Option<Species>,
+    /// Or the redox couple.
+    pub couple: Option<Couple>,
     /// Change of every total per mole delivered.
     pub supply: Vec<f64>,
     /// The measured value with the derivative of `ln_value` by it; none where it was chosen.
     pub value: Option<(Quantity, f64)>,
+    /// Change of `ln_value` per kelvin, where it follows from the temperature as a potential does.
+    pub per_kelvin: f64,
+}
+
+impl Held {
+    /// A value that was chosen, held by delivering what it is the activity of.
+    #[must_use]
+    pub fn chosen(reservoir: Reservoir, supply: Vec<f64>) -> Self {
+        Self { reservoir, phase: None, couple: None, supply, value: None, per_kelvin: 0.0 }
+    }
+
+    /// The reaction whose constant it involves.
+    fn formed<'a>(&'a self, system: &'a System) -> Option<&'a Formation> {
+        let phase = self.phase.as_ref().and_then(|phase| system.phase(phase)).map(|(formed, _)| formed);
+        phase.or(self.couple.as_ref().map(|couple| &couple.reduction))
+    }
+
+    /// Its ln K in a system.
+    fn ln_k(&self, system: &System) -> f64 {
+        let phase = self.phase.as_ref().and_then(|phase| system.phase(phase)).map(|(_, row)| row.ln_k);
+        let couple = || self.couple.as_ref().map(|couple| system.couple_row(couple).ln_k);
+        phase.or_else(couple).unwrap_or(0.0)
+    }
 }
 
 /// A solid that may form.
@@ -164,7 +195,22 @@ impl Influence {
                 Variable::PhaseLnK(p) => {
                     let (formed, _) = outcome.system.phases().nth(p).expect("a phase of the system");
                     influence.add_constants(&outcome.system, formed, *slope);
-                    influence.add_phase_temperature(outcome, p, *slope);
+                    influence.add_constant_temperature(outcome, *slope, |system| {
+                        system.phases().nth(p).map_or(0.0, |(_, row)| row.ln_k)
+                    });
+                }
+                Variable::FormationLnK(i) => {
+                    let formed = &outcome.system.ledger().formations().species[i];
+                    influence.add_constants(&outcome.system, formed, *slope);
+                    influence
+                        .add_constant_temperature(outcome, *slope, |system| system.formation_ln_k(formed));
+                }
+                Variable::CoupleLnK(c) => {
+                    let couples = outcome.system.ledger().formations().couples();
+                    influence.add_constants(&outcome.system, &couples[c].reduction, *slope);
+                    influence.add_constant_temperature(outcome, *slope, |system| {
+                        system.couple_row(&couples[c]).ln_k
+                    });
                 }
                 Variable::Temperature => influence.add_temperature(outcome, *slope),
             }
@@ -192,7 +238,7 @@ impl Influence {
             self.add_constants(system, formed, *slope);
         }
         for (held, slope) in conditions.held.iter().zip(&by.reservoirs) {
-            if let Some((formed, _)) = held.phase.as_ref().and_then(|phase| system.phase(phase)) {
+            if let Some(formed) = held.formed(system) {
                 self.add_constants(system, formed, -slope);
             }
             if let Some((value, by_value)) = &held.value {
@@ -245,11 +291,11 @@ impl Influence {
         }
     }
 
-    fn add_phase_temperature(&mut self, outcome: &Outcome, phase: usize, by_ln_k: f64) {
+    /// Adds what an ln K contributes through an uncertain temperature.
+    fn add_constant_temperature(&mut self, outcome: &Outcome, by_ln_k: f64, ln_k: impl Fn(&System) -> f64) {
         if outcome.conditions.as_ref().is_some_and(|own| own.temperature.is_some())
             && let Some((above, below)) = neighbours(&outcome.system)
         {
-            let ln_k = |system: &System| system.phases().nth(phase).map_or(0.0, |(_, row)| row.ln_k);
             self.add_temperature(outcome, by_ln_k * (ln_k(&above) - ln_k(&below)) / (2.0 * TEMPERATURE_STEP));
         }
     }
@@ -319,9 +365,12 @@ fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem)
         per_kelvin(ln_k(&above), ln_k(&below))
     };
     for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
-        // What is held and is no phase is a pH: in seawater on a scale that changes with temperature.
-        let of_ph = || per_kelvin(above.ph_shift(), below.ph_shift()) * LN_10;
-        *value = held.phase.as_ref().map_or_else(of_ph, |phase| -ln_k(phase));
+        // What is held and is no reaction is a pH, in seawater on a scale that changes with temperature, or a potential.
+        let of_scale = held.per_kelvin + per_kelvin(above.ph_shift(), below.ph_shift()) * LN_10;
+        *value = match held.formed(&outcome.system) {
+            Some(_) => -per_kelvin(held.ln_k(&above), held.ln_k(&below)),
+            None => of_scale,
+        };
     }
     for (value, solid) in given.minerals.iter_mut().zip(&conditions.minerals) {
         *value = -ln_k(&solid.species);

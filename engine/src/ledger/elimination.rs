@@ -43,7 +43,15 @@ impl Echelon {
     ///
     /// [`TooLarge`]; nothing is added then.
     pub fn add(&mut self, index: usize, row: Sparse) -> Result<Option<Combination>, TooLarge> {
-        let mut added = Combination { row, multiples: Sparse::from([(index, 1.into())]) };
+        self.add_combination(Combination { row, multiples: Sparse::from([(index, 1.into())]) })
+    }
+
+    /// The same for a combination of reactions.
+    ///
+    /// # Errors
+    ///
+    /// As [`Echelon::add`].
+    pub fn add_combination(&mut self, mut added: Combination) -> Result<Option<Combination>, TooLarge> {
         self.reduce(&mut added)?;
         let Some((&pivot, &coefficient)) = added.row.first_key_value() else { return Ok(Some(added)) };
         added.scale(coefficient.recip())?;

@@ -3,28 +3,36 @@
 //! A component is a species that the others are formed from. The simplest ones are preferred: water, the hydrogen ion,
 //! then monatomic ions, then the ions that occur in most reactions. Which ones are picked changes no result; the solver
 //! re-bases on the most concentrated species anyway.
+//!
+//! Oxidation states are components of their own: reactions with electrons form nothing from anything, but for gases and
+//! solids that no other reaction makes known (pyrite). Those that relate what is dissolved are kept apart, as electron
+//! balances from which [`Formations::couple`] makes [`Couple`]s; which of them are in equilibrium is up to a water.
 
 use std::cmp::Reverse;
 use std::collections::BTreeSet;
 
+use super::couple::Couple;
 use super::elimination::{Combination, Echelon, Sparse, TooLarge};
 use crate::chem::{GasStandard, Rational, Reaction, ReactionError, Species};
 
 /// Every species of a ledger as a formation reaction from its components.
 #[derive(Debug, Clone, Default)]
 pub struct Formations {
-    /// The components; the electron is never among them, as reactions with electrons are left out (see [`Formations::of`]).
+    /// The components. The electron is one if it takes part in any reaction, though it is no species.
     pub components: Vec<Species>,
     /// All species, components included, solutes first, each group in order of spelling.
     pub species: Vec<Formation>,
     /// Reactions that the others already imply, with the cycle each would close.
     pub leftovers: Vec<Leftover>,
+    /// Reactions with electrons among components, each independent of those before: `Σ νⱼ ln aⱼ + Σ nₖ ln Kₖ = 0`, with
+    /// components by their index.
+    balances: Vec<Combination>,
     /// Reactions left out because their coefficients outgrow 64 bits, by their index in the order of names.
     pub too_large: Vec<usize>,
 }
 
 /// One species formed from components: ln a = Σ νⱼ ln aⱼ + Σ nₖ ln Kₖ.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, PartialEq)]
 pub struct Formation {
     /// The species formed.
     pub species: Species,
@@ -45,28 +53,40 @@ pub struct Leftover {
 
 impl Formations {
     /// Eliminates reactions in order of preference: smaller stated sigma first, unstated last, then fewer species, then
-    /// the name. Reactions in which electrons take part are left out, so that oxidation states stay separate.
+    /// the name; those with electrons last.
     pub(super) fn of(reactions: &[(&str, &Reaction)], solutes: &BTreeSet<Species>) -> Self {
         let electron = Species::electron();
-        let takes_part = |reaction: &Reaction| reaction.equation().coefficient(&electron) == 0.into();
-        let mut order: Vec<usize> = (0..reactions.len()).filter(|i| takes_part(reactions[*i].1)).collect();
+        let has_electrons = |index: usize| reactions[index].1.equation().coefficient(&electron) != 0.into();
+        let mut order: Vec<usize> = (0..reactions.len()).collect();
         order.sort_by(|a, b| {
-            preference(&reactions[*a]).partial_cmp(&preference(&reactions[*b])).expect("no NaN")
+            let rank = |index: usize| (has_electrons(index), preference(&reactions[index]));
+            rank(*a).partial_cmp(&rank(*b)).expect("no NaN")
         });
 
         let columns = columns(order.iter().map(|index| reactions[*index].1), solutes);
         let column_of =
             |species: &Species| columns.iter().position(|known| known == species).expect("every species");
+        let is_phase = |column: usize| columns[column].is_gas() || columns[column].is_solid();
         let mut echelon = Echelon::default();
+        let mut among_components = Vec::new();
         let (mut leftovers, mut too_large) = (Vec::new(), Vec::new());
         for index in order {
             let terms = reactions[index].1.equation().terms();
             let row: Sparse = terms.iter().map(|(species, c)| (column_of(species), *c)).collect();
-            match echelon.add(index, row) {
+            let mut reduced = Combination { row, multiples: Sparse::from([(index, 1.into())]) };
+            if echelon.reduce(&mut reduced).is_err() {
+                too_large.push(index);
+                continue;
+            }
+            let pivot = reduced.row.first_key_value().map(|(pivot, _)| *pivot);
+            if has_electrons(index) && pivot.is_some_and(|pivot| !is_phase(pivot)) {
+                among_components.push((index, reduced));
+                continue;
+            }
+            match echelon.add_combination(reduced) {
                 Ok(None) => {}
                 Ok(Some(cycle)) => {
-                    leftovers
-                        .push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() });
+                    leftovers.push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() })
                 }
                 Err(TooLarge) => too_large.push(index),
             }
@@ -75,19 +95,46 @@ impl Formations {
         let component_columns: Vec<usize> =
             (0..columns.len()).filter(|c| echelon.row_of(*c).is_none()).rev().collect();
         let mut species: Vec<Formation> = (0..columns.len())
+            .filter(|column| columns[*column] != electron)
             .map(|column| {
                 formation(columns[column].clone(), column, echelon.row_of(column), &component_columns)
             })
             .collect();
         species.sort_by_key(|formed| (!formed.species.is_solute(), formed.species.clone()));
-        let components = component_columns.into_iter().map(|column| columns[column].clone()).collect();
-        Self { components, species, leftovers, too_large }
+        let components = component_columns.iter().map(|column| columns[*column].clone()).collect();
+        let position = |column: usize| component_columns.iter().position(|c| *c == column);
+        let mut independent = Echelon::default();
+        let mut balances = Vec::new();
+        for (index, balance) in among_components {
+            let components = balance.row.iter().map(|(c, nu)| (position(*c).expect("components only"), *nu));
+            let balance = Combination { row: components.collect(), multiples: balance.multiples };
+            match independent.add_combination(balance.clone()) {
+                Ok(None) => balances.push(balance),
+                Ok(Some(cycle)) => {
+                    leftovers.push(Leftover { reaction: index, cycle: cycle.multiples.into_iter().collect() })
+                }
+                Err(TooLarge) => too_large.push(index),
+            }
+        }
+        Self { components, species, leftovers, balances, too_large }
     }
 
     /// Position of a component.
     #[must_use]
     pub fn component(&self, species: &Species) -> Option<usize> {
         self.components.iter().position(|component| component == species)
+    }
+
+    /// Every couple of neighbouring oxidation states that reactions with electrons relate.
+    #[must_use]
+    pub fn couples(&self) -> Vec<Couple> {
+        super::couple::all(&self.components, &self.balances)
+    }
+
+    /// The couple of two components, whichever way round they are named; `None` where no reactions relate them.
+    #[must_use]
+    pub fn couple(&self, one: usize, other: usize) -> Option<Couple> {
+        super::couple::between(&self.components, &self.balances, one, other)
     }
 
     /// How a species is formed.
@@ -147,6 +194,7 @@ fn fitness(species: &Species) -> u8 {
     let elements = species.elements_beside_water().count();
     let atoms: Rational = species.composition().iter().map(|(_, count)| *count).sum();
     match () {
+        () if *species == Species::electron() => 7,
         () if *species == Species::water() => 6,
         () if *species == Species::proton() => 5,
         () if !species.is_solute() => 0,

@@ -59,6 +59,24 @@ pub fn names() -> Vec<&'static str> {
 ///
 /// [`ShippedError::Unknown`] or [`ShippedError::Edition`].
 pub fn ledger(name: &str, edition: Option<&str>) -> Result<Ledger, ShippedError> {
+    let found = match super::in_force::instead_of(name) {
+        Some(stand_in) => stand_in,
+        None => as_shipped(name)?,
+    };
+    match (edition, found.edition()) {
+        (Some(asked), Some(has)) if asked != has => {
+            Err(ShippedError::Edition { name: name.into(), has: has.into(), asked: asked.into() })
+        }
+        _ => Ok(found),
+    }
+}
+
+/// The same as shipped and without being noted as used: for looking names up.
+///
+/// # Errors
+///
+/// As [`ledger`].
+pub fn as_shipped(name: &str) -> Result<Ledger, ShippedError> {
     static LEDGERS_READ: OnceLock<BTreeMap<&str, Result<Ledger, ShippedError>>> = OnceLock::new();
     let ledgers =
         LEDGERS_READ.get_or_init(|| LEDGERS.iter().map(|(name, text)| (*name, build(name, text))).collect());
@@ -66,13 +84,7 @@ pub fn ledger(name: &str, edition: Option<&str>) -> Result<Ledger, ShippedError>
         let nearest = nearest(name, names()).map(str::to_string);
         return Err(ShippedError::Unknown { name: name.into(), nearest });
     };
-    let found = found.clone()?;
-    match (edition, found.edition()) {
-        (Some(asked), Some(has)) if asked != has => {
-            Err(ShippedError::Edition { name: name.into(), has: has.into(), asked: asked.into() })
-        }
-        _ => Ok(found),
-    }
+    found.clone()
 }
 
 /// Every shipped file of constants, by key.

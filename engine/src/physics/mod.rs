@@ -1,6 +1,7 @@
 //! Physical constants and properties of pure water.
 
 pub mod constants;
+pub mod electrode;
 pub mod gas_exchange;
 pub mod seawater;
 pub mod water;

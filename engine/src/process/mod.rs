@@ -1,6 +1,7 @@
 //! Many equilibria: a [`Run`] holds their states in order. [`sweep`] makes one over axes, [`Titration`] over volumes from a
 //! burette, [`path`] step by step, [`monte_carlo`] over random draws; [`gran`] reads a measured titration.
 
+pub mod diagram;
 pub mod gran;
 pub mod monte_carlo;
 pub mod path;

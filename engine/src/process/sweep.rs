@@ -6,6 +6,7 @@ use super::run::{OnProgress, Run};
 use crate::equilibrium::{Asked, EquilibriumError, Observable, ObservableError};
 use crate::ledger::Ledger;
 use crate::named::Value;
+use crate::physics::electrode::volts_per_pe;
 use crate::present::Column;
 use crate::quantity::Quantity;
 use crate::solve::Settings;
@@ -30,6 +31,9 @@ enum Meaning {
     Temperature(Unit),
     Pressure(Unit),
     Ph,
+    Pe,
+    /// Eh, in a unit of potential.
+    Eh(Unit),
     Fugacity(String, Unit),
     Saturation(String),
     /// So much of a reagent, in a unit.
@@ -47,7 +51,7 @@ pub enum SweepError {
     Observable(#[from] ObservableError),
     /// An observable that no treatment sets.
     #[error(
-        "`{0}` cannot be swept: an axis is `temperature`, `pressure`, `pH`, `f(CO2(g))`, `SI(calcite)`, `added(HCl)`, \
+        "`{0}` cannot be swept: an axis is `temperature`, `pressure`, `pH`, `pe`, `Eh`, `f(CO2(g))`, `SI(calcite)`, `added(HCl)`, \
          or a key of the analysis as `as measured: Ca`"
     )]
     NotAnAxis(String),
@@ -111,6 +115,12 @@ impl Axis {
                 Ok(sample.treated(Treatment::CompressTo(Pressure::from_bar(bar).map_err(unit_error)?))?)
             }
             Meaning::Ph => Ok(sample.treated(Treatment::HoldPh { ph: value, reagent: None })?),
+            Meaning::Pe => Ok(sample.treated(Treatment::HoldPe { pe: value, reagent: None })?),
+            Meaning::Eh(unit) => {
+                let volt = unit.convert(value, &Kind::Potential.default_unit()).map_err(unit_error)?;
+                let pe = volt / volts_per_pe(temperature_of(sample).kelvin());
+                Ok(sample.treated(Treatment::HoldPe { pe, reagent: None })?)
+            }
             Meaning::Fugacity(gas, unit) => {
                 let fugacity = unit.convert(value, &Kind::Pressure.default_unit()).map_err(unit_error)?;
                 Ok(sample.treated(Treatment::OpenTo { gas: gas.clone(), fugacity })?)
@@ -134,6 +144,15 @@ impl Axis {
     }
 }
 
+/// The temperature a water has after its treatments so far.
+fn temperature_of(sample: &Sample) -> Temperature {
+    let warmed = sample.treatments().iter().rev().find_map(|treatment| match treatment {
+        Treatment::WarmTo(temperature) => Some(*temperature),
+        _ => None,
+    });
+    warmed.unwrap_or(sample.setting().temperature)
+}
+
 fn measured(key: &str) -> Result<Meaning, SweepError> {
     let Some((key, unit)) = key.strip_suffix(']').and_then(|key| key.split_once('[')) else {
         return Ok(Meaning::Measured(key.to_string(), None));
@@ -153,6 +172,8 @@ fn treatment(title: &str) -> Result<Meaning, SweepError> {
         Observable::Temperature => Ok(Meaning::Temperature(unit(Kind::Temperature)?)),
         Observable::Pressure => Ok(Meaning::Pressure(unit(Kind::Pressure)?)),
         Observable::Ph => Ok(Meaning::Ph),
+        Observable::Pe => Ok(Meaning::Pe),
+        Observable::Eh => Ok(Meaning::Eh(unit(Kind::Potential)?)),
         Observable::Fugacity(gas) => Ok(Meaning::Fugacity(gas, unit(Kind::Pressure)?)),
         Observable::SaturationIndex(solid) => Ok(Meaning::Saturation(solid)),
         Observable::Added(reagent) => Ok(Meaning::Dose(reagent, unit(Kind::Amount)?)),

@@ -16,6 +16,10 @@ impl Pure {
     pub(super) fn extend(&mut self, names: &[&'static str]) {
         self.0.extend(names);
     }
+
+    pub(super) fn contains(&self, name: &str) -> bool {
+        self.0.contains(name)
+    }
 }
 
 /// The first fault that needs no run to be seen. `ends_with_semicolon` says that the value of the last statement is

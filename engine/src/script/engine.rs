@@ -11,7 +11,7 @@ use rhai::{AST, Dynamic, Engine, ParseErrorType, Position, Scope};
 use super::check::{check, own_functions};
 use super::diagnostic::{Diagnostic, Kind};
 use super::docs::{self, Entry};
-use super::host::{Host, OnProgress, Out};
+use super::host::{Host, OnProgress, OnShown, Out};
 use super::input::ends_with_semicolon;
 use super::modules::{Modules, Source};
 use super::sandbox::Sandbox;
@@ -41,6 +41,8 @@ pub struct Options {
     pub messages: Out,
     /// Where long native loops report.
     pub progress: Option<OnProgress>,
+    /// Who gathers what is shown, for a report.
+    pub shown: Option<OnShown>,
     /// How long one evaluation may take.
     pub time_limit: Option<Duration>,
 }
@@ -54,6 +56,7 @@ impl Default for Options {
             output: Box::new(std::io::stdout()),
             messages: Box::new(std::io::stderr()),
             progress: None,
+            shown: None,
             time_limit: None,
         }
     }
@@ -61,10 +64,10 @@ impl Default for Options {
 
 /// Reads and runs scripts.
 pub struct ScriptEngine {
-    engine: Engine,
-    host: Host,
+    pub(super) engine: Engine,
+    pub(super) host: Host,
     modules: Modules,
-    vocabulary: Vocabulary,
+    pub(super) vocabulary: Vocabulary,
     time_limit: Option<Duration>,
 }
 
@@ -146,6 +149,44 @@ impl ScriptEngine {
         on_deep_stack(|| self.compile(name, &text, &Scope::new(), None).map(drop))
     }
 
+    /// Every file read so far, modules among them, in alphabetical order.
+    #[must_use]
+    pub fn files_read(&self) -> Vec<std::path::PathBuf> {
+        let read: std::collections::BTreeSet<_> = self
+            .host
+            .files()
+            .files_read()
+            .map(std::path::Path::to_owned)
+            .chain(self.modules.paths())
+            .collect();
+        read.into_iter().collect()
+    }
+
+    /// The numbers written as `seed: 7` in a script: what its random draws start from.
+    #[must_use]
+    pub fn seeds(&self, text: &str) -> Vec<i64> {
+        let mut seeds = Vec::new();
+        let Ok(ast) = self.engine.compile(clean(text)) else { return seeds };
+        ast.walk(&mut |path| {
+            if let Some(rhai::ASTNode::Expr(rhai::Expr::Map(map, _))) = path.last() {
+                seeds.extend(map.0.iter().filter(|(key, _)| key.name == "seed").filter_map(|(_, value)| {
+                    match value {
+                        rhai::Expr::IntegerConstant(seed, _) => Some(*seed),
+                        _ => None,
+                    }
+                }));
+            }
+            true
+        });
+        seeds
+    }
+
+    /// Declarations of everything a script can call, for editors that read Rhai's definition files.
+    #[must_use]
+    pub fn definitions(&self) -> String {
+        self.engine.definitions().with_headers(true).include_standard_packages(false).single_file()
+    }
+
     /// Runs a script. The value of its last expression is returned unless a semicolon drops it.
     ///
     /// # Errors
@@ -153,12 +194,29 @@ impl ScriptEngine {
     /// Returns what went wrong, with its place.
     pub fn run(&self, name: &str, text: &str) -> Result<Option<Dynamic>, Box<Diagnostic>> {
         let text = clean(text);
-        self.modules.forget_main();
         let mut scope = Scope::new();
-        on_deep_stack(|| {
-            let source = self.compile(name, &text, &scope, None)?;
-            self.evaluate(name, &source, &mut scope)
-        })
+        scope.push_constant("args", super::general::Arguments::of(&self.host));
+        self.run_keeping(name, &text, &mut scope)
+    }
+
+    /// The same, leaving the script's variables in `scope`.
+    pub(super) fn run_keeping(
+        &self,
+        name: &str,
+        text: &str,
+        scope: &mut Scope<'static>,
+    ) -> Result<Option<Dynamic>, Box<Diagnostic>> {
+        self.modules.forget_main();
+        self.host.records().begin();
+        let result = on_deep_stack(|| {
+            let source = self.compile(name, text, scope, None)?;
+            if self.host.is_gathering() {
+                return self.evaluate_by_statement(name, &source, scope);
+            }
+            self.evaluate(name, &source, scope)
+        });
+        scope.iter_raw().for_each(|(.., value)| self.host.rests_on(&value.flatten_clone()));
+        result
     }
 
     /// The reader's error for `text`, if any.
@@ -196,8 +254,7 @@ impl ScriptEngine {
         source: &Arc<Source>,
         scope: &mut Scope,
     ) -> Result<Option<Dynamic>, Box<Diagnostic>> {
-        self.stop().arm(self.time_limit);
-        self.modules.begin();
+        self.arm();
         let shown = !ends_with_semicolon(&source.text);
         let result = quietly(|| self.engine.eval_ast_with_scope::<Dynamic>(scope, &source.ast));
         // A calculation that broke off has not reported its end.
@@ -209,7 +266,18 @@ impl ScriptEngine {
         }
     }
 
-    fn translator<'a>(&'a self, main: &'a str, source: Arc<Source>, scope: &Scope) -> Translator<'a> {
+    /// A fresh evaluation begins.
+    pub(super) fn arm(&self) {
+        self.stop().arm(self.time_limit);
+        self.modules.begin();
+    }
+
+    pub(super) fn translator<'a>(
+        &'a self,
+        main: &'a str,
+        source: Arc<Source>,
+        scope: &Scope,
+    ) -> Translator<'a> {
         let mut entries = self.entries();
         let own = source.ast.iter_functions().filter(|function| !function.name.starts_with("anon$"));
         entries.extend(own.map(|function| Entry {
@@ -266,7 +334,7 @@ thread_local! {
 }
 
 /// Catches a panic of native code, without its text on the terminal.
-fn quietly<T>(work: impl FnOnce() -> T) -> Result<T, Box<dyn Any + Send>> {
+pub(super) fn quietly<T>(work: impl FnOnce() -> T) -> Result<T, Box<dyn Any + Send>> {
     static HOOK: Once = Once::new();
     HOOK.call_once(|| {
         let usual = std::panic::take_hook();
@@ -282,7 +350,7 @@ fn quietly<T>(work: impl FnOnce() -> T) -> Result<T, Box<dyn Any + Send>> {
     result
 }
 
-fn bug(panic: &(dyn Any + Send)) -> Box<Diagnostic> {
+pub(super) fn bug(panic: &(dyn Any + Send)) -> Box<Diagnostic> {
     let text =
         panic.downcast_ref::<String>().map(String::as_str).or_else(|| panic.downcast_ref::<&str>().copied());
     let message = format!("a fault of lysocline, not of the script: {}", text.unwrap_or("no details"));

@@ -7,6 +7,7 @@ use std::sync::{Arc, Mutex, MutexGuard, PoisonError, RwLock};
 
 use rhai::{Dynamic, NativeCallContext};
 
+use super::record::Records;
 use super::sandbox::Sandbox;
 use super::show::{Shows, Style};
 use super::stop::Stop;
@@ -28,6 +29,26 @@ pub struct Progress<'a> {
 /// Called with each [`Progress`], from any thread.
 pub type OnProgress = Arc<dyn Fn(Progress<'_>) + Send + Sync>;
 
+/// Something a script showed, as the value it is: what a report is made of.
+#[derive(Debug, Clone, PartialEq)]
+pub enum Shown {
+    /// The statement that begins on this line runs next.
+    Statement(usize),
+    /// Text, as printed.
+    Text(String),
+    /// A table.
+    Table(crate::present::Table),
+    /// A drawing.
+    Plot(crate::present::plot::Plot),
+    /// A warning or note beside the results.
+    Message(String),
+    /// A recorded or checked value.
+    Record(super::Record),
+}
+
+/// Called with each [`Shown`], in order.
+pub type OnShown = Arc<dyn Fn(Shown) + Send + Sync>;
+
 /// The outside of a script; a clone is the same outside.
 #[derive(Clone)]
 pub struct Host(Arc<Parts>);
@@ -41,6 +62,9 @@ struct Parts {
     output: Mutex<Out>,
     messages: Mutex<Out>,
     progress: Option<OnProgress>,
+    shown: Option<OnShown>,
+    records: Mutex<Records>,
+    sources: Mutex<super::Sources>,
 }
 
 impl Host {
@@ -54,6 +78,9 @@ impl Host {
             output: Mutex::new(options.output),
             messages: Mutex::new(options.messages),
             progress: options.progress,
+            shown: options.shown,
+            records: Mutex::default(),
+            sources: Mutex::default(),
         }))
     }
 
@@ -107,6 +134,59 @@ impl Host {
         change(&mut self.0.shows.write().unwrap_or_else(PoisonError::into_inner));
     }
 
+    /// Shows a value as a result: its text goes to the output, itself to whoever gathers a report.
+    pub fn display(&self, value: &Dynamic) {
+        self.gather(value);
+        self.print(&self.printed(value));
+    }
+
+    /// Whether a report is being gathered.
+    pub(super) fn is_gathering(&self) -> bool {
+        self.0.shown.is_some()
+    }
+
+    /// Hands a value that is being printed to whoever gathers a report.
+    pub(super) fn gather(&self, value: &Dynamic) {
+        if self.0.shown.is_none() {
+            return;
+        }
+        self.sources().gather(value);
+        let table = || value.read_lock::<crate::chem::Trail>().map(|trail| trail.table());
+        self.report(if let Some(plot) = value.read_lock::<crate::present::plot::Plot>() {
+            Shown::Plot(plot.clone())
+        } else if let Some(table) = value.read_lock::<crate::present::Table>() {
+            Shown::Table(table.clone())
+        } else if let Some(table) = table() {
+            Shown::Table(table)
+        } else {
+            Shown::Text(self.printed(value))
+        });
+    }
+
+    /// Tells whoever gathers a report.
+    pub(super) fn report(&self, shown: Shown) {
+        if let Some(gather) = &self.0.shown {
+            gather(shown);
+        }
+    }
+
+    /// Notes what a value rests on, while a report is being gathered.
+    pub(super) fn rests_on(&self, value: &Dynamic) {
+        if self.is_gathering() {
+            self.sources().gather(value);
+        }
+    }
+
+    /// What the values shown rest on, while a report is being gathered.
+    pub fn sources(&self) -> MutexGuard<'_, super::Sources> {
+        self.0.sources.lock().unwrap_or_else(PoisonError::into_inner)
+    }
+
+    /// What the script recorded and checked so far.
+    pub fn records(&self) -> MutexGuard<'_, Records> {
+        self.0.records.lock().unwrap_or_else(PoisonError::into_inner)
+    }
+
     /// Writes one line of results. If nobody reads them any more, the calculation is told to stop.
     pub fn print(&self, text: &str) {
         let mut output = self.0.output.lock().unwrap_or_else(PoisonError::into_inner);
@@ -118,6 +198,7 @@ impl Host {
 
     /// Writes one line beside the results. A message that cannot be written is lost, not fatal.
     pub fn message(&self, text: &str) {
+        self.report(Shown::Message(text.to_owned()));
         let mut messages = self.0.messages.lock().unwrap_or_else(PoisonError::into_inner);
         let _ = writeln!(messages, "{text}").and_then(|()| messages.flush());
     }

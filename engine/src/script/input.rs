@@ -59,6 +59,35 @@ pub(super) fn last_statement(text: &str) -> (usize, usize) {
     (scan.statement_start.min(scan.code_end), scan.code_end)
 }
 
+/// The text cut into pieces that can each be read alone, where that can be seen: after a semicolon outside of brackets
+/// with the rest of its line, and after a block that the next word does not continue.
+pub(super) fn pieces(text: &str) -> Vec<&str> {
+    let mut pieces = Vec::new();
+    let mut start = 0;
+    for cut in Scan::of(text).cuts {
+        let rest = &text[cut..];
+        let line = &rest[..rest.find('\n').map_or(rest.len(), |end| end + 1)];
+        // A comment behind a statement belongs to it.
+        let noted = line.trim().is_empty() || line.trim_start().starts_with("//");
+        let end = if noted { cut + line.len() } else { cut };
+        if end > start {
+            pieces.push(&text[start..end]);
+            start = end;
+        }
+    }
+    if !text[start..].trim().is_empty() {
+        pieces.push(&text[start..]);
+    }
+    pieces
+}
+
+/// Whether what follows a closing brace begins a statement of its own.
+fn begins_anew(rest: &str) -> bool {
+    let rest = rest.trim_start();
+    let word: String = rest.chars().take_while(|c| c.is_ascii_alphanumeric() || *c == '_').collect();
+    !word.is_empty() && !["else", "catch", "while", "until", "in", "is"].contains(&word.as_str())
+}
+
 /// The last character of code, and what is still open at the end.
 struct Scan {
     last: Option<char>,
@@ -68,6 +97,8 @@ struct Scan {
     statement_start: usize,
     /// Where the last character of code or of a quotation ends.
     code_end: usize,
+    /// Ends of statements outside of brackets.
+    cuts: Vec<usize>,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq)]
@@ -83,7 +114,14 @@ enum Open {
 
 impl Scan {
     fn of(text: &str) -> Self {
-        let mut scan = Self { last: None, open: Open::Code, brackets: 0, statement_start: 0, code_end: 0 };
+        let mut scan = Self {
+            last: None,
+            open: Open::Code,
+            brackets: 0,
+            statement_start: 0,
+            code_end: 0,
+            cuts: Vec::new(),
+        };
         let mut characters = text.char_indices().peekable();
         while let Some((index, c)) = characters.next() {
             let next = characters.peek().map(|(_, next)| *next);
@@ -94,6 +132,11 @@ impl Scan {
             }
             if c == ';' && scan.open == Open::Code && scan.brackets == 0 && scan.code_end == index + 1 {
                 scan.statement_start = index + 1;
+                scan.cuts.push(index + 1);
+            }
+            let closed = c == '}' && scan.open == Open::Code && scan.brackets == 0;
+            if closed && begins_anew(&text[index + 1..]) {
+                scan.cuts.push(index + 1);
             }
         }
         scan
@@ -188,6 +231,20 @@ mod tests {
         assert_eq!(of("\";\" + 'x'  /* ; */"), "\";\" + 'x'");
         assert_eq!(of("a; // x"), "");
         assert_eq!(of(""), "");
+    }
+
+    #[test]
+    fn pieces_can_be_read_alone() {
+        #[track_caller]
+        fn case(text: &str, expected: &[&str]) {
+            assert_eq!(pieces(text), expected);
+        }
+        case("let a = 1; let b = `;`; b", &["let a = 1;", " let b = `;`;", " b"]);
+        case("let a = 1; // one\nlet b = 2", &["let a = 1; // one\n", "let b = 2"]);
+        case("fn f(x) { x; x }\nlet y = f(2);", &["fn f(x) { x; x }\n", "let y = f(2);"]);
+        case("if a { 1; } else { 2; }\nb", &["if a { 1; } else { 2; }\n", "b"]);
+        case("let m = #{ a: 1 }.a; m", &["let m = #{ a: 1 }.a;", " m"]);
+        case("", &[]);
     }
 
     #[test]

@@ -32,7 +32,7 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
 /// Species and phases of the shipped ledgers, for completion inside quotes.
 fn words() -> Vec<String> {
     let mut words: Vec<String> = Vec::new();
-    for ledger in shipped::names().iter().filter_map(|name| shipped::ledger(name, None).ok()) {
+    for ledger in shipped::names().iter().filter_map(|name| shipped::as_shipped(name).ok()) {
         words.push(ledger.name().to_string());
         words.extend(ledger.species().map(|species| species.key().to_string()));
         words.extend(ledger.names().map(str::to_string));

@@ -57,6 +57,12 @@ impl Modules {
         defined.retain(|_, owner| sources.contains_key(owner));
     }
 
+    /// The files of the modules imported so far, as named from the script's folder.
+    pub(super) fn paths(&self) -> Vec<PathBuf> {
+        let state = self.state();
+        state.sources.keys().map(|shown| state.folder.join(shown)).collect()
+    }
+
     /// Forgets imports that a fault broke off.
     pub(super) fn begin(&self) {
         self.state().loading.clear();

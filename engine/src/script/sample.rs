@@ -82,6 +82,10 @@ fn words(treatment: &Treatment) -> String {
         Treatment::HoldPh { ph, reagent: Some(reagent) } => {
             format!("held at pH {} with {reagent}", trimmed(*ph))
         }
+        Treatment::HoldPe { pe, reagent: None } => format!("held at pe {}", trimmed(*pe)),
+        Treatment::HoldPe { pe, reagent: Some(reagent) } => {
+            format!("held at pe {} with {reagent}", trimmed(*pe))
+        }
         Treatment::WarmTo(temperature) => format!("brought to {} degC", trimmed(temperature.celsius())),
         Treatment::CompressTo(pressure) => format!("brought to {} bar", trimmed(pressure.bar())),
     }
@@ -107,7 +111,7 @@ impl From<SurveyError> for Fail {
 /// it is checked at equilibrium.
 pub(super) fn known(sample: &Sample, name: &str) -> Result<(), Fail> {
     let shipped: Vec<Ledger> =
-        shipped::names().iter().filter_map(|name| shipped::ledger(name, None).ok()).collect();
+        shipped::names().iter().filter_map(|name| shipped::as_shipped(name).ok()).collect();
     if sample.ledger().is_some() || shipped.iter().any(|ledger| ledger.find_phase(name).is_ok()) {
         return Ok(());
     }
@@ -250,8 +254,9 @@ mod sample_functions {
     use super::*;
 
     /// A water sample from its analysis. Keys: `name`, `temperature` (degC), `pressure` (bar), `pH`, `alkalinity`, `DIC`,
-    /// `fCO2`, `pCO2`, `xCO2`, `from`, `make_up`, `density`, `volume_temperature`, `water`, and amounts of elements,
-    /// oxidation states or species with their units. A bare number is mol/kg(water).
+    /// `fCO2`, `pCO2`, `xCO2`, `from`, `make_up`, `density`, `volume_temperature`, `water`, `pe` (a number, or a couple such as
+    /// `"Fe(III)/Fe(II)"`), `Eh` (V against the standard hydrogen electrode), `ORP` with `electrode`, `couples` (`"all"` or a
+    /// list), and amounts of elements, oxidation states or species with their units. A bare number is mol/kg(water).
     ///
     /// ```rhai
     /// let lake = sample(#{ temperature: "8.5 degC", pH: 8.15, alkalinity: "2.35 meq/L", Ca: "41.2 mg/L" });
@@ -356,7 +361,13 @@ mod sample_functions {
         }
         Ok(water)
     }
-    /// A value kept through all treatments: `.hold("pH", 7)`, by hydrogen ions against inert charge.
+    /// A value kept through all treatments: `.hold("pH", 7)`, by hydrogen ions against inert charge, or `.hold("pe", 4)`, by
+    /// electrons.
+    ///
+    /// ```rhai
+    /// let water = sample(#{ pH: 7, Fe: "1 mg/L" }).hold("pe", -3).equilibrate();
+    /// water.get("total(Fe(II))").value / water.total("Fe").value > 0.99   // true
+    /// ```
     #[rhai_fn(name = "hold", pure, return_raw)]
     pub fn hold(
         context: NativeCallContext,
@@ -364,7 +375,9 @@ mod sample_functions {
         what: &str,
         value: Dynamic,
     ) -> ScriptResult<Sample> {
-        Host::of(&context).message("warning: pH is held by hydrogen ions against inert charge; name a reagent, such as `\"NaOH\"`, to hold it by one");
+        if what == "pH" {
+            Host::of(&context).message("warning: pH is held by hydrogen ions against inert charge; name a reagent, such as `\"NaOH\"`, to hold it by one");
+        }
         hold_with(sample, what, value, None)
     }
     /// The same, brought about by a reagent: `.hold("pH", 7, "NaOH")`. How much of it is `added(NaOH)`. Dosing of acids
@@ -406,9 +419,9 @@ mod sample_functions {
 }
 
 fn hold_with(sample: &Sample, what: &str, value: Dynamic, reagent: Option<String>) -> ScriptResult<Sample> {
-    if what != "pH" {
+    if !["pH", "pe"].contains(&what) {
         return fail(format!("`{what}` cannot be held"))
-            .help("only `pH` can; a gas is held by `.open_to`, a solid by `.saturate`")
+            .help("only `pH` and `pe` can; a gas is held by `.open_to`, a solid by `.saturate`")
             .argument(0)
             .raise();
     }
@@ -420,8 +433,12 @@ fn hold_with(sample: &Sample, what: &str, value: Dynamic, reagent: Option<String
         crate::equilibrium::treatment::reagent(&ledger, reagent)
             .map_err(|error| fail(error.to_string()).argument(2))?;
     }
-    let stated = chosen("pH", &value, Kind::Fraction)?;
-    treated_to(sample, Treatment::HoldPh { ph: stated.value(), reagent }, &stated)
+    let stated = chosen(if what == "pe" { "pe" } else { "pH" }, &value, Kind::Fraction)?;
+    let treatment = match what {
+        "pe" => Treatment::HoldPe { pe: stated.value(), reagent },
+        _ => Treatment::HoldPh { ph: stated.value(), reagent },
+    };
+    treated_to(sample, treatment, &stated)
 }
 
 /// Numbers of an axis: a list of numbers.

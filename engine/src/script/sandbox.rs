@@ -57,6 +57,8 @@ pub struct Sandbox {
     /// The script, as named in the list of written files; `None` at the prompt, which keeps no list.
     script: Option<String>,
     overwrite: bool,
+    /// Nothing is really written.
+    rehearses: bool,
     written: BTreeSet<PathBuf>,
     read: BTreeSet<PathBuf>,
 }
@@ -85,12 +87,21 @@ impl Sandbox {
         Self::new(PathBuf::from("."), PathBuf::from("."), overwrite)
     }
 
+    /// The same folders for a run that only tries something out: it reads, and writes nothing.
+    #[must_use]
+    pub fn rehearsal(&self) -> Self {
+        let mut rehearsal = Self::new(self.read_folder.clone(), self.write_folder.clone(), true);
+        rehearsal.rehearses = true;
+        rehearsal
+    }
+
     fn new(read_folder: PathBuf, write_folder: PathBuf, overwrite: bool) -> Self {
         Self {
             read_folder,
             write_folder,
             script: None,
             overwrite,
+            rehearses: false,
             written: BTreeSet::new(),
             read: BTreeSet::new(),
         }
@@ -148,6 +159,9 @@ impl Sandbox {
     /// write, `Refused` when the system does.
     pub fn write(&mut self, name: &str, content: &[u8]) -> Result<PathBuf, SandboxError> {
         let path = inside(&self.write_folder, name)?;
+        if self.rehearses {
+            return Ok(path);
+        }
         self.make_folder_of(&path, name)?;
         if path.is_dir() {
             return Err(refused("write", name, &"it is a folder"));
@@ -236,14 +250,20 @@ fn inside(folder: &Path, name: &str) -> Result<PathBuf, SandboxError> {
     Err(SandboxError::Outside { name: name.to_owned(), folder: folder.to_owned() })
 }
 
-fn write_whole(path: &Path, content: &[u8]) -> std::io::Result<()> {
+/// Writes a file whole or not at all: a broken write leaves what was there.
+///
+/// # Errors
+///
+/// What the system says.
+pub fn write_whole(path: &Path, content: &[u8]) -> std::io::Result<()> {
     let mut file = atomic_write_file::AtomicWriteFile::open(path)?;
     file.write_all(content)?;
     file.commit()
 }
 
-/// FNV-1a, 64 bits: notices an edit; it is no protection against forgery.
-fn digest_of(content: &[u8]) -> String {
+/// A short digest of a text or file: FNV-1a, 64 bits. It notices an edit; it is no protection against forgery.
+#[must_use]
+pub fn digest_of(content: &[u8]) -> String {
     let step = |hash: u64, byte: &u8| (hash ^ u64::from(*byte)).wrapping_mul(0x0100_0000_01b3);
     format!("{:016x}", content.iter().fold(0xcbf2_9ce4_8422_2325, step))
 }

@@ -113,6 +113,16 @@ impl Session {
         self.entries.iter().map(|entry| format!("{}\n", entry.written)).collect()
     }
 
+    /// The accepted entries as a script needs them.
+    pub fn entries_written(&self) -> impl Iterator<Item = &str> {
+        self.entries.iter().map(|entry| entry.written.as_str())
+    }
+
+    /// Signatures of the functions, as [`Session::functions`] gives them.
+    pub(super) fn function_names(&self) -> Vec<String> {
+        self.functions()
+    }
+
     /// Variables in scope, in the order they were defined.
     #[must_use]
     pub fn variables(&self) -> Vec<(String, Dynamic)> {

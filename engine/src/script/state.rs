@@ -348,6 +348,21 @@ mod state_functions {
     pub fn ph(state: &mut State) -> ScriptResult<Quantity> {
         about(state, Observable::Ph)
     }
+    /// pe: -log10 of the activity of the electron, from the couples in equilibrium.
+    ///
+    /// ```rhai
+    /// let water = sample(#{ pH: 7, "Fe(II)": "1 mg/L", "Fe(III)": "1 ug/L", couples: ["Fe(III)/Fe(II)"] }).equilibrate();
+    /// abs(water.pe.value - water.Eh.value / 0.05915934) < 1e-6   // true
+    /// ```
+    #[rhai_fn(name = "pe", get = "pe", pure, return_raw)]
+    pub fn pe(state: &mut State) -> ScriptResult<Quantity> {
+        about(state, Observable::Pe)
+    }
+    /// Eh: potential against the standard hydrogen electrode, V.
+    #[rhai_fn(name = "Eh", get = "Eh", pure, return_raw)]
+    pub fn eh(state: &mut State) -> ScriptResult<Quantity> {
+        about(state, Observable::Eh)
+    }
     /// Ionic strength, mol/kg(water).
     #[rhai_fn(name = "ionic_strength", get = "ionic_strength", pure, return_raw)]
     pub fn ionic_strength(state: &mut State) -> ScriptResult<Quantity> {

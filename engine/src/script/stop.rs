@@ -18,6 +18,8 @@ pub enum Halt {
     Interrupted,
     /// The time limit passed.
     TimeUp,
+    /// The memory limit was reached.
+    MemoryFull,
     /// Nobody reads the output any more.
     OutputClosed,
 }
@@ -30,6 +32,7 @@ pub struct Stop(Arc<Signal>);
 struct Signal {
     interrupted: Arc<AtomicBool>,
     output_closed: AtomicBool,
+    memory_full: AtomicBool,
     start: Instant,
     /// Nanoseconds after `start`; [`NEVER`] without a limit.
     deadline: AtomicU64,
@@ -42,6 +45,7 @@ impl Default for Stop {
         Self(Arc::new(Signal {
             interrupted: Arc::default(),
             output_closed: AtomicBool::new(false),
+            memory_full: AtomicBool::new(false),
             start: Instant::now(),
             deadline: AtomicU64::new(NEVER),
         }))
@@ -58,6 +62,9 @@ impl Stop {
     /// Whether to stop, and why. Cheap enough for the inner loop of a sweep.
     #[must_use]
     pub fn requested(&self) -> Option<Halt> {
+        if self.0.memory_full.load(Ordering::Relaxed) {
+            return Some(Halt::MemoryFull);
+        }
         if self.0.interrupted.load(Ordering::Relaxed) {
             return Some(Halt::Interrupted);
         }
@@ -80,9 +87,17 @@ impl Stop {
         }
     }
 
+    /// Ends the evaluation because the memory limit was reached; who watches the memory calls it.
+    pub fn fill_memory(&self) {
+        self.0.memory_full.store(true, Ordering::Relaxed);
+        // Native loops listen to this one.
+        self.0.interrupted.store(true, Ordering::Relaxed);
+    }
+
     /// Starts a fresh evaluation: an old Ctrl-C is forgotten and the clock begins.
     pub(super) fn arm(&self, limit: Option<Duration>) {
         self.0.interrupted.store(false, Ordering::Relaxed);
+        self.0.memory_full.store(false, Ordering::Relaxed);
         let nanoseconds = |limit: Duration| u64::try_from(limit.as_nanos()).unwrap_or(NEVER);
         let deadline = limit.map_or(NEVER, |limit| self.elapsed().saturating_add(nanoseconds(limit)));
         self.0.deadline.store(deadline, Ordering::Relaxed);

@@ -115,8 +115,7 @@ fn at_first(error: impl Into<Fail>) -> Fail {
 }
 
 fn print(context: &NativeCallContext, table: Table) {
-    let host = Host::of(context);
-    host.print(&host.show(&Dynamic::from(table)));
+    Host::of(context).display(&Dynamic::from(table));
 }
 
 /// Making tables, choosing and changing their rows and columns, writing them.

@@ -6,6 +6,7 @@ mod examples;
 mod language;
 mod quantities;
 mod reactions;
+mod slices;
 mod tables;
 
 /// An engine whose output is dropped and whose files lie in a fresh folder.

@@ -140,6 +140,7 @@ impl Translator<'_> {
         let message = match halt {
             Halt::Interrupted => "stopped by Ctrl-C",
             Halt::TimeUp => "stopped: the time limit has passed",
+            Halt::MemoryFull => "stopped: the memory limit was reached",
             Halt::OutputClosed => "stopped: the output was closed",
         };
         self.at(source, position, Kind::Halted(halt), message)

@@ -8,8 +8,8 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
-    Fail, Host, ScriptResult, column, compare, expect, general, ledger, numbers, processes, quantity,
-    reaction, sample, seawater, state, table, tableau, treatments,
+    Fail, Host, ScriptResult, column, compare, general, ledger, numbers, plot, processes, quantity, reaction,
+    record, sample, seawater, state, table, tableau, treatments,
 };
 
 /// Gathers everything a script can name.
@@ -33,7 +33,8 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     state::register(vocabulary);
     tableau::register(vocabulary);
     processes::register(vocabulary);
-    expect::register(vocabulary);
+    plot::register(vocabulary);
+    record::register(vocabulary);
 }
 
 /// The language without chemistry.
@@ -44,6 +45,7 @@ pub(super) fn base(vocabulary: &mut Vocabulary) {
         .module(rhai::exported_module!(general::general_functions))
         .pure(&["pow", "exp10", "exp", "ln", "log10", "sqrt", "abs", "min", "max", "idiv", "fmt"])
         .pure(&["linspace", "logspace", "steps", "args"])
+        .native::<general::Arguments>("Arguments", |arguments, _| arguments.to_string())
         .native::<Fail>("Failure", |fail, _| fail.message.clone())
         .module(rhai::exported_module!(failure));
 }

@@ -12,7 +12,7 @@ use crate::activity::Model;
 #[derive(Debug, Clone, PartialEq)]
 pub struct Certificate {
     /// Largest error of a balance of the components, summed in twice the precision, relative to the sum of its
-    /// absolute terms.
+    /// absolute terms; an amount delivered counts by the terms it is the difference of.
     pub balance: f64,
     /// Component of that balance.
     pub balance_idx: usize,
@@ -116,18 +116,19 @@ fn worst_balance(system: &System, phases: &Phases) -> (f64, usize) {
     let basis = &system.basis;
     let first_reservoir = system.problem.reservoir_row(0);
     let first_mineral = system.mineral_row(0);
-    let amounts = (0..).zip(&system.ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp()));
-    let delivered = (first_reservoir..).zip(&phases.reservoir_amount).map(|(row, amount)| (row, -amount));
-    let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount));
-    let terms: Vec<(usize, f64)> =
-        amounts.chain(delivered).chain(minerals).filter(|(_, x)| *x != 0.0).collect();
+    let amounts = (0..).zip(&system.ln_c).map(|(row, ln_c): (usize, &f64)| (row, ln_c.exp(), 0.0));
+    let delivered = phases.reservoir_amount.iter().zip(&phases.reservoir_terms);
+    let delivered = (first_reservoir..).zip(delivered).map(|(row, (amount, terms))| (row, -amount, *terms));
+    let minerals = (first_mineral..).zip(&phases.mineral_amount).map(|(row, amount)| (row, *amount, 0.0));
+    let terms: Vec<(usize, f64, f64)> =
+        amounts.chain(delivered).chain(minerals).filter(|(_, x, _)| *x != 0.0).collect();
     let n = system.problem.n_components;
     let (mut sums, mut magnitudes) = (vec![DoubleSum::default(); n], vec![0.0; n]);
-    for &(row, amount) in &terms {
+    for &(row, amount, difference_of) in &terms {
         for (k, coefficient) in basis.input_row(row)[..n].iter().enumerate() {
             if *coefficient != 0.0 {
                 sums[k].add_product(*coefficient, amount);
-                magnitudes[k] += (coefficient * amount).abs();
+                magnitudes[k] += coefficient.abs() * amount.abs().max(difference_of);
             }
         }
     }

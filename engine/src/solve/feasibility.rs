@@ -48,7 +48,7 @@ pub(super) fn zeros(problem: &Problem) -> Result<Vec<bool>, SolveError> {
             Some(_) => {}
             None if total < 0.0 => return Err(infeasible(&system, column, total)),
             None => {
-                let phases = terms(&system, column).filter(|(row, _)| *row >= system.problem.species.len());
+                let phases = terms(&system, column).filter(|(row, _)| *row >= system.problem.first_member());
                 let phases: Vec<(usize, f64)> = phases.collect();
                 remove(&mut system, column, &phases);
             }
@@ -90,7 +90,7 @@ fn least_violated(system: &mut System) -> Option<(usize, f64)> {
     columns.sort_by_key(|j| system.basis.row_of(*j));
     columns.into_iter().find_map(|column| {
         let total = system.total(column);
-        let n_species = system.problem.species.len();
+        let n_species = system.problem.first_member();
         let taken = |system: &System| {
             let species = terms(system, column).filter(|(row, _)| *row < n_species);
             species.map(|(_, nu)| nu).sum::<f64>()
@@ -164,7 +164,7 @@ fn reduce_balance(system: &mut System, column: usize) -> Result<bool, SolveError
 fn candidate_phases(system: &System, column: usize) -> Vec<(usize, f64)> {
     let minerals = system.mineral_row(0)..system.mineral_row(system.problem.minerals.len());
     let minerals = minerals.filter(|row| !system.absent[*row] && system.basis.column_of(*row).is_none());
-    let members = system.problem.species.len()..system.problem.whole_row(0);
+    let members = system.problem.first_member()..system.problem.whole_row(0);
     let members = members.filter(|row| !system.absent[*row] && !system.takes_part(*row));
     minerals
         .chain(members)

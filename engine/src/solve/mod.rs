@@ -66,6 +66,8 @@ pub struct Converged {
     pub ln_a: Vec<f64>,
     /// ln of the concentration of each species. Shape `(n_species,)`.
     pub ln_c: Vec<f64>,
+    /// ln of the amount of each other, mol/kg(water). Shape `(n_others,)`.
+    pub ln_others: Vec<f64>,
     /// ln γ of each species. Shape `(n_species,)`.
     pub ln_gamma: Vec<f64>,
     /// `½ Σ z² c`, mol/kg(water).
@@ -176,6 +178,7 @@ fn attempt(
     Ok(Converged {
         ln_a: component_activities(&system),
         ln_c: system.ln_c[..system.problem.species.len()].to_vec(),
+        ln_others: system.ln_c[system.problem.species.len()..system.problem.first_member()].to_vec(),
         ln_gamma: std::mem::take(&mut system.ln_gamma),
         ionic_strength,
         ln_water_activity,
@@ -212,6 +215,8 @@ fn component_activities(system: &System) -> Vec<f64> {
 /// Amounts and saturations of reservoirs and minerals, as in [`Converged`].
 struct Phases {
     reservoir_amount: Vec<f64>,
+    /// The sum of absolute terms that each of these amounts is the difference of.
+    reservoir_terms: Vec<f64>,
     mineral_amount: Vec<f64>,
     mineral_present: Vec<bool>,
     mineral_ln_saturation: Vec<f64>,
@@ -227,6 +232,7 @@ impl Phases {
         };
         let mut phases = Self {
             reservoir_amount: vec![0.0; system.problem.reservoirs.len()],
+            reservoir_terms: vec![0.0; system.problem.reservoirs.len()],
             mineral_amount: system.mineral_amount.clone(),
             mineral_present: vec![false; n_minerals],
             mineral_ln_saturation: (0..n_minerals).map(saturation).collect(),
@@ -240,7 +246,9 @@ impl Phases {
                 phases.mineral_present[mineral_idx] = true;
             }
             if let Some(reservoir_idx) = system.reservoir_of(column) {
-                phases.reservoir_amount[reservoir_idx] = -system.held_amount(column).0;
+                let (amount, terms) = system.held_amount(column);
+                phases.reservoir_amount[reservoir_idx] = -amount;
+                phases.reservoir_terms[reservoir_idx] = terms;
             }
         }
         phases

@@ -84,13 +84,16 @@ pub struct Problem {
     pub n_components: usize,
     /// Dissolved species; their `ln a` is `ln γ + ln c`.
     pub species: Vec<Row>,
+    /// What has an amount beside the solution, mol/kg(water), `ln n = ln K + Σ ν_j λ_j + w ln a_w`: the gases of a given
+    /// volume, ions on an exchanger. It counts in the balances and in nothing else.
+    pub others: Vec<Row>,
     /// Equalities.
     pub reservoirs: Vec<Reservoir>,
     /// Phases that may form.
     pub minerals: Vec<Mineral>,
     /// Mixtures that may form.
     pub mixtures: Vec<Mixture>,
-    /// Total of each component over species and minerals, mol/kg(water); zero and negative totals are legal. Shape
+    /// Total of each component over species, others and phases, mol/kg(water); zero and negative totals are legal. Shape
     /// `(n_components,)`.
     pub totals: Vec<Total>,
 }
@@ -99,8 +102,8 @@ pub struct Problem {
 static WHOLE: Row = Row { stoichiometry: Vec::new(), ln_k: 0.0, charge: 0.0, water: 0.0 };
 
 impl Problem {
-    /// All rows of the tableau, each with the mixture that it belongs to: what has an amount of its own (species, members
-    /// of mixtures, mixtures as a whole), then reservoirs, then minerals.
+    /// All rows of the tableau, each with the mixture that it belongs to: what has an amount of its own (species, others,
+    /// members of mixtures, mixtures as a whole), then reservoirs, then minerals.
     pub(super) fn rows(&self) -> impl Iterator<Item = (&Row, Option<usize>)> {
         let members = self.mixtures.iter().enumerate();
         let members =
@@ -108,24 +111,29 @@ impl Problem {
         let wholes = (0..self.mixtures.len()).map(|p| (&WHOLE, Some(p)));
         let reservoirs = self.reservoirs.iter().map(|reservoir| &reservoir.row);
         let minerals = self.minerals.iter().map(|mineral| &mineral.row);
-        let species = self.species.iter().map(|row| (row, None));
+        let species = self.species.iter().chain(&self.others).map(|row| (row, None));
         species.chain(members).chain(wholes).chain(reservoirs.chain(minerals).map(|row| (row, None)))
     }
 
-    /// Number of rows with an amount that is an exponential: species, members, mixtures as a whole.
+    /// Number of rows with an amount that is an exponential: species, others, members, mixtures as a whole.
     pub(super) fn n_amounts(&self) -> usize {
         self.whole_row(self.mixtures.len())
     }
 
     pub(super) fn whole_row(&self, mixture_idx: usize) -> usize {
         let members: usize = self.mixtures.iter().map(|mixture| mixture.members.len()).sum();
-        self.species.len() + members + mixture_idx
+        self.first_member() + members + mixture_idx
+    }
+
+    /// Row of the first member of the first mixture: species and others come before it.
+    pub(super) fn first_member(&self) -> usize {
+        self.species.len() + self.others.len()
     }
 
     /// Rows of the members of a mixture.
     pub(super) fn member_rows(&self, mixture_idx: usize) -> std::ops::Range<usize> {
         let before: usize = self.mixtures[..mixture_idx].iter().map(|mixture| mixture.members.len()).sum();
-        let first = self.species.len() + before;
+        let first = self.first_member() + before;
         first..first + self.mixtures[mixture_idx].members.len()
     }
 
@@ -147,6 +155,7 @@ impl Problem {
         }
         let is_sound = |row: &Row, value: f64| value.is_finite() && self.is_sound(row);
         let species = self.species.iter().position(|row| !is_sound(row, 0.0));
+        let other = self.others.iter().position(|row| !is_sound(row, 0.0));
         let reservoir = self.reservoirs.iter().position(|held| !is_sound(&held.row, held.ln_value));
         let mineral = self.minerals.iter().position(|mineral| !is_sound(&mineral.row, mineral.ln_target));
         let mixture = self.mixtures.iter().position(|mixture| {
@@ -154,6 +163,7 @@ impl Problem {
         });
         for (input, idx) in [
             (Input::Species, species),
+            (Input::Other, other),
             (Input::Reservoir, reservoir),
             (Input::Mineral, mineral),
             (Input::Mixture, mixture),
@@ -172,5 +182,49 @@ impl Problem {
         let indices_sound =
             entries.all(|(at, &(j, nu))| j < self.n_components && *nu.denom() != 0 && !repeated(at, j));
         numbers_finite && indices_sound && row.stoichiometry.iter().any(|(_, nu)| *nu.numer() != 0)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::activity::Model;
+    use crate::solve::sensitivity::{Found, Given, Sensitivities};
+    use crate::solve::{Settings, solve};
+
+    /// A dissolved, 3 of it beside per dissolved one, and 2 A = B beside; total 1, of which c, 3 c, 2 (0.5 c²).
+    fn problem(total: f64) -> Problem {
+        Problem {
+            n_components: 1,
+            species: vec![Row::new(&[(0, 1)], 0.0).with_charge(1.0)],
+            others: vec![Row::new(&[(0, 1)], 3_f64.ln()), Row::new(&[(0, 2)], 0.5_f64.ln())],
+            totals: vec![Total::from(total)],
+            ..Problem::default()
+        }
+    }
+
+    #[test]
+    fn what_is_beside_the_solution_counts_in_its_balances_and_not_in_its_ionic_strength() {
+        let found = solve(&problem(1.0), &Model::IDEAL, &Settings::default(), None).unwrap();
+        let c = (20_f64.sqrt() - 4.0) / 2.0;
+        assert!((found.ln_c[0].exp() - c).abs() < 1e-13);
+        assert!((found.ln_others[0].exp() - 3.0 * c).abs() < 1e-13);
+        assert!((found.ln_others[1].exp() - 0.5 * c * c).abs() < 1e-13);
+        assert!((found.ionic_strength - 0.5 * c).abs() < 1e-13);
+    }
+
+    #[test]
+    fn its_derivatives_are_those_of_the_equations() {
+        let problem = problem(1.0);
+        let found = solve(&problem, &Model::IDEAL, &Settings::default(), None).unwrap();
+        let linear = Sensitivities::new(&problem, &Model::IDEAL, &found, &[]).unwrap();
+        // c + 3 c + c² = T, with d ln K of the second other as a parameter k: (4 + 2 c) dc = dT - c² dk.
+        let c = found.ln_c[0].exp();
+        let by_total = linear.push(&Given { totals: vec![1.0], ..Given::zero(&problem) });
+        assert!((by_total.others[1] - 2.0 / (c * (4.0 + 2.0 * c))).abs() < 1e-12);
+        let weight = Found { others: vec![0.0, 1.0], ..Found::zero(&problem) };
+        let by = linear.pull(&weight);
+        assert!((by.totals[0] - by_total.others[1]).abs() < 1e-12);
+        assert!((by.others[1] - (1.0 - 2.0 * c / (4.0 + 2.0 * c))).abs() < 1e-12);
     }
 }

@@ -35,6 +35,8 @@ use crate::activity::{Composition, Model, WaterSlopes};
 pub struct Given {
     /// ln K of each species, at given ln K of reservoirs and minerals. Shape `(n_species,)`.
     pub ln_k: Vec<f64>,
+    /// ln K of each other. Shape `(n_others,)`.
+    pub others: Vec<f64>,
     /// ln γ of each species at given I. Shape `(n_species,)`.
     pub ln_gamma: Vec<f64>,
     /// ln a_w at given composition.
@@ -57,6 +59,8 @@ pub struct Found {
     pub ln_a: Vec<f64>,
     /// ln of the concentration of each species. Shape `(n_species,)`.
     pub ln_c: Vec<f64>,
+    /// ln of the amount of each other. Shape `(n_others,)`.
+    pub others: Vec<f64>,
     /// ln γ of each species. Shape `(n_species,)`.
     pub ln_gamma: Vec<f64>,
     /// Ionic strength, mol/kg(water).
@@ -77,6 +81,7 @@ impl Given {
     pub fn zero(problem: &Problem) -> Self {
         Self {
             ln_k: vec![0.0; problem.species.len()],
+            others: vec![0.0; problem.others.len()],
             ln_gamma: vec![0.0; problem.species.len()],
             ln_water_activity: 0.0,
             totals: vec![0.0; problem.n_components],
@@ -94,6 +99,7 @@ impl Found {
         Self {
             ln_a: vec![0.0; problem.n_components],
             ln_c: vec![0.0; problem.species.len()],
+            others: vec![0.0; problem.others.len()],
             ln_gamma: vec![0.0; problem.species.len()],
             ionic_strength: 0.0,
             ln_water_activity: 0.0,
@@ -126,7 +132,7 @@ pub fn own_supplies(problem: &Problem) -> Vec<Vec<f64>> {
 pub(super) struct Place<'a> {
     pub(super) basis: &'a Basis,
     pub(super) column: &'a [Column],
-    /// ln of the amounts of species, members of mixtures, and mixtures as a whole.
+    /// ln of the amounts of species, others, members of mixtures, and mixtures as a whole.
     pub(super) ln_amounts: &'a [f64],
     pub(super) ionic_strength: f64,
     pub(super) reservoir_amount: &'a [f64],
@@ -136,10 +142,11 @@ pub(super) struct Place<'a> {
 #[derive(Debug, Clone)]
 pub struct Sensitivities {
     columns: Vec<Balance>,
-    /// Everything with an amount: species, members of mixtures, mixtures as a whole.
+    /// Everything with an amount: species, others, members of mixtures, mixtures as a whole.
     species: Vec<Weights>,
     ionic_strength: f64,
     n_species: usize,
+    n_others: usize,
     /// Members of each mixture.
     n_members: Vec<usize>,
     n_reservoirs: usize,
@@ -215,8 +222,13 @@ impl Sensitivities {
         converged: &Converged,
         supplies: &[Vec<f64>],
     ) -> Option<Self> {
-        let ln_amounts: Vec<f64> =
-            converged.ln_c.iter().copied().chain(mixed_ln_amounts(converged)).collect();
+        let ln_amounts: Vec<f64> = converged
+            .ln_c
+            .iter()
+            .chain(&converged.ln_others)
+            .copied()
+            .chain(mixed_ln_amounts(converged))
+            .collect();
         let place = Place {
             basis: &converged.warm.basis,
             column: &converged.warm.column,
@@ -247,6 +259,7 @@ impl Sensitivities {
             columns,
             ionic_strength: by_ionic_strength,
             n_species: problem.species.len(),
+            n_others: problem.others.len(),
             n_members: problem.mixtures.iter().map(|mixture| mixture.members.len()).collect(),
             n_reservoirs: problem.reservoirs.len(),
             n_minerals: problem.minerals.len(),
@@ -293,6 +306,7 @@ impl Sensitivities {
         let mut found = Found {
             ln_a: vec![0.0; given.totals.len()],
             ln_c: ln_c[..self.n_species].to_vec(),
+            others: ln_c[self.n_species..self.first_member()].to_vec(),
             ln_gamma: given.ln_gamma.clone(),
             ionic_strength,
             ln_water_activity,
@@ -351,7 +365,7 @@ impl Sensitivities {
         let mut by_x = vec![0.0; n];
         let mut by_held = vec![0.0; self.columns.len()];
         let mut by_ln_c = weight.ln_c.clone();
-        by_ln_c.extend(weight.mixtures.iter().flatten());
+        by_ln_c.extend(weight.others.iter().chain(weight.mixtures.iter().flatten()));
         by_ln_c.resize(self.n_rows(), 0.0);
         let mut by_total = vec![0.0; self.columns.len()];
         by_x[self.n_balances] = weight.ionic_strength * self.ionic_strength;
@@ -414,6 +428,7 @@ impl Sensitivities {
         let n_components = self.columns.first().map_or(0, |column| column.of_component.len());
         let mut given = Given {
             ln_k: vec![0.0; self.n_species],
+            others: vec![],
             ln_gamma: vec![0.0; self.n_species],
             ln_water_activity: by_right[self.solvent()],
             totals: vec![0.0; n_components],
@@ -431,6 +446,7 @@ impl Sensitivities {
             }
         }
         given.ln_k.copy_from_slice(&own[..self.n_species]);
+        given.others = own[self.n_species..self.first_member()].to_vec();
         given.ln_gamma = given.ln_k.iter().map(|direct| -direct).collect();
         given.mixtures = self.by_member(&own.iter().map(|direct| -direct).collect::<Vec<_>>());
         for ((column, by_total), by_held) in self.columns.iter().zip(by_total).zip(by_held) {
@@ -446,23 +462,29 @@ impl Sensitivities {
         given
     }
 
-    /// Species, members of mixtures, mixtures as a whole.
+    fn first_member(&self) -> usize {
+        self.n_species + self.n_others
+    }
+
+    /// Species, others, members of mixtures, mixtures as a whole.
     fn n_rows(&self) -> usize {
-        self.n_species + self.n_members.iter().sum::<usize>() + self.n_members.len()
+        self.first_member() + self.n_members.iter().sum::<usize>() + self.n_members.len()
     }
 
     /// Change of the constant of each row.
     fn own(&self, given: &Given) -> Vec<f64> {
         let species = given.ln_k.iter().zip(&given.ln_gamma).map(|(ln_k, ln_gamma)| ln_k - ln_gamma);
-        let mut own: Vec<f64> =
-            species.chain(given.mixtures.iter().flatten().map(|target| -target)).collect();
+        let mut own: Vec<f64> = species
+            .chain(given.others.iter().copied())
+            .chain(given.mixtures.iter().flatten().map(|target| -target))
+            .collect();
         own.resize(self.n_rows(), 0.0);
         own
     }
 
     /// The part of a number for each row that belongs to the members of mixtures.
     fn by_member(&self, by_row: &[f64]) -> Vec<Vec<f64>> {
-        let mut rest = &by_row[self.n_species..];
+        let mut rest = &by_row[self.first_member()..];
         let mut take = |n: &usize| {
             let (members, others) = rest.split_at(*n);
             rest = others;

@@ -58,6 +58,8 @@ impl Settings {
 pub enum Input {
     /// `Problem::species`.
     Species,
+    /// `Problem::others`.
+    Other,
     /// `Problem::reservoirs`.
     Reservoir,
     /// `Problem::minerals`.

@@ -44,7 +44,7 @@ impl Warm {
     fn fits(&self, system: &System) -> bool {
         let parts = (self.n_species, self.mineral_amount.len(), self.mixture_present.len());
         let problem = system.problem;
-        parts == (problem.species.len(), problem.minerals.len(), problem.mixtures.len())
+        parts == (problem.first_member(), problem.minerals.len(), problem.mixtures.len())
             && self.basis.same_rows(&system.basis)
     }
 }
@@ -69,7 +69,7 @@ pub(super) struct System<'p> {
     pub(super) column: Vec<Column>,
     /// Rows that a total of zero excludes.
     pub(super) absent: Vec<bool>,
-    /// ln of the amount of each species, member and mixture at the end of the latest inner solve; minus infinity for
+    /// ln of the amount of each species, other, member and mixture at the end of the latest inner solve; minus infinity for
     /// those absent.
     pub(super) ln_c: Vec<f64>,
     /// Amount of each mineral, mol/kg(water).
@@ -161,7 +161,7 @@ impl<'p> System<'p> {
             basis: self.basis,
             level: self.level,
             column: self.column,
-            n_species: self.problem.species.len(),
+            n_species: self.problem.first_member(),
             specific: self.specific,
             mineral_amount: self.mineral_amount,
             mixture_present: self.mixture_present,
@@ -206,7 +206,7 @@ impl<'p> System<'p> {
 
     /// The mixture that a row of the tableau belongs to.
     pub(super) fn mixture_of(&self, row: usize) -> Option<usize> {
-        self.mixture_of.get(row.checked_sub(self.problem.species.len())?).copied()
+        self.mixture_of.get(row.checked_sub(self.problem.first_member())?).copied()
     }
 
     /// Whether a row with an amount takes part: not excluded by the totals, nor of a mixture that is absent.
@@ -227,13 +227,14 @@ impl<'p> System<'p> {
         }
         let solvent = |water: f64| if water == 0.0 { 0.0 } else { water * ln_water_activity };
         let species = problem.species.iter().zip(&self.ln_gamma).map(|(row, gamma)| (row, *gamma));
+        let others = problem.others.iter().map(|row| (row, 0.0));
         let reservoirs = problem.reservoirs.iter().map(|held| (&held.row, held.ln_value));
         let minerals = problem.minerals.iter().map(|mineral| (&mineral.row, mineral.ln_target));
         let members = problem.mixtures.iter();
         let members =
             members.flat_map(|mixture| mixture.members.iter().map(|member| (member, mixture.ln_target)));
         let constant = |(row, offset): (&Row, f64)| row.ln_k + solvent(row.water) - offset;
-        for (g, row) in self.g.iter_mut().zip(species.chain(members)) {
+        for (g, row) in self.g.iter_mut().zip(species.chain(others).chain(members)) {
             *g = constant(row);
         }
         for (g, row) in self.g[problem.n_amounts()..].iter_mut().zip(reservoirs.chain(minerals)) {

@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 
 use super::analyte::Analyte;
 use super::concentration::{self, Amount};
+use super::redox::Redox;
 use crate::chem::{Species, reaction};
 use crate::ledger::Sea;
 use crate::named::{KeyFault, Named, Value};
@@ -32,6 +33,8 @@ pub struct Dissolved {
     pub totals: Vec<(Species, Quantity)>,
     /// The water's temperature in kelvin, where it is uncertain.
     pub temperature: Option<Quantity>,
+    /// Names of the redox couples in equilibrium.
+    pub couples: Vec<String>,
 }
 
 /// A laboratory analysis, read and in range, not yet converted to one basis.
@@ -49,6 +52,8 @@ pub struct Measured {
     pub volume_temperature: Option<Temperature>,
     /// The water's own temperature in kelvin, unless it is known exactly.
     pub temperature: Option<Quantity>,
+    /// pe, Eh or ORP as measured, and the couples in equilibrium.
+    pub redox: Redox,
     /// Salinity, pressure and scale of pH of a seawater.
     pub sea: Option<Sea>,
     /// The temperature at which pH was measured, where that is not the water's own.
@@ -109,7 +114,7 @@ pub struct Read {
 }
 
 /// The keys of a sample besides amounts.
-pub const KEYS: [&str; 16] = [
+pub const KEYS: [&str; 21] = [
     "name",
     "temperature",
     "pressure",
@@ -124,17 +129,17 @@ pub const KEYS: [&str; 16] = [
     "xCO2",
     "from",
     "make_up",
+    "pe",
+    "Eh",
+    "ORP",
+    "electrode",
+    "couples",
     "labels",
     "ledger",
 ];
 
 /// Keys of later landings, refused with a word rather than as misspelt.
-const NOT_YET: [(&str, &str); 8] = [
-    ("pe", "redox equilibria are not computed yet"),
-    ("Eh", "redox equilibria are not computed yet"),
-    ("ORP", "redox equilibria are not computed yet"),
-    ("electrode", "redox equilibria are not computed yet"),
-    ("couples", "redox equilibria are not computed yet"),
+const NOT_YET: [(&str, &str); 3] = [
     ("salinity", "it belongs to `seawater(#{ … })`"),
     ("ph_scale", "outside seawater pH is -log10 of the activity of H^+"),
     ("pH_temperature", "give pH as it is at the sample's temperature; `seawater(#{ … })` takes both"),
@@ -164,6 +169,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
             read_evidence(&mut named, co2)?
         },
         make_up: named.text("make_up")?,
+        redox: super::redox::read(&mut named, setting.temperature)?,
         density,
         volume_temperature: volume_temperature.transpose()?,
         temperature,

@@ -22,7 +22,8 @@ pub enum Analyte {
 pub enum AnalyteError {
     /// Hydrogen and oxygen are counted by water and pH.
     #[error(
-        "`{0}` is not given as an amount: hydrogen and oxygen follow from the water, its pH and its alkalinity"
+        "`{0}` is not given as an amount: hydrogen and oxygen follow from the water, its pH and its alkalinity; the dissolved \
+         gases are `O2(aq)` and `H2(aq)`"
     )]
     OfWater(String),
     /// One species of the carbonate system, which says nothing of the others.
@@ -79,6 +80,9 @@ impl Analyte {
             && let Some(element) = Element::from_symbol(symbol)
         {
             let state = roman(numeral).ok_or_else(|| AnalyteError::OxidationState(key.into()))?;
+            if matches!(element, Element::H | Element::O) && state != 0 {
+                return Err(AnalyteError::OfWater(key.into()));
+            }
             return Ok(Self::State(element, state));
         }
         if let Some((_, ion)) = WITHOUT_CHARGE.iter().find(|(written, _)| *written == key) {
@@ -96,6 +100,7 @@ impl Analyte {
     fn of_species(species: Species) -> Result<Self, AnalyteError> {
         let elements: Vec<&str> = species.elements_beside_water().map(Element::symbol).collect();
         match elements.as_slice() {
+            [] if is_gas_of_water(&species) => Ok(Self::Species(species)),
             [] => Err(AnalyteError::OfWater(species.to_string())),
             ["C"] if CARBONATE.contains(&species.key()) => Err(AnalyteError::Carbonate(species.to_string())),
             [_] => Ok(Self::Species(species)),
@@ -111,7 +116,9 @@ impl Analyte {
         match self {
             Self::Element(element) | Self::State(element, _) => *element,
             Self::Species(species) => {
-                species.elements_beside_water().next().expect("checked to hold one element")
+                let own = species.elements_beside_water().next();
+                // Dissolved oxygen and hydrogen hold no other.
+                own.unwrap_or_else(|| species.composition()[0].0)
             }
         }
     }
@@ -145,6 +152,11 @@ impl Analyte {
     }
 }
 
+/// Dissolved oxygen and hydrogen, which are measured though their element is water's own.
+fn is_gas_of_water(species: &Species) -> bool {
+    matches!(species.key(), "O2(aq)" | "H2(aq)")
+}
+
 /// Mean oxidation state of an element in a species, hydrogen counted +1 and oxygen -2; `None` if it is not the only
 /// other element.
 #[must_use]
@@ -153,7 +165,8 @@ pub fn oxidation_state(species: &Species, element: Element) -> Option<Rational> 
     if count == 0.into() || species.elements_beside_water().any(|other| other != element) {
         return None;
     }
-    let rest = species.count(Element::H) - species.count(Element::O) * 2;
+    let others = |own: Element| if own == element { 0.into() } else { species.count(own) };
+    let rest = others(Element::H) - others(Element::O) * 2;
     Some((Rational::from_integer(i64::from(species.charge())) - rest) / count)
 }
 
@@ -220,6 +233,10 @@ mod tests {
         case("NO3^-", "N", Some(5));
         case("NH4^+", "N", Some(-3));
         case("H4SiO4(aq)", "Si", Some(4));
+        case("O2(aq)", "O", Some(0));
+        case("O2", "O", Some(0));
+        case("O(0)", "O", Some(0));
+        case("H2(aq)", "H", Some(0));
     }
 
     #[test]
@@ -230,6 +247,7 @@ mod tests {
         assert_eq!(message("SO4"), "`SO4` is an ion: write `SO4^2-`");
         assert!(message("H").contains("follow from the water"));
         assert!(message("OH^-").contains("follow from the water"));
+        assert!(message("O(-II)").contains("follow from the water"));
         assert_eq!(message("NaCl"), "`NaCl(aq)` holds Na and Cl: give each of them as an amount of its own");
         assert_eq!(
             message("Fe(2)"),

@@ -9,6 +9,7 @@ pub mod analyte;
 pub mod concentration;
 pub mod csv_text;
 pub mod marine;
+pub mod redox;
 pub mod sample;
 pub mod survey;
 pub mod treatment;

@@ -6,6 +6,7 @@ use std::sync::Arc;
 
 use super::analysis::{self, Analysis, Dissolved, Measured, Ph, Setting};
 use super::marine;
+use super::redox::{PE_RANGE, Potential};
 use super::treatment::Treatment;
 use crate::ledger::{Ledger, LedgerError, Sea};
 use crate::named::{KeyFault, Value};
@@ -343,6 +344,9 @@ impl Sample {
                 if let Some(fugacity) = &mut evidence.co2 {
                     *fugacity = change(fugacity);
                 }
+                if let Some(Potential::Measured(electron)) = &mut measured.redox.potential {
+                    electron.change(change);
+                }
                 measured.temperature.as_mut()
             }
             Analysis::Dissolved(dissolved) => {
@@ -468,6 +472,9 @@ fn check(treatment: &Treatment) -> Result<(), SampleError> {
         )),
         Treatment::HoldPh { ph, .. } if !(-2.0..=17.0).contains(ph) => {
             refuse(format!("pH {ph} lies outside -2 to 17"))
+        }
+        Treatment::HoldPe { pe, .. } if !(PE_RANGE.0..=PE_RANGE.1).contains(pe) => {
+            refuse(format!("pe {pe} lies outside {} to {}", PE_RANGE.0, PE_RANGE.1))
         }
         _ => Ok(()),
     }

@@ -62,6 +62,13 @@ pub enum Treatment {
         /// A neutral substance that brings it there, `NaOH`; `None`: H⁺ against inert charge.
         reagent: Option<String>,
     },
+    /// pe is kept.
+    HoldPe {
+        /// The pe kept.
+        pe: f64,
+        /// A neutral substance that brings it there, `O2`; `None`: electrons against inert charge.
+        reagent: Option<String>,
+    },
     /// Another temperature.
     WarmTo(Temperature),
     /// Another pressure.

@@ -1,59 +1,96 @@
 //! `lysocline run file.rhai`: runs a script from the start.
 
 use std::path::Path;
-use std::time::Duration;
 
+use lysocline_engine::ledger::{Ledger, in_force, shipped};
+use lysocline_engine::script::Diagnostic;
 use lysocline_engine::script::diagnostic::Kind;
-use lysocline_engine::script::sandbox::Sandbox;
-use lysocline_engine::script::{Diagnostic, Halt, Options, ScriptEngine};
 
 use crate::cli::{Limits, Look, Run};
-use crate::progress;
-use crate::render::diagnostic::Report;
-
-/// How long after the time limit a native loop that does not listen is waited for.
-const GRACE: Duration = Duration::from_secs(2);
+use crate::job::{self, Job, Script};
 
 /// Returns whether the script ran to its end.
 pub fn run(run: &Run, look: &Look, limits: &Limits) -> bool {
-    let report = Report { color: look.messages_colored() };
-    let name = run.file.display().to_string();
-    let text = match read(&run.file) {
-        Ok(text) => text,
+    let job = Job { file: &run.file, arguments: &run.arguments, write: &run.write, look, limits };
+    let script = match job::read(&run.file) {
+        Ok(script) => script,
         Err(diagnostic) => {
-            report.print(&diagnostic);
+            job.messages().print(&diagnostic);
             return false;
         }
     };
-    let engine = ScriptEngine::new(Options {
-        style: look.style(),
-        arguments: run.arguments.iter().map(|word| word.to_string_lossy().into_owned()).collect(),
-        files: Sandbox::for_script(&run.file, &run.write, limits.overwrite),
-        progress: Some(progress::on_standard_error()),
-        time_limit: limits.time_limit,
-        ..Options::default()
-    });
-    crate::render::draw_with(&engine);
-    // First the check for a flag already set, then the setting.
-    super::end_on_second_interrupt(engine.stop());
-    super::stop_on_interrupt(engine.stop());
-    if let Some(limit) = limits.time_limit {
-        end_process_after(limit + GRACE);
-    }
-    match engine.run(&name, &text) {
-        Ok(Some(value)) => engine.host().print(&engine.show(&value)),
-        Ok(None) => {}
-        // The reader of our output left: nobody is there to be told.
-        Err(diagnostic) if diagnostic.kind == Kind::Halted(Halt::OutputClosed) => {}
+    match ledgers(&script, run.sealed) {
+        Ok(Constants::Shipped(note)) => {
+            note.iter().for_each(|note| eprintln!("{note}"));
+            job.run(&script)
+        }
+        Ok(Constants::Sealed(ledgers)) => {
+            let _sealed = in_force::stand_in(ledgers);
+            job.run(&script)
+        }
         Err(diagnostic) => {
-            report.print(&diagnostic);
-            return false;
+            job.messages().print(&diagnostic);
+            false
         }
     }
-    true
+}
+
+/// The constants a script runs with.
+enum Constants {
+    /// Today's, with a line to say when a sealed file had others.
+    Shipped(Option<String>),
+    Sealed(Vec<Ledger>),
+}
+
+fn ledgers(script: &Script, sealed: bool) -> Result<Constants, Box<Diagnostic>> {
+    match (&script.seal, sealed) {
+        (Ok(Some(seal)), true) => Ok(Constants::Sealed(seal.ledgers.clone())),
+        (Ok(None), true) => Err(Box::new(
+            job::complaint(format!(
+                "`{}` is not sealed, so there are no sealed constants to run it with",
+                script.name
+            ))
+            .help("leave `--sealed` out, or seal the file with `lysocline seal`"),
+        )),
+        (Err(fault), true) => Err(Box::new(job::complaint(format!("`{}`: {fault}", script.name)))),
+        (Ok(Some(seal)), false) => Ok(Constants::Shipped(differing(&seal.ledgers))),
+        (Err(fault), false) => Ok(Constants::Shipped(Some(format!("note: {fault}")))),
+        (Ok(None), false) => Ok(Constants::Shipped(None)),
+    }
+}
+
+/// One line when today's ledgers are not the sealed ones.
+fn differing(sealed: &[Ledger]) -> Option<String> {
+    let mut moved = sealed.iter().filter_map(|old| {
+        let today = shipped::as_shipped(old.name()).ok();
+        match today {
+            Some(today) if today.digest() == old.digest() => None,
+            Some(today) => {
+                let edition = |ledger: &Ledger| ledger.edition().unwrap_or("no edition").to_owned();
+                Some(format!(
+                    "`{}` was {} ({}), is {} ({})",
+                    old.name(),
+                    edition(old),
+                    old.digest(),
+                    edition(&today),
+                    today.digest()
+                ))
+            }
+            None => Some(format!("`{}` is no longer shipped", old.name())),
+        }
+    });
+    let first = moved.next()?;
+    let others = moved.map(|other| format!(", {other}")).collect::<String>();
+    Some(format!(
+        "note: constants have changed since this file was sealed: {first}{others}; `run --sealed` takes the old ones, `verify` shows what moves"
+    ))
 }
 
 /// The text of a script file.
+///
+/// # Errors
+///
+/// Returns why it cannot be read.
 pub fn read(file: &Path) -> Result<String, Box<Diagnostic>> {
     read_text("the script", file)
 }
@@ -72,13 +109,4 @@ pub fn read_text(what: &str, file: &Path) -> Result<String, Box<Diagnostic>> {
         _ => failed(&error.to_string().to_lowercase()),
     })?;
     String::from_utf8(bytes).map_err(|_| failed("it is not UTF-8 text"))
-}
-
-/// The last resort when a native loop does not listen to the time limit.
-fn end_process_after(limit: Duration) {
-    std::thread::spawn(move || {
-        std::thread::sleep(limit);
-        eprintln!("error: ended: the time limit has passed and the calculation did not stop");
-        std::process::exit(1);
-    });
 }

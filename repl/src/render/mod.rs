@@ -1,12 +1,18 @@
 //! Values and messages as characters on a terminal. Every function returns text; who called it writes it.
 
 pub mod diagnostic;
+pub mod highlight;
+pub mod markdown;
 mod notes;
+pub mod page;
+pub mod plot;
+pub mod report;
 pub mod table;
 
 use std::io::IsTerminal;
 
 use lysocline_engine::chem::Trail;
+use lysocline_engine::present::plot::Plot;
 use lysocline_engine::present::{self, Table};
 use lysocline_engine::script::{ScriptEngine, Style};
 
@@ -16,6 +22,10 @@ pub fn draw_with(engine: &ScriptEngine) {
     let has_edge = std::io::stdout().is_terminal();
     engine.show_with(|shows| {
         shows.set::<Table>(move |drawn, style| table(drawn, style, has_edge));
+        shows.set::<Plot>(move |drawn, style| {
+            let look = plot::Look { plain: style.ascii, color: style.color, width: style.width };
+            plot::draw(drawn, &look)
+        });
         shows.set::<Trail>(move |trail, style| table(&trail.table(), style, has_edge));
     });
 }

@@ -1,5 +1,7 @@
 //! One way to start the program in a folder of its own.
 
+#![allow(dead_code, reason = "each test program is compiled with all of it and uses a part")]
+
 use std::path::Path;
 
 use assert_cmd::Command;

@@ -1,0 +1,256 @@
+//! Diagrams of the trade, drawn from sweeps: how an element is spread over its species.
+
+use crate::chem::{Element, Species, rational};
+use crate::equilibrium::{EquilibriumError, State};
+use crate::present::plot::{Axis as Ruler, Curve, Fields, Marks, Panel, Plot, Point, Scale};
+use crate::solve::Settings;
+use crate::water::Sample;
+
+use super::run::OnProgress;
+use super::sweep::{Axis, SweepError, sweep};
+
+/// What to draw.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Diagram {
+    element: String,
+    across: Span,
+    /// `None`: amounts themselves are drawn upwards.
+    up: Option<Span>,
+    /// States along each axis.
+    pub points: usize,
+}
+
+/// An axis that a sweep can set, from where to where.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Span {
+    /// As in a sweep: `pH`, `f(CO2(g)) [bar]`. A gas goes by the logarithm of its fugacity.
+    pub title: String,
+    /// The lower end; for a fugacity its logarithm.
+    pub from: f64,
+    /// The upper end.
+    pub to: f64,
+}
+
+/// Why there is no diagram.
+#[derive(Debug, thiserror::Error)]
+#[non_exhaustive]
+pub enum DiagramError {
+    /// An axis at fault, or interrupted.
+    #[error(transparent)]
+    Sweep(#[from] SweepError),
+    /// No state at all; the reason of the first.
+    #[error("no equilibrium was found anywhere in the diagram: {0}")]
+    Nowhere(String),
+    /// No such element, or none of it in the water.
+    #[error("there is no `{0}` in this water")]
+    NoElement(String),
+    /// A state at fault.
+    #[error(transparent)]
+    Equilibrium(#[from] EquilibriumError),
+}
+
+/// Species whose share of the element never reaches this are left out of a Bjerrum plot.
+const SMALLEST_SHARE: f64 = 1e-3;
+/// Powers of ten that a Bjerrum plot shows below the largest amount.
+const DECADES: f64 = 6.0;
+
+impl Span {
+    /// The range that is drawn where none is given.
+    #[must_use]
+    pub fn usual(title: &str) -> Option<Self> {
+        let (from, to) = match title {
+            "pH" => (2.0, 12.0),
+            "pe" => (-10.0, 20.0),
+            "temperature" => (0.0, 50.0),
+            _ if title.starts_with("f(") && title.ends_with(')') => (-6.0, 0.0),
+            _ => return None,
+        };
+        Some(Self { title: title.to_owned(), from, to })
+    }
+
+    fn is_fugacity(&self) -> bool {
+        self.title.starts_with("f(")
+    }
+
+    fn label(&self) -> String {
+        if self.is_fugacity() { format!("log {}", self.title) } else { self.title.clone() }
+    }
+
+    fn values(&self, n: usize) -> Vec<f64> {
+        (0..n).map(|i| self.from + (self.to - self.from) * i as f64 / (n.max(2) - 1) as f64).collect()
+    }
+
+    fn axis(&self, values: &[f64]) -> Result<Axis, SweepError> {
+        let values = values.iter().map(|value| if self.is_fugacity() { 10f64.powf(*value) } else { *value });
+        Axis::new(&self.title, values.collect())
+    }
+
+    fn ruler(&self) -> Ruler {
+        Ruler { label: self.label(), scale: Scale::Linear, from: self.from, to: self.to }
+    }
+}
+
+impl Diagram {
+    /// log10 molalities of the species of an element against pH.
+    #[must_use]
+    pub fn bjerrum(element: &str) -> Self {
+        let across = Span { title: "pH".to_owned(), from: 2.0, to: 12.0 };
+        Self { element: element.to_owned(), across, up: None, points: 81 }
+    }
+
+    /// The species or mineral that holds most of an element.
+    #[must_use]
+    pub fn predominance(up: Span, across: Span, element: &str) -> Self {
+        Self { element: element.to_owned(), across, up: Some(up), points: 41 }
+    }
+
+    /// Its axes.
+    pub fn axes(&self) -> impl Iterator<Item = &Span> {
+        [&self.across].into_iter().chain(&self.up)
+    }
+
+    /// The axis of this title.
+    pub fn axis_mut(&mut self, title: &str) -> Option<&mut Span> {
+        [&mut self.across].into_iter().chain(&mut self.up).find(|span| span.title == title)
+    }
+
+    /// How many equilibria it takes.
+    #[must_use]
+    pub fn n_states(&self) -> usize {
+        if self.up.is_some() { self.points * self.points } else { self.points }
+    }
+}
+
+/// Computes and draws.
+///
+/// # Errors
+///
+/// [`DiagramError`] when an axis cannot be set, the element is not there, or no point has an equilibrium.
+pub fn draw(
+    sample: &Sample,
+    diagram: &Diagram,
+    settings: &Settings,
+    progress: OnProgress,
+) -> Result<Plot, DiagramError> {
+    let across = diagram.across.values(diagram.points);
+    let up = diagram.up.as_ref().map(|span| span.values(diagram.points));
+    let mut axes = Vec::new();
+    if let (Some(span), Some(values)) = (&diagram.up, &up) {
+        axes.push(span.axis(values)?);
+    }
+    axes.push(diagram.across.axis(&across)?);
+    let run = sweep(sample, &axes, None, settings, progress)?;
+    let states: Vec<Option<&State>> = run.outcomes().iter().map(|outcome| outcome.as_ref().ok()).collect();
+    if let (true, Some(Err(reason))) = (states.iter().all(Option::is_none), run.outcomes().first()) {
+        return Err(DiagramError::Nowhere(reason.clone()));
+    }
+    let holders = holders(&states, &diagram.element);
+    if holders.is_empty() {
+        return Err(DiagramError::NoElement(diagram.element.clone()));
+    }
+    let log_amounts = holders.iter().map(|holder| states.iter().map(|s| holder.log_amount(*s)).collect());
+    let log_amounts: Vec<Vec<f64>> = log_amounts.collect();
+    Ok(match (&diagram.up, up) {
+        (Some(span), Some(up)) => fields(diagram, span, across, up, &holders, log_amounts),
+        _ => curves(diagram, &across, &states, &holders, &log_amounts),
+    })
+}
+
+/// A species or mineral that holds the element, with the number of its atoms in it.
+struct Holder {
+    species: Species,
+    atoms: f64,
+}
+
+impl Holder {
+    /// log10 of the moles of the element it holds per kg of water; not a number where there is none.
+    fn log_amount(&self, state: Option<&State>) -> f64 {
+        let log = state.and_then(|state| log_amount(state, &self.species)).filter(|log| log.is_finite());
+        log.map_or(f64::NAN, |log| log + self.atoms.log10())
+    }
+}
+
+/// log10 of the amount of a solute or solid, mol per kg of water.
+fn log_amount(state: &State, species: &Species) -> Option<f64> {
+    if species.is_solid() {
+        return state.solid_amount(species.key()).ok().map(f64::log10);
+    }
+    let solute = state.system().solute(species)?;
+    state.converged().ln_c.get(solute).map(|ln_c| ln_c / std::f64::consts::LN_10)
+}
+
+/// Everything that holds the element in any of the states, in order of first appearance.
+fn holders(states: &[Option<&State>], element: &str) -> Vec<Holder> {
+    let Some(element) = Element::from_symbol(element) else { return Vec::new() };
+    let Some(state) = states.iter().flatten().next() else { return Vec::new() };
+    let solutes = state.system().solutes().map(|formed| &formed.species);
+    let solids = state.system().phases().map(|(formed, _)| &formed.species).filter(|s| s.is_solid());
+    let holder = |species: &Species| {
+        let atoms = rational::to_f64(species.count(element));
+        (atoms > 0.0).then(|| Holder { species: species.clone(), atoms })
+    };
+    solutes.chain(solids).filter_map(holder).collect()
+}
+
+fn fields(
+    diagram: &Diagram,
+    up: &Span,
+    x: Vec<f64>,
+    y: Vec<f64>,
+    holders: &[Holder],
+    log_amounts: Vec<Vec<f64>>,
+) -> Plot {
+    let names = holders.iter().map(|holder| holder.species.key().to_owned()).collect();
+    let marks = Marks::Fields(Fields { names, x, y, log_amounts });
+    Plot {
+        title: Some(format!("predominance of {}", diagram.element)),
+        x: diagram.across.ruler(),
+        panels: vec![Panel { y: up.ruler(), marks }],
+    }
+}
+
+fn curves(
+    diagram: &Diagram,
+    across: &[f64],
+    states: &[Option<&State>],
+    holders: &[Holder],
+    log_amounts: &[Vec<f64>],
+) -> Plot {
+    let largest = |i: usize| log_amounts.iter().map(|amounts| amounts[i]).fold(f64::NAN, f64::max);
+    let matters = |amounts: &&(&Holder, &Vec<f64>)| {
+        amounts.1.iter().enumerate().any(|(i, amount)| *amount > largest(i) + SMALLEST_SHARE.log10())
+    };
+    let pairs: Vec<(&Holder, &Vec<f64>)> = holders.iter().zip(log_amounts).collect();
+    let mut drawn: Vec<(String, Vec<f64>)> = pairs
+        .iter()
+        .filter(matters)
+        .map(|(holder, amounts)| {
+            let shift = holder.atoms.log10();
+            (holder.species.key().to_owned(), amounts.iter().map(|amount| amount - shift).collect())
+        })
+        .collect();
+    for ion in ["H^+", "OH^-"] {
+        if let Ok(species) = Species::parse(ion) {
+            let own = Holder { species, atoms: 1.0 };
+            drawn.push((ion.to_owned(), states.iter().map(|state| own.log_amount(*state)).collect()));
+        }
+    }
+    let top = drawn.iter().flat_map(|(_, values)| values).copied().fold(f64::NAN, f64::max);
+    let curve = |(name, values): &(String, Vec<f64>)| Curve {
+        name: name.clone(),
+        is_formula: true,
+        points: across.iter().zip(values).map(|(x, y)| Point { x: *x, y: *y, sigma: None }).collect(),
+        is_line: true,
+    };
+    let y = Ruler {
+        label: "log10 molality [mol/kg]".to_owned(),
+        scale: Scale::Linear,
+        from: top - DECADES,
+        to: top + 0.3,
+    };
+    Plot {
+        title: Some(format!("species of {} against pH", diagram.element)),
+        x: diagram.across.ruler(),
+        panels: vec![Panel { y, marks: Marks::Curves(drawn.iter().map(curve).collect()) }],
+    }
+}
