@@ -238,8 +238,9 @@ fn changes(old: &Ledger, now: &Ledger) -> Vec<(String, Ledger)> {
     for name in then.keys().filter(|name| !today.contains_key(*name)) {
         changes.extend(old.without(name).ok().map(|ledger| (format!("{name} (gone)"), ledger)));
     }
-    if old.activity() != now.activity() {
-        changes.push(("the activity model".to_owned(), old.with_activity(now.activity())));
+    let written = |ledger: &Ledger| ledger.activity().written(|_| true);
+    if written(old) != written(now) {
+        changes.push(("the activity model".to_owned(), old.with_activity(now.activity().clone())));
     }
     changes
 }
