@@ -82,12 +82,13 @@ fn another_constant_is_found_and_named() {
     assert!(results.contains("1 of 3 values moved"), "{results}");
     // The one line of `run`, and the old constants on demand.
     let (code, _, messages) = said(&test, &["run", "spring.rhai"]);
-    assert_eq!((code, messages.lines().count()), (0, 1), "{messages}");
+    let notes = messages.lines().filter(|line| line.starts_with("note: ")).count();
+    assert_eq!((code, notes), (0, 1), "{messages}");
     assert!(
         messages.starts_with("note: constants have changed since this file was sealed: `freshwater`"),
         "{messages}"
     );
-    assert_eq!(said(&test, &["run", "--sealed", "spring.rhai"]).2, "");
+    assert!(!said(&test, &["run", "--sealed", "spring.rhai"]).2.contains("note: "));
 }
 
 /// The block with the digest that belongs to its lines.

@@ -366,7 +366,7 @@ mod sample_functions {
     /// electrons.
     ///
     /// ```rhai
-    /// let water = sample(#{ pH: 7, Fe: "1 mg/L" }).hold("pe", -3).equilibrate();
+    /// let water = sample(#{ pH: 7, Fe: "1 mg/L" }).hold("pH", 7).hold("pe", -3).equilibrate();
     /// water.get("total(Fe(II))").value / water.total("Fe").value > 0.99   // true
     /// ```
     #[rhai_fn(name = "hold", pure, return_raw)]

@@ -238,8 +238,8 @@ fn changes(old: &Ledger, now: &Ledger) -> Vec<(String, Ledger)> {
     for name in then.keys().filter(|name| !today.contains_key(*name)) {
         changes.extend(old.without(name).ok().map(|ledger| (format!("{name} (gone)"), ledger)));
     }
-    let model = |ledger: &Ledger| (ledger.activity().name(), ledger.activity().written(|_| true));
-    if model(old) != model(now) {
+    let written = |ledger: &Ledger| ledger.activity().written(|_| true);
+    if written(old) != written(now) {
         changes.push(("the activity model".to_owned(), old.with_activity(now.activity().clone())));
     }
     changes
