@@ -55,8 +55,13 @@ pub struct Host {
 pub enum HostKind {
     /// A gas of given volume, L per kilogram of water.
     GasOfVolume(f64),
-    /// A gas of given pressure, bar, vapour of water included.
-    GasOfPressure(f64),
+    /// A gas of given pressure.
+    GasOfPressure {
+        /// Its pressure less that of the vapour of water in it, bar.
+        dry: f64,
+        /// Change of the latter with temperature, bar/K.
+        vapour_slope: f64,
+    },
     /// An ideal solid solution.
     SolidSolution,
     /// An ion exchanger.
@@ -218,7 +223,7 @@ impl Host {
     fn mixture(&self) -> Option<Mixture> {
         let Place::Mixture(_) = self.place else { return None };
         let ln_target = match self.kind {
-            HostKind::GasOfPressure(dry) => dry.ln(),
+            HostKind::GasOfPressure { dry, .. } => dry.ln(),
             _ => 0.0,
         };
         let members = self.members.iter().map(|member| member.row.clone()).collect();
@@ -277,7 +282,7 @@ impl Host {
     pub(super) fn add_temperature(&self, given: &mut Given, at: Temperature, of: &dyn Fn(&Species) -> f64) {
         let shift = match self.kind {
             HostKind::GasOfVolume(_) => -1.0 / at.kelvin(),
-            HostKind::GasOfPressure(dry) => -gas_phase::vapour_slope(at) / dry,
+            HostKind::GasOfPressure { dry, vapour_slope } => -vapour_slope / dry,
             _ => 0.0,
         };
         let by_member = self.members.iter().map(|member| of(&member.species));

@@ -124,7 +124,7 @@ impl State {
 
     fn gas(&self, name: &str, asked: &str) -> Result<&Host, ObservableError> {
         let is_gas =
-            |host: &&Host| matches!(host.kind, HostKind::GasOfVolume(_) | HostKind::GasOfPressure(_));
+            |host: &&Host| matches!(host.kind, HostKind::GasOfVolume(_) | HostKind::GasOfPressure { .. });
         self.beside(name).filter(is_gas).ok_or_else(|| {
             let hosts = self.outcome().beside.hosts.iter().filter(is_gas);
             let names: Vec<&str> = hosts.map(|host| host.name.as_str()).collect();
@@ -143,7 +143,7 @@ impl State {
         let host = self.gas(name, asked)?;
         let water = self.water();
         match host.kind {
-            HostKind::GasOfPressure(dry) => {
+            HostKind::GasOfPressure { dry, .. } => {
                 let per_mole = water / (moles_per_litre_bar(self.temperature()) * dry);
                 let (value, mut slopes) = self.sum_beside(host, |_, _| per_mole);
                 let by_kelvin = 1.0 / self.temperature().kelvin() + vapour_slope(self.temperature()) / dry;
@@ -166,10 +166,10 @@ impl State {
         let host = self.gas(name, asked)?;
         let vapour = vapour_pressure(self.temperature());
         match host.kind {
-            HostKind::GasOfPressure(_) if self.sum_beside(host, |_, _| 1.0).0 == 0.0 => {
+            HostKind::GasOfPressure { .. } if self.sum_beside(host, |_, _| 1.0).0 == 0.0 => {
                 Err(no_answer(asked, "this gas phase has vanished: all of it is dissolved".into()))
             }
-            HostKind::GasOfPressure(dry) => {
+            HostKind::GasOfPressure { dry, .. } => {
                 let partials = host.stated.iter().map(|stated| (stated.quantity.clone(), 1.0)).collect();
                 Ok(Answer { partials, ..Answer::new(dry + vapour, "bar", vec![]) })
             }

@@ -85,7 +85,7 @@ pub(super) fn read(
                 )));
             }
             let stated = Stated { quantity: pressure.clone(), acts_on: ActsOn::Target, by: 1.0 / dry };
-            (HostKind::GasOfPressure(dry), stated)
+            (HostKind::GasOfPressure { dry, vapour_slope: vapour_slope(system.temperature()) }, stated)
         }
     };
     Ok((Host { name: gas.name.clone(), kind, members, place, stated: vec![stated] }, loads))

@@ -35,6 +35,7 @@ mod column;
 mod compare;
 mod engine;
 mod findings;
+mod gases;
 mod general;
 mod ledger;
 mod modules;

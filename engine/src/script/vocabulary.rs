@@ -8,7 +8,7 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
-    Fail, Host, ScriptResult, column, compare, general, ledger, neighbours, numbers, plot, processes,
+    Fail, Host, ScriptResult, column, compare, gases, general, ledger, neighbours, numbers, plot, processes,
     quantity, reaction, record, sample, seawater, state, table, tableau, treatments,
 };
 
@@ -31,6 +31,7 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     seawater::register(vocabulary);
     treatments::register(vocabulary);
     neighbours::register(vocabulary);
+    gases::register(vocabulary);
     state::register(vocabulary);
     tableau::register(vocabulary);
     processes::register(vocabulary);
