@@ -1020,8 +1020,11 @@ impl State {
             (a.0.species.is_gas(), b.1).partial_cmp(&(b.0.species.is_gas(), a.1)).expect("no NaN")
         });
         let amount = |formed: &Formation| {
-            let found = self.solid(&formed.species);
-            found.map_or_else(Cell::missing, |solid| self.cell(solid.amount, vec![solid.slope]))
+            let (held, mut slopes) = self.held_beside(&formed.species);
+            let solid = self.solid(&formed.species);
+            slopes.extend(solid.map(|solid| solid.slope));
+            let amount = held + solid.map_or(0.0, |solid| solid.amount);
+            if solid.is_none() && held == 0.0 { Cell::missing() } else { self.cell(amount, slopes) }
         };
         let slopes =
             |formed: &Formation| saturation_slopes(self.system(), &formed.species).unwrap_or_default();
