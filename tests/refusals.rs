@@ -241,7 +241,7 @@ fn analyses() {
     key(
         "pH_temperature",
         "20 degC",
-        "`pH_temperature` is not read here: give pH as it is at the sample's temperature",
+        "`pH_temperature` is not read here: give pH as it is at the sample's temperature; `seawater(#{ … })` takes both",
     );
     key("make_up", "Na", "`make_up` names `Na`, which was not given: none were");
     analysis(
