@@ -46,6 +46,7 @@ pub const CONSTANTS: &[(&str, &str)] = &[
     ("wagman1982", include_str!("../constants/wagman1982.toml")),
     ("waters-total2014", include_str!("../constants/waters-total2014.toml")),
     ("waters2014", include_str!("../constants/waters2014.toml")),
+    ("weiss-pressure1974", include_str!("../constants/weiss-pressure1974.toml")),
     ("weiss1974", include_str!("../constants/weiss1974.toml")),
     ("yao-millero1995", include_str!("../constants/yao-millero1995.toml")),
 ];

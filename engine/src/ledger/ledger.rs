@@ -316,7 +316,7 @@ impl Ledger {
     /// The sea that its constants are evaluated in.
     #[must_use]
     pub fn sea(&self) -> Option<Sea> {
-        self.0.sea
+        self.0.sea.clone()
     }
 
     /// What goes with salinity, in order of name.
