@@ -16,6 +16,7 @@ mod error;
 mod indices;
 mod mixture;
 pub mod observable;
+mod phase_rule;
 pub mod predominance;
 pub mod redox;
 pub mod state;
@@ -27,6 +28,7 @@ pub use assemble::System;
 pub use dosing::Dosed;
 pub use error::EquilibriumError;
 pub use observable::{Asked, Observable, ObservableError};
+pub use phase_rule::PhaseRule;
 pub use state::State;
 pub use trail::trail;
 
@@ -65,7 +67,9 @@ pub fn equilibrate(
             first.into_iter().chain([treated]).collect()
         }
     };
-    Ok(State::new(sample.clone(), analysed, outcomes))
+    let state = State::new(sample.clone(), analysed, outcomes);
+    state.check_dilution()?;
+    Ok(state)
 }
 
 /// The ledger a sample is computed with, in the sea that the sample is of.
