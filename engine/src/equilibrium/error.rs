@@ -103,7 +103,7 @@ impl EquilibriumError {
             SolveError::Unbounded { mineral_idx } => Self::Unbounded { solid: name(solids, mineral_idx) },
             SolveError::Overdetermined { reservoir_idx } => Self::Overdetermined {
                 held: name(held, reservoir_idx),
-                before: held.iter().take(reservoir_idx).map(|name| format!("`{name}`")).collect(),
+                before: held.iter().take(reservoir_idx).cloned().collect(),
             },
             SolveError::Stopped => Self::Stopped,
             SolveError::NoIonicStrength { searched_to } => Self::BeyondModel(format!(
