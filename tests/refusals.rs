@@ -432,8 +432,8 @@ fn surroundings_that_no_water_meets() {
     );
     water_of(
         &[open_to("CO2(g)", 1e9)],
-        "the water is beyond what an aqueous model describes: `CO2(aq)` would reach 3.4e7 mol/kg(water); it holds for \
-         water as the solvent",
+        "the water is beyond what an aqueous model describes: `CO2(aq)` would reach 3.4e7 mol/kg(water); its constants \
+         hold for water as the solvent",
     );
     water_of(
         &[saturate("calcite", 1e5)],
@@ -451,7 +451,7 @@ fn surroundings_that_no_water_meets() {
     water_of(
         &[Treatment::Concentrate(1e9)],
         "the water is beyond what an aqueous model describes: no ionic strength up to 1000 mol/kg(water) agrees with the \
-         composition that it implies; it holds for water as the solvent",
+         composition that it implies; its constants hold for water as the solvent",
     );
 }
 

@@ -146,11 +146,9 @@ impl Drawing {
         let is_fields = matches!(panel.marks, Marks::Fields(_));
         if let Marks::Fields(fields) = &panel.marks {
             let area = Area { left, top, width: self.width, height };
-            self.text.push_str(&field_shapes(fields, &area));
             let to = |(a, b): (f64, f64)| (across(x.place(a)), up(panel.y.place(b)));
-            for limit in &fields.limits {
-                self.text.push_str(&limit_line(limit, &area, to));
-            }
+            let limits: String = fields.limits.iter().map(|limit| limit_line(limit, &area, to)).collect();
+            self.text.push_str(&field_shapes(fields, &area, &limits));
         }
         for tick in x.ticks(8) {
             let at = across(x.place(tick.value));
@@ -327,8 +325,8 @@ struct Area {
     height: f64,
 }
 
-/// Tinted fields, the lines between them, and their names where each is widest.
-fn field_shapes(fields: &Fields, area: &Area) -> String {
+/// Tinted fields, the lines between them, the limits across them, and their names where each is widest.
+fn field_shapes(fields: &Fields, area: &Area, limits: &str) -> String {
     let place = |i: usize| (i as f64 + 0.5) / FINE as f64;
     let grid: Vec<Option<usize>> =
         (0..FINE * FINE).map(|k| fields.largest_at(place(k % FINE), place(k / FINE))).collect();
@@ -377,6 +375,7 @@ fn field_shapes(fields: &Fields, area: &Area) -> String {
         text,
         "<path class=\"ly-edge\" d=\"{edges}\" stroke=\"#1b1f24\" stroke-width=\"1.4\" stroke-linecap=\"square\" fill=\"none\"/>"
     );
+    text.push_str(limits);
     for field in present {
         if let Some((i, j)) = middle(&grid, field) {
             let name = escaped(&notation::shown(&fields.names[field], Style::default()));
@@ -396,13 +395,12 @@ fn limit_line(limit: &Limit, area: &Area, to: impl Fn((f64, f64)) -> (f64, f64))
     let [(x0, y0), (x1, y1)] = limit.ends.map(to);
     let (left, top, width, height) = (area.left, area.top, area.width, area.height);
     let angle = (y1 - y0).atan2(x1 - x0).to_degrees();
-    // The name stands in the middle of the part that is seen.
+    // The name stands near the start of the part that is seen: the middle is for the names of fields.
     let seen = |share: f64| (top..=top + height).contains(&(y0 + share * (y1 - y0)));
     let shares: Vec<f64> = (0..=100).map(|k| f64::from(k) / 100.0).filter(|share| seen(*share)).collect();
-    let Some(middle) = shares.first().zip(shares.last()).map(|(a, b)| (a + b) / 2.0) else {
-        return String::new();
-    };
-    let (x, y) = (x0 + middle * (x1 - x0), y0 + middle * (y1 - y0));
+    let Some((first, last)) = shares.first().zip(shares.last()) else { return String::new() };
+    let at = first + 0.14 * (last - first);
+    let (x, y) = (x0 + at * (x1 - x0), y0 + at * (y1 - y0));
     let name = escaped(&notation::shown(&limit.name, Style::default()));
     format!(
         "<svg x=\"{left:.1}\" y=\"{top:.1}\" width=\"{width:.1}\" height=\"{height:.1}\" viewBox=\"{left:.1} {top:.1} {width:.1} {height:.1}\" overflow=\"hidden\">\
