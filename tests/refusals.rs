@@ -7,6 +7,7 @@ use lysocline_engine::equilibrium::equilibrate;
 use lysocline_engine::ledger::shipped;
 use lysocline_engine::named::{Named, Value};
 use lysocline_engine::solve::Settings;
+use lysocline_engine::units::{Pressure, Temperature};
 use lysocline_engine::water::{Sample, Treatment};
 
 use crate::waters::{entries, freshwater, get, sample, state};
@@ -249,6 +250,21 @@ fn analyses() {
         "`pH: \"electroneutral\"` and `make_up: \"Na\"` both make the charges add up: keep one",
     );
     analysis(&[("pH", "27")], "pH 27 lies outside -2 to 17");
+    analysis(
+        &[("pH", "electroneutral"), ("alkalinity", "2 meq/L"), ("Na", "2 mmol/L")],
+        "`pH: \"electroneutral\"` fixes `alkalinity` as well, as the charge of the other ions, and leaves the carbon \
+         open: give `DIC` or `fCO2` in its place",
+    );
+    key(
+        "temperature",
+        "2000",
+        "`temperature`: no water is liquid at 2000 degC: give one from -50 degC to 373.946 degC, its critical point",
+    );
+    key(
+        "pressure",
+        "1e6 bar",
+        "`pressure`: no water is liquid at 1000000 bar: give one up to 10000 bar, absolute",
+    );
     analysis(&[("pCO2", "0 uatm")], "`pCO2` must be above zero");
     analysis(
         &[("pH", "7"), ("alkalinity", "2 meq/L"), ("DIC", "2 mmol/L")],
@@ -324,7 +340,7 @@ fn treatments() {
     water(
         DILUTE,
         &[saturate("calcite", 0.0), saturate("aragonite", 0.0)],
-        "`aragonite` is fixed already by the surroundings before it",
+        "`aragonite` cannot be fixed beside `calcite`: together they fix all it depends on already; leave one of them out",
     );
     water(
         DILUTE,
@@ -394,8 +410,72 @@ fn ledgers() {
     );
 }
 
+/// What cannot be met, in the user's names: surroundings that contradict each other, solutes without end, slips.
+#[test]
+fn surroundings_that_no_water_meets() {
+    let water_of = |treatments: &[Treatment], message: &str| {
+        water(
+            &[("pH", "7"), ("alkalinity", "2 meq/kg"), ("Ca", "1 mmol/kg"), ("Mg", "1 mmol/kg")],
+            treatments,
+            message,
+        );
+    };
+    water_of(
+        &[
+            open_to("CO2(g)", 4e-4),
+            saturate("calcite", 0.0),
+            saturate("gypsum", 0.0),
+            saturate("portlandite", 0.0),
+        ],
+        "`portlandite` cannot be fixed beside `CO2(g)`, `calcite` and `gypsum`: together they fix all it depends on \
+         already; leave one of them out",
+    );
+    water_of(
+        &[open_to("CO2(g)", 1e9)],
+        "the water is beyond what an aqueous model describes: `CO2(aq)` would reach 3.4e7 mol/kg(water); its constants \
+         hold for water as the solvent",
+    );
+    water_of(
+        &[saturate("calcite", 1e5)],
+        "a saturation index of 100000 for `calcite` lies outside -50 to 50: it is log10 of the saturation ratio, 0 at \
+         equilibrium",
+    );
+    water_of(
+        &[Treatment::WarmTo(Temperature::from_celsius(2000.0).unwrap())],
+        "`temperature`: no water is liquid at 2000 degC: give one from -50 degC to 373.946 degC, its critical point",
+    );
+    water_of(
+        &[Treatment::CompressTo(Pressure::from_bar(2e4).unwrap())],
+        "`pressure`: no water is liquid at 20000 bar: give one up to 10000 bar, absolute",
+    );
+    water_of(
+        &[Treatment::Concentrate(1e9)],
+        "the water is beyond what an aqueous model describes: no ionic strength up to 1000 mol/kg(water) agrees with the \
+         composition that it implies; its constants hold for water as the solvent",
+    );
+}
+
+/// A total of zero takes the component out, and what is made of it is absent; the rest is as if it had not been given.
+#[test]
+fn a_total_of_zero_is_an_absent_component() {
+    let (without, zero) = (sample(&[("pH", "7"), ("DIC", "1 mmol/kg")]), ("Ca", "0"));
+    let with = state(&sample(&[("pH", "7"), ("DIC", "1 mmol/kg"), zero]));
+    let present = with.converged().ln_c.iter().copied().filter(|ln_c| ln_c.is_finite());
+    assert_eq!(present.collect::<Vec<_>>(), state(&without).converged().ln_c);
+    assert_eq!(
+        with.get("SI(calcite)").unwrap_err().to_string(),
+        "`SI(calcite)`: absent, since what it is made of is not in the water"
+    );
+    assert_eq!(get(&with, "total(Ca)"), 0.0);
+}
+
 #[test]
 fn what_is_stretched_is_said() {
+    warns(
+        &[("pH", "7"), ("temperature", "250 degC"), ("Na", "1 mmol/kg"), ("Cl", "1 mmol/kg")],
+        &[],
+        &["at 250 degC pure water boils below 39.762 bar, and the pressure is 1.013 bar"],
+    );
     warns(
         &[("pH", "7"), ("temperature", "95 degC"), ("Ca", "5 mmol/kg"), ("DIC", "5 mmol/kg")],
         &[],

@@ -601,11 +601,11 @@ impl<'a> Analysis<'a> {
         let carbon_known = uses("DIC") || self.carbon_given || self.carbon.is_none();
         let electroneutral = matches!(self.evidence.ph, Some(Ph::Electroneutral)) && uses("pH");
         match (uses("pH"), uses("alkalinity"), uses("fCO2"), carbon_known) {
-            (true, true, _, false) => self.carbon_from_alkalinity(&totals, electroneutral),
+            (true, true, _, false) => self.carbon_from_alkalinity(&totals),
             (true, true, _, true) => Err(self.too_much()),
             (true, false, co2, _) => {
                 if electroneutral {
-                    return self.neutral(&totals, self.co2_if(co2), None);
+                    return self.neutral(&totals, self.co2_if(co2));
                 }
                 self.solve_with(&totals, self.ph, self.co2_if(co2), None)
             }
@@ -617,17 +617,12 @@ impl<'a> Analysis<'a> {
     }
 
     /// With the protons that make the charges add up.
-    fn neutral(
-        &self,
-        totals: &[f64],
-        co2: Option<f64>,
-        warm: Option<&Warm>,
-    ) -> Result<Solved, EquilibriumError> {
+    fn neutral(&self, totals: &[f64], co2: Option<f64>) -> Result<Solved, EquilibriumError> {
         let mut totals = totals.to_vec();
         totals[self.proton] = self.neutral_protons(&totals);
         // Electrons that a pe delivers bring charge along.
         if self.pe.is_none() || self.system.couples().len() == 0 {
-            return self.solve_with(&totals, None, co2, warm);
+            return self.solve_with(&totals, None, co2, None);
         }
         let charge = |totals: &[f64]| self.charges.iter().zip(totals).map(|(z, t)| z * t).sum::<f64>();
         self.with_protons(&totals, co2, charge)
@@ -759,12 +754,8 @@ impl<'a> Analysis<'a> {
         Ok(Reservoir { row: row.clone(), ln_value: fugacity.ln() })
     }
 
-    /// Total carbon from alkalinity, at the measured pH or at electroneutrality.
-    fn carbon_from_alkalinity(
-        &self,
-        totals: &[f64],
-        electroneutral: bool,
-    ) -> Result<Solved, EquilibriumError> {
+    /// Total carbon from alkalinity at the measured pH.
+    fn carbon_from_alkalinity(&self, totals: &[f64]) -> Result<Solved, EquilibriumError> {
         let carbon = self.carbon.expect("an alkalinity brings carbon in");
         let target = self.alkalinity.expect("alkalinity is used");
         let mut last: Option<Solved> = None;
@@ -772,11 +763,7 @@ impl<'a> Analysis<'a> {
             let mut totals = totals.to_vec();
             totals[carbon] = ln_total.exp();
             let warm = last.as_ref().map(|(_, converged)| converged.warm.clone());
-            let solved = if electroneutral {
-                self.neutral(&totals, None, warm.as_ref())?
-            } else {
-                self.solve_with(&totals, self.ph, None, warm.as_ref())?
-            };
+            let solved = self.solve_with(&totals, self.ph, None, warm.as_ref())?;
             let miss = self.alkalinity_of(&solved.0) - target;
             last = Some(solved);
             Ok::<f64, EquilibriumError>(miss)
@@ -891,8 +878,6 @@ impl<'a> Analysis<'a> {
                 let value = Some((ph.clone(), -LN_10));
                 conditions.held.push(Held { value, ..Held::chosen(reservoir, balanced(supply)) });
             }
-            // The carbon that alkalinity and electroneutrality would fix together.
-            Some(Ph::Electroneutral) if uses("pH") && uses("alkalinity") => return None,
             _ => {}
         }
         if let (Some(fugacity), true) = (&self.evidence.co2, uses("fCO2")) {

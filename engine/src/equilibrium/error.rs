@@ -55,16 +55,28 @@ pub enum EquilibriumError {
         solid: String,
     },
     /// Two fixed values contradict or repeat each other.
-    #[error("`{0}` is fixed already by the surroundings before it")]
-    Overdetermined(String),
+    #[error(
+        "`{held}` cannot be fixed beside {}: together they fix all it depends on already; leave one of them out", list(.before)
+    )]
+    Overdetermined {
+        /// What is fixed last: a gas, a solid, a couple.
+        held: String,
+        /// What was fixed before it.
+        before: Vec<String>,
+    },
     /// A target no amount of reagent reaches.
     #[error("{0}")]
     Unreachable(String),
     /// Interrupted.
     #[error("interrupted")]
     Stopped,
+    /// The water is none that an activity model of water as the solvent describes.
+    #[error("the water is beyond what an aqueous model describes: {0}; its constants hold for water as the solvent")]
+    BeyondModel(String),
     /// The solver did not reach its tolerances: a defect worth reporting.
-    #[error("{0}")]
+    #[error(
+        "{0}; this is a fault of the program, not of the water: please report it with the script and the output of `--version`"
+    )]
     Solver(String),
 }
 
@@ -91,8 +103,14 @@ impl EquilibriumError {
                 Self::Infeasible { combination, value }
             }
             SolveError::Unbounded { mineral_idx } => Self::Unbounded { solid: name(solids, mineral_idx) },
-            SolveError::Overdetermined { reservoir_idx } => Self::Overdetermined(name(held, reservoir_idx)),
+            SolveError::Overdetermined { reservoir_idx } => Self::Overdetermined {
+                held: name(held, reservoir_idx),
+                before: held.iter().take(reservoir_idx).cloned().collect(),
+            },
             SolveError::Stopped => Self::Stopped,
+            SolveError::NoIonicStrength { searched_to } => Self::BeyondModel(format!(
+                "no ionic strength up to {searched_to} mol/kg(water) agrees with the composition that it implies"
+            )),
             other => Self::Solver(other.to_string()),
         }
     }

@@ -23,6 +23,7 @@ mod gas_phase;
 mod indices;
 mod mixture;
 pub mod observable;
+mod phase_rule;
 pub mod predominance;
 pub mod redox;
 pub mod state;
@@ -36,6 +37,7 @@ pub use dosing::Dosed;
 pub use error::EquilibriumError;
 pub use gas_mixture::GasState;
 pub use observable::{Asked, Observable, ObservableError};
+pub use phase_rule::PhaseRule;
 pub use state::State;
 pub use trail::trail;
 
@@ -74,7 +76,9 @@ pub fn equilibrate(
             first.into_iter().chain([treated]).collect()
         }
     };
-    Ok(State::new(sample.clone(), analysed, outcomes))
+    let state = State::new(sample.clone(), analysed, outcomes);
+    state.check_dilution()?;
+    Ok(state)
 }
 
 /// The ledger a sample is computed with, in the sea that the sample is of.

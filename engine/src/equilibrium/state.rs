@@ -1103,6 +1103,7 @@ impl State {
                 model.valid_to().unwrap_or(f64::INFINITY)
             ));
         }
+        warnings.extend(self.strange_water());
         warnings.extend(self.beyond_stability());
         let solutes = self.system().solutes().zip(&self.0.molalities);
         let matter: Vec<(&Species, f64)> = solutes

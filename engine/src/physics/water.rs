@@ -153,12 +153,48 @@ pub fn debye_huckel(temperature_k: f64, pressure_bar: f64) -> (f64, f64) {
     )
 }
 
+/// Moles of water in a kilogram of it.
+pub const MOLES_PER_KG: f64 = 1000.0 / 18.015_268;
+
+/// Vapour pressure of pure water over liquid, bar; `None` outside 273.15 K to the critical point, 647.096 K.
+///
+/// Wagner & Pruss (1993), J. Phys. Chem. Ref. Data 22, 783, as in IAPWS SR1-86(1992).
+#[must_use]
+pub fn saturation_pressure(temperature_k: f64) -> Option<f64> {
+    const CRITICAL_K: f64 = 647.096;
+    const CRITICAL_BAR: f64 = 220.64;
+    const TERMS: [(f64, f64); 6] = [
+        (-7.859_517_83, 1.0),
+        (1.844_082_59, 1.5),
+        (-11.786_649_7, 3.0),
+        (22.680_741_1, 3.5),
+        (-15.961_871_9, 4.0),
+        (1.801_225_02, 7.5),
+    ];
+    if !(273.15..=CRITICAL_K).contains(&temperature_k) {
+        return None;
+    }
+    let tau = 1.0 - temperature_k / CRITICAL_K;
+    let sum: f64 = TERMS.iter().map(|(a, power)| a * tau.powf(*power)).sum();
+    Some(CRITICAL_BAR * (sum * CRITICAL_K / temperature_k).exp())
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
 
     /// Check values of the equation of state of 1980 for S = 0 (UNESCO 1981; recalled): ρ(5 °C, 1000 bar) and ρ(25 °C, 1000
     /// bar), kg/m³. Its density at 1 atm is another formula and differs by up to 0.01.
+    /// 611.657 Pa at the triple point, and one atmosphere at the normal boiling point, 373.1243 K, as IAPWS has them;
+    /// recalled.
+    #[test]
+    fn vapour_pressure_meets_the_triple_and_the_boiling_point() {
+        let bar = |kelvin: f64| saturation_pressure(kelvin).expect("liquid");
+        assert!((bar(273.16) / 0.006_116_57 - 1.0).abs() < 1e-4);
+        assert!((bar(373.1243) / 1.013_25 - 1.0).abs() < 1e-5);
+        assert_eq!(saturation_pressure(700.0), None);
+    }
+
     #[test]
     fn compressed_water_reproduces_the_equation_of_state_of_1980() {
         for (t, rho) in [(5.0, 1044.128_02), (25.0, 1037.902_04)] {

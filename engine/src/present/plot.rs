@@ -82,6 +82,17 @@ pub struct Fields {
     /// For each candidate log10 of its amount, rows of `y` of columns of `x`: shape `(y.len() * x.len(),)`; not a number
     /// where it was not found.
     pub log_amounts: Vec<Vec<f64>>,
+    /// Straight limits drawn across the fields, such as those of the stability of water.
+    pub limits: Vec<Limit>,
+}
+
+/// A straight line across a field diagram.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Limit {
+    /// What lies along it, as typed: `O2(g) 1 bar`.
+    pub name: String,
+    /// Its two ends, (x, y) in the units of the axes; they may lie beyond the axes.
+    pub ends: [(f64, f64); 2],
 }
 
 /// What may be said about a plot; what is not said is chosen by the numbers.
@@ -380,6 +391,7 @@ mod tests {
             x: vec![0.0, 1.0],
             y: vec![0.0, 1.0],
             log_amounts: vec![vec![0.0, -2.0, 0.0, -2.0], vec![-2.0, 0.0, -2.0, 0.0]],
+            limits: vec![],
         };
         assert_eq!(
             [0.0, 0.49, 0.51, 1.0].map(|x| fields.largest_at(x, 0.3)),

@@ -5,7 +5,7 @@
 
 use std::fmt::Write;
 
-use super::plot::{Axis, Curve, Fields, Marks, Panel, Plot, Scale, Tick};
+use super::plot::{Axis, Curve, Fields, Limit, Marks, Panel, Plot, Scale, Tick};
 use super::{Style, Title, notation};
 
 /// Colours that stay apart for the common forms of colour blindness, and differ in lightness.
@@ -146,7 +146,9 @@ impl Drawing {
         let is_fields = matches!(panel.marks, Marks::Fields(_));
         if let Marks::Fields(fields) = &panel.marks {
             let area = Area { left, top, width: self.width, height };
-            self.text.push_str(&field_shapes(fields, &area));
+            let to = |(a, b): (f64, f64)| (across(x.place(a)), up(panel.y.place(b)));
+            let limits: String = fields.limits.iter().map(|limit| limit_line(limit, &area, to)).collect();
+            self.text.push_str(&field_shapes(fields, &area, &limits));
         }
         for tick in x.ticks(8) {
             let at = across(x.place(tick.value));
@@ -323,8 +325,8 @@ struct Area {
     height: f64,
 }
 
-/// Tinted fields, the lines between them, and their names where each is widest.
-fn field_shapes(fields: &Fields, area: &Area) -> String {
+/// Tinted fields, the lines between them, the limits across them, and their names where each is widest.
+fn field_shapes(fields: &Fields, area: &Area, limits: &str) -> String {
     let place = |i: usize| (i as f64 + 0.5) / FINE as f64;
     let grid: Vec<Option<usize>> =
         (0..FINE * FINE).map(|k| fields.largest_at(place(k % FINE), place(k / FINE))).collect();
@@ -373,6 +375,7 @@ fn field_shapes(fields: &Fields, area: &Area) -> String {
         text,
         "<path class=\"ly-edge\" d=\"{edges}\" stroke=\"#1b1f24\" stroke-width=\"1.4\" stroke-linecap=\"square\" fill=\"none\"/>"
     );
+    text.push_str(limits);
     for field in present {
         if let Some((i, j)) = middle(&grid, field) {
             let name = escaped(&notation::shown(&fields.names[field], Style::default()));
@@ -385,6 +388,25 @@ fn field_shapes(fields: &Fields, area: &Area) -> String {
         }
     }
     text
+}
+
+/// A dashed line across the fields, cut off at the axes, with its name along it.
+fn limit_line(limit: &Limit, area: &Area, to: impl Fn((f64, f64)) -> (f64, f64)) -> String {
+    let [(x0, y0), (x1, y1)] = limit.ends.map(to);
+    let (left, top, width, height) = (area.left, area.top, area.width, area.height);
+    let angle = (y1 - y0).atan2(x1 - x0).to_degrees();
+    // The name stands near the start of the part that is seen: the middle is for the names of fields.
+    let seen = |share: f64| (top..=top + height).contains(&(y0 + share * (y1 - y0)));
+    let shares: Vec<f64> = (0..=100).map(|k| f64::from(k) / 100.0).filter(|share| seen(*share)).collect();
+    let Some((first, last)) = shares.first().zip(shares.last()) else { return String::new() };
+    let at = first + 0.14 * (last - first);
+    let (x, y) = (x0 + at * (x1 - x0), y0 + at * (y1 - y0));
+    let name = escaped(&notation::shown(&limit.name, Style::default()));
+    format!(
+        "<svg x=\"{left:.1}\" y=\"{top:.1}\" width=\"{width:.1}\" height=\"{height:.1}\" viewBox=\"{left:.1} {top:.1} {width:.1} {height:.1}\" overflow=\"hidden\">\
+         <path class=\"ly-edge\" d=\"M{x0:.1} {y0:.1}L{x1:.1} {y1:.1}\" stroke=\"#1b1f24\" stroke-width=\"1.2\" stroke-dasharray=\"7 5\" fill=\"none\"/>\
+         <text class=\"ly-ink ly-halo\" transform=\"translate({x:.1} {y:.1}) rotate({angle:.1})\" dy=\"-5\" text-anchor=\"middle\" fill=\"#1b1f24\" stroke=\"#ffffff\" stroke-width=\"3\" paint-order=\"stroke\">{name}</text></svg>\n"
+    )
 }
 
 /// Stretches of columns for which `inside` holds.

@@ -1,8 +1,8 @@
 //! Diagrams of the trade, drawn from sweeps: how an element is spread over its species.
 
 use crate::chem::{Element, Species, rational};
-use crate::equilibrium::{EquilibriumError, State};
-use crate::present::plot::{Axis as Ruler, Curve, Fields, Marks, Panel, Plot, Point, Scale};
+use crate::equilibrium::{Asked, EquilibriumError, Observable, State};
+use crate::present::plot::{Axis as Ruler, Curve, Fields, Limit, Marks, Panel, Plot, Point, Scale};
 use crate::solve::Settings;
 use crate::water::Sample;
 
@@ -148,11 +148,9 @@ pub fn draw(
     if holders.is_empty() {
         return Err(DiagramError::NoElement(diagram.element.clone()));
     }
-    let log_amounts = holders.iter().map(|holder| states.iter().map(|s| holder.log_amount(*s)).collect());
-    let log_amounts: Vec<Vec<f64>> = log_amounts.collect();
     Ok(match (&diagram.up, up) {
-        (Some(span), Some(up)) => fields(diagram, span, across, up, &holders, log_amounts),
-        _ => curves(diagram, &across, &states, &holders, &log_amounts),
+        (Some(span), Some(up)) => fields(diagram, span, across, up, &holders, &states),
+        _ => curves(diagram, &across, &states, &holders),
     })
 }
 
@@ -198,10 +196,22 @@ fn fields(
     x: Vec<f64>,
     y: Vec<f64>,
     holders: &[Holder],
-    log_amounts: Vec<Vec<f64>>,
+    states: &[Option<&State>],
 ) -> Plot {
     let names = holders.iter().map(|holder| holder.species.key().to_owned()).collect();
-    let marks = Marks::Fields(Fields { names, x, y, log_amounts });
+    let budgets: Vec<Option<Budget>> =
+        states.iter().map(|state| state.map(|state| Budget::of(state, holders))).collect();
+    let rank = |holder: &Holder| {
+        let each = states.iter().zip(&budgets).map(|(state, budget)| match (state, budget) {
+            (Some(state), Some(budget)) if holder.species.is_solid() => holder.solid_rank(state, budget),
+            (state, _) => holder.log_amount(*state),
+        });
+        each.collect()
+    };
+    let log_amounts = holders.iter().map(rank).collect();
+    let limits =
+        states.iter().flatten().next().map_or_else(Vec::new, |state| water_limits(diagram, up, state));
+    let marks = Marks::Fields(Fields { names, x, y, log_amounts, limits });
     Plot {
         title: Some(format!("predominance of {}", diagram.element)),
         x: diagram.across.ruler(),
@@ -209,18 +219,68 @@ fn fields(
     }
 }
 
-fn curves(
-    diagram: &Diagram,
-    across: &[f64],
-    states: &[Option<&State>],
-    holders: &[Holder],
-    log_amounts: &[Vec<f64>],
-) -> Plot {
+/// How much of the element there is in a state, mol per kg of water.
+struct Budget {
+    dissolved: f64,
+    solid: f64,
+}
+
+impl Budget {
+    fn of(state: &State, holders: &[Holder]) -> Self {
+        let held = |is_solid: bool| -> f64 {
+            let own = holders.iter().filter(|holder| holder.species.is_solid() == is_solid);
+            own.map(|holder| 10f64.powf(holder.log_amount(Some(state)))).filter(|held| held.is_finite()).sum()
+        };
+        Self { dissolved: held(false), solid: held(true) }
+    }
+}
+
+impl Holder {
+    /// What a solid is ranked by against solutes: a function that is continuous where the solid appears, so that a field
+    /// ends between grid points and not at one. With all of the element T and the dissolved D it is log10 T²/(4 D),
+    /// which equals log10 D where the solid holds half; where it is absent its saturation index, per atom of the element,
+    /// is added. Not a number for a solid that may not form.
+    fn solid_rank(&self, state: &State, budget: &Budget) -> f64 {
+        if !state.solids().iter().any(|solid| solid.species == self.species) {
+            return f64::NAN;
+        }
+        let all = budget.dissolved + budget.solid;
+        let rank = (all * all / (4.0 * budget.dissolved)).log10();
+        let amount = self.log_amount(Some(state));
+        if amount.is_finite() {
+            return rank + amount - budget.solid.log10();
+        }
+        let asked =
+            Asked { observable: Observable::SaturationIndex(self.species.key().to_owned()), unit: None };
+        state.number(&asked).map_or(f64::NAN, |(index, _)| rank + index / self.atoms)
+    }
+}
+
+/// Where water itself gives way, in a diagram of pe over pH: to oxygen of 1 bar above, to hydrogen of 1 bar below. Its
+/// constants are the ledger's, its activity 1.
+fn water_limits(diagram: &Diagram, up: &Span, state: &State) -> Vec<Limit> {
+    if (up.title.as_str(), diagram.across.title.as_str()) != ("pe", "pH") {
+        return vec![];
+    }
+    let (from, to) = (diagram.across.from, diagram.across.to);
+    let limit = |name: &str, equation: &str, electrons: f64| {
+        let reaction = state.system().ledger().derive(equation).ok()?;
+        let at_zero = reaction.log_k_at(state.temperature()).ok()?.value() / electrons;
+        Some(Limit { name: name.to_owned(), ends: [(from, at_zero - from), (to, at_zero - to)] })
+    };
+    let oxygen = limit("O2(g) 1 bar", "O2(g) + 4 H^+ + 4 e^- <=> 2 H2O", 4.0);
+    let hydrogen = limit("H2(g) 1 bar", "2 H^+ + 2 e^- <=> H2(g)", 2.0);
+    oxygen.into_iter().chain(hydrogen).collect()
+}
+
+fn curves(diagram: &Diagram, across: &[f64], states: &[Option<&State>], holders: &[Holder]) -> Plot {
+    let log_amounts: Vec<Vec<f64>> =
+        holders.iter().map(|holder| states.iter().map(|s| holder.log_amount(*s)).collect()).collect();
     let largest = |i: usize| log_amounts.iter().map(|amounts| amounts[i]).fold(f64::NAN, f64::max);
     let matters = |amounts: &&(&Holder, &Vec<f64>)| {
         amounts.1.iter().enumerate().any(|(i, amount)| *amount > largest(i) + SMALLEST_SHARE.log10())
     };
-    let pairs: Vec<(&Holder, &Vec<f64>)> = holders.iter().zip(log_amounts).collect();
+    let pairs: Vec<(&Holder, &Vec<f64>)> = holders.iter().zip(&log_amounts).collect();
     let mut drawn: Vec<(String, Vec<f64>)> = pairs
         .iter()
         .filter(matters)

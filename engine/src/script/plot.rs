@@ -13,7 +13,7 @@ use crate::present::{Table, plot_svg};
 use crate::process::diagram::{self, Diagram, DiagramError, Span};
 use crate::process::{Run, RunError};
 use crate::solve::Settings;
-use crate::water::Sample;
+use crate::water::{Sample, Treatment};
 
 /// Registers the type.
 pub(super) fn register(vocabulary: &mut Vocabulary) {
@@ -114,6 +114,23 @@ fn spans(map: Map, diagram: &mut Diagram) -> Result<(), Fail> {
         }
     }
     Ok(())
+}
+
+/// The solids that options allow, and the rest of the options.
+fn split_solids(mut options: Map) -> Result<(Vec<String>, Map), Fail> {
+    let wrong = || fail("`solids` takes a list of names: `[\"calcite\"]`").key("solids");
+    let Some(given) = options.remove("solids") else { return Ok((vec![], options)) };
+    let names = given.into_array().map_err(|_| wrong())?;
+    let names = names.into_iter().map(|name| name.into_string().map_err(|_| wrong()));
+    Ok((names.collect::<Result<_, _>>()?, options))
+}
+
+fn allowing(sample: &Sample, solids: &[String]) -> Result<Sample, Fail> {
+    solids.iter().try_fold(sample.clone(), |sample, solid| {
+        super::sample::known(&sample, solid)?;
+        let allow = Treatment::Allow { solid: solid.clone(), above: 0.0 };
+        sample.treated(allow).map_err(|error| Fail::from(error).key("solids"))
+    })
 }
 
 fn settings(host: &Host) -> Settings {
@@ -222,7 +239,13 @@ mod plot_functions {
     ) -> ScriptResult<Plot> {
         drawn(&context, &sample, &Diagram::predominance(span(up)?, span(across)?, element))
     }
-    /// The same with options: the ends of the axes and the number of points along each, `#{ pH: [4, 10], points: 61 }`.
+    /// The same with options: the ends of the axes, the number of points along each and the solids that may form,
+    /// `#{ pH: [4, 10], points: 61, solids: ["ferrihydrite"] }`. Over pe and pH the limits of water are drawn as well.
+    ///
+    /// ```rhai
+    /// let water = sample(#{ pH: 7, Fe: "10 umol/kg" });
+    /// predominance(water, "pe", "pH", "Fe", #{ points: 3, solids: ["ferrihydrite"] })
+    /// ```
     #[rhai_fn(name = "predominance", return_raw)]
     pub fn predominance_with(
         context: NativeCallContext,
@@ -239,8 +262,9 @@ mod plot_functions {
             false => super::span(title),
         };
         let mut diagram = Diagram::predominance(span(up)?, span(across)?, element);
-        spans(options.clone(), &mut diagram)?;
-        drawn(&context, &sample, &diagram)
+        let (solids, spans) = split_solids(options)?;
+        super::spans(spans, &mut diagram)?;
+        drawn(&context, &allowing(&sample, &solids)?, &diagram)
     }
 
     /// The same plot under a title.

@@ -281,10 +281,15 @@ pub(super) fn certificate_table(certificate: &Certificate) -> Result<Table, Fail
             "relative change of a concentration per relative change of the totals",
         ),
     ];
+    checks(rows.map(|(check, value, meaning)| (check, value, meaning.to_owned())))
+}
+
+/// Rows of a certificate: what is checked, the number, what it means.
+fn checks<const N: usize>(rows: [(&str, Option<f64>, String); N]) -> Result<Table, Fail> {
     Table::new([
         Column::texts("check", rows.iter().map(|(check, ..)| *check)),
         Column::new("value", rows.iter().map(|(_, value, _)| value.map_or_else(Cell::missing, Cell::number))),
-        Column::texts("meaning", rows.iter().map(|(.., meaning)| *meaning)),
+        Column::texts("meaning", rows.iter().map(|(.., meaning)| meaning.as_str())),
     ])
     .map_err(|error| fail(error.to_string()))
 }
@@ -469,10 +474,26 @@ mod state_functions {
     pub fn observables(_state: &mut State) -> Table {
         State::observables()
     }
-    /// What was checked of the answer: mass balance, mass action, solids, ionic strength.
+    /// What was checked of the answer: mass balance, mass action, solids, ionic strength, charge; and the phase rule.
     #[rhai_fn(name = "certificate", get = "certificate", pure, return_raw)]
     pub fn certificate(state: &mut State) -> ScriptResult<Table> {
-        Ok(certificate_table(state.certificate())?)
+        let rule = state.phase_rule();
+        let meaning = format!(
+            "{} components + 2 - {} phases: {}",
+            rule.components,
+            rule.phases.len(),
+            rule.phases.join(", ")
+        );
+        let own = [
+            (
+                "charge",
+                Some(state.charge_error()),
+                "error relative to the sum of charges; the misfit of the analysis is kept".to_owned(),
+            ),
+            ("phase rule", Some(rule.freedom() as f64), meaning),
+        ];
+        let table = certificate_table(state.certificate())?;
+        Ok(table.append(&checks(own)?).map_err(|error| fail(error.to_string()))?)
     }
     /// What a reader of the numbers should know, as texts.
     #[rhai_fn(name = "warnings", get = "warnings", pure)]

@@ -180,6 +180,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
         measured.amounts.push(read_amount(key, value, &[])?);
     }
     check_make_up(&measured)?;
+    check_neutrality(&measured.evidence)?;
     if measured.evidence.dic.is_some()
         && measured.amounts.iter().any(|(analyte, ..)| analyte.element().symbol() == "C")
     {
@@ -407,6 +408,20 @@ fn not_negative(key: &str, amount: &Amount) -> Result<(), KeyFault> {
         return Err(KeyFault::new(key, format!("`{key}` is negative: an amount is zero or more")));
     }
     Ok(())
+}
+
+/// Alkalinity and the charge of a water are the same combination of its totals, so the one follows from the other: together
+/// they leave carbon open.
+pub(super) fn check_neutrality(evidence: &Evidence) -> Result<(), KeyFault> {
+    let is_neutral = matches!(evidence.ph, Some(Ph::Electroneutral));
+    if !(is_neutral && evidence.uses("pH") && evidence.uses("alkalinity")) {
+        return Ok(());
+    }
+    Err(KeyFault::new(
+        "alkalinity",
+        "`pH: \"electroneutral\"` fixes `alkalinity` as well, as the charge of the other ions, and leaves the carbon open: \
+         give `DIC` or `fCO2` in its place",
+    ))
 }
 
 pub(super) fn check_make_up(measured: &Measured) -> Result<(), KeyFault> {

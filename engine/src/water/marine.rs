@@ -80,6 +80,7 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     }
     note_litres(&measured, salinity, &mut notes);
     analysis::check_make_up(&measured)?;
+    analysis::check_neutrality(&measured.evidence)?;
     Ok(Read { name, setting, measured, defaults, notes })
 }
 

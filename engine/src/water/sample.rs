@@ -83,6 +83,8 @@ impl Sample {
         read.remove("ledger");
         let labels = take_labels(&mut read)?;
         let analysis::Read { name, setting, measured, defaults, notes: mut taken } = reader(read)?;
+        check_temperature(setting.temperature).map_err(|why| KeyFault::new("temperature", why))?;
+        check_pressure(setting.pressure).map_err(|why| KeyFault::new("pressure", why))?;
         let mut notes = match defaults.as_slice() {
             [] => vec![],
             defaults => vec![format!("not given, so taken: {}", defaults.join(", "))],
@@ -461,6 +463,32 @@ impl std::fmt::Debug for Inner {
     }
 }
 
+/// A saturation index beyond this, either way, is a slip: it is not that of any solid in any water.
+const MOST_INDEX: f64 = 50.0;
+/// Brines of calcium chloride freeze at -50 degC; water is a liquid up to its critical point (IAPWS R2-83(1992)).
+const LIQUID: (f64, f64) = (-50.0, 373.946);
+/// Water freezes into ice VI at about 10 kbar and 25 degC (IAPWS R14-08(2011)).
+const MOST_PRESSURE: f64 = 1e4;
+
+fn check_temperature(temperature: Temperature) -> Result<(), String> {
+    let celsius = temperature.celsius();
+    if (LIQUID.0..=LIQUID.1).contains(&celsius) {
+        return Ok(());
+    }
+    Err(format!(
+        "`temperature`: no water is liquid at {celsius} degC: give one from {} degC to {} degC, its critical point",
+        LIQUID.0, LIQUID.1
+    ))
+}
+
+fn check_pressure(pressure: Pressure) -> Result<(), String> {
+    let bar = pressure.bar();
+    if bar <= MOST_PRESSURE {
+        return Ok(());
+    }
+    Err(format!("`pressure`: no water is liquid at {bar} bar: give one up to {MOST_PRESSURE} bar, absolute"))
+}
+
 fn check(treatment: &Treatment) -> Result<(), SampleError> {
     let refuse = |message: String| Err(SampleError::Treatment(message));
     match treatment {
@@ -472,6 +500,16 @@ fn check(treatment: &Treatment) -> Result<(), SampleError> {
         {
             refuse(format!("the saturation index of `{solid}` must be a finite number"))
         }
+        Treatment::Saturate { solid, index: value } | Treatment::Allow { solid, above: value }
+            if value.abs() > MOST_INDEX =>
+        {
+            refuse(format!(
+                "a saturation index of {value} for `{solid}` lies outside -{MOST_INDEX} to {MOST_INDEX}: it is \
+                 log10 of the saturation ratio, 0 at equilibrium"
+            ))
+        }
+        Treatment::WarmTo(temperature) => check_temperature(*temperature).map_err(SampleError::Treatment),
+        Treatment::CompressTo(pressure) => check_pressure(*pressure).map_err(SampleError::Treatment),
         Treatment::Concentrate(factor) if !(factor.is_finite() && *factor > 0.0) => refuse(format!(
             "`concentrate` takes how many times as much a kilogram of water shall hold, above zero, not {factor}; \
              2 evaporates half the water, 0.5 doubles it"
