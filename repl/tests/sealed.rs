@@ -152,6 +152,41 @@ fn what_cannot_be_sealed_stays_as_it_was() {
 }
 
 #[test]
+fn a_file_is_sealed_with_its_arguments() {
+    let script = "let waters = read_samples(args[\"file\"]);\nrecord(\"pH\", waters[0].equilibrate().pH);\n";
+    let test = Test::new().file("a.rhai", script).file("spring.csv", DATA);
+    assert_eq!(said(&test, &["seal", "a.rhai", "file=spring.csv"]).0, 0);
+    let (code, results, messages) = said(&test, &["verify", "a.rhai"]);
+    assert_eq!((code, results.as_str()), (0, "a.rhai: 1 value as sealed\n"), "{messages}");
+    assert_eq!(said(&test, &["run", "--sealed", "a.rhai"]).0, 0);
+}
+
+#[test]
+fn a_changed_uncertainty_or_source_is_named() {
+    let test = spring();
+    assert_eq!(said(&test, &["seal", "spring.rhai"]).0, 0);
+    let sealed = text(&test, "spring.rhai");
+    let start = sealed.find("name = \"calcite\"").expect("the constant");
+    let with = |key: &str, new: &str| {
+        let at = start + sealed[start..].find(&format!("{key} = ")).expect("the key") + key.len() + 3;
+        let end =
+            at + sealed[at..].find(" }").expect("the row's end").min(sealed[at..].find(", ").expect("a key"));
+        resealed(&format!("{}{new}{}", &sealed[..at], &sealed[end..]))
+    };
+    write(&test, "spring.rhai", &with("sigma", "0.05"));
+    let (code, results, messages) = said(&test, &["verify", "spring.rhai"]);
+    assert!(code == 1 && results.contains("calcite (its uncertainty is"), "{results}{messages}");
+    // A source moves nothing, and is said.
+    write(
+        &test,
+        "spring.rhai",
+        &resealed(&sealed.replace("(1982) The solubilities", "(1983) The solubilities")),
+    );
+    let (code, results, messages) = said(&test, &["verify", "spring.rhai"]);
+    assert!(code == 0 && results.contains("(its source)"), "{results}{messages}");
+}
+
+#[test]
 fn a_label_is_recorded_once() {
     let test = Test::new().file("a.rhai", "record(\"x\", 1);\nrecord(\"x\", 2);\n");
     let (code, _, messages) = said(&test, &["run", "a.rhai"]);
