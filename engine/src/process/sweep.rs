@@ -231,8 +231,9 @@ pub fn sweep(
     }
     let run = Run::equilibrate(&samples, ledger, settings, progress);
     let run = run.map_err(|_: EquilibriumError| SweepError::Stopped)?;
-    let column =
-        |(k, axis): (usize, &Axis)| Column::numbers(axis.heading().as_str(), values.iter().map(|point| point[k]));
+    let column = |(k, axis): (usize, &Axis)| {
+        Column::numbers(axis.heading().as_str(), values.iter().map(|point| point[k]))
+    };
     Ok(Run::new(axes.iter().enumerate().map(column).collect(), run.outcomes().to_vec()))
 }
 

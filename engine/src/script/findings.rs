@@ -222,7 +222,11 @@ fn misread(text: &str) -> Option<Fail> {
         Err(error @ ObservableError::Unknown { nearest: Some(_), .. }) if text.contains('(') => {
             Some(error.into())
         }
-        Err(error @ (ObservableError::Form(..) | ObservableError::Unit { .. })) => Some(error.into()),
+        Err(error @ ObservableError::Form(..)) => Some(error.into()),
+        Err(error @ ObservableError::Unit { .. }) => {
+            let name = text.split('[').next().unwrap_or("");
+            Asked::parse(name).is_ok().then(|| error.into())
+        }
         Err(_) => None,
     }
 }

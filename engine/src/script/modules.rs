@@ -139,8 +139,10 @@ impl Modules {
     fn find_shipped(&self, name: &str) -> Result<Found, Fail> {
         let file = self.state().folder.join(name).with_extension("rhai");
         match (shipped(name), file.exists()) {
-            (Some(_), true) => Err(fail(format!("`{name}` is a shipped module and a file beside the script"))
-                .help("rename the folder `stdlib` beside the script; the name belongs to shipped modules")),
+            (Some(_), true) => Err(fail(format!(
+                "`{name}` is a shipped module and a file beside the script"
+            ))
+            .help("rename the folder `stdlib` beside the script; the name belongs to shipped modules")),
             (Some(text), false) => {
                 Ok(Found { path: PathBuf::from(name), shown: name.to_owned(), text: Some(text) })
             }
