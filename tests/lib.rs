@@ -17,6 +17,8 @@ mod random_systems;
 #[cfg(test)]
 mod redox;
 #[cfg(test)]
+mod reference_materials;
+#[cfg(test)]
 mod refusals;
 #[cfg(test)]
 mod reproducible;

@@ -104,7 +104,7 @@ fn every_pair_gives_the_others_back() {
 
 /// [H^+] of a pair of DIC and alkalinity by bisection of the explicit sum of Dickson (1981): no convex problem, no ledger
 /// beyond the constants on the free scale.
-fn bisected_ph(
+pub fn bisected_ph(
     ledger: &Ledger,
     sea: Sea,
     t: Temperature,

@@ -23,6 +23,7 @@ use std::collections::BTreeMap;
 use super::activity::{ParameterEffect, parameter_effects};
 use super::analysis::Outcome;
 use super::assemble::System;
+use super::beside::Beside;
 use crate::activity::Composition;
 use crate::chem::{Reaction, Species, rational};
 use crate::ledger::{Couple, Formation};
@@ -57,6 +58,10 @@ pub enum Variable {
     ReservoirAmount(usize),
     /// The amount of a mineral.
     MineralAmount(usize),
+    /// ln of the amount of a row beside the solution.
+    LnOther(usize),
+    /// ln of the amount of a member of a mixture.
+    LnMember(usize, usize),
     /// ln K of a gas or solid, by its position in [`System::phases`].
     PhaseLnK(usize),
     /// ln K of a species that need not be in the system, by its position in the ledger's formations.
@@ -77,6 +82,8 @@ pub struct Conditions {
     pub held: Vec<Held>,
     /// Solids that may form, in the order of the solver's minerals.
     pub minerals: Vec<MayForm>,
+    /// What is beside the water.
+    pub beside: Beside,
     /// Measured values that the totals are sums of, each with the change of every total per unit of it. Empty where the
     /// totals are those that the stage before delivered.
     pub measured: Vec<(Quantity, Vec<f64>)>,
@@ -162,7 +169,7 @@ impl Stage {
         let problem = Problem {
             reservoirs: conditions.held.iter().map(|held| held.reservoir.clone()).collect(),
             minerals: conditions.minerals.iter().map(|formed| formed.mineral.clone()).collect(),
-            ..outcome.system.problem(&outcome.totals)
+            ..conditions.beside.extend(outcome.system.problem(&outcome.totals))
         };
         let supplies: Vec<Vec<f64>> = conditions.held.iter().map(|held| held.supply.clone()).collect();
         let sensitivities =
@@ -192,6 +199,8 @@ impl Influence {
                 Variable::LnWaterActivity => weight.ln_water_activity += slope,
                 Variable::ReservoirAmount(f) => weight.reservoir_amount[f] += slope,
                 Variable::MineralAmount(p) => weight.mineral_amount[p] += slope,
+                Variable::LnOther(i) => weight.others[i] += slope,
+                Variable::LnMember(p, k) => weight.mixtures[p][k] += slope,
                 Variable::PhaseLnK(p) => {
                     let (formed, _) = outcome.system.phases().nth(p).expect("a phase of the system");
                     influence.add_constants(&outcome.system, formed, *slope);
@@ -252,6 +261,15 @@ impl Influence {
             if let Some((value, by_value)) = &solid.value {
                 self.measured.push((value.clone(), slope * by_value));
             }
+        }
+        for host in &conditions.beside.hosts {
+            let (by_ln_k, by_sizes) = host.slopes(&by);
+            for (species, slope) in by_ln_k {
+                if let Some(formed) = system.ledger().formations().formation(species) {
+                    self.add_constants(system, formed, slope);
+                }
+            }
+            self.measured.extend(by_sizes);
         }
         if let Some(change) = &stage.by_temperature {
             self.add_temperature(outcome, product(&by, change));
@@ -361,7 +379,7 @@ fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem)
     let changes = ln_gammas(&above).into_iter().zip(ln_gammas(&below));
     given.ln_gamma = changes.map(|(above, below)| per_kelvin(above, below)).collect();
     let ln_k = |species: &Species| {
-        let ln_k = |system: &System| system.phase(species).map_or(0.0, |(_, row)| row.ln_k);
+        let ln_k = |system: &System| system.formed_row(species).map_or(0.0, |row| row.ln_k);
         per_kelvin(ln_k(&above), ln_k(&below))
     };
     for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
@@ -374,6 +392,9 @@ fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem)
     }
     for (value, solid) in given.minerals.iter_mut().zip(&conditions.minerals) {
         *value = -ln_k(&solid.species);
+    }
+    for host in &conditions.beside.hosts {
+        host.add_temperature(&mut given, outcome.system.temperature(), &ln_k);
     }
     Some(given)
 }
@@ -420,6 +441,8 @@ fn product(by: &Given, change: &Given) -> f64 {
         + dot(&by.totals, &change.totals)
         + dot(&by.reservoirs, &change.reservoirs)
         + dot(&by.minerals, &change.minerals)
+        + dot(&by.others, &change.others)
+        + by.mixtures.iter().zip(&change.mixtures).map(|(by, change)| dot(by, change)).sum::<f64>()
 }
 
 fn dot(a: &[f64], b: &[f64]) -> f64 {

@@ -78,6 +78,7 @@ fn words(treatment: &Treatment) -> String {
                 adjust.targets.iter().map(|(name, target)| format!("{name} {target}")).collect();
             format!("adjusted with {} to {}", list(&reagents), list(&targets))
         }
+        Treatment::Beside(neighbour) => format!("beside {}", neighbour.name()),
         Treatment::HoldPh { ph, reagent: None } => format!("held at pH {}", trimmed(*ph)),
         Treatment::HoldPh { ph, reagent: Some(reagent) } => {
             format!("held at pH {} with {reagent}", trimmed(*ph))
