@@ -60,7 +60,7 @@ fn write(
     script: &Script,
     (form, when): (Form, Option<String>),
     output: &Path,
-) -> Result<Outcome, lysocline_engine::script::Diagnostic> {
+) -> Result<Outcome, Box<lysocline_engine::script::Diagnostic>> {
     let outcome = job.gather(script, Files::Written);
     let plain = diagnostic::Report { color: false };
     let made = report::Report {
@@ -78,7 +78,8 @@ fn write(
     };
     let folder = output.parent().map_or(Ok(()), std::fs::create_dir_all);
     folder.and_then(|()| write_whole(output, text.as_bytes())).map_err(|error| {
-        job::complaint(format!("cannot write `{}`: {}", output.display(), error.to_string().to_lowercase()))
+        let reason = error.to_string().to_lowercase();
+        Box::new(job::complaint(format!("cannot write `{}`: {reason}", output.display())))
     })?;
     Ok(outcome)
 }
