@@ -107,7 +107,8 @@ fn read_salinity(
         )
     })?;
     let stated = match &given {
-        Value::Text(text) => Quantity::parse(text, Kind::Salinity, "salinity").ok(),
+        // Without a unit it is practical, as a bare number is.
+        Value::Text(text) => Quantity::parse_any(text, &Unit::known("PSU"), "salinity").ok(),
         Value::Quantity(quantity) => Some(quantity.clone()),
         _ => None,
     };
@@ -116,7 +117,9 @@ fn read_salinity(
         ["g/kg", "g/kg(solution)"].iter().find_map(|unit| given.to(&Unit::known(unit)).ok())
     });
     let Some(absolute) = absolute else {
-        return Ok((reaction::salinity("salinity", given)?, stated.filter(is_uncertain)));
+        let practical = stated.as_ref().filter(|stated| stated.unit().symbol() == "PSU");
+        let number = practical.map(|practical| Value::Number(practical.value()));
+        return Ok((reaction::salinity("salinity", number.unwrap_or(given))?, stated.filter(is_uncertain)));
     };
     let per_absolute = 1.0 / seawater::REFERENCE_SALINITY_PER_SALINITY;
     let practical = absolute.value() * per_absolute;
