@@ -241,7 +241,7 @@ fn analyses() {
     key(
         "pH_temperature",
         "20 degC",
-        "`pH_temperature` is not read here: give pH as it is at the sample's temperature",
+        "`pH_temperature` is not read here: give pH as it is at the sample's temperature; `seawater(#{ … })` takes both",
     );
     key("make_up", "Na", "`make_up` names `Na`, which was not given: none were");
     analysis(
@@ -390,7 +390,7 @@ fn ledgers() {
     );
     assert_eq!(
         shipped::ledger("freshwatr", None).unwrap_err().to_string(),
-        "no ledger `freshwatr` is shipped: there are `formation`, `freshwater` and `seawater`; did you mean `freshwater`?"
+        "no ledger `freshwatr` is shipped: there are `formation`, `freshwater`, `seawater` and `sorption`; did you mean `freshwater`?"
     );
 }
 

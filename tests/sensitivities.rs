@@ -581,7 +581,8 @@ fn shares_of_a_budget_sum_to_one() {
     }
 }
 
-/// Every water of every shipped example script, with the name of the script.
+/// Every fresh water of every shipped example script, with the name of the script; derivatives of seawaters are in
+/// `seawater`.
 fn example_waters() -> Vec<(String, Sample)> {
     let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("../example-scripts");
     let mut waters = Vec::new();
@@ -604,9 +605,8 @@ fn example_waters() -> Vec<(String, Sample)> {
                 Ok(array) => array.into_iter().filter_map(Dynamic::try_cast::<Sample>).collect(),
                 Err(_) => value.try_cast::<Sample>().into_iter().collect::<Vec<_>>(),
             });
-        waters.extend(
-            samples.filter(|sample| sample.measured().is_some()).map(|sample| (name.clone(), sample)),
-        );
+        let fresh = samples.filter(|sample| sample.measured().is_some() && sample.sea().is_none());
+        waters.extend(fresh.map(|sample| (name.clone(), sample)));
     }
     waters
 }

@@ -9,11 +9,13 @@
 pub const CONSTANTS: &[(&str, &str)] = &[
     ("bates1943", include_str!("../constants/bates1943.toml")),
     ("benson1979", include_str!("../constants/benson1979.toml")),
+    ("bruggenwert1982", include_str!("../constants/bruggenwert1982.toml")),
     ("busenberg1984", include_str!("../constants/busenberg1984.toml")),
     ("busenberg1986", include_str!("../constants/busenberg1986.toml")),
     ("cox1989", include_str!("../constants/cox1989.toml")),
     ("dickson-riley1979", include_str!("../constants/dickson-riley1979.toml")),
     ("dickson1990", include_str!("../constants/dickson1990.toml")),
+    ("dzombak1990", include_str!("../constants/dzombak1990.toml")),
     ("felmy1990", include_str!("../constants/felmy1990.toml")),
     ("grenthe1992", include_str!("../constants/grenthe1992.toml")),
     ("lee2010", include_str!("../constants/lee2010.toml")),
@@ -61,6 +63,7 @@ pub const LEDGERS: &[(&str, &str)] = &[
     ("formation", include_str!("../ledgers/formation.toml")),
     ("freshwater", include_str!("../ledgers/freshwater.toml")),
     ("seawater", include_str!("../ledgers/seawater.toml")),
+    ("sorption", include_str!("../ledgers/sorption.toml")),
 ];
 
 #[cfg(test)]

@@ -16,6 +16,7 @@ use std::collections::BTreeSet;
 
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::assemble::{System, carriers, inorganic_carbon};
+use super::beside::Beside;
 use super::dissolved_mass::{self, CARBONATE_MASS};
 use super::dosing::Dosed;
 use super::error::{EquilibriumError, proton_total_open};
@@ -103,6 +104,8 @@ pub struct Outcome {
     pub solids: Vec<Solid>,
     /// What treatments did to the totals.
     pub dosed: Dosed,
+    /// What is beside the water.
+    pub beside: Beside,
     /// What it meets, where its derivatives are known.
     pub conditions: Option<Conditions>,
 }
@@ -181,6 +184,7 @@ pub fn analyse(
         exchanged: vec![],
         solids: vec![],
         dosed: Dosed::default(),
+        beside: Beside::default(),
         conditions: found.conditions,
     };
     let temperature = measured.temperature.clone();
@@ -510,6 +514,7 @@ fn treatment_components(sample: &Sample, ledger: &Ledger) -> Result<BTreeSet<usi
             // A solid that may form brings nothing with it: it needs what is there already.
             Treatment::Allow { solid, .. } => drop(ledger.find_phase(solid)?),
             Treatment::HoldPe { .. } => present.extend(formations.component(&Species::electron())),
+            Treatment::Beside(neighbour) => present.extend(super::beside::components(neighbour, ledger)?),
             Treatment::HoldPh { .. }
             | Treatment::Concentrate(_)
             | Treatment::WarmTo(_)

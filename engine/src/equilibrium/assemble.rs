@@ -27,6 +27,8 @@ pub struct System {
     /// Positions in [`Formations::species`], with their rows.
     solutes: Vec<(usize, Row)>,
     phases: Vec<(usize, Row)>,
+    /// What is on sites of solids.
+    on_sites: Vec<(usize, Row)>,
     /// Redox couples in equilibrium: rows that are zero then.
     couples: Vec<(Couple, Row)>,
     model: Model,
@@ -73,6 +75,8 @@ impl System {
         let (solutes, others): (Vec<_>, Vec<_>) = formed
             .map(|(index, formed)| (index, row_of(formed)))
             .partition(|(i, _)| formations.species[*i].species.is_solute());
+        let (on_sites, others): (Vec<_>, Vec<_>) =
+            others.into_iter().partition(|(i, _)| formations.species[*i].species.is_on_sites());
         let phases =
             others.into_iter().filter(|(i, _)| formations.species[*i].species != Species::water()).collect();
         let dissolved: Vec<&Species> =
@@ -88,6 +92,7 @@ impl System {
             components,
             solutes,
             phases,
+            on_sites,
             couples,
             model,
             log_k,
@@ -114,7 +119,7 @@ impl System {
         let model = activity::model(self.ledger.activity(), &dissolved, temperature, self.pressure);
         let by_scales = OnceLock::new();
         let mut system = Self { temperature, doubts, model, by_scales, ..self.clone() };
-        for (index, row) in system.solutes.iter_mut().chain(&mut system.phases) {
+        for (index, row) in system.solutes.iter_mut().chain(&mut system.phases).chain(&mut system.on_sites) {
             row.ln_k = ln_k(&formations.species[*index], &log_k);
         }
         for (couple, row) in &mut system.couples {
@@ -267,6 +272,14 @@ impl System {
         self.component(&Species::electron())
     }
 
+    /// The formation of anything that is no solute: a gas, a solid, an ion or group on sites.
+    #[must_use]
+    pub fn formed_row(&self, species: &Species) -> Option<&Row> {
+        let of = |index: usize| &self.formations().species[index].species;
+        let mut all = self.phases.iter().chain(&self.on_sites);
+        all.find(|(index, _)| of(*index) == species).map(|(_, row)| row)
+    }
+
     /// Why the constants behind a species are uncertain at this temperature, with the reactions concerned.
     pub fn doubts<'a>(&'a self, formed: &'a Formation) -> impl Iterator<Item = (&'a str, Doubt)> {
         let names: Vec<&str> = self.ledger.names().collect();
@@ -358,6 +371,7 @@ pub(super) fn carriers(formations: &Formations, element: Element) -> Vec<usize> 
         let is_of_water = matches!(element, Element::H | Element::O);
         species.count(element) != 0.into()
             && *species != Species::water()
+            && !species.is_on_sites()
             && (!is_of_water || oxidation_state(species, element) == Some(0.into()))
     };
     let all: Vec<usize> = components.filter(carries).collect();

@@ -128,7 +128,8 @@ impl<'a> Course<'a> {
         Ok(())
     }
 
-    fn add(&mut self, moles: &Quantity, change: &[f64], factor: f64) {
+    /// Adds moles of something, with the change of every total per mole.
+    pub(super) fn add(&mut self, moles: &Quantity, change: &[f64], factor: f64) {
         for (total, change) in self.totals.iter_mut().zip(change) {
             *total += change * factor * moles.value();
         }

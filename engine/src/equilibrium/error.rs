@@ -76,8 +76,10 @@ impl EquilibriumError {
         match error {
             SolveError::Infeasible { combination, value } => {
                 let term = |(component, factor): &(usize, f64)| {
-                    let species = &system.component_species(*component);
-                    let total = format!("total({species})");
+                    let total = match *component < system.n_components() {
+                        true => format!("total({})", system.component_species(*component)),
+                        false => "charge of the surface".into(),
+                    };
                     match factor {
                         1.0 => total,
                         -1.0 => format!("-{total}"),

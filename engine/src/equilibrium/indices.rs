@@ -114,6 +114,7 @@ fn at_saturation(
         exchanged: vec![],
         solids: vec![],
         dosed: Dosed::default(),
+        beside: super::beside::Beside::default(),
         conditions: Some(conditions),
     })
 }

@@ -83,8 +83,16 @@ pub enum Observable {
     PartialPressure(String),
     /// Mole fraction of a gas in dry air at the total pressure.
     MoleFraction(String),
-    /// Amount of a solid that is there.
+    /// Amount of a solid that is there, or of something beside the water.
     Amount(String),
+    /// Equivalent fraction on an exchanger.
+    EquivalentFraction(String),
+    /// Volume of a gas phase.
+    GasVolume(String),
+    /// Potential of a surface.
+    SurfacePotential(String),
+    /// Charge of a surface by its area.
+    SurfaceCharge(String),
     /// Amount of something a treatment added.
     Added(String),
     /// Amount of something a treatment took away.
@@ -149,7 +157,7 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 /// Name, form as it is written, and what it is, in order of listing.
-pub const NAMES: [(&str, &str, &str); 42] = [
+pub const NAMES: [(&str, &str, &str); 46] = [
     (
         "pH",
         "pH",
@@ -181,13 +189,21 @@ pub const NAMES: [(&str, &str, &str); 42] = [
     ("log_a", "log_a(Ca^2+)", "log10 of the activity"),
     ("gamma", "gamma(Ca^2+)", "activity coefficient"),
     ("total", "total(Ca)", "total dissolved, mol/kg(water)"),
-    ("all", "all(Ca)", "total with solids, mol/kg(water)"),
+    ("all", "all(Ca)", "total with solids, gases, exchangers and surfaces, mol/kg(water)"),
     ("SI", "SI(calcite)", "saturation index, log10 of the ratio below"),
     ("Omega", "Omega(calcite)", "activity product over solubility product"),
     ("f", "f(CO2(g))", "fugacity, bar"),
     ("p", "p(CO2(g))", "partial pressure, bar"),
-    ("x", "x(CO2(g))", "mole fraction in dry air at the total pressure"),
-    ("n", "n(calcite)", "amount of a solid, mol"),
+    (
+        "x",
+        "x(CO2(g))",
+        "mole fraction in dry air at the total pressure, in the gas, solid or exchanger beside the water",
+    ),
+    ("n", "n(calcite)", "amount of a solid, or of anything beside the water, mol"),
+    ("E", "E(CaX2(clay))", "equivalent fraction on an exchanger"),
+    ("volume", "volume(bubble)", "volume of a gas phase, L"),
+    ("potential", "potential(ferric oxide)", "electric potential of a surface, V"),
+    ("surface_charge", "surface_charge(ferric oxide)", "charge of a surface by its area, C/m2"),
     ("added", "added(NaOH)", "amount a treatment added, mol/kg(water)"),
     ("removed", "removed(CO2(g))", "amount a treatment took away, mol/kg(water)"),
     ("misfit", "misfit(DIC)", "a measured value not used, less the computed one"),
@@ -321,6 +337,10 @@ fn about(name: &str, subject: String) -> Observable {
         "p" => Observable::PartialPressure(subject),
         "x" => Observable::MoleFraction(subject),
         "n" => Observable::Amount(subject),
+        "E" => Observable::EquivalentFraction(subject),
+        "volume" => Observable::GasVolume(subject),
+        "potential" => Observable::SurfacePotential(subject),
+        "surface_charge" => Observable::SurfaceCharge(subject),
         "added" => Observable::Added(subject),
         "removed" => Observable::Removed(subject),
         _ => Observable::Misfit(subject),
@@ -368,6 +388,10 @@ impl fmt::Display for Observable {
             Self::PartialPressure(subject) => ("p", Some(subject)),
             Self::MoleFraction(subject) => ("x", Some(subject)),
             Self::Amount(subject) => ("n", Some(subject)),
+            Self::EquivalentFraction(subject) => ("E", Some(subject)),
+            Self::GasVolume(subject) => ("volume", Some(subject)),
+            Self::SurfacePotential(subject) => ("potential", Some(subject)),
+            Self::SurfaceCharge(subject) => ("surface_charge", Some(subject)),
             Self::Added(subject) => ("added", Some(subject)),
             Self::Removed(subject) => ("removed", Some(subject)),
             Self::Misfit(subject) => ("misfit", Some(subject)),

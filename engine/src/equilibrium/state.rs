@@ -9,6 +9,7 @@ use super::analysis::{Analysed, Misfit, Outcome, Solid, ln_saturation, saturatio
 use super::assemble::{Doubt, System};
 use super::buffer::{self, Answering, buffer_factor, buffer_factor_slopes};
 use super::error::EquilibriumError;
+use super::gas_phase::vapour_pressure;
 use super::indices;
 use super::observable::{Asked, NAMES, Observable, ObservableError};
 use super::redox;
@@ -58,22 +59,22 @@ struct Inner {
 }
 
 /// A number with the unit it is in, what it depends on and, for amounts, what it is an amount of.
-struct Answer {
-    value: f64,
-    unit: &'static str,
+pub(super) struct Answer {
+    pub(super) value: f64,
+    pub(super) unit: &'static str,
     /// Molar mass in g/mol and formula text, where grams may be asked for.
-    molar_mass: Option<f64>,
-    element: Option<(Element, f64)>,
+    pub(super) molar_mass: Option<f64>,
+    pub(super) element: Option<(Element, f64)>,
     /// Derivatives by what the last stage found.
-    slopes: Slopes,
+    pub(super) slopes: Slopes,
     /// Derivatives by other quantities.
-    partials: Vec<(Quantity, f64)>,
+    pub(super) partials: Vec<(Quantity, f64)>,
     /// Whether its uncertainty is not worked out.
-    is_unstated: bool,
+    pub(super) is_unstated: bool,
 }
 
 impl Answer {
-    fn new(value: f64, unit: &'static str, slopes: Slopes) -> Self {
+    pub(super) fn new(value: f64, unit: &'static str, slopes: Slopes) -> Self {
         Self { value, unit, molar_mass: None, element: None, slopes, partials: vec![], is_unstated: false }
     }
 
@@ -107,6 +108,10 @@ impl State {
             dissolved,
             solution,
         }))
+    }
+
+    pub(super) fn outcome(&self) -> &Outcome {
+        &self.0.outcome
     }
 
     /// The sample it is the equilibrium of.
@@ -198,7 +203,7 @@ impl State {
         &self.0.outcome.solids
     }
 
-    fn solid(&self, species: &Species) -> Option<&Solid> {
+    pub(super) fn solid(&self, species: &Species) -> Option<&Solid> {
         self.0.outcome.solids.iter().find(|solid| solid.species == *species)
     }
 
@@ -513,6 +518,9 @@ impl State {
                     total.value += solid.amount * count;
                     total.slopes.extend(scaled(&[solid.slope], count));
                 }
+                self.add_beside(&mut total, |formed| {
+                    atoms(&analyte, formed, formations) / rational::to_f64(analyte.atoms())
+                });
                 Ok(total)
             }
             Observable::SaturationIndex(name) => {
@@ -523,9 +531,16 @@ impl State {
                 let (ln_omega, slopes) = self.ln_omega(name, asked)?;
                 Ok(Answer::exponential(ln_omega.exp(), "1", slopes))
             }
+            Observable::EquivalentFraction(name) => self.equivalent_fraction(name, asked),
+            Observable::GasVolume(name) => self.gas_volume(name, asked),
+            Observable::SurfacePotential(name) => self.surface_potential(name, asked),
+            Observable::SurfaceCharge(name) => self.surface_charge(name, asked),
             Observable::Fugacity(name) => {
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
                 plain(fugacity, "bar", slopes)
+            }
+            Observable::PartialPressure(name) if self.beside(name).is_some() => {
+                self.gas_pressure(name, asked)
             }
             Observable::PartialPressure(name) => {
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
@@ -533,11 +548,17 @@ impl State {
                 plain(fugacity / factor, "bar", scaled(&slopes, 1.0 / factor))
             }
             Observable::MoleFraction(name) => {
+                if let Some(answer) = self.fraction_beside(name, asked) {
+                    return answer;
+                }
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
                 let per_fraction = self.dry_pressure() * self.fugacity_factor(name);
                 plain(fugacity / per_fraction, "1", scaled(&slopes, 1.0 / per_fraction))
             }
             Observable::Amount(name) => {
+                if let Some(answer) = self.amount_beside(name) {
+                    return Ok(answer);
+                }
                 let species = self.phase(name, asked)?;
                 let water = self.water();
                 let solid = self.solid(&species);
@@ -925,11 +946,7 @@ impl State {
             let t = self.temperature().kelvin();
             return Pressure::ATMOSPHERE.bar() - gas_exchange::vapour_pressure(t, sea.salinity);
         }
-        // Antoine-type fit of the saturation pressure (Buck, A.L. (1981) J. Appl. Meteorol. 20, 1527-1532; recalled),
-        // good to 0.1 % between 0 and 50 degC.
-        let t = self.temperature().celsius();
-        let vapour = 6.1121e-3 * ((18.678 - t / 234.5) * t / (257.14 + t)).exp();
-        self.pressure().bar() - vapour
+        self.pressure().bar() - vapour_pressure(self.temperature())
     }
 
     fn exchanged(&self, name: &str, asked: &str, sign: f64) -> Result<Answer, ObservableError> {
@@ -1036,8 +1053,11 @@ impl State {
             (a.0.species.is_gas(), b.1).partial_cmp(&(b.0.species.is_gas(), a.1)).expect("no NaN")
         });
         let amount = |formed: &Formation| {
-            let found = self.solid(&formed.species);
-            found.map_or_else(Cell::missing, |solid| self.cell(solid.amount, vec![solid.slope]))
+            let (held, mut slopes) = self.held_beside(&formed.species);
+            let solid = self.solid(&formed.species);
+            slopes.extend(solid.map(|solid| solid.slope));
+            let amount = held + solid.map_or(0.0, |solid| solid.amount);
+            if solid.is_none() && held == 0.0 { Cell::missing() } else { self.cell(amount, slopes) }
         };
         let slopes =
             |formed: &Formation| saturation_slopes(self.system(), &formed.species).unwrap_or_default();
@@ -1248,15 +1268,15 @@ fn carbon_dioxide() -> Species {
     Species::parse("CO2(aq)").expect("a formula")
 }
 
-fn absent(asked: &str) -> ObservableError {
+pub(super) fn absent(asked: &str) -> ObservableError {
     ObservableError::Absent { asked: asked.into() }
 }
 
-fn no_answer(asked: &str, why: String) -> ObservableError {
+pub(super) fn no_answer(asked: &str, why: String) -> ObservableError {
     ObservableError::NoAnswer { asked: asked.into(), why }
 }
 
-fn amount(value: f64, unit: &'static str, species: &Species, slopes: Slopes) -> Answer {
+pub(super) fn amount(value: f64, unit: &'static str, species: &Species, slopes: Slopes) -> Answer {
     let element = species.elements_beside_water().next();
     let element = element.map(|element| (element, rational::to_f64(species.count(element))));
     Answer { molar_mass: species.molar_mass(), element, ..Answer::new(value, unit, slopes) }

@@ -10,6 +10,7 @@ use std::collections::BTreeMap;
 use super::acid_base::{ALKALINITY_PH, ZeroLevel};
 use super::analysis::{Analysed, Outcome, Solid, delivered, fixed_ph};
 use super::assemble::{System, carriers};
+use super::beside::Beside;
 use super::dosing::{Course, Dosed};
 use super::error::EquilibriumError;
 use super::redox::{self, fixed_pe};
@@ -78,7 +79,11 @@ fn treat_with(
     settings: &Settings,
 ) -> Result<Outcome, EquilibriumError> {
     let mut surroundings = Surroundings::read(sample, system)?;
-    let course = Course::run(sample, system, analysed)?;
+    let mut course = Course::run(sample, system, analysed)?;
+    let water = sample.setting().water / course.dosed.concentrated;
+    let (beside, loads) = Beside::read(sample, system, water, settings)?;
+    loads.iter().for_each(|(moles, change)| course.add(moles, change, 1.0));
+    surroundings.beside = beside;
     // The totals that an analysis fixed come with it; so does its temperature, unless another was chosen.
     surroundings.measured = course.measured;
     surroundings.dosed = course.dosed;
@@ -113,6 +118,7 @@ struct Surroundings {
     measured: Vec<(Quantity, Vec<f64>)>,
     temperature: Option<Quantity>,
     dosed: Dosed,
+    beside: Beside,
 }
 
 /// -log10 of an activity that a reagent brings about.
@@ -143,6 +149,7 @@ impl Surroundings {
             measured: vec![],
             temperature: None,
             dosed: Dosed::default(),
+            beside: Beside::default(),
         };
         for (k, treatment) in sample.treatments().iter().enumerate() {
             surroundings.add(treatment, system)?;
@@ -176,7 +183,8 @@ impl Surroundings {
                     Some(reagent) => self.hold_later("pe", electron, *pe, reagent)?,
                 }
             }
-            Treatment::Dose(_)
+            Treatment::Beside(_)
+            | Treatment::Dose(_)
             | Treatment::Remove(_)
             | Treatment::Concentrate(_)
             | Treatment::AddSolution { .. }
@@ -222,6 +230,7 @@ impl Surroundings {
             Treatment::HoldPh { .. } => ("pH", -LN_10),
             Treatment::HoldPe { .. } => ("pe", -LN_10),
             Treatment::WithSolid { .. }
+            | Treatment::Beside(_)
             | Treatment::Dose(_)
             | Treatment::Remove(_)
             | Treatment::Concentrate(_)
@@ -253,11 +262,11 @@ impl Surroundings {
         self.reservoirs.iter().cloned().chain(names.zip(system.couples_held()))
     }
 
-    fn problem(&self, system: &System, totals: &[f64]) -> Problem {
+    fn problem(&self, beside: &Beside, system: &System, totals: &[f64]) -> Problem {
         Problem {
             reservoirs: self.held(system).map(|(_, reservoir)| reservoir).collect(),
             minerals: self.minerals.iter().map(|(_, _, mineral)| mineral.clone()).collect(),
-            ..system.problem(totals)
+            ..beside.extend(system.problem(totals))
         }
     }
 
@@ -266,11 +275,25 @@ impl Surroundings {
         system: &System,
         totals: &[f64],
         settings: &Settings,
-    ) -> Result<Converged, EquilibriumError> {
+    ) -> Result<(Converged, Beside), EquilibriumError> {
+        /// Rounds after which a surface and the water around it agree, or never do.
+        const MOST_ROUNDS: usize = 200;
+
         let held: Vec<String> = self.held(system).map(|(name, _)| name).collect();
         let solids: Vec<String> = self.minerals.iter().map(|(name, ..)| name.clone()).collect();
-        let converged = solve(&self.problem(system, totals), system.model(), settings, None);
-        converged.map_err(|error| EquilibriumError::named(error, system, &held, &solids))
+        let mut beside = self.beside.clone();
+        for _ in 0..MOST_ROUNDS {
+            let converged = solve(&self.problem(&beside, system, totals), system.model(), settings, None)
+                .map_err(|error| EquilibriumError::named(error, system, &held, &solids))?;
+            let mut next = beside.clone();
+            if !next.update(&converged) {
+                return Ok((converged, beside));
+            }
+            beside = next;
+        }
+        Err(EquilibriumError::Solver(
+            "the charge of a surface and the ionic strength around it do not settle".into(),
+        ))
     }
 
     fn solve(
@@ -279,17 +302,20 @@ impl Surroundings {
         totals: &[f64],
         settings: &Settings,
     ) -> Result<Outcome, EquilibriumError> {
-        let converged = self.converge(system, totals, settings)?;
+        let (converged, beside) = self.converge(system, totals, settings)?;
         let taken = self.reservoirs.iter().zip(&converged.reservoir_amount);
         let exchanged = taken.map(|((name, _), amount)| (name.clone(), *amount)).collect();
-        let problem = self.problem(system, totals);
+        let problem = self.problem(&beside, system, totals);
+        let mut totals = delivered(&problem, &converged);
+        totals.truncate(system.n_components());
         Ok(Outcome {
             system: system.clone(),
-            totals: delivered(&problem, &converged),
+            totals,
             exchanged,
             solids: self.solids(&converged),
             dosed: self.dosed.clone(),
-            conditions: Some(self.conditions(system, &problem)),
+            conditions: Some(Conditions { beside: beside.clone(), ..self.conditions(system, &problem) }),
+            beside,
             converged,
         })
     }
@@ -336,6 +362,7 @@ impl Surroundings {
             measured: self.measured.clone(),
             temperature: self.temperature.clone(),
             concentrated: Some(self.dosed.concentrated),
+            ..Conditions::default()
         }
     }
 
@@ -359,7 +386,7 @@ impl Surroundings {
             totals
         };
         let mut misses = |amount: f64| {
-            let converged = self.converge(system, &with(amount), settings)?;
+            let (converged, _) = self.converge(system, &with(amount), settings)?;
             Ok::<f64, EquilibriumError>(target.shift(system) - converged.ln_a[*component] / LN_10 - value)
         };
         let start = scalar::Sample { x: 0.0, f: misses(0.0)? };
@@ -401,7 +428,7 @@ fn no_electrons() -> EquilibriumError {
 }
 
 /// A gas, or a solid, by its name.
-fn find<'a>(
+pub(super) fn find<'a>(
     ledger: &'a Ledger,
     name: &str,
     is_right: impl Fn(&Species) -> bool,

@@ -23,6 +23,7 @@ use std::collections::BTreeMap;
 use super::activity::{ParameterEffect, parameter_effects};
 use super::analysis::Outcome;
 use super::assemble::System;
+use super::beside::Beside;
 use crate::activity::Composition;
 use crate::chem::{PhScale, Reaction, Species, rational};
 use crate::ledger::{Constituent, Couple, Formation};
@@ -60,6 +61,10 @@ pub enum Variable {
     ReservoirAmount(usize),
     /// The amount of a mineral.
     MineralAmount(usize),
+    /// ln of the amount of a row beside the solution.
+    LnOther(usize),
+    /// ln of the amount of a member of a mixture.
+    LnMember(usize, usize),
     /// ln K of a gas or solid, by its position in [`System::phases`].
     PhaseLnK(usize),
     /// ln K of a species that need not be in the system, by its position in the ledger's formations.
@@ -129,6 +134,8 @@ pub struct Conditions {
     pub held: Vec<Held>,
     /// Solids that may form, in the order of the solver's minerals.
     pub minerals: Vec<MayForm>,
+    /// What is beside the water.
+    pub beside: Beside,
     /// Measured values that the totals are sums of, each with the change of every total per unit of it. Empty where the
     /// totals are those that the stage before delivered.
     pub measured: Vec<(Quantity, Vec<f64>)>,
@@ -221,7 +228,7 @@ impl Stage {
         let problem = Problem {
             reservoirs: conditions.held.iter().map(|held| held.reservoir.clone()).collect(),
             minerals: conditions.minerals.iter().map(|formed| formed.mineral.clone()).collect(),
-            ..outcome.system.problem(&outcome.totals)
+            ..conditions.beside.extend(outcome.system.problem(&outcome.totals))
         };
         let supplies: Vec<Vec<f64>> = conditions.held.iter().map(|held| held.supply.clone()).collect();
         let sensitivities =
@@ -252,6 +259,8 @@ impl Influence {
                 Variable::LnWaterActivity => weight.ln_water_activity += slope,
                 Variable::ReservoirAmount(f) => weight.reservoir_amount[f] += slope,
                 Variable::MineralAmount(p) => weight.mineral_amount[p] += slope,
+                Variable::LnOther(i) => weight.others[i] += slope,
+                Variable::LnMember(p, k) => weight.mixtures[p][k] += slope,
                 Variable::PhaseLnK(p) => {
                     let (formed, _) = outcome.system.phases().nth(p).expect("a phase of the system");
                     influence.add_constants(&outcome.system, formed, *slope);
@@ -319,6 +328,15 @@ impl Influence {
             if let Some((value, by_value)) = &solid.value {
                 self.measured.push((value.clone(), slope * by_value));
             }
+        }
+        for host in &conditions.beside.hosts {
+            let (by_ln_k, by_sizes) = host.slopes(&by);
+            for (species, slope) in by_ln_k {
+                if let Some(formed) = system.ledger().formations().formation(species) {
+                    self.add_constants(system, formed, slope);
+                }
+            }
+            self.measured.extend(by_sizes);
         }
         for (ambient, change) in &stage.by_ambient {
             self.add_ambient(outcome, *ambient, product(&by, change));
@@ -455,6 +473,9 @@ fn given_per_unit(
     }
     let changes = ln_gammas(above).into_iter().zip(ln_gammas(below));
     given.ln_gamma = changes.map(|(above, below)| per_unit(above, below)).collect();
+    let ln_k = |species: &Species| {
+        neighbours.per_unit(|system| system.formed_row(species).map_or(0.0, |row| row.ln_k))
+    };
     for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
         // A pH is held on a scale that changes with both, a potential changes with temperature.
         *value = if held.formed(&outcome.system).is_some() {
@@ -468,8 +489,12 @@ fn given_per_unit(
         };
     }
     for (value, solid) in given.minerals.iter_mut().zip(&conditions.minerals) {
-        let ln_k = |system: &System| system.phase(&solid.species).map_or(0.0, |(_, row)| row.ln_k);
-        *value = -neighbours.per_unit(ln_k);
+        *value = -ln_k(&solid.species);
+    }
+    if ambient == Ambient::Temperature {
+        for host in &conditions.beside.hosts {
+            host.add_temperature(&mut given, outcome.system.temperature(), &ln_k);
+        }
     }
     given
 }
@@ -516,6 +541,8 @@ fn product(by: &Given, change: &Given) -> f64 {
         + dot(&by.totals, &change.totals)
         + dot(&by.reservoirs, &change.reservoirs)
         + dot(&by.minerals, &change.minerals)
+        + dot(&by.others, &change.others)
+        + by.mixtures.iter().zip(&change.mixtures).map(|(by, change)| dot(by, change)).sum::<f64>()
 }
 
 fn dot(a: &[f64], b: &[f64]) -> f64 {

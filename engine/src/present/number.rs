@@ -10,8 +10,10 @@ use super::{Cell, Column, Style, Title, notation};
 /// Digits of a number of which nothing says how well it is known.
 pub const SIGNIFICANT_DIGITS: usize = 4;
 
-/// The relative uncertainty below which a number is shown as if it had none: its digits would fill the line.
+/// The relative uncertainty below which a number is not rounded to it: its digits would fill the line.
 const NEGLIGIBLE: f64 = 1e-9;
+/// The relative uncertainty below which it is not shown at all: a double does not resolve it.
+const UNRESOLVED: f64 = 1e-13;
 
 /// The powers of ten of the leading digit between which numbers are written without one: 0.001 to below 1e6.
 const PLAIN_EXPONENTS: std::ops::RangeInclusive<i32> = -3..=5;
@@ -179,6 +181,9 @@ impl Pieces {
 
     /// `form` says whether to write a power of ten; the digits are those of `sigma`.
     fn uncertain(value: f64, sigma: f64, form: Form, style: Style) -> Self {
+        if sigma > 0.0 && sigma < value.abs() * UNRESOLVED {
+            return Self::certain(&form.write(value));
+        }
         let sign = if style.plain { "+/-" } else { "±" };
         let known = value.is_finite() && sigma.is_finite() && sigma > value.abs() * NEGLIGIBLE;
         let (text, sigma, power) = match form {
@@ -306,6 +311,7 @@ mod tests {
         with_sigma(1e-9, 2e-7, "(0.0 ± 2.0)e-7");
         with_sigma(8.15, 0.0, "8.15 ± 0");
         with_sigma(8.15, 2e-12, "8.15 ± 2e-12");
+        with_sigma(8.15, 2e-60, "8.15");
         with_sigma(8.15, f64::INFINITY, "8.15 ± inf");
         let plain = Style { plain: true, width: None };
         assert_eq!(shown_with_sigma(41.2, 0.8, plain), "41.20 +/- 0.80");

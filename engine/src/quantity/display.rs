@@ -5,10 +5,14 @@ use std::fmt;
 use super::Quantity;
 use crate::units::{Style, Unit};
 
+/// The relative uncertainty below which none is shown: a double does not resolve it.
+const UNRESOLVED: f64 = 1e-13;
+
 pub(super) fn quantity(quantity: &Quantity, style: Style) -> String {
-    let number = match quantity.sigma() {
-        Some(sigma) if sigma > 0.0 => with_sigma(quantity.value, sigma, style),
-        _ => plain(quantity.value),
+    let shown = quantity.sigma().filter(|sigma| *sigma > quantity.value.abs() * UNRESOLVED);
+    let number = match shown {
+        Some(sigma) => with_sigma(quantity.value, sigma, style),
+        None => plain(quantity.value),
     };
     let written = if *quantity.unit() == Unit::one() {
         number
@@ -17,11 +21,10 @@ pub(super) fn quantity(quantity: &Quantity, style: Style) -> String {
     };
     // An uncertainty that leaves inputs out must not pass for the whole.
     let unstated = quantity.parts().iter().filter(|part| part.input.sigma().is_none()).count();
-    match quantity.sigma() {
-        Some(sigma) if sigma > 0.0 && unstated > 0 => {
-            format!("{written} ({} without uncertainty)", crate::text::count(unstated, "input"))
-        }
-        _ => written,
+    if shown.is_some() && unstated > 0 {
+        format!("{written} ({} without uncertainty)", crate::text::count(unstated, "input"))
+    } else {
+        written
     }
 }
 
@@ -70,8 +73,8 @@ fn with_sigma(value: f64, sigma: f64, style: Style) -> String {
     }
 }
 
-/// More digits than a double carries are noise.
-const MAX_DIGITS: i32 = 15;
+/// More digits than these say less than the two numbers beside each other.
+const MAX_DIGITS: i32 = 10;
 
 /// 41.20 ± 0.80 says no more than 41.2 ± 0.8.
 fn without_shared_zero(mut value: String, mut sigma: String) -> (String, String) {

@@ -234,7 +234,10 @@ fn displays() {
     case(52345.0, Some(1234.0), "52300 ± 1200");
     case(1.2345e-7, Some(1.2e-9), "1.234e-7 ± 0.012e-7");
     case(6.02e23, Some(1e20), "6.020e23 ± 0.001e23");
-    case(3.0, Some(1e-17), "3 ± 1e-17");
+    case(3.0, Some(1e-12), "3 ± 1e-12");
+    // below what a double resolves
+    let unresolved = Quantity::measured(3.0, Unit::one(), Some(1e-17), "x").unwrap();
+    assert_eq!(unresolved.display(Style::Unicode), "3");
 }
 
 #[test]

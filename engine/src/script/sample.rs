@@ -78,6 +78,7 @@ fn words(treatment: &Treatment) -> String {
                 adjust.targets.iter().map(|(name, target)| format!("{name} {target}")).collect();
             format!("adjusted with {} to {}", list(&reagents), list(&targets))
         }
+        Treatment::Beside(neighbour) => format!("beside {}", neighbour.name()),
         Treatment::HoldPh { ph, reagent: None } => format!("held at pH {}", trimmed(*ph)),
         Treatment::HoldPh { ph, reagent: Some(reagent) } => {
             format!("held at pH {} with {reagent}", trimmed(*ph))
@@ -365,7 +366,7 @@ mod sample_functions {
     /// electrons.
     ///
     /// ```rhai
-    /// let water = sample(#{ pH: 7, Fe: "1 mg/L" }).hold("pe", -3).equilibrate();
+    /// let water = sample(#{ pH: 7, Fe: "1 mg/L" }).hold("pH", 7).hold("pe", -3).equilibrate();
     /// water.get("total(Fe(II))").value / water.total("Fe").value > 0.99   // true
     /// ```
     #[rhai_fn(name = "hold", pure, return_raw)]

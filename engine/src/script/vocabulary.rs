@@ -8,8 +8,8 @@ use rhai::{Dynamic, Engine, EvalAltResult, Module, Shared, Variant};
 use super::check::Pure;
 use super::show::{Shows, Style};
 use super::{
-    Fail, Host, ScriptResult, column, compare, general, ledger, numbers, plot, processes, quantity, reaction,
-    record, sample, seawater, state, table, tableau, treatments,
+    Fail, Host, ScriptResult, column, compare, gases, general, ledger, neighbours, numbers, plot, processes,
+    quantity, reaction, record, sample, seawater, state, table, tableau, treatments,
 };
 
 /// Gathers everything a script can name.
@@ -30,6 +30,8 @@ pub(super) fn everything(vocabulary: &mut Vocabulary) {
     sample::register(vocabulary);
     seawater::register(vocabulary);
     treatments::register(vocabulary);
+    neighbours::register(vocabulary);
+    gases::register(vocabulary);
     state::register(vocabulary);
     tableau::register(vocabulary);
     processes::register(vocabulary);

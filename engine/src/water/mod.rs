@@ -8,7 +8,9 @@ pub mod analysis;
 pub mod analyte;
 pub mod concentration;
 pub mod csv_text;
+pub mod gas_mixture;
 pub mod marine;
+pub mod neighbour;
 pub mod redox;
 pub mod sample;
 pub mod survey;
@@ -16,6 +18,8 @@ pub mod treatment;
 
 pub use analysis::{Analysis, Dissolved, Evidence, Measured, Ph};
 pub use analyte::Analyte;
+pub use gas_mixture::GasMixture;
+pub use neighbour::Neighbour;
 pub use sample::{Sample, SampleError};
 pub use survey::{Survey, SurveyError};
 pub use treatment::{Adjust, Dose, Titrant, Treatment};

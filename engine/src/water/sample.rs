@@ -383,6 +383,7 @@ impl Sample {
                     *sample_volume = change(sample_volume);
                     solution.solutes.iter_mut().for_each(|(_, moles)| *moles = change(moles));
                 }
+                Treatment::Beside(neighbour) => neighbour.move_quantities(change),
                 Treatment::Adjust(adjust) => {
                     adjust.targets.iter_mut().for_each(|(_, target)| *target = change(target));
                 }

@@ -1,6 +1,7 @@
 //! What is done to a water after its analysis: surroundings, solids, temperature.
 
 use super::concentration::{self, Amount, Per};
+use super::neighbour::Neighbour;
 use crate::chem::{Equation, Species};
 use crate::named::{self, Value};
 use crate::quantity::Quantity;
@@ -55,6 +56,8 @@ pub enum Treatment {
     },
     /// So much of some reagents dissolves that some observables meet their targets.
     Adjust(Box<Adjust>),
+    /// A gas phase, a solid solution, an exchanger or a surface beside the water.
+    Beside(Box<Neighbour>),
     /// pH is kept.
     HoldPh {
         /// The pH kept.
