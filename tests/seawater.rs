@@ -273,7 +273,9 @@ fn a_budget_holds_what_salinity_does() {
             state(&[&common[..], &pair[..]].concat())
         };
         let (here, saltier, fresher) = (at("33 +/- 0.02"), at("33.01"), at("32.99"));
-        for asked in ["salinity", "pH(free)", "pH(total)", "fCO2 [uatm]", "Omega(aragonite)", "total(B)", "density"] {
+        for asked in
+            ["salinity", "pH(free)", "pH(total)", "fCO2 [uatm]", "Omega(aragonite)", "total(B)", "density"]
+        {
             let difference = (get(&saltier, asked) - get(&fresher, asked)) / 0.02;
             let answer = here.get(asked).unwrap();
             let part = answer.parts().iter().find(|part| part.input.label() == "salinity");

@@ -103,8 +103,7 @@ impl<'a> BufferFactor<'a> {
     fn new(state: &'a State, of: Answering, by: Added) -> Result<Self, EquilibriumError> {
         let system = state.system();
         let problem = system.problem(state.dissolved());
-        let converged =
-            solve(&problem, system.model(), &Settings::default(), Some(&state.converged().warm));
+        let converged = solve(&problem, system.model(), &Settings::default(), Some(&state.converged().warm));
         let converged = converged.map_err(|error| EquilibriumError::named(error, system, &[], &[]))?;
         Ok(Self { state, problem, converged, of, by })
     }
@@ -117,8 +116,7 @@ impl<'a> BufferFactor<'a> {
     fn at(&self, converged: &Converged) -> Result<f64, EquilibriumError> {
         let (state, problem, system) = (self.state, &self.problem, self.state.system());
         let absent = || EquilibriumError::Unreachable("the water holds no inorganic carbon".into());
-        let sensitivities =
-            Sensitivities::new(problem, system.model(), converged, &[]).ok_or_else(absent)?;
+        let sensitivities = Sensitivities::new(problem, system.model(), converged, &[]).ok_or_else(absent)?;
 
         let mut weight = Found::zero(problem);
         match self.of {

@@ -276,9 +276,8 @@ impl Influence {
                 Variable::CoupleLnK(c) => {
                     let couples = outcome.system.ledger().formations().couples();
                     influence.add_constants(&outcome.system, &couples[c].reduction, *slope);
-                    influence.add_constant_ambient(outcome, *slope, |system| {
-                        system.couple_row(&couples[c]).ln_k
-                    });
+                    influence
+                        .add_constant_ambient(outcome, *slope, |system| system.couple_row(&couples[c]).ln_k);
                 }
                 Variable::PhShift(scale) => {
                     influence.add_shift(&outcome.system, scale, *slope);

@@ -131,9 +131,8 @@ pub fn outside_ranges(
         };
         format!("`{name}` {hold} for {range}, and {was} used {}{advice}", at(sea, temperature))
     };
-    let range_of = |wanted: &str| {
-        outside.iter().find(|(name, _)| *name == wanted).map(|(_, reaction)| range(reaction))
-    };
+    let range_of =
+        |wanted: &str| outside.iter().find(|(name, _)| *name == wanted).map(|(_, reaction)| range(reaction));
     let mut warnings = Vec::new();
     let pair = (range_of("K1"), range_of("K2"));
     let together = matches!(&pair, (Some(one), Some(two)) if one == two);

@@ -103,7 +103,8 @@ fn left_out(river: &State) -> Vec<String> {
 fn is_carried(species: &Species) -> bool {
     let element = |symbol| Element::from_symbol(symbol).expect("a known element");
     let holds = |symbol| species.count(element(symbol)) != Rational::from_integer(0);
-    let reduced = |symbol, state| oxidation_state(species, element(symbol)) == Some(Rational::from_integer(state));
+    let reduced =
+        |symbol, state| oxidation_state(species, element(symbol)) == Some(Rational::from_integer(state));
     *species == Species::proton()
         || ["C", "Ca", "P", "Si"].into_iter().any(holds)
         || reduced("N", -3)

@@ -69,7 +69,8 @@ impl Scales {
     /// The same at the pressure of the surface.
     #[must_use]
     pub fn at_surface(ledger: &Ledger, place: &Place) -> Self {
-        let mut scales = Self { sulfate: 0.0, fluoride: 0.0, nbs: nbs_factor(place), fluoride_by_sulfate: 0.0 };
+        let mut scales =
+            Self { sulfate: 0.0, fluoride: 0.0, nbs: nbs_factor(place), fluoride_by_sulfate: 0.0 };
         let total = |name: &str| {
             let found = ledger.composition().find(|constituent| constituent.name == name);
             found.map_or(0.0, |constituent| constituent.per_salinity * place.salinity)
