@@ -472,6 +472,9 @@ fn given_per_unit(
     }
     let changes = ln_gammas(above).into_iter().zip(ln_gammas(below));
     given.ln_gamma = changes.map(|(above, below)| per_unit(above, below)).collect();
+    let ln_k = |species: &Species| {
+        neighbours.per_unit(|system| system.formed_row(species).map_or(0.0, |row| row.ln_k))
+    };
     for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
         // A pH is held on a scale that changes with both, a potential changes with temperature.
         *value = if held.formed(&outcome.system).is_some() {
@@ -485,13 +488,9 @@ fn given_per_unit(
         };
     }
     for (value, solid) in given.minerals.iter_mut().zip(&conditions.minerals) {
-        let ln_k = |system: &System| system.phase(&solid.species).map_or(0.0, |(_, row)| row.ln_k);
-        *value = -neighbours.per_unit(ln_k);
+        *value = -ln_k(&solid.species);
     }
     if ambient == Ambient::Temperature {
-        let ln_k = |species: &Species| {
-            neighbours.per_unit(|system| system.formed_row(species).map_or(0.0, |row| row.ln_k))
-        };
         for host in &conditions.beside.hosts {
             host.add_temperature(&mut given, outcome.system.temperature(), &ln_k);
         }

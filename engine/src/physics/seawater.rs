@@ -174,6 +174,27 @@ mod tests {
         }
     }
 
+    /// The thermodynamic standard of 2010, its Gibbs function (computed apart, with version 3.6.23 of its own library): the
+    /// equation of 1980 is within 0.003 kg/m3 of it; of absolute salinity, degC, bar.
+    #[test]
+    fn density_is_that_of_the_standard_of_2010_but_for_the_third_decimal() {
+        for (absolute, celsius, bar, standard) in [
+            (35.165_04, 0.0, 0.0, 1028.107_185),
+            (35.165_04, 10.0, 100.0, 1031.432_763),
+            (5.023_577_142_857_142, 15.0, 0.0, 1002.953_413),
+            (40.188_617_142_857_15, 30.0, 50.0, 1027.590_338),
+        ] {
+            let found = density(celsius + 273.15, absolute / REFERENCE_SALINITY_PER_SALINITY, bar);
+            assert!((found - standard).abs() < 0.003, "{found} for {standard}");
+        }
+    }
+
+    /// Reference salinity of practical salinity 7.2 by the same: 7.233951086 g/kg.
+    #[test]
+    fn reference_salinity_is_in_proportion() {
+        assert!((7.2 * REFERENCE_SALINITY_PER_SALINITY - 7.233_951_086).abs() < 5e-10);
+    }
+
     /// Printed check values of UNESCO (1983): 37.245628 and 27.995347.
     #[test]
     fn practical_salinity_meets_its_printed_values() {

@@ -79,11 +79,23 @@ fn show_run(run: &Run, _: &Style) -> String {
     let notes = run.warnings().len();
     let notes =
         if notes == 0 { String::new() } else { format!(", {} (`.warnings()`)", count(notes, "note")) };
-    format!(
+    let shown = format!(
         "run of {} over {}{failures}{notes}; `.table([\"pH\", …])` shows it",
         count(run.len(), "state"),
         axes.join(", ")
-    )
+    );
+    match choices_of(run).as_slice() {
+        [] => shown,
+        [same] => format!("{shown}\n  {same}"),
+        several => format!("{shown}\n  computed with {} choices of constants", several.len()),
+    }
+}
+
+/// The choices of constants that the seawaters of a run were computed with, each once.
+fn choices_of(run: &Run) -> Vec<String> {
+    let states = run.outcomes().iter().filter_map(|outcome| outcome.as_ref().ok());
+    let choices: std::collections::BTreeSet<String> = states.filter_map(State::choices).collect();
+    choices.into_iter().collect()
 }
 
 impl From<EquilibriumError> for Fail {

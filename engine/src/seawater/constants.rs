@@ -11,8 +11,8 @@
 //! Applying the factor on the total scale instead would move pK1 by 0.001 at 5000 dbar.
 
 use super::scales::{ByScales, Scales, makes_scales};
-use crate::chem::{PhScale, Reaction, Species, rational};
-use crate::ledger::{Ledger, Sea};
+use crate::chem::{PhScale, Provenance, Reaction, Species, rational};
+use crate::ledger::{Alternative, Ledger, Sea};
 use crate::physics::constants::LN_10;
 use crate::text::list;
 use crate::units::Temperature;
@@ -115,7 +115,9 @@ pub fn outside_ranges(
     let alternatives = ledger.alternatives();
     let covering = |name: &str| -> Vec<&str> {
         let covering = alternatives.iter().filter(|other| other.name == name && covers(&other.reaction));
-        covering.map(|other| other.author.as_str()).collect()
+        let (seen, recalled): (Vec<&Alternative>, Vec<&Alternative>) =
+            covering.partition(|other| is_seen(&other.reaction));
+        seen.into_iter().chain(recalled).map(|other| other.author.as_str()).collect()
     };
     let words = |name: &str, range: &str, authors: &[&str]| {
         let (hold, was, it) =
@@ -156,6 +158,12 @@ pub fn unmatched_pair(ledger: &Ledger) -> Option<String> {
              `.choose(\"K1 K2\", \"{one}\")` takes both"
         )
     })
+}
+
+/// Whether a constant was seen in its source: those are advised first.
+fn is_seen(reaction: &Reaction) -> bool {
+    let origins = reaction.constant().map(|constant| constant.history.uses());
+    origins.is_ok_and(|uses| uses.iter().all(|(origin, _)| origin.provenance == Provenance::Read))
 }
 
 fn at(sea: &Sea, temperature: Temperature) -> String {

@@ -48,7 +48,8 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let (salinity, stated_salinity) = read_salinity(&mut named, &mut notes)?;
     read_depth(&mut named, &mut notes)?;
     let (setting, temperature) = analysis::read_setting(&mut named, &mut defaults)?;
-    let ph_scale = read_scale(&mut named)?;
+    let stated_scale = read_scale(&mut named)?;
+    let ph_scale = stated_scale.unwrap_or(PhScale::Total);
     let ph_temperature = read_temperature(&mut named, "pH_temperature")?;
     let co2_temperature = read_temperature(&mut named, "fCO2_temperature")?;
     let sea = Sea { salinity, stated_salinity, pressure: setting.pressure, ph_scale };
@@ -76,7 +77,8 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
         measured.amounts.push(read_amount(key, value)?);
     }
     if measured.evidence.ph.is_some() {
-        notes.push(format!("pH is on the {} scale", ph_scale.word()));
+        let help = if stated_scale.is_some() { "" } else { ", since no `ph_scale` was given" };
+        notes.push(format!("pH is on the {} scale{help}", ph_scale.word()));
     }
     note_litres(&measured, salinity, &mut notes);
     analysis::check_make_up(&measured)?;
@@ -105,7 +107,8 @@ fn read_salinity(named: &mut Named, notes: &mut Vec<String>) -> Result<(f64, Opt
         )
     })?;
     let stated = match &given {
-        Value::Text(text) => Quantity::parse(text, Kind::Salinity, "salinity").ok(),
+        // Without a unit it is practical, as a bare number is.
+        Value::Text(text) => Quantity::parse_any(text, &Unit::known("PSU"), "salinity").ok(),
         Value::Quantity(quantity) => Some(quantity.clone()),
         _ => None,
     };
@@ -114,7 +117,9 @@ fn read_salinity(named: &mut Named, notes: &mut Vec<String>) -> Result<(f64, Opt
         ["g/kg", "g/kg(solution)"].iter().find_map(|unit| given.to(&Unit::known(unit)).ok())
     });
     let Some(absolute) = absolute else {
-        return Ok((reaction::salinity("salinity", given)?, stated.filter(is_uncertain)));
+        let practical = stated.as_ref().filter(|stated| stated.unit().symbol() == "PSU");
+        let number = practical.map(|practical| Value::Number(practical.value()));
+        return Ok((reaction::salinity("salinity", number.unwrap_or(given))?, stated.filter(is_uncertain)));
     };
     let per_absolute = 1.0 / seawater::REFERENCE_SALINITY_PER_SALINITY;
     let practical = absolute.value() * per_absolute;
@@ -156,17 +161,20 @@ fn with(mut named: Named, key: &str, value: Value) -> Named {
     Named::new(entries)
 }
 
-fn read_scale(named: &mut Named) -> Result<PhScale, KeyFault> {
+fn read_scale(named: &mut Named) -> Result<Option<PhScale>, KeyFault> {
     let words = ["total", "seawater", "free", "nbs"];
     match named.text("ph_scale")? {
-        None => Ok(PhScale::Total),
-        Some(word) => PhScale::parse(&word).filter(|_| words.contains(&word.as_str())).ok_or_else(|| {
-            let help =
-                nearest(&word, words).map(|close| format!("; did you mean `{close}`?")).unwrap_or_default();
-            let message =
-                format!("`{word}` is no scale of pH in seawater: the scales are {}{help}", list(&words));
-            KeyFault::new("ph_scale", message)
-        }),
+        None => Ok(None),
+        Some(word) => {
+            PhScale::parse(&word).filter(|_| words.contains(&word.as_str())).map(Some).ok_or_else(|| {
+                let help = nearest(&word, words)
+                    .map(|close| format!("; did you mean `{close}`?"))
+                    .unwrap_or_default();
+                let message =
+                    format!("`{word}` is no scale of pH in seawater: the scales are {}{help}", list(&words));
+                KeyFault::new("ph_scale", message)
+            })
+        }
     }
 }
 
