@@ -660,7 +660,7 @@ impl State {
         })
     }
 
-    /// Fugacity over partial pressure: 1 but for CO2 over seawater.
+    /// Fugacity over partial pressure: for CO2 over seawater that of air at one atmosphere, else by the ledger's gas model.
     fn fugacity_factor(&self, gas: &str, asked: &str) -> Result<f64, ObservableError> {
         let phase =
             self.system().ledger().find_phase(gas).map_err(|error| no_answer(asked, error.to_string()))?;
