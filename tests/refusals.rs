@@ -406,7 +406,7 @@ fn ledgers() {
     );
     assert_eq!(
         shipped::ledger("freshwatr", None).unwrap_err().to_string(),
-        "no ledger `freshwatr` is shipped: there are `formation`, `freshwater` and `seawater`; did you mean `freshwater`?"
+        "no ledger `freshwatr` is shipped: there are `formation`, `freshwater`, `seawater` and `sorption`; did you mean `freshwater`?"
     );
 }
 

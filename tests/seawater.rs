@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 
 use approx::assert_relative_eq;
 use lysocline_engine::chem::PhScale;
-use lysocline_engine::equilibrium::{State, equilibrate};
+use lysocline_engine::equilibrium::{Asked, State, equilibrate};
 use lysocline_engine::ledger::{Ledger, Sea, file, save, shipped};
 use lysocline_engine::named::Value;
 use lysocline_engine::seawater::constants::{Place, log_k_free};
@@ -113,7 +113,7 @@ pub fn bisected_ph(
     totals: &[(&str, f64)],
 ) -> f64 {
     let names: Vec<&str> = ledger.names().collect();
-    let log_k = log_k_free(ledger, sea, t);
+    let log_k = log_k_free(ledger, &sea, t);
     let k = |name: &str| 10_f64.powf(log_k[names.iter().position(|own| *own == name).unwrap()]);
     let amount = |name: &str| {
         let given = totals.iter().find(|(own, _)| *own == name).map(|(_, total)| *total);
@@ -209,12 +209,13 @@ fn a_budget_holds_what_moving_a_constant_does() {
     let water = WATERS[1];
     let first = state(water);
     let budget = first.get("fCO2 [uatm]").unwrap();
+    let influence = first.influence(&Asked::parse("fCO2 [uatm]").unwrap()).unwrap();
     let names: Vec<&str> = budget.parts().iter().map(|part| part.input.label()).collect();
     for name in ["K1", "K2", "CO2(g)", "total boron"] {
         assert!(names.contains(&name), "{name} in {names:?}");
     }
     let step = 1e-5;
-    for name in ["K1", "KB", "CO2(g)"] {
+    for name in ["K1", "KB", "KS", "KF", "CO2(g)"] {
         let own = book();
         let constant = own.reaction(name).unwrap();
         let with = |shift: f64| {
@@ -224,8 +225,8 @@ fn a_budget_holds_what_moving_a_constant_does() {
             get(&solved(&sea(water).with_ledger(&own.replace(name, &moved).unwrap())), "fCO2 [uatm]")
         };
         let difference = (with(step) - with(-step)) / (2.0 * step);
-        let part = budget.parts().iter().find(|part| part.input.label() == name).unwrap();
-        assert_relative_eq!(part.sensitivity, difference, max_relative = 1e-5);
+        let position = own.names().position(|known| known == name).unwrap();
+        assert_relative_eq!(influence.constants[&position], difference, max_relative = 1e-5);
     }
 }
 
@@ -254,6 +255,109 @@ fn a_budget_holds_what_warmth_does() {
     }
 }
 
+/// Of what salinity moves: the conservative ions, every constant, the scales of pH, the density.
+#[test]
+fn a_budget_holds_what_salinity_does() {
+    let pairs = [
+        [("DIC", "2010 umol/kg"), ("alkalinity", "2250 umol/kg")],
+        [("DIC", "2010 umol/kg"), ("pH", "8.0")],
+        [("alkalinity", "2250 umol/kg"), ("fCO2", "500 uatm")],
+    ];
+    for pair in pairs {
+        let at = |salinity: &str| {
+            let common = [("salinity", salinity), ("temperature", "12 degC"), ("pressure", "800 dbar")];
+            state(&[&common[..], &pair[..]].concat())
+        };
+        let (here, saltier, fresher) = (at("33 +/- 0.02"), at("33.01"), at("32.99"));
+        for asked in
+            ["salinity", "pH(free)", "pH(total)", "fCO2 [uatm]", "Omega(aragonite)", "total(B)", "density"]
+        {
+            let difference = (get(&saltier, asked) - get(&fresher, asked)) / 0.02;
+            let answer = here.get(asked).unwrap();
+            let part = answer.parts().iter().find(|part| part.input.label() == "salinity");
+            let sensitivity = part.map_or(0.0, |part| part.sensitivity);
+            assert_relative_eq!(sensitivity, difference, max_relative = 1e-4, epsilon = 1e-9);
+        }
+    }
+}
+
+/// Of buffer factors, by what was measured: one more derivative than anywhere else.
+#[test]
+fn a_budget_of_a_buffer_factor_holds_what_its_inputs_do() {
+    let at = |dic: &str, alkalinity: &str| {
+        state(&[("salinity", "35"), ("temperature", "20 degC"), ("DIC", dic), ("alkalinity", alkalinity)])
+    };
+    let here = at("2010 +/- 2 umol/kg", "2250 +/- 3 umol/kg");
+    let moved = [
+        ("DIC", at("2010.5 umol/kg", "2250 umol/kg"), at("2009.5 umol/kg", "2250 umol/kg")),
+        ("alkalinity", at("2010 umol/kg", "2250.5 umol/kg"), at("2010 umol/kg", "2249.5 umol/kg")),
+    ];
+    for asked in ["Revelle", "gamma_DIC", "gamma_TA", "beta_DIC", "beta_TA", "omega_DIC", "omega_TA"] {
+        let answer = here.get(asked).unwrap();
+        assert!(answer.sigma().is_some_and(|sigma| sigma > 0.0), "{asked}: {answer}");
+        for (key, more, less) in &moved {
+            let difference = get(more, asked) - get(less, asked);
+            let part = answer.parts().iter().find(|part| part.input.label() == *key).unwrap();
+            // The measured value is in umol/kg.
+            assert_relative_eq!(part.sensitivity, difference, max_relative = 1e-4);
+        }
+    }
+}
+
+/// The fugacity in place is larger than that of the surface by the partial molal volume: exp(32.3 P/(R T)).
+#[test]
+fn a_chosen_volume_brings_fugacities_to_the_depth() {
+    let surface = state(WATERS[2]);
+    let chosen = book().choose("CO2(g)", "Weiss pressure 1974").unwrap();
+    let deep = solved(&sea(WATERS[2]).with_ledger(&chosen));
+    let factor = (32.3 * 400.0 / (83.144_72 * 274.65_f64)).exp();
+    assert_relative_eq!(get(&deep, "fCO2") / get(&surface, "fCO2"), factor, max_relative = 1e-5);
+    assert_relative_eq!(get(&deep, "pH"), get(&surface, "pH"), max_relative = 1e-12);
+    assert!(deep.choices().unwrap().contains("CO2(g) Weiss pressure 1974"));
+    assert!(deep.warnings().join("\n").contains("by the partial molal volume of CO2"));
+}
+
+#[test]
+fn the_substrate_inhibitor_ratio_is_that_of_the_total_scale() {
+    let state = state(WATERS[2]);
+    let ratio = get(&state, "m(HCO3^-)") * 10_f64.powf(get(&state, "pH(total)"));
+    assert_relative_eq!(get(&state, "substrate_inhibitor_ratio"), ratio, max_relative = 1e-12);
+}
+
+#[test]
+fn a_fugacity_measured_in_the_laboratory_is_brought_to_the_place() {
+    let deep = state(WATERS[2]);
+    let lab = deep
+        .sample(&[])
+        .unwrap()
+        .treated(Treatment::WarmTo(Temperature::REFERENCE))
+        .unwrap()
+        .treated(Treatment::CompressTo(Pressure::ATMOSPHERE))
+        .unwrap();
+    let lab = solved(&lab);
+    let (ph, pco2) = (format!("{}", get(&lab, "pH")), format!("{} uatm", get(&lab, "pCO2 [uatm]")));
+    let with = |given: &[(&'static str, &'static str)], pairs: &[(&str, &str)]| {
+        let kept: Vec<(&str, &str)> =
+            WATERS[2].iter().copied().filter(|(key, _)| !given.iter().any(|(own, _)| own == key)).collect();
+        state(&[&kept[..], pairs].concat())
+    };
+    let fugacity = [("pCO2", pco2.as_str()), ("fCO2_temperature", "25 degC")];
+    let one = with(&[("alkalinity", "")], &fugacity);
+    assert_relative_eq!(get(&one, "alkalinity"), get(&deep, "alkalinity"), max_relative = 1e-9);
+    let both = [&fugacity[..], &[("pH", ph.as_str()), ("pH_temperature", "25 degC")]].concat();
+    let both = with(&[("alkalinity", ""), ("DIC", "")], &both);
+    assert_relative_eq!(get(&both, "DIC"), get(&deep, "DIC"), max_relative = 1e-9);
+    assert_relative_eq!(get(&both, "pH"), get(&deep, "pH"), max_relative = 1e-9);
+}
+
+#[test]
+fn constants_of_two_publications_are_said_not_to_belong_together() {
+    let mixed = book().choose("K2", "Martin-Mayor 2025").unwrap();
+    let warnings = solved(&sea(WATERS[1]).with_ledger(&mixed)).warnings().join("\n");
+    assert!(warnings.contains("`K1` is Lueker 2000 and `K2` is Martin-Mayor 2025"), "{warnings}");
+    assert!(!state(WATERS[1]).warnings().join("\n").contains("belong together"));
+}
+
 #[test]
 fn scales_of_ph_differ_by_what_they_count() {
     let state = state(WATERS[1]);
@@ -275,8 +379,9 @@ fn the_fresh_end_is_the_freshwater_ledger() {
     let marine = book().choose("K1 K2", "Millero 2006").unwrap().choose("KF", "Dickson Riley 1979").unwrap();
     let fresh = shipped::ledger("freshwater", None).unwrap();
     let t = Temperature::REFERENCE;
-    let sea = Sea { salinity: 0.0, pressure: Pressure::ATMOSPHERE, ph_scale: PhScale::Total };
-    let log_k = log_k_free(&marine, sea, t);
+    let (pressure, ph_scale) = (Pressure::ATMOSPHERE, PhScale::Total);
+    let sea = Sea { salinity: 0.0, stated_salinity: None, pressure, ph_scale };
+    let log_k = log_k_free(&marine, &sea, t);
     for ((name, reaction), value) in marine.reactions().zip(log_k) {
         let other = fresh.derive(&reaction.equation().to_string()).unwrap();
         let other = other.log_k_at(t).unwrap().value();
@@ -437,8 +542,9 @@ fn what_is_doubtful_is_said() {
     let warnings = state(WATERS[0]).warnings().join("\n");
     assert!(
         warnings.contains(
-            "`K1` holds for salinity 19 to 43 and 2 to 35 degC, and was used at salinity 8 and 14 degC"
-        ) && warnings.contains("`.choose(\"K1\", "),
+            "`K1 K2` hold for salinity 19 to 43 and 2 to 35 degC, and were used at salinity 8 and 14 degC"
+        ) && warnings.contains("`.choose(\"K1 K2\", \"Millero 2006\")`")
+            && !warnings.contains("`K1` holds"),
         "{warnings}"
     );
     assert!(state(WATERS[2]).warnings().join("\n").contains("no pressure term"));

@@ -13,7 +13,7 @@ use lysocline_engine::chem::reaction::Constant;
 use lysocline_engine::equilibrium::{Asked, State, equilibrate};
 use lysocline_engine::ledger::{ActivityChoice, Ledger};
 use lysocline_engine::named::{Named, Value};
-use lysocline_engine::quantity::Quantity;
+use lysocline_engine::quantity::{Input, Quantity};
 use lysocline_engine::script::sandbox::Sandbox;
 use lysocline_engine::script::{Dynamic, Options, ScriptEngine, Session};
 use lysocline_engine::solve::sensitivity::{Found, Given, Sensitivities, own_supplies};
@@ -278,7 +278,12 @@ fn slopes(state: &State, observable: &str) -> BTreeMap<String, f64> {
 }
 
 fn slopes_of(answer: Quantity) -> BTreeMap<String, f64> {
-    answer.parts().iter().map(|part| (part.input.label().to_string(), part.sensitivity)).collect()
+    answer.parts().iter().map(|part| (identity(&part.input), part.sensitivity)).collect()
+}
+
+/// A constant and a measured value may have the same label, `NH4^+`; a constant has a name of its own as well.
+fn identity(input: &Input) -> String {
+    input.name().unwrap_or_else(|| input.label()).to_string()
 }
 
 /// What the one input behind a shipped constant is called.
@@ -286,7 +291,7 @@ fn input_of(ledger: &Ledger, name: &str) -> String {
     let parts = ledger.reaction(name).unwrap().constant().unwrap().history.parts();
     let [part] = parts.as_slice() else { panic!("{name} has {} inputs", parts.len()) };
     assert_eq!(part.sensitivity, 1.0, "{name}");
-    part.input.label().to_string()
+    identity(&part.input)
 }
 
 fn lake() -> Inputs {

@@ -29,6 +29,14 @@ pub struct Script {
     pub seal: Result<Option<Seal>, SealError>,
 }
 
+impl Script {
+    /// The words it was sealed with.
+    pub fn sealed_arguments(&self) -> Vec<OsString> {
+        let seal = self.seal.as_ref().ok().and_then(Option::as_ref);
+        seal.map(|seal| seal.arguments.iter().map(OsString::from).collect()).unwrap_or_default()
+    }
+}
+
 /// What surrounds a run.
 pub struct Job<'a> {
     pub file: &'a Path,

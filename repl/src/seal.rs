@@ -37,6 +37,8 @@ pub struct Seal {
     pub program: String,
     /// Digest of the script above the block.
     pub script: String,
+    /// The words it ran with; [`Seal`]s are verified with the same.
+    pub arguments: Vec<String>,
     /// Files the script read, as named from its folder, each with its digest.
     pub files: Vec<(String, String)>,
     /// What random draws started from.
@@ -135,6 +137,7 @@ fn read(block: &str) -> Result<Seal, SealError> {
         program: program.to_owned(),
         script: text_of(&table, "script")?,
         files: pairs(&table)?,
+        arguments: list(&table, "arguments").iter().filter_map(Value::as_str).map(str::to_owned).collect(),
         seeds: list(&table, "seeds").iter().filter_map(Value::as_integer).collect(),
         values: list(&table, "values").iter().map(record).collect::<Result<_, _>>()?,
         ledgers: ledgers.collect::<Result<_, _>>()?,
@@ -201,6 +204,10 @@ impl Seal {
     pub fn text(&self) -> String {
         let mut text = format!("{BEGIN}{}{CLOSE}\n", self.program);
         let mut head = format!("format = {FORMAT}\nscript = {}\n", quoted(&self.script));
+        if !self.arguments.is_empty() {
+            let words: Vec<String> = self.arguments.iter().map(|word| quoted(word)).collect();
+            let _ = writeln!(head, "arguments = [{}]", words.join(", "));
+        }
         if !self.seeds.is_empty() {
             let _ = writeln!(head, "seeds = {:?}", self.seeds);
         }
@@ -305,13 +312,21 @@ fn inline(value: &Value) -> String {
 }
 
 /// Whether a value still is what was sealed: within 1e-9 of it, or a thousandth of its standard uncertainty, whichever is
-/// more. Texts have to be the same.
+/// more, and its uncertainty within a thousandth. Texts have to be the same.
 #[must_use]
 pub fn agrees(sealed: &Recorded, now: &Recorded) -> bool {
     match (sealed, now) {
-        (Recorded::Number { value: a, sigma, unit }, Recorded::Number { value: b, unit: now_in, .. }) => {
+        (
+            Recorded::Number { value: a, sigma, unit },
+            Recorded::Number { value: b, sigma: now_sigma, unit: now_in },
+        ) => {
             let allowed = (1e-9 * a.abs()).max(sigma.unwrap_or(0.0) / 1000.0);
-            unit == now_in && ((a - b).abs() <= allowed || a == b || (a.is_nan() && b.is_nan()))
+            let same_value = (a - b).abs() <= allowed || a == b || (a.is_nan() && b.is_nan());
+            let same_sigma = match (sigma, now_sigma) {
+                (Some(then), Some(now)) => (then - now).abs() <= 1e-3 * then.abs().max(now.abs()),
+                (then, now) => then == now,
+            };
+            unit == now_in && same_value && same_sigma
         }
         (a, b) => a == b,
     }
@@ -329,6 +344,7 @@ mod tests {
         Seal {
             program: "0.1.0".into(),
             script: "abc".into(),
+            arguments: vec!["file=a \"b\".csv".into(), "-x".into()],
             files: vec![("a \"b\".csv".into(), "12".into())],
             seeds: vec![7],
             values: vec![
@@ -351,7 +367,7 @@ mod tests {
             (found, &read.program, &read.script, &read.files, &read.seeds),
             (script, &seal.program, &seal.script, &seal.files, &seal.seeds)
         );
-        assert_eq!(read.values, seal.values);
+        assert_eq!((&read.arguments, &read.values), (&seal.arguments, &seal.values));
         assert_eq!(read.ledgers[0].digest(), seal.ledgers[0].digest());
     }
 
@@ -375,7 +391,9 @@ mod tests {
         let number = |value, sigma| Recorded::Number { value, sigma, unit: String::new() };
         assert!(agrees(&number(8.0, None), &number(8.0 + 4e-9, None)));
         assert!(!agrees(&number(8.0, None), &number(8.0 + 4e-8, None)));
-        assert!(agrees(&number(8.0, Some(0.02)), &number(8.000_019, None)));
+        assert!(agrees(&number(8.0, Some(0.02)), &number(8.000_019, Some(0.020_01))));
+        assert!(!agrees(&number(8.0, Some(0.02)), &number(8.0, Some(0.021))));
+        assert!(!agrees(&number(8.0, Some(0.02)), &number(8.0, None)));
         assert!(!agrees(&number(0.0, None), &number(1e-12, None)));
         assert!(!agrees(&number(8.0, None), &Recorded::Text("8".into())));
     }

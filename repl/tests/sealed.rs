@@ -152,6 +152,68 @@ fn what_cannot_be_sealed_stays_as_it_was() {
 }
 
 #[test]
+fn a_file_is_sealed_with_its_arguments() {
+    let script = "let waters = read_samples(args[\"file\"]);\nrecord(\"pH\", waters[0].equilibrate().pH);\n";
+    let test = Test::new().file("a.rhai", script).file("spring.csv", DATA);
+    assert_eq!(said(&test, &["seal", "a.rhai", "file=spring.csv"]).0, 0);
+    let (code, results, messages) = said(&test, &["verify", "a.rhai"]);
+    assert_eq!((code, results.as_str()), (0, "a.rhai: 1 value as sealed\n"), "{messages}");
+    assert_eq!(said(&test, &["run", "--sealed", "a.rhai"]).0, 0);
+}
+
+#[test]
+fn a_changed_uncertainty_or_source_is_named() {
+    let test = spring();
+    assert_eq!(said(&test, &["seal", "spring.rhai"]).0, 0);
+    let sealed = text(&test, "spring.rhai");
+    let start = sealed.find("name = \"calcite\"").expect("the constant");
+    let with = |key: &str, new: &str| {
+        let at = start + sealed[start..].find(&format!("{key} = ")).expect("the key") + key.len() + 3;
+        let end =
+            at + sealed[at..].find(" }").expect("the row's end").min(sealed[at..].find(", ").expect("a key"));
+        resealed(&format!("{}{new}{}", &sealed[..at], &sealed[end..]))
+    };
+    write(&test, "spring.rhai", &with("sigma", "0.05"));
+    let (code, results, messages) = said(&test, &["verify", "spring.rhai"]);
+    assert!(code == 1 && results.contains("calcite (its uncertainty is"), "{results}{messages}");
+    // A source moves nothing, and is said.
+    write(
+        &test,
+        "spring.rhai",
+        &resealed(&sealed.replace("(1982) The solubilities", "(1983) The solubilities")),
+    );
+    let (code, results, messages) = said(&test, &["verify", "spring.rhai"]);
+    assert!(code == 0 && results.contains("(its source)"), "{results}{messages}");
+}
+
+/// A ledger of one's own that shares constants with a shipped one still joins the sealed one.
+#[test]
+fn a_ledger_beside_the_script_is_sealed_by_its_digest() {
+    let book = |log_k: &str| {
+        format!(
+            "name = \"my book\"\n[[from]]\nfile = \"plummer1982\"\n[[constant]]\nname = \"my mineral\"\n\
+             reaction = \"CaCO3(my mineral) <=> Ca^2+ + CO3^2-\"\nlog_k = {log_k}\nsource = \"notebook\"\n\
+             provenance = \"stated\"\n"
+        )
+    };
+    let script = "let own = ledger(\"freshwater\").merge(load_ledger(\"book.toml\"));\n\
+                  let spring = sample(#{ pH: 7.4, alkalinity: \"4.9 meq/L\", Ca: \"92 mg/L\" });\n\
+                  record(\"calcite\", spring.equilibrate().SI(\"calcite\"));\n\
+                  record(\"mine\", spring.equilibrate(own).SI(\"my mineral\"));\n";
+    let test = Test::new().file("a.rhai", script).file("book.toml", &book("-8.2"));
+    assert_eq!(said(&test, &["seal", "a.rhai"]).0, 0);
+    let (code, results, messages) = said(&test, &["verify", "a.rhai"]);
+    assert_eq!((code, results.as_str()), (0, "a.rhai: 2 values as sealed\n"), "{messages}");
+    write(&test, "book.toml", &book("-8.3"));
+    let (code, results, messages) = said(&test, &["verify", "a.rhai"]);
+    assert!(
+        code == 1 && results.contains("the file `book.toml` that it reads has changed"),
+        "{results}{messages}"
+    );
+    assert!(results.contains("1 of 2 values moved") && results.contains("the changed file"), "{results}");
+}
+
+#[test]
 fn a_label_is_recorded_once() {
     let test = Test::new().file("a.rhai", "record(\"x\", 1);\nrecord(\"x\", 2);\n");
     let (code, _, messages) = said(&test, &["run", "a.rhai"]);
@@ -278,7 +340,9 @@ fn a_full_disk_leaves_the_files() {
 
 #[test]
 fn check_finds_without_running() {
-    let script = "print(\"ran\");\nlet lake = sample(#{ ph: 8.1 });\nlet x = lak.pH;\nlet r = reaction(\"H2O <=> H^+\");\nfmtt(1, \".2f\");\n";
+    let script = "print(\"ran\");\nlet lake = sample(#{ ph: 8.1 });\nlet x = lak.pH;\nlet r = reaction(\"H2O <=> H^+\");\nfmtt(1, \".2f\");\n\
+                  let state = lake.equilibrate();\nprint(state.get(\"SI(calcit)\"));\nprint(state.get(\"Sl(calcite)\"));\n\
+                  let t = table(#{ \"SI (mean)\": [1] });\nprint(t.column(\"SI (mean)\"));\nprint(t.column(\"depth [fathom]\"));\n";
     let test = Test::new().file("a.rhai", script).file("good.rhai", SCRIPT).file("spring.csv", DATA);
     let (code, results, messages) = said(&test, &["check", "a.rhai"]);
     assert_eq!((code, results.as_str()), (1, ""));
@@ -290,9 +354,13 @@ fn check_finds_without_running() {
         "did you mean `lake`?",
         "a.rhai:4:",
         "there is no function `fmtt`",
+        "no shipped ledger knows a mineral or gas `calcit`",
+        "did you mean `calcite`?",
+        "no observable `Sl(calcite)`",
     ] {
         assert!(messages.contains(part), "{part}\n{messages}");
     }
+    assert!(!messages.contains("SI (mean)") && !messages.contains("fathom"), "{messages}");
     assert_eq!(said(&test, &["check", "good.rhai"]), (0, String::new(), String::new()));
 }
 

@@ -1,7 +1,7 @@
 //! Published equilibrium constants and the ledgers made of them, embedded as text.
 //!
 //! One TOML file a publication in `constants/`, the parameters of activity models in `activity/`, one list of entries a ledger
-//! in `ledgers/`; the engine reads them.
+//! in `ledgers/`; the engine reads them. Script modules that `import "stdlib/<name>"` finds lie in `modules/`.
 //! This crate holds data only: it parses nothing and computes nothing. The format and the known contradictions are
 //! described in its README.
 
@@ -9,11 +9,13 @@
 pub const CONSTANTS: &[(&str, &str)] = &[
     ("bates1943", include_str!("../constants/bates1943.toml")),
     ("benson1979", include_str!("../constants/benson1979.toml")),
+    ("bruggenwert1982", include_str!("../constants/bruggenwert1982.toml")),
     ("busenberg1984", include_str!("../constants/busenberg1984.toml")),
     ("busenberg1986", include_str!("../constants/busenberg1986.toml")),
     ("cox1989", include_str!("../constants/cox1989.toml")),
     ("dickson-riley1979", include_str!("../constants/dickson-riley1979.toml")),
     ("dickson1990", include_str!("../constants/dickson1990.toml")),
+    ("dzombak1990", include_str!("../constants/dzombak1990.toml")),
     ("felmy1990", include_str!("../constants/felmy1990.toml")),
     ("grenthe1992", include_str!("../constants/grenthe1992.toml")),
     ("lee2010", include_str!("../constants/lee2010.toml")),
@@ -44,6 +46,7 @@ pub const CONSTANTS: &[(&str, &str)] = &[
     ("wagman1982", include_str!("../constants/wagman1982.toml")),
     ("waters-total2014", include_str!("../constants/waters-total2014.toml")),
     ("waters2014", include_str!("../constants/waters2014.toml")),
+    ("weiss-pressure1974", include_str!("../constants/weiss-pressure1974.toml")),
     ("weiss1974", include_str!("../constants/weiss1974.toml")),
     ("yao-millero1995", include_str!("../constants/yao-millero1995.toml")),
 ];
@@ -60,20 +63,27 @@ pub const LEDGERS: &[(&str, &str)] = &[
     ("formation", include_str!("../ledgers/formation.toml")),
     ("freshwater", include_str!("../ledgers/freshwater.toml")),
     ("seawater", include_str!("../ledgers/seawater.toml")),
+    ("sorption", include_str!("../ledgers/sorption.toml")),
+];
+
+/// `(file name without extension, script text)` of every file in `modules/`, in alphabetical order.
+pub const MODULES: &[(&str, &str)] = &[
+    ("calcifiers", include_str!("../modules/calcifiers.rhai")),
+    ("water-works", include_str!("../modules/water-works.rhai")),
 ];
 
 #[cfg(test)]
 mod tests {
-    use super::{ACTIVITY, CONSTANTS, LEDGERS};
+    use super::{ACTIVITY, CONSTANTS, LEDGERS, MODULES};
     use std::path::Path;
 
-    /// Names of the TOML files in a folder of this crate, in alphabetical order.
-    fn toml_files(folder: &str) -> Vec<String> {
+    /// Names of the files of a kind in a folder of this crate, in alphabetical order.
+    fn files(folder: &str, kind: &str) -> Vec<String> {
         let path = Path::new(env!("CARGO_MANIFEST_DIR")).join(folder);
         let mut names: Vec<String> = std::fs::read_dir(&path)
             .expect("the folder is part of the crate")
             .map(|entry| entry.expect("a readable entry").path())
-            .filter(|path| path.extension().is_some_and(|extension| extension == "toml"))
+            .filter(|path| path.extension().is_some_and(|extension| extension == kind))
             .map(|path| path.file_stem().expect("a file name").to_string_lossy().into_owned())
             .collect();
         names.sort();
@@ -84,9 +94,10 @@ mod tests {
     fn every_file_is_embedded_in_alphabetical_order() {
         let listed =
             |files: &[(&str, &str)]| files.iter().map(|(name, _)| (*name).to_owned()).collect::<Vec<_>>();
-        assert_eq!(listed(CONSTANTS), toml_files("constants"));
-        assert_eq!(listed(ACTIVITY), toml_files("activity"));
-        assert_eq!(listed(LEDGERS), toml_files("ledgers"));
+        assert_eq!(listed(CONSTANTS), files("constants", "toml"));
+        assert_eq!(listed(ACTIVITY), files("activity", "toml"));
+        assert_eq!(listed(LEDGERS), files("ledgers", "toml"));
+        assert_eq!(listed(MODULES), files("modules", "rhai"));
     }
 
     #[test]

@@ -144,9 +144,9 @@ pub fn analyse(
     }
     present.extend(plan.components(ledger.formations()));
     let setting = sample.setting();
-    let bare = match measured.ph_temperature {
+    let bare = match measured.measured_at {
         None => System::new(ledger, &present, setting.temperature, setting.pressure)?,
-        // Where pH was measured elsewhere, it was in a laboratory at the surface.
+        // What was measured elsewhere was measured in a laboratory at the surface.
         Some(temperature) => {
             let surface = ledger.sea().map(|sea| Sea { pressure: Pressure::ATMOSPHERE, ..sea });
             let ledger = surface.map_or_else(|| Ok(ledger.clone()), |surface| ledger.in_sea(surface))?;
@@ -334,7 +334,7 @@ fn position(system: &System, component: usize) -> usize {
 
 /// Density and dissolved mass of the sample as its volumes were measured.
 pub(super) fn solution(measured: &Measured) -> Solution {
-    if let Some(sea) = measured.sea {
+    if let Some(sea) = &measured.sea {
         return marine::solution(measured, sea.salinity);
     }
     let water_density = water_density(measured);
@@ -407,7 +407,7 @@ fn conservative(ledger: &Ledger, given: &[Carried]) -> Result<Vec<Carried>, Equi
         let atoms = formations.components[component].count(analyte.element());
         let factor = rational::to_f64(analyte.atoms() / atoms);
         if given.iter().all(|own| own.component != component) && sea.salinity > 0.0 {
-            carried.push(Carried { component, moles: constituent.amount(sea.salinity), factor });
+            carried.push(Carried { component, moles: constituent.amount_in(&sea), factor });
         }
     }
     Ok(carried)
@@ -998,8 +998,7 @@ impl<'a> Analysis<'a> {
                 let slope = (Variable::LnActivity(self.proton), -1.0 / LN_10);
                 let computed = self.system.ph_shift() - converged.ln_a[self.proton] / LN_10;
                 let scale = self.system.ledger().sea().map_or(PhScale::Free, |sea| sea.ph_scale);
-                let by_kelvin = (Variable::Temperature, self.system.ph_shift_per_kelvin(scale));
-                (ph.clone(), 1.0, computed, vec![slope, by_kelvin])
+                (ph.clone(), 1.0, computed, vec![slope, (Variable::PhShift(scale), 1.0)])
             }
             "alkalinity" | "DIC" => {
                 let carbon = self.carbon;

@@ -1,13 +1,14 @@
 //! Names become indices: the species that can occur in a water, as rows of numbers at one temperature.
 
 use std::collections::BTreeSet;
+use std::sync::OnceLock;
 
 use crate::activity::Model;
 use crate::chem::{Element, PhScale, Rational, Species, rational};
 use crate::ledger::{Couple, Formation, Formations, Ledger, LedgerError, Sea};
 use crate::physics::constants::LN_10;
-use crate::seawater::constants::{Place, log_k_free};
-use crate::seawater::scales::Scales;
+use crate::seawater::constants::{Place, by_scales, log_k_free};
+use crate::seawater::scales::{ByScales, Scales};
 use crate::solve::{Problem, Reservoir, Row, Total};
 use crate::units::{Pressure, Temperature};
 use crate::water::analyte::oxidation_state;
@@ -33,6 +34,8 @@ pub struct System {
     model: Model,
     log_k: Vec<f64>,
     doubts: Vec<Option<Doubt>>,
+    /// Worked out when a budget asks for it.
+    by_scales: OnceLock<Vec<ByScales>>,
 }
 
 /// Why a reaction's log K is uncertain at this temperature.
@@ -81,6 +84,7 @@ impl System {
         let model = activity::model(ledger.activity(), &dissolved, temperature, pressure);
         let couples = vec![];
         let ledger = ledger.clone();
+        let by_scales = OnceLock::new();
         Ok(Self {
             ledger,
             temperature,
@@ -93,6 +97,7 @@ impl System {
             model,
             log_k,
             doubts,
+            by_scales,
         })
     }
 
@@ -112,7 +117,8 @@ impl System {
         let dissolved: Vec<&Species> =
             self.solutes.iter().map(|(index, _)| &formations.species[*index].species).collect();
         let model = activity::model(self.ledger.activity(), &dissolved, temperature, self.pressure);
-        let mut system = Self { temperature, doubts, model, ..self.clone() };
+        let by_scales = OnceLock::new();
+        let mut system = Self { temperature, doubts, model, by_scales, ..self.clone() };
         for (index, row) in system.solutes.iter_mut().chain(&mut system.phases).chain(&mut system.on_sites) {
             row.ln_k = ln_k(&formations.species[*index], &log_k);
         }
@@ -121,6 +127,14 @@ impl System {
         }
         system.log_k = log_k;
         system
+    }
+
+    /// The same in a sea of another salinity, at the same totals; `None` outside seawater.
+    #[must_use]
+    pub fn at_salinity(&self, salinity: f64) -> Option<Self> {
+        let sea = Sea { salinity, ..self.ledger.sea()? };
+        let ledger = self.ledger.in_sea(sea).ok()?;
+        Some(Self { ledger, ..self.clone() }.at(self.temperature))
     }
 
     /// The ledger.
@@ -178,24 +192,25 @@ impl System {
         self.scales().map_or(0.0, |(sea, scales)| scales.shift_from_free(sea.ph_scale))
     }
 
-    /// Change of pH on a scale less pH on the free scale, per kelvin; 0 outside seawater.
+    /// The same for a scale named; 0 outside seawater.
     #[must_use]
-    pub fn ph_shift_per_kelvin(&self, scale: PhScale) -> f64 {
-        const STEP: f64 = 0.01;
-        let Some(sea) = self.ledger.sea() else { return 0.0 };
-        let at = |kelvin: f64| {
-            let place = Place::of(sea, Temperature::from_kelvin(kelvin).unwrap_or(self.temperature));
-            Scales::at(&self.ledger, &place).shift_from_free(scale)
-        };
-        let kelvin = self.temperature.kelvin();
-        (at(kelvin + STEP) - at(kelvin - STEP)) / (2.0 * STEP)
+    pub fn ph_shift_on(&self, scale: PhScale) -> f64 {
+        self.scales().map_or(0.0, |(_, scales)| scales.shift_from_free(scale))
     }
 
     /// The sea of a marine system with its scales of pH.
     #[must_use]
     pub fn scales(&self) -> Option<(Sea, Scales)> {
         let sea = self.ledger.sea()?;
-        Some((sea, Scales::at(&self.ledger, &Place::of(sea, self.temperature))))
+        let scales = Scales::at(&self.ledger, &Place::of(&sea, self.temperature));
+        Some((sea, scales))
+    }
+
+    /// How log10 K of a reaction answers to what the scales of pH are made of; not at all outside seawater.
+    #[must_use]
+    pub fn by_scales(&self, reaction: usize) -> ByScales {
+        let Some(sea) = self.ledger.sea() else { return ByScales::default() };
+        self.by_scales.get_or_init(|| by_scales(&self.ledger, &sea, self.temperature))[reaction]
     }
 
     /// Position of the hydrogen ion, which is always present.
@@ -300,7 +315,7 @@ impl System {
 fn constants(ledger: &Ledger, temperature: Temperature) -> (Vec<f64>, Vec<Option<Doubt>>) {
     if let Some(sea) = ledger.sea() {
         // A state in seawater warns of its own of constants outside their range: see `seawater::constants`.
-        let log_k = log_k_free(ledger, sea, temperature);
+        let log_k = log_k_free(ledger, &sea, temperature);
         let certain = vec![None; log_k.len()];
         return (log_k, certain);
     }

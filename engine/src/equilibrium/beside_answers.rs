@@ -58,17 +58,23 @@ impl State {
             return Some(Answer::new(value * water, "mol", times_water(slopes)));
         }
         let species = self.member_named(name)?;
-        let (mut value, mut slopes) = (0.0, Slopes::new());
-        for host in &self.outcome().beside.hosts {
-            let (own, by) = self.sum_beside(host, |_, member| f64::from(u8::from(*member == species)));
-            value += own;
-            slopes.extend(by);
-        }
+        let (mut value, mut slopes) = self.held_beside(&species);
         if let Some(solid) = self.solid(&species) {
             value += solid.amount;
             slopes.push(solid.slope);
         }
         Some(amount(value * water, "mol", &species, times_water(slopes)))
+    }
+
+    /// What is held of a species beside the water, mol/kg(water).
+    pub(super) fn held_beside(&self, species: &Species) -> (f64, Slopes) {
+        let (mut value, mut slopes) = (0.0, Slopes::new());
+        for host in &self.outcome().beside.hosts {
+            let (own, by) = self.sum_beside(host, |_, member| f64::from(u8::from(member == species)));
+            value += own;
+            slopes.extend(by);
+        }
+        (value, slopes)
     }
 
     /// The mole fraction of a member in what holds it; `None` of what nothing holds.

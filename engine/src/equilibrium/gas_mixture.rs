@@ -423,6 +423,23 @@ mod tests {
     }
 
     #[test]
+    fn a_constant_of_concentrations_is_the_same_gas() {
+        // [NO2]^2/[N2O4] in mol/L of the same K.
+        let concentrations = K * 100.0 / (GAS_CONSTANT * 298.15);
+        let options = [
+            ("k", Value::Number(concentrations)),
+            ("basis", text("concentration")),
+            ("source", text("of a test")),
+        ];
+        let reaction = Reaction::read(DISSOCIATION, Some("own"), named(&options), None).unwrap();
+        let reaction = reaction.to_kp(named(&[])).unwrap();
+        let book = Ledger::empty("gases", None).with_reaction("own", &reaction).unwrap();
+        let n = ("n", gases(&[("N2O4(g)", "0.05 mol")]));
+        let state = solved(&[("volume", text("1 L")), n], &book);
+        close(get(&state, "p(NO2(g))").powi(2) / get(&state, "p(N2O4(g))"), K, 1e-9);
+    }
+
+    #[test]
     fn hydrogen_iodide_and_an_inert_gas() {
         // K has no unit: the extent does not depend on the volume nor on argon. Two equal parts: 2ξ/(n - ξ) = √K.
         let iodide = book("H2(g) + I2(g) <=> 2 HI(g)", &[("k", text("54"))]);

@@ -85,7 +85,7 @@ pub fn equilibrate(
 /// The ledger a sample is computed with, in the sea that the sample is of.
 fn ledger_of(sample: &Sample, given: Option<&Ledger>) -> Result<Ledger, EquilibriumError> {
     let sea = sample.sea();
-    if let (Analysis::Mixed(parts), None) = (sample.analysis(), sea)
+    if let (Analysis::Mixed(parts), None) = (sample.analysis(), &sea)
         && parts.iter().any(|(part, _)| part.sea().is_some())
     {
         let why = "seawater and other water hold by different constants: mix them with `estuary(river, sea, [0.5])`";
@@ -117,5 +117,5 @@ fn check_gases(sample: &Sample, ledger: &Ledger) -> Result<(), EquilibriumError>
 
 /// Whether the analysis holds at another temperature than the water's own, to which it is then brought.
 fn measured_elsewhere(sample: &Sample) -> bool {
-    sample.measured().is_some_and(|measured| measured.ph_temperature.is_some())
+    sample.measured().is_some_and(|measured| measured.measured_at.is_some())
 }

@@ -29,6 +29,8 @@ pub enum Observable {
     Revelle,
     /// A buffer factor.
     Buffer(Answering, Added),
+    /// [HCO3^-]/[H^+] of a seawater, on the total scale.
+    SubstrateInhibitor,
     /// Practical salinity of a seawater.
     Salinity,
     /// Temperature.
@@ -155,7 +157,7 @@ fn help(nearest: Option<&str>) -> String {
 }
 
 /// Name, form as it is written, and what it is, in order of listing.
-pub const NAMES: [(&str, &str, &str); 45] = [
+pub const NAMES: [(&str, &str, &str); 46] = [
     (
         "pH",
         "pH",
@@ -207,6 +209,11 @@ pub const NAMES: [(&str, &str, &str); 45] = [
     ("misfit", "misfit(DIC)", "a measured value not used, less the computed one"),
     ("salinity", "salinity", "practical salinity of a seawater"),
     ("Revelle", "Revelle", "Revelle factor, d ln [CO2] / d ln DIC at constant alkalinity"),
+    (
+        "substrate_inhibitor_ratio",
+        "substrate_inhibitor_ratio",
+        "[HCO3^-]/[H^+] of a seawater, H^+ on the total scale, mol/mol",
+    ),
     ("gamma_DIC", "gamma_DIC", "1/(d ln [CO2] / d DIC) at constant alkalinity, mol/kg"),
     ("gamma_TA", "gamma_TA", "1/(d ln [CO2] / d alkalinity) at constant DIC, mol/kg"),
     ("beta_DIC", "beta_DIC", "1/(d ln [H^+] / d DIC) at constant alkalinity, mol/kg"),
@@ -294,6 +301,7 @@ fn plain(name: &str) -> Observable {
     match name {
         "salinity" => Observable::Salinity,
         "Revelle" => Observable::Revelle,
+        "substrate_inhibitor_ratio" => Observable::SubstrateInhibitor,
         "pH" => Observable::Ph,
         "pe" => Observable::Pe,
         "Eh" => Observable::Eh,
@@ -349,6 +357,7 @@ impl fmt::Display for Observable {
             Self::PhOn(scale) => return write!(f, "pH({})", scale.word()),
             Self::Salinity => ("salinity", None),
             Self::Revelle => ("Revelle", None),
+            Self::SubstrateInhibitor => ("substrate_inhibitor_ratio", None),
             Self::Buffer(of, by) => {
                 let found = BUFFERS.iter().find(|(_, own_of, own_by)| (own_of, own_by) == (of, by));
                 (found.map_or("", |(name, ..)| name), None)

@@ -7,7 +7,7 @@ use super::acid_base::{ACIDITY_PH, ALKALINITY_PH, ZeroLevel};
 use super::activity::assumptions;
 use super::analysis::{Analysed, Misfit, Outcome, Solid, ln_saturation, saturation_slopes, scaled};
 use super::assemble::{Doubt, System};
-use super::buffer::{self, Answering, buffer_factor};
+use super::buffer::{self, Answering, buffer_factor, buffer_factor_slopes};
 use super::error::EquilibriumError;
 use super::gas_phase::vapour_pressure;
 use super::indices;
@@ -21,7 +21,7 @@ use crate::physics::electrode::volts_per_pe;
 use crate::physics::{gas_exchange, seawater, virial, water};
 use crate::present::{Cell, Column, Table};
 use crate::quantity::{Quantity, QuantityError};
-use crate::seawater::constants::outside_ranges;
+use crate::seawater::constants::{outside_ranges, unmatched_pair};
 use crate::seawater::scales::Scales;
 use crate::solve::Certificate;
 use crate::text::list;
@@ -403,15 +403,26 @@ impl State {
                 let shift = scales.shift_from_free(*scale) - scales.shift_from_free(sea.ph_scale);
                 plain(self.ph() + shift, "1", self.ph_slopes_on(*scale))
             }
-            Observable::Salinity => plain(self.scales(asked)?.0.salinity, "1", vec![]),
-            Observable::Revelle => {
-                let gamma = buffer_factor(self, Answering::CarbonDioxide, buffer::Added::Carbon);
-                let value = self.total("C", asked)?.value / gamma.map_err(nothing)?;
-                Ok(Answer { is_unstated: true, ..Answer::new(value, "1", vec![]) })
+            Observable::Salinity => {
+                plain(self.scales(asked)?.0.salinity, "1", vec![(Variable::Salinity, 1.0)])
             }
-            Observable::Buffer(of, by) => {
-                let value = buffer_factor(self, *of, *by).map_err(nothing)?;
-                Ok(Answer { is_unstated: true, ..Answer::new(value, "mol/kg(water)", vec![]) })
+            Observable::Revelle => {
+                let gamma = self.buffer(Answering::CarbonDioxide, buffer::Added::Carbon).map_err(nothing)?;
+                let dic = self.total("C", asked)?;
+                let value = dic.value / gamma.value;
+                let mut slopes = scaled(&dic.slopes, 1.0 / gamma.value);
+                slopes.extend(scaled(&gamma.slopes, -value / gamma.value));
+                Ok(Answer { is_unstated: gamma.is_unstated, ..Answer::new(value, "1", slopes) })
+            }
+            Observable::Buffer(of, by) => self.buffer(*of, *by).map_err(nothing),
+            Observable::SubstrateInhibitor => {
+                let (k, _) = self.solute("HCO3^-", asked)?;
+                let scales = self.scales(asked)?.1;
+                let shift = scales.shift_from_free(PhScale::Total) - self.system().ph_shift();
+                let ratio = k.map_or(0.0, |k| inner.molalities[k]) * ((self.ph() + shift) * LN_10).exp();
+                let mut slopes = scaled(&self.ph_slopes_on(PhScale::Total), LN_10);
+                slopes.extend(k.map(|k| (Variable::LnMolality(k), 1.0)));
+                Ok(Answer::exponential(ratio, "1", slopes))
             }
             Observable::Temperature => {
                 plain(self.temperature().celsius(), "degC", vec![(Variable::Temperature, 1.0)])
@@ -645,9 +656,16 @@ impl State {
     fn ph_slopes_on(&self, scale: PhScale) -> Slopes {
         let mut slopes = vec![(Variable::LnActivity(self.system().proton()), -1.0 / LN_10)];
         if scale != PhScale::Free {
-            slopes.push((Variable::Temperature, self.system().ph_shift_per_kelvin(scale)));
+            slopes.push((Variable::PhShift(scale), 1.0));
         }
         slopes
+    }
+
+    fn buffer(&self, of: Answering, by: buffer::Added) -> Result<Answer, EquilibriumError> {
+        let value = buffer_factor(self, of, by)?;
+        let slopes = buffer_factor_slopes(self, of, by)?;
+        let is_unstated = slopes.is_none();
+        Ok(Answer { is_unstated, ..Answer::new(value, "mol/kg(water)", slopes.unwrap_or_default()) })
     }
 
     /// The sea of a seawater with its scales of pH.
@@ -719,7 +737,11 @@ impl State {
 
     fn density_slopes(&self) -> Slopes {
         if self.basis() == KgOf::Solution {
-            return vec![(Variable::Temperature, self.0.solution.density * self.thermal_expansion())];
+            let density = self.0.solution.density;
+            return vec![
+                (Variable::Temperature, density * self.thermal_expansion()),
+                (Variable::Salinity, density * self.haline_contraction()),
+            ];
         }
         let (water, per_water) = self.density_terms();
         let slope = SALT_TERM * water / (1.0 + (1.0 - SALT_TERM) * per_water).powi(2);
@@ -746,6 +768,17 @@ impl State {
             return (density(t + STEP) / density(t - STEP)).ln() / (2.0 * STEP);
         }
         (water::density(t + STEP) / water::density(t - STEP)).ln() / (2.0 * STEP)
+    }
+
+    /// d ln ρ / dS of seawater.
+    fn haline_contraction(&self) -> f64 {
+        const STEP: f64 = 0.01;
+        let t = self.temperature().kelvin();
+        self.system().ledger().sea().map_or(0.0, |sea| {
+            let density = |s| seawater::density(t, s, sea.hydrostatic_bar());
+            // Forwards, since a salinity may be 0.
+            (density(sea.salinity + STEP) / density(sea.salinity)).ln() / STEP
+        })
     }
 
     /// A number in another unit; amounts go between moles and grams and between kilograms and litres.
@@ -1041,8 +1074,11 @@ impl State {
             (a.0.species.is_gas(), b.1).partial_cmp(&(b.0.species.is_gas(), a.1)).expect("no NaN")
         });
         let amount = |formed: &Formation| {
-            let found = self.solid(&formed.species);
-            found.map_or_else(Cell::missing, |solid| self.cell(solid.amount, vec![solid.slope]))
+            let (held, mut slopes) = self.held_beside(&formed.species);
+            let solid = self.solid(&formed.species);
+            slopes.extend(solid.map(|solid| solid.slope));
+            let amount = held + solid.map_or(0.0, |solid| solid.amount);
+            if solid.is_none() && held == 0.0 { Cell::missing() } else { self.cell(amount, slopes) }
         };
         let slopes =
             |formed: &Formation| saturation_slopes(self.system(), &formed.species).unwrap_or_default();
@@ -1146,11 +1182,24 @@ impl State {
         let Some(sea) = self.system().ledger().sea() else { return vec![] };
         let uses =
             |k: usize| self.system().solutes().any(|formed| formed.multiples.iter().any(|(j, _)| *j == k));
-        let mut warnings = outside_ranges(self.system().ledger(), sea, self.temperature(), uses);
-        if sea.hydrostatic_bar() > 0.0 && self.system().solute(&carbon_dioxide()).is_some() {
-            warnings.push(
-                "fugacities are those of the water at the surface: the constant of CO2(g) has no pressure term".into(),
-            );
+        let ledger = self.system().ledger();
+        let mut warnings = outside_ranges(ledger, &sea, self.temperature(), uses);
+        if self.system().solute(&carbon_dioxide()).is_none() {
+            return warnings;
+        }
+        warnings.extend(unmatched_pair(ledger));
+        if sea.hydrostatic_bar() > 0.0 {
+            let solubility = ledger.reaction("CO2(g)").ok().and_then(|reaction| reaction.constant().ok());
+            let has_volume = solubility.is_some_and(|constant| constant.volume.is_some());
+            warnings.push(if has_volume {
+                "fCO2 is that of the water at its pressure, by the partial molal volume of CO2; pCO2 and xCO2 are those of \
+                 air at one atmosphere with this fugacity"
+                    .into()
+            } else {
+                "fugacities are those of the water at the surface: the constant of CO2(g) has no pressure term; \
+                 `.choose(\"CO2(g)\", \"Weiss pressure 1974\")` has"
+                    .into()
+            });
         }
         warnings
     }

@@ -25,10 +25,11 @@ use super::analysis::Outcome;
 use super::assemble::System;
 use super::beside::Beside;
 use crate::activity::Composition;
-use crate::chem::{Reaction, Species, rational};
-use crate::ledger::{Couple, Formation};
+use crate::chem::{PhScale, Reaction, Species, rational};
+use crate::ledger::{Constituent, Couple, Formation};
 use crate::physics::constants::LN_10;
 use crate::quantity::{Input, Part, Quantity};
+use crate::seawater::scales::{ByScales, makers};
 use crate::solve::sensitivity::{Found, Given, Sensitivities};
 use crate::solve::{Mineral, Problem, Reservoir};
 use crate::units::{Temperature, Unit};
@@ -38,8 +39,10 @@ use crate::units::{Temperature, Unit};
 pub const SIGMA_PER_KELVIN: f64 = 0.01;
 /// How the names of inputs begin that stand for it.
 pub(super) const UNKNOWN_SLOPE: &str = "d log K / dT of";
-/// Kelvin; derivatives by temperature are central differences of constants, never of equilibria.
+/// Kelvin; derivatives by temperature and salinity are central differences of constants, never of equilibria.
 const TEMPERATURE_STEP: f64 = 0.01;
+/// Practical salinity, or this part of one that is lower.
+const SALINITY_STEP: f64 = 0.01;
 
 /// What an answer can depend on directly.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -68,8 +71,57 @@ pub enum Variable {
     FormationLnK(usize),
     /// ln K of a redox couple, by its position in the ledger's list of couples.
     CoupleLnK(usize),
+    /// What is added to pH on the free scale to have it on another.
+    PhShift(PhScale),
     /// Temperature, K.
     Temperature,
+    /// Practical salinity.
+    Salinity,
+}
+
+/// What constants are functions of, and may itself be uncertain.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Ambient {
+    Temperature,
+    Salinity,
+}
+
+/// A system a little above and a little below in one of these.
+struct Neighbours {
+    above: System,
+    below: System,
+    step: f64,
+}
+
+impl Ambient {
+    const ALL: [Self; 2] = [Self::Temperature, Self::Salinity];
+
+    /// What it was measured as; none where it was chosen.
+    fn stated(self, outcome: &Outcome) -> Option<Quantity> {
+        match self {
+            Self::Temperature => outcome.conditions.as_ref()?.temperature.clone(),
+            Self::Salinity => outcome.system.ledger().sea()?.stated_salinity,
+        }
+    }
+
+    fn neighbours(self, system: &System) -> Option<Neighbours> {
+        let warmed = |kelvin: f64| Some(system.at(Temperature::from_kelvin(kelvin).ok()?));
+        let (value, step, at): (f64, f64, &dyn Fn(f64) -> Option<System>) = match self {
+            Self::Temperature => (system.temperature().kelvin(), TEMPERATURE_STEP, &warmed),
+            Self::Salinity => {
+                let salinity = system.ledger().sea()?.salinity;
+                (salinity, SALINITY_STEP * salinity.min(1.0), &|salinity| system.at_salinity(salinity))
+            }
+        };
+        (step > 0.0).then(|| Some(Neighbours { above: at(value + step)?, below: at(value - step)?, step }))?
+    }
+}
+
+impl Neighbours {
+    /// Change per unit of something computed from a system.
+    fn per_unit(&self, of: impl Fn(&System) -> f64) -> f64 {
+        (of(&self.above) - of(&self.below)) / (2.0 * self.step)
+    }
 }
 
 /// Derivatives of an answer by what the last stage found.
@@ -123,6 +175,12 @@ impl Held {
         phase.or(self.couple.as_ref().map(|couple| &couple.reduction))
     }
 
+    /// Whether it is a pH.
+    fn is_ph(&self, system: &System) -> bool {
+        let row = &self.reservoir.row.stoichiometry;
+        self.formed(system).is_none() && matches!(row.as_slice(), [(k, _)] if *k == system.proton())
+    }
+
     /// Its ln K in a system.
     fn ln_k(&self, system: &System) -> f64 {
         let phase = self.phase.as_ref().and_then(|phase| system.phase(phase)).map(|(_, row)| row.ln_k);
@@ -156,7 +214,8 @@ pub struct Influence {
 pub struct Stage {
     sensitivities: Sensitivities,
     zero: Found,
-    by_temperature: Option<Given>,
+    /// By temperature and salinity, where they are uncertain.
+    by_ambient: Vec<(Ambient, Given)>,
     /// Uncertain parameters of the activity model, with the change of everything given per unit.
     by_parameters: Vec<(Quantity, Given)>,
 }
@@ -174,12 +233,13 @@ impl Stage {
         let supplies: Vec<Vec<f64>> = conditions.held.iter().map(|held| held.supply.clone()).collect();
         let sensitivities =
             Sensitivities::new(&problem, outcome.system.model(), &outcome.converged, &supplies)?;
-        let by_temperature = match conditions.temperature {
-            None => None,
-            Some(_) => Some(by_temperature(outcome, conditions, &problem)?),
-        };
+        let mut by_ambient = Vec::new();
+        for ambient in Ambient::ALL.into_iter().filter(|ambient| ambient.stated(outcome).is_some()) {
+            let neighbours = ambient.neighbours(&outcome.system)?;
+            by_ambient.push((ambient, given_per_unit(outcome, conditions, &problem, ambient, &neighbours)));
+        }
         let by_parameters = by_parameters(outcome, &problem);
-        Some(Self { sensitivities, zero: Found::zero(&problem), by_temperature, by_parameters })
+        Some(Self { sensitivities, zero: Found::zero(&problem), by_ambient, by_parameters })
     }
 }
 
@@ -204,24 +264,27 @@ impl Influence {
                 Variable::PhaseLnK(p) => {
                     let (formed, _) = outcome.system.phases().nth(p).expect("a phase of the system");
                     influence.add_constants(&outcome.system, formed, *slope);
-                    influence.add_constant_temperature(outcome, *slope, |system| {
+                    influence.add_constant_ambient(outcome, *slope, |system| {
                         system.phases().nth(p).map_or(0.0, |(_, row)| row.ln_k)
                     });
                 }
                 Variable::FormationLnK(i) => {
                     let formed = &outcome.system.ledger().formations().species[i];
                     influence.add_constants(&outcome.system, formed, *slope);
-                    influence
-                        .add_constant_temperature(outcome, *slope, |system| system.formation_ln_k(formed));
+                    influence.add_constant_ambient(outcome, *slope, |system| system.formation_ln_k(formed));
                 }
                 Variable::CoupleLnK(c) => {
                     let couples = outcome.system.ledger().formations().couples();
                     influence.add_constants(&outcome.system, &couples[c].reduction, *slope);
-                    influence.add_constant_temperature(outcome, *slope, |system| {
-                        system.couple_row(&couples[c]).ln_k
-                    });
+                    influence
+                        .add_constant_ambient(outcome, *slope, |system| system.couple_row(&couples[c]).ln_k);
                 }
-                Variable::Temperature => influence.add_temperature(outcome, *slope),
+                Variable::PhShift(scale) => {
+                    influence.add_shift(&outcome.system, scale, *slope);
+                    influence.add_constant_ambient(outcome, *slope, |system| system.ph_shift_on(scale));
+                }
+                Variable::Temperature => influence.add_ambient(outcome, Ambient::Temperature, *slope),
+                Variable::Salinity => influence.add_ambient(outcome, Ambient::Salinity, *slope),
             }
         }
         let none = vec![0.0; outcome.totals.len()];
@@ -253,6 +316,9 @@ impl Influence {
             if let Some((value, by_value)) = &held.value {
                 self.measured.push((value.clone(), slope * by_value));
             }
+            if let (true, Some(sea)) = (held.is_ph(system), system.ledger().sea()) {
+                self.add_shift(system, sea.ph_scale, slope * LN_10);
+            }
         }
         for (solid, slope) in conditions.minerals.iter().zip(&by.minerals) {
             if let Some((formed, _)) = system.phase(&solid.species) {
@@ -271,8 +337,8 @@ impl Influence {
             }
             self.measured.extend(by_sizes);
         }
-        if let Some(change) = &stage.by_temperature {
-            self.add_temperature(outcome, product(&by, change));
+        for (ambient, change) in &stage.by_ambient {
+            self.add_ambient(outcome, *ambient, product(&by, change));
         }
         for (parameter, change) in &stage.by_parameters {
             self.measured.push((parameter.clone(), product(&by, change)));
@@ -293,6 +359,7 @@ impl Influence {
         for (k, multiple) in &formed.multiples {
             let by_log_k = by_ln_k * LN_10 * rational::to_f64(*multiple);
             *self.constants.entry(*k).or_default() += by_log_k;
+            self.add_scales(system, system.by_scales(*k), by_log_k);
             // An enthalpy acts differently on stages of different temperature, so it is counted stage by stage.
             if let Some(influences) = influences(system, *k) {
                 self.measured.push((influences, by_log_k));
@@ -303,18 +370,46 @@ impl Influence {
         }
     }
 
-    fn add_temperature(&mut self, outcome: &Outcome, by_kelvin: f64) {
-        if let Some(temperature) = outcome.conditions.as_ref().and_then(|own| own.temperature.as_ref()) {
-            self.measured.push((temperature.clone(), by_kelvin));
+    /// Adds what a shift between scales of pH is made of.
+    fn add_shift(&mut self, system: &System, scale: PhScale, by_shift: f64) {
+        if let Some((_, scales)) = system.scales() {
+            self.add_scales(system, scales.by(scale), -by_shift);
         }
     }
 
-    /// Adds what an ln K contributes through an uncertain temperature.
-    fn add_constant_temperature(&mut self, outcome: &Outcome, by_ln_k: f64, ln_k: impl Fn(&System) -> f64) {
-        if outcome.conditions.as_ref().is_some_and(|own| own.temperature.is_some())
-            && let Some((above, below)) = neighbours(&outcome.system)
-        {
-            self.add_temperature(outcome, by_ln_k * (ln_k(&above) - ln_k(&below)) / (2.0 * TEMPERATURE_STEP));
+    /// Adds the constants of HSO4^- and HF and the totals of sulfate and fluoride, given the derivative by a log10 that they
+    /// act on.
+    fn add_scales(&mut self, system: &System, acts: ByScales, by_log: f64) {
+        if acts == ByScales::default() || by_log == 0.0 {
+            return;
+        }
+        let ledger = system.ledger();
+        let shares = [("total sulfate", acts.sulfate), ("total fluoride", acts.fluoride)];
+        for (maker, (total, share)) in makers(ledger).into_iter().zip(shares) {
+            if let (Some(k), true) = (maker, share != 0.0) {
+                *self.constants.entry(k).or_default() -= by_log * share;
+            }
+            let ratio = ledger.composition().find(|own| own.name == total).map(Constituent::factor);
+            if let Some(ratio) = ratio.filter(|ratio| share != 0.0 && ratio.sigma().is_some()) {
+                self.measured.push((ratio, by_log * share / LN_10));
+            }
+        }
+    }
+
+    fn add_ambient(&mut self, outcome: &Outcome, ambient: Ambient, by_unit: f64) {
+        if let Some(stated) = ambient.stated(outcome) {
+            self.measured.push((stated, by_unit));
+        }
+    }
+
+    /// Adds what a number computed from constants contributes through an uncertain temperature or salinity.
+    fn add_constant_ambient(&mut self, outcome: &Outcome, slope: f64, of: impl Fn(&System) -> f64) {
+        for ambient in Ambient::ALL {
+            if let (Some(stated), Some(neighbours)) =
+                (ambient.stated(outcome), ambient.neighbours(&outcome.system))
+            {
+                self.measured.push((stated, slope * neighbours.per_unit(&of)));
+            }
         }
     }
 
@@ -356,47 +451,52 @@ pub fn assumed_slope(name: &str, reaction: &Reaction, known: Temperature) -> Opt
     Input::named(&identity, &label, Some(SIGMA_PER_KELVIN)).ok()
 }
 
-/// The same system a little warmer and a little colder.
-fn neighbours(system: &System) -> Option<(System, System)> {
-    let at = |kelvin: f64| Some(system.at(Temperature::from_kelvin(kelvin).ok()?));
-    let kelvin = system.temperature().kelvin();
-    Some((at(kelvin + TEMPERATURE_STEP)?, at(kelvin - TEMPERATURE_STEP)?))
-}
-
-/// Change per kelvin of everything the solver was given, at given composition.
-fn by_temperature(outcome: &Outcome, conditions: &Conditions, problem: &Problem) -> Option<Given> {
-    let (above, below) = neighbours(&outcome.system)?;
-    let per_kelvin = |above: f64, below: f64| (above - below) / (2.0 * TEMPERATURE_STEP);
+/// Change of everything the solver was given, per unit of temperature or salinity, at given composition.
+fn given_per_unit(
+    outcome: &Outcome,
+    conditions: &Conditions,
+    problem: &Problem,
+    ambient: Ambient,
+    neighbours: &Neighbours,
+) -> Given {
     let solutes = SolutesOf::new(outcome, problem);
-    let water = |system: &System| system.model().ln_water_activity(solutes.composition());
+    let (above, below) = (&neighbours.above, &neighbours.below);
+    let per_unit = |above: f64, below: f64| (above - below) / (2.0 * neighbours.step);
     let ln_gammas = |system: &System| system.model().ln_gammas(solutes.composition());
     let mut given = Given::zero(problem);
-    given.ln_water_activity = per_kelvin(water(&above), water(&below));
+    given.ln_water_activity =
+        neighbours.per_unit(|system| system.model().ln_water_activity(solutes.composition()));
     let rows = above.problem(&outcome.totals).species.into_iter().zip(below.problem(&outcome.totals).species);
-    for (i, (warm, cold)) in rows.enumerate() {
-        given.ln_k[i] = per_kelvin(warm.ln_k, cold.ln_k);
+    for (i, (above, below)) in rows.enumerate() {
+        given.ln_k[i] = per_unit(above.ln_k, below.ln_k);
     }
-    let changes = ln_gammas(&above).into_iter().zip(ln_gammas(&below));
-    given.ln_gamma = changes.map(|(above, below)| per_kelvin(above, below)).collect();
-    let ln_k = |species: &Species| {
-        let ln_k = |system: &System| system.formed_row(species).map_or(0.0, |row| row.ln_k);
-        per_kelvin(ln_k(&above), ln_k(&below))
-    };
+    let changes = ln_gammas(above).into_iter().zip(ln_gammas(below));
+    given.ln_gamma = changes.map(|(above, below)| per_unit(above, below)).collect();
     for (value, held) in given.reservoirs.iter_mut().zip(&conditions.held) {
-        // What is held and is no reaction is a pH, in seawater on a scale that changes with temperature, or a potential.
-        let of_scale = held.per_kelvin + per_kelvin(above.ph_shift(), below.ph_shift()) * LN_10;
-        *value = match held.formed(&outcome.system) {
-            Some(_) => -per_kelvin(held.ln_k(&above), held.ln_k(&below)),
-            None => of_scale,
+        // A pH is held on a scale that changes with both, a potential changes with temperature.
+        *value = if held.formed(&outcome.system).is_some() {
+            -neighbours.per_unit(|system| held.ln_k(system))
+        } else if held.is_ph(&outcome.system) {
+            neighbours.per_unit(System::ph_shift) * LN_10
+        } else if ambient == Ambient::Temperature {
+            held.per_kelvin
+        } else {
+            0.0
         };
     }
     for (value, solid) in given.minerals.iter_mut().zip(&conditions.minerals) {
-        *value = -ln_k(&solid.species);
+        let ln_k = |system: &System| system.phase(&solid.species).map_or(0.0, |(_, row)| row.ln_k);
+        *value = -neighbours.per_unit(ln_k);
     }
-    for host in &conditions.beside.hosts {
-        host.add_temperature(&mut given, outcome.system.temperature(), &ln_k);
+    if ambient == Ambient::Temperature {
+        let ln_k = |species: &Species| {
+            neighbours.per_unit(|system| system.formed_row(species).map_or(0.0, |row| row.ln_k))
+        };
+        for host in &conditions.beside.hosts {
+            host.add_temperature(&mut given, outcome.system.temperature(), &ln_k);
+        }
     }
-    Some(given)
+    given
 }
 
 /// Change of everything the solver was given, per unit of each uncertain parameter of the activity model.

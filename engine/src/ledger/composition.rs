@@ -31,10 +31,12 @@ pub struct Constituent {
 }
 
 /// The water a marine ledger is evaluated in.
-#[derive(Debug, Clone, Copy, PartialEq)]
+#[derive(Debug, Clone)]
 pub struct Sea {
     /// Practical salinity.
     pub salinity: f64,
+    /// What the salinity was stated as, where that came with an uncertainty.
+    pub stated_salinity: Option<Quantity>,
     /// Pressure, absolute.
     pub pressure: Pressure,
     /// The scale on which its pH is given and shown.
@@ -92,6 +94,21 @@ impl Constituent {
     #[must_use]
     pub fn relative_sigma(&self) -> Option<f64> {
         self.factor.input.sigma()
+    }
+
+    /// The ratio over its published value: 1, with what was published of its uncertainty.
+    #[must_use]
+    pub fn factor(&self) -> Quantity {
+        Quantity::from_parts(1.0, Unit::one(), vec![self.factor.clone()])
+    }
+
+    /// mol/kg(solution) in a sea, with the uncertainties of the ratio and of the salinity.
+    #[must_use]
+    pub fn amount_in(&self, sea: &Sea) -> Quantity {
+        let amount = self.amount(sea.salinity);
+        let salinity = sea.stated_salinity.iter().flat_map(Quantity::parts);
+        let parts = amount.parts().iter().cloned().chain(salinity.map(|part| part.scaled(self.per_salinity)));
+        Quantity::from_parts(amount.value(), amount.unit().clone(), parts.collect())
     }
 
     /// mol/kg(solution) at a practical salinity, with the uncertainty of the ratio.

@@ -253,8 +253,9 @@ impl Ledger {
     ///
     /// [`LedgerError::Clash`] if names clash and `prefer_other` is `None`.
     pub fn merge(&self, other: &Self, prefer_other: Option<bool>) -> Result<Self, LedgerError> {
-        let clash =
-            |(name, reaction): &(&str, &Reaction)| self.reaction(name).is_ok_and(|own| own != *reaction);
+        let clash = |(name, reaction): &(&str, &Reaction)| {
+            self.reaction(name).is_ok_and(|own| !is_same(own, reaction))
+        };
         let both = other.reactions().chain(other.formation_data());
         let clashes: Vec<String> = both.filter(clash).map(|(name, _)| name.to_string()).collect();
         if !clashes.is_empty() && prefer_other.is_none() {
@@ -318,7 +319,7 @@ impl Ledger {
     /// The sea that its constants are evaluated in.
     #[must_use]
     pub fn sea(&self) -> Option<Sea> {
-        self.0.sea
+        self.0.sea.clone()
     }
 
     /// What goes with salinity, in order of name.
@@ -618,4 +619,16 @@ impl std::fmt::Debug for Ledger {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         write!(f, "Ledger {} of {} reactions", self.0.name, self.0.reactions.len())
     }
+}
+/// Whether two reactions have the same constant: equation, function and uncertainty. Words about where it comes from may
+/// differ, as they do where a ledger was written to a file and read again.
+fn is_same(a: &Reaction, b: &Reaction) -> bool {
+    let log_k =
+        |reaction: &Reaction| reaction.constant().ok().map(|constant| format!("{:?}", constant.log_k));
+    let sigma = |reaction: &Reaction| reaction.log_k().ok().and_then(|log_k| log_k.sigma());
+    let same_sigma = match (sigma(a), sigma(b)) {
+        (Some(a), Some(b)) => (a - b).abs() <= 1e-9 * a.abs().max(b.abs()),
+        (a, b) => a.is_none() == b.is_none(),
+    };
+    a == b || (a.equation() == b.equation() && log_k(a) == log_k(b) && same_sigma)
 }

@@ -336,7 +336,7 @@ pub(super) fn by(file_key: &str) -> String {
     };
     // `refit` and the like say what of an author is meant.
     let word = |name: &str| match name {
-        "refit" | "seawater" | "total" => name.to_string(),
+        "refit" | "seawater" | "total" | "pressure" => name.to_string(),
         author => capital(author),
     };
     let is_author = !author.is_empty() && author.chars().all(|c| c.is_alphabetic() || c == '-');

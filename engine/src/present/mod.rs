@@ -11,6 +11,8 @@ pub mod notation;
 pub mod number;
 pub mod plot;
 mod plot_axis;
+#[cfg(feature = "png")]
+pub mod plot_png;
 pub mod plot_svg;
 pub mod statistics;
 pub mod table;

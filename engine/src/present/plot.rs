@@ -170,6 +170,21 @@ impl Plot {
         })
     }
 
+    /// Whether one of its curves is called so.
+    #[must_use]
+    pub fn shows(&self, curve: &str) -> bool {
+        self.panels.iter().any(|panel| panel.shows(curve))
+    }
+
+    /// Single points named together, in the panel of a curve; without points or such a curve the plot stays as it is.
+    pub fn mark(&mut self, curve: &str, name: &str, points: impl IntoIterator<Item = (f64, f64)>) {
+        let points: Vec<Point> = points.into_iter().map(|(x, y)| Point { x, y, sigma: None }).collect();
+        let panel = self.panels.iter_mut().find(|panel| panel.shows(curve));
+        if let (Some(Panel { marks: Marks::Curves(curves), .. }), false) = (panel, points.is_empty()) {
+            curves.push(Curve { name: name.to_owned(), is_formula: false, points, is_line: false });
+        }
+    }
+
     /// Whether any curve has an uncertainty to draw.
     #[must_use]
     pub fn has_bands(&self) -> bool {
@@ -206,6 +221,12 @@ impl Plot {
 
 fn shown(value: f64) -> String {
     super::number::shown(value)
+}
+
+impl Panel {
+    fn shows(&self, curve: &str) -> bool {
+        matches!(&self.marks, Marks::Curves(curves) if curves.iter().any(|own| own.name == curve))
+    }
 }
 
 impl Curve {

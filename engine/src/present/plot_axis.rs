@@ -1,7 +1,5 @@
 //! Axes of plots: how a number becomes a place, and which numbers are written beside it.
 
-use super::number;
-
 /// How numbers are spread along an axis.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub enum Scale {
@@ -142,11 +140,21 @@ fn steps(from: f64, to: f64, n: usize) -> Vec<Tick> {
         .map(|value| {
             let text = match decimals {
                 0..=6 if value.abs() < 1e6 => format!("{:.decimals$}", value + 0.0),
-                _ => number::shown(value),
+                _ => in_powers(value, step),
             };
             Tick { value, text: minus(&text) }
         })
         .collect()
+}
+
+/// `2.05e-5`, with as many digits as tell it from its neighbours.
+fn in_powers(value: f64, step: f64) -> String {
+    let exponent = |number: f64| (number.abs().log10() + 1e-9).floor();
+    if value.abs() < step / 2.0 {
+        return "0".to_owned();
+    }
+    let digits = (exponent(value) - exponent(step)).max(0.0) as usize;
+    format!("{value:.digits$e}")
 }
 
 /// Powers of ten with text, and the numbers between them without.
@@ -220,6 +228,8 @@ mod tests {
         case(7.93, 8.11, Scale::Linear, &["7.95", "8.00", "8.05", "8.10"]);
         case(1e-4, 20.0, Scale::Log, &["10⁻⁴", "0.001", "0.01", "0.1", "1", "10"]);
         case(200.0, 900.0, Scale::Log, &["200", "400", "600", "800"]);
+        case(1.99e-5, 2.21e-5, Scale::Linear, &["2.00e−5", "2.05e−5", "2.10e−5", "2.15e−5", "2.20e−5"]);
+        case(0.0, 4e-8, Scale::Linear, &["0", "1e−8", "2e−8", "3e−8", "4e−8"]);
         case(1.0, 1.0, Scale::Linear, &[]);
     }
 

@@ -12,6 +12,7 @@
 use crate::equilibrium::EquilibriumError;
 use crate::equilibrium::treatment::acid_equivalents;
 use crate::ledger::Ledger;
+use crate::present::plot::{Axis, Curve, Marks, Panel, Plot, Point, Scale};
 use crate::present::{Column, Table};
 use crate::quantity::{Quantity, QuantityError};
 use crate::units::{Style, Unit};
@@ -152,6 +153,40 @@ impl Gran {
             Column::new(format!("line [{unit}]").as_str(), line),
         ])
         .expect("columns of one length")
+    }
+}
+
+impl Gran {
+    /// The plot: Gran's function of every reading, the line from its root to the last reading fitted, and the
+    /// equivalence volume.
+    #[must_use]
+    pub fn plot(&self) -> Plot {
+        let readings = &self.readings;
+        let unit = readings.unit.display(Style::Ascii);
+        let (root, points): (f64, Vec<_>) = (self.volume.value(), readings.points().collect());
+        let end = points.iter().filter(|(_, ph, _)| readings.is_fitted(*ph)).map(|(v, ..)| *v);
+        let end = end.fold(root, f64::max);
+        let curve = |name: &str, points: Vec<(f64, f64)>, is_line| Curve {
+            name: name.to_owned(),
+            is_formula: false,
+            points: points.into_iter().map(|(x, y)| Point { x, y, sigma: None }).collect(),
+            is_line,
+        };
+        let curves = vec![
+            curve("reading", points.iter().map(|(v, _, f)| (*v, *f)).collect(), false),
+            curve("line fitted", vec![(root, 0.0), (end, self.slope * (end - root))], true),
+            curve("equivalence volume", vec![(root, 0.0)], false),
+        ];
+        let (across, up): (Vec<f64>, Vec<f64>) =
+            curves.iter().flat_map(|curve| &curve.points).map(|point| (point.x, point.y)).unzip();
+        let axis = |name: &str, values: &[f64], room| {
+            Axis::holding(&format!("{name} [{unit}]"), Scale::Linear, values, room)
+        };
+        Plot {
+            title: None,
+            x: axis("volume", &across, 0.0),
+            panels: vec![Panel { y: axis("F", &up, 0.06), marks: Marks::Curves(curves) }],
+        }
     }
 }
 

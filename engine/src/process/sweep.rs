@@ -10,7 +10,7 @@ use crate::physics::electrode::volts_per_pe;
 use crate::present::Column;
 use crate::quantity::Quantity;
 use crate::solve::Settings;
-use crate::units::{Kind, Pressure, Temperature, Unit, UnitError};
+use crate::units::{Kind, Pressure, Style, Temperature, Unit, UnitError};
 use crate::water::{Dose, Sample, SampleError, Treatment};
 
 /// The most points a sweep may have: more is taken for a slip.
@@ -98,6 +98,22 @@ impl Axis {
     #[must_use]
     pub fn is_empty(&self) -> bool {
         self.values.is_empty()
+    }
+
+    /// The title with the unit its values are in, also where the default is meant.
+    fn heading(&self) -> String {
+        match &self.meaning {
+            Meaning::Temperature(unit)
+            | Meaning::Pressure(unit)
+            | Meaning::Eh(unit)
+            | Meaning::Fugacity(_, unit)
+            | Meaning::Dose(_, unit)
+                if !self.title.ends_with(']') =>
+            {
+                format!("{} [{}]", self.title, unit.display(Style::Ascii))
+            }
+            _ => self.title.clone(),
+        }
     }
 
     /// The water at one value of the axis.
@@ -215,8 +231,9 @@ pub fn sweep(
     }
     let run = Run::equilibrate(&samples, ledger, settings, progress);
     let run = run.map_err(|_: EquilibriumError| SweepError::Stopped)?;
-    let column =
-        |(k, axis): (usize, &Axis)| Column::numbers(axis.title.as_str(), values.iter().map(|point| point[k]));
+    let column = |(k, axis): (usize, &Axis)| {
+        Column::numbers(axis.heading().as_str(), values.iter().map(|point| point[k]))
+    };
     Ok(Run::new(axes.iter().enumerate().map(column).collect(), run.outcomes().to_vec()))
 }
 

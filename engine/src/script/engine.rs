@@ -45,6 +45,8 @@ pub struct Options {
     pub shown: Option<OnShown>,
     /// How long one evaluation may take.
     pub time_limit: Option<Duration>,
+    /// The signal to stop; that of another engine where one runs on behalf of the other.
+    pub stop: Stop,
 }
 
 impl Default for Options {
@@ -58,6 +60,7 @@ impl Default for Options {
             progress: None,
             shown: None,
             time_limit: None,
+            stop: Stop::default(),
         }
     }
 }
@@ -264,6 +267,11 @@ impl ScriptEngine {
             Ok(Err(error)) => Err(self.translator(name, Arc::clone(source), scope).diagnose(error)),
             Err(panic) => Err(bug(&*panic)),
         }
+    }
+
+    /// How long one evaluation may take.
+    pub(super) fn time_limit(&self) -> Option<Duration> {
+        self.time_limit
     }
 
     /// A fresh evaluation begins.

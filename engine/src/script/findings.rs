@@ -1,10 +1,10 @@
 //! What can be found wrong with a script without running it: all of it at once.
 //!
-//! Beside what cannot be read and what is refused before running: variables and functions that are nowhere defined, and
-//! calls whose arguments are all written out, such as `sample(#{ ph: 7 })` or `reaction("H2O <=> H^+")`. These are tried,
+//! Beside what cannot be read and what is refused before running: variables and functions that are nowhere defined,
+//! observables asked for that cannot be read, and calls whose arguments are all written out, such as `sample(#{ ph: 7 })` or `reaction("H2O <=> H^+")`. These are tried,
 //! each on its own: a function whose only effect is its result tells its faults with their places.
 
-use std::collections::BTreeSet;
+use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
 use rhai::{AST, ASTNode, Dynamic, Expr, FnCallExpr, Position, Scope, Stmt};
@@ -13,6 +13,8 @@ use super::diagnostic::{Diagnostic, Fail, fail};
 use super::engine::{clean, on_deep_stack, quietly};
 use super::modules::Source;
 use super::{ScriptEngine, words};
+use crate::equilibrium::{Asked, Observable, ObservableError};
+use crate::ledger::shipped;
 
 /// Names the interpreter knows though nobody registers them.
 const BUILT_IN: [&str; 12] = [
@@ -45,8 +47,10 @@ impl ScriptEngine {
         let scope = Scope::new();
         let translator = || self.translator(name, Arc::clone(source), &scope);
         let unknown = unknown_names(&source.ast, &self.function_names());
+        let unreadable = observables(&source.ast);
+        let early = unknown.into_iter().chain(unreadable);
         let mut found: Vec<Diagnostic> =
-            unknown.into_iter().map(|(fail, place)| *translator().refused(fail, place)).collect();
+            early.map(|(fail, place)| *translator().refused(fail, place)).collect();
         self.arm();
         for (call, position) in self.tryable(&source.ast) {
             let statement = Stmt::FnCall(Box::new(call), position);
@@ -166,6 +170,84 @@ fn unknown_names(ast: &AST, functions: &BTreeSet<String>) -> Vec<(Fail, Position
         true
     });
     found
+}
+
+/// Methods that take observables of a state or a run, and of a table titles of columns.
+const ASK: [&str; 3] = ["get", "table", "column"];
+
+/// Observables written out that cannot be read, such as `SI calcite` or `Sl(calcite)`, or that ask for a mineral or gas next
+/// to a known name. A table may have any title, so only what is nearly an observable counts, and only if the script writes
+/// the same text nowhere else.
+fn observables(ast: &AST) -> Vec<(Fail, Position)> {
+    let mut asked: Vec<(String, Position)> = Vec::new();
+    let mut written: BTreeMap<String, usize> = BTreeMap::new();
+    ast.walk(&mut |path| {
+        match path.last() {
+            Some(ASTNode::Expr(Expr::StringConstant(text, _))) => {
+                *written.entry(text.to_string()).or_default() += 1
+            }
+            Some(ASTNode::Expr(Expr::Map(map, _))) => {
+                map.0.iter().for_each(|(key, _)| *written.entry(key.name.to_string()).or_default() += 1);
+            }
+            Some(ASTNode::Expr(Expr::MethodCall(call, _)))
+                if ASK.contains(&call.name.as_str()) && call.args.len() == 1 =>
+            {
+                asked.extend(texts(&call.args[0]));
+            }
+            _ => {}
+        }
+        true
+    });
+    let only_asked = |text: &str| {
+        let times = asked.iter().filter(|(own, _)| own == text).count();
+        written.get(text).is_none_or(|written| *written <= times)
+    };
+    let found = asked.iter().filter(|(text, _)| only_asked(text));
+    found.filter_map(|(text, position)| Some((misread(text)?, *position))).collect()
+}
+
+/// Texts that stand alone or in a list.
+fn texts(argument: &Expr) -> Vec<(String, Position)> {
+    match argument {
+        Expr::StringConstant(text, position) => vec![(text.to_string(), *position)],
+        Expr::Array(items, _) => items.iter().flat_map(texts).collect(),
+        _ => Vec::new(),
+    }
+}
+
+/// What is wrong with a text that is meant as an observable.
+fn misread(text: &str) -> Option<Fail> {
+    match Asked::parse(text) {
+        Ok(asked) => unknown_phase(&asked.observable),
+        Err(error @ ObservableError::Unknown { nearest: Some(_), .. }) if text.contains('(') => {
+            Some(error.into())
+        }
+        Err(error @ ObservableError::Form(..)) => Some(error.into()),
+        Err(error @ ObservableError::Unit { .. }) => {
+            let name = text.split('[').next().unwrap_or("");
+            Asked::parse(name).is_ok().then(|| error.into())
+        }
+        Err(_) => None,
+    }
+}
+
+/// A mineral or gas that no shipped ledger knows, with a known one of nearly its name.
+fn unknown_phase(asked: &Observable) -> Option<Fail> {
+    let (Observable::SaturationIndex(name)
+    | Observable::Omega(name)
+    | Observable::Fugacity(name)
+    | Observable::PartialPressure(name)) = asked
+    else {
+        return None;
+    };
+    let ledgers: Vec<_> =
+        shipped::names().into_iter().filter_map(|name| shipped::as_shipped(name).ok()).collect();
+    if ledgers.iter().any(|ledger| ledger.find_phase(name).is_ok()) {
+        return None;
+    }
+    let known = ledgers.iter().flat_map(|ledger| ledger.phases_by_name()).map(|(name, _)| name);
+    let near = words::did_you_mean(name, known)?;
+    Some(fail(format!("no shipped ledger knows a mineral or gas `{name}`")).help(near))
 }
 
 fn is_a_name(name: &str) -> bool {

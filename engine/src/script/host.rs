@@ -70,7 +70,7 @@ struct Parts {
 impl Host {
     pub(super) fn new(options: super::Options) -> Self {
         Self(Arc::new(Parts {
-            stop: Stop::default(),
+            stop: options.stop,
             style: options.style,
             arguments: options.arguments,
             shows: RwLock::default(),

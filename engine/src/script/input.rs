@@ -53,7 +53,7 @@ pub fn ends_with_semicolon(text: &str) -> bool {
     Scan::of(text).last == Some(';')
 }
 
-/// Byte range of what follows the last semicolon that stands outside of brackets, up to the last character of code.
+/// Byte range of what follows the last semicolon or finished block outside of brackets, up to the last character of code.
 pub(super) fn last_statement(text: &str) -> (usize, usize) {
     let scan = Scan::of(text);
     (scan.statement_start.min(scan.code_end), scan.code_end)
@@ -84,6 +84,10 @@ pub(super) fn pieces(text: &str) -> Vec<&str> {
 /// Whether what follows a closing brace begins a statement of its own.
 fn begins_anew(rest: &str) -> bool {
     let rest = rest.trim_start();
+    // A text has no value that a block could be joined with.
+    if rest.starts_with(['`', '"', '\'']) {
+        return true;
+    }
     let word: String = rest.chars().take_while(|c| c.is_ascii_alphanumeric() || *c == '_').collect();
     !word.is_empty() && !["else", "catch", "while", "until", "in", "is"].contains(&word.as_str())
 }
@@ -136,6 +140,7 @@ impl Scan {
             }
             let closed = c == '}' && scan.open == Open::Code && scan.brackets == 0;
             if closed && begins_anew(&text[index + 1..]) {
+                scan.statement_start = index + 1;
                 scan.cuts.push(index + 1);
             }
         }
@@ -229,6 +234,8 @@ mod tests {
         assert_eq!(of("let a = 1; a/2 // half"), " a/2");
         assert_eq!(of("a.map(|v| { let b = v; b })"), "a.map(|v| { let b = v; b })");
         assert_eq!(of("\";\" + 'x'  /* ; */"), "\";\" + 'x'");
+        assert_eq!(of("fn f() { 1 } `a ${f()}`"), " `a ${f()}`");
+        assert_eq!(of("if a { 1 } else { 2 }"), "if a { 1 } else { 2 }");
         assert_eq!(of("a; // x"), "");
         assert_eq!(of(""), "");
     }
@@ -244,6 +251,7 @@ mod tests {
         case("fn f(x) { x; x }\nlet y = f(2);", &["fn f(x) { x; x }\n", "let y = f(2);"]);
         case("if a { 1; } else { 2; }\nb", &["if a { 1; } else { 2; }\n", "b"]);
         case("let m = #{ a: 1 }.a; m", &["let m = #{ a: 1 }.a;", " m"]);
+        case("fn f() { 1 } `a ${f()}`", &["fn f() { 1 }", " `a ${f()}`"]);
         case("", &[]);
     }
 

@@ -1,4 +1,5 @@
-//! Script modules: `import "helpers" as h;` reads `helpers.rhai` beside the script.
+//! Script modules: `import "helpers" as h;` reads `helpers.rhai` beside the script, `import "stdlib/water-works" as w;` a
+//! module that is shipped.
 //!
 //! Imports stay inside the script's folder. Two things the interpreter lets pass are refused: modules that import each
 //! other (endless), and a function of the same name in two files (a function passed by name would silently be the
@@ -18,6 +19,19 @@ use super::{Fail, ScriptResult, engine::clean, fail, words};
 pub(super) struct Source {
     pub text: String,
     pub ast: AST,
+}
+
+/// What the names of shipped modules begin with.
+const SHIPPED: &str = "stdlib/";
+
+/// A module that was found.
+struct Found {
+    /// Where; a shipped one has its name instead.
+    path: PathBuf,
+    /// As messages name it.
+    shown: String,
+    /// The text of a shipped one.
+    text: Option<&'static str>,
 }
 
 /// The resolver; a clone is the same one.
@@ -60,7 +74,8 @@ impl Modules {
     /// The files of the modules imported so far, as named from the script's folder.
     pub(super) fn paths(&self) -> Vec<PathBuf> {
         let state = self.state();
-        state.sources.keys().map(|shown| state.folder.join(shown)).collect()
+        let files = state.sources.keys().filter(|shown| shipped(shown).is_none());
+        files.map(|shown| state.folder.join(shown)).collect()
     }
 
     /// Forgets imports that a fault broke off.
@@ -94,7 +109,10 @@ impl Modules {
         Ok(())
     }
 
-    fn find(&self, importer: Option<&str>, name: &str) -> Result<(PathBuf, String), Fail> {
+    fn find(&self, importer: Option<&str>, name: &str) -> Result<Found, Fail> {
+        if name.starts_with(SHIPPED) {
+            return self.find_shipped(name);
+        }
         let state = self.state();
         let beside = importer.filter(|source| state.sources.contains_key(*source));
         let from = beside.and_then(|source| Path::new(source).parent()).unwrap_or(Path::new(""));
@@ -114,7 +132,28 @@ impl Modules {
         let folder = state.folder.canonicalize().map_err(|error| fail(error.to_string()))?;
         let path = folder.join(&relative).canonicalize().map_err(|_| absent(name, &state.folder))?;
         let shown = path.strip_prefix(&folder).map_err(|_| outside())?.to_string_lossy().into_owned();
-        Ok((path, shown))
+        Ok(Found { path, shown, text: None })
+    }
+
+    /// A shipped module. A file of the same name would be read by one person and not by the next, so it is refused.
+    fn find_shipped(&self, name: &str) -> Result<Found, Fail> {
+        let file = self.state().folder.join(name).with_extension("rhai");
+        match (shipped(name), file.exists()) {
+            (Some(_), true) => Err(fail(format!(
+                "`{name}` is a shipped module and a file beside the script"
+            ))
+            .help("rename the folder `stdlib` beside the script; the name belongs to shipped modules")),
+            (Some(text), false) => {
+                Ok(Found { path: PathBuf::from(name), shown: name.to_owned(), text: Some(text) })
+            }
+            (None, _) => {
+                let names: Vec<String> =
+                    lysocline_stdlib::MODULES.iter().map(|(own, _)| format!("{SHIPPED}{own}")).collect();
+                let near = words::did_you_mean(name, names.iter().map(String::as_str));
+                Err(fail(format!("there is no shipped module `{name}`"))
+                    .help(near.unwrap_or_else(|| format!("there are {}", crate::text::list(&names)))))
+            }
+        }
     }
 
     /// The cached module, unless its file has changed since.
@@ -136,9 +175,13 @@ impl Modules {
         Ok(())
     }
 
-    fn load(&self, engine: &Engine, path: &Path, shown: &str) -> ScriptResult<Shared<Module>> {
-        let text =
-            std::fs::read_to_string(path).map_err(|error| fail(format!("cannot read `{shown}`: {error}")))?;
+    fn load(&self, engine: &Engine, found: &Found) -> ScriptResult<Shared<Module>> {
+        let Found { path, shown, text } = found;
+        let text = match text {
+            Some(text) => (*text).to_owned(),
+            None => std::fs::read_to_string(path)
+                .map_err(|error| fail(format!("cannot read `{shown}`: {error}")))?,
+        };
         let text = clean(&text);
         let within = |error| Box::new(EvalAltResult::ErrorInModule(shown.to_owned(), error, Position::NONE));
         let parsed = engine.compile(&text);
@@ -179,18 +222,26 @@ impl ModuleResolver for Modules {
                 error
             }
         };
-        let (path, shown) = self.find(source, name).map_err(|fail| placed(fail.into()))?;
-        self.enter(&path).map_err(|fail| placed(fail.into()))?;
-        let module = match self.cached(&path) {
+        let found = self.find(source, name).map_err(|fail| placed(fail.into()))?;
+        let path = &found.path;
+        self.enter(path).map_err(|fail| placed(fail.into()))?;
+        let module = match self.cached(path) {
             Some(module) => Ok(module),
-            None => self.load(engine, &path, &shown).map_err(placed),
+            None => self.load(engine, &found).map_err(placed),
         };
         let mut state = self.state();
         state.loading.pop();
         let module = module?;
-        state.loaded.insert(path.clone(), (modified(&path), Shared::clone(&module)));
+        state.loaded.insert(path.clone(), (modified(path), Shared::clone(&module)));
         Ok(module)
     }
+}
+
+/// The text of a shipped module.
+fn shipped(name: &str) -> Option<&'static str> {
+    let name = name.strip_prefix(SHIPPED)?;
+    let name = name.strip_suffix(".rhai").unwrap_or(name);
+    lysocline_stdlib::MODULES.iter().find_map(|(own, text)| (*own == name).then_some(*text))
 }
 
 fn absent(name: &str, folder: &Path) -> Fail {

@@ -9,9 +9,9 @@ use super::show::Style;
 use super::{Fail, Host, ScriptResult, Vocabulary, fail};
 use crate::nearest::nearest;
 use crate::present::plot::{Options, Plot, PlotError, Scale};
-use crate::present::{Table, plot_svg};
+use crate::present::{Cell, Column, Table, plot_svg};
 use crate::process::diagram::{self, Diagram, DiagramError, Span};
-use crate::process::{Run, RunError};
+use crate::process::{Run, RunError, equivalence_points};
 use crate::solve::Settings;
 use crate::water::{Sample, Treatment};
 
@@ -85,7 +85,24 @@ fn of_run(run: &Run, x: &str, ys: &Array, options: &Options) -> ScriptResult<Plo
     let titles: Vec<String> = table.titles().map(ToString::to_string).collect();
     let drawn = &titles[titles.len().saturating_sub(asked.len())..];
     let ys: Vec<&str> = drawn[1..].iter().map(String::as_str).collect();
-    Ok(Plot::of_table(&table, &drawn[0], &ys, options).map_err(Fail::from)?)
+    let mut plot = Plot::of_table(&table, &drawn[0], &ys, options).map_err(Fail::from)?;
+    mark_equivalence(&mut plot, run, &drawn[0]);
+    Ok(plot)
+}
+
+/// The equivalence points of a titration, on its curve of pH against volume; none where they cannot be told.
+fn mark_equivalence(plot: &mut Plot, run: &Run, x: &str) {
+    let over_volume = run.axes().first().is_some_and(|axis| axis.title().to_string() == x);
+    if !(over_volume && plot.shows("pH")) {
+        return;
+    }
+    let Ok(points) = equivalence_points(run, &Settings::default()) else { return };
+    let values = |title: &str| points.column(title).map(numbers_in).unwrap_or_default();
+    plot.mark("pH", "equivalence point", values(x).into_iter().zip(values("pH")));
+}
+
+fn numbers_in(column: &Column) -> Vec<f64> {
+    column.cells().iter().filter_map(Cell::value).collect()
 }
 
 /// `#{ pH: [4, 10], points: 61 }` for the axes named.
@@ -178,7 +195,8 @@ mod plot_functions {
     pub fn plot_table_with(table: &mut Table, x: &str, columns: Array, options: Map) -> ScriptResult<Plot> {
         of_table(table, x, &columns, &super::options(&options)?)
     }
-    /// A plot of observables of a run against one of them, with bands of one standard uncertainty where it is known.
+    /// A plot of observables of a run against one of them, with bands of one standard uncertainty where it is known. The pH of
+    /// a titration against its volume has the equivalence points marked.
     ///
     /// ```rhai
     /// let lake = sample(#{ pH: "8.1 +/- 0.02", alkalinity: "2.3 +/- 0.05 meq/L", Ca: "41 mg/L" });
@@ -287,7 +305,8 @@ mod plot_functions {
         Host::of(&context).display(&Dynamic::from(plot.clone()));
     }
 
-    /// Writes the plot to a file in the output folder: `.svg`, which browsers and word processors show.
+    /// Writes the plot to a file in the output folder: `.svg`, which browsers and word processors show, or `.png` where the
+    /// program was built with the feature `png`.
     ///
     /// ```rhai
     /// table(#{ "depth [m]": [0, 10, 20], pH: [8.1, 7.9, 7.8] }).plot("depth", ["pH"]).save("lake.svg")
@@ -306,8 +325,21 @@ fn bytes_for(file: &str, plot: &Plot) -> Result<Vec<u8>, Fail> {
     let ending = std::path::Path::new(file).extension().map(|ending| ending.to_string_lossy().to_lowercase());
     match ending.as_deref() {
         Some("svg") => Ok(plot_svg::standalone(plot).into_bytes()),
-        _ => {
-            Err(fail(format!("cannot tell the kind of `{file}`")).help("end the name in `.svg`").argument(0))
-        }
+        Some("png") => picture(plot),
+        _ => Err(fail(format!("cannot tell the kind of `{file}`"))
+            .help("end the name in `.svg` or `.png`")
+            .argument(0)),
     }
+}
+
+#[cfg(feature = "png")]
+fn picture(plot: &Plot) -> Result<Vec<u8>, Fail> {
+    crate::present::plot_png::bytes(plot).map_err(|error| fail(error.to_string()))
+}
+
+#[cfg(not(feature = "png"))]
+fn picture(_: &Plot) -> Result<Vec<u8>, Fail> {
+    Err(fail("this lysocline was built without the feature `png`, so it writes plots as SVG only")
+        .help("end the name in `.svg`, or build it with `--features png`")
+        .argument(0))
 }

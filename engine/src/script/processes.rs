@@ -13,6 +13,7 @@ use super::{Fail, Host, ScriptResult, Vocabulary, column, docs, fail};
 use crate::equilibrium::{EquilibriumError, State, equilibrate};
 use crate::ledger::{Ledger, shipped};
 use crate::named::{Named, Value};
+use crate::present::plot::Plot;
 use crate::present::{Column, Table};
 use crate::process::{
     self, Gran, GranError, MonteCarloError, Readings, Run, Titration, TitrationError, Vary,
@@ -328,6 +329,18 @@ mod process_functions {
     #[rhai_fn(name = "table", get = "table", pure)]
     pub fn gran_table(gran: &mut Gran) -> Table {
         gran.table()
+    }
+
+    /// The plot drawn: Gran's function F = (V0 + v) 10^-pH of every reading, the line, and the equivalence volume.
+    ///
+    /// ```rhai
+    /// let volumes = [2.4, 2.6, 2.8, 3.0];
+    /// let pHs = [3.41, 3.24, 3.12, 3.03];
+    /// gran(volumes, pHs, #{ sample_volume: "100 mL", titrant: "0.1 mol/L HCl", between: [3.0, 3.5] }).plot()
+    /// ```
+    #[rhai_fn(name = "plot", get = "plot", pure)]
+    pub fn gran_plot(gran: &mut Gran) -> Plot {
+        gran.plot()
     }
 
     /// A path: the closure makes of the water before it, without surroundings, the water of the next step; its

@@ -25,9 +25,23 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
     vocabulary
         .module(rhai::exported_module!(seawater_functions))
         .pure(&["seawater", "at_salinity", "alkalinity_parts", "choices", "estuary", "saturation_horizon"])
+        .pure(&["calcifier_table"])
         .pure(&["seawater_density", "pressure_at_depth", "depth_at_pressure", "practical_salinity"])
         .pure(&["absolute_salinity", "air_fugacity", "tris_pH", "aminopyridine_pH", "cresol_purple_pH"]);
 }
+
+/// What calcifiers answer to. The ratio of substrate to inhibitor is that of Jury, Whitehead and Szmant (2010) Global Change
+/// Biology 16, 1632-1644, and Bach (2015) Biogeosciences 12, 4939-4951 (both recalled).
+const CALCIFIERS: [&str; 8] = [
+    "temperature",
+    "pH(total)",
+    "DIC [umol/kg]",
+    "m(HCO3^-) [umol/kg]",
+    "m(CO3^2-) [umol/kg]",
+    "Omega(aragonite)",
+    "Omega(calcite)",
+    "substrate_inhibitor_ratio [mol/umol]",
+];
 
 /// A latitude that stands for all where none is given.
 const COMMON_LATITUDE: f64 = 45.0;
@@ -96,7 +110,7 @@ mod seawater_functions {
     /// A seawater from its analysis, computed with the ledger `seawater`. Keys: `salinity` (practical, or g/kg absolute),
     /// `temperature` (degC), `pressure` (dbar counts from the surface) or `depth` (m) with `latitude`, two of `DIC`,
     /// `alkalinity`, `pH` and one of `fCO2`, `pCO2`, `xCO2`; `ph_scale` (`"total"` unless said otherwise),
-    /// `pH_temperature`, `air_pressure`, `phosphate`, `silicate`, `ammonium`, `sulfide`, and amounts that replace those
+    /// `pH_temperature` and `fCO2_temperature` where measured in a laboratory at the surface, `air_pressure`, `phosphate`, `silicate`, `ammonium`, `sulfide`, and amounts that replace those
     /// going with salinity. `mol/kg` is per kilogram of solution.
     ///
     /// ```rhai
@@ -137,9 +151,23 @@ mod seawater_functions {
         state.choices().map_or(Dynamic::UNIT, Dynamic::from)
     }
 
-    /// Mixtures of a river and a sea by the mass fraction of the sea, as samples: alkalinity, inorganic carbon, calcium and
-    /// nutrients of both ends are mixed, each end computed with its own ledger, and the mixtures take K1 and K2 of
-    /// Millero 2006 and KF of Dickson and Riley 1979.
+    /// What calcifying organisms answer to, a row for each water of a run: pH on the total scale, inorganic carbon and its
+    /// ions, saturation with aragonite and calcite, and the ratio of substrate to inhibitor [HCO3^-]/[H^+] (mol/umol, H^+ on
+    /// the total scale; Jury et al. 2010, Bach 2015).
+    ///
+    /// ```rhai
+    /// let reef = [1900, 2000].map(|dic| seawater(#{ salinity: 35, alkalinity: "2300 umol/kg", DIC: `${dic} umol/kg` }));
+    /// calcifier_table(reef.equilibrate()).len   // 2
+    /// ```
+    #[rhai_fn(name = "calcifier_table", return_raw)]
+    pub fn calcifier_table(waters: Run) -> ScriptResult<Table> {
+        Ok(waters.table(&CALCIFIERS.map(String::from)).map_err(Fail::from)?)
+    }
+
+    /// Mixtures of a river and a sea by the mass fraction of the sea, as samples. Each end is computed with its own ledger;
+    /// what both conserve is mixed: alkalinity, inorganic carbon, calcium, phosphate, silicate, ammonium and sulfide, per
+    /// kilogram of solution. Other ions of the river are left out, since those of a mixture go with its salinity; each
+    /// mixture warns which. The mixtures take K1 and K2 of Millero 2006, from salinity 1 up, and KF of Dickson and Riley 1979.
     ///
     /// ```rhai
     /// let river = sample(#{ pH: 7.8, alkalinity: "1.2 meq/L", Ca: "20 mg/L" }).equilibrate();

@@ -107,12 +107,6 @@ impl Session {
         self.entries.last().map(|entry| entry.written.as_str())
     }
 
-    /// The session as a script that gives what was shown at the prompt.
-    #[must_use]
-    pub fn script(&self) -> String {
-        self.entries.iter().map(|entry| format!("{}\n", entry.written)).collect()
-    }
-
     /// The accepted entries as a script needs them.
     pub fn entries_written(&self) -> impl Iterator<Item = &str> {
         self.entries.iter().map(|entry| entry.written.as_str())

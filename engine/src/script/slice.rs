@@ -13,13 +13,16 @@
 //! - files tie what writes them to what reads them.
 
 use std::collections::{BTreeMap, BTreeSet};
+use std::time::Duration;
 
 use rhai::{AST, ASTNode, Dynamic, Expr, FnCallExpr, Module, Stmt};
 
 use super::check::Pure;
 use super::input::pieces;
-use super::{Fail, Options, ScriptEngine, Session, fail, same, words};
+use super::{Fail, Halt, Options, ScriptEngine, Session, fail, same, words};
 
+/// How long a script that is to be saved may take to show that it gives the value, where no other limit is set.
+const REHEARSAL: Duration = Duration::from_secs(120);
 /// Functions whose only effect is on the output.
 const ONLY_SHOW: [&str; 7] = ["print", "debug", "help", "show", "expect", "record", "curry"];
 /// Functions that write files, and beginnings of those that read them.
@@ -112,11 +115,11 @@ impl Session {
             is_whole: false,
         };
         let smallest = chosen(&|i| needed.contains(&i));
-        if self.gives(&smallest.text, name, value) {
+        if self.gives(&smallest.text, name, value)? {
             return Ok(smallest);
         }
         let whole = chosen(&|_| true);
-        if self.gives(&whole.text, name, value) {
+        if self.gives(&whole.text, name, value)? {
             return Ok(Slice { is_whole: true, ..whole });
         }
         Err(match twice_defined(&units) {
@@ -129,21 +132,40 @@ impl Session {
         })
     }
 
-    /// Whether running `text` from the start gives `name` this value.
-    fn gives(&self, text: &str, name: &str, value: &Dynamic) -> bool {
+    /// The session as a script that gives what was shown at the prompt. Of a function defined again only the newest
+    /// definition is written, where nothing used an earlier one.
+    #[must_use]
+    pub fn script(&self) -> String {
+        let units = self.units();
+        let replaced: BTreeSet<usize> = (0..units.len()).filter(|i| is_replaced(&units, *i)).collect();
+        if replaced.is_empty() {
+            return self.entries_written().map(|entry| format!("{entry}\n")).collect();
+        }
+        let kept = units.iter().enumerate().filter(|(i, _)| !replaced.contains(i));
+        kept.map(|(_, unit)| ended(&unit.text)).collect()
+    }
+
+    /// Whether running `text` from the start gives `name` this value. It listens to Ctrl-C like every calculation.
+    fn gives(&self, text: &str, name: &str, value: &Dynamic) -> Result<bool, Fail> {
         let sink = || Box::new(std::io::sink());
+        let stop = self.engine().stop();
         let engine = ScriptEngine::new(Options {
             files: self.engine().host().files().rehearsal(),
             output: sink(),
             messages: sink(),
+            stop: stop.clone(),
+            time_limit: Some(self.engine().time_limit().unwrap_or(REHEARSAL)),
             ..Options::default()
         });
         let mut scope = rhai::Scope::new();
-        if engine.run_keeping("saved", text, &mut scope).is_err() {
-            return false;
+        let failed = engine.run_keeping("saved", text, &mut scope).is_err();
+        if let Some(halt) = stop.requested().filter(|_| failed) {
+            let why = if halt == Halt::TimeUp { "took too long" } else { "was stopped" };
+            return Err(fail(format!("nothing is saved: running what `{name}` needs once more {why}"))
+                .help("`:save file.rhai` writes every entry without running it"));
         }
         let found = scope.iter_raw().filter(|(own, ..)| *own == name).last();
-        found.is_some_and(|(.., found)| same(&engine, found, value))
+        Ok(!failed && found.is_some_and(|(.., found)| same(&engine, found, value)))
     }
 
     /// The session's statements, read.
@@ -190,6 +212,10 @@ struct Unit {
     called_by_closures: BTreeSet<String>,
     /// Those of the captured that a closure changes.
     changed_by_closures: BTreeSet<String>,
+    /// The same functions, each with its number of parameters.
+    signatures: BTreeSet<(String, usize)>,
+    /// Whether it does nothing but define functions.
+    only_defines: bool,
     /// It cannot be seen through: kept, with everything before it.
     is_opaque: bool,
 }
@@ -222,6 +248,7 @@ impl Reader<'_> {
             self.node(path);
             true
         });
+        self.unit.only_defines = ast.statements().is_empty();
         for definition in ast.iter_functions() {
             let (name, arity) = (definition.name.to_owned(), definition.params.len());
             let mut body = ast.clone_functions_only();
@@ -239,6 +266,7 @@ impl Reader<'_> {
                 self.unit.changed_by_closures.extend(inner.unit.writes);
                 self.unit.changed_by_closures.extend(inner.unit.changed_by_closures);
             } else {
+                self.unit.signatures.insert((name.clone(), arity));
                 self.unit.functions.entry(name).or_default().extend(uses);
             }
             self.unit.is_opaque |= inner.unit.is_opaque;
@@ -521,6 +549,37 @@ fn resolve(units: &[Unit]) -> Resolved {
         resolved.push(Touches { reads, writes, defines });
     }
     Resolved { units: resolved, holds, newest }
+}
+
+/// Whether a unit only defines functions that are all defined again later, none of them used until then.
+fn is_replaced(units: &[Unit], at: usize) -> bool {
+    let unit = &units[at];
+    let again = |signature: &(String, usize)| {
+        let mut later = units.iter().skip(at + 1);
+        let Some(next) = later.position(|other| other.signatures.contains(signature)) else { return false };
+        let until = &units[..=at + next];
+        !until.iter().any(|other| other.is_opaque) && !uses(until, &signature.0)
+    };
+    unit.only_defines && !unit.signatures.is_empty() && unit.signatures.iter().all(again)
+}
+
+/// Whether a statement of these units may call the function, itself or through other functions.
+fn uses(units: &[Unit], name: &str) -> bool {
+    let mut callers = BTreeSet::from([function(name)]);
+    loop {
+        let bodies = units.iter().flat_map(|unit| &unit.functions);
+        let more: Vec<String> = bodies
+            .filter(|(_, used)| !used.is_disjoint(&callers))
+            .map(|(caller, _)| function(caller))
+            .filter(|caller| !callers.contains(caller))
+            .collect();
+        if more.is_empty() {
+            break;
+        }
+        callers.extend(more);
+    }
+    let named = |unit: &Unit| unit.reads.iter().any(|read| callers.contains(&function(read)));
+    units.iter().any(|unit| !unit.only_defines && (!unit.calls.is_disjoint(&callers) || named(unit)))
 }
 
 /// A function that two units define.

@@ -4,6 +4,7 @@ use super::*;
 
 mod examples;
 mod language;
+mod neighbours;
 mod quantities;
 mod reactions;
 mod slices;

@@ -10,7 +10,7 @@
 //!
 //! Applying the factor on the total scale instead would move pK1 by 0.001 at 5000 dbar.
 
-use super::scales::{Scales, makes_scales};
+use super::scales::{ByScales, Scales, makes_scales};
 use crate::chem::{PhScale, Reaction, Species, rational};
 use crate::ledger::{Ledger, Sea};
 use crate::physics::constants::LN_10;
@@ -30,16 +30,34 @@ pub struct Place {
 
 /// log10 K of every reaction of a ledger in its sea, on the free scale, in order of name.
 #[must_use]
-pub fn log_k_free(ledger: &Ledger, sea: Sea, temperature: Temperature) -> Vec<f64> {
+pub fn log_k_free(ledger: &Ledger, sea: &Sea, temperature: Temperature) -> Vec<f64> {
     let place = Place::of(sea, temperature);
     let scales = (Scales::at_surface(ledger, &place), Scales::at(ledger, &place));
     ledger.reactions().map(|(_, reaction)| place.on_free_scale(reaction, &scales.0, &scales.1)).collect()
 }
 
+/// How each of these answers to what the scales are made of: a constant published on another scale than the free one is
+/// brought there by those of HSO4^- and HF.
+#[must_use]
+pub fn by_scales(ledger: &Ledger, sea: &Sea, temperature: Temperature) -> Vec<ByScales> {
+    let place = Place::of(sea, temperature);
+    let (surface, deep) = (Scales::at_surface(ledger, &place), Scales::at(ledger, &place));
+    let by = |reaction: &Reaction| {
+        let Ok(constant) = reaction.constant() else { return ByScales::default() };
+        let n = rational::to_f64(reaction.equation().coefficient(&Species::proton()));
+        let own = ByScales::default().plus(-n, surface.by(constant.conditions.ph_scale));
+        if makes_scales(reaction) {
+            return own;
+        }
+        own.plus(n, surface.by(PhScale::Seawater)).plus(-n, deep.by(PhScale::Seawater))
+    };
+    ledger.reactions().map(|(_, reaction)| by(reaction)).collect()
+}
+
 impl Place {
     /// A temperature in a sea.
     #[must_use]
-    pub fn of(sea: Sea, temperature: Temperature) -> Self {
+    pub fn of(sea: &Sea, temperature: Temperature) -> Self {
         Self { temperature, salinity: sea.salinity, hydrostatic_bar: sea.hydrostatic_bar() }
     }
 
@@ -73,12 +91,12 @@ impl Place {
     }
 }
 
-/// The constants used outside the salinity and temperature they were measured in, each with what covers it instead.
-/// `matters` says which reactions, by their order, count.
+/// The constants used outside the salinity and temperature they were measured in, each with what covers it instead; K1 and
+/// K2 of one publication together. `matters` says which reactions, by their order, count.
 #[must_use]
 pub fn outside_ranges(
     ledger: &Ledger,
-    sea: Sea,
+    sea: &Sea,
     temperature: Temperature,
     matters: impl Fn(usize) -> bool,
 ) -> Vec<String> {
@@ -95,19 +113,52 @@ pub fn outside_ranges(
         return vec![];
     }
     let alternatives = ledger.alternatives();
-    let words = |(name, reaction): &(&str, &Reaction)| {
-        let covering = alternatives.iter().filter(|other| other.name == *name && covers(&other.reaction));
-        let covering: Vec<&str> = covering.map(|other| other.author.as_str()).collect();
-        let advice = match covering.as_slice() {
-            [] => String::new(),
-            authors => format!("; {} covers it: `.choose(\"{name}\", \"{}\")`", list(authors), authors[0]),
-        };
-        format!("`{name}` holds for {}, and was used {}{advice}", range(reaction), at(sea, temperature))
+    let covering = |name: &str| -> Vec<&str> {
+        let covering = alternatives.iter().filter(|other| other.name == name && covers(&other.reaction));
+        covering.map(|other| other.author.as_str()).collect()
     };
-    outside.iter().map(words).collect()
+    let words = |name: &str, range: &str, authors: &[&str]| {
+        let (hold, was, it) =
+            if name.contains(' ') { ("hold", "were", "them") } else { ("holds", "was", "it") };
+        let advice = match authors {
+            [] => String::new(),
+            [first, ..] => {
+                let cover = if authors.len() == 1 { "covers" } else { "cover" };
+                format!("; {} {cover} {it}: `.choose(\"{name}\", \"{first}\")`", list(authors))
+            }
+        };
+        format!("`{name}` {hold} for {range}, and {was} used {}{advice}", at(sea, temperature))
+    };
+    let range_of =
+        |wanted: &str| outside.iter().find(|(name, _)| *name == wanted).map(|(_, reaction)| range(reaction));
+    let mut warnings = Vec::new();
+    let pair = (range_of("K1"), range_of("K2"));
+    let together = matches!(&pair, (Some(one), Some(two)) if one == two);
+    if let (Some(range), true) = (pair.0, together) {
+        let both: Vec<&str> =
+            covering("K1").into_iter().filter(|author| covering("K2").contains(author)).collect();
+        warnings.push(words("K1 K2", &range, &both));
+    }
+    let others = outside.iter().filter(|(name, _)| !(together && ["K1", "K2"].contains(name)));
+    warnings.extend(others.map(|(name, reaction)| words(name, &range(reaction), &covering(name))));
+    warnings
 }
 
-fn at(sea: Sea, temperature: Temperature) -> String {
+/// K1 and K2 of different publications: each was fitted with the other to the same measurements.
+#[must_use]
+pub fn unmatched_pair(ledger: &Ledger) -> Option<String> {
+    let choices = ledger.choices();
+    let author = |wanted: &str| choices.iter().find(|(name, _)| name == wanted).map(|(_, author)| author);
+    let (one, two) = (author("K1")?, author("K2")?);
+    (one != two).then(|| {
+        format!(
+            "`K1` is {one} and `K2` is {two}: constants of one publication were fitted together, and belong together; \
+             `.choose(\"K1 K2\", \"{one}\")` takes both"
+        )
+    })
+}
+
+fn at(sea: &Sea, temperature: Temperature) -> String {
     format!("at salinity {} and {:.4} degC", sea.salinity, temperature.celsius())
         .replace(".0000 degC", " degC")
 }

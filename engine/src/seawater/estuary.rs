@@ -4,15 +4,17 @@
 //! holds for both. What is the same in both is what mixing conserves: alkalinity (Dickson 1981), inorganic carbon, calcium
 //! and nutrients per kilogram of solution. So each end is computed with its own ledger, the conserved totals are mixed by
 //! mass, and the mixture is a seawater of the salinity that the sea brings, with constants that hold from salinity 1 up.
-//! Ions that the river has beyond those in proportion to salinity, calcium apart, are left out: below salinity 1 the
-//! river's own ledger is the better one.
+//! What else the river holds (sodium, chloride, magnesium, sulfate, …) is left out, since in the mixture it is taken to be
+//! in proportion to salinity: the mixture says which. Below salinity 1 the river's own ledger is the better one.
 
 use std::collections::BTreeMap;
 
+use crate::chem::{Element, Rational, Species};
 use crate::equilibrium::{EquilibriumError, State};
 use crate::named::Value;
 use crate::quantity::Quantity;
 use crate::water::Sample;
+use crate::water::analyte::oxidation_state;
 
 /// What is conserved, by the key of a seawater and the observable it is read from.
 const CONSERVED: [(&str, &str); 7] = [
@@ -67,7 +69,44 @@ pub fn mixture(river: &State, sea: &State, fraction: f64) -> Result<Sample, Equi
         }
     }
     let sample = Sample::read_seawater(entries).map_err(|error| refuse(error.to_string()))?;
+    let sample = if fraction < 1.0 { sample.with_labels(BTreeMap::new(), left_out(river)) } else { sample };
     let book =
         ESTUARINE.into_iter().try_fold(ledger.clone(), |book, (name, author)| book.choose(name, author))?;
     Ok(sample.with_ledger(&book))
+}
+
+/// What the mixture does not take from the river, in words.
+fn left_out(river: &State) -> Vec<String> {
+    let system = river.system();
+    // A brackish water's ions are those of its salinity, which is mixed.
+    if system.ledger().sea().is_some() {
+        return vec![];
+    }
+    let dissolved = river.dissolved().iter().enumerate().filter(|(_, total)| **total > 0.0);
+    let species = dissolved.map(|(k, _)| system.component_species(k));
+    let left: Vec<String> =
+        species.filter(|species| !is_carried(species)).map(|species| format!("`{species}`")).collect();
+    let words = |left: String| {
+        format!(
+            "of the river, alkalinity, inorganic carbon, calcium, phosphate, silicate, ammonium and sulfide are mixed in; \
+             {left} left out, since these ions go with the salinity of the mixture"
+        )
+    };
+    match left.as_slice() {
+        [] => vec![],
+        [one] => vec![words(format!("its {one} is"))],
+        [others @ .., last] => vec![words(format!("its {} and {last} are", others.join(", ")))],
+    }
+}
+
+/// Whether a component of a river comes with what is conserved.
+fn is_carried(species: &Species) -> bool {
+    let element = |symbol| Element::from_symbol(symbol).expect("a known element");
+    let holds = |symbol| species.count(element(symbol)) != Rational::from_integer(0);
+    let reduced =
+        |symbol, state| oxidation_state(species, element(symbol)) == Some(Rational::from_integer(state));
+    *species == Species::proton()
+        || ["C", "Ca", "P", "Si"].into_iter().any(holds)
+        || reduced("N", -3)
+        || reduced("S", -2)
 }

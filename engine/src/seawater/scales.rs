@@ -24,6 +24,28 @@ pub struct Scales {
     pub fluoride: f64,
     /// f_H of the NBS scale, kg(solution)/mol.
     pub nbs: f64,
+    /// ∂ ln of the fluoride by ln of the sulfate: a K_F published on another scale is brought to the free one by K_S.
+    fluoride_by_sulfate: f64,
+}
+
+/// Derivatives of a log10 by log10 of T_S/K_S and T_F/K_F, each constant as it was published.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct ByScales {
+    /// By T_S/K_S.
+    pub sulfate: f64,
+    /// By T_F/K_F.
+    pub fluoride: f64,
+}
+
+impl ByScales {
+    /// `self + factor other`.
+    #[must_use]
+    pub fn plus(self, factor: f64, other: Self) -> Self {
+        Self {
+            sulfate: self.sulfate + factor * other.sulfate,
+            fluoride: self.fluoride + factor * other.fluoride,
+        }
+    }
 }
 
 impl Scales {
@@ -47,7 +69,8 @@ impl Scales {
     /// The same at the pressure of the surface.
     #[must_use]
     pub fn at_surface(ledger: &Ledger, place: &Place) -> Self {
-        let mut scales = Self { sulfate: 0.0, fluoride: 0.0, nbs: nbs_factor(place) };
+        let mut scales =
+            Self { sulfate: 0.0, fluoride: 0.0, nbs: nbs_factor(place), fluoride_by_sulfate: 0.0 };
         let total = |name: &str| {
             let found = ledger.composition().find(|constituent| constituent.name == name);
             found.map_or(0.0, |constituent| constituent.per_salinity * place.salinity)
@@ -61,6 +84,8 @@ impl Scales {
         }
         if let Some(reaction) = hydrogen_fluoride(ledger) {
             scales.fluoride = total("total fluoride") / free(reaction, &scales);
+            let published = reaction.constant().map_or(PhScale::Free, |own| own.conditions.ph_scale);
+            scales.fluoride_by_sulfate = Self { fluoride: 0.0, ..scales }.by(published).sulfate;
         }
         scales
     }
@@ -73,6 +98,23 @@ impl Scales {
             PhScale::Total => 1.0 + self.sulfate,
             PhScale::Seawater => 1.0 + self.sulfate + self.fluoride,
             PhScale::Nbs => self.nbs * self.over_free(PhScale::Seawater),
+        }
+    }
+
+    /// Derivatives of log10 of [`Scales::over_free`].
+    #[must_use]
+    pub fn by(&self, scale: PhScale) -> ByScales {
+        let over = self.over_free(match scale {
+            PhScale::Nbs => PhScale::Seawater,
+            other => other,
+        });
+        match scale {
+            PhScale::Free | PhScale::Activity => ByScales::default(),
+            PhScale::Total => ByScales { sulfate: self.sulfate / over, fluoride: 0.0 },
+            PhScale::Seawater | PhScale::Nbs => ByScales {
+                sulfate: (self.sulfate + self.fluoride * self.fluoride_by_sulfate) / over,
+                fluoride: self.fluoride / over,
+            },
         }
     }
 
@@ -94,6 +136,13 @@ fn nbs_factor(place: &Place) -> f64 {
 #[must_use]
 pub fn makes_scales(reaction: &Reaction) -> bool {
     is_dissociation(reaction, "HSO4^- <=> H^+ + SO4^2-") || is_dissociation(reaction, "HF(aq) <=> H^+ + F^-")
+}
+
+/// Positions of the reactions of HSO4^- and HF among a ledger's.
+#[must_use]
+pub fn makers(ledger: &Ledger) -> [Option<usize>; 2] {
+    ["HSO4^- <=> H^+ + SO4^2-", "HF(aq) <=> H^+ + F^-"]
+        .map(|equation| ledger.reactions().position(|(_, reaction)| is_dissociation(reaction, equation)))
 }
 
 fn bisulfate(ledger: &Ledger) -> Option<&Reaction> {

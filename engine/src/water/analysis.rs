@@ -56,8 +56,8 @@ pub struct Measured {
     pub redox: Redox,
     /// Salinity, pressure and scale of pH of a seawater.
     pub sea: Option<Sea>,
-    /// The temperature at which pH was measured, where that is not the water's own.
-    pub ph_temperature: Option<Temperature>,
+    /// The temperature at which pH, the fugacity of CO2 or both were measured, where that is not the water's own.
+    pub measured_at: Option<Temperature>,
 }
 
 /// An amount with what it is of and the key it was given under.
@@ -139,10 +139,11 @@ pub const KEYS: [&str; 21] = [
 ];
 
 /// Keys of later landings, refused with a word rather than as misspelt.
-const NOT_YET: [(&str, &str); 3] = [
+const NOT_YET: [(&str, &str); 4] = [
     ("salinity", "it belongs to `seawater(#{ … })`"),
     ("ph_scale", "outside seawater pH is -log10 of the activity of H^+"),
     ("pH_temperature", "give pH as it is at the sample's temperature; `seawater(#{ … })` takes both"),
+    ("fCO2_temperature", "`seawater(#{ … })` takes it"),
 ];
 
 /// A bare total above this, mol/kg(water), is taken for a forgotten unit.

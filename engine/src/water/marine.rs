@@ -19,10 +19,11 @@ pub const NUTRIENTS: [(&str, &str); 4] =
     [("phosphate", "P"), ("silicate", "Si"), ("ammonium", "N(-III)"), ("sulfide", "S(-II)")];
 
 /// Keys that a seawater has besides those of any sample.
-pub const KEYS: [&str; 10] = [
+pub const KEYS: [&str; 11] = [
     "salinity",
     "ph_scale",
     "pH_temperature",
+    "fCO2_temperature",
     "air_pressure",
     "depth",
     "latitude",
@@ -44,33 +45,31 @@ pub fn read(entries: BTreeMap<String, Value>) -> Result<Read, KeyFault> {
     let mut named = Named::new(entries);
     let (mut defaults, mut notes) = (Vec::new(), Vec::new());
     let name = named.text("name")?;
-    let salinity = read_salinity(&mut named, &mut notes)?;
+    let (salinity, stated_salinity) = read_salinity(&mut named, &mut notes)?;
     read_depth(&mut named, &mut notes)?;
     let (setting, temperature) = analysis::read_setting(&mut named, &mut defaults)?;
     let ph_scale = read_scale(&mut named)?;
-    let ph_temperature =
-        named.take("pH_temperature").map(|value| reaction::temperature("pH_temperature", value));
-    let ph_temperature = ph_temperature.transpose()?;
-    let sea = Sea { salinity, pressure: setting.pressure, ph_scale };
+    let ph_temperature = read_temperature(&mut named, "pH_temperature")?;
+    let co2_temperature = read_temperature(&mut named, "fCO2_temperature")?;
+    let sea = Sea { salinity, stated_salinity, pressure: setting.pressure, ph_scale };
     let air = named.quantity("air_pressure", Kind::Pressure)?;
     let air = air.map_or(Ok(Pressure::ATMOSPHERE), |given| analysis::pressure_of("air_pressure", &given))?;
     let density = analysis::read_density(&mut named)?;
-    let volume_temperature =
-        named.take("volume_temperature").map(|value| reaction::temperature("volume_temperature", value));
+    let volume_temperature = read_temperature(&mut named, "volume_temperature")?;
     let make_up = named.text("make_up")?;
 
     let mut named = Named::new(in_solution(named.rest())?);
-    let co2 = with_fugacity(&mut named, setting.temperature, salinity, air)?;
+    let co2 = with_fugacity(&mut named, co2_temperature.unwrap_or(setting.temperature), salinity, air)?;
     let evidence = analysis::read_evidence(&mut named, co2)?;
-    check_ph_temperature(ph_temperature, &evidence)?;
+    let measured_at = measured_at(ph_temperature, co2_temperature, &evidence)?;
     let mut measured = Measured {
         evidence,
         make_up,
         density,
-        volume_temperature: volume_temperature.transpose()?,
-        temperature: temperature.filter(|_| ph_temperature.is_none()),
+        volume_temperature,
+        temperature: temperature.filter(|_| measured_at.is_none()),
         sea: Some(sea),
-        ph_temperature,
+        measured_at,
         ..Measured::default()
     };
     for (key, value) in named.rest() {
@@ -93,28 +92,39 @@ pub fn solution(measured: &Measured, salinity: f64) -> Solution {
     Solution::seawater(density, salinity)
 }
 
-fn read_salinity(named: &mut Named, notes: &mut Vec<String>) -> Result<f64, KeyFault> {
+fn read_temperature(named: &mut Named, key: &'static str) -> Result<Option<Temperature>, KeyFault> {
+    named.take(key).map(|value| reaction::temperature(key, value)).transpose()
+}
+
+/// Practical salinity, and what it was stated as where that came with an uncertainty.
+fn read_salinity(named: &mut Named, notes: &mut Vec<String>) -> Result<(f64, Option<Quantity>), KeyFault> {
     let given = named.take("salinity").ok_or_else(|| {
         KeyFault::new(
             "salinity",
             "a seawater needs its `salinity`, such as 35 (practical) or \"35.2 g/kg\" (absolute)",
         )
     })?;
-    let absolute = match &given {
+    let stated = match &given {
         Value::Text(text) => Quantity::parse(text, Kind::Salinity, "salinity").ok(),
         Value::Quantity(quantity) => Some(quantity.clone()),
         _ => None,
     };
-    match absolute.filter(|given| given.unit().symbol() != "PSU").and_then(|given| {
+    let is_uncertain = |stated: &Quantity| stated.sigma().is_some_and(|sigma| sigma > 0.0);
+    let absolute = stated.as_ref().filter(|given| given.unit().symbol() != "PSU").and_then(|given| {
         ["g/kg", "g/kg(solution)"].iter().find_map(|unit| given.to(&Unit::known(unit)).ok())
-    }) {
-        Some(absolute) => {
-            let practical = absolute.value() / seawater::REFERENCE_SALINITY_PER_SALINITY;
-            notes.push(format!("absolute salinity {} g/kg as practical salinity {practical:.4}, of the reference composition", absolute.value()));
-            reaction::salinity("salinity", Value::Number(practical))
-        }
-        None => reaction::salinity("salinity", given),
-    }
+    });
+    let Some(absolute) = absolute else {
+        return Ok((reaction::salinity("salinity", given)?, stated.filter(is_uncertain)));
+    };
+    let per_absolute = 1.0 / seawater::REFERENCE_SALINITY_PER_SALINITY;
+    let practical = absolute.value() * per_absolute;
+    notes.push(format!(
+        "absolute salinity {} g/kg as practical salinity {practical:.4}, of the reference composition",
+        absolute.value()
+    ));
+    let stated = Quantity::from_partials(practical, Unit::known("PSU"), &[(&absolute, per_absolute)]);
+    let stated = stated.map_err(|error| KeyFault::new("salinity", error.to_string()))?;
+    Ok((reaction::salinity("salinity", Value::Number(practical))?, Some(stated).filter(is_uncertain)))
 }
 
 /// A depth becomes the pressure there.
@@ -160,17 +170,35 @@ fn read_scale(named: &mut Named) -> Result<PhScale, KeyFault> {
     }
 }
 
-fn check_ph_temperature(given: Option<Temperature>, evidence: &Evidence) -> Result<(), KeyFault> {
-    let fault = |message: &str| Err(KeyFault::new("pH_temperature", message));
-    match given {
-        Some(_) if evidence.ph.is_none() => {
-            fault("`pH_temperature` is that of a measured `pH`: give that too")
+/// The temperature of the laboratory in which pH, a fugacity or both were measured; what is measured with them, carbon and
+/// alkalinity, does not change with temperature.
+fn measured_at(
+    ph: Option<Temperature>,
+    co2: Option<Temperature>,
+    evidence: &Evidence,
+) -> Result<Option<Temperature>, KeyFault> {
+    let fault = |key: &str, message: &str| Err(KeyFault::new(key, message));
+    match (ph, co2) {
+        (Some(_), _) if evidence.ph.is_none() => {
+            fault("pH_temperature", "`pH_temperature` is that of a measured `pH`: give that too")
         }
-        Some(_) if evidence.co2.is_some() => fault(
-            "a pH and a fugacity measured at different temperatures do not belong to one equilibrium: give pH with \
-             `DIC` or `alkalinity`, which do not change with temperature",
+        (_, Some(_)) if evidence.co2.is_none() => fault(
+            "fCO2_temperature",
+            "`fCO2_temperature` is that of a measured `fCO2`, `pCO2` or `xCO2`: give that too",
         ),
-        _ => Ok(()),
+        (Some(ph), Some(co2)) if ph == co2 => Ok(Some(ph)),
+        (Some(_), _) if evidence.co2.is_some() => fault(
+            "pH_temperature",
+            "a pH and a fugacity measured at different temperatures do not belong to one equilibrium: give both at one \
+             (`pH_temperature` with the same `fCO2_temperature`), or either with `DIC` or `alkalinity`, which do not \
+             change with temperature",
+        ),
+        (_, Some(_)) if evidence.ph.is_some() => fault(
+            "fCO2_temperature",
+            "a fugacity and a pH measured at different temperatures do not belong to one equilibrium: give both at one \
+             (`fCO2_temperature` with the same `pH_temperature`), or either with `DIC` or `alkalinity`",
+        ),
+        (ph, co2) => Ok(ph.or(co2)),
     }
 }
 

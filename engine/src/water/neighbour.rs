@@ -158,9 +158,10 @@ impl GasPhase {
     /// A fault of the key concerned.
     pub fn headspace(mut given: Named) -> Result<Self, KeyFault> {
         let example = "write `.headspace(#{ volume: \"50 mL\", p: #{ \"CO2(g)\": \"0.05 bar\" } })`";
-        let volume = volume(given.take("volume"), example)?;
-        let gases = gases("p", given.take("p"), example)?;
+        let (litres, filled) = (given.take("volume"), given.take("p"));
         given.finish()?;
+        let volume = volume(litres, example)?;
+        let gases = gases("p", filled, example)?;
         let pressure = |(gas, value): (String, Value)| {
             // In budgets it is told from the constant of the gas.
             let read = pressure(&format!("p({gas})"), value);
@@ -182,17 +183,16 @@ impl GasPhase {
     /// A fault of the key concerned.
     pub fn bubble(mut given: Named) -> Result<Self, KeyFault> {
         let example = "write `.bubble(#{ pressure: \"1 atm\", x: #{ \"CO2(g)\": 0.05, \"N2(g)\": 0.95 }, volume: \"100 mL\" })`";
-        let whole = given.take("pressure").ok_or_else(|| missing("pressure", example))?;
+        let [whole, litres, fractions] = ["pressure", "volume", "x"].map(|key| given.take(key));
+        given.finish()?;
+        let whole = whole.ok_or_else(|| missing("pressure", example))?;
         let whole = pressure("pressure", whole)?;
         if whole.value() <= 0.0 {
             return Err(KeyFault::new("pressure", "the pressure of a gas phase is above zero"));
         }
-        let gases = gases("x", given.take("x"), example)?;
-        let volume = volume(
-            given.take("volume"),
-            "an unlimited gas keeps its fugacities: `.open_to(\"CO2(g)\", \"420 uatm\")`",
-        )?;
-        given.finish()?;
+        let gases = gases("x", fractions, example)?;
+        let volume =
+            volume(litres, "an unlimited gas keeps its fugacities: `.open_to(\"CO2(g)\", \"420 uatm\")`")?;
         let fractions = mole_fractions(gases)?;
         let part = |x: f64| Quantity::from_partials(x * whole.value(), Unit::known("bar"), &[(&whole, x)]);
         let part = |(gas, x): (String, f64)| {
@@ -242,21 +242,21 @@ impl Exchanger {
             Value::Map(map) => Named::new(map),
             capacity => Named::new([("capacity".to_string(), capacity)].into()),
         };
-        let capacity = given.quantity("capacity", Kind::Alkalinity)?.ok_or_else(|| {
+        let capacity = given.quantity("capacity", Kind::Alkalinity)?;
+        let (convention, form) = (given.text("convention")?, given.text("form")?);
+        given.finish()?;
+        let capacity = capacity.ok_or_else(|| {
             missing("capacity", "write `.exchanger(\"clay\", \"2 meq/kg\")`, per kilogram of water")
         })?;
-        let capacity = concentration::alkalinity(&capacity)
-            .map_err(|message| KeyFault::new("capacity", format!("`capacity`: {message}")))?;
-        if capacity.per != Per::Water || capacity.moles.value() <= 0.0 {
-            let message = "the sites of an exchanger are counted per kilogram of water and are above zero, such as `2 meq/kg`";
-            return Err(KeyFault::new("capacity", message));
-        }
-        let convention = match given.text("convention")?.as_deref() {
-            None => Convention::GainesThomas,
-            Some(word) => Convention::named(word)?,
+        let wrong = || {
+            let message = "the sites of an exchanger are equivalents per kilogram of water, above zero, such as `2 meq/kg`";
+            KeyFault::new("capacity", message)
         };
-        let form = given.text("form")?;
-        given.finish()?;
+        let capacity = concentration::alkalinity(&capacity).map_err(|_| wrong())?;
+        if capacity.per != Per::Water || capacity.moles.value() <= 0.0 {
+            return Err(wrong());
+        }
+        let convention = convention.map_or(Ok(Convention::GainesThomas), |word| Convention::named(&word))?;
         Ok(Self { name: name.into(), capacity, convention, form })
     }
 }
@@ -286,14 +286,15 @@ impl Surface {
     /// A fault of the key concerned.
     pub fn read(name: &str, mut given: Named) -> Result<Self, KeyFault> {
         let example = "write `#{ sites: \"2.25 mmol/g\", area: \"600 m2/g\", mass: \"0.1 g\", model: \"diffuse layer\" }`";
-        let mass = given.quantity("mass", Kind::Mass)?.ok_or_else(|| missing("mass", example))?;
-        let mass = positive("mass", &mass, "g")?;
-        let area = given.quantity("area", Kind::SpecificArea)?.ok_or_else(|| {
-            missing("area", "a surface without an area has no charge density; give `area: \"600 m2/g\"`")
-        })?;
-        let area = positive("area", &area, "m2/g")?;
-        let sites = given.take("sites").ok_or_else(|| missing("sites", example))?;
-        let sites = match sites {
+        let mass = given.quantity("mass", Kind::Mass)?;
+        let area = given.quantity("area", Kind::SpecificArea)?;
+        let capacitance = given.quantity("capacitance", Kind::Capacitance)?;
+        let (model, sites) = (given.text("model")?, given.take("sites"));
+        given.finish()?;
+        let mass = positive("mass", &mass.ok_or_else(|| missing("mass", example))?, "g")?;
+        let without = "a surface without an area has no charge density; give `area: \"600 m2/g\"`";
+        let area = positive("area", &area.ok_or_else(|| missing("area", without))?, "m2/g")?;
+        let sites = match sites.ok_or_else(|| missing("sites", example))? {
             Value::Map(map) => map.into_iter().collect(),
             one => vec![(name.to_string(), one)],
         };
@@ -304,29 +305,29 @@ impl Surface {
         if sites.is_empty() {
             return Err(missing("sites", example));
         }
-        let capacitance = given.quantity("capacitance", Kind::Capacitance)?;
-        let layer = match (given.text("model")?.as_deref(), capacitance) {
-            (Some("diffuse layer") | None, None) => Layer::Diffuse,
-            (Some("diffuse layer") | None, Some(_)) => {
-                let message = "`capacitance` belongs to `model: \"constant capacitance\"`";
-                return Err(KeyFault::new("capacitance", message));
-            }
-            (Some("constant capacitance"), Some(capacitance)) => {
-                Layer::ConstantCapacitance(positive("capacitance", &capacitance, "F/m2")?)
-            }
-            (Some("constant capacitance"), None) => {
-                return Err(missing(
-                    "capacitance",
-                    "the constant capacitance model needs one, such as `\"1.0 F/m2\"`",
-                ));
-            }
-            (Some(word), _) => {
-                return Err(unknown("model", word, &["diffuse layer", "constant capacitance"]));
-            }
-        };
-        given.finish()?;
+        let layer = Layer::named(model.as_deref(), capacitance)?;
         let area = product(&area, &mass, "m2")?;
         Ok(Self { name: name.into(), sites, area, layer })
+    }
+}
+
+impl Layer {
+    fn named(model: Option<&str>, capacitance: Option<Quantity>) -> Result<Self, KeyFault> {
+        match (model, capacitance) {
+            (Some("diffuse layer") | None, None) => Ok(Self::Diffuse),
+            (Some("constant capacitance"), Some(capacitance)) => {
+                Ok(Self::ConstantCapacitance(positive("capacitance", &capacitance, "F/m2")?))
+            }
+            (Some("diffuse layer") | None, Some(_)) => {
+                let message = "`capacitance` belongs to `model: \"constant capacitance\"`";
+                Err(KeyFault::new("capacitance", message))
+            }
+            (Some("constant capacitance"), None) => Err(missing(
+                "capacitance",
+                "the constant capacitance model needs one, such as `\"1.0 F/m2\"`",
+            )),
+            (Some(word), _) => Err(unknown("model", word, &["diffuse layer", "constant capacitance"])),
+        }
     }
 }
 

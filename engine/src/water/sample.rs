@@ -11,7 +11,7 @@ use super::treatment::Treatment;
 use crate::ledger::{Ledger, LedgerError, Sea};
 use crate::named::{KeyFault, Value};
 use crate::quantity::Quantity;
-use crate::units::{Pressure, Temperature};
+use crate::units::{Pressure, Temperature, Unit};
 
 /// A water sample; cheap to clone.
 #[derive(Clone, Debug)]
@@ -231,7 +231,7 @@ impl Sample {
     #[must_use]
     pub fn sea(&self) -> Option<Sea> {
         match &self.0.analysis {
-            Analysis::Measured(measured) => measured.sea,
+            Analysis::Measured(measured) => measured.sea.clone(),
             Analysis::Dissolved(_) => self.0.ledger.as_ref().and_then(Ledger::sea),
             Analysis::Mixed(parts) => mixed_sea(parts, self.setting().pressure),
             Analysis::Spoilt(_) => None,
@@ -448,7 +448,12 @@ fn mixed_sea(parts: &[(Sample, f64)], pressure: Pressure) -> Option<Sea> {
     let seas: Vec<(Sea, f64)> = seas.collect::<Option<_>>()?;
     let salinity = seas.iter().map(|(sea, share)| sea.salinity * share).sum();
     let ph_scale = seas.first()?.0.ph_scale;
-    Some(Sea { salinity, pressure, ph_scale })
+    let stated = seas.iter().filter_map(|(sea, share)| Some((sea.stated_salinity.as_ref()?, *share)));
+    let stated: Vec<(&Quantity, f64)> = stated.collect();
+    let unit = || Unit::known("PSU");
+    let stated_salinity =
+        if stated.is_empty() { None } else { Quantity::from_partials(salinity, unit(), &stated).ok() };
+    Some(Sea { salinity, stated_salinity, pressure, ph_scale })
 }
 
 impl std::fmt::Debug for Inner {

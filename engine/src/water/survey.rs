@@ -151,7 +151,9 @@ fn marine_kind(title: &str) -> ColumnKind {
 
 fn kind_of(key: &str) -> Option<Kind> {
     match key {
-        "temperature" | "volume_temperature" | "pH_temperature" => Some(Kind::Temperature),
+        "temperature" | "volume_temperature" | "pH_temperature" | "fCO2_temperature" => {
+            Some(Kind::Temperature)
+        }
         "salinity" => Some(Kind::Salinity),
         "depth" => Some(Kind::Length),
         "latitude" | "ph_scale" => None,

@@ -17,6 +17,11 @@ enum Form {
 
 /// Returns whether the script ran to its end and the report was written.
 pub fn run(asked: &cli::Report, look: &Look, limits: &Limits) -> bool {
+    made(asked, look, limits, None)
+}
+
+/// The same; a page with `when` it was made asks the browser for a newer one now and then.
+pub fn made(asked: &cli::Report, look: &Look, limits: &Limits, when: Option<String>) -> bool {
     let job = Job { file: &asked.file, arguments: &asked.arguments, write: &asked.write, look, limits };
     let messages = job.messages();
     let output = asked.output.clone().unwrap_or_else(|| beside_us(&asked.file));
@@ -36,7 +41,7 @@ pub fn run(asked: &cli::Report, look: &Look, limits: &Limits) -> bool {
             return false;
         }
     };
-    match write(&job, &script, form, &output) {
+    match write(&job, &script, (form, when), &output) {
         Ok(outcome) => {
             eprintln!("wrote {}", output.display());
             outcome.failure.iter().for_each(|diagnostic| messages.print(diagnostic));
@@ -53,9 +58,9 @@ pub fn run(asked: &cli::Report, look: &Look, limits: &Limits) -> bool {
 fn write(
     job: &Job,
     script: &Script,
-    form: Form,
+    (form, when): (Form, Option<String>),
     output: &Path,
-) -> Result<Outcome, lysocline_engine::script::Diagnostic> {
+) -> Result<Outcome, Box<lysocline_engine::script::Diagnostic>> {
     let outcome = job.gather(script, Files::Written);
     let plain = diagnostic::Report { color: false };
     let made = report::Report {
@@ -65,6 +70,7 @@ fn write(
         sources: outcome.sources.clone(),
         making: making(job, script, &outcome),
         failure: outcome.failure.as_ref().map(|failure| plain.text(failure)),
+        watched: when,
     };
     let text = match form {
         Form::Html => page::draw(&made),
@@ -72,7 +78,8 @@ fn write(
     };
     let folder = output.parent().map_or(Ok(()), std::fs::create_dir_all);
     folder.and_then(|()| write_whole(output, text.as_bytes())).map_err(|error| {
-        job::complaint(format!("cannot write `{}`: {}", output.display(), error.to_string().to_lowercase()))
+        let reason = error.to_string().to_lowercase();
+        Box::new(job::complaint(format!("cannot write `{}`: {reason}", output.display())))
     })?;
     Ok(outcome)
 }

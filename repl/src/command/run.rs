@@ -11,14 +11,17 @@ use crate::job::{self, Job, Script};
 
 /// Returns whether the script ran to its end.
 pub fn run(run: &Run, look: &Look, limits: &Limits) -> bool {
-    let job = Job { file: &run.file, arguments: &run.arguments, write: &run.write, look, limits };
+    let given = Job { file: &run.file, arguments: &run.arguments, write: &run.write, look, limits };
     let script = match job::read(&run.file) {
         Ok(script) => script,
         Err(diagnostic) => {
-            job.messages().print(&diagnostic);
+            given.messages().print(&diagnostic);
             return false;
         }
     };
+    let sealed_with = script.sealed_arguments();
+    let as_sealed = run.sealed && run.arguments.is_empty();
+    let job = if as_sealed { Job { arguments: &sealed_with, ..given } } else { given };
     match ledgers(&script, run.sealed) {
         Ok(Constants::Shipped(note)) => {
             note.iter().for_each(|note| eprintln!("{note}"));

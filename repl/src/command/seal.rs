@@ -35,13 +35,6 @@ fn seal(job: &Job) -> Result<String, Box<Diagnostic>> {
     if !script.text.is_empty() && !script.text.ends_with('\n') {
         script.text.push('\n');
     }
-    if !job.arguments.is_empty() {
-        let message = "a sealed file is run again without arguments, so it cannot be sealed with any";
-        return Err(Box::new(
-            job::complaint(message)
-                .help("write the values into the script: `args.get(\"file\", \"survey.csv\")`"),
-        ));
-    }
     let in_use = in_force::stand_in([]);
     let outcome = job.gather(&script, Files::Untouched);
     let ledgers = in_use.asked();
@@ -58,6 +51,7 @@ fn seal(job: &Job) -> Result<String, Box<Diagnostic>> {
     let seal = Seal {
         program: env!("CARGO_PKG_VERSION").to_owned(),
         script: digest_of(script.text.as_bytes()),
+        arguments: job.arguments.iter().map(|word| word.to_string_lossy().into_owned()).collect(),
         files: files(job, &outcome),
         seeds: job.seeds(&script),
         values: outcome.records.clone(),

@@ -7,7 +7,7 @@ use std::collections::BTreeMap;
 use std::path::Path;
 
 use lysocline_engine::chem::Reaction;
-use lysocline_engine::ledger::{Ledger, in_force, shipped};
+use lysocline_engine::ledger::{Constituent, Ledger, in_force, shipped};
 use lysocline_engine::present::{Cell, Column, Style, Table, number};
 use lysocline_engine::script::record::Recorded;
 use lysocline_engine::script::sandbox::digest_of;
@@ -80,6 +80,8 @@ fn verify(job: &Job) -> Result<Verdict, Box<Diagnostic>> {
             return Err(Box::new(job::complaint(format!("`{}` cannot be verified: {fault}", script.name))));
         }
     };
+    let arguments = script.sealed_arguments();
+    let job = &Job { arguments: &arguments, ..*job };
     let mut notes = Vec::new();
     let program = env!("CARGO_PKG_VERSION");
     if seal.program != program {
@@ -90,7 +92,7 @@ fn verify(job: &Job) -> Result<Verdict, Box<Diagnostic>> {
         notes.push("the script was edited after it was sealed".to_owned());
     }
     let changed = changed_files(job, &seal);
-    notes.extend(changed.iter().cloned());
+    notes.extend(changed.iter().map(|(_, words)| words.clone()));
     let elsewhere = why_elsewhere(script_edited, &changed, &seal);
     let then = records(job, &script, &seal.ledgers)?;
     let (today, changes) = with_todays(job, &script, &seal, &then, &mut notes)?;
@@ -120,13 +122,17 @@ fn verify(job: &Job) -> Result<Verdict, Box<Diagnostic>> {
     Ok(Verdict { name: script.name.clone(), notes, edited, values })
 }
 
-/// Files that are gone or different, in words.
-fn changed_files(job: &Job, seal: &Seal) -> Vec<String> {
+fn plural(n: usize, word: &str) -> String {
+    if n == 1 { word.to_owned() } else { format!("{word}s") }
+}
+
+/// Files that are gone or different: name, and what became of it in words.
+fn changed_files(job: &Job, seal: &Seal) -> Vec<(String, String)> {
     let folder = job.file.parent().unwrap_or(Path::new(""));
     let fault = |(name, digest): &(String, String)| match std::fs::read(folder.join(name)) {
-        Err(_) => Some(format!("the file `{name}` that it read is gone")),
+        Err(_) => Some((name.clone(), format!("the file `{name}` that it read is gone"))),
         Ok(content) if digest_of(&content) != *digest => {
-            Some(format!("the file `{name}` that it reads has changed"))
+            Some((name.clone(), format!("the file `{name}` that it reads has changed")))
         }
         Ok(_) => None,
     };
@@ -134,13 +140,14 @@ fn changed_files(job: &Job, seal: &Seal) -> Vec<String> {
 }
 
 /// What else than a constant can have moved a value.
-fn why_elsewhere(edited: bool, changed: &[String], seal: &Seal) -> String {
+fn why_elsewhere(edited: bool, changed: &[(String, String)], seal: &Seal) -> String {
     let mut causes = Vec::new();
     if edited {
         causes.push("the edited script".to_owned());
     }
     if !changed.is_empty() {
-        causes.push("a changed file".to_owned());
+        let names: Vec<String> = changed.iter().map(|(name, _)| format!("`{name}`")).collect();
+        causes.push(format!("the changed {} {}", plural(names.len(), "file"), names.join(", ")));
     }
     if seal.program != env!("CARGO_PKG_VERSION") {
         causes.push(format!("lysocline {} instead of {}", env!("CARGO_PKG_VERSION"), seal.program));
@@ -180,22 +187,12 @@ fn with_todays(
             notes.push(format!("the ledger `{}` is no longer shipped", old.name()));
             continue;
         };
-        if now.digest() == old.digest() {
+        let changes = changes(old, &now);
+        if changes.is_empty() {
             continue;
         }
-        let changes = changes(old, &now);
         differ += changes.len();
-        notes.push(format!(
-            "the ledger `{}` has changed: edition {} then, {} now; {}",
-            old.name(),
-            old.edition().unwrap_or("unknown"),
-            now.edition().unwrap_or("unknown"),
-            if changes.len() == 1 {
-                "1 constant differs".to_owned()
-            } else {
-                format!("{} constants differ", changes.len())
-            }
-        ));
+        notes.push(ledger_note(old, &now, &changes));
         for (what, ledger) in changes {
             let mut ledgers = seal.ledgers.clone();
             ledgers[i] = ledger;
@@ -220,6 +217,21 @@ fn with_todays(
     Ok((today, changes))
 }
 
+/// What became of a ledger, in one line that names its differences where they are few.
+fn ledger_note(old: &Ledger, now: &Ledger, changes: &[(String, Ledger)]) -> String {
+    const NAMED: usize = 4;
+    let names: Vec<&str> = changes.iter().take(NAMED).map(|(what, _)| what.as_str()).collect();
+    let more = changes.len() - names.len();
+    let more = if more > 0 { format!("; and {more} more") } else { String::new() };
+    format!(
+        "the ledger `{}` has changed: edition {} then, {} now; different are {}{more}",
+        old.name(),
+        old.edition().unwrap_or("unknown"),
+        now.edition().unwrap_or("unknown"),
+        names.join("; "),
+    )
+}
+
 /// Every difference between two ledgers, each with the old ledger as this one difference would make it.
 fn changes(old: &Ledger, now: &Ledger) -> Vec<(String, Ledger)> {
     let then: BTreeMap<&str, &Reaction> = old.reactions().collect();
@@ -228,40 +240,100 @@ fn changes(old: &Ledger, now: &Ledger) -> Vec<(String, Ledger)> {
     for (name, reaction) in &today {
         let changed = match then.get(name) {
             None => old.with_reaction(name, reaction).ok().map(|ledger| (format!("{name} (new)"), ledger)),
-            Some(before) if differs(before, reaction) => {
-                old.replace(name, reaction).ok().map(|ledger| (words(name, before, reaction), ledger))
-            }
-            Some(_) => None,
+            Some(before) => difference(before, reaction).and_then(|what| {
+                old.replace(name, reaction).ok().map(|ledger| (format!("{name} ({what})"), ledger))
+            }),
         };
         changes.extend(changed);
     }
     for name in then.keys().filter(|name| !today.contains_key(*name)) {
         changes.extend(old.without(name).ok().map(|ledger| (format!("{name} (gone)"), ledger)));
     }
-    let written = |ledger: &Ledger| ledger.activity().written(|_| true);
-    if written(old) != written(now) {
-        changes.push(("the activity model".to_owned(), old.with_activity(now.activity().clone())));
+    for constituent in now.composition() {
+        let before = old.composition().find(|own| own.name == constituent.name);
+        if let Some(what) = constituent_difference(before, constituent) {
+            let name = format!("{} ({what})", constituent.name);
+            changes.push((name, old.with_constituent(constituent.clone())));
+        }
     }
+    changes.extend(activity_difference(old, now));
     changes
 }
 
-fn differs(a: &Reaction, b: &Reaction) -> bool {
-    let text = |reaction: &Reaction| {
-        let log_k = reaction.constant().ok().map(|constant| format!("{:?}", constant.log_k));
-        (reaction.equation().to_string(), log_k)
-    };
-    text(a) != text(b)
-}
-
-/// `calcite (log K -8.480, was -8.470)`.
-fn words(name: &str, before: &Reaction, after: &Reaction) -> String {
+/// What two constants of one name differ in, the first of what matters most: `log K -8.4800, was -8.4700`.
+fn difference(before: &Reaction, after: &Reaction) -> Option<String> {
     let log_k = |reaction: &Reaction| reaction.log_k().ok().map(|log_k| log_k.value());
+    let function = |reaction: &Reaction| {
+        reaction.constant().ok().map(|constant| {
+            let volume = constant.conditions.medium.salinity().map(|_| format!("{:?}", constant.volume));
+            (format!("{:?}", constant.log_k), volume)
+        })
+    };
+    let sources = |reaction: &Reaction| {
+        let uses = reaction.constant().ok().map(|constant| constant.history.uses().to_vec());
+        let mut sources: Vec<Option<String>> =
+            uses.unwrap_or_default().iter().map(|(origin, _)| origin.source.clone()).collect();
+        sources.sort();
+        sources
+    };
+    if before.equation().to_string() != after.equation().to_string() {
+        return Some("its equation".to_owned());
+    }
     match (log_k(before), log_k(after)) {
         (Some(before), Some(after)) if before != after => {
-            format!("{name} (log K {after:.4}, was {before:.4})")
+            return Some(format!("log K {after:.4}, was {before:.4}"));
         }
-        _ => format!("{name} (its function of temperature, or its equation)"),
+        _ if function(before) != function(after) => {
+            return Some("its function of temperature and pressure".to_owned());
+        }
+        _ => {}
     }
+    let (was, is) = (sigma(before), sigma(after));
+    if !same_sigma(was, is) {
+        let shown = |sigma: Option<f64>| sigma.map_or("unknown".to_owned(), number::shown);
+        return Some(format!("its uncertainty is {}, was {}", shown(is), shown(was)));
+    }
+    (sources(before) != sources(after)).then(|| "its source".to_owned())
+}
+
+fn sigma(reaction: &Reaction) -> Option<f64> {
+    reaction.log_k().ok().and_then(|log_k| log_k.sigma())
+}
+
+/// An uncertainty is written in a seal as the constant's own, so it may come back with another last digit.
+fn same_sigma(a: Option<f64>, b: Option<f64>) -> bool {
+    match (a, b) {
+        (Some(a), Some(b)) => (a - b).abs() <= 1e-9 * a.abs().max(b.abs()),
+        (a, b) => a.is_none() == b.is_none(),
+    }
+}
+
+fn constituent_difference(before: Option<&Constituent>, after: &Constituent) -> Option<String> {
+    let Some(before) = before else { return Some("new in the composition of seawater".to_owned()) };
+    if before.per_salinity != after.per_salinity || before.of != after.of {
+        let shown = |constituent: &Constituent| number::shown(constituent.per_salinity);
+        return Some(format!("{} mol/kg per unit of salinity, was {}", shown(after), shown(before)));
+    }
+    if !same_sigma(before.relative_sigma(), after.relative_sigma()) {
+        return Some("its uncertainty".to_owned());
+    }
+    (before.source != after.source).then(|| "its source".to_owned())
+}
+
+/// The parameters that differ for the species of the old ledger, and the old ledger with those of today.
+fn activity_difference(old: &Ledger, now: &Ledger) -> Option<(String, Ledger)> {
+    let written = |ledger: &Ledger| ledger.activity().written(|ion| old.find_species(ion.key()).is_ok());
+    let (was, is) = (written(old), written(now));
+    let what = match old.activity().name() == now.activity().name() {
+        false => format!("is {}, was {}", now.activity().name(), old.activity().name()),
+        true if was == is => return None,
+        true => {
+            let different =
+                is.iter().filter(|option| !was.contains(option)).map(|(key, _)| format!("`{key}`"));
+            format!("parameters {}", different.collect::<Vec<_>>().join(", "))
+        }
+    };
+    Some((format!("the activity model ({what})"), old.with_activity(now.activity().clone())))
 }
 
 fn cause(value: &Compared, elsewhere: &str, changes: &[Change]) -> String {

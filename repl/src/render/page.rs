@@ -14,9 +14,22 @@ use super::report::{Block, Report};
 /// What marks a page as ours, so that a later run may replace it.
 pub const MARK: &str = "<meta name=\"generator\" content=\"lysocline\">";
 
+/// Browsers read the file again every two seconds, and stay where they are on the page.
+const RELOAD: &str = "<meta http-equiv=\"refresh\" content=\"2\">\n";
+
 /// The page.
 pub fn draw(report: &Report) -> String {
     let mut body = String::new();
+    let mut reload = "";
+    if let Some(when) = &report.watched {
+        reload = RELOAD;
+        let _ = writeln!(
+            body,
+            "<p class=\"unit\">Made {}; reloads itself while <code>lysocline watch</code> runs.</p>",
+            escaped(when)
+        );
+        body.push_str(&failure(report));
+    }
     if !matches!(report.blocks.first(), Some(Block::Prose(text)) if text.starts_with("# ")) {
         let _ = writeln!(body, "<h1>{}</h1>", escaped(&report.title));
     }
@@ -29,21 +42,26 @@ pub fn draw(report: &Report) -> String {
             _ => run.iter().for_each(|block| body.push_str(&self::block(block))),
         }
     }
-    if let Some(failure) = &report.failure {
-        let _ = writeln!(
-            body,
-            "<div class=\"failure\" role=\"alert\"><strong>The script did not come to its end.</strong><pre>{}</pre></div>",
-            escaped(failure)
-        );
+    if report.watched.is_none() {
+        body.push_str(&failure(report));
     }
     body.push_str(&ending(report));
     format!(
         "<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n\
          <meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n\
-         <meta name=\"color-scheme\" content=\"light dark\">\n{MARK}\n<title>{}</title>\n<style>{STYLE}{}</style>\n</head>\n\
+         <meta name=\"color-scheme\" content=\"light dark\">\n{MARK}\n{reload}<title>{}</title>\n<style>{STYLE}{}</style>\n</head>\n\
          <body>\n<main>\n{body}</main>\n</body>\n</html>\n",
         escaped(&report.title),
         plot_svg::style_sheet()
+    )
+}
+
+/// Why the script broke off: at the top of a page somebody works on, where it broke off on others.
+fn failure(report: &Report) -> String {
+    let Some(failure) = &report.failure else { return String::new() };
+    format!(
+        "<div class=\"failure\" role=\"alert\"><strong>The script did not come to its end.</strong><pre>{}</pre></div>\n",
+        escaped(failure)
     )
 }
 

@@ -21,6 +21,8 @@ pub struct Report {
     pub making: Vec<String>,
     /// Why the script did not come to its end.
     pub failure: Option<String>,
+    /// When it was made, where the script is watched and the page has to look for a newer one.
+    pub watched: Option<String>,
 }
 
 /// One piece of a report.

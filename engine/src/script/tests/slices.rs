@@ -24,6 +24,20 @@ fn case(entries: &[&str], name: &str, expected: &[&str]) {
 }
 
 #[test]
+fn of_a_function_defined_again_the_newest_is_written_where_that_is_sound() {
+    let again =
+        session(&["fn f(x) { x + 1 }", "let b = 2;", "fn f(x) { x + b0() } fn b0() { 2 }", "let a = f(b)"]);
+    assert_eq!(again.script(), "let b = 2;\nfn f(x) { x + b0() }\nfn b0() { 2 }\nlet a = f(b);\n");
+    // Used before it was replaced, also through another function or a closure, it has to stay.
+    for used in
+        ["let a = f(1);", "let a = [1].map(f);", "let a = [1].map(|x| f(x));", "fn g() { f(1) } let a = g();"]
+    {
+        let script = session(&["fn f(x) { x }", used, "fn f(x) { x + 1 }"]).script();
+        assert_eq!(script.matches("fn f(x)").count(), 2, "{script}");
+    }
+}
+
+#[test]
 fn only_what_a_variable_needs() {
     case(
         &["let a = 1;", "let b = 2;", "let c = a + 1;", "b", "print(c);"],
