@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 
 use lysocline_engine::chem::Species;
 use lysocline_engine::equilibrium::{EquilibriumError, State, equilibrate};
-use lysocline_engine::ledger::{ActivityChoice, Ledger};
+use lysocline_engine::ledger::{ActivityChoice, GasModel, Ledger};
 use lysocline_engine::named::Value;
 use lysocline_engine::process::{self, Readings, Run, Titration, Vary, gran, monte_carlo};
 use lysocline_engine::quantity::{Quantity, correlate};
@@ -653,4 +653,28 @@ fn what_cannot_be_done_says_what_can() {
     let misspelt =
         monte_carlo(&lake(), (10, 1), &Vary::Named(vec!["Mgg".into()]), None, &Settings::default(), &|_| ());
     contains(&misspelt.unwrap_err().to_string(), &["`Mgg`", "did you mean `Mg`?"]);
+}
+
+/// f = φ p: at one atmosphere CO2 as a pure gas has φ = 0.995 (Weiss 1974; recalled), and the fugacity itself is that of the
+/// water whatever the model says of pressures.
+#[test]
+fn pressures_follow_fugacities_by_the_gas_model() {
+    let water = soft();
+    let real = freshwater().with_gas_model(GasModel::Virial);
+    let at =
+        |water: &Sample, ledger: &Ledger| equilibrate(water, Some(ledger), &Settings::default()).unwrap();
+    let (ideal, virial) = (at(&water, &freshwater()), at(&water, &real));
+    assert_eq!(get(&ideal, "p(CO2(g))"), get(&ideal, "f(CO2(g))"));
+    assert_eq!(get(&virial, "f(CO2(g))"), get(&ideal, "f(CO2(g))"));
+    let warm = at(&treated(&water, vec![Treatment::WarmTo(Temperature::REFERENCE)]), &real);
+    let phi = get(&warm, "f(CO2(g))") / get(&warm, "p(CO2(g))");
+    assert!((phi - 0.995).abs() < 2e-4, "{phi}");
+    let deep = Treatment::CompressTo(lysocline_engine::units::Pressure::from_bar(200.0).unwrap());
+    let deep = at(&treated(&water, vec![deep]), &real);
+    assert_eq!(
+        deep.get("p(CO2(g))").unwrap_err().to_string(),
+        "`p(CO2(g))`: at 200 bar `CO2(g)` is too dense for a second virial coefficient, which holds while B P/(R T) is \
+         within 0.3; `with_gas_model(\"ideal\")` takes fugacity for pressure"
+    );
+    assert_ne!(real.digest(), freshwater().digest());
 }

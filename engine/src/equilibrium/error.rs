@@ -71,7 +71,9 @@ pub enum EquilibriumError {
     #[error("interrupted")]
     Stopped,
     /// The water is none that an activity model of water as the solvent describes.
-    #[error("the water is beyond what an aqueous model describes: {0}; its constants hold for water as the solvent")]
+    #[error(
+        "the water is beyond what an aqueous model describes: {0}; its constants hold for water as the solvent"
+    )]
     BeyondModel(String),
     /// The solver did not reach its tolerances: a defect worth reporting.
     #[error(

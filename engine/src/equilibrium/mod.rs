@@ -41,9 +41,9 @@ pub use phase_rule::PhaseRule;
 pub use state::State;
 pub use trail::trail;
 
-use crate::ledger::{Ledger, shipped};
+use crate::ledger::{GasModel, Ledger, shipped};
 use crate::solve::Settings;
-use crate::water::{Analysis, Sample};
+use crate::water::{Analysis, Neighbour, Sample, Treatment};
 
 /// The equilibrium of a sample, with the ledger given, else the one that travels with it, else `freshwater`.
 ///
@@ -56,6 +56,7 @@ pub fn equilibrate(
     settings: &Settings,
 ) -> Result<State, EquilibriumError> {
     let ledger = ledger_of(sample, ledger)?;
+    check_gases(sample, &ledger)?;
     let mut analysed = match sample.analysis() {
         Analysis::Measured(measured) => analysis::analyse(sample, measured, &ledger, settings)?,
         Analysis::Spoilt(reason) => return Err(EquilibriumError::Spoilt(reason.clone())),
@@ -102,6 +103,16 @@ fn ledger_of(sample: &Sample, given: Option<&Ledger>) -> Result<Ledger, Equilibr
         ))),
         None => Ok(ledger),
     }
+}
+
+/// A gas phase beside the water is a mixture of ideal gases, whose pressures are their fugacities.
+fn check_gases(sample: &Sample, ledger: &Ledger) -> Result<(), EquilibriumError> {
+    let is_gas = |treatment: &Treatment| matches!(treatment, Treatment::Beside(neighbour) if matches!(**neighbour, Neighbour::Gas(_)));
+    if ledger.gas_model() == GasModel::Ideal || !sample.treatments().iter().any(is_gas) {
+        return Ok(());
+    }
+    let why = "a gas phase beside the water is ideal: take a ledger `.with_gas_model(\"ideal\")` for it";
+    Err(EquilibriumError::Unreachable(why.into()))
 }
 
 /// Whether the analysis holds at another temperature than the water's own, to which it is then brought.

@@ -15,10 +15,10 @@ use super::observable::{Asked, NAMES, Observable, ObservableError};
 use super::redox;
 use super::uncertainty::{Influence, Slopes, Stage, Variable};
 use crate::chem::{Element, PhScale, Rational, Species, rational};
-use crate::ledger::{Formation, Formations, Sea};
+use crate::ledger::{Formation, Formations, GasModel, Sea};
 use crate::physics::constants::LN_10;
 use crate::physics::electrode::volts_per_pe;
-use crate::physics::{gas_exchange, seawater, water};
+use crate::physics::{gas_exchange, seawater, virial, water};
 use crate::present::{Cell, Column, Table};
 use crate::quantity::{Quantity, QuantityError};
 use crate::seawater::constants::{outside_ranges, unmatched_pair};
@@ -544,7 +544,7 @@ impl State {
             }
             Observable::PartialPressure(name) => {
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
-                let factor = self.fugacity_factor(name);
+                let factor = self.fugacity_factor(name, asked)?;
                 plain(fugacity / factor, "bar", scaled(&slopes, 1.0 / factor))
             }
             Observable::MoleFraction(name) => {
@@ -552,7 +552,7 @@ impl State {
                     return answer;
                 }
                 let (fugacity, slopes) = self.fugacity(name, asked)?;
-                let per_fraction = self.dry_pressure() * self.fugacity_factor(name);
+                let per_fraction = self.dry_pressure() * self.fugacity_factor(name, asked)?;
                 plain(fugacity / per_fraction, "1", scaled(&slopes, 1.0 / per_fraction))
             }
             Observable::Amount(name) => {
@@ -678,14 +678,35 @@ impl State {
         })
     }
 
-    /// Fugacity over partial pressure: 1 but for CO2 over seawater.
-    fn fugacity_factor(&self, gas: &str) -> f64 {
-        let is_co2 = self.system().ledger().find_phase(gas).is_ok_and(|phase| phase.key() == "CO2(g)");
-        if is_co2 && self.basis() == KgOf::Solution {
-            gas_exchange::fugacity_factor(self.temperature().kelvin(), Pressure::ATMOSPHERE.bar())
-        } else {
-            1.0
+    /// Fugacity over partial pressure: for CO2 over seawater that of air at one atmosphere, else by the ledger's gas model.
+    fn fugacity_factor(&self, gas: &str, asked: &str) -> Result<f64, ObservableError> {
+        let phase =
+            self.system().ledger().find_phase(gas).map_err(|error| no_answer(asked, error.to_string()))?;
+        if self.basis() == KgOf::Solution {
+            let (t, air) = (self.temperature().kelvin(), Pressure::ATMOSPHERE.bar());
+            return Ok(if phase.key() == "CO2(g)" { gas_exchange::fugacity_factor(t, air) } else { 1.0 });
         }
+        match self.system().ledger().gas_model() {
+            GasModel::Ideal => Ok(1.0),
+            GasModel::Virial => self.virial_factor(phase.key()).map_err(|why| no_answer(asked, why)),
+        }
+    }
+
+    /// The fugacity coefficient under the pressure of the water, from a second virial coefficient.
+    fn virial_factor(&self, gas: &str) -> Result<f64, String> {
+        let known =
+            || format!("no critical constants are known of `{gas}`: they are of {}", list(&virial::gases()));
+        let critical = virial::critical(gas).ok_or_else(known)?;
+        let bar = self.pressure().bar();
+        let ln_phi = critical.ln_fugacity_coefficient(self.temperature().kelvin(), bar);
+        if ln_phi.abs() > virial::MOST_CORRECTION {
+            return Err(format!(
+                "at {bar:.0} bar `{gas}` is too dense for a second virial coefficient, which holds while B P/(R T) is within \
+                 {}; `with_gas_model(\"ideal\")` takes fugacity for pressure",
+                virial::MOST_CORRECTION
+            ));
+        }
+        Ok(ln_phi.exp())
     }
 
     /// `Σ weight · molality` over the solutes.

@@ -11,6 +11,7 @@ use toml::de::{DeTable, DeValue};
 
 use super::activity_choice::ActivityChoice;
 use super::composition::Constituent;
+use super::gas_model::GasModel;
 use super::influence;
 use super::ledger::Ledger;
 use super::shipped;
@@ -41,6 +42,8 @@ pub struct LedgerFile {
     pub edition: Option<String>,
     /// Its activity model.
     pub activity: ActivityChoice,
+    /// Its gas model.
+    pub gas_model: GasModel,
     /// Whether its constants are those of seawater.
     pub is_marine: bool,
     /// Ions that take part in no reaction.
@@ -120,7 +123,9 @@ pub fn load(file_key: &str, text: &str) -> Result<Ledger, Vec<FileFault>> {
 /// Every entry that cannot be had.
 pub(super) fn build(file: &LedgerFile) -> Result<Ledger, Vec<FileFault>> {
     let mut faults = Vec::new();
-    let mut ledger = Ledger::empty(&file.name, file.edition.clone()).with_activity(file.activity.clone());
+    let mut ledger = Ledger::empty(&file.name, file.edition.clone())
+        .with_activity(file.activity.clone())
+        .with_gas_model(file.gas_model);
     if file.is_marine {
         ledger = ledger.of_seawater();
     }
@@ -402,6 +407,7 @@ fn read_head(file_key: &str, mut named: Named) -> Result<LedgerFile, KeyFault> {
         "activity_model" => fault,
         _ => KeyFault::new("activity_options", fault.message),
     })?;
+    let gas_model = named.text("gas_model")?.map_or(Ok(GasModel::default()), |name| GasModel::read(&name))?;
     let solutes = named.texts("solutes")?.unwrap_or_default();
     let solutes = solutes.iter().map(|text| Species::parse(text)).collect::<Result<_, _>>();
     let solutes = solutes.map_err(|error| KeyFault::new("solutes", error.to_string()))?;
@@ -416,7 +422,16 @@ fn read_head(file_key: &str, mut named: Named) -> Result<LedgerFile, KeyFault> {
         }
     };
     named.finish()?;
-    Ok(LedgerFile { name, edition, activity, is_marine, solutes, from: vec![], own: ConstantFile::default() })
+    Ok(LedgerFile {
+        name,
+        edition,
+        activity,
+        gas_model,
+        is_marine,
+        solutes,
+        from: vec![],
+        own: ConstantFile::default(),
+    })
 }
 
 /// `constants` and `formations` are lists, `all` where neither is given.

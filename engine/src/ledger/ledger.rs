@@ -10,6 +10,7 @@ use super::audit::{self, Audit, Cycle};
 use super::combine::{Combined, combine_routes};
 use super::composition::{Constituent, Sea};
 use super::formation::{Formations, Leftover, in_bar, in_bar_at_sea};
+use super::gas_model::GasModel;
 use super::reconcile::{self, Reconciliation};
 use crate::chem::{Constant, LogK, Reaction, ReactionError, Species};
 use crate::nearest::nearest;
@@ -30,6 +31,7 @@ struct Inner {
     /// Ions that take part in no reaction.
     solutes: BTreeSet<Species>,
     activity: ActivityChoice,
+    gas_model: GasModel,
     /// Whether its constants are those of seawater: concentrations in mol/kg(solution).
     is_marine: bool,
     /// What goes with salinity, by name.
@@ -338,6 +340,18 @@ impl Ledger {
         if self.is_marine() { in_bar_at_sea(reaction) } else { in_bar(reaction) }
     }
 
+    /// How fugacity follows from partial pressure.
+    #[must_use]
+    pub fn gas_model(&self) -> GasModel {
+        self.0.gas_model
+    }
+
+    /// The same with another gas model.
+    #[must_use]
+    pub fn with_gas_model(&self, gas_model: GasModel) -> Self {
+        Self(Arc::new(Inner { gas_model, ..self.copy() }))
+    }
+
     /// The same with another activity model.
     #[must_use]
     pub fn with_activity(&self, activity: ActivityChoice) -> Self {
@@ -546,6 +560,10 @@ impl Ledger {
             |ion: &&Species| self.reactions().any(|(_, r)| r.equation().coefficient(ion) != 0.into());
         let solutes: Vec<&Species> = self.0.solutes.iter().filter(|ion| !reacts(ion)).collect();
         let mut text = format!("{:?} {:?} {:?}", constants.collect::<Vec<_>>(), solutes, self.0.activity);
+        // What is as ever leaves the fingerprint as it was.
+        if self.gas_model() != GasModel::default() {
+            text.push_str(self.gas_model().name());
+        }
         for (name, reaction) in self.formation_data() {
             text.push_str(&format!(
                 "{name:?} {reaction:?}",

@@ -7,6 +7,7 @@
 use std::collections::BTreeMap;
 use std::fmt::Write;
 
+use super::GasModel;
 use super::composition::Constituent;
 use super::formation::in_bar;
 use super::influence;
@@ -59,6 +60,9 @@ fn head(text: &mut String, ledger: &Ledger) {
     if !options.is_empty() {
         let options: Vec<String> = options.iter().map(|(key, value)| format!("{key} = {value}")).collect();
         let _ = writeln!(text, "activity_options = {{ {} }}", options.join(", "));
+    }
+    if ledger.gas_model() != GasModel::default() {
+        let _ = writeln!(text, "gas_model = {}", quoted(ledger.gas_model().name()));
     }
     let solutes: Vec<String> = ledger.solutes().map(|species| species.key().to_string()).collect();
     if !solutes.is_empty() {

@@ -4,4 +4,5 @@ pub mod constants;
 pub mod electrode;
 pub mod gas_exchange;
 pub mod seawater;
+pub mod virial;
 pub mod water;

@@ -314,3 +314,100 @@ fn curves(diagram: &Diagram, across: &[f64], states: &[Option<&State>], holders:
         panels: vec![Panel { y, marks: Marks::Curves(drawn.iter().map(curve).collect()) }],
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::ledger::{ActivityChoice, Ledger, shipped};
+    use crate::named::Value;
+    use crate::units::Temperature;
+    use crate::water::Treatment;
+
+    fn ideal() -> Ledger {
+        shipped::ledger("freshwater", None).expect("shipped").with_activity(ActivityChoice::Ideal)
+    }
+
+    fn water(keys: &[(&str, &str)]) -> Sample {
+        let entry = |(key, text): &(&str, &str)| ((*key).to_string(), Value::Text((*text).into()));
+        Sample::read(keys.iter().map(entry).collect()).expect("right").with_ledger(&ideal())
+    }
+
+    fn drawn(water: &Sample, diagram: &Diagram) -> Plot {
+        draw(water, diagram, &Settings::default(), &|_| {}).expect("drawn")
+    }
+
+    /// Where two curves of a Bjerrum plot cross.
+    fn crossing(plot: &Plot, one: &str, other: &str) -> f64 {
+        let Marks::Curves(curves) = &plot.panels[0].marks else { panic!("curves") };
+        let curve = |name: &str| &curves.iter().find(|curve| curve.name == name).expect("drawn").points;
+        let gaps: Vec<(f64, f64)> =
+            curve(one).iter().zip(curve(other)).map(|(a, b)| (a.x, a.y - b.y)).collect();
+        let step = gaps.windows(2).find(|step| step[0].1 * step[1].1 <= 0.0).expect("they cross");
+        let ((x0, y0), (x1, y1)) = (step[0], step[1]);
+        x0 + (x1 - x0) * y0 / (y0 - y1)
+    }
+
+    /// At infinite dilution neighbours of the carbonate system cross at the two pK.
+    #[test]
+    fn carbonate_species_cross_at_pk1_and_pk2() {
+        let plot = drawn(&water(&[("pH", "8"), ("DIC", "10 umol/kg")]), &Diagram::bjerrum("C"));
+        let pk = |equation: &str| {
+            -ideal().derive(equation).unwrap().log_k_at(Temperature::REFERENCE).unwrap().value()
+        };
+        let first = crossing(&plot, "CO2(aq)", "HCO3^-") - pk("CO2(aq) + H2O <=> HCO3^- + H^+");
+        let second = crossing(&plot, "HCO3^-", "CO3^2-") - pk("HCO3^- <=> CO3^2- + H^+");
+        // What is left is the activity of water, and the interpolation.
+        assert!(first.abs() < 1e-5 && second.abs() < 1e-5, "{first:e} {second:e}");
+    }
+
+    fn iron() -> (Sample, Diagram) {
+        let water = water(&[("pH", "7"), ("Fe", "10 umol/kg")]);
+        let allowed = Treatment::Allow { solid: "ferrihydrite".into(), above: 0.0 };
+        let span = |title: &str| Span::usual(title).expect("usual");
+        let mut diagram = Diagram::predominance(span("pe"), span("pH"), "Fe");
+        diagram.points = 21;
+        (water.treated(allowed).expect("allowed"), diagram)
+    }
+
+    fn fields_of(plot: &Plot) -> &Fields {
+        let Marks::Fields(fields) = &plot.panels[0].marks else { panic!("fields") };
+        fields
+    }
+
+    /// Fe^2+ against ferrihydrite at pH 6: pe = 13.02 + log K - 3 pH - log 5e-6 where each holds half, by hand; the grid of
+    /// 1.5 in pe is far coarser than what is asked of the line between them.
+    #[test]
+    fn a_field_of_a_solid_ends_between_grid_points() {
+        let (water, diagram) = iron();
+        let plot = drawn(&water, &diagram);
+        let fields = fields_of(&plot);
+        let across = (6.0 - 2.0) / 10.0;
+        let name = |up: f64| fields.largest_at(across, up).map(|field| fields.names[field].as_str());
+        let first_solid =
+            (0..=3000).map(|k| f64::from(k) / 3000.0).find(|up| name(*up) == Some("Fe(OH)3(ferrihydrite)"));
+        let found = -10.0 + 30.0 * first_solid.expect("a field of the solid");
+        let log_k = |equation: &str| {
+            ideal().derive(equation).unwrap().log_k_at(Temperature::REFERENCE).unwrap().value()
+        };
+        let expected = log_k("Fe^3+ + e^- <=> Fe^2+")
+            + log_k("Fe(OH)3(ferrihydrite) + 3 H^+ <=> Fe^3+ + 3 H2O")
+            - 18.0
+            - 5e-6_f64.log10();
+        assert!((found - expected).abs() < 0.2, "{found} {expected}");
+    }
+
+    /// pe + pH = 20.8 under oxygen of 1 bar and 0 under hydrogen (Stumm & Morgan 1996, chapter 8; recalled).
+    #[test]
+    fn water_ends_at_the_lines_of_the_textbook() {
+        let (water, mut diagram) = iron();
+        diagram.points = 3;
+        let plot = drawn(&water, &diagram);
+        let sums: Vec<(&str, f64)> = fields_of(&plot)
+            .limits
+            .iter()
+            .map(|limit| (limit.name.as_str(), limit.ends[1].0 + limit.ends[1].1))
+            .collect();
+        assert_eq!(sums.iter().map(|(name, _)| *name).collect::<Vec<_>>(), ["O2(g) 1 bar", "H2(g) 1 bar"]);
+        assert!((sums[0].1 - 20.77).abs() < 0.05 && sums[1].1.abs() < 0.01, "{sums:?}");
+    }
+}

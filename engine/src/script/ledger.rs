@@ -11,7 +11,9 @@ use crate::chem::{Element, Reaction, Species, rational};
 use crate::equilibrium::acid_base::{ALKALINITY_PH, ZeroLevel};
 use crate::ledger::file::{self, FileFault};
 use crate::ledger::shipped::{self, ShippedError};
-use crate::ledger::{ActivityChoice, Alternative, Audit, Cycle, Ledger, Reconciliation, save as ledger_text};
+use crate::ledger::{
+    ActivityChoice, Alternative, Audit, Cycle, GasModel, Ledger, Reconciliation, save as ledger_text,
+};
 use crate::nearest::nearest;
 use crate::present::{Cell, Column, Table};
 use crate::text::count;
@@ -22,6 +24,7 @@ pub(super) fn register(vocabulary: &mut Vocabulary) {
     vocabulary
         .module(rhai::exported_module!(ledger_functions))
         .pure(&["ledger", "with_reaction", "replace", "without", "merge", "with_activity_model", "derive"])
+        .pure(&["with_gas_model"])
         .pure(&["audit", "reconcile", "moved", "reconciliation", "assume_sigma", "alternatives", "choose"])
         .pure(&["load_ledger"])
         .pure(&["species_of", "find", "phases", "gases", "sources", "alkalinity_table", "table"])
@@ -385,6 +388,21 @@ mod ledger_functions {
         })?;
         choice.check(ledger).map_err(Fail::from)?;
         Ok(ledger.with_activity(choice))
+    }
+
+    /// A new ledger with another relation of fugacity to partial pressure: `"ideal"`, where they are equal, or `"virial"`,
+    /// with second virial coefficients (Tsonopoulos 1974) under the pressure of the water, by the rule of Lewis and Randall:
+    /// for CO2, O2, N2, CH4 and H2S, of which `p(CO2(g))` then differs from `f(CO2(g))`.
+    ///
+    /// ```rhai
+    /// let real = ledger("freshwater").with_gas_model("virial");
+    /// let spring = sample(#{ pH: 6, DIC: "20 mmol/kg" }).compress_to("20 bar").equilibrate(real);
+    /// spring.get("f(CO2(g))") / spring.get("p(CO2(g))") < 0.95   // true
+    /// ```
+    #[rhai_fn(name = "with_gas_model", pure, return_raw)]
+    pub fn with_gas_model(ledger: &mut Ledger, name: &str) -> ScriptResult<Ledger> {
+        let model = GasModel::read(name).map_err(|fault| fail(fault.message).argument(0))?;
+        Ok(ledger.with_gas_model(model))
     }
 
     /// A ledger from a file beside the script: `[[constant]]` tables with `name`, `reaction`, a value as for `reaction`,
