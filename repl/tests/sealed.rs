@@ -391,3 +391,22 @@ fn what_other_programs_read() {
         "{definitions}"
     );
 }
+
+#[test]
+fn shipped_modules_are_found_and_not_replaced() {
+    let script = "import \"stdlib/water-works\" as works;\nimport \"stdlib/calcifiers\" as calcifiers;\n\
+                  let tap = sample(#{ pH: 7.6, alkalinity: \"4 meq/L\", Ca: \"80 mg/L\", Cl: \"35.453 mg/L\" });\n\
+                  let state = tap.equilibrate();\nprint(works::indices([state]).row(0)[\"class\"]);\n\
+                  expect(\"Larson ratio\", works::larson_ratio(state), 0.25, 0.001);\n\
+                  let sea = seawater(#{ salinity: 35, pH: 8.05, alkalinity: \"2300 umol/kg\" }).equilibrate();\n\
+                  print(calcifiers::saturation(sea).len);\n";
+    let test = Test::new().file("a.rhai", script).file("b.rhai", "import \"stdlib/calcifier\" as c;\n");
+    let (code, results, messages) = said(&test, &["run", "a.rhai"]);
+    assert_eq!((code, results.as_str()), (0, "very hard\n7\n"), "{messages}");
+    let (code, _, messages) = said(&test, &["run", "b.rhai"]);
+    assert!(code == 1 && messages.contains("did you mean `stdlib/calcifiers`?"), "{messages}");
+    std::fs::create_dir(test.path().join("stdlib")).expect("a folder");
+    write(&test, "stdlib/calcifiers.rhai", "fn saturation(state) { 1 }\n");
+    let (code, _, messages) = said(&test, &["run", "a.rhai"]);
+    assert!(code == 1 && messages.contains("is a shipped module and a file beside the script"), "{messages}");
+}

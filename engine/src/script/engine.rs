@@ -149,7 +149,10 @@ impl ScriptEngine {
     pub fn check(&self, name: &str, text: &str) -> Result<(), Box<Diagnostic>> {
         let text = clean(text);
         self.modules.forget_main();
-        on_deep_stack(|| self.compile(name, &text, &Scope::new(), None).map(drop))
+        let checked = on_deep_stack(|| self.compile(name, &text, &Scope::new(), None).map(drop));
+        // What was only looked at claims no names from the session that goes on.
+        self.modules.forget_main();
+        checked
     }
 
     /// Every file read so far, modules among them, in alphabetical order.

@@ -24,6 +24,13 @@ fn case(entries: &[&str], name: &str, expected: &[&str]) {
 }
 
 #[test]
+fn a_session_goes_on_after_its_script_was_checked() {
+    let mut session = session(&["fn f(x) { x }"]);
+    session.engine().check("saved.rhai", &session.script()).expect("it is sound");
+    session.enter("f(1)").expect("the function is the session's");
+}
+
+#[test]
 fn of_a_function_defined_again_the_newest_is_written_where_that_is_sound() {
     let again =
         session(&["fn f(x) { x + 1 }", "let b = 2;", "fn f(x) { x + b0() } fn b0() { 2 }", "let a = f(b)"]);
