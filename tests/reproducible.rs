@@ -185,7 +185,7 @@ fn the_direction_the_order_and_the_basis_of_a_ledger_change_no_answer() {
     // Other products and reactants: everything but water's own reaction with water's added, where both can be added.
     let mixed = |k: usize, reaction: &Reaction| {
         let is_water = reaction.equation() == water.equation();
-        let added = if is_water || k % 2 == 0 { None } else { reaction.plus(&water).ok() };
+        let added = if is_water || k.is_multiple_of(2) { None } else { reaction.plus(water).ok() };
         added.unwrap_or_else(|| reaction.clone())
     };
     let rewritten = [
