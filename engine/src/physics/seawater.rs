@@ -179,10 +179,10 @@ mod tests {
     #[test]
     fn density_is_that_of_the_standard_of_2010_but_for_the_third_decimal() {
         for (absolute, celsius, bar, standard) in [
-            (35.165_04, 0.0, 0.0, 1028.107_185),
-            (35.165_04, 10.0, 100.0, 1031.432_763),
-            (5.023_577_142_857_142, 15.0, 0.0, 1002.953_413),
-            (40.188_617_142_857_15, 30.0, 50.0, 1027.590_338),
+            (35.165_04, 0.0, 0.0, 1028.107185),
+            (35.165_04, 10.0, 100.0, 1031.432763),
+            (5.023_577_142_857_142, 15.0, 0.0, 1002.953413),
+            (40.188_617_142_857_15, 30.0, 50.0, 1027.590338),
         ] {
             let found = density(celsius + 273.15, absolute / REFERENCE_SALINITY_PER_SALINITY, bar);
             assert!((found - standard).abs() < 0.003, "{found} for {standard}");

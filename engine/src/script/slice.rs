@@ -503,6 +503,11 @@ fn versioned(name: &str, version: usize) -> String {
     if name.starts_with("fn ") || name == FILES { name.to_owned() } else { format!("{name}#{version}") }
 }
 
+/// What stands for a variable being shared with a closure.
+fn shared(name: &str) -> String {
+    format!("shared {name}")
+}
+
 fn resolve(units: &[Unit]) -> Resolved {
     let mut newest: BTreeMap<String, usize> = BTreeMap::new();
     let mut holds: BTreeMap<String, BTreeSet<String>> = BTreeMap::new();
@@ -541,6 +546,10 @@ fn resolve(units: &[Unit]) -> Resolved {
         }
         changed_somewhere.extend(all(&unit.changed_by_closures));
         let mut writes = all(&unit.writes);
+        // A captured variable is shared from then on, and a call that changes its argument in place may leave a shared one
+        // as it was.
+        reads.extend(writes.iter().map(|name| shared(name)));
+        writes.extend(all(&unit.captures).iter().map(|name| shared(name)));
         // Whoever has such a closure at hand may have called it.
         writes.extend(held.iter().filter(|name| changed_somewhere.contains(*name)).cloned());
         for name in defines.iter().chain(&writes).filter(|name| !name.starts_with("fn ")) {

@@ -239,7 +239,7 @@ mod answer_functions {
     pub fn mole_fractions(solved: &mut Solved) -> ScriptResult<Array> {
         Ok(solution(solved)?.mole_fractions.iter().map(|x| Dynamic::from_array(floats(x))).collect())
     }
-    /// Amount of each fixed component that was added to hold its activity; negative: taken away.
+    /// Amount of each fixed component that is left over; negative: supplied from outside to hold its activity.
     #[rhai_fn(name = "exchange", get = "exchange", pure, return_raw)]
     pub fn exchange(solved: &mut Solved) -> ScriptResult<Array> {
         Ok(floats(&solution(solved)?.exchange))

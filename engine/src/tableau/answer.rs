@@ -29,7 +29,8 @@ pub struct Solution {
     pub saturation: Vec<f64>,
     /// Mole fractions of the members of each phase, those it would have where it is absent.
     pub mole_fractions: Vec<Vec<f64>>,
-    /// What was added of each fixed component to hold its activity; negative: taken away. Shape `(n_fixed,)`.
+    /// What is left over of each fixed component, so that its total is what species and phases hold and this; negative:
+    /// supplied from outside to hold its activity. Shape `(n_fixed,)`.
     pub exchange: Vec<f64>,
     /// Names of the species that are exactly zero.
     pub zeros: Vec<String>,
@@ -125,7 +126,7 @@ impl Solution {
                     Part::Mixture(p) => converged.mixtures[p].ln_x.iter().map(|ln_x| ln_x.exp()).collect(),
                 })
                 .collect(),
-            exchange: converged.reservoir_amount.clone(),
+            exchange: converged.reservoir_amount.iter().map(|delivered| -delivered).collect(),
             zeros: zeros.collect(),
             converged,
         }

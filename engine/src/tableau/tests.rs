@@ -33,8 +33,8 @@ fn a_phase_at_fixed_ph() {
     let precipitated = 1e-3 - 1e-4 - 1e-5;
     assert!((solution.amounts[0] / precipitated - 1.0).abs() < 1e-12);
     assert_eq!(solution.saturation, [0.0]);
-    // Hydrogen held: 1e-8 free, one gone with each MOH, two with each M(OH)2.
-    assert!((solution.exchange[0] / (1e-8 - 1e-5 - 2.0 * precipitated) - 1.0).abs() < 1e-12);
+    // Hydrogen left over: one set free by each MOH, two by each M(OH)2, less 1e-8 that stay.
+    assert!((solution.exchange[0] / (1e-5 + 2.0 * precipitated - 1e-8) - 1.0).abs() < 1e-12);
 }
 
 #[test]
