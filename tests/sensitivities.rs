@@ -665,7 +665,9 @@ fn sensitivities_of_the_shipped_examples_are_difference_quotients() {
         let state = equilibrate(sample, Some(ledger), &Settings::default()).unwrap();
         asked.iter().map(|asked| state.number(asked).map_or(f64::NAN, |(number, _)| number)).collect()
     };
-    let answers: Vec<(Vec<BTreeMap<String, f64>>, Vec<f64>)> = waters
+    // The slopes of every observable, by input, and the values.
+    type Answer = (Vec<BTreeMap<String, f64>>, Vec<f64>);
+    let answers: Vec<Answer> = waters
         .par_iter()
         .map(|(_, sample)| {
             let state = equilibrate(sample, Some(&ledger), &Settings::default()).unwrap();
