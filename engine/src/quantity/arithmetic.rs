@@ -37,7 +37,11 @@ impl Quantity {
     ///
     /// As [`Quantity::powf`].
     pub fn sqrt(&self) -> Outcome {
-        self.powf(0.5)
+        let x = ready_for_product(self)?;
+        let unit = x.unit.powf(0.5)?;
+        // Correctly rounded, which a power of one half need not be.
+        let root = x.value.sqrt();
+        x.function("a power", unit, root, 0.5 / root)
     }
 
     /// e to this power.
