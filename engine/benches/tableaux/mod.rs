@@ -1,12 +1,18 @@
 //! Random tableaux and the time of one Newton iteration on them, which the benchmarks take for their unit.
 
+#[allow(dead_code, missing_docs, reason = "shared with the checks")]
+#[path = "../../../tests/random_systems.rs"]
+mod random_systems;
+
 use std::hint::black_box;
 use std::time::Instant;
 
 use lysocline_engine::activity::Model;
 use lysocline_engine::solve::{Converged, Problem, Row, Settings, Total, Warm, solve};
 
-const LN_10: f64 = std::f64::consts::LN_10;
+use random_systems::LN_10;
+pub use random_systems::Random;
+
 /// Components of a tableau.
 pub const COMPONENTS: usize = 10;
 /// Species of a tableau.
@@ -51,13 +57,14 @@ pub fn quantile(values: &mut [f64], share: f64) -> f64 {
 /// Ten components of which the first is the proton; complexes of up to three components, log10 K within ±20.
 pub fn random_tableau(seed: u64) -> Problem {
     let mut random = Random(seed * 7919 + 1);
+    let component = |random: &mut Random, from: i64| random.integer(from, COMPONENTS as i64 - 1) as usize;
     let mut species: Vec<Row> = (0..COMPONENTS).map(|j| Row::new(&[(j, 1)], 0.0)).collect();
     species.push(Row::new(&[(0, -1)], -14.0 * LN_10));
     while species.len() < SPECIES {
-        let mut stoichiometry = vec![(random.below(COMPONENTS - 1) + 1, random.below(4) as i64 + 1)];
-        for _ in 0..random.below(3) {
-            let j = random.below(COMPONENTS);
-            let nu = if j == 0 { random.below(9) as i64 - 4 } else { random.below(4) as i64 + 1 };
+        let mut stoichiometry = vec![(component(&mut random, 1), random.integer(1, 4))];
+        for _ in 0..random.integer(0, 2) {
+            let j = component(&mut random, 0);
+            let nu = if j == 0 { random.integer(-4, 4) } else { random.integer(1, 4) };
             if nu != 0 && stoichiometry.iter().all(|(k, _)| *k != j) {
                 stoichiometry.push((j, nu));
             }
@@ -70,26 +77,4 @@ pub fn random_tableau(seed: u64) -> Problem {
     };
     let totals = (0..COMPONENTS).map(&mut total).collect();
     Problem { n_components: COMPONENTS, species, totals, ..Problem::default() }
-}
-
-/// SplitMix64 (Steele, Lea & Flood 2014).
-pub struct Random(pub u64);
-
-impl Random {
-    fn next(&mut self) -> u64 {
-        self.0 = self.0.wrapping_add(0x9e37_79b9_7f4a_7c15);
-        let mut z = self.0;
-        z = (z ^ (z >> 30)).wrapping_mul(0xbf58_476d_1ce4_e5b9);
-        z = (z ^ (z >> 27)).wrapping_mul(0x94d0_49bb_1331_11eb);
-        z ^ (z >> 31)
-    }
-
-    fn below(&mut self, end: usize) -> usize {
-        (self.next() % end as u64) as usize
-    }
-
-    /// Uniform between two numbers.
-    pub fn uniform(&mut self, from: f64, to: f64) -> f64 {
-        from + (self.next() >> 11) as f64 / (1_u64 << 53) as f64 * (to - from)
-    }
 }

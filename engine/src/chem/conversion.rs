@@ -12,13 +12,13 @@ use super::reaction::{Constant, Reaction, ReactionError};
 use super::salt::Salt;
 use super::stated_conditions::salinity;
 use super::statement::temperature;
-use crate::activity::Davies;
+use crate::activity::{Davies, Sit};
 use crate::named::{KeyFault, Named, Value};
 use crate::physics::constants::{GAS_CONSTANT, LN_10};
 use crate::physics::{seawater, water};
 use crate::quantity::Quantity;
 use crate::text::list;
-use crate::units::{Kind, Temperature, Unit};
+use crate::units::{Kind, Pressure, Temperature, Unit};
 
 /// Gas constant in L bar/(mol K).
 const R_L_BAR: f64 = GAS_CONSTANT / 100.0;
@@ -413,11 +413,7 @@ impl IonicModel {
         let a = options.number("A")?;
         match name {
             "davies" => {
-                let t = at.kelvin();
-                let of_water = || {
-                    let density = water::density(t);
-                    water::debye_huckel_a(t, density, water::relative_permittivity(t, density))
-                };
+                let of_water = || water::debye_huckel(at.kelvin(), Pressure::ATMOSPHERE.bar()).0;
                 Ok(Self::Davies { a: a.unwrap_or_else(of_water), b: options.number("b")?.unwrap_or(0.3) })
             }
             "sit" => {
@@ -453,7 +449,7 @@ impl IonicModel {
     fn valid_to(&self) -> f64 {
         match self {
             Self::Davies { .. } => Davies::VALID_TO,
-            Self::Sit { .. } => 3.5,
+            Self::Sit { .. } => Sit::VALID_TO,
         }
     }
 
@@ -472,9 +468,9 @@ impl IonicModel {
                 (-z2 * davies.ln_gamma(1.0, ionic_strength) / LN_10, 0.0)
             }
             Self::Sit { a, delta_epsilon } => {
-                let root = ionic_strength.sqrt();
-                let d = a * root / (1.0 + 1.5 * root);
-                (z2 * d - delta_epsilon.value() * ionic_strength, -ionic_strength)
+                let electrostatic =
+                    Sit { a_ln: a * LN_10, pairs: vec![] }.ln_gamma(1.0, ionic_strength) / LN_10;
+                (-z2 * electrostatic - delta_epsilon.value() * ionic_strength, -ionic_strength)
             }
         }
     }

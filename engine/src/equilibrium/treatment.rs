@@ -229,15 +229,8 @@ impl Surroundings {
             Treatment::Saturate { solid, .. } | Treatment::Allow { solid, .. } => (solid.as_str(), LN_10),
             Treatment::HoldPh { .. } => ("pH", -LN_10),
             Treatment::HoldPe { .. } => ("pe", -LN_10),
-            Treatment::WithSolid { .. }
-            | Treatment::Beside(_)
-            | Treatment::Dose(_)
-            | Treatment::Remove(_)
-            | Treatment::Concentrate(_)
-            | Treatment::AddSolution { .. }
-            | Treatment::Adjust(_)
-            | Treatment::WarmTo(_)
-            | Treatment::CompressTo(_) => return,
+            // What moves totals, and where the water is, hold no value.
+            _ => return,
         };
         match stated {
             Some(stated) => self.stated.insert(name.into(), (stated.clone(), slope)),

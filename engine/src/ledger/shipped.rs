@@ -77,14 +77,13 @@ pub fn ledger(name: &str, edition: Option<&str>) -> Result<Ledger, ShippedError>
 ///
 /// As [`ledger`].
 pub fn as_shipped(name: &str) -> Result<Ledger, ShippedError> {
-    static LEDGERS_READ: OnceLock<BTreeMap<&str, Result<Ledger, ShippedError>>> = OnceLock::new();
-    let ledgers =
-        LEDGERS_READ.get_or_init(|| LEDGERS.iter().map(|(name, text)| (*name, build(name, text))).collect());
-    let Some(found) = ledgers.get(name) else {
+    static READ: [OnceLock<Result<Ledger, ShippedError>>; LEDGERS.len()] =
+        [const { OnceLock::new() }; LEDGERS.len()];
+    let Some((read, (name, text))) = READ.iter().zip(LEDGERS).find(|(_, (own, _))| *own == name) else {
         let nearest = nearest(name, names()).map(str::to_string);
         return Err(ShippedError::Unknown { name: name.into(), nearest });
     };
-    found.clone()
+    read.get_or_init(|| build(name, text)).clone()
 }
 
 /// Every shipped file of constants, by key.

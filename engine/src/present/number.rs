@@ -6,14 +6,13 @@
 
 use super::column::Content;
 use super::{Cell, Column, Style, Title, notation};
+use crate::quantity::UNRESOLVED;
 
 /// Digits of a number of which nothing says how well it is known.
 pub const SIGNIFICANT_DIGITS: usize = 4;
 
 /// The relative uncertainty below which a number is not rounded to it: its digits would fill the line.
 const NEGLIGIBLE: f64 = 1e-9;
-/// The relative uncertainty below which it is not shown at all: a double does not resolve it.
-const UNRESOLVED: f64 = 1e-13;
 
 /// The powers of ten of the leading digit between which numbers are written without one: 0.001 to below 1e6.
 const PLAIN_EXPONENTS: std::ops::RangeInclusive<i32> = -3..=5;

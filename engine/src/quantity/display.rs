@@ -6,7 +6,7 @@ use super::Quantity;
 use crate::units::{Style, Unit};
 
 /// The relative uncertainty below which none is shown: a double does not resolve it.
-const UNRESOLVED: f64 = 1e-13;
+pub const UNRESOLVED: f64 = 1e-13;
 
 pub(super) fn quantity(quantity: &Quantity, style: Style) -> String {
     let shown = quantity.sigma().filter(|sigma| *sigma > quantity.value.abs() * UNRESOLVED);

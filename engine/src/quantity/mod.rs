@@ -41,6 +41,7 @@ mod tests;
 
 pub use budget::{Budget, BudgetRow, UnstatedInput};
 pub use correlation::{correlate, correlate_all, correlation};
+pub(crate) use display::UNRESOLVED;
 pub use error::QuantityError;
 pub use input::Input;
 

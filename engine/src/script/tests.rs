@@ -1,5 +1,8 @@
 //! Scripts as a person writes them, and what they answer.
 
+use std::io::Write;
+use std::sync::{Arc, Mutex};
+
 use super::*;
 
 mod examples;
@@ -32,6 +35,26 @@ fn echo(engine: &ScriptEngine, script: &str) -> String {
     match engine.run("test", script) {
         Ok(value) => value.map_or_else(String::new, |value| engine.show(&value)),
         Err(diagnostic) => panic!("{script}\n{diagnostic}\n{}", diagnostic.help.join("\n")),
+    }
+}
+
+/// What an engine wrote.
+#[derive(Clone, Default)]
+struct Captured(Arc<Mutex<Vec<u8>>>);
+
+impl Captured {
+    fn text(&self) -> String {
+        String::from_utf8(self.0.lock().expect("one thread").clone()).expect("text")
+    }
+}
+
+impl Write for Captured {
+    fn write(&mut self, bytes: &[u8]) -> std::io::Result<usize> {
+        self.0.lock().expect("one thread").extend(bytes);
+        Ok(bytes.len())
+    }
+    fn flush(&mut self) -> std::io::Result<()> {
+        Ok(())
     }
 }
 

@@ -1,6 +1,5 @@
 //! The language as a whole, with a toy native type where one is needed.
 
-use std::io::Write;
 use std::sync::{Arc, Mutex};
 use std::time::{Duration, Instant};
 
@@ -9,6 +8,7 @@ use rayon::prelude::*;
 use rhai::plugin::*;
 use rhai::{Dynamic, Map};
 
+use super::Captured;
 use super::closure::{Closure, Worker};
 use super::{Halt, Host, Options, ScriptEngine, ScriptResult, Session, Vocabulary, docs, fail};
 use crate::script::diagnostic::{Diagnostic, Kind};
@@ -469,19 +469,6 @@ fn every_function_of_the_base_is_documented() {
     }
 }
 
-#[derive(Clone, Default)]
-struct Captured(Arc<Mutex<Vec<u8>>>);
-
-impl Write for Captured {
-    fn write(&mut self, bytes: &[u8]) -> std::io::Result<usize> {
-        self.0.lock().expect("one thread").extend(bytes);
-        Ok(bytes.len())
-    }
-    fn flush(&mut self) -> std::io::Result<()> {
-        Ok(())
-    }
-}
-
 #[test]
 fn output_goes_where_the_engine_was_told() {
     let captured = Captured::default();
@@ -493,7 +480,7 @@ fn output_goes_where_the_engine_was_told() {
     engine
         .run("a.rhai", "print(\"pH\"); print([1/2, \"a\"]); print(jar(#{})); print(args());")
         .expect("it runs");
-    let text = String::from_utf8(captured.0.lock().expect("one thread").clone()).expect("text");
+    let text = captured.text();
     assert_eq!(text, "pH\n[0.5, \"a\"]\njar of 1 ℓ\n[\"x\"]\n");
 }
 
@@ -565,7 +552,7 @@ mod sessions {
         let value =
             ScriptEngine::with_vocabulary(options, toys).run("saved.rhai", &s.script()).expect("it runs");
         assert!(value.is_none());
-        assert_eq!(String::from_utf8(captured.0.lock().expect("one thread").clone()).expect("text"), shown);
+        assert_eq!(captured.text(), shown);
         assert_eq!(s.script().lines().count(), 9);
     }
 

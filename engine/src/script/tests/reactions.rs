@@ -39,22 +39,9 @@ fn a_trail_is_told_in_sentences() {
     );
 }
 
-#[derive(Clone, Default)]
-struct Told(std::sync::Arc<std::sync::Mutex<Vec<u8>>>);
-
-impl std::io::Write for Told {
-    fn write(&mut self, bytes: &[u8]) -> std::io::Result<usize> {
-        self.0.lock().expect("one thread").extend(bytes);
-        Ok(bytes.len())
-    }
-    fn flush(&mut self) -> std::io::Result<()> {
-        Ok(())
-    }
-}
-
 #[test]
 fn combine_tells_how_far_routes_lie_apart() {
-    let told = Told::default();
+    let told = Captured::default();
     let options = Options { messages: Box::new(told.clone()), ..Options::default() };
     let script = r#"
         let k1 = reaction("CO2(aq) + H2O <=> HCO3^- + H^+", "-6.35 +/- 0.06");
@@ -62,7 +49,7 @@ fn combine_tells_how_far_routes_lie_apart() {
         let both = reaction("CO2(aq) + H2O <=> CO3^2- + 2 H^+", "-16.60 +/- 0.2");
         let k = combine("CO2(aq) + H2O <=> CO3^2- + 2 H^+", [k1, k2, both]);"#;
     ScriptEngine::new(options).run("test", script).expect("it runs");
-    let text = String::from_utf8(told.0.lock().expect("one thread").clone()).expect("text");
+    let text = told.text();
     assert!(
         text.ends_with(
             "2 independent routes, weighted by least variance; singly they give log K -16.680 to -16.600 at 25 degC, \
